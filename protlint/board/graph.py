@@ -1,0 +1,121 @@
+"""The board as circuit people see it: parts with kinds and roles, nets with voltages, banks and chains as one.
+
+Two views of one board: the public networkx ``MultiGraph`` (part nodes, net nodes, the pin as edge key), and the plain
+index of nets and elements that matching and solving run on.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from protlint.limits import Range
+from protlint.netlist.model import Netlist, Part
+from protlint.partdata.book import PartEntry
+
+if TYPE_CHECKING:
+    import networkx as nx
+
+KINDS = (
+    "npn", "pnp", "npn-darlington", "pnp-darlington", "nmos", "pmos", "diode", "zener", "thyristor",
+    "resistor", "capacitor", "inductor", "fuse", "link", "connector", "ic", "unknown",
+)  # fmt: skip
+"""What a part can be. Terminal roles: collector base emitter; drain gate source; anode cathode (gate); 1 2; pin names."""
+
+
+@dataclass(frozen=True, slots=True)
+class Values:
+    """A part's values as its properties state them, SI units; None where not stated.
+
+    ``text`` is the value text as written, ``unreadable`` says why it could not be read (None where it could), and
+    ``fitted`` is False for a part the text marks as not fitted.
+    """
+
+    text: str | None = None
+    value: float | None = None
+    """ohm, farad or henry, by kind; volt for a zener."""
+    tolerance: float | None = None
+    power_W: float | None = None
+    voltage_V: float | None = None
+    footprint: str | None = None
+    fitted: bool = True
+    unreadable: str | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class BoardPart:
+    """A placed part with what protlint made of it. ``roles`` maps a terminal's role to the index of its board net."""
+
+    index: int
+    part: Part
+    kind: str
+    kind_from: str
+    roles: Mapping[str, int]
+    roles_from: str
+    part_number: str | None
+    values: Values
+    entry: PartEntry | None
+
+    @property
+    def id(self) -> str:
+        """The part's id, unique on the board."""
+        return self.part.id
+
+
+@dataclass(frozen=True, slots=True)
+class Supply:
+    """A net held at a voltage, and how that is known: ``limits file``, ``net name`` or ``assumed``."""
+
+    voltage_V: Range
+    known_from: str
+
+
+@dataclass(frozen=True, slots=True)
+class BoardNet:
+    """A net after links are gone. ``names`` holds every united netlist net's name, the shown one first."""
+
+    index: int
+    names: tuple[str, ...]
+    pins: tuple[tuple[int, str], ...]
+    """(board part index, terminal role or pin name) in board order."""
+    supply: Supply | None = None
+
+    @property
+    def name(self) -> str:
+        """The name shown to people."""
+        return self.names[0]
+
+
+@dataclass(frozen=True, slots=True)
+class Element:
+    """What matching and solving see: one part, or resistors merged from banks and unbranched chains.
+
+    ``terminals`` maps role to board net index; ``parts`` the board part indices it stands for, in board order;
+    ``value`` the merged value in SI units (None where any of them is unknown); ``tree`` how it was merged, nested tuples
+    ``("bank" | "chain", (child, ...))`` with board part indices as leaves, so that every part's own share of current,
+    voltage and power can be worked out.
+    """
+
+    index: int
+    kind: str
+    terminals: Mapping[str, int]
+    parts: tuple[int, ...]
+    value: float | None
+    tree: object
+
+
+@dataclass(frozen=True, slots=True)
+class Board:
+    """The whole board. ``elements_at[n]`` lists (element index, role) on net n; not-fitted parts and links are in none."""
+
+    netlist: Netlist
+    parts: tuple[BoardPart, ...]
+    nets: tuple[BoardNet, ...]
+    elements: tuple[Element, ...]
+    elements_at: tuple[tuple[tuple[int, str], ...], ...]
+    assumed: tuple[str, ...] = ()
+
+    def graph(self) -> nx.MultiGraph[object]:
+        """Return the public graph: nodes ``("part", id)`` and ``("net", name)``, one edge per pin, the pin as its key."""
+        raise NotImplementedError

@@ -1,0 +1,1 @@
+"""The checks: one question each, put to a limiter."""

@@ -1,0 +1,97 @@
+"""The limits file: what the designer knows and the netlist does not say.
+
+Every quantity is an SI float (temperatures in degC) by the time it is here.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+from protlint.findings import Level
+
+
+@dataclass(frozen=True, slots=True)
+class Range:
+    """A quantity with its stated spread; ``low <= usual <= high``."""
+
+    low: float
+    usual: float
+    high: float
+
+
+@dataclass(frozen=True, slots=True)
+class DriveLimits:
+    """What drives a net or a pin: its two ends in volts, its resistance, and the most current it gives (None: stiff)."""
+
+    low_V: Range | None = None
+    high_V: Range | None = None
+    resistance_ohm: float = 0.0
+    current_A: float | None = None
+    power_W: float | None = None
+    from_rails_V: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Peak:
+    """A load peak that must pass."""
+
+    current_A: float
+    lasts_s: float
+    output_V: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class CheckSetting:
+    """A check's level (``off`` silences it) and thresholds, as a limits file sets them."""
+
+    level: Level | str | None = None
+    thresholds: Mapping[str, float] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
+class LimiterLimits:
+    """What the board needs of one limiter; None where the file does not say."""
+
+    carry_A: float | None = None
+    cap_A: float | None = None
+    output_V: float | None = None
+    short_s: float | None = None
+    """How long a short lasts; ``math.inf`` for a continuous one (the default), None where not stated."""
+    shorted_to: tuple[str, ...] = ()
+    sink_K_per_W: float | None = None
+    shunt_rise_K: float | None = None
+    pass_rise_K: float | None = None
+    regulate_A: float | None = None
+    load_ohm: float | None = None
+    load_current_A: float | None = None
+    load_cold_ohm: float | None = None
+    load_capacitance_F: float | None = None
+    peak: Peak | None = None
+    checks: Mapping[str, CheckSetting] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
+class Limits:
+    """A limits file, or the defaults where there is none (``file`` is then None)."""
+
+    file: str | None = None
+    ambient_degC: tuple[float, float, float] = (-10.0, 27.0, 85.0)
+    resistor_tolerance: float = 0.01
+    vbe_spread_V: tuple[float, float] = (0.04, 0.04)
+    """How far a bipolar's V_BE may lie below and above usual."""
+    derating: str = "none"
+    supplies_V: Mapping[str, Range] = field(default_factory=dict)
+    drives: Mapping[str, DriveLimits] = field(default_factory=dict)
+    """By net name, or by pin as ``U1.6``."""
+    drivers: Mapping[str, DriveLimits] = field(default_factory=dict)
+    """By part number."""
+    limiters: Mapping[str, LimiterLimits] = field(default_factory=dict)
+    """By pass device, output net or sense resistor; globs; in the order of the file; ``*`` gives defaults."""
+    attributes: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
+    """Property names this file uses: ``value``, ``part_number``, ``power``, ``tolerance``, ``footprint``, ``voltage``."""
+    checks: Mapping[str, CheckSetting] = field(default_factory=dict)
+    pins: Mapping[str, Mapping[str, str]] = field(default_factory=dict)
+    """Pin roles: cell or part number to pin name or number to role."""
+    assumed: tuple[str, ...] = ()
+    """Which of ``ambient``, ``resistor_tolerance``, ``vbe_spread`` stand at their defaults, in plain words."""

@@ -1,0 +1,1 @@
+"""Reading: a file becomes positioned forms, definitions, and one flat netlist."""

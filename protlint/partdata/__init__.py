@@ -1,0 +1,1 @@
+"""Part data: ratings and models by part number, each figure with its source."""

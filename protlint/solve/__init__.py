@@ -1,0 +1,1 @@
+"""Solving: what a limiter and its surroundings really do."""

@@ -1,0 +1,75 @@
+"""A solvable circuit: a limiter with its surroundings, free of any board.
+
+Everything the solver needs and nothing else. The bench makes one from a limiter and its board; tests make one by hand.
+Node names are plain strings; ``0`` is not special: ground is a net held at 0 V.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+from protlint.limits import Range
+
+
+@dataclass(frozen=True, slots=True)
+class Device:
+    """One two- or three-terminal device.
+
+    ``kind`` is npn, pnp, nmos, pmos, diode, zener, resistor, capacitor or inductor (a Darlington part is two devices).
+    ``nodes`` are (collector, base, emitter), (drain, gate, source), (anode, cathode) or (1, 2). ``model`` holds published
+    parameter names in SI units at 27 degC; a resistor's are R, TC1, TC2 (at 27 degC), a capacitor's C, an inductor's L.
+    ``tolerance`` is a resistor's fraction; ``hfe`` the bounds of BF; ``vbe_spread_V`` how far V_BE may lie below and above.
+    ``rise_K`` is the device's temperature above ambient. ``assumed`` says in plain words what of this was assumed.
+    """
+
+    name: str
+    kind: str
+    nodes: tuple[str, ...]
+    model: Mapping[str, float]
+    tolerance: float = 0.0
+    hfe: tuple[float, float] | None = None
+    vbe_spread_V: tuple[float, float] = (0.0, 0.0)
+    rise_K: float = 0.0
+    assumed: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Drive:
+    """What drives the limiter's stage: the node it holds and its two stated ends.
+
+    Which end turns the pass device on hardest is found by solving. ``current_A`` None means stiff.
+    """
+
+    node: str
+    low_V: Range
+    high_V: Range
+    resistance_ohm: float = 0.0
+    current_A: float | None = None
+    assumed: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Circuit:
+    """The circuit of one limiter.
+
+    ``held`` are the nodes at a fixed voltage (supplies); ``shorts`` the nodes of ``held`` a short may tie the output to,
+    never empty; ``pass_devices`` and ``shunt`` device names (a diode string has several shunt devices);
+    ``output_V`` the working output voltage where stated; ``output_reach_V`` the lowest and highest voltage the output can
+    have (the supplies around it); ``ground_leg`` true where the limit depends on the output voltage by design (a preset leg
+    to ground or to the far supply).
+    """
+
+    devices: tuple[Device, ...]
+    held: Mapping[str, Range]
+    drive: Drive
+    output: str
+    shorts: tuple[str, ...]
+    shunt: tuple[str, ...]
+    pass_devices: tuple[str, ...]
+    sense: tuple[str, ...]
+    output_V: float | None = None
+    output_reach_V: tuple[float, float] = (0.0, 0.0)
+    ground_leg: bool = False
+    regulates: bool = False
+    assumed: tuple[str, ...] = field(default_factory=tuple)

@@ -1,0 +1,124 @@
+"""The answers of the solver, as plain numbers."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+Pair = tuple[float, float]
+"""A low and a high end."""
+
+
+@dataclass(frozen=True, slots=True)
+class Currents:
+    """The currents of one limiter at one ambient; None where there is none or it could not be worked out."""
+
+    ambient_degC: float
+    begins_A: float | None
+    holds_A: float | None
+    carries_A: float | None
+    most_A: float | None
+    unlimited_A: float | None
+    shunt_A: float | None
+    pass_A: float | None
+    limited_by_short: str | None
+    """``limiter`` or ``drive``."""
+    limited_by_output: str | None
+    begins_range_A: Pair | None = None
+    holds_range_A: Pair | None = None
+    carries_range_A: Pair | None = None
+    most_range_A: Pair | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class State:
+    """One device at one solved point: current into its first terminal, voltage across it, dissipation.
+
+    ``voltage_V`` is V_CE, V_DS or the voltage from first to last node; ``control_A`` a bipolar's base current;
+    ``power_W`` the whole dissipation.
+    """
+
+    current_A: float
+    voltage_V: float
+    power_W: float
+    control_A: float = 0.0
+    control_V: float = 0.0
+
+
+@dataclass(frozen=True, slots=True)
+class Point:
+    """One solved point of the locus: the output voltage, the output current, and every device's state."""
+
+    output_V: float
+    output_A: float
+    states: Mapping[str, State]
+
+
+@dataclass(frozen=True, slots=True)
+class Sensitivity:
+    """How one device's parameter moves holds: relative change of holds per relative change (or per volt for V_BE)."""
+
+    device: str
+    parameter: str
+    relative: float
+
+
+@dataclass(frozen=True, slots=True)
+class Regulates:
+    """For a stage whose drive nothing takes away: its current, what moves it, and the least voltage it needs."""
+
+    current_A: float
+    per_supply_volt: float
+    per_kelvin: float
+    compliance_V: float
+
+
+@dataclass(frozen=True, slots=True)
+class Loop:
+    """The small-signal answers at the held short."""
+
+    least_damping: float | None
+    at_Hz: float | None
+    worst_damping: float | None
+    low_frequency_gain: float | None
+    crossover_Hz: float | None
+    phase_margin_deg: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class Step:
+    """The answers of the step into the short."""
+
+    settles: bool
+    delay_s: float | None
+    peak_A: float | None
+    pass_energy_J: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class Solution:
+    """All that was worked out for one limiter.
+
+    ``currents`` stand in the order of the three ambients; ``locus``, ``held_short`` and ``worst_point`` (the locus point of
+    greatest pass dissipation) are nominal at usual ambient. ``not_solved`` says why where the circuit could not be solved (the rest is then
+    empty or None).
+    """
+
+    currents: tuple[Currents, ...] = ()
+    locus: tuple[Point, ...] = ()
+    held_short: Point | None = None
+    worst_point: Point | None = None
+    at_carry: Point | None = None
+    high_short: tuple[Point, ...] = ()
+    """The held short at each ambient with every corner set for the most current."""
+    high_worst: tuple[Point, ...] = ()
+    """The point of greatest pass dissipation at each ambient, same corner."""
+    sensitivities: tuple[Sensitivity, ...] = ()
+    regulates: Regulates | None = None
+    loop: Loop | None = None
+    step: Step | None = None
+    corners: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
+    """For the high and low end of holds: device.parameter to the signed step taken."""
+    assumed: tuple[str, ...] = ()
+    not_checked: tuple[tuple[str, str], ...] = ()
+    not_solved: str | None = None

@@ -1,0 +1,108 @@
+"""Files in and files out, and the one family of errors.
+
+Every error a user can meet is a :class:`ProtlintError`: it carries the file, the line and the column it is about and the
+exit code of the command, and it prints as one line ``file:line:column: message``.
+"""
+
+from __future__ import annotations
+
+import contextlib
+import os
+import sys
+import tempfile
+from pathlib import Path
+
+
+class ProtlintError(Exception):
+    """Something the user gave cannot be worked with.
+
+    Parameters
+    ----------
+    message : what is wrong and what to do about it, one line, no full stop at the end.
+    file : the file's name as the user wrote it, ``<standard input>`` for a pipe, or None.
+    line, column : counted from 1, or None where the error has no place.
+    """
+
+    exit_code = 2
+
+    def __init__(
+        self, message: str, *, file: str | None = None, line: int | None = None, column: int | None = None
+    ) -> None:
+        super().__init__(message)
+        self.message = message
+        self.file = file
+        self.line = line
+        self.column = column
+
+    def __str__(self) -> str:
+        place = ":".join(str(part) for part in (self.file, self.line, self.column) if part is not None)
+        return f"{place}: {self.message}" if place else self.message
+
+
+class InputError(ProtlintError, ValueError):
+    """The content of a file is wrong."""
+
+
+class FileError(ProtlintError, OSError):
+    """A file cannot be read or written."""
+
+
+class UsageError(ProtlintError, ValueError):
+    """A command or a function was called in a way that cannot work."""
+
+
+def read_bytes(path: str | Path) -> tuple[bytes, str]:
+    """Return a file's bytes and the name to call it by; ``-`` is standard input.
+
+    Raises
+    ------
+    FileError : the file is missing, a folder, or cannot be read.
+    """
+    if str(path) == "-":
+        return sys.stdin.buffer.read(), "<standard input>"
+    name = shown_name(path)
+    try:
+        return Path(path).read_bytes(), name
+    except FileNotFoundError:
+        raise FileError("no such file", file=name) from None
+    except IsADirectoryError:
+        raise FileError("this is a folder, not a file", file=name) from None
+    except OSError as error:
+        raise FileError(f"cannot be read ({error.strerror})", file=name) from None
+
+
+def shown_name(path: str | Path) -> str:
+    """Return the name a file goes by in messages and reports.
+
+    Relative with forward slashes where the file lies below the working folder, else the bare file name, so that the same
+    input gives the same report wherever it lies.
+    """
+    absolute = Path(path).absolute()
+    try:
+        return absolute.relative_to(Path.cwd()).as_posix()
+    except ValueError:
+        return absolute.name
+
+
+def write_whole(path: str | Path, text: str) -> None:
+    """Write a text file whole or not at all: into a temporary file beside it, then renamed over it.
+
+    Raises
+    ------
+    FileError : the file cannot be written; what stood there before still stands.
+    """
+    target = Path(path)
+    temporary: str | None = None
+    try:
+        handle, temporary = tempfile.mkstemp(prefix=f".{target.name}.", dir=target.parent)
+        with os.fdopen(handle, "w", encoding="utf-8", newline="\n") as stream:
+            stream.write(text)
+        umask = os.umask(0)
+        os.umask(umask)
+        Path(temporary).chmod(0o666 & ~umask)
+        Path(temporary).replace(target)
+    except OSError as error:
+        if temporary is not None:
+            with contextlib.suppress(OSError):
+                Path(temporary).unlink()
+        raise FileError(f"cannot be written ({error.strerror})", file=shown_name(path)) from None

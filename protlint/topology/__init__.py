@@ -1,0 +1,1 @@
+"""Finding limiters: the rule language and the matcher."""

@@ -1,0 +1,59 @@
+"""What the matcher hands on: a limiter, or a fault, as a group of parts with roles and named nets."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+ROLES = (
+    "pass", "driver", "sense", "shunt", "base_stop", "preset", "steering", "compensation", "drive", "others",
+)  # fmt: skip
+"""The roles of a limiter, as every report names them."""
+
+NETS = ("drive", "feed", "sense", "far", "output")
+"""The nets of a limiter: the shunt's collector side, where the drive comes from, both ends of the sense resistance, the
+output."""
+
+
+@dataclass(frozen=True, slots=True)
+class Limiter:
+    """A found group around one shunt.
+
+    ``id`` is the output pass device's part id (in parallel, the sensed one). ``elements`` maps a role of the rule, in its
+    full form (``preset.upper``, ``compensation``), to board element indices; ``roles`` maps the ten report roles to part
+    ids; ``nets`` maps the five report nets to board net indices, ``bound`` every net name of the rule.
+    """
+
+    id: str
+    topology: str
+    polarity: str
+    """``n`` where the shunt or pass device is NPN or N-channel, ``p`` for the mirror."""
+    elements: Mapping[str, tuple[int, ...]]
+    roles: Mapping[str, tuple[str, ...]]
+    nets: Mapping[str, int | None]
+    bound: Mapping[str, int] = field(default_factory=dict)
+    also_matched: tuple[str, ...] = ()
+    """Other topologies that fit the same shunt and gave way, for the survey."""
+
+
+@dataclass(frozen=True, slots=True)
+class FaultMatch:
+    """A fault rule that fitted: the fault's name, the sound topology it spoils, and the same bindings as a limiter.
+
+    ``says`` is the rule's sentence with names filled in; ``exchange`` the connections to exchange as (part id, pin role).
+    """
+
+    fault: str
+    spoils: str
+    group: Limiter
+    says: str
+    exchange: tuple[tuple[tuple[str, str], tuple[str, str]], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Found:
+    """All that matching found on a board, in board order, and what it wants to tell the survey."""
+
+    limiters: tuple[Limiter, ...]
+    faults: tuple[FaultMatch, ...] = ()
+    remarks: tuple[str, ...] = ()
