@@ -19,7 +19,11 @@ if TYPE_CHECKING:
 def __getattr__(name: str) -> Any:
     import importlib
 
-    homes = {"read_netlist": "protlint.netlist", "review": "protlint.pipeline", "ProtlintError": "protlint.sources"}
+    homes = {
+        "read_netlist": "protlint.netlist",
+        "review": "protlint.pipeline",
+        "ProtlintError": "protlint.sources",
+    }
     if name not in homes:
         raise AttributeError(f"module 'protlint' has no attribute {name!r}")
     return getattr(importlib.import_module(homes[name]), name)

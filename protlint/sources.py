@@ -106,3 +106,20 @@ def write_whole(path: str | Path, text: str) -> None:
             with contextlib.suppress(OSError):
                 Path(temporary).unlink()
         raise FileError(f"cannot be written ({error.strerror})", file=shown_name(path)) from None
+
+
+def data_folder(name: str, checkout_name: str | None = None) -> Path:
+    """Return a folder of protlint's own data (``rules``, ``demo``), in a wheel, an editable install or a checkout.
+
+    A wheel carries the folder inside the package; in a checkout and an editable install it stands one level up, under
+    ``checkout_name`` where that differs.
+
+    Raises
+    ------
+    FileError : the installation is incomplete.
+    """
+    package = Path(__file__).parent
+    for folder in (package / name, package.parent / (checkout_name or name)):
+        if folder.is_dir():
+            return folder
+    raise FileError(f"protlint's own folder {name!r} is missing: install protlint again", file=name)
