@@ -25,9 +25,7 @@ class ProtlintError(Exception):
 
     exit_code = 2
 
-    def __init__(
-        self, message: str, *, file: str | None = None, line: int | None = None, column: int | None = None
-    ) -> None:
+    def __init__(self, message: str, *, file: str | None = None, line: int | None = None, column: int | None = None) -> None:
         super().__init__(message)
         self.message = message
         self.file = file

@@ -99,9 +99,9 @@ class Step:
 class Solution:
     """All that was worked out for one limiter.
 
-    ``currents`` stand in the order of the three ambients; ``locus``, ``held_short`` and ``worst_point`` (the locus point of
-    greatest pass dissipation) are nominal at usual ambient. ``not_solved`` says why where the circuit could not be solved (the rest is then
-    empty or None).
+    ``currents`` stand in the order of the three ambients. ``locus``, ``held_short`` and ``worst_point`` (the locus point of
+    greatest pass dissipation) are nominal at usual ambient. ``not_solved`` says why where the circuit could not be solved;
+    the rest is then empty or None.
     """
 
     currents: tuple[Currents, ...] = ()
