@@ -2,7 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+import hashlib
+import json
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass, replace
 from typing import Literal
 
 Level = Literal["error", "warning", "note"]
@@ -10,6 +13,48 @@ Level = Literal["error", "warning", "note"]
 
 LEVELS: tuple[Level, ...] = ("error", "warning", "note")
 """Worst first."""
+
+
+IDENTIFYING_ROLES = ("pass", "driver", "sense", "shunt")
+"""The roles whose parts say which limiter it is: what is added to mend a finding must not rename the others."""
+
+
+def identifying_parts(roles: Mapping[str, Sequence[str]]) -> tuple[str, ...]:
+    """Return the parts a limiter is known by in fingerprints, from its report roles."""
+    return tuple(part for role in IDENTIFYING_ROLES for part in roles.get(role, ()))
+
+
+def fingerprint(finding: Finding, limiter_parts: Sequence[str] = ()) -> str:
+    """Return the name a finding keeps from one revision of a board to the next.
+
+    It is made of the check, the parts that identify the limiter, the finding's own parts and its subject. Lines, net names,
+    figures and the order of parts do not go into it, nor does the case of a designator, which exporters change.
+    """
+    facts = [
+        finding.check,
+        sorted(part.casefold() for part in limiter_parts),
+        sorted(part.casefold() for part in finding.parts),
+        finding.subject,
+    ]
+    digest = hashlib.sha256(json.dumps(facts).encode("ascii")).hexdigest()
+    return f"{finding.check}-{digest[:12]}"
+
+
+def stamp_fingerprints(
+    findings: Iterable[Finding], limiter_parts: Mapping[str, Sequence[str]] | None = None
+) -> tuple[Finding, ...]:
+    """Return the findings with their fingerprints, none twice: a repeated one is counted on, ``-2``, ``-3`` ...
+
+    ``limiter_parts`` gives the identifying parts by limiter id; a finding about the board has none.
+    """
+    known = limiter_parts or {}
+    seen: dict[str, int] = {}
+    stamped = []
+    for finding in findings:
+        name = fingerprint(finding, known.get(finding.limiter or "", ()))
+        seen[name] = seen.get(name, 0) + 1
+        stamped.append(replace(finding, fingerprint=name if seen[name] == 1 else f"{name}-{seen[name]}"))
+    return tuple(stamped)
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,6 +82,7 @@ class Finding:
     ``subject`` tells two findings of one check about the same parts apart (a quantity, a net's role, never a net's
     name or a number that moves with values); it goes into the fingerprint and is not printed.
     ``assumption`` is true where the verdict rests on an assumed value: such a finding is never an error.
+    ``waived`` is the reason a waiver gives, ``waived_by`` who gave it.
     """
 
     check: str
@@ -54,6 +100,7 @@ class Finding:
     column: int | None = None
     fingerprint: str = ""
     waived: str | None = None
+    waived_by: str | None = None
 
 
 @dataclass(frozen=True, slots=True)

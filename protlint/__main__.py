@@ -1,0 +1,7 @@
+"""``python -m protlint`` is the command ``protlint``."""
+
+from __future__ import annotations
+
+from protlint.cli import main
+
+main()

@@ -1,0 +1,33 @@
+"""The command line: parse, call the pipeline, print. No electronics here.
+
+Only click is imported at the top of these modules; everything else is loaded by the command that needs it.
+"""
+
+from __future__ import annotations
+
+import click
+
+from protlint import __version__
+from protlint.cli.review import review
+from protlint.cli.shell import NearestGroup, run
+
+
+@click.group(
+    cls=NearestGroup,
+    context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100},
+    epilog="`protlint COMMAND --help` shows a command's options with examples. A good start: protlint demo bench",
+)
+@click.version_option(__version__, prog_name="protlint", message="%(prog)s %(version)s")
+def commands() -> None:
+    """Find every protective current limiter in an EDIF 2 0 0 netlist, solve it, and say what is wrong with it.
+
+    A review aid for qualified people: a limiter is no fuse; local codes and licensed practice decide.
+    """
+
+
+commands.add_command(review)
+
+
+def main() -> None:
+    """Run the command line and leave with its exit code: 0 the gate holds, 1 it does not, 2 the work could not be done."""
+    raise SystemExit(run(commands))

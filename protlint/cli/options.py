@@ -1,0 +1,37 @@
+"""Options that several commands take, in the same words."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from datetime import date
+from typing import Any
+
+import click
+
+Command = Callable[..., Any]
+
+
+def reading_options(command: Command) -> Command:
+    """Add the options that say how a netlist is read and what is known besides it."""
+    for option in reversed(
+        (
+            click.option("--limits", metavar="FILE", help="Supplies, drive, and what each limiter must carry."),
+            click.option("--parts", metavar="FILE", multiple=True, help="Part data, besides protlint's own. Repeatable."),
+            click.option("--parts-list", metavar="CSV", help="Values and part numbers by designator."),
+            click.option("--rules", metavar="FOLDER", multiple=True, help="Rule files of your own. Repeatable."),
+            click.option("--design", metavar="NAME", help="Which design of the file, where it holds several."),
+            click.option("--encoding", metavar="NAME", help="How the file's text is coded (else UTF-8, else cp1252)."),
+        )
+    ):
+        command = option(command)
+    return command
+
+
+def as_date(_context: click.Context, _option: click.Parameter, text: str | None) -> date | None:
+    """Return the date an option gives, as click's callbacks do."""
+    if text is None:
+        return None
+    try:
+        return date.fromisoformat(text)
+    except ValueError:
+        raise click.BadParameter(f"{text!r} is no date: write it as 2027-06-30") from None

@@ -1,0 +1,218 @@
+"""A review as one plain dict: the JSON report, and the single truth that every other face renders.
+
+Numbers are SI floats rounded to six significant digits, so that the last bits of a numerical library do not change the
+bytes of a report; what is not finite or not known is null. ``review-1.schema.json`` beside this module fixes the shape.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable, Sequence
+from dataclasses import asdict, fields
+from typing import Any
+
+from protlint import __version__
+from protlint.board.graph import Board
+from protlint.findings import Finding
+from protlint.limits import LimiterLimits
+from protlint.pipeline import Review, ReviewedLimiter
+from protlint.report.shape import CAUTION, Document, summarised
+from protlint.solve.solution import Currents, Loop, Point, Step
+from protlint.topology.limiter import NETS, ROLES
+
+SIGNIFICANT_DIGITS = 6
+
+UNIT_OF_KIND = {"resistor": "ohm", "capacitor": "F", "inductor": "H", "zener": "V"}
+
+
+def document(review: Review) -> Document:
+    """Return the JSON report of one netlist, version 1: every promised key, null where unknown."""
+    limiters = [_limiter(item, review) for item in review.limiters]
+    findings = [_finding(finding) for finding in review.findings]
+    netlist = review.board.netlist
+    return {
+        "report": 1,
+        "protlint": __version__,
+        "caution": CAUTION,
+        "netlist": {
+            "file": netlist.file,
+            "sha256": netlist.sha256,
+            "design": netlist.design,
+            "parts": len(netlist.parts),
+            "nets": len(netlist.nets),
+            "pins": sum(len(part.pins) for part in netlist.parts),
+        },
+        "limits": {"file": review.limits.file, "ambient_degC": _numbers(review.limits.ambient_degC)},
+        "summary": summarised(limiters, findings),
+        "limiters": limiters,
+        "findings": findings,
+        "warnings": [
+            {"message": warning.message, "line": warning.line, "column": warning.column, "count": warning.count}
+            for warning in netlist.warnings
+        ],
+        "assumed": list(review.assumed),
+        "remarks": list(review.remarks),
+    }
+
+
+def rounded(value: float | None) -> float | None:
+    """Return a number of six significant digits, or None where it is not finite."""
+    if value is None or not math.isfinite(value):
+        return None
+    return float(f"{value:.{SIGNIFICANT_DIGITS}g}") + 0.0
+
+
+def _limiter(item: ReviewedLimiter, review: Review) -> Document:
+    limiter, solution = item.limiter, item.solution
+    currents = [_currents(row) for row in solution.currents]
+    if not currents:
+        currents = [_currents(_no_currents(ambient)) for ambient in review.limits.ambient_degC]
+    return {
+        "id": limiter.id,
+        "topology": limiter.topology,
+        "polarity": limiter.polarity,
+        "verdict": item.verdict,
+        "roles": {role: list(limiter.roles.get(role, ())) for role in ROLES},
+        "nets": {net: _net_name(review.board, limiter.nets.get(net)) for net in NETS},
+        "parts": _parts(item, review.board),
+        "needs": _needs(item.needs),
+        "currents": currents,
+        "in_hand": _in_hand(item.needs, currents),
+        "locus": [{"output_V": rounded(point.output_V), "holds_A": rounded(point.output_A)} for point in solution.locus],
+        "regulates": _plain(solution.regulates),
+        "loop": _plain(solution.loop) or _unknown(Loop),
+        "step": _plain(solution.step) or _unknown(Step),
+        "held_short": _point(solution.held_short),
+        "worst_point": _point(solution.worst_point),
+        "sensitivities": [_plain(row) for row in solution.sensitivities],
+        "not_solved": solution.not_solved,
+        "assumed": list(item.assumed),
+        "not_checked": [{"check": row.check, "needs": row.needs} for row in item.not_checked],
+    }
+
+
+def _currents(row: Currents) -> Document:
+    def of(name: str) -> float | None:
+        return rounded(getattr(row, name))
+
+    names = ("begins_A", "holds_A", "carries_A", "most_A", "unlimited_A", "shunt_A", "pass_A")
+    ranges = ("begins_range_A", "holds_range_A", "carries_range_A", "most_range_A")
+    return {
+        "ambient_degC": row.ambient_degC,
+        **{name: of(name) for name in names},
+        "limited_by": {"short": row.limited_by_short, "output": row.limited_by_output},
+        **{name: _pair(getattr(row, name)) for name in ranges},
+    }
+
+
+def _no_currents(ambient: float) -> Currents:
+    return Currents(ambient, None, None, None, None, None, None, None, None, None)
+
+
+def _unknown(kind: type[Loop] | type[Step]) -> Document:
+    return dict.fromkeys((field.name for field in fields(kind)), None)
+
+
+def _in_hand(needs: LimiterLimits, currents: Sequence[Document]) -> Document:
+    """Compare the ends of carries and most, each at its own worst ambient, with what the board needs."""
+    lows = [(row["carries_range_A"][0], row["ambient_degC"]) for row in currents if row["carries_range_A"]]
+    highs = [(row["most_range_A"][1], row["ambient_degC"]) for row in currents if row["most_range_A"]]
+    carry_A, carry_at = min(lows, default=(None, None))
+    most_A, most_at = max(highs, default=(None, None))
+    return {
+        "least_carries_A": carry_A,
+        "least_carries_at_degC": carry_at,
+        "carry_A": rounded(carry_A - needs.carry_A) if carry_A is not None and needs.carry_A is not None else None,
+        "greatest_most_A": most_A,
+        "greatest_most_at_degC": most_at,
+        "cap_A": rounded(needs.cap_A - most_A) if most_A is not None and needs.cap_A is not None else None,
+    }
+
+
+def _needs(needs: LimiterLimits) -> Document:
+    return {
+        "carry_A": rounded(needs.carry_A),
+        "cap_A": rounded(needs.cap_A),
+        "output_V": rounded(needs.output_V),
+        "short_s": rounded(needs.short_s),
+        "short_continuous": needs.short_s == math.inf,
+        "shorted_to": list(needs.shorted_to),
+        "regulate_A": rounded(needs.regulate_A),
+        "peak": _plain(needs.peak),
+    }
+
+
+def _parts(item: ReviewedLimiter, board: Board) -> list[Document]:
+    """List the limiter's parts once each, in the order of the roles, with what is known of them."""
+    by_id = {part.id: part for part in board.parts}
+    listed: dict[str, Document] = {}
+    for role in ROLES:
+        for name in item.limiter.roles.get(role, ()):
+            part = by_id.get(name)
+            listed.setdefault(
+                name,
+                {
+                    "id": name,
+                    "role": role,
+                    "kind": part.kind if part else None,
+                    "part_number": part.part_number if part else None,
+                    "value": rounded(part.values.value) if part else None,
+                    "unit": UNIT_OF_KIND.get(part.kind) if part else None,
+                    "text": part.values.text if part else None,
+                    "line": part.part.line if part else None,
+                    "column": part.part.column if part else None,
+                },
+            )
+    return list(listed.values())
+
+
+def _finding(finding: Finding) -> Document:
+    return {
+        "check": finding.check,
+        "level": finding.level or "warning",
+        "limiter": finding.limiter,
+        "parts": list(finding.parts),
+        "nets": list(finding.nets),
+        "message": finding.message,
+        "working": [_plain(line) for line in finding.working],
+        "remedy": finding.remedy,
+        "assumption": finding.assumption,
+        "file": finding.file,
+        "line": finding.line,
+        "column": finding.column,
+        "fingerprint": finding.fingerprint,
+        "waived": finding.waived,
+        "waived_by": finding.waived_by,
+    }
+
+
+def _point(point: Point | None) -> Document | None:
+    if point is None:
+        return None
+    return {
+        "output_V": rounded(point.output_V),
+        "output_A": rounded(point.output_A),
+        "devices": [{"device": name, **_plain(state)} for name, state in point.states.items()],
+    }
+
+
+def _net_name(board: Board, index: int | None) -> str | None:
+    return None if index is None else board.nets[index].name
+
+
+def _plain(value: Any) -> Any:
+    """Return a dataclass of plain fields as a dict of rounded numbers and texts."""
+    if value is None:
+        return None
+    return {key: rounded(item) if isinstance(item, float) else item for key, item in asdict(value).items()}
+
+
+def _numbers(values: Iterable[float]) -> list[float | None]:
+    return [rounded(value) for value in values]
+
+
+def _pair(ends: tuple[float, float] | None) -> list[float] | None:
+    if ends is None:
+        return None
+    low, high = (rounded(end) for end in ends)
+    return None if low is None or high is None else [low, high]

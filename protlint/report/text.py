@@ -1,0 +1,276 @@
+"""The report for people at a terminal: the worst limiter first, 80 columns, figures with their units."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from typing import Any
+
+from protlint.findings import LEVELS
+from protlint.report.figures import UNKNOWN, ambient, counted, figure, percent, three_digits, triple, unit_for
+from protlint.report.layout import painted, shortened, table, width, wrapped
+from protlint.report.safe import terminal, throughout
+from protlint.report.shape import VERDICTS, Document, boards_of
+
+INDEX_FROM = 12
+"""From this many findings on an index by check stands above them."""
+
+ROLE_WORDS = {
+    "pass": "pass", "driver": "driver", "sense": "sense", "shunt": "shunt", "base_stop": "base stop", "preset": "preset",
+    "steering": "steering", "compensation": "compensation", "drive": "drive", "others": "also",
+}  # fmt: skip
+
+POLARITY_WORDS = {"n": "n type", "p": "p type"}
+
+
+def rendered_text(report: Document, *, colour: bool = False) -> str:
+    """Return the report as text lines of 80 columns; ``colour`` adds the colours of a terminal."""
+    safe: Document = throughout(report, terminal)
+    lines: list[str] = []
+    for board in boards_of(safe):
+        lines += [*_board(board, colour), ""]
+    if "boards" in safe:
+        lines += _together(safe, colour)
+    lines += wrapped(safe["caution"])
+    return "\n".join(lines) + "\n"
+
+
+def summary_line(board: Document) -> str:
+    """Return the count of limiters, verdicts and findings in one sentence."""
+    summary = board["summary"]
+    verdicts = [f"{summary[word.replace(' ', '_')]} {word}" for word in VERDICTS if summary[word.replace(" ", "_")]]
+    found = counted(summary["limiters"], "limiter") if summary["limiters"] else "no limiter found"
+    parts = [found + (f" ({', '.join(verdicts)})" if verdicts else "")]
+    parts += [counted(summary[f"{level}s"], level) for level in LEVELS]
+    if summary["waived"]:
+        parts.append(f"{summary['waived']} waived")
+    if summary["not_checked"]:
+        parts.append(f"{summary['not_checked']} not checked")
+    return ", ".join(parts)
+
+
+def sections(board: Document) -> list[tuple[Document | None, str | None, list[Document]]]:
+    """Return (limiter or None, its id, its findings) with the worst first; findings of no limiter stand by their own id."""
+    by_id: dict[str | None, list[Document]] = {}
+    for finding in board["findings"]:
+        by_id.setdefault(finding["limiter"], []).append(finding)
+    known = {limiter["id"] for limiter in board["limiters"]}
+    groups = [(limiter, limiter["id"], by_id.get(limiter["id"], [])) for limiter in board["limiters"]]
+    groups += [(None, name, found) for name, found in by_id.items() if name not in known]
+    ordered = [(limiter, name, sorted(found, key=_finding_rank)) for limiter, name, found in groups]
+    return sorted(ordered, key=_section_rank)
+
+
+def _finding_rank(finding: Document) -> tuple[bool, int]:
+    return finding["waived"] is not None, LEVELS.index(finding["level"])
+
+
+def _section_rank(section: tuple[Document | None, str | None, list[Document]]) -> tuple[int, int]:
+    limiter, _, found = section
+    level = min((LEVELS.index(finding["level"]) for finding in found if finding["waived"] is None), default=len(LEVELS))
+    if limiter is not None:
+        return VERDICTS.index(limiter["verdict"]), level
+    return VERDICTS.index("fails" if level < LEVELS.index("note") else "passes"), level
+
+
+def _board(board: Document, colour: bool) -> list[str]:
+    netlist = board["netlist"]
+    title = f"{netlist['file']}: {summary_line(board)}"
+    lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
+    if not board["limiters"] and not board["findings"]:
+        lines += ["", *wrapped("`protlint survey` on this file shows what was read and what is missing.", indent=2)]
+    if len(board["findings"]) >= INDEX_FROM:
+        lines += _index(board["findings"], colour)
+    for limiter, name, found in sections(board):
+        lines += ["", *_section(limiter, name, found, colour)]
+    lines += _assumed(board, colour)
+    lines += _reading(board, colour)
+    return lines
+
+
+def _index(findings: Sequence[Document], colour: bool) -> list[str]:
+    """List the checks that fired with their counts and limiters, so that a long report can be surveyed."""
+    groups: dict[tuple[int, str], list[Document]] = {}
+    for finding in findings:
+        if finding["waived"] is None:
+            groups.setdefault((LEVELS.index(finding["level"]), finding["check"]), []).append(finding)
+    lines = ["", painted("Findings by check", "heading", colour=colour)]
+    for (level, check), found in sorted(groups.items()):
+        names = dict.fromkeys(finding["limiter"] or "the board" for finding in found)
+        lead = f"  {len(found):>4} {LEVELS[level]:<7} {shortened(check, 30):<30}  "
+        lines.append(lead + shortened(", ".join(names), 80 - width(lead)))
+    return lines
+
+
+def _section(limiter: Document | None, name: str | None, found: Sequence[Document], colour: bool) -> list[str]:
+    if limiter is None:
+        title = f"{name}: not a working limiter" if name else "The board"
+        lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
+    else:
+        lines = _heading(limiter, colour) + _currents(limiter) + _behaviour(limiter)
+    for finding in found:
+        lines += ["", *_finding(finding, colour)]
+    if limiter is not None and limiter["not_checked"]:
+        lines += ["", *_not_checked(limiter["not_checked"], colour)]
+    return lines
+
+
+def _heading(limiter: Document, colour: bool) -> list[str]:
+    verdict = limiter["verdict"]
+    kind = f"{limiter['topology']}, {POLARITY_WORDS.get(limiter['polarity'], limiter['polarity'])}"
+    lines = wrapped(f"{limiter['id']} {verdict}: {kind}", indent=2, first="")
+    head = limiter["id"] + " "
+    if lines[0].startswith(head + verdict):
+        rest = lines[0][len(head) + len(verdict) :]
+        lines[0] = painted(limiter["id"], "heading", colour=colour) + " " + painted(verdict, verdict, colour=colour) + rest
+    roles = [f"{ROLE_WORDS[role]} {', '.join(parts)}" for role, parts in limiter["roles"].items() if parts]
+    lines += wrapped("; ".join(roles), indent=4, first="  ")
+    nets = [f"{role} {net}" for role, net in limiter["nets"].items() if net is not None]
+    if nets:
+        lines += wrapped("nets: " + ", ".join(nets), indent=4, first="  ")
+    return lines
+
+
+def _currents(limiter: Document) -> list[str]:
+    """Show carries, most and holds at the three ambients against what the board needs."""
+    if limiter["not_solved"]:
+        return ["", *wrapped(f"could not be solved: {limiter['not_solved']}", indent=4, first="  ")]
+    columns = ("carries", "most", "holds")
+    needs, hand, currents = limiter["needs"], limiter["in_hand"], limiter["currents"]
+    unit, scale = unit_for((row[f"{name}_A"] for row in currents for name in columns), "A")
+    rows = [["ambient", *columns]]
+    for row in currents:
+        cells = (triple(_scaled(row[f"{name}_range_A"], scale), _scaled(row[f"{name}_A"], scale)) for name in columns)
+        rows.append([ambient(row["ambient_degC"]), *cells])
+    wanted = ((needs["carry_A"], "at least", hand["carry_A"]), (needs["cap_A"], "at most", hand["cap_A"]))
+    if any(need is not None for need, _, _ in wanted):
+        stated = [f"{words} {three_digits(need / scale)}" if need is not None else UNKNOWN for need, words, _ in wanted]
+        rows.append(["the board needs", *stated, ""])
+        rows.append(["in hand", *(_spare(spare, need, scale) for need, _, spare in wanted), ""])
+    return ["", f"  Currents in {unit}: low / usual / high", *table(rows)]
+
+
+def _scaled(value: Any, scale: float) -> Any:
+    if isinstance(value, list):
+        return [end / scale for end in value]
+    return None if value is None else value / scale
+
+
+def _spare(spare: float | None, need: float | None, scale: float) -> str:
+    if spare is None or not need:
+        return UNKNOWN
+    return f"{three_digits(spare / scale)} ({percent(spare / need)})"
+
+
+def _behaviour(limiter: Document) -> list[str]:
+    """Say in a line each what the table has no room for: where limiting begins, the loop, the step, the drive."""
+    lines: list[str] = []
+    usual = limiter["currents"][len(limiter["currents"]) // 2]
+    facts = []
+    if usual["begins_A"] is not None:
+        facts.append(f"limiting begins at {figure(usual['begins_A'], 'A')}")
+    if usual["unlimited_A"] is not None:
+        facts.append(f"without the shunt {figure(usual['unlimited_A'], 'A')}")
+    if usual["shunt_A"] is not None:
+        facts.append(f"the shunt takes {figure(usual['shunt_A'], 'A')}")
+    if facts:
+        lines += wrapped(f"At {ambient(usual['ambient_degC'])}: {', '.join(facts)}.", indent=4, first="  ")
+    for place, words in (("output", "at the working output"), ("short", "in the short")):
+        at = [ambient(row["ambient_degC"]) for row in limiter["currents"] if row["limited_by"][place] == "drive"]
+        if at:
+            lines += wrapped(f"At {', '.join(at)} the drive gives out {words}, not the limiter.", indent=4, first="  ")
+    lines += _regulates(limiter["regulates"])
+    loop, step = limiter["loop"], limiter["step"]
+    if loop["least_damping"] is not None:
+        worst = f", {figure(loop['worst_damping'])} at worst" if loop["worst_damping"] is not None else ""
+        text = f"Loop: least damping {figure(loop['least_damping'])} at {figure(loop['at_Hz'], 'Hz')}{worst}."
+        lines += wrapped(text, indent=4, first="  ")
+    if step["settles"] is not None:
+        settled = f"settles after {figure(step['delay_s'], 's')}" if step["settles"] else "does not settle"
+        lines += wrapped(f"Step into the short: {settled}, peak {figure(step['peak_A'], 'A')}.", indent=4, first="  ")
+    return ["", *lines] if lines else []
+
+
+def _regulates(regulates: Document | None) -> list[str]:
+    if regulates is None:
+        return []
+    text = (
+        f"Regulates {figure(regulates['current_A'], 'A')}: {figure(regulates['per_supply_volt'], 'A')} a supply volt, "
+        f"{figure(regulates['per_kelvin'], 'A')} a kelvin, from {figure(regulates['compliance_V'], 'V')} up."
+    )
+    return wrapped(text, indent=4, first="  ")
+
+
+def _finding(finding: Document, colour: bool) -> list[str]:
+    level = finding["level"] if finding["waived"] is None else "waived"
+    place = f" ({', '.join(finding['parts'])})" if finding["parts"] else ""
+    mark = "; rests on an assumption" if finding["assumption"] else ""
+    indent = 10
+    lead = f"  {level:<7} "
+    lines = wrapped(finding["check"] + place + mark, indent=indent, first=lead)
+    lines[0] = lines[0].replace(level, painted(level, level, colour=colour), 1)
+    lines += wrapped(finding["message"], indent=indent)
+    lines += _figure_that_matters(finding["working"], indent)
+    if finding["remedy"]:
+        lines += wrapped(f"remedy: {finding['remedy']}", indent=indent)
+    if finding["waived"] is not None:
+        by = f" ({finding['waived_by']})" if finding["waived_by"] else ""
+        lines += wrapped(f"waived {finding['level']}: {finding['waived']}{by}", indent=indent)
+    where = ":".join(str(finding[key]) for key in ("file", "line", "column") if finding[key] is not None)
+    lines += [painted(line, "quiet", colour=colour) for line in wrapped(f"{where} {finding['fingerprint']}", indent=indent)]
+    return lines
+
+
+def _figure_that_matters(working: Sequence[Document], indent: int) -> list[str]:
+    """Show the last line of the working: the result the others lead to. The rest stands in the other faces."""
+    solved = [line for line in working if line["value"] is not None]
+    if not solved:
+        return []
+    line = solved[-1]
+    return wrapped(f"{line['quantity']} = {line['formula']} = {figure(line['value'], line['unit'])}", indent=indent)
+
+
+def _not_checked(rows: Iterable[Document], colour: bool) -> list[str]:
+    by_need: dict[str, list[str]] = {}
+    for row in rows:
+        by_need.setdefault(row["needs"], []).append(row["check"])
+    lines = []
+    for need, checks in by_need.items():
+        lines += wrapped(f"{', '.join(dict.fromkeys(checks))}: needs {need}", indent=10, first="    - ")
+    return ["  " + painted("not checked", "warning", colour=colour), *lines]
+
+
+def _assumed(board: Document, colour: bool) -> list[str]:
+    """Say every assumption once, with the limiters it touches."""
+    touched: dict[str, list[str]] = {text: [] for text in board["assumed"]}
+    for limiter in board["limiters"]:
+        for text in limiter["assumed"]:
+            touched.setdefault(text, []).append(limiter["id"])
+    if not touched:
+        return []
+    lines = ["", painted("Assumed", "heading", colour=colour)]
+    for text, names in touched.items():
+        whom = f" ({', '.join(names)})" if names else ""
+        lines += wrapped(text + whom, indent=4, first="  - ")
+    return lines
+
+
+def _reading(board: Document, colour: bool) -> list[str]:
+    """Say what was met while reading, and what the waivers file is owed."""
+    lines: list[str] = []
+    for warning in board["warnings"]:
+        place = ":".join(str(item) for item in (warning["line"], warning["column"]) if item is not None)
+        times = f" ({warning['count']} times)" if warning["count"] > 1 else ""
+        lines += wrapped(f"{place + ': ' if place else ''}{warning['message']}{times}", indent=4, first="  - ")
+    for remark in board["remarks"]:
+        lines += wrapped(remark, indent=4, first="  - ")
+    return ["", painted("Remarks", "heading", colour=colour), *lines] if lines else []
+
+
+def _together(report: Document, colour: bool) -> list[str]:
+    summary = report["summary"]
+    title = f"{counted(summary['boards'], 'board')} together: {summary_line(report)}"
+    lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
+    for error in report["unread"]:
+        place = ":".join(str(error[key]) for key in ("file", "line", "column") if error[key] is not None)
+        lines += wrapped(f"not reviewed: {place}: {error['message']}", indent=4, first="  - ")
+    return [*lines, ""]
