@@ -1,0 +1,22 @@
+"""Quantities at the doors: what people write, what schematics write, and the preferred values.
+
+:mod:`~protlint.quantities.units` reads and prints quantities with units, :mod:`~protlint.quantities.valuetext` reads the
+value texts of a schematic, :mod:`~protlint.quantities.series` holds IEC 60063. Everything here is an SI float
+(temperatures in degC).
+"""
+
+from protlint.quantities.series import preferred, within
+from protlint.quantities.units import DIMENSIONS, format_quantity, read_any, read_quantity, read_range
+from protlint.quantities.valuetext import ValueText, read_value
+
+__all__ = [
+    "DIMENSIONS",
+    "ValueText",
+    "format_quantity",
+    "preferred",
+    "read_any",
+    "read_quantity",
+    "read_range",
+    "read_value",
+    "within",
+]
