@@ -6,11 +6,22 @@ exit code of the command, and it prints as one line ``file:line:column: message`
 
 from __future__ import annotations
 
+import bisect
 import contextlib
 import os
+import re
 import sys
 import tempfile
+import tomllib
+from collections.abc import Mapping
+from dataclasses import dataclass, field
 from pathlib import Path
+from typing import Any
+
+from protlint.toml_places import key_places
+
+LARGEST_TOML = 4_000_000
+"""Bytes; what a person writes is a thousandth of it."""
 
 
 class ProtlintError(Exception):
@@ -121,3 +132,53 @@ def data_folder(name: str, checkout_name: str | None = None) -> Path:
         if folder.is_dir():
             return folder
     raise FileError(f"protlint's own folder {name!r} is missing: install protlint again", file=name)
+
+
+@dataclass(frozen=True, slots=True)
+class TomlFile:
+    """A parsed TOML file: its tables as plain dictionaries, and where each key stands."""
+
+    file: str
+    tables: Mapping[str, Any]
+    offsets: Mapping[tuple[str | int, ...], int] = field(repr=False)
+    line_starts: tuple[int, ...] = field(repr=False)
+
+    def place(self, path: tuple[str | int, ...]) -> tuple[int, int]:
+        """Return line and column, from 1, of a key by its path (keys, and indices inside arrays), or of what holds it."""
+        while path and path not in self.offsets:
+            path = path[:-1]
+        offset = self.offsets.get(path, 0)
+        line = bisect.bisect_right(self.line_starts, offset)
+        return line, offset - self.line_starts[line - 1] + 1
+
+
+def load_toml(path: str | Path) -> TomlFile:
+    """Return a TOML file's tables with the place of every key.
+
+    Raises
+    ------
+    FileError : the file cannot be read.
+    InputError : it is not UTF-8 or not TOML, with line and column.
+    """
+    content, name = read_bytes(path)
+    if len(content) > LARGEST_TOML:
+        raise InputError(f"larger than {LARGEST_TOML // 1_000_000} MB, no file of settings", file=name)
+    try:
+        text = content.decode("utf-8-sig").replace("\r\n", "\n")
+    except UnicodeDecodeError as error:
+        line = content.count(b"\n", 0, error.start) + 1
+        column = error.start - content.rfind(b"\n", 0, error.start)
+        raise InputError("not UTF-8 text, as TOML has to be", file=name, line=line, column=column) from None
+    line_starts = (0, *(found.end() for found in re.finditer("\n", text)))
+    try:
+        tables = tomllib.loads(text)
+        offsets = key_places(text)
+    except RecursionError:
+        raise InputError("nested too deeply", file=name) from None
+    except ValueError as error:
+        said = re.fullmatch(r"(.*) \(at (?:line (\d+), column (\d+)|end of document)\)", str(error), re.DOTALL)
+        if said is None:
+            raise InputError(f"not TOML: {error}", file=name) from None
+        line, column = (int(said[2]), int(said[3])) if said[2] else (len(line_starts), len(text) - line_starts[-1] + 1)
+        raise InputError(f"not TOML: {said[1]}", file=name, line=line, column=column) from None
+    return TomlFile(file=name, tables=tables, offsets=offsets, line_starts=line_starts)
