@@ -1,0 +1,302 @@
+"""Text to positioned s-expressions: the one scanner behind netlists and rule files.
+
+``FormParser`` is a :class:`sexpdata.Parser` and keeps its contract: made from a text, its :meth:`~FormParser.parse` returns
+the list of top-level expressions, lists as lists, words through :meth:`~FormParser.atom`, strings as ``str``. What changes
+is what netlists need: a backslash is an ordinary character, no word turns into a number, a truth value or an empty list,
+brackets, quotes and semicolons mean nothing, every list knows its place, and the scanning is one pass of one compiled
+expression with a stack of its own, so that neither depth nor size can break it.
+"""
+
+from __future__ import annotations
+
+import gc
+import re
+from bisect import bisect_right
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from contextlib import contextmanager
+from itertools import accumulate
+from typing import Any
+
+import sexpdata  # type: ignore[import-untyped]
+
+from protlint.sources import InputError
+
+NESTING_LIMIT = 500
+"""Deepest nesting read; real netlists stay below 20."""
+
+_WHITE = r"[ \t\r\n\f\v]"
+_WORD = r'[^ \t\r\n\f\v()"]++'
+_CLOSING = r"(\)[) \t\r\n\f\v]*+)"
+_TOKEN = re.compile(
+    # A list's head, a first word and a plain first string come with its opening, and so do closings that follow at once:
+    # most lists of a netlist are one match, and matches are what scanning costs.
+    rf'\({_WHITE}*+({_WORD})?{_WHITE}*+({_WORD})?{_WHITE}*+(?:"([^"%\r\n]*+)"{_WHITE}*+)?{_CLOSING}?'
+    rf"|{_CLOSING}"
+    rf"|({_WORD})"
+    rf'|"([^"]*+)"'
+    rf'|(")'
+)
+_HEAD, _FIRST, _TEXT, _CLOSED, _CLOSE, _ATOM, _STRING = range(1, 8)
+_OUTLINE = re.compile(rf'\({_WHITE}*+((?:{_WORD})?)|\)|"[^"]*+"?|{_WORD}')
+_PERCENT = re.compile(r"%(\d+(?: +\d+)*) *%|%")
+
+
+def read_forms(text: str, file: str) -> list[Form]:
+    """Return the lists of a rule file, everything kept, in the order of the file.
+
+    Words are :class:`Atom`, strings plain ``str`` (a line end inside one is one blank), lists :class:`Form`, which know
+    their ``line`` and ``column`` and make errors that say so.
+
+    Raises
+    ------
+    InputError : a list or a string is never closed, a closing parenthesis too many, or something outside any list.
+    """
+    parser = _RuleParser(text, file=file)
+    forms = parser.parse()
+    if not all(isinstance(form, Form) for form in forms):
+        raise parser.places.error("this stands outside any parentheses", parser.outside())
+    return forms
+
+
+@contextmanager
+def no_collection() -> Iterator[None]:
+    """Hold back garbage collection while many small objects are made, and put it back as it was.
+
+    Reading makes no cycles, so collecting meanwhile only goes over the same objects again and again.
+    """
+    was_enabled = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if was_enabled:
+            gc.enable()
+
+
+class Atom(str):
+    """A word of the text that is not a string: a name, a keyword, an integer."""
+
+    __slots__ = ()
+
+
+class Places:
+    """Turns offsets into lines and columns, both from 1, columns in characters; CR, LF and CRLF all end a line."""
+
+    __slots__ = ("_starts", "file", "text")
+
+    def __init__(self, text: str, file: str | None = None) -> None:
+        self.text = text
+        self.file = file
+        self._starts: Sequence[int] = ()
+
+    def at(self, offset: int) -> tuple[int, int]:
+        """Return (line, column) of the character at ``offset``."""
+        if not self._starts:
+            text = self.text
+            if "\r" in text:
+                text = text.replace("\r\n", " \n").replace("\r", "\n")
+            self._starts = list(accumulate((len(line) + 1 for line in text.split("\n")), initial=0))
+        line = bisect_right(self._starts, offset)
+        return line, offset - self._starts[line - 1] + 1
+
+    def error(self, message: str, offset: int) -> InputError:
+        """Return the error to raise about what stands at ``offset``."""
+        line, column = self.at(offset)
+        return InputError(message, file=self.file, line=line, column=column)
+
+
+class Form(list[Any]):
+    """One parenthesised list: its items, and the place of its opening parenthesis."""
+
+    __slots__ = ("offset", "places")
+    offset: int
+    places: Places
+
+    @property
+    def head(self) -> str:
+        """The first item where that is a word, else an empty string."""
+        return self[0] if self and isinstance(self[0], str) else ""
+
+    @property
+    def line(self) -> int:
+        """The line of the opening parenthesis, from 1."""
+        return self.places.at(self.offset)[0]
+
+    @property
+    def column(self) -> int:
+        """The column of the opening parenthesis, from 1."""
+        return self.places.at(self.offset)[1]
+
+    def error(self, message: str) -> InputError:
+        """Return the error to raise about this list, with its file, line and column."""
+        return self.places.error(message, self.offset)
+
+
+class _Table(dict[str, Any]):
+    """A mapping that asks ``make`` for what it lacks, once a key."""
+
+    def __init__(self, make: Callable[[str], Any]) -> None:
+        super().__init__()
+        self.make = make
+
+    def __missing__(self, key: str) -> Any:
+        value = self[key] = self.make(key)
+        return value
+
+
+class FormParser(sexpdata.Parser):  # type: ignore[misc]
+    """Parse s-expressions of the EDIF kind, fast and with positions.
+
+    Parameters
+    ----------
+    text : the whole text.
+    file : the file's name in errors.
+    reducers : a list whose head is a key here is replaced, as it closes, by what the function makes of it.
+    """
+
+    def __init__(
+        self, text: str, *, file: str | None = None, reducers: Mapping[str, Callable[[Form], object]] | None = None
+    ) -> None:
+        super().__init__(text, nil=None, true=None, false=None)
+        self.places = Places(text, file)
+        self.reducers = reducers or {}
+        self.unpaired: list[int] = []
+        """Offsets of the strings that hold a per cent sign without its partner."""
+
+    def head(self, token: str) -> str | None:
+        """Return the head a list is to have for the word it begins with; None passes the whole list over."""
+        head: str = self.atom(token)
+        return head
+
+    def atom(self, token: str) -> Any:
+        """Return what a word becomes; asked once for every distinct word."""
+        return Atom(token)
+
+    def string_at(self, raw: str, offset: int) -> str:
+        """Return a string that holds line ends or per cent signs as it was meant.
+
+        Line ends are no part of a string; decimal codes between per cent signs are characters (``%34%`` is ``"``).
+        """
+        raw = raw.replace("\r", "").replace("\n", "")
+        if "%" not in raw:
+            return raw
+        unpaired = False
+
+        def character(match: re.Match[str]) -> str:
+            nonlocal unpaired
+            decoded = _decoded(match[1]) if match[1] else None
+            unpaired = unpaired or decoded is None
+            return match[0] if decoded is None else decoded
+
+        text = _PERCENT.sub(character, raw)
+        if unpaired:
+            self.unpaired.append(offset)
+        return text
+
+    def parse(self) -> list[Any]:
+        """Return the top-level expressions.
+
+        Raises
+        ------
+        InputError : unbalanced parentheses, an unterminated string, nesting past :data:`NESTING_LIMIT`.
+        """
+        heads, atoms, reducers, places = _Table(self.head), _Table(self.atom), self.reducers, self.places
+        stack: list[Form] = []
+        current = Form()
+        skipped = 0  # how many lists are open in the one being passed over, itself included
+        for match in _TOKEN.finditer(self.string):
+            kind = match.lastindex or 0
+            if kind <= _CLOSED:
+                if skipped:
+                    closing = match[_CLOSED]
+                    skipped += 1
+                else:
+                    word, first, text, closing = match.group(_HEAD, _FIRST, _TEXT, _CLOSED)
+                    if word is None:
+                        form = Form() if text is None else Form((text,))
+                    elif (head := heads[word]) is None:
+                        skipped = 1
+                    elif first is None:
+                        form = Form((head,)) if text is None else Form((head, text))
+                    elif text is None:
+                        form = Form((head, atoms[first]))
+                    else:
+                        form = Form((head, atoms[first], text))
+                    if not skipped:
+                        form.offset = match.start()
+                        form.places = places
+                        stack.append(current)
+                        current = form
+                if closing is None:
+                    if len(stack) + skipped > NESTING_LIMIT:
+                        raise places.error(f"nested more than {NESTING_LIMIT} deep, which no file needs", match.start())
+                    continue
+            elif kind == _CLOSE:
+                closing = match[_CLOSE]
+            elif kind > _STRING:
+                raise places.error("this string is never closed: its closing quote is missing", match.start())
+            else:
+                if not skipped:
+                    current.append(atoms[match[_ATOM]] if kind == _ATOM else self.string_at(match[_STRING], match.start()))
+                continue
+            for _ in range(closing.count(")") if len(closing) > 1 else 1):
+                if skipped:
+                    skipped -= 1
+                    continue
+                if not stack:
+                    raise places.error("this closing parenthesis has no opening one", self.outside())
+                form = current
+                current = stack.pop()
+                reduce = reducers.get(form[0]) if form else None
+                current.append(form if reduce is None else reduce(form))
+        if stack or skipped:
+            raise self.unclosed()
+        return list(current)
+
+    def open_lists(self) -> Iterator[list[tuple[int, str]]]:
+        """Yield at every opening, and once at the end, the lists then open, outermost first, as (offset, first word).
+
+        A second, slower pass for when the text is known to be wrong.
+        """
+        stack: list[tuple[int, str]] = []
+        for match in _OUTLINE.finditer(self.string):
+            if match[1] is not None:
+                stack.append((match.start(), match[1].lower()))
+                yield stack
+            elif match[0] == ")":
+                stack.pop()
+        yield stack
+
+    def unclosed(self) -> InputError:
+        """Return the error about a list that is never closed: the innermost that is open where the text ends."""
+        *_, still_open = self.open_lists()
+        return self.places.error("this parenthesis is never closed", still_open[-1][0])
+
+    def outside(self) -> int:
+        """Return the offset of the first thing outside any list: a word, a string, or a closing parenthesis too many."""
+        depth = 0
+        for match in _OUTLINE.finditer(self.string):
+            if match[1] is not None:
+                depth += 1
+            elif depth == 0:
+                return match.start()
+            elif match[0] == ")":
+                depth -= 1
+        return len(self.string)
+
+
+class _RuleParser(FormParser):
+    """Rule files: a string may run over several lines, and a per cent sign is only itself."""
+
+    def string_at(self, raw: str, offset: int) -> str:
+        return re.sub(r"\s*[\r\n]\s*", " ", raw)
+
+
+def _decoded(codes: str) -> str | None:
+    """Return the characters that decimal codes stand for, None where one of them is no printable character or line end."""
+    numbers = [int(code) if len(code) < 8 else 0 for code in codes.split()]
+    return "".join(map(chr, numbers)) if all(_printable(number) for number in numbers) else None
+
+
+def _printable(code: int) -> bool:
+    return code in (9, 10, 13) or 32 <= code < 127 or 128 <= code < 0xD800 or 0xDFFF < code <= 0x10FFFF
