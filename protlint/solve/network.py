@@ -1,0 +1,296 @@
+"""A circuit compiled for solving: node numbers, device groups, incidence matrices, and parameters at temperature.
+
+``compile_network`` turns a ``Circuit`` into a ``Network`` once; everything that is solved afterwards is a batch of *lanes*
+(operating conditions) on it. Nodes are numbered unknown ones first, then the known ones: the held nodes in the circuit's
+order, the output, and the drive's source (the drive node itself where the drive is stiff).
+
+Unknowns are the node voltages and the inner junction voltages of the devices (``protlint.solve.devices``); a device's
+inner voltages stand in rows of one array ``inner`` of shape (ports, lanes): first junction of every bipolar, second junction
+of every bipolar, the same for MOSFETs, then diodes, then the limited drive if there is one.
+
+The same pieces serve small signals (``Network.incidence`` with the conductances of ``Evaluation.current_slope``) and
+integration in time (charge currents added to ``port_A`` before ``outside`` folds in the series resistances).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from protlint.solve.circuit import Circuit, Device
+from protlint.solve.devices import Array
+from protlint.solve.parameters import LINK_OHM, CircuitError, complete
+
+DRIVE_SOURCE = "drive source"
+"""Name of the node behind the drive's resistance or current limit."""
+
+LEAST_SOURCE_OHM = 1e-3
+"""Resistance of a current-limited drive that states none."""
+
+LINK_AT_MOST_OHM = 1e-3
+
+
+@dataclass(frozen=True, slots=True)
+class Group:
+    """Devices of one family: which of the circuit's they are, +1 or -1 each (mirror types), and their parameters by name.
+
+    ``sign`` and each of ``base`` have shape (devices, 1); ``rows`` are its rows of ``inner`` and of the incidence matrix.
+    """
+
+    family: str
+    devices: tuple[Device, ...]
+    ports: int
+    rows: slice
+    sign: Array
+    base: dict[str, Array]
+    rise_K: Array
+    is_shunt: Array
+
+
+@dataclass(frozen=True, slots=True)
+class Network:
+    """A compiled circuit; see the module's description for the order of nodes and ports.
+
+    ``incidence`` is (ports, nodes) with +1 at the control or positive end; ``resistor_incidence`` (resistors, nodes).
+    ``scatter`` (unknown^2, conductances) adds the groups' port conductances into the nodal matrix, ``resistor_scatter``
+    the resistors'.
+    """
+
+    circuit: Circuit
+    nodes: tuple[str, ...]
+    unknown: int
+    held: tuple[str, ...]
+    groups: tuple[Group, ...]
+    resistors: tuple[Device, ...]
+    resistor_base: dict[str, Array]
+    incidence: Array
+    resistor_incidence: Array
+    scatter: Array
+    resistor_scatter: Array
+    limited_drive: bool
+
+    @property
+    def output(self) -> int:
+        """Index of the output node."""
+        return len(self.nodes) - 2
+
+    @property
+    def drive(self) -> int:
+        """Index of the drive's source node."""
+        return len(self.nodes) - 1
+
+    @property
+    def ports(self) -> int:
+        """How many ports, and rows of ``inner``, there are."""
+        return len(self.incidence)
+
+
+def compile_network(circuit: Circuit) -> Network:
+    """Compile a circuit.
+
+    Raises
+    ------
+    CircuitError
+        With the reason, where it cannot be solved: absurd parameters, floating nodes, supplies joined by a link.
+    """
+    models = {device.name: complete(device) for device in circuit.devices}
+    if len(models) != len(circuit.devices):
+        raise CircuitError("two devices share one name")
+    held = tuple(node for node in circuit.held if node not in (circuit.output, circuit.drive.node))
+    _check_ends(circuit)
+    stiff = circuit.drive.resistance_ohm == 0.0 and circuit.drive.current_A is None
+    known = (*held, circuit.output, circuit.drive.node if stiff else DRIVE_SOURCE)
+    conducting = [device for device in circuit.devices if device.kind != "capacitor"]
+    unknown = tuple(dict.fromkeys(node for device in conducting for node in device.nodes if node not in known))
+    if not stiff and circuit.drive.node not in unknown:
+        unknown = (*unknown, circuit.drive.node)
+    _check_links(conducting, models, known, circuit)
+    _check_floating(conducting, unknown, known, circuit.drive.node if not stiff else None)
+    place = {node: index for index, node in enumerate((*unknown, *known))}
+
+    groups: list[Group] = []
+    port_ends: list[tuple[int, int]] = []
+    for family, kinds, ports in (
+        ("bipolar", ("npn", "pnp"), 2),
+        ("mosfet", ("nmos", "pmos"), 2),
+        ("diode", ("diode", "zener"), 1),
+    ):
+        members = tuple(device for device in conducting if device.kind in kinds)
+        if not members:
+            continue
+        ends = [[place[node] for node in device.nodes] for device in members]
+        start = len(port_ends)
+        if ports == 2:
+            port_ends += [(control, common) for _, control, common in ends]
+            port_ends += [(control, other) for other, control, _ in ends]
+        else:
+            port_ends += [(anode, cathode) for anode, cathode in ends]
+        groups.append(_group(family, members, ports, slice(start, len(port_ends)), models, circuit.shunt))
+    if circuit.drive.current_A is not None:
+        row = len(port_ends)
+        port_ends.append((place[DRIVE_SOURCE], place[circuit.drive.node]))
+        groups.append(_group("drive", (), 1, slice(row, row + 1), models, ()))
+
+    resistors = tuple(device for device in conducting if device.kind in ("resistor", "inductor"))
+    if circuit.drive.current_A is None and not stiff:
+        source = {"R": circuit.drive.resistance_ohm}
+        resistors = (*resistors, Device(DRIVE_SOURCE, "resistor", (DRIVE_SOURCE, circuit.drive.node), source))
+        models[DRIVE_SOURCE] = complete(resistors[-1])
+    resistor_base = {
+        name: _column(models[device.name].get(name, LINK_OHM if name == "R" else 0.0) for device in resistors)
+        for name in ("R", "TC1", "TC2")
+    } | {"rise_K": _column(device.rise_K for device in resistors)}
+    incidence = _incidence(port_ends, len(place))
+    resistor_incidence = _incidence([(place[a], place[b]) for a, b in (device.nodes for device in resistors)], len(place))
+    pairs = [pair for group in groups for pair in _port_pairs(group)]
+    return Network(
+        circuit=circuit,
+        nodes=(*unknown, *known),
+        unknown=len(unknown),
+        held=held,
+        groups=tuple(groups),
+        resistors=resistors,
+        resistor_base=resistor_base,
+        incidence=incidence,
+        resistor_incidence=resistor_incidence,
+        scatter=_scatter(incidence[:, : len(unknown)], pairs),
+        resistor_scatter=_scatter(resistor_incidence[:, : len(unknown)], [(row, row) for row in range(len(resistors))]),
+        limited_drive=circuit.drive.current_A is not None,
+    )
+
+
+def _group(
+    family: str,
+    members: tuple[Device, ...],
+    ports: int,
+    rows: slice,
+    models: dict[str, dict[str, float]],
+    shunt: Sequence[str],
+) -> Group:
+    names = models[members[0].name] if members else {}
+    return Group(
+        family=family,
+        devices=members,
+        ports=ports,
+        rows=rows,
+        sign=_column(-1.0 if device.kind in ("pnp", "pmos") else 1.0 for device in members) if members else np.ones((1, 1)),
+        base={name: _column(models[device.name][name] for device in members) for name in names},
+        rise_K=_column(device.rise_K for device in members),
+        is_shunt=_column(float(device.name in shunt) for device in members),
+    )
+
+
+def _column(values: Iterable[float]) -> Array:
+    return np.array(list(values), dtype=np.float64).reshape(-1, 1)
+
+
+def _incidence(ends: Sequence[tuple[int, int]], nodes: int) -> Array:
+    matrix = np.zeros((len(ends), nodes))
+    for row, (positive, negative) in enumerate(ends):
+        matrix[row, positive] += 1.0
+        matrix[row, negative] -= 1.0
+    return matrix
+
+
+def _port_pairs(group: Group) -> list[tuple[int, int]]:
+    """Return the (row, column) ports of a group's conductances in the order of ``Evaluation.current_slope``."""
+    count = (group.rows.stop - group.rows.start) // group.ports
+    first = group.rows.start
+    return [
+        (first + row * count + device, first + column * count + device)
+        for row in range(group.ports)
+        for column in range(group.ports)
+        for device in range(count)
+    ]
+
+
+def _scatter(incidence: Array, pairs: Sequence[tuple[int, int]]) -> Array:
+    nodes = incidence.shape[1]
+    columns = [np.outer(incidence[row], incidence[column]).ravel() for row, column in pairs]
+    return np.array(columns).T.copy() if columns else np.zeros((nodes * nodes, 0))
+
+
+def _check_ends(circuit: Circuit) -> None:
+    drive = circuit.drive
+    if circuit.output == drive.node:
+        raise CircuitError(f"the drive and the output are one net, {circuit.output}")
+    if not circuit.shorts or any(node not in circuit.held for node in circuit.shorts):
+        raise CircuitError("no held net a short could tie the output to")
+    ends = [
+        *circuit.held.items(),
+        (f"the drive's low end at {drive.node}", drive.low_V),
+        (f"its high end at {drive.node}", drive.high_V),
+    ]
+    for name, ends_V in ends:
+        if not (
+            all(abs(value) <= 1e5 for value in (ends_V.low, ends_V.usual, ends_V.high))
+            and ends_V.low <= ends_V.usual <= ends_V.high
+        ):
+            raise CircuitError(f"{name}: {ends_V.low:g} V, {ends_V.usual:g} V, {ends_V.high:g} V make no range")
+    if not 0.0 <= drive.resistance_ohm <= 1e12:
+        raise CircuitError(f"the drive's resistance of {drive.resistance_ohm:g} ohm makes no sense")
+    if drive.current_A is not None and not 0.0 < drive.current_A <= 1e4:
+        raise CircuitError(f"a drive that gives {drive.current_A:g} A at most drives nothing")
+    names = {device.name for device in circuit.devices}
+    missing = [name for name in (*circuit.shunt, *circuit.pass_devices, *circuit.sense) if name not in names]
+    if missing:
+        raise CircuitError(f"{missing[0]} is not among the circuit's devices")
+
+
+def _joined(pairs: Iterable[tuple[str, str]]) -> dict[str, str]:
+    """Return each node's representative after joining the pairs."""
+    parent: dict[str, str] = {}
+
+    def root(node: str) -> str:
+        parent.setdefault(node, node)
+        while parent[node] != node:
+            parent[node] = parent[parent[node]]
+            node = parent[node]
+        return node
+
+    for a, b in pairs:
+        parent[root(a)] = root(b)
+    return {node: root(node) for node in list(parent)}
+
+
+def _check_links(
+    conducting: Sequence[Device], models: dict[str, dict[str, float]], known: Sequence[str], circuit: Circuit
+) -> None:
+    links = [
+        (device.nodes[0], device.nodes[1])
+        for device in conducting
+        if device.kind == "inductor" or (device.kind == "resistor" and models[device.name]["R"] <= LINK_AT_MOST_OHM)
+    ]
+    joined = _joined(links)
+    by_root: dict[str, str] = {}
+    for node in known:
+        if node not in joined:
+            continue
+        other = by_root.setdefault(joined[node], node)
+        if other == node:
+            continue
+        both_held = other in circuit.held and node in circuit.held
+        if not both_held or circuit.held[other].usual != circuit.held[node].usual:
+            raise CircuitError(f"{other} and {node} are joined by a link though each is held at its own voltage")
+
+
+def _check_floating(conducting: Sequence[Device], unknown: Sequence[str], known: Sequence[str], driven: str | None) -> None:
+    paths: list[tuple[str, str]] = []
+    for device in conducting:
+        first, *others = device.nodes
+        if device.kind in ("nmos", "pmos"):
+            others = others[1:]
+        paths += [(first, other) for other in others]
+    paths += [(node, known[0]) for node in known]
+    if driven is not None:
+        paths.append((driven, known[0]))
+    joined = _joined(paths)
+    anchored = joined[known[0]]
+    active = {
+        node: device.name for device in conducting if device.kind not in ("resistor", "inductor") for node in device.nodes
+    }
+    for node in unknown:
+        if joined.get(node) != anchored and node in active:
+            raise CircuitError(f"net {node} at {active[node]} hangs on nothing: no path holds its voltage")
