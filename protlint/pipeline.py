@@ -2,19 +2,34 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from collections.abc import Iterable, Mapping, Sequence
+from dataclasses import dataclass, field, replace
+from datetime import date
+from pathlib import Path
 from typing import Literal
 
-from protlint.board.graph import Board
-from protlint.findings import Finding, NotChecked
-from protlint.limits import LimiterLimits, Limits
+from protlint.board.graph import Board, build_board
+from protlint.board.parts_list import PartsList, read_parts_list
+from protlint.checks.case import Case
+from protlint.checks.catalogue import CheckRow, load_catalogue
+from protlint.checks.table import BOARD_CHECKS, CHECKS
+from protlint.findings import LEVELS, Finding, Level, NotChecked, identifying_parts, stamp_fingerprints
+from protlint.limits import CheckSetting, LimiterLimits, Limits, load_limits, needs_of
+from protlint.netlist import read_netlist
+from protlint.netlist.model import Netlist
+from protlint.partdata.book import Book, load_book
+from protlint.solve.answers import solve
+from protlint.solve.bench import Bench, build_bench
 from protlint.solve.circuit import Circuit
 from protlint.solve.solution import Solution
+from protlint.topology.language import Rules, load_rules
 from protlint.topology.limiter import Found, Limiter
+from protlint.topology.match import find_limiters
+from protlint.waivers import Waivers, apply_waivers, load_waivers
 
 Verdict = Literal["passes", "fails", "rests on assumptions", "not judged"]
-"""``fails`` with an error or a warning that is not waived; ``not judged`` where the circuit could not be solved; ``rests on
-assumptions`` where a verdict leans on an assumed value; else ``passes``."""
+"""``not judged`` where the circuit could not be solved; ``fails`` with an error that is not waived; ``rests on assumptions``
+where a number leans on something nobody stated; else ``passes``."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -28,11 +43,16 @@ class ReviewedLimiter:
     verdict: Verdict
     not_checked: tuple[NotChecked, ...] = ()
     assumed: tuple[str, ...] = ()
+    bench: Bench = field(default_factory=lambda: Bench(None))
 
 
 @dataclass(frozen=True, slots=True)
 class Review:
-    """The whole answer for one netlist; the findings in report order (worst limiter first, then worst finding)."""
+    """The whole answer for one netlist; limiters and findings in report order, the worst first.
+
+    ``assumed`` is what was assumed about the board as a whole; ``remarks`` is said once, below everything: expired waivers,
+    waivers that match nothing, part data that contradicts itself.
+    """
 
     board: Board
     limits: Limits
@@ -40,6 +60,208 @@ class Review:
     limiters: tuple[ReviewedLimiter, ...]
     findings: tuple[Finding, ...]
     assumed: tuple[str, ...] = ()
-    """What was assumed about the board as a whole."""
     remarks: tuple[str, ...] = field(default_factory=tuple)
-    """Said once, below everything: expired waivers, waivers that match nothing."""
+
+
+@dataclass(frozen=True, slots=True)
+class Desk:
+    """What a review needs besides the netlist, read once and good for many boards."""
+
+    limits: Limits
+    book: Book
+    rules: Rules
+    catalogue: Mapping[str, CheckRow]
+    parts_list: PartsList | None = None
+    waivers: Waivers | None = None
+    on: date | None = None
+
+
+def set_up(
+    *,
+    limits: str | Path | None = None,
+    parts: Sequence[str | Path] = (),
+    parts_list: str | Path | None = None,
+    waivers: str | Path | None = None,
+    rules: Sequence[str | Path] = (),
+    on: date | None = None,
+) -> Desk:
+    """Read every file but the netlist.
+
+    Raises
+    ------
+    ProtlintError : a file is missing or wrong, with file, line and column.
+    """
+    catalogue = load_catalogue()
+    return Desk(
+        limits=load_limits(limits, known_checks={name: row.thresholds.keys() for name, row in catalogue.items()}),
+        book=load_book(parts),
+        rules=load_rules(rules),
+        catalogue=catalogue,
+        parts_list=read_parts_list(parts_list) if parts_list is not None else None,
+        waivers=load_waivers(waivers) if waivers is not None else None,
+        on=on,
+    )
+
+
+def review(
+    path: str | Path,
+    *,
+    limits: str | Path | None = None,
+    parts: Sequence[str | Path] = (),
+    parts_list: str | Path | None = None,
+    waivers: str | Path | None = None,
+    rules: Sequence[str | Path] = (),
+    design: str | None = None,
+    encoding: str | None = None,
+    on: date | None = None,
+) -> Review:
+    """Review every limiter of a netlist.
+
+    Parameters
+    ----------
+    path : the EDIF netlist; ``-`` is standard input.
+    limits, parts, parts_list, waivers, rules : the user's files, as the command's options of the same names.
+    design, encoding : which of several designs, and the file's encoding where it is not to be found out.
+    on : the day that waivers are judged by; today where None.
+
+    Raises
+    ------
+    ProtlintError : a file is missing or wrong, with file, line and column.
+    """
+    desk = set_up(limits=limits, parts=parts, parts_list=parts_list, waivers=waivers, rules=rules, on=on)
+    return review_netlist(read_netlist(path, design=design, encoding=encoding), desk)
+
+
+def review_netlist(netlist: Netlist, desk: Desk) -> Review:
+    """Review every limiter of a netlist that is already read."""
+    board = build_board(netlist, limits=desk.limits, book=desk.book, parts_list=desk.parts_list)
+    found = find_limiters(board, desk.rules)
+    reviewed: list[ReviewedLimiter] = []
+    findings: list[Finding] = []
+    solved: dict[object, Solution] = {}
+    for limiter in found.limiters:
+        one, its_findings = _review_limiter(board, limiter, desk, solved)
+        reviewed.append(one)
+        findings += its_findings
+    for check, ask_board in BOARD_CHECKS.items():
+        findings += _stamped(
+            (answer for answer in ask_board(board, found, tuple(reviewed)) if isinstance(answer, Finding)),
+            check,
+            desk.catalogue,
+            (desk.limits.checks,),
+        )
+    return _finish(board, found, reviewed, findings, desk)
+
+
+def _review_limiter(
+    board: Board, limiter: Limiter, desk: Desk, solved: dict[object, Solution]
+) -> tuple[ReviewedLimiter, list[Finding]]:
+    """Return one limiter reviewed, with its findings; equal benches are solved once."""
+    needs = needs_of(desk.limits, *_names(board, limiter))
+    bench = build_bench(board, limiter, limits=desk.limits, needs=needs)
+    solution = Solution(not_solved="; ".join(one.needs for one in bench.missing) or "its circuit is not known")
+    if bench.circuit is not None:
+        solution = solve(bench.circuit, desk.limits.ambient_degC)
+    case = Case(board, limiter, bench, solution, needs, desk.limits, desk.catalogue)
+    findings: list[Finding] = []
+    not_checked = [NotChecked(check, key) for check, key in solution.not_checked]
+    for check, ask in CHECKS.items():
+        if solution.not_solved is not None and check not in WITHOUT_SOLUTION:
+            continue
+        answers = list(ask(case))
+        not_checked += [answer for answer in answers if isinstance(answer, NotChecked)]
+        found = (answer for answer in answers if isinstance(answer, Finding))
+        findings += _stamped(found, check, desk.catalogue, (needs.checks, desk.limits.checks))
+    reviewed = ReviewedLimiter(
+        limiter=limiter,
+        needs=needs,
+        circuit=bench.circuit,
+        solution=solution,
+        verdict="passes",
+        not_checked=tuple(dict.fromkeys(not_checked)),
+        assumed=tuple(sentence for _, sentence in bench.assumed),
+        bench=bench,
+    )
+    return reviewed, findings
+
+
+def _names(board: Board, limiter: Limiter) -> tuple[str, ...]:
+    """Return the names a limits file may call a limiter by: pass device, sense resistors, output net."""
+    output = limiter.nets["output"]
+    nets = board.nets[output].names if output is not None else ()
+    return (limiter.id, *limiter.roles.get("pass", ()), *limiter.roles.get("sense", ()), *nets)
+
+
+def _stamped(
+    findings: Iterable[Finding],
+    check: str,
+    catalogue: Mapping[str, CheckRow],
+    settings: Sequence[Mapping[str, CheckSetting]],
+) -> list[Finding]:
+    """Give findings their level: the user's for the check, else the check's own; assumptions are never errors."""
+    chosen = next((one[check].level for one in settings if check in one and one[check].level is not None), None)
+    if chosen == "off":
+        return []
+    stamped = []
+    for finding in findings:
+        level: Level = chosen or finding.level or catalogue[check].level  # type: ignore[assignment]
+        if finding.assumption and level == "error":
+            level = "warning"
+        stamped.append(replace(finding, level=level))
+    return stamped
+
+
+def _finish(
+    board: Board, found: Found, reviewed: list[ReviewedLimiter], findings: list[Finding], desk: Desk
+) -> Review:
+    """Place, name, waive and sort the findings, and give every limiter its verdict."""
+    findings = [_placed(board, finding) for finding in findings]
+    known = {one.limiter.id: identifying_parts(one.limiter.roles) for one in reviewed}
+    marked: Sequence[Finding] = stamp_fingerprints(findings, known)
+    remarks: tuple[str, ...] = tuple(desk.book.remarks)
+    if desk.waivers is not None:
+        marked, more = apply_waivers(marked, desk.waivers, on=desk.on)
+        remarks += tuple(more)
+    judged = [replace(one, verdict=_verdict(one, marked, desk.limits)) for one in reviewed]
+    order = {one.limiter.id: place for place, one in enumerate(sorted(judged, key=lambda one: _badness(one, marked)))}
+    return Review(
+        board=board,
+        limits=desk.limits,
+        found=found,
+        limiters=tuple(sorted(judged, key=lambda one: order[one.limiter.id])),
+        findings=tuple(sorted(marked, key=lambda one: (order.get(one.limiter or "", -1), one.waived is not None, _rank(one)))),
+        assumed=tuple(board.assumed) + tuple(desk.limits.assumed),
+        remarks=remarks,
+    )
+
+
+def _placed(board: Board, finding: Finding) -> Finding:
+    """Give a finding the place in the netlist where its first part stands."""
+    if finding.file is not None:
+        return finding
+    part = next((one.part for one in board.parts if one.id == finding.parts[0]), None) if finding.parts else None
+    return replace(
+        finding, file=board.netlist.file, line=part.line if part else None, column=part.column if part else None
+    )
+
+
+def _rank(finding: Finding) -> int:
+    return LEVELS.index(finding.level) if finding.level is not None else len(LEVELS)
+
+
+def _badness(one: ReviewedLimiter, findings: Sequence[Finding]) -> tuple[int, ...]:
+    """Return a sort key: failing limiters first, by their counts of findings of each level."""
+    own = [finding for finding in findings if finding.limiter == one.limiter.id and finding.waived is None]
+    verdicts: tuple[Verdict, ...] = ("fails", "not judged", "rests on assumptions", "passes")
+    return (verdicts.index(one.verdict), *(-sum(finding.level == level for finding in own) for level in LEVELS))
+
+
+def _verdict(one: ReviewedLimiter, findings: Sequence[Finding], limits: Limits) -> Verdict:
+    own = [finding for finding in findings if finding.limiter == one.limiter.id and finding.waived is None]
+    if any(finding.level == "error" for finding in own):
+        return "fails"
+    if one.solution.not_solved is not None:
+        return "not judged"
+    if one.bench.assumed or limits.assumed:
+        return "rests on assumptions"
+    return "passes"

@@ -1,0 +1,116 @@
+"""Does the limiter let through what the board needs, and no more than it may: carry, cap, and a drive that gives out."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
+from protlint.checks.sizing import sense_remedy
+from protlint.findings import NotChecked, WorkingLine
+from protlint.quantities import format_quantity
+from protlint.solve.solution import Currents
+
+TRADE = "common practice of the trade"
+
+
+def carry_not_met(case: Case) -> Iterator[Answer]:
+    """Yield a finding where the limiter may cut into the current the board needs."""
+    worst = _least_carries(case)
+    if worst is None:
+        yield from _not_checked(case, "carry-not-met")
+        return
+    row, carries_A = worst
+    carry_A = case.needs.carry_A
+    if carry_A is None or carries_A >= carry_A or row.limited_by_output == "drive":
+        return
+    yield case.finding(
+        "carry-not-met",
+        f"carries at least {format_quantity(carries_A, 'A')} at {format_quantity(row.ambient_degC, 'degC')}, "
+        f"{format_quantity(carry_A - carries_A, 'A')} less than the {format_quantity(carry_A, 'A')} the board needs",
+        parts=case.parts("sense", "shunt"),
+        working=_carry_working(case, row, carries_A, carry_A),
+        remedy=sense_remedy(case),
+        assumption=case.assumes(*ALL_ASSUMPTIONS),
+    )
+
+
+def drive_insufficient(case: Case) -> Iterator[Answer]:
+    """Yield a finding where the drive or the pass device's gain gives out below the current the board needs."""
+    worst = _least_carries(case)
+    if worst is None:
+        yield from _not_checked(case, "drive-insufficient")
+        return
+    row, carries_A = worst
+    carry_A = case.needs.carry_A
+    if carry_A is None or carries_A >= carry_A or row.limited_by_output != "drive":
+        return
+    drive = case.parts("drive")
+    resistors = ", ".join(drive) if drive else "the drive"
+    share = carries_A / carry_A
+    yield case.finding(
+        "drive-insufficient",
+        f"the drive gives out at {format_quantity(carries_A, 'A')} at {format_quantity(row.ambient_degC, 'degC')}, "
+        f"before the {format_quantity(carry_A, 'A')} the board needs and before the limiter acts",
+        parts=(*drive, *case.parts("pass")),
+        working=_carry_working(case, row, carries_A, carry_A),
+        remedy=f"let {resistors} give {1.0 / share:.2g} times the drive, or fit a pass device with {1.0 / share:.2g} times the hFE"
+        if share > 0.0
+        else f"{resistors} cannot turn the pass device on at all",
+        assumption=case.assumes(*ALL_ASSUMPTIONS),
+    )
+
+
+def cap_exceeded(case: Case) -> Iterator[Answer]:
+    """Yield a finding where more current can flow than the board may ever pass."""
+    cap_A = case.needs.cap_A
+    if cap_A is None:
+        yield NotChecked("cap-exceeded", case.limits_key("cap"))
+        return
+    rows = [row for row in case.solution.currents if row.most_range_A is not None]
+    if len(rows) < len(case.solution.currents) or not rows:
+        return
+    row = max(rows, key=_high_most_A)
+    most_A = _high_most_A(row)
+    if most_A <= cap_A:
+        return
+    yield case.finding(
+        "cap-exceeded",
+        f"passes up to {format_quantity(most_A, 'A')} at {format_quantity(row.ambient_degC, 'degC')}, "
+        f"{format_quantity(most_A - cap_A, 'A')} more than its cap of {format_quantity(cap_A, 'A')}",
+        parts=case.parts("sense", "shunt"),
+        working=(
+            WorkingLine("most, usual", "greatest current over all output voltages, as drawn", row.most_A, "A"),
+            WorkingLine("most, high end", "the same with every tolerance at its worst", most_A, "A"),
+            WorkingLine("cap", "limits file", cap_A, "A", TRADE),
+        ),
+        remedy=sense_remedy(case),
+        assumption=case.assumes(*ALL_ASSUMPTIONS),
+    )
+
+
+def _least_carries(case: Case) -> tuple[Currents, float] | None:
+    """Return the row and the value of the least carries, or None where carry or carries is not known."""
+    rows = [(row, row.carries_range_A[0]) for row in case.solution.currents if row.carries_range_A is not None]
+    if case.needs.carry_A is None or not rows or len(rows) < len(case.solution.currents):
+        return None
+    return min(rows, key=lambda item: item[1])
+
+
+def _high_most_A(row: Currents) -> float:
+    return row.most_range_A[1] if row.most_range_A is not None else 0.0
+
+
+def _not_checked(case: Case, check: str) -> Iterator[Answer]:
+    if case.needs.carry_A is None:
+        yield NotChecked(check, case.limits_key("carry"))
+    elif any(row.carries_A is None for row in case.solution.currents):
+        yield NotChecked(check, case.limits_key("output"))
+
+
+def _carry_working(case: Case, row: Currents, carries_A: float, carry_A: float) -> tuple[WorkingLine, ...]:
+    at = f"output at {format_quantity(case.needs.output_V, 'V')}" if case.needs.output_V is not None else "2 V left to the pass device"
+    return (
+        WorkingLine("carries, usual", f"solved at {format_quantity(row.ambient_degC, 'degC')}, {at}", row.carries_A, "A"),
+        WorkingLine("carries, low end", "the same with every tolerance at its worst", carries_A, "A"),
+        WorkingLine("carry", "limits file", carry_A, "A", TRADE),
+    )

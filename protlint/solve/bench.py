@@ -1,0 +1,124 @@
+"""The bench: a limiter and its surroundings on the board as a solvable circuit, in words people can check."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+from protlint.board.graph import Board
+from protlint.limits import LimiterLimits, Limits
+from protlint.solve.boundary import Missing, Notes, Place, drive_of, hold_supplies, short_nodes, toml_key
+from protlint.solve.circuit import Circuit, Device
+from protlint.solve.parts import devices_of
+from protlint.solve.surroundings import MOST_DEVICES, Surroundings, survey_surroundings
+from protlint.topology.limiter import Limiter
+
+
+@dataclass(frozen=True, slots=True)
+class Bench:
+    """A limiter's circuit with the way back to the board.
+
+    ``circuit`` is None where something is missing; ``missing`` then says what. ``element_of`` maps a device's name to the
+    board element it stands for; ``nets`` maps each net's name to what holds it; ``assumed`` holds (subject, sentence)
+    pairs, the subject being ``drive``, ``short``, ``supply``, ``model``, ``tolerance`` or ``circuit``.
+    """
+
+    circuit: Circuit | None
+    missing: tuple[Missing, ...] = ()
+    element_of: Mapping[str, int] = field(default_factory=dict)
+    nets: Mapping[str, str] = field(default_factory=dict)
+    assumed: tuple[tuple[str, str], ...] = ()
+
+
+def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: LimiterLimits) -> Bench:
+    """Return the circuit of a limiter as it stands on its board, or what is missing for it."""
+    around = survey_surroundings(board, limiter, limits)
+    place = Place(board, limiter, around, limits, needs, _node_names(board, limiter, around))
+    if len(around.elements) > MOST_DEVICES:
+        return Bench(None, (_too_large(place),))
+    notes = Notes(assumed=[("circuit", sentence) for sentence in around.left_out])
+    held = hold_supplies(place, notes)
+    shorts = short_nodes(place, held, notes)
+    drive, feed = drive_of(place, held, notes)
+    devices: list[Device] = []
+    element_of: dict[str, int] = {}
+    for index in around.elements:
+        made = devices_of(place, index, nodes=_nodes(place, index, feed, drive.node if drive else ""), notes=notes)
+        devices += made
+        element_of |= {device.name: index for device in made}
+    if notes.missing or drive is None or not shorts:
+        return Bench(None, tuple(notes.missing), element_of, notes.words, tuple(notes.assumed))
+    touched = {node for device in devices for node in device.nodes}
+    circuit = Circuit(
+        devices=tuple(devices),
+        held={node: value for node, value in held.items() if node in touched or node in shorts},
+        drive=drive,
+        output=place.node_of[around.output],
+        shorts=shorts,
+        shunt=_named(limiter, "shunt", element_of),
+        pass_devices=_named(limiter, "pass", element_of),
+        sense=_named(limiter, "sense", element_of),
+        output_V=needs.output_V,
+        output_reach_V=(min(one.low for one in held.values()), max(one.high for one in held.values())),
+        ground_leg=_has_ground_leg(place),
+        regulates=_regulates(place),
+        assumed=tuple(sentence for _, sentence in notes.assumed),
+    )
+    notes.words[circuit.output] = "the output"
+    words = {node: notes.words.get(node, "solved for") for node in sorted(touched | set(notes.words))}
+    return Bench(circuit, (), element_of, words, tuple(notes.assumed))
+
+
+def _too_large(place: Place) -> Missing:
+    net = place.limiter.nets["drive"]
+    name = "?" if net is None else place.board.nets[net].name
+    return Missing("circuit", None, f"[drive.{toml_key(name)}]: more than {MOST_DEVICES} parts hang on this drive")
+
+
+def _node_names(board: Board, limiter: Limiter, around: Surroundings) -> dict[int, str]:
+    """Return a node name for every net of the board, the net's own; a second net of one name gets a number behind it."""
+    names: dict[int, str] = {}
+    count: dict[str, int] = {}
+    for net in board.nets:
+        count[net.name] = count.get(net.name, 0) + 1
+        names[net.index] = net.name if count[net.name] == 1 else f"{net.name} ({count[net.name]})"
+    return names
+
+
+def _nodes(place: Place, index: int, feed: int | None, feed_node: str) -> dict[str, str]:
+    """Return an element's nodes by role; what a feeding supply gives the drive's parts comes from the feed's own node."""
+    element = place.board.elements[index]
+    nodes = {role: place.node_of[net] for role, net in element.terminals.items()}
+    carries_load = any(index in place.limiter.elements.get(role, ()) for role in ("pass", "driver", "sense", "shunt"))
+    if feed is None or carries_load or index in place.around.power_path:
+        return nodes
+    return {role: feed_node if element.terminals[role] == feed else node for role, node in nodes.items()}
+
+
+def _named(limiter: Limiter, role: str, element_of: Mapping[str, int]) -> tuple[str, ...]:
+    indices = limiter.elements.get(role, ())
+    return tuple(name for name, index in element_of.items() if index in indices)
+
+
+def _has_ground_leg(place: Place) -> bool:
+    """Tell whether a preset leg makes the limit follow the output voltage.
+
+    Where the far end of the sense resistance is the output, that is a leg to a net that stays put; where it is not, a leg
+    to the output.
+    """
+    legs = [
+        index for role, indices in place.limiter.elements.items() if role.split(".")[0] == "preset" for index in indices
+    ]
+    nets = {net for index in legs for net in place.board.elements[index].terminals.values()}
+    if place.limiter.nets["far"] == place.around.output:
+        return any(place.usual_V(net) is not None for net in nets)
+    return place.around.output in nets
+
+
+def _regulates(place: Place) -> bool:
+    """Tell whether a sink or source is fed straight from a supply, with nothing on the board to take the drive away."""
+    if place.needs.regulate_A is not None:
+        return True
+    collector_out = place.limiter.nets["far"] != place.around.output
+    own = {index for indices in place.limiter.elements.values() for index in indices}
+    return collector_out and place.around.fed_by is not None and set(place.around.elements) <= own | set(place.around.power_path)

@@ -1,0 +1,249 @@
+"""The edges of a bench: which nets are held, what a short ties the output to, and what drives the stage.
+
+Every function writes what it assumed, what it lacks and what holds each net into the bench's :class:`Notes`.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+from protlint.board.graph import Board
+from protlint.limits import DriveLimits, LimiterLimits, Limits, Range
+from protlint.solve.circuit import Drive
+from protlint.solve.surroundings import Surroundings
+from protlint.topology.limiter import Limiter
+
+
+@dataclass(frozen=True, slots=True)
+class Missing:
+    """Something a bench lacks: a ``subject`` (``supply``, ``short``, ``drive``, ``value``, ``part``, ``circuit``), the part it
+    is about where it is about one, and the key that would supply it."""
+
+    subject: str
+    part: str | None
+    needs: str
+
+
+@dataclass(slots=True)
+class Notes:
+    """What a bench says of itself as it comes together: ``assumed`` holds (subject, sentence) pairs."""
+
+    assumed: list[tuple[str, str]] = field(default_factory=list)
+    missing: list[Missing] = field(default_factory=list)
+    words: dict[str, str] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
+class Place:
+    """One limiter on its board with its surroundings: what every function here is given."""
+
+    board: Board
+    limiter: Limiter
+    around: Surroundings
+    limits: Limits
+    needs: LimiterLimits
+    node_of: dict[int, str]
+
+    def usual_V(self, net: int) -> float | None:
+        """Return a net's usual voltage where it is a supply."""
+        supply = self.board.nets[net].supply
+        return None if supply is None else supply.voltage_V.usual
+
+    @property
+    def sources_current(self) -> bool:
+        """Tell whether the load current flows out of the output (else into it)."""
+        follower = self.limiter.nets["far"] == self.around.output
+        return follower == (self.limiter.polarity == "n")
+
+
+def toml_key(name: str) -> str:
+    """Return a name as a TOML key: bare where that is allowed, else quoted."""
+    if name and name.isascii() and name.replace("_", "").replace("-", "").isalnum():
+        return name
+    return '"' + name.replace("\\", "\\\\").replace('"', '\\"') + '"'
+
+
+def hold_supplies(place: Place, notes: Notes) -> dict[str, Range]:
+    """Return every supply on the bench by node, the board's ground always among them."""
+    board, held = place.board, dict[str, Range]()
+    nets = {net for index in place.around.elements for net in board.elements[index].terminals.values()}
+    ground = ground_net(board)
+    for net in sorted(nets | ({ground} if ground is not None else set())):
+        if board.nets[net].supply is not None:
+            _hold(place, net, held, notes)
+    if power_V(place) is None:
+        name = board.nets[place.around.power].name
+        notes.missing.append(Missing("supply", None, f"[supply] {toml_key(name)}"))
+    return held
+
+
+def _hold(place: Place, net: int, held: dict[str, Range], notes: Notes) -> str:
+    supply = place.board.nets[net].supply
+    assert supply is not None
+    node = place.node_of[net]
+    if node not in held:
+        held[node] = supply.voltage_V
+        notes.words[node] = f"held at {supply.voltage_V.usual:g} V (by {supply.known_from})"
+        if supply.known_from == "assumed":
+            notes.assumed.append(("supply", f"{node} is taken as {supply.voltage_V.usual:g} V"))
+    return node
+
+
+def ground_net(board: Board) -> int | None:
+    """Return the 0 V net with the most pins, or None where the board has none."""
+    grounds = [(-len(net.pins), net.index) for net in board.nets if net.supply and net.supply.voltage_V.usual == 0.0]
+    return min(grounds)[1] if grounds else None
+
+
+def power_V(place: Place) -> float | None:
+    """Return the voltage the load current comes from: the power side's own, or that behind its series parts."""
+    direct = place.usual_V(place.around.power)
+    if direct is not None:
+        return direct
+    for index in place.around.power_path:
+        for net in place.board.elements[index].terminals.values():
+            voltage_V = place.usual_V(net)
+            if voltage_V is not None:
+                return voltage_V
+    return None
+
+
+def short_nodes(place: Place, held: dict[str, Range], notes: Notes) -> tuple[str, ...]:
+    """Return the nodes a short may tie the output to; they join ``held``.
+
+    The limits file decides. Else it is ground where the load current flows to or from ground, else the supply that a load
+    on the board hangs on, else (assumed) the board's farthest supply on that side.
+    """
+    board, output = place.board, place.board.nets[place.around.output].name
+    if place.needs.shorted_to:
+        return _stated_shorts(place, held, notes)
+    from_V = power_V(place)
+    if from_V is None:
+        return ()
+    sign = 1.0 if place.sources_current else -1.0
+    if sign * from_V > 0.0:
+        ground = ground_net(board)
+        if ground is not None:
+            return (_hold(place, ground, held, notes),)
+        held["0 V"] = Range(0.0, 0.0, 0.0)
+        notes.words["0 V"] = "ground; no net of the board is known as ground"
+        notes.assumed.append(("short", f"a short ties {output} to 0 V; no net of the board is known as ground"))
+        return ("0 V",)
+    beyond = {
+        net.index: abs(net.supply.voltage_V.usual - from_V)
+        for net in board.nets
+        if net.supply and sign * (from_V - net.supply.voltage_V.usual) > 0.0
+    }
+    loaded = beyond.keys() & _nets_behind_loads(place)
+    choice = loaded or beyond.keys()
+    if not choice:
+        notes.missing.append(Missing("short", None, f"[limiter.{toml_key(place.limiter.id)}] shorted_to"))
+        return ()
+    net = max(choice, key=lambda one: (beyond[one], -one))
+    if not loaded:
+        notes.assumed.append(("short", f"a short ties {output} to {board.nets[net].name}: no load of it is on the board"))
+    return (_hold(place, net, held, notes),)
+
+
+def _nets_behind_loads(place: Place) -> set[int]:
+    """Return the nets that two-terminal parts outside the bench tie the output to."""
+    board, output = place.board, place.around.output
+    nets: set[int] = set()
+    for index, _ in board.elements_at[output]:
+        terminals = set(board.elements[index].terminals.values())
+        if index not in place.around.elements and len(terminals) == 2:
+            nets |= terminals - {output}
+    return nets
+
+
+def _stated_shorts(place: Place, held: dict[str, Range], notes: Notes) -> tuple[str, ...]:
+    nodes = []
+    for name in place.needs.shorted_to:
+        nets = [net.index for net in place.board.nets if name in net.names and net.supply is not None]
+        if nets:
+            nodes.append(_hold(place, nets[0], held, notes))
+        else:
+            notes.missing.append(Missing("short", None, f"[supply] {toml_key(name)}, which shorted_to names"))
+    return tuple(nodes)
+
+
+def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive | None, int | None]:
+    """Return the drive, and the supply net whose drive connections move to the drive's node.
+
+    A drive that comes straight from a supply gets a node of its own, so that it can rise from its off end while the supply
+    stays where it is.
+    """
+    around, board = place.around, place.board
+    lowest_V, highest_V = min(one.usual for one in held.values()), max(one.usual for one in held.values())
+    lowest, highest = Range(lowest_V, lowest_V, lowest_V), Range(highest_V, highest_V, highest_V)
+    if around.drive is not None:
+        return _driven(place, lowest, highest, notes), None
+    if around.fed_by is not None:
+        supply = board.nets[around.fed_by].supply
+        assert supply is not None
+        node = f"{place.node_of[around.fed_by]} (feed)"
+        notes.words[node] = f"feed from {board.nets[around.fed_by].name}: {supply.voltage_V.usual:g} V"
+        if place.limiter.polarity == "n":
+            return Drive(node=node, low_V=lowest, high_V=supply.voltage_V), around.fed_by
+        return Drive(node=node, low_V=supply.voltage_V, high_V=highest), around.fed_by
+    feed = place.limiter.nets["feed"]
+    net = place.limiter.nets["drive"] if feed is None else feed
+    name = "?" if net is None else board.nets[net].name
+    notes.missing.append(Missing("drive", None, f"[drive.{toml_key(name)}]: nothing on the board is seen to drive it"))
+    return None, None
+
+
+def _driven(place: Place, lowest: Range, highest: Range, notes: Notes) -> Drive:
+    """Return the drive of a driven net, from the limits file as far as that goes."""
+    net = place.around.drive
+    assert net is not None
+    node = place.node_of[net]
+    entry = place.around.drive_entry or _driver_entry(place)
+    low, high = lowest, highest
+    if entry is not None:
+        short_of = entry.from_rails_V
+        low = entry.low_V or (lowest if short_of is None else _moved(_rail(place, lowest, upper=False), short_of))
+        high = entry.high_V or (highest if short_of is None else _moved(_rail(place, highest, upper=True), -short_of))
+    stated = entry is not None and (entry.from_rails_V is not None or (entry.low_V is not None and entry.high_V is not None))
+    if not stated:
+        stiff = "" if entry and entry.current_A is not None else "stiff and "
+        notes.assumed.append(
+            ("drive", f"the drive on {node} is taken as {stiff}able to reach {low.usual:g} V and {high.usual:g} V")
+        )
+    notes.words[node] = f"drive from {low.usual:g} V to {high.usual:g} V" + ("" if stated else ", assumed")
+    return Drive(
+        node=node,
+        low_V=low,
+        high_V=high,
+        resistance_ohm=entry.resistance_ohm if entry else 0.0,
+        current_A=entry.current_A if entry else None,
+        assumed=not stated,
+    )
+
+
+def _driver_entry(place: Place) -> DriveLimits | None:
+    """Return the ``[driver]`` entry of the part that drives the net, by its part number."""
+    drivers = {name.casefold(): entry for name, entry in place.limits.drivers.items()}
+    for index, _ in place.around.drive_pins:
+        number = place.board.parts[index].part_number
+        if number is not None and number.casefold() in drivers:
+            return drivers[number.casefold()]
+    return None
+
+
+def _rail(place: Place, fallback: Range, *, upper: bool) -> Range:
+    """Return the lowest or highest supply on the driving part's own pins."""
+    voltages = []
+    for index, _ in place.around.drive_pins:
+        for net in place.board.parts[index].roles.values():
+            supply = place.board.nets[net].supply
+            if supply is not None:
+                voltages.append(supply.voltage_V)
+    if not voltages:
+        return fallback
+    ordered = sorted(voltages, key=lambda one: one.usual)
+    return ordered[-1 if upper else 0]
+
+
+def _moved(end: Range, step_V: float) -> Range:
+    return Range(end.low + step_V, end.usual + step_V, end.high + step_V)
