@@ -36,7 +36,7 @@ _TOKEN = re.compile(
     rf'|"([^"]*+)"'
     rf'|(")'
 )
-_HEAD, _FIRST, _TEXT, _CLOSED, _CLOSE, _ATOM, _STRING = range(1, 8)
+_CLOSED, _CLOSE, _ATOM, _STRING = 4, 5, 6, 7  # the expression's groups that a match can end with, after a list's beginning
 _OUTLINE = re.compile(rf'\({_WHITE}*+((?:{_WORD})?)|\)|"[^"]*+"?|{_WORD}')
 _PERCENT = re.compile(r"%(\d+(?: +\d+)*) *%|%")
 
@@ -206,40 +206,46 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
         skipped = 0  # how many lists are open in the one being passed over, itself included
         for match in _TOKEN.finditer(self.string):
             kind = match.lastindex or 0
-            if kind <= _CLOSED:
-                if skipped:
-                    closing = match[_CLOSED]
-                    skipped += 1
-                else:
-                    word, first, text, closing = match.group(_HEAD, _FIRST, _TEXT, _CLOSED)
-                    if word is None:
-                        form = Form() if text is None else Form((text,))
-                    elif (head := heads[word]) is None:
-                        skipped = 1
-                    elif first is None:
-                        form = Form((head,)) if text is None else Form((head, text))
-                    elif text is None:
-                        form = Form((head, atoms[first]))
-                    else:
-                        form = Form((head, atoms[first], text))
-                    if not skipped:
-                        form.offset = match.start()
-                        form.places = places
-                        stack.append(current)
-                        current = form
-                if closing is None:
-                    if len(stack) + skipped > NESTING_LIMIT:
-                        raise places.error(f"nested more than {NESTING_LIMIT} deep, which no file needs", match.start())
-                    continue
-            elif kind == _CLOSE:
-                closing = match[_CLOSE]
-            elif kind > _STRING:
-                raise places.error("this string is never closed: its closing quote is missing", match.start())
-            else:
+            if kind == _CLOSE:
+                closings = match[_CLOSE].count(")")
+            elif kind > _CLOSE:
+                if kind > _STRING:
+                    raise places.error("this string is never closed: its closing quote is missing", match.start())
                 if not skipped:
                     current.append(atoms[match[_ATOM]] if kind == _ATOM else self.string_at(match[_STRING], match.start()))
                 continue
-            for _ in range(closing.count(")") if len(closing) > 1 else 1):
+            elif skipped:
+                skipped += 1
+                if len(stack) + skipped > NESTING_LIMIT:
+                    raise self._too_deep(match.start())
+                closings = match[_CLOSED].count(")") if kind == _CLOSED else 0
+            else:
+                word, first, text, closing, _, _, _, _ = match.groups()
+                closings = 0 if closing is None else closing.count(")")
+                if word is None:
+                    form = Form() if text is None else Form((text,))
+                elif (head := heads[word]) is None:
+                    skipped = 1
+                elif first is None:
+                    form = Form((head,)) if text is None else Form((head, text))
+                elif text is None:
+                    form = Form((head, atoms[first]))
+                else:
+                    form = Form((head, atoms[first], text))
+                if not skipped:
+                    form.offset = match.start()
+                    form.places = places
+                    if closings:
+                        reduce = reducers.get(form[0]) if reducers and form else None
+                        current.append(form if reduce is None else reduce(form))
+                        closings -= 1
+                    else:
+                        stack.append(current)
+                        current = form
+                        if len(stack) > NESTING_LIMIT:
+                            raise self._too_deep(match.start())
+            while closings:
+                closings -= 1
                 if skipped:
                     skipped -= 1
                     continue
@@ -247,11 +253,14 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
                     raise places.error("this closing parenthesis has no opening one", self.outside())
                 form = current
                 current = stack.pop()
-                reduce = reducers.get(form[0]) if form else None
+                reduce = reducers.get(form[0]) if reducers and form else None
                 current.append(form if reduce is None else reduce(form))
         if stack or skipped:
             raise self.unclosed()
         return list(current)
+
+    def _too_deep(self, offset: int) -> InputError:
+        return self.places.error(f"nested more than {NESTING_LIMIT} deep, which no file needs", offset)
 
     def open_lists(self) -> Iterator[list[tuple[int, str]]]:
         """Yield at every opening, and once at the end, the lists then open, outermost first, as (offset, first word).
