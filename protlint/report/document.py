@@ -9,16 +9,18 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable, Sequence
 from dataclasses import asdict, fields
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from protlint import __version__
 from protlint.board.graph import Board
 from protlint.findings import Finding
 from protlint.limits import LimiterLimits
-from protlint.pipeline import Review, ReviewedLimiter
 from protlint.report.shape import CAUTION, Document, summarised
 from protlint.solve.solution import Currents, Loop, Point, Step
 from protlint.topology.limiter import NETS, ROLES
+
+if TYPE_CHECKING:
+    from protlint.pipeline import Review, ReviewedLimiter
 
 SIGNIFICANT_DIGITS = 6
 
@@ -86,7 +88,7 @@ def _limiter(item: ReviewedLimiter, review: Review) -> Document:
         "worst_point": _point(solution.worst_point),
         "sensitivities": [_plain(row) for row in solution.sensitivities],
         "not_solved": solution.not_solved,
-        "assumed": list(item.assumed),
+        "assumed": list(dict.fromkeys(sentence for _, sentence in item.bench.assumed)),
         "not_checked": [{"check": row.check, "needs": row.needs} for row in item.not_checked],
     }
 

@@ -1,41 +1,30 @@
-"""How figures read: three significant digits, engineering prefixes, a dash for what is not known.
-
-Units are written in plain letters (ohm, degC, uA), the spelling that limits files and part data use.
-"""
+"""How figures read in a report: as ``format_quantity`` writes them, a dash for what is not known, columns in one unit."""
 
 from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Sequence
 
-PREFIXES = {-12: "p", -9: "n", -6: "u", -3: "m", 0: "", 3: "k", 6: "M", 9: "G"}
-PREFIXED = frozenset({"A", "V", "W", "ohm", "F", "H", "Hz", "s", "J", "C"})
-"""Units that take a prefix; any other stands behind the plain number."""
+from protlint.quantities.units import format_quantity
+
+PREFIXES = {-12: "p", -9: "n", -6: "u", -3: "m", 0: ""}
 
 UNKNOWN = "-"
 
-MOST_DECIMALS = 4
+MOST_DECIMALS = 3
 
 
 def figure(value: float | None, unit: str = "") -> str:
-    """Return a value as people write it: ``figure(0.3671, "A")`` is ``367 mA``."""
+    """Return a value with its unit as people write it, ``367 mA``, or a dash."""
     if value is None or not math.isfinite(value):
         return UNKNOWN
-    if unit not in PREFIXED:
-        return f"{plain(value)} {unit}".rstrip()
-    if value == 0.0:
-        return f"0 {unit}"
-    exponent = _engineering_exponent(value)
-    digits = three_digits(value / 10.0**exponent)
-    return f"{digits} {PREFIXES[exponent]}{unit}"
+    return format_quantity(value, unit)
 
 
 def unit_for(values: Iterable[float | None], unit: str) -> tuple[str, float]:
-    """Return the prefixed unit that shows values up to the greatest with no more than four digits, and its size."""
+    """Return the prefixed unit for a column of values, and its size: the plain unit from a tenth upward."""
     greatest = max((abs(value) for value in values if value is not None), default=0.0)
-    exponent = _engineering_exponent(greatest)
-    if greatest < 9.995 * 10.0**exponent:
-        exponent = max(exponent - 3, min(PREFIXES))
+    exponent = max(3 * math.floor(math.log10(greatest) / 3.0), min(PREFIXES)) if 0.0 < greatest < 0.0995 else 0
     return PREFIXES[exponent] + unit, 10.0**exponent
 
 
@@ -45,16 +34,8 @@ def triple(ends: Sequence[float] | None, usual: float | None) -> str:
         return UNKNOWN
     if ends is None:
         return three_digits(usual)
-    decimals = min(_decimals(max(abs(ends[0]), abs(ends[1]))), 2)
+    decimals = _decimals(max(abs(ends[0]), abs(ends[1])))
     return " / ".join(f"{value:.{decimals}f}" for value in (ends[0], usual, ends[1]))
-
-
-def plain(value: float) -> str:
-    """Return a number of three significant digits without a prefix, in plain notation from 0.001 to below a million."""
-    rounded = float(f"{value:.3g}")
-    if rounded != 0.0 and not 1e-3 <= abs(rounded) < 1e6:
-        return f"{value:.3g}"
-    return f"{rounded:.6f}".rstrip("0").rstrip(".")
 
 
 def three_digits(value: float) -> str:
@@ -76,14 +57,6 @@ def ambient(degC: float) -> str:
 def counted(count: int, word: str) -> str:
     """Return ``1 error`` or ``3 errors``."""
     return f"{count} {word}" if count == 1 else f"{count} {word}s"
-
-
-def _engineering_exponent(value: float) -> int:
-    if value == 0.0:
-        return 0
-    rounded = float(f"{abs(value):.3g}")
-    exponent = 3 * math.floor(math.log10(rounded) / 3.0)
-    return min(max(exponent, min(PREFIXES)), max(PREFIXES))
 
 
 def _decimals(value: float) -> int:

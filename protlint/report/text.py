@@ -144,7 +144,7 @@ def _currents(limiter: Document) -> list[str]:
     wanted = ((needs["carry_A"], "at least", hand["carry_A"]), (needs["cap_A"], "at most", hand["cap_A"]))
     if any(need is not None for need, _, _ in wanted):
         stated = [f"{words} {three_digits(need / scale)}" if need is not None else UNKNOWN for need, words, _ in wanted]
-        rows.append(["the board needs", *stated, ""])
+        rows.append(["needed", *stated, ""])
         rows.append(["in hand", *(_spare(spare, need, scale) for need, _, spare in wanted), ""])
     return ["", f"  Currents in {unit}: low / usual / high", *table(rows)]
 

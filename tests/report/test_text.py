@@ -31,10 +31,10 @@ def test_a_waived_finding_stays_marked_with_its_reason_and_stands_last() -> None
 def test_what_a_person_needs_is_there() -> None:
     text = rendered_text(document(sample_review()))
     for expected in (
-        "279 / 294 / 308",
-        "at least 700",
-        "-421 (-60 %)",
-        "= 282 mA",
+        "0.279 / 0.294 / 0.308",
+        "at least 0.700",
+        "-0.421 (-60 %)",
+        "= 0.282 A",
         "remedy: fit 0.36 ohm in place of R11",
         "limiter.Q10.peak",
         "node N3 floats",

@@ -14,6 +14,7 @@ from protlint.findings import Finding, NotChecked, Warning, WorkingLine, identif
 from protlint.limits import LimiterLimits, Limits, Range
 from protlint.netlist.model import Net, Netlist, Part, Pin, Property
 from protlint.pipeline import Review, ReviewedLimiter
+from protlint.solve.bench import Bench
 from protlint.solve.circuit import Circuit, Device, Drive
 from protlint.solve.solution import Currents, Loop, Point, Sensitivity, Solution, State, Step
 from protlint.topology.limiter import ROLES, Found, Limiter
@@ -53,14 +54,13 @@ def sample_review(names: Mapping[str, str] = PLAIN, *, notes: int = 0) -> Review
         ReviewedLimiter(
             limiter=first,
             needs=LimiterLimits(carry_A=0.7, cap_A=1.2, output_V=12.0),
-            circuit=_circuit(names),
+            bench=_bench(names),
             solution=_solution(0.367),
             verdict="fails",
             not_checked=(NotChecked("trips-on-peaks", "limiter.Q10.peak"),),
-            assumed=("the shunt stands at the ambient: limiter.Q10.shunt_rise says otherwise",),
         ),
-        ReviewedLimiter(second, LimiterLimits(), None, Solution(not_solved="node N3 floats"), "not judged"),
-        ReviewedLimiter(third, LimiterLimits(carry_A=0.2), _circuit(names), _solution(0.9), "passes"),
+        ReviewedLimiter(second, LimiterLimits(), Bench(None), Solution(not_solved="node N3 floats"), "not judged"),
+        ReviewedLimiter(third, LimiterLimits(carry_A=0.2), _bench(names), _solution(0.9), "passes"),
     )
     findings = (
         _carry_not_met(names, first.id),
@@ -206,6 +206,15 @@ def _limiter(names: Mapping[str, str], identity: str, topology: str) -> Limiter:
         roles={role: found.get(role, ()) for role in ROLES},
         nets={"drive": 0, "feed": 1, "sense": 2, "far": 3, "output": 3} if first else dict.fromkeys(("drive", "output")),
         also_matched=("two-transistor-sink",) if first else (),
+    )
+
+
+def _bench(names: Mapping[str, str]) -> Bench:
+    return Bench(
+        circuit=_circuit(names),
+        element_of={names["pass"]: 0, names["sense"]: 1},
+        nets={"+12V": "held at 12 V, by its name", names["out"]: "the output", "N1": "solved for"},
+        assumed=(("drive", "the drive DRV is taken as stiff, from 0 V to 12 V"),),
     )
 
 
