@@ -7,6 +7,7 @@ exit code of the command, and it prints as one line ``file:line:column: message`
 from __future__ import annotations
 
 import bisect
+import codecs
 import contextlib
 import os
 import re
@@ -22,6 +23,9 @@ from protlint.toml_places import key_places
 
 LARGEST_TOML = 4_000_000
 """Bytes; what a person writes is a thousandth of it."""
+
+_NO_ENCODINGS = frozenset({"idna", "punycode", "raw-unicode-escape", "undefined", "unicode-escape", "utf-7"})
+"""What Python files under encodings, though no file is written in them."""
 
 
 class ProtlintError(Exception):
@@ -60,24 +64,74 @@ class UsageError(ProtlintError, ValueError):
     """A command or a function was called in a way that cannot work."""
 
 
-def read_bytes(path: str | Path) -> tuple[bytes, str]:
+def read_bytes(path: str | Path, *, limit: int | None = None) -> tuple[bytes, str]:
     """Return a file's bytes and the name to call it by; ``-`` is standard input.
 
     Raises
     ------
     FileError : the file is missing, a folder, or cannot be read.
+    InputError : it holds more than ``limit`` bytes; no more than that is read.
     """
+    enough = -1 if limit is None else limit + 1
     if str(path) == "-":
-        return sys.stdin.buffer.read(), "<standard input>"
+        return _within(limit, sys.stdin.buffer.read(enough), "<standard input>"), "<standard input>"
     name = shown_name(path)
     try:
-        return Path(path).read_bytes(), name
+        with Path(path).open("rb") as stream:
+            return _within(limit, stream.read(enough), name), name
     except FileNotFoundError:
         raise FileError("no such file", file=name) from None
     except IsADirectoryError:
         raise FileError("this is a folder, not a file", file=name) from None
     except OSError as error:
         raise FileError(f"cannot be read ({error.strerror})", file=name) from None
+
+
+def _within(limit: int | None, data: bytes, name: str) -> bytes:
+    if limit is not None and len(data) > limit:
+        raise InputError(f"larger than {limit // 1_000_000} MB, the most that is read", file=name)
+    return data
+
+
+def decode_text(data: bytes, encoding: str | None = None, *, file: str | None = None) -> Decoded:
+    """Return the text of a file whose encoding nothing declares, decided once for the whole of it.
+
+    The encoding asked for; else UTF-8 where the bytes are that; else cp1252, or latin-1 where a byte means nothing in it.
+
+    Raises
+    ------
+    UsageError : there is no encoding of that name.
+    InputError : the bytes are not in the encoding asked for.
+    """
+    if encoding is None:
+        for guess in ("utf-8", "cp1252"):
+            with contextlib.suppress(UnicodeDecodeError):
+                return _decoded(data.decode(guess), guess)
+        return _decoded(data.decode("latin-1"), "latin-1")
+    try:
+        usable = codecs.lookup(encoding).name not in _NO_ENCODINGS
+    except (LookupError, ValueError):
+        usable = False
+    try:
+        if usable:
+            return _decoded(data.decode(encoding), encoding)
+    except LookupError:
+        pass  # a codec, but of bytes
+    except UnicodeDecodeError as error:
+        before = data[: error.start]
+        line, column = before.count(b"\n") + 1, error.start - before.rfind(b"\n")
+        message = f"the byte {data[error.start]:#04x} means nothing in {encoding}: give the encoding the file was written in"
+        raise InputError(message, file=file, line=line, column=column) from None
+    raise UsageError(f"no encoding is called {encoding!r}; utf-8, cp1252 and cp1251 are usual ones", file=file)
+
+
+def _decoded(text: str, encoding: str) -> Decoded:
+    text = text.removeprefix("\ufeff")
+    if text.isascii():
+        return Decoded(text, encoding, None, 0)
+    strange = re.compile("[^\\x00-\\x7f]")
+    first = strange.search(text)
+    return Decoded(text, encoding, first and first.start(), len(strange.findall(text)))
 
 
 def shown_name(path: str | Path) -> str:
@@ -132,6 +186,16 @@ def data_folder(name: str, checkout_name: str | None = None) -> Path:
         if folder.is_dir():
             return folder
     raise FileError(f"protlint's own folder {name!r} is missing: install protlint again", file=name)
+
+
+@dataclass(frozen=True, slots=True)
+class Decoded:
+    """A text, the encoding it was read in, the offset of its first character outside ASCII and how many there are."""
+
+    text: str
+    encoding: str
+    first_outside_ascii: int | None
+    outside_ascii: int
 
 
 @dataclass(frozen=True, slots=True)
