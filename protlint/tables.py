@@ -124,13 +124,14 @@ class Table:
 
     def quantities(self, key: str, *dimensions: str) -> tuple[float, ...]:
         """Return a list of quantities, one for each dimension named."""
-        content = self.content[key]
-        if not isinstance(content, list) or len(content) != len(dimensions):
-            wanted = ", ".join(f'"{DIMENSIONS[name].example}"' for name in dimensions)
-            raise self.error(f'"{key}" is a list of {len(dimensions)}, such as [{wanted}], not {_what(content)}', key)
-        return tuple(
-            self._read(item, name, key, index) for index, (item, name) in enumerate(zip(content, dimensions, strict=True))
-        )
+        return self._list(self.content[key], dimensions, key)
+
+    def rows(self, key: str, *dimensions: str) -> tuple[tuple[float, ...], ...]:
+        """Return a list of such lists, never empty."""
+        content = self.content.get(key)
+        if not isinstance(content, list) or not content:
+            raise self.error(f'"{key}" is a list of lists, each such as {_example(dimensions)}, not {_what(content)}', key)
+        return tuple(self._list(row, dimensions, key, index) for index, row in enumerate(content))
 
     def span(self, key: str, dimension: str) -> Span | None:
         """Return (low, usual, high) of ``"24 V"``, ``"24 V 10 %"`` or ``{ low, usual, high }``; None where it is absent."""
@@ -163,6 +164,14 @@ class Table:
         except ValueError as error:
             raise self.error(str(error), key) from None
 
+    def _list(self, content: Any, dimensions: tuple[str, ...], *keys: str | int) -> tuple[float, ...]:
+        if not isinstance(content, list) or len(content) != len(dimensions):
+            raise self.error(
+                f"expected {len(dimensions)} quantities, such as {_example(dimensions)}, not {_what(content)}", *keys
+            )
+        pairs = enumerate(zip(content, dimensions, strict=True))
+        return tuple(self._read(item, name, *keys, index) for index, (item, name) in pairs)
+
     def _read(self, content: Any, dimension: str, *keys: str | int) -> float:
         wanted = DIMENSIONS[dimension]
         if not isinstance(content, str):
@@ -184,13 +193,19 @@ class Table:
             raise self.error(str(error), key) from None
 
 
+def _example(dimensions: tuple[str, ...]) -> str:
+    return "[" + ", ".join(f'"{DIMENSIONS[name].example}"' for name in dimensions) + "]"
+
+
 def _what(content: Any) -> str:
+    if content is None:
+        return "nothing"
     if isinstance(content, bool):
         return f"the truth value {str(content).lower()}"
     if isinstance(content, str):
         return f'"{content}"' if content.strip() else "an empty text"
     if isinstance(content, list):
-        return "a list"
+        return f"a list of {len(content)}"
     if isinstance(content, dict):
         return "a table"
     return str(content)
