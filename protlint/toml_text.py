@@ -5,13 +5,13 @@ from __future__ import annotations
 import re
 
 _ESCAPES = {'"': '\\"', "\\": "\\\\", "\n": "\\n", "\r": "\\r", "\t": "\\t"}
-_ESCAPED = re.compile('["\\\\\x00-\x1f\x7f-\x9f\u200b-\u200f\u2028-\u202e\u2060-\u2069\ufeff]')
+_ESCAPED = re.compile('["\\\\\x00-\x1f\x7f-\x9f\u200b-\u200f\u2028-\u202e\u2060-\u2069\ufeff]|(?<=#)#|(?<=:):')
 _SURROGATE = re.compile("[\ud800-\udfff]")
 _BARE = re.compile(r"[A-Za-z0-9_-]+")
 
 
 def toml_string(text: str) -> str:
-    """Return a text as a basic string of TOML 1.0; what steers a display is written as an escape.
+    """Return a text as a basic string of TOML 1.0; what steers a display or a build's log is written as an escape.
 
     A lone surrogate, which TOML cannot hold, becomes a question mark.
     """

@@ -8,8 +8,11 @@ from __future__ import annotations
 import click
 
 from protlint import __version__
+from protlint.cli.demo import demo
 from protlint.cli.review import review
 from protlint.cli.shell import NearestGroup, run
+from protlint.cli.survey import survey
+from protlint.cli.waive import waive
 
 
 @click.group(
@@ -25,7 +28,8 @@ def commands() -> None:
     """
 
 
-commands.add_command(review)
+for command in (review, survey, demo, waive):
+    commands.add_command(command)
 
 
 def main() -> None:

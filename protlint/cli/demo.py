@@ -1,0 +1,57 @@
+"""``protlint demo``: a small board with faults, to try everything on."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import click
+
+from protlint.cli.shell import say
+from protlint.sources import FileError, UsageError, data_folder, shown_name
+
+EXAMPLES = """\b
+Examples:
+  protlint demo bench
+"""
+
+
+@click.command(epilog=EXAMPLES)
+@click.argument("folder")
+def demo(folder: str) -> int:
+    """Write a small board with faults, its limits file and part data into FOLDER, and say what to run next.
+
+    The board is invented. No file that is there already is written over.
+    """
+    source = data_folder("demo", "fixtures/demo")
+    target = Path(folder)
+    files = sorted(path for path in source.iterdir() if path.is_file() and not path.name.startswith("."))
+    for path in files:
+        if (target / path.name).exists():
+            raise UsageError("this file is there already; it is not written over", file=shown_name(target / path.name))
+    try:
+        target.mkdir(parents=True, exist_ok=True)
+        for path in files:
+            (target / path.name).write_bytes(path.read_bytes())
+    except OSError as error:
+        raise FileError(f"cannot be written ({error.strerror})", file=shown_name(folder)) from None
+    say(_what_next(target, [path.name for path in files]))
+    return 0
+
+
+def _what_next(target: Path, names: list[str]) -> str:
+    """Name the commands that fit the files written, in the order a newcomer would run them."""
+    shown = target.as_posix()
+    board = next((name for name in names if name.endswith((".edf", ".edif", ".edn"))), "")
+    options = "".join(
+        f" --{option} {shown}/{name}"
+        for option, word in (("limits", "limits"), ("parts", "parts"))
+        for name in names
+        if name.endswith(".toml") and word in name
+    )
+    return (
+        f"Written to {shown}: {', '.join(names)}\n"
+        "The board is invented. Run next:\n"
+        f"  protlint survey {shown}/{board}\n"
+        f"  protlint review {shown}/{board}{options}\n"
+        "  protlint rules\n"
+    )

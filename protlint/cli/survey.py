@@ -1,0 +1,68 @@
+"""``protlint survey``: what was found on a board and what is missing."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import click
+
+from protlint.cli.options import reading_options
+from protlint.cli.shell import colour_wanted, say
+from protlint.sources import UsageError, shown_name, write_whole
+
+EXAMPLES = """\b
+Examples:
+  protlint survey board.edf
+  protlint survey board.edf --save limits.toml
+"""
+
+
+@click.command(epilog=EXAMPLES)
+@click.argument("netlist")
+@reading_options
+@click.option("--save", metavar="LIMITS.toml", help="Begin a limits file: what is known filled in, blanks for the rest.")
+def survey(
+    netlist: str,
+    limits: str | None,
+    parts: tuple[str, ...],
+    parts_list: str | None,
+    rules: tuple[str, ...],
+    design: str | None,
+    encoding: str | None,
+    save: str | None,
+) -> int:
+    """Show what was read of a board, each limiter found on it, and what is missing.
+
+    NETLIST is an EDIF 2 0 0 file; - reads standard input.
+    """
+    _refuse(save)
+    from protlint import pipeline
+    from protlint.report.skeleton import rendered_skeleton
+    from protlint.report.survey import survey as surveyed
+    from protlint.report.survey_text import rendered_survey
+
+    review = pipeline.review(
+        netlist,
+        limits=limits,
+        parts=parts,
+        parts_list=parts_list,
+        rules=rules,
+        design=design,
+        encoding=encoding,
+    )
+    text = rendered_survey(surveyed(review), colour=colour_wanted())
+    if save is not None:
+        write_whole(save, rendered_skeleton(review))
+        text += f"\nA limits file was begun in {shown_name(save)}.\n"
+    say(text)
+    return 0
+
+
+def _refuse(save: str | None) -> None:
+    """Refuse a file that is no limits file, and one that stands: a designer may have filled it in."""
+    if save is None:
+        return
+    if Path(save).suffix.lower() != ".toml":
+        raise UsageError("a limits file to save ends in .toml", file=save)
+    if Path(save).exists():
+        raise UsageError("this file is there already; it is not written over", file=save)

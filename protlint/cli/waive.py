@@ -1,0 +1,68 @@
+"""``protlint waive``: accept a finding, with a reason and a name."""
+
+from __future__ import annotations
+
+import difflib
+from datetime import date
+
+import click
+
+from protlint.cli.options import as_date, reading_options
+from protlint.cli.shell import say
+from protlint.sources import UsageError, shown_name
+
+EXAMPLES = """\b
+Examples:
+  protlint waive board.edf base-stop-absent-0123456789ab --reason "drive gives 5 mA" --by "A. Reviewer"
+"""
+
+
+@click.command(epilog=EXAMPLES)
+@click.argument("netlist")
+@click.argument("fingerprint")
+@click.option("--reason", required=True, help="Why the finding is accepted.")
+@click.option("--by", required=True, help="Who accepts it.")
+@click.option("--until", metavar="DATE", callback=as_date, help="The last day on which it is accepted.")
+@click.option("--waivers", metavar="FILE", default="waivers.toml", show_default=True, help="The file it is added to.")
+@reading_options
+def waive(
+    netlist: str,
+    fingerprint: str,
+    reason: str,
+    by: str,
+    until: date | None,
+    waivers: str,
+    limits: str | None,
+    parts: tuple[str, ...],
+    parts_list: str | None,
+    rules: tuple[str, ...],
+    design: str | None,
+    encoding: str | None,
+) -> int:
+    """Add a waiver for the finding FINGERPRINT of NETLIST; what stands in the waivers file stays as it is.
+
+    The board is reviewed with the options given, so that only a finding that is there can be waived.
+    """
+    for name, text in (("--reason", reason), ("--by", by)):
+        if not text.strip():
+            raise click.UsageError(f"{name} is empty")
+    from protlint import pipeline
+    from protlint.waivers import Waiver, add_waiver
+
+    review = pipeline.review(
+        netlist,
+        limits=limits,
+        parts=parts,
+        parts_list=parts_list,
+        rules=rules,
+        design=design,
+        encoding=encoding,
+    )
+    names = [finding.fingerprint for finding in review.findings]
+    if fingerprint not in names:
+        near = difflib.get_close_matches(fingerprint, names, n=1)
+        hint = f"; did you mean {near[0]}?" if near else ""
+        raise UsageError(f"no finding of this board is called {fingerprint}{hint}", file=review.board.netlist.file)
+    add_waiver(waivers, Waiver(reason=reason, by=by, fingerprint=fingerprint, until=until))
+    say(f"Added to {shown_name(waivers)}: {fingerprint}\nReview with --waivers {waivers} from now on.\n")
+    return 0

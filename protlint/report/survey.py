@@ -1,0 +1,141 @@
+"""What a survey tells: what was read of a board, how it was understood, what is missing, and each limiter's circuit.
+
+Like a report it is one plain dict first; ``survey_text`` lays it out.
+"""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Iterable
+from typing import TYPE_CHECKING
+
+from protlint.board.graph import Board, BoardPart
+from protlint.limits import Range
+from protlint.report.document import document, rounded
+from protlint.report.shape import Document
+from protlint.solve.circuit import Circuit
+
+if TYPE_CHECKING:
+    from protlint.pipeline import Review, ReviewedLimiter
+
+VALUED_KINDS = ("resistor", "capacitor", "inductor")
+"""Kinds whose value a circuit cannot do without."""
+
+ROLED_KINDS = ("npn", "pnp", "npn-darlington", "pnp-darlington", "nmos", "pmos", "diode", "zener", "thyristor")
+"""Kinds whose pins are not alike, so that their roles have to be known."""
+
+
+def survey(review: Review) -> Document:
+    """Return what a survey shows of a review."""
+    report = document(review)
+    by_id = {item.limiter.id: item for item in review.limiters}
+    board_order = {limiter.id: place for place, limiter in enumerate(review.found.limiters)}
+    board = review.board
+    return {
+        "caution": report["caution"],
+        "netlist": report["netlist"],
+        "reading": [[name, str(sentence)] for name, sentence in board.netlist.facts.items()],
+        "kinds": _counted((part.kind, part.kind_from) for part in board.parts),
+        "pins": _counted((part.kind, part.roles_from) for part in board.parts if part.kind in ROLED_KINDS),
+        "values": _values(board),
+        "unknown": {
+            "kind": [part.id for part in board.parts if part.kind == "unknown"],
+            "pins": [part.id for part in board.parts if part.kind in ROLED_KINDS and not part.roles],
+            "part_data": _types_without_data(board),
+        },
+        "supplies": [
+            {"net": net.name, **_ends(net.supply.voltage_V), "known_from": net.supply.known_from}
+            for net in board.nets
+            if net.supply is not None
+        ],
+        "limiters": [
+            {**limiter, **_circuit(by_id[limiter["id"]], board)}
+            for limiter in sorted(report["limiters"], key=lambda one: board_order[one["id"]])
+        ],
+        "faults": [
+            {
+                "fault": fault.fault,
+                "spoils": fault.spoils,
+                "parts": [name for names in fault.group.roles.values() for name in names],
+                "says": fault.says,
+            }
+            for fault in review.found.faults
+        ],
+        "warnings": report["warnings"],
+        "assumed": report["assumed"],
+        "remarks": [*review.found.remarks, *review.remarks],
+    }
+
+
+def _counted(pairs: Iterable[tuple[str, str]]) -> list[Document]:
+    """Count parts by kind, and inside a kind by how it was known, in order of appearance."""
+    counts: dict[str, Counter[str]] = {}
+    for kind, known_from in pairs:
+        counts.setdefault(kind, Counter())[known_from] += 1
+    return [
+        {"kind": kind, "count": known.total(), "known_from": [[source, count] for source, count in known.items()]}
+        for kind, known in counts.items()
+    ]
+
+
+def _values(board: Board) -> Document:
+    valued = [part for part in board.parts if part.kind in VALUED_KINDS]
+    return {
+        "read": sum(part.values.value is not None for part in valued),
+        "unreadable": [
+            {"part": part.id, "text": part.values.text, "why": part.values.unreadable}
+            for part in valued
+            if part.values.unreadable is not None
+        ],
+        "absent": [part.id for part in valued if part.values.text is None and part.values.value is None],
+        "not_fitted": [part.id for part in board.parts if not part.values.fitted],
+        "with_tolerance": sum(part.values.tolerance is not None for part in valued),
+        "with_power": sum(part.values.power_W is not None for part in valued),
+    }
+
+
+def _types_without_data(board: Board) -> list[Document]:
+    """List the semiconductor types of which nothing is known, with the parts of each."""
+    lacking: dict[str, list[str]] = {}
+    for part in board.parts:
+        if part.kind in ROLED_KINDS and part.entry is None:
+            lacking.setdefault(_type_of(part), []).append(part.id)
+    return [{"part_number": number, "parts": parts} for number, parts in lacking.items()]
+
+
+def _type_of(part: BoardPart) -> str:
+    return part.part_number or part.part.cell
+
+
+def _circuit(item: ReviewedLimiter, board: Board) -> Document:
+    bench = item.bench
+    return {
+        "also_matched": list(item.limiter.also_matched),
+        "rule_nets": [[name, board.nets[index].name] for name, index in item.limiter.bound.items()],
+        "held": [[net, held] for net, held in bench.nets.items()],
+        "missing": [missing.needs for missing in bench.missing],
+        "drive_ends": _drive(bench.circuit),
+        "shorts": list(bench.circuit.shorts) if bench.circuit else [],
+        "devices": [
+            {"name": device.name, "kind": device.kind, "nodes": list(device.nodes), "assumed": list(device.assumed)}
+            for device in (bench.circuit.devices if bench.circuit else ())
+        ],
+    }
+
+
+def _drive(circuit: Circuit | None) -> Document | None:
+    if circuit is None:
+        return None
+    drive = circuit.drive
+    return {
+        "node": drive.node,
+        "low_V": _ends(drive.low_V),
+        "high_V": _ends(drive.high_V),
+        "resistance_ohm": rounded(drive.resistance_ohm),
+        "current_A": rounded(drive.current_A),
+        "assumed": drive.assumed,
+    }
+
+
+def _ends(voltage: Range) -> Document:
+    return {"low": rounded(voltage.low), "usual": rounded(voltage.usual), "high": rounded(voltage.high)}

@@ -1,0 +1,193 @@
+"""The survey as lines of 80 columns."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+
+from protlint.report.figures import counted, figure
+from protlint.report.layout import painted, table, wrapped
+from protlint.report.safe import terminal, throughout
+from protlint.report.shape import Document
+from protlint.report.text import POLARITY_WORDS, ROLE_WORDS
+
+MOST_LISTED = 12
+"""Names listed before the rest is counted."""
+
+
+def rendered_survey(facts: Document, *, colour: bool = False) -> str:
+    """Return a survey as text; ``colour`` adds the colours of a terminal."""
+    safe: Document = throughout(facts, terminal)
+    netlist = safe["netlist"]
+    title = (
+        f"{netlist['file']}: design {netlist['design']}, {counted(netlist['parts'], 'part')}, "
+        f"{counted(netlist['nets'], 'net')}, {counted(netlist['pins'], 'connected pin')}"
+    )
+    lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
+    sections = (
+        ("How it was read", _reading(safe)),
+        ("Parts", _parts(safe)),
+        ("Supplies", _supplies(safe["supplies"])),
+        ("What is missing", _missing(safe)),
+        ("Limiters", _limiters(safe["limiters"], colour)),
+        ("Drawn wrong", _faults(safe["faults"])),
+        ("Assumed", _items(safe["assumed"])),
+        ("Remarks", _items(safe["remarks"])),
+    )
+    for heading, body in sections:
+        if body:
+            lines += ["", painted(heading, "heading", colour=colour), *body]
+    return "\n".join([*lines, "", *wrapped(safe["caution"])]) + "\n"
+
+
+def listed(names: Sequence[str], most: int = MOST_LISTED) -> str:
+    """Return names joined by commas, the rest of a long list counted."""
+    if len(names) <= most:
+        return ", ".join(names)
+    return f"{', '.join(names[:most])} and {len(names) - most} more"
+
+
+def _items(texts: Iterable[str]) -> list[str]:
+    return [line for text in texts for line in wrapped(text, indent=4, first="  - ")]
+
+
+def _reading(facts: Document) -> list[str]:
+    lines = [line for name, sentence in facts["reading"] for line in wrapped(f"{name}: {sentence}", indent=4, first="  ")]
+    for warning in facts["warnings"]:
+        place = ":".join(str(item) for item in (warning["line"], warning["column"]) if item is not None)
+        times = f" ({warning['count']} times)" if warning["count"] > 1 else ""
+        lines += wrapped(f"{place + ': ' if place else ''}{warning['message']}{times}", indent=4, first="  - ")
+    return lines
+
+
+def _parts(facts: Document) -> list[str]:
+    """Show how many parts of each kind there are, and how their kinds, pins and values were known."""
+    pins = {row["kind"]: _sources(row) for row in facts["pins"]}
+    lines = []
+    for row in facts["kinds"]:
+        roles = f"; pins by {pins[row['kind']]}" if row["kind"] in pins else ""
+        lines += wrapped(f"kind by {_sources(row)}{roles}", indent=26, first=f"  {row['count']:>6}  {row['kind']:<16}")
+    values = facts["values"]
+    if values["read"]:
+        text = f"{counted(values['read'], 'value')} read"
+        stated = [f"{values[f'with_{key}']} with their {key}" for key in ("tolerance", "power") if values[f"with_{key}"]]
+        lines += wrapped(", ".join([text, *stated]), indent=4, first="  ")
+    if values["not_fitted"]:
+        lines += wrapped(f"not fitted: {listed(values['not_fitted'])}", indent=4, first="  ")
+    return lines
+
+
+def _sources(row: Document) -> str:
+    known = row["known_from"]
+    if len(known) == 1:
+        return str(known[0][0])
+    return ", ".join(f"{source} ({count})" for source, count in known)
+
+
+def _supplies(supplies: Sequence[Document]) -> list[str]:
+    rows = [[supply["net"], _range(supply), f"by {supply['known_from']}"] for supply in supplies[:MOST_LISTED]]
+    if any(len(row[0]) > 30 for row in rows):
+        lines = [line for row in rows for line in wrapped(": ".join(row), indent=4, first="  ")]
+    else:
+        lines = table(rows, left=(0, 1, 2))
+    if len(supplies) > MOST_LISTED:
+        lines.append(f"  and {len(supplies) - MOST_LISTED} more")
+    return lines
+
+
+def _range(ends: Document) -> str:
+    if ends["low"] == ends["high"]:
+        return figure(ends["usual"], "V")
+    return f"{figure(ends['low'], 'V')} .. {figure(ends['usual'], 'V')} .. {figure(ends['high'], 'V')}"
+
+
+def _missing(facts: Document) -> list[str]:
+    unknown, values = facts["unknown"], facts["values"]
+    texts = []
+    if unknown["kind"]:
+        texts.append(f"kind not known: {listed(unknown['kind'])}")
+    if unknown["pins"]:
+        texts.append(f"pin roles not known ([pins] in the limits file): {listed(unknown['pins'])}")
+    if values["absent"]:
+        texts.append(f"no value: {listed(values['absent'])}")
+    texts += [
+        f'value of {row["part"]} not read: "{row["text"]}" ({row["why"]})' for row in values["unreadable"][:MOST_LISTED]
+    ]
+    if len(values["unreadable"]) > MOST_LISTED:
+        texts.append(f"and {len(values['unreadable']) - MOST_LISTED} more values not read")
+    for row in unknown["part_data"]:
+        texts.append(f"no part data for {row['part_number']} (--parts): {listed(row['parts'])}")
+    return _items(texts)
+
+
+def _limiters(limiters: Sequence[Document], colour: bool) -> list[str]:
+    if not limiters:
+        return ["  none found"]
+    lines: list[str] = []
+    for place, limiter in enumerate(limiters):
+        lines += [""] if place else []
+        lines += _limiter(limiter, colour)
+    return lines
+
+
+def _limiter(limiter: Document, colour: bool) -> list[str]:
+    kind = f"{limiter['topology']}, {POLARITY_WORDS.get(limiter['polarity'], limiter['polarity'])}"
+    lines = wrapped(f"{limiter['id']}: {kind}", indent=4, first="  ")
+    lines = [painted(line, "heading", colour=colour) for line in lines]
+    values = {part["id"]: _value(part) for part in limiter["parts"]}
+    roles = [
+        f"{ROLE_WORDS[role]} {', '.join(values.get(name, name) for name in names)}"
+        for role, names in limiter["roles"].items()
+        if names
+    ]
+    lines += wrapped("; ".join(roles), indent=6, first="    ")
+    for net, held in limiter["held"]:
+        lines += wrapped(f"{net}: {held}", indent=8, first="    ")
+    drive = limiter["drive_ends"]
+    if drive is not None:
+        lines += wrapped(_drive(drive), indent=8, first="    ")
+    if limiter["shorts"]:
+        lines += wrapped(f"a short ties the output to {', '.join(limiter['shorts'])}", indent=8, first="    ")
+    lines += [line for need in limiter["missing"] for line in wrapped(f"missing: {need}", indent=8, first="    ")]
+    assumed = [
+        *limiter["assumed"],
+        *(f"{device['name']}: {text}" for device in limiter["devices"] for text in device["assumed"]),
+    ]
+    for text in dict.fromkeys(assumed):
+        lines += wrapped(f"assumed: {text}", indent=8, first="    ")
+    if limiter["also_matched"]:
+        lines += wrapped(f"also fits: {', '.join(limiter['also_matched'])}", indent=8, first="    ")
+    lines += _loop(limiter["loop"])
+    return lines
+
+
+def _value(part: Document) -> str:
+    """Name a part with its value or type."""
+    if part["value"] is not None and part["unit"]:
+        return f"{part['id']} {figure(part['value'], part['unit'])}"
+    return f"{part['id']} {part['part_number']}" if part["part_number"] else str(part["id"])
+
+
+def _drive(drive: Document) -> str:
+    ends = f"drive {drive['node']}: {_range(drive['low_V'])} to {_range(drive['high_V'])}"
+    limits = [
+        f"through {figure(drive['resistance_ohm'], 'ohm')}" if drive["resistance_ohm"] else "stiff",
+        f"{figure(drive['current_A'], 'A')} at most" if drive["current_A"] is not None else "",
+        "assumed" if drive["assumed"] else "",
+    ]
+    return ", ".join([ends, *(text for text in limits if text)])
+
+
+def _loop(loop: Document) -> list[str]:
+    if loop["least_damping"] is None and loop["low_frequency_gain"] is None:
+        return []
+    rows = (
+        ("least damping", figure(loop["least_damping"]), f"at {figure(loop['at_Hz'], 'Hz')}"),
+        ("worst damping", figure(loop["worst_damping"]), ""),
+        ("low-frequency gain", figure(loop["low_frequency_gain"]), ""),
+        ("crossover", figure(loop["crossover_Hz"], "Hz"), f"margin {figure(loop['phase_margin_deg'], 'deg')}"),
+    )
+    return ["    loop in the held short, at usual ambient", *table(rows, indent=6, left=(0, 2))]
+
+
+def _faults(faults: Sequence[Document]) -> list[str]:
+    return _items(f"{fault['fault']} ({', '.join(fault['parts'])}): {fault['says']}" for fault in faults)

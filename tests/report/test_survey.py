@@ -1,0 +1,130 @@
+"""The survey and the limits file it begins: what it tells, and that the file reads back as what was known."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import replace
+from pathlib import Path
+
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from protlint.limits import (
+    CheckSetting,
+    DriveLimits,
+    LimiterLimits,
+    Limits,
+    Peak,
+    Range,
+    load_limits,
+)
+from protlint.pipeline import Review
+from protlint.quantities import read_quantity
+from protlint.report.layout import COLUMNS, width
+from protlint.report.skeleton import quantity, rendered_skeleton
+from protlint.report.survey import survey
+from protlint.report.survey_text import rendered_survey
+from tests.report.test_text import ACTING
+from tests.support.sample_review import HOSTILE, PLAIN, sample_review
+
+STATED = Limits(
+    file="lamp.toml",
+    ambient_degC=(-40.0, 25.0, 105.5),
+    resistor_tolerance=0.05,
+    vbe_spread_V=(0.08, 0.04),
+    derating="ECSS-Q-ST-30-11C",
+    supplies_V={"+24V": Range(21.6, 24.0, 26.4)},
+    drives={"DRV": DriveLimits(Range(0.0, 0.0, 0.0), Range(11.0, 12.0, 13.0), resistance_ohm=47.0, current_A=0.02)},
+    drivers={"AMP1": DriveLimits(power_W=0.5, from_rails_V=1.5)},
+    limiters={
+        "*": LimiterLimits(short_s=float("inf")),
+        "Q10": LimiterLimits(
+            carry_A=0.7,
+            cap_A=1.2,
+            output_V=12.0,
+            short_s=0.02,
+            shorted_to=("GND", "-5V"),
+            sink_K_per_W=2.5,
+            shunt_rise_K=20.0,
+            load_capacitance_F=4.7e-4,
+            peak=Peak(1.5, 0.02, 11.0),
+            checks={"base-stop-absent": CheckSetting("error")},
+        ),
+    },
+    attributes={"value": ("VALUE", "Comment")},
+    checks={"base-stop-absent": CheckSetting("off"), "loop-undamped": CheckSetting("note", {"error": 0.3})},
+    pins={"SOT23-X": {"1": "base", "2": "emitter"}},
+)
+
+
+def stated_review() -> Review:
+    return replace(sample_review(), limits=STATED)
+
+
+def loaded(folder: Path, text: str) -> Limits:
+    path = folder / "limits.toml"
+    path.write_text(text, encoding="utf-8")
+    return load_limits(path)
+
+
+def test_it_shows_what_was_read_and_how_each_limiter_is_held() -> None:
+    text = rendered_survey(survey(sample_review()))
+    for expected in (
+        "from designator forms",
+        "emitter-sensed",
+        "+12V: held at 12 V",
+        "through 1 kohm, assumed",
+        "also fits: two-transistor-sink",
+        "no part data for QSN1",
+        "a short ties the output to GND",
+    ):
+        assert expected in text
+
+
+@pytest.mark.parametrize("name", HOSTILE)
+def test_no_name_acts_in_survey_or_skeleton(name: str, tmp_path: Path) -> None:
+    review = sample_review({**PLAIN, **dict.fromkeys(("pass", "sense", "out", "name"), name)})
+    text = rendered_survey(survey(review))
+    assert max(width(line) for line in text.split("\n")) <= COLUMNS
+    skeleton = rendered_skeleton(review)
+    for shown in (text, skeleton):
+        assert not ACTING.search(shown)
+        assert not re.search(r"##|^\s*::", shown, re.MULTILINE)
+    expected = name.replace("\ud800", "?")
+    assert expected in loaded(tmp_path, skeleton).limiters
+
+
+def test_the_skeleton_without_a_limits_file_states_nothing_that_was_assumed(tmp_path: Path) -> None:
+    review = replace(sample_review(), limits=load_limits(None))
+    read = loaded(tmp_path, rendered_skeleton(review))
+    assert read.assumed == load_limits(None).assumed
+    assert read.drives == {}
+    assert read.supplies_V == {"+12V": Range(12.0, 12.0, 12.0), "GND": Range(0.0, 0.0, 0.0)}
+    assert list(read.limiters) == ["Q10", "CH2/Q20", "Q30"]
+    assert all(needs == LimiterLimits() for needs in read.limiters.values())
+
+
+def test_what_was_stated_reads_back_unchanged(tmp_path: Path) -> None:
+    read = loaded(tmp_path, rendered_skeleton(stated_review()))
+    assert read.limiters["Q10"] == STATED.limiters["Q10"]
+    assert read.limiters["*"] == STATED.limiters["*"]
+    assert read.supplies_V["+24V"] == STATED.supplies_V["+24V"]
+    for name in ("ambient_degC", "resistor_tolerance", "vbe_spread_V", "derating", "drives", "drivers", "attributes"):
+        assert getattr(read, name) == getattr(STATED, name), name
+    assert read.checks == STATED.checks
+    assert read.pins == STATED.pins
+
+
+@pytest.mark.parametrize("limits", [load_limits(None), STATED])
+def test_a_survey_with_its_own_skeleton_writes_it_again(limits: Limits, tmp_path: Path) -> None:
+    review = replace(sample_review(), limits=limits)
+    first = rendered_skeleton(review)
+    again = rendered_skeleton(replace(review, limits=loaded(tmp_path, first)))
+    assert again == first
+
+
+@given(st.floats(min_value=1e-12, max_value=1e9, allow_nan=False), st.sampled_from(["A", "V", "ohm", "F"]))
+def test_a_written_quantity_reads_back_as_the_same_number(value: float, unit: str) -> None:
+    dimension = {"A": "current", "V": "voltage", "ohm": "resistance", "F": "capacitance"}[unit]
+    assert read_quantity(quantity(value, unit).strip('"'), dimension) == value
