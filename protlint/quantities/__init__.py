@@ -7,14 +7,16 @@ value texts of a schematic, :mod:`~protlint.quantities.series` holds IEC 60063. 
 
 from protlint.quantities.series import preferred, within
 from protlint.quantities.units import DIMENSIONS, format_quantity, read_any, read_quantity, read_range
-from protlint.quantities.valuetext import ValueText, read_value
+from protlint.quantities.valuetext import Comma, ValueText, read_beside, read_value
 
 __all__ = [
     "DIMENSIONS",
+    "Comma",
     "ValueText",
     "format_quantity",
     "preferred",
     "read_any",
+    "read_beside",
     "read_quantity",
     "read_range",
     "read_value",

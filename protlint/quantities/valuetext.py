@@ -223,7 +223,8 @@ def _value_patterns(dimension: str) -> tuple[re.Pattern[str], ...]:
     spelled = "|".join(_SPELLED.get(dimension, ())) or "(?!)"
     unit, tolerance = f"(?i:{_UNITS[dimension]})", f"(?P<letter>[{''.join(_TOLERANCES)}])"
     return (
-        re.compile(rf"(?P<whole>[0-9]*)(?P<power>{letters})(?P<rest>[0-9]+)(?:{unit}|{tolerance})?{_END}"),
+        re.compile(rf"(?P<whole>[0-9]{{1,4}})(?P<power>{letters})(?P<rest>[0-9]{{1,3}})(?:{unit}|{tolerance})?{_END}"),
+        re.compile(rf"(?P<whole>)(?P<power>{letters})(?P<rest>[0-9]{{1,4}})(?:{unit}|{tolerance})?{_END}"),
         re.compile(
             rf"(?P<number>{_NUM}(?:[eE][+-]?[0-9]{{1,2}}(?=\s*{unit}))?)\s*(?P<power>{letters})?(?:(?<!\d)|\s*)?{unit}{_END}"
         ),
@@ -244,6 +245,19 @@ def _value(found: re.Match[str], dimension: str) -> _Field:
         number = float(f"{digits}e{int(exponent or 0) + power}")
     bare = found.re is _value_patterns(dimension)[-1]
     return _Field("value", found[0], number, named.get("letter"), bare)
+
+
+def read_beside(text: str, kind: str) -> float | None:
+    """Return the first tolerance (a fraction), power (W) or voltage (V) that a text states, or None.
+
+    A tolerance may be an IEC 60062 letter. A comma between digits is a decimal mark here.
+    """
+    if len(text) > LONGEST:
+        return None
+    shown = re.sub(r"(?<=[0-9]),(?=[0-9])", ".", unicodedata.normalize("NFKC", text)).replace("_", " ").strip()
+    if kind == "tolerance" and shown in _TOLERANCES:
+        return _TOLERANCES[shown]
+    return next((field.number for field in _fields(shown, "resistance") if field.kind == kind), None)
 
 
 def _why_not(shown: str, fields: list[_Field], values: list[_Field], dimension: str) -> str | None:
