@@ -34,6 +34,8 @@ class Limiter:
     bound: Mapping[str, int] = field(default_factory=dict)
     also_matched: tuple[str, ...] = ()
     """Other topologies that fit the same shunt and gave way, for the survey."""
+    places: Mapping[str, str] = field(default_factory=dict)
+    """Where a part stands, by part id: every compensation (``base to emitter of the shunt``) and most of the others."""
 
 
 @dataclass(frozen=True, slots=True)

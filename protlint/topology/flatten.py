@@ -1,0 +1,296 @@
+"""Rules to flat patterns: builds-on and instead-of resolved, alternatives and shapes multiplied out, the mirror added."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, replace
+from itertools import product
+
+from protlint.topology.mistakes import Mistakes
+from protlint.topology.terms import ANY, MIRROR, Body, Clause, Each, Either, Item, Rule, Shape, ShapeUse, Test
+
+
+@dataclass(frozen=True, slots=True)
+class Resolved:
+    """A rule with what it inherits: the whole of its clauses, united names and net choices, and the rules it builds on."""
+
+    rule: Rule
+    body: Body
+    unites: tuple[tuple[str, str], ...]
+    nets: Mapping[str, tuple[tuple[str, tuple[Test, ...]], ...]]
+    mirrored: bool
+    ancestors: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Pattern:
+    """One flat pattern: clauses that must all fit, groups that may fit again, parts that may be there, tests.
+
+    ``labels`` are the alternatives it was made from; ``polarity`` is ``n`` as the rule is written and ``p`` mirrored.
+    """
+
+    rule: str
+    fault: bool
+    labels: tuple[str, ...]
+    polarity: str
+    clauses: tuple[Clause, ...]
+    again: tuple[Each, ...]
+    may: tuple[Clause | Each, ...]
+    where: tuple[Test, ...]
+    unites: tuple[tuple[str, str], ...]
+    nets: Mapping[str, tuple[tuple[str, tuple[Test, ...]], ...]]
+
+
+def resolve(rules: Mapping[str, Rule], mistakes: Mistakes) -> dict[str, Resolved]:
+    """Return every rule that can be resolved, by name; unknown bases and cycles are noted as mistakes."""
+    resolved: dict[str, Resolved] = {}
+    for name in rules:
+        line: list[str] = []
+        while name is not None and name in rules and name not in resolved and name not in line:
+            line.append(name)
+            base = rules[name].base
+            if base is None:
+                break
+            if base not in rules:
+                mistakes.say(rules[name].form, f"{name} builds on {base}, which is no rule")
+                break
+            if rules[base].fault:
+                mistakes.say(rules[name].form, f"{name} builds on {base}, which is a fault")
+            if base in line:
+                mistakes.say(rules[name].form, f"{name} builds on itself: {' on '.join([*line, base])}")
+                break
+            name = base
+        for one in reversed(line):
+            rule = rules[one]
+            if rule.base is None:
+                resolved[one] = Resolved(rule, rule.body, rule.unites, dict(rule.nets), rule.mirrored, ())
+            elif rule.base in resolved:
+                resolved[one] = _built_on(resolved[rule.base], rule, mistakes)
+    return resolved
+
+
+def flatten(resolved: Resolved, shapes: Mapping[str, Shape], mistakes: Mistakes) -> list[Pattern]:
+    """Return the flat patterns of a rule, its mirror images behind them."""
+    patterns = []
+    for labels, body in _expand(resolved.body, shapes, mistakes, ()):
+        clauses, again = [], []
+        for item in body.items:
+            if isinstance(item, Clause):
+                clauses.append(item)
+            elif isinstance(item, Each):
+                clauses += item.clauses
+                again.append(item)
+                if item.least == 0:
+                    mistakes.say(item.form, "a group that need not be there belongs under may")
+        rule = resolved.rule
+        patterns.append(
+            Pattern(
+                rule.name, rule.fault, labels, "n", tuple(clauses), tuple(again), body.may, body.where, resolved.unites,
+                resolved.nets,
+            )
+        )  # fmt: skip
+    return patterns + [_mirrored(one) for one in patterns] if resolved.mirrored else patterns
+
+
+def _mirrored(pattern: Pattern) -> Pattern:
+    def tests(choices: tuple[tuple[str, tuple[Test, ...]], ...]) -> tuple[tuple[str, tuple[Test, ...]], ...]:
+        return tuple((name, tuple(test.mirrored() for test in asked)) for name, asked in choices)
+
+    return replace(
+        pattern,
+        polarity="p",
+        clauses=tuple(one.mirrored() for one in pattern.clauses),
+        again=tuple(one.mirrored() for one in pattern.again),
+        may=tuple(one.mirrored() for one in pattern.may),
+        where=tuple(one.mirrored() for one in pattern.where),
+        nets={net: tests(choices) for net, choices in pattern.nets.items()},
+    )
+
+
+def _built_on(base: Resolved, rule: Rule, mistakes: Mistakes) -> Resolved:
+    body = base.body
+    for branch in rule.branches:
+        chosen = _select(body, branch)
+        if chosen == body:
+            mistakes.say(rule.form, f"{rule.base} has no branch {branch!r}")
+        body = chosen
+    for role, items, form in rule.instead:
+        changed = _replace(body, role, items)
+        if changed == body:
+            mistakes.say(form, f"{rule.base} has no {role!r} to put something instead of")
+        body = changed
+    for clause in rule.rejoined:
+        changed = _rejoin(body, clause)
+        if changed == body:
+            mistakes.say(clause.form, f"{rule.base} has no {clause.role!r} to join otherwise")
+        body = changed
+    names = {gone: kept for kept, gone in rule.joined}
+    nets = {**base.nets, **dict(rule.nets)}
+    renamed = {
+        net: tuple((names.get(name, name), tuple(test.renamed(names) for test in asked)) for name, asked in choices)
+        for net, choices in nets.items()
+    }
+    unites = tuple((names.get(one, one), names.get(other, other)) for one, other in (*base.unites, *rule.unites))
+    return Resolved(
+        rule=rule,
+        body=_renamed(body, names) + rule.body,
+        unites=tuple(pair for pair in unites if pair[0] != pair[1]),
+        nets=renamed,
+        mirrored=base.mirrored or rule.mirrored,
+        ancestors=(base.rule.name, *base.ancestors),
+    )
+
+
+def _select(body: Body, branch: str) -> Body:
+    """Return the body with one branch taken wherever an either has it."""
+    taken = Body((), body.may, body.where)
+    for item in body.items:
+        if isinstance(item, Either):
+            branches = dict(item.branches)
+            if branch in branches:
+                taken += branches[branch]
+                continue
+            item = replace(item, branches=tuple((name, _select(one, branch)) for name, one in item.branches))
+        taken += Body((item,))
+    return taken
+
+
+def _replace(body: Body, role: str, new: tuple[Item, ...]) -> Body:
+    """Return the body with other items in the place of those of a role."""
+    items: list[Item] = []
+    done = False
+    for item in body.items:
+        if isinstance(item, Clause | ShapeUse) and item.role == role:
+            items += () if done else new
+            done = True
+        elif isinstance(item, Either):
+            items.append(replace(item, branches=tuple((name, _replace(one, role, new)) for name, one in item.branches)))
+        else:
+            items.append(item)
+    return replace(body, items=tuple(items))
+
+
+def _rejoin(body: Body, clause: Clause) -> Body:
+    """Return the body with the clause of the same role joined otherwise, and of another kind where that is given."""
+    items: list[Item] = []
+    for item in body.items:
+        if isinstance(item, Clause) and item.role == clause.role:
+            item = replace(
+                item, kinds=clause.kinds or item.kinds, pins=clause.pins or item.pins, ends=clause.ends or item.ends
+            )
+        elif isinstance(item, Either):
+            item = replace(item, branches=tuple((name, _rejoin(one, clause)) for name, one in item.branches))
+        items.append(item)
+    return replace(body, items=tuple(items))
+
+
+def _renamed(body: Body, names: Mapping[str, str]) -> Body:
+    if not names:
+        return body
+    items: list[Item] = []
+    for item in body.items:
+        if isinstance(item, Either):
+            items.append(replace(item, branches=tuple((name, _renamed(one, names)) for name, one in item.branches)))
+        else:
+            items.append(item.renamed(names))
+    may = tuple(one.renamed(names) for one in body.may)
+    return Body(tuple(items), may, tuple(test.renamed(names) for test in body.where))
+
+
+def _expand(
+    body: Body, shapes: Mapping[str, Shape], mistakes: Mistakes, inside: tuple[str, ...]
+) -> Iterator[tuple[tuple[str, ...], Body]]:
+    """Yield every way to take the alternatives of a body, with the names of those taken."""
+    choices = [list(_choices(item, shapes, mistakes, inside)) for item in body.items]
+    for picked in product(*choices):
+        labels = tuple(label for taken, _ in picked for label in taken)
+        whole = Body((), body.may, body.where)
+        for _, part in picked:
+            whole += part
+        yield labels, whole
+
+
+def _choices(
+    item: Item, shapes: Mapping[str, Shape], mistakes: Mistakes, inside: tuple[str, ...]
+) -> Iterator[tuple[tuple[str, ...], Body]]:
+    if isinstance(item, Either):
+        for name, branch in item.branches:
+            for labels, body in _expand(branch, shapes, mistakes, inside):
+                yield (name, *labels), body
+    elif isinstance(item, ShapeUse):
+        shape = shapes.get(item.shape)
+        ports = dict(item.ports)
+        if shape is None:
+            mistakes.say(item.form, f"unknown kind or shape {item.shape!r}")
+        elif item.shape in inside:
+            mistakes.say(item.form, f"shape {item.shape} stands inside itself")
+        elif set(ports) != set(shape.ports) or len(item.ports) != len(ports):
+            mistakes.say(item.form, f"shape {item.shape} joins {', '.join(shape.ports)}")
+        else:
+            for name, variant in shape.variants:
+                for labels, body in _expand(_renamed(variant, ports), shapes, mistakes, (*inside, item.shape)):
+                    yield (name, *labels), body
+    else:
+        yield (), Body((item,))
+
+
+def check_pattern(pattern: Pattern, resolved: Resolved, mistakes: Mistakes) -> None:
+    """Note what makes a pattern impossible to search or is bound to be a slip of the pen."""
+    if not any(_is_anchor(clause) for clause in pattern.clauses):
+        mistakes.say(resolved.rule.form, "nothing to begin the search at: a rule needs a part that is no resistor")
+        return
+    bound = {name for clause in pattern.clauses for name in clause.nets()}
+    for clause in pattern.clauses:
+        for test in clause.when:
+            for name in set(test.nets()) - bound:
+                mistakes.say(clause.form, f"the test {test} asks about {name}, which no clause joins")
+    reached = set(pattern.clauses[0].nets())
+    waiting = list(pattern.clauses[1:])
+    while True:
+        joined = [clause for clause in waiting if not reached.isdisjoint(clause.nets())]
+        if not joined:
+            break
+        reached.update(name for clause in joined for name in clause.nets())
+        waiting = [clause for clause in waiting if clause not in joined]
+    for clause in waiting:
+        mistakes.say(clause.form, f"nothing joins this {clause.role} to the rest of {pattern.rule}")
+    known = set(bound)
+    for item in pattern.may:
+        if known.isdisjoint(item.nets()):
+            mistakes.say(item.form, "nothing joins this to what must be there")
+        known.update(item.nets())
+    for test in pattern.where:
+        for name in sorted(set(test.nets()) - bound):
+            mistakes.say(resolved.rule.form, f"the test {test} asks about {name}, which no clause joins")
+    for net, choices in pattern.nets.items():
+        for name, asked in choices:
+            for one in {name, *(name for test in asked for name in test.nets())} - known:
+                mistakes.say(resolved.rule.form, f"net {net} is to be {one}, which no clause joins")
+    _check_single_names(pattern, mistakes)
+
+
+def _is_anchor(clause: Clause) -> bool:
+    return clause.count is None and "resistor" not in clause.kinds
+
+
+def _check_single_names(pattern: Pattern, mistakes: Mistakes) -> None:
+    """A name joined once and never spoken of again is a slip: what does not matter is called any."""
+    times: dict[str, int] = {}
+    items: tuple[Clause | Each, ...] = (*pattern.clauses, *pattern.may)
+    for item in items:
+        clauses = item.clauses if isinstance(item, Each) else (item,)
+        for clause in clauses:
+            for name in (*clause.nets(), *(name for test in clause.when for name in test.nets())):
+                times[name] = times.get(name, 0) + 1
+    spoken = {name for pair in pattern.unites for name in pair}
+    spoken |= {name for test in pattern.where for name in test.nets()}
+    spoken |= {name for choices in pattern.nets.values() for name, _ in choices}
+    for clause in pattern.clauses:
+        for name in clause.nets():
+            if times[name] == 1 and name not in spoken and name != ANY:
+                mistakes.say(clause.form, f"net {name} is joined here and nowhere else; call it {ANY} if it does not matter")
+
+
+def mirrored_kind(kind: str) -> str:
+    """Return the kind of the other polarity."""
+    return MIRROR.get(kind, kind)

@@ -1,0 +1,133 @@
+"""The rules: every rule file read, resolved and multiplied out, ready to match and to be shown."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+from protlint.sources import FileError, data_folder, read_bytes, shown_name
+from protlint.topology.describe import describe
+from protlint.topology.flatten import Pattern, Resolved, check_pattern, flatten, resolve
+from protlint.topology.mistakes import Mistakes, RuleErrors
+from protlint.topology.read import read_rule_file
+from protlint.topology.terms import Rule, Shape
+
+__all__ = ["Described", "RuleErrors", "Rules", "load_rules", "read_rules"]
+
+ENDING = ".rule"
+"""What a rule file's name ends in."""
+
+
+@dataclass(frozen=True, slots=True)
+class Described:
+    """A topology or a fault as ``protlint rules NAME`` shows it.
+
+    ``says`` is what it is, ``cited`` where it was published, ``used`` where it is met, ``drawing`` its lines of text,
+    ``clauses`` its parts and joins in words, a line each; ``builds_on`` the rules it extends, nearest first (for a fault
+    the topology it spoils).
+    """
+
+    name: str
+    says: str
+    cited: tuple[str, ...]
+    used: str
+    drawing: tuple[str, ...]
+    clauses: tuple[str, ...]
+    builds_on: tuple[str, ...]
+    both_polarities: bool
+    file: str
+
+
+@dataclass(frozen=True, slots=True)
+class Rules:
+    """All rules in use, and the flat patterns made of them."""
+
+    topologies: Mapping[str, Described]
+    faults: Mapping[str, Described]
+    resolved: Mapping[str, Resolved]
+    patterns: tuple[Pattern, ...]
+    fault_patterns: tuple[Pattern, ...]
+
+
+def load_rules(extra_folders: Sequence[str | Path] = ()) -> Rules:
+    """Return protlint's own rules together with those of a user's folders.
+
+    Every file whose name ends in ``.rule`` is read, in the folder and below it.
+
+    Raises
+    ------
+    RuleErrors : rule files hold mistakes; it lists all of them, each with file, line and column.
+    FileError : a folder is missing or holds no rule file, or a file cannot be read.
+    """
+    texts: dict[str, str] = {}
+    own = data_folder("rules")
+    for path in sorted(own.rglob(f"*{ENDING}")):
+        texts[f"rules/{path.relative_to(own).as_posix()}"] = path.read_text(encoding="utf-8")
+    for folder in map(Path, extra_folders):
+        if not folder.is_dir():
+            raise FileError("no such folder", file=shown_name(folder))
+        paths = sorted(folder.rglob(f"*{ENDING}"))
+        if not paths:
+            raise FileError(f"no file here ends in {ENDING}", file=shown_name(folder))
+        for path in paths:
+            content, name = read_bytes(path)
+            try:
+                texts[name] = content.decode("utf-8-sig")
+            except UnicodeDecodeError as error:
+                raise FileError(f"this is not UTF-8 text (byte {error.start + 1})", file=name) from None
+    return read_rules(texts)
+
+
+def read_rules(texts: Mapping[str, str]) -> Rules:
+    """Return the rules in some files' texts, by file name.
+
+    Raises
+    ------
+    RuleErrors : as :func:`load_rules`.
+    """
+    mistakes = Mistakes()
+    rules: dict[str, Rule] = {}
+    shapes: dict[str, Shape] = {}
+    for file, text in texts.items():
+        found_rules, found_shapes = read_rule_file(text, file, mistakes)
+        for rule in found_rules:
+            if rule.name in rules:
+                mistakes.say(rule.form, f"{rule.name} is there already, in {rules[rule.name].file}")
+            rules.setdefault(rule.name, rule)
+        for shape in found_shapes:
+            if shape.name in shapes:
+                mistakes.say(shape.form, f"shape {shape.name} is there already, in {shapes[shape.name].file}")
+            shapes.setdefault(shape.name, shape)
+    resolved = resolve(rules, mistakes)
+    patterns: list[Pattern] = []
+    for one in resolved.values():
+        flat = flatten(one, shapes, mistakes)
+        for pattern in flat:
+            if pattern.polarity == "n":
+                check_pattern(pattern, one, mistakes)
+        patterns += flat
+    mistakes.settle()
+    described = {name: _described(one) for name, one in resolved.items()}
+    return Rules(
+        topologies={name: one for name, one in described.items() if not rules[name].fault},
+        faults={name: one for name, one in described.items() if rules[name].fault},
+        resolved=resolved,
+        patterns=tuple(one for one in patterns if not one.fault),
+        fault_patterns=tuple(one for one in patterns if one.fault),
+    )
+
+
+def _described(one: Resolved) -> Described:
+    rule = one.rule
+    return Described(
+        name=rule.name,
+        says=rule.says,
+        cited=rule.cited,
+        used=rule.used,
+        drawing=rule.drawing,
+        clauses=tuple(describe(one.body)),
+        builds_on=one.ancestors,
+        both_polarities=one.mirrored,
+        file=rule.file,
+    )

@@ -1,0 +1,107 @@
+"""Finds the limiters of a board: every rule that fits, and one limiter for every shunt."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+
+from protlint.board.graph import Board
+from protlint.topology.fitting import Fitter, Match
+from protlint.topology.index import Index
+from protlint.topology.language import Rules
+from protlint.topology.limiter import NETS, ROLES, Found, Limiter
+from protlint.topology.questions import holds
+
+
+def find_limiters(board: Board, rules: Rules) -> Found:
+    """Return every limiter on a board, in board order of its shunt."""
+    index = Index(board)
+    fitter = Fitter(index, rules.patterns)
+    remarks: list[str] = []
+    limiters = []
+    for match, also in _one_for_each_shunt(fitter.matches(), rules, board, remarks):
+        fitter.add_optional(match)
+        limiters.append(_limiter(match, index, also))
+    return Found(tuple(limiters), (), tuple(remarks))
+
+
+def _one_for_each_shunt(
+    matches: Sequence[Match], rules: Rules, board: Board, remarks: list[str]
+) -> list[tuple[Match, tuple[str, ...]]]:
+    """Return the match that names each shunt best, with the other topologies that fit it.
+
+    A rule beats what it builds on; then the match with more required parts wins, then the rule's stated precedence.
+    """
+    by_shunt: dict[int, list[Match]] = {}
+    for match in matches:
+        for shunt in match.elements["shunt"]:
+            by_shunt.setdefault(shunt, []).append(match)
+    chosen: dict[int, tuple[Match, tuple[str, ...]]] = {}
+    for shunt in sorted(by_shunt):
+        rivals = by_shunt[shunt]
+        ancestors = {name for one in rivals for name in rules.resolved[one.pattern.rule].ancestors}
+        best = max(rivals, key=lambda one: (one.pattern.rule not in ancestors, *_rank(one, rules)))
+        others = sorted({one.pattern.rule for one in rivals} - ancestors - {best.pattern.rule})
+        chosen.setdefault(id(best), (best, tuple(others)))
+        level = [
+            one.pattern.rule for one in rivals if one.pattern.rule in others and _rank(one, rules) == _rank(best, rules)
+        ]
+        if level:
+            part = board.parts[board.elements[shunt].parts[0]].id
+            remarks.append(f"{part} fits {best.pattern.rule} and {', '.join(dict.fromkeys(level))} alike")
+    return list(chosen.values())
+
+
+def _rank(match: Match, rules: Rules) -> tuple[int, int]:
+    return match.required, rules.resolved[match.pattern.rule].rule.precedence
+
+
+def _limiter(match: Match, index: Index, also: tuple[str, ...]) -> Limiter:
+    board = index.board
+    elements = {role: tuple(found) for role, found in match.elements.items()}
+    roles = {role: _part_ids(board, elements, role) for role in ROLES}
+    chosen = {net: _chosen(match, net, index) for net in NETS}
+    places = {
+        board.parts[part].id: place for element, place in match.places.items() for part in board.elements[element].parts
+    }
+    return Limiter(
+        id=board.parts[board.elements[match.elements["pass"][0]].parts[0]].id,
+        topology=match.pattern.rule,
+        polarity=match.pattern.polarity,
+        elements=elements,
+        roles=roles,
+        nets={net: None if name is None else _board_net(match, name, index) for net, name in chosen.items()},
+        bound={name: _board_net(match, name, index) for name in match.nets},
+        also_matched=also,
+        places=dict(sorted(places.items())),
+    )
+
+
+def _part_ids(board: Board, elements: Mapping[str, tuple[int, ...]], role: str) -> tuple[str, ...]:
+    head = role.replace("_", "-")
+    parts = [
+        part
+        for name, found in elements.items()
+        if name.split(".")[0] == head
+        for element in found
+        for part in board.elements[element].parts
+    ]
+    return tuple(board.parts[part].id for part in dict.fromkeys(parts))
+
+
+def _chosen(match: Match, net: str, index: Index) -> str | None:
+    for name, tests in match.pattern.nets.get(net, ()):
+        if name in match.nets and all(holds(test, match.nets, index) for test in tests):
+            return name
+    return None
+
+
+def _board_net(match: Match, name: str, index: Index) -> int:
+    """Return the board net of a name: behind a fuse the one that the limiter's own parts are on."""
+    members = index.board_nets(match.nets[name])
+    if len(members) > 1:
+        for role in ("sense", "shunt", "pass", "drive"):
+            for element in match.elements.get(role, ()):
+                for net in index.board.elements[element].terminals.values():
+                    if net in members:
+                        return net
+    return members[0]
