@@ -1,8 +1,8 @@
 """Which nets are supplies: as the limits file says, else as a net's name states a voltage.
 
 ``+12V`` ``-15V`` ``3V3`` ``12V0`` ``V24`` ``P12V`` ``N15V`` ``VCC_3V3`` and the grounds state one; ``VCC``, ``VDD`` and
-``VSS`` do not. A name that goes on to say what the net is for (``5V_EN``, ``12V_SENSE``, ``+24V_OUT``) is no supply's: it is a
-signal, or an output that a limiter may stand in front of.
+``VSS`` do not. A name that goes on to say what the net is for (``5V_EN``, ``12V_SENSE``, ``+24V_OUT``) is no supply's: it
+is a signal, or an output that a limiter may stand in front of.
 """
 
 from __future__ import annotations
