@@ -10,22 +10,28 @@ import click
 from protlint import __version__
 from protlint.cli.demo import demo
 from protlint.cli.review import review
-from protlint.cli.shell import NearestGroup, run
+from protlint.cli.shell import CANNOT, NearestGroup, complain, run
 from protlint.cli.survey import survey
 from protlint.cli.waive import waive
 
 
 @click.group(
     cls=NearestGroup,
+    invoke_without_command=True,
     context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100},
     epilog="`protlint COMMAND --help` shows a command's options with examples. A good start: protlint demo bench",
 )
 @click.version_option(__version__, prog_name="protlint", message="%(prog)s %(version)s")
-def commands() -> None:
+@click.pass_context
+def commands(context: click.Context) -> int:
     """Find every protective current limiter in an EDIF 2 0 0 netlist, solve it, and say what is wrong with it.
 
     A review aid for qualified people: a limiter is no fuse; local codes and licensed practice decide.
     """
+    if context.invoked_subcommand is not None:
+        return 0
+    complain(context.get_help())
+    return CANNOT
 
 
 for command in (review, survey, demo, waive):

@@ -15,7 +15,7 @@ Examples:
 """
 
 
-@click.command(epilog=EXAMPLES)
+@click.command(short_help="Write a small faulty board to try everything on.", epilog=EXAMPLES)
 @click.argument("folder")
 def demo(folder: str) -> int:
     """Write a small board with faults, its limits file and part data into FOLDER, and say what to run next.

@@ -19,7 +19,7 @@ Exit code: 0 the gate holds, 1 it does not, 2 the work could not be done.
 """
 
 
-@click.command(epilog=EXAMPLES)
+@click.command(short_help="Review every limiter of a board and say what is wrong.", epilog=EXAMPLES)
 @click.argument("netlist", nargs=-1, required=True)
 @reading_options
 @click.option("--waivers", metavar="FILE", help="Findings that were looked at and accepted.")
@@ -46,12 +46,10 @@ def review(
 
     NETLIST is an EDIF 2 0 0 file; - reads standard input.
     """
-    from protlint.report.faces import face_of
-
-    for target in save:
-        face_of(target)
-    from protlint import pipeline
     from protlint.report import faces
+
+    faces.check_targets(save)
+    from protlint import pipeline
     from protlint.report.document import document
     from protlint.report.gate import held_back
     from protlint.report.text import rendered_text

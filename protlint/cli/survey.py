@@ -17,7 +17,7 @@ Examples:
 """
 
 
-@click.command(epilog=EXAMPLES)
+@click.command(short_help="Show what was read and found, and what is missing.", epilog=EXAMPLES)
 @click.argument("netlist")
 @reading_options
 @click.option("--save", metavar="LIMITS.toml", help="Begin a limits file: what is known filled in, blanks for the rest.")

@@ -17,7 +17,7 @@ Examples:
 """
 
 
-@click.command(epilog=EXAMPLES)
+@click.command(short_help="Accept a finding, with a reason and a name.", epilog=EXAMPLES)
 @click.argument("netlist")
 @click.argument("fingerprint")
 @click.option("--reason", required=True, help="Why the finding is accepted.")

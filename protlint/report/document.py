@@ -7,12 +7,12 @@ bytes of a report; what is not finite or not known is null. ``review-1.schema.js
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import asdict, fields
 from typing import TYPE_CHECKING, Any
 
 from protlint import __version__
-from protlint.board.graph import Board
+from protlint.board.graph import Board, BoardPart
 from protlint.findings import Finding
 from protlint.limits import LimiterLimits
 from protlint.report.shape import CAUTION, Document, summarised
@@ -29,8 +29,9 @@ UNIT_OF_KIND = {"resistor": "ohm", "capacitor": "F", "inductor": "H", "zener": "
 
 def document(review: Review) -> Document:
     """Return the JSON report of one netlist, version 1: every promised key, null where unknown."""
-    limiters = [_limiter(item, review) for item in review.limiters]
-    findings = [_finding(finding) for finding in review.findings]
+    by_id = {part.id: part for part in review.board.parts}
+    limiters = [_limiter(item, review, by_id) for item in review.limiters]
+    findings = [_finding(finding, by_id) for finding in review.findings]
     netlist = review.board.netlist
     return {
         "report": 1,
@@ -64,7 +65,7 @@ def rounded(value: float | None) -> float | None:
     return float(f"{value:.{SIGNIFICANT_DIGITS}g}") + 0.0
 
 
-def _limiter(item: ReviewedLimiter, review: Review) -> Document:
+def _limiter(item: ReviewedLimiter, review: Review, by_id: Mapping[str, BoardPart]) -> Document:
     limiter, solution = item.limiter, item.solution
     currents = [_currents(row) for row in solution.currents]
     if not currents:
@@ -76,7 +77,7 @@ def _limiter(item: ReviewedLimiter, review: Review) -> Document:
         "verdict": item.verdict,
         "roles": {role: list(limiter.roles.get(role, ())) for role in ROLES},
         "nets": {net: _net_name(review.board, limiter.nets.get(net)) for net in NETS},
-        "parts": _parts(item, review.board),
+        "parts": _parts(item, by_id),
         "needs": _needs(item.needs),
         "currents": currents,
         "in_hand": _in_hand(item.needs, currents),
@@ -87,10 +88,24 @@ def _limiter(item: ReviewedLimiter, review: Review) -> Document:
         "held_short": _point(solution.held_short),
         "worst_point": _point(solution.worst_point),
         "sensitivities": [_plain(row) for row in solution.sensitivities],
+        "short": solution.short,
+        "shorts": [{"net": one.node, "holds_A": _numbers(one.holds_A)} for one in solution.shorts],
         "not_solved": solution.not_solved,
         "assumed": list(dict.fromkeys(sentence for _, sentence in item.bench.assumed)),
+        "asked": _asked(item, review),
         "not_checked": [{"check": row.check, "needs": row.needs} for row in item.not_checked],
     }
+
+
+def _asked(item: ReviewedLimiter, review: Review) -> list[str]:
+    """Name the checks that the limiter was put to; one that found nothing and is not under not checked has passed."""
+    from protlint.checks.table import CHECKS
+
+    if item.solution.not_solved is not None:
+        return []
+    settings = (item.needs.checks, review.limits.checks)
+    levels = {check: next((one[check].level for one in settings if check in one), None) for check in CHECKS}
+    return [check for check, level in levels.items() if level != "off"]
 
 
 def _currents(row: Currents) -> Document:
@@ -144,9 +159,8 @@ def _needs(needs: LimiterLimits) -> Document:
     }
 
 
-def _parts(item: ReviewedLimiter, board: Board) -> list[Document]:
+def _parts(item: ReviewedLimiter, by_id: Mapping[str, BoardPart]) -> list[Document]:
     """List the limiter's parts once each, in the order of the roles, with what is known of them."""
-    by_id = {part.id: part for part in board.parts}
     listed: dict[str, Document] = {}
     for role in ROLES:
         for name in item.limiter.roles.get(role, ()):
@@ -168,7 +182,7 @@ def _parts(item: ReviewedLimiter, board: Board) -> list[Document]:
     return list(listed.values())
 
 
-def _finding(finding: Finding) -> Document:
+def _finding(finding: Finding, by_id: Mapping[str, BoardPart]) -> Document:
     return {
         "check": finding.check,
         "level": finding.level or "warning",
@@ -182,6 +196,11 @@ def _finding(finding: Finding) -> Document:
         "file": finding.file,
         "line": finding.line,
         "column": finding.column,
+        "places": [
+            {"part": name, "line": by_id[name].part.line, "column": by_id[name].part.column}
+            for name in dict.fromkeys(finding.parts)
+            if name in by_id
+        ],
         "fingerprint": finding.fingerprint,
         "waived": finding.waived,
         "waived_by": finding.waived_by,
@@ -209,7 +228,7 @@ def _plain(value: Any) -> Any:
     return {key: rounded(item) if isinstance(item, float) else item for key, item in asdict(value).items()}
 
 
-def _numbers(values: Iterable[float]) -> list[float | None]:
+def _numbers(values: Iterable[float | None]) -> list[float | None]:
     return [rounded(value) for value in values]
 
 

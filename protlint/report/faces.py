@@ -1,31 +1,49 @@
-"""The faces a report can be saved in: one explicit table from file ending to renderer."""
+"""The faces a report can be saved in: one explicit table from file ending to renderer, and the folder of tracker texts."""
 
 from __future__ import annotations
 
+import os
 from collections.abc import Callable, Iterable
 from pathlib import Path
 
+from protlint.report.issues import rendered_issues, save_issues
+from protlint.report.junit import rendered_junit
+from protlint.report.markdown import rendered_markdown
+from protlint.report.sarif import rendered_sarif
 from protlint.report.shape import Document, rendered_json
-from protlint.sources import UsageError, write_whole
+from protlint.sources import FileError, UsageError, shown_name, write_whole
 
 FACES: dict[str, Callable[[Document], str]] = {
     ".json": rendered_json,
+    ".sarif": rendered_sarif,
+    ".xml": rendered_junit,
+    ".md": rendered_markdown,
 }
 """By file ending, in the order help texts name them."""
 
 
-def face_of(target: str) -> Callable[[Document], str]:
-    """Return the renderer for a file to save.
+def check_targets(targets: Iterable[str]) -> None:
+    """Refuse what could not be saved, before any work is done.
 
     Raises
     ------
-    UsageError : the ending is none of ours.
+    UsageError : an ending is none of ours.
+    FileError : the folder a file is to stand in is missing.
     """
-    ending = Path(target).suffix.lower()
-    if ending not in FACES:
-        known = ", ".join(FACES)
-        raise UsageError(f"the ending of a file to save is one of {known}", file=target)
-    return FACES[ending]
+    for target in targets:
+        if not is_folder(target):
+            ending = Path(target).suffix.lower()
+            if ending not in FACES:
+                raise UsageError(
+                    f"the ending of a file to save is one of {', '.join(FACES)}, or / for a folder", file=target
+                )
+            if not Path(target).parent.is_dir():
+                raise FileError("there is no such folder to save in", file=shown_name(Path(target).parent))
+
+
+def is_folder(target: str) -> bool:
+    """Tell whether a target asks for the folder of tracker texts: it ends in a slash."""
+    return target.endswith(("/", os.sep))
 
 
 def save(report: Document, targets: Iterable[str]) -> None:
@@ -33,9 +51,13 @@ def save(report: Document, targets: Iterable[str]) -> None:
 
     Raises
     ------
-    UsageError : an ending is none of ours.
     FileError : a file cannot be written.
     """
-    rendered = [(target, face_of(target)(report)) for target in targets]
-    for target, text in rendered:
+    listed = tuple(targets)
+    files = [(target, FACES[Path(target).suffix.lower()](report)) for target in listed if not is_folder(target)]
+    texts = rendered_issues(report)
+    for target, text in files:
         write_whole(target, text)
+    for target in listed:
+        if is_folder(target):
+            save_issues(target, report, texts)

@@ -18,8 +18,8 @@ SUSPECT = re.compile(r"[^ -~]|::|##")
 """What printable ASCII text does not hold, and how lines that continuous-integration systems act on begin."""
 
 MARKDOWN_ACTING = re.compile(r"[\\`*_\[\]<>|~$&#{}!]")
-MARKDOWN_LEADING = re.compile(r"^([-+=:]|\d+[.)])")
-MARKDOWN_LINKED = re.compile(r"(?i)[@#!%~&$](?=\w)|\b(https?|ftp|mailto)(?=:)|\bwww(?=\.)")
+MARKDOWN_LEADING = re.compile(r"^([-+=:]|\d+[.)](?=\s|$))")
+MARKDOWN_LINKED = re.compile(r"(?i)[@#!%~&$](?=\w)|:(?=[a-z][\w+-]*:)|\b(https?|ftp|mailto)(?=:)|\bwww(?=\.)")
 """What trackers turn into links by themselves: mentions, references, addresses; an empty comment keeps them text."""
 
 XML_BREAK = re.compile("[^\t\n\r\x20-\ud7ff\ue000-\ufffd\U00010000-\U0010ffff]")

@@ -194,8 +194,8 @@ def _regulates(regulates: Document | None) -> list[str]:
     if regulates is None:
         return []
     text = (
-        f"Regulates {figure(regulates['current_A'], 'A')}: {figure(regulates['per_supply_volt'], 'A')} a supply volt, "
-        f"{figure(regulates['per_kelvin'], 'A')} a kelvin, from {figure(regulates['compliance_V'], 'V')} up."
+        f"Regulates {figure(regulates['current_A'], 'A')}: {figure(regulates['per_supply_volt'], '%')} a supply volt, "
+        f"{figure(regulates['per_kelvin'], '%')} a kelvin, from {figure(regulates['compliance_V'], 'V')} up."
     )
     return wrapped(text, indent=4, first="  ")
 

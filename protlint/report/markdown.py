@@ -1,0 +1,148 @@
+"""The report as Markdown, short enough for a comment on a pull request."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from protlint.findings import LEVELS
+from protlint.report.figures import UNKNOWN, ambient, counted, figure, triple, unit_for
+from protlint.report.safe import markdown, throughout
+from protlint.report.shape import Document, boards_of
+from protlint.report.text import sections, summary_line
+
+MOST_CHARACTERS = 60_000
+"""Code hosts cut or refuse comments of more than 65,536 characters."""
+
+BUDGETS = ((True, 10_000), (False, 10_000), (False, 60), (False, 12))
+"""Tried in turn until the text is short enough: with or without working, and the most findings of a level to list."""
+
+
+def rendered_markdown(report: Document) -> str:
+    """Return the report as Markdown; what had to be left out to keep it short is said."""
+    safe: Document = throughout(report, markdown)
+    text = ""
+    for working, most in BUDGETS:
+        lines = [line for board in boards_of(safe) for line in _board(board, working, most)]
+        lines += _unread(safe.get("unread", []))
+        text = "\n".join([*lines, f"_{safe['caution']}_"]) + "\n"
+        if len(text) <= MOST_CHARACTERS:
+            break
+    return text
+
+
+def finding_lines(finding: Document, *, working: bool = True) -> list[str]:
+    """Return one finding as a list item with its working below it; the texts in it are escaped already."""
+    parts = f" ({', '.join(finding['parts'])})" if finding["parts"] else ""
+    whom = f"**{finding['limiter']}**" if finding["limiter"] else "**the board**"
+    lines = [f"- {whom}{parts}: {finding['check']}. {finding['message']}"]
+    if finding["waived"] is not None:
+        by = f" ({finding['waived_by']})" if finding["waived_by"] else ""
+        lines.append(f"  Waived: {finding['waived']}{by}")
+    lines += [f"  Remedy: {finding['remedy']}"] if finding["remedy"] else []
+    lines += ["  Rests on an assumption."] if finding["assumption"] else []
+    where = ":".join(str(finding[key]) for key in ("file", "line", "column") if finding[key] is not None)
+    lines = [*(f"{line}  " for line in lines), f"  {where} {finding['fingerprint']}"]
+    return lines + ([f"  - {line}" for line in working_lines(finding["working"])] if working else [])
+
+
+def working_lines(working: Sequence[Document]) -> list[str]:
+    """Return the lines of a calculation."""
+    return [
+        f"{line['quantity']} = {line['formula']} = {figure(line['value'], line['unit'])}"
+        + (f" ({line['source']})" if line["source"] else "")
+        for line in working
+    ]
+
+
+def _board(board: Document, working: bool, most: int) -> list[str]:
+    lines = [f"## protlint: {board['netlist']['file']}", "", summary_line(board) + ".", ""]
+    lines += _limiters(board)
+    for level in LEVELS:
+        found = [one for one in board["findings"] if one["level"] == level and one["waived"] is None]
+        lines += _findings(f"{level.capitalize()}s", found, working, most, folded=level == "note")
+    waived = [one for one in board["findings"] if one["waived"] is not None]
+    lines += _findings("Waived", waived, False, most, folded=True)
+    lines += _folded("Not checked", [f"- {text}" for text in _not_checked(board)])
+    lines += _folded("Assumed", [f"- {text}" for text in _assumed(board)])
+    lines += _folded("Remarks", [f"- {text}" for text in _remarks(board)])
+    return lines
+
+
+def _limiters(board: Document) -> list[str]:
+    """Show every limiter in a row, the worst first."""
+    rows = [limiter for limiter, _, _ in sections(board) if limiter is not None]
+    if not rows:
+        return []
+    usual = rows[0]["currents"][1]["ambient_degC"]
+    title = ("limiter", "verdict", "topology", "carries at least", "needed", "most", "cap", f"holds at {ambient(usual)}")
+    lines = [f"| {' | '.join(title)} |", f"|{'---|' * len(title)}"]
+    for limiter in rows:
+        hand, needs, row = limiter["in_hand"], limiter["needs"], limiter["currents"][1]
+        unit, scale = unit_for([row["holds_A"]], "A")
+        ends = [end / scale for end in row["holds_range_A"]] if row["holds_range_A"] else None
+        holds = f"{triple(ends, row['holds_A'] / scale)} {unit}" if row["holds_A"] is not None else UNKNOWN
+        cells = (
+            limiter["id"],
+            limiter["verdict"],
+            limiter["topology"],
+            figure(hand["least_carries_A"], "A"),
+            figure(needs["carry_A"], "A"),
+            figure(hand["greatest_most_A"], "A"),
+            figure(needs["cap_A"], "A"),
+            holds,
+        )
+        lines.append(f"| {' | '.join(cells)} |")
+    return [*lines, ""]
+
+
+def _findings(title: str, found: Sequence[Document], working: bool, most: int, *, folded: bool) -> list[str]:
+    if not found:
+        return []
+    lines = [line for finding in found[:most] for line in finding_lines(finding, working=working)]
+    if len(found) > most:
+        lines.append(f"- and {len(found) - most} more; the JSON report has them all")
+    title = f"{title} ({len(found)})"
+    return _folded(title, lines) if folded else [f"### {title}", "", *lines, ""]
+
+
+def _folded(title: str, lines: Sequence[str]) -> list[str]:
+    """Fold lines away under a title (HTML that the usual Markdown hosts know), or return nothing for none."""
+    return [f"<details><summary>{title}</summary>", "", *lines, "", "</details>", ""] if lines else []
+
+
+def _not_checked(board: Document) -> list[str]:
+    texts: dict[str, list[str]] = {}
+    for limiter in board["limiters"]:
+        for row in limiter["not_checked"]:
+            texts.setdefault(f"{limiter['id']}: needs {row['needs']}", []).append(row["check"])
+        if limiter["not_solved"]:
+            texts[f"{limiter['id']}: could not be solved: {limiter['not_solved']}"] = ["everything"]
+    return [f"{head} ({', '.join(dict.fromkeys(checks))})" for head, checks in texts.items()]
+
+
+def _assumed(board: Document) -> list[str]:
+    touched: dict[str, list[str]] = {text: [] for text in board["assumed"]}
+    for limiter in board["limiters"]:
+        for text in limiter["assumed"]:
+            touched.setdefault(text, []).append(limiter["id"])
+    return [text + (f" ({', '.join(names)})" if names else "") for text, names in touched.items()]
+
+
+def _remarks(board: Document) -> list[str]:
+    read = [
+        f"{warning['message']} (line {warning['line']}, {counted(warning['count'], 'time')})"
+        for warning in board["warnings"]
+    ]
+    return [*read, *board["remarks"]]
+
+
+def _unread(errors: Sequence[Document]) -> list[str]:
+    if not errors:
+        return []
+    places = [":".join(str(error[key]) for key in ("file", "line", "column") if error[key] is not None) for error in errors]
+    return [
+        "## Not reviewed",
+        "",
+        *(f"- {place}: {error['message']}" for place, error in zip(places, errors, strict=True)),
+        "",
+    ]

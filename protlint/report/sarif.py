@@ -1,0 +1,168 @@
+"""The report as SARIF 2.1.0 (OASIS), for code hosts and dashboards: one run, a result per finding.
+
+What has no place in a netlist (what was not checked, reading warnings, files that could not be read) becomes a notification
+of the invocation. Section numbers name the prose rules of the standard that its schema cannot hold.
+"""
+
+from __future__ import annotations
+
+import json
+import re
+from collections.abc import Iterable, Mapping
+from urllib.parse import quote
+
+from protlint import __version__
+from protlint.checks.catalogue import CheckRow, load_catalogue
+from protlint.report.figures import figure
+from protlint.report.safe import json_text, terminal, throughout
+from protlint.report.shape import CAUTION, Document, boards_of
+
+SCHEMA = "https://docs.oasis-open.org/sarif/sarif/v2.1.0/errata01/os/schemas/sarif-schema-2.1.0.json"
+
+FINGERPRINT_KEY = "protlint/v1"
+
+_LINK = re.compile(r"\[(?=[^\]]*\]\()")
+
+
+def rendered_sarif(report: Document) -> str:
+    """Return the report as a SARIF log."""
+    boards = boards_of(report)
+    uris = [artifact_uri(board["netlist"]["file"]) for board in boards]
+    safe: Document = throughout(report, terminal)
+    catalogue = load_catalogue()
+    rules = _rules(catalogue, (finding["check"] for board in boards_of(safe) for finding in board["findings"]))
+    index_of = {rule["id"]: place for place, rule in enumerate(rules)}
+    results: list[Document] = []
+    notifications: list[Document] = []
+    for place, board in enumerate(boards_of(safe)):
+        artifact = {"uri": uris[place], "index": place}
+        results += (_result(finding, board, artifact, index_of) for finding in board["findings"])
+        notifications += _notifications(board, artifact, index_of)
+    unread = safe.get("unread", [])
+    notifications += (_unread(error) for error in unread)
+    run = {
+        "tool": {
+            "driver": {
+                "name": "protlint",
+                "version": __version__,
+                "semanticVersion": __version__,
+                "shortDescription": {"text": "Reviews the protective current limiters on a board."},
+                "fullDescription": {"text": CAUTION},
+                "rules": rules,
+            }
+        },
+        "invocations": [{"executionSuccessful": not unread, "toolExecutionNotifications": notifications}],
+        "artifacts": [
+            {"location": {"uri": uri}, "roles": ["analysisTarget"], "hashes": {"sha-256": board["netlist"]["sha256"]}}
+            for uri, board in zip(uris, boards, strict=True)
+        ],
+        "columnKind": "unicodeCodePoints",
+        "results": results,
+    }
+    log = {"$schema": SCHEMA, "version": "2.1.0", "runs": [run]}
+    return json_text(json.dumps(log, ensure_ascii=False, indent=2, allow_nan=False)) + "\n"
+
+
+def artifact_uri(file: str) -> str:
+    """Return a file's name as a relative URI reference (RFC 3986)."""
+    return quote(file.encode("utf-8", "surrogatepass"), safe="/")
+
+
+def message(text: str) -> Document:
+    """Return a plain-text message: braces doubled (3.11.5), brackets that would make a link escaped (3.11.6)."""
+    doubled = text.replace("{", "{{").replace("}", "}}")
+    return {"text": _LINK.sub(r"\\[", doubled)}
+
+
+def _rules(catalogue: Mapping[str, CheckRow], used: Iterable[str]) -> list[Document]:
+    """Describe every check of the catalogue, and by name alone those that a user's own rules added."""
+    rules = []
+    for row in catalogue.values():
+        limits = [f"{limit.says}: {figure(limit.value, limit.unit)}." for limit in row.thresholds.values()]
+        rules.append(
+            {
+                "id": row.name,
+                "shortDescription": {"text": _sentence(row.says)},
+                "fullDescription": {"text": _sentence(row.why)},
+                "help": {
+                    "text": "\n".join([_sentence(row.why), f"Formula: {row.formula}.", *limits, f"Source: {row.source}."])
+                },
+                "defaultConfiguration": {"level": row.level},
+            }
+        )
+    return rules + [{"id": name} for name in dict.fromkeys(used) if name not in catalogue]
+
+
+def _sentence(text: str) -> str:
+    return text[:1].upper() + text[1:].rstrip(".") + "."
+
+
+def _result(finding: Document, board: Document, artifact: Document, index_of: Mapping[str, int]) -> Document:
+    remedy = f" Remedy: {finding['remedy']}." if finding["remedy"] else ""
+    place = {"line": finding["line"], "column": finding["column"]}
+    others = [one for one in finding["places"] if (one["line"], one["column"]) != (finding["line"], finding["column"])]
+    return {
+        "ruleId": finding["check"],
+        "ruleIndex": index_of[finding["check"]],
+        "level": finding["level"],
+        "message": message(_sentence(finding["message"]) + remedy),
+        "locations": [{"physicalLocation": _physical(artifact, place), "logicalLocations": _logical(finding, board)}],
+        "relatedLocations": [
+            {"id": number, "physicalLocation": _physical(artifact, one), "message": message(one["part"])}
+            for number, one in enumerate(others, 1)
+        ],
+        "partialFingerprints": {FINGERPRINT_KEY: finding["fingerprint"]},
+        "suppressions": _suppressions(finding),
+        "properties": {
+            key: finding[key] for key in ("limiter", "parts", "nets", "assumption", "remedy", "working", "fingerprint")
+        },
+    }
+
+
+def _physical(artifact: Document, place: Document) -> Document:
+    region = {"startLine": place["line"]} if place["line"] is not None else {}
+    if region and place["column"] is not None:
+        region["startColumn"] = place["column"]
+    return {"artifactLocation": artifact, "region": region} if region else {"artifactLocation": artifact}
+
+
+def _logical(finding: Document, board: Document) -> list[Document]:
+    """Name the limiter and the parts, qualified by the design (3.33)."""
+    design = board["netlist"]["design"]
+    named = [(finding["limiter"], "limiter")] if finding["limiter"] else []
+    named += [(part, "part") for part in dict.fromkeys(finding["parts"])]
+    return [{"name": name, "fullyQualifiedName": f"{design}/{name}", "kind": kind} for name, kind in named]
+
+
+def _suppressions(finding: Document) -> list[Document]:
+    """Return the waiver as a suppression; every result has the array, empty where it is not suppressed (3.27.23)."""
+    if finding["waived"] is None:
+        return []
+    by = f" ({finding['waived_by']})" if finding["waived_by"] else ""
+    return [{"kind": "external", "status": "accepted", "justification": finding["waived"] + by}]
+
+
+def _notifications(board: Document, artifact: Document, index_of: Mapping[str, int]) -> list[Document]:
+    notifications = []
+    for warning in board["warnings"]:
+        times = f" ({warning['count']} times)" if warning["count"] > 1 else ""
+        location = {"physicalLocation": _physical(artifact, warning)}
+        notifications.append({"level": "warning", "message": message(warning["message"] + times), "locations": [location]})
+    for limiter in board["limiters"]:
+        for row in limiter["not_checked"]:
+            text = f"{limiter['id']}: {row['check']} was not checked; it needs {row['needs']}."
+            known = (
+                {"associatedRule": {"id": row["check"], "index": index_of[row["check"]]}} if row["check"] in index_of else {}
+            )
+            notifications.append({"level": "note", "message": message(text), **known})
+        if limiter["not_solved"]:
+            text = f"{limiter['id']} could not be solved: {limiter['not_solved']}."
+            notifications.append({"level": "warning", "message": message(text)})
+    notifications += ({"level": "note", "message": message(f"Assumed: {text}.")} for text in board["assumed"])
+    notifications += ({"level": "warning", "message": message(text)} for text in board["remarks"])
+    return notifications
+
+
+def _unread(error: Document) -> Document:
+    place = ":".join(str(error[key]) for key in ("file", "line", "column") if error[key] is not None)
+    return {"level": "error", "message": message(f"{place}: {error['message']}")}
