@@ -35,9 +35,7 @@ _LOOSE = ("comment", "name", "device", "component", "component name", "part type
 _ABSENT = ("dnp", "dni", "dnf", "do not populate", "do not fit", "no pop", "nopop", "no stuff", "nostuff", "not fitted")
 _PRESENT = ("fitted", "populate", "populated", "mounted", "assembled", "stuffed", "install")
 _YES, _NO = ("1", "true", "yes", "y", "x"), ("0", "false", "no", "n")
-_DIMENSIONS = {
-    "resistor": "resistance", "link": "resistance", "capacitor": "capacitance", "inductor": "inductance", "zener": "voltage",
-}  # fmt: skip
+_DIMENSIONS = {"resistor": "resistance", "capacitor": "capacitance", "inductor": "inductance", "zener": "voltage"}
 _TYPE_NUMBER = re.compile(r"(?=[^\s]*[0-9])(?=[^\s]*[A-Za-z])[A-Za-z0-9][\w./+#-]{2,39}", re.ASCII)
 _ZENER_CODE = re.compile(r"BZ[A-Z][0-9]{2}[-/ ]?([A-E])([0-9]{1,3}(?:V[0-9]{1,2})?)(?![0-9])", re.IGNORECASE)
 _ZENER_TOLERANCES = {"A": 0.01, "B": 0.02, "C": 0.05, "D": 0.10, "E": 0.20}
@@ -67,10 +65,10 @@ def file_habits(netlist: Netlist, limits: Limits) -> Habits:
             written.setdefault(key, Counter())[item.name] += 1
     by_plain: dict[str, list[str]] = {}
     for key in written:
-        by_plain.setdefault(_plain(key), []).append(key)
+        by_plain.setdefault(plain_name(key), []).append(key)
     names: dict[str, tuple[str, ...]] = {}
     for attribute in ATTRIBUTES:
-        spelled = (*(_plain(name) for name in limits.attributes.get(attribute, ())), *SPELLINGS[attribute])
+        spelled = (*(plain_name(name) for name in limits.attributes.get(attribute, ())), *SPELLINGS[attribute])
         names[attribute] = tuple(dict.fromkeys(key for name in spelled for key in by_plain.get(name, ())))
     names["absent"] = tuple(key for name in _ABSENT for key in by_plain.get(name, ()))
     names["present"] = tuple(key for name in _PRESENT for key in by_plain.get(name, ()))
@@ -109,8 +107,8 @@ def part_numbers(part: Part, habits: Habits, *, listed: Mapping[str, str] | None
     they look like a type: letters and digits in one word, and no resistance.
     """
     stated = list(_texts(part, "part_number", habits, listed or {}))
-    certain = [text for key, text in stated if _plain(key) not in _LOOSE]
-    loose = [text for key, text in stated if _plain(key) in _LOOSE]
+    certain = [text for key, text in stated if plain_name(key) not in _LOOSE]
+    loose = [text for key, text in stated if plain_name(key) in _LOOSE]
     loose += [text for _, text in _texts(part, "value", habits, {})]
     loose.append(part.cell)
     return tuple(dict.fromkeys((*certain, *(text for text in loose if _is_type(text)))))
@@ -132,23 +130,26 @@ def part_number(
     return candidates[0] if candidates else None
 
 
-def _plain(name: str) -> str:
+def plain_name(name: str) -> str:
+    """Return a property's name or a heading as names are compared: folded, with single blanks."""
     return " ".join(re.split(r"[\s._-]+", name.strip().casefold()))
 
 
 def _texts(part: Part, attribute: str, habits: Habits, listed: Mapping[str, str]) -> Iterator[tuple[str, str]]:
-    """Yield (property name, text) of what tells an attribute of a part, blanks left out, the parts list's last."""
+    """Yield (property name, text) of what tells an attribute, blanks left out; the parts list's last, without a name."""
     for key in habits.names[attribute]:
         item = part.properties.get(key)
         if item is not None and not isinstance(item.value, bool) and str(item.value).strip():
             yield key, str(item.value).strip()
     if listed.get(attribute, "").strip():
-        yield attribute, listed[attribute].strip()
+        yield "", listed[attribute].strip()
 
 
 @lru_cache(maxsize=8192)
 def _is_type(text: str) -> bool:
-    return bool(_TYPE_NUMBER.fullmatch(text)) and read_value(text, "resistance").value is None
+    return bool(_TYPE_NUMBER.fullmatch(text)) and all(
+        read_value(text, dimension).value is None for dimension in ("resistance", "voltage")
+    )
 
 
 def _value(part: Part, kind: str, habits: Habits, listed: Mapping[str, str]) -> ValueText:
@@ -203,7 +204,7 @@ def _beside(part: Part, attribute: str, habits: Habits, listed: Mapping[str, str
     """A tolerance, power or voltage from the properties that tell it."""
     for key, text in _texts(part, attribute, habits, listed):
         number = read_beside(text, attribute)
-        if number is None and _plain(key) != "rating":
+        if number is None and plain_name(key) != "rating":
             number = _bare(text, attribute)
         if number is not None:
             return number
@@ -226,7 +227,7 @@ def _fitted(part: Part, habits: Habits) -> bool:
         item = part.properties.get(key)
         return "" if item is None else str(item.value).strip().casefold()
 
-    absent = any(said(key) in _YES or (said(key) and _plain(said(key)) in _ABSENT) for key in habits.names["absent"])
+    absent = any(said(key) in _YES or (said(key) and plain_name(said(key)) in _ABSENT) for key in habits.names["absent"])
     return not absent and not any(said(key) in _NO for key in habits.names["present"])
 
 
