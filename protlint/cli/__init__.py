@@ -10,6 +10,7 @@ import click
 from protlint import __version__
 from protlint.cli.demo import demo
 from protlint.cli.review import review
+from protlint.cli.rules import rules
 from protlint.cli.shell import CANNOT, NearestGroup, complain, run
 from protlint.cli.survey import survey
 from protlint.cli.waive import waive
@@ -34,7 +35,7 @@ def commands(context: click.Context) -> int:
     return CANNOT
 
 
-for command in (review, survey, demo, waive):
+for command in (review, survey, rules, demo, waive):
     commands.add_command(command)
 
 

@@ -1,0 +1,38 @@
+"""``protlint rules``: what protlint knows, and why."""
+
+from __future__ import annotations
+
+import difflib
+
+import click
+
+from protlint.cli.shell import colour_wanted, say
+
+EXAMPLES = """\b
+Examples:
+  protlint rules
+  protlint rules emitter-sensed
+  protlint rules base-stop-absent
+"""
+
+
+@click.command(short_help="List the topologies, faults and checks, or show one in full.", epilog=EXAMPLES)
+@click.argument("name", required=False)
+@click.option("--rules", "folders", metavar="FOLDER", multiple=True, help="Rule files of your own. Repeatable.")
+def rules(name: str | None, folders: tuple[str, ...]) -> int:
+    """List the topologies, faults and checks, or show NAME in full: what, why, formula, thresholds, source."""
+    from protlint.checks.catalogue import load_catalogue
+    from protlint.report.rules_text import names_of, rendered_list, rendered_rule
+    from protlint.topology.language import load_rules
+
+    known, catalogue = load_rules(folders), load_catalogue()
+    if name is None:
+        say(rendered_list(known, catalogue, colour=colour_wanted()))
+        return 0
+    names = names_of(known, catalogue)
+    if name not in names:
+        near = difflib.get_close_matches(name, names, n=1, cutoff=0.5)
+        hint = f"did you mean {near[0]}?" if near else "`protlint rules` lists them all"
+        raise click.UsageError(f"no topology, fault or check is called {name!r}: {hint}")
+    say(rendered_rule(name, known, catalogue, colour=colour_wanted()))
+    return 0
