@@ -17,6 +17,9 @@ from protlint.sources import UsageError, load_toml, read_bytes, write_whole
 from protlint.tables import Table
 from protlint.toml_text import toml_string
 
+MATCHES_NOTHING = "this waiver matches nothing"
+"""How the remark on an idle waiver ends; of several boards it counts only where it is idle on all."""
+
 KEYS = ("fingerprint", "check", "part", "reason", "by", "until")
 
 
@@ -78,7 +81,7 @@ def apply_waivers(
         place = f"{waivers.file}:{waiver.line}:{waiver.column}"
         covered = [finding for finding in listed if waiver.covers(finding)]
         if not covered:
-            remarks.append(f"{place}: this waiver matches nothing")
+            remarks.append(f"{place}: {MATCHES_NOTHING}")
         elif waiver.until is not None and today > waiver.until:
             names = ", ".join(finding.fingerprint for finding in covered)
             remarks.append(

@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 from datetime import date
+from typing import Any
 
 import click
 
 from protlint.cli.options import as_date, reading_options
-from protlint.cli.shell import colour_wanted, say
+from protlint.cli.shell import CANNOT, colour_wanted, complain, say
+from protlint.sources import ProtlintError
 
 EXAMPLES = """\b
 Examples:
@@ -44,31 +46,49 @@ def review(
 ) -> int:
     """Review every limiter of a board: what it does, what is wrong, what could not be checked.
 
-    NETLIST is an EDIF 2 0 0 file; - reads standard input.
+    NETLIST is an EDIF 2 0 0 file; - reads standard input. Several netlists, and folders of them, are reviewed on all
+    cores and make one report; one that cannot be read does not lose the others.
     """
     from protlint.report import faces
 
     faces.check_targets(save)
-    from protlint import pipeline
-    from protlint.report.document import document
     from protlint.report.gate import held_back
     from protlint.report.text import rendered_text
 
-    report = document(
-        pipeline.review(
-            netlist[0],
-            limits=limits,
-            parts=parts,
-            parts_list=parts_list,
-            waivers=waivers,
-            rules=rules,
-            design=design,
-            encoding=encoding,
-        )
-    )
+    files = {
+        "limits": limits,
+        "parts": parts,
+        "parts_list": parts_list,
+        "waivers": waivers,
+        "rules": rules,
+        "on": on,
+    }
+    report, unread = _reviewed(netlist, files, {"design": design, "encoding": encoding})
     text = rendered_text(report, colour=colour_wanted())
-    faces.save(report, save)
+    if len(unread) < report["summary"].get("boards", 1):
+        faces.save(report, save)
     reasons = held_back(report, gate, complete=complete)
     verdict = f"does not hold: {', '.join(reasons)}" if reasons else "holds"
     say(f"{text}\nThe gate ({gate}) {verdict}.\n")
-    return 1 if reasons else 0
+    for error in unread:
+        complain(str(error))
+    return CANNOT if unread else int(bool(reasons))
+
+
+def _reviewed(
+    netlists: tuple[str, ...], files: dict[str, Any], reading: dict[str, Any]
+) -> tuple[dict[str, Any], list[ProtlintError]]:
+    """Return the report, and of several netlists the errors of those that could not be reviewed."""
+    from protlint import pipeline
+    from protlint.cli.many import netlists_of, review_all
+    from protlint.report.document import document
+    from protlint.report.shape import combined
+
+    paths, together = netlists_of(netlists)
+    if not together:
+        return document(pipeline.review(paths[0], **files, **reading)), []
+    answers = review_all(paths, files, reading)
+    failed = [answer for answer in answers if "unread" in answer]
+    report = combined((answer for answer in answers if "unread" not in answer), failed)
+    places = ("file", "line", "column")
+    return report, [ProtlintError(answer["message"], **{key: answer[key] for key in places}) for answer in failed]

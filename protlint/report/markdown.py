@@ -24,6 +24,7 @@ def rendered_markdown(report: Document) -> str:
     for working, most in BUDGETS:
         lines = [line for board in boards_of(safe) for line in _board(board, working, most)]
         lines += _unread(safe.get("unread", []))
+        lines += _folded("Remarks", [f"- {text}" for text in safe["remarks"]]) if "boards" in safe else []
         text = "\n".join([*lines, f"_{safe['caution']}_"]) + "\n"
         if len(text) <= MOST_CHARACTERS:
             break

@@ -28,6 +28,7 @@ def rendered_sarif(report: Document) -> str:
     """Return the report as a SARIF log."""
     boards = boards_of(report)
     uris = [artifact_uri(board["netlist"]["file"]) for board in boards]
+    unique = list(dict.fromkeys(uris))
     safe: Document = throughout(report, terminal)
     catalogue = load_catalogue()
     rules = _rules(catalogue, (finding["check"] for board in boards_of(safe) for finding in board["findings"]))
@@ -35,9 +36,11 @@ def rendered_sarif(report: Document) -> str:
     results: list[Document] = []
     notifications: list[Document] = []
     for place, board in enumerate(boards_of(safe)):
-        artifact = {"uri": uris[place], "index": place}
+        artifact = {"uri": uris[place], "index": unique.index(uris[place])}
         results += (_result(finding, board, artifact, index_of) for finding in board["findings"])
         notifications += _notifications(board, artifact, index_of)
+    if "boards" in safe:
+        notifications += ({"level": "warning", "message": message(text)} for text in safe["remarks"])
     unread = safe.get("unread", [])
     notifications += (_unread(error) for error in unread)
     run = {
@@ -53,8 +56,12 @@ def rendered_sarif(report: Document) -> str:
         },
         "invocations": [{"executionSuccessful": not unread, "toolExecutionNotifications": notifications}],
         "artifacts": [
-            {"location": {"uri": uri}, "roles": ["analysisTarget"], "hashes": {"sha-256": board["netlist"]["sha256"]}}
-            for uri, board in zip(uris, boards, strict=True)
+            {
+                "location": {"uri": uri},
+                "roles": ["analysisTarget"],
+                "hashes": {"sha-256": boards[uris.index(uri)]["netlist"]["sha256"]},
+            }
+            for uri in unique
         ],
         "columnKind": "unicodeCodePoints",
         "results": results,

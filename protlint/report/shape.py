@@ -12,6 +12,7 @@ from typing import Any
 from protlint import __version__
 from protlint.findings import LEVELS
 from protlint.report.safe import json_text
+from protlint.waivers import MATCHES_NOTHING
 
 Document = dict[str, Any]
 """A report, version 1, as ``review-1.schema.json`` beside this module describes it."""
@@ -27,7 +28,7 @@ CAUTION = (
 
 def combined(documents: Iterable[Document], unread: Iterable[Mapping[str, Any]] = ()) -> Document:
     """Return one report over several netlists: their reports in order, and the files that could not be reviewed."""
-    boards = list(documents)
+    boards, idle = _without_idle_waivers(list(documents))
     failed = [{key: error.get(key) for key in ("file", "line", "column", "message")} for error in unread]
     summaries = [board["summary"] for board in boards]
     return {
@@ -41,6 +42,7 @@ def combined(documents: Iterable[Document], unread: Iterable[Mapping[str, Any]] 
         },
         "boards": boards,
         "unread": failed,
+        "remarks": idle,
     }
 
 
@@ -53,6 +55,16 @@ def boards_of(report: Document) -> list[Document]:
 def rendered_json(report: Document) -> str:
     """Return the report as JSON text: UTF-8, two blanks of indent, a line end at the end."""
     return json_text(json.dumps(report, ensure_ascii=False, indent=2, allow_nan=False)) + "\n"
+
+
+def _without_idle_waivers(boards: list[Document]) -> tuple[list[Document], list[str]]:
+    """Take the remarks on idle waivers out of the boards, and return those that every board makes."""
+    idle = [[text for text in board["remarks"] if text.endswith(MATCHES_NOTHING)] for board in boards]
+    everywhere = [text for text in idle[0] if all(text in others for others in idle)] if idle else []
+    cleared = [
+        {**board, "remarks": [text for text in board["remarks"] if not text.endswith(MATCHES_NOTHING)]} for board in boards
+    ]
+    return cleared, everywhere
 
 
 def summarised(limiters: Sequence[Document], findings: Sequence[Document]) -> Document:

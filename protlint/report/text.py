@@ -273,4 +273,6 @@ def _together(report: Document, colour: bool) -> list[str]:
     for error in report["unread"]:
         place = ":".join(str(error[key]) for key in ("file", "line", "column") if error[key] is not None)
         lines += wrapped(f"not reviewed: {place}: {error['message']}", indent=4, first="  - ")
+    for remark in report["remarks"]:
+        lines += wrapped(remark, indent=4, first="  - ")
     return [*lines, ""]
