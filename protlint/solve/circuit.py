@@ -21,6 +21,7 @@ class Device:
     parameter names in SI units at 27 degC; a resistor's are R, TC1, TC2 (at 27 degC), a capacitor's C, an inductor's L.
     ``tolerance`` is a resistor's fraction; ``hfe`` the bounds of BF; ``vbe_spread_V`` how far V_BE may lie below and above.
     ``rise_K`` is the device's temperature above ambient. ``assumed`` says in plain words what of this was assumed.
+    ``part_number`` is the part-data entry that a missing parameter would have to be added to, empty where none is known.
     """
 
     name: str
@@ -32,6 +33,7 @@ class Device:
     vbe_spread_V: tuple[float, float] = (0.0, 0.0)
     rise_K: float = 0.0
     assumed: tuple[str, ...] = ()
+    part_number: str = ""
 
 
 @dataclass(frozen=True, slots=True)
@@ -57,7 +59,7 @@ class Circuit:
     never empty; ``pass_devices`` and ``shunt`` device names (a diode string has several shunt devices);
     ``output_V`` the working output voltage where stated; ``output_reach_V`` the lowest and highest voltage the output can
     have (the supplies around it); ``ground_leg`` true where the limit depends on the output voltage by design (a preset leg
-    to ground or to the far supply).
+    to ground or to the far supply); ``output_capacitance_F`` the board's capacitors at the output, together.
     """
 
     devices: tuple[Device, ...]
@@ -73,3 +75,4 @@ class Circuit:
     ground_leg: bool = False
     regulates: bool = False
     assumed: tuple[str, ...] = field(default_factory=tuple)
+    output_capacitance_F: float = 0.0
