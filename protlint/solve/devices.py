@@ -33,12 +33,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from protlint.solve.parameters import T0_K
+from protlint.solve.constants import BOLTZMANN_V_PER_K, T0_K
 
 Array = NDArray[np.float64]
-
-BOLTZMANN_V_PER_K = 8.617333262e-5
-"""k / q, from the exact SI values of 2019."""
+IntArray = NDArray[np.intp]
 
 GMIN_S = 1e-13
 GREATEST_EXPONENT = 150.0
@@ -81,6 +79,20 @@ class Bipolars:
     R_C: Array
     R_BM: Array | None
     I_RB: Array | None
+
+
+@dataclass(frozen=True, slots=True)
+class Transport:
+    """Forward and reverse currents of bipolar transistors, their conductances, and the base charge with its slopes by the
+    base-emitter and base-collector voltage; each (devices, lanes). The base charge is relative, without dimension."""
+
+    i_F: Array
+    i_R: Array
+    g_F: Array
+    g_R: Array
+    q_B: Array
+    q_B_by_BE: Array
+    q_B_by_BC: Array
 
 
 @dataclass(frozen=True, slots=True)
@@ -152,18 +164,8 @@ def bipolar(inner: Array, p: Bipolars, present: Array | float = 1.0) -> Evaluati
     RB, or RBM + (RB - RBM)/q_B, or Hauser's form of it where IRB is given. ``present`` 0 takes a device out.
     """
     v_be, v_bc = inner
-    e_f = np.exp(np.minimum(v_be / p.V_F, GREATEST_EXPONENT)) * p.I_S
-    e_r = np.exp(np.minimum(v_bc / p.V_R, GREATEST_EXPONENT)) * p.I_S
-    i_f = e_f - p.I_S + GMIN_S * v_be
-    i_r = e_r - p.I_S + GMIN_S * v_bc
-    g_f = e_f / p.V_F + GMIN_S
-    g_r = e_r / p.V_R + GMIN_S
-    q_1 = 1.0 / np.maximum(1.0 - v_bc * p.inverse_VAF - v_be * p.inverse_VAR, 0.02)
-    root = np.sqrt(np.maximum(1.0 + 4.0 * (i_f * p.inverse_IKF + i_r * p.inverse_IKR), 1e-12))
-    q_b = 0.5 * q_1 * (1.0 + root)
-    q_be = q_1 * (q_b * p.inverse_VAR + g_f * p.inverse_IKF / root)
-    q_bc = q_1 * (q_b * p.inverse_VAF + g_r * p.inverse_IKR / root)
-
+    t = transport(inner, p)
+    i_f, i_r, g_f, g_r, q_b = t.i_F, t.i_R, t.g_F, t.g_R, t.q_B
     e_l = np.exp(np.minimum(v_be / p.V_E, GREATEST_EXPONENT)) * p.I_SE
     base_r = i_r / p.B_R
     g_base_r = g_r / p.B_R
@@ -176,16 +178,33 @@ def bipolar(inner: Array, p: Bipolars, present: Array | float = 1.0) -> Evaluati
     i_b = i_f / p.B_F + e_l - p.I_SE + base_r
 
     slope = np.empty((2, 2, *v_be.shape))
-    slope[1, 0] = (i_t * q_be - g_f) / q_b
-    slope[1, 1] = (g_r + i_t * q_bc) / q_b + g_base_r
+    slope[1, 0] = (i_t * t.q_B_by_BE - g_f) / q_b
+    slope[1, 1] = (g_r + i_t * t.q_B_by_BC) / q_b + g_base_r
     slope[0, 0] = g_f / p.B_F + e_l / p.V_E - slope[1, 0]
     slope[0, 1] = g_base_r - slope[1, 1]
     current = np.stack((i_b + i_c, -i_c))
     if not isinstance(present, float):
         slope *= present
         current *= present
-    r_b = p.R_B if p.R_BM is None else _base_resistance(p, q_b, i_b)
+    r_b = p.R_B if p.R_BM is None else base_resistance(p, q_b, i_b)
     return _with_series(inner, current, slope, p.R_E, r_b, p.R_C)
+
+
+def transport(inner: Array, p: Bipolars) -> Transport:
+    """Return i_F, i_R and q_B of :func:`bipolar` with their slopes, at inner voltages (2, devices, lanes)."""
+    v_be, v_bc = inner
+    e_f = np.exp(np.minimum(v_be / p.V_F, GREATEST_EXPONENT)) * p.I_S
+    e_r = np.exp(np.minimum(v_bc / p.V_R, GREATEST_EXPONENT)) * p.I_S
+    i_f = e_f - p.I_S + GMIN_S * v_be
+    i_r = e_r - p.I_S + GMIN_S * v_bc
+    g_f = e_f / p.V_F + GMIN_S
+    g_r = e_r / p.V_R + GMIN_S
+    q_1 = 1.0 / np.maximum(1.0 - v_bc * p.inverse_VAF - v_be * p.inverse_VAR, 0.02)
+    root = np.sqrt(np.maximum(1.0 + 4.0 * (i_f * p.inverse_IKF + i_r * p.inverse_IKR), 1e-12))
+    q_b = 0.5 * q_1 * (1.0 + root)
+    q_be = q_1 * (q_b * p.inverse_VAR + g_f * p.inverse_IKF / root)
+    q_bc = q_1 * (q_b * p.inverse_VAF + g_r * p.inverse_IKR / root)
+    return Transport(i_f, i_r, g_f, g_r, q_b, q_be, q_bc)
 
 
 def mosfet(inner: Array, p: Mosfets, present: Array | float = 1.0) -> Evaluation:
@@ -274,11 +293,13 @@ def limited_source(inner: Array, p: Source) -> Evaluation:
 def junction_step(old: Array, new: Array, V_T: Array, I_S: Array) -> Array:
     """Shorten a step of a junction voltage to where its exponential can still be trusted.
 
-    Beyond the voltage of greatest curvature V_crit = V_T ln(V_T / (sqrt(2) I_S)) only the logarithm of the step is taken
-    (Nagel 1975, section on junction limiting).
+    A step of more than 2 V_T that ends beyond the voltage of greatest curvature, V_crit = V_T ln(V_T / (sqrt(2) I_S)),
+    counts by its logarithm only, from the old voltage or from 0 V (Nagel 1975, section on junction limiting).
     """
-    start = np.maximum(old, V_T * np.log(V_T / (np.sqrt(2.0) * I_S)))
-    shortened: Array = np.minimum(new, start + V_T * np.log1p(np.maximum(new - start, 0.0) / V_T))
+    start = np.maximum(old, 0.0)
+    rise = new - start
+    far = (new > V_T * np.log(V_T / (np.sqrt(2.0) * I_S))) & (rise > 2.0 * V_T)
+    shortened: Array = np.where(far, start + V_T * np.log1p(np.maximum(rise, 0.0) / V_T), new)
     return shortened
 
 
@@ -296,7 +317,7 @@ def _with_series(inner: Array, current: Array, slope: Array, r_1: Array, r_0: Ar
     return Evaluation(port, current, voltage_slope, slope)
 
 
-def _base_resistance(p: Bipolars, q_b: Array, i_b: Array) -> Array:
+def base_resistance(p: Bipolars, q_b: Array, i_b: Array) -> Array:
     """Return the base resistance at high injection; its own slope is left out of the Jacobian (it only slows, never shifts).
 
     RBM + 3 (RB - RBM) (tan z - z) / (z tan^2 z), z = (-1 + sqrt(1 + 144 I_B / (pi^2 IRB))) / ((24/pi^2) sqrt(I_B/IRB)).

@@ -12,9 +12,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from protlint.solve import devices
+from protlint.solve.constants import BOLTZMANN_V_PER_K, T0_K
 from protlint.solve.devices import Array
 from protlint.solve.network import LEAST_SOURCE_OHM, Group, Network
-from protlint.solve.parameters import LINK_OHM, T0_K
+from protlint.solve.parameters import LINK_OHM
 
 Record = devices.Bipolars | devices.Mosfets | devices.Diodes | devices.Source
 
@@ -150,7 +151,7 @@ def _mosfets(group: Group, temperature_K: Array, shift_V: Array | None) -> devic
     V_T = devices.thermal_voltage(temperature_K)
     ratio = temperature_K / T0_K
     gap, gap_0 = _silicon_gap(temperature_K), _silicon_gap(np.asarray(T0_K))
-    V_T0 = devices.BOLTZMANN_V_PER_K * T0_K
+    V_T0 = BOLTZMANN_V_PER_K * T0_K
     # both potential corrections are zero at T0 but for the gap's own rounding
     correction = -2.0 * V_T * (1.5 * np.log(ratio) + 0.5 * (1.1150877 / V_T0 - gap / V_T))
     correction_0 = -V_T0 * (1.1150877 - gap_0) / V_T0

@@ -17,7 +17,6 @@ from typing import Final
 
 from protlint.solve.circuit import Device
 
-T0_K: Final = 300.15
 LINK_OHM: Final = 1e-6
 """What a link of 0 ohm, or an inductor at rest, is taken as."""
 
@@ -87,7 +86,7 @@ KINDS: Final[Mapping[str, Bounds]] = {
 }
 TERMINALS: Final = {"npn": 3, "pnp": 3, "nmos": 3, "pmos": 3}
 
-_ZERO_MEANS_NONE = frozenset({"VAF", "VAR", "IKF", "IKR", "IRB", "BV"})
+_ZERO_MEANS_NONE = frozenset({"VAF", "VAR", "IKF", "IKR", "IRB", "BV", "VTF"})
 
 
 class CircuitError(ValueError):
@@ -107,6 +106,17 @@ def complete(device: Device) -> dict[str, float]:
         raise CircuitError(f"{device.name}: a {device.kind or 'part of no kind'} cannot be solved")
     if len(device.nodes) != TERMINALS.get(device.kind, 2):
         raise CircuitError(f"{device.name}: {len(device.nodes)} connections do not make a {device.kind}")
+    return _implied(device, within_bounds(device, bounds))
+
+
+def within_bounds(device: Device, bounds: Bounds) -> dict[str, float]:
+    """Return the parameters that ``bounds`` names, defaults filled in; NaN where a default of NaN was left.
+
+    Raises
+    ------
+    CircuitError
+        Where a parameter is absurd.
+    """
     full: dict[str, float] = {}
     for name, (default, least, greatest) in bounds.items():
         value = device.model.get(name, default)
@@ -118,7 +128,7 @@ def complete(device: Device) -> dict[str, float]:
             raise CircuitError(f"{device.name}: {name} = {value:g} lies outside {least:g} to {greatest:g}")
         else:
             full[name] = float(value)
-    return _implied(device, full)
+    return full
 
 
 def _implied(device: Device, full: dict[str, float]) -> dict[str, float]:

@@ -21,6 +21,7 @@ class Currents:
     unlimited_A: float | None
     shunt_A: float | None
     pass_A: float | None
+    """Shunt: the greatest current through a shunt device; pass: the pass devices' current together; both at holds."""
     limited_by_short: str | None
     """``limiter`` or ``drive``."""
     limited_by_output: str | None
@@ -47,11 +48,14 @@ class State:
 
 @dataclass(frozen=True, slots=True)
 class Point:
-    """One solved point of the locus: the output voltage, the output current, and every device's state."""
+    """One solved point: the output voltage, the output current (positive the limiter's way), every device's state, and what
+    the drive gives: the current out of it and the voltage at its node."""
 
     output_V: float
     output_A: float
     states: Mapping[str, State]
+    drive_A: float = 0.0
+    drive_V: float = 0.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -65,12 +69,26 @@ class Sensitivity:
 
 @dataclass(frozen=True, slots=True)
 class Regulates:
-    """For a stage whose drive nothing takes away: its current, what moves it, and the least voltage it needs."""
+    """For a stage whose drive nothing takes away: its current, what moves it, and the least voltage it needs.
+
+    ``per_supply_volt`` (1/V) and ``per_kelvin`` (1/K) are relative changes of the current, at usual ambient;
+    ``compliance_V`` is the least voltage between the output and the net its current goes to (or comes from) at which 95 %
+    of the current is left.
+    """
 
     current_A: float
     per_supply_volt: float
     per_kelvin: float
     compliance_V: float
+
+
+@dataclass(frozen=True, slots=True)
+class Shorted:
+    """What the limiter holds into one of several shorts: the net, holds at each ambient, and the nominal held short."""
+
+    node: str
+    holds_A: tuple[float | None, ...]
+    point: Point | None
 
 
 @dataclass(frozen=True, slots=True)
@@ -114,11 +132,15 @@ class Solution:
     high_worst: tuple[Point, ...] = ()
     """The point of greatest pass dissipation at each ambient, same corner."""
     sensitivities: tuple[Sensitivity, ...] = ()
+    """Of holds at usual ambient: relative per relative change of a resistor, B_F, supply or drive end; per volt of V_BE."""
     regulates: Regulates | None = None
     loop: Loop | None = None
     step: Step | None = None
     corners: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
-    """For the high and low end of holds: device.parameter to the signed step taken."""
+    """For the ``high`` and ``low`` end of holds at usual ambient: device.parameter to the position taken, -1 or +1."""
+    short: str | None = None
+    """The short all figures are for: of several, the one with the greatest holds."""
+    shorts: tuple[Shorted, ...] = ()
     assumed: tuple[str, ...] = ()
     not_checked: tuple[tuple[str, str], ...] = ()
     not_solved: str | None = None

@@ -1,0 +1,217 @@
+"""The answers: from a limiter's circuit to a ``Solution``.
+
+The order of work: the drive's on end; the held short at three ambients, with and without the shunt; the locus; the drive's
+sweep; the worst corners of every figure; sensitivities. Each step is one batch of lanes that starts from the step before.
+"""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+
+from protlint.solve.circuit import Circuit
+from protlint.solve.corners import one_at_a_time, small_steps
+from protlint.solve.locus import PASS_V, Loci, fill, run_at
+from protlint.solve.memo import Memo
+from protlint.solve.network import compile_network
+from protlint.solve.nominal import Nominal, held_short, solve_nominal
+from protlint.solve.parameters import CircuitError
+from protlint.solve.ranges import Ranges, find_ranges
+from protlint.solve.regulation import regulation
+from protlint.solve.solution import Currents, Pair, Sensitivity, Shorted, Solution
+from protlint.solve.stage import Run, Stage, make_stage, pass_current, pass_power, points, run_stage, shunt_current
+
+DRIVE_SHARE = 0.9
+"""Where holds is above this share of the unlimited current (the shunt out gains less than a ninth), the drive limits."""
+
+USUAL = 1
+"""Place of the usual ambient among the three."""
+
+
+def solve(circuit: Circuit, ambients_degC: tuple[float, float, float], *, memo: Memo | None = None) -> Solution:
+    """Solve a limiter's circuit at three ambients (low, usual, high).
+
+    Everything but ``loop`` and ``step`` of the ``Solution`` is filled. A circuit that cannot be solved gives a solution
+    whose ``not_solved`` says why; no exception and no NaN comes out. With a ``memo`` an equal circuit, whatever its names,
+    is solved once.
+    """
+    if memo is not None and (known := memo.recall(circuit, ambients_degC)) is not None:
+        return known
+    try:
+        if not all(-200.0 <= ambient <= 500.0 for ambient in ambients_degC):
+            raise CircuitError(f"ambients of {', '.join(f'{ambient:g}' for ambient in ambients_degC)} degC make no sense")
+        stage, runs, shorts = _worst_short(circuit, ambients_degC)
+        solution = replace(
+            _answers(stage, solve_nominal(stage, *runs), ambients_degC),
+            short=stage.short,
+            shorts=shorts,
+            assumed=_assumed(circuit),
+        )
+    except CircuitError as reason:
+        return Solution(not_solved=str(reason), assumed=_assumed(circuit))
+    if memo is not None:
+        memo.keep(circuit, ambients_degC, solution)
+    return solution
+
+
+def _assumed(circuit: Circuit) -> tuple[str, ...]:
+    return circuit.assumed + tuple(sentence for device in circuit.devices for sentence in device.assumed)
+
+
+def _worst_short(circuit: Circuit, ambients_degC: tuple[float, ...]) -> tuple[Stage, tuple[Run, Run], tuple[Shorted, ...]]:
+    """Solve every short; return the stage and runs of the one with the greatest holds, and all of them."""
+    network = compile_network(circuit)
+    found: list[tuple[float, Stage, tuple[Run, Run]]] = []
+    shorts: list[Shorted] = []
+    reason: CircuitError | None = None
+    for node in circuit.shorts:
+        try:
+            stage = make_stage(network, node, ambients_degC[USUAL])
+        except CircuitError as error:
+            reason = reason or error
+            shorts.append(Shorted(node, (None,) * len(ambients_degC), None))
+            continue
+        runs = held_short(stage, ambients_degC)
+        holds = runs[0].output_A
+        held = points(stage, runs[0], [USUAL])
+        shorts.append(Shorted(node, tuple(_number(value) for value in holds), held[0] if held else None))
+        if not np.isnan(holds).all():
+            found.append((float(np.nanmax(holds)), stage, runs))
+    if not found:
+        raise reason or CircuitError("no operating point was found with the output shorted")
+    _, stage, runs = max(found, key=lambda entry: entry[0])
+    return stage, runs, tuple(shorts)
+
+
+def _answers(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...]) -> Solution:
+    ranges = find_ranges(stage, nominal)
+    locus_run = _usual_locus(stage, nominal)
+    locus = points(stage, locus_run, range(locus_run.lanes.count))
+    power = pass_power(stage, locus_run)
+    held = points(stage, nominal.short, [USUAL])
+    carry = (
+        points(stage, nominal.carry, [USUAL]) if nominal.carry is not None and np.isfinite(nominal.carry_V[USUAL]) else ()
+    )
+    ambients = range(len(ambients_degC))
+    return Solution(
+        currents=tuple(_currents(stage, nominal, ranges, place, ambients_degC[place]) for place in ambients),
+        locus=locus,
+        held_short=held[0] if held else None,
+        worst_point=locus[int(np.argmax(power))] if locus else None,
+        at_carry=carry[0] if carry else None,
+        high_short=points(stage, ranges.high_short, ambients),
+        high_worst=points(stage, ranges.high_worst, ambients),
+        sensitivities=_sensitivities(stage, nominal),
+        regulates=regulation(stage, nominal, USUAL) if stage.network.circuit.regulates else None,
+        corners=_corner_steps(stage, ranges),
+        not_checked=_not_checked(stage, nominal, ambients_degC),
+    )
+
+
+def _usual_locus(stage: Stage, nominal: Nominal) -> Run:
+    """Return the run of the locus at usual ambient, at least 41 points."""
+    only = nominal.conditions.pick(np.array([USUAL]))
+    mine = nominal.loci.of(USUAL)
+    alone = Loci(
+        np.zeros(len(mine), dtype=np.intp),
+        nominal.loci.output_V[mine],
+        nominal.loci.output_A[mine],
+        nominal.loci.pass_V[mine],
+        nominal.loci.inner[:, mine],
+    )
+    full = fill(stage, only, alone)
+    return run_at(stage, only.pick(full.owner), full.output_V, full.inner)
+
+
+def _currents(stage: Stage, nominal: Nominal, ranges: Ranges, place: int, ambient_degC: float) -> Currents:
+    def pair(kind: str) -> Pair | None:
+        low, high = ranges.by_kind[kind][:, place].tolist()
+        return (low, high) if np.isfinite(low) and np.isfinite(high) else None
+
+    carry = carry_unlimited = None
+    if nominal.carry is not None and nominal.carry_unlimited is not None and np.isfinite(nominal.carry_V[place]):
+        carry, carry_unlimited = nominal.carry.output_A[place], nominal.carry_unlimited.output_A[place]
+    return Currents(
+        ambient_degC=ambient_degC,
+        begins_A=_number(nominal.begins.output_A[place]),
+        holds_A=_number(nominal.holds_A[place]),
+        carries_A=_number(nominal.carries_A[place]),
+        most_A=_number(nominal.most_A[place]),
+        unlimited_A=_number(nominal.unlimited.output_A[place]),
+        shunt_A=_number(shunt_current(stage, nominal.short)[place]),
+        pass_A=_number(pass_current(stage, nominal.short)[place]),
+        limited_by_short=_limited_by(nominal.holds_A[place], nominal.unlimited.output_A[place]),
+        limited_by_output=_limited_by(carry, carry_unlimited),
+        begins_range_A=pair("begins"),
+        holds_range_A=pair("holds"),
+        carries_range_A=pair("carries"),
+        most_range_A=pair("most"),
+    )
+
+
+def _limited_by(limited_A: float | None, unlimited_A: float | None) -> str | None:
+    """Return which of the two gives the current its limit."""
+    if limited_A is None or unlimited_A is None or not np.isfinite(limited_A) or not np.isfinite(unlimited_A):
+        return None
+    return "drive" if limited_A > DRIVE_SHARE * unlimited_A else "limiter"
+
+
+def _sensitivities(stage: Stage, nominal: Nominal) -> tuple[Sensitivity, ...]:
+    """Return how every parameter moves holds at usual ambient, by central differences of small steps."""
+    ambient_K = float(nominal.conditions.ambient_K[USUAL])
+    holds_A = float(nominal.holds_A[USUAL])
+    axes = small_steps(stage.network, ambient_K)
+    if not axes or not np.isfinite(holds_A) or holds_A == 0.0:
+        return ()
+    count = 2 * len(axes)
+    run = run_stage(
+        stage,
+        np.full(count, ambient_K),
+        axes=axes,
+        corner=one_at_a_time(len(axes)),
+        start=nominal.short.operating.inner[:, [USUAL]],
+    )
+    low, high = run.output_A.reshape(2, len(axes)) / holds_A
+    found = []
+    for axis, change in zip(axes, (high - low).tolist(), strict=True):
+        middle = 0.5 * (axis.low + axis.high)
+        step = (axis.high - axis.low) / (abs(middle) if middle else 1.0)
+        if np.isfinite(change):
+            found.append(Sensitivity(axis.device, axis.parameter, change / step))
+    return tuple(found)
+
+
+def _corner_steps(stage: Stage, ranges: Ranges) -> dict[str, dict[str, float]]:
+    """Return the positions taken at usual ambient for the low and the high end of holds."""
+    ambients = ranges.holds_corner.shape[1] // 2
+    columns = {"low": USUAL, "high": ambients + USUAL}
+    return {
+        end: {
+            f"{axis.device}.{axis.parameter}": float(position)
+            for axis, position in zip(stage.axes, ranges.holds_corner[:, column], strict=True)
+            if position
+        }
+        for end, column in columns.items()
+    }
+
+
+def _not_checked(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...]) -> tuple[tuple[str, str], ...]:
+    circuit = stage.network.circuit
+    found: list[tuple[str, str]] = []
+    for place, ambient in enumerate(ambients_degC):
+        if not np.isfinite(nominal.holds_A[place]):
+            found.append(("holds", f"no operating point was found in the short at {ambient:g} degC"))
+        if not np.isfinite(nominal.unlimited.output_A[place]):
+            found.append(("limited_by", f"no operating point was found without the shunt at {ambient:g} degC"))
+        if circuit.output_V is not None and not np.isfinite(nominal.carries_A[place]):
+            found.append(("carries", f"no operating point was found at the working output voltage at {ambient:g} degC"))
+    if circuit.output_V is None and circuit.ground_leg:
+        found.append(("carries", "output"))
+    elif circuit.output_V is None and not np.isfinite(nominal.carry_V).any():
+        found.append(("carries", f"no output voltage leaves the pass device {PASS_V:g} V"))
+    return tuple(found)
+
+
+def _number(value: float) -> float | None:
+    return float(value) if np.isfinite(value) else None

@@ -1,0 +1,196 @@
+"""One limiter's stage, ready to be run at any ambient, drive, output voltage and corner.
+
+A ``Stage`` knows which short it is solved for, which end of the drive turns the pass device on, and which way the output
+current then flows; the figures taken from it are positive that way.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from protlint.solve.constants import KELVIN
+from protlint.solve.corners import Axis, axes_of, held_voltages, variation
+from protlint.solve.dc import Operating, evaluate, solve_lanes
+from protlint.solve.devices import Array
+from protlint.solve.lanes import Lanes, Variation, known_voltages, parameters
+from protlint.solve.network import Network
+from protlint.solve.parameters import CircuitError
+from protlint.solve.solution import Point, State
+
+LEAST_OUTPUT_A = 1e-6
+"""A stage whose drive moves less than this drives nothing."""
+
+
+@dataclass(frozen=True, slots=True)
+class Stage:
+    """A network with the short, the drive's on end (1 high, 0 low) and the way of its output current (+1 into the circuit).
+
+    ``passing`` are the pass devices' (first terminal, common terminal) nodes.
+    """
+
+    network: Network
+    axes: tuple[Axis, ...]
+    short: str
+    on_end: int
+    way: float
+    passing: tuple[tuple[int, int], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Run:
+    """Solved lanes of a stage: the conditions, the operating points, and the output current the limiter's way (lanes,),
+    NaN where not solved."""
+
+    lanes: Lanes
+    operating: Operating
+    output_V: Array
+    output_A: Array
+
+
+def make_stage(network: Network, short: str, ambient_degC: float) -> Stage:
+    """Find the drive's on end, the one with the greater unlimited output current into the short.
+
+    Raises
+    ------
+    CircuitError
+        Where neither end is solved or neither turns the pass device on.
+    """
+    place = {node: index for index, node in enumerate(network.nodes)}
+    nodes = {device.name: device.nodes for device in network.circuit.devices}
+    passing = tuple((place[nodes[name][0]], place[nodes[name][-1]]) for name in network.circuit.pass_devices)
+    stage = Stage(network, axes_of(network), short, 1, 1.0, passing)
+    drive = network.circuit.drive
+    ends = np.array([drive.low_V.usual, drive.high_V.usual])
+    run = run_stage(stage, np.full(2, ambient_degC + KELVIN), drive_V=ends, shunt_in=np.zeros(2))
+    if np.isnan(run.output_A).all():
+        raise CircuitError("no operating point was found with the output shorted")
+    on_end = int(np.nanargmax(np.abs(run.output_A)))
+    greatest = float(run.output_A[on_end])
+    if abs(greatest) < LEAST_OUTPUT_A:
+        raise CircuitError(f"the drive cannot turn the pass device on: {abs(greatest):.2g} A into the short at most")
+    return replace(stage, on_end=on_end, way=1.0 if greatest > 0.0 else -1.0)
+
+
+def run_stage(
+    stage: Stage,
+    ambient_K: Array,
+    *,
+    axes: Sequence[Axis] | None = None,
+    corner: Array | None = None,
+    output_V: Array | None = None,
+    drive_V: Array | None = None,
+    shunt_in: Array | None = None,
+    known_V: Array | None = None,
+    start: Array | None = None,
+) -> Run:
+    """Solve lanes, all arrays (lanes,) but ``corner`` (axes, lanes) and ``start`` (ports, lanes).
+
+    ``axes`` stand for the stage's own; ``output_V`` None holds the output in the short, ``drive_V`` None holds the drive at
+    its on end, both as the corner has them. ``known_V`` (known nodes, lanes) overrides all three.
+    """
+    network, count = stage.network, len(ambient_K)
+    chosen = stage.axes if axes is None else axes
+    if corner is None:
+        chosen, corner = (), np.zeros((0, count))
+    held_V, ends_V = held_voltages(network, chosen, corner)
+    if known_V is not None:
+        output_V = known_V[network.output - network.unknown]
+    if output_V is None:
+        output_V = _short_voltage(stage, held_V, count)
+    drive = ends_V[stage.on_end] if drive_V is None else drive_V
+    varied = variation(network, chosen, corner, ambient_K) if len(chosen) else Variation()
+    known = known_voltages(network, held_V, output_V, drive) if known_V is None else known_V
+    lanes = Lanes(ambient_K, known, shunt_in, varied)
+    operating = solve_lanes(network, lanes, start)
+    return Run(lanes, operating, output_V, stage.way * operating.output_A)
+
+
+def pass_voltage(stage: Stage, run: Run) -> Array:
+    """Return the least voltage across any pass device (lanes,), in its forward sense."""
+    node_V = run.operating.node_V
+    across = [np.abs(node_V[first] - node_V[last]) for first, last in stage.passing]
+    return np.min(across, axis=0) if across else np.full(node_V.shape[1], np.inf)
+
+
+def pass_power(stage: Stage, run: Run) -> Array:
+    """Return the greatest dissipation of any pass device (lanes,)."""
+    table = states(stage.network, run)
+    powers = [table[name][2] for name in stage.network.circuit.pass_devices]
+    return np.max(powers, axis=0) if powers else np.zeros(run.lanes.count)
+
+
+def states(network: Network, run: Run) -> dict[str, tuple[Array, Array, Array, Array, Array]]:
+    """Return every device's current, voltage, power, control current and control voltage, each (lanes,)."""
+    with np.errstate(all="ignore"):
+        p = parameters(network, run.lanes)
+        evaluations = evaluate(network, p, run.operating.inner)
+    node_V = run.operating.node_V
+    across = network.incidence @ node_V
+    table: dict[str, tuple[Array, Array, Array, Array, Array]] = {}
+    for group, evaluation in zip(network.groups, evaluations, strict=True):
+        port_A = evaluation.port_A * group.sign
+        port_V = across[group.rows].reshape(group.ports, -1, node_V.shape[1])
+        for index, device in enumerate(group.devices):
+            if group.ports == 1:
+                current, voltage = port_A[0, index], port_V[0, index]
+                table[device.name] = (current, voltage, current * voltage, np.zeros_like(current), voltage)
+                continue
+            current, control = -port_A[1, index], port_A[0, index] + port_A[1, index]
+            control_V = port_V[0, index]
+            voltage = control_V - port_V[1, index]
+            table[device.name] = (current, voltage, current * voltage + control * control_V, control, control_V)
+    drops = network.resistor_incidence @ node_V
+    conductance = np.broadcast_to(p.conductance, drops.shape)
+    for index, device in enumerate(network.resistors):
+        current = drops[index] * conductance[index]
+        table[device.name] = (current, drops[index], current * drops[index], np.zeros_like(current), drops[index])
+    return table
+
+
+def points(stage: Stage, run: Run, lanes: Sequence[int]) -> tuple[Point, ...]:
+    """Return chosen lanes as points with every device's state; lanes that were not solved are left out."""
+    table = {name: np.array(rows) for name, rows in states(stage.network, run).items()}
+    node = stage.network.nodes.index(stage.network.circuit.drive.node)
+    found = []
+    for lane in lanes:
+        if not np.isfinite(run.output_A[lane]):
+            continue
+        by_name = {}
+        for name, rows in table.items():
+            current, voltage, power, control, control_V = rows[:, lane].tolist()
+            by_name[name] = State(current, voltage, power, control, control_V)
+        found.append(
+            Point(
+                output_V=float(run.output_V[lane]),
+                output_A=float(run.output_A[lane]),
+                states=by_name,
+                drive_A=float(run.operating.known_A[-1, lane]),
+                drive_V=float(run.operating.node_V[node, lane]),
+            )
+        )
+    return tuple(found)
+
+
+def shunt_current(stage: Stage, run: Run) -> Array:
+    """Return the greatest current through a shunt device (lanes,)."""
+    table = states(stage.network, run)
+    currents = [np.abs(table[name][0]) for name in stage.network.circuit.shunt]
+    return np.max(currents, axis=0) if currents else np.zeros(run.lanes.count)
+
+
+def pass_current(stage: Stage, run: Run) -> Array:
+    """Return the pass devices' current together (lanes,)."""
+    table = states(stage.network, run)
+    currents = [np.abs(table[name][0]) for name in stage.network.circuit.pass_devices]
+    return np.sum(currents, axis=0) if currents else np.zeros(run.lanes.count)
+
+
+def _short_voltage(stage: Stage, held_V: Array, count: int) -> Array:
+    network = stage.network
+    if stage.short in network.held:
+        held: Array = held_V[network.held.index(stage.short)]
+        return held
+    return np.full(count, network.circuit.held[stage.short].usual)
