@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from itertools import pairwise
 from pathlib import Path
 
@@ -46,7 +46,7 @@ class PartEntry:
     ``ratings`` is keyed by the rating's name in the part-data file (``vceo``, ``power``, ``hfe_min`` ...); ``model`` holds
     published model parameters in SI units at 27 degC (empty where none are known) and ``model_source`` where they come
     from; ``pins`` maps a pin name or number to its role, on the word of ``pins_source``. ``hfe_points`` are gains at several
-    currents, rising. ``footprints`` are the sizes a generic entry stands for (``0603``). ``contradictions`` are the thermal
+    currents, rising. ``file`` is None for protlint's own entries. ``footprints`` are the sizes a generic entry stands for (``0603``). ``contradictions`` are the thermal
     ratings that could not all be true, of which the careful ones were kept.
     """
 
@@ -126,7 +126,7 @@ def load_book(paths: Iterable[str | Path] = ()) -> Book:
             remarks += [f"{entry.file}: {entry.part_number}: {one.says}" for one in entry.contradictions]
     for path in sorted(Path(__file__).parent.glob("*.toml")):
         for entry in _entries(path):
-            entries.setdefault(entry.part_number.casefold(), entry)
+            entries.setdefault(entry.part_number.casefold(), replace(entry, file=None))
     sizes: dict[tuple[str, str], PartEntry] = {}
     for entry in entries.values():
         for code in entry.footprints:

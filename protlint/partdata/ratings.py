@@ -92,6 +92,7 @@ RATINGS: dict[str, Rating] = {
     "zero_at": Rating("temperature", "temperature at which a resistor's derated power is zero"),
     "voltage_max": Rating("voltage", "highest voltage across the part"),
     "current_max": Rating("current", "highest current through the part"),
+    "resistance": Rating("resistance", "at direct current, cold"),
     "tcr": Rating("per kelvin", "temperature coefficient of resistance, either way"),
     "tolerance": Rating("fraction", "spread of the value, either way"),
 }
@@ -119,8 +120,8 @@ RATINGS_OF: dict[str, tuple[str, ...]] = {
     "thyristor": (*_HEAT, "vr", "if", "if_peak"),
     "resistor": ("power", "power_at", "zero_at", "voltage_max", "current_max", "tcr", "tolerance"),
     "capacitor": ("voltage_max", "tolerance"),
-    "inductor": ("current_max", "tolerance"),
-    "fuse": ("current_max", "voltage_max"),
+    "inductor": ("current_max", "resistance", "tolerance"),
+    "fuse": ("current_max", "voltage_max", "resistance"),
     "link": ("current_max",),
     "connector": ("current_max", "voltage_max"),
     "ic": _HEAT,
