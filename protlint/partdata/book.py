@@ -46,8 +46,8 @@ class PartEntry:
     ``ratings`` is keyed by the rating's name in the part-data file (``vceo``, ``power``, ``hfe_min`` ...); ``model`` holds
     published model parameters in SI units at 27 degC (empty where none are known) and ``model_source`` where they come
     from; ``pins`` maps a pin name or number to its role, on the word of ``pins_source``. ``hfe_points`` are gains at several
-    currents, rising. ``file`` is None for protlint's own entries. ``footprints`` are the sizes a generic entry stands for (``0603``). ``contradictions`` are the thermal
-    ratings that could not all be true, of which the careful ones were kept.
+    currents, rising. ``footprints`` are the sizes a generic entry stands for (``0603``). ``contradictions`` are the thermal
+    ratings that could not all be true, of which the careful ones were kept. ``file`` is None for protlint's own entries.
     """
 
     part_number: str
