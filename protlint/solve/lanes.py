@@ -152,10 +152,7 @@ def _mosfets(group: Group, temperature_K: Array, shift_V: Array | None) -> devic
     ratio = temperature_K / T0_K
     gap, gap_0 = _silicon_gap(temperature_K), _silicon_gap(np.asarray(T0_K))
     V_T0 = BOLTZMANN_V_PER_K * T0_K
-    # both potential corrections are zero at T0 but for the gap's own rounding
-    correction = -2.0 * V_T * (1.5 * np.log(ratio) + 0.5 * (1.1150877 / V_T0 - gap / V_T))
-    correction_0 = -V_T0 * (1.1150877 - gap_0) / V_T0
-    phi = ratio * (p["PHI"] - correction_0) + correction
+    phi = junction_potential(p["PHI"], temperature_K)
     n_VTO = group.sign * p["VTO"]
     built_in = n_VTO - p["GAMMA"] * np.sqrt(p["PHI"]) + 0.5 * group.sign * (gap_0 - gap) + 0.5 * (phi - p["PHI"])
     phi = np.maximum(phi, 0.05)
@@ -189,6 +186,21 @@ def _diodes(group: Group, temperature_K: Array, shift_V: Array | None) -> device
         I_BV=spread * p["IBV"],
         V_B=p["NBV"] * V_T,
     )
+
+
+def junction_potential(V_J: Array, temperature_K: Array) -> Array:
+    """Return a junction's built-in potential at a temperature, in volts, from that at 27 degC (Nagel 1975).
+
+    V_J(T) = (T/T0) (V_J - c(T0)) + c(T) with c(T) = -2 V_T (1.5 ln(T/T0) + 0.5 (1.1150877 V/V_T0 - E_g(T)/V_T)).
+    """
+    ratio = temperature_K / T0_K
+    V_T0 = BOLTZMANN_V_PER_K * T0_K
+    V_T = devices.thermal_voltage(temperature_K)
+    correction = -2.0 * V_T * (1.5 * np.log(ratio) + 0.5 * (1.1150877 / V_T0 - _silicon_gap(temperature_K) / V_T))
+    # zero but for the rounding of the published gap
+    correction_0 = _silicon_gap(np.asarray(T0_K)) - 1.1150877
+    potential: Array = ratio * (V_J - correction_0) + correction
+    return potential
 
 
 def _silicon_gap(temperature_K: Array) -> Array:
