@@ -40,6 +40,11 @@ class Match:
         return {element for elements in self.elements.values() for element in elements}
 
     @property
+    def order(self) -> tuple[Elements, ...]:
+        """Its elements as they were found, role by role: of two equal matches the one in board order counts."""
+        return tuple(tuple(elements) for _, elements in sorted(self.elements.items()))
+
+    @property
     def key(self) -> Key:
         """What makes two matches the same: the rule, and the parts by role."""
         roles = tuple((role, tuple(sorted(elements))) for role, elements in sorted(self.elements.items()) if elements)
@@ -64,7 +69,9 @@ class Fitter:
         for entry, state in search(self.index, self.planner, self.planner.root(tasks), State(())):
             match = self._whole(self.patterns[entry.task.number], entry, state)
             if match is not None:
-                found.setdefault(match.key, match)
+                known = found.setdefault(match.key, match)
+                if match.order < known.order:
+                    found[match.key] = match
         return [found[key] for key in sorted(found)]
 
     def add_optional(self, match: Match) -> None:

@@ -10,6 +10,9 @@ from protlint.board.merge import unite
 CROWDED = 64
 """A net with more terminals than this is searched last, as an unnamed rail would be; never left out."""
 
+CONTROLLED = frozenset({"npn", "pnp", "npn-darlington", "pnp-darlington", "nmos", "pmos", "thyristor"})
+"""The kinds that control a current; a path of resistors does not run on past one."""
+
 FREE, CROWD, RAIL = 0, 1, 2
 """How freely a net may be walked: an ordinary net, a crowded one (last), a supply (never)."""
 
@@ -43,11 +46,21 @@ class Index:
         self.by_kind: dict[str, list[int]] = {}
         for element, kind in enumerate(self.kind):
             self.by_kind.setdefault(kind, []).append(element)
+        self._open: dict[int, bool] = {}
         self._by_pin: dict[int, dict[tuple[str, str], list[int]]] = {}
 
     def board_nets(self, net: int) -> Sequence[int]:
         """Return the board nets that a net here stands for."""
         return self.members.get(net, (net,))
+
+    def is_open(self, net: int) -> bool:
+        """Tell whether a path may run through a net: not a supply, not crowded, and no transistor hangs on it."""
+        known = self._open.get(net)
+        if known is None:
+            kind = self.kind
+            known = self.flag[net] == FREE and all(kind[element] not in CONTROLLED for element, _ in self.at[net])
+            self._open[net] = known
+        return known
 
     def on_pin(self, net: int, kind: str, pin: str) -> Sequence[int]:
         """Return the elements of a kind with that pin on a crowded net; the table is made once a net."""

@@ -57,9 +57,9 @@ def _rank(match: Match, rules: Rules) -> tuple[int, int]:
 
 def _limiter(match: Match, index: Index, also: tuple[str, ...]) -> Limiter:
     board = index.board
+    _add_fuses(match, index)
     elements = {role: tuple(found) for role, found in match.elements.items()}
     roles = {role: _part_ids(board, elements, role) for role in ROLES}
-    chosen = {net: _chosen(match, net, index) for net in NETS}
     places = {
         board.parts[part].id: place for element, place in match.places.items() for part in board.elements[element].parts
     }
@@ -69,7 +69,7 @@ def _limiter(match: Match, index: Index, also: tuple[str, ...]) -> Limiter:
         polarity=match.pattern.polarity,
         elements=elements,
         roles=roles,
-        nets={net: None if name is None else _board_net(match, name, index) for net, name in chosen.items()},
+        nets={net: _report_net(match, net, index) for net in NETS},
         bound={name: _board_net(match, name, index) for name in match.nets},
         also_matched=also,
         places=dict(sorted(places.items())),
@@ -88,15 +88,25 @@ def _part_ids(board: Board, elements: Mapping[str, tuple[int, ...]], role: str) 
     return tuple(board.parts[part].id for part in dict.fromkeys(parts))
 
 
-def _chosen(match: Match, net: str, index: Index) -> str | None:
+def _add_fuses(match: Match, index: Index) -> None:
+    """Give the fuses that the search crossed, on nets that are no supply, to the match."""
+    crossed = {net for net in match.nets.values() if net in index.members and net not in index.voltage_V}
+    for net in sorted(crossed):
+        for element, _ in index.at[net]:
+            if index.kind[element] == "fuse" and element not in match.own:
+                match.elements.setdefault("others.fuse", []).append(element)
+                match.places[element] = "fuse"
+
+
+def _report_net(match: Match, net: str, index: Index) -> int | None:
     for name, tests in match.pattern.nets.get(net, ()):
         if name in match.nets and all(holds(test, match.nets, index) for test in tests):
-            return name
+            return _output_net(match, name, index) if net == "output" else _board_net(match, name, index)
     return None
 
 
 def _board_net(match: Match, name: str, index: Index) -> int:
-    """Return the board net of a name: behind a fuse the one that the limiter's own parts are on."""
+    """Return the board net of a name: beside a fuse the one that the limiter's own parts are on."""
     members = index.board_nets(match.nets[name])
     if len(members) > 1:
         for role in ("sense", "shunt", "pass", "drive"):
@@ -105,3 +115,12 @@ def _board_net(match: Match, name: str, index: Index) -> int:
                     if net in members:
                         return net
     return members[0]
+
+
+def _output_net(match: Match, name: str, index: Index) -> int:
+    """Return the board net the load hangs on: beside a fuse the one that a connector is on, if there is one."""
+    board = index.board
+    for net in index.board_nets(match.nets[name]):
+        if any(board.parts[part].kind == "connector" for part, _ in board.nets[net].pins):
+            return net
+    return _board_net(match, name, index)

@@ -31,6 +31,7 @@ class Mistakes:
         self.found.append(form.error(message))
 
     def settle(self) -> None:
-        """Raise all mistakes together, in the order of files and lines, if there are any."""
+        """Raise all mistakes together, each once, in the order of files and lines, if there are any."""
         if self.found:
-            raise RuleErrors(sorted(self.found, key=lambda one: (one.file or "", one.line or 0, one.column or 0)))
+            once = {(one.file or "", one.line or 0, one.column or 0, one.message): one for one in self.found}
+            raise RuleErrors(once[key] for key in sorted(once))

@@ -110,7 +110,9 @@ def make_task(
             for name in one:
                 group[name] = one
     alike = {frozenset((one, other)) for members in group.values() for one in members for other in members if one != other}
-    alike |= {frozenset(pair) for pair in unites}
+    for pair in unites:
+        ones, others = (group.get(name, {name}) for name in pair)
+        alike |= {frozenset((one, other)) for one in ones for other in others if one != other}
     early = [test for clause in clauses for test in clause.when] + [test for test in tests if not is_late(test)]
     return Task(number, tuple(clauses), tuple(early), frozenset(alike))
 
@@ -182,8 +184,11 @@ class Planner:
                 continue
             flag = min(flags[slot] for slot in known)
             if flag != RAIL:
-                long = path and clause.count is not None and clause.count[1] > 1
+                long = clause.count is not None and clause.count[1] > 1
                 options.append((1, flag, long, path, self._number(clause), place))
+            elif clause.count is not None and clause.count[0] == 0:
+                # A rail is not walked, but a path of nothing needs no walk.
+                options.append((2, flag, False, path, self._number(clause), place))
         if not options:
             return None
         place = min(options)[-1]
@@ -232,6 +237,8 @@ class Planner:
             apart = _apart(entry.task, second, names)
             names.append(second)
         least, most = clause.count
+        if end == NEW and flags[bound[first]] == RAIL:
+            most = 0
         step = PathStep(clause.kinds, bound[first], end, least, min(most, MANY), direction, clause.until_driven, apart)
         return step, _after(entry, place=place, names=names)
 

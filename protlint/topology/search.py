@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
-from protlint.topology.index import CROWDED, FREE, Index
+from protlint.topology.index import CROWDED, Index
 from protlint.topology.plan import NEW, AskStep, BridgeStep, Entry, Node, PartStep, PathStep, Planner, Step
 from protlint.topology.questions import holds
 
@@ -186,7 +186,7 @@ def _paths(step: PathStep, state: State, index: Index) -> Iterator[Growth]:
                             return
                     continue
                 is_end = target is None and length >= step.least and net not in barred and net not in state.inside
-                may_go_on = net not in bound and index.flag[net] == FREE
+                may_go_on = net not in bound and index.is_open(net)
                 if step.until_driven and may_go_on:
                     goes_on = _is_joint(index, net)
                     is_end, may_go_on = is_end and not goes_on, goes_on
