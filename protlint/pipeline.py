@@ -12,7 +12,7 @@ from protlint.board.graph import Board, build_board
 from protlint.board.parts_list import PartsList, read_parts_list
 from protlint.checks.case import Case
 from protlint.checks.catalogue import CheckRow, load_catalogue
-from protlint.checks.table import BOARD_CHECKS, CHECKS
+from protlint.checks.table import CHECKS, WITHOUT_SOLUTION
 from protlint.findings import LEVELS, Finding, Level, NotChecked, identifying_parts, stamp_fingerprints
 from protlint.limits import CheckSetting, LimiterLimits, Limits, load_limits, needs_of
 from protlint.netlist import read_netlist
@@ -21,6 +21,7 @@ from protlint.partdata.book import Book, load_book
 from protlint.solve.answers import solve
 from protlint.solve.bench import Bench, build_bench
 from protlint.solve.circuit import Circuit
+from protlint.solve.memo import Memo
 from protlint.solve.solution import Solution
 from protlint.topology.language import Rules, load_rules
 from protlint.topology.limiter import Found, Limiter
@@ -138,33 +139,26 @@ def review_netlist(netlist: Netlist, desk: Desk) -> Review:
     found = find_limiters(board, desk.rules)
     reviewed: list[ReviewedLimiter] = []
     findings: list[Finding] = []
-    solved: dict[object, Solution] = {}
+    solved = Memo()
     for limiter in found.limiters:
         one, its_findings = _review_limiter(board, limiter, desk, solved)
         reviewed.append(one)
         findings += its_findings
-    for check, ask_board in BOARD_CHECKS.items():
-        findings += _stamped(
-            (answer for answer in ask_board(board, found, tuple(reviewed)) if isinstance(answer, Finding)),
-            check,
-            desk.catalogue,
-            (desk.limits.checks,),
-        )
     return _finish(board, found, reviewed, findings, desk)
 
 
-def _review_limiter(
-    board: Board, limiter: Limiter, desk: Desk, solved: dict[object, Solution]
-) -> tuple[ReviewedLimiter, list[Finding]]:
+def _review_limiter(board: Board, limiter: Limiter, desk: Desk, solved: Memo) -> tuple[ReviewedLimiter, list[Finding]]:
     """Return one limiter reviewed, with its findings; equal benches are solved once."""
     needs = needs_of(desk.limits, *_names(board, limiter))
     bench = build_bench(board, limiter, limits=desk.limits, needs=needs)
     solution = Solution(not_solved="; ".join(one.needs for one in bench.missing) or "its circuit is not known")
     if bench.circuit is not None:
-        solution = solve(bench.circuit, desk.limits.ambient_degC)
+        solution = solve(bench.circuit, desk.limits.ambient_degC, memo=solved)
     case = Case(board, limiter, bench, solution, needs, desk.limits, desk.catalogue)
     findings: list[Finding] = []
-    not_checked = [NotChecked(check, key) for check, key in solution.not_checked]
+    not_checked = [NotChecked(what, case.limits_key(key)) for what, key in solution.not_checked]
+    if solution.not_solved is not None:
+        not_checked.append(NotChecked("currents", solution.not_solved))
     for check, ask in CHECKS.items():
         if solution.not_solved is not None and check not in WITHOUT_SOLUTION:
             continue
@@ -211,9 +205,7 @@ def _stamped(
     return stamped
 
 
-def _finish(
-    board: Board, found: Found, reviewed: list[ReviewedLimiter], findings: list[Finding], desk: Desk
-) -> Review:
+def _finish(board: Board, found: Found, reviewed: list[ReviewedLimiter], findings: list[Finding], desk: Desk) -> Review:
     """Place, name, waive and sort the findings, and give every limiter its verdict."""
     findings = [_placed(board, finding) for finding in findings]
     known = {one.limiter.id: identifying_parts(one.limiter.roles) for one in reviewed}
@@ -229,7 +221,9 @@ def _finish(
         limits=desk.limits,
         found=found,
         limiters=tuple(sorted(judged, key=lambda one: order[one.limiter.id])),
-        findings=tuple(sorted(marked, key=lambda one: (order.get(one.limiter or "", -1), one.waived is not None, _rank(one)))),
+        findings=tuple(
+            sorted(marked, key=lambda one: (order.get(one.limiter or "", -1), one.waived is not None, _rank(one)))
+        ),
         assumed=tuple(board.assumed) + tuple(desk.limits.assumed),
         remarks=remarks,
     )
@@ -240,9 +234,7 @@ def _placed(board: Board, finding: Finding) -> Finding:
     if finding.file is not None:
         return finding
     part = next((one.part for one in board.parts if one.id == finding.parts[0]), None) if finding.parts else None
-    return replace(
-        finding, file=board.netlist.file, line=part.line if part else None, column=part.column if part else None
-    )
+    return replace(finding, file=board.netlist.file, line=part.line if part else None, column=part.column if part else None)
 
 
 def _rank(finding: Finding) -> int:

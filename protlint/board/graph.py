@@ -17,6 +17,7 @@ from protlint.netlist.model import Netlist, Part
 from protlint.partdata.book import Book, PartEntry
 
 if TYPE_CHECKING:
+    from protlint.board.parts_list import PartsList
     import networkx as nx
 
 KINDS = (
@@ -58,6 +59,8 @@ class BoardPart:
     part_number: str | None
     values: Values
     entry: PartEntry | None
+    sections: tuple[Mapping[str, int], ...] = ()
+    """The roles of each device where one package has several; ``roles`` then goes by pin names."""
 
     @property
     def id(self) -> str:
@@ -141,7 +144,10 @@ class Board:
 
 @dataclass(frozen=True, slots=True)
 class SeenPart:
-    """What is known of a placed part before nets are united; ``roles`` maps a role to positions in ``Part.pins``."""
+    """What is known of a placed part before nets are united; ``roles`` maps a role to positions in ``Part.pins``.
+
+    ``sections`` holds the roles of each device where one package has several, and ``roles`` is then empty.
+    """
 
     kind: str
     roles: Mapping[str, tuple[int, ...]]
@@ -150,10 +156,14 @@ class SeenPart:
     part_number: str | None = None
     values: Values = Values()
     entry: PartEntry | None = None
+    sections: tuple[Mapping[str, tuple[int, ...]], ...] = ()
 
 
-def build_board(netlist: Netlist, *, limits: Limits, book: Book) -> Board:
-    """Return the board of a netlist: kinds, roles, values, supplies, links gone, banks and chains merged."""
+def build_board(netlist: Netlist, *, limits: Limits, book: Book, parts_list: PartsList | None = None) -> Board:
+    """Return the board of a netlist: kinds, roles, values, supplies, links gone, banks and chains merged.
+
+    A parts list fills what the netlist's properties leave open. A resistor without part data of its own goes by its size.
+    """
     from protlint.board.attributes import file_habits, part_number, read_values
     from protlint.board.kinds import identify
     from protlint.board.supplies import supply_of
@@ -161,11 +171,16 @@ def build_board(netlist: Netlist, *, limits: Limits, book: Book) -> Board:
     habits = file_habits(netlist, limits)
     seen = []
     for part in netlist.parts:
-        number = part_number(part, habits)
+        listed = parts_list.listed(part) if parts_list is not None else None
+        number = part_number(part, habits, book=book, listed=listed)
         entry = book.find(number) if number else None
         who = identify(part, number, entry, limits)
-        values = read_values(part, who.kind, habits)
-        seen.append(SeenPart(who.kind, who.roles, who.kind_from, who.roles_from, number, values, entry))
+        values = read_values(part, who.kind, habits, listed=listed)
+        if entry is None and values.footprint is not None:
+            entry = book.find_size(who.kind, values.footprint)
+        seen.append(
+            SeenPart(who.kind, who.roles, who.kind_from, who.roles_from, number, values, entry, who.sections)
+        )
     return assemble(netlist, seen, limits=limits, supply_of=supply_of)
 
 
@@ -187,7 +202,7 @@ def assemble(
     parts = tuple(
         BoardPart(
             index, part, known.kind, known.kind_from, _roles(part, known, index_of), known.roles_from, known.part_number,
-            known.values, known.entry,
+            known.values, known.entry, _sections(part, known, index_of),
         )
         for index, (part, known) in enumerate(zip(netlist.parts, seen, strict=True))
     )  # fmt: skip
@@ -257,6 +272,12 @@ def _roles(part: Part, known: SeenPart, index_of: Sequence[int]) -> dict[str, in
     return roles
 
 
+def _sections(part: Part, known: SeenPart, index_of: Sequence[int]) -> tuple[dict[str, int], ...]:
+    return tuple(
+        {role: index_of[part.pins[positions[0]].net] for role, positions in section.items()} for section in known.sections
+    )
+
+
 def _nets(
     netlist: Netlist,
     parts: Sequence[BoardPart],
@@ -283,7 +304,7 @@ def _nets(
 
 def _elements(parts: Sequence[BoardPart], nets: Sequence[BoardNet], limits: Limits) -> tuple[Element, ...]:
     """Return the elements in the board order of their first part."""
-    made: dict[int, tuple[str, Mapping[str, int], float | None, object]] = {}
+    made: list[tuple[int, str, Mapping[str, int], float | None, object]] = []
     resistances = []
     for part in parts:
         if not part.values.fitted or is_link(part):
@@ -292,14 +313,15 @@ def _elements(parts: Sequence[BoardPart], nets: Sequence[BoardNet], limits: Limi
             ends = part.roles["1"], part.roles["2"]
             resistances.append(Resistance(ends, part.values.value, part.index, part.index))
         else:
-            made[part.index] = part.kind, part.roles, part.values.value, part.index
+            for roles in part.sections or (part.roles,):
+                made.append((part.index, part.kind, roles, part.values.value, part.index))
     for one in merge_resistances(resistances, _passable(parts, nets, limits)):
-        made[one.first] = "resistor", {"1": one.ends[0], "2": one.ends[1]}, one.value, one.tree
-    elements = []
-    for index, first in enumerate(sorted(made)):
-        kind, terminals, value, tree = made[first]
-        elements.append(Element(index, kind, terminals, parts_of(tree), value, tree))
-    return tuple(elements)
+        made.append((one.first, "resistor", {"1": one.ends[0], "2": one.ends[1]}, one.value, one.tree))
+    made.sort(key=lambda one: one[0])
+    return tuple(
+        Element(index, kind, terminals, parts_of(tree), value, tree)
+        for index, (_, kind, terminals, value, tree) in enumerate(made)
+    )
 
 
 def _is_plain_resistor(part: BoardPart) -> bool:

@@ -53,7 +53,7 @@ def drive_insufficient(case: Case) -> Iterator[Answer]:
         f"before the {format_quantity(carry_A, 'A')} the board needs and before the limiter acts",
         parts=(*drive, *case.parts("pass")),
         working=_carry_working(case, row, carries_A, carry_A),
-        remedy=f"let {resistors} give {1.0 / share:.2g} times the drive, or fit a pass device with {1.0 / share:.2g} times the hFE"
+        remedy=f"let {resistors} give {1.0 / share:.2g} times the drive, or fit a pass device of as much more hFE"
         if share > 0.0
         else f"{resistors} cannot turn the pass device on at all",
         assumption=case.assumes(*ALL_ASSUMPTIONS),
@@ -108,7 +108,11 @@ def _not_checked(case: Case, check: str) -> Iterator[Answer]:
 
 
 def _carry_working(case: Case, row: Currents, carries_A: float, carry_A: float) -> tuple[WorkingLine, ...]:
-    at = f"output at {format_quantity(case.needs.output_V, 'V')}" if case.needs.output_V is not None else "2 V left to the pass device"
+    at = (
+        f"output at {format_quantity(case.needs.output_V, 'V')}"
+        if case.needs.output_V is not None
+        else "2 V left to the pass device"
+    )
     return (
         WorkingLine("carries, usual", f"solved at {format_quantity(row.ambient_degC, 'degC')}, {at}", row.carries_A, "A"),
         WorkingLine("carries, low end", "the same with every tolerance at its worst", carries_A, "A"),

@@ -13,7 +13,7 @@ from protlint.quantities import format_quantity, preferred
 from protlint.solve.solution import Point
 
 KNEE_DEGC, ZERO_DEGC = 70.0, 155.0
-"""Chip resistors: full dissipation up to 70 degC (IEC 60115-1), none left at 155 degC (makers' thick-film chip data sheets)."""
+"""Chip resistors: full dissipation to 70 degC (IEC 60115-1), none left at 155 degC (makers' thick-film chip data sheets)."""
 
 OVERLOAD_TIMES, OVERLOAD_S = 6.25, 5.0
 """Short-time overload of IEC 60115-1, 2.5 times rated voltage for 5 s; from memory."""
@@ -65,9 +65,7 @@ def sense_resistor_power(case: Case) -> Iterator[Answer]:
 def resistor_power(case: Case) -> Iterator[Answer]:
     """Yield a finding for each other resistor on the bench that takes too much power."""
     sense = set(case.limiter.elements.get("sense", ()))
-    roles = tuple(
-        role for role, indices in case.limiter.elements.items() if role != "sense" and not sense & set(indices)
-    )
+    roles = tuple(role for role, indices in case.limiter.elements.items() if role != "sense" and not sense & set(indices))
     yield from _resistor_power(case, "resistor-power", roles)
 
 

@@ -37,7 +37,7 @@ def part_data_missing(case: Case) -> Iterator[Answer]:
             f"{part_id} ({number}) is in no part data: figures usual for its kind were taken, with a wide spread",
             parts=(part_id,),
             working=(),
-            remedy=f"add its ratings to a part-data file and give it with --parts"
+            remedy="add its ratings to a part-data file and give it with --parts"
             if part.part_number
             else f"give {part_id} a part number",
             subject=part_id,

@@ -6,7 +6,8 @@ from collections.abc import Sequence
 from dataclasses import replace
 
 from protlint.checks.case import Case
-from protlint.quantities import format_quantity, preferred_within
+from protlint.quantities import format_quantity
+from protlint.quantities.series import within
 from protlint.solve.answers import solve
 from protlint.solve.solution import Solution
 
@@ -22,7 +23,11 @@ def sense_remedy(case: Case) -> str | None:
     The limit goes nearly as 1 / R, so carry bounds the resistance from above and cap from below. Values of E24 inside that
     window, then of E96, are solved over all corners until one meets both.
     """
-    sense = [device for device in case.bench.circuit.devices if device.name in case.bench.circuit.sense] if case.bench.circuit else []
+    sense = (
+        [device for device in case.bench.circuit.devices if device.name in case.bench.circuit.sense]
+        if case.bench.circuit
+        else []
+    )
     if not sense or case.solution.not_solved is not None:
         return None
     now_ohm = sense[0].model["R"]
@@ -54,7 +59,7 @@ def _candidates(lower_ohm: float | None, upper_ohm: float | None) -> Sequence[fl
         return ()
     tried: list[float] = []
     for series in ("E24", "E96"):
-        values = [value for value in preferred_within(low_ohm, high_ohm, series) if value not in tried]
+        values = [value for value in within(low_ohm, high_ohm, series) if value not in tried]
         tried += sorted(values, key=lambda value: abs(value / middle_ohm - 1.0))[:MOST_TRIES]
     return tried
 
@@ -108,6 +113,6 @@ def _no_value(case: Case, carries_A: float, most_A: float) -> str:
         return "no preferred sense value meets it: the drive, not the sense resistance, decides here"
     return (
         f"no sense value meets both: the limit spreads {format_quantity(spread, '')} to 1 over tolerance and temperature, "
-        f"the window is {format_quantity(cap_A / carry_A, '')} to 1; with carry {format_quantity(carry_A, 'A')} the cap has to be at "
-        f"least {format_quantity(carry_A * spread, 'A')}, or V_BE spread, tolerance or temperature range has to shrink"
+        f"the window is {format_quantity(cap_A / carry_A, '')} to 1; with this carry the cap has to be at least "
+        f"{format_quantity(carry_A * spread, 'A')}, or V_BE spread, tolerance or temperature range has to shrink"
     )

@@ -18,3 +18,6 @@ CHECKS: Mapping[str, Callable[[Case], Iterable[Answer]]] = {
     "part-data-missing": inputs.part_data_missing,
 }
 """Asked of every limiter."""
+
+WITHOUT_SOLUTION = frozenset({"value-unreadable", "part-data-missing"})
+"""Those that are asked even where the circuit could not be solved."""

@@ -29,6 +29,11 @@ class Bench:
     nets: Mapping[str, str] = field(default_factory=dict)
     assumed: tuple[tuple[str, str], ...] = ()
 
+    @property
+    def parts_without_value(self) -> tuple[str, ...]:
+        """Return the ids of parts whose value the circuit needs and lacks."""
+        return tuple(one.part for one in self.missing if one.subject == "value" and one.part is not None)
+
 
 def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: LimiterLimits) -> Bench:
     """Return the circuit of a limiter as it stands on its board, or what is missing for it."""
@@ -106,9 +111,7 @@ def _has_ground_leg(place: Place) -> bool:
     Where the far end of the sense resistance is the output, that is a leg to a net that stays put; where it is not, a leg
     to the output.
     """
-    legs = [
-        index for role, indices in place.limiter.elements.items() if role.split(".")[0] == "preset" for index in indices
-    ]
+    legs = [index for role, indices in place.limiter.elements.items() if role.split(".")[0] == "preset" for index in indices]
     nets = {net for index in legs for net in place.board.elements[index].terminals.values()}
     if place.limiter.nets["far"] == place.around.output:
         return any(place.usual_V(net) is not None for net in nets)
@@ -121,4 +124,8 @@ def _regulates(place: Place) -> bool:
         return True
     collector_out = place.limiter.nets["far"] != place.around.output
     own = {index for indices in place.limiter.elements.values() for index in indices}
-    return collector_out and place.around.fed_by is not None and set(place.around.elements) <= own | set(place.around.power_path)
+    return (
+        collector_out
+        and place.around.fed_by is not None
+        and set(place.around.elements) <= own | set(place.around.power_path)
+    )

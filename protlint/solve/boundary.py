@@ -16,8 +16,10 @@ from protlint.topology.limiter import Limiter
 
 @dataclass(frozen=True, slots=True)
 class Missing:
-    """Something a bench lacks: a ``subject`` (``supply``, ``short``, ``drive``, ``value``, ``part``, ``circuit``), the part it
-    is about where it is about one, and the key that would supply it."""
+    """Something a bench lacks, and the key that would supply it.
+
+    ``subject`` is ``supply``, ``short``, ``drive``, ``value``, ``part`` or ``circuit``; ``part`` the part it is about, if any.
+    """
 
     subject: str
     part: str | None
@@ -89,6 +91,13 @@ def _hold(place: Place, net: int, held: dict[str, Range], notes: Notes) -> str:
     return node
 
 
+def _hold_elsewhere(place: Place, name: str, held: dict[str, Range], notes: Notes) -> str:
+    """Hold a supply that the limits file names and no net of this board carries: the load hangs on it elsewhere."""
+    held[name] = place.limits.supplies_V[name]
+    notes.words[name] = f"held at {held[name].usual:g} V (by limits file); on no net of this board"
+    return name
+
+
 def ground_net(board: Board) -> int | None:
     """Return the 0 V net with the most pins, or None where the board has none."""
     grounds = [(-len(net.pins), net.index) for net in board.nets if net.supply and net.supply.voltage_V.usual == 0.0]
@@ -125,6 +134,9 @@ def short_nodes(place: Place, held: dict[str, Range], notes: Notes) -> tuple[str
         ground = ground_net(board)
         if ground is not None:
             return (_hold(place, ground, held, notes),)
+        elsewhere = [name for name, voltage in place.limits.supplies_V.items() if voltage.usual == 0.0]
+        if elsewhere:
+            return (_hold_elsewhere(place, elsewhere[0], held, notes),)
         held["0 V"] = Range(0.0, 0.0, 0.0)
         notes.words["0 V"] = "ground; no net of the board is known as ground"
         notes.assumed.append(("short", f"a short ties {output} to 0 V; no net of the board is known as ground"))
@@ -162,6 +174,8 @@ def _stated_shorts(place: Place, held: dict[str, Range], notes: Notes) -> tuple[
         nets = [net.index for net in place.board.nets if name in net.names and net.supply is not None]
         if nets:
             nodes.append(_hold(place, nets[0], held, notes))
+        elif name in place.limits.supplies_V:
+            nodes.append(_hold_elsewhere(place, name, held, notes))
         else:
             notes.missing.append(Missing("short", None, f"[supply] {toml_key(name)}, which shorted_to names"))
     return tuple(nodes)

@@ -2,11 +2,159 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from collections.abc import Mapping
 
-from protlint.board.graph import Element
-from protlint.solve.boundary import Missing, Notes, Place, toml_key
+from protlint.board.graph import BoardPart, Element
+from protlint.board.shares import merged_resistance
+from protlint.solve.boundary import Missing, Notes, Place
 from protlint.solve.circuit import Device
+from protlint.solve.derive import Derived, derive
 
-if TYPE_CHECKING:
-    from collections.abc import Mapping
+TERMINALS = {
+    "npn": ("collector", "base", "emitter"),
+    "pnp": ("collector", "base", "emitter"),
+    "nmos": ("drain", "gate", "source"),
+    "pmos": ("drain", "gate", "source"),
+    "diode": ("anode", "cathode"),
+    "zener": ("anode", "cathode"),
+    "resistor": ("1", "2"),
+    "fuse": ("1", "2"),
+    "capacitor": ("1", "2"),
+    "inductor": ("1", "2"),
+}
+"""Terminal roles in the order of :attr:`Device.nodes`."""
+
+PASSIVE_PARAMETER = {"resistor": "R", "fuse": "R", "capacitor": "C", "inductor": "L"}
+
+FUSE_OHM = 0.05
+"""Cold resistance taken for a fuse that states none; common practice of the trade for fuses of a few amperes."""
+
+
+def devices_of(place: Place, index: int, *, nodes: Mapping[str, str], notes: Notes) -> list[Device]:
+    """Return the devices of one board element: one, or two for a Darlington part, or none where it lacks something.
+
+    ``nodes`` maps the element's terminal roles to node names. What is missing or assumed goes into ``notes``.
+    """
+    element = place.board.elements[index]
+    parts = [place.board.parts[part] for part in element.parts]
+    if element.kind in PASSIVE_PARAMETER:
+        return _passive(place, element, parts, nodes, notes)
+    part = parts[0]
+    kind = element.kind.removesuffix("-darlington")
+    if not set(TERMINALS[kind]) <= nodes.keys():
+        notes.missing.append(Missing("part", part.id, f"pin roles of {part.id}, in [pins] or its part data"))
+        return []
+    derived = _derived(element.kind, part)
+    notes.assumed += [("model", f"{part.id}: {sentence}") for sentence in derived.assumed]
+    rise_K = _rise_K(place, index)
+    hands = _darlington(part, derived, nodes) if element.kind.endswith("-darlington") else [(part.id, derived.model, nodes)]
+    devices = []
+    for name, model, its_nodes in hands:
+        bipolar = kind in ("npn", "pnp")
+        devices.append(
+            Device(
+                name=name,
+                kind=kind,
+                nodes=tuple(its_nodes[role] for role in TERMINALS[kind]),
+                model=model,
+                hfe=derived.hfe if bipolar else None,
+                vbe_spread_V=_spread_V(place, derived, bipolar=bipolar),
+                rise_K=rise_K,
+                assumed=derived.assumed,
+            )
+        )
+    return devices
+
+
+def _spread_V(place: Place, derived: Derived, *, bipolar: bool) -> tuple[float, float]:
+    """Return how far a junction's or gate's voltage may lie from usual.
+
+    What the limits file states for bipolars holds for every part that is known; where it states nothing, or the part is
+    not known, the wider of its default and the part's own spread.
+    """
+    own_V = derived.vbe_spread_V
+    if not bipolar:
+        return own_V or (0.0, 0.0)
+    board_V = place.limits.vbe_spread_V
+    if own_V is None or not (derived.assumed or place.limits.assumes("vbe_spread_V")):
+        return board_V
+    return max(own_V[0], board_V[0]), max(own_V[1], board_V[1])
+
+
+def _derived(kind: str, part: BoardPart) -> Derived:
+    """Return a part's model: its own, or one derived from its data-sheet figures, or the default of its kind."""
+    entry = part.entry
+    ratings = {name: figure.value for name, figure in entry.ratings.items()} if entry is not None else {}
+    if kind == "zener" and "vz" not in ratings and part.values.value is not None:
+        ratings["vz"] = part.values.value
+    return derive(kind, ratings, entry.model if entry is not None else {})
+
+
+def _passive(place: Place, element: Element, parts: list[BoardPart], nodes: Mapping[str, str], notes: Notes) -> list[Device]:
+    name = "+".join(part.id for part in parts)
+    ends = tuple(nodes[role] for role in TERMINALS[element.kind] if role in nodes)
+    if len(ends) != 2:
+        notes.missing.append(Missing("part", parts[0].id, f"two connected pins of {name}"))
+        return []
+    if ends[0] == ends[1]:
+        return []
+    parameter = PASSIVE_PARAMETER[element.kind]
+    if element.kind == "resistor":
+        return _resistor(place, element, parts, name, ends, notes)
+    value = element.value
+    if element.kind == "fuse":
+        entry = parts[0].entry
+        value = entry.ratings["resistance"].value if entry is not None and "resistance" in entry.ratings else FUSE_OHM
+        if value == FUSE_OHM:
+            notes.assumed.append(("circuit", f"{name} is taken as {FUSE_OHM:g} ohm when cold"))
+    if value is None:
+        notes.missing.append(Missing("value", parts[0].id, f"a readable value of {parts[0].id}"))
+        return []
+    kind = "resistor" if element.kind == "fuse" else element.kind
+    return [Device(name=name, kind=kind, nodes=ends, model={parameter: value})]
+
+
+def _resistor(
+    place: Place, element: Element, parts: list[BoardPart], name: str, ends: tuple[str, ...], notes: Notes
+) -> list[Device]:
+    """Return a resistor, or a merged bank or chain with the spread that its parts' tolerances give together."""
+    unread = [part for part in parts if part.values.value is None]
+    if unread:
+        notes.missing += [Missing("value", part.id, f"a readable value of {part.id}") for part in unread]
+        return []
+    stated = {part.index: part.values.tolerance for part in parts}
+    tolerance = {
+        index: place.limits.resistor_tolerance if fraction is None else fraction for index, fraction in stated.items()
+    }
+    values_ohm = {part.index: part.values.value or 0.0 for part in parts}
+    if None in stated.values() and place.limits.assumes("resistor_tolerance"):
+        notes.assumed.append(("tolerance", f"{name}: {place.limits.resistor_tolerance * 100:g} %"))
+
+    def merged_ohm(sign: int) -> float:
+        return merged_resistance(element.tree, lambda one: values_ohm[one] * (1.0 + sign * tolerance[one]))
+
+    usual_ohm, high_ohm = merged_ohm(0), merged_ohm(1)
+    model = {"R": usual_ohm}
+    entry = parts[0].entry
+    if entry is not None and "tcr" in entry.ratings:
+        model["TC1"] = entry.ratings["tcr"].value
+    return [Device(name=name, kind="resistor", nodes=ends, model=model, tolerance=high_ohm / usual_ohm - 1.0)]
+
+
+def _darlington(
+    part: BoardPart, derived: Derived, nodes: Mapping[str, str]
+) -> list[tuple[str, Mapping[str, float], Mapping[str, str]]]:
+    """Return the two transistors of a Darlington part: (name, model, nodes by role)."""
+    middle = f"{part.id} inner emitter"
+    first = {**nodes, "emitter": middle}
+    second = {**nodes, "base": middle}
+    return [(f"{part.id} driver", derived.driver_model, first), (part.id, derived.model, second)]
+
+
+def _rise_K(place: Place, index: int) -> float:
+    """Return how far above ambient a limits file puts a device."""
+    if index in place.limiter.elements.get("shunt", ()):
+        return place.needs.shunt_rise_K or 0.0
+    if any(index in place.limiter.elements.get(role, ()) for role in ("pass", "driver")):
+        return place.needs.pass_rise_K or 0.0
+    return 0.0

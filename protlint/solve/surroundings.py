@@ -42,7 +42,8 @@ class Surroundings:
     ``elements`` are board element indices in board order. ``drive`` is the net that brings the drive, with its entry in the
     limits file where there is one; ``fed_by`` the supply net that feeds the drive where nothing takes it away (exactly one
     of the two is set, or neither where no drive was found). ``power`` is the net at the far side of the load current from
-    the output, ``power_path`` the series parts (a fuse, say) between it and a supply. ``left_out`` says in plain words what was taken as off or open.
+    the output, ``power_path`` the series parts (a fuse, say) between it and a supply. ``left_out`` says in plain words what
+    was taken as off or open.
     """
 
     elements: tuple[int, ...]
