@@ -10,7 +10,8 @@ from __future__ import annotations
 import re
 from collections.abc import Mapping, Sequence
 
-from protlint.board.graph import Board, SeenPart, Supply, Values, assemble
+from protlint.board.assemble import assemble
+from protlint.board.graph import Board, SeenPart, Supply, Values
 from protlint.limits import Limits, Range
 from protlint.netlist.model import Net, Netlist, Part, Pin
 

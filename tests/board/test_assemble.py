@@ -1,4 +1,4 @@
-"""The board: links gone, banks and chains merged, what does and does not break them."""
+"""The board put together: links gone, banks and chains merged, what does and does not break them."""
 
 from __future__ import annotations
 
@@ -6,9 +6,11 @@ import math
 
 import pytest
 
-from protlint.board.graph import Board, Element
+from protlint.board.assemble import assemble
+from protlint.board.graph import Board, Element, SeenPart
 from protlint.limits import DriveLimits, Limits
-from tests.support.boards import board
+from protlint.netlist.model import Part, Pin
+from tests.support.boards import board, netlist, supply_of
 
 
 def resistors(made: Board) -> list[Element]:
@@ -135,3 +137,18 @@ def test_a_ladder_resistance_is_right() -> None:
     text = "\n".join(f"resistor RS{n} N{n} N{n + 1} =1\nresistor RP{n} N{n + 1} B =1" for n in range(15))
     (one,) = resistors(board(f"{text}\nconnector J1 1=N0 2=B"))
     assert one.value == pytest.approx((1 + math.sqrt(5)) / 2, rel=1e-6)
+
+
+def test_a_package_of_two_devices_is_two_elements() -> None:
+    pins = tuple(Pin(name, None, net, 1, 1) for net, name in enumerate(("C1", "B1", "E1", "C2", "B2")))
+    pins += (Pin("E2", None, 2, 1, 1),)
+    dual = Part("Q1", "Q1", "DUAL", "LIB", {}, pins, 1, 1)
+    sections = tuple({"collector": (at,), "base": (at + 1,), "emitter": (at + 2,)} for at in (0, 3))
+    seen = [SeenPart("npn", {}, sections=sections)]
+    nets = {name: at for at, name in enumerate("ABCDE")}
+    made = assemble(netlist([dual], nets), seen, limits=Limits(), supply_of=supply_of)
+    assert [element.terminals for element in made.elements] == [
+        {"collector": 0, "base": 1, "emitter": 2}, {"collector": 3, "base": 4, "emitter": 2},
+    ]  # fmt: skip
+    assert made.elements_at[2] == ((0, "emitter"), (1, "emitter"))
+    assert made.nets[2].pins == ((0, "E1"), (0, "E2"))
