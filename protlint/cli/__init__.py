@@ -8,6 +8,7 @@ from __future__ import annotations
 import click
 
 from protlint import __version__
+from protlint.cli.compare import compare
 from protlint.cli.demo import demo
 from protlint.cli.review import review
 from protlint.cli.rules import rules
@@ -35,7 +36,7 @@ def commands(context: click.Context) -> int:
     return CANNOT
 
 
-for command in (review, survey, rules, demo, waive):
+for command in (review, survey, rules, demo, waive, compare):
     commands.add_command(command)
 
 

@@ -196,14 +196,21 @@ def _finding(finding: Finding, by_id: Mapping[str, BoardPart]) -> Document:
         "file": finding.file,
         "line": finding.line,
         "column": finding.column,
-        "places": [
-            {"part": name, "line": by_id[name].part.line, "column": by_id[name].part.column}
-            for name in dict.fromkeys(finding.parts)
-            if name in by_id
-        ],
+        "places": [_place(by_id[name]) for name in dict.fromkeys(finding.parts) if name in by_id],
         "fingerprint": finding.fingerprint,
         "waived": finding.waived,
         "waived_by": finding.waived_by,
+    }
+
+
+def _place(part: BoardPart) -> Document:
+    return {
+        "part": part.id,
+        "kind": part.kind,
+        "part_number": part.part_number,
+        "value": rounded(part.values.value),
+        "line": part.part.line,
+        "column": part.part.column,
     }
 
 

@@ -55,12 +55,12 @@ def sample_review(names: Mapping[str, str] = PLAIN, *, notes: int = 0) -> Review
             limiter=first,
             needs=LimiterLimits(carry_A=0.7, cap_A=1.2, output_V=12.0),
             bench=_bench(names),
-            solution=_solution(0.367),
+            solution=_solution(0.367, names),
             verdict="fails",
             not_checked=(NotChecked("trips-on-peaks", "limiter.Q10.peak"),),
         ),
         ReviewedLimiter(second, LimiterLimits(), Bench(None), Solution(not_solved="node N3 floats"), "not judged"),
-        ReviewedLimiter(third, LimiterLimits(carry_A=0.2), _bench(names), _solution(0.9), "passes"),
+        ReviewedLimiter(third, LimiterLimits(carry_A=0.2), _bench(names), _solution(0.9, names), "passes"),
     )
     findings = (
         _carry_not_met(names, first.id),
@@ -236,7 +236,7 @@ def _circuit(names: Mapping[str, str]) -> Circuit:
     )
 
 
-def _solution(holds: float) -> Solution:
+def _solution(holds: float, names: Mapping[str, str]) -> Solution:
     def at(ambient: float, factor: float) -> Currents:
         usual = holds * factor
         pair = (usual * 0.95, usual * 1.05)
@@ -257,13 +257,17 @@ def _solution(holds: float) -> Solution:
             most_range_A=pair,
         )
 
-    short = Point(0.0, holds, {"Q10": State(holds, 11.2, 11.2 * holds, 0.0037, 0.8), "R11": State(holds, holds, holds**2)})
+    states = {
+        names["pass"]: State(holds, 11.2, 11.2 * holds, 0.0037, 0.8),
+        names["sense"]: State(holds, holds, holds**2),
+    }
+    short = Point(0.0, holds, states)
     return Solution(
         currents=(at(-10.0, 1.15), at(27.0, 1.0), at(85.0, 0.8)),
         locus=(short, Point(6.0, holds, {})),
         held_short=short,
         worst_point=short,
-        sensitivities=(Sensitivity("R11", "R", -0.9),),
+        sensitivities=(Sensitivity(names["sense"], "R", -0.9),),
         loop=Loop(0.223456789, 1.2e6, 0.19, 41.0, 8.1e5, 38.0),
         step=Step(True, 1.2e-6, 1.31, 2.5e-6),
     )

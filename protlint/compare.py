@@ -1,0 +1,240 @@
+"""Two reports compared: what a revision changed on the limiters, which part did it, and which findings are new or gone.
+
+Limiters are matched by structure, so that renumbered designators and renamed nets make no noise. Both sides are reports of
+single netlists in the shape of ``review-1.schema.json``.
+"""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+from protlint.findings import LEVELS
+
+Report = Mapping[str, Any]
+Pair = tuple[Report, Report]
+
+SAME = 1e-3
+"""Relative change below which a figure counts as the same: the rounding of reports and solvers stays far below it."""
+
+LEAST_LIKENESS = 5.0
+"""Below this two limiters are not one limiter changed, but one gone and one new."""
+
+FIGURES = ("carries_A", "most_A", "holds_A", "damping", "pass_power_W")
+"""What a comparison follows, at usual ambient."""
+
+
+def compare(before: Report, after: Report) -> dict[str, Any]:
+    """Return what changed from one report to the other, as plain data.
+
+    Raises
+    ------
+    KeyError, TypeError, IndexError : one of them is not a report of a single netlist.
+    """
+    pairs, removed, added = matched(before["limiters"], after["limiters"])
+    changes = [_change(old, new) for old, new in pairs]
+    return {
+        "compare": 1,
+        "before": dict(before["netlist"]),
+        "after": dict(after["netlist"]),
+        "limiters": {
+            "added": [{"id": one["id"], "topology": one["topology"], "verdict": one["verdict"]} for one in added],
+            "removed": [{"id": one["id"], "topology": one["topology"], "verdict": one["verdict"]} for one in removed],
+            "changed": [change for change in changes if change["parts"] or change["figures"] or change["words"]],
+            "unchanged": sum(not (change["parts"] or change["figures"] or change["words"]) for change in changes),
+        },
+        "findings": _findings(before, after, pairs),
+    }
+
+
+def matched(before: Sequence[Report], after: Sequence[Report]) -> tuple[list[Pair], list[Report], list[Report]]:
+    """Pair limiters of two reports, and return the pairs, those only before and those only after.
+
+    Limiters that are alike part by part are paired first (of several, those of one name or one output net); the rest by
+    likeness, the likest first.
+    """
+    pairs: list[tuple[int, int]] = []
+    left, right = dict(enumerate(before)), dict(enumerate(after))
+    for alike in (_by_name, _by_output, _by_structure):
+        waiting: dict[Any, list[int]] = {}
+        for place, limiter in left.items():
+            waiting.setdefault(alike(limiter), []).append(place)
+        for place, limiter in list(right.items()):
+            same = waiting.get(alike(limiter))
+            if same:
+                pairs.append((same.pop(0), place))
+                del left[pairs[-1][0]], right[place]
+    scored = sorted(
+        ((-_likeness(old, new), i, j) for i, old in left.items() for j, new in right.items()),
+    )
+    for score, i, j in scored:
+        if -score >= LEAST_LIKENESS and i in left and j in right:
+            pairs.append((i, j))
+            del left[i], right[j]
+    return [(before[i], after[j]) for i, j in sorted(pairs)], list(left.values()), list(right.values())
+
+
+def _by_structure(limiter: Report) -> Any:
+    parts = Counter((part["role"], *_type(part)) for part in limiter["parts"])
+    return limiter["topology"], limiter["polarity"], frozenset(parts.items())
+
+
+def _by_output(limiter: Report) -> Any:
+    return _by_structure(limiter), limiter["nets"]["output"]
+
+
+def _by_name(limiter: Report) -> Any:
+    return _by_output(limiter), limiter["id"]
+
+
+def _type(part: Report) -> tuple[Any, ...]:
+    """Return what a part is, apart from its name."""
+    return part["kind"], part["part_number"], part["value"]
+
+
+def _likeness(old: Report, new: Report) -> float:
+    """Return how much two limiters have in common: names weigh little, structure weighs more."""
+    if old["polarity"] != new["polarity"]:
+        return 0.0
+    score = 3.0 if old["topology"] == new["topology"] else 0.0
+    score += 2.0 if old["id"] == new["id"] else 0.0
+    score += sum(1.0 for net in old["nets"] if old["nets"][net] is not None and old["nets"][net] == new["nets"].get(net))
+    ours, theirs = (Counter((part["role"], *_type(part)) for part in one["parts"]) for one in (old, new))
+    shared, whole = (ours & theirs).total(), max(ours.total(), theirs.total(), 1)
+    return score + 4.0 * shared / whole
+
+
+def _change(old: Report, new: Report) -> dict[str, Any]:
+    """Return what is different in one limiter; ``parts`` stand with the one that moved holds most first."""
+    parts = _changed_parts(old, new)
+    figures = {}
+    for name in FIGURES:
+        was, now = _figure(old, name), _figure(new, name)
+        if (was is None) != (now is None) or (was is not None and now is not None and not _same(was, now)):
+            figures[name] = {"before": was, "after": now}
+    words = {
+        key: {"before": old[key], "after": new[key]} for key in ("topology", "verdict") if old[key] != new[key]
+    }  # fmt: skip
+    needs = {
+        key: {"before": old["needs"][key], "after": new["needs"][key]}
+        for key in old["needs"]
+        if old["needs"][key] != new["needs"].get(key)
+    }
+    return {
+        "before": old["id"],
+        "after": new["id"],
+        "words": words,
+        "figures": figures,
+        "parts": sorted(parts, key=lambda part: -abs(part["moves_holds"] or 0.0)),
+        "needs": needs,
+    }
+
+
+def _figure(limiter: Report, name: str) -> float | None:
+    if name == "damping":
+        value = limiter["loop"]["least_damping"]
+    elif name == "pass_power_W":
+        value = _pass_power_W(limiter)
+    else:
+        value = limiter["currents"][len(limiter["currents"]) // 2][name]
+    return None if value is None else float(value)
+
+
+def _pass_power_W(limiter: Report) -> float | None:
+    """Return the dissipation of the hottest pass device in the held short; a Darlington part is two devices."""
+    point = limiter["held_short"]
+    if point is None:
+        return None
+    powers = {device["device"]: device["power_W"] for device in point["devices"] if device["power_W"] is not None}
+    return max(
+        (powers[name] + powers.get(f"{name} driver", 0.0) for name in limiter["roles"]["pass"] if name in powers),
+        default=None,
+    )
+
+
+def _same(was: float, now: float) -> bool:
+    return abs(now - was) <= SAME * max(abs(was), abs(now))
+
+
+def _changed_parts(old: Report, new: Report) -> list[dict[str, Any]]:
+    """Pair the parts of each role, equal ones first, and return those that changed, came or went."""
+    changed = []
+    roles = dict.fromkeys(part["role"] for one in (old, new) for part in one["parts"])
+    for role in roles:
+        ours = [part for part in old["parts"] if part["role"] == role]
+        theirs = [part for part in new["parts"] if part["role"] == role]
+        for part in list(ours):
+            same = next((other for other in theirs if _type(other) == _type(part)), None)
+            if same is not None:
+                ours.remove(part)
+                theirs.remove(same)
+        for was, now in zip(ours, theirs, strict=False):
+            changed.append(_changed_part(role, was, now, old))
+        changed += (_changed_part(role, part, None, old) for part in ours[len(theirs) :])
+        changed += (_changed_part(role, None, part, old) for part in theirs[len(ours) :])
+    return changed
+
+
+def _changed_part(role: str, was: Report | None, now: Report | None, old: Report) -> dict[str, Any]:
+    keys = ("id", "kind", "part_number", "value", "unit")
+    return {
+        "role": role,
+        "before": None if was is None else {key: was[key] for key in keys},
+        "after": None if now is None else {key: now[key] for key in keys},
+        "moves_holds": _moves_holds(was, now, old),
+    }
+
+
+def _moves_holds(was: Report | None, now: Report | None, old: Report) -> float | None:
+    """Return by how much (relative) a changed resistance moves holds: its ratio to the power of its sensitivity."""
+    if was is None or now is None or not was["value"] or not now["value"]:
+        return None
+    found = [row["relative"] for row in old["sensitivities"] if row["device"] == was["id"] and row["parameter"] == "R"]
+    return float((now["value"] / was["value"]) ** found[0] - 1.0) if found and found[0] is not None else None
+
+
+def _findings(before: Report, after: Report, pairs: Sequence[Pair]) -> dict[str, Any]:
+    """Sort the findings into new, gone, risen (to a higher level) and unchanged."""
+    place_before = {old["id"]: place for place, (old, _) in enumerate(pairs)}
+    place_after = {new["id"]: place for place, (_, new) in enumerate(pairs)}
+    renumbered = any(old["id"] != new["id"] for old, new in pairs)
+    roles_before, roles_after = _roles(before), _roles(after)
+    waiting: dict[Any, list[Report]] = {}
+    for finding in before["findings"]:
+        waiting.setdefault(_key(finding, place_before, roles_before, renumbered), []).append(finding)
+    new: list[Report] = []
+    risen: list[dict[str, Any]] = []
+    unchanged = 0
+    for finding in after["findings"]:
+        same = waiting.get(_key(finding, place_after, roles_after, renumbered))
+        if not same:
+            new.append(finding)
+            continue
+        was = next((one for one in same if one["fingerprint"] == finding["fingerprint"]), same[0])
+        same.remove(was)
+        if LEVELS.index(finding["level"]) < LEVELS.index(was["level"]):
+            risen.append({**finding, "level_before": was["level"]})
+        else:
+            unchanged += 1
+    gone = [finding for left in waiting.values() for finding in left]
+    return {"new": new, "risen": risen, "gone": gone, "unchanged": unchanged}
+
+
+def _roles(report: Report) -> dict[tuple[str, str], str]:
+    return {(limiter["id"], part["id"]): part["role"] for limiter in report["limiters"] for part in limiter["parts"]}
+
+
+def _key(
+    finding: Report, places: Mapping[str, int], roles: Mapping[tuple[str, str], str], renumbered: bool
+) -> tuple[Any, ...]:
+    """Return what a finding is about, apart from names: its check, its limiter's pair, the roles of its parts.
+
+    A finding about no paired limiter goes by its fingerprint, or where designators were renumbered by its parts' types.
+    """
+    limiter = finding["limiter"]
+    if limiter in places:
+        return finding["check"], places[limiter], tuple(sorted(roles.get((limiter, part), "") for part in finding["parts"]))
+    if not renumbered:
+        return finding["check"], None, finding["fingerprint"]
+    return finding["check"], None, tuple(sorted(str(_type(place)) for place in finding["places"]))

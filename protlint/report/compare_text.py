@@ -1,0 +1,131 @@
+"""A comparison of two revisions as lines of 80 columns."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Sequence
+
+from protlint.findings import LEVELS
+from protlint.report.figures import UNKNOWN, counted, figure, percent
+from protlint.report.layout import painted, wrapped
+from protlint.report.safe import json_text, terminal, throughout
+from protlint.report.shape import CAUTION, Document
+from protlint.report.text import ROLE_WORDS
+
+UNITS = {"carries_A": "A", "most_A": "A", "holds_A": "A", "damping": "", "pass_power_W": "W"}
+
+WORDS = {
+    "carries_A": "carries",
+    "most_A": "most",
+    "holds_A": "holds",
+    "damping": "damping",
+    "pass_power_W": "pass device, held short",
+}
+
+UNIT_OF_NEED = {"carry_A": "A", "cap_A": "A", "output_V": "V", "short_s": "s", "regulate_A": "A"}
+
+CHANGES = ("new", "risen", "gone")
+
+
+def rendered_comparison(comparison: Document, *, colour: bool = False) -> str:
+    """Return a comparison as text."""
+    safe: Document = throughout(comparison, terminal)
+    limiters, findings = safe["limiters"], safe["findings"]
+    counts = [
+        f"{len(findings['new'])} new",
+        f"{len(findings['risen'])} risen",
+        f"{len(findings['gone'])} gone",
+        f"{findings['unchanged']} unchanged",
+    ]
+    title = (
+        f"{safe['before']['file']} to {safe['after']['file']}: limiters {len(limiters['added'])} added, "
+        f"{len(limiters['removed'])} removed, {len(limiters['changed'])} changed, {limiters['unchanged']} unchanged; "
+        f"findings {', '.join(counts)}"
+    )
+    lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
+    for word in ("added", "removed"):
+        for limiter in limiters[word]:
+            lines += [
+                "",
+                *wrapped(f"{limiter['id']} {word}: {limiter['topology']}, {limiter['verdict']}", indent=2, first=""),
+            ]
+    for change in limiters["changed"]:
+        lines += ["", *_limiter(change, colour)]
+    for word in CHANGES:
+        lines += _findings(word, findings[word], colour)
+    lines += ["", *wrapped(safe["caution"])]
+    return "\n".join(lines) + "\n"
+
+
+def rendered_comparison_json(comparison: Document) -> str:
+    """Return a comparison as JSON text."""
+    return json_text(json.dumps(comparison, ensure_ascii=False, indent=2, allow_nan=False)) + "\n"
+
+
+def comparison_document(comparison: Document) -> Document:
+    """Return a comparison with what every face carries."""
+    return {**comparison, "caution": CAUTION}
+
+
+def held_back_by(comparison: Document, gate: str) -> list[str]:
+    """Return why a gate on new findings does not hold: ``new:error`` counts what is new as an error or has risen to one."""
+    if gate == "never":
+        return []
+    levels = [str(level) for level in LEVELS]
+    found = [*comparison["findings"]["new"], *comparison["findings"]["risen"]]
+    reasons = []
+    for level in levels[: levels.index(gate.removeprefix("new:")) + 1]:
+        count = sum(finding["level"] == level and finding["waived"] is None for finding in found)
+        reasons += [f"{counted(count, f'new {level}')}"] if count else []
+    return reasons
+
+
+def _limiter(change: Document, colour: bool) -> list[str]:
+    now = f" (now {change['after']})" if change["after"] != change["before"] else ""
+    lines = [painted(line, "heading", colour=colour) for line in wrapped(f"{change['before']}{now}", indent=2, first="")]
+    for key, pair in change["words"].items():
+        lines += wrapped(f"{key}: {pair['before']}, now {pair['after']}", indent=4, first="  ")
+    for name, pair in change["figures"].items():
+        lines += wrapped(f"{WORDS[name]}: {_shift(pair, UNITS[name])}", indent=4, first="  ")
+    for part in change["parts"]:
+        lines += wrapped(_part(part), indent=4, first="  - ")
+    if change["figures"] and not change["parts"]:
+        lines += wrapped("no part of it changed: supplies, drive, part data or limits did", indent=4, first="  - ")
+    for key, pair in change["needs"].items():
+        unit = UNIT_OF_NEED.get(key)
+        was, now = (figure(pair[side], unit) if unit else str(pair[side]) for side in ("before", "after"))
+        lines += wrapped(f"limits file: {key.rpartition('_')[0] or key} {was}, now {now}", indent=4, first="  - ")
+    return lines
+
+
+def _shift(pair: Document, unit: str) -> str:
+    was, now = pair["before"], pair["after"]
+    shift = f" ({'+' if now > was else ''}{percent(now / was - 1.0)})" if was and now is not None else ""
+    return f"{figure(was, unit)}, now {figure(now, unit)}{shift}"
+
+
+def _part(part: Document) -> str:
+    was, now = part["before"], part["after"]
+    role = ROLE_WORDS[part["role"]]
+    if was is None or now is None:
+        return f"{role} {_named(now or was)} {'added' if was is None else 'gone'}"
+    moved = part["moves_holds"]
+    effect = f"; by itself it moves holds by {'+' if moved > 0 else ''}{percent(moved)}" if moved is not None else ""
+    return f"{role} {_named(was)}, now {_named(now)}{effect}"
+
+
+def _named(part: Document) -> str:
+    value = figure(part["value"], part["unit"] or "") if part["value"] is not None else part["part_number"] or part["kind"]
+    return f"{part['id']} {value or UNKNOWN}"
+
+
+def _findings(word: str, findings: Sequence[Document], colour: bool) -> list[str]:
+    lines: list[str] = []
+    for finding in findings:
+        level = finding["level"] if finding["waived"] is None else "waived"
+        whom = f" {finding['limiter']}" if finding["limiter"] else ""
+        lead = f"  {word:<6} {level:<7} "
+        body = wrapped(f"{finding['check']}{whom}: {finding['message']}", indent=17, first=lead)
+        body[0] = body[0].replace(f" {level} ", f" {painted(level, level, colour=colour)} ", 1)
+        lines += body
+    return ["", *lines] if lines else []

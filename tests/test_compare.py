@@ -1,0 +1,125 @@
+"""Two reports compared: what is matched, what moved, which findings are new, and no noise from names."""
+
+from __future__ import annotations
+
+import copy
+import json
+from typing import Any
+
+import pytest
+
+from protlint.compare import compare
+from protlint.report.compare_text import comparison_document, held_back_by, rendered_comparison
+from protlint.report.document import document
+from protlint.report.layout import COLUMNS, width
+from protlint.report.shape import Document
+from tests.report.test_text import ACTING
+from tests.support.sample_review import HOSTILE, PLAIN, sample_review
+
+RENUMBERED = {**PLAIN, "pass": "Q77", "sense": "R70", "shunt": "Q78", "base_stop": "R71", "drive": "R72", "out": "NEW_OUT"}
+
+
+def report(names: dict[str, str] = PLAIN, notes: int = 0) -> Document:
+    return json.loads(json.dumps(document(sample_review(names, notes=notes))))  # type: ignore[no-any-return]
+
+
+def quiet(comparison: dict[str, Any]) -> bool:
+    limiters, findings = comparison["limiters"], comparison["findings"]
+    return not any(
+        (limiters["added"], limiters["removed"], limiters["changed"], *(findings[key] for key in ("new", "gone", "risen")))
+    )
+
+
+def test_the_same_board_shows_nothing() -> None:
+    comparison = compare(report(notes=3), report(notes=3))
+    assert quiet(comparison)
+    assert comparison["limiters"]["unchanged"] == 3
+    assert comparison["findings"]["unchanged"] == 6
+
+
+def test_renumbered_designators_and_renamed_nets_make_no_noise() -> None:
+    assert quiet(compare(report(), report(RENUMBERED)))
+
+
+def test_the_order_of_limiters_makes_no_noise() -> None:
+    after = report(RENUMBERED)
+    after["limiters"].reverse()
+    assert quiet(compare(report(), after))
+
+
+def test_a_changed_part_is_named_with_what_it_moves() -> None:
+    after = report(RENUMBERED)
+    limiter = next(one for one in after["limiters"] if one["id"] == "Q77")
+    next(part for part in limiter["parts"] if part["role"] == "sense")["value"] = 2.0
+    for row in limiter["currents"]:
+        row["holds_A"] /= 2.0
+    (change,) = compare(report(), after)["limiters"]["changed"]
+    assert (change["before"], change["after"]) == ("Q10", "Q77")
+    assert change["figures"]["holds_A"]["after"] == pytest.approx(0.367 / 2.0, rel=1e-5)
+    assert set(change["figures"]) == {"holds_A"}
+    (part,) = change["parts"]
+    assert (part["role"], part["before"]["id"], part["after"]["id"], part["after"]["value"]) == ("sense", "R11", "R70", 2.0)
+    assert part["moves_holds"] == pytest.approx(2.0**-0.9 - 1.0)
+
+
+def test_one_of_like_channels_changed_is_the_one_told() -> None:
+    before = report()
+    one = before["limiters"][0]
+    before["limiters"] = [{**copy.deepcopy(one), "id": f"Q{number}"} for number in range(10, 18)]
+    before["findings"] = []
+    after = copy.deepcopy(before)
+    after["limiters"][4]["parts"][1]["value"] = 0.5
+    after["limiters"].reverse()
+    changed = compare(before, after)["limiters"]["changed"]
+    assert [(change["before"], change["after"]) for change in changed] == [("Q14", "Q14")]
+
+
+def test_added_and_removed_limiters() -> None:
+    before, after = report(), report()
+    gone = after["limiters"].pop()
+    comparison = compare(before, after)
+    assert [one["id"] for one in comparison["limiters"]["removed"]] == [gone["id"]]
+    assert [one["id"] for one in compare(after, before)["limiters"]["added"]] == [gone["id"]]
+
+
+def test_findings_new_gone_and_risen_and_the_gate_on_them() -> None:
+    before, after = report(), report(RENUMBERED)
+    new = {**copy.deepcopy(after["findings"][0]), "check": "cap-exceeded", "fingerprint": "cap-exceeded-1"}
+    after["findings"].append(new)
+    comparison = comparison_document(compare(before, after))
+    assert [one["check"] for one in comparison["findings"]["new"]] == ["cap-exceeded"]
+    assert held_back_by(comparison, "new:error") == ["1 new error"]
+    assert held_back_by(comparison, "never") == []
+    new["waived"] = "seen"
+    assert held_back_by(comparison_document(compare(before, after)), "new:note") == []
+    back = comparison_document(compare(after, before))
+    assert [one["check"] for one in back["findings"]["gone"]] == ["cap-exceeded"]
+    assert held_back_by(back, "new:note") == []
+    lower = copy.deepcopy(before)
+    lower["findings"][0]["level"] = "warning"
+    risen = comparison_document(compare(lower, before))
+    assert [one["check"] for one in risen["findings"]["risen"]] == ["carry-not-met"]
+    assert held_back_by(risen, "new:error") == ["1 new error"]
+
+
+def test_a_fault_moved_to_another_part_is_new_where_nothing_was_renumbered() -> None:
+    before, after = report(), report()
+    fault = next(one for one in after["findings"] if one["limiter"] is None)
+    fault.update(parts=["Q41"], fingerprint="collector-emitter-swapped-other")
+    comparison = compare(before, after)
+    assert len(comparison["findings"]["new"]) == len(comparison["findings"]["gone"]) == 1
+
+
+@pytest.mark.parametrize("name", HOSTILE)
+def test_hostile_names(name: str) -> None:
+    before, after = report(), report({**PLAIN, **dict.fromkeys(("pass", "sense", "out", "name"), name)})
+    after["limiters"][0]["parts"][1]["value"] = 2.0
+    after["findings"].append({**after["findings"][0], "check": "cap-exceeded"})
+    text = rendered_comparison(comparison_document(compare(before, after)))
+    assert max(width(line) for line in text.split("\n")) <= COLUMNS
+    assert not ACTING.search(text)
+
+
+def test_what_is_no_report_is_refused_by_an_error_callers_expect() -> None:
+    with pytest.raises((KeyError, TypeError, IndexError)):
+        compare({"report": 1}, report())
