@@ -30,8 +30,8 @@ CLOSE_V = 2e-6
 ITERATIONS = 60
 NODE_LEAK_S = 1e-13
 """From every unknown node to 0 V, so that what hangs on nothing but a capacitor has a voltage."""
-DAMP_AFTER = 25
-"""Lanes that swing to and fro take half steps from here on."""
+DAMP_AFTER = 20
+"""Lanes that swing to and fro are damped from here on."""
 
 GMIN_STEPS_S = (1e-2, 1e-3, 1e-4, 1e-5, 1e-6, 1e-7, 1e-8, 1e-9, 1e-10, 1e-11, 1e-12)
 LONGEST_GATE_STEP_V = 2.0
@@ -54,6 +54,15 @@ class Operating:
     def output_A(self) -> Array:
         """Current into the circuit at the output node (lanes,); NaN where not converged."""
         return np.where(self.converged, self.known_A[-2], np.nan)
+
+
+@dataclass(frozen=True, slots=True)
+class _Folded:
+    """A group from outside: its evaluation, the inverse of the voltage slopes, the conductances at its ports."""
+
+    evaluation: Evaluation
+    inverse: Array
+    conductance: Array
 
 
 def solve_lanes(network: Network, lanes: Lanes, start: Array | None = None) -> Operating:
@@ -79,7 +88,7 @@ def cold_start(network: Network, p: Parameters, count: int) -> Array:
     for group, record in zip(network.groups, p.records, strict=True):
         rows = inner[group.rows].reshape(group.ports, -1, count)
         if isinstance(record, devices.Bipolars):
-            rows[0] = record.V_F * np.log(record.V_F / (np.sqrt(2.0) * record.I_S))
+            rows[0] = record.V_crit[0]
         elif isinstance(record, devices.Mosfets):
             rows[0] = record.V_TO + 0.5
             rows[1] = record.V_TO - 0.5
@@ -100,41 +109,56 @@ def newton(
 
     ``bridge_S`` lies across every port (gmin stepping); ``charges`` adds charge currents to the devices; ``injected_A``
     (unknown nodes, lanes) flows into the nodes.
+
+    Lanes that take long are damped as if every node had a capacitor: the share of the matrix's diagonal that holds a node at
+    its last voltage grows while steps grow and shrinks while they shrink (pseudo-transient continuation, C. T. Kelley and
+    D. E. Keyes, SIAM Journal on Numerical Analysis 35, 1998).
     """
     count, unknown = known_V.shape[1], network.unknown
-    inner = np.array(start, dtype=np.float64)
+    inner = np.empty((network.ports, count))
     voltages = np.zeros((unknown, count))
     converged = np.zeros(count, dtype=bool)
     active = np.arange(count)
     matrix, right, outer_V = _linear_part(network, p, known_V, bridge_S)
     if injected_A is not None:
         right = right + injected_A
-    work = inner
-    to_unknown = np.ascontiguousarray(network.incidence[:, :unknown].T)
+    work = np.array(start, dtype=np.float64)
+    to_ports = np.ascontiguousarray(network.incidence[:, :unknown])
+    hold, solved, moved = None, np.zeros((unknown, count)), np.full(count, np.inf)
     for iteration in range(ITERATIONS):
-        evaluations = evaluate(network, p, work, charges)
-        conductance, port_V, port_A = _gather(network, evaluations, work.shape)
-        companion = port_A - _through(network, conductance, port_V - outer_V, work.shape)
-        system = matrix + (network.scatter @ conductance).reshape(unknown, unknown, -1)
-        solved = eliminate(system, right - to_unknown @ companion)
-        step = _inner_step(network, evaluations, to_unknown.T @ solved + outer_V - port_V)
+        folded = [_fold(one) for one in evaluate(network, p, work, charges)]
+        port_V, companion, conductance = _companions(network, folded, outer_V)
+        system = matrix + (network.scatter @ conductance).reshape(matrix.shape)
+        pull = right - to_ports.T @ companion
         if iteration >= DAMP_AFTER:
-            step *= 0.5
-        new = _limited(network, p, work, work + step)
-        moved = np.abs(new - work).max(axis=0) if len(new) else np.zeros(work.shape[1])
-        finite = np.isfinite(moved) & np.isfinite(solved).all(axis=0)
-        new = np.where(finite, new, 0.0)
-        done = finite & (moved < CLOSE_V)
-        inner[:, active] = new
-        voltages[:, active] = np.where(finite, solved, 0.0)
-        converged[active] = done
-        left = np.flatnonzero(~done)
-        if not len(left):
-            break
+            hold = np.full(len(active), 1.0) if hold is None else hold
+            weight = hold * np.abs(system[np.arange(unknown), np.arange(unknown)])
+            system[np.arange(unknown), np.arange(unknown)] += weight
+            pull += weight * solved
+        solved = eliminate(system, pull)
+        new = _limited(network, p, work, work + _inner_step(network, folded, to_ports @ solved + outer_V - port_V))
+        before, moved = moved, np.abs(new - work).max(axis=0, initial=0.0)
+        done = moved < CLOSE_V
+        if hold is not None:
+            done &= hold == 0.0
+            hold = np.where(moved < before, np.where(hold > 1e-4, 0.25 * hold, 0.0), np.minimum(4.0 * hold + 1e-4, 1e3))
+        lost = np.isnan(moved)
+        if lost.any():
+            new[:, lost] = 0.0
+            solved[:, lost] = 0.0
         work = new
-        if len(left) < 0.7 * len(active):
-            active, work, p = active[left], new[:, left], take(p, left)
+        finished = int(done.sum())
+        if finished == len(active):
+            break
+        if finished > 0.3 * len(active):
+            inner[:, active[done]], voltages[:, active[done]] = new[:, done], solved[:, done]
+            converged[active[done]] = True
+            left = np.flatnonzero(~done)
+            active, work, p, solved, moved = active[left], new[:, left], take(p, left), solved[:, left], moved[left]
             matrix, right, outer_V = matrix[:, :, left], right[:, left], outer_V[:, left]
+            hold = None if hold is None else hold[left]
+            done = np.zeros(len(left), dtype=bool)
+    inner[:, active], voltages[:, active], converged[active] = work, solved, done
     return inner, voltages, converged
 
 
@@ -157,14 +181,7 @@ def evaluate(network: Network, p: Parameters, inner: Array, charges: Charges | N
 
 def outside(evaluation: Evaluation) -> Array:
     """Return the conductances seen at the ports, outside the series resistances: current_slope inverse(voltage_slope)."""
-    m, g = evaluation.voltage_slope, evaluation.current_slope
-    if len(m) == 1:
-        return g / m
-    inverse = _inverse(m)
-    result = np.empty_like(g)
-    result[:, 0] = g[:, 0] * inverse[0, 0] + g[:, 1] * inverse[1, 0]
-    result[:, 1] = g[:, 0] * inverse[0, 1] + g[:, 1] * inverse[1, 1]
-    return result
+    return _fold(evaluation).conductance
 
 
 def eliminate(matrix: Array, right: Array) -> Array:
@@ -179,9 +196,8 @@ def eliminate(matrix: Array, right: Array) -> Array:
         matrix[k + 1 :, k + 1 :] -= factor[:, None] * matrix[k, k + 1 :]
         right[k + 1 :] -= factor * right[k]
     for k in range(size - 1, -1, -1):
-        if k + 1 < size:
-            right[k] -= (matrix[k, k + 1 :] * right[k + 1 :]).sum(axis=0)
         right[k] /= matrix[k, k]
+        right[:k] -= matrix[:k, k] * right[k]
     return right
 
 
@@ -203,51 +219,53 @@ def _linear_part(network: Network, p: Parameters, known_V: Array, bridge_S: floa
     return matrix, right, outer_V
 
 
-def _gather(network: Network, evaluations: list[Evaluation], shape: tuple[int, ...]) -> tuple[Array, Array, Array]:
-    """Stack the groups' outside conductances, port voltages and port currents, with their mirror signs."""
-    count = shape[1]
-    conductances, port_V, port_A = [], np.empty(shape), np.empty(shape)
-    for group, evaluation in zip(network.groups, evaluations, strict=True):
-        conductances.append(outside(evaluation).reshape(-1, count))
-        port_V[group.rows] = (evaluation.port_V * group.sign).reshape(-1, count)
-        port_A[group.rows] = (evaluation.port_A * group.sign).reshape(-1, count)
-    return (np.concatenate(conductances) if conductances else np.zeros((0, count))), port_V, port_A
+def _fold(evaluation: Evaluation) -> _Folded:
+    """Work out what a group looks like from outside its series resistances."""
+    m, g = evaluation.voltage_slope, evaluation.current_slope
+    if len(m) == 1:
+        inverse = 1.0 / m
+        return _Folded(evaluation, inverse, g * inverse)
+    inverse = np.empty_like(m)
+    inverse[0, 0] = m[1, 1]
+    inverse[1, 1] = m[0, 0]
+    np.negative(m[0, 1], out=inverse[0, 1])
+    np.negative(m[1, 0], out=inverse[1, 0])
+    inverse /= m[0, 0] * m[1, 1] - m[0, 1] * m[1, 0]
+    return _Folded(evaluation, inverse, g[:, 0, None] * inverse[0] + g[:, 1, None] * inverse[1])
 
 
-def _through(network: Network, conductance: Array, port_V: Array, shape: tuple[int, ...]) -> Array:
-    """Return conductances times port voltages, group by group."""
-    result = np.empty(shape)
-    place = 0
-    for group in network.groups:
-        ports, rows = group.ports, group.rows
-        members = (rows.stop - rows.start) // ports
-        block = conductance[place : place + ports * ports * members].reshape(ports, ports, members, -1)
-        place += ports * ports * members
-        across = port_V[rows].reshape(ports, members, -1)
-        result[rows] = (block * across).sum(axis=1).reshape(ports * members, -1)
-    return result
+def _companions(network: Network, folded: list[_Folded], outer_V: Array) -> tuple[Array, Array, Array]:
+    """Stack the groups' port voltages, what their currents would be at no port voltage, and their conductances."""
+    lanes = outer_V.shape[1]
+    port_V, companion, conductance = [], [], []
+    for group, one in zip(network.groups, folded, strict=True):
+        voltage = one.evaluation.port_V
+        across = voltage - outer_V[group.rows].reshape(voltage.shape)
+        through = one.conductance[:, 0] * across[0]
+        if group.ports == 2:
+            through += one.conductance[:, 1] * across[1]
+        port_V.append(voltage.reshape(-1, lanes))
+        companion.append((one.evaluation.port_A - through).reshape(-1, lanes))
+        conductance.append(one.conductance.reshape(-1, lanes))
+    return _stack(port_V, lanes), _stack(companion, lanes), _stack(conductance, lanes)
 
 
-def _inner_step(network: Network, evaluations: list[Evaluation], miss: Array) -> Array:
+def _inner_step(network: Network, folded: list[_Folded], miss: Array) -> Array:
     """Return Newton's step of the inner voltages that takes up the port voltages' miss."""
-    step = np.empty_like(miss)
-    for group, evaluation in zip(network.groups, evaluations, strict=True):
-        across = miss[group.rows].reshape(group.ports, -1, miss.shape[1]) * group.sign
-        m = evaluation.voltage_slope
-        change = across / m[0] if group.ports == 1 else (_inverse(m) * across).sum(axis=1)
-        step[group.rows] = change.reshape(-1, miss.shape[1])
-    return step
+    steps = []
+    for group, one in zip(network.groups, folded, strict=True):
+        across = miss[group.rows].reshape(one.evaluation.port_V.shape)
+        step = one.inverse[:, 0] * across[0]
+        if group.ports == 2:
+            step += one.inverse[:, 1] * across[1]
+        steps.append(step.reshape(-1, miss.shape[1]))
+    return _stack(steps, miss.shape[1])
 
 
-def _inverse(m: Array) -> Array:
-    result = np.empty_like(m)
-    determinant = m[0, 0] * m[1, 1] - m[0, 1] * m[1, 0]
-    result[0, 0] = m[1, 1]
-    result[1, 1] = m[0, 0]
-    result[0, 1] = -m[0, 1]
-    result[1, 0] = -m[1, 0]
-    result /= determinant
-    return result
+def _stack(parts: list[Array], lanes: int) -> Array:
+    if len(parts) == 1:
+        return parts[0]
+    return np.concatenate(parts) if parts else np.zeros((0, lanes))
 
 
 def _limited(network: Network, p: Parameters, old: Array, new: Array) -> Array:
@@ -256,19 +274,16 @@ def _limited(network: Network, p: Parameters, old: Array, new: Array) -> Array:
         was = old[group.rows].reshape(group.ports, -1, old.shape[1])
         now = new[group.rows].reshape(group.ports, -1, old.shape[1])
         if isinstance(record, devices.Bipolars):
-            now[0] = devices.junction_step(was[0], now[0], record.V_F, record.I_S)
-            now[1] = devices.junction_step(was[1], now[1], record.V_R, record.I_S)
+            now[...] = devices.junction_step(was, now, record.per_V[:2], record.V_crit)
         elif isinstance(record, devices.Mosfets):
             now[0] = was[0] + np.clip(now[0] - was[0], -LONGEST_GATE_STEP_V, LONGEST_GATE_STEP_V)
-            body = devices.junction_step(was[1] - was[0], now[1] - now[0], record.V_T, record.I_S)
-            now[1] = now[0] + body
+            now[1] = now[0] + devices.junction_step(was[1] - was[0], now[1] - now[0], 1.0 / record.V_T, record.V_crit)
         elif isinstance(record, devices.Diodes):
-            now[0] = devices.junction_step(was[0], now[0], record.V_N, record.I_S)
+            now[...] = devices.junction_step(was, now, 1.0 / record.V_N, record.V_crit)
             if record.B_V is not None:
-                broken = (
-                    -devices.junction_step(-was[0] - record.B_V, -now[0] - record.B_V, record.V_B, record.I_BV) - record.B_V
-                )
-                now[0] = np.where(np.isfinite(broken), np.maximum(now[0], broken), now[0])
+                was_over, now_over = -was - record.B_V, -now - record.B_V
+                over = devices.junction_step(was_over, now_over, 1.0 / record.V_B, record.V_B_crit)
+                now[...] = np.where(np.isfinite(record.B_V), np.maximum(now, -over - record.B_V), now)
         if not isinstance(present, float):
             now *= present > 0.0
     return new
@@ -276,7 +291,7 @@ def _limited(network: Network, p: Parameters, old: Array, new: Array) -> Array:
 
 def _known_currents(network: Network, p: Parameters, inner: Array, node_V: Array) -> Array:
     """Return the current that each known node's holder feeds into the circuit (known nodes, lanes)."""
-    _, _, port_A = _gather(network, evaluate(network, p, inner), inner.shape)
+    port_A = _stack([one.port_A.reshape(-1, inner.shape[1]) for one in evaluate(network, p, inner)], inner.shape[1])
     through = p.conductance * (network.resistor_incidence @ node_V)
     known = slice(network.unknown, None)
     return network.incidence[:, known].T @ port_A + network.resistor_incidence[:, known].T @ through

@@ -39,6 +39,9 @@ Array = NDArray[np.float64]
 IntArray = NDArray[np.intp]
 
 GMIN_S = 1e-13
+_JUNCTIONS = np.array([0, 1, 0])
+"""Base-emitter, base-collector, and base-emitter again for its leakage."""
+
 GREATEST_EXPONENT = 150.0
 """Keeps a wild step of an unfinished iteration finite: e^150 squared still fits a double."""
 
@@ -55,49 +58,77 @@ class Evaluation:
 
 @dataclass(frozen=True, slots=True)
 class Bipolars:
-    """Parameters of bipolar transistors at their own temperatures, each (devices, lanes).
+    """Parameters of bipolar transistors at their own temperatures.
 
-    ``V_F V_R V_E V_C`` are NF, NR, NE and NC times V_T; ``inverse_VAF`` and its like are 1/VAF 1/VAR 1/IKF 1/IKR in 1/V and
-    1/A. ``R_BM`` None means a constant base resistance.
+    ``I`` (3, devices, lanes) are the saturation currents I_S, I_S and I_SE of the base-emitter, base-collector and
+    base-emitter leakage junctions, ``per_V`` (3, ...) one over N V_T of each. By junction (2, devices, lanes or 1):
+    ``V_crit`` the voltage of greatest curvature, ``per_B`` 1/B_F and 1/B_R, ``early`` 1/VAR and 1/VAF (1/V), ``knee`` 1/IKF
+    and 1/IKR (1/A), ``R_side`` R_E and R_C. ``I_SC`` with ``per_V_C`` 1/(N_C V_T) is None where no collector junction leaks;
+    ``R_BM`` None means a constant base resistance R_B.
     """
 
-    I_S: Array
-    B_F: Array
-    B_R: Array
-    I_SE: Array
-    I_SC: Array | None
-    V_F: Array
-    V_R: Array
-    V_E: Array
-    V_C: Array
-    inverse_VAF: Array
-    inverse_VAR: Array
-    inverse_IKF: Array
-    inverse_IKR: Array
+    I: Array  # noqa: E741
+    per_V: Array
+    V_crit: Array
+    per_B: Array
+    early: Array
+    knee: Array
+    R_side: Array
     R_B: Array
-    R_E: Array
-    R_C: Array
+    I_SC: Array | None
+    per_V_C: Array | None
     R_BM: Array | None
     I_RB: Array | None
 
 
 @dataclass(frozen=True, slots=True)
 class Transport:
-    """Forward and reverse currents of bipolar transistors, their conductances, and the base charge with its slopes by the
-    base-emitter and base-collector voltage; each (devices, lanes). The base charge is relative, without dimension."""
+    """What crosses the base of bipolar transistors.
 
-    i_F: Array
-    i_R: Array
-    g_F: Array
-    g_R: Array
+    Junction currents and conductances (3, devices, lanes) in the order of ``Bipolars.I``, the relative base charge (devices,
+    lanes) and its slopes by both junction voltages (2, devices, lanes).
+    """
+
+    i: Array
+    g: Array
     q_B: Array
-    q_B_by_BE: Array
-    q_B_by_BC: Array
+    q_B_slope: Array
+
+    @property
+    def i_F(self) -> Array:
+        """Forward current of the ideal base-emitter junction."""
+        return _row(self.i, 0)
+
+    @property
+    def i_R(self) -> Array:
+        """Reverse current of the ideal base-collector junction."""
+        return _row(self.i, 1)
+
+    @property
+    def g_F(self) -> Array:
+        """Slope of ``i_F`` by the base-emitter voltage."""
+        return _row(self.g, 0)
+
+    @property
+    def g_R(self) -> Array:
+        """Slope of ``i_R`` by the base-collector voltage."""
+        return _row(self.g, 1)
+
+    @property
+    def q_B_by_BE(self) -> Array:
+        """Slope of the base charge by the base-emitter voltage."""
+        return _row(self.q_B_slope, 0)
+
+    @property
+    def q_B_by_BC(self) -> Array:
+        """Slope of the base charge by the base-collector voltage."""
+        return _row(self.q_B_slope, 1)
 
 
 @dataclass(frozen=True, slots=True)
 class Mosfets:
-    """Parameters of MOSFETs at their own temperatures, each (devices, lanes); ``I_S`` and ``V_T`` are the body diode's."""
+    """Parameters of MOSFETs at their own temperatures, each (devices, lanes); ``I_S``, ``V_T`` and ``V_crit`` are the body
+    diode's."""
 
     V_TO: Array
     K_P: Array
@@ -108,6 +139,7 @@ class Mosfets:
     R_D: Array
     I_S: Array
     V_T: Array
+    V_crit: Array
 
 
 @dataclass(frozen=True, slots=True)
@@ -116,10 +148,12 @@ class Diodes:
 
     I_S: Array
     V_N: Array
+    V_crit: Array
     R_S: Array
     B_V: Array | None
     I_BV: Array
     V_B: Array
+    V_B_crit: Array
 
 
 @dataclass(frozen=True, slots=True)
@@ -128,6 +162,11 @@ class Source:
 
     resistance_ohm: Array
     limit_A: Array
+
+
+def _row(values: Array, index: int) -> Array:
+    row: Array = values[index]
+    return row
 
 
 def thermal_voltage(temperature_K: Array) -> Array:
@@ -163,48 +202,50 @@ def bipolar(inner: Array, p: Bipolars, present: Array | float = 1.0) -> Evaluati
     with the leakages i_LE = I_SE (exp(v_BE / NE V_T) - 1), i_LC = I_SC (exp(v_BC / NC V_T) - 1). The base resistance is
     RB, or RBM + (RB - RBM)/q_B, or Hauser's form of it where IRB is given. ``present`` 0 takes a device out.
     """
-    v_be, v_bc = inner
     t = transport(inner, p)
-    i_f, i_r, g_f, g_r, q_b = t.i_F, t.i_R, t.g_F, t.g_R, t.q_B
-    e_l = np.exp(np.minimum(v_be / p.V_E, GREATEST_EXPONENT)) * p.I_SE
-    base_r = i_r / p.B_R
-    g_base_r = g_r / p.B_R
-    if p.I_SC is not None:
-        e_c = np.exp(np.minimum(v_bc / p.V_C, GREATEST_EXPONENT)) * p.I_SC
-        base_r = base_r + e_c - p.I_SC
-        g_base_r = g_base_r + e_c / p.V_C
-    i_t = (i_f - i_r) / q_b
-    i_c = i_t - base_r
-    i_b = i_f / p.B_F + e_l - p.I_SE + base_r
-
-    slope = np.empty((2, 2, *v_be.shape))
-    slope[1, 0] = (i_t * t.q_B_by_BE - g_f) / q_b
-    slope[1, 1] = (g_r + i_t * t.q_B_by_BC) / q_b + g_base_r
-    slope[0, 0] = g_f / p.B_F + e_l / p.V_E - slope[1, 0]
-    slope[0, 1] = g_base_r - slope[1, 1]
-    current = np.stack((i_b + i_c, -i_c))
+    i_t = (t.i[0] - t.i[1]) / t.q_B
+    transfer = t.q_B_slope * i_t
+    np.negative(transfer[0], out=transfer[0])
+    transfer += t.g[:2]
+    transfer /= t.q_B
+    i_base, g_base = t.i[:2] * p.per_B, t.g[:2] * p.per_B
+    i_base[0] += t.i[2]
+    g_base[0] += t.g[2]
+    if p.I_SC is not None and p.per_V_C is not None:
+        leak = np.exp(np.minimum(inner[1] * p.per_V_C, GREATEST_EXPONENT)) * p.I_SC
+        i_base[1] += leak - p.I_SC
+        g_base[1] += leak * p.per_V_C
+    slope = np.empty((2, 2, *i_t.shape))
+    slope[0, 0] = g_base[0] + transfer[0]
+    slope[0, 1] = -transfer[1]
+    slope[1, 0] = -transfer[0]
+    slope[1, 1] = g_base[1] + transfer[1]
+    current = i_base.copy()
+    current[0] += i_t
+    current[1] -= i_t
     if not isinstance(present, float):
         slope *= present
         current *= present
-    r_b = p.R_B if p.R_BM is None else base_resistance(p, q_b, i_b)
-    return _with_series(inner, current, slope, p.R_E, r_b, p.R_C)
+    r_b = p.R_B if p.R_BM is None else base_resistance(p, t.q_B, i_base[0] + i_base[1])
+    return _with_series(inner, current, slope, p.R_side, r_b)
 
 
 def transport(inner: Array, p: Bipolars) -> Transport:
-    """Return i_F, i_R and q_B of :func:`bipolar` with their slopes, at inner voltages (2, devices, lanes)."""
-    v_be, v_bc = inner
-    e_f = np.exp(np.minimum(v_be / p.V_F, GREATEST_EXPONENT)) * p.I_S
-    e_r = np.exp(np.minimum(v_bc / p.V_R, GREATEST_EXPONENT)) * p.I_S
-    i_f = e_f - p.I_S + GMIN_S * v_be
-    i_r = e_r - p.I_S + GMIN_S * v_bc
-    g_f = e_f / p.V_F + GMIN_S
-    g_r = e_r / p.V_R + GMIN_S
-    q_1 = 1.0 / np.maximum(1.0 - v_bc * p.inverse_VAF - v_be * p.inverse_VAR, 0.02)
-    root = np.sqrt(np.maximum(1.0 + 4.0 * (i_f * p.inverse_IKF + i_r * p.inverse_IKR), 1e-12))
+    """Return junction currents and base charge of :func:`bipolar`, with slopes, at inner voltages (2, devices, lanes)."""
+    i = inner[_JUNCTIONS] * p.per_V
+    np.minimum(i, GREATEST_EXPONENT, out=i)
+    np.exp(i, out=i)
+    i *= p.I
+    g = i * p.per_V
+    i -= p.I
+    i[:2] += GMIN_S * inner
+    g[:2] += GMIN_S
+    narrowing = inner * p.early
+    q_1 = 1.0 / np.maximum(1.0 - narrowing[0] - narrowing[1], 0.02)
+    injection = i[:2] * p.knee
+    root = np.sqrt(np.maximum(1.0 + 4.0 * (injection[0] + injection[1]), 1e-12))
     q_b = 0.5 * q_1 * (1.0 + root)
-    q_be = q_1 * (q_b * p.inverse_VAR + g_f * p.inverse_IKF / root)
-    q_bc = q_1 * (q_b * p.inverse_VAF + g_r * p.inverse_IKR / root)
-    return Transport(i_f, i_r, g_f, g_r, q_b, q_be, q_bc)
+    return Transport(i, g, q_b, (p.early * q_b + g[:2] * (p.knee / root)) * q_1)
 
 
 def mosfet(inner: Array, p: Mosfets, present: Array | float = 1.0) -> Evaluation:
@@ -290,28 +331,30 @@ def limited_source(inner: Array, p: Source) -> Evaluation:
     return Evaluation(inner, current[None], np.ones((1, 1, *v.shape)), slope[None, None])
 
 
-def junction_step(old: Array, new: Array, V_T: Array, I_S: Array) -> Array:
+def critical_voltage(V_N: Array, I_S: Array) -> Array:
+    """Return the voltage at which a junction's characteristic bends most: V_N ln(V_N / (sqrt(2) I_S)), V_N = N V_T."""
+    return V_N * np.log(V_N / (np.sqrt(2.0) * I_S))
+
+
+def junction_step(old: Array, new: Array, per_V: Array, V_crit: Array) -> Array:
     """Shorten a step of a junction voltage to where its exponential can still be trusted.
 
-    A step of more than 2 V_T that ends beyond the voltage of greatest curvature, V_crit = V_T ln(V_T / (sqrt(2) I_S)),
-    counts by its logarithm only, from the old voltage or from 0 V (Nagel 1975, section on junction limiting).
+    A step of more than 2 N V_T that ends beyond the critical voltage counts by its logarithm only, from the old voltage or
+    from 0 V (Nagel 1975, section on junction limiting). ``per_V`` is 1/(N V_T).
     """
     start = np.maximum(old, 0.0)
-    rise = new - start
-    far = (new > V_T * np.log(V_T / (np.sqrt(2.0) * I_S))) & (rise > 2.0 * V_T)
-    shortened: Array = np.where(far, start + V_T * np.log1p(np.maximum(rise, 0.0) / V_T), new)
+    rise = (new - start) * per_V
+    far = (new > V_crit) & (rise > 2.0)
+    shortened: Array = np.where(far, start + np.log1p(np.maximum(rise, 0.0)) / per_V, new)
     return shortened
 
 
-def _with_series(inner: Array, current: Array, slope: Array, r_1: Array, r_0: Array, r_2: Array) -> Evaluation:
-    """Put r_1 at the common, r_0 at the control and r_2 at the other terminal outside the junctions."""
-    j_1, j_2 = current
-    control_V = r_0 * (j_1 + j_2)
-    port = np.stack((inner[0] + control_V + r_1 * j_1, inner[1] + control_V + r_2 * j_2))
-    control_slope = r_0 * (slope[0] + slope[1])
-    voltage_slope = np.empty_like(slope)
-    voltage_slope[0] = control_slope + r_1 * slope[0]
-    voltage_slope[1] = control_slope + r_2 * slope[1]
+def _with_series(inner: Array, current: Array, slope: Array, side: Array, control: Array) -> Evaluation:
+    """Put resistances outside the junctions: ``side`` (2, ...) at the common and the other terminal, and ``control``."""
+    port = inner + control * (current[0] + current[1])
+    port += side * current
+    voltage_slope = side[:, None] * slope
+    voltage_slope += control * (slope[0] + slope[1])
     voltage_slope[0, 0] += 1.0
     voltage_slope[1, 1] += 1.0
     return Evaluation(port, current, voltage_slope, slope)

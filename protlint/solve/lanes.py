@@ -107,7 +107,7 @@ def take(p: Parameters, lanes: NDArray[np.intp]) -> Parameters:
 
 
 def _pick(values: Array, lanes: NDArray[np.intp]) -> Array:
-    return values if values.shape[1] == 1 else values[:, lanes]
+    return values if values.shape[-1] == 1 else values[..., lanes]
 
 
 def _bipolars(group: Group, temperature_K: Array, shift_V: Array | None, bf: Array | None) -> devices.Bipolars:
@@ -122,26 +122,22 @@ def _bipolars(group: Group, temperature_K: Array, shift_V: Array | None, bf: Arr
     if shift_V is not None:
         I_S = I_S * np.exp(-shift_V / (p["NF"] * V_T))
     varies = bool((p["RBM"] != p["RB"]).any())
-    spread = np.ones_like(V_T)
+    leaks = bool(p["ISC"].any())
+    N_V = np.stack((p["NF"] * V_T, p["NR"] * V_T, p["NE"] * V_T))
+    current = np.stack((I_S, I_S, p["ISE"] * np.exp(growth / p["NE"]) / beta))
     return devices.Bipolars(
-        I_S=I_S,
-        B_F=B_F,
-        B_R=p["BR"] * beta,
-        I_SE=p["ISE"] * np.exp(growth / p["NE"]) / beta,
-        I_SC=p["ISC"] * np.exp(growth / p["NC"]) / beta if p["ISC"].any() else None,
-        V_F=p["NF"] * V_T,
-        V_R=p["NR"] * V_T,
-        V_E=p["NE"] * V_T,
-        V_C=p["NC"] * V_T,
-        inverse_VAF=spread / p["VAF"],
-        inverse_VAR=spread / p["VAR"],
-        inverse_IKF=spread / p["IKF"],
-        inverse_IKR=spread / p["IKR"],
-        R_B=spread * p["RB"],
-        R_E=spread * p["RE"],
-        R_C=spread * p["RC"],
-        R_BM=spread * p["RBM"] if varies else None,
-        I_RB=spread * p["IRB"] if varies and np.isfinite(p["IRB"]).any() else None,
+        I=current,
+        per_V=1.0 / N_V,
+        V_crit=devices.critical_voltage(N_V[:2], current[:2]),
+        per_B=np.stack((1.0 / B_F, 1.0 / (p["BR"] * beta))),
+        early=np.stack((1.0 / p["VAR"], 1.0 / p["VAF"])),
+        knee=np.stack((1.0 / p["IKF"], 1.0 / p["IKR"])),
+        R_side=np.stack((p["RE"], p["RC"])),
+        R_B=p["RB"],
+        I_SC=p["ISC"] * np.exp(growth / p["NC"]) / beta if leaks else None,
+        per_V_C=1.0 / (p["NC"] * V_T) if leaks else None,
+        R_BM=p["RBM"] if varies else None,
+        I_RB=p["IRB"] if varies and np.isfinite(p["IRB"]).any() else None,
     )
 
 
@@ -157,17 +153,18 @@ def _mosfets(group: Group, temperature_K: Array, shift_V: Array | None) -> devic
     built_in = n_VTO - p["GAMMA"] * np.sqrt(p["PHI"]) + 0.5 * group.sign * (gap_0 - gap) + 0.5 * (phi - p["PHI"])
     phi = np.maximum(phi, 0.05)
     V_TO = built_in + p["GAMMA"] * np.sqrt(phi)
-    spread = np.ones_like(V_T)
+    I_S = p["IS"] * np.exp(gap_0 / V_T0 - gap / V_T)
     return devices.Mosfets(
         V_TO=V_TO if shift_V is None else V_TO + shift_V,
         K_P=p["KP"] * ratio**-1.5,
-        LAMBDA=spread * p["LAMBDA"],
-        GAMMA=spread * p["GAMMA"] if p["GAMMA"].any() else None,
+        LAMBDA=p["LAMBDA"],
+        GAMMA=p["GAMMA"] if p["GAMMA"].any() else None,
         PHI=phi,
-        R_S=spread * p["RS"],
-        R_D=spread * p["RD"],
-        I_S=p["IS"] * np.exp(gap_0 / V_T0 - gap / V_T),
+        R_S=p["RS"],
+        R_D=p["RD"],
+        I_S=I_S,
         V_T=V_T,
+        V_crit=devices.critical_voltage(V_T, I_S),
     )
 
 
@@ -177,14 +174,16 @@ def _diodes(group: Group, temperature_K: Array, shift_V: Array | None) -> device
     I_S = p["IS"] * np.exp(devices.junction_growth(temperature_K, p["EG"], p["XTI"]) / p["N"])
     if shift_V is not None:
         I_S = I_S * np.exp(-shift_V / (p["N"] * V_T))
-    spread = np.ones_like(V_T)
+    V_N, V_B = p["N"] * V_T, p["NBV"] * V_T
     return devices.Diodes(
         I_S=I_S,
-        V_N=p["N"] * V_T,
-        R_S=spread * p["RS"],
-        B_V=spread * p["BV"] if np.isfinite(p["BV"]).any() else None,
-        I_BV=spread * p["IBV"],
-        V_B=p["NBV"] * V_T,
+        V_N=V_N,
+        V_crit=devices.critical_voltage(V_N, I_S),
+        R_S=p["RS"],
+        B_V=p["BV"] if np.isfinite(p["BV"]).any() else None,
+        I_BV=p["IBV"],
+        V_B=V_B,
+        V_B_crit=devices.critical_voltage(V_B, p["IBV"]),
     )
 
 

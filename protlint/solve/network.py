@@ -53,7 +53,8 @@ class Group:
 class Network:
     """A compiled circuit; see the module's description for the order of nodes and ports.
 
-    ``incidence`` is (ports, nodes) with +1 at the control or positive end; ``resistor_incidence`` (resistors, nodes).
+    ``incidence`` is (ports, nodes) with +1 at the control or positive end, -1 for the mirror types, so that every port sees
+    an NPN or N-channel device; ``resistor_incidence`` (resistors, nodes).
     ``scatter`` (unknown^2, conductances) adds the groups' port conductances into the nodal matrix, ``resistor_scatter``
     the resistors'.
     """
@@ -143,6 +144,8 @@ def compile_network(circuit: Circuit) -> Network:
         for name in ("R", "TC1", "TC2")
     } | {"rise_K": _column(device.rise_K for device in resistors)}
     incidence = _incidence(port_ends, len(place))
+    for group in groups:
+        incidence[group.rows] *= np.tile(group.sign, (group.ports, 1))
     resistor_incidence = _incidence([(place[a], place[b]) for a, b in (device.nodes for device in resistors)], len(place))
     pairs = [pair for group in groups for pair in _port_pairs(group)]
     return Network(

@@ -132,7 +132,7 @@ def states(network: Network, run: Run) -> dict[str, tuple[Array, Array, Array, A
     table: dict[str, tuple[Array, Array, Array, Array, Array]] = {}
     for group, evaluation in zip(network.groups, evaluations, strict=True):
         port_A = evaluation.port_A * group.sign
-        port_V = across[group.rows].reshape(group.ports, -1, node_V.shape[1])
+        port_V = across[group.rows].reshape(group.ports, -1, node_V.shape[1]) * group.sign
         for index, device in enumerate(group.devices):
             if group.ports == 1:
                 current, voltage = port_A[0, index], port_V[0, index]
