@@ -1,1 +1,78 @@
 """Reading: a file becomes positioned forms, definitions, and one flat netlist."""
+
+from __future__ import annotations
+
+from hashlib import sha256
+from pathlib import Path
+
+from protlint.netlist.edif import read_definitions
+from protlint.netlist.facts import facts_of
+from protlint.netlist.flatten import flatten
+from protlint.netlist.forms import Places, no_collection
+from protlint.netlist.model import Netlist
+from protlint.sources import InputError, decode_text, read_bytes
+
+__all__ = ["FILE_LIMIT", "LINE_LIMIT", "read_netlist", "read_netlist_bytes"]
+
+FILE_LIMIT = 500_000_000
+"""Most bytes of a file."""
+LINE_LIMIT = 100_000_000
+"""Most bytes of a line; a whole netlist on one line is legal, and a line longer than this is no netlist's."""
+
+
+def read_netlist(path: str | Path, *, design: str | None = None, encoding: str | None = None) -> Netlist:
+    """Read one design of an EDIF 2 0 0 file, flattened.
+
+    Parameters
+    ----------
+    path : the file, or ``-`` for standard input.
+    design : the name of the design, where the file has several; the first by default.
+    encoding : how bytes outside ASCII are meant; by default UTF-8 where the file is that, else cp1252.
+
+    Raises
+    ------
+    FileError : the file cannot be read.
+    InputError : it is no EDIF 2 0 0, is damaged, uses what is refused by name, or is past a stated limit.
+    UsageError : there is no such design or encoding.
+    """
+    data, name = read_bytes(path, limit=FILE_LIMIT)
+    return read_netlist_bytes(data, name, design=design, encoding=encoding)
+
+
+def read_netlist_bytes(data: bytes, name: str, *, design: str | None = None, encoding: str | None = None) -> Netlist:
+    """Read one design of an EDIF 2 0 0 netlist from bytes; ``name`` is what errors call it. See :func:`read_netlist`."""
+    digest = sha256(data).hexdigest()
+    _refuse_long_lines(data, name)
+    decoded = decode_text(data, encoding, file=name)
+    nul = decoded.text.find("\0")
+    if nul >= 0:
+        hint = ", unless it is UTF-16, which --encoding utf-16 reads" if data[:2] in (b"\xff\xfe", b"\xfe\xff") else ""
+        raise Places(decoded.text, name).error(f"a NUL character: this is no text, and no EDIF{hint}", nul)
+    del data
+    with no_collection():
+        edif, notes = read_definitions(decoded.text, name)
+        flat = flatten(edif, notes, design=design)
+        if decoded.first_outside_ascii is not None:
+            read_as = f"read as {decoded.encoding}" + ("" if encoding else ", --encoding NAME takes another")
+            notes.add("encoding", decoded.first_outside_ascii, read_as, count=decoded.outside_ascii)
+        return Netlist(
+            file=name,
+            sha256=digest,
+            design=flat.design,
+            parts=flat.parts,
+            nets=flat.nets,
+            warnings=notes.warnings(),
+            pins_on_two_nets=flat.pins_on_two_nets,
+            facts=facts_of(edif, flat, decoded.encoding),
+            duplicate_designators=flat.duplicate_designators,
+        )
+
+
+def _refuse_long_lines(data: bytes, name: str) -> None:
+    start = 0
+    while len(data) - start > LINE_LIMIT:
+        end = max(data.rfind(b"\n", start, start + LINE_LIMIT), data.rfind(b"\r", start, start + LINE_LIMIT))
+        if end < 0:
+            line = data.count(b"\n", 0, start) + 1
+            raise InputError(f"a line of more than {LINE_LIMIT} bytes", file=name, line=line, column=1)
+        start = end + 1

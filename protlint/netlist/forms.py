@@ -21,7 +21,7 @@ import sexpdata  # type: ignore[import-untyped]
 
 from protlint.sources import InputError
 
-NESTING_LIMIT = 500
+NESTING_LIMIT = 200
 """Deepest nesting read; real netlists stay below 20."""
 
 _WHITE = r"[ \t\r\n\f\v]"
@@ -160,8 +160,8 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
         super().__init__(text, nil=None, true=None, false=None)
         self.places = Places(text, file)
         self.reducers = reducers or {}
-        self.unpaired: list[int] = []
-        """Offsets of the strings that hold a per cent sign without its partner."""
+        self.unpaired: list[tuple[int, str]] = []
+        """Strings that hold a per cent sign without its partner, with their offsets."""
 
     def head(self, token: str) -> str | None:
         """Return the head a list is to have for the word it begins with; None passes the whole list over."""
@@ -190,7 +190,7 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
 
         text = _PERCENT.sub(character, raw)
         if unpaired:
-            self.unpaired.append(offset)
+            self.unpaired.append((offset, text))
         return text
 
     def parse(self) -> list[Any]:

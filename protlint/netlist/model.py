@@ -81,6 +81,14 @@ class PinOnTwoNets:
 
 
 @dataclass(frozen=True, slots=True)
+class DuplicateDesignator:
+    """One designator that the file gives to different parts (their indices), which are no sections of one package."""
+
+    designator: str
+    parts: tuple[int, ...]
+
+
+@dataclass(frozen=True, slots=True)
 class Netlist:
     """One design, flattened. ``text_sha256`` is of the file's bytes."""
 
@@ -93,3 +101,4 @@ class Netlist:
     pins_on_two_nets: tuple[PinOnTwoNets, ...] = ()
     facts: Mapping[str, str] = field(default_factory=dict)
     """What the survey shows of the reading: a plain name to a plain sentence or count, in printing order."""
+    duplicate_designators: tuple[DuplicateDesignator, ...] = ()

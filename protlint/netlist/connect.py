@@ -1,0 +1,239 @@
+"""The inside of one cell: which pins of what it places, and which of its own ports, are one node.
+
+Each cell is wired once, after all that it places, however often it is itself placed. A cell's own ports and its off-page
+connectors join its sheets; ripper cells, and placed cells whose ports are one node inside, join what hangs on those ports.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass, replace
+
+from protlint.netlist.definitions import Instance, Net, PortRef, Scope
+from protlint.netlist.hierarchy import Block
+from protlint.netlist.notes import Notes
+from protlint.netlist.ports import Budget, Ports, element_of
+
+
+def wire(block: Block, notes: Notes, budget: Budget) -> Wiring:
+    """Return the inside of a block whose ``children`` are known and wired; add to its ``shorts`` what its inside shorts.
+
+    Raises
+    ------
+    InputError : the file names more elements of arrays than ``budget`` has left.
+    """
+    wirer = _Wirer(block, notes, budget)
+    assert block.contents is not None
+    for sheet, children in zip(block.contents.sheets, block.children, strict=True):
+        instances: Scope[_Placed] = Scope()
+        for instance, child in zip(sheet.instances, children, strict=True):
+            wirer.place(instance, child, instances)
+        for net in sheet.nets:
+            wirer.join(net, instances)
+    return wirer.finish()
+
+
+def root(parents: list[int], member: int) -> int:
+    """Return the member that stands for all that ``member`` is united with, shortening the way there."""
+    while parents[member] != member:
+        parents[member] = parents[parents[member]]
+        member = parents[member]
+    return member
+
+
+@dataclass(frozen=True, slots=True)
+class Placement:
+    """One thing placed: an instance, or with ``element`` one of an array of them. ``pins`` maps a bit of its ports to the
+    node it is on and the place where the file says so."""
+
+    instance: Instance
+    element: int | None
+    block: Block
+    pins: dict[int, tuple[int, int]]
+
+
+@dataclass(frozen=True, slots=True)
+class Node:
+    """What is one inside a cell: the name and place of its first net, or of one named like a port that it leads to."""
+
+    name: str
+    line: int
+    column: int
+
+
+@dataclass(frozen=True, slots=True)
+class TwoNets:
+    """A pin of a part (its position in the placements, and the bit) on two nets: their nodes, the second one's place."""
+
+    placement: int
+    bit: int
+    nodes: tuple[int, int]
+    line: int
+    column: int
+
+
+@dataclass(frozen=True, slots=True)
+class Wiring:
+    """The inside of a block: its nodes, what is placed with pins on them, and the nodes that its own ports are."""
+
+    block: Block
+    nodes: tuple[Node, ...]
+    placements: tuple[Placement, ...]
+    ports: dict[int, int]
+    on_two_nets: tuple[TwoNets, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class _Placed:
+    """An instance as references see it: its block, and where its elements begin among the placements."""
+
+    instance: Instance
+    block: Block
+    first: int
+
+
+_OWN = -1
+
+
+class _Wirer:
+    """Gathers the nodes of one block. A node is a member of a union-find forest until :meth:`finish` numbers them."""
+
+    def __init__(self, block: Block, notes: Notes, budget: Budget) -> None:
+        self.block = block
+        self.notes = notes
+        self.budget = budget
+        self.placements: list[Placement] = []
+        self.parents: list[int] = []
+        self.nets: list[tuple[int, Net]] = []
+        self.own: dict[int, int] = {}
+        self.on_two_nets: list[TwoNets] = []
+        self.connectors = Ports(start=block.ports.width)
+        for name in block.contents.connectors if block.contents is not None else ():
+            self.connectors.add(name)
+
+    def place(self, instance: Instance, block: Block, instances: Scope[_Placed]) -> None:
+        """Add what an instance places; of two with one identifier the first is what references mean."""
+        instances.add(instance.name.identifier, _Placed(instance, block, len(self.placements)))
+        self.budget.spend(instance.name.width - 1, instance.offset)
+        for element in range(instance.name.width) if instance.name.dimensions else (None,):
+            self.placements.append(Placement(instance, element, block, {}))
+
+    def join(self, net: Net, instances: Scope[_Placed]) -> None:
+        """Add a net: a node, or for an array of nets one each element, with all that is joined to it."""
+        width = net.name.width
+        self.budget.spend(width - 1, net.offset)
+        start = len(self.parents)
+        self.parents.extend(range(start, start + width))
+        self.nets.append((start, net))
+        for item in net.joined:
+            offset = item[0].offset
+            ends = [end for ref in item for end in self._ends(ref, instances)]
+            if len(ends) != width and ends:
+                self.notes.add("width", offset, f"{item[0].port}, {len(ends)} wide, to {net.name.text}, {width} wide")
+            # A plain net takes every element of what is wider; else elements meet in their order as far as both go.
+            nodes = range(start, start + width) if width > 1 else [start] * len(ends)
+            for node, (position, bit) in zip(nodes, ends, strict=False):
+                self._attach(position, bit, node, offset)
+
+    def _ends(self, ref: PortRef, instances: Scope[_Placed]) -> Sequence[tuple[int, int]]:
+        """Return what a reference means: positions of placements, :data:`_OWN` for the block itself, each with a bit."""
+        wanted = (ref.port, ref.member, ref.bundle)
+        if ref.instance is None:
+            bits = self.block.ports.find(*wanted) or self.connectors.find(*wanted)
+            if bits is None:
+                self.notes.add("reference", ref.offset, f"the port {ref.port}, which the cell {self._name} has not")
+                bits = self.connectors.undeclared(ref.port, ref.member)
+            self.budget.spend(len(bits) - 1, ref.offset)
+            return [(_OWN, bit) for bit in bits]
+        placed = instances.find(ref.instance)
+        elements = None if placed is None else self._elements(placed, ref)
+        if placed is None or elements is None:
+            self.notes.add("reference", ref.offset, f"the port {ref.port} of {ref.instance}, which is not there")
+            return ()
+        bits = placed.block.ports.find(*wanted)
+        if bits is None:
+            name = placed.block.cell.name.text
+            self.notes.add("reference", ref.offset, f"the port {ref.port} of {ref.instance}, which the cell {name} has not")
+            if placed.block.contents is not None:
+                return ()
+            bits = placed.block.ports.undeclared(ref.port, ref.member)
+        self.budget.spend(len(elements) * len(bits) - 1, ref.offset)
+        return [(element, bit) for element in elements for bit in bits]
+
+    def _elements(self, placed: _Placed, ref: PortRef) -> range | None:
+        name = placed.instance.name
+        if not ref.instance_member:
+            return range(placed.first, placed.first + name.width)
+        element = element_of(name.dimensions, ref.instance_member)
+        return None if element is None else range(placed.first + element, placed.first + element + 1)
+
+    def _attach(self, position: int, bit: int, node: int, offset: int) -> None:
+        if position == _OWN:
+            self._unite(self.own.setdefault(bit, node), node)
+            return
+        placement = self.placements[position]
+        first, _ = placement.pins.setdefault(bit, (node, offset))
+        if first == node:
+            return
+        if placement.block.is_part:
+            self.on_two_nets.append(TwoNets(position, bit, (first, node), *self.budget.places.at(offset)))
+            return
+        self._unite(first, node)
+        if placement.block.contents is not None:
+            self.notes.add("block pin", offset, f"{placement.block.ports.text(bit)} of {placement.instance.name.text}")
+
+    def _unite(self, one: int, other: int) -> None:
+        one, other = root(self.parents, one), root(self.parents, other)
+        self.parents[max(one, other)] = min(one, other)
+
+    @property
+    def _name(self) -> str:
+        return self.block.cell.name.text
+
+    def finish(self) -> Wiring:
+        """Unite what is shorted, number the nodes in the order of the file, and return the wiring."""
+        for placement in self.placements:
+            for group in placement.block.shorts:
+                self._unite_all(placement.pins[bit][0] for bit in group if bit in placement.pins)
+        for group in self.block.shorts:
+            self._unite_all(self.own[bit] for bit in group if bit in self.own)
+        number, nodes = self._numbered()
+        ports = {bit: number[root(self.parents, node)] for bit, node in self.own.items() if bit < self.block.ports.width}
+        together: dict[int, list[int]] = {}
+        for bit, node in ports.items():
+            together.setdefault(node, []).append(bit)
+        self.block.shorts += (tuple(bits) for bits in together.values() if len(bits) > 1)
+        for placement in self.placements:
+            for bit, (node, offset) in placement.pins.items():
+                placement.pins[bit] = (number[root(self.parents, node)], offset)
+        twice = []
+        for each in self.on_two_nets:
+            first, second = (number[root(self.parents, node)] for node in each.nodes)
+            if first != second:
+                twice.append(replace(each, nodes=(first, second)))
+        return Wiring(self.block, tuple(nodes), tuple(self.placements), ports, tuple(twice))
+
+    def _unite_all(self, members: Iterable[int]) -> None:
+        nodes = list(members)
+        for node in nodes[1:]:
+            self._unite(nodes[0], node)
+
+    def _numbered(self) -> tuple[dict[int, int], list[Node]]:
+        """Return the number of each root and the nodes; of several nets the first, or one named like a port it leads to."""
+        led_out: dict[int, set[str]] = {}
+        for bit, node in self.own.items():
+            ports = self.block.ports if bit < self.block.ports.width else self.connectors
+            led_out.setdefault(root(self.parents, node), set()).add(ports.text(bit))
+        places = self.budget.places
+        number: dict[int, int] = {}
+        nodes: list[Node] = []
+        for start, net in self.nets:
+            for element in range(net.name.width):
+                name = f"{net.name.text}[{element}]" if net.name.dimensions else net.name.text
+                top = root(self.parents, start + element)
+                if top not in number:
+                    number[top] = len(nodes)
+                    nodes.append(Node(name, *places.at(net.offset)))
+                elif name in led_out.get(top, ()) and nodes[number[top]].name not in led_out[top]:
+                    nodes[number[top]] = Node(name, *places.at(net.offset))
+        return number, nodes

@@ -1,0 +1,291 @@
+"""EDIF 2 0 0 text to definitions: the grammar's netlist subset, each form turned into what it defines as it closes.
+
+Forms that nothing here uses (drawings, displays, comments, user data, and any unknown one) are passed over whole, and so is
+what stands inside them. What cannot be read and would change the netlist if it were passed over is refused by name.
+"""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Callable, Iterable, Iterator
+from itertools import chain
+from math import prod
+from typing import NoReturn, Protocol
+
+from protlint.netlist.definitions import (
+    Cell,
+    Contents,
+    Design,
+    Edif,
+    Instance,
+    Library,
+    Name,
+    Net,
+    Port,
+    PortInstance,
+    Scope,
+    Sheet,
+    View,
+)
+from protlint.netlist.forms import Form, FormParser
+from protlint.netlist.grammar import LEVELS, REFUSED, USED, may_hold
+from protlint.netlist.model import Property
+from protlint.netlist.notes import Notes
+from protlint.netlist.properties import Origin, Scales, integer, read_property, read_scales, text_of
+from protlint.netlist.references import designators, first, items, joined, keyword, member, view_refs, word
+from protlint.sources import InputError
+
+ARRAY_LIMIT = 65_536
+"""Most elements of one array; real buses stay below 1,024."""
+
+_BEGINNING = re.compile(r"[ \t\r\n\f\v]*\([ \t\r\n\f\v]*(edif)(?![^ \t\r\n\f\v()\"])|[ \t\r\n\f\v]*(\()?", re.IGNORECASE)
+_IDENTIFIER = re.compile(r"[A-Za-z][A-Za-z0-9_]*|&[A-Za-z0-9_]+")
+
+
+class Named(Protocol):
+    """What has a name and a place."""
+
+    @property
+    def name(self) -> Name: ...  # noqa: D102
+    @property
+    def offset(self) -> int: ...  # noqa: D102
+
+
+def read_definitions(text: str, file: str) -> tuple[Edif, Notes]:
+    """Return what an EDIF 2 0 0 text defines, and the notes taken while reading it.
+
+    Raises
+    ------
+    InputError : the text is no EDIF 2 0 0, is damaged, or uses what is refused.
+    """
+    beginning = _BEGINNING.match(text)
+    assert beginning is not None
+    if not beginning[1]:
+        what = "another s-expression file" if beginning[2] else "something else"
+        what = what if text.strip() else "an empty file"
+        raise InputError(f"this is {what}, not EDIF: a netlist begins with (edif ...)", file=file, line=1, column=1)
+    return _Reader(text, file).read()
+
+
+def _nets(form: Form) -> Iterator[Net]:
+    """Yield the nets of a sheet, those in bundles too."""
+    for item in form:
+        if type(item) is Net:
+            yield item
+        elif type(item) is Form and item.head in ("netbundle", "listofnets"):
+            yield from _nets(item)
+
+
+def _program(form: Form) -> str | None:
+    """Return the name of the program that wrote the file, with its version, where the file says so."""
+    for status in items(form, "status"):
+        for written in items(status, "written"):
+            for program in items(written, "program"):
+                version = first(program, "version")
+                texts = [text_of(program[1]) if len(program) > 1 else None]
+                texts.append(text_of(version[1]) if version is not None and len(version) > 1 else None)
+                return " ".join(text for text in texts if text) or None
+    return None
+
+
+class _Reader(FormParser):
+    """A parser whose lists become definitions as they close, so that no more than one cell stands in memory as lists."""
+
+    def __init__(self, text: str, file: str) -> None:
+        refuse = dict.fromkeys(REFUSED, self._refuse)
+        reducers: dict[str, Callable[[Form], object]] = {
+            "edifversion": self._version,
+            "technology": self._technology,
+            "instance": self._instance,
+            "net": self._net,
+            "view": self._view,
+            "cell": self._cell,
+            "library": self._library,
+            "external": self._library,
+            "design": self._design,
+        }
+        super().__init__(text, file=file, reducers=refuse | reducers)
+        self.notes = Notes(self.places)
+        self._scales: Scales = {}
+
+    def read(self) -> tuple[Edif, Notes]:
+        """Return the whole file's definitions."""
+        forms = self.parse()
+        if len(forms) > 1 and forms[1:] != ["\x1a"]:  # a control-Z closes files written under DOS
+            offset = self.outside() if not all(type(form) is Form for form in forms) else forms[1].offset
+            raise self.places.error("there is more after the end of (edif ...)", offset)
+        form = forms[0]
+        for offset, raw in self.unpaired[:1]:
+            self.notes.add("percent", offset, repr(raw), count=len(self.unpaired))
+        if first(form, "edifversion") is None:
+            raise form.error("it states no edifVersion: protlint reads EDIF 2 0 0")
+        level = next((str(item[1]) for item in items(form, "ediflevel") if len(item) > 1), "0")
+        libraries = tuple(item for item in form if type(item) is Library)
+        designs = tuple(item for item in form if type(item) is Design)
+        self._duplicates(libraries)
+        return Edif(self._name(form), level, _program(form), libraries, designs, self.places), self.notes
+
+    def head(self, token: str) -> str | None:
+        """Return a keyword in lower case, None for those that are passed over."""
+        keyword = token.lower()
+        return keyword if keyword in USED or keyword in REFUSED else None
+
+    def unclosed(self) -> InputError:
+        """Return the error about what is never closed: where something begins inside what cannot hold it, its holder.
+
+        In a file that lacks one parenthesis somewhere in the middle, the list still open at the end is the outermost one,
+        which tells nobody anything.
+        """
+        for open_lists in self.open_lists():
+            inner_at, inner = open_lists[-1]
+            if inner not in LEVELS:
+                continue
+            holder = next((head for _, head in reversed(open_lists[:-1]) if head in LEVELS), None)
+            if holder is not None and not may_hold(holder, inner):
+                outer_at, outer = open_lists[-2]
+                line, column = self.places.at(inner_at)
+                message = f"({outer} ...) is never closed; it is still open where ({inner} ...) begins at {line}:{column}"
+                return self.places.error(message, outer_at)
+        return self.places.error(f"({open_lists[-1][1]} ...) is never closed: the file ends inside it", open_lists[-1][0])
+
+    def _name(self, form: Form, position: int = 1) -> Name:
+        """Return the name that a form defines, and note what EDIF does not allow in it."""
+        item = form[position] if len(form) > position else None
+        dimensions: tuple[int, ...] = ()
+        if type(item) is Form and item.head == "array":
+            dimensions = self._dimensions(item)
+            form, item = item, item[1] if len(item) > 1 else None
+        text: str | None = None
+        if type(item) is Form and item.head == "rename":
+            text = next((shown for shown in map(text_of, item[2:]) if shown is not None), None)
+            form, item = item, item[1] if len(item) > 1 else None
+        if type(item) is Form and item.head == "name":
+            form, item = item, item[1] if len(item) > 1 else None
+        if not isinstance(item, str) or not item:
+            raise form.error(f"({form.head} ...) has no name")
+        if _IDENTIFIER.fullmatch(item) is None:
+            self.notes.add("identifier", form.offset, repr(str(item)))
+        return Name(item, text or str(item).removeprefix("&"), dimensions)
+
+    def _dimensions(self, form: Form) -> tuple[int, ...]:
+        sizes = [integer(item) for item in form[2:] if not isinstance(item, Form)]
+        dimensions = tuple(size for size in sizes if size is not None)
+        if len(dimensions) != len(sizes) or not dimensions or min(dimensions) < 1:
+            raise form.error("an array needs its number of elements, 1 or more")
+        if prod(dimensions) > ARRAY_LIMIT:
+            raise form.error(f"an array of {prod(dimensions)} elements; protlint reads arrays of up to {ARRAY_LIMIT}")
+        return dimensions
+
+    def _properties(self, form: Form, origin: Origin) -> tuple[Property, ...]:
+        return tuple(
+            read_property(item, self._name(item).text, origin, self._scales)
+            for item in items(form, "property", "parameter", "parameterassign")
+        )
+
+    def _port(self, form: Form) -> Port:
+        inner = first(form, "listofports") if form.head == "portbundle" else None
+        return Port(
+            name=self._name(form),
+            direction=keyword(form, "direction", "") or None,
+            designators=designators(form),
+            properties=self._properties(form, "interface"),
+            ports=() if inner is None else tuple(self._port(port) for port in items(inner, "port", "portbundle")),
+            offset=form.offset,
+        )
+
+    def _port_instance(self, form: Form) -> PortInstance:
+        inner = form[1] if len(form) > 1 else None
+        port, element = member(inner if type(inner) is Form and inner.head == "portref" else form)
+        return PortInstance(port, element, designators(form), self._properties(form, "instance"))
+
+    def _instance(self, form: Form) -> Instance:
+        return Instance(
+            name=self._name(form),
+            views=view_refs(form),
+            designators=designators(form),
+            properties=self._properties(form, "instance"),
+            ports=tuple(map(self._port_instance, items(form, "portinstance"))),
+            offset=form.offset,
+        )
+
+    def _net(self, form: Form) -> Net:
+        name = self._name(form)
+        groups = [joined(item) for item in items(form, "joined")]
+        for subnet in form:
+            if type(subnet) is Net:  # the same node, drawn or routed apart
+                if subnet.name.dimensions != name.dimensions:
+                    raise form.error(f"a subnet of another width ({subnet.name.text}) is not read")
+                groups.append(subnet.joined)
+        return Net(name, tuple(chain.from_iterable(groups)), form.offset)
+
+    def _sheet(self, form: Form) -> Sheet:
+        instances = tuple(item for item in form if type(item) is Instance)
+        nets = tuple(_nets(form))
+        self._duplicates(instances)
+        self._duplicates(nets)
+        return Sheet(instances, nets)
+
+    def _contents(self, form: Form) -> Contents:
+        pages = list(items(form, "page"))
+        sheets = (form, *pages)
+        connectors = tuple(self._name(item) for sheet in sheets for item in items(sheet, "offpageconnector"))
+        return Contents(tuple(map(self._sheet, sheets)), len(pages), connectors)
+
+    def _view(self, form: Form) -> View:
+        interface = first(form, "interface") or Form()
+        contents = first(form, "contents")
+        ports = tuple(self._port(port) for port in items(interface, "port", "portbundle"))
+        self._duplicates(ports)
+        return View(
+            name=self._name(form),
+            kind=keyword(form, "viewtype", ""),
+            ports=ports,
+            shorts=tuple(joined(item) for item in items(interface, "joined")),
+            properties=self._properties(interface, "interface") + self._properties(form, "interface"),
+            contents=None if contents is None else self._contents(contents),
+            offset=form.offset,
+        )
+
+    def _cell(self, form: Form) -> Cell:
+        views = tuple(item for item in form if type(item) is View)
+        self._duplicates(views)
+        return Cell(
+            name=self._name(form),
+            kind=keyword(form, "celltype", "generic"),
+            views=views,
+            properties=self._properties(form, "cell"),
+            offset=form.offset,
+        )
+
+    def _library(self, form: Form) -> Library:
+        cells = tuple(item for item in form if type(item) is Cell)
+        self._duplicates(cells)
+        self._scales = {}
+        return Library(self._name(form), form.head == "external", cells, form.offset)
+
+    def _design(self, form: Form) -> Design:
+        cell = first(form, "cellref")
+        if cell is None:
+            raise form.error("(design ...) names no cell")
+        library = first(cell, "libraryref")
+        return Design(self._name(form), word(cell), None if library is None else word(library), form.offset)
+
+    def _technology(self, form: Form) -> None:
+        self._scales = read_scales(form)
+
+    def _version(self, form: Form) -> Form:
+        version = " ".join(str(item) for item in form[1:])
+        if version != "2 0 0":
+            raise form.error(f"this is EDIF {version or 'of no version'}; protlint reads EDIF 2 0 0 only")
+        return form
+
+    def _refuse(self, form: Form) -> NoReturn:
+        raise form.error(f"({form.head} ...): {REFUSED[form.head]} are not read; export the netlist without them")
+
+    def _duplicates(self, things: Iterable[Named]) -> None:
+        """Note the identifiers that stand for two things in one scope."""
+        scope: Scope[Named] = Scope()
+        for thing in things:
+            kind = scope.add(thing.name.identifier, thing)
+            if kind is not None:
+                self.notes.add(kind, thing.offset, repr(thing.name.identifier))

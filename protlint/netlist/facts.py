@@ -1,0 +1,60 @@
+"""What the survey shows of the reading: how much there is, and how designators and pin numbers were found."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from protlint.netlist.definitions import Edif, Library
+from protlint.netlist.flatten import Flat
+
+_LIBRARIES_SHOWN = 12
+
+
+def facts_of(edif: Edif, flat: Flat, encoding: str) -> dict[str, str]:
+    """Return plain names and plain sentences, in the order to show them."""
+    placements = [placement for cell in flat.cells for placement in cell.wiring.placements]
+    joints = sum(placement.block.contents is None and not placement.block.is_part for placement in placements)
+    pins = [pin for part in flat.parts for pin in part.pins]
+    facts = {
+        "format": f"EDIF 2 0 0, level {edif.level}, read as {encoding}",
+        "written by": edif.program or "not stated",
+        "design": f"{flat.design}, cell {flat.cell}; chosen by {flat.chosen_by}",
+        "libraries": _libraries(edif.libraries),
+        "drawn as": _shape(flat),
+        "parts": f"{len(flat.parts)} of {len({(part.library, part.cell) for part in flat.parts})} cells",
+        "nets": f"{len(flat.nets)}, {sum(len(net.pins) < 2 for net in flat.nets)} of them with fewer than two pins",
+        "pins": f"{len(pins)} connected",
+        "designators": _designators(flat),
+        "pin numbers": f"known of {sum(pin.number is not None for pin in pins)} pins",
+        "pin names": f"more than a number at {sum(not pin.name.isdecimal() for pin in pins)} pins",
+    }
+    if joints:
+        facts["rippers and ties"] = f"{joints}, which join nets and are no parts"
+    sections = [len(members) for cell in flat.cells for members in cell.named.packages]
+    if sections:
+        facts["sections"] = f"{sum(sections)} parts are sections of {len(sections)} packages"
+    return facts
+
+
+def _libraries(libraries: Sequence[Library]) -> str:
+    told = [f"{each.name.text} ({'external, ' if each.external else ''}{len(each.cells)} cells)" for each in libraries]
+    more = len(told) - _LIBRARIES_SHOWN
+    return ", ".join(told[:_LIBRARIES_SHOWN]) + (f" and {more} more" if more > 0 else "") or "none"
+
+
+def _shape(flat: Flat) -> str:
+    views = [cell.wiring.block.view for cell in flat.cells]
+    kinds = sorted({view.kind.upper() or "unnamed" for view in views if view is not None})
+    pages = sum(view.contents.pages for view in views if view is not None and view.contents is not None)
+    shape = f"{' and '.join(kinds)} views" if kinds else "a cell without contents"
+    shape += f", {pages} pages" if pages else ""
+    return shape + (f", {flat.levels} levels of hierarchy, {len(flat.cells)} cells" if flat.levels > 1 else ", flat")
+
+
+def _designators(flat: Flat) -> str:
+    without = sum(part.designator is None for part in flat.parts)
+    if not flat.designated:
+        source = "no designator in the file: the names of the instances are taken"
+    else:
+        source = f"{len(flat.parts) - without} from designators"
+    return f"{source}, {without} parts without one" if without else source

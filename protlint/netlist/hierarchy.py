@@ -1,0 +1,225 @@
+"""Which cell an instance means, what stands inside it, and in which order the cells of a design are to be worked through."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from itertools import chain
+
+from protlint.netlist.definitions import Cell, Contents, Edif, Instance, Library, Name, Scope, View, ViewRef
+from protlint.netlist.notes import Notes
+from protlint.netlist.ports import Budget, Ports
+from protlint.sources import UsageError
+
+DEPTH_LIMIT = 100
+"""Most levels of a hierarchy."""
+
+_KINDS_OF_CONTENTS = {"netlist": 0, "schematic": 1}
+"""The kinds of view whose contents say what is placed and connected, the better one first."""
+
+
+def has_contents(view: View) -> bool:
+    """Tell whether anything stands inside a view; an empty ``contents`` is a black box."""
+    return view.contents is not None and any(sheet.instances or sheet.nets for sheet in view.contents.sheets)
+
+
+def choose_view(cell: Cell, wanted: str | None, *, any_kind: bool = False) -> tuple[View | None, bool]:
+    """Return the view of a cell to go by, and whether the one wanted is there.
+
+    The one wanted, if it has contents; else the best with contents, NETLIST before SCHEMATIC; else the one wanted or the
+    first. ``any_kind`` takes contents in a view of any kind as a last resort.
+    """
+    named = None if wanted is None else Scope((view.name.identifier, view) for view in cell.views).find(wanted)
+    present = wanted is None or named is not None
+    if named is not None and has_contents(named):
+        return named, present
+    inside = [view for view in cell.views if has_contents(view) and (any_kind or view.kind in _KINDS_OF_CONTENTS)]
+    if inside:
+        return min(inside, key=lambda view: _KINDS_OF_CONTENTS.get(view.kind, 2)), present
+    return named or next(iter(cell.views), None), present
+
+
+class Block:
+    """A cell as instances see it: its ports, its contents where it has any, and which of its bits are one node.
+
+    A block without contents is a leaf. ``shorts`` holds groups of bits; what the contents short is added when they are
+    wired. ``children`` holds, sheet by sheet, the block that each instance places.
+    """
+
+    def __init__(self, cell: Cell, library: Library, view: View | None, budget: Budget) -> None:
+        self.cell = cell
+        self.library = library
+        self.view = view
+        self.ports = Ports(port for each in cell.views for port in each.ports)
+        self.contents: Contents | None = view.contents if view is not None and has_contents(view) else None
+        self.children: list[list[Block]] = []
+        self.shorts: list[tuple[int, ...]] = []
+        for joined in view.shorts if view is not None else ():
+            bits = [[self.ports.find(ref.port, ref.member, ref.bundle) or () for ref in item] for item in joined]
+            items = [list(chain.from_iterable(item)) for item in bits]
+            budget.spend(sum(map(len, items)) - len(items), cell.offset)
+            self.shorts += zip(*filter(None, items), strict=False)
+
+    @property
+    def is_part(self) -> bool:
+        """Whether an instance of it is a part of the board."""
+        return self.contents is None and self.cell.kind not in ("ripper", "tie")
+
+    @property
+    def sections(self) -> int:
+        """How many sections of a package its ports list pin numbers for; 1 where each port has one number or none."""
+        ports = (port for view in self.cell.views for port in view.ports if port.name.width == 1)
+        return max((len(" ".join(port.designators).split()) for port in ports), default=1)
+
+
+class Directory:
+    """All cells of a file, to look up what references mean."""
+
+    def __init__(self, edif: Edif, notes: Notes) -> None:
+        self.edif = edif
+        self.budget = Budget(edif.places)
+        self._notes = notes
+        self._libraries = Scope((library.name.identifier, library) for library in edif.libraries)
+        self._cells = {id(each): Scope((cell.name.identifier, cell) for cell in each.cells) for each in edif.libraries}
+        self._blocks: dict[tuple[int, int], Block] = {}
+        self._unknown: dict[str, Block] = {}
+
+    def find(self, cell: str, library: str | None, here: Library | None) -> tuple[Cell, Library] | None:
+        """Return the cell of a name in the library named, else in the one the reference stands in."""
+        home = here if library is None else self._libraries.find(library)
+        found = None if home is None else self._cells[id(home)].find(cell)
+        return None if found is None or home is None else (found, home)
+
+    def find_anywhere(self, cell: str) -> tuple[Cell, Library] | None:
+        """Return the first cell of a name in any library."""
+        return next((found for each in self.edif.libraries if (found := self.find(cell, None, each)) is not None), None)
+
+    def block(self, cell: Cell, library: Library, wanted: str | None, offset: int, *, any_kind: bool = False) -> Block:
+        """Return a cell with the view to go by chosen; noted at ``offset`` where the one wanted is absent."""
+        view, present = choose_view(cell, wanted, any_kind=any_kind)
+        if not present:
+            self._notes.add("view", offset, f"{wanted} of the cell {cell.name.text}")
+        key = (id(cell), id(view))
+        if key not in self._blocks:
+            self._blocks[key] = Block(cell, library, view, self.budget)
+        return self._blocks[key]
+
+    def meant(self, instance: Instance, inside: Block) -> Block:
+        """Return the block that an instance inside another block places.
+
+        Where none of its references leads anywhere, an unknown cell of that name: the part is on the board all the same.
+        """
+        own = inside.cell.name.identifier
+        for ref in instance.views:
+            found = self.find(ref.cell or own, ref.library, inside.library)
+            if found is not None:
+                return self.block(*found, ref.view, instance.offset)
+        for ref in instance.views:
+            found = self.find_anywhere(ref.cell or own)
+            if found is not None:
+                detail = f"the cell {ref.cell}, not in the library {ref.library or inside.library.name.text} but in another"
+                self._notes.add("reference", instance.offset, detail)
+                return self.block(*found, ref.view, instance.offset)
+        ref = instance.views[0] if instance.views else ViewRef(None, "", None)
+        name, library = ref.cell or "", ref.library or inside.library.name.identifier
+        detail = f"the cell {name} of {instance.name.text}" if name else f"{instance.name.text} names no cell"
+        self._notes.add("reference", instance.offset, detail)
+        return self._unknown_block(name, library)
+
+    def _unknown_block(self, name: str, library: str) -> Block:
+        key = name.lower()
+        if key not in self._unknown:
+            cell = Cell(Name(name, name.removeprefix("&")), "generic", (), (), 0)
+            home = self._libraries.find(library) or Library(Name(library, library.removeprefix("&")), True, (), 0)
+            self._unknown[key] = Block(cell, home, None, self.budget)
+        return self._unknown[key]
+
+    def bottom_up(self, top: Block) -> list[Block]:
+        """Return the blocks with contents under ``top``, it included, each after all that it places; fill in ``children``.
+
+        Raises
+        ------
+        InputError : a cell contains itself, at the instance that closes the circle.
+        """
+        done: dict[int, Block] = {}
+        road: list[tuple[Block, Iterator[tuple[Instance, Block]]]] = [(top, self.placed(top))]
+        on_road = {id(top)}
+        while road:
+            block, instances = road[-1]
+            for instance, child in instances:
+                if id(child) in on_road:
+                    names = [each.cell.name.text for each, _ in road]
+                    circle = " > ".join([*names[names.index(child.cell.name.text) :], child.cell.name.text])
+                    raise self.edif.places.error(f"a cell contains itself: {circle}", instance.offset)
+                if len(road) > DEPTH_LIMIT:
+                    message = f"a hierarchy more than {DEPTH_LIMIT} levels deep; protlint reads no deeper"
+                    raise self.edif.places.error(message, instance.offset)
+                if child.contents is not None and id(child) not in done:
+                    road.append((child, self.placed(child)))
+                    on_road.add(id(child))
+                    break
+            else:
+                road.pop()
+                on_road.discard(id(block))
+                done[id(block)] = block
+        return list(done.values())
+
+    def placed(self, block: Block) -> Iterator[tuple[Instance, Block]]:
+        """Yield the instances inside a block with the blocks they place; fill in its ``children``."""
+        sheets = block.contents.sheets if block.contents is not None else ()
+        if not block.children:
+            block.children = [[self.meant(instance, block) for instance in sheet.instances] for sheet in sheets]
+        for sheet, children in zip(sheets, block.children, strict=True):
+            yield from zip(sheet.instances, children, strict=True)
+
+
+def choose_top(directory: Directory, notes: Notes, wanted: str | None) -> tuple[Block, str, str]:
+    """Return the block a board begins with, the board's name, and how it was chosen.
+
+    Raises
+    ------
+    UsageError : no design is called ``wanted``.
+    InputError : there is no design, and no cell with contents.
+    """
+    edif = directory.edif
+    designs = edif.designs
+    if wanted is not None:
+        sought = wanted.removeprefix("&").lower()
+        designs = tuple(
+            design for design in designs
+            if sought in (design.name.text.lower(), design.name.identifier.removeprefix("&").lower())
+        )  # fmt: skip
+        if not designs:
+            known = ", ".join(dict.fromkeys(design.name.text for design in edif.designs)) or "none"
+            raise UsageError(f"no design is called {wanted!r}; designs in the file: {known}", file=edif.places.file)
+    elif len(designs) > 1:
+        names = ", ".join(design.name.text for design in designs)
+        told = f"several designs, {names}: the first is taken, --design NAME takes another"
+        notes.add("designs", designs[1].offset, told)
+    for design in designs:
+        found = directory.find(design.cell, design.library, None) or directory.find_anywhere(design.cell)
+        if found is not None:
+            return directory.block(*found, None, design.offset, any_kind=True), design.name.text, "the design statement"
+        notes.add("reference", design.offset, f"the design {design.name.text} is of the cell {design.cell}, not in the file")
+        if wanted is not None:
+            raise edif.places.error(f"the cell {design.cell} of the design {wanted} is not in the file", design.offset)
+    return _top_without_design(directory, notes)
+
+
+def _top_without_design(directory: Directory, notes: Notes) -> tuple[Block, str, str]:
+    """Return the cell with contents that no other places; of several the one that places most."""
+    edif = directory.edif
+    blocks = [
+        directory.block(cell, library, None, cell.offset, any_kind=True)
+        for library in edif.libraries
+        for cell in library.cells
+    ]
+    inside = [block for block in blocks if block.contents is not None]
+    if not inside:
+        raise edif.places.error("there is no design in it, and no cell with contents: nothing is placed or connected", 0)
+    placed = {id(child.cell) for block in inside for _, child in directory.placed(block) if child is not block}
+    tops = [block for block in inside if id(block.cell) not in placed] or inside
+    top = max(tops, key=lambda block: sum(map(len, block.children)))
+    if len(tops) > 1:
+        names = ", ".join(block.cell.name.text for block in tops[:5])
+        notes.add("designs", top.cell.offset, f"no design, and no cell places these: {names}; {top.cell.name.text} is taken")
+    return top, top.cell.name.text, "no design statement; the cell that no other places"

@@ -1,0 +1,46 @@
+"""What a reader met and dealt with: one warning for each kind, with the first place and a count."""
+
+from __future__ import annotations
+
+from protlint.findings import Warning
+from protlint.netlist.forms import Places
+
+KINDS = {
+    "encoding": "characters outside ASCII, whose code page no EDIF file states: {}",
+    "percent": "a per cent sign without its partner in a string; it is kept as it stands, as in {}",
+    "identifier": "a name that EDIF does not allow without a rename; it is taken as it stands: {}",
+    "duplicate": "one identifier for two things in one scope; both are kept, references go to the first: {}",
+    "case": "identifiers that differ only in case, which EDIF takes as one; they are kept apart by their case: {}",
+    "reference": "a reference that leads nowhere: {}",
+    "view": "a view that is named and absent; the cell's best other view is taken: {}",
+    "designs": "{}",
+    "width": "things of different width are joined: {}",
+    "block pin": "a block's port on two nets, which are taken as one: {}",
+    "property": "one property with two values; the first counts: {}",
+    "designators": "a part with two unlike designators; the first counts: {}",
+}
+"""Every kind of warning of the reading, and its message; the braces take what the first case was."""
+
+
+class Notes:
+    """Collects warnings while a file is read."""
+
+    def __init__(self, places: Places) -> None:
+        self._places = places
+        self._met: dict[str, tuple[tuple[int, int], str, int]] = {}
+
+    def add(self, kind: str, offset: int, detail: str, *, count: int = 1) -> None:
+        """Note one more case of ``kind`` at ``offset``; the earliest in the file is the one that is told."""
+        self.add_at(kind, self._places.at(offset), detail, count=count)
+
+    def add_at(self, kind: str, place: tuple[int, int], detail: str, *, count: int = 1) -> None:
+        """The same, where the line and column are already known."""
+        first, told, so_far = self._met.get(kind, (place, detail, 0))
+        if place < first:
+            first, told = place, detail
+        self._met[kind] = (first, told, so_far + count)
+
+    def warnings(self) -> tuple[Warning, ...]:
+        """Return one warning a kind, in the order of the file."""
+        told = sorted((place, KINDS[kind].format(detail), count) for kind, (place, detail, count) in self._met.items())
+        return tuple(Warning(message, line, column, count) for (line, column), message, count in told)

@@ -1,0 +1,129 @@
+"""The ports of a cell with their elements numbered through, so that a pin is one integer whatever array it is part of."""
+
+from __future__ import annotations
+
+from bisect import bisect_right
+from collections.abc import Iterable
+
+from protlint.netlist.definitions import Name, Port, Scope
+from protlint.netlist.forms import Places
+
+ELEMENTS_LIMIT = 2_000_000
+"""Most elements of arrays that one file may name, however few characters that takes."""
+
+
+def element_of(dimensions: tuple[int, ...], member: tuple[int, ...]) -> int | None:
+    """Return the position of an array's element, the last index running fastest; None where there is no such element."""
+    position = 0
+    if len(dimensions) != len(member):
+        return None
+    for size, index in zip(dimensions, member, strict=True):
+        if not 0 <= index < size:
+            return None
+        position = position * size + index
+    return position
+
+
+class Slot:
+    """A port with the bits it stands for: one for a plain port, as many as elements for an array or a bundle."""
+
+    __slots__ = ("dimensions", "inner", "port", "start", "stop", "text")
+
+    def __init__(self, text: str, start: int, dimensions: tuple[int, ...], port: Port | None) -> None:
+        self.text = text
+        self.start = start
+        self.stop = start
+        self.dimensions = dimensions
+        self.port = port
+        self.inner: Scope[Slot] = Scope()
+
+    def bits(self, member: tuple[int, ...]) -> range | None:
+        """Return the bits of the whole port, or of one element; None where there is no such element."""
+        if not member:
+            return range(self.start, self.stop)
+        position = element_of(self.dimensions, member)
+        return None if position is None else range(self.start + position, self.start + position + 1)
+
+
+class Ports:
+    """The ports of a cell, their elements numbered through as bits. Views of one cell share ports by name."""
+
+    def __init__(self, ports: Iterable[Port] = (), *, start: int = 0) -> None:
+        self.start = self.width = start
+        self._scope: Scope[Slot] = Scope()
+        self._slots: list[Slot] = []
+        self._starts: list[int] = []
+        for port in ports:
+            if self._scope.find(port.name.identifier) is None:
+                self._add(port, self._scope)
+
+    def _add(self, port: Port, scope: Scope[Slot]) -> None:
+        slot = Slot(port.name.text, self.width, port.name.dimensions, port)
+        scope.add(port.name.identifier, slot)
+        for inner in port.ports:
+            self._add(inner, slot.inner)
+        if not port.ports:
+            self._fill(slot, port.name.width)
+        slot.stop = self.width
+
+    def _fill(self, slot: Slot, width: int) -> None:
+        self._slots.append(slot)
+        self._starts.append(slot.start)
+        self.width += width
+        slot.stop = self.width
+
+    def add(self, name: Name) -> Slot:
+        """Add a port that no interface declares, unless it is there; return it."""
+        slot = self._scope.find(name.identifier)
+        if slot is None:
+            slot = Slot(name.text, self.width, name.dimensions, None)
+            self._scope.add(name.identifier, slot)
+            self._fill(slot, name.width)
+        return slot
+
+    def undeclared(self, port: str, member: tuple[int, ...]) -> range:
+        """Add the port, or the one element, that a reference means and no interface declares; return its bit."""
+        name = port + "".join(f"[{index}]" for index in member)
+        slot = self.add(Name(name, name.removeprefix("&")))
+        return range(slot.start, slot.stop)
+
+    def find(self, port: str, member: tuple[int, ...] = (), bundle: str | None = None) -> range | None:
+        """Return the bits that a reference means, None where it leads nowhere."""
+        scope = self._scope
+        if bundle is not None:
+            holder = scope.find(bundle)
+            if holder is None:
+                return None
+            scope = holder.inner
+        slot = scope.find(port)
+        return None if slot is None else slot.bits(member)
+
+    def slot(self, bit: int) -> tuple[Slot, int]:
+        """Return the port that a bit belongs to and its element."""
+        slot = self._slots[bisect_right(self._starts, bit) - 1]
+        return slot, bit - slot.start
+
+    def text(self, bit: int) -> str:
+        """Return what a bit is called."""
+        slot, element = self.slot(bit)
+        return f"{slot.text}[{element}]" if slot.dimensions else slot.text
+
+
+class Budget:
+    """How many elements of arrays a file may still name."""
+
+    def __init__(self, places: Places) -> None:
+        self.places = places
+        self.left = ELEMENTS_LIMIT
+
+    def spend(self, elements: int, offset: int) -> None:
+        """Take ``elements`` off what is left.
+
+        Raises
+        ------
+        InputError : there is not so much left.
+        """
+        self.left -= elements
+        if self.left < 0:
+            message = f"the arrays of this file name more than {ELEMENTS_LIMIT} elements; protlint reads no more"
+            raise self.places.error(message, offset)

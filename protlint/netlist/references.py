@@ -1,0 +1,119 @@
+"""References and other small forms of EDIF: what stands inside the definitions and defines nothing."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from itertools import chain
+
+from protlint.netlist.definitions import Joined, PortRef, ViewRef
+from protlint.netlist.forms import Form
+from protlint.netlist.properties import integer, text_of
+
+
+def items(form: Form, *heads: str) -> Iterator[Form]:
+    """Yield the lists inside a form that begin with one of ``heads``."""
+    for item in form:
+        if type(item) is Form and item and item[0] in heads:
+            yield item
+
+
+def first(form: Form, head: str) -> Form | None:
+    """Return the first list inside a form that begins with ``head``."""
+    return next(items(form, head), None)
+
+
+def keyword(form: Form, head: str, default: str) -> str:
+    """Return the one word of the list inside a form that begins with ``head``, in lower case."""
+    item = first(form, head)
+    return str(item[1]).lower() if item is not None and len(item) > 1 else default
+
+
+def designators(form: Form) -> tuple[str, ...]:
+    """Return the designators a form gives, without repetitions: of two, a section and its package."""
+    texts = (text_of(item) for item in items(form, "designator"))
+    return tuple(dict.fromkeys(text.strip() for text in texts if text is not None))
+
+
+def word(form: Form, position: int = 1) -> str:
+    """Return the identifier at a position of a reference.
+
+    Raises
+    ------
+    InputError : there is none.
+    """
+    item = form[position] if len(form) > position else None
+    if type(item) is Form and item.head == "name" and len(item) > 1:
+        item = item[1]
+    if not isinstance(item, str):
+        raise form.error(f"({form.head} ...) names nothing")
+    return item
+
+
+def member(form: Form, position: int = 1) -> tuple[str, tuple[int, ...]]:
+    """Return what a reference names: an identifier, and the element it picks where it is a ``member``, else ().
+
+    Raises
+    ------
+    InputError : it names nothing, or the element is no list of integers.
+    """
+    item = form[position] if len(form) > position else None
+    if type(item) is not Form or item.head != "member":
+        return word(form, position), ()
+    indices = tuple(index for index in map(integer, item[2:]) if index is not None)
+    if not indices or len(indices) != len(item) - 2:
+        raise item.error("(member ...) needs an identifier and the number of an element")
+    return word(item), indices
+
+
+def port_ref(form: Form) -> PortRef:
+    """Return a ``portRef``; the instance may stand behind the bundle that holds the port.
+
+    Raises
+    ------
+    InputError : it names nothing, or reaches into another level of the hierarchy.
+    """
+    port, element = member(form)
+    bundle: str | None = None
+    instance: str | None = None
+    instance_element: tuple[int, ...] = ()
+    inner = _inner(form)
+    if inner is not None and inner.head == "portref":
+        bundle = word(inner)
+        inner = _inner(inner)
+    if inner is not None and inner.head == "instanceref":
+        instance, instance_element = member(inner)
+        inner = _inner(inner)
+    elif inner is not None and inner.head == "viewref":
+        inner = None
+    if inner is not None:
+        raise inner.error(f"({inner.head} ...) inside another reference reaches into another level, which is not read")
+    return PortRef(port, element, bundle, instance, instance_element, form.offset)
+
+
+def joined(form: Form) -> Joined:
+    """Return what a ``joined`` form joins."""
+    ends = (
+        (port_ref(item),) if item[0] == "portref" else tuple(map(port_ref, items(item, "portref")))
+        for item in items(form, "portref", "portlist")
+    )
+    return tuple(filter(None, ends))
+
+
+def view_refs(form: Form) -> tuple[ViewRef, ...]:
+    """Return the views an instance offers, the first that leads somewhere being meant."""
+    refs = []
+    for item in chain(items(form, "viewref", "cellref"), *(items(each, "viewref") for each in items(form, "viewlist"))):
+        cell = item if item[0] == "cellref" else first(item, "cellref")
+        library = None if cell is None else first(cell, "libraryref")
+        refs.append(
+            ViewRef(
+                view=None if item is cell else word(item),
+                cell=None if cell is None else word(cell),
+                library=None if library is None else word(library),
+            )
+        )
+    return tuple(refs)
+
+
+def _inner(form: Form) -> Form | None:
+    return next((item for item in form[2:] if type(item) is Form), None)
