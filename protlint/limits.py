@@ -28,6 +28,14 @@ PIN_ROLES = (
 """What a pin can be, in ``[pins]`` and in part data; ``base.2`` is the base of the second device in one package."""
 
 
+UNSTATED = {
+    "ambient_degC": "the ambient is -10 to 85 degC, usually 27 degC",
+    "resistor_tolerance": "a resistor that states no tolerance has 1 %",
+    "vbe_spread_V": "a bipolar transistor's V_BE lies within 40 mV of its usual value",
+}
+"""What is assumed where a limits file leaves a field of :class:`Limits` out."""
+
+
 @dataclass(frozen=True, slots=True)
 class Range:
     """A quantity with its stated spread; ``low <= usual <= high``."""
@@ -111,7 +119,11 @@ class Limits:
     pins: Mapping[str, Mapping[str, str]] = field(default_factory=dict)
     """Pin roles: cell or part number to pin name or number to role."""
     assumed: tuple[str, ...] = ()
-    """Which of ``ambient``, ``resistor_tolerance``, ``vbe_spread`` stand at their defaults, in plain words."""
+    """Which fields stand at their defaults, in the words of :data:`UNSTATED`."""
+
+    def assumes(self, name: str) -> bool:
+        """Tell whether a field named in :data:`UNSTATED` was left to its default."""
+        return UNSTATED[name] in self.assumed
 
 
 def load_limits(path: str | Path | None, *, known_checks: Mapping[str, Collection[str]] | None = None) -> Limits:
@@ -207,12 +219,7 @@ def _spans(table: Table | None) -> Iterable[tuple[str, Span]]:
 
 
 def _assumed(stated: Mapping[str, object]) -> tuple[str, ...]:
-    sentences = {
-        "ambient_degC": "the ambient is -10 to 85 degC, usually 27 degC",
-        "resistor_tolerance": "a resistor that states no tolerance has 1 %",
-        "vbe_spread_V": "a bipolar transistor's V_BE lies within 40 mV of its usual value",
-    }
-    return tuple(sentence for key, sentence in sentences.items() if key not in stated)
+    return tuple(sentence for key, sentence in UNSTATED.items() if key not in stated)
 
 
 def _board(table: Table | None) -> dict[str, Any]:

@@ -11,8 +11,8 @@ from protlint.findings import Finding, Level, NotChecked, WorkingLine
 from protlint.limits import UNSTATED, CheckSetting, LimiterLimits, Limits
 from protlint.partdata.book import Figure
 from protlint.solve.bench import Bench
-from protlint.solve.boundary import toml_key
 from protlint.solve.solution import Solution
+from protlint.toml_text import toml_key
 from protlint.topology.limiter import Limiter
 
 ALL_ASSUMPTIONS = ("drive", "short", "supply", "model", "tolerance", "circuit", "ambient_degC", "vbe_spread_V")

@@ -148,7 +148,7 @@ def _judged(case: Case, check: str, load: Load) -> Iterator[Answer]:
     yield case.finding(
         check,
         f"{load.part.id} takes {format_quantity(load.power_W, 'W')} {load.condition} at {ambient}, "
-        f"{format_quantity(load.ratio * 100.0, '%')} of the {format_quantity(load.allowed_W, 'W')} it may take there",
+        f"{format_quantity(load.ratio, '%')} of the {format_quantity(load.allowed_W, 'W')} it may take there",
         parts=(load.part.id,),
         working=(
             WorkingLine("current", f"{load.condition}, every tolerance set for the most", load.current_A, "A"),

@@ -192,7 +192,7 @@ def _field_at(shown: str, position: int, dimension: str, *, after_value: bool) -
         return _Field("not fitted", found[0]), found.end()
     for pattern in _value_patterns(dimension):
         found = pattern.match(shown, position)
-        if found:
+        if found and not _is_other_unit(found, dimension):
             return _value(found, dimension), found.end()
     if _SEPARATORS.match(shown, position):
         return None, position
@@ -202,7 +202,7 @@ def _field_at(shown: str, position: int, dimension: str, *, after_value: bool) -
         return _Field("letter" if lone else "word", word[0]), word.end()
     other = _OTHER.match(shown, position)
     assert other is not None  # every other character is a separator
-    return _Field("other" if re.search(r"\w", other[0]) else "mark", other[0]), other.end()
+    return _Field("other" if re.search(r"[\w?]", other[0]) else "mark", other[0]), other.end()
 
 
 def _side(kind: str, found: re.Match[str]) -> float | None:
@@ -232,6 +232,13 @@ def _value_patterns(dimension: str) -> tuple[re.Pattern[str], ...]:
         re.compile(rf"(?P<number>{_NUM})\s*(?P<power>(?i:{spelled})){_END}"),
         re.compile(rf"(?P<number>{_NUM}(?:[eE][+-][0-9]{{1,2}})?){_END}"),
     )
+
+
+def _is_other_unit(found: re.Match[str], dimension: str) -> bool:
+    """Whether a tolerance letter is rather the farad or the henry of another kind of part (``10uH``, ``4m7F``)."""
+    named = found.groupdict()
+    small = dimension != "resistance" or named.get("power") in ("u", "μ", "m", "м")
+    return small and named.get("letter") in {"capacitance": ("H",), "inductance": ("F",)}.get(dimension, ("F", "H"))
 
 
 def _value(found: re.Match[str], dimension: str) -> _Field:
@@ -284,15 +291,13 @@ def _why_not(shown: str, fields: list[_Field], values: list[_Field], dimension: 
 
 
 def _no_value(piece: str, dimension: str) -> str:
-    for other in _POWERS:
-        if other != dimension and any(
-            pattern.fullmatch(piece) for pattern in _value_patterns(other)[:-1]
-        ):  # a bare number tells nothing
-            if dimension in ("capacitance", "inductance") and other == "resistance" and re.search(r"[0-9]\s*[MМ]", piece):
-                break
-            return f"a {other}, no {dimension}"
+    """Say why a piece of text is no value, naming what it is where that is plain; a bare number tells nothing."""
     if dimension in ("capacitance", "inductance") and re.search(r"[0-9]\s*[MМ]", piece):
         return "upper-case M may be meant for milli or for micro"
+    for other in _POWERS:
+        patterns = _value_patterns(other)[:-1] if other != dimension else ()
+        if any((found := pattern.fullmatch(piece)) and not _is_other_unit(found, other) for pattern in patterns):
+            return f"{'an' if other[0] in 'aeiou' else 'a'} {other}, no {dimension}"
     if dimension == "resistance" and re.fullmatch(r"[0-9]+E[0-9]*", piece):
         return "E may stand for ohm or for a power of ten"
     return f"no {dimension} can be read from it"

@@ -7,10 +7,11 @@ from dataclasses import dataclass, field
 
 from protlint.board.graph import Board
 from protlint.limits import LimiterLimits, Limits
-from protlint.solve.boundary import Missing, Notes, Place, drive_of, hold_supplies, short_nodes, toml_key
+from protlint.solve.boundary import Missing, Notes, Place, drive_of, hold_supplies, short_nodes
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.parts import devices_of
 from protlint.solve.surroundings import MOST_DEVICES, Surroundings, survey_surroundings
+from protlint.toml_text import toml_key
 from protlint.topology.limiter import Limiter
 
 
@@ -67,6 +68,7 @@ def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: Limite
         output_reach_V=(min(one.low for one in held.values()), max(one.high for one in held.values())),
         ground_leg=_has_ground_leg(place),
         regulates=_regulates(place),
+        output_capacitance_F=_output_capacitance_F(place),
         assumed=tuple(sentence for _, sentence in notes.assumed),
     )
     notes.words[circuit.output] = "the output"
@@ -116,6 +118,17 @@ def _has_ground_leg(place: Place) -> bool:
     if place.limiter.nets["far"] == place.around.output:
         return any(place.usual_V(net) is not None for net in nets)
     return place.around.output in nets
+
+
+def _output_capacitance_F(place: Place) -> float:
+    """Return the board's capacitors from the output to supplies, together, as far as their values can be read."""
+    board, total_F = place.board, 0.0
+    for index, _ in board.elements_at[place.around.output]:
+        element = board.elements[index]
+        others = [net for net in element.terminals.values() if net != place.around.output]
+        if element.kind == "capacitor" and any(place.usual_V(net) is not None for net in others):
+            total_F += element.value or 0.0
+    return total_F
 
 
 def _regulates(place: Place) -> bool:

@@ -11,6 +11,7 @@ from protlint.board.graph import Board
 from protlint.limits import DriveLimits, LimiterLimits, Limits, Range
 from protlint.solve.circuit import Drive
 from protlint.solve.surroundings import Surroundings
+from protlint.toml_text import toml_key
 from protlint.topology.limiter import Limiter
 
 
@@ -56,13 +57,6 @@ class Place:
         """Tell whether the load current flows out of the output (else into it)."""
         follower = self.limiter.nets["far"] == self.around.output
         return follower == (self.limiter.polarity == "n")
-
-
-def toml_key(name: str) -> str:
-    """Return a name as a TOML key: bare where that is allowed, else quoted."""
-    if name and name.isascii() and name.replace("_", "").replace("-", "").isalnum():
-        return name
-    return '"' + name.replace("\\", "\\\\").replace('"', '\\"') + '"'
 
 
 def hold_supplies(place: Place, notes: Notes) -> dict[str, Range]:

@@ -333,7 +333,8 @@ def limited_source(inner: Array, p: Source) -> Evaluation:
 
 def critical_voltage(V_N: Array, I_S: Array) -> Array:
     """Return the voltage at which a junction's characteristic bends most: V_N ln(V_N / (sqrt(2) I_S)), V_N = N V_T."""
-    return V_N * np.log(V_N / (np.sqrt(2.0) * I_S))
+    voltage: Array = V_N * np.log(V_N / (np.sqrt(2.0) * I_S))
+    return voltage
 
 
 def junction_step(old: Array, new: Array, per_V: Array, V_crit: Array) -> Array:

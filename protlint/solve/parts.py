@@ -60,6 +60,7 @@ def devices_of(place: Place, index: int, *, nodes: Mapping[str, str], notes: Not
                 hfe=derived.hfe if bipolar else None,
                 vbe_spread_V=_spread_V(place, derived, bipolar=bipolar),
                 rise_K=rise_K,
+                part_number=part.part_number or "",
                 assumed=derived.assumed,
             )
         )
