@@ -52,7 +52,7 @@ def review(
     from protlint.report import faces
 
     faces.check_targets(save)
-    from protlint.report.gate import held_back
+    from protlint.report.digest import held_back
     from protlint.report.text import rendered_text
 
     files = {

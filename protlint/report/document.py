@@ -91,7 +91,7 @@ def _limiter(item: ReviewedLimiter, review: Review, by_id: Mapping[str, BoardPar
         "short": solution.short,
         "shorts": [{"net": one.node, "holds_A": _numbers(one.holds_A)} for one in solution.shorts],
         "not_solved": solution.not_solved,
-        "assumed": list(dict.fromkeys(sentence for _, sentence in item.bench.assumed)),
+        "assumed": list(dict.fromkeys(item.assumed)),
         "asked": _asked(item, review),
         "not_checked": [{"check": row.check, "needs": row.needs} for row in item.not_checked],
     }

@@ -9,6 +9,7 @@ from __future__ import annotations
 import re
 from pathlib import Path
 
+from protlint.report.digest import place_of, waiver_of
 from protlint.report.markdown import working_lines
 from protlint.report.safe import markdown, throughout
 from protlint.report.sarif import artifact_uri
@@ -65,11 +66,9 @@ def _issue(finding: Document, board: Document, caution: str) -> str:
     safe: Document = throughout(finding, markdown)
     netlist = throughout(board["netlist"], markdown)
     whom = safe["limiter"] or "the board"
-    where = ":".join(str(safe[key]) for key in ("file", "line", "column") if safe[key] is not None)
     lines = [mark(board["netlist"]["file"]), f"# {safe['check']}: {whom}", "", safe["message"], ""]
     if safe["waived"] is not None:
-        by = f" ({safe['waived_by']})" if safe["waived_by"] else ""
-        lines += [f"**Waived:** {safe['waived']}{by}", ""]
+        lines += [f"**Waived:** {waiver_of(safe)}", ""]
     lines += [f"**Remedy:** {safe['remedy']}", ""] if safe["remedy"] else []
     lines += ["Rests on an assumption.", ""] if safe["assumption"] else []
     if safe["working"]:
@@ -79,7 +78,7 @@ def _issue(finding: Document, board: Document, caution: str) -> str:
         ("Parts", ", ".join(safe["parts"])),
         ("Nets", ", ".join(safe["nets"])),
         ("Design", netlist["design"]),
-        ("Place", where),
+        ("Place", place_of(safe)),
         ("Fingerprint", safe["fingerprint"]),
     )
     lines += [f"- {name}: {text}" for name, text in facts if text]

@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Collection, Iterable, Sequence
 from xml.etree import ElementTree
 
-from protlint.report.figures import figure
+from protlint.report.digest import place_of, waiver_of, working_line
 from protlint.report.safe import throughout, xml
 from protlint.report.shape import CAUTION, Document, boards_of
 
@@ -96,14 +96,12 @@ def _lines(finding: Document) -> list[str]:
     lines = [f"{level}: {finding['message']}"]
     for line in finding["working"]:
         source = f" [{line['source']}]" if line["source"] else ""
-        lines.append(f"  {line['quantity']} = {line['formula']} = {figure(line['value'], line['unit'])}{source}")
+        lines.append(f"  {working_line(line)}{source}")
     lines += [f"remedy: {finding['remedy']}"] if finding["remedy"] else []
     lines += ["rests on an assumption"] if finding["assumption"] else []
     if finding["waived"] is not None:
-        by = f" ({finding['waived_by']})" if finding["waived_by"] else ""
-        lines.append(f"waived: {finding['waived']}{by}")
-    where = ":".join(str(finding[key]) for key in ("file", "line", "column") if finding[key] is not None)
-    return [*lines, f"{where} {finding['fingerprint']}".strip()]
+        lines.append(f"waived: {waiver_of(finding)}")
+    return [*lines, f"{place_of(finding)} {finding['fingerprint']}".strip()]
 
 
 def _passed(suite: ElementTree.Element, limiter: Document, place: str, told: Collection[str]) -> None:
@@ -120,8 +118,7 @@ def _unread(root: ElementTree.Element, errors: Sequence[Document]) -> None:
     suite = ElementTree.SubElement(root, "testsuite", name="files that could not be reviewed")
     for error in errors:
         case = ElementTree.SubElement(suite, "testcase", name=error["file"] or "?", classname="protlint")
-        place = ":".join(str(error[key]) for key in ("file", "line", "column") if error[key] is not None)
-        ElementTree.SubElement(case, "error", type="unread", message=f"{place}: {error['message']}")
+        ElementTree.SubElement(case, "error", type="unread", message=f"{place_of(error)}: {error['message']}")
     _count(suite)
 
 

@@ -5,10 +5,19 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from protlint.findings import LEVELS
-from protlint.report.figures import UNKNOWN, ambient, counted, figure, triple, unit_for
+from protlint.report.digest import (
+    assumptions,
+    place_of,
+    sections,
+    summary_line,
+    times,
+    unchecked,
+    waiver_of,
+    working_line,
+)
+from protlint.report.figures import UNKNOWN, ambient, figure, triple, unit_for
 from protlint.report.safe import markdown, throughout
 from protlint.report.shape import Document, boards_of
-from protlint.report.text import sections, summary_line
 
 MOST_CHARACTERS = 60_000
 """Code hosts cut or refuse comments of more than 65,536 characters."""
@@ -37,22 +46,16 @@ def finding_lines(finding: Document, *, working: bool = True) -> list[str]:
     whom = f"**{finding['limiter']}**" if finding["limiter"] else "**the board**"
     lines = [f"- {whom}{parts}: {finding['check']}. {finding['message']}"]
     if finding["waived"] is not None:
-        by = f" ({finding['waived_by']})" if finding["waived_by"] else ""
-        lines.append(f"  Waived: {finding['waived']}{by}")
+        lines.append(f"  Waived: {waiver_of(finding)}")
     lines += [f"  Remedy: {finding['remedy']}"] if finding["remedy"] else []
     lines += ["  Rests on an assumption."] if finding["assumption"] else []
-    where = ":".join(str(finding[key]) for key in ("file", "line", "column") if finding[key] is not None)
-    lines = [*(f"{line}  " for line in lines), f"  {where} {finding['fingerprint']}"]
+    lines = [*(f"{line}  " for line in lines), f"  {place_of(finding)} {finding['fingerprint']}"]
     return lines + ([f"  - {line}" for line in working_lines(finding["working"])] if working else [])
 
 
 def working_lines(working: Sequence[Document]) -> list[str]:
     """Return the lines of a calculation."""
-    return [
-        f"{line['quantity']} = {line['formula']} = {figure(line['value'], line['unit'])}"
-        + (f" ({line['source']})" if line["source"] else "")
-        for line in working
-    ]
+    return [working_line(line) + (f" ({line['source']})" if line["source"] else "") for line in working]
 
 
 def _board(board: Document, working: bool, most: int) -> list[str]:
@@ -64,7 +67,7 @@ def _board(board: Document, working: bool, most: int) -> list[str]:
     waived = [one for one in board["findings"] if one["waived"] is not None]
     lines += _findings("Waived", waived, False, most, folded=True)
     lines += _folded("Not checked", [f"- {text}" for text in _not_checked(board)])
-    lines += _folded("Assumed", [f"- {text}" for text in _assumed(board)])
+    lines += _folded("Assumed", [f"- {text}" for text in assumptions(board)])
     lines += _folded("Remarks", [f"- {text}" for text in _remarks(board)])
     return lines
 
@@ -112,38 +115,22 @@ def _folded(title: str, lines: Sequence[str]) -> list[str]:
 
 
 def _not_checked(board: Document) -> list[str]:
-    texts: dict[str, list[str]] = {}
+    texts = []
     for limiter in board["limiters"]:
-        for row in limiter["not_checked"]:
-            texts.setdefault(f"{limiter['id']}: needs {row['needs']}", []).append(row["check"])
-        if limiter["not_solved"]:
-            texts[f"{limiter['id']}: could not be solved: {limiter['not_solved']}"] = ["everything"]
-    return [f"{head} ({', '.join(dict.fromkeys(checks))})" for head, checks in texts.items()]
-
-
-def _assumed(board: Document) -> list[str]:
-    touched: dict[str, list[str]] = {text: [] for text in board["assumed"]}
-    for limiter in board["limiters"]:
-        for text in limiter["assumed"]:
-            touched.setdefault(text, []).append(limiter["id"])
-    return [text + (f" ({', '.join(names)})" if names else "") for text, names in touched.items()]
+        texts += [f"{limiter['id']}: {checks}: needs {need}" for need, checks in unchecked(limiter["not_checked"])]
+        texts += [f"{limiter['id']}: could not be solved: {limiter['not_solved']}"] if limiter["not_solved"] else []
+    return texts
 
 
 def _remarks(board: Document) -> list[str]:
-    read = [
-        f"{warning['message']} (line {warning['line']}, {counted(warning['count'], 'time')})"
-        for warning in board["warnings"]
-    ]
+    read = []
+    for warning in board["warnings"]:
+        place = place_of({**warning, "file": board["netlist"]["file"]})
+        read.append(f"{place}: {warning['message']}{times(warning['count'])}")
     return [*read, *board["remarks"]]
 
 
 def _unread(errors: Sequence[Document]) -> list[str]:
     if not errors:
         return []
-    places = [":".join(str(error[key]) for key in ("file", "line", "column") if error[key] is not None) for error in errors]
-    return [
-        "## Not reviewed",
-        "",
-        *(f"- {place}: {error['message']}" for place, error in zip(places, errors, strict=True)),
-        "",
-    ]
+    return ["## Not reviewed", "", *(f"- {place_of(error)}: {error['message']}" for error in errors), ""]

@@ -13,6 +13,7 @@ from urllib.parse import quote
 
 from protlint import __version__
 from protlint.checks.catalogue import CheckRow, load_catalogue
+from protlint.report.digest import place_of, times, waiver_of
 from protlint.report.figures import figure
 from protlint.report.safe import json_text, terminal, throughout
 from protlint.report.shape import CAUTION, Document, boards_of
@@ -145,16 +146,15 @@ def _suppressions(finding: Document) -> list[Document]:
     """Return the waiver as a suppression; every result has the array, empty where it is not suppressed (3.27.23)."""
     if finding["waived"] is None:
         return []
-    by = f" ({finding['waived_by']})" if finding["waived_by"] else ""
-    return [{"kind": "external", "status": "accepted", "justification": finding["waived"] + by}]
+    return [{"kind": "external", "status": "accepted", "justification": waiver_of(finding)}]
 
 
 def _notifications(board: Document, artifact: Document, index_of: Mapping[str, int]) -> list[Document]:
     notifications = []
     for warning in board["warnings"]:
-        times = f" ({warning['count']} times)" if warning["count"] > 1 else ""
+        said = message(warning["message"] + times(warning["count"]))
         location = {"physicalLocation": _physical(artifact, warning)}
-        notifications.append({"level": "warning", "message": message(warning["message"] + times), "locations": [location]})
+        notifications.append({"level": "warning", "message": said, "locations": [location]})
     for limiter in board["limiters"]:
         for row in limiter["not_checked"]:
             text = f"{limiter['id']}: {row['check']} was not checked; it needs {row['needs']}."
@@ -171,5 +171,4 @@ def _notifications(board: Document, artifact: Document, index_of: Mapping[str, i
 
 
 def _unread(error: Document) -> Document:
-    place = ":".join(str(error[key]) for key in ("file", "line", "column") if error[key] is not None)
-    return {"level": "error", "message": message(f"{place}: {error['message']}")}
+    return {"level": "error", "message": message(f"{place_of(error)}: {error['message']}")}

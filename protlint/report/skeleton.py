@@ -108,9 +108,9 @@ def _drives(review: Review) -> Iterable[list[str]]:
     for name, drive in review.limits.drives.items():
         yield [f"[drive.{toml_key(name)}]", *_drive_rows(drive)]
     assumed = {
-        item.bench.circuit.drive.node: item.limiter.id
+        item.circuit.drive.node: item.limiter.id
         for item in _board_order(review)
-        if item.bench.circuit is not None and item.bench.circuit.drive.assumed
+        if item.circuit is not None and item.circuit.drive.assumed
     }
     for name, limiter in assumed.items():
         if name not in review.limits.drives:

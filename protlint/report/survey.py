@@ -108,17 +108,17 @@ def _type_of(part: BoardPart) -> str:
 
 
 def _circuit(item: ReviewedLimiter, board: Board) -> Document:
-    bench = item.bench
+    bench, circuit = item.bench, item.circuit
     return {
         "also_matched": list(item.limiter.also_matched),
         "rule_nets": [[name, board.nets[index].name] for name, index in item.limiter.bound.items()],
         "held": [[net, held] for net, held in bench.nets.items()],
         "missing": [missing.needs for missing in bench.missing],
-        "drive_ends": _drive(bench.circuit),
-        "shorts": list(bench.circuit.shorts) if bench.circuit else [],
+        "drive_ends": _drive(circuit),
+        "shorts": list(circuit.shorts) if circuit else [],
         "devices": [
             {"name": device.name, "kind": device.kind, "nodes": list(device.nodes), "assumed": list(device.assumed)}
-            for device in (bench.circuit.devices if bench.circuit else ())
+            for device in (circuit.devices if circuit else ())
         ],
     }
 

@@ -4,14 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
 
+from protlint.report.digest import MOST_NAMES, listed, place_of, times
 from protlint.report.figures import counted, figure
 from protlint.report.layout import painted, table, wrapped
 from protlint.report.safe import terminal, throughout
 from protlint.report.shape import Document
 from protlint.report.text import POLARITY_WORDS, ROLE_WORDS
-
-MOST_LISTED = 12
-"""Names listed before the rest is counted."""
 
 
 def rendered_survey(facts: Document, *, colour: bool = False) -> str:
@@ -39,13 +37,6 @@ def rendered_survey(facts: Document, *, colour: bool = False) -> str:
     return "\n".join([*lines, "", *wrapped(safe["caution"])]) + "\n"
 
 
-def listed(names: Sequence[str], most: int = MOST_LISTED) -> str:
-    """Return names joined by commas, the rest of a long list counted."""
-    if len(names) <= most:
-        return ", ".join(names)
-    return f"{', '.join(names[:most])} and {len(names) - most} more"
-
-
 def _items(texts: Iterable[str]) -> list[str]:
     return [line for text in texts for line in wrapped(text, indent=4, first="  - ")]
 
@@ -53,9 +44,8 @@ def _items(texts: Iterable[str]) -> list[str]:
 def _reading(facts: Document) -> list[str]:
     lines = [line for name, sentence in facts["reading"] for line in wrapped(f"{name}: {sentence}", indent=4, first="  ")]
     for warning in facts["warnings"]:
-        place = ":".join(str(item) for item in (warning["line"], warning["column"]) if item is not None)
-        times = f" ({warning['count']} times)" if warning["count"] > 1 else ""
-        lines += wrapped(f"{place + ': ' if place else ''}{warning['message']}{times}", indent=4, first="  - ")
+        place = place_of({**warning, "file": facts["netlist"]["file"]})
+        lines += wrapped(f"{place}: {warning['message']}{times(warning['count'])}", indent=4, first="  - ")
     return lines
 
 
@@ -84,13 +74,13 @@ def _sources(row: Document) -> str:
 
 
 def _supplies(supplies: Sequence[Document]) -> list[str]:
-    rows = [[supply["net"], _range(supply), f"by {supply['known_from']}"] for supply in supplies[:MOST_LISTED]]
+    rows = [[supply["net"], _range(supply), f"by {supply['known_from']}"] for supply in supplies[:MOST_NAMES]]
     if any(len(row[0]) > 30 for row in rows):
         lines = [line for row in rows for line in wrapped(": ".join(row), indent=4, first="  ")]
     else:
         lines = table(rows, left=(0, 1, 2))
-    if len(supplies) > MOST_LISTED:
-        lines.append(f"  and {len(supplies) - MOST_LISTED} more")
+    if len(supplies) > MOST_NAMES:
+        lines.append(f"  and {len(supplies) - MOST_NAMES} more")
     return lines
 
 
@@ -110,10 +100,10 @@ def _missing(facts: Document) -> list[str]:
     if values["absent"]:
         texts.append(f"no value: {listed(values['absent'])}")
     texts += [
-        f'value of {row["part"]} not read: "{row["text"]}" ({row["why"]})' for row in values["unreadable"][:MOST_LISTED]
+        f'value of {row["part"]} not read: "{row["text"]}" ({row["why"]})' for row in values["unreadable"][:MOST_NAMES]
     ]
-    if len(values["unreadable"]) > MOST_LISTED:
-        texts.append(f"and {len(values['unreadable']) - MOST_LISTED} more values not read")
+    if len(values["unreadable"]) > MOST_NAMES:
+        texts.append(f"and {len(values['unreadable']) - MOST_NAMES} more values not read")
     for row in unknown["part_data"]:
         texts.append(f"no part data for {row['part_number']} (--parts): {listed(row['parts'])}")
     return _items(texts)

@@ -2,14 +2,24 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from typing import Any
 
 from protlint.findings import LEVELS
+from protlint.report.digest import (
+    assumptions,
+    place_of,
+    sections,
+    summary_line,
+    times,
+    unchecked,
+    waiver_of,
+    working_line,
+)
 from protlint.report.figures import UNKNOWN, ambient, counted, figure, percent, three_digits, triple, unit_for
 from protlint.report.layout import painted, shortened, table, width, wrapped
 from protlint.report.safe import terminal, throughout
-from protlint.report.shape import VERDICTS, Document, boards_of
+from protlint.report.shape import Document, boards_of
 
 INDEX_FROM = 12
 """From this many findings on an index by check stands above them."""
@@ -32,44 +42,6 @@ def rendered_text(report: Document, *, colour: bool = False) -> str:
         lines += _together(safe, colour)
     lines += wrapped(safe["caution"])
     return "\n".join(lines) + "\n"
-
-
-def summary_line(board: Document) -> str:
-    """Return the count of limiters, verdicts and findings in one sentence."""
-    summary = board["summary"]
-    verdicts = [f"{summary[word.replace(' ', '_')]} {word}" for word in VERDICTS if summary[word.replace(" ", "_")]]
-    found = counted(summary["limiters"], "limiter") if summary["limiters"] else "no limiter found"
-    parts = [found + (f" ({', '.join(verdicts)})" if verdicts else "")]
-    parts += [counted(summary[f"{level}s"], level) for level in LEVELS]
-    if summary["waived"]:
-        parts.append(f"{summary['waived']} waived")
-    if summary["not_checked"]:
-        parts.append(f"{summary['not_checked']} not checked")
-    return ", ".join(parts)
-
-
-def sections(board: Document) -> list[tuple[Document | None, str | None, list[Document]]]:
-    """Return (limiter or None, its id, its findings) with the worst first; findings of no limiter stand by their own id."""
-    by_id: dict[str | None, list[Document]] = {}
-    for finding in board["findings"]:
-        by_id.setdefault(finding["limiter"], []).append(finding)
-    known = {limiter["id"] for limiter in board["limiters"]}
-    groups = [(limiter, limiter["id"], by_id.get(limiter["id"], [])) for limiter in board["limiters"]]
-    groups += [(None, name, found) for name, found in by_id.items() if name not in known]
-    ordered = [(limiter, name, sorted(found, key=_finding_rank)) for limiter, name, found in groups]
-    return sorted(ordered, key=_section_rank)
-
-
-def _finding_rank(finding: Document) -> tuple[bool, int]:
-    return finding["waived"] is not None, LEVELS.index(finding["level"])
-
-
-def _section_rank(section: tuple[Document | None, str | None, list[Document]]) -> tuple[int, int]:
-    limiter, _, found = section
-    level = min((LEVELS.index(finding["level"]) for finding in found if finding["waived"] is None), default=len(LEVELS))
-    if limiter is not None:
-        return VERDICTS.index(limiter["verdict"]), level
-    return VERDICTS.index("fails" if level < LEVELS.index("note") else "passes"), level
 
 
 def _board(board: Document, colour: bool) -> list[str]:
@@ -213,10 +185,9 @@ def _finding(finding: Document, colour: bool) -> list[str]:
     if finding["remedy"]:
         lines += wrapped(f"remedy: {finding['remedy']}", indent=indent)
     if finding["waived"] is not None:
-        by = f" ({finding['waived_by']})" if finding["waived_by"] else ""
-        lines += wrapped(f"waived {finding['level']}: {finding['waived']}{by}", indent=indent)
-    where = ":".join(str(finding[key]) for key in ("file", "line", "column") if finding[key] is not None)
-    lines += [painted(line, "quiet", colour=colour) for line in wrapped(f"{where} {finding['fingerprint']}", indent=indent)]
+        lines += wrapped(f"waived {finding['level']}: {waiver_of(finding)}", indent=indent)
+    where = f"{place_of(finding)} {finding['fingerprint']}"
+    lines += [painted(line, "quiet", colour=colour) for line in wrapped(where, indent=indent)]
     return lines
 
 
@@ -225,32 +196,23 @@ def _figure_that_matters(working: Sequence[Document], indent: int) -> list[str]:
     solved = [line for line in working if line["value"] is not None]
     if not solved:
         return []
-    line = solved[-1]
-    return wrapped(f"{line['quantity']} = {line['formula']} = {figure(line['value'], line['unit'])}", indent=indent)
+    return wrapped(working_line(solved[-1]), indent=indent)
 
 
-def _not_checked(rows: Iterable[Document], colour: bool) -> list[str]:
-    by_need: dict[str, list[str]] = {}
-    for row in rows:
-        by_need.setdefault(row["needs"], []).append(row["check"])
-    lines = []
-    for need, checks in by_need.items():
-        lines += wrapped(f"{', '.join(dict.fromkeys(checks))}: needs {need}", indent=10, first="    - ")
-    return ["  " + painted("not checked", "warning", colour=colour), *lines]
+def _not_checked(rows: Sequence[Document], colour: bool) -> list[str]:
+    lines = ["  " + painted("not checked", "warning", colour=colour)]
+    for need, checks in unchecked(rows):
+        lines += wrapped(f"{checks}: needs {need}", indent=6, first="    - ")
+    return lines
 
 
 def _assumed(board: Document, colour: bool) -> list[str]:
-    """Say every assumption once, with the limiters it touches."""
-    touched: dict[str, list[str]] = {text: [] for text in board["assumed"]}
-    for limiter in board["limiters"]:
-        for text in limiter["assumed"]:
-            touched.setdefault(text, []).append(limiter["id"])
-    if not touched:
+    texts = assumptions(board)
+    if not texts:
         return []
     lines = ["", painted("Assumed", "heading", colour=colour)]
-    for text, names in touched.items():
-        whom = f" ({', '.join(names)})" if names else ""
-        lines += wrapped(text + whom, indent=4, first="  - ")
+    for text in texts:
+        lines += wrapped(text, indent=4, first="  - ")
     return lines
 
 
@@ -258,9 +220,8 @@ def _reading(board: Document, colour: bool) -> list[str]:
     """Say what was met while reading, and what the waivers file is owed."""
     lines: list[str] = []
     for warning in board["warnings"]:
-        place = ":".join(str(item) for item in (warning["line"], warning["column"]) if item is not None)
-        times = f" ({warning['count']} times)" if warning["count"] > 1 else ""
-        lines += wrapped(f"{place + ': ' if place else ''}{warning['message']}{times}", indent=4, first="  - ")
+        place = place_of({**warning, "file": board["netlist"]["file"]})
+        lines += wrapped(f"{place}: {warning['message']}{times(warning['count'])}", indent=4, first="  - ")
     for remark in board["remarks"]:
         lines += wrapped(remark, indent=4, first="  - ")
     return ["", painted("Remarks", "heading", colour=colour), *lines] if lines else []
@@ -271,8 +232,7 @@ def _together(report: Document, colour: bool) -> list[str]:
     title = f"{counted(summary['boards'], 'board')} together: {summary_line(report)}"
     lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
     for error in report["unread"]:
-        place = ":".join(str(error[key]) for key in ("file", "line", "column") if error[key] is not None)
-        lines += wrapped(f"not reviewed: {place}: {error['message']}", indent=4, first="  - ")
+        lines += wrapped(f"not reviewed: {place_of(error)}: {error['message']}", indent=4, first="  - ")
     for remark in report["remarks"]:
         lines += wrapped(remark, indent=4, first="  - ")
     return [*lines, ""]

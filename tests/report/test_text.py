@@ -7,10 +7,11 @@ from dataclasses import replace
 
 import pytest
 
+from protlint.report.digest import sections
 from protlint.report.document import document
 from protlint.report.layout import COLUMNS, width
 from protlint.report.shape import CAUTION, combined
-from protlint.report.text import rendered_text, sections
+from protlint.report.text import rendered_text
 from tests.support.sample_review import HOSTILE, PLAIN, sample_review
 
 ACTING = re.compile("[\x00-\x09\x0b-\x1f\x7f-\x9f\u200b-\u200f\u2028-\u202e\u2066-\u2069\ud800-\udfff]")

@@ -40,6 +40,8 @@ HOSTILE = (
 )
 """Texts a netlist may hold that must not act in any face."""
 
+DRIVE_ASSUMED = "the drive DRV is taken as stiff, from 0 V to 12 V"
+
 KINDS = {"pass": "npn", "shunt": "npn", "sense": "resistor", "base_stop": "resistor", "drive": "resistor"}
 VALUES = {"sense": 1.0, "base_stop": 220.0, "drive": 1000.0}
 
@@ -54,13 +56,23 @@ def sample_review(names: Mapping[str, str] = PLAIN, *, notes: int = 0) -> Review
         ReviewedLimiter(
             limiter=first,
             needs=LimiterLimits(carry_A=0.7, cap_A=1.2, output_V=12.0),
-            bench=_bench(names),
+            circuit=_circuit(names),
             solution=_solution(0.367, names),
             verdict="fails",
             not_checked=(NotChecked("trips-on-peaks", "limiter.Q10.peak"),),
+            assumed=(DRIVE_ASSUMED, f"{names['shunt']}: BF taken as 100"),
+            bench=_bench(names),
         ),
-        ReviewedLimiter(second, LimiterLimits(), Bench(None), Solution(not_solved="node N3 floats"), "not judged"),
-        ReviewedLimiter(third, LimiterLimits(carry_A=0.2), _bench(names), _solution(0.9, names), "passes"),
+        ReviewedLimiter(second, LimiterLimits(), None, Solution(not_solved="node N3 floats"), "not judged"),
+        ReviewedLimiter(
+            third,
+            LimiterLimits(carry_A=0.2),
+            _circuit(names),
+            _solution(0.9, names),
+            "passes",
+            assumed=(DRIVE_ASSUMED,),
+            bench=_bench(names),
+        ),
     )
     findings = (
         _carry_not_met(names, first.id),
@@ -214,7 +226,7 @@ def _bench(names: Mapping[str, str]) -> Bench:
         circuit=_circuit(names),
         element_of={names["pass"]: 0, names["sense"]: 1},
         nets={"+12V": "held at 12 V, by its name", names["out"]: "the output", "N1": "solved for"},
-        assumed=(("drive", "the drive DRV is taken as stiff, from 0 V to 12 V"),),
+        assumed=(("drive", DRIVE_ASSUMED), ("model", f"{names['shunt']}: BF taken as 100")),
     )
 
 

@@ -1,0 +1,117 @@
+"""What several faces tell in the same way: order, counts, places, the gate, who rests on what, what needs which key."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from protlint.findings import LEVELS
+from protlint.report.figures import counted, figure
+from protlint.report.shape import VERDICTS, Document, boards_of
+
+Section = tuple[Document | None, str | None, list[Document]]
+"""A limiter (None for findings of none), its id, and its findings."""
+
+MOST_NAMES = 12
+"""Names listed before the rest is counted."""
+
+
+def summary_line(board: Document) -> str:
+    """Return the count of limiters, verdicts and findings in one sentence."""
+    summary = board["summary"]
+    verdicts = [f"{summary[word.replace(' ', '_')]} {word}" for word in VERDICTS if summary[word.replace(" ", "_")]]
+    found = counted(summary["limiters"], "limiter") if summary["limiters"] else "no limiter found"
+    parts = [found + (f" ({', '.join(verdicts)})" if verdicts else "")]
+    parts += [counted(summary[f"{level}s"], level) for level in LEVELS]
+    if summary["waived"]:
+        parts.append(f"{summary['waived']} waived")
+    if summary["not_checked"]:
+        parts.append(f"{summary['not_checked']} not checked")
+    return ", ".join(parts)
+
+
+def sections(board: Document) -> list[Section]:
+    """Return limiters with their findings, the worst first; findings of no limiter stand under the id they name."""
+    by_id: dict[str | None, list[Document]] = {}
+    for finding in board["findings"]:
+        by_id.setdefault(finding["limiter"], []).append(finding)
+    known = {limiter["id"] for limiter in board["limiters"]}
+    groups: list[Section] = [(limiter, limiter["id"], by_id.get(limiter["id"], [])) for limiter in board["limiters"]]
+    groups += [(None, name, found) for name, found in by_id.items() if name not in known]
+    ordered = [(limiter, name, sorted(found, key=_finding_rank)) for limiter, name, found in groups]
+    return sorted(ordered, key=_section_rank)
+
+
+def held_back(report: Document, gate: str, *, complete: bool = False) -> list[str]:
+    """Return why the gate does not hold, in a few words each; an empty list where it holds.
+
+    A waived finding does not count. ``complete`` lets what was not checked count too.
+    """
+    levels = LEVELS[: LEVELS.index(gate) + 1] if gate in LEVELS else ()
+    reasons = []
+    for level in levels:
+        count = sum(board["summary"][f"{level}s"] for board in boards_of(report))
+        if count:
+            reasons.append(counted(count, level))
+    unchecked = sum(board["summary"]["not_checked"] for board in boards_of(report))
+    if complete and unchecked:
+        reasons.append(f"{unchecked} not checked")
+    return reasons
+
+
+def place_of(row: Document) -> str:
+    """Return ``file:line:column`` of a finding, a warning or an error, as far as it has them."""
+    return ":".join(str(row[key]) for key in ("file", "line", "column") if row.get(key) is not None)
+
+
+def waiver_of(finding: Document) -> str:
+    """Return the reason a finding is waived for, and who says so."""
+    return f"{finding['waived']} ({finding['waived_by']})" if finding["waived_by"] else str(finding["waived"])
+
+
+def times(count: int) -> str:
+    """Return how often a warning was met, where that is more than once."""
+    return f" ({count} times)" if count > 1 else ""
+
+
+def working_line(line: Document) -> str:
+    """Return one line of a calculation with its result."""
+    return f"{line['quantity']} = {line['formula']} = {figure(line['value'], line['unit'])}"
+
+
+def listed(names: Sequence[str], most: int = MOST_NAMES) -> str:
+    """Return names joined by commas, the rest of a long list counted."""
+    if len(names) <= most:
+        return ", ".join(names)
+    return f"{', '.join(names[:most])} and {len(names) - most} more"
+
+
+def assumptions(board: Document) -> list[str]:
+    """Return every assumption once, with the parts or limiters it touches behind it."""
+    touched: dict[str, list[str]] = {text: [] for text in board["assumed"]}
+    for limiter in board["limiters"]:
+        parts = {part["id"] for part in limiter["parts"]}
+        for text in limiter["assumed"]:
+            name, colon, rest = text.partition(": ")
+            of_part = bool(colon) and (name in parts or set(name.split("+")) <= parts)
+            touched.setdefault(rest if of_part else text, []).append(name if of_part else limiter["id"])
+    return [f"{text} ({listed(list(dict.fromkeys(names)))})" if names else text for text, names in touched.items()]
+
+
+def unchecked(rows: Sequence[Document]) -> list[tuple[str, str]]:
+    """Return what is needed and the checks that need it, each need once."""
+    by_need: dict[str, list[str]] = {}
+    for row in rows:
+        by_need.setdefault(row["needs"], []).append(row["check"])
+    return [(need, ", ".join(dict.fromkeys(checks))) for need, checks in by_need.items()]
+
+
+def _finding_rank(finding: Document) -> tuple[bool, int]:
+    return finding["waived"] is not None, LEVELS.index(finding["level"])
+
+
+def _section_rank(section: Section) -> tuple[int, int]:
+    limiter, _, found = section
+    level = min((LEVELS.index(finding["level"]) for finding in found if finding["waived"] is None), default=len(LEVELS))
+    if limiter is not None:
+        return VERDICTS.index(limiter["verdict"]), level
+    return VERDICTS.index("fails" if level < LEVELS.index("note") else "passes"), level
