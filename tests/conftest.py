@@ -1,9 +1,16 @@
-"""What every test shares: the repository's root on the path, and the places of fixtures and siblings."""
+"""What every test shares: the repository's root on the path, the places of fixtures and siblings, and hypothesis's habits."""
 
 from __future__ import annotations
 
+import os
 import sys
 from pathlib import Path
 
+from hypothesis import settings
+
 ROOT = Path(__file__).parent.parent
 sys.path.insert(0, str(ROOT))
+
+# A busy machine is no failure, and in CI the same commit has to give the same answer.
+settings.register_profile("protlint", deadline=None, derandomize="CI" in os.environ)
+settings.load_profile("protlint")
