@@ -18,7 +18,7 @@ MOST_NAMES = 12
 def summary_line(board: Document) -> str:
     """Return the count of limiters, verdicts and findings in one sentence."""
     summary = board["summary"]
-    verdicts = [f"{summary[word.replace(' ', '_')]} {word}" for word in VERDICTS if summary[word.replace(" ", "_")]]
+    verdicts = [f"{word} {summary[word.replace(' ', '_')]}" for word in VERDICTS if summary[word.replace(" ", "_")]]
     found = counted(summary["limiters"], "limiter") if summary["limiters"] else "no limiter found"
     parts = [found + (f" ({', '.join(verdicts)})" if verdicts else "")]
     parts += [counted(summary[f"{level}s"], level) for level in LEVELS]
@@ -74,8 +74,9 @@ def times(count: int) -> str:
 
 
 def working_line(line: Document) -> str:
-    """Return one line of a calculation with its result."""
-    return f"{line['quantity']} = {line['formula']} = {figure(line['value'], line['unit'])}"
+    """Return one line of a calculation: what, how much, and from what."""
+    source = f" ({line['source']})" if line["source"] else ""
+    return f"{line['quantity']}: {figure(line['value'], line['unit'])}, {line['formula']}{source}"
 
 
 def listed(names: Sequence[str], most: int = MOST_NAMES) -> str:

@@ -9,8 +9,7 @@ from __future__ import annotations
 import re
 from pathlib import Path
 
-from protlint.report.digest import place_of, waiver_of
-from protlint.report.markdown import working_lines
+from protlint.report.digest import place_of, waiver_of, working_line
 from protlint.report.safe import markdown, throughout
 from protlint.report.sarif import artifact_uri
 from protlint.report.shape import Document, boards_of
@@ -72,7 +71,7 @@ def _issue(finding: Document, board: Document, caution: str) -> str:
     lines += [f"**Remedy:** {safe['remedy']}", ""] if safe["remedy"] else []
     lines += ["Rests on an assumption.", ""] if safe["assumption"] else []
     if safe["working"]:
-        lines += ["Working:", "", *(f"- {line}" for line in working_lines(safe["working"])), ""]
+        lines += ["Working:", "", *(f"- {working_line(line)}" for line in safe["working"]), ""]
     facts = (
         ("Level", safe["level"]),
         ("Parts", ", ".join(safe["parts"])),

@@ -95,8 +95,7 @@ def _lines(finding: Document) -> list[str]:
     level = finding["level"] if finding["waived"] is None else f"waived {finding['level']}"
     lines = [f"{level}: {finding['message']}"]
     for line in finding["working"]:
-        source = f" [{line['source']}]" if line["source"] else ""
-        lines.append(f"  {working_line(line)}{source}")
+        lines.append(f"  {working_line(line)}")
     lines += [f"remedy: {finding['remedy']}"] if finding["remedy"] else []
     lines += ["rests on an assumption"] if finding["assumption"] else []
     if finding["waived"] is not None:

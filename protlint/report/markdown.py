@@ -50,12 +50,7 @@ def finding_lines(finding: Document, *, working: bool = True) -> list[str]:
     lines += [f"  Remedy: {finding['remedy']}"] if finding["remedy"] else []
     lines += ["  Rests on an assumption."] if finding["assumption"] else []
     lines = [*(f"{line}  " for line in lines), f"  {place_of(finding)} {finding['fingerprint']}"]
-    return lines + ([f"  - {line}" for line in working_lines(finding["working"])] if working else [])
-
-
-def working_lines(working: Sequence[Document]) -> list[str]:
-    """Return the lines of a calculation."""
-    return [working_line(line) + (f" ({line['source']})" if line["source"] else "") for line in working]
+    return lines + ([f"  - {working_line(line)}" for line in finding["working"]] if working else [])
 
 
 def _board(board: Document, working: bool, most: int) -> list[str]:

@@ -130,8 +130,8 @@ def _limiter(limiter: Document, colour: bool) -> list[str]:
         if names
     ]
     lines += wrapped("; ".join(roles), indent=6, first="    ")
-    for net, held in limiter["held"]:
-        lines += wrapped(f"{net}: {held}", indent=8, first="    ")
+    for held, nets in _nets(limiter["held"]).items():
+        lines += wrapped(f"{', '.join(nets)}: {held}", indent=8, first="    ")
     drive = limiter["drive_ends"]
     if drive is not None:
         lines += wrapped(_drive(drive), indent=8, first="    ")
@@ -148,6 +148,14 @@ def _limiter(limiter: Document, colour: bool) -> list[str]:
         lines += wrapped(f"also fits: {', '.join(limiter['also_matched'])}", indent=8, first="    ")
     lines += _loop(limiter["loop"])
     return lines
+
+
+def _nets(held: Sequence[Sequence[str]]) -> dict[str, list[str]]:
+    """Gather the nets that are held alike."""
+    alike: dict[str, list[str]] = {}
+    for net, words in held:
+        alike.setdefault(words, []).append(net)
+    return alike
 
 
 def _value(part: Document) -> str:

@@ -14,7 +14,6 @@ from protlint.report.digest import (
     times,
     unchecked,
     waiver_of,
-    working_line,
 )
 from protlint.report.figures import UNKNOWN, ambient, counted, figure, percent, three_digits, triple, unit_for
 from protlint.report.layout import painted, shortened, table, width, wrapped
@@ -181,9 +180,9 @@ def _finding(finding: Document, colour: bool) -> list[str]:
     lines = wrapped(finding["check"] + place + mark, indent=indent, first=lead)
     lines[0] = lines[0].replace(level, painted(level, level, colour=colour), 1)
     lines += wrapped(finding["message"], indent=indent)
-    lines += _figure_that_matters(finding["working"], indent)
     if finding["remedy"]:
         lines += wrapped(f"remedy: {finding['remedy']}", indent=indent)
+    lines += _steps(finding["working"], indent, colour)
     if finding["waived"] is not None:
         lines += wrapped(f"waived {finding['level']}: {waiver_of(finding)}", indent=indent)
     where = f"{place_of(finding)} {finding['fingerprint']}"
@@ -191,12 +190,12 @@ def _finding(finding: Document, colour: bool) -> list[str]:
     return lines
 
 
-def _figure_that_matters(working: Sequence[Document], indent: int) -> list[str]:
-    """Show the last line of the working: the result the others lead to. The rest stands in the other faces."""
-    solved = [line for line in working if line["value"] is not None]
-    if not solved:
+def _steps(working: Sequence[Document], indent: int, colour: bool) -> list[str]:
+    """Show the figures that lead to the finding; how each was worked out stands in the other faces."""
+    figures = [f"{line['quantity']} {figure(line['value'], line['unit'])}" for line in working if line["value"] is not None]
+    if not figures:
         return []
-    return wrapped(working_line(solved[-1]), indent=indent)
+    return [painted(line, "quiet", colour=colour) for line in wrapped(f"from: {', '.join(figures)}", indent=indent)]
 
 
 def _not_checked(rows: Sequence[Document], colour: bool) -> list[str]:

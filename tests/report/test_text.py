@@ -35,7 +35,7 @@ def test_what_a_person_needs_is_there() -> None:
         "0.279 / 0.294 / 0.308",
         "at least 0.700",
         "-0.421 (-60 %)",
-        "= 0.282 A",
+        "carries 0.282 A",
         "remedy: fit 0.36 ohm in place of R11",
         "limiter.Q10.peak",
         "node N3 floats",
