@@ -1,4 +1,4 @@
-"""What every test shares: the repository's root on the path, the places of fixtures and siblings, and hypothesis's habits."""
+"""What every test shares: the root on the path, the places of fixtures and siblings, and the habits of hypothesis."""
 
 from __future__ import annotations
 
