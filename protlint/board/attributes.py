@@ -37,6 +37,8 @@ _PRESENT = ("fitted", "populate", "populated", "mounted", "assembled", "stuffed"
 _YES, _NO = ("1", "true", "yes", "y", "x"), ("0", "false", "no", "n")
 _DIMENSIONS = {"resistor": "resistance", "capacitor": "capacitance", "inductor": "inductance", "zener": "voltage"}
 _TYPE_NUMBER = re.compile(r"(?=[^\s]*[0-9])(?=[^\s]*[A-Za-z])[A-Za-z0-9][\w./+#-]{2,39}", re.ASCII)
+_JEDEC = re.compile(r"[12]N[0-9]{3,4}(?![0-9])", re.IGNORECASE)
+"""Type numbers that would read as capacitances (``1N914``)."""
 _ZENER_CODE = re.compile(r"BZ[A-Z][0-9]{2}[-/ ]?([A-E])([0-9]{1,3}(?:V[0-9]{1,2})?)(?![0-9])", re.IGNORECASE)
 _ZENER_TOLERANCES = {"A": 0.01, "B": 0.02, "C": 0.05, "D": 0.10, "E": 0.20}
 """Pro Electron type codes: a letter for the tolerance, then the zener voltage with V in the decimal point's place."""
@@ -124,7 +126,7 @@ def part_number(
     candidates = part_numbers(part, habits, listed=listed)
     if book is not None:
         for text in candidates:
-            for asked in (text.strip(), re.split(r"[\s,/;]", text.strip(), maxsplit=1)[0]):
+            for asked in (text.strip(), _head(text)):
                 if book.find(asked) is not None:
                     return asked
     return candidates[0] if candidates else None
@@ -147,9 +149,17 @@ def _texts(part: Part, attribute: str, habits: Habits, listed: Mapping[str, str]
 
 @lru_cache(maxsize=8192)
 def _is_type(text: str) -> bool:
-    return bool(_TYPE_NUMBER.fullmatch(text)) and all(
-        read_value(text, dimension).value is None for dimension in ("resistance", "voltage")
+    """Whether a text looks like a type number: one word of letters and digits that is no value of any kind of part."""
+    head = _head(text)
+    if not _TYPE_NUMBER.fullmatch(head):
+        return False
+    return bool(_JEDEC.match(head)) or all(
+        read_value(head, dimension).value is None for dimension in ("resistance", "capacitance", "inductance", "voltage")
     )
+
+
+def _head(text: str) -> str:
+    return re.split(r"[\s,/;(]", text.strip(), maxsplit=1)[0]
 
 
 def _value(part: Part, kind: str, habits: Habits, listed: Mapping[str, str]) -> ValueText:

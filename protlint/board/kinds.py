@@ -2,8 +2,8 @@
 
 The kind comes from the part data, then from what the properties and the library cell's name say, then from the class letter
 of the designator (IEEE 315, and the letters of older European and Russian drawings) together with the pins: never from the
-letter alone. Pin roles come from the limits file, the part data, the pins' names, or properties that name them. Numbers alone
-tell nothing: such a part has a kind and no roles.
+letter alone. Pin roles come from the limits file, the part data, the pins' names, or properties that name them. Numbers
+alone tell nothing: such a part has a kind and no roles.
 """
 
 from __future__ import annotations
@@ -260,20 +260,22 @@ def _by_names(part: Part, family: str) -> tuple[Roles, tuple[Roles, ...]]:
     names = _PIN_NAMES[family]
     grouped: dict[str, dict[str, list[int]]] = {}
     for position, pin in enumerate(part.pins):
-        found = re.fullmatch(r"(.*?[^0-9])[ _.@-]?([0-9]*)", pin.name.strip().casefold())
-        role = names.get(found[1].rstrip(" _.@-") or found[1]) if found else None
-        if found and role:
-            grouped.setdefault(found[2], {}).setdefault(role, []).append(position)
+        name = pin.name.strip().casefold()
+        numbered = re.fullmatch(r"(.*?[^0-9])[ _.@-]?([0-9]*)", name)
+        stem, number = (numbered[1], numbered[2]) if numbered and name not in names else (name, "")
+        role = names.get(stem) or names.get(stem.rstrip(" _.@-"))
+        if role:
+            grouped.setdefault(number, {}).setdefault(role, []).append(position)
     known = {role for section in grouped.values() for role in section}
     needed = _NEEDED[family]
     seen = sum(len(positions) for section in grouped.values() for positions in section.values())
     if not known or (seen < len(part.pins) and not known.issuperset(needed)):
         return {}, ()
     shared = grouped.get("", {})
-    numbered = {number: section for number, section in grouped.items() if number}
-    whole = all(set(section) | set(shared) >= set(needed) for section in numbered.values())
-    if len(numbered) > 1 and whole and (not shared or (family == "diode" and len(shared) == 1)):
-        return _grouped({number: {**shared, **section} for number, section in numbered.items()})
+    several = {number: section for number, section in grouped.items() if number}
+    whole = all(set(section) | set(shared) >= set(needed) for section in several.values())
+    if len(several) > 1 and whole and (not shared or (family == "diode" and len(shared) == 1)):
+        return _grouped({number: {**shared, **section} for number, section in several.items()})
     merged: dict[str, list[int]] = {}
     for section in grouped.values():
         for role, positions in section.items():
