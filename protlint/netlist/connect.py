@@ -54,7 +54,7 @@ class Placement:
 
 @dataclass(frozen=True, slots=True)
 class Node:
-    """What is one inside a cell: the name and place of its first net, or of one named like a port that it leads to."""
+    """What is one inside a cell, with the name and place of one of its nets."""
 
     name: str
     line: int
@@ -126,14 +126,24 @@ class _Wirer:
         self.parents.extend(range(start, start + width))
         self.nets.append((start, net))
         for item in net.joined:
-            offset = item[0].offset
-            ends = [end for ref in item for end in self._ends(ref, instances)]
+            if width == 1 and type(item) is PortRef and self._join_plain(item, start, instances):
+                continue
+            ends = [end for ref in item.refs for end in self._ends(ref, instances)]
             if len(ends) != width and ends:
-                self.notes.add("width", offset, f"{item[0].port}, {len(ends)} wide, to {net.name.text}, {width} wide")
+                self.notes.add("width", item.offset, f"{item.port}, {len(ends)} wide, to {net.name.text}, {width} wide")
             # A plain net takes every element of what is wider; else elements meet in their order as far as both go.
             nodes = range(start, start + width) if width > 1 else [start] * len(ends)
             for node, (position, bit) in zip(nodes, ends, strict=False):
-                self._attach(position, bit, node, offset)
+                self._attach(position, bit, node, item.offset)
+
+    def _join_plain(self, ref: PortRef, node: int, instances: Scope[_Placed]) -> bool:
+        """Join a plain port of a plain instance, which most references are; False where it takes a closer look."""
+        placed = None if ref.instance is None else instances.find(ref.instance)
+        bit = None if placed is None or ref.member or ref.bundle else placed.block.ports.plain.get(ref.port)
+        if placed is None or bit is None or placed.instance.name.dimensions:
+            return False
+        self._attach(placed.first, bit, node, ref.offset)
+        return True
 
     def _ends(self, ref: PortRef, instances: Scope[_Placed]) -> Sequence[tuple[int, int]]:
         """Return what a reference means: positions of placements, :data:`_OWN` for the block itself, each with a bit."""
@@ -152,8 +162,11 @@ class _Wirer:
             return ()
         bits = placed.block.ports.find(*wanted)
         if bits is None:
-            name = placed.block.cell.name.text
-            self.notes.add("reference", ref.offset, f"the port {ref.port} of {ref.instance}, which the cell {name} has not")
+            cell = placed.block.cell.name.text
+            if placed.block.view is not None:  # of a cell that is not in the file no port is known
+                self.notes.add(
+                    "reference", ref.offset, f"the port {ref.port} of {ref.instance}, which the cell {cell} has not"
+                )
             if placed.block.contents is not None:
                 return ()
             bits = placed.block.ports.undeclared(ref.port, ref.member)
@@ -219,7 +232,11 @@ class _Wirer:
             self._unite(nodes[0], node)
 
     def _numbered(self) -> tuple[dict[int, int], list[Node]]:
-        """Return the number of each root and the nodes; of several nets the first, or one named like a port it leads to."""
+        """Return the number of each root, and the nodes.
+
+        A node goes by its first net named like a port or connector it leads to; else by its first net; elements of arrays,
+        whose names are made up here, come last.
+        """
         led_out: dict[int, set[str]] = {}
         for bit, node in self.own.items():
             ports = self.block.ports if bit < self.block.ports.width else self.connectors
@@ -227,13 +244,17 @@ class _Wirer:
         places = self.budget.places
         number: dict[int, int] = {}
         nodes: list[Node] = []
+        ranks: list[int] = []
         for start, net in self.nets:
             for element in range(net.name.width):
-                name = f"{net.name.text}[{element}]" if net.name.dimensions else net.name.text
                 top = root(self.parents, start + element)
+                name = f"{net.name.text}[{element}]" if net.name.dimensions else net.name.text
+                rank = 2 if net.name.dimensions else 0 if name in led_out.get(top, ()) else 1
                 if top not in number:
                     number[top] = len(nodes)
                     nodes.append(Node(name, *places.at(net.offset)))
-                elif name in led_out.get(top, ()) and nodes[number[top]].name not in led_out[top]:
+                    ranks.append(rank)
+                elif rank < ranks[number[top]]:
                     nodes[number[top]] = Node(name, *places.at(net.offset))
+                    ranks[number[top]] = rank
         return number, nodes

@@ -8,7 +8,7 @@ from __future__ import annotations
 from collections.abc import Iterable
 from dataclasses import dataclass
 from math import prod
-from typing import Generic, TypeVar
+from typing import Generic, NamedTuple, TypeVar
 
 from protlint.netlist.forms import Places
 from protlint.netlist.model import Property
@@ -16,8 +16,7 @@ from protlint.netlist.model import Property
 T = TypeVar("T")
 
 
-@dataclass(frozen=True, slots=True)
-class Name:
+class Name(NamedTuple):
     """What something is called: the identifier that references use, the text people see, and an array's dimensions."""
 
     identifier: str
@@ -30,20 +29,40 @@ class Name:
         return prod(self.dimensions)
 
 
-@dataclass(frozen=True, slots=True)
-class PortRef:
+class PortRef(NamedTuple):
     """A reference to a port: of an instance, or with ``instance`` None of the cell itself. Empty members mean the whole."""
 
     port: str
-    member: tuple[int, ...]
-    bundle: str | None
     instance: str | None
-    instance_member: tuple[int, ...]
     offset: int
+    member: tuple[int, ...] = ()
+    bundle: str | None = None
+    instance_member: tuple[int, ...] = ()
+
+    @property
+    def refs(self) -> tuple[PortRef, ...]:
+        """Itself: a reference counts as a port list of one."""
+        return (self,)
 
 
-Joined = tuple[tuple[PortRef, ...], ...]
-"""The items of a ``joined``: each one reference, or a port list of several that counts as one array."""
+@dataclass(frozen=True, slots=True)
+class PortList:
+    """Several references that count as one array."""
+
+    refs: tuple[PortRef, ...]
+
+    @property
+    def offset(self) -> int:
+        """Where the first of them stands."""
+        return self.refs[0].offset
+
+    @property
+    def port(self) -> str:
+        """The ports' identifiers."""
+        return " ".join(ref.port for ref in self.refs)
+
+
+Joined = tuple[PortRef | PortList, ...]
 
 
 @dataclass(frozen=True, slots=True)

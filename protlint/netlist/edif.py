@@ -7,7 +7,7 @@ what stands inside them. What cannot be read and would change the netlist if it 
 from __future__ import annotations
 
 import re
-from collections.abc import Callable, Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from itertools import chain
 from math import prod
 from typing import NoReturn, Protocol
@@ -32,11 +32,13 @@ from protlint.netlist.grammar import LEVELS, REFUSED, USED, may_hold
 from protlint.netlist.model import Property
 from protlint.netlist.notes import Notes
 from protlint.netlist.properties import Origin, Scales, integer, read_property, read_scales, text_of
-from protlint.netlist.references import designators, first, items, joined, keyword, member, view_refs, word
+from protlint.netlist.references import by_head, designators, first, items, joined, keyword, member, view_refs, word
 from protlint.sources import InputError
 
 ARRAY_LIMIT = 65_536
 """Most elements of one array; real buses stay below 1,024."""
+DIMENSIONS_LIMIT = 4
+"""Most dimensions of an array."""
 
 _BEGINNING = re.compile(r"[ \t\r\n\f\v]*\([ \t\r\n\f\v]*(edif)(?![^ \t\r\n\f\v()\"])|[ \t\r\n\f\v]*(\()?", re.IGNORECASE)
 _IDENTIFIER = re.compile(r"[A-Za-z][A-Za-z0-9_]*|&[A-Za-z0-9_]+")
@@ -152,10 +154,10 @@ class _Reader(FormParser):
         """Return the name that a form defines, and note what EDIF does not allow in it."""
         item = form[position] if len(form) > position else None
         dimensions: tuple[int, ...] = ()
+        text: str | None = None
         if type(item) is Form and item.head == "array":
             dimensions = self._dimensions(item)
             form, item = item, item[1] if len(item) > 1 else None
-        text: str | None = None
         if type(item) is Form and item.head == "rename":
             text = next((shown for shown in map(text_of, item[2:]) if shown is not None), None)
             form, item = item, item[1] if len(item) > 1 else None
@@ -170,41 +172,42 @@ class _Reader(FormParser):
     def _dimensions(self, form: Form) -> tuple[int, ...]:
         sizes = [integer(item) for item in form[2:] if not isinstance(item, Form)]
         dimensions = tuple(size for size in sizes if size is not None)
-        if len(dimensions) != len(sizes) or not dimensions or min(dimensions) < 1:
-            raise form.error("an array needs its number of elements, 1 or more")
+        if len(dimensions) != len(sizes) or not 1 <= len(dimensions) <= DIMENSIONS_LIMIT or min(dimensions) < 1:
+            raise form.error(f"an array needs its number of elements, 1 or more, in up to {DIMENSIONS_LIMIT} dimensions")
         if prod(dimensions) > ARRAY_LIMIT:
             raise form.error(f"an array of {prod(dimensions)} elements; protlint reads arrays of up to {ARRAY_LIMIT}")
         return dimensions
 
-    def _properties(self, form: Form, origin: Origin) -> tuple[Property, ...]:
-        return tuple(
-            read_property(item, self._name(item).text, origin, self._scales)
-            for item in items(form, "property", "parameter", "parameterassign")
-        )
+    def _properties(self, found: Mapping[str, Sequence[Form]], origin: Origin) -> tuple[Property, ...]:
+        forms = chain(found.get("property", ()), found.get("parameter", ()), found.get("parameterassign", ()))
+        return tuple(read_property(item, self._name(item).text, origin, self._scales) for item in forms)
 
     def _port(self, form: Form) -> Port:
-        inner = first(form, "listofports") if form.head == "portbundle" else None
+        found = by_head(form)
+        inner = next(iter(found.get("listofports", ())), None) if form[0] == "portbundle" else None
         return Port(
             name=self._name(form),
-            direction=keyword(form, "direction", "") or None,
-            designators=designators(form),
-            properties=self._properties(form, "interface"),
+            direction=keyword(found.get("direction", ()), "") or None,
+            designators=designators(found.get("designator", ())),
+            properties=self._properties(found, "interface"),
             ports=() if inner is None else tuple(self._port(port) for port in items(inner, "port", "portbundle")),
             offset=form.offset,
         )
 
     def _port_instance(self, form: Form) -> PortInstance:
+        found = by_head(form)
         inner = form[1] if len(form) > 1 else None
         port, element = member(inner if type(inner) is Form and inner.head == "portref" else form)
-        return PortInstance(port, element, designators(form), self._properties(form, "instance"))
+        return PortInstance(port, element, designators(found.get("designator", ())), self._properties(found, "instance"))
 
     def _instance(self, form: Form) -> Instance:
+        found = by_head(form)
         return Instance(
             name=self._name(form),
-            views=view_refs(form),
-            designators=designators(form),
-            properties=self._properties(form, "instance"),
-            ports=tuple(map(self._port_instance, items(form, "portinstance"))),
+            views=view_refs(found),
+            designators=designators(found.get("designator", ())),
+            properties=self._properties(found, "instance"),
+            ports=tuple(map(self._port_instance, found.get("portinstance", ()))),
             offset=form.offset,
         )
 
@@ -232,28 +235,29 @@ class _Reader(FormParser):
         return Contents(tuple(map(self._sheet, sheets)), len(pages), connectors)
 
     def _view(self, form: Form) -> View:
-        interface = first(form, "interface") or Form()
-        contents = first(form, "contents")
+        found = by_head(form)
+        interface = next(iter(found.get("interface", ())), Form())
         ports = tuple(self._port(port) for port in items(interface, "port", "portbundle"))
         self._duplicates(ports)
         return View(
             name=self._name(form),
-            kind=keyword(form, "viewtype", ""),
+            kind=keyword(found.get("viewtype", ()), ""),
             ports=ports,
             shorts=tuple(joined(item) for item in items(interface, "joined")),
-            properties=self._properties(interface, "interface") + self._properties(form, "interface"),
-            contents=None if contents is None else self._contents(contents),
+            properties=self._properties(by_head(interface), "interface") + self._properties(found, "interface"),
+            contents=next(map(self._contents, found.get("contents", ())), None),
             offset=form.offset,
         )
 
     def _cell(self, form: Form) -> Cell:
+        found = by_head(form)
         views = tuple(item for item in form if type(item) is View)
         self._duplicates(views)
         return Cell(
             name=self._name(form),
-            kind=keyword(form, "celltype", "generic"),
+            kind=keyword(found.get("celltype", ()), "generic"),
             views=views,
-            properties=self._properties(form, "cell"),
+            properties=self._properties(found, "cell"),
             offset=form.offset,
         )
 

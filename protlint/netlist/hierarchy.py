@@ -54,7 +54,7 @@ class Block:
         self.children: list[list[Block]] = []
         self.shorts: list[tuple[int, ...]] = []
         for joined in view.shorts if view is not None else ():
-            bits = [[self.ports.find(ref.port, ref.member, ref.bundle) or () for ref in item] for item in joined]
+            bits = [[self.ports.find(ref.port, ref.member, ref.bundle) or () for ref in item.refs] for item in joined]
             items = [list(chain.from_iterable(item)) for item in bits]
             budget.spend(sum(map(len, items)) - len(items), cell.offset)
             self.shorts += zip(*filter(None, items), strict=False)

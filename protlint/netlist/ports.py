@@ -50,11 +50,15 @@ class Ports:
 
     def __init__(self, ports: Iterable[Port] = (), *, start: int = 0) -> None:
         self.start = self.width = start
+        self.plain: dict[str, int] = {}
+        """The bits of ports that are no arrays, by identifier as declared: most references need no more."""
         self._scope: Scope[Slot] = Scope()
         self._slots: list[Slot] = []
         self._starts: list[int] = []
         for port in ports:
             if self._scope.find(port.name.identifier) is None:
+                if not port.ports and not port.name.dimensions:
+                    self.plain[port.name.identifier] = self.width
                 self._add(port, self._scope)
 
     def _add(self, port: Port, scope: Scope[Slot]) -> None:

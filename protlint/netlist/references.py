@@ -2,11 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping, Sequence
 from itertools import chain
 
-from protlint.netlist.definitions import Joined, PortRef, ViewRef
-from protlint.netlist.forms import Form
+from protlint.netlist.definitions import Joined, PortList, PortRef, ViewRef
+from protlint.netlist.forms import Atom, Form
 from protlint.netlist.properties import integer, text_of
 
 
@@ -17,20 +17,28 @@ def items(form: Form, *heads: str) -> Iterator[Form]:
             yield item
 
 
+def by_head(form: Form) -> dict[str, list[Form]]:
+    """Return the lists inside a form by what they begin with."""
+    found: dict[str, list[Form]] = {}
+    for item in form:
+        if type(item) is Form and item:
+            found.setdefault(item[0], []).append(item)
+    return found
+
+
 def first(form: Form, head: str) -> Form | None:
     """Return the first list inside a form that begins with ``head``."""
     return next(items(form, head), None)
 
 
-def keyword(form: Form, head: str, default: str) -> str:
-    """Return the one word of the list inside a form that begins with ``head``, in lower case."""
-    item = first(form, head)
-    return str(item[1]).lower() if item is not None and len(item) > 1 else default
+def keyword(forms: Sequence[Form], default: str) -> str:
+    """Return the one word of the first of several lists, in lower case."""
+    return str(forms[0][1]).lower() if forms and len(forms[0]) > 1 else default
 
 
-def designators(form: Form) -> tuple[str, ...]:
-    """Return the designators a form gives, without repetitions: of two, a section and its package."""
-    texts = (text_of(item) for item in items(form, "designator"))
+def designators(forms: Sequence[Form]) -> tuple[str, ...]:
+    """Return the texts of ``designator`` forms, without repetitions: of two, a section and its package."""
+    texts = (text_of(item) for item in forms)
     return tuple(dict.fromkeys(text.strip() for text in texts if text is not None))
 
 
@@ -87,22 +95,32 @@ def port_ref(form: Form) -> PortRef:
         inner = None
     if inner is not None:
         raise inner.error(f"({inner.head} ...) inside another reference reaches into another level, which is not read")
-    return PortRef(port, element, bundle, instance, instance_element, form.offset)
+    return PortRef(port, instance, form.offset, element, bundle, instance_element)
 
 
 def joined(form: Form) -> Joined:
     """Return what a ``joined`` form joins."""
-    ends = (
-        (port_ref(item),) if item[0] == "portref" else tuple(map(port_ref, items(item, "portref")))
-        for item in items(form, "portref", "portlist")
-    )
-    return tuple(filter(None, ends))
+    ends: list[PortRef | PortList] = []
+    for item in form:
+        if type(item) is not Form or not item:
+            continue
+        if item[0] == "portref":
+            inner = item[2] if len(item) == 3 else None
+            if inner and inner[0] == "instanceref" and len(inner) == 2 and type(inner[1]) is type(item[1]) is Atom:
+                ends.append(PortRef(item[1], inner[1], item.offset))  # nearly all are plain ones
+            else:
+                ends.append(port_ref(item))
+        elif item[0] == "portlist":
+            refs = tuple(map(port_ref, items(item, "portref")))
+            ends += [PortList(refs)] if refs else []
+    return tuple(ends)
 
 
-def view_refs(form: Form) -> tuple[ViewRef, ...]:
-    """Return the views an instance offers, the first that leads somewhere being meant."""
+def view_refs(found: Mapping[str, Sequence[Form]]) -> tuple[ViewRef, ...]:
+    """Return the views an instance offers, the first that leads somewhere being meant, out of its lists by head."""
     refs = []
-    for item in chain(items(form, "viewref", "cellref"), *(items(each, "viewref") for each in items(form, "viewlist"))):
+    listed = (items(each, "viewref") for each in found.get("viewlist", ()))
+    for item in chain(found.get("viewref", ()), found.get("cellref", ()), *listed):
         cell = item if item[0] == "cellref" else first(item, "cellref")
         library = None if cell is None else first(cell, "libraryref")
         refs.append(
