@@ -132,6 +132,7 @@ def part_number(
     return candidates[0] if candidates else None
 
 
+@lru_cache(maxsize=4096)
 def plain_name(name: str) -> str:
     """Return a property's name or a heading as names are compared: folded, with single blanks."""
     return " ".join(re.split(r"[\s._-]+", name.strip().casefold()))
@@ -141,9 +142,9 @@ def _texts(part: Part, attribute: str, habits: Habits, listed: Mapping[str, str]
     """Yield (property name, text) of what tells an attribute, blanks left out; the parts list's last, without a name."""
     for key in habits.names[attribute]:
         item = part.properties.get(key)
-        if item is not None and not isinstance(item.value, bool) and str(item.value).strip():
-            yield key, str(item.value).strip()
-    if listed.get(attribute, "").strip():
+        if item is not None and not isinstance(item.value, bool) and (text := str(item.value).strip()):
+            yield key, text
+    if listed and listed.get(attribute, "").strip():
         yield "", listed[attribute].strip()
 
 
@@ -158,6 +159,7 @@ def _is_type(text: str) -> bool:
     )
 
 
+@lru_cache(maxsize=8192)
 def _head(text: str) -> str:
     return re.split(r"[\s,/;(]", text.strip(), maxsplit=1)[0]
 
@@ -212,6 +214,8 @@ def _zener_value(part: Part, habits: Habits, listed: Mapping[str, str]) -> Value
 
 def _beside(part: Part, attribute: str, habits: Habits, listed: Mapping[str, str]) -> float | None:
     """A tolerance, power or voltage from the properties that tell it."""
+    if not (listed or habits.names[attribute]):
+        return None
     for key, text in _texts(part, attribute, habits, listed):
         number = read_beside(text, attribute)
         if number is None and plain_name(key) != "rating":
@@ -233,6 +237,9 @@ def _bare(text: str, attribute: str) -> float | None:
 
 
 def _fitted(part: Part, habits: Habits) -> bool:
+    if not (habits.names["absent"] or habits.names["present"]):
+        return True
+
     def said(key: str) -> str:
         item = part.properties.get(key)
         return "" if item is None else str(item.value).strip().casefold()

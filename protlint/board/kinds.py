@@ -232,7 +232,7 @@ def _tables(
     stated = {
         found[1]: str(item.value)
         for key, item in part.properties.items()
-        if (found := re.fullmatch(r"pin[ _]?([0-9]+)", key))
+        if key.startswith("pin") and (found := re.fullmatch(r"pin[ _]?([0-9]+)", key))
     }
     names = _PIN_NAMES.get(family or "", {})
     if stated and all(value.casefold() in names for value in stated.values()):
@@ -252,6 +252,11 @@ def _by_table(part: Part, table: Mapping[str, str]) -> tuple[Roles, tuple[Roles,
 
 
 def _by_names(part: Part, family: str) -> tuple[Roles, tuple[Roles, ...]]:
+    return _roles_of(tuple(pin.name for pin in part.pins), family)
+
+
+@lru_cache(maxsize=4096)
+def _roles_of(pins: tuple[str, ...], family: str) -> tuple[Roles, tuple[Roles, ...]]:
     """Return the roles that pin names tell: one device, or several where every terminal's name is numbered.
 
     A terminal that several numbered ones share (a common cathode) belongs to each. Nothing is returned where a terminal is
@@ -259,8 +264,8 @@ def _by_names(part: Part, family: str) -> tuple[Roles, tuple[Roles, ...]]:
     """
     names = _PIN_NAMES[family]
     grouped: dict[str, dict[str, list[int]]] = {}
-    for position, pin in enumerate(part.pins):
-        name = pin.name.strip().casefold()
+    for position, pin in enumerate(pins):
+        name = pin.strip().casefold()
         numbered = re.fullmatch(r"(.*?[^0-9])[ _.@-]?([0-9]*)", name)
         stem, number = (numbered[1], numbered[2]) if numbered and name not in names else (name, "")
         role = names.get(stem) or names.get(stem.rstrip(" _.@-"))
@@ -269,7 +274,7 @@ def _by_names(part: Part, family: str) -> tuple[Roles, tuple[Roles, ...]]:
     known = {role for section in grouped.values() for role in section}
     needed = _NEEDED[family]
     seen = sum(len(positions) for section in grouped.values() for positions in section.values())
-    if not known or (seen < len(part.pins) and not known.issuperset(needed)):
+    if not known or (seen < len(pins) and not known.issuperset(needed)):
         return {}, ()
     shared = grouped.get("", {})
     several = {number: section for number, section in grouped.items() if number}
