@@ -12,15 +12,16 @@ import numpy as np
 
 from protlint.solve.circuit import Circuit
 from protlint.solve.corners import one_at_a_time, small_steps
+from protlint.solve.devices import Array
 from protlint.solve.locus import PASS_V, Loci, fill, run_at
 from protlint.solve.memo import Memo
 from protlint.solve.network import compile_network
-from protlint.solve.nominal import Nominal, held_short, solve_nominal
+from protlint.solve.nominal import Nominal, solve_nominal
 from protlint.solve.parameters import CircuitError
 from protlint.solve.ranges import Ranges, find_ranges
 from protlint.solve.regulation import regulation
 from protlint.solve.solution import Currents, Pair, Sensitivity, Shorted, Solution
-from protlint.solve.stage import Run, Stage, make_stage, pass_current, pass_power, points, run_stage, shunt_current
+from protlint.solve.stage import Run, Stage, Sweep, pass_power, points, run_stage, shunt_and_pass_current, sweep_stage
 
 DRIVE_SHARE = 0.9
 """Where holds is above this share of the unlimited current (the shunt out gains less than a ninth), the drive limits."""
@@ -41,9 +42,9 @@ def solve(circuit: Circuit, ambients_degC: tuple[float, float, float], *, memo: 
     try:
         if not all(-200.0 <= ambient <= 500.0 for ambient in ambients_degC):
             raise CircuitError(f"ambients of {', '.join(f'{ambient:g}' for ambient in ambients_degC)} degC make no sense")
-        stage, runs, shorts = _worst_short(circuit, ambients_degC)
+        stage, sweep, shorts = _worst_short(circuit, ambients_degC)
         solution = replace(
-            _answers(stage, solve_nominal(stage, *runs), ambients_degC),
+            _answers(stage, solve_nominal(stage, sweep), ambients_degC),
             short=stage.short,
             shorts=shorts,
             assumed=_assumed(circuit),
@@ -59,29 +60,28 @@ def _assumed(circuit: Circuit) -> tuple[str, ...]:
     return circuit.assumed + tuple(sentence for device in circuit.devices for sentence in device.assumed)
 
 
-def _worst_short(circuit: Circuit, ambients_degC: tuple[float, ...]) -> tuple[Stage, tuple[Run, Run], tuple[Shorted, ...]]:
-    """Solve every short; return the stage and runs of the one with the greatest holds, and all of them."""
+def _worst_short(circuit: Circuit, ambients_degC: tuple[float, ...]) -> tuple[Stage, Sweep, tuple[Shorted, ...]]:
+    """Sweep the drive into every short; return the stage and sweep of the one with the greatest holds, and all of them."""
     network = compile_network(circuit)
-    found: list[tuple[float, Stage, tuple[Run, Run]]] = []
+    found: list[tuple[float, Stage, Sweep]] = []
     shorts: list[Shorted] = []
     reason: CircuitError | None = None
     for node in circuit.shorts:
         try:
-            stage = make_stage(network, node, ambients_degC[USUAL])
+            stage, sweep = sweep_stage(network, node, ambients_degC, USUAL)
         except CircuitError as error:
             reason = reason or error
             shorts.append(Shorted(node, (None,) * len(ambients_degC), None))
             continue
-        runs = held_short(stage, ambients_degC)
-        holds = runs[0].output_A
-        held = points(stage, runs[0], [USUAL])
-        shorts.append(Shorted(node, tuple(_number(value) for value in holds), held[0] if held else None))
-        if not np.isnan(holds).all():
-            found.append((float(np.nanmax(holds)), stage, runs))
+        short = sweep.full_drive(0)
+        held = points(stage, short, [USUAL])
+        shorts.append(Shorted(node, tuple(_number(value) for value in short.output_A), held[0] if held else None))
+        if not np.isnan(short.output_A).all():
+            found.append((float(np.nanmax(short.output_A)), stage, sweep))
     if not found:
         raise reason or CircuitError("no operating point was found with the output shorted")
-    _, stage, runs = max(found, key=lambda entry: entry[0])
-    return stage, runs, tuple(shorts)
+    _, stage, sweep = max(found, key=lambda entry: entry[0])
+    return stage, sweep, tuple(shorts)
 
 
 def _answers(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...]) -> Solution:
@@ -94,8 +94,9 @@ def _answers(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...]) -
         points(stage, nominal.carry, [USUAL]) if nominal.carry is not None and np.isfinite(nominal.carry_V[USUAL]) else ()
     )
     ambients = range(len(ambients_degC))
+    shares = shunt_and_pass_current(stage, nominal.short)
     return Solution(
-        currents=tuple(_currents(stage, nominal, ranges, place, ambients_degC[place]) for place in ambients),
+        currents=tuple(_currents(nominal, ranges, shares, place, ambients_degC[place]) for place in ambients),
         locus=locus,
         held_short=held[0] if held else None,
         worst_point=locus[int(np.argmax(power))] if locus else None,
@@ -124,7 +125,7 @@ def _usual_locus(stage: Stage, nominal: Nominal) -> Run:
     return run_at(stage, only.pick(full.owner), full.output_V, full.inner)
 
 
-def _currents(stage: Stage, nominal: Nominal, ranges: Ranges, place: int, ambient_degC: float) -> Currents:
+def _currents(nominal: Nominal, ranges: Ranges, shares: tuple[Array, Array], place: int, ambient_degC: float) -> Currents:
     def pair(kind: str) -> Pair | None:
         low, high = ranges.by_kind[kind][:, place].tolist()
         return (low, high) if np.isfinite(low) and np.isfinite(high) else None
@@ -139,8 +140,8 @@ def _currents(stage: Stage, nominal: Nominal, ranges: Ranges, place: int, ambien
         carries_A=_number(nominal.carries_A[place]),
         most_A=_number(nominal.most_A[place]),
         unlimited_A=_number(nominal.unlimited.output_A[place]),
-        shunt_A=_number(shunt_current(stage, nominal.short)[place]),
-        pass_A=_number(pass_current(stage, nominal.short)[place]),
+        shunt_A=_number(shares[0][place]),
+        pass_A=_number(shares[1][place]),
         limited_by_short=_limited_by(nominal.holds_A[place], nominal.unlimited.output_A[place]),
         limited_by_output=_limited_by(carry, carry_unlimited),
         begins_range_A=pair("begins"),
@@ -184,15 +185,13 @@ def _sensitivities(stage: Stage, nominal: Nominal) -> tuple[Sensitivity, ...]:
 
 def _corner_steps(stage: Stage, ranges: Ranges) -> dict[str, dict[str, float]]:
     """Return the positions taken at usual ambient for the low and the high end of holds."""
-    ambients = ranges.holds_corner.shape[1] // 2
-    columns = {"low": USUAL, "high": ambients + USUAL}
     return {
         end: {
             f"{axis.device}.{axis.parameter}": float(position)
-            for axis, position in zip(stage.axes, ranges.holds_corner[:, column], strict=True)
+            for axis, position in zip(stage.axes, ranges.holds_corner[row, :, USUAL], strict=True)
             if position
         }
-        for end, column in columns.items()
+        for row, end in enumerate(("low", "high"))
     }
 
 

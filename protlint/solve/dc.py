@@ -6,9 +6,9 @@ block), so the nodal matrix stays as small as the schematic. With the port curre
 
     A^T j(u) + G V = 0 (Kirchhoff's current law at the unknown nodes), P(u) = A V.
 
-Steps of junction voltages are limited (Nagel 1975). Lanes that do not converge are tried again from a cold start with
-conductances across every port that shrink to nothing (gmin stepping), then with all supplies raised from zero (source
-stepping). What still does not converge is marked, never guessed.
+Steps of junction voltages are limited (Nagel 1975). Lanes that do not converge are tried again: from where the circuit
+settles when switched on, then with conductances across every port that shrink to nothing (gmin stepping), then with all
+supplies raised from zero (source stepping). What still does not converge is marked, never guessed.
 """
 
 from __future__ import annotations
@@ -27,14 +27,17 @@ from protlint.solve.network import Group, Network
 CLOSE_V = 2e-6
 """Newton's error falls with the square: a last step this small leaves less than 1e-8 of a thermal voltage."""
 
-ITERATIONS = 60
+ITERATIONS = 30
 NODE_LEAK_S = 1e-13
 """From every unknown node to 0 V, so that what hangs on nothing but a capacitor has a voltage."""
 DAMP_AFTER = 20
 """Lanes that swing to and fro are damped from here on."""
 
 GMIN_STEPS_S = (1e-2, 1e-3, 1e-4, 1e-5, 1e-6, 1e-7, 1e-8, 1e-9, 1e-10, 1e-11, 1e-12)
-LONGEST_GATE_STEP_V = 2.0
+LONGEST_GATE_STEP_V = 20.0
+FIRST_HOLD_S, LAST_HOLD_S = 10.0, 1e-9
+SETTLING_STEPS = 160
+LONGEST_SETTLING_STEP_V = 0.5
 
 Charges = Callable[[Group, slice, Array, Evaluation], Evaluation]
 """Adds a group's charge currents: (group, its rows of inner, inner of the group, static evaluation) to evaluation."""
@@ -57,7 +60,7 @@ class Operating:
 
 
 @dataclass(frozen=True, slots=True)
-class _Folded:
+class Folded:
     """A group from outside: its evaluation, the inverse of the voltage slopes, the conductances at its ports."""
 
     evaluation: Evaluation
@@ -109,39 +112,26 @@ def newton(
 
     ``bridge_S`` lies across every port (gmin stepping); ``charges`` adds charge currents to the devices; ``injected_A``
     (unknown nodes, lanes) flows into the nodes.
-
-    Lanes that take long are damped as if every node had a capacitor: the share of the matrix's diagonal that holds a node at
-    its last voltage grows while steps grow and shrinks while they shrink (pseudo-transient continuation, C. T. Kelley and
-    D. E. Keyes, SIAM Journal on Numerical Analysis 35, 1998).
     """
     count, unknown = known_V.shape[1], network.unknown
     inner = np.empty((network.ports, count))
     voltages = np.zeros((unknown, count))
     converged = np.zeros(count, dtype=bool)
     active = np.arange(count)
-    matrix, right, outer_V = _linear_part(network, p, known_V, bridge_S)
+    matrix, right, outer_V = linear_part(network, p, known_V, bridge_S)
     if injected_A is not None:
         right = right + injected_A
     work = np.array(start, dtype=np.float64)
     to_ports = np.ascontiguousarray(network.incidence[:, :unknown])
-    hold, solved, moved = None, np.zeros((unknown, count)), np.full(count, np.inf)
-    for iteration in range(ITERATIONS):
-        folded = [_fold(one) for one in evaluate(network, p, work, charges)]
-        port_V, companion, conductance = _companions(network, folded, outer_V)
+    done = converged
+    for _ in range(ITERATIONS):
+        folded = [fold(one) for one in evaluate(network, p, work, charges)]
+        port_V, companion, conductance = companions(network, folded, outer_V)
         system = matrix + (network.scatter @ conductance).reshape(matrix.shape)
-        pull = right - to_ports.T @ companion
-        if iteration >= DAMP_AFTER:
-            hold = np.full(len(active), 1.0) if hold is None else hold
-            weight = hold * np.abs(system[np.arange(unknown), np.arange(unknown)])
-            system[np.arange(unknown), np.arange(unknown)] += weight
-            pull += weight * solved
-        solved = eliminate(system, pull)
-        new = _limited(network, p, work, work + _inner_step(network, folded, to_ports @ solved + outer_V - port_V))
-        before, moved = moved, np.abs(new - work).max(axis=0, initial=0.0)
+        solved = eliminate(system, right - to_ports.T @ companion)
+        new = limited(network, p, work, work + inner_step(network, folded, to_ports @ solved + outer_V - port_V))
+        moved = np.abs(new - work).max(axis=0, initial=0.0)
         done = moved < CLOSE_V
-        if hold is not None:
-            done &= hold == 0.0
-            hold = np.where(moved < before, np.where(hold > 1e-4, 0.25 * hold, 0.0), np.minimum(4.0 * hold + 1e-4, 1e3))
         lost = np.isnan(moved)
         if lost.any():
             new[:, lost] = 0.0
@@ -154,12 +144,39 @@ def newton(
             inner[:, active[done]], voltages[:, active[done]] = new[:, done], solved[:, done]
             converged[active[done]] = True
             left = np.flatnonzero(~done)
-            active, work, p, solved, moved = active[left], new[:, left], take(p, left), solved[:, left], moved[left]
+            active, work, p, solved = active[left], new[:, left], take(p, left), solved[:, left]
             matrix, right, outer_V = matrix[:, :, left], right[:, left], outer_V[:, left]
-            hold = None if hold is None else hold[left]
             done = np.zeros(len(left), dtype=bool)
     inner[:, active], voltages[:, active], converged[active] = work, solved, done
     return inner, voltages, converged
+
+
+def settle(network: Network, p: Parameters, known_V: Array) -> Array:
+    """Return inner voltages (ports, lanes) near the solution, reached as the circuit itself would reach it from rest.
+
+    Every node has a capacitor that holds it at its last voltage; steps in time that move a node too far are taken again
+    shorter, others make the next one longer (pseudo-transient continuation, C. T. Kelley and D. E. Keyes, SIAM Journal on
+    Numerical Analysis 35, 1998).
+    """
+    count, unknown = known_V.shape[1], network.unknown
+    matrix, right, outer_V = linear_part(network, p, known_V, 0.0)
+    to_ports = np.ascontiguousarray(network.incidence[:, :unknown])
+    diagonal = np.arange(unknown)
+    voltages, hold_S = np.zeros((unknown, count)), np.full(count, FIRST_HOLD_S)
+    work = np.zeros((network.ports, count))
+    for _ in range(SETTLING_STEPS):
+        folded = [fold(one) for one in evaluate(network, p, work)]
+        port_V, companion, conductance = companions(network, folded, outer_V)
+        system = matrix + (network.scatter @ conductance).reshape(matrix.shape)
+        system[diagonal, diagonal] += hold_S
+        solved = eliminate(system, right - to_ports.T @ companion + hold_S * voltages)
+        new = limited(network, p, work, work + inner_step(network, folded, to_ports @ solved + outer_V - port_V))
+        fair = np.abs(solved - voltages).max(axis=0, initial=0.0) < LONGEST_SETTLING_STEP_V
+        work, voltages = np.where(fair, new, work), np.where(fair, solved, voltages)
+        hold_S = np.where(fair, hold_S * 0.4, np.minimum(hold_S * 8.0, 1e3))
+        if (hold_S < LAST_HOLD_S).all():
+            break
+    return work
 
 
 def evaluate(network: Network, p: Parameters, inner: Array, charges: Charges | None = None) -> list[Evaluation]:
@@ -179,29 +196,24 @@ def evaluate(network: Network, p: Parameters, inner: Array, charges: Charges | N
     return results
 
 
-def outside(evaluation: Evaluation) -> Array:
-    """Return the conductances seen at the ports, outside the series resistances: current_slope inverse(voltage_slope)."""
-    return _fold(evaluation).conductance
-
-
 def eliminate(matrix: Array, right: Array) -> Array:
-    """Solve (n, n, lanes) systems for (n, lanes) right sides by Gaussian elimination along the diagonal.
+    """Solve (n, n, lanes) systems for right sides (n, lanes) or (n, sides, lanes) by Gaussian elimination.
 
-    Nodal matrices bear elimination without exchanges; a lane that does not comes out as infinite or NaN and is caught.
+    Nodal matrices bear elimination along the diagonal, without exchanges; a lane that does not comes out as infinite or NaN and is caught.
     The inputs are overwritten.
     """
     size = len(right)
     for k in range(size - 1):
         factor = matrix[k + 1 :, k] / matrix[k, k]
         matrix[k + 1 :, k + 1 :] -= factor[:, None] * matrix[k, k + 1 :]
-        right[k + 1 :] -= factor * right[k]
+        right[k + 1 :] -= (factor if right.ndim == 2 else factor[:, None]) * right[k]
     for k in range(size - 1, -1, -1):
         right[k] /= matrix[k, k]
-        right[:k] -= matrix[:k, k] * right[k]
+        right[:k] -= (matrix[:k, k] if right.ndim == 2 else matrix[:k, k, None]) * right[k]
     return right
 
 
-def _linear_part(network: Network, p: Parameters, known_V: Array, bridge_S: float) -> tuple[Array, Array, Array]:
+def linear_part(network: Network, p: Parameters, known_V: Array, bridge_S: float) -> tuple[Array, Array, Array]:
     """Return the resistors' nodal matrix, their right side, and the known voltages' part of the port voltages."""
     unknown, count = network.unknown, known_V.shape[1]
     matrix = (network.resistor_scatter @ np.broadcast_to(p.conductance, (len(p.conductance), count))).reshape(
@@ -219,56 +231,69 @@ def _linear_part(network: Network, p: Parameters, known_V: Array, bridge_S: floa
     return matrix, right, outer_V
 
 
-def _fold(evaluation: Evaluation) -> _Folded:
+def fold(evaluation: Evaluation) -> Folded:
     """Work out what a group looks like from outside its series resistances."""
     m, g = evaluation.voltage_slope, evaluation.current_slope
     if len(m) == 1:
         inverse = 1.0 / m
-        return _Folded(evaluation, inverse, g * inverse)
+        return Folded(evaluation, inverse, g * inverse)
     inverse = np.empty_like(m)
     inverse[0, 0] = m[1, 1]
     inverse[1, 1] = m[0, 0]
     np.negative(m[0, 1], out=inverse[0, 1])
     np.negative(m[1, 0], out=inverse[1, 0])
     inverse /= m[0, 0] * m[1, 1] - m[0, 1] * m[1, 0]
-    return _Folded(evaluation, inverse, g[:, 0, None] * inverse[0] + g[:, 1, None] * inverse[1])
+    return Folded(evaluation, inverse, g[:, 0, None] * inverse[0] + g[:, 1, None] * inverse[1])
 
 
-def _companions(network: Network, folded: list[_Folded], outer_V: Array) -> tuple[Array, Array, Array]:
+def companions(network: Network, folded: list[Folded], outer_V: Array) -> tuple[Array, Array, Array]:
     """Stack the groups' port voltages, what their currents would be at no port voltage, and their conductances."""
     lanes = outer_V.shape[1]
     port_V, companion, conductance = [], [], []
     for group, one in zip(network.groups, folded, strict=True):
         voltage = one.evaluation.port_V
         across = voltage - outer_V[group.rows].reshape(voltage.shape)
-        through = one.conductance[:, 0] * across[0]
-        if group.ports == 2:
-            through += one.conductance[:, 1] * across[1]
         port_V.append(voltage.reshape(-1, lanes))
-        companion.append((one.evaluation.port_A - through).reshape(-1, lanes))
+        companion.append((one.evaluation.port_A - _times(one.conductance, across)).reshape(-1, lanes))
         conductance.append(one.conductance.reshape(-1, lanes))
-    return _stack(port_V, lanes), _stack(companion, lanes), _stack(conductance, lanes)
+    return stack(port_V, lanes), stack(companion, lanes), stack(conductance, lanes)
 
 
-def _inner_step(network: Network, folded: list[_Folded], miss: Array) -> Array:
+def through(network: Network, folded: list[Folded], across_V: Array) -> Array:
+    """Return conductances times port voltages (ports, lanes)."""
+    lanes = across_V.shape[1]
+    parts = [
+        _times(one.conductance, across_V[group.rows].reshape(one.evaluation.port_V.shape)).reshape(-1, lanes)
+        for group, one in zip(network.groups, folded, strict=True)
+    ]
+    return stack(parts, lanes)
+
+
+def _times(block: Array, across: Array) -> Array:
+    """Return a (1, 1, ...) or (2, 2, ...) block times (1, ...) or (2, ...)."""
+    product: Array = block[:, 0] * across[0]
+    if len(across) == 2:
+        product += block[:, 1] * across[1]
+    return product
+
+
+def inner_step(network: Network, folded: list[Folded], miss: Array) -> Array:
     """Return Newton's step of the inner voltages that takes up the port voltages' miss."""
     steps = []
     for group, one in zip(network.groups, folded, strict=True):
         across = miss[group.rows].reshape(one.evaluation.port_V.shape)
-        step = one.inverse[:, 0] * across[0]
-        if group.ports == 2:
-            step += one.inverse[:, 1] * across[1]
-        steps.append(step.reshape(-1, miss.shape[1]))
-    return _stack(steps, miss.shape[1])
+        steps.append(_times(one.inverse, across).reshape(-1, miss.shape[1]))
+    return stack(steps, miss.shape[1])
 
 
-def _stack(parts: list[Array], lanes: int) -> Array:
+def stack(parts: list[Array], lanes: int) -> Array:
+    """Stack the groups' rows; no copy where there is but one group."""
     if len(parts) == 1:
         return parts[0]
     return np.concatenate(parts) if parts else np.zeros((0, lanes))
 
 
-def _limited(network: Network, p: Parameters, old: Array, new: Array) -> Array:
+def limited(network: Network, p: Parameters, old: Array, new: Array) -> Array:
     """Shorten steps beyond what a device's equations can be trusted for; a device taken out rests at 0 V."""
     for group, record, present in zip(network.groups, p.records, p.present, strict=True):
         was = old[group.rows].reshape(group.ports, -1, old.shape[1])
@@ -284,6 +309,10 @@ def _limited(network: Network, p: Parameters, old: Array, new: Array) -> Array:
                 was_over, now_over = -was - record.B_V, -now - record.B_V
                 over = devices.junction_step(was_over, now_over, 1.0 / record.V_B, record.V_B_crit)
                 now[...] = np.where(np.isfinite(record.B_V), np.maximum(now, -over - record.B_V), now)
+        elif isinstance(record, devices.Source):
+            # from beyond one limit no further than to the other: past both, the iteration would jump to and fro
+            edge = record.limit_A * record.resistance_ohm
+            now[...] = np.where(was > edge, np.maximum(now, -edge), np.where(was < -edge, np.minimum(now, edge), now))
         if not isinstance(present, float):
             now *= present > 0.0
     return new
@@ -291,22 +320,31 @@ def _limited(network: Network, p: Parameters, old: Array, new: Array) -> Array:
 
 def _known_currents(network: Network, p: Parameters, inner: Array, node_V: Array) -> Array:
     """Return the current that each known node's holder feeds into the circuit (known nodes, lanes)."""
-    port_A = _stack([one.port_A.reshape(-1, inner.shape[1]) for one in evaluate(network, p, inner)], inner.shape[1])
+    port_A = stack([one.port_A.reshape(-1, inner.shape[1]) for one in evaluate(network, p, inner)], inner.shape[1])
     through = p.conductance * (network.resistor_incidence @ node_V)
     known = slice(network.unknown, None)
     return network.incidence[:, known].T @ port_A + network.resistor_incidence[:, known].T @ through
 
 
 def _fall_back(network: Network, p: Parameters, known_V: Array) -> tuple[Array, Array, NDArray[np.bool_]]:
-    """Try gmin stepping, then source stepping, from a cold start."""
+    """Let the circuit settle from rest; then try gmin stepping, then source stepping, from a cold start."""
+    inner, voltages, converged = newton(network, p, known_V, settle(network, p, known_V))
+    if not converged.all():
+        stuck = np.flatnonzero(~converged)
+        again = _gmin_stepping(network, take(p, stuck), known_V[:, stuck])
+        inner[:, stuck], voltages[:, stuck], converged[stuck] = again
+    if not converged.all():
+        stuck = np.flatnonzero(~converged)
+        again = _source_stepping(network, take(p, stuck), known_V[:, stuck])
+        inner[:, stuck], voltages[:, stuck], converged[stuck] = again
+    return inner, voltages, converged
+
+
+def _gmin_stepping(network: Network, p: Parameters, known_V: Array) -> tuple[Array, Array, NDArray[np.bool_]]:
     inner = cold_start(network, p, known_V.shape[1])
     for bridge_S in GMIN_STEPS_S:
         inner, _, _ = newton(network, p, known_V, inner, bridge_S=bridge_S)
-    inner, voltages, converged = newton(network, p, known_V, inner)
-    if not converged.all():
-        stuck = np.flatnonzero(~converged)
-        inner[:, stuck], voltages[:, stuck], converged[stuck] = _source_stepping(network, take(p, stuck), known_V[:, stuck])
-    return inner, voltages, converged
+    return newton(network, p, known_V, inner)
 
 
 def _source_stepping(network: Network, p: Parameters, known_V: Array) -> tuple[Array, Array, NDArray[np.bool_]]:

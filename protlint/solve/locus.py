@@ -11,7 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from protlint.solve.devices import Array, IntArray
-from protlint.solve.stage import Run, Stage, pass_voltage, run_stage
+from protlint.solve.stage import Run, Stage, pass_voltage, run_stage, short_voltage
 
 RUN_OUT_SHARE = 0.01
 """The pass device has run out where this share of the greatest current is left."""
@@ -20,7 +20,8 @@ PASS_V = 2.0
 LEAST_POINTS = 41
 
 _KINK_SHARE = 1e-3
-_ROUNDS = 7
+_ROUNDS = 3
+_PARTS = np.array([0.25, 0.5, 0.75])
 
 
 @dataclass(frozen=True, slots=True)
@@ -51,34 +52,40 @@ class Loci:
 
 
 def run_at(stage: Stage, conditions: Conditions, output_V: Array | None, start: Array | None) -> Run:
-    """Run conditions with the drive full on and the output in the short (None) or at given voltages (conditions,)."""
+    """Run conditions with the drive full on and the output in the short (None, NaN) or at given voltages (conditions,)."""
     return run_stage(stage, conditions.ambient_K, corner=conditions.corner, output_V=output_V, start=start)
 
 
-def trace(stage: Stage, conditions: Conditions, short: Run, rounds: int = _ROUNDS) -> Loci:
-    """Trace the loci of conditions whose shorts are solved.
+def trace(stage: Stage, conditions: Conditions, start: Array, rounds: int = _ROUNDS) -> tuple[Loci, Array]:
+    """Trace the loci of conditions; return them and the inner voltages of the even grid (ports, points, conditions).
 
     From the short towards the end of the output's reach in which the pass voltage falls: upwards where current flows out of
     the stage, else downwards. Where three points in a row bend by more than 0.1 % of the greatest current, both intervals
-    are halved, up to ``rounds`` times.
+    are divided by four, up to ``rounds`` times. ``start`` are inner voltages to begin with, as those returned; one point may
+    stand for all.
     """
     count = len(conditions.ambient_K)
-    near = short.output_V
+    near = short_voltage(stage, conditions.corner, count)
     far = np.full(count, _reach_end(stage, near))
-    share = np.tile(np.linspace(0.0, 1.0, LEAST_POINTS), count)
     owner = np.repeat(np.arange(count), LEAST_POINTS)
-    found = _solve(stage, conditions, owner, near[owner] + share * (far - near)[owner], short.operating.inner[:, owner])
+    share = np.tile(np.linspace(0.0, 1.0, LEAST_POINTS), count)
+    begin = np.broadcast_to(start, (len(start), LEAST_POINTS, count)).swapaxes(1, 2).reshape(len(start), -1)
+    found = _solve(stage, conditions, owner, near[owner] + share * (far - near)[owner], begin)
+    grid = found.inner.reshape(len(start), count, LEAST_POINTS).swapaxes(1, 2)
     for _ in range(rounds):
         left = _bends(found, share)
         if not len(left):
             break
-        middle = 0.5 * (share[left] + share[left + 1])
-        whose = found.owner[left]
-        added = _solve(stage, conditions, whose, near[whose] + middle * (far - near)[whose], found.inner[:, left])
-        share = np.concatenate((share, middle))
+        parts = np.repeat(left, len(_PARTS))
+        part = np.tile(_PARTS, len(left))
+        between = share[parts] + part * (share[parts + 1] - share[parts])
+        whose = found.owner[parts]
+        begin = found.inner[:, parts] + part * (found.inner[:, parts + 1] - found.inner[:, parts])
+        added = _solve(stage, conditions, whose, near[whose] + between * (far - near)[whose], begin)
+        share = np.concatenate((share, between))
         order = np.lexsort((share, np.concatenate((found.owner, whose))))
         share, found = share[order], _merged(found, added, order)
-    return _until_run_out(found)
+    return _until_run_out(found), grid
 
 
 def fill(stage: Stage, conditions: Conditions, loci: Loci) -> Loci:

@@ -2,16 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
 from protlint.solve.begins import Begins, begins_nominal
-from protlint.solve.constants import KELVIN
 from protlint.solve.devices import Array
-from protlint.solve.locus import Conditions, Loci, greatest, least_working, run_at, trace, working_edges
-from protlint.solve.stage import Run, Stage, run_stage
+from protlint.solve.locus import Conditions, Loci, greatest, least_working, trace, working_edges
+from protlint.solve.stage import Run, Stage, Sweep, run_stage
 
 
 @dataclass(frozen=True, slots=True)
@@ -20,14 +18,16 @@ class Nominal:
 
     ``short`` and ``unlimited`` are the runs into the short with the shunt in and taken out; ``carry`` and
     ``carry_unlimited`` the same at the output voltages ``carry_V``, None where no such voltage is known (a single ambient
-    may still have none: NaN). ``most_V`` and ``most_A`` are the greatest of each locus.
+    may still have none: NaN). ``grid`` are the inner voltages of the loci's even grid; ``most_V`` and ``most_A`` the
+    greatest of each locus.
     """
 
     conditions: Conditions
     short: Run
     unlimited: Run
-    loci: Loci
     begins: Begins
+    loci: Loci
+    grid: Array
     carry_V: Array
     carry: Run | None
     carry_unlimited: Run | None
@@ -47,41 +47,40 @@ class Nominal:
         return np.where(np.isnan(self.carry_V), np.nan, np.maximum(self.carry.output_A, 0.0))
 
 
-def held_short(stage: Stage, ambients_degC: Sequence[float]) -> tuple[Run, Run]:
-    """Run the short at every ambient with the shunt in, then taken out."""
-    ambient_K = np.array(ambients_degC) + KELVIN
-    return run_stage(stage, ambient_K), run_stage(stage, ambient_K, shunt_in=np.zeros(len(ambient_K)))
-
-
-def solve_nominal(stage: Stage, short: Run, unlimited: Run) -> Nominal:
-    """Solve the rest of the nominal figures from the held shorts."""
+def solve_nominal(stage: Stage, sweep: Sweep) -> Nominal:
+    """Solve the nominal figures from the drive's sweep."""
+    short, unlimited = sweep.full_drive(0), sweep.full_drive(1)
     conditions = Conditions(short.lanes.ambient_K)
-    ambients = range(short.lanes.count)
+    ambients = range(sweep.ambients)
     circuit = stage.network.circuit
-    loci = trace(stage, conditions, short)
+    loci, grid = trace(stage, conditions, short.operating.inner[:, None])
     if circuit.output_V is not None:
-        carry_V = np.full(len(ambients), circuit.output_V)
+        carry_V = np.full(sweep.ambients, circuit.output_V)
     elif circuit.ground_leg:
-        carry_V = np.full(len(ambients), np.nan)
+        carry_V = np.full(sweep.ambients, np.nan)
     else:
         loci = working_edges(stage, conditions, loci)
         places = [least_working(loci, ambient) for ambient in ambients]
         carry_V = np.array([np.nan if place is None else loci.output_V[place] for place in places])
     carry = carry_unlimited = None
     if not np.isnan(carry_V).all():
-        at_V = np.where(np.isnan(carry_V), short.output_V, carry_V)
-        carry = run_at(stage, conditions, at_V, short.operating.inner)
-        absent = np.zeros(len(ambients))
-        carry_unlimited = run_stage(
-            stage, conditions.ambient_K, output_V=at_V, shunt_in=absent, start=unlimited.operating.inner
+        run = run_stage(
+            stage,
+            np.tile(conditions.ambient_K, 2),
+            output_V=np.tile(carry_V, 2),
+            shunt_in=np.repeat([1.0, 0.0], sweep.ambients),
+            start=np.concatenate((short.operating.inner, unlimited.operating.inner), axis=1),
         )
+        first = np.arange(sweep.ambients)
+        carry, carry_unlimited = run.pick(first), run.pick(first + sweep.ambients)
     tops = [greatest(loci, ambient) for ambient in ambients]
     return Nominal(
         conditions=conditions,
         short=short,
         unlimited=unlimited,
+        begins=begins_nominal(stage, conditions, sweep),
         loci=loci,
-        begins=begins_nominal(stage, conditions, short.output_A),
+        grid=grid,
         carry_V=carry_V,
         carry=carry,
         carry_unlimited=carry_unlimited,

@@ -14,12 +14,13 @@ import numpy as np
 from protlint.solve.constants import KELVIN
 from protlint.solve.corners import Axis, axes_of, held_voltages, variation
 from protlint.solve.dc import Operating, evaluate, solve_lanes
-from protlint.solve.devices import Array
+from protlint.solve.devices import Array, IntArray
 from protlint.solve.lanes import Lanes, Variation, known_voltages, parameters
 from protlint.solve.network import Network
 from protlint.solve.parameters import CircuitError
 from protlint.solve.solution import Point, State
 
+SWEEP_POINTS = 33
 LEAST_OUTPUT_A = 1e-6
 """A stage whose drive moves less than this drives nothing."""
 
@@ -49,9 +50,46 @@ class Run:
     output_V: Array
     output_A: Array
 
+    def pick(self, lanes: IntArray) -> Run:
+        """Return some lanes of a nominal run."""
+        conditions, solved = self.lanes, self.operating
+        present = None if conditions.present is None else conditions.present[lanes]
+        return Run(
+            Lanes(conditions.ambient_K[lanes], conditions.known_V[:, lanes], present),
+            Operating(solved.inner[:, lanes], solved.node_V[:, lanes], solved.known_A[:, lanes], solved.converged[lanes]),
+            self.output_V[lanes],
+            self.output_A[lanes],
+        )
 
-def make_stage(network: Network, short: str, ambient_degC: float) -> Stage:
-    """Find the drive's on end, the one with the greater unlimited output current into the short.
+
+@dataclass(frozen=True, slots=True)
+class Sweep:
+    """The drive swept from its off end to its on end into the short: the run of all lanes, ordered with and without the
+    shunt, then by drive voltage, then by ambient; drive voltages (points,); the number of ambients."""
+
+    run: Run
+    drive_V: Array
+    ambients: int
+
+    def current(self, without: int) -> Array:
+        """Return the output currents with (0) or without (1) the shunt (points, ambients)."""
+        current: Array = self.run.output_A.reshape(2, len(self.drive_V), self.ambients)[without]
+        return current
+
+    def inner(self) -> Array:
+        """Return the inner voltages (ports, 2, points, ambients)."""
+        return self.run.operating.inner.reshape(-1, 2, len(self.drive_V), self.ambients)
+
+    def full_drive(self, without: int) -> Run:
+        """Return the run at the on end, one lane an ambient, with (0) or without (1) the shunt."""
+        first = (without * len(self.drive_V) + len(self.drive_V) - 1) * self.ambients
+        return self.run.pick(np.arange(first, first + self.ambients))
+
+
+def sweep_stage(network: Network, short: str, ambients_degC: Sequence[float], usual: int) -> tuple[Stage, Sweep]:
+    """Sweep the drive into a short at every ambient; return the stage, and the sweep from its off end to its on end.
+
+    The on end is the one with the greater unlimited output current at the usual ambient (an index).
 
     Raises
     ------
@@ -63,15 +101,27 @@ def make_stage(network: Network, short: str, ambient_degC: float) -> Stage:
     passing = tuple((place[nodes[name][0]], place[nodes[name][-1]]) for name in network.circuit.pass_devices)
     stage = Stage(network, axes_of(network), short, 1, 1.0, passing)
     drive = network.circuit.drive
-    ends = np.array([drive.low_V.usual, drive.high_V.usual])
-    run = run_stage(stage, np.full(2, ambient_degC + KELVIN), drive_V=ends, shunt_in=np.zeros(2))
-    if np.isnan(run.output_A).all():
+    count = len(ambients_degC)
+    drive_V = np.linspace(drive.low_V.usual, drive.high_V.usual, SWEEP_POINTS)
+    run = run_stage(
+        stage,
+        np.tile(np.array(ambients_degC) + KELVIN, 2 * SWEEP_POINTS),
+        drive_V=np.tile(np.repeat(drive_V, count), 2),
+        shunt_in=np.repeat([1.0, 0.0], SWEEP_POINTS * count),
+    )
+    ends = Sweep(run, drive_V, count).current(1)[[0, -1], usual]
+    if np.isnan(ends).all():
         raise CircuitError("no operating point was found with the output shorted")
-    on_end = int(np.nanargmax(np.abs(run.output_A)))
-    greatest = float(run.output_A[on_end])
+    on_end = int(np.nanargmax(np.abs(ends)))
+    greatest = float(ends[on_end])
     if abs(greatest) < LEAST_OUTPUT_A:
         raise CircuitError(f"the drive cannot turn the pass device on: {abs(greatest):.2g} A into the short at most")
-    return replace(stage, on_end=on_end, way=1.0 if greatest > 0.0 else -1.0)
+    way = 1.0 if greatest > 0.0 else -1.0
+    run = replace(run, output_A=way * run.output_A)
+    if on_end == 0:
+        rows = np.arange(2 * SWEEP_POINTS * count).reshape(2, SWEEP_POINTS, count)[:, ::-1].ravel()
+        run, drive_V = run.pick(rows), drive_V[::-1]
+    return replace(stage, on_end=on_end, way=way), Sweep(run, drive_V, count)
 
 
 def run_stage(
@@ -88,24 +138,46 @@ def run_stage(
 ) -> Run:
     """Solve lanes, all arrays (lanes,) but ``corner`` (axes, lanes) and ``start`` (ports, lanes).
 
-    ``axes`` stand for the stage's own; ``output_V`` None holds the output in the short, ``drive_V`` None holds the drive at
-    its on end, both as the corner has them. ``known_V`` (known nodes, lanes) overrides all three.
+    ``axes`` stand for the stage's own; ``output_V`` None or NaN holds the output in the short, ``drive_V`` None holds the
+    drive at its on end, both as the corner has them. ``known_V`` (known nodes, lanes) overrides all three.
     """
+    lanes = stage_lanes(
+        stage,
+        ambient_K,
+        axes=axes,
+        corner=corner,
+        output_V=output_V,
+        drive_V=drive_V,
+        shunt_in=shunt_in,
+        known_V=known_V,
+    )
+    operating = solve_lanes(stage.network, lanes, start)
+    return Run(lanes, operating, lanes.known_V[-2], stage.way * operating.output_A)
+
+
+def stage_lanes(
+    stage: Stage,
+    ambient_K: Array,
+    *,
+    axes: Sequence[Axis] | None = None,
+    corner: Array | None = None,
+    output_V: Array | None = None,
+    drive_V: Array | None = None,
+    shunt_in: Array | None = None,
+    known_V: Array | None = None,
+) -> Lanes:
+    """Return the lanes that :func:`run_stage` solves; arguments as there."""
     network, count = stage.network, len(ambient_K)
     chosen = stage.axes if axes is None else axes
     if corner is None:
         chosen, corner = (), np.zeros((0, count))
-    held_V, ends_V = held_voltages(network, chosen, corner)
-    if known_V is not None:
-        output_V = known_V[network.output - network.unknown]
-    if output_V is None:
-        output_V = _short_voltage(stage, held_V, count)
-    drive = ends_V[stage.on_end] if drive_V is None else drive_V
     varied = variation(network, chosen, corner, ambient_K) if len(chosen) else Variation()
-    known = known_voltages(network, held_V, output_V, drive) if known_V is None else known_V
-    lanes = Lanes(ambient_K, known, shunt_in, varied)
-    operating = solve_lanes(network, lanes, start)
-    return Run(lanes, operating, output_V, stage.way * operating.output_A)
+    if known_V is None:
+        held_V, ends_V = held_voltages(network, chosen, corner)
+        short_V = _short_voltage(stage, held_V, count)
+        output_V = short_V if output_V is None else np.where(np.isnan(output_V), short_V, output_V)
+        known_V = known_voltages(network, held_V, output_V, ends_V[stage.on_end] if drive_V is None else drive_V)
+    return Lanes(ambient_K, known_V, shunt_in, varied)
 
 
 def pass_voltage(stage: Stage, run: Run) -> Array:
@@ -174,18 +246,20 @@ def points(stage: Stage, run: Run, lanes: Sequence[int]) -> tuple[Point, ...]:
     return tuple(found)
 
 
-def shunt_current(stage: Stage, run: Run) -> Array:
-    """Return the greatest current through a shunt device (lanes,)."""
-    table = states(stage.network, run)
-    currents = [np.abs(table[name][0]) for name in stage.network.circuit.shunt]
-    return np.max(currents, axis=0) if currents else np.zeros(run.lanes.count)
+def shunt_and_pass_current(stage: Stage, run: Run) -> tuple[Array, Array]:
+    """Return the greatest current through a shunt device, and the pass devices' current together, each (lanes,)."""
+    table, circuit = states(stage.network, run), stage.network.circuit
+    nothing = np.zeros(run.lanes.count)
+    shunt = [np.abs(table[name][0]) for name in circuit.shunt] or [nothing]
+    passing = [np.abs(table[name][0]) for name in circuit.pass_devices] or [nothing]
+    return np.max(shunt, axis=0), np.sum(passing, axis=0)
 
 
-def pass_current(stage: Stage, run: Run) -> Array:
-    """Return the pass devices' current together (lanes,)."""
-    table = states(stage.network, run)
-    currents = [np.abs(table[name][0]) for name in stage.network.circuit.pass_devices]
-    return np.sum(currents, axis=0) if currents else np.zeros(run.lanes.count)
+def short_voltage(stage: Stage, corner: Array | None, count: int) -> Array:
+    """Return the voltage of the short at a corner (axes, lanes) or nominal (lanes,)."""
+    axes = () if corner is None else stage.axes
+    held_V, _ = held_voltages(stage.network, axes, np.zeros((0, count)) if corner is None else corner)
+    return _short_voltage(stage, held_V, count)
 
 
 def _short_voltage(stage: Stage, held_V: Array, count: int) -> Array:
