@@ -7,9 +7,10 @@ from dataclasses import dataclass, field
 
 from protlint.topology.flatten import Pattern
 from protlint.topology.index import Index
-from protlint.topology.plan import Entry, Node, Planner, Task, make_task
+from protlint.topology.plan import Node, Planner
 from protlint.topology.questions import holds, is_late
 from protlint.topology.search import Elements, State, search
+from protlint.topology.steps import Entry, make_task
 from protlint.topology.terms import Clause, Each
 
 Key = tuple[str, str, tuple[tuple[str, Elements], ...]]
@@ -57,7 +58,7 @@ class Fitter:
     def __init__(self, index: Index, patterns: Sequence[Pattern]) -> None:
         self.index = index
         self.patterns = patterns
-        self.planner = Planner({kind: len(elements) for kind, elements in index.by_kind.items()})
+        self.planner = Planner(index)
         self._starts: dict[tuple[int, int, tuple[str, ...], tuple[int, ...]], Node] = {}
 
     def matches(self) -> list[Match]:
@@ -135,7 +136,7 @@ class Fitter:
         key = (id(pattern), id(item), names, flags)
         node = self._starts.get(key)
         if node is None:
-            task: Task = make_task(0, clauses, (), pattern.unites, zero=pattern.clauses)
+            task = make_task(0, clauses, (), pattern.unites, zero=pattern.clauses)
             node = self._starts[key] = self.planner.start(task, names, flags)
         taken: set[int] = set()
         found = []

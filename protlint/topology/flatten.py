@@ -7,7 +7,8 @@ from dataclasses import dataclass, replace
 from itertools import product
 
 from protlint.topology.mistakes import Mistakes
-from protlint.topology.terms import ANY, MIRROR, Body, Clause, Each, Either, Item, Rule, Shape, ShapeUse, Test
+from protlint.topology.steps import is_anchor
+from protlint.topology.terms import ANY, Body, Clause, Each, Either, Item, Rule, Shape, ShapeUse, Test
 
 
 @dataclass(frozen=True, slots=True)
@@ -236,7 +237,7 @@ def _choices(
 
 def check_pattern(pattern: Pattern, resolved: Resolved, mistakes: Mistakes) -> None:
     """Note what makes a pattern impossible to search or is bound to be a slip of the pen."""
-    if not any(_is_anchor(clause) for clause in pattern.clauses):
+    if not any(is_anchor(clause) for clause in pattern.clauses):
         mistakes.say(resolved.rule.form, "nothing to begin the search at: a rule needs a part that is no resistor")
         return
     bound = {name for clause in pattern.clauses for name in clause.nets()}
@@ -269,10 +270,6 @@ def check_pattern(pattern: Pattern, resolved: Resolved, mistakes: Mistakes) -> N
     _check_single_names(pattern, mistakes)
 
 
-def _is_anchor(clause: Clause) -> bool:
-    return clause.count is None and "resistor" not in clause.kinds
-
-
 def _check_single_names(pattern: Pattern, mistakes: Mistakes) -> None:
     """A name joined once and never spoken of again is a slip: what does not matter is called any."""
     times: dict[str, int] = {}
@@ -289,8 +286,3 @@ def _check_single_names(pattern: Pattern, mistakes: Mistakes) -> None:
         for name in clause.nets():
             if times[name] == 1 and name not in spoken and name != ANY:
                 mistakes.say(clause.form, f"net {name} is joined here and nowhere else; call it {ANY} if it does not matter")
-
-
-def mirrored_kind(kind: str) -> str:
-    """Return the kind of the other polarity."""
-    return MIRROR.get(kind, kind)

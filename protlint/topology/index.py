@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 from protlint.board.graph import Board
 from protlint.board.merge import unite
+from protlint.topology.terms import PINS
 
 CROWDED = 64
 """A net with more terminals than this is searched last, as an unnamed rail would be; never left out."""
@@ -46,12 +47,32 @@ class Index:
         self.by_kind: dict[str, list[int]] = {}
         for element, kind in enumerate(self.kind):
             self.by_kind.setdefault(kind, []).append(element)
+        self._bit = {
+            pair: 1 << place for place, pair in enumerate((kind, pin) for kind in PINS for pin in sorted(PINS[kind]))
+        }
+        self.mask = self._masks()
         self._open: dict[int, bool] = {}
+        self._between: dict[tuple[int, int], list[int]] | None = None
         self._by_pin: dict[int, dict[tuple[str, str], list[int]]] = {}
 
     def board_nets(self, net: int) -> Sequence[int]:
         """Return the board nets that a net here stands for."""
         return self.members.get(net, (net,))
+
+    def bits(self, kinds: Sequence[str], pins: Sequence[str] | None = None) -> int:
+        """Return the bits that stand in the mask of a net where a part of these kinds has such a pin (any, where None)."""
+        return sum({self._bit[kind, pin] for kind in kinds for pin in pins or PINS[kind] if (kind, pin) in self._bit})
+
+    def _masks(self) -> list[int]:
+        """Return for every net a bit for each (kind, pin) on it, to tell at once what is not there."""
+        bit, kind = self._bit, self.kind
+        masks = []
+        for on_net in self.at:
+            mask = 0
+            for element, role in on_net:
+                mask |= bit.get((kind[element], role), 0)
+            masks.append(mask)
+        return masks
 
     def is_open(self, net: int) -> bool:
         """Tell whether a path may run through a net: not a supply, not crowded, and no transistor hangs on it."""
@@ -70,6 +91,40 @@ class Index:
             for element, role in self.at[net]:
                 table.setdefault((self.kind[element], role), []).append(element)
         return table.get((kind, pin), ())
+
+    def ends(self, element: int) -> tuple[int, int] | None:
+        """Return the two nets of a two-terminal element, anode first; None for any other element."""
+        roles = self.terminals[element]
+        if len(roles) != 2:
+            return None
+        if "anode" in roles and "cathode" in roles:
+            return roles["anode"], roles["cathode"]
+        first, second = roles.values()
+        return first, second
+
+    def between(self, net: int, other: int, kinds: Sequence[str]) -> Sequence[int]:
+        """Return candidates for the two-terminal elements between two nets: what hangs on the emptier one, or, where both
+        are crowded, exactly those between (from a table made once)."""
+        start = min(net, other, key=lambda one: len(self.at[one]))
+        if len(self.at[start]) <= CROWDED:
+            return self.on_net(start, kinds)
+        if self._between is None:
+            self._between = {}
+            for element in range(len(self.kind)):
+                ends = self.ends(element)
+                if ends is not None and all(len(self.at[end]) > CROWDED for end in ends):
+                    self._between.setdefault((min(ends), max(ends)), []).append(element)
+        return [one for one in self._between.get((min(net, other), max(net, other)), ()) if self.kind[one] in kinds]
+
+    def on_net(self, net: int, kinds: Sequence[str]) -> Sequence[int]:
+        """Return the two-terminal elements of some kinds on a net, one with both ends there once."""
+        on_net = self.at[net]
+        if len(on_net) <= CROWDED:
+            kind = self.kind
+            found = [element for element, _ in on_net if kind[element] in kinds]
+        else:
+            found = [element for one in kinds for pin in sorted(PINS[one]) for element in self.on_pin(net, one, pin)]
+        return list(dict.fromkeys(found)) if len(found) > 1 else found
 
     def _join_across(self, fuses: Sequence[tuple[int, ...]]) -> None:
         joined = unite(len(self.board.nets), fuses)

@@ -19,7 +19,8 @@ output."""
 class Limiter:
     """A found group around one shunt.
 
-    ``id`` is the output pass device's part id (in parallel, the sensed one). ``elements`` maps a role of the rule, in its
+    ``id`` is the output pass device's part id (in parallel, the sensed one; a second shunt at one pass device is named with
+    it, ``Q10 (Q12)``). ``elements`` maps a role of the rule, in its
     full form (``preset.upper``, ``compensation``), to board element indices; ``roles`` maps the ten report roles to part
     ids; ``nets`` maps the five report nets to board net indices, ``bound`` every net name of the rule.
     """
@@ -59,3 +60,7 @@ class Found:
     limiters: tuple[Limiter, ...]
     faults: tuple[FaultMatch, ...] = ()
     remarks: tuple[str, ...] = ()
+    pairs: tuple[tuple[str, str], ...] = ()
+    """Complementary halves on one output, by limiter id: the N half, the P half."""
+    sets: tuple[tuple[str, ...], ...] = ()
+    """Like channels, by limiter id."""

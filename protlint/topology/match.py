@@ -2,26 +2,34 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 
 from protlint.board.graph import Board
+from protlint.netlist.forms import no_collection
 from protlint.topology.fitting import Fitter, Match
 from protlint.topology.index import Index
 from protlint.topology.language import Rules
 from protlint.topology.limiter import NETS, ROLES, Found, Limiter
 from protlint.topology.questions import holds
+from protlint.topology.sets import find_pairs, find_sets
 
 
 def find_limiters(board: Board, rules: Rules) -> Found:
     """Return every limiter on a board, in board order of its shunt."""
-    index = Index(board)
-    fitter = Fitter(index, rules.patterns)
-    remarks: list[str] = []
-    limiters = []
-    for match, also in _one_for_each_shunt(fitter.matches(), rules, board, remarks):
-        fitter.add_optional(match)
-        limiters.append(_limiter(match, index, also))
-    return Found(tuple(limiters), (), tuple(remarks))
+    with no_collection():
+        index = Index(board)
+        fitter = Fitter(index, rules.patterns)
+        remarks: list[str] = []
+        limiters: list[Limiter] = []
+        for match, also in _one_for_each_shunt(fitter.matches(), rules, board, remarks):
+            fitter.add_optional(match)
+            limiters.append(_limiter(match, index, also, {one.id for one in limiters}))
+    return Found(
+        limiters=tuple(limiters),
+        remarks=tuple(remarks),
+        pairs=find_pairs(limiters),
+        sets=find_sets(board, limiters),
+    )
 
 
 def _one_for_each_shunt(
@@ -55,8 +63,9 @@ def _rank(match: Match, rules: Rules) -> tuple[int, int]:
     return match.required, rules.resolved[match.pattern.rule].rule.precedence
 
 
-def _limiter(match: Match, index: Index, also: tuple[str, ...]) -> Limiter:
+def _limiter(match: Match, index: Index, also: tuple[str, ...], taken: Collection[str]) -> Limiter:
     board = index.board
+    name, shunt = (_first_part(match, role, board) for role in ("pass", "shunt"))
     _add_fuses(match, index)
     elements = {role: tuple(found) for role, found in match.elements.items()}
     roles = {role: _part_ids(board, elements, role) for role in ROLES}
@@ -64,7 +73,7 @@ def _limiter(match: Match, index: Index, also: tuple[str, ...]) -> Limiter:
         board.parts[part].id: place for element, place in match.places.items() for part in board.elements[element].parts
     }
     return Limiter(
-        id=board.parts[board.elements[match.elements["pass"][0]].parts[0]].id,
+        id=name if name not in taken else f"{name} ({shunt})",
         topology=match.pattern.rule,
         polarity=match.pattern.polarity,
         elements=elements,
@@ -74,6 +83,10 @@ def _limiter(match: Match, index: Index, also: tuple[str, ...]) -> Limiter:
         also_matched=also,
         places=dict(sorted(places.items())),
     )
+
+
+def _first_part(match: Match, role: str, board: Board) -> str:
+    return board.parts[board.elements[match.elements[role][0]].parts[0]].id
 
 
 def _part_ids(board: Board, elements: Mapping[str, tuple[int, ...]], role: str) -> tuple[str, ...]:

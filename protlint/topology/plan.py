@@ -10,136 +10,58 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
-from protlint.topology.index import RAIL
-from protlint.topology.questions import is_late
-from protlint.topology.terms import ANY, MANY, Clause, Test
-
-NEW = -1
-"""In a step, an end that is bound by it."""
+from protlint.topology.index import RAIL, Index
+from protlint.topology.questions import by_flags
+from protlint.topology.steps import NEW, AskStep, BridgeStep, Entry, PartStep, PathStep, Step, Task, is_anchor
+from protlint.topology.terms import ANY, MANY, Clause
 
 
-@dataclass(frozen=True, slots=True)
-class PartStep:
-    """Find an element by its pins: ``known`` pairs a pin with a slot; ``new`` a pin with the slots its net must differ
-    from. With nothing known it is where a search begins."""
+@dataclass(slots=True)
+class Branch:
+    """One step at a node: the tasks that take it, what must be on the nets of slots for it, its continuations by flags."""
 
-    kinds: tuple[str, ...]
-    known: tuple[tuple[str, int], ...]
-    new: tuple[tuple[str, tuple[int, ...]], ...]
-
-
-@dataclass(frozen=True, slots=True)
-class BridgeStep:
-    """Find a two-terminal element between slots ``a`` and ``b``; one of them may be new, both where a search begins."""
-
-    kinds: tuple[str, ...]
-    a: int
-    b: int
-    directed: bool
-    under_ohm: float | None
-    apart: tuple[tuple[int, ...], ...]
-
-
-@dataclass(frozen=True, slots=True)
-class PathStep:
-    """Find a path of elements from slot ``a`` to slot ``b`` (or a new end); ``direction`` is 1 from anode to cathode on the
-    way, -1 against it, 0 where it does not matter."""
-
-    kinds: tuple[str, ...]
-    a: int
-    b: int
-    least: int
-    most: int
-    direction: int
-    until_driven: bool
-    apart: tuple[int, ...]
-
-
-@dataclass(frozen=True, slots=True)
-class AskStep:
-    """Ask a test whose nets are slots, written as digits."""
-
-    test: Test
-
-
-Step = PartStep | BridgeStep | PathStep | AskStep
-
-
-@dataclass(frozen=True, slots=True)
-class Task:
-    """What a search is to fulfil: clauses and early tests, with the pairs of names that may stand for one net."""
-
-    number: int
-    clauses: tuple[Clause, ...]
-    tests: tuple[Test, ...]
-    alike: frozenset[frozenset[str]]
-
-
-@dataclass(frozen=True, slots=True)
-class Entry:
-    """A task at some node: names in the order of their slots, clauses in the order found, and what is left of it."""
-
-    task: Task
-    names: tuple[str, ...]
-    found: tuple[int, ...]
-    left: tuple[int, ...]
-    asked: tuple[int, ...]
+    entries: list[Entry]
+    needs: tuple[tuple[int, int], ...]
+    children: dict[tuple[int, ...], Node] = field(default_factory=dict)
 
 
 @dataclass(slots=True)
 class Node:
-    """A place in the plan: ``done`` the tasks fulfilled here, ``branches`` each step with its continuations by flags."""
+    """A place in the plan: ``done`` the tasks fulfilled here, ``branches`` what to do next."""
 
     done: list[Entry] = field(default_factory=list)
-    branches: dict[Step, tuple[list[Entry], dict[tuple[int, ...], Node]]] = field(default_factory=dict)
-
-
-def make_task(
-    number: int,
-    clauses: Sequence[Clause],
-    tests: Sequence[Test],
-    unites: Sequence[tuple[str, str]],
-    zero: Sequence[Clause] = (),
-) -> Task:
-    """Return a task; names are alike where paths that may be empty (in ``clauses`` or ``zero``) or ``unites`` join them."""
-    group: dict[str, set[str]] = {}
-    for clause in (*clauses, *zero):
-        if clause.ends is not None and clause.count is not None and clause.count[0] == 0:
-            one, other = (group.setdefault(end, {end}) for end in clause.ends)
-            one |= other
-            for name in one:
-                group[name] = one
-    alike = {frozenset((one, other)) for members in group.values() for one in members for other in members if one != other}
-    for pair in unites:
-        ones, others = (group.get(name, {name}) for name in pair)
-        alike |= {frozenset((one, other)) for one in ones for other in others if one != other}
-    early = [test for clause in clauses for test in clause.when] + [test for test in tests if not is_late(test)]
-    return Task(number, tuple(clauses), tuple(early), frozenset(alike))
+    branches: dict[Step, Branch] = field(default_factory=dict)
 
 
 class Planner:
-    """Chooses steps, given how many parts of each kind the board has."""
+    """Chooses steps for one board, by how many parts of each kind it has."""
 
-    def __init__(self, counts: Mapping[str, int]) -> None:
-        self.counts = counts
+    def __init__(self, index: Index) -> None:
+        self.index = index
+        self.counts = {kind: len(elements) for kind, elements in index.by_kind.items()}
+        self._numbers: dict[int, tuple[Task, tuple[int, ...]]] = {}
 
     def root(self, tasks: Sequence[Task]) -> Node:
-        """Return the node where searches of tasks begin, each at its rarest part that is no resistor.
+        """Return the node where searches of tasks begin.
 
-        Tasks that ask for a kind the board has none of are left out.
+        A task begins at a part of a rare kind that is no resistor; a kind that another task has to begin at anyway costs
+        nothing more. Tasks that ask for a kind the board has none of are left out.
         """
-        node = Node()
+        starts = []
         for task in tasks:
-            needed = [clause for clause in task.clauses if clause.count is None or clause.count[0] > 0]
-            if any(self._number(clause) == 0 for clause in needed):
-                continue
-            anchors = [
-                (self._number(clause), place)
-                for place, clause in enumerate(task.clauses)
-                if clause.count is None and "resistor" not in clause.kinds
-            ]
+            numbers = self._counted(task)
+            needed = (number for clause, number in zip(task.clauses, numbers, strict=True) if _is_needed(clause))
+            anchors = [(numbers[place], place) for place, clause in enumerate(task.clauses) if is_anchor(clause)]
+            if anchors and min(needed) > 0:
+                starts.append((min(anchors)[0], task, anchors))
+        node = Node()
+        chosen: set[tuple[str, ...]] = set()
+        for _, task, anchors in sorted(starts, key=lambda one: (-one[0], one[1].number)):
+            shared = [place for _, place in anchors if task.clauses[place].kinds in chosen]
+            place = shared[0] if shared else min(anchors)[1]
+            chosen.add(task.clauses[place].kinds)
             entry = Entry(task, (), (), tuple(range(len(task.clauses))), tuple(range(len(task.tests))))
-            self._branch(node, *self._element_step(entry, min(anchors)[1]))
+            self._branch(node, *self._element_step(entry, place))
         return node
 
     def start(self, task: Task, names: Sequence[str], flags: Sequence[int]) -> Node:
@@ -151,52 +73,76 @@ class Planner:
         """Return the node for entries whose slots have these flags; what cannot go on without walking a rail drops out."""
         node = Node()
         for entry in entries:
-            if not entry.left and not entry.asked:
-                node.done.append(entry)
-                continue
             chosen = self._next(entry, flags)
-            if chosen is not None:
+            if isinstance(chosen, Entry):
+                node.done.append(chosen)
+            elif chosen is not None:
                 self._branch(node, *chosen)
         return node
 
-    @staticmethod
-    def _branch(node: Node, step: Step, after: Entry) -> None:
-        node.branches.setdefault(step, ([], {}))[0].append(after)
+    def _branch(self, node: Node, step: Step, after: Entry) -> None:
+        branch = node.branches.get(step)
+        if branch is None:
+            branch = node.branches[step] = Branch([], self._needs(step))
+        branch.entries.append(after)
 
-    def _next(self, entry: Entry, flags: tuple[int, ...]) -> tuple[Step, Entry] | None:
+    def _needs(self, step: Step) -> tuple[tuple[int, int], ...]:
+        """Return (slot, bits) pairs: the step leads nowhere unless one of the bits stands in the mask of the slot's net."""
+        if isinstance(step, PartStep):
+            return tuple((slot, self.index.bits(step.kinds, (pin,))) for pin, slot in step.known)
+        if isinstance(step, AskStep) or (isinstance(step, PathStep) and step.least == 0):
+            return ()
+        return tuple((slot, self.index.bits(step.kinds)) for slot in (step.a, step.b) if slot != NEW)
+
+    def _next(self, entry: Entry, flags: tuple[int, ...]) -> tuple[Step, Entry] | Entry | None:
+        """Return the next step and the entry after it, the entry itself where it is fulfilled, None where it cannot be."""
+        task = entry.task
         bound = {name: slot for slot, name in enumerate(entry.names)}
+        open_tests = []
         for place in entry.asked:
-            test = entry.task.tests[place]
-            if all(name in bound for name in test.nets()):
-                asked = tuple(one for one in entry.asked if one != place)
-                slots = {name: str(bound[name]) for name in test.nets()}
-                return AskStep(test.renamed(slots)), _after(entry, asked=asked)
-        options = []
+            if task.asks[place] <= bound.keys():
+                answer = by_flags(task.tests[place], {name: flags[bound[name]] for name in task.asks[place]})
+                if answer is None:
+                    asked = tuple(one for one in entry.asked if one != place)
+                    slots = {name: str(bound[name]) for name in task.asks[place]}
+                    return AskStep(task.tests[place].renamed(slots)), _after(entry, asked=asked)
+                if not answer:
+                    return None
+            else:
+                open_tests.append(place)
+        if len(open_tests) < len(entry.asked):
+            entry = _after(entry, asked=tuple(open_tests))
+        if not entry.left:
+            return entry
+        best: tuple[int, ...] | None = None
+        numbers = self._counted(task)
         for place in entry.left:
-            clause = entry.task.clauses[place]
-            ends = clause.nets()
-            known = [bound[name] for name in ends if name in bound]
+            known = [bound[name] for name in task.nets[place] if name in bound]
             if not known:
                 continue
-            path = clause.count is not None
-            if len(known) == len(ends):
-                options.append((0, 0, path, 0, self._number(clause), place))
-                continue
-            flag = min(flags[slot] for slot in known)
-            if flag != RAIL:
-                long = clause.count is not None and clause.count[1] > 1
-                options.append((1, flag, long, path, self._number(clause), place))
-            elif clause.count is not None and clause.count[0] == 0:
-                # A rail is not walked, but a path of nothing needs no walk.
-                options.append((2, flag, False, path, self._number(clause), place))
-        if not options:
+            count = task.clauses[place].count
+            if len(known) == len(task.nets[place]):
+                option = (0, 0, 0 if count is None else count[1], numbers[place], place)
+            else:
+                flag = min(flags[slot] for slot in known)
+                if flag != RAIL:
+                    option = (1, flag, _width(task.clauses[place]), numbers[place], place)
+                elif count is not None and count[0] == 0:
+                    # A rail is not walked, but a path of nothing needs no walk.
+                    option = (2, flag, 0, numbers[place], place)
+                else:
+                    continue
+            if best is None or option < best:
+                best = option
+        if best is None:
             return None
-        place = min(options)[-1]
-        if entry.task.clauses[place].count is None:
+        place = best[-1]
+        if task.clauses[place].count is None:
             return self._element_step(entry, place)
         return self._path_step(entry, place, bound, flags)
 
-    def _element_step(self, entry: Entry, place: int) -> tuple[Step, Entry]:
+    @staticmethod
+    def _element_step(entry: Entry, place: int) -> tuple[Step, Entry]:
         clause = entry.task.clauses[place]
         names = list(entry.names)
         if clause.ends is not None:
@@ -242,12 +188,28 @@ class Planner:
         step = PathStep(clause.kinds, bound[first], end, least, min(most, MANY), direction, clause.until_driven, apart)
         return step, _after(entry, place=place, names=names)
 
-    def _number(self, clause: Clause) -> int:
-        return sum(self.counts.get(kind, 0) for kind in clause.kinds)
+    def _counted(self, task: Task) -> tuple[int, ...]:
+        known = self._numbers.get(id(task))
+        if known is None:
+            numbers = tuple(sum(self.counts.get(kind, 0) for kind in clause.kinds) for clause in task.clauses)
+            known = self._numbers[id(task)] = task, numbers
+        return known[1]
+
+
+def _is_needed(clause: Clause) -> bool:
+    return clause.count is None or clause.count[0] > 0
+
+
+def _width(clause: Clause) -> int:
+    """Return how far a clause may lead: resistors hang on most nets and lead far, other kinds seldom do."""
+    if "resistor" not in clause.kinds:
+        return 0 if clause.count is None else 1
+    return 2 if clause.count is None or clause.count[1] == 1 else 3
 
 
 def _apart(task: Task, name: str, names: Sequence[str]) -> tuple[int, ...]:
-    return tuple(slot for slot, other in enumerate(names) if frozenset((name, other)) not in task.alike)
+    alike = task.alike.get(name, ())
+    return tuple(slot for slot, other in enumerate(names) if other not in alike)
 
 
 def _after(
@@ -257,6 +219,6 @@ def _after(
         task=entry.task,
         names=entry.names if names is None else tuple(names),
         found=entry.found if place is None else (*entry.found, place),
-        left=tuple(one for one in entry.left if one != place),
+        left=entry.left if place is None else tuple(one for one in entry.left if one != place),
         asked=entry.asked if asked is None else asked,
     )

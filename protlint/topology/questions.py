@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Collection, Mapping
 
-from protlint.topology.index import Index
+from protlint.topology.index import RAIL, Index
 from protlint.topology.terms import DIRECTED, Test
 
 LATE = frozenset({"no-input", "tail", "undriven"})
@@ -16,6 +16,26 @@ PASSIVE = frozenset({"resistor", "capacitor", "inductor", "fuse"}) | DIRECTED
 def is_late(test: Test) -> bool:
     """Tell whether a test, or one inside it, has to wait for the whole match."""
     return test.name in LATE or any(isinstance(one, Test) and is_late(one) for one in test.of)
+
+
+def by_flags(test: Test, flags: Mapping[str, int]) -> bool | None:
+    """Answer a test from the flags of its nets alone; None where they do not tell."""
+    if test.name in ("not", "or", "and"):
+        answers = [by_flags(one, flags) for one in test.of if isinstance(one, Test)]
+        if test.name == "not":
+            return None if answers[0] is None else not answers[0]
+        decisive = test.name == "or"
+        if decisive in answers:
+            return decisive
+        return None if None in answers else not decisive
+    is_rail = [flags[name] == RAIL for name in test.of if isinstance(name, str)]
+    if test.name == "supply":
+        return is_rail[0]
+    if test.name in ("ground", "lowest", "highest"):
+        return None if is_rail[0] else False
+    if test.name in ("same", "apart") and is_rail[0] != is_rail[1]:
+        return test.name == "apart"
+    return None
 
 
 def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int] = ()) -> bool:
@@ -67,8 +87,10 @@ def _tail(net: int, index: Index, own: Collection[int]) -> bool:
 
     That is the tail of a differential pair or the foot of a cascode: a bias current, and no load that needs protection.
     """
+    if index.flag[net]:
+        return False
     fed = [(element, role) for element, role in index.at[net] if element not in own and index.kind[element] != "capacitor"]
-    if not fed or index.flag[net]:
+    if not fed:
         return False
     for element, role in fed:
         if index.kind[element] == "resistor":

@@ -2,18 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
+from typing import NamedTuple
 
 from protlint.topology.index import CROWDED, Index
-from protlint.topology.plan import NEW, AskStep, BridgeStep, Entry, Node, PartStep, PathStep, Planner, Step
+from protlint.topology.plan import Node, Planner
 from protlint.topology.questions import holds
+from protlint.topology.steps import NEW, AskStep, BridgeStep, Entry, PartStep, PathStep, Step
 
 Elements = tuple[int, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class State:
+class State(NamedTuple):
     """A partial match: nets by slot, the elements of each clause found, every element used, nets inside paths."""
 
     nets: tuple[int, ...]
@@ -29,34 +30,33 @@ Growth = tuple[tuple[int, ...], Elements, tuple[int, ...]]
 def search(index: Index, planner: Planner, node: Node, state: State) -> Iterator[tuple[Entry, State]]:
     """Yield every fulfilled task with its state, from a node of the plan onward."""
     stack = [(node, state)]
-    flag = index.flag
+    flag, mask = index.flag, index.mask
     while stack:
         node, state = stack.pop()
         for entry in node.done:
             yield entry, state
-        for step, (entries, children) in node.branches.items():
-            for nets, elements, inside in _grow(step, state, index):
-                flags = tuple(flag[net] for net in nets)
-                child = children.get(flags)
-                if child is None:
-                    before = tuple(flag[net] for net in state.nets)
-                    child = children[flags] = planner.node(entries, before + flags)
-                if not child.done and not child.branches:
-                    continue
-                if isinstance(step, AskStep):
-                    stack.append((child, state))
-                    continue
-                grown = State(state.nets + nets, (*state.found, elements), state.used + elements, state.inside + inside)
-                stack.append((child, grown))
+        nets, found, used, inside = state
+        for step, branch in node.branches.items():
+            for slot, bits in branch.needs:
+                if not mask[nets[slot]] & bits:
+                    break
+            else:
+                for new_nets, elements, passed in _GROW[type(step)](step, state, index):
+                    flags = tuple([flag[net] for net in new_nets])
+                    child = branch.children.get(flags)
+                    if child is None:
+                        before = tuple([flag[net] for net in nets])
+                        child = branch.children[flags] = planner.node(branch.entries, before + flags)
+                    if not child.done and not child.branches:
+                        continue
+                    if type(step) is AskStep:
+                        stack.append((child, state))
+                    else:
+                        grown = State(nets + new_nets, (*found, elements), used + elements, inside + passed)
+                        stack.append((child, grown))
 
 
-def _grow(step: Step, state: State, index: Index) -> Sequence[Growth] | Iterator[Growth]:
-    if isinstance(step, PartStep):
-        return _parts(step, state, index)
-    if isinstance(step, BridgeStep):
-        return _bridges(step, state, index)
-    if isinstance(step, PathStep):
-        return _paths(step, state, index)
+def _ask(step: AskStep, state: State, index: Index) -> Sequence[Growth]:
     nets = {str(slot): net for slot, net in enumerate(state.nets)}
     return [((), (), ())] if holds(step.test, nets, index) else []
 
@@ -92,30 +92,19 @@ def _parts(step: PartStep, state: State, index: Index) -> Iterator[Growth]:
                 yield grown[len(nets) :], (element,), ()
 
 
-def _ends(roles: Mapping[str, int]) -> tuple[int, int] | None:
-    """Return the two nets of a two-terminal element, anode first."""
-    if len(roles) != 2:
-        return None
-    if "anode" in roles and "cathode" in roles:
-        return roles["anode"], roles["cathode"]
-    first, second = roles.values()
-    return first, second
-
-
 def _bridges(step: BridgeStep, state: State, index: Index) -> Iterator[Growth]:
     nets = state.nets
     known = [nets[slot] for slot in (step.a, step.b) if slot != NEW]
     elements: Sequence[int]
     if known:
-        start = min(known, key=lambda net: len(index.at[net]))
-        elements = list(dict.fromkeys(_on_net(index, start, step.kinds)))
+        elements = index.between(known[0], known[-1], step.kinds)
     else:
         elements = [element for kind in step.kinds for element in index.by_kind.get(kind, ())]
     values = index.board.elements
     for element in elements:
         if element in state.used:
             continue
-        ends = _ends(index.terminals[element])
+        ends = index.ends(element)
         if ends is None:
             continue
         if step.under_ohm is not None:
@@ -138,15 +127,6 @@ def _bridges(step: BridgeStep, state: State, index: Index) -> Iterator[Growth]:
                 yield grown[len(nets) :], (element,), ()
 
 
-def _on_net(index: Index, net: int, kinds: tuple[str, ...]) -> Sequence[int]:
-    on_net = index.at[net]
-    if len(on_net) <= CROWDED:
-        kind = index.kind
-        return [element for element, _ in on_net if kind[element] in kinds]
-    pins = ("1", "2", "anode", "cathode")
-    return [element for kind in kinds for pin in pins for element in index.on_pin(net, kind, pin)]
-
-
 @dataclass(frozen=True, slots=True)
 class _Way:
     """A way walked so far: the nets passed, the start first, and the elements taken."""
@@ -159,58 +139,83 @@ def _paths(step: PathStep, state: State, index: Index) -> Iterator[Growth]:
     """Yield paths: the shortest that is long enough to every end, or every path where the length is fixed."""
     start = state.nets[step.a]
     target = state.nets[step.b] if step.b != NEW else None
-    if step.least == 0 and (target is None or target == start):
+    if step.least == 0 and target in (None, start):
         yield (() if target is not None else (start,)), (), ()
-        if target is not None:
-            return
-    if target == start:
+    if target == start or step.most == 0:
         return
-    barred = {state.nets[slot] for slot in step.apart}
-    bound = set(state.nets) | set(state.inside)
+    if step.most == 1 or (target is not None and index.flag[start] and index.flag[target]):
+        # Between two crowded nets only what joins them straight is looked for: neither is walked.
+        yield from _single(step, state, index, start, target)
+    else:
+        yield from _ways(step, state, index, start, target)
+
+
+def _single(step: PathStep, state: State, index: Index, start: int, target: int | None) -> Iterator[Growth]:
+    if step.least > 1:
+        return
+    elements = index.on_net(start, step.kinds) if target is None else index.between(start, target, step.kinds)
+    for element, net in _onward(step, state, index, elements, (start,)):
+        if net == target:
+            yield (), (element,), ()
+            return
+        if target is None and _is_free_end(net, step, state):
+            yield (net,), (element,), ()
+
+
+def _ways(step: PathStep, state: State, index: Index, start: int, target: int | None) -> Iterator[Growth]:
+    """Walk on, breadth first, through nets that are open and not bound."""
+    bound = {*state.nets, *state.inside}
     every = step.least == step.most
-    seen: set[tuple[int, int]] = {(start, 0)}
+    seen: set[tuple[int, int]] = set()
     ways = [_Way((start,), ())]
     for length in range(1, step.most + 1):
         further: list[_Way] = []
         for way in ways:
-            for element, net in _onward(step, state, index, way):
-                elements = (*way.elements, element)
+            on_net = index.on_net(way.nets[-1], step.kinds)
+            for element, net in _onward(step, state, index, on_net, way.nets):
                 key = (net, min(length, max(step.least, 1)))
-                if not every and key in seen:
+                if element in way.elements or (not every and key in seen):
                     continue
                 seen.add(key)
+                elements = (*way.elements, element)
                 if net == target:
                     if length >= step.least:
                         yield (), elements, way.nets[1:]
                         if not every:
                             return
                     continue
-                is_end = target is None and length >= step.least and net not in barred and net not in state.inside
-                may_go_on = net not in bound and index.is_open(net)
-                if step.until_driven and may_go_on:
-                    goes_on = _is_joint(index, net)
-                    is_end, may_go_on = is_end and not goes_on, goes_on
+                is_end = target is None and length >= step.least and _is_free_end(net, step, state)
+                goes_on = net not in bound and index.is_open(net)
+                if step.until_driven:
+                    goes_on = goes_on and _is_joint(index, net)
+                    is_end = is_end and not goes_on
                 if is_end:
                     yield (net,), elements, way.nets[1:]
-                if may_go_on:
+                if goes_on:
                     further.append(_Way((*way.nets, net), elements))
         ways = further
 
 
-def _onward(step: PathStep, state: State, index: Index, way: _Way) -> Iterator[tuple[int, int]]:
-    """Yield (element, net at its other end) for the elements that can be next on a way."""
-    net = way.nets[-1]
-    for element in _on_net(index, net, step.kinds):
-        if element in state.used or element in way.elements:
+def _is_free_end(net: int, step: PathStep, state: State) -> bool:
+    return net not in state.inside and all(state.nets[slot] != net for slot in step.apart)
+
+
+def _onward(
+    step: PathStep, state: State, index: Index, elements: Sequence[int], passed: tuple[int, ...]
+) -> Iterator[tuple[int, int]]:
+    """Yield (element, net at its other end) for those of some elements that can be next at the last net passed."""
+    net = passed[-1]
+    for element in elements:
+        if element in state.used:
             continue
-        ends = _ends(index.terminals[element])
+        ends = index.ends(element)
         if ends is None or ends[0] == ends[1]:
             continue
         forward = ends[0] == net
         if step.direction and forward != (step.direction > 0):
             continue
         other = ends[1] if forward else ends[0]
-        if other not in way.nets:
+        if other not in passed:
             yield element, other
 
 
@@ -218,3 +223,11 @@ def _is_joint(index: Index, net: int) -> bool:
     """Tell whether a net holds only resistors and capacitors, two resistors or more: a joint, and no source of a drive."""
     kinds = [index.kind[element] for element, _ in index.at[net]]
     return kinds.count("resistor") > 1 and all(kind in ("resistor", "capacitor") for kind in kinds)
+
+
+_GROW: Mapping[type[Step], Callable[..., Iterable[Growth]]] = {
+    PartStep: _parts,
+    BridgeStep: _bridges,
+    PathStep: _paths,
+    AskStep: _ask,
+}

@@ -1,0 +1,123 @@
+"""The steps a search takes, and the tasks it takes them for."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+from protlint.topology.questions import is_late
+from protlint.topology.terms import Clause, Test
+
+NEW = -1
+"""In a step, an end that is bound by it."""
+
+
+@dataclass(frozen=True, slots=True)
+class PartStep:
+    """Find an element by its pins: ``known`` pairs a pin with a slot; ``new`` a pin with the slots its net must differ
+    from. With nothing known it is where a search begins."""
+
+    kinds: tuple[str, ...]
+    known: tuple[tuple[str, int], ...]
+    new: tuple[tuple[str, tuple[int, ...]], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class BridgeStep:
+    """Find a two-terminal element between slots ``a`` and ``b``; one of them may be new, both where a search begins."""
+
+    kinds: tuple[str, ...]
+    a: int
+    b: int
+    directed: bool
+    under_ohm: float | None
+    apart: tuple[tuple[int, ...], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class PathStep:
+    """Find a path of elements from slot ``a`` to slot ``b`` (or a new end); ``direction`` is 1 from anode to cathode on the
+    way, -1 against it, 0 where it does not matter."""
+
+    kinds: tuple[str, ...]
+    a: int
+    b: int
+    least: int
+    most: int
+    direction: int
+    until_driven: bool
+    apart: tuple[int, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class AskStep:
+    """Ask a test whose nets are slots, written as digits."""
+
+    test: Test
+
+
+Step = PartStep | BridgeStep | PathStep | AskStep
+
+
+@dataclass(frozen=True, slots=True)
+class Task:
+    """What a search is to fulfil: clauses and early tests, each with the nets it joins or asks about.
+
+    ``alike`` gives for a name those that may stand for the same net.
+    """
+
+    number: int
+    clauses: tuple[Clause, ...]
+    nets: tuple[tuple[str, ...], ...]
+    tests: tuple[Test, ...]
+    asks: tuple[frozenset[str], ...]
+    alike: Mapping[str, frozenset[str]]
+
+
+@dataclass(frozen=True, slots=True)
+class Entry:
+    """A task at some node: names in the order of their slots, clauses in the order found, and what is left of it."""
+
+    task: Task
+    names: tuple[str, ...]
+    found: tuple[int, ...]
+    left: tuple[int, ...]
+    asked: tuple[int, ...]
+
+
+def make_task(
+    number: int,
+    clauses: Sequence[Clause],
+    tests: Sequence[Test],
+    unites: Sequence[tuple[str, str]],
+    zero: Sequence[Clause] = (),
+) -> Task:
+    """Return a task; names are alike where paths that may be empty (in ``clauses`` or ``zero``) or ``unites`` join them."""
+    group: dict[str, set[str]] = {}
+    for clause in (*clauses, *zero):
+        if clause.ends is not None and clause.count is not None and clause.count[0] == 0:
+            one, other = (group.setdefault(end, {end}) for end in clause.ends)
+            one |= other
+            for name in one:
+                group[name] = one
+    alike = {name: set(members) for name, members in group.items()}
+    for pair in unites:
+        ones, others = (group.get(name, {name}) for name in pair)
+        for name in ones:
+            alike.setdefault(name, set()).update(others)
+        for name in others:
+            alike.setdefault(name, set()).update(ones)
+    early = tuple([test for clause in clauses for test in clause.when] + [test for test in tests if not is_late(test)])
+    return Task(
+        number=number,
+        clauses=tuple(clauses),
+        nets=tuple(clause.nets() for clause in clauses),
+        tests=early,
+        asks=tuple(frozenset(test.nets()) for test in early),
+        alike={name: frozenset(members) for name, members in alike.items()},
+    )
+
+
+def is_anchor(clause: Clause) -> bool:
+    """Tell whether a search may begin at a clause: a part of its own, and no resistor."""
+    return clause.count is None and "resistor" not in clause.kinds

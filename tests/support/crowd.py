@@ -1,0 +1,68 @@
+"""Boards of any size made by seed: mostly a crowd of parts at random, with limiters of known designators among them."""
+
+from __future__ import annotations
+
+import random
+from collections.abc import Sequence
+
+from protlint.board.assemble import assemble
+from protlint.board.graph import Board, SeenPart, Values
+from protlint.limits import Limits
+from protlint.netlist.model import Part, Pin
+from tests.support.boards import TERMINALS, netlist, supply_of
+
+KINDS = {
+    "resistor": 46, "capacitor": 26, "npn": 8, "pnp": 5, "nmos": 3, "pmos": 2, "diode": 6, "zener": 1, "inductor": 1,
+    "ic": 2,
+}  # fmt: skip
+"""How often each kind comes, in a hundred."""
+
+ON_GROUND, ON_SUPPLY = 0.15, 0.05
+"""The share of all pins on ground, and on each of two supplies."""
+
+
+def crowd(parts: int, *, limiters: int = 8, seed: int = 1) -> Board:
+    """Return a board of about ``parts`` parts with emitter-sensed limiters ``QP1``, ``QP2`` ... among them."""
+    chance = random.Random(seed)
+    made: list[tuple[str, str, list[tuple[str, str]], float | None]] = []
+    kinds, weights = list(KINDS), list(KINDS.values())
+    free_nets = max(4, parts * 7 // 10)
+    for number in range(parts - 5 * limiters):
+        kind = chance.choices(kinds, weights)[0]
+        pins = TERMINALS.get(kind, tuple(str(pin + 1) for pin in range(8 if kind == "ic" else 2)))
+        value = chance.choice((10.0, 100.0, 1e3, 1e4)) if kind == "resistor" else None
+        made.append((kind, f"X{number}", [(pin, _net(chance, free_nets)) for pin in pins], value))
+    for number in range(1, limiters + 1):
+        out, base, near, tap = (f"{name}{number}" for name in ("OUT", "BASE", "NEAR", "TAP"))
+        npn = TERMINALS["npn"]
+        made += [
+            ("npn", f"QP{number}", list(zip(npn, (out, base, near), strict=True)), None),
+            ("npn", f"QS{number}", list(zip(npn, (base, tap, "GND"), strict=True)), None),
+            ("resistor", f"RS{number}", [("1", near), ("2", "GND")], 2.0),
+            ("resistor", f"RB{number}", [("1", near), ("2", tap)], 1e3),
+            ("resistor", f"RD{number}", [("1", _net(chance, free_nets)), ("2", base)], 1e3),
+        ]
+    chance.shuffle(made)
+    return _board(made)
+
+
+def _net(chance: random.Random, free_nets: int) -> str:
+    where = chance.random()
+    if where < ON_GROUND:
+        return "GND"
+    if where < ON_GROUND + ON_SUPPLY:
+        return "+12V"
+    if where < ON_GROUND + 2 * ON_SUPPLY:
+        return "-12V"
+    return f"N{chance.randrange(free_nets)}"
+
+
+def _board(made: Sequence[tuple[str, str, list[tuple[str, str]], float | None]]) -> Board:
+    numbers: dict[str, int] = {}
+    parts, seen = [], []
+    for kind, designator, joins, value in made:
+        pins = tuple(Pin(pin, None, numbers.setdefault(net, len(numbers)), 1, 1) for pin, net in joins)
+        parts.append(Part(designator, designator, kind, "LIB", {}, pins, 1, 1))
+        roles = {pin: (place,) for place, (pin, _) in enumerate(joins)}
+        seen.append(SeenPart(kind, roles, values=Values(value=value)))
+    return assemble(netlist(parts, numbers), seen, limits=Limits(), supply_of=supply_of)
