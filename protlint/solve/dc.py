@@ -199,7 +199,8 @@ def evaluate(network: Network, p: Parameters, inner: Array, charges: Charges | N
 def eliminate(matrix: Array, right: Array) -> Array:
     """Solve (n, n, lanes) systems for right sides (n, lanes) or (n, sides, lanes) by Gaussian elimination.
 
-    Nodal matrices bear elimination along the diagonal, without exchanges; a lane that does not comes out as infinite or NaN and is caught.
+    Nodal matrices bear elimination along the diagonal, without exchanges; a lane that does not comes out as infinite or NaN
+    and is caught.
     The inputs are overwritten.
     """
     size = len(right)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -19,7 +20,7 @@ class Nominal:
     ``short`` and ``unlimited`` are the runs into the short with the shunt in and taken out; ``carry`` and
     ``carry_unlimited`` the same at the output voltages ``carry_V``, None where no such voltage is known (a single ambient
     may still have none: NaN). ``grid`` are the inner voltages of the loci's even grid; ``most_V`` and ``most_A`` the
-    greatest of each locus.
+    greatest of each locus, ``most_inner`` the inner voltages there (ports, ambients).
     """
 
     conditions: Conditions
@@ -33,6 +34,7 @@ class Nominal:
     carry_unlimited: Run | None
     most_V: Array
     most_A: Array
+    most_inner: Array
 
     @property
     def holds_A(self) -> Array:
@@ -54,6 +56,7 @@ def solve_nominal(stage: Stage, sweep: Sweep) -> Nominal:
     ambients = range(sweep.ambients)
     circuit = stage.network.circuit
     loci, grid = trace(stage, conditions, short.operating.inner[:, None])
+    begin = short.operating.inner
     if circuit.output_V is not None:
         carry_V = np.full(sweep.ambients, circuit.output_V)
     elif circuit.ground_leg:
@@ -61,6 +64,7 @@ def solve_nominal(stage: Stage, sweep: Sweep) -> Nominal:
     else:
         loci = working_edges(stage, conditions, loci)
         places = [least_working(loci, ambient) for ambient in ambients]
+        begin = _inner_at(loci, places, short)
         carry_V = np.array([np.nan if place is None else loci.output_V[place] for place in places])
     carry = carry_unlimited = None
     if not np.isnan(carry_V).all():
@@ -69,7 +73,7 @@ def solve_nominal(stage: Stage, sweep: Sweep) -> Nominal:
             np.tile(conditions.ambient_K, 2),
             output_V=np.tile(carry_V, 2),
             shunt_in=np.repeat([1.0, 0.0], sweep.ambients),
-            start=np.concatenate((short.operating.inner, unlimited.operating.inner), axis=1),
+            start=np.concatenate((begin, unlimited.operating.inner), axis=1),
         )
         first = np.arange(sweep.ambients)
         carry, carry_unlimited = run.pick(first), run.pick(first + sweep.ambients)
@@ -86,4 +90,14 @@ def solve_nominal(stage: Stage, sweep: Sweep) -> Nominal:
         carry_unlimited=carry_unlimited,
         most_V=np.array([np.nan if top is None else loci.output_V[top] for top in tops]),
         most_A=np.array([np.nan if top is None else loci.output_A[top] for top in tops]),
+        most_inner=_inner_at(loci, tops, short),
     )
+
+
+def _inner_at(loci: Loci, places: Sequence[int | None], short: Run) -> Array:
+    """Return the inner voltages at one place of each locus, or in the short where there is none (ports, ambients)."""
+    inner = short.operating.inner.copy()
+    for ambient, place in enumerate(places):
+        if place is not None:
+            inner[:, ambient] = loci.inner[:, place]
+    return inner

@@ -129,14 +129,17 @@ def _static(stage: Stage, nominal: Nominal, conditions: Conditions, kind: IntArr
     at_edge = circuit.output_V is None
     span = np.array([np.ptp(nominal.loci.output_V[nominal.loci.of(place)]) for place in range(len(nominal.holds_A))])
     shifts = stage.way * np.array(_MOST_PROBES)[:, None] * span[ambient[most]]
-    probes = [(holds, np.full(len(holds), np.nan)), (carries, nominal.carry_V[ambient[carries]])]
+    in_short = nominal.short.operating.inner
+    at_carry = in_short if nominal.carry is None else nominal.carry.operating.inner
+    probes = [(holds, np.full(len(holds), np.nan), in_short), (carries, nominal.carry_V[ambient[carries]], at_carry)]
     if at_edge:
-        probes.append((carries, np.full(len(carries), np.nan)))
-    probes.append((most, np.full(len(most), np.nan)))
-    probes += [(most, nominal.most_V[ambient[most]] - shift) for shift in shifts]
-    owner = np.concatenate([lanes for lanes, _ in probes])
-    at_V = np.concatenate([voltage for _, voltage in probes])
-    run = run_at(stage, conditions.pick(owner), at_V, nominal.short.operating.inner[:, ambient[owner]])
+        probes.append((carries, np.full(len(carries), np.nan), in_short))
+    probes.append((most, np.full(len(most), np.nan), in_short))
+    probes += [(most, nominal.most_V[ambient[most]] - shift, nominal.most_inner) for shift in shifts]
+    owner = np.concatenate([lanes for lanes, _, _ in probes])
+    at_V = np.concatenate([voltage for _, voltage, _ in probes])
+    start = np.concatenate([inner[:, ambient[lanes]] for lanes, _, inner in probes], axis=1)
+    run = run_at(stage, conditions.pick(owner), at_V, start)
     result = np.full(len(kind), np.nan)
     result[holds] = run.output_A[: len(holds)]
     np.fmax.at(result, owner[kind[owner] == 3], run.output_A[kind[owner] == 3])
