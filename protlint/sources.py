@@ -6,7 +6,6 @@ exit code of the command, and it prints as one line ``file:line:column: message`
 
 from __future__ import annotations
 
-import bisect
 import codecs
 import contextlib
 import os
@@ -16,6 +15,7 @@ import tempfile
 import tomllib
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from functools import lru_cache
 from pathlib import Path
 from typing import Any
 
@@ -200,20 +200,27 @@ class Decoded:
 
 @dataclass(frozen=True, slots=True)
 class TomlFile:
-    """A parsed TOML file: its tables as plain dictionaries, and where each key stands."""
+    """A parsed TOML file: its tables as plain dictionaries, and the text, which tells where each key stands."""
 
     file: str
     tables: Mapping[str, Any]
-    offsets: Mapping[tuple[str | int, ...], int] = field(repr=False)
-    line_starts: tuple[int, ...] = field(repr=False)
+    text: str = field(repr=False)
 
     def place(self, path: tuple[str | int, ...]) -> tuple[int, int]:
         """Return line and column, from 1, of a key by its path (keys, and indices inside arrays), or of what holds it."""
-        while path and path not in self.offsets:
+        offsets = _places(self.text)
+        while path and path not in offsets:
             path = path[:-1]
-        offset = self.offsets.get(path, 0)
-        line = bisect.bisect_right(self.line_starts, offset)
-        return line, offset - self.line_starts[line - 1] + 1
+        offset = offsets.get(path, 0)
+        return self.text.count("\n", 0, offset) + 1, offset - self.text.rfind("\n", 0, offset)
+
+
+@lru_cache(maxsize=4)
+def _places(text: str) -> Mapping[tuple[str | int, ...], int]:
+    try:
+        return key_places(text)
+    except RecursionError:
+        return {}
 
 
 def load_toml(path: str | Path) -> TomlFile:
@@ -233,16 +240,15 @@ def load_toml(path: str | Path) -> TomlFile:
         line = content.count(b"\n", 0, error.start) + 1
         column = error.start - content.rfind(b"\n", 0, error.start)
         raise InputError("not UTF-8 text, as TOML has to be", file=name, line=line, column=column) from None
-    line_starts = (0, *(found.end() for found in re.finditer("\n", text)))
     try:
         tables = tomllib.loads(text)
-        offsets = key_places(text)
     except RecursionError:
         raise InputError("nested too deeply", file=name) from None
     except ValueError as error:
         said = re.fullmatch(r"(.*) \(at (?:line (\d+), column (\d+)|end of document)\)", str(error), re.DOTALL)
         if said is None:
             raise InputError(f"not TOML: {error}", file=name) from None
-        line, column = (int(said[2]), int(said[3])) if said[2] else (len(line_starts), len(text) - line_starts[-1] + 1)
+        end = text.count("\n") + 1, len(text) - text.rfind("\n")
+        line, column = (int(said[2]), int(said[3])) if said[2] else end
         raise InputError(f"not TOML: {said[1]}", file=name, line=line, column=column) from None
-    return TomlFile(file=name, tables=tables, offsets=offsets, line_starts=line_starts)
+    return TomlFile(file=name, tables=tables, text=text)

@@ -10,6 +10,7 @@ from hypothesis import strategies as st
 
 from protlint.sources import LARGEST_TOML, InputError, load_toml
 from protlint.tables import Table
+from protlint.toml_places import key_places
 
 
 def test_a_key_has_its_line_and_column_and_an_unknown_one_that_of_its_holder(tmp_path: Path) -> None:
@@ -51,7 +52,7 @@ def test_any_bytes_are_tables_or_one_clear_error(tmp_path_factory: pytest.TempPa
     except InputError as error:
         assert "\n" not in str(error)
     else:
-        assert all((name,) in document.offsets for name in document.tables)
+        assert all((name,) in key_places(document.text) for name in document.tables)
 
 
 def test_a_hostile_text_in_an_error_stays_one_printable_line(tmp_path: Path) -> None:

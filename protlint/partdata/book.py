@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
+from functools import cache
 from itertools import pairwise
 from pathlib import Path
 
@@ -124,14 +125,19 @@ def load_book(paths: Iterable[str | Path] = ()) -> Book:
                 continue
             entries[entry.part_number.casefold()] = entry
             remarks += [f"{entry.file}: {entry.part_number}: {one.says}" for one in entry.contradictions]
-    for path in sorted(Path(__file__).parent.glob("*.toml")):
-        for entry in _entries(path):
-            entries.setdefault(entry.part_number.casefold(), replace(entry, file=None))
+    for entry in _own_entries():
+        entries.setdefault(entry.part_number.casefold(), entry)
     sizes: dict[tuple[str, str], PartEntry] = {}
     for entry in entries.values():
         for code in entry.footprints:
             sizes.setdefault((entry.kind, code), entry)
     return Book(entries, tuple(remarks), sizes)
+
+
+@cache
+def _own_entries() -> tuple[PartEntry, ...]:
+    paths = sorted(Path(__file__).parent.glob("*.toml"))
+    return tuple(replace(entry, file=None) for path in paths for entry in _entries(path))
 
 
 def _entries(path: str | Path) -> Iterable[PartEntry]:
