@@ -19,7 +19,7 @@ from protlint.topology.limiter import Limiter
 class Missing:
     """Something a bench lacks, and the key that would supply it.
 
-    ``subject`` is ``supply``, ``short``, ``drive``, ``value``, ``part`` or ``circuit``; ``part`` the part it is about, if any.
+    ``subject`` is ``supply``, ``short``, ``drive``, ``value``, ``part`` or ``circuit``; ``part`` is the part it is about.
     """
 
     subject: str
