@@ -6,8 +6,8 @@ block), so the nodal matrix stays as small as the schematic. With the port curre
 
     A^T j(u) + G V = 0 (Kirchhoff's current law at the unknown nodes), P(u) = A V.
 
-Steps of junction voltages are limited (Nagel 1975). Lanes that do not converge are tried again: from where the circuit
-settles when switched on, then with conductances across every port that shrink to nothing (gmin stepping), then with all
+Steps of junction voltages are limited (Nagel 1975). Lanes that do not converge are tried again: from cold, from where
+the circuit settles when switched on, with conductances across every port that shrink to nothing (gmin stepping), with all
 supplies raised from zero (source stepping). What still does not converge is marked, never guessed.
 """
 
@@ -328,17 +328,22 @@ def _known_currents(network: Network, p: Parameters, inner: Array, node_V: Array
 
 
 def _fall_back(network: Network, p: Parameters, known_V: Array) -> tuple[Array, Array, NDArray[np.bool_]]:
-    """Let the circuit settle from rest; then try gmin stepping, then source stepping, from a cold start."""
-    inner, voltages, converged = newton(network, p, known_V, settle(network, p, known_V))
-    if not converged.all():
+    """Try a cold start; then let the circuit settle from rest; then gmin stepping; then source stepping."""
+    inner, voltages, converged = _from_cold(network, p, known_V)
+    for attempt in (_settled, _gmin_stepping, _source_stepping):
         stuck = np.flatnonzero(~converged)
-        again = _gmin_stepping(network, take(p, stuck), known_V[:, stuck])
-        inner[:, stuck], voltages[:, stuck], converged[stuck] = again
-    if not converged.all():
-        stuck = np.flatnonzero(~converged)
-        again = _source_stepping(network, take(p, stuck), known_V[:, stuck])
-        inner[:, stuck], voltages[:, stuck], converged[stuck] = again
+        if len(stuck):
+            again = attempt(network, take(p, stuck), known_V[:, stuck])
+            inner[:, stuck], voltages[:, stuck], converged[stuck] = again
     return inner, voltages, converged
+
+
+def _from_cold(network: Network, p: Parameters, known_V: Array) -> tuple[Array, Array, NDArray[np.bool_]]:
+    return newton(network, p, known_V, cold_start(network, p, known_V.shape[1]))
+
+
+def _settled(network: Network, p: Parameters, known_V: Array) -> tuple[Array, Array, NDArray[np.bool_]]:
+    return newton(network, p, known_V, settle(network, p, known_V))
 
 
 def _gmin_stepping(network: Network, p: Parameters, known_V: Array) -> tuple[Array, Array, NDArray[np.bool_]]:

@@ -261,7 +261,8 @@ def mosfet(inner: Array, p: Mosfets, present: Array | float = 1.0) -> Evaluation
     v_gs, v_gd = inner
     v_ds = v_gs - v_gd
     turned = v_ds < 0.0
-    control = np.where(turned, v_gd, v_gs)
+    any_turned = bool(turned.any())
+    control = np.where(turned, v_gd, v_gs) if any_turned else v_gs
     across = np.abs(v_ds)
     threshold = p.V_TO
     if p.GAMMA is not None:
@@ -273,10 +274,11 @@ def mosfet(inner: Array, p: Mosfets, present: Array | float = 1.0) -> Evaluation
     i_d = lengthening * core
     g_m = lengthening * linear
     g_ds = lengthening * (over - linear) + p.K_P * p.LAMBDA * core
-    i_d = np.where(turned, -i_d, i_d)
-    # with the ends changed over, the gate works against the drain: I_D = -f(v_GD, -v_DS)
-    by_gs = np.where(turned, g_ds, g_m + g_ds)
-    by_gd = np.where(turned, -(g_m + g_ds), -g_ds)
+    by_gs, by_gd = g_m + g_ds, -g_ds
+    if any_turned:
+        # with the ends changed over, the gate works against the drain: I_D = -f(v_GD, -v_DS)
+        i_d = np.where(turned, -i_d, i_d)
+        by_gs, by_gd = np.where(turned, g_ds, by_gs), np.where(turned, -by_gs, by_gd)
 
     v_body = -(v_ds + p.R_S * i_d)
     e_b = np.exp(np.minimum(v_body / p.V_T, GREATEST_EXPONENT)) * p.I_S
