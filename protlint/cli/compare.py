@@ -13,10 +13,11 @@ from protlint.cli.shell import colour_wanted, say
 from protlint.sources import InputError, UsageError, read_bytes, write_whole
 
 EXAMPLES = """\b
-Examples:
-  protlint compare before.edf after.edf --limits limits.toml
-  protlint compare before.json after.edf --limits limits.toml --gate new:warning
+Examples (`protlint demo bench` writes the files):
+  protlint review bench/slipway-lamps.edf --limits bench/limits.toml --save before.json --gate never
+  protlint compare before.json bench/slipway-lamps.edf --limits bench/limits.toml --gate new:warning
 
+\b
 A JSON report is what `protlint review --save before.json` wrote.
 Exit code: 0 the gate holds, 1 it does not, 2 the work could not be done.
 """

@@ -10,7 +10,7 @@ from protlint.cli.shell import say
 from protlint.sources import FileError, UsageError, data_folder, shown_name
 
 EXAMPLES = """\b
-Examples:
+Example:
   protlint demo bench
 """
 

@@ -17,6 +17,9 @@ from protlint.sources import FileError, ProtlintError, shown_name
 ENDINGS = (".edf", ".edif", ".edn")
 """What a netlist in a folder ends in."""
 
+FEW, SMALL_BYTES = 3, 300_000
+"""So few netlists, so small together, are reviewed sooner than further processes have started."""
+
 Answer = dict[str, Any]
 """A report, or where ``unread`` is set the place and message of what went wrong."""
 
@@ -47,7 +50,7 @@ def review_all(paths: Sequence[str], files: Mapping[str, Any], reading: Mapping[
     from protlint import pipeline
 
     desk = pipeline.set_up(**files)
-    here = [path for path in paths if path == "-" or len(paths) == 1 or _cores() == 1]
+    here = [path for path in paths if path == "-" or not _worth_sharing(paths)]
     elsewhere = [path for path in paths if path not in here]
     answers: dict[str, Answer] = {}
     for path, answer in _with_progress(_on_all_cores(elsewhere, files, reading), len(elsewhere)):
@@ -68,6 +71,14 @@ def _in_folder(folder: Path) -> list[str]:
     if not found:
         raise FileError(f"no file in this folder ends in {', '.join(ENDINGS)}", file=shown_name(folder))
     return [str(path) for path in found]
+
+
+def _worth_sharing(paths: Sequence[str]) -> bool:
+    """Tell whether there is more work than starting other processes costs."""
+    if _cores() == 1 or len(paths) < 2:
+        return False
+    sizes = [Path(path).stat().st_size for path in paths if Path(path).is_file()]
+    return len(paths) > FEW or sum(sizes) > SMALL_BYTES
 
 
 def _cores() -> int:

@@ -12,11 +12,12 @@ from protlint.cli.shell import CANNOT, colour_wanted, complain, say
 from protlint.sources import ProtlintError
 
 EXAMPLES = """\b
-Examples:
-  protlint review board.edf
-  protlint review board.edf --limits limits.toml --parts parts.toml
-  protlint review board.edf --limits limits.toml --save review.json --gate warning
+Examples (`protlint demo bench` writes the files):
+  protlint review bench/slipway-lamps.edf --limits bench/limits.toml --parts bench/parts.toml
+  protlint review bench/slipway-lamps.edf --save review.json --save review.sarif --gate warning
+  protlint review bench --save issues/ --gate never
 
+\b
 Exit code: 0 the gate holds, 1 it does not, 2 the work could not be done.
 """
 

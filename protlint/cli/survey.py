@@ -11,9 +11,9 @@ from protlint.cli.shell import colour_wanted, say
 from protlint.sources import UsageError, shown_name, write_whole
 
 EXAMPLES = """\b
-Examples:
-  protlint survey board.edf
-  protlint survey board.edf --save limits.toml
+Examples (`protlint demo bench` writes the files):
+  protlint survey bench/slipway-lamps.edf
+  protlint survey bench/slipway-lamps.edf --parts bench/parts.toml --save limits.toml
 """
 
 

@@ -12,8 +12,10 @@ from protlint.cli.shell import say
 from protlint.sources import UsageError, shown_name
 
 EXAMPLES = """\b
-Examples:
-  protlint waive board.edf base-stop-absent-0123456789ab --reason "drive gives 5 mA" --by "A. Reviewer"
+Example (`protlint demo bench` writes the files):
+  protlint waive bench/slipway-lamps.edf carry-not-met-06991bc01d11 \\
+    --limits bench/limits.toml --parts bench/parts.toml \\
+    --reason "the lamps are 2 W types" --by "A. Reviewer"
 """
 
 

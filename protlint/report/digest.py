@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 from collections.abc import Sequence
 
 from protlint.findings import LEVELS
@@ -86,16 +87,50 @@ def listed(names: Sequence[str], most: int = MOST_NAMES) -> str:
     return f"{', '.join(names[:most])} and {len(names) - most} more"
 
 
+def alike(ordered: Sequence[Section]) -> list[list[Section]]:
+    """Gather limiters that have the same figures and the same findings on parts of their own, as like channels do."""
+    groups: dict[str, list[Section]] = {}
+    for place, section in enumerate(ordered):
+        limiter, _, found = section
+        key = str(place) if limiter is None or limiter["not_solved"] else _likeness(limiter, found)
+        groups.setdefault(key, []).append(section)
+    return list(groups.values())
+
+
 def assumptions(board: Document) -> list[str]:
-    """Return every assumption once, with the parts or limiters it touches behind it."""
-    touched: dict[str, list[str]] = {text: [] for text in board["assumed"]}
+    """Return every assumption once, with the parts or limiters it touches behind it.
+
+    Sentences that differ in the names of a limiter's own nets alone are one assumption, told with the first one's names.
+    """
+    said: dict[str, str] = {}
+    touched: dict[str, list[str]] = {}
+    for text in board["assumed"]:
+        said[text], touched[text] = text, []
     for limiter in board["limiters"]:
         parts = {part["id"] for part in limiter["parts"]}
         for text in limiter["assumed"]:
             name, colon, rest = text.partition(": ")
             of_part = bool(colon) and (name in parts or set(name.split("+")) <= parts)
-            touched.setdefault(rest if of_part else text, []).append(name if of_part else limiter["id"])
-    return [f"{text} ({listed(list(dict.fromkeys(names)))})" if names else text for text, names in touched.items()]
+            sentence = rest if of_part else text
+            key = _without_nets(sentence, limiter)
+            said.setdefault(key, sentence)
+            touched.setdefault(key, []).append(name if of_part else limiter["id"])
+    return [f"{said[key]} ({listed(list(dict.fromkeys(names)))})" if names else said[key] for key, names in touched.items()]
+
+
+def _without_nets(text: str, limiter: Document) -> str:
+    nets = {net: role for role, net in limiter["nets"].items() if net is not None}
+    return " ".join(f"<{nets[word]}>" if word in nets else word for word in text.split(" "))
+
+
+def _likeness(limiter: Document, found: Sequence[Document]) -> str:
+    figures = [limiter[key] for key in ("topology", "polarity", "verdict", "needs", "currents", "regulates", "loop", "step")]
+    checks = [row["check"] for row in limiter["not_checked"]]
+    findings = [
+        [one["check"], one["level"], one["assumption"], one["waived"], [line["value"] for line in one["working"]]]
+        for one in found
+    ]
+    return json.dumps([figures, checks, findings])
 
 
 def unchecked(rows: Sequence[Document]) -> list[tuple[str, str]]:

@@ -6,10 +6,16 @@ columns and combining marks none.
 
 from __future__ import annotations
 
+import re
 import unicodedata
 from collections.abc import Iterable, Sequence
 
 COLUMNS = 80
+
+TIED = "\0"
+"""Stands for a blank that is no place to break; texts hold none, for they are escaped."""
+
+_BEFORE_UNIT = re.compile(r"(?<=\d) (?=(?:[pnumkMG]?(?:A|V|W|ohm|F|H|Hz|s|J)|%|degC|K|K/W)(?![\w/]))")
 
 COLOURS = {
     "error": "31", "fails": "31",
@@ -30,12 +36,15 @@ def width(text: str) -> int:
 
 
 def wrapped(text: str, *, indent: int = 0, first: str | None = None, columns: int = COLUMNS) -> list[str]:
-    """Break a text into lines; ``first`` stands in place of the first line's indent. A word too long is broken."""
+    """Break a text into lines; ``first`` stands in place of the first line's indent.
+
+    A word too long is broken; a figure and its unit stay together.
+    """
     lead = " " * indent if first is None else first
     lines: list[str] = []
     line, used = lead, width(lead)
     empty = True
-    for word in text.split():
+    for word in _words(text):
         for piece in _pieces(word, columns - indent):
             needed = width(piece) + (0 if empty else 1)
             if used + needed > columns and not empty:
@@ -83,6 +92,10 @@ def table(rows: Sequence[Sequence[str]], *, indent: int = 2, left: Iterable[int]
 def painted(text: str, what: str, *, colour: bool) -> str:
     """Return a text in the colour of what it is, or as it is."""
     return f"\x1b[{COLOURS[what]}m{text}\x1b[0m" if colour and what in COLOURS else text
+
+
+def _words(text: str) -> Iterable[str]:
+    return (word.replace(TIED, " ") for word in _BEFORE_UNIT.sub(TIED, text).split())
 
 
 def _pieces(word: str, columns: int) -> Iterable[str]:

@@ -55,7 +55,7 @@ def markdown(text: str) -> str:
 
 def json_text(text: str) -> str:
     r"""Return JSON text whose strings, shown raw or put into a page, do not act: the same data, escaped as JSON allows."""
-    return re.sub(r"[^\n -~]|</", _escaped_for_json, text)
+    return re.sub(r"[^\n -~]|</|(?<=#)#", _escaped_for_json, text)
 
 
 def _escaped_for_terminal(match: re.Match[str]) -> str:
@@ -69,6 +69,8 @@ def _escaped_for_json(match: re.Match[str]) -> str:
     found = match.group()
     if found == "</":
         return "<\\/"
+    if found == "#":
+        return "\\u0023"
     if unicodedata.category(found) not in ACTING_CATEGORIES:
         return found
     code = ord(found)

@@ -7,6 +7,8 @@ from typing import Any
 
 from protlint.findings import LEVELS
 from protlint.report.digest import (
+    Section,
+    alike,
     assumptions,
     place_of,
     sections,
@@ -51,8 +53,9 @@ def _board(board: Document, colour: bool) -> list[str]:
         lines += ["", *wrapped("`protlint survey` on this file shows what was read and what is missing.", indent=2)]
     if len(board["findings"]) >= INDEX_FROM:
         lines += _index(board["findings"], colour)
-    for limiter, name, found in sections(board):
-        lines += ["", *_section(limiter, name, found, colour)]
+    for group in alike(sections(board)):
+        limiter, name, found = group[0]
+        lines += ["", *_section(limiter, name, found, colour), *_alike(group, colour)]
     lines += _assumed(board, colour)
     lines += _reading(board, colour)
     return lines
@@ -82,6 +85,18 @@ def _section(limiter: Document | None, name: str | None, found: Sequence[Documen
         lines += ["", *_finding(finding, colour)]
     if limiter is not None and limiter["not_checked"]:
         lines += ["", *_not_checked(limiter["not_checked"], colour)]
+    return lines
+
+
+def _alike(group: Sequence[Section], colour: bool) -> list[str]:
+    """Name the limiters with the same figures and findings as the one shown, each with its findings' fingerprints."""
+    if len(group) == 1:
+        return []
+    text = f"The same figures, with the same findings on their own parts, have {len(group) - 1} more:"
+    lines = ["", *wrapped(text, indent=2, first="  ")]
+    for _, name, found in group[1:]:
+        own = f"{name}: {', '.join(finding['fingerprint'] for finding in found)}" if found else str(name)
+        lines += [painted(line, "quiet", colour=colour) for line in wrapped(own, indent=6, first="    ")]
     return lines
 
 

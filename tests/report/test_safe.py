@@ -66,6 +66,7 @@ def test_escaped_json_is_the_same_data(value: object) -> None:
     text = json_text(json.dumps(value, ensure_ascii=False))
     assert json.loads(text) == value
     assert "</" not in text
+    assert "##" not in text
     text.encode("utf-8")
 
 

@@ -9,7 +9,7 @@ import pytest
 
 from protlint.report.digest import sections
 from protlint.report.document import document
-from protlint.report.layout import COLUMNS, width
+from protlint.report.layout import COLUMNS, width, wrapped
 from protlint.report.shape import CAUTION, combined
 from protlint.report.text import rendered_text
 from tests.support.sample_review import HOSTILE, PLAIN, sample_review
@@ -62,6 +62,42 @@ def test_every_finding_of_two_hundred_is_there_and_an_index_leads_them() -> None
     assert all(finding["fingerprint"] in text for finding in report["findings"])
     assert re.search(r"200 note +base-stop-absent +Q30", text)
     assert len(text.splitlines()) < 200 * 6 + 100
+
+
+def test_a_figure_and_its_unit_stay_together() -> None:
+    lines = wrapped("the drop is " + "x" * 10 + " 4.51 V and 20 K/W at 27 degC", columns=28)
+    assert lines == ["the drop is xxxxxxxxxx", "4.51 V and 20 K/W at 27 degC"]
+
+
+def test_like_limiters_are_shown_once_and_named_with_their_findings() -> None:
+    report = document(sample_review())
+    first = report["limiters"][0]
+    own = [one for one in report["findings"] if one["limiter"] == "Q10"]
+    for number in range(100, 300):
+        name = f"Q{number}"
+        report["limiters"].append({**first, "id": name})
+        report["findings"] += [{**one, "limiter": name, "fingerprint": f"{one['check']}-{number}"} for one in own]
+    text = rendered_text(report)
+    assert text.count("Currents in A") == 2
+    assert "have 200 more" in text
+    assert all(f"Q{number}: carry-not-met-{number}, base-stop-absent-{number}" in text for number in range(100, 300))
+    report["limiters"][-1]["currents"] = report["limiters"][2]["currents"]
+    assert "have 199 more" in rendered_text(report)
+
+
+def test_assumptions_that_differ_in_net_names_alone_are_one() -> None:
+    report = document(sample_review())
+    first = report["limiters"][0]
+    report["limiters"] = [
+        {
+            **first,
+            "id": f"Q{number}",
+            "nets": {**first["nets"], "feed": f"F{number}"},
+            "assumed": [f"the drive on F{number} is stiff"],
+        }
+        for number in (1, 2, 3)
+    ]
+    assert "  - the drive on F1 is stiff (Q1, Q2, Q3)" in rendered_text(report)
 
 
 def test_colour_only_where_asked() -> None:
