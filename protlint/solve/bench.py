@@ -103,7 +103,7 @@ def _nodes(place: Place, index: int, feed: int | None, feed_node: str) -> dict[s
 
 
 def _named(limiter: Limiter, role: str, element_of: Mapping[str, int]) -> tuple[str, ...]:
-    indices = limiter.elements.get(role, ())
+    indices = {index for name, found in limiter.elements.items() if name.split(".")[0] == role for index in found}
     return tuple(name for name, index in element_of.items() if index in indices)
 
 

@@ -135,11 +135,7 @@ def _resistor(
         return merged_resistance(element.tree, lambda one: values_ohm[one] * (1.0 + sign * tolerance[one]))
 
     usual_ohm, high_ohm = merged_ohm(0), merged_ohm(1)
-    model = {"R": usual_ohm}
-    entry = parts[0].entry
-    if entry is not None and "tcr" in entry.ratings:
-        model["TC1"] = entry.ratings["tcr"].value
-    return [Device(name=name, kind="resistor", nodes=ends, model=model, tolerance=high_ohm / usual_ohm - 1.0)]
+    return [Device(name=name, kind="resistor", nodes=ends, model={"R": usual_ohm}, tolerance=high_ohm / usual_ohm - 1.0)]
 
 
 def _darlington(

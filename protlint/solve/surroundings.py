@@ -87,6 +87,8 @@ def _power_side(board: Board, limiter: Limiter, output: int, far: int) -> int:
     """Return the net on the other side of the pass device and the sense resistance from the output."""
     if far != output:
         return far
+    if "load" in limiter.bound:
+        return limiter.bound["load"]
     device = board.elements[limiter.elements["pass"][0]]
     return device.terminals.get("collector", device.terminals.get("drain", far))
 
