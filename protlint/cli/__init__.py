@@ -16,12 +16,21 @@ from protlint.cli.shell import CANNOT, NearestGroup, complain, run
 from protlint.cli.survey import survey
 from protlint.cli.waive import waive
 
+EPILOG = """`protlint COMMAND --help` shows a command's options with examples. A good start: protlint demo bench
+
+\b
+Completion of commands and options, in the start-up file of a shell:
+  bash  eval "$(_PROTLINT_COMPLETE=bash_source protlint)"
+  zsh   eval "$(_PROTLINT_COMPLETE=zsh_source protlint)"
+  fish  _PROTLINT_COMPLETE=fish_source protlint | source
+"""
+
 
 @click.group(
     cls=NearestGroup,
     invoke_without_command=True,
     context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100},
-    epilog="`protlint COMMAND --help` shows a command's options with examples. A good start: protlint demo bench",
+    epilog=EPILOG,
 )
 @click.version_option(__version__, prog_name="protlint", message="%(prog)s %(version)s")
 @click.pass_context

@@ -8,7 +8,7 @@ from typing import Any
 
 import click
 
-from protlint.cli.options import reading_options
+from protlint.cli.options import PATH, reading_options
 from protlint.cli.shell import colour_wanted, say
 from protlint.sources import InputError, UsageError, read_bytes, write_whole
 
@@ -26,11 +26,11 @@ GATES = ("new:error", "new:warning", "new:note", "never")
 
 
 @click.command(short_help="Show what a revision changed, limiter by limiter.", epilog=EXAMPLES)
-@click.argument("before")
-@click.argument("after")
+@click.argument("before", type=PATH)
+@click.argument("after", type=PATH)
 @reading_options
-@click.option("--waivers", metavar="FILE", help="Findings that were looked at and accepted.")
-@click.option("--save", metavar="FILE.json", help="Save the comparison too.")
+@click.option("--waivers", metavar="FILE", type=PATH, help="Findings that were looked at and accepted.")
+@click.option("--save", metavar="FILE.json", type=PATH, help="Save the comparison too.")
 @click.option("--gate", type=click.Choice(GATES), default="new:error", show_default=True,
               help="The least level of a new finding that makes the exit code 1.")  # fmt: skip
 def compare(before: str, after: str, save: str | None, gate: str, **reading: Any) -> int:

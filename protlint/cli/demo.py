@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+import shlex
 from pathlib import Path
 
 import click
 
+from protlint.cli.options import PATH
 from protlint.cli.shell import say
 from protlint.sources import FileError, UsageError, data_folder, shown_name
 
@@ -16,7 +18,7 @@ Example:
 
 
 @click.command(short_help="Write a small faulty board to try everything on.", epilog=EXAMPLES)
-@click.argument("folder")
+@click.argument("folder", type=PATH)
 def demo(folder: str) -> int:
     """Write a small board with faults, its limits file and part data into FOLDER, and say what to run next.
 
@@ -40,7 +42,7 @@ def demo(folder: str) -> int:
 
 def _what_next(target: Path, names: list[str]) -> str:
     """Name the commands that fit the files written, in the order a newcomer would run them."""
-    shown = target.as_posix()
+    shown = shlex.quote(target.as_posix())
     board = next((name for name in names if name.endswith((".edf", ".edif", ".edn"))), "")
     options = "".join(
         f" --{option} {shown}/{name}"

@@ -10,15 +10,18 @@ import click
 
 Command = Callable[..., Any]
 
+PATH = click.Path(allow_dash=True)
+"""A file's name as it is written; whether it is there, its reader tells. The type lets shells complete it."""
+
 
 def reading_options(command: Command) -> Command:
     """Add the options that say how a netlist is read and what is known besides it."""
     for option in reversed(
         (
-            click.option("--limits", metavar="FILE", help="Supplies, drive, and what each limiter must carry."),
-            click.option("--parts", metavar="FILE", multiple=True, help="Part data, besides protlint's own. Repeatable."),
-            click.option("--parts-list", metavar="CSV", help="Values and part numbers by designator."),
-            click.option("--rules", metavar="FOLDER", multiple=True, help="Rule files of your own. Repeatable."),
+            click.option("--limits", metavar="FILE", type=PATH, help="Supplies, drive, and what each limiter must carry."),
+            click.option("--parts", metavar="FILE", type=PATH, multiple=True, help="Part data of your own. Repeatable."),
+            click.option("--parts-list", metavar="CSV", type=PATH, help="Values and part numbers by designator."),
+            click.option("--rules", metavar="FOLDER", type=PATH, multiple=True, help="Rule files of your own. Repeatable."),
             click.option("--design", metavar="NAME", help="Which design of the file, where it holds several."),
             click.option("--encoding", metavar="NAME", help="How the file's text is coded (else UTF-8, else cp1252)."),
         )

@@ -7,7 +7,7 @@ from typing import Any
 
 import click
 
-from protlint.cli.options import as_date, reading_options
+from protlint.cli.options import PATH, as_date, reading_options
 from protlint.cli.shell import CANNOT, colour_wanted, complain, say
 from protlint.sources import ProtlintError
 
@@ -23,11 +23,11 @@ Exit code: 0 the gate holds, 1 it does not, 2 the work could not be done.
 
 
 @click.command(short_help="Review every limiter of a board and say what is wrong.", epilog=EXAMPLES)
-@click.argument("netlist", nargs=-1, required=True)
+@click.argument("netlist", nargs=-1, required=True, type=PATH)
 @reading_options
-@click.option("--waivers", metavar="FILE", help="Findings that were looked at and accepted.")
+@click.option("--waivers", metavar="FILE", type=PATH, help="Findings that were looked at and accepted.")
 @click.option("--on", metavar="DATE", callback=as_date, help="Judge waivers as on this day.")
-@click.option("--save", metavar="FILE", multiple=True, help="Save the report too; the ending says how. Repeatable.")
+@click.option("--save", metavar="FILE", type=PATH, multiple=True, help="Save the report; its ending says how. Repeatable.")
 @click.option("--gate", type=click.Choice(("error", "warning", "note", "never")), default="error", show_default=True,
               help="The least level that makes the exit code 1.")  # fmt: skip
 @click.option("--complete", is_flag=True, help="What was not checked closes the gate too.")

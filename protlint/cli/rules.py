@@ -6,6 +6,7 @@ import difflib
 
 import click
 
+from protlint.cli.options import PATH
 from protlint.cli.shell import colour_wanted, say
 
 EXAMPLES = """\b
@@ -18,7 +19,7 @@ Examples:
 
 @click.command(short_help="List the topologies, faults and checks, or show one in full.", epilog=EXAMPLES)
 @click.argument("name", required=False)
-@click.option("--rules", "folders", metavar="FOLDER", multiple=True, help="Rule files of your own. Repeatable.")
+@click.option("--rules", "folders", metavar="FOLDER", type=PATH, multiple=True, help="Rule files of your own. Repeatable.")
 def rules(name: str | None, folders: tuple[str, ...]) -> int:
     """List the topologies, faults and checks, or show NAME in full: what, why, formula, thresholds, source."""
     from protlint.checks.catalogue import load_catalogue

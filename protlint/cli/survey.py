@@ -6,7 +6,7 @@ from pathlib import Path
 
 import click
 
-from protlint.cli.options import reading_options
+from protlint.cli.options import PATH, reading_options
 from protlint.cli.shell import colour_wanted, say
 from protlint.sources import UsageError, shown_name, write_whole
 
@@ -18,9 +18,9 @@ Examples (`protlint demo bench` writes the files):
 
 
 @click.command(short_help="Show what was read and found, and what is missing.", epilog=EXAMPLES)
-@click.argument("netlist")
+@click.argument("netlist", type=PATH)
 @reading_options
-@click.option("--save", metavar="LIMITS.toml", help="Begin a limits file: what is known filled in, blanks for the rest.")
+@click.option("--save", metavar="LIMITS.toml", type=PATH, help="Begin a limits file, with blanks for what is not known.")
 def survey(
     netlist: str,
     limits: str | None,

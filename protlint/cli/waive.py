@@ -7,7 +7,7 @@ from datetime import date
 
 import click
 
-from protlint.cli.options import as_date, reading_options
+from protlint.cli.options import PATH, as_date, reading_options
 from protlint.cli.shell import say
 from protlint.sources import UsageError, shown_name
 
@@ -20,12 +20,12 @@ Example (`protlint demo bench` writes the files):
 
 
 @click.command(short_help="Accept a finding, with a reason and a name.", epilog=EXAMPLES)
-@click.argument("netlist")
+@click.argument("netlist", type=PATH)
 @click.argument("fingerprint")
 @click.option("--reason", required=True, help="Why the finding is accepted.")
 @click.option("--by", required=True, help="Who accepts it.")
 @click.option("--until", metavar="DATE", callback=as_date, help="The last day on which it is accepted.")
-@click.option("--waivers", metavar="FILE", default="waivers.toml", show_default=True, help="The file it is added to.")
+@click.option("--waivers", metavar="FILE", type=PATH, default="waivers.toml", show_default=True, help="The file to add to.")
 @reading_options
 def waive(
     netlist: str,

@@ -86,7 +86,7 @@ def _rules(catalogue: Mapping[str, CheckRow], used: Iterable[str]) -> list[Docum
     """Describe every check of the catalogue, and by name alone those that a user's own rules added."""
     rules = []
     for row in catalogue.values():
-        limits = [f"{limit.says}: {figure(limit.value, limit.unit)}." for limit in row.thresholds.values()]
+        limits = [_sentence(f"{limit.says}: {figure(limit.value, limit.unit)}") for limit in row.thresholds.values()]
         rules.append(
             {
                 "id": row.name,

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import os
+import re
 import subprocess
 import sys
 from pathlib import Path
@@ -13,7 +14,7 @@ import pytest
 
 from protlint import pipeline
 from protlint.cli import commands
-from protlint.cli.many import netlists_of
+from protlint.cli.many import ENDINGS, netlists_of
 from protlint.cli.shell import TRACEBACK_VARIABLE, colour_wanted, run
 from protlint.sources import FileError, InputError
 from tests.support.paths import ROOT
@@ -247,6 +248,30 @@ def test_colour_is_for_terminals(
         monkeypatch.setenv(name, value)
     monkeypatch.setattr(sys.stdout, "isatty", lambda: terminal, raising=False)
     assert colour_wanted() == wanted
+
+
+@pytest.mark.parametrize("shell", ["bash", "zsh", "fish"])
+def test_completion_as_the_help_documents_it(shell: str) -> None:
+    assert f"_PROTLINT_COMPLETE={shell}_source protlint" in protlint("--help").stdout
+    script = protlint(env={**os.environ, "_PROTLINT_COMPLETE": f"{shell}_source"}) if shell != "bash" else None
+    assert script is None or "protlint" in script.stdout
+    words = (
+        {"COMP_WORDS": "protlint re", "COMP_CWORD": "1"}
+        if shell != "fish"
+        else {"COMP_WORDS": "protlint re", "COMP_CWORD": "re"}
+    )
+    offered = protlint(env={**os.environ, "_PROTLINT_COMPLETE": f"{shell}_complete", **words})
+    assert "review" in offered.stdout
+
+
+def test_the_commit_hook_names_a_command_and_the_files_it_is_for() -> None:
+    text = (ROOT / ".pre-commit-hooks.yaml").read_text(encoding="utf-8")
+    entries = dict(re.findall(r"^(?:- |  )(\w+): (.*)$", text, re.MULTILINE))
+    program, command = entries["entry"].split()
+    assert (program, command in commands.commands) == ("protlint", True)
+    pattern = re.compile(entries["files"].strip("'"))
+    assert all(pattern.search(f"hardware/board{ending}") for ending in ENDINGS)
+    assert not pattern.search("hardware/board.edf.txt")
 
 
 def test_netlists_are_gathered_from_folders_in_a_stable_order(tmp_path: Path) -> None:
