@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import asdict, fields
+from dataclasses import asdict
 from typing import TYPE_CHECKING, Any
 
 from protlint import __version__
@@ -23,6 +23,10 @@ if TYPE_CHECKING:
     from protlint.pipeline import Review, ReviewedLimiter
 
 SIGNIFICANT_DIGITS = 6
+
+LOOP_KEYS = ("least_damping", "at_Hz", "worst_damping", "low_frequency_gain", "crossover_Hz", "phase_margin_deg")
+
+STEP_KEYS = ("settles", "delay_s", "peak_A", "pass_energy_J")
 
 UNIT_OF_KIND = {"resistor": "ohm", "capacitor": "F", "inductor": "H", "zener": "V"}
 
@@ -83,8 +87,8 @@ def _limiter(item: ReviewedLimiter, review: Review, by_id: Mapping[str, BoardPar
         "in_hand": _in_hand(item.needs, currents),
         "locus": [{"output_V": rounded(point.output_V), "holds_A": rounded(point.output_A)} for point in solution.locus],
         "regulates": _plain(solution.regulates),
-        "loop": _plain(solution.loop) or _unknown(Loop),
-        "step": _plain(solution.step) or _unknown(Step),
+        "loop": _keys(solution.loop, LOOP_KEYS),
+        "step": _keys(solution.step, STEP_KEYS),
         "held_short": _point(solution.held_short),
         "worst_point": _point(solution.worst_point),
         "sensitivities": [_plain(row) for row in solution.sensitivities],
@@ -126,8 +130,9 @@ def _no_currents(ambient: float) -> Currents:
     return Currents(ambient, None, None, None, None, None, None, None, None, None)
 
 
-def _unknown(kind: type[Loop] | type[Step]) -> Document:
-    return dict.fromkeys((field.name for field in fields(kind)), None)
+def _keys(answers: Loop | Step | None, names: Sequence[str]) -> Document:
+    """Return the named answers, each null where there are none."""
+    return {name: _number(getattr(answers, name, None)) for name in names}
 
 
 def _in_hand(needs: LimiterLimits, currents: Sequence[Document]) -> Document:
@@ -230,9 +235,11 @@ def _net_name(board: Board, index: int | None) -> str | None:
 
 def _plain(value: Any) -> Any:
     """Return a dataclass of plain fields as a dict of rounded numbers and texts."""
-    if value is None:
-        return None
-    return {key: rounded(item) if isinstance(item, float) else item for key, item in asdict(value).items()}
+    return None if value is None else {key: _number(item) for key, item in asdict(value).items()}
+
+
+def _number(value: Any) -> Any:
+    return rounded(value) if isinstance(value, float) else value
 
 
 def _numbers(values: Iterable[float | None]) -> list[float | None]:
