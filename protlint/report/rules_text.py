@@ -6,8 +6,9 @@ from collections.abc import Mapping
 from typing import TYPE_CHECKING
 
 from protlint.checks.catalogue import CheckRow
+from protlint.findings import Finding
 from protlint.report.figures import figure
-from protlint.report.layout import painted, shortened, width, wrapped
+from protlint.report.layout import painted, width, wrapped
 from protlint.report.safe import terminal
 
 if TYPE_CHECKING:
@@ -47,9 +48,24 @@ def rendered_rule(name: str, rules: Rules, catalogue: Mapping[str, CheckRow], *,
     return "\n\n".join("\n".join(block) for block in blocks) + "\n"
 
 
+def rendered_example(finding: Finding) -> str:
+    """Return what a check said of the demo board, with its working filled in."""
+    lines = _fact("example", f"on the demo board, which is invented: {finding.message}")
+    for line in finding.working:
+        source = f" ({line.source})" if line.source else ""
+        text = f"{line.quantity}: {figure(line.value, line.unit)}, {line.formula}{source}"
+        lines += wrapped(terminal(text), indent=16, first=" " * 14)
+    if finding.remedy:
+        lines += wrapped(f"remedy: {terminal(finding.remedy)}", indent=16, first=" " * 14)
+    return "\n".join(lines) + "\n"
+
+
 def _entry(name: str, says: str) -> list[str]:
-    lead = f"  {shortened(terminal(name), NAME_COLUMN - 3):<{NAME_COLUMN - 2}}"
-    return wrapped(terminal(says), indent=NAME_COLUMN, first=lead)
+    """Return a name with what it says beside it, or below it where the name is long."""
+    shown = terminal(name)
+    if width(shown) > NAME_COLUMN - 4:
+        return [*wrapped(shown, indent=4, first="  "), *wrapped(terminal(says), indent=NAME_COLUMN)]
+    return wrapped(terminal(says), indent=NAME_COLUMN, first=f"  {shown:<{NAME_COLUMN - 2}}")
 
 
 def _described(one: Described, kind: str, colour: bool) -> list[str]:
