@@ -92,8 +92,25 @@ class Shorted:
 
 
 @dataclass(frozen=True, slots=True)
+class Worst:
+    """The least damping over corners, ambients and fault wiring, and where it lies: frequency, ambient, inductance in the
+    short, and the corner as device.parameter to the position taken (-1 the low, +1 the high end). A damping of 1 without a
+    place means that no mode of the limiter's swings anywhere."""
+
+    damping: float
+    at_Hz: float | None = None
+    ambient_degC: float | None = None
+    wiring_H: float | None = None
+    corner: Mapping[str, float] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True)
 class Loop:
-    """The small-signal answers at the held short."""
+    """The small-signal answers at the held short.
+
+    ``natural`` are the natural frequencies as (Hz, damping), slowest first, a pair once; ``table`` the loop gain as (Hz,
+    magnitude, phase in degrees, 0 where the feedback is negative).
+    """
 
     least_damping: float | None
     at_Hz: float | None
@@ -101,6 +118,9 @@ class Loop:
     low_frequency_gain: float | None
     crossover_Hz: float | None
     phase_margin_deg: float | None
+    worst: Worst | None = None
+    natural: tuple[tuple[float, float], ...] = ()
+    table: tuple[tuple[float, float, float], ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

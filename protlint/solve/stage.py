@@ -29,7 +29,7 @@ LEAST_OUTPUT_A = 1e-6
 class Stage:
     """A network with the short, the drive's on end (1 high, 0 low) and the way of its output current (+1 into the circuit).
 
-    ``passing`` are the pass devices' (first terminal, common terminal) nodes.
+    ``passing`` are the pass devices' nodes across which the voltage stands, the positive one first when the device works.
     """
 
     network: Network
@@ -51,11 +51,10 @@ class Run:
     output_A: Array
 
     def pick(self, lanes: IntArray) -> Run:
-        """Return some lanes of a nominal run."""
-        conditions, solved = self.lanes, self.operating
-        present = None if conditions.present is None else conditions.present[lanes]
+        """Return some lanes."""
+        solved = self.operating
         return Run(
-            Lanes(conditions.ambient_K[lanes], conditions.known_V[:, lanes], present),
+            self.lanes.pick(lanes),
             Operating(solved.inner[:, lanes], solved.node_V[:, lanes], solved.known_A[:, lanes], solved.converged[lanes]),
             self.output_V[lanes],
             self.output_A[lanes],
@@ -86,10 +85,13 @@ class Sweep:
         return self.run.pick(np.arange(first, first + self.ambients))
 
 
-def sweep_stage(network: Network, short: str, ambients_degC: Sequence[float], usual: int) -> tuple[Stage, Sweep]:
+def sweep_stage(
+    network: Network, short: str, ambients_degC: Sequence[float], usual: int, *, drives: int = SWEEP_POINTS
+) -> tuple[Stage, Sweep]:
     """Sweep the drive into a short at every ambient; return the stage, and the sweep from its off end to its on end.
 
-    The on end is the one with the greater unlimited output current at the usual ambient (an index).
+    The on end is the one with the greater unlimited output current at the usual ambient (an index). ``drives`` is how many
+    drive voltages are solved; 2 are enough where only the stage is wanted.
 
     Raises
     ------
@@ -97,17 +99,20 @@ def sweep_stage(network: Network, short: str, ambients_degC: Sequence[float], us
         Where neither end is solved or neither turns the pass device on.
     """
     place = {node: index for index, node in enumerate(network.nodes)}
-    nodes = {device.name: device.nodes for device in network.circuit.devices}
-    passing = tuple((place[nodes[name][0]], place[nodes[name][-1]]) for name in network.circuit.pass_devices)
-    stage = Stage(network, axes_of(network), short, 1, 1.0, passing)
+    passing = []
+    for device in network.circuit.devices:
+        if device.name in network.circuit.pass_devices:
+            ends = (place[device.nodes[0]], place[device.nodes[-1]])
+            passing.append(ends[::-1] if device.kind in ("pnp", "pmos") else ends)
+    stage = Stage(network, axes_of(network), short, 1, 1.0, tuple(passing))
     drive = network.circuit.drive
     count = len(ambients_degC)
-    drive_V = np.linspace(drive.low_V.usual, drive.high_V.usual, SWEEP_POINTS)
+    drive_V = np.linspace(drive.low_V.usual, drive.high_V.usual, drives)
     run = run_stage(
         stage,
-        np.tile(np.array(ambients_degC) + KELVIN, 2 * SWEEP_POINTS),
+        np.tile(np.array(ambients_degC) + KELVIN, 2 * drives),
         drive_V=np.tile(np.repeat(drive_V, count), 2),
-        shunt_in=np.repeat([1.0, 0.0], SWEEP_POINTS * count),
+        shunt_in=np.repeat([1.0, 0.0], drives * count),
     )
     ends = Sweep(run, drive_V, count).current(1)[[0, -1], usual]
     if np.isnan(ends).all():
@@ -119,7 +124,7 @@ def sweep_stage(network: Network, short: str, ambients_degC: Sequence[float], us
     way = 1.0 if greatest > 0.0 else -1.0
     run = replace(run, output_A=way * run.output_A)
     if on_end == 0:
-        rows = np.arange(2 * SWEEP_POINTS * count).reshape(2, SWEEP_POINTS, count)[:, ::-1].ravel()
+        rows = np.arange(2 * drives * count).reshape(2, drives, count)[:, ::-1].ravel()
         run, drive_V = run.pick(rows), drive_V[::-1]
     return replace(stage, on_end=on_end, way=way), Sweep(run, drive_V, count)
 
@@ -183,7 +188,7 @@ def stage_lanes(
 def pass_voltage(stage: Stage, run: Run) -> Array:
     """Return the least voltage across any pass device (lanes,), in its forward sense."""
     node_V = run.operating.node_V
-    across = [np.abs(node_V[first] - node_V[last]) for first, last in stage.passing]
+    across = [node_V[positive] - node_V[negative] for positive, negative in stage.passing]
     return np.min(across, axis=0) if across else np.full(node_V.shape[1], np.inf)
 
 
