@@ -6,10 +6,15 @@ from collections.abc import Iterable, Sequence
 
 from protlint.report.digest import MOST_NAMES, listed, place_of, times
 from protlint.report.figures import counted, figure
-from protlint.report.layout import painted, table, wrapped
+from protlint.report.layout import painted, shortened, table, wrapped
 from protlint.report.safe import terminal, throughout
 from protlint.report.shape import Document
 from protlint.report.text import POLARITY_WORDS, ROLE_WORDS
+
+STEPS = {"V_BE": (0.01, "+10 mV"), "V_F": (0.01, "+10 mV"), "V_TO": (0.1, "+0.1 V"), "B_F": (0.1, "+10 %")}
+"""The change of a parameter for which its effect is told, where that is not one per cent: size, and in words."""
+
+MOST_MOVES = 4
 
 
 def rendered_survey(facts: Document, *, colour: bool = False) -> str:
@@ -146,6 +151,8 @@ def _limiter(limiter: Document, colour: bool) -> list[str]:
         lines += wrapped(f"assumed: {text}", indent=8, first="    ")
     if limiter["also_matched"]:
         lines += wrapped(f"also fits: {', '.join(limiter['also_matched'])}", indent=8, first="    ")
+    lines += _sensitivities(limiter["sensitivities"])
+    lines += _states(limiter["held_short"])
     lines += _loop(limiter["loop"])
     return lines
 
@@ -173,6 +180,30 @@ def _drive(drive: Document) -> str:
         "assumed" if drive["assumed"] else "",
     ]
     return ", ".join([ends, *(text for text in limits if text)])
+
+
+def _sensitivities(rows: Sequence[Document]) -> list[str]:
+    """Say what moves holds most, for changes of a size that occurs."""
+    moves = []
+    for row in rows:
+        if row["relative"] is not None:
+            step, words = STEPS.get(row["parameter"], (0.01, "+1 %"))
+            name = row["device"] if row["parameter"] in ("R", "V") else f"{row['device']} {row['parameter']}"
+            moves.append((row["relative"] * step, f"{name} {words}"))
+    moves.sort(key=lambda move: -abs(move[0]))
+    texts = [f"{'+' if change > 0.0 else ''}{100.0 * change:.2g} % for {words}" for change, words in moves[:MOST_MOVES]]
+    return wrapped(f"holds moves by {', '.join(texts)}", indent=8, first="    ") if texts else []
+
+
+def _states(point: Document | None) -> list[str]:
+    """Show current, voltage and dissipation of every device in the held short."""
+    if point is None:
+        return []
+    rows = [["in the held short", "current", "voltage", "power"]]
+    for device in point["devices"]:
+        figures = [figure(device[key], unit) for key, unit in (("current_A", "A"), ("voltage_V", "V"), ("power_W", "W"))]
+        rows.append([shortened(device["device"], 30), *figures])
+    return table(rows, indent=4)
 
 
 def _loop(loop: Document) -> list[str]:
