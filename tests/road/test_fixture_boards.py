@@ -1,4 +1,4 @@
-"""The two boards in fixtures/: the clean one is clean, and of the faulty one each planted fault is named and nothing else."""
+"""The boards in fixtures/: the clean one is clean; of the faulty one each planted fault is named and nothing else."""
 
 from __future__ import annotations
 

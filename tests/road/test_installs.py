@@ -27,7 +27,7 @@ def wheel(tmp_path_factory: pytest.TempPathFactory) -> Path:
             shutil.copytree(source, target, ignore=shutil.ignore_patterns("__pycache__"))
         else:
             shutil.copy(source, target)
-    build = [sys.executable, "-m", "pip", "wheel", "--quiet", "--no-deps", "--wheel-dir", str(folder), str(folder / "source")]
+    build = [sys.executable, "-m", "pip", "wheel", "-q", "--no-deps", "-w", str(folder), str(folder / "source")]
     done = subprocess.run(build, capture_output=True, text=True, check=False, timeout=300)
     if done.returncode:
         pytest.skip(f"SKIPPED: no wheel could be built here (is there a package index?): {done.stderr[-300:]}")

@@ -33,7 +33,7 @@ class Files:
 def plain(circuit: Circuit) -> Circuit:
     """Return the circuit without what no netlist states: the temperature coefficients of resistors."""
     devices = tuple(
-        replace(device, model={"R": device.model["R"]}) if device.kind == "resistor" else device for device in circuit.devices
+        replace(one, model={"R": one.model["R"]}) if one.kind == "resistor" else one for one in circuit.devices
     )
     return replace(circuit, devices=devices)
 
