@@ -16,7 +16,7 @@ from protlint.board.graph import Board, BoardPart
 from protlint.findings import Finding
 from protlint.limits import LimiterLimits
 from protlint.report.shape import CAUTION, Document, summarised
-from protlint.solve.solution import Currents, Loop, Point, Step
+from protlint.solve.solution import Currents, Loop, Point, Step, Worst
 from protlint.topology.limiter import NETS, ROLES
 
 if TYPE_CHECKING:
@@ -25,6 +25,8 @@ if TYPE_CHECKING:
 SIGNIFICANT_DIGITS = 6
 
 LOOP_KEYS = ("least_damping", "at_Hz", "worst_damping", "low_frequency_gain", "crossover_Hz", "phase_margin_deg")
+
+WORST_KEYS = ("damping", "at_Hz", "ambient_degC", "wiring_H")
 
 STEP_KEYS = ("settles", "delay_s", "peak_A", "pass_energy_J")
 
@@ -87,7 +89,7 @@ def _limiter(item: ReviewedLimiter, review: Review, by_id: Mapping[str, BoardPar
         "in_hand": _in_hand(item.needs, currents),
         "locus": [{"output_V": rounded(point.output_V), "holds_A": rounded(point.output_A)} for point in solution.locus],
         "regulates": _plain(solution.regulates),
-        "loop": _keys(solution.loop, LOOP_KEYS),
+        "loop": {**_keys(solution.loop, LOOP_KEYS), **_modes(solution.loop)},
         "step": _keys(solution.step, STEP_KEYS),
         "held_short": _point(solution.held_short),
         "worst_point": _point(solution.worst_point),
@@ -130,9 +132,19 @@ def _no_currents(ambient: float) -> Currents:
     return Currents(ambient, None, None, None, None, None, None, None, None, None)
 
 
-def _keys(answers: Loop | Step | None, names: Sequence[str]) -> Document:
+def _keys(answers: Loop | Step | Worst | None, names: Sequence[str]) -> Document:
     """Return the named answers, each null where there are none."""
     return {name: _number(getattr(answers, name, None)) for name in names}
+
+
+def _modes(loop: Loop | None) -> Document:
+    """Return where the worst damping lies, and the natural frequencies as drawn."""
+    worst = _keys(loop.worst, WORST_KEYS) if loop is not None and loop.worst is not None else None
+    natural = loop.natural if loop is not None else ()
+    return {
+        "worst": worst,
+        "natural": [{"at_Hz": rounded(at_Hz), "damping": rounded(damping)} for at_Hz, damping in natural],
+    }
 
 
 def _in_hand(needs: LimiterLimits, currents: Sequence[Document]) -> Document:

@@ -115,6 +115,10 @@ def _circuit(item: ReviewedLimiter, board: Board) -> Document:
         "held": [[net, held] for net, held in bench.nets.items()],
         "missing": [missing.needs for missing in bench.missing],
         "drive_ends": _drive(circuit),
+        "loop_table": [
+            {"at_Hz": rounded(at_Hz), "gain": rounded(gain), "phase_deg": rounded(phase_deg)}
+            for at_Hz, gain, phase_deg in (item.solution.loop.table if item.solution.loop is not None else ())
+        ],
         "shorts": list(circuit.shorts) if circuit else [],
         "devices": [
             {"name": device.name, "kind": device.kind, "nodes": list(device.nodes), "assumed": list(device.assumed)}

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 
 from protlint.report.digest import MOST_NAMES, listed, place_of, times
-from protlint.report.figures import counted, figure
+from protlint.report.figures import ambient, counted, figure
 from protlint.report.layout import painted, shortened, table, wrapped
 from protlint.report.safe import terminal, throughout
 from protlint.report.shape import Document
@@ -15,6 +15,8 @@ STEPS = {"V_BE": (0.01, "+10 mV"), "V_F": (0.01, "+10 mV"), "V_TO": (0.1, "+0.1 
 """The change of a parameter for which its effect is told, where that is not one per cent: size, and in words."""
 
 MOST_MOVES = 4
+
+MOST_GAINS = 13
 
 
 def rendered_survey(facts: Document, *, colour: bool = False) -> str:
@@ -153,7 +155,7 @@ def _limiter(limiter: Document, colour: bool) -> list[str]:
         lines += wrapped(f"also fits: {', '.join(limiter['also_matched'])}", indent=8, first="    ")
     lines += _sensitivities(limiter["sensitivities"])
     lines += _states(limiter["held_short"])
-    lines += _loop(limiter["loop"])
+    lines += _loop(limiter["loop"], limiter["loop_table"])
     return lines
 
 
@@ -206,16 +208,35 @@ def _states(point: Document | None) -> list[str]:
     return table(rows, indent=4)
 
 
-def _loop(loop: Document) -> list[str]:
+def _loop(loop: Document, gains: Sequence[Document]) -> list[str]:
+    """Show the natural frequencies, where the worst damping lies, and the loop gain over frequency."""
     if loop["least_damping"] is None and loop["low_frequency_gain"] is None:
         return []
-    rows = (
-        ("least damping", figure(loop["least_damping"]), f"at {figure(loop['at_Hz'], 'Hz')}"),
-        ("worst damping", figure(loop["worst_damping"]), ""),
-        ("low-frequency gain", figure(loop["low_frequency_gain"]), ""),
-        ("crossover", figure(loop["crossover_Hz"], "Hz"), f"margin {figure(loop['phase_margin_deg'], 'deg')}"),
-    )
-    return ["    loop in the held short, at usual ambient", *table(rows, indent=6, left=(0, 2))]
+    rows = [
+        ["loop in the held short", "", ""],
+        ["  least damping", figure(loop["least_damping"]), f"at {figure(loop['at_Hz'], 'Hz')}"],
+    ]
+    rows.append(["  worst damping", figure(loop["worst_damping"]), _worst(loop["worst"])])
+    rows += [
+        ["  natural frequency", figure(one["at_Hz"], "Hz"), f"damping {figure(one['damping'])}"] for one in loop["natural"]
+    ]
+    rows.append(["  low-frequency gain", figure(loop["low_frequency_gain"]), ""])
+    crossover = figure(loop["crossover_Hz"], "Hz")
+    rows.append(["  crossover", crossover, f"phase margin {figure(loop['phase_margin_deg'], 'deg')}"])
+    every = max(1, -(-len(gains) // MOST_GAINS))
+    rows += [
+        ["  gain at " + figure(one["at_Hz"], "Hz"), figure(one["gain"]), f"phase {figure(one['phase_deg'], 'deg')}"]
+        for one in gains[::every]
+    ]
+    return table(rows, indent=4, left=(0, 2))
+
+
+def _worst(worst: Document | None) -> str:
+    if worst is None or worst["at_Hz"] is None:
+        return ""
+    ambient_degC = f", {ambient(worst['ambient_degC'])}" if worst["ambient_degC"] is not None else ""
+    wiring = f", {figure(worst['wiring_H'], 'H')} in the short" if worst["wiring_H"] else ""
+    return f"at {figure(worst['at_Hz'], 'Hz')}{ambient_degC}{wiring}"
 
 
 def _faults(faults: Sequence[Document]) -> list[str]:

@@ -16,7 +16,7 @@ from protlint.netlist.model import Net, Netlist, Part, Pin, Property
 from protlint.pipeline import Review, ReviewedLimiter
 from protlint.solve.bench import Bench
 from protlint.solve.circuit import Circuit, Device, Drive
-from protlint.solve.solution import Currents, Loop, Point, Sensitivity, Solution, State, Step
+from protlint.solve.solution import Currents, Loop, Point, Sensitivity, Solution, State, Step, Worst
 from protlint.topology.limiter import ROLES, Found, Limiter
 
 PLAIN = {"pass": "Q10", "sense": "R11", "shunt": "Q11", "base_stop": "R12", "drive": "R10", "out": "OUT", "name": "lamp.edf"}
@@ -280,6 +280,16 @@ def _solution(holds: float, names: Mapping[str, str]) -> Solution:
         held_short=short,
         worst_point=short,
         sensitivities=(Sensitivity(names["sense"], "R", -0.9),),
-        loop=Loop(0.223456789, 1.2e6, 0.19, 41.0, 8.1e5, 38.0),
+        loop=Loop(
+            0.223456789,
+            1.2e6,
+            0.19,
+            41.0,
+            8.1e5,
+            38.0,
+            worst=Worst(0.19, 1.1e6, 85.0, 5e-7, {"R11.R": -1.0}),
+            natural=((2.1e4, 1.0), (1.2e6, 0.223456789)),
+            table=tuple((10.0**decade, 41.0 / decade, -30.0 * decade) for decade in range(1, 8)),
+        ),
         step=Step(True, 1.2e-6, 1.31, 2.5e-6),
     )
