@@ -215,11 +215,10 @@ def _loop(loop: Document, gains: Sequence[Document]) -> list[str]:
     rows = [
         ["loop in the held short", "", ""],
         ["  least damping", figure(loop["least_damping"]), f"at {figure(loop['at_Hz'], 'Hz')}"],
+        ["  worst damping", figure(loop["worst_damping"]), _worst(loop["worst"])],
     ]
-    rows.append(["  worst damping", figure(loop["worst_damping"]), _worst(loop["worst"])])
-    rows += [
-        ["  natural frequency", figure(one["at_Hz"], "Hz"), f"damping {figure(one['damping'])}"] for one in loop["natural"]
-    ]
+    for one in loop["natural"]:
+        rows.append(["  natural frequency", figure(one["at_Hz"], "Hz"), f"damping {figure(one['damping'])}"])
     rows.append(["  low-frequency gain", figure(loop["low_frequency_gain"]), ""])
     crossover = figure(loop["crossover_Hz"], "Hz")
     rows.append(["  crossover", crossover, f"phase margin {figure(loop['phase_margin_deg'], 'deg')}"])
