@@ -62,19 +62,24 @@ def begins_nominal(stage: Stage, conditions: Conditions, sweep: Sweep) -> Begins
 def begins_near(stage: Stage, conditions: Conditions, nominal: Begins, ambient: IntArray) -> Array:
     """Return the output currents (conditions,) at the crossings that belong to nominal ones (by index), NaN where lost.
 
-    The drive may rise past its on end, so that a corner in which the drive gives out a little earlier still shows where the
-    limiter itself would begin.
+    The drive may rise past its on end, and give more than its greatest current, so that a corner in which the drive gives
+    out a little earlier still shows where the limiter itself would begin.
     """
     off, on = drive_ends(stage)
-    found = balance(
-        stage,
-        conditions,
-        share=LIMITING_SHARE,
-        from_V=nominal.drive_V[ambient],
-        from_A=nominal.output_A[ambient],
-        start=nominal.inner[:, :, ambient],
-        limits_V=(off, on + _BEYOND * (on - off)),
-    )
+    found = np.full(len(ambient), np.nan)
+    for drive_limit in (1.0, 1.0 + _BEYOND) if stage.network.limited_drive else (1.0,):
+        lost = np.flatnonzero(np.isnan(found))
+        if len(lost):
+            found[lost] = balance(
+                stage,
+                conditions.pick(lost),
+                share=LIMITING_SHARE,
+                from_V=nominal.drive_V[ambient[lost]],
+                from_A=nominal.output_A[ambient[lost]],
+                start=nominal.inner[:, :, ambient[lost]],
+                limits_V=(off, on + _BEYOND * (on - off)),
+                drive_limit=drive_limit,
+            )
     return np.where(found > LEAST_SHARE_OF_HOLDS * nominal.output_A[ambient], found, np.nan)
 
 

@@ -8,12 +8,12 @@ gives the next d, and with it Newton's step of both copies.
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from protlint.solve.dc import CLOSE_V, companions, eliminate, evaluate, fold, inner_step, limited, linear_part, through
-from protlint.solve.devices import Array
+from protlint.solve.devices import Array, Source
 from protlint.solve.lanes import Lanes, Parameters, parameters
 from protlint.solve.locus import Conditions
 from protlint.solve.network import Network
@@ -51,11 +51,13 @@ def balance(
     from_A: Array,
     start: Array,
     limits_V: tuple[float, float],
+    drive_limit: float = 1.0,
 ) -> Array:
     """Return the output currents with the shunt where they fall to ``share`` of those without, NaN where none is found.
 
     All arrays are (conditions,) but ``start``, inner voltages (ports, 2, conditions) with the shunt and without. The drive
-    begins at ``from_V``, where a nominal stage gives ``from_A``; ``limits_V`` are its off end and the farthest it may rise.
+    begins at ``from_V``, where a nominal stage gives ``from_A``; ``limits_V`` are its off end and the farthest it may rise;
+    ``drive_limit`` multiplies the greatest current of a limited drive.
     """
     count = len(from_V)
     off, end = limits_V
@@ -66,7 +68,7 @@ def balance(
         stage, both.ambient_K, corner=both.corner, drive_V=np.zeros(2 * count), shunt_in=np.repeat([1.0, 0.0], count)
     )
     with np.errstate(all="ignore"):
-        pair = _pair(stage.network, lanes)
+        pair = _pair(stage.network, lanes, drive_limit)
         work, drive_V = start.reshape(len(start), -1).copy(), from_V.copy()
         result, settled = np.full(count, np.nan), np.zeros(count, dtype=bool)
         for step in range(_STEPS):
@@ -92,9 +94,14 @@ def balance(
     return result
 
 
-def _pair(network: Network, lanes: Lanes) -> _Pair:
+def _pair(network: Network, lanes: Lanes, drive_limit: float) -> _Pair:
     """Prepare both copies; ``lanes`` have the drive at 0 V."""
     p = parameters(network, lanes)
+    records = [
+        replace(record, limit_A=record.limit_A * drive_limit) if isinstance(record, Source) else record
+        for record in p.records
+    ]
+    p = replace(p, records=tuple(records))
     matrix, right, outer_V = linear_part(network, p, lanes.known_V, 0.0)
     drive_slope = np.zeros_like(lanes.known_V)
     drive_slope[-1] = 1.0

@@ -9,11 +9,10 @@ from dataclasses import dataclass, fields, replace
 from typing import Any, cast
 
 import numpy as np
-from numpy.typing import NDArray
 
 from protlint.solve import devices
 from protlint.solve.constants import BOLTZMANN_V_PER_K, T0_K
-from protlint.solve.devices import Array
+from protlint.solve.devices import Array, IntArray
 from protlint.solve.network import LEAST_SOURCE_OHM, Group, Network
 from protlint.solve.parameters import LINK_OHM
 
@@ -32,6 +31,14 @@ class Variation:
     shift_V: dict[str, Array] | None = None
     bf: Array | None = None
 
+    def pick(self, which: IntArray) -> Variation:
+        """Return some of the lanes."""
+        return Variation(
+            None if self.resistance is None else self.resistance[:, which],
+            None if self.shift_V is None else {family: shift[:, which] for family, shift in self.shift_V.items()},
+            None if self.bf is None else self.bf[:, which],
+        )
+
 
 @dataclass(frozen=True, slots=True)
 class Lanes:
@@ -47,6 +54,11 @@ class Lanes:
     def count(self) -> int:
         """How many lanes."""
         return int(self.known_V.shape[1])
+
+    def pick(self, which: IntArray) -> Lanes:
+        """Return some of the lanes."""
+        present = None if self.present is None else self.present[which]
+        return Lanes(self.ambient_K[which], self.known_V[:, which], present, self.variation.pick(which))
 
 
 @dataclass(frozen=True, slots=True)
@@ -95,7 +107,7 @@ def parameters(network: Network, lanes: Lanes) -> Parameters:
     return Parameters(tuple(records), 1.0 / np.maximum(ohms, LINK_OHM), tuple(present))
 
 
-def take(p: Parameters, lanes: NDArray[np.intp]) -> Parameters:
+def take(p: Parameters, lanes: IntArray) -> Parameters:
     """Return the parameters of some lanes only."""
     records: list[Record] = []
     for record in p.records:
@@ -106,7 +118,7 @@ def take(p: Parameters, lanes: NDArray[np.intp]) -> Parameters:
     return Parameters(tuple(records), _pick(p.conductance, lanes), present)
 
 
-def _pick(values: Array, lanes: NDArray[np.intp]) -> Array:
+def _pick(values: Array, lanes: IntArray) -> Array:
     return values if values.shape[-1] == 1 else values[..., lanes]
 
 

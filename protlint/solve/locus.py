@@ -13,7 +13,7 @@ import numpy as np
 from protlint.solve.devices import Array, IntArray
 from protlint.solve.stage import Run, Stage, pass_voltage, run_stage, short_voltage
 
-RUN_OUT_SHARE = 0.01
+RUN_OUT_SHARE = 1e-3
 """The pass device has run out where this share of the greatest current is left."""
 PASS_V = 2.0
 """What a pass device needs to be working, where no working output voltage is stated."""

@@ -9,7 +9,7 @@ import numpy as np
 
 from protlint.solve.begins import Begins, begins_nominal
 from protlint.solve.devices import Array
-from protlint.solve.locus import Conditions, Loci, greatest, least_working, trace, working_edges
+from protlint.solve.locus import RUN_OUT_SHARE, Conditions, Loci, greatest, least_working, trace, working_edges
 from protlint.solve.stage import Run, Stage, Sweep, run_stage
 
 
@@ -43,10 +43,15 @@ class Nominal:
 
     @property
     def carries_A(self) -> Array:
-        """Carries at every ambient, NaN where unknown; nothing is carried where current would flow the other way."""
+        """Carries at every ambient, NaN where unknown."""
         if self.carry is None:
             return np.full(len(self.holds_A), np.nan)
-        return np.where(np.isnan(self.carry_V), np.nan, np.maximum(self.carry.output_A, 0.0))
+        return np.where(np.isnan(self.carry_V), np.nan, carried(self.carry.output_A, self.most_A))
+
+
+def carried(output_A: Array, most_A: Array) -> Array:
+    """Return output currents, 0 where less than a thousandth of the most is left or current flows the other way."""
+    return np.where(output_A > RUN_OUT_SHARE * most_A, output_A, 0.0)
 
 
 def solve_nominal(stage: Stage, sweep: Sweep) -> Nominal:

@@ -10,21 +10,25 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from protlint.solve.begins import begins_near
 from protlint.solve.corners import extremes
 from protlint.solve.devices import Array, IntArray
 from protlint.solve.locus import PASS_V, Conditions, Loci, greatest, least_working, run_at, trace, working_edges
-from protlint.solve.nominal import Nominal
+from protlint.solve.nominal import Nominal, carried
 from protlint.solve.stage import Run, Stage, pass_power, pass_voltage
 
 KINDS = ("begins", "holds", "carries", "most")
 
 _CORNER_ROUNDS = 2
-_MOST_PROBES = (-0.06, -0.015, 0.0, 0.015, 0.06)
+_MOST_PROBES = (-0.25, -0.12, -0.06, -0.03, -0.015, 0.0, 0.015, 0.03, 0.06, 0.12, 0.25)
 """Where the greatest current is looked for around its nominal place, in shares of the locus."""
 _EDGE_V = 0.02
-"""How near to its least working voltage the pass device has to be for the edge's current."""
+_ROUNDING = 1e-9
+"""Ends are rounded outwards by this share, so that what lies on them lies within."""
+_EDGE_STEPS = 4
+"""How near to its least working voltage the pass device has to be for the edge's current, and how often to try."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -57,11 +61,13 @@ def find_ranges(stage: Stage, nominal: Nominal) -> Ranges:
     loci, grid = trace(stage, conditions, np.tile(nominal.grid, 5), _CORNER_ROUNDS)
     if stage.network.circuit.output_V is None and nominal.carry is not None:
         loci = working_edges(stage, conditions, loci)
-        by_kind["carries"] = _from_loci(loci, least_working, 0, ambients, by_kind["carries"])
+        least = _from_loci(loci, least_working, 0, ambients, by_kind["carries"])
+        by_kind["carries"] = carried(least, nominal.most_A)
     by_kind["most"] = _from_loci(loci, greatest, 2 * ambients, ambients, by_kind["most"])
     for kind, value in zip(KINDS, figures, strict=True):
         by_kind[kind] = np.stack((np.fmin(by_kind[kind][0], value), np.fmax(by_kind[kind][1], value)))
     by_kind["most"][1] = np.fmax(by_kind["most"][1], by_kind["holds"][1])
+    by_kind = {kind: np.stack((low * (1.0 - _ROUNDING), high * (1.0 + _ROUNDING))) for kind, (low, high) in by_kind.items()}
     high = np.arange(4 * ambients, 5 * ambients)
     return Ranges(
         by_kind=by_kind,
@@ -127,15 +133,16 @@ def _static(stage: Stage, nominal: Nominal, conditions: Conditions, kind: IntArr
     circuit = stage.network.circuit
     holds, carries, most = (np.flatnonzero(kind == place) for place in (1, 2, 3))
     at_edge = circuit.output_V is None
-    span = np.array([np.ptp(nominal.loci.output_V[nominal.loci.of(place)]) for place in range(len(nominal.holds_A))])
-    shifts = stage.way * np.array(_MOST_PROBES)[:, None] * span[ambient[most]]
     in_short = nominal.short.operating.inner
     at_carry = in_short if nominal.carry is None else nominal.carry.operating.inner
     probes = [(holds, np.full(len(holds), np.nan), in_short), (carries, nominal.carry_V[ambient[carries]], at_carry)]
     if at_edge:
         probes.append((carries, np.full(len(carries), np.nan), in_short))
     probes.append((most, np.full(len(most), np.nan), in_short))
-    probes += [(most, nominal.most_V[ambient[most]] - shift, nominal.most_inner) for shift in shifts]
+    for share in _MOST_PROBES:
+        near_V, within = _beside_most(stage, nominal, share)
+        lanes = most[within[ambient[most]]]
+        probes.append((lanes, near_V[ambient[lanes]], nominal.most_inner))
     owner = np.concatenate([lanes for lanes, _, _ in probes])
     at_V = np.concatenate([voltage for _, voltage, _ in probes])
     start = np.concatenate([inner[:, ambient[lanes]] for lanes, _, inner in probes], axis=1)
@@ -144,18 +151,47 @@ def _static(stage: Stage, nominal: Nominal, conditions: Conditions, kind: IntArr
     result[holds] = run.output_A[: len(holds)]
     np.fmax.at(result, owner[kind[owner] == 3], run.output_A[kind[owner] == 3])
     if not at_edge:
-        result[carries] = np.maximum(run.output_A[len(holds) : len(holds) + len(carries)], 0.0)
+        result[carries] = carried(run.output_A[len(holds) : len(holds) + len(carries)], nominal.most_A[ambient[carries]])
         return result
     pass_V = pass_voltage(stage, run)
     working = np.where(pass_V >= PASS_V, run.output_A, np.nan)
     np.fmin.at(result, owner[kind[owner] == 2], working[kind[owner] == 2])
-    first = np.arange(len(holds), len(holds) + len(carries))
-    off = first[np.abs(pass_V[first] - PASS_V) > _EDGE_V] if len(first) else first
-    if len(off):
-        # the pass voltage follows the output volt by volt
-        edge_V = run.output_V[off] - stage.way * (pass_V[off] - PASS_V)
-        edge = run_at(stage, conditions.pick(owner[off]), edge_V, run.operating.inner[:, off])
-        np.fmin.at(result, owner[off], edge.output_A)
-    near = np.setdiff1d(first, off)
-    np.fmin.at(result, owner[near], run.output_A[near])
+    if len(carries):
+        first = np.arange(len(holds), len(holds) + len(carries))
+        least = np.fmin(result[carries], _edge(stage, conditions.pick(carries), run.pick(first)))
+        result[carries] = carried(least, nominal.most_A[ambient[carries]])
     return result
+
+
+def _beside_most(stage: Stage, nominal: Nominal, share: float) -> tuple[Array, NDArray[np.bool_]]:
+    """Return the output voltages a share of each locus beyond its greatest current, and whether the locus reaches there."""
+    voltages = [nominal.loci.output_V[nominal.loci.of(place)] for place in range(len(nominal.holds_A))]
+    low, high = (
+        np.array([end(one, initial=limit) for one in voltages]) for end, limit in ((np.min, np.inf), (np.max, -np.inf))
+    )
+    near_V: Array = nominal.most_V - stage.way * share * (high - low)
+    return near_V, (low <= near_V) & (near_V <= high)
+
+
+def _edge(stage: Stage, conditions: Conditions, run: Run) -> Array:
+    """Return the currents where the pass device is down to 2 V, from runs nearby, by the secant method."""
+    output_V, output_A = run.output_V.copy(), run.output_A.copy()
+    miss_V = pass_voltage(stage, run) - PASS_V
+    inner = run.operating.inner.copy()
+    # to begin with, the pass voltage follows the output volt by volt
+    slope = np.full(len(output_V), stage.way)
+    far = np.flatnonzero(np.abs(miss_V) > _EDGE_V)
+    for _ in range(_EDGE_STEPS):
+        if not len(far):
+            break
+        step_V = -miss_V[far] * slope[far]
+        output_V[far] += step_V
+        run = run_at(stage, conditions.pick(far), output_V[far], inner[:, far])
+        new_V = pass_voltage(stage, run) - PASS_V
+        change = new_V - miss_V[far]
+        slope[far] = np.where(
+            np.abs(change) > 1e-6, np.clip(step_V / np.where(change == 0.0, 1.0, change), -2.0, 2.0), slope[far]
+        )
+        miss_V[far], output_A[far], inner[:, far] = new_V, run.output_A, run.operating.inner
+        far = far[np.abs(new_V) > _EDGE_V]
+    return output_A

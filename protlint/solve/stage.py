@@ -99,11 +99,11 @@ def sweep_stage(
         Where neither end is solved or neither turns the pass device on.
     """
     place = {node: index for index, node in enumerate(network.nodes)}
-    passing = []
+    passing: list[tuple[int, int]] = []
     for device in network.circuit.devices:
         if device.name in network.circuit.pass_devices:
-            ends = (place[device.nodes[0]], place[device.nodes[-1]])
-            passing.append(ends[::-1] if device.kind in ("pnp", "pmos") else ends)
+            first, last = place[device.nodes[0]], place[device.nodes[-1]]
+            passing.append((last, first) if device.kind in ("pnp", "pmos") else (first, last))
     stage = Stage(network, axes_of(network), short, 1, 1.0, tuple(passing))
     drive = network.circuit.drive
     count = len(ambients_degC)
