@@ -45,7 +45,7 @@ def sections(board: Document) -> list[Section]:
 def held_back(report: Document, gate: str, *, complete: bool = False) -> list[str]:
     """Return why the gate does not hold, in a few words each; an empty list where it holds.
 
-    A waived finding does not count. ``complete`` lets what was not checked count too.
+    A waived finding does not count. ``complete`` lets what was not checked, and limiters that were not judged, count too.
     """
     levels = LEVELS[: LEVELS.index(gate) + 1] if gate in LEVELS else ()
     reasons = []
@@ -53,9 +53,10 @@ def held_back(report: Document, gate: str, *, complete: bool = False) -> list[st
         count = sum(board["summary"][f"{level}s"] for board in boards_of(report))
         if count:
             reasons.append(counted(count, level))
-    unchecked = sum(board["summary"]["not_checked"] for board in boards_of(report))
-    if complete and unchecked:
-        reasons.append(f"{unchecked} not checked")
+    for key in ("not_checked", "not_judged") if complete else ():
+        count = sum(board["summary"][key] for board in boards_of(report))
+        if count:
+            reasons.append(f"{count} {key.replace('_', ' ')}")
     return reasons
 
 
