@@ -73,8 +73,12 @@ _WORDS = {
     "same": "{0} and {1} are one net",
     "busier": "{0} has more parts on it than {1}",
     "no-input": "no capacitor brings a signal onto {0}",
-    "tail": "{0} feeds nothing but emitters or sources",
+    "inner": "{0} leads to no load, only to the emitters of a pair or to bases and gates",
     "undriven": "nothing outside this group drives {0}",
+    "closed": "nothing hangs on {0} that leads out of this group",
+    "held": "nothing hangs on {0} but what leads to this group or to a supply",
+    "npn-follows": "the emitter of an NPN or the source of an N-channel device outside this group drives {0}",
+    "pnp-follows": "the emitter of a PNP or the source of a P-channel device outside this group drives {0}",
 }
 
 

@@ -17,6 +17,7 @@ class Resolved:
 
     rule: Rule
     body: Body
+    bounds: Mapping[str, float]
     unites: tuple[tuple[str, str], ...]
     nets: Mapping[str, tuple[tuple[str, tuple[Test, ...]], ...]]
     mirrored: bool
@@ -64,7 +65,7 @@ def resolve(rules: Mapping[str, Rule], mistakes: Mistakes) -> dict[str, Resolved
         for one in reversed(line):
             rule = rules[one]
             if rule.base is None:
-                resolved[one] = Resolved(rule, rule.body, rule.unites, dict(rule.nets), rule.mirrored, ())
+                resolved[one] = Resolved(rule, rule.body, dict(rule.bounds), rule.unites, dict(rule.nets), rule.mirrored, ())
             elif rule.base in resolved:
                 resolved[one] = _built_on(resolved[rule.base], rule, mistakes)
     return resolved
@@ -75,7 +76,7 @@ def flatten(resolved: Resolved, shapes: Mapping[str, Shape], mistakes: Mistakes)
     patterns = []
     for labels, body in _expand(resolved.body, shapes, mistakes, ()):
         clauses, again = [], []
-        for item in body.items:
+        for item in (_bounded(item, resolved.bounds) for item in body.items):
             if isinstance(item, Clause):
                 clauses.append(item)
             elif isinstance(item, Each):
@@ -91,6 +92,16 @@ def flatten(resolved: Resolved, shapes: Mapping[str, Shape], mistakes: Mistakes)
             )
         )  # fmt: skip
     return patterns + [_mirrored(one) for one in patterns] if resolved.mirrored else patterns
+
+
+def _bounded(item: Item, bounds: Mapping[str, float]) -> Item:
+    """Return an item with the bounds on resistances that its rule sets by role."""
+    if isinstance(item, Clause) and item.role in bounds:
+        return replace(item, under_ohm=bounds[item.role])
+    if isinstance(item, Each):
+        within = [replace(one, under_ohm=bounds.get(one.role, one.under_ohm)) for one in item.clauses]
+        return replace(item, clauses=tuple(within))
+    return item
 
 
 def _mirrored(pattern: Pattern) -> Pattern:
@@ -125,6 +136,8 @@ def _built_on(base: Resolved, rule: Rule, mistakes: Mistakes) -> Resolved:
         if changed == body:
             mistakes.say(clause.form, f"{rule.base} has no {clause.role!r} to join otherwise")
         body = changed
+    if rule.fault:
+        body = replace(body, may=())  # what might be there besides tells nothing about a fault
     names = {gone: kept for kept, gone in rule.joined}
     nets = {**base.nets, **dict(rule.nets)}
     renamed = {
@@ -135,6 +148,7 @@ def _built_on(base: Resolved, rule: Rule, mistakes: Mistakes) -> Resolved:
     return Resolved(
         rule=rule,
         body=_renamed(body, names) + rule.body,
+        bounds={**base.bounds, **dict(rule.bounds)},
         unites=tuple(pair for pair in unites if pair[0] != pair[1]),
         nets=renamed,
         mirrored=base.mirrored or rule.mirrored,
@@ -176,9 +190,7 @@ def _rejoin(body: Body, clause: Clause) -> Body:
     items: list[Item] = []
     for item in body.items:
         if isinstance(item, Clause) and item.role == clause.role:
-            item = replace(
-                item, kinds=clause.kinds or item.kinds, pins=clause.pins or item.pins, ends=clause.ends or item.ends
-            )
+            item = replace(clause, kinds=clause.kinds or item.kinds, place=item.place)
         elif isinstance(item, Either):
             item = replace(item, branches=tuple((name, _rejoin(one, clause)) for name, one in item.branches))
         items.append(item)
@@ -263,7 +275,7 @@ def check_pattern(pattern: Pattern, resolved: Resolved, mistakes: Mistakes) -> N
     for test in pattern.where:
         for name in sorted(set(test.nets()) - bound):
             mistakes.say(resolved.rule.form, f"the test {test} asks about {name}, which no clause joins")
-    for net, choices in pattern.nets.items():
+    for net, choices in pattern.nets.items() if not pattern.fault else ():
         for name, asked in choices:
             for one in {name, *(name for test in asked for name in test.nets())} - known:
                 mistakes.say(resolved.rule.form, f"net {net} is to be {one}, which no clause joins")

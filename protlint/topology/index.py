@@ -50,6 +50,7 @@ class Index:
         self._bit = {
             pair: 1 << place for place, pair in enumerate((kind, pin) for kind in PINS for pin in sorted(PINS[kind]))
         }
+        self._bits: dict[tuple[tuple[str, ...], str | None], int] = {}
         self.mask = self._masks()
         self._open: dict[int, bool] = {}
         self._between: dict[tuple[int, int], list[int]] | None = None
@@ -59,9 +60,13 @@ class Index:
         """Return the board nets that a net here stands for."""
         return self.members.get(net, (net,))
 
-    def bits(self, kinds: Sequence[str], pins: Sequence[str] | None = None) -> int:
+    def bits(self, kinds: tuple[str, ...], pin: str | None = None) -> int:
         """Return the bits that stand in the mask of a net where a part of these kinds has such a pin (any, where None)."""
-        return sum({self._bit[kind, pin] for kind in kinds for pin in pins or PINS[kind] if (kind, pin) in self._bit})
+        known = self._bits.get((kinds, pin))
+        if known is None:
+            wanted = {(kind, one) for kind in kinds for one in PINS[kind] if pin in (None, one)}
+            known = self._bits[kinds, pin] = sum(self._bit[pair] for pair in wanted)
+        return known
 
     def _masks(self) -> list[int]:
         """Return for every net a bit for each (kind, pin) on it, to tell at once what is not there."""

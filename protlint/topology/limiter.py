@@ -43,7 +43,9 @@ class Limiter:
 class FaultMatch:
     """A fault rule that fitted: the fault's name, the sound topology it spoils, and the same bindings as a limiter.
 
-    ``says`` is the rule's sentence with names filled in; ``exchange`` the connections to exchange as (part id, pin role).
+    ``says`` is the rule's sentence with names filled in. The cure is one of: ``exchange`` the connections of each pair,
+    (part id, pin role) each; ``moves`` connections to board nets; ``replaces`` parts by ones of another kind; ``parts_ends``
+    the ends of parts that are on one net and have to be on two, where ``links`` names the links that short them.
     """
 
     fault: str
@@ -51,6 +53,10 @@ class FaultMatch:
     group: Limiter
     says: str
     exchange: tuple[tuple[tuple[str, str], tuple[str, str]], ...]
+    moves: tuple[tuple[tuple[str, str], int], ...] = ()
+    replaces: tuple[tuple[str, str], ...] = ()
+    parts_ends: tuple[str, ...] = ()
+    links: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

@@ -7,13 +7,16 @@ never enumerated and a crowded net is left for last.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 
-from protlint.topology.index import RAIL, Index
+from protlint.topology.index import CROWD, FREE, RAIL, Index
 from protlint.topology.questions import by_flags
 from protlint.topology.steps import NEW, AskStep, BridgeStep, Entry, PartStep, PathStep, Step, Task, is_anchor
 from protlint.topology.terms import ANY, MANY, Clause
+
+LONG = 3
+"""Where a long walk between two bound nets ranks: after what leads only a little way, before a long walk into the open."""
 
 
 @dataclass(slots=True)
@@ -60,20 +63,24 @@ class Planner:
             shared = [place for _, place in anchors if task.clauses[place].kinds in chosen]
             place = shared[0] if shared else min(anchors)[1]
             chosen.add(task.clauses[place].kinds)
-            entry = Entry(task, (), (), tuple(range(len(task.clauses))), tuple(range(len(task.tests))))
-            self._branch(node, *self._element_step(entry, place))
+            self._branch(node, *self._element_step(_whole(task, ()), place))
         return node
 
     def start(self, task: Task, names: Sequence[str], flags: Sequence[int]) -> Node:
         """Return the node where a task goes on from nets that are already bound."""
-        entry = Entry(task, tuple(names), (), tuple(range(len(task.clauses))), tuple(range(len(task.tests))))
-        return self.node([entry], tuple(flags))
+        return self.node([_whole(task, names)], (), flags)
 
-    def node(self, entries: Sequence[Entry], flags: tuple[int, ...]) -> Node:
-        """Return the node for entries whose slots have these flags; what cannot go on without walking a rail drops out."""
+    def node(self, entries: Sequence[Entry], before: Sequence[int], flags: Sequence[int]) -> Node:
+        """Return the node for entries, given the flags of the slots bound before and of those bound just now.
+
+        What cannot go on without walking a rail drops out.
+        """
         node = Node()
+        every = (*before, *flags)
         for entry in entries:
-            chosen = self._next(entry, flags)
+            if flags:
+                entry = entry.with_flags(entry.names[len(before) :], flags)
+            chosen = self._next(entry, every)
             if isinstance(chosen, Entry):
                 node.done.append(chosen)
             elif chosen is not None:
@@ -89,49 +96,51 @@ class Planner:
     def _needs(self, step: Step) -> tuple[tuple[int, int], ...]:
         """Return (slot, bits) pairs: the step leads nowhere unless one of the bits stands in the mask of the slot's net."""
         if isinstance(step, PartStep):
-            return tuple((slot, self.index.bits(step.kinds, (pin,))) for pin, slot in step.known)
+            return tuple((slot, self.index.bits(step.kinds, pin)) for pin, slot in step.known)
         if isinstance(step, AskStep) or (isinstance(step, PathStep) and step.least == 0):
             return ()
         return tuple((slot, self.index.bits(step.kinds)) for slot in (step.a, step.b) if slot != NEW)
 
-    def _next(self, entry: Entry, flags: tuple[int, ...]) -> tuple[Step, Entry] | Entry | None:
+    def _next(self, entry: Entry, flags: Sequence[int]) -> tuple[Step, Entry] | Entry | None:
         """Return the next step and the entry after it, the entry itself where it is fulfilled, None where it cannot be."""
-        task = entry.task
-        bound = {name: slot for slot, name in enumerate(entry.names)}
-        open_tests = []
+        task, bound, free, crowd = entry.task, entry.bound, entry.free, entry.crowd
+        waiting = []
         for place in entry.asked:
-            if task.asks[place] <= bound.keys():
-                answer = by_flags(task.tests[place], {name: flags[bound[name]] for name in task.asks[place]})
-                if answer is None:
-                    asked = tuple(one for one in entry.asked if one != place)
-                    slots = {name: str(bound[name]) for name in task.asks[place]}
-                    return AskStep(task.tests[place].renamed(slots)), _after(entry, asked=asked)
-                if not answer:
-                    return None
-            else:
-                open_tests.append(place)
-        if len(open_tests) < len(entry.asked):
-            entry = _after(entry, asked=tuple(open_tests))
+            if task.asks[place] & ~bound:
+                waiting.append(place)
+                continue
+            slots = {name: entry.names.index(name) for name in task.tests[place].nets()}
+            answer = by_flags(task.tests[place], {name: flags[slot] for name, slot in slots.items()})
+            if answer is None:
+                asked = tuple(one for one in entry.asked if one != place)
+                test = task.tests[place].renamed({name: str(slot) for name, slot in slots.items()})
+                return AskStep(test), entry._replace(asked=asked)
+            if not answer:
+                return None
+        if len(waiting) < len(entry.asked):
+            entry = entry._replace(asked=tuple(waiting))
         if not entry.left:
             return entry
         best: tuple[int, ...] | None = None
         numbers = self._counted(task)
         for place in entry.left:
-            known = [bound[name] for name in task.nets[place] if name in bound]
+            join = task.joins[place]
+            known = join & bound
             if not known:
                 continue
             count = task.clauses[place].count
-            if len(known) == len(task.nets[place]):
-                option = (0, 0, 0 if count is None else count[1], numbers[place], place)
+            flag = FREE if known & free else CROWD if known & crowd else RAIL
+            if known == join:
+                # Whether something is between two nets is asked first, unless it takes a long walk or a crowd to tell.
+                at_once = flag == FREE and (count is None or count[1] == 1)
+                option = (0 if at_once else 1, flag, 0 if at_once else LONG, numbers[place], place)
+            elif flag != RAIL:
+                option = (1, flag, _width(task.clauses[place]), numbers[place], place)
+            elif count is not None and count[0] == 0:
+                # A rail is not walked, but a path of nothing needs no walk.
+                option = (2, flag, 0, numbers[place], place)
             else:
-                flag = min(flags[slot] for slot in known)
-                if flag != RAIL:
-                    option = (1, flag, _width(task.clauses[place]), numbers[place], place)
-                elif count is not None and count[0] == 0:
-                    # A rail is not walked, but a path of nothing needs no walk.
-                    option = (2, flag, 0, numbers[place], place)
-                else:
-                    continue
+                continue
             if best is None or option < best:
                 best = option
         if best is None:
@@ -139,7 +148,7 @@ class Planner:
         place = best[-1]
         if task.clauses[place].count is None:
             return self._element_step(entry, place)
-        return self._path_step(entry, place, bound, flags)
+        return self._path_step(entry, place, flags)
 
     @staticmethod
     def _element_step(entry: Entry, place: int) -> tuple[Step, Entry]:
@@ -166,11 +175,12 @@ class Planner:
                     new.append((pin, _apart(entry.task, name, names)))
                     names.append(name)
             step = PartStep(clause.kinds, tuple(known), tuple(new))
-        return step, _after(entry, place=place, names=names)
+        return step, _after(entry, place, names)
 
     @staticmethod
-    def _path_step(entry: Entry, place: int, bound: Mapping[str, int], flags: tuple[int, ...]) -> tuple[Step, Entry]:
+    def _path_step(entry: Entry, place: int, flags: Sequence[int]) -> tuple[Step, Entry]:
         clause = entry.task.clauses[place]
+        bound = {name: slot for slot, name in enumerate(entry.names)}
         assert clause.ends is not None and clause.count is not None
         first, second = clause.ends
         direction = 1 if clause.along else 0
@@ -186,7 +196,7 @@ class Planner:
         if end == NEW and flags[bound[first]] == RAIL:
             most = 0
         step = PathStep(clause.kinds, bound[first], end, least, min(most, MANY), direction, clause.until_driven, apart)
-        return step, _after(entry, place=place, names=names)
+        return step, _after(entry, place, names)
 
     def _counted(self, task: Task) -> tuple[int, ...]:
         known = self._numbers.get(id(task))
@@ -204,7 +214,7 @@ def _width(clause: Clause) -> int:
     """Return how far a clause may lead: resistors hang on most nets and lead far, other kinds seldom do."""
     if "resistor" not in clause.kinds:
         return 0 if clause.count is None else 1
-    return 2 if clause.count is None or clause.count[1] == 1 else 3
+    return 2 if clause.count is None or clause.count[1] == 1 else LONG + 1
 
 
 def _apart(task: Task, name: str, names: Sequence[str]) -> tuple[int, ...]:
@@ -212,13 +222,12 @@ def _apart(task: Task, name: str, names: Sequence[str]) -> tuple[int, ...]:
     return tuple(slot for slot, other in enumerate(names) if other not in alike)
 
 
-def _after(
-    entry: Entry, *, place: int | None = None, names: Sequence[str] | None = None, asked: tuple[int, ...] | None = None
-) -> Entry:
-    return Entry(
-        task=entry.task,
-        names=entry.names if names is None else tuple(names),
-        found=entry.found if place is None else (*entry.found, place),
-        left=entry.left if place is None else tuple(one for one in entry.left if one != place),
-        asked=entry.asked if asked is None else asked,
-    )
+def _whole(task: Task, names: Sequence[str]) -> Entry:
+    """Return the entry of a task of which nothing is found yet."""
+    return Entry(task, tuple(names), (), tuple(range(len(task.clauses))), tuple(range(len(task.tests))))
+
+
+def _after(entry: Entry, place: int, names: Sequence[str]) -> Entry:
+    """Return the entry with one more clause found."""
+    left = tuple([one for one in entry.left if one != place])
+    return entry._replace(names=tuple(names), found=(*entry.found, place), left=left)

@@ -4,10 +4,10 @@ from __future__ import annotations
 
 from collections.abc import Collection, Mapping
 
-from protlint.topology.index import RAIL, Index
+from protlint.topology.index import CONTROLLED, RAIL, Index
 from protlint.topology.terms import DIRECTED, Test
 
-LATE = frozenset({"no-input", "tail", "undriven"})
+LATE = frozenset({"no-input", "inner", "undriven", "closed", "held", "npn-follows", "pnp-follows"})
 """Questions that can be answered only when every required part is known."""
 
 PASSIVE = frozenset({"resistor", "capacitor", "inductor", "fuse"}) | DIRECTED
@@ -65,8 +65,14 @@ def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int
             return len(index.at[net]) > len(index.at[others[0]])
         case "no-input":
             return _no_input(net, set(nets.values()), index, own)
-        case "tail":
-            return _tail(net, index, own)
+        case "inner":
+            return _inner(net, index, own)
+        case "closed":
+            return _leads_only_to(net, set(nets.values()), index, own)
+        case "held":
+            return _leads_only_to(net, {*nets.values(), *index.voltage_V}, index, own)
+        case "npn-follows" | "pnp-follows":
+            return _followed(net, _FOLLOWERS[test.name], index, own)
         case "undriven":
             return all(element in own or index.kind[element] in PASSIVE for element, _ in index.at[net])
     raise KeyError(test.name)
@@ -82,22 +88,56 @@ def _no_input(net: int, bound: Collection[int], index: Index, own: Collection[in
     return True
 
 
-def _tail(net: int, index: Index, own: Collection[int]) -> bool:
-    """Tell whether a net feeds nothing but emitters or sources, straight or through resistors of their own.
+def _leads_only_to(net: int, ends: Collection[int], index: Index, own: Collection[int]) -> bool:
+    """Tell whether all that hangs on a net besides the match are capacitors, and resistors to some other nets."""
+    for element, _ in index.at[net]:
+        if element in own or index.kind[element] == "capacitor":
+            continue
+        if index.kind[element] != "resistor" or not set(index.terminals[element].values()) - {net} <= ends:
+            return False
+    return True
 
-    That is the tail of a differential pair or the foot of a cascode: a bias current, and no load that needs protection.
+
+def _inner(net: int, index: Index, own: Collection[int]) -> bool:
+    """Tell whether a net leads to transistors only, and so that they are no load: a bias current and no output.
+
+    That is a net with another transistor's base or gate on it, or one that feeds emitters or sources, straight or through a
+    resistor each: the tail of a differential pair, the foot of a cascode. A single MOSFET's source may be a switch behind
+    the limiter, so it is a load.
     """
     if index.flag[net]:
         return False
-    fed = [(element, role) for element, role in index.at[net] if element not in own and index.kind[element] != "capacitor"]
-    if not fed:
-        return False
-    for element, role in fed:
-        if index.kind[element] == "resistor":
-            other = next((one for one in index.terminals[element].values() if one != net), net)
-            beyond = [pair for pair in index.at[other] if pair[0] != element]
-            if index.flag[other] or not beyond or any(pin not in ("emitter", "source") for _, pin in beyond):
-                return False
-        elif role not in ("emitter", "source"):
+    fed: list[tuple[int, str]] = []
+    for element, role in index.at[net]:
+        kind = index.kind[element]
+        if element in own or kind in ("capacitor", *DIRECTED):
+            continue
+        if kind == "resistor":
+            fed += _emitter_behind(element, net, index)
+        elif kind in CONTROLLED:
+            fed.append((element, role))
+        else:
             return False
-    return True
+    if any(role in ("base", "gate") for _, role in fed):
+        return True
+    feeds_emitters = bool(fed) and all(role in ("emitter", "source") for _, role in fed)
+    return feeds_emitters and (len(fed) > 1 or fed[0][1] == "emitter")
+
+
+def _emitter_behind(resistor: int, net: int, index: Index) -> list[tuple[int, str]]:
+    """Return the emitter or source that a resistor leads to where nothing else is there."""
+    other = next((one for one in index.terminals[resistor].values() if one != net), net)
+    if index.flag[other]:
+        return []
+    beyond = [(element, role) for element, role in index.at[other] if element != resistor]
+    return beyond if len(beyond) == 1 and beyond[0][1] in ("emitter", "source") else []
+
+
+_FOLLOWERS = {
+    "npn-follows": (("npn", "emitter"), ("npn-darlington", "emitter"), ("nmos", "source")),
+    "pnp-follows": (("pnp", "emitter"), ("pnp-darlington", "emitter"), ("pmos", "source")),
+}
+
+
+def _followed(net: int, pins: Collection[tuple[str, str]], index: Index, own: Collection[int]) -> bool:
+    return any(element not in own and (index.kind[element], role) in pins for element, role in index.at[net])

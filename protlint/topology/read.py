@@ -31,7 +31,7 @@ from protlint.topology.terms import (
     Test,
 )  # fmt: skip
 
-CURES = ("(exchange ROLE.PIN ROLE.PIN)", "(move ROLE.PIN NET)", "(replace ROLE KIND)", "(remove ROLE)")
+CURES = ("(exchange ROLE.PIN ROLE.PIN)", "(move ROLE.PIN NET)", "(replace ROLE KIND)", "(part ROLE)")
 """The changes a fault may ask for."""
 
 
@@ -67,7 +67,9 @@ class _Reader:
         if name is None:
             return None
         fields: dict[str, Any] = {"name": name, "fault": form.head == "fault", "file": self.file, "form": form}
-        lists: dict[str, list[Any]] = {"instead": [], "rejoined": [], "joined": [], "unites": [], "cure": []}
+        lists: dict[str, list[Any]] = {
+            "instead": [], "rejoined": [], "joined": [], "unites": [], "bounds": [], "cure": [],
+        }  # fmt: skip
         readers: dict[str, Callable[[Form], None]] = {
             "says": lambda one: fields.update(says=" ".join(self.texts(one))),
             "cited": lambda one: fields.update(cited=self.texts(one)),
@@ -76,6 +78,7 @@ class _Reader:
             "mirrored": lambda one: fields.update(mirrored=True),
             "precedence": lambda one: fields.update(precedence=self.number(one, 1) or 0),
             "builds-on": lambda one: self.base(one, fields),
+            "bound": lambda one: lists["bounds"].append(self.bound(one)),
             "unites": lambda one: lists["unites"].append(self.pair(one)),
             "nets": lambda one: fields.update(nets=tuple(self.net_choices(one))),
             "instead-of": lambda one: lists["instead"].append(self.instead(one)),
@@ -86,7 +89,7 @@ class _Reader:
                 "spoils": lambda one: self.base(one, fields),
                 "rejoin": lambda one: lists["rejoined"].append(self.clause(one, rejoins=True)),
                 "joined": lambda one: lists["joined"].append(self.pair(one)),
-                "cure": lambda one: lists["cure"].extend(self.cures(one)),
+                "cure": lambda one: lists["cure"].append(tuple(self.cures(one))),
             }
         rest = []
         for part in form[2:]:
@@ -187,11 +190,7 @@ class _Reader:
         elif head == "count":
             fields["count"] = self.counts(form)
         elif head == "under":
-            text = form[1] if len(form) == 2 else ""
-            try:
-                fields["under_ohm"] = read_quantity(str(text), "resistance")
-            except ValueError as error:
-                self.say(form, str(error))
+            fields["under_ohm"] = self.ohms(form, 1)
         elif head == "place":
             fields["place"] = " ".join(self.texts(form))
         elif head == "when":
@@ -237,6 +236,17 @@ class _Reader:
         role = self.word(form, 1, "a role")
         items = tuple(one for one in map(self.item, self.forms(form, 2)) if one is not None)
         return None if role is None else (role, items, form)
+
+    def bound(self, form: Form) -> tuple[str, float] | None:
+        role, ohms = self.word(form, 1, "a role"), self.ohms(form, 2)
+        return None if role is None or ohms is None else (role, ohms)
+
+    def ohms(self, form: Form, place: int) -> float | None:
+        try:
+            return read_quantity(str(form[place]) if len(form) == place + 1 else "", "resistance")
+        except ValueError as error:
+            self.say(form, str(error))
+            return None
 
     def net_choices(self, form: Form) -> Iterable[tuple[str, tuple[tuple[str, tuple[Test, ...]], ...]]]:
         for one in self.forms(form, 1):

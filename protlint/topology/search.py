@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
+from itertools import chain
 from typing import NamedTuple
 
 from protlint.topology.index import CROWDED, Index
@@ -45,8 +46,8 @@ def search(index: Index, planner: Planner, node: Node, state: State) -> Iterator
                     flags = tuple([flag[net] for net in new_nets])
                     child = branch.children.get(flags)
                     if child is None:
-                        before = tuple([flag[net] for net in nets])
-                        child = branch.children[flags] = planner.node(branch.entries, before + flags)
+                        before = [flag[net] for net in nets]
+                        child = branch.children[flags] = planner.node(branch.entries, before, flags)
                     if not child.done and not child.branches:
                         continue
                     if type(step) is AskStep:
@@ -135,31 +136,32 @@ class _Way:
     elements: Elements
 
 
-def _paths(step: PathStep, state: State, index: Index) -> Iterator[Growth]:
-    """Yield paths: the shortest that is long enough to every end, or every path where the length is fixed."""
+def _paths(step: PathStep, state: State, index: Index) -> Iterable[Growth]:
+    """Return paths: the shortest that is long enough to every end, or every path where the length is fixed."""
     start = state.nets[step.a]
     target = state.nets[step.b] if step.b != NEW else None
+    found: list[Growth] = []
     if step.least == 0 and target in (None, start):
-        yield (() if target is not None else (start,)), (), ()
-    if target == start or step.most == 0:
-        return
+        found.append((() if target is not None else (start,), (), ()))
+    if target == start or step.most == 0 or not index.mask[start] & index.bits(step.kinds):
+        return found
     if step.most == 1 or (target is not None and index.flag[start] and index.flag[target]):
         # Between two crowded nets only what joins them straight is looked for: neither is walked.
-        yield from _single(step, state, index, start, target)
-    else:
-        yield from _ways(step, state, index, start, target)
+        return found + _single(step, state, index, start, target)
+    return chain(found, _ways(step, state, index, start, target))
 
 
-def _single(step: PathStep, state: State, index: Index, start: int, target: int | None) -> Iterator[Growth]:
+def _single(step: PathStep, state: State, index: Index, start: int, target: int | None) -> list[Growth]:
     if step.least > 1:
-        return
+        return []
     elements = index.on_net(start, step.kinds) if target is None else index.between(start, target, step.kinds)
+    found: list[Growth] = []
     for element, net in _onward(step, state, index, elements, (start,)):
         if net == target:
-            yield (), (element,), ()
-            return
+            return [((), (element,), ())]
         if target is None and _is_free_end(net, step, state):
-            yield (net,), (element,), ()
+            found.append(((net,), (element,), ()))
+    return found
 
 
 def _ways(step: PathStep, state: State, index: Index, start: int, target: int | None) -> Iterator[Growth]:

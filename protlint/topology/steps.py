@@ -4,7 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from typing import NamedTuple
 
+from protlint.topology.index import CROWD, FREE
 from protlint.topology.questions import is_late
 from protlint.topology.terms import Clause, Test
 
@@ -61,28 +63,47 @@ Step = PartStep | BridgeStep | PathStep | AskStep
 
 @dataclass(frozen=True, slots=True)
 class Task:
-    """What a search is to fulfil: clauses and early tests, each with the nets it joins or asks about.
+    """What a search is to fulfil: clauses and early tests.
 
+    ``bits`` gives every name a bit; ``joins`` holds for each clause, ``asks`` for each test, the bits of its names.
     ``alike`` gives for a name those that may stand for the same net.
     """
 
     number: int
     clauses: tuple[Clause, ...]
-    nets: tuple[tuple[str, ...], ...]
     tests: tuple[Test, ...]
-    asks: tuple[frozenset[str], ...]
+    bits: Mapping[str, int]
+    joins: tuple[int, ...]
+    asks: tuple[int, ...]
     alike: Mapping[str, frozenset[str]]
 
 
-@dataclass(frozen=True, slots=True)
-class Entry:
-    """A task at some node: names in the order of their slots, clauses in the order found, and what is left of it."""
+class Entry(NamedTuple):
+    """A task at some node: names in the order of their slots, clauses in the order found, and what is left of it.
+
+    ``bound`` holds the bits of the names bound, ``free`` and ``crowd`` of those on free and on crowded nets.
+    """
 
     task: Task
     names: tuple[str, ...]
     found: tuple[int, ...]
     left: tuple[int, ...]
     asked: tuple[int, ...]
+    bound: int = 0
+    free: int = 0
+    crowd: int = 0
+
+    def with_flags(self, names: Sequence[str], flags: Sequence[int]) -> Entry:
+        """Return the entry with some of its names bound to nets of these flags."""
+        bound, free, crowd = self.bound, self.free, self.crowd
+        for name, flag in zip(names, flags, strict=True):
+            bit = self.task.bits.get(name, 0)
+            bound |= bit
+            if flag == FREE:
+                free |= bit
+            elif flag == CROWD:
+                crowd |= bit
+        return Entry(self.task, self.names, self.found, self.left, self.asked, bound, free, crowd)
 
 
 def make_task(
@@ -108,14 +129,26 @@ def make_task(
         for name in others:
             alike.setdefault(name, set()).update(ones)
     early = tuple([test for clause in clauses for test in clause.when] + [test for test in tests if not is_late(test)])
+    joined = [clause.nets() for clause in clauses]
+    asked = [tuple(test.nets()) for test in early]
+    names = dict.fromkeys(name for nets in (*joined, *asked) for name in nets)
+    bits = {name: 1 << place for place, name in enumerate(names)}
     return Task(
         number=number,
         clauses=tuple(clauses),
-        nets=tuple(clause.nets() for clause in clauses),
         tests=early,
-        asks=tuple(frozenset(test.nets()) for test in early),
+        bits=bits,
+        joins=tuple(_union(bits, nets) for nets in joined),
+        asks=tuple(_union(bits, nets) for nets in asked),
         alike={name: frozenset(members) for name, members in alike.items()},
     )
+
+
+def _union(bits: Mapping[str, int], names: Sequence[str]) -> int:
+    union = 0
+    for name in names:
+        union |= bits[name]
+    return union
 
 
 def is_anchor(clause: Clause) -> bool:

@@ -22,7 +22,7 @@ TWO_TERMINAL = frozenset(kind for kind, pins in PINS.items() if len(pins) == 2)
 DIRECTED = frozenset({"diode", "zener"})
 MIRROR = {
     "npn": "pnp", "pnp": "npn", "npn-darlington": "pnp-darlington", "pnp-darlington": "npn-darlington", "nmos": "pmos",
-    "pmos": "nmos", "lowest": "highest", "highest": "lowest",
+    "pmos": "nmos", "lowest": "highest", "highest": "lowest", "npn-follows": "pnp-follows", "pnp-follows": "npn-follows",
 }  # fmt: skip
 """What ``mirrored`` swaps, besides the direction of ``along``."""
 
@@ -36,8 +36,8 @@ ANY = "any"
 """The net name that stands for whatever net there is."""
 
 TESTS: Mapping[str, int] = {
-    "ground": 1, "supply": 1, "lowest": 1, "highest": 1, "apart": 2, "same": 2, "busier": 2, "no-input": 1, "tail": 1,
-    "undriven": 1,
+    "ground": 1, "supply": 1, "lowest": 1, "highest": 1, "apart": 2, "same": 2, "busier": 2, "no-input": 1, "inner": 1,
+    "undriven": 1, "closed": 1, "held": 1, "npn-follows": 1, "pnp-follows": 1,
 }  # fmt: skip
 """Questions about nets, with the number of nets each takes; ``not``, ``or`` and ``and`` combine them."""
 
@@ -190,8 +190,8 @@ class Shape:
 
 @dataclass(frozen=True, slots=True)
 class Cure:
-    """One change that makes a fault sound: ``exchange`` two connections, ``move`` one to a net, ``replace`` a part's kind,
-    ``remove`` a part. A connection is written ``role.pin``."""
+    """One change that makes a fault sound: ``exchange`` two connections, ``move`` one to a net, ``replace`` a part by one of
+    another kind, ``part`` the ends of one that are on one net. A connection is ``role.pin`` or ``role.net``."""
 
     what: str
     of: tuple[str, ...]
@@ -202,7 +202,9 @@ class Rule:
     """A topology or a fault as its file has it, with nothing resolved yet.
 
     ``base`` is the rule it builds on or spoils and ``branches`` the either-branches it keeps of that; ``instead`` maps a
-    role of the base to what stands in its place; ``nets`` maps a report net to (net name, tests) choices.
+    role of the base to what stands in its place; ``bounds`` pairs a role with the ohms its resistance has to stay
+    below; ``nets`` maps a report net to (net name, tests) choices; ``cure`` lists
+    alternatives, of which the first that finds its parts counts.
     """
 
     name: str
@@ -221,6 +223,7 @@ class Rule:
     rejoined: tuple[Clause, ...] = ()
     joined: tuple[tuple[str, str], ...] = ()
     body: Body = Body()
+    bounds: tuple[tuple[str, float], ...] = ()
     unites: tuple[tuple[str, str], ...] = ()
     nets: tuple[tuple[str, tuple[tuple[str, tuple[Test, ...]], ...]], ...] = ()
-    cure: tuple[Cure, ...] = ()
+    cure: tuple[tuple[Cure, ...], ...] = ()

@@ -1,0 +1,125 @@
+"""Limiters drawn wrong: fault rules on the shunts and pass devices that no sound rule claimed."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Sequence
+
+from protlint.board.assemble import is_link
+from protlint.board.graph import Board
+from protlint.topology.fitting import Match
+from protlint.topology.index import Index
+from protlint.topology.language import Rules
+from protlint.topology.limiter import FaultMatch, Limiter
+from protlint.topology.naming import board_net, build_limiter
+from protlint.topology.terms import MIRROR, Cure
+
+Connection = tuple[str, str]
+"""A part's id and the role of its pin."""
+
+
+def find_faults(index: Index, matches: Sequence[Match], rules: Rules, limiters: Sequence[Limiter]) -> tuple[FaultMatch, ...]:
+    """Return the faults of a board, one a shunt, in board order of the shunts, from the matches of fault patterns."""
+    sound = {role: _claimed(limiters, role) for role in ("shunt", "pass", "driver")}
+    carriers, shunts = sound["pass"] | sound["driver"], sound["shunt"]
+    found: dict[tuple[int, ...], Match] = {}
+    for match in sorted(
+        matches, key=lambda one: (-one.required, -rules.resolved[one.pattern.rule].rule.precedence, one.key)
+    ):
+        its_shunts = set(match.elements["shunt"])
+        its_carriers = {*match.elements["pass"], *match.elements.get("driver", ())}
+        # A carrier of a sound limiter has its shunt; what carries the load in one limiter, right or wrong, shunts no other.
+        if its_carriers & (sound["pass"] | sound["driver"] | shunts) or its_shunts & (carriers | shunts):
+            continue
+        found[tuple(sorted(its_shunts))] = match
+        carriers |= its_carriers
+        shunts |= its_shunts
+    return tuple(_fault(found[shunt], index, rules) for shunt in sorted(found))
+
+
+def _claimed(limiters: Sequence[Limiter], role: str) -> set[int]:
+    return {element for limiter in limiters for element in limiter.elements.get(role, ())}
+
+
+def _fault(match: Match, index: Index, rules: Rules) -> FaultMatch:
+    resolved = rules.resolved[match.pattern.rule]
+    group = build_limiter(match, index, (), ())
+    cures = next((cure for cure in resolved.rule.cure if _has_parts(match, cure)), ())
+    exchange, moves, replaces, parted = [], [], [], list[str]()
+    for cure in cures:
+        if cure.what == "exchange":
+            one, other = (_connections(match, index, word) for word in cure.of)
+            exchange += list(zip(one, other, strict=True))
+        elif cure.what == "move":
+            net = board_net(match, cure.of[1], index)
+            moves += [(connection, net) for connection in _connections(match, index, cure.of[0])]
+        elif cure.what == "replace":
+            kind = cure.of[1] if match.pattern.polarity == "n" else MIRROR.get(cure.of[1], cure.of[1])
+            replaces += [(part, kind) for part in _part_ids(match, index, cure.of[0])]
+        else:
+            parted += _part_ids(match, index, cure.of[0])
+    return FaultMatch(
+        fault=match.pattern.rule.split(".")[0],
+        spoils=resolved.ancestors[0],
+        group=group,
+        says=_sentence(resolved.rule.says, match, index),
+        exchange=tuple(exchange),
+        moves=tuple(moves),
+        replaces=tuple(replaces),
+        parts_ends=tuple(parted),
+        links=_links_across(index.board, parted),
+    )
+
+
+def _has_parts(match: Match, cures: Sequence[Cure]) -> bool:
+    return all(match.elements.get(_split(cure.of[0])[0]) for cure in cures)
+
+
+def _split(connection: str) -> tuple[str, str]:
+    """Return the role and the pin (or net) of a connection; a role may have a dot of its own."""
+    role, _, pin = connection.rpartition(".")
+    return (role, pin) if role else (pin, "")
+
+
+def _connections(match: Match, index: Index, word: str) -> list[Connection]:
+    """Return the pins a connection of a cure stands for: by role and pin, or by role and the net the pin is on."""
+    role, pin = _split(word)
+    board = index.board
+    found = []
+    for element in match.elements.get(role, ()):
+        for part in (board.parts[one] for one in board.elements[element].parts):
+            if pin in part.roles:
+                found.append((part.id, pin))
+            elif pin in match.nets:
+                found += [(part.id, name) for name, net in part.roles.items() if index.net_of[net] == match.nets[pin]]
+    return found
+
+
+def _part_ids(match: Match, index: Index, role: str) -> list[str]:
+    board = index.board
+    return [board.parts[part].id for element in match.elements.get(role, ()) for part in board.elements[element].parts]
+
+
+def _sentence(template: str, match: Match, index: Index) -> str:
+    """Return a fault's sentence with parts and nets named."""
+
+    def named(found: re.Match[str]) -> str:
+        word = found[1]
+        parts = _part_ids(match, index, word)
+        if parts:
+            return ", ".join(parts)
+        return index.board.nets[board_net(match, word, index)].name if word in match.nets else found[0]
+
+    return re.sub(r"\{([^{}]+)\}", named, template)
+
+
+def _links_across(board: Board, parts: Sequence[str]) -> tuple[str, ...]:
+    """Return the links that join what the ends of some parts were joined to in the netlist."""
+    links = []
+    for part in board.parts if parts else ():
+        if part.id in parts:
+            ends = {pin.net for pin in part.part.pins}
+            for other in board.parts:
+                if len(ends) > 1 and is_link(other) and ends <= {pin.net for pin in other.part.pins}:
+                    links.append(other.id)
+    return tuple(dict.fromkeys(links))
