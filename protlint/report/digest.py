@@ -134,6 +134,30 @@ def _likeness(limiter: Document, found: Sequence[Document]) -> str:
     return json.dumps([figures, checks, findings])
 
 
+def remarks(board: Document) -> list[str]:
+    """Return what was met while reading, and what is owed to waivers and part data."""
+    read = []
+    for warning in board["warnings"]:
+        place = place_of({**warning, "file": board["netlist"]["file"]})
+        read.append(f"{place}: {warning['message']}{times(warning['count'])}")
+    return [*read, *board["remarks"]]
+
+
+def from_memory(board: Document) -> list[str]:
+    """Name the part types whose figures come from memory, with their parts and the figures."""
+    types: dict[str, tuple[list[str], list[str]]] = {}
+    for limiter in board["limiters"]:
+        for part in limiter["parts"]:
+            if part["from_memory"]:
+                parts, figures = types.setdefault(part["part_number"] or part["id"], ([], []))
+                parts.append(part["id"])
+                figures += part["from_memory"]
+    return [
+        f"{number} ({listed(list(dict.fromkeys(parts)))}): {', '.join(dict.fromkeys(figures))}"
+        for number, (parts, figures) in types.items()
+    ]
+
+
 def unchecked(rows: Sequence[Document]) -> list[tuple[str, str]]:
     """Return what is needed and the checks that need it, each need once."""
     by_need: dict[str, list[str]] = {}

@@ -15,6 +15,7 @@ from protlint import __version__
 from protlint.board.graph import Board, BoardPart
 from protlint.findings import Finding
 from protlint.limits import LimiterLimits
+from protlint.partdata.book import PartEntry
 from protlint.report.shape import CAUTION, Document, summarised
 from protlint.solve.solution import Currents, Loop, Point, Step, Worst
 from protlint.topology.limiter import NETS, ROLES
@@ -23,6 +24,9 @@ if TYPE_CHECKING:
     from protlint.pipeline import Review, ReviewedLimiter
 
 SIGNIFICANT_DIGITS = 6
+
+MEMORY = "memory"
+"""How part data names a source that is none."""
 
 LOOP_KEYS = ("least_damping", "at_Hz", "worst_damping", "low_frequency_gain", "crossover_Hz", "phase_margin_deg")
 
@@ -192,6 +196,8 @@ def _parts(item: ReviewedLimiter, by_id: Mapping[str, BoardPart]) -> list[Docume
                     "value": rounded(part.values.value) if part else None,
                     "unit": UNIT_OF_KIND.get(part.kind) if part else None,
                     "text": part.values.text if part else None,
+                    "data_source": part.entry.source if part and part.entry else None,
+                    "from_memory": _from_memory(part.entry) if part and part.entry else [],
                     "line": part.part.line if part else None,
                     "column": part.part.column if part else None,
                 },
@@ -218,6 +224,12 @@ def _finding(finding: Finding, by_id: Mapping[str, BoardPart]) -> Document:
         "waived": finding.waived,
         "waived_by": finding.waived_by,
     }
+
+
+def _from_memory(entry: PartEntry) -> list[str]:
+    """Name the figures of a part that nobody has held against a data sheet yet."""
+    names = [name for name, rating in entry.ratings.items() if rating.source == MEMORY]
+    return names + (["model"] if entry.model and entry.model_source == MEMORY else [])
 
 
 def _place(part: BoardPart) -> Document:

@@ -7,10 +7,11 @@ from collections.abc import Sequence
 from protlint.findings import LEVELS
 from protlint.report.digest import (
     assumptions,
+    from_memory,
     place_of,
+    remarks,
     sections,
     summary_line,
-    times,
     unchecked,
     waiver_of,
     working_line,
@@ -63,7 +64,8 @@ def _board(board: Document, working: bool, most: int) -> list[str]:
     lines += _findings("Waived", waived, False, most, folded=True)
     lines += _folded("Not checked", [f"- {text}" for text in _not_checked(board)])
     lines += _folded("Assumed", [f"- {text}" for text in assumptions(board)])
-    lines += _folded("Remarks", [f"- {text}" for text in _remarks(board)])
+    lines += _folded("From memory, to be held against a data sheet", [f"- {text}" for text in from_memory(board)])
+    lines += _folded("Remarks", [f"- {text}" for text in remarks(board)])
     return lines
 
 
@@ -115,14 +117,6 @@ def _not_checked(board: Document) -> list[str]:
         texts += [f"{limiter['id']}: {checks}: needs {need}" for need, checks in unchecked(limiter["not_checked"])]
         texts += [f"{limiter['id']}: could not be solved: {limiter['not_solved']}"] if limiter["not_solved"] else []
     return texts
-
-
-def _remarks(board: Document) -> list[str]:
-    read = []
-    for warning in board["warnings"]:
-        place = place_of({**warning, "file": board["netlist"]["file"]})
-        read.append(f"{place}: {warning['message']}{times(warning['count'])}")
-    return [*read, *board["remarks"]]
 
 
 def _unread(errors: Sequence[Document]) -> list[str]:

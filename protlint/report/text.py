@@ -10,10 +10,11 @@ from protlint.report.digest import (
     Section,
     alike,
     assumptions,
+    from_memory,
     place_of,
+    remarks,
     sections,
     summary_line,
-    times,
     unchecked,
     waiver_of,
 )
@@ -56,8 +57,9 @@ def _board(board: Document, colour: bool) -> list[str]:
     for group in alike(sections(board)):
         limiter, name, found = group[0]
         lines += ["", *_section(limiter, name, found, colour), *_alike(group, colour)]
-    lines += _assumed(board, colour)
-    lines += _reading(board, colour)
+    lines += _listing("Assumed", assumptions(board), colour)
+    lines += _listing("From memory, to be held against a data sheet", from_memory(board), colour)
+    lines += _listing("Remarks", remarks(board), colour)
     return lines
 
 
@@ -220,25 +222,12 @@ def _not_checked(rows: Sequence[Document], colour: bool) -> list[str]:
     return lines
 
 
-def _assumed(board: Document, colour: bool) -> list[str]:
-    texts = assumptions(board)
+def _listing(title: str, texts: Sequence[str], colour: bool) -> list[str]:
+    """Return texts as items under a title, or nothing for none."""
     if not texts:
         return []
-    lines = ["", painted("Assumed", "heading", colour=colour)]
-    for text in texts:
-        lines += wrapped(text, indent=4, first="  - ")
-    return lines
-
-
-def _reading(board: Document, colour: bool) -> list[str]:
-    """Say what was met while reading, and what the waivers file is owed."""
-    lines: list[str] = []
-    for warning in board["warnings"]:
-        place = place_of({**warning, "file": board["netlist"]["file"]})
-        lines += wrapped(f"{place}: {warning['message']}{times(warning['count'])}", indent=4, first="  - ")
-    for remark in board["remarks"]:
-        lines += wrapped(remark, indent=4, first="  - ")
-    return ["", painted("Remarks", "heading", colour=colour), *lines] if lines else []
+    items = [line for text in texts for line in wrapped(text, indent=4, first="  - ")]
+    return ["", painted(title, "heading", colour=colour), *items]
 
 
 def _together(report: Document, colour: bool) -> list[str]:

@@ -41,6 +41,7 @@ def test_what_a_person_needs_is_there() -> None:
         "node N3 floats",
         "resistors that state no tolerance have 1 %",
         "lamp.edf:12:5",
+        "QSN1 (Q11): vceo",
     ):
         assert expected in text
     assert CAUTION in " ".join(text.split())

@@ -13,6 +13,7 @@ from protlint.board.graph import Board, BoardNet, BoardPart, Element, Supply, Va
 from protlint.findings import Finding, NotChecked, Warning, WorkingLine, identifying_parts, stamp_fingerprints
 from protlint.limits import LimiterLimits, Limits, Range
 from protlint.netlist.model import Net, Netlist, Part, Pin, Property
+from protlint.partdata.book import Figure, PartEntry
 from protlint.pipeline import Review, ReviewedLimiter
 from protlint.solve.bench import Bench
 from protlint.solve.circuit import Circuit, Device, Drive
@@ -41,6 +42,10 @@ HOSTILE = (
 """Texts a netlist may hold that must not act in any face."""
 
 DRIVE_ASSUMED = "the drive DRV is taken as stiff, from 0 V to 12 V"
+
+ENTRY = PartEntry(
+    "QSN1", "npn", ratings={"vceo": Figure(40.0, "memory"), "ic": Figure(0.2, "a data sheet")}, source="a data sheet"
+)
 
 KINDS = {"pass": "npn", "shunt": "npn", "sense": "resistor", "base_stop": "resistor", "drive": "resistor"}
 VALUES = {"sense": 1.0, "base_stop": 220.0, "drive": 1000.0}
@@ -186,7 +191,7 @@ def _board(names: Mapping[str, str]) -> Board:
             roles_from="port names",
             part_number="QSN1" if KINDS[role] == "npn" else None,
             values=Values(text="1R", value=VALUES.get(role)),
-            entry=None,
+            entry=ENTRY if role == "shunt" else None,
         )
         for place, (role, part) in enumerate(zip(KINDS, parts, strict=True))
     )
