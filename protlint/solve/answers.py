@@ -103,6 +103,9 @@ def _answers(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...]) -
         at_carry=carry[0] if carry else None,
         high_short=points(stage, ranges.high_short, ambients),
         high_worst=points(stage, ranges.high_worst, ambients),
+        high_locus=tuple(
+            points(stage, ranges.high_locus, np.flatnonzero(ranges.high_owner == place).tolist()) for place in ambients
+        ),
         sensitivities=_sensitivities(stage, nominal),
         regulates=regulation(stage, nominal, USUAL) if stage.network.circuit.regulates else None,
         corners=_corner_steps(stage, ranges),

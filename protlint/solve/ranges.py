@@ -34,13 +34,15 @@ _EDGE_STEPS = 4
 @dataclass(frozen=True, slots=True)
 class Ranges:
     """Ranges by kind, each (2, ambients), low then high, NaN where there is none; the corners of holds (2, axes, ambients),
-    low then high; and the runs, one lane an ambient, at the high corner of holds: into the short, and at the point of
-    greatest pass dissipation."""
+    low then high; and at the high corner of holds the runs into the short and at the point of greatest pass dissipation, one
+    lane an ambient, and the run along the locus with each lane's ambient (an index)."""
 
     by_kind: dict[str, Array]
     holds_corner: Array
     high_short: Run
     high_worst: Run
+    high_locus: Run
+    high_owner: IntArray
 
 
 def find_ranges(stage: Stage, nominal: Nominal) -> Ranges:
@@ -69,11 +71,15 @@ def find_ranges(stage: Stage, nominal: Nominal) -> Ranges:
     by_kind["most"][1] = np.fmax(by_kind["most"][1], by_kind["holds"][1])
     by_kind = {kind: np.stack((low * (1.0 - _ROUNDING), high * (1.0 + _ROUNDING))) for kind, (low, high) in by_kind.items()}
     high = np.arange(4 * ambients, 5 * ambients)
+    along = np.flatnonzero(np.isin(loci.owner, high))
+    locus = run_at(stage, conditions.pick(loci.owner[along]), loci.output_V[along], loci.inner[:, along])
     return Ranges(
         by_kind=by_kind,
         holds_corner=holds,
         high_short=run_at(stage, conditions.pick(high), None, grid[:, 0, high]),
-        high_worst=_hottest(stage, conditions, loci, high, grid[:, 0, high]),
+        high_worst=_hottest(stage, conditions, loci, high, along, locus, grid[:, 0, high]),
+        high_locus=locus,
+        high_owner=loci.owner[along] - 4 * ambients,
     )
 
 
@@ -88,10 +94,11 @@ def _from_loci(loci: Loci, choose: Callable[[Loci, int], int | None], first: int
     return result
 
 
-def _hottest(stage: Stage, conditions: Conditions, loci: Loci, chosen: IntArray, start: Array) -> Run:
-    """Return the run at each chosen condition's point of greatest pass dissipation."""
-    mine = np.flatnonzero(np.isin(loci.owner, chosen))
-    run = run_at(stage, conditions.pick(loci.owner[mine]), loci.output_V[mine], loci.inner[:, mine])
+def _hottest(
+    stage: Stage, conditions: Conditions, loci: Loci, chosen: IntArray, mine: IntArray, run: Run, start: Array
+) -> Run:
+    """Return the run at each chosen condition's point of greatest pass dissipation; ``run`` is along their loci, the points
+    ``mine``."""
     power = np.nan_to_num(pass_power(stage, run), nan=-np.inf)
     at_V, begin = np.full(len(chosen), np.nan), start.copy()
     for column, condition in enumerate(chosen):

@@ -151,6 +151,8 @@ class Solution:
     """The held short at each ambient with every corner set for the most current."""
     high_worst: tuple[Point, ...] = ()
     """The point of greatest pass dissipation at each ambient, same corner."""
+    high_locus: tuple[tuple[Point, ...], ...] = ()
+    """The locus at each ambient, same corner, from the short outwards."""
     sensitivities: tuple[Sensitivity, ...] = ()
     """Of holds at usual ambient: relative per relative change of a resistor, B_F, supply or drive end; per volt of V_BE."""
     regulates: Regulates | None = None
