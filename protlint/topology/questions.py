@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection, Mapping
+from collections.abc import Collection, Mapping, Set
 
 from protlint.topology.index import CONTROLLED, RAIL, Index
 from protlint.topology.terms import DIRECTED, Test
@@ -88,7 +88,7 @@ def _no_input(net: int, bound: Collection[int], index: Index, own: Collection[in
     return True
 
 
-def _leads_only_to(net: int, ends: Collection[int], index: Index, own: Collection[int]) -> bool:
+def _leads_only_to(net: int, ends: Set[int], index: Index, own: Collection[int]) -> bool:
     """Tell whether all that hangs on a net besides the match are capacitors, and resistors to some other nets."""
     for element, _ in index.at[net]:
         if element in own or index.kind[element] == "capacitor":
