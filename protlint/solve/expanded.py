@@ -52,9 +52,10 @@ class Expanded:
     ``nodes`` names the unknowns, then the known nodes in the network's order. ``resistances`` has a row for each resistor of
     the network (zero for its inductors), then one for each of ``series``. Rows of ``junctions`` and of device stores are
     turned round for mirror types, so that their voltages are those of NPN and N-channel devices. ``store_of`` says for each
-    device store which of all the groups' stores, laid out group by group and kind by kind, it is; ``cross`` are the (row,
-    column) pairs of stores of one bipolar whose charges depend on each other. ``passive`` are the capacitors and inductors
-    behind the last stores. ``constant`` (unknowns, unknowns) holds the leaks and the inductors' coupling.
+    device store which of all the groups' stores, laid out group by group and kind by kind, it is; ``store_owner`` whose each
+    store is; ``cross`` are the (row, column) pairs of stores of one bipolar whose charges depend on each other. ``passive``
+    are the capacitors and inductors behind the last stores. ``constant`` (unknowns, all nodes) holds the leaks and the
+    inductors' coupling.
     """
 
     network: Network
@@ -65,6 +66,7 @@ class Expanded:
     junctions: Array
     stores: Array
     store_of: tuple[int, ...]
+    store_owner: tuple[str, ...]
     cross: tuple[tuple[int, int], ...]
     passive: tuple[Device, ...]
     constant: Array
@@ -84,6 +86,7 @@ class _Rows:
     junctions: list[Ends] = field(default_factory=list)
     stores: list[Ends] = field(default_factory=list)
     store_of: list[int] = field(default_factory=list)
+    store_owner: list[str] = field(default_factory=list)
     cross: list[tuple[int, int]] = field(default_factory=list)
 
 
@@ -122,9 +125,10 @@ def expand(network: Network, *, output: Output = "held", split: str | None = Non
     nodes = (*rows.inner, *(_current(device) for device in inductors), *known)
     index = {node: position for position, node in enumerate(nodes)}
     count = len(nodes) - len(known)
-    constant = np.diag([NODE_LEAK_S] * len(rows.inner) + [0.0] * len(inductors))
-    for node in lone:
-        constant[index[node], index[node]] = LONE_LEAK_S
+    constant = np.zeros((count, len(nodes)))
+    for place, node in enumerate(rows.inner):
+        constant[place, place] = LONE_LEAK_S if node in lone else NODE_LEAK_S
+    rows.store_owner += [device.name for device in passive]
     for device in passive:
         if device.kind != "inductor":
             rows.stores.append((device.nodes[0], device.nodes[1]))
@@ -132,9 +136,9 @@ def expand(network: Network, *, output: Output = "held", split: str | None = Non
         own = index[_current(device)]
         rows.stores.append((_current(device), ""))
         for node, sign in zip(device.nodes, (1.0, -1.0), strict=True):
+            constant[own, index[node]] += sign
             if index[node] < count:
                 constant[index[node], own] += sign
-                constant[own, index[node]] += sign
     resistors = [
         ("", "") if device.kind == "inductor" else (device.nodes[0], device.nodes[1]) for device in network.resistors
     ]
@@ -147,6 +151,7 @@ def expand(network: Network, *, output: Output = "held", split: str | None = Non
         junctions=_incidence(rows.junctions, index),
         stores=_incidence(rows.stores, index),
         store_of=tuple(rows.store_of),
+        store_owner=tuple(rows.store_owner),
         cross=tuple(rows.cross),
         passive=passive,
         constant=constant,
@@ -176,11 +181,13 @@ def _add_group(rows: _Rows, position: int, group: Group, place: int, split: str 
     """Add a group's inner nodes, series resistances, junctions and stores; return the layout's next free place."""
     inner = [_inner_nodes(rows, position, group, row, split) for row in range(len(group.devices))]
     count = len(inner)
+    names = [device.name for device in group.devices]
     if group.family == "diode":
         ends = [(node["A"], node["K"]) for node in inner]
         rows.junctions += ends
         rows.stores += ends
         rows.store_of += range(place, place + count)
+        rows.store_owner += names
         return place + count
     if group.family == "drive":
         return place
@@ -198,6 +205,7 @@ def _add_group(rows: _Rows, position: int, group: Group, place: int, split: str 
     rows.stores += control + other + [ends for ends, is_wanted in zip(third, wanted, strict=True) if is_wanted]
     rows.store_of += range(place, place + 2 * count)
     rows.store_of += [place + 2 * count + row for row in range(count) if wanted[row]]
+    rows.store_owner += names + names + [name for name, is_wanted in zip(names, wanted, strict=True) if is_wanted]
     return place + 3 * count
 
 

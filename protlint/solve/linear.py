@@ -124,13 +124,25 @@ def passive_values(expanded: Expanded) -> Array:
 def conductance_matrix(expanded: Expanded, shot: Snapshot) -> Array:
     """Return G (lanes, unknowns, unknowns)."""
     count = expanded.unknown
-    rows = expanded.resistances[:, :count]
-    matrix: Array = np.einsum("rl,ri,rj->lij", shot.conductance, rows, rows, optimize=True) + expanded.constant
-    ports = expanded.junctions[:, :count]
-    for group, slope in zip(expanded.network.groups, shot.slopes, strict=True):
-        own = ports[group.rows].reshape(group.ports, -1, count)
-        matrix += np.einsum("pqdl,pdi,qdj->lij", slope, own, own, optimize=True)
+    rows = np.concatenate((expanded.resistances, expanded.junctions))[:, :count]
+    matrix: Array = rows.T @ (row_conductances(expanded, shot) @ rows) + expanded.constant[:, :count]
     return matrix
+
+
+def row_conductances(expanded: Expanded, shot: Snapshot) -> Array:
+    """Return what a voltage across each row draws through each row: (lanes, rows, rows), resistances, then junctions."""
+    first, lanes = shot.conductance.shape
+    rows = first + len(expanded.junctions)
+    between = np.zeros((lanes, rows, rows))
+    diagonal = np.arange(first)
+    between[:, diagonal, diagonal] = shot.conductance.T
+    for group, slope in zip(expanded.network.groups, shot.slopes, strict=True):
+        members = np.arange(slope.shape[2])
+        places = [first + group.rows.start + port * len(members) + members for port in range(group.ports)]
+        for port, own in enumerate(places):
+            for other, controlling in enumerate(places):
+                between[:, own, controlling] = slope[port, other].T
+    return between
 
 
 def store_matrix(expanded: Expanded, shot: Snapshot) -> Array:

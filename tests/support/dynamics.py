@@ -158,3 +158,45 @@ def simulated_gain(circuit: Circuit, frequency_Hz: Sequence[float], *, output_V:
     T_v, T_i = -values_V, values_A / (1.0 - values_A)
     gain: np.ndarray = (T_v * T_i - 1.0) / (T_v + T_i + 2.0)
     return gain
+
+
+def simulated_step(
+    circuit: Circuit, *, begin_V: float, short_V: float, drive_V: float, until_s: float, points: int = 4000
+) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Run ngspice through the step into the short in 100 ns; return times, output currents into the circuit, and the power
+    into the output device's collector and base."""
+    passing = next(device for device in circuit.devices if device.name == circuit.pass_devices[0])
+    static = [device for device in circuit.devices if device.kind not in ("capacitor", "inductor")]
+    number = static.index(passing)
+    output = ngspice._node(circuit.output)
+    lines = [
+        f"voutput {output} 0 pwl(0 {begin_V!r} 100n {short_V!r})" if line.startswith("voutput ") else line
+        for line in moving_deck(circuit, output_V=begin_V, drive_V=drive_V)
+    ]
+    collector, base, emitter = (f"v({ngspice._node(node)})" for node in passing.nodes)
+    # the branch voltages of the device, and its terminal currents as the simulator has them
+    power = f"({collector}-{emitter})*@q{number}[ic]+({base}-{emitter})*@q{number}[ib]"
+    longest = repr(until_s / points)
+    with tempfile.TemporaryDirectory() as folder:
+        data = Path(folder) / "out.data"
+        commands = (
+            f"save all @q{number}[ic] @q{number}[ib]",
+            f"tran {longest} {until_s!r} 0 {longest}",
+            f"let power = {power}",
+            f"wrdata {data} i(voutput) power",
+        )
+        printed = run_deck(lines, commands)
+        assert data.exists(), printed
+        rows = np.loadtxt(data)
+    return rows[:, 0], -rows[:, 1], rows[:, 3]
+
+
+def last_above(times: np.ndarray, currents: np.ndarray, level: float) -> float:
+    """Return the last time a current falls through a level, 0 where it never was above."""
+    above = np.flatnonzero(currents > level)
+    if not len(above):
+        return 0.0
+    last = int(above[-1])
+    assert last + 1 < len(currents), "the run ended above the level"
+    share = (currents[last] - level) / (currents[last] - currents[last + 1])
+    return float(times[last] + share * (times[last + 1] - times[last]))

@@ -1,0 +1,264 @@
+"""The step into the short: how long the limiter lets more through than it holds, how much, and whether it settles.
+
+With the drive at its on end, the output goes from its working voltage, or from where pass device and sense resistance
+together have 2 V, to the short in 100 ns; the circuit follows by ``protlint.solve.motion``. The delay ends the last time the
+output current falls below 1.1 times holds.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+
+from protlint.solve.circuit import Circuit
+from protlint.solve.devices import Array
+from protlint.solve.expanded import Expanded, expand
+from protlint.solve.lanes import parameters
+from protlint.solve.linear import condition, passive_values, unfold
+from protlint.solve.loop import USUAL, Held, hold
+from protlint.solve.motion import Instant, Motion, at_rest, integrate
+from protlint.solve.network import compile_network
+from protlint.solve.parameters import CircuitError
+from protlint.solve.solution import Step
+from protlint.solve.stage import run_stage
+from protlint.solve.wired import linearise, look, wired_frequencies
+
+RAMP_S = 100e-9
+OVER = 1.1
+"""Times holds; the delay lasts until the output current is below for good."""
+BEGIN_V = 2.0
+"""What pass device and sense together have where no working output voltage is stated."""
+
+CLOSE_V, CLOSE_SHARE = 2e-3, 0.01
+"""At rest for good: every junction and store this near its final voltage, the current this near holds."""
+MOST_CROSSINGS = 40
+"""A current that has risen past the level this often swings on."""
+MOST_STEPS = 20000
+SWINGS = 10.0
+"""Periods of a growing mode that are followed."""
+
+
+@dataclass(frozen=True, slots=True)
+class Course:
+    """What is read off a moment: time, output current the limiter's way, and the power into each pass device."""
+
+    time_s: float
+    output_A: float
+    pass_W: Array
+
+
+@dataclass(frozen=True, slots=True)
+class Trial:
+    """A step to follow: the motion, where it begins and ends, holds, what reads a moment, and the slowest mode that grows at
+    the end (None: all decay)."""
+
+    expanded: Expanded
+    motion: Motion
+    start: Instant
+    final: Array
+    holds_A: float
+    read: Callable[[Instant], Course]
+    grows_Hz: float | None
+
+
+def solve_step(circuit: Circuit, ambients_degC: tuple[float, float, float], *, short: str | None = None) -> Step | str:
+    """Return the answers of the step into the short at usual ambient, parts as drawn, or the reason why there are none.
+
+    ``short`` is the net the output is shorted to, by default the one of ``circuit.shorts`` with the greatest holds. The
+    energy is what goes into the pass device that takes the most until the delay is over. Where the current swings on, delay
+    and energy are None.
+    """
+    try:
+        return _followed(prepare_step(circuit, ambients_degC, short))
+    except CircuitError as reason:
+        return str(reason)
+
+
+def rc_delay(R: float, C: float, before: float, fault: float) -> float:
+    """Return the time (s) in which an RC at the shunt's base reaches its turn-on voltage: R C ln((m - p) / (m - 1)).
+
+    The first-order answer of any textbook on circuits to a step, for working by hand.
+
+    Parameters
+    ----------
+    R : resistance into the base, ohm
+    C : capacitance from base to emitter, F
+    before, fault : p and m, the drop across the sense resistance before and in the fault, by the turn-on voltage
+
+    Returns
+    -------
+    The delay; infinite for a fault that does not reach the turn-on voltage, 0 where it was reached before.
+
+    Examples
+    --------
+    >>> round(rc_delay(1e3, 1e-6, 0.0, 2.0) * 1e3, 2)
+    0.69
+    """
+    if fault <= 1.0:
+        return math.inf
+    return R * C * math.log(max(fault - before, fault - 1.0) / (fault - 1.0))
+
+
+def prepare_step(circuit: Circuit, ambients_degC: tuple[float, float, float], short: str | None = None) -> Trial:
+    """Return the step into the short at usual ambient, ready to be followed.
+
+    Raises
+    ------
+    CircuitError
+        Where there is none: missing part data, no operating point, no output voltage to begin from.
+    """
+    network = compile_network(circuit)
+    expanded = expand(network)
+    held = hold(network, ambients_degC, short)
+    usual = np.array([USUAL])
+    final_run = held.short
+    begin_V = circuit.output_V if circuit.output_V is not None else _begin_V(held)
+    begin = run_stage(held.stage, final_run.lanes.ambient_K[usual], output_V=np.array([begin_V]))
+    if not begin.operating.converged[0]:
+        raise CircuitError(f"no operating point was found with the output at {begin_V:.3g} V to begin the step from")
+    p = parameters(network, begin.lanes)
+    at = condition(expanded, p, begin.lanes.ambient_K)
+    final = unfold(expanded, final_run.operating.node_V[:, usual], final_run.operating.inner[:, usual], p)[:, 0]
+    first = unfold(expanded, begin.operating.node_V, begin.operating.inner, p)[:, 0]
+    output, count = expanded.index(circuit.output), expanded.unknown
+    short_V = float(final[output])
+
+    def known_V(time_s: float) -> Array:
+        voltages = final[count:].copy()
+        voltages[output - count] = begin_V + (short_V - begin_V) * min(1.0, time_s / RAMP_S)
+        return voltages
+
+    none = np.zeros(count)
+    motion = Motion(expanded, at, passive_values(expanded), known_V, lambda time_s: none)
+    wired = expand(network, output="wired")
+    s = wired_frequencies(linearise(wired, look(wired, final_run, usual)), 0.0)[0]
+    growing = np.abs(s[np.isfinite(s) & (s.real > 0.0)])
+    return Trial(
+        expanded=expanded,
+        motion=motion,
+        start=at_rest(motion, first),
+        final=final,
+        holds_A=float(final_run.output_A[USUAL]),
+        read=_reader(expanded, held.stage.way),
+        grows_Hz=float(growing.min() / (2.0 * np.pi)) if len(growing) else None,
+    )
+
+
+def _begin_V(held: Held) -> float:
+    """Return the output voltage that leaves pass device and sense resistance together 2 V."""
+    stage, circuit = held.stage, held.stage.network.circuit
+    ends = _passing_ends(circuit)
+    if not ends:
+        raise CircuitError("the pass device and its sense resistance are not in one current path: output")
+    place = {node: index for index, node in enumerate(stage.network.nodes)}
+    short_V = float(held.short.output_V[USUAL])
+    low_V, high_V = circuit.output_reach_V
+    low_V, high_V = min(low_V, short_V), max(high_V, short_V)
+    far_V = high_V if stage.way < 0.0 else low_V
+    inner = held.short.operating.inner[:, [USUAL]]
+    left_V, right_V = short_V, far_V
+    for _ in range(2):
+        at_V = np.linspace(left_V, right_V, 17)
+        ambient_K = np.full(len(at_V), held.short.lanes.ambient_K[USUAL])
+        run = run_stage(stage, ambient_K, output_V=at_V, start=np.broadcast_to(inner, (len(inner), len(at_V))))
+        node_V = run.operating.node_V
+        across = np.min([np.abs(node_V[place[one]] - node_V[place[other]]) for one, other in ends], axis=0)
+        under = np.flatnonzero((across < BEGIN_V) & run.operating.converged)
+        if not len(under) or under[0] == 0:
+            raise CircuitError(f"no output voltage leaves pass device and sense resistance {BEGIN_V:g} V: output")
+        right = int(under[0])
+        left_V, right_V = float(at_V[right - 1]), float(at_V[right])
+        inner = run.operating.inner[:, [right - 1]]
+        share = (across[right - 1] - BEGIN_V) / (across[right - 1] - across[right])
+    return left_V + float(share) * (right_V - left_V)
+
+
+def _passing_ends(circuit: Circuit) -> list[tuple[str, str]]:
+    """Return, for each pass device with a sense resistance at its common terminal, the outer ends of the two."""
+    nodes = {device.name: device.nodes for device in circuit.devices}
+    ends = []
+    for name in circuit.pass_devices:
+        first, common = nodes[name][0], nodes[name][-1]
+        for sense in circuit.sense:
+            if common in nodes[sense]:
+                far = nodes[sense][1] if nodes[sense][0] == common else nodes[sense][0]
+                ends.append((first, far))
+    return ends
+
+
+def _followed(trial: Trial) -> Step:
+    """Follow a step until it rests, or swings on, and read its figures."""
+    level_A = OVER * trial.holds_A
+    course = [trial.read(trial.start)]
+    crossings = 0
+    until_s = math.inf if trial.grows_Hz is None else RAMP_S + SWINGS / trial.grows_Hz
+    rests = False
+    for instant in integrate(trial.motion, trial.start, (RAMP_S,)):
+        course.append(trial.read(instant))
+        crossings += course[-2].output_A <= level_A < course[-1].output_A
+        if instant.time_s > RAMP_S and trial.grows_Hz is None and _rests(trial, instant, course[-1]):
+            rests = True
+            break
+        if crossings > MOST_CROSSINGS or instant.time_s > until_s or len(course) > MOST_STEPS:
+            break
+    peak_A = max(trial.holds_A, *(one.output_A for one in course))
+    last = max((place for place, one in enumerate(course) if one.output_A > level_A), default=None)
+    quiet = last is None or course[last].time_s < 0.5 * course[-1].time_s
+    if trial.grows_Hz is not None or crossings > MOST_CROSSINGS or not (rests or quiet):
+        return Step(settles=False, delay_s=None, peak_A=peak_A, pass_energy_J=None)
+    if last is None or last + 1 == len(course):
+        return Step(settles=True, delay_s=0.0, peak_A=peak_A, pass_energy_J=0.0)
+    before, after = course[last], course[last + 1]
+    share = (before.output_A - level_A) / (before.output_A - after.output_A)
+    delay_s = before.time_s + share * (after.time_s - before.time_s)
+    times = np.array([one.time_s for one in course[: last + 1]] + [delay_s])
+    powers = np.array([one.pass_W for one in course[: last + 1]] + [before.pass_W + share * (after.pass_W - before.pass_W)])
+    energy = 0.5 * (np.diff(times)[:, None] * (powers[:-1] + powers[1:])).sum(axis=0)
+    return Step(settles=True, delay_s=delay_s, peak_A=peak_A, pass_energy_J=float(energy.max(initial=0.0)))
+
+
+def _reader(expanded: Expanded, way: float) -> Callable[[Instant], Course]:
+    """Return what reads the output current and the power into each pass device's terminals off a moment."""
+    rows = np.concatenate((expanded.resistances, expanded.junctions))
+    output = expanded.index(expanded.network.circuit.output)
+    into, stored = rows[:, output], expanded.stores[:, output]
+    of_rows, of_stores = _rows_of_passing(expanded)
+
+    def read(instant: Instant) -> Course:
+        output_A = float(into @ instant.through_A + stored @ instant.charge_A)
+        power = of_rows @ (instant.through_A * (rows @ instant.voltages))
+        power += of_stores @ (instant.charge_A * (expanded.stores @ instant.voltages))
+        return Course(instant.time_s, way * output_A, power)
+
+    return read
+
+
+def _rows_of_passing(expanded: Expanded) -> tuple[Array, Array]:
+    """Return which rows of resistances and junctions, and which stores, lie inside each pass device (devices, rows), as 0
+    and 1."""
+    network, first = expanded.network, len(expanded.resistances)
+    owners = [network.groups[series.group].devices[series.row].name for series in expanded.series]
+    rows, stores = [], []
+    for group in network.groups:
+        for row, device in enumerate(group.devices):
+            if device.name not in network.circuit.pass_devices:
+                continue
+            inside = np.zeros(first + len(expanded.junctions))
+            inside[[first + group.rows.start + port * len(group.devices) + row for port in range(group.ports)]] = 1.0
+            for index, owner in enumerate(owners):
+                inside[len(network.resistors) + index] = float(owner == device.name)
+            rows.append(inside)
+            stores.append([float(owner == device.name) for owner in expanded.store_owner])
+    return np.array(rows).reshape(len(rows), -1), np.array(stores).reshape(len(rows), -1)
+
+
+def _rests(trial: Trial, instant: Instant, at: Course) -> bool:
+    """Tell whether a moment is so near the held short that only its own modes, which all decay, are left."""
+    expanded = trial.expanded
+    inductors = sum(device.kind == "inductor" for device in expanded.passive)
+    stores = expanded.stores[: len(expanded.stores) - inductors]
+    away = np.concatenate((expanded.junctions, stores)) @ (instant.voltages - trial.final)
+    return bool(np.abs(away).max(initial=0.0) < CLOSE_V) and abs(at.output_A / trial.holds_A - 1.0) < CLOSE_SHARE
