@@ -132,7 +132,7 @@ class Form(list[Any]):
         return self.places.error(message, self.offset)
 
 
-class _Table(dict[str, Any]):
+class _Table(dict[str | None, Any]):
     """A mapping that asks ``make`` for what it lacks, once a key."""
 
     def __init__(self, make: Callable[[str], Any]) -> None:
@@ -151,7 +151,8 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
     ----------
     text : the whole text.
     file : the file's name in errors.
-    reducers : a list whose head is a key here is replaced, as it closes, by what the function makes of it.
+    reducers : a list whose head is a key here is replaced, as it closes, by what the function makes of it; where there are
+        any, lists that begin with no word are passed over.
     """
 
     def __init__(
@@ -201,49 +202,49 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
         InputError : unbalanced parentheses, an unterminated string, nesting past :data:`NESTING_LIMIT`.
         """
         heads, atoms, reducers, places = _Table(self.head), _Table(self.atom), self.reducers, self.places
+        heads[None] = None if reducers else ""
         stack: list[Form] = []
         current = Form()
         skipped = 0  # how many lists are open in the one being passed over, itself included
         for match in _TOKEN.finditer(self.string):
             kind = match.lastindex or 0
-            if kind == _CLOSE:
-                closings = match[_CLOSE].count(")")
-            elif kind > _CLOSE:
-                if kind > _STRING:
-                    raise places.error("this string is never closed: its closing quote is missing", match.start())
-                if not skipped:
-                    current.append(atoms[match[_ATOM]] if kind == _ATOM else self.string_at(match[_STRING], match.start()))
-                continue
-            elif skipped:
-                skipped += 1
-                if len(stack) + skipped > NESTING_LIMIT:
-                    raise self._too_deep(match.start())
-                closings = match[_CLOSED].count(")") if kind == _CLOSED else 0
-            else:
+            if kind <= _CLOSED:
                 word, first, text, closing, _, _, _, _ = match.groups()
-                closings = 0 if closing is None else closing.count(")")
-                if word is None:
-                    form = Form() if text is None else Form((text,))
-                elif (head := heads[word]) is None:
-                    skipped = 1
-                elif first is None:
-                    form = Form((head,)) if text is None else Form((head, text))
-                elif text is None:
-                    form = Form((head, atoms[first]))
+                if skipped or (head := heads[word]) is None:
+                    skipped += 1
+                    if closing is None:
+                        if len(stack) + skipped > NESTING_LIMIT:
+                            raise self._too_deep(match.start())
+                        continue
+                    closings = closing.count(")")
                 else:
-                    form = Form((head, atoms[first], text))
-                if not skipped:
+                    if word is None:
+                        form = Form() if text is None else Form((text,))
+                    elif first is None:
+                        form = Form((head,)) if text is None else Form((head, text))
+                    elif text is None:
+                        form = Form((head, atoms[first]))
+                    else:
+                        form = Form((head, atoms[first], text))
                     form.offset = match.start()
                     form.places = places
-                    if closings:
-                        reduce = reducers.get(form[0]) if reducers and form else None
-                        current.append(form if reduce is None else reduce(form))
-                        closings -= 1
-                    else:
+                    if closing is None:
                         stack.append(current)
                         current = form
                         if len(stack) > NESTING_LIMIT:
                             raise self._too_deep(match.start())
+                        continue
+                    reduce = reducers.get(form[0]) if reducers else None
+                    current.append(form if reduce is None else reduce(form))
+                    closings = closing.count(")") - 1
+            elif kind == _CLOSE:
+                closings = match[_CLOSE].count(")")
+            elif kind > _STRING:
+                raise places.error("this string is never closed: its closing quote is missing", match.start())
+            else:
+                if not skipped:
+                    current.append(atoms[match[_ATOM]] if kind == _ATOM else self.string_at(match[_STRING], match.start()))
+                continue
             while closings:
                 closings -= 1
                 if skipped:
@@ -253,7 +254,7 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
                     raise places.error("this closing parenthesis has no opening one", self.outside())
                 form = current
                 current = stack.pop()
-                reduce = reducers.get(form[0]) if reducers and form else None
+                reduce = reducers.get(form[0]) if reducers else None
                 current.append(form if reduce is None else reduce(form))
         if stack or skipped:
             raise self.unclosed()

@@ -49,7 +49,7 @@ class Block:
         self.cell = cell
         self.library = library
         self.view = view
-        self.ports = Ports(port for each in cell.views for port in each.ports)
+        self.ports = Ports(each.ports for each in cell.views)
         self.contents: Contents | None = view.contents if view is not None and has_contents(view) else None
         self.children: list[list[Block]] = []
         self.shorts: list[tuple[int, ...]] = []

@@ -3,12 +3,12 @@
 from __future__ import annotations
 
 from bisect import bisect_right
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 
 from protlint.netlist.definitions import Name, Port, Scope
 from protlint.netlist.forms import Places
 
-ELEMENTS_LIMIT = 2_000_000
+ELEMENTS_LIMIT = 1_000_000
 """Most elements of arrays that one file may name, however few characters that takes."""
 
 
@@ -27,13 +27,12 @@ def element_of(dimensions: tuple[int, ...], member: tuple[int, ...]) -> int | No
 class Slot:
     """A port with the bits it stands for: one for a plain port, as many as elements for an array or a bundle."""
 
-    __slots__ = ("dimensions", "inner", "port", "start", "stop", "text")
+    __slots__ = ("dimensions", "identifier", "inner", "port", "start", "stop", "text")
 
-    def __init__(self, text: str, start: int, dimensions: tuple[int, ...], port: Port | None) -> None:
-        self.text = text
+    def __init__(self, name: Name, start: int, port: Port | None) -> None:
+        self.identifier, self.text, self.dimensions = name
         self.start = start
         self.stop = start
-        self.dimensions = dimensions
         self.port = port
         self.inner: Scope[Slot] = Scope()
 
@@ -48,21 +47,25 @@ class Slot:
 class Ports:
     """The ports of a cell, their elements numbered through as bits. Views of one cell share ports by name."""
 
-    def __init__(self, ports: Iterable[Port] = (), *, start: int = 0) -> None:
+    def __init__(self, views: Iterable[Sequence[Port]] = (), *, start: int = 0) -> None:
         self.start = self.width = start
         self.plain: dict[str, int] = {}
         """The bits of ports that are no arrays, by identifier as declared: most references need no more."""
         self._scope: Scope[Slot] = Scope()
         self._slots: list[Slot] = []
         self._starts: list[int] = []
-        for port in ports:
-            if self._scope.find(port.name.identifier) is None:
-                if not port.ports and not port.name.dimensions:
-                    self.plain[port.name.identifier] = self.width
-                self._add(port, self._scope)
+        for ports in views:
+            before = self.width
+            for port in ports:
+                found = self._scope.find(port.name.identifier)
+                # Two of one view that differ in case are two; of different views they are one.
+                if found is None or (found.start >= before and found.identifier != port.name.identifier):
+                    if not port.ports and not port.name.dimensions:
+                        self.plain[port.name.identifier] = self.width
+                    self._add(port, self._scope)
 
     def _add(self, port: Port, scope: Scope[Slot]) -> None:
-        slot = Slot(port.name.text, self.width, port.name.dimensions, port)
+        slot = Slot(port.name, self.width, port)
         scope.add(port.name.identifier, slot)
         for inner in port.ports:
             self._add(inner, slot.inner)
@@ -80,7 +83,7 @@ class Ports:
         """Add a port that no interface declares, unless it is there; return it."""
         slot = self._scope.find(name.identifier)
         if slot is None:
-            slot = Slot(name.text, self.width, name.dimensions, None)
+            slot = Slot(name, self.width, None)
             self._scope.add(name.identifier, slot)
             self._fill(slot, name.width)
         return slot

@@ -105,8 +105,8 @@ def joined(form: Form) -> Joined:
         if type(item) is not Form or not item:
             continue
         if item[0] == "portref":
-            inner = item[2] if len(item) == 3 else None
-            if inner and inner[0] == "instanceref" and len(inner) == 2 and type(inner[1]) is type(item[1]) is Atom:
+            inner = item[2] if len(item) == 3 and type(item[2]) is Form and len(item[2]) == 2 else ("", "")
+            if inner[0] == "instanceref" and type(inner[1]) is type(item[1]) is Atom:
                 ends.append(PortRef(item[1], inner[1], item.offset))  # nearly all are plain ones
             else:
                 ends.append(port_ref(item))

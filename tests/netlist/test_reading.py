@@ -1,0 +1,282 @@
+"""Reading as a whole: where the text comes from, which design, what is refused for its size."""
+
+from __future__ import annotations
+
+import hashlib
+import io
+import subprocess
+import sys
+import time
+from pathlib import Path
+
+import pytest
+
+import protlint
+import protlint.netlist
+from protlint.netlist import read_netlist, read_netlist_bytes
+from protlint.netlist.edif import ARRAY_LIMIT
+from protlint.netlist.flatten import SIZE_LIMIT
+from protlint.netlist.hierarchy import DEPTH_LIMIT
+from protlint.netlist.model import Netlist
+from protlint.netlist.ports import ELEMENTS_LIMIT
+from protlint.sources import FileError, InputError, UsageError
+from tests.support.paths import FIXTURES
+
+VALID = FIXTURES / "netlist" / "valid"
+HEAD = "(edif x (edifVersion 2 0 0) (edifLevel 0) (keywordMap (keywordLevel 0))\n"
+LIBRARY = "(library L (edifLevel 0) (technology (numberDefinition))\n"
+
+
+def cell(name: str, contents: str = "", interface: str = "") -> str:
+    """A cell with a NETLIST view, and contents where there are any."""
+    inside = f"(contents {contents})" if contents else ""
+    return f"(cell {name} (cellType GENERIC) (view V (viewType NETLIST) (interface {interface}) {inside}))\n"
+
+
+def placed(name: str, of: str, more: str = "") -> str:
+    """An instance."""
+    return f"(instance {name} (viewRef V (cellRef {of})) {more})"
+
+
+def net(name: str, *ends: str) -> str:
+    """A net that joins pins (``R1.A``) and own ports (``A``)."""
+    refs = (end.split(".") for end in ends)
+    joined = (f"(portRef {ref[1]} (instanceRef {ref[0]}))" if len(ref) == 2 else f"(portRef {ref[0]})" for ref in refs)
+    return f"(net {name} (joined {' '.join(joined)}))"
+
+
+RES = cell("R", interface="(port A) (port B)")
+
+
+def board(contents: str, *, cells: str = RES, interface: str = "", design: str = "(design x (cellRef TOP))") -> bytes:
+    """A file of one library, with what a test is about inside its top cell, on line 4."""
+    return f"{HEAD}{LIBRARY}{cells}{cell('TOP', contents or '(net NONE (joined))', interface)})\n{design})\n".encode()
+
+
+def read(data: bytes) -> Netlist:
+    return read_netlist_bytes(data, "x.edf")
+
+
+def test_the_public_name_and_the_file_facts() -> None:
+    path = VALID / "flat.edf"
+    netlist = protlint.read_netlist(path)
+    assert netlist.sha256 == hashlib.sha256(path.read_bytes()).hexdigest()
+    assert netlist.file.endswith("flat.edf")
+    assert netlist.facts["written by"] == "Netwriter 7.1"
+    assert netlist.facts["libraries"] == "PARTS (2 cells), BOARD (1 cells)"
+
+
+def test_standard_input(monkeypatch: pytest.MonkeyPatch) -> None:
+    data = (VALID / "flat.edf").read_bytes()
+    monkeypatch.setattr(sys, "stdin", io.TextIOWrapper(io.BytesIO(data)))
+    netlist = read_netlist("-")
+    assert netlist.file == "<standard input>"
+    assert len(netlist.parts) == 2
+
+
+@pytest.mark.parametrize("name", ["absent.edf", "."])
+def test_files_that_cannot_be_read(tmp_path: Path, name: str) -> None:
+    with pytest.raises(FileError) as caught:
+        read_netlist(tmp_path / name)
+    assert caught.value.exit_code == 2
+
+
+def test_choosing_a_design() -> None:
+    path = VALID / "designs.edf"
+    for name in ("SECOND", "second", "second board", "Second Board"):
+        netlist = read_netlist(path, design=name)
+        assert (netlist.design, [part.id for part in netlist.parts]) == ("second board", ["R2"])
+        assert not netlist.warnings
+    with pytest.raises(UsageError, match="FIRST, second board"):
+        read_netlist(path, design="THIRD")
+    with pytest.raises(UsageError, match="designs in the file: none"):
+        read_netlist(VALID / "no-design.edf", design="TOP")
+    with pytest.raises(InputError, match="NOT_THERE of the design lost is not in the file"):
+        read_netlist(VALID / "unresolved.edf", design="lost")
+
+
+def test_of_several_cells_nothing_places_the_fullest_is_taken() -> None:
+    contents = placed("R1", "R") + placed("R2", "R")
+    netlist = read(board(contents, cells=RES + cell("OTHER", placed("R9", "R")), design=""))
+    assert [part.id for part in netlist.parts] == ["R1", "R2"]
+    assert [(each.line, "OTHER, TOP" in each.message) for each in netlist.warnings] == [(5, True)]
+
+
+def test_encodings_asked_for() -> None:
+    data = board(placed("R1", "R", '(property VALUE (string "47к"))'))
+    text = data.decode()
+    for encoding in ("cp1251", "utf-16", "utf-16-le", "koi8-r"):
+        netlist = read_netlist_bytes(text.encode(encoding), "x.edf", encoding=encoding)
+        assert netlist.parts[0].properties["value"].value == "47к"
+        assert [(each.count, encoding in each.message) for each in netlist.warnings] == [(1, True)]
+    assert read_netlist_bytes(text.encode("cp1251"), "x.edf").parts[0].properties["value"].value == "47ê"
+    undefined_in_cp1252 = text.replace("к", "\x81").encode("latin-1")
+    assert "latin-1" in read_netlist_bytes(undefined_in_cp1252, "x.edf").warnings[0].message
+    with pytest.raises(InputError, match=r"^x.edf:4:"):
+        read_netlist_bytes(text.encode("cp1251"), "x.edf", encoding="utf-8")
+    with pytest.raises(UsageError, match="no encoding is called"):
+        read_netlist_bytes(data, "x.edf", encoding="klingon")
+
+
+def test_text_of_another_kind() -> None:
+    with pytest.raises(InputError, match=r"x.edf:2:3: a NUL character"):
+        read(b"(edif x\nab\0")
+    with pytest.raises(InputError, match="--encoding utf-16"):
+        read(board("").decode().encode("utf-16"))
+    with pytest.raises(InputError, match="1:1: this is something else"):
+        read(bytes(range(1, 256)) * 50)
+
+
+def test_names_that_differ_in_case_only_stay_apart() -> None:
+    contents = placed("r1", "C") + placed("R1", "C") + net("X", "r1.CLK", "R1.clk")
+    netlist = read(board(contents, cells=cell("C", interface="(port clk) (port CLK)")))
+    assert [(part.id, [pin.name for pin in part.pins]) for part in netlist.parts] == [("r1", ["CLK"]), ("R1", ["clk"])]
+    assert [(each.count, "only in case" in each.message) for each in netlist.warnings] == [(2, True)]
+
+
+def test_of_two_ports_alike_to_the_letter_the_first_counts() -> None:
+    contents = placed("U1", "C") + net("X", "U1.P") + net("Y", "U1.Q")
+    netlist = read(board(contents, cells=cell("C", interface='(port (rename P "first")) (port P) (port Q)')))
+    assert [pin.name for pin in netlist.parts[0].pins] == ["first", "Q"]
+    assert [(each.count, "one identifier for two" in each.message) for each in netlist.warnings] == [(1, True)]
+
+
+def test_things_of_different_width() -> None:
+    contents = placed("U1", "C") + placed("U2", "C") + net("GND", "U1.P") + net("(array D 2)", "U2.P")
+    netlist = read(board(contents, cells=cell("C", interface="(port (array P 3))")))
+    assert [[netlist.nets[pin.net].name for pin in part.pins] for part in netlist.parts] == [["GND"] * 3, ["D[0]", "D[1]"]]
+    assert [each.count for each in netlist.warnings] == [2]
+
+
+def test_a_blocks_port_on_two_nets_is_one_node() -> None:
+    box = cell("BOX", placed("R9", "R") + net("I", "P", "R9.A"), "(port P)")
+    contents = placed("X1", "BOX") + placed("R1", "R") + net("N1", "X1.P") + net("N2", "X1.P", "R1.A")
+    netlist = read(board(contents, cells=RES + box))
+    assert [net.name for net in netlist.nets] == ["N1"]
+    assert len(netlist.nets[0].pins) == 2
+    assert ["a block's port on two nets" in each.message for each in netlist.warnings] == [True]
+
+
+def test_parts_with_unlike_designators_and_slashes() -> None:
+    contents = (
+        placed("I1", "R", '(designator "R1") (designator "K7")')
+        + placed("I2", "R", '(designator "A/B")')
+        + placed("A", "BOX")
+        + placed("I3", "R", '(designator "R#") (designator "R")')
+        + placed("I4", "R", '(designator "U2") (designator "U2-2")')
+    )
+    netlist = read(board(contents, cells=RES + cell("BOX", placed("I1", "R", '(designator "B")'))))
+    assert [part.id for part in netlist.parts] == ["R1", "A/B", "A/B#2", "R#", "U2-2"]
+    assert [part.designator for part in netlist.parts] == ["R1", "A/B", "B", "R", "U2"]
+    assert ["two unlike designators" in each.message for each in netlist.warnings] == [True]
+
+
+def test_pin_names_and_numbers() -> None:
+    interface = '(port &1 (property Name (string "BASE"))) (port &2) (port G (designator "5 12 13")) (port (array D 2))'
+    said = (
+        '(portInstance &2 (property (rename N "Pin Name") (string "EMITTER")) (designator "3"))'
+        '(portInstance (member D 1) (designator "D1"))'
+    )
+    joined = net("X", "Q1.&1", "Q1.&2", "Q1.G", "Q1.(member D 0)", "Q1.(member D 1)")
+    netlist = read(board(placed("Q1", "C", said) + joined, cells=cell("C", interface=interface)))
+    assert [(pin.name, pin.number) for pin in netlist.parts[0].pins] == [
+        ("BASE", "1"), ("EMITTER", "3"), ("G", "5 12 13"), ("D[0]", None), ("D[1]", "D1"),
+    ]  # fmt: skip
+
+
+LIMITS = {
+    "a large array of instances": (placed("(array R 60000)", "R") * 40, f"{ELEMENTS_LIMIT} elements"),
+    "whole arrays joined over and over": (placed("(array R 60000)", "R") + net("X", *["R.A"] * 40), f"{ELEMENTS_LIMIT} el"),
+    "arrays of nets": ("".join(net(f"(array N{number} 60000)") for number in range(40)), f"{ELEMENTS_LIMIT} elements"),
+    "an array past its own limit": (net(f"(array N {ARRAY_LIMIT + 1})"), f"up to {ARRAY_LIMIT}"),
+    "an array of too many dimensions": (net("(array N 2 2 2 2 2)"), "4 dimensions"),
+    "an array of more than any memory holds": (placed(f"(array R {2 * 10**9})", "R"), "2000000000 elements"),
+}
+
+
+@pytest.mark.parametrize("name", LIMITS)
+def test_what_is_too_large_is_refused_in_bounded_time(name: str) -> None:
+    contents, says = LIMITS[name]
+    started = time.perf_counter()
+    with pytest.raises(InputError, match=says) as caught:
+        read(board(contents))
+    assert caught.value.line == 4
+    assert time.perf_counter() - started < 60  # a bound on hanging, no measure of speed
+
+
+def nest(levels: int, width: int) -> str:
+    """Cells each of which places the one before ``width`` times, with a net apiece."""
+    cells = [RES, cell("C0", placed("R1", "R"))]
+    for level in range(1, levels):
+        inside = "".join(placed(f"X{number}", f"C{level - 1}") for number in range(width))
+        cells.append(cell(f"C{level}", inside + net("N")))
+    return "".join(cells)
+
+
+def test_a_hierarchy_of_more_parts_than_any_memory_holds() -> None:
+    with pytest.raises(InputError, match=f"more than {SIZE_LIMIT} parts"):
+        read(board(placed("X", "C39"), cells=nest(40, 2)))
+
+
+def test_the_deepest_hierarchy_that_is_read() -> None:
+    netlist = read(board(placed("X", f"C{DEPTH_LIMIT - 2}"), cells=nest(DEPTH_LIMIT - 1, 1)))
+    assert netlist.parts[0].id.count("/") == DEPTH_LIMIT - 1
+    with pytest.raises(InputError, match="levels deep"):
+        read(board(placed("X", f"C{DEPTH_LIMIT + 1}"), cells=nest(DEPTH_LIMIT + 2, 1)))
+
+
+def test_a_net_that_joins_itself() -> None:
+    netlist = read(board("(net X (joined (portRef X) (portRef X)) (net X (joined (portRef X))))", interface="(port X)"))
+    assert [(net.name, net.pins) for net in netlist.nets] == [("X", ())]
+    with pytest.raises(InputError, match="nested more than 200 deep"):
+        read(board("(net X" * 1000 + ")" * 1000))
+
+
+def test_sizes_of_files_and_lines(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(protlint.netlist, "LINE_LIMIT", 2000)
+    long_line = board(placed("R1", "R", f'(property A (string "{"x" * 3000}"))'))
+    with pytest.raises(InputError, match=r"x.edf:4:1: a line of more than 2000 bytes"):
+        read(long_line)
+    many_lines = board("(net X (joined))\n" * 500)
+    assert len(many_lines) > 4000
+    assert len(read(many_lines).nets) == 500
+    monkeypatch.setattr(protlint.netlist, "FILE_LIMIT", 1_000_000)
+    large = tmp_path / "large.edf"
+    large.write_bytes(b"(edif" + b" " * 1_000_000)
+    with pytest.raises(InputError, match="larger than 1 MB"):
+        read_netlist(large)
+
+
+def test_a_line_of_two_hundred_megabytes() -> None:
+    for data in (b"(edif x " + b"a" * 200_000_000, b'(edif "' + b"(" * 200_000_000):
+        with pytest.raises(InputError, match="a line of more than 100000000 bytes"):
+            read(data)
+
+
+def test_two_hundred_thousand_parentheses() -> None:
+    for start in (b"", b"(edif ", HEAD.encode(), HEAD.encode() + b"(comment "):
+        with pytest.raises(InputError) as caught:
+            read(start + b"(" * 200_000)
+        assert caught.value.line in (1, 2)
+
+
+def test_an_endless_file_is_not_read_to_its_end() -> None:
+    code = (
+        "import protlint.netlist as n\n"
+        "n.FILE_LIMIT = 5_000_000\n"
+        "try: n.read_netlist('/dev/zero')\n"
+        "except n.InputError as error: print(error)\n"
+    )
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, timeout=60, check=True)
+    assert done.stdout == "zero: larger than 5 MB, the most that is read\n"
+
+
+def test_same_bytes_same_netlist() -> None:
+    for path in sorted(VALID.glob("*.edf")):
+        assert read_netlist(path) == read_netlist(path)
+
+
+def test_reading_loads_nothing_heavy() -> None:
+    code = "import sys, protlint.netlist; print(sorted({'numpy', 'networkx', 'pint', 'scipy', 'click'} & set(sys.modules)))"
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, timeout=60, check=True)
+    assert done.stdout == "[]\n"
