@@ -134,8 +134,8 @@ _BIPOLAR_MODEL = (
     "CJE", "VJE", "MJE", "TF", "XTF", "VTF", "ITF", "PTF", "CJC", "VJC", "MJC", "XCJC", "TR", "CJS", "VJS", "MJS", "XTB",
 )  # fmt: skip
 _MOSFET_MODEL = (
-    "VTO", "KP", "GAMMA", "PHI", "LAMBDA", "RD", "RS", "RG", "IS", "PB", "CBD", "CBS", "CGSO", "CGDO", "CGBO", "CJ", "MJ",
-    "CJSW", "MJSW", "TOX", "FC",
+    "VTO", "KP", "GAMMA", "PHI", "LAMBDA", "RD", "RS", "RG", "IS", "PB", "CBD", "CBS", "CGS", "CGD", "CGSO", "CGDO", "CGBO",
+    "CJ", "MJ", "CJSW", "MJSW", "TOX", "FC",
 )  # fmt: skip
 _DIODE_MODEL = (*_JUNCTION, "N", "RS", "TT", "CJO", "VJ", "M", "BV", "IBV", "NBV")
 

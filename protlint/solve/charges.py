@@ -28,7 +28,6 @@ import numpy as np
 
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.constants import T0_K
-from protlint.solve.derive import MODEL_WIDTH_M
 from protlint.solve.devices import Array, Bipolars, transport
 from protlint.solve.lanes import junction_potential
 from protlint.solve.network import Group
@@ -67,6 +66,9 @@ MOSFET: Final[Bounds] = {
     "MJ": (0.5, 0.0, 0.95),
     "FC": (0.5, 0.0, 0.95),
 }
+MODEL_WIDTH_M: Final = 1e-6
+"""Published overlap capacitances are by metre of channel width; the models here stand for a square channel of 1 um."""
+
 FAMILIES: Final[Mapping[str, Bounds]] = {"bipolar": BIPOLAR, "mosfet": MOSFET, "diode": DIODE}
 
 _BIPOLAR_NEEDS = ((("TF",), "ft"), (("CJC",), "cob"), (("CJE",), "cib"))

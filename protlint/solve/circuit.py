@@ -20,7 +20,8 @@ class Device:
     ``nodes`` are (collector, base, emitter), (drain, gate, source), (anode, cathode) or (1, 2). ``model`` holds published
     parameter names in SI units at 27 degC; a resistor's are R, TC1, TC2 (at 27 degC), a capacitor's C, an inductor's L.
     ``tolerance`` is a resistor's fraction; ``hfe`` the bounds of BF; ``vbe_spread_V`` how far V_BE may lie below and above.
-    ``rise_K`` is the device's temperature above ambient. ``assumed`` says in plain words what of this was assumed.
+    ``rise_K`` is the device's temperature above ambient. ``assumed`` says in plain words what of this was assumed,
+    ``charges_assumed`` what of its charges was, and ``derived`` what came from data-sheet figures.
     ``part_number`` is the part-data entry that a missing parameter would have to be added to, empty where none is known.
     """
 
@@ -34,6 +35,8 @@ class Device:
     rise_K: float = 0.0
     assumed: tuple[str, ...] = ()
     part_number: str = ""
+    derived: tuple[str, ...] = ()
+    charges_assumed: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

@@ -13,8 +13,9 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
+from protlint.solve.capacitances import capacitances_from
 from protlint.solve.constants import BOLTZMANN_V_PER_K, T0_K
 
 Model = Mapping[str, float]
@@ -23,9 +24,6 @@ Pair = tuple[float, float]
 DATA_SHEET_K = 298.15
 GATE_DRIVE_V = 10.0
 """Gate voltage at which on-resistances of power MOSFETs are stated."""
-MODEL_WIDTH_M = 1e-6
-"""Level-1 overlap capacitances are per metre of a width that the published default leaves at 1 m; the models here are of
-1 um by 1 um."""
 
 DEFAULT_IC_A = {"small": 0.1, "power": 4.0}
 DEFAULT_V_BE, DEFAULT_V_BE_SHARE, DEFAULT_V_BE_SPREAD = 0.66, 1.0 / 50.0, (0.10, 0.10)
@@ -45,7 +43,8 @@ class Derived:
 
     ``driver_model`` is the first transistor's of a Darlington part. ``hfe`` bounds B_F (of each of its two transistors);
     ``vbe_spread_V`` how far V_BE (V_GS(th), V_F) may lie below and above, None where nothing widens the stated spread.
-    ``derived`` and ``assumed`` say in plain words what came from data-sheet figures and what from nowhere.
+    ``derived`` and ``assumed`` say in plain words what came from data-sheet figures and what from nowhere;
+    ``charges_assumed`` what of its charges did, on which nothing rests but loop and delay.
     """
 
     model: Model
@@ -54,6 +53,7 @@ class Derived:
     vbe_spread_V: Pair | None = None
     derived: tuple[str, ...] = ()
     assumed: tuple[str, ...] = ()
+    charges_assumed: tuple[str, ...] = ()
 
 
 @dataclass(slots=True)
@@ -70,10 +70,20 @@ def derive(kind: str, ratings: Mapping[str, float], model: Model) -> Derived:
     """
     base = kind.removesuffix("-darlington")
     if base in ("npn", "pnp"):
-        return _darlington(ratings, model) if base != kind else _bipolar(ratings, model)
-    if base in ("nmos", "pmos"):
-        return _mosfet(base, ratings, model)
-    return _diode(base, ratings, model)
+        found = _darlington(ratings, model) if base != kind else _bipolar(ratings, model)
+    elif base in ("nmos", "pmos"):
+        found = _mosfet(base, ratings, model)
+    else:
+        found = _diode(base, ratings, model)
+    charged = capacitances_from(base, ratings, found.model)
+    driver = {name: value * DRIVER_SHARE if name != "TF" else value for name, value in charged.model.items()}
+    return replace(
+        found,
+        model={**found.model, **charged.model},
+        driver_model={**found.driver_model, **driver} if found.driver_model else {},
+        derived=found.derived + charged.derived,
+        charges_assumed=charged.assumed,
+    )
 
 
 def saturation_current(I: float, V: float, N: float = 1.0, E_G: float = 1.11, X_TI: float = 3.0) -> float:  # noqa: E741
@@ -122,7 +132,6 @@ def _bipolar(ratings: Mapping[str, float], model: Model) -> Derived:
         "VAF": DEFAULT_VAF,
         "IKF": rated_A,
         "XTB": 1.5,
-        **_bipolar_charges(ratings),
     }
     return Derived(made, {}, hfe, spread, tuple(words.derived), tuple(words.assumed))
 
@@ -144,17 +153,6 @@ def _hfe(ratings: Mapping[str, float], model: Model, words: _Words) -> Pair:
         return (0.5 * model["BF"], 2.0 * model["BF"])
     words.assumed.append(f"an hFE of {DEFAULT_HFE[0]:g} to {DEFAULT_HFE[1]:g}")
     return DEFAULT_HFE
-
-
-def _bipolar_charges(ratings: Mapping[str, float]) -> dict[str, float]:
-    """Return TF from f_T (1 / (2 pi f_T)) and the junction capacitances at no bias from C_ob and C_ib."""
-    made: dict[str, float] = {}
-    if "ft" in ratings:
-        made["TF"] = 1.0 / (2.0 * math.pi * ratings["ft"])
-    for name, rating, at in (("CJC", "cob", "cob_at"), ("CJE", "cib", "cib_at")):
-        if rating in ratings:
-            made[name] = ratings[rating] * (1.0 + ratings.get(at, 0.0) / 0.75) ** 0.33
-    return made
 
 
 def _darlington(ratings: Mapping[str, float], model: Model) -> Derived:
@@ -210,7 +208,6 @@ def _mosfet(kind: str, ratings: Mapping[str, float], model: Model) -> Derived:
         "KP": K_P,
         "LAMBDA": DEFAULT_LAMBDA,
         "RD": max(on_ohm - channel_ohm, 0.0),
-        **_mosfet_charges(ratings),
     }
     return Derived(made, vbe_spread_V=spread, derived=tuple(words.derived), assumed=tuple(words.assumed))
 
@@ -233,18 +230,6 @@ def _transconductance(ratings: Mapping[str, float], threshold_V: float, words: _
     return rated_A / 8.0
 
 
-def _mosfet_charges(ratings: Mapping[str, float]) -> dict[str, float]:
-    """Return overlap and drain capacitances from C_iss, C_rss and C_oss."""
-    made: dict[str, float] = {}
-    if "crss" in ratings:
-        made["CGDO"] = ratings["crss"] / MODEL_WIDTH_M
-        if "ciss" in ratings:
-            made["CGSO"] = max(ratings["ciss"] - ratings["crss"], 0.0) / MODEL_WIDTH_M
-        if "coss" in ratings:
-            made["CBD"] = max(ratings["coss"] - ratings["crss"], 0.0)
-    return made
-
-
 def _diode(kind: str, ratings: Mapping[str, float], model: Model) -> Derived:
     if model:
         return Derived(model)
@@ -259,8 +244,6 @@ def _diode(kind: str, ratings: Mapping[str, float], model: Model) -> Derived:
         words.assumed.append(f"V_F {V_F:g} V at {at_A:g} A, within {spread[0]:g} V")
     words.assumed.append(f"an emission coefficient of {DIODE_N:g}")
     made = {"IS": saturation_current(at_A, V_F, DIODE_N), "N": DIODE_N}
-    if "cj" in ratings:
-        made["CJO"] = ratings["cj"]
     if kind == "zener":
         made |= _breakdown(ratings, words)
     return Derived(made, vbe_spread_V=spread, derived=tuple(words.derived), assumed=tuple(words.assumed))

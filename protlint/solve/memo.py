@@ -9,7 +9,7 @@ from typing import Any
 
 from protlint.solve.circuit import Circuit
 from protlint.solve.corners import NET_PARAMETERS
-from protlint.solve.solution import Point, Solution
+from protlint.solve.solution import Loop, Point, Solution
 
 Key = tuple[Any, ...]
 Names = tuple[tuple[str, ...], tuple[str, ...]]
@@ -80,7 +80,7 @@ def canonical(circuit: Circuit, ambients_degC: tuple[float, ...]) -> tuple[Key, 
         tuple(
             tuple(devices.get(name, -1) for name in names) for names in (circuit.shunt, circuit.pass_devices, circuit.sense)
         ),
-        (circuit.output_V, circuit.output_reach_V, circuit.ground_leg, circuit.regulates),
+        (circuit.output_V, circuit.output_reach_V, circuit.ground_leg, circuit.regulates, circuit.output_capacitance_F),
         ambients_degC,
     )
     return key, (tuple(devices), tuple(nodes))
@@ -106,6 +106,12 @@ def renamed(solution: Solution, devices: Mapping[str, str], nodes: Mapping[str, 
         name, _, parameter = text.rpartition(".")
         return f"{owner(name, parameter)}.{parameter}"
 
+    def loop(old: Loop | None) -> Loop | None:
+        if old is None or old.worst is None:
+            return old
+        corner = {step(text): position for text, position in old.worst.corner.items()}
+        return replace(old, worst=replace(old.worst, corner=corner))
+
     return replace(
         solution,
         locus=several(solution.locus),
@@ -117,6 +123,7 @@ def renamed(solution: Solution, devices: Mapping[str, str], nodes: Mapping[str, 
         high_locus=tuple(several(points) for points in solution.high_locus),
         sensitivities=tuple(replace(one, device=owner(one.device, one.parameter)) for one in solution.sensitivities),
         corners={end: {step(text): position for text, position in steps.items()} for end, steps in solution.corners.items()},
+        loop=loop(solution.loop),
         short=None if solution.short is None else nodes.get(solution.short, solution.short),
         shorts=tuple(replace(one, node=nodes.get(one.node, one.node), point=point(one.point)) for one in solution.shorts),
     )

@@ -62,6 +62,8 @@ def devices_of(place: Place, index: int, *, nodes: Mapping[str, str], notes: Not
                 rise_K=rise_K,
                 part_number=part.part_number or "",
                 assumed=derived.assumed,
+                derived=derived.derived,
+                charges_assumed=derived.charges_assumed,
             )
         )
     return devices

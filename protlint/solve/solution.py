@@ -158,6 +158,9 @@ class Solution:
     regulates: Regulates | None = None
     loop: Loop | None = None
     step: Step | None = None
+    loop_needs: tuple[str, ...] = ()
+    """Why there is no loop: part-data keys, or what could not be found; the same of the step below."""
+    step_needs: tuple[str, ...] = ()
     corners: Mapping[str, Mapping[str, float]] = field(default_factory=dict)
     """For the ``high`` and ``low`` end of holds at usual ambient: device.parameter to the position taken, -1 or +1."""
     short: str | None = None

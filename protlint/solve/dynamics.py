@@ -1,0 +1,44 @@
+"""Loop and step of a solved limiter, added to its solution."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+from protlint.solve.circuit import Circuit
+from protlint.solve.delay import solve_step
+from protlint.solve.loop import solve_loop
+from protlint.solve.memo import Memo
+from protlint.solve.solution import Loop, Solution, Step
+
+
+def with_dynamics(
+    circuit: Circuit,
+    solution: Solution,
+    ambients_degC: tuple[float, float, float],
+    *,
+    step: bool = True,
+    memo: Memo | None = None,
+) -> Solution:
+    """Return a solution with its loop and, unless ``step`` is false, the step into the short, which takes longer.
+
+    Where one of them cannot be worked out, ``loop_needs`` or ``step_needs`` say what is missing; where the circuit itself
+    could not be solved, or both are there already, the solution comes back as it was. With a ``memo`` that the solution came
+    from, equal circuits are worked out once.
+    """
+    if solution.not_solved is not None:
+        return solution
+    complete = solution
+    if complete.loop is None and not complete.loop_needs:
+        loop = solve_loop(circuit, ambients_degC, short=solution.short)
+        complete = replace(complete, loop=loop) if isinstance(loop, Loop) else replace(complete, loop_needs=_needs(loop))
+    if step and complete.step is None and not complete.step_needs:
+        found = solve_step(circuit, ambients_degC, short=solution.short)
+        complete = replace(complete, step=found) if isinstance(found, Step) else replace(complete, step_needs=_needs(found))
+    # reasons name parts, so only what holds for any equal circuit is kept
+    if memo is not None and not complete.loop_needs and not complete.step_needs:
+        memo.keep(circuit, ambients_degC, complete)
+    return complete
+
+
+def _needs(reason: str) -> tuple[str, ...]:
+    return tuple(reason.split("; "))
