@@ -1,16 +1,27 @@
-"""Is the shunt's base protected in the instant before the loop acts."""
+"""Is the shunt's base protected in the instant before the loop acts, and does what protects it spoil the limit."""
 
 from __future__ import annotations
 
 from collections.abc import Iterator
+from dataclasses import dataclass
 
-from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
+from protlint.checks.case import DRAWN, Answer, Case
+from protlint.checks.stop_range import StopRange, moves_for_the_stop, stop_range
+from protlint.checks.surge import Surge, shunt_of, surge
 from protlint.findings import Level, NotChecked, WorkingLine
-from protlint.quantities import format_quantity, preferred
+from protlint.partdata.book import Figure
+from protlint.quantities import format_quantity
 from protlint.solve.circuit import Device
 
-USUAL_LEAST_OHM = 47.0
-"""The least base stop that is usual in limiters; common practice of the trade, from memory."""
+
+@dataclass(frozen=True, slots=True)
+class Base:
+    """The shunt's part and device, its base current rating (None: not known), and the instant before the loop acts."""
+
+    part_id: str
+    device: Device
+    rating: Figure | None
+    surge: Surge
 
 
 def base_stop_absent(case: Case) -> Iterator[Answer]:
@@ -19,80 +30,120 @@ def base_stop_absent(case: Case) -> Iterator[Answer]:
     A preset's upper leg counts as a base stop; a diode string has no base.
     """
     check = "base-stop-absent"
-    shunt = _shunt(case)
-    if shunt is None or case.parts("base_stop") or case.limiter.elements.get("preset.upper"):
+    if case.parts("base_stop") or case.limiter.elements.get("preset.upper"):
         return
-    drop = _unlimited_drop(case)
-    if drop is None:
-        yield NotChecked(check, "the unlimited current, which could not be solved")
+    base = _base(case, check)
+    if isinstance(base, Base):
+        level: Level = "warning"
+        if base.surge.drop_V < case.threshold(check, "small_drop"):
+            level = "note"
+        elif base.rating is None:
+            yield NotChecked(check, case.rating_key(base.part_id, "ib"))
+        elif base.surge.base_A > base.rating.value:
+            level = "error"
+        yield _finding(case, check, base, f"{base.part_id} has no base stop", level)
+    elif base is not None:
+        yield base
+
+
+def base_stop_low(case: Case) -> Iterator[Answer]:
+    """Yield a finding where a base stop lets more through than half of what the shunt's base may take."""
+    check = "base-stop-low"
+    if not case.parts("base_stop") and not case.limiter.elements.get("preset.upper"):
         return
-    drop_V, current_A, sense_ohm, ambient_degC = drop
-    junction_V = case.threshold(check, "junction")
-    base_ohm = shunt.model.get("RB", 0.0)
-    base_A = max(0.0, drop_V - junction_V) / (sense_ohm + base_ohm)
-    part = case.parts("shunt")[0]
-    rating = case.rating(part, "ib")
-    level: Level = "warning"
-    if drop_V < case.threshold(check, "small_drop"):
-        level = "note"
-    elif rating is None:
-        yield NotChecked(check, case.rating_key(part, "ib"))
-    elif base_A > rating.value:
-        level = "error"
+    base = _base(case, check)
+    if not isinstance(base, Base):
+        if base is not None:
+            yield base
+        return
+    if base.rating is None:
+        if base.surge.base_A > 0.0:
+            yield NotChecked(check, case.rating_key(base.part_id, "ib"))
+        return
+    if base.surge.base_A > case.threshold(check, "share") * base.rating.value:
+        level: Level = "error" if base.surge.base_A > base.rating.value else "warning"
+        stops = case.parts("base_stop") or case.parts("preset")
+        yield _finding(case, check, base, f"{', '.join(stops)} is too low for the base of {base.part_id}", level, stops)
+
+
+def base_stop_high(case: Case) -> Iterator[Answer]:
+    """Yield a finding where the limit follows the shunt's current gain for the base stop's sake."""
+    check = "base-stop-high"
+    shunt = shunt_of(case)
+    stops = case.parts("base_stop")
+    if shunt is None or not stops:
+        return
+    part_id = case.parts("shunt")[0]
+    moves = moves_for_the_stop(case, shunt)
+    if moves is None:
+        entry = case.part(part_id).entry
+        lacking = "hfe_max" if entry is not None and "hfe_min" in entry.ratings else "hfe_min"
+        yield NotChecked(check, case.rating_key(part_id, lacking))
+        return
+    most = case.threshold(check, "share")
+    if moves.share <= most:
+        return
+    low, high = moves.hfe
     yield case.finding(
         check,
-        f"{part} has no base stop: up to {format_quantity(base_A, 'A')} into its base before the loop acts"
-        + (f", its rating is {format_quantity(rating.value, 'A')}" if rating is not None else ""),
-        parts=(part,),
+        f"{', '.join(stops)} lets the limit move by {moves.share * 100.0:.2g} % with the gain of {part_id}, "
+        f"from {low:g} to {high:g}",
+        parts=(*stops, part_id),
         working=(
-            WorkingLine("unlimited current", f"shunt taken out, output shorted, {ambient_degC:g} degC", current_A, "A"),
             WorkingLine(
-                "drop across the sense resistance",
-                f"{format_quantity(current_A, 'A')} * {format_quantity(sense_ohm, 'ohm')}",
-                drop_V,
-                "V",
+                f"holds, hFE {low:g}", f"solved with the base stop, {moves.ambient_degC:g} degC", moves.with_A[0], "A"
             ),
-            WorkingLine(
-                "base current",
-                f"({format_quantity(drop_V, 'V')} - {format_quantity(junction_V, 'V')}) / "
-                f"({format_quantity(sense_ohm, 'ohm')} + {format_quantity(base_ohm, 'ohm')})",
-                base_A,
-                "A",
-                "Kirchhoff's voltage law",
-            ),
+            WorkingLine(f"holds, hFE {high:g}", "the same", moves.with_A[1], "A"),
+            WorkingLine("moves without it", "the same with the base stop bridged", moves.without, ""),
+            WorkingLine("moves for its sake", "the difference of the two, over holds", moves.share, ""),
         ),
-        remedy=_stop_to_fit(case, part, drop_V - junction_V, base_ohm),
-        level=level,
-        assumption=case.assumes(*ALL_ASSUMPTIONS),
+        remedy=_what_will_do(case, shunt),
+        assumption=case.assumes(*DRAWN),
     )
 
 
-def _shunt(case: Case) -> Device | None:
-    circuit = case.bench.circuit
-    if circuit is None:
+def _base(case: Case, check: str) -> Base | NotChecked | None:
+    """Return the shunt's base in the instant before the loop acts; None where the shunt has none."""
+    shunt = shunt_of(case)
+    if shunt is None:
         return None
-    return next((one for one in circuit.devices if one.name in circuit.shunt and one.kind in ("npn", "pnp")), None)
+    instant = surge(case, shunt, case.threshold("base-stop-absent", "junction"))
+    if instant is None:
+        return NotChecked(check, "the unlimited current, which could not be solved")
+    part_id = case.parts("shunt")[0]
+    return Base(part_id, shunt, case.rating(part_id, "ib"), instant)
 
 
-def _unlimited_drop(case: Case) -> tuple[float, float, float, float] | None:
-    """Return (drop in V, current in A, sense resistance in ohm, ambient in degC) at the ambient where the drop is greatest.
+def _finding(case: Case, check: str, base: Base, said: str, level: Level, stops: tuple[str, ...] = ()) -> Answer:
+    may = "" if base.rating is None else f", its rating is {format_quantity(base.rating.value, 'A')}"
+    lines = base.surge.lines()
+    if base.rating is not None:
+        lines += (WorkingLine("base current rating", "part data", base.rating.value, "A", base.rating.source),)
+    return case.finding(
+        check,
+        f"{said}: up to {format_quantity(base.surge.base_A, 'A')} into the base before the loop acts{may}",
+        parts=(*stops, base.part_id),
+        working=lines,
+        remedy=_what_will_do(case, base.device, base.surge),
+        level=level,
+        assumption=level == "error" and case.assumes(*DRAWN),
+    )
 
-    Where the sense resistance is several (one for each parallel device) the current divides among them.
-    """
-    circuit = case.bench.circuit
-    rows = [row for row in case.solution.currents if row.unlimited_A is not None]
-    sense = [device for device in circuit.devices if device.name in circuit.sense] if circuit is not None else []
-    if not rows or not sense:
-        return None
-    row = max(rows, key=lambda one: one.unlimited_A or 0.0)
-    current_A = (row.unlimited_A or 0.0) / len(sense)
-    sense_ohm = sense[0].model["R"]
-    return current_A * sense_ohm, current_A, sense_ohm, row.ambient_degC
 
-
-def _stop_to_fit(case: Case, part: str, excess_V: float, base_ohm: float) -> str:
-    """Return the base stop that keeps the base current under half its rating, at least the usual least value."""
-    rating = case.rating(part, "ib")
-    least_ohm = max(0.0, excess_V) / (0.5 * rating.value) - base_ohm if rating is not None else 0.0
-    value = preferred(max(least_ohm, USUAL_LEAST_OHM), "E6", "up")
-    return f"fit {format_quantity(value, 'ohm')} in series with the base of {part}"
+def _what_will_do(case: Case, shunt: Device, instant: Surge | None = None) -> str:
+    """Return the base stops that will do, as a remedy."""
+    known = instant or surge(case, shunt, case.threshold("base-stop-absent", "junction"))
+    stops, part_id = case.parts("base_stop"), case.parts("shunt")[0]
+    found: StopRange = stop_range(case, shunt, known)
+    least = format_quantity(found.least_ohm, "ohm")
+    if found.most_ohm is not None and found.most_ohm < found.least_ohm:
+        most = format_quantity(found.most_ohm, "ohm")
+        return (
+            f"no base stop does both: {least} or more keeps the base current down, {most} or less keeps the limit from "
+            f"following the gain; fit a shunt with less spread of gain, or one that bears more base current"
+        )
+    where = f"in series with the base of {part_id}"
+    if stops:
+        where = f"as {stops[0]}" if len(stops) == 1 else f"for {', '.join(stops)} together"
+    upto = "" if found.most_ohm is None else f" ({least} to {format_quantity(found.most_ohm, 'ohm')} will do, E24)"
+    return f"fit {format_quantity(found.to_fit_ohm, 'ohm')} {where}{upto}"

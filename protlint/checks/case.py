@@ -2,26 +2,36 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
-from dataclasses import dataclass
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, field
 
 from protlint.board.graph import Board, BoardPart
+from protlint.board.parts_list import Difference
 from protlint.checks.catalogue import CheckRow
+from protlint.checks.derating import derated, share_of
 from protlint.findings import Finding, Level, NotChecked, WorkingLine
 from protlint.limits import UNSTATED, CheckSetting, LimiterLimits, Limits
 from protlint.partdata.book import Figure
 from protlint.solve.bench import Bench
-from protlint.solve.solution import Solution
+from protlint.solve.circuit import Circuit, Device
+from protlint.solve.solution import Point, Solution
 from protlint.toml_text import toml_key
 from protlint.topology.limiter import Limiter
 
 ALL_ASSUMPTIONS = ("drive", "short", "supply", "model", "tolerance", "circuit", "ambient_degC", "vbe_spread_V")
 """Everything a number can rest on that nobody stated: subjects of the bench, and fields of the limits file."""
 
+DRAWN = ("drive", "short", "supply", "model", "circuit", "ambient_degC")
+"""What a figure rests on that is solved as drawn, without tolerances."""
+
 
 @dataclass(frozen=True, slots=True)
 class Case:
-    """One limiter before the checks. ``rows`` is the catalogue."""
+    """One limiter before the checks.
+
+    ``rows`` is the catalogue, ``differences`` what a parts list says otherwise than the netlist, by part id; ``parts_by_id``
+    may be given so that it is made once for a board. ``assumptions`` collects what a check had to assume besides.
+    """
 
     board: Board
     limiter: Limiter
@@ -30,6 +40,15 @@ class Case:
     needs: LimiterLimits
     limits: Limits
     rows: Mapping[str, CheckRow]
+    differences: Mapping[str, tuple[Difference, ...]] = field(default_factory=dict)
+    parts_by_id: Mapping[str, BoardPart] = field(default_factory=dict)
+    assumptions: list[str] = field(default_factory=list)
+
+    @property
+    def circuit(self) -> Circuit:
+        """The circuit; only for checks that are asked where it could be solved."""
+        assert self.bench.circuit is not None
+        return self.bench.circuit
 
     def threshold(self, check: str, name: str) -> float:
         """Return a check's threshold: the limiter's own, else the limits file's, else the catalogue's."""
@@ -50,18 +69,59 @@ class Case:
 
     def part(self, part_id: str) -> BoardPart:
         """Return a part of the board by id."""
-        return next(part for part in self.board.parts if part.id == part_id)
+        known = self.parts_by_id.get(part_id)
+        return known if known is not None else next(part for part in self.board.parts if part.id == part_id)
+
+    def device_parts(self, *roles: str) -> Iterator[tuple[str, tuple[str, ...]]]:
+        """Yield (part id, names of its devices in the circuit) of the parts in the given roles that have any."""
+        for part_id in self.parts(*roles):
+            names = self.devices_of(part_id)
+            if names:
+                yield part_id, names
+
+    def devices_of(self, part_id: str) -> tuple[str, ...]:
+        """Return the names of the circuit's devices that stand for a part."""
+        index = self.part(part_id).index
+        elements = self.board.elements
+        return tuple(name for name, element in self.bench.element_of.items() if index in elements[element].parts)
+
+    def device(self, name: str) -> Device:
+        """Return a device of the circuit by name."""
+        return next(device for device in self.circuit.devices if device.name == name)
+
+    def power_W(self, point: Point, part_id: str) -> float:
+        """Return what a part dissipates at a solved point; both devices of a Darlington part together."""
+        return sum(point.states[name].power_W for name in self.devices_of(part_id) if name in point.states)
 
     def rating(self, part_id: str, name: str) -> Figure | None:
         """Return a rating from the part data, or None."""
         entry = self.part(part_id).entry
         return None if entry is None else entry.ratings.get(name)
 
+    def allowed(self, part_id: str, name: str, quantity: str) -> Figure | None:
+        """Return a rating as the board's derating leaves it, its source saying so, or None.
+
+        ``quantity`` is ``voltage``, ``current`` or ``power``.
+        """
+        rating, kind = self.rating(part_id, name), self.part(part_id).kind
+        if rating is None:
+            return None
+        derating = self.limits.derating
+        return Figure(rating.value * share_of(derating, kind, quantity), derated(derating, kind, quantity, rating.source))
+
+    def share(self, part_id: str, quantity: str) -> float:
+        """Return the share of a part's ratings that the board's derating leaves."""
+        return share_of(self.limits.derating, self.part(part_id).kind, quantity)
+
     def rating_key(self, part_id: str, name: str) -> str:
         """Return the part-data key that would supply a rating: ``QSN1.ratings.ib``."""
+        return self.data_key(part_id, f"ratings.{name}")
+
+    def data_key(self, part_id: str, name: str) -> str:
+        """Return the part-data key of something about a part: ``QSN1.safe_area``."""
         part = self.part(part_id)
         number = part.part_number if part.entry is None else part.entry.part_number
-        return f"{toml_key(number)}.ratings.{name}" if number else f"a part number for {part_id}, then its ratings.{name}"
+        return f"{toml_key(number)}.{name}" if number else f"a part number for {part_id}, then its {name}"
 
     def limits_key(self, name: str) -> str:
         """Return the limits-file key that would state something of this limiter: ``[limiter.Q10] carry``."""

@@ -1,14 +1,17 @@
-"""Does anything burn while the limiter holds: the resistors' own heat against their derated ratings."""
+"""Does anything burn while the limiter holds: the resistors' own heat and voltage against their derated ratings."""
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+import math
+from collections.abc import Iterable, Iterator
 from dataclasses import dataclass
 
 from protlint.board.graph import BoardPart, Element
 from protlint.board.shares import part_shares
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
+from protlint.checks.derating import derated, share_of
 from protlint.findings import Level, NotChecked, WorkingLine
+from protlint.partdata.book import Figure
 from protlint.quantities import format_quantity, preferred
 from protlint.solve.solution import Point
 
@@ -21,81 +24,97 @@ OVERLOAD_TIMES, OVERLOAD_S = 6.25, 5.0
 COMMON_RATINGS_W = (0.0625, 0.1, 0.125, 0.25, 0.5, 0.75, 1.0, 2.0, 3.0, 5.0, 7.0, 10.0, 15.0, 20.0, 25.0, 50.0, 100.0)
 """Ratings that resistors are sold with; common practice of the trade."""
 
+ANY_BEARS_V = 15.0
+"""The least element voltage of any chip resistor size (0201; Yageo chip resistor catalogue): below it none need be known."""
+
 
 @dataclass(frozen=True, slots=True)
 class Rating:
-    """A resistor's rated dissipation, its derating line and where they come from."""
+    """A resistor's rated dissipation, its derating line, and the share of it that a derating standard leaves."""
 
-    power_W: float
+    power: Figure
     knee_degC: float
     zero_degC: float
-    source: str
+    share: float = 1.0
 
     def at_W(self, ambient_degC: float) -> float:
         """Return the dissipation allowed at an ambient: full to the knee, then straight down to the zero point."""
         span = self.zero_degC - self.knee_degC
         left = (self.zero_degC - ambient_degC) / span if span > 0.0 else float(ambient_degC <= self.knee_degC)
-        return self.power_W * min(1.0, max(0.0, left))
+        return self.share * self.power.value * min(1.0, max(0.0, left))
 
 
 @dataclass(frozen=True, slots=True)
 class Load:
-    """What one resistor dissipates in one condition at one ambient, and how often its rating that allows."""
+    """What one resistor bears in one condition at one ambient: its current, and how often its rating that may be there.
 
-    part: BoardPart
+    ``times`` is how many times its rating the part bears for as long as the condition lasts.
+    """
+
     condition: str
     ambient_degC: float
-    power_W: float
-    allowed_W: float
-    rating: Rating
     current_A: float
     resistance_ohm: float
+    times: float = 1.0
 
     @property
-    def ratio(self) -> float:
-        """Return the dissipation over what is allowed; infinite where nothing is."""
-        return self.power_W / self.allowed_W if self.allowed_W > 0.0 else float("inf")
+    def power_W(self) -> float:
+        """Return the dissipation (Joule's law)."""
+        return self.current_A**2 * self.resistance_ohm
+
+    @property
+    def voltage_V(self) -> float:
+        """Return the voltage across the part (Ohm's law)."""
+        return abs(self.current_A) * self.resistance_ohm
 
 
 def sense_resistor_power(case: Case) -> Iterator[Answer]:
-    """Yield a finding for each part of the sense resistance that takes too much power."""
-    yield from _resistor_power(case, "sense-resistor-power", ("sense",))
+    """Yield findings for each part of the sense resistance that takes too much power or voltage."""
+    yield from _resistors(case, "sense-resistor-power", case.limiter.elements.get("sense", ()))
 
 
 def resistor_power(case: Case) -> Iterator[Answer]:
-    """Yield a finding for each other resistor on the bench that takes too much power."""
-    sense = set(case.limiter.elements.get("sense", ()))
-    roles = tuple(role for role, indices in case.limiter.elements.items() if role != "sense" and not sense & set(indices))
-    yield from _resistor_power(case, "resistor-power", roles)
+    """Yield findings for each other resistor on the bench that takes too much power or voltage."""
+    sense = case.limiter.elements.get("sense", ())
+    others = [index for index in dict.fromkeys(case.bench.element_of.values()) if index not in sense]
+    yield from _resistors(case, "resistor-power", others)
 
 
-def _resistor_power(case: Case, check: str, roles: tuple[str, ...]) -> Iterator[Answer]:
-    indices = sorted({index for role in roles for index in case.limiter.elements.get(role, ())})
-    for index in indices:
+def _resistors(case: Case, check: str, indices: Iterable[int]) -> Iterator[Answer]:
+    for index in sorted(indices):
         element = case.board.elements[index]
         if element.kind != "resistor":
             continue
         for part_index in element.parts:
             part = case.board.parts[part_index]
-            rating = resistor_rating(part)
-            if rating is None:
-                yield NotChecked(check, _rating_key(case, part))
-                continue
-            loads = list(_loads(case, element, part, rating))
+            loads = list(_loads(case, element, part))
             if loads:
-                yield from _judged(case, check, max(loads, key=lambda load: load.ratio))
+                yield from _power(case, check, part, loads)
+                yield from _voltage(case, check, part, max(loads, key=lambda load: load.voltage_V))
 
 
-def resistor_rating(part: BoardPart) -> Rating | None:
+def _power(case: Case, check: str, part: BoardPart, loads: list[Load]) -> Iterator[Answer]:
+    rating = resistor_rating(case, part)
+    if rating is None:
+        yield NotChecked(check, _rating_key(case, part))
+        return
+    worst = max(loads, key=lambda load: _ratio(load.power_W, rating.at_W(load.ambient_degC) * load.times))
+    allowed_W = rating.at_W(worst.ambient_degC) * worst.times
+    level = _level(case, check, _ratio(worst.power_W, allowed_W))
+    if level is not None:
+        yield _burns(case, check, part, worst, rating, level)
+
+
+def resistor_rating(case: Case, part: BoardPart) -> Rating | None:
     """Return a resistor's rating: its own power property, else that of its part data (by part number or footprint)."""
     ratings = part.entry.ratings if part.entry is not None else {}
     knee = ratings["power_at"].value if "power_at" in ratings else KNEE_DEGC
     zero = ratings["zero_at"].value if "zero_at" in ratings else ZERO_DEGC
+    share = share_of(case.limits.derating, "resistor", "power")
     if part.values.power_W is not None:
-        return Rating(part.values.power_W, knee, zero, "stated in the netlist")
-    if "power" in ratings:
-        return Rating(ratings["power"].value, knee, zero, ratings["power"].source)
-    return None
+        return Rating(Figure(part.values.power_W, "stated in the netlist"), knee, zero, share)
+    power = case.rating(part.id, "power")
+    return None if power is None else Rating(power, knee, zero, share)
 
 
 def _rating_key(case: Case, part: BoardPart) -> str:
@@ -104,54 +123,58 @@ def _rating_key(case: Case, part: BoardPart) -> str:
     return f"a POWER property of {part.id}, a FOOTPRINT that names its size, or part data with its ratings.power"
 
 
-def _loads(case: Case, element: Element, part: BoardPart, rating: Rating) -> Iterator[Load]:
-    """Yield what a resistor takes in the held short and at carry, at every ambient."""
+def _loads(case: Case, element: Element, part: BoardPart) -> Iterator[Load]:
+    """Yield what a resistor bears in the held short and at carry, at every ambient."""
     values_ohm = {index: case.board.parts[index].values.value or 0.0 for index in element.parts}
-    share = part_shares(element.tree, values_ohm)[part.index]
     names = [name for name, index in case.bench.element_of.items() if index == element.index]
     value_ohm = values_ohm[part.index]
+    if not names or value_ohm <= 0.0:
+        return
+    share = part_shares(element.tree, values_ohm)[part.index].current if len(values_ohm) > 1 else 1.0
     short_s = case.needs.short_s
     times = OVERLOAD_TIMES if short_s is not None and short_s <= OVERLOAD_S else 1.0
     for point, row in zip(case.solution.high_short, case.solution.currents, strict=False):
-        current_A = _current_A(point, names) * share.current
-        yield Load(
-            part,
-            "in the held short",
-            row.ambient_degC,
-            current_A**2 * value_ohm,
-            rating.at_W(row.ambient_degC) * times,
-            rating,
-            current_A,
-            value_ohm,
-        )
+        yield Load("in the held short", row.ambient_degC, _current_A(point, names) * share, value_ohm, times)
     carried = case.solution.at_carry
     if carried is not None:
-        current_A = _current_A(carried, names) * share.current
+        current_A = _current_A(carried, names) * share
+        carry_A = case.needs.carry_A
+        if carry_A is not None and element.index in case.limiter.elements.get("sense", ()) and carried.output_A > carry_A:
+            current_A *= carry_A / carried.output_A
         for row in case.solution.currents:
-            allowed_W = rating.at_W(row.ambient_degC)
-            yield Load(part, "at carry", row.ambient_degC, current_A**2 * value_ohm, allowed_W, rating, current_A, value_ohm)
+            yield Load("at carry", row.ambient_degC, current_A, value_ohm)
 
 
 def _current_A(point: Point, names: list[str]) -> float:
     return max((abs(point.states[name].current_A) for name in names if name in point.states), default=0.0)
 
 
-def _judged(case: Case, check: str, load: Load) -> Iterator[Answer]:
-    level: Level
-    if load.ratio > case.threshold(check, "error"):
-        level = "error"
-    elif load.ratio > case.threshold(check, "warning"):
-        level = "warning"
-    else:
-        return
+def _ratio(value: float, allowed: float) -> float:
+    if allowed > 0.0:
+        return value / allowed
+    return math.inf if value > 0.0 else 0.0
+
+
+def _level(case: Case, check: str, ratio: float) -> Level | None:
+    if ratio > case.threshold(check, "error"):
+        return "error"
+    return "warning" if ratio > case.threshold(check, "warning") else None
+
+
+def _burns(case: Case, check: str, part: BoardPart, load: Load, rating: Rating, level: Level) -> Answer:
     ambient = format_quantity(load.ambient_degC, "degC")
-    yield case.finding(
+    allowed_W = rating.at_W(load.ambient_degC) * load.times
+    how = f"full to {rating.knee_degC:g} degC, none at {rating.zero_degC:g} degC"
+    if load.times != 1.0:
+        how += f", {load.times:g} times that for no more than {OVERLOAD_S:g} s"
+    share = f", {_ratio(load.power_W, allowed_W) * 100.0:.3g} % of the" if allowed_W > 0.0 else "; the rating leaves"
+    return case.finding(
         check,
-        f"{load.part.id} takes {format_quantity(load.power_W, 'W')} {load.condition} at {ambient}, "
-        f"{format_quantity(load.ratio, '%')} of the {format_quantity(load.allowed_W, 'W')} it may take there",
-        parts=(load.part.id,),
+        f"{part.id} takes {format_quantity(load.power_W, 'W')} {load.condition} at {ambient}{share} "
+        f"{format_quantity(allowed_W, 'W')} it may take there",
+        parts=(part.id,),
         working=(
-            WorkingLine("current", f"{load.condition}, every tolerance set for the most", load.current_A, "A"),
+            WorkingLine("current", f"solved {load.condition}, every tolerance set for the most", load.current_A, "A"),
             WorkingLine(
                 "power",
                 f"({format_quantity(load.current_A, 'A')})^2 * {format_quantity(load.resistance_ohm, 'ohm')}",
@@ -159,27 +182,77 @@ def _judged(case: Case, check: str, load: Load) -> Iterator[Answer]:
                 "W",
                 "Joule's law",
             ),
-            WorkingLine("rating", load.rating.source, load.rating.power_W, "W", load.rating.source),
-            WorkingLine(
-                f"allowed at {ambient}",
-                f"full to {load.rating.knee_degC:g} degC, none at {load.rating.zero_degC:g} degC",
-                load.allowed_W,
-                "W",
-                "IEC 60115-1",
-            ),
+            WorkingLine("rating", "at its knee or below", rating.power.value, "W", _source(case, rating.power.source)),
+            WorkingLine(f"allowed at {ambient}", how, allowed_W, "W", "IEC 60115-1"),
         ),
-        remedy=_bigger(case, check, load),
+        remedy=_bigger(case, check, part, load, rating),
         level=level,
         assumption=case.assumes(*ALL_ASSUMPTIONS),
-        subject=load.part.id,
+        subject=part.id,
     )
 
 
-def _bigger(case: Case, check: str, load: Load) -> str:
+def _source(case: Case, source: str, quantity: str = "power") -> str:
+    return derated(case.limits.derating, "resistor", quantity, source)
+
+
+def rating_to_fit_W(power_W: float, rating: Rating, ambient_degC: float, share: float, times: float = 1.0) -> float | None:
+    """Return the next rating sold whose part stays below a share of what it may take; None where none may take anything."""
+    left = rating.at_W(ambient_degC) * times / rating.power.value
+    if left <= 0.0:
+        return None
+    needed_W = power_W / (left * share)
+    return next((sold for sold in COMMON_RATINGS_W if sold >= needed_W), preferred(needed_W, "E6", "up"))
+
+
+def _bigger(case: Case, check: str, part: BoardPart, load: Load, rating: Rating) -> str:
     """Return the rating to fit: the next one sold that stays below the warning threshold at that ambient."""
-    derating = load.allowed_W / load.rating.power_W if load.rating.power_W > 0.0 else 0.0
-    if derating <= 0.0:
-        return f"fit a resistor that may dissipate at {format_quantity(load.ambient_degC, 'degC')}"
-    needed_W = load.power_W / (derating * case.threshold(check, "warning"))
-    sold_W = next((rating for rating in COMMON_RATINGS_W if rating >= needed_W), preferred(needed_W, "E6", "up"))
-    return f"fit {format_quantity(load.resistance_ohm, 'ohm')} rated {format_quantity(sold_W, 'W')} as {load.part.id}"
+    sold_W = rating_to_fit_W(load.power_W, rating, load.ambient_degC, case.threshold(check, "warning"), load.times)
+    if sold_W is None:
+        return f"fit a resistor that may dissipate at {format_quantity(load.ambient_degC, 'degC')} as {part.id}"
+    return f"fit {format_quantity(load.resistance_ohm, 'ohm')} rated {format_quantity(sold_W, 'W')} as {part.id}"
+
+
+def _voltage(case: Case, check: str, part: BoardPart, load: Load) -> Iterator[Answer]:
+    """Yield a finding where the voltage across a resistor passes what its element bears."""
+    share = share_of(case.limits.derating, "resistor", "voltage")
+    lowest = case.threshold(check, "warning") * share * ANY_BEARS_V
+    stated = part.values.voltage_V
+    rating = Figure(stated, "stated in the netlist") if stated is not None else case.rating(part.id, "voltage_max")
+    if rating is None:
+        if load.voltage_V > lowest:
+            yield NotChecked(check, _voltage_key(case, part))
+        return
+    ratio = load.voltage_V / (share * rating.value)
+    level = _level(case, check, ratio)
+    if level is None:
+        return
+    needed_V = preferred(load.voltage_V / (share * case.threshold(check, "warning")), "E24", "up")
+    yield case.finding(
+        check,
+        f"{part.id} has {format_quantity(load.voltage_V, 'V')} across it {load.condition} at "
+        f"{format_quantity(load.ambient_degC, 'degC')}, {ratio * 100.0:.3g} % of what its element may bear",
+        parts=(part.id,),
+        working=(
+            WorkingLine(
+                "voltage",
+                f"{format_quantity(load.current_A, 'A')} * {format_quantity(load.resistance_ohm, 'ohm')}",
+                load.voltage_V,
+                "V",
+                "Ohm's law",
+            ),
+            WorkingLine(
+                "it may bear", "element voltage", share * rating.value, "V", _source(case, rating.source, "voltage")
+            ),
+        ),
+        remedy=f"fit a resistor rated {format_quantity(needed_V, 'V')} or more as {part.id}, or two in series",
+        level=level,
+        assumption=case.assumes(*ALL_ASSUMPTIONS),
+        subject=f"{part.id} voltage",
+    )
+
+
+def _voltage_key(case: Case, part: BoardPart) -> str:
+    if part.entry is not None:
+        return case.rating_key(part.id, "voltage_max")
+    return f"a VOLTAGE property of {part.id}, a FOOTPRINT that names its size, or part data with its ratings.voltage_max"

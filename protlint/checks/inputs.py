@@ -1,10 +1,14 @@
-"""What keeps a limiter from being judged: values nobody can read, parts nobody knows, pins on two nets."""
+"""What keeps a limiter from being judged, or casts doubt on it: values, pins and part data, of the parts that it needs."""
 
 from __future__ import annotations
 
 from collections.abc import Iterator
 
 from protlint.checks.case import Answer, Case
+from protlint.findings import WorkingLine
+
+CHIP_ROLES = ("pass", "driver", "shunt", "steering")
+"""The roles of semiconductors."""
 
 
 def value_unreadable(case: Case) -> Iterator[Answer]:
@@ -26,8 +30,7 @@ def value_unreadable(case: Case) -> Iterator[Answer]:
 
 def part_data_missing(case: Case) -> Iterator[Answer]:
     """Yield a finding for each transistor or diode of the limiter that the part data does not know."""
-    roles = ("pass", "driver", "shunt", "steering")
-    for part_id in case.parts(*roles):
+    for part_id in case.parts(*CHIP_ROLES):
         part = case.part(part_id)
         if part.kind == "resistor" or part.entry is not None:
             continue
@@ -42,3 +45,82 @@ def part_data_missing(case: Case) -> Iterator[Answer]:
             else f"give {part_id} a part number",
             subject=part_id,
         )
+
+
+def pins_unknown(case: Case) -> Iterator[Answer]:
+    """Yield a finding for each part on the bench whose pins nobody can tell apart."""
+    for missing in case.bench.missing:
+        if missing.subject != "part" or missing.part is None:
+            continue
+        part = case.part(missing.part)
+        pins = ", ".join(pin.number or pin.name for pin in part.part.pins)
+        yield case.finding(
+            "pins-unknown",
+            f"the roles of the pins of {part.id} are not known (its pins: {pins})",
+            parts=(part.id,),
+            working=(),
+            remedy=f"state them in [pins.{part.part_number or part.part.cell}] of the limits file or in its part data",
+            subject=part.id,
+        )
+
+
+def pin_on_two_nets(case: Case) -> Iterator[Answer]:
+    """Yield a finding for each pin of the limiter's parts that the netlist joins to two nets."""
+    netlist = case.board.netlist
+    own = set(_needed(case))
+    for doubt in netlist.pins_on_two_nets:
+        part = netlist.parts[doubt.part]
+        if part.id not in own:
+            continue
+        first, second = (netlist.nets[net].name for net in doubt.nets)
+        yield case.finding(
+            "pin-on-two-nets",
+            f"pin {doubt.pin} of {part.id} is joined to {first} and to {second}; they were taken for one net",
+            parts=(part.id,),
+            nets=(first, second),
+            working=(),
+            remedy=f"join pin {doubt.pin} of {part.id} to one net only, or name the two alike",
+            subject=f"{part.id} {doubt.pin}",
+        )
+
+
+def part_data_contradicts(case: Case) -> Iterator[Answer]:
+    """Yield a finding for each part that netlist and parts list say different things of, and for ratings that cannot all be
+    true."""
+    for part_id in _needed(case):
+        for one in case.differences.get(part_id, ()):
+            yield case.finding(
+                "part-data-contradicts",
+                f"{part_id}: the netlist gives its {one.attribute.replace('_', ' ')} as {one.netlist}, the parts list "
+                f"({one.file}:{one.line}) as {one.parts_list}; the netlist counts here",
+                parts=(part_id,),
+                working=(),
+                remedy=f"make {one.attribute.replace('_', ' ')} of {part_id} {one.netlist} in both, or {one.parts_list}",
+                level="warning",
+                subject=f"{part_id} {one.attribute}",
+            )
+    for part_id in case.parts(*CHIP_ROLES):
+        entry = case.part(part_id).entry
+        for doubt in entry.contradictions if entry is not None else ():
+            assert entry is not None
+            kept = [entry.ratings[name] for name in doubt.ratings if name in entry.ratings]
+            yield case.finding(
+                "part-data-contradicts",
+                f"the ratings of {part_id} ({entry.part_number}) cannot all be true: {doubt.says}",
+                parts=(part_id,),
+                working=tuple(
+                    WorkingLine(name, "kept, the careful one", figure.value, "", figure.source)
+                    for name, figure in zip(doubt.ratings, kept, strict=False)
+                ),
+                remedy=f"hold {', '.join(doubt.ratings)} of {entry.part_number} against its maker's data sheet",
+                subject=f"{part_id} {' '.join(doubt.ratings)}",
+            )
+
+
+def _needed(case: Case) -> tuple[str, ...]:
+    """Return the ids of the parts that the limiter's circuit is made of, in board order."""
+    indices = {index for indices in case.limiter.elements.values() for index in indices} | set(
+        case.bench.element_of.values()
+    )
+    parts = sorted({part for index in indices for part in case.board.elements[index].parts})
+    return tuple(case.board.parts[part].id for part in parts)

@@ -9,6 +9,7 @@ from protlint.checks.case import Case
 from protlint.quantities import format_quantity
 from protlint.quantities.series import within
 from protlint.solve.answers import solve
+from protlint.solve.circuit import Circuit
 from protlint.solve.solution import Solution
 
 REACH = 1.15
@@ -23,11 +24,8 @@ def sense_remedy(case: Case) -> str | None:
     The limit goes nearly as 1 / R, so carry bounds the resistance from above and cap from below. Values of E24 inside that
     window, then of E96, are solved over all corners until one meets both.
     """
-    sense = (
-        [device for device in case.bench.circuit.devices if device.name in case.bench.circuit.sense]
-        if case.bench.circuit
-        else []
-    )
+    circuit = case.circuit
+    sense = [device for device in circuit.devices if device.name in circuit.sense]
     if not sense or case.solution.not_solved is not None:
         return None
     now_ohm = sense[0].model["R"]
@@ -66,13 +64,17 @@ def _candidates(lower_ohm: float | None, upper_ohm: float | None) -> Sequence[fl
 
 def resolve(case: Case, factor: float) -> Solution:
     """Solve the case's circuit again with its sense resistance multiplied by ``factor``."""
-    circuit = case.bench.circuit
-    assert circuit is not None
+    circuit = case.circuit
     devices = tuple(
         replace(device, model={**device.model, "R": device.model["R"] * factor}) if device.name in circuit.sense else device
         for device in circuit.devices
     )
-    return solve(replace(circuit, devices=devices), case.limits.ambient_degC)
+    return solve_again(case, replace(circuit, devices=devices))
+
+
+def solve_again(case: Case, circuit: Circuit) -> Solution:
+    """Solve a changed circuit at the case's ambients."""
+    return solve(circuit, case.limits.ambient_degC)
 
 
 def meets(solution: Solution, carry_A: float | None, cap_A: float | None) -> bool:

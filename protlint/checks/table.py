@@ -4,7 +4,19 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Mapping
 
-from protlint.checks import base_stop, currents, heat, inputs, loop
+from protlint.checks import (
+    base_stop,
+    currents,
+    drive,
+    heat,
+    inputs,
+    load,
+    loop,
+    pass_area,
+    pass_device,
+    reverse,
+    shunt,
+)
 from protlint.checks.case import Answer, Case
 
 CHECKS: Mapping[str, Callable[[Case], Iterable[Answer]]] = {
@@ -12,12 +24,27 @@ CHECKS: Mapping[str, Callable[[Case], Iterable[Answer]]] = {
     "drive-insufficient": currents.drive_insufficient,
     "cap-exceeded": currents.cap_exceeded,
     "base-stop-absent": base_stop.base_stop_absent,
+    "base-stop-low": base_stop.base_stop_low,
+    "base-stop-high": base_stop.base_stop_high,
     "sense-resistor-power": heat.sense_resistor_power,
+    "resistor-power": heat.resistor_power,
+    "drive-unlimited": drive.drive_unlimited,
+    "driver-overloaded": drive.driver_overloaded,
+    "shunt-overloaded": shunt.shunt_overloaded,
+    "reverse-base-emitter": reverse.reverse_base_emitter,
+    "pass-overheated": pass_device.pass_overheated,
+    "pass-outside-safe-area": pass_area.pass_outside_safe_area,
+    "foldback-locks-out": load.foldback_locks_out,
     "compensation-absent": loop.compensation_absent,
     "value-unreadable": inputs.value_unreadable,
     "part-data-missing": inputs.part_data_missing,
+    "pins-unknown": inputs.pins_unknown,
+    "pin-on-two-nets": inputs.pin_on_two_nets,
+    "part-data-contradicts": inputs.part_data_contradicts,
 }
 """Asked of every limiter."""
 
-WITHOUT_SOLUTION = frozenset({"value-unreadable", "part-data-missing"})
+WITHOUT_SOLUTION = frozenset(
+    {"value-unreadable", "part-data-missing", "pins-unknown", "pin-on-two-nets", "part-data-contradicts"}
+)
 """Those that are asked even where the circuit could not be solved."""

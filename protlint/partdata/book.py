@@ -15,7 +15,7 @@ from protlint.partdata.ratings import MODEL_OF, RATINGS, RATINGS_OF, Figure
 from protlint.sources import load_toml
 from protlint.tables import Table
 
-__all__ = ["Book", "Contradiction", "Figure", "HfePoint", "PartEntry", "SafeArea", "load_book"]
+__all__ = ["Book", "Contradiction", "Figure", "HfePoint", "PartEntry", "SafeArea", "TransientPoint", "load_book"]
 
 SEMICONDUCTORS = (
     "npn", "pnp", "npn-darlington", "pnp-darlington", "nmos", "pmos", "diode", "zener", "thyristor", "ic",
@@ -28,6 +28,15 @@ class SafeArea:
 
     lasts_s: float
     points: tuple[tuple[float, float], ...]
+    source: str
+
+
+@dataclass(frozen=True, slots=True)
+class TransientPoint:
+    """How much each watt has warmed a junction above its case after a time (transient thermal impedance)."""
+
+    lasts_s: float
+    K_per_W: float
     source: str
 
 
@@ -64,6 +73,8 @@ class PartEntry:
     hfe_points: tuple[HfePoint, ...] = ()
     footprints: tuple[str, ...] = ()
     contradictions: tuple[Contradiction, ...] = ()
+    transient: tuple[TransientPoint, ...] = ()
+    """The transient thermal impedance to the case, rising in time."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -149,7 +160,7 @@ def _entries(path: str | Path) -> Iterable[PartEntry]:
 
 
 def _entry(name: str, table: Table) -> PartEntry:
-    table.only(("kind", "pins", "pins_source", "source", "footprints", "ratings", "model", "safe_area"))
+    table.only(("kind", "pins", "pins_source", "source", "footprints", "ratings", "model", "safe_area", "transient"))
     kind = table.word("kind", RATINGS_OF)
     if kind is None:
         raise table.error(f'part {name} lacks its kind, such as kind = "npn"')
@@ -175,6 +186,7 @@ def _entry(name: str, table: Table) -> PartEntry:
         hfe_points=points,
         footprints=table.texts("footprints"),
         contradictions=contradictions,
+        transient=_transient(table, source),
     )
 
 
@@ -267,3 +279,18 @@ def _safe_area(table: Table, entry_source: str) -> SafeArea:
     if not falling or points[0][0] <= 0.0 or points[-1][1] <= 0.0:
         raise table.error("the points of a safe area rise in voltage and fall in current, all above zero", "points")
     return SafeArea(lasts_s, points, table.text("source") or entry_source)
+
+
+def _transient(table: Table, entry_source: str) -> tuple[TransientPoint, ...]:
+    points = []
+    for point in table.tables("transient"):
+        point.only(("lasts", "impedance", "source"))
+        lasts_s = point.quantity("lasts", "time", above=0.0)
+        impedance = point.quantity("impedance", "thermal resistance", above=0.0)
+        if lasts_s is None or impedance is None or lasts_s == float("inf"):
+            raise point.error('a transient impedance has a time and its value: lasts = "10 ms", impedance = "0.4 K/W"')
+        points.append(TransientPoint(lasts_s, impedance, point.text("source") or entry_source))
+    points.sort(key=lambda one: one.lasts_s)
+    if any(before.lasts_s == after.lasts_s or before.K_per_W > after.K_per_W for before, after in pairwise(points)):
+        raise table.error("a transient impedance rises with time, one value a time", "transient")
+    return tuple(points)

@@ -1,0 +1,164 @@
+"""Does the pass device stand what the limiter puts it to: its junction, and its safe operating area."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+
+from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
+from protlint.checks.derating import share_of
+from protlint.checks.thermal import Heating, Junction, allowed_rise_K, hottest_case_degC, junction, made_for_a_sink
+from protlint.findings import NotChecked, WorkingLine
+from protlint.quantities import format_quantity, preferred, within
+from protlint.solve.solution import Point
+
+ASSUMED_IMPEDANCE = "the transient thermal impedance of {part} is bounded by the square root of time up to rth_jc"
+
+WORTH_SAYING = 1.01
+"""A point of the locus counts beside the short where it heats the device this much more."""
+
+LEAST_SINK_K_PER_W = 0.1
+"""No sink is better than this without water; common practice of the trade."""
+
+
+@dataclass(frozen=True, slots=True)
+class Stress:
+    """One solved point that heats the pass devices: in words, at an ambient, for a time."""
+
+    condition: str
+    ambient_degC: float
+    point: Point
+    lasts_s: float
+
+
+def pass_overheated(case: Case) -> Iterator[Answer]:
+    """Yield a finding for each pass device or driver whose junction gets too hot."""
+    check = "pass-overheated"
+    settles_s, holds_s = case.threshold(check, "settles"), case.threshold(check, "case_holds")
+    for part_id, _ in case.device_parts("pass", "driver"):
+        found: list[tuple[Stress, Heating, Junction]] = []
+        for stress in stresses(case):
+            heat = heating(case, part_id, stress)
+            answer = junction(case, part_id, heat, settles_s=settles_s, case_holds_s=holds_s)
+            if isinstance(answer, str):
+                yield NotChecked(check, answer)
+                continue
+            found.append((stress, heat, answer))
+        if not found:
+            continue
+        if any(one.assumed for _, _, one in found):
+            case.assumptions.append(ASSUMED_IMPEDANCE.format(part=part_id))
+        stress, heat, worst = max(found, key=lambda one: one[2].ratio)
+        if worst.too_hot:
+            yield _overheated(case, part_id, stress, worst, _cooler(case, part_id, found))
+
+
+def stresses(case: Case) -> Iterator[Stress]:
+    """Yield the held short and, where it is another, the point of greatest pass dissipation, at every ambient."""
+    solution = case.solution
+    lasts_s = math.inf if case.needs.short_s is None else case.needs.short_s
+    for row, short, worst in zip(solution.currents, solution.high_short, solution.high_worst, strict=False):
+        yield Stress("in the held short", row.ambient_degC, short, lasts_s)
+        if pass_power_W(case, worst) > WORTH_SAYING * pass_power_W(case, short):
+            at = f"with the output at {format_quantity(worst.output_V, 'V')}"
+            yield Stress(at, row.ambient_degC, worst, lasts_s)
+
+
+def heating(case: Case, part_id: str, stress: Stress) -> Heating:
+    """Return what heats a part at a solved point; a stated sink is shared by all that is on it."""
+    before = case.solution.at_carry
+    return Heating(
+        own_W=case.power_W(stress.point, part_id),
+        shared_W=pass_power_W(case, stress.point),
+        ambient_degC=stress.ambient_degC,
+        lasts_s=stress.lasts_s,
+        sink_K_per_W=case.needs.sink_K_per_W if on_the_sink(case, part_id) else None,
+        before_W=case.power_W(before, part_id) if before is not None else 0.0,
+        before_shared_W=pass_power_W(case, before) if before is not None else 0.0,
+    )
+
+
+def on_the_sink(case: Case, part_id: str) -> bool:
+    """Tell whether the limiter's sink, where it has one, cools a part: every pass device, and a driver made for a sink."""
+    if part_id in case.parts("pass"):
+        return True
+    return made_for_a_sink(case.rating(part_id, "rth_jc"), case.rating(part_id, "rth_ja"))
+
+
+def pass_power_W(case: Case, point: Point) -> float:
+    """Return what everything on the sink dissipates together."""
+    parts = dict.fromkeys(case.parts("pass", "driver"))
+    return sum(case.power_W(point, part_id) for part_id in parts if on_the_sink(case, part_id))
+
+
+def _overheated(case: Case, part_id: str, stress: Stress, worst: Junction, remedy: str) -> Answer:
+    state = next(stress.point.states[name] for name in reversed(case.devices_of(part_id)))
+    ambient = format_quantity(stress.ambient_degC, "degC")
+    lasts = "" if math.isinf(stress.lasts_s) else f" for {format_quantity(stress.lasts_s, 's')}"
+    said = f"it may take {format_quantity(worst.allowed_W, 'W')} there"
+    if worst.degC > worst.limit_degC:
+        reaches, may = format_quantity(worst.degC, "degC"), format_quantity(worst.limit_degC, "degC")
+        said = f"its junction reaches {reaches}, it may reach {may}"
+    return case.finding(
+        "pass-overheated",
+        f"{part_id} takes {format_quantity(worst.own_W, 'W')} {stress.condition}{lasts} at {ambient}: {said}",
+        parts=(part_id,),
+        working=(
+            WorkingLine("current", f"{stress.condition}, every tolerance set for the most", abs(state.current_A), "A"),
+            WorkingLine("voltage across it", "solved", abs(state.voltage_V), "V"),
+            WorkingLine("power", "all that flows into it", worst.own_W, "W", "Joule's law"),
+            *worst.lines,
+            WorkingLine("it may take", "where its junction is at what it may reach", worst.allowed_W, "W"),
+        ),
+        remedy=remedy,
+        assumption=case.assumes(*ALL_ASSUMPTIONS) or worst.assumed,
+        subject=part_id,
+    )
+
+
+def _cooler(case: Case, part_id: str, found: list[tuple[Stress, Heating, Junction]]) -> str:
+    """Return the sink that will do in every condition; else the device that would, or for how long this one can."""
+    _, heat, worst = max(found, key=lambda one: one[2].ratio)
+    if all(one.on_sink for _, _, one in found):
+        needed = min(_sink_for(case, part_id, heating, one) for _, heating, one in found)
+        if needed >= LEAST_SINK_K_PER_W:
+            value = preferred(needed, "E24", "down")
+            return f"give {part_id} a sink of {format_quantity(value, 'K/W')} or less, case to ambient"
+    limit = case.rating(part_id, "tj_max")
+    assert limit is not None
+    base_degC = worst.from_degC if not math.isinf(heat.lasts_s) else heat.ambient_degC
+    room_K = allowed_rise_K(case.limits.derating, case.part(part_id).kind, limit.value, base_degC)
+    if room_K <= 0.0:
+        return f"{part_id} cannot work at {format_quantity(heat.ambient_degC, 'degC')}: its junction may reach no more"
+    per_W = preferred(room_K / worst.own_W, "E24", "down")
+    to = "case" if worst.on_sink or not math.isinf(heat.lasts_s) else "free air"
+    why = "no sink will do: " if worst.on_sink else ""
+    lasts_s = _time_for(case, part_id, heat)
+    shorter = f", or end the short within {format_quantity(lasts_s, 's')}" if lasts_s is not None else ""
+    return (
+        f"{why}fit a device with {format_quantity(per_W, 'K/W')} or less from junction to {to} as {part_id}, or let it take "
+        f"no more than {format_quantity(room_K / worst.per_W, 'W')}{shorter}"
+    )
+
+
+def _sink_for(case: Case, part_id: str, heat: Heating, one: Junction) -> float:
+    """Return the thermal resistance from case to ambient with which the junction just stays at what it may reach."""
+    limit, rated = case.rating(part_id, "tj_max"), case.rating(part_id, "power_case")
+    assert limit is not None
+    derating, kind = case.limits.derating, case.part(part_id).kind
+    if rated is not None and one.own_W > share_of(derating, kind, "power") * rated.value:
+        return 0.0
+    case_degC = hottest_case_degC(derating, kind, limit.value, one.own_W * one.per_W)
+    return (case_degC - heat.ambient_degC) / heat.shared_W
+
+
+def _time_for(case: Case, part_id: str, heat: Heating) -> float | None:
+    """Return how long the part stands this power, in steps of E6, or None where no time is found."""
+    check = "pass-overheated"
+    settles_s, holds_s = case.threshold(check, "settles"), case.threshold(check, "case_holds")
+    for lasts_s in sorted(within(1e-4, holds_s, "E6"), reverse=True):
+        answer = junction(case, part_id, replace(heat, lasts_s=lasts_s), settles_s=settles_s, case_holds_s=holds_s)
+        if lasts_s < heat.lasts_s and not isinstance(answer, str) and not answer.too_hot:
+            return lasts_s
+    return None

@@ -1,0 +1,77 @@
+"""The safe operating area: how much current a pass device bears at a voltage, for a time, at a case temperature.
+
+Published curves hold at a case of 25 degC. Between their corners current and voltage follow a straight line on logarithmic
+scales. Above 25 degC the thermal bound (constant power) shrinks with (T_J,max - T_C) / (T_J,max - 25 degC); the bound of
+second breakdown shrinks more slowly (makers' derating figures for power transistors). Below the first corner's voltage the
+curve's greatest power and the current ratings bound it, beyond the last corner nothing is known but that it is less still.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+from itertools import pairwise
+
+from protlint.partdata.book import SafeArea
+
+Corners = Sequence[tuple[float, float]]
+
+
+@dataclass(frozen=True, slots=True)
+class Bound:
+    """What may flow at a voltage and what bounds it; ``at_most`` where the curve ends before that voltage: it is no more."""
+
+    current_A: float
+    by: str
+    at_most: bool = False
+
+
+def curve_for(curves: Sequence[SafeArea], lasts_s: float, dc_from_s: float) -> SafeArea | None:
+    """Return the curve that holds for a time: the shortest that lasts as long, or None.
+
+    One that lasts ``dc_from_s`` or longer holds for ever.
+    """
+    lasting = [(curve.lasts_s, place) for place, curve in enumerate(curves) if curve.lasts_s >= min(lasts_s, dc_from_s)]
+    return curves[min(lasting)[1]] if lasting else None
+
+
+def on_curve_A(corners: Corners, voltage_V: float) -> float | None:
+    """Return the current of a curve at a voltage, straight between corners on log-log scales; None outside them."""
+    if voltage_V == corners[0][0]:
+        return corners[0][1]
+    for (low_V, low_A), (high_V, high_A) in pairwise(corners):
+        if low_V <= voltage_V <= high_V:
+            part = math.log(voltage_V / low_V) / math.log(high_V / low_V)
+            return low_A * math.exp(part * math.log(high_A / low_A))
+    return None
+
+
+def allowed(
+    corners: Corners, voltage_V: float, *, thermal_left: float, breakdown_left: float, power_share: float = 1.0
+) -> Bound:
+    """Return what a curve allows at a voltage and a case temperature.
+
+    ``thermal_left`` and ``breakdown_left`` are the shares of the thermal bound and of the curve itself that are left at that
+    temperature; ``power_share`` derates the thermal bound once more.
+    """
+    power_W = max(volts * amperes for volts, amperes in corners) * thermal_left * power_share
+    by_power = Bound(power_W / voltage_V if voltage_V > 0.0 else math.inf, "power")
+    at_A = on_curve_A(corners, voltage_V)
+    if at_A is None:
+        if voltage_V <= corners[0][0]:
+            return by_power
+        beyond = Bound(corners[-1][1] * breakdown_left, "the curve's last corner", at_most=True)
+        return min(by_power, beyond, key=lambda bound: bound.current_A) if by_power.current_A < beyond.current_A else beyond
+    by_breakdown = Bound(at_A * breakdown_left, "second breakdown")
+    return by_power if by_power.current_A <= by_breakdown.current_A else by_breakdown
+
+
+def thermal_share(case_degC: float, tj_max_degC: float) -> float:
+    """Return the share of the thermal bound that is left at a case temperature."""
+    return min(1.0, max(0.0, (tj_max_degC - case_degC) / (tj_max_degC - 25.0)))
+
+
+def breakdown_share(case_degC: float, tj_max_degC: float, left_at_limit: float) -> float:
+    """Return the share of the second-breakdown bound left at a case temperature: in a straight line to ``left_at_limit``."""
+    return 1.0 - (1.0 - left_at_limit) * (1.0 - thermal_share(case_degC, tj_max_degC))
