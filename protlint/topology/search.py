@@ -152,16 +152,20 @@ def _paths(step: PathStep, state: State, index: Index) -> Iterable[Growth]:
 
 
 def _single(step: PathStep, state: State, index: Index, start: int, target: int | None) -> list[Growth]:
+    """Return what a single element makes: the one that joins start and target, or every one that leads from start."""
     if step.least > 1:
         return []
-    elements = index.on_net(start, step.kinds) if target is None else index.between(start, target, step.kinds)
+    if target is None:
+        on_net = index.on_net(start, step.kinds)
+        onward = _onward(step, state, index, on_net, (start,))
+        return [((net,), (element,), ()) for element, net in onward if _is_free_end(net, step, state)]
     found: list[Growth] = []
-    for element, net in _onward(step, state, index, elements, (start,)):
-        if net == target:
-            return [((), (element,), ())]
-        if target is None and _is_free_end(net, step, state):
-            found.append(((net,), (element,), ()))
-    return found
+    for element in index.between(start, target, step.kinds):
+        ends = index.ends(element)
+        joined = (ends == (start, target) and step.direction >= 0) or (ends == (target, start) and step.direction <= 0)
+        if joined and element not in state.used:
+            found.append(((), (element,), ()))
+    return found if step.least == step.most else found[:1]
 
 
 def _ways(step: PathStep, state: State, index: Index, start: int, target: int | None) -> Iterator[Growth]:
