@@ -150,7 +150,7 @@ def prepare_step(circuit: Circuit, ambients_degC: tuple[float, float, float], sh
 def _begin_V(held: Held) -> float:
     """Return the output voltage that leaves pass device and sense resistance together 2 V."""
     stage, circuit = held.stage, held.stage.network.circuit
-    ends = _passing_ends(circuit)
+    ends = passing_ends(circuit)
     if not ends:
         raise CircuitError("the pass device and its sense resistance are not in one current path: output")
     place = {node: index for index, node in enumerate(stage.network.nodes)}
@@ -176,7 +176,7 @@ def _begin_V(held: Held) -> float:
     return left_V + float(share) * (right_V - left_V)
 
 
-def _passing_ends(circuit: Circuit) -> list[tuple[str, str]]:
+def passing_ends(circuit: Circuit) -> list[tuple[str, str]]:
     """Return, for each pass device with a sense resistance at its common terminal, the outer ends of the two."""
     nodes = {device.name: device.nodes for device in circuit.devices}
     ends = []

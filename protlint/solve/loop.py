@@ -20,7 +20,7 @@ from protlint.solve.network import Network, compile_network
 from protlint.solve.parameters import CircuitError
 from protlint.solve.solution import Loop
 from protlint.solve.stage import Run, Stage, sweep_stage
-from protlint.solve.wired import linearise, look, wired_frequencies
+from protlint.solve.wired import counting, linearise, look, wired_frequencies
 from protlint.solve.worst import find_worst, make_scope, opening_scene
 
 USUAL = 1
@@ -50,7 +50,9 @@ def solve_loop(
         expanded = expand(network, output="wired")
         held = hold(network, ambients_degC, short)
         shot = look(expanded, held.short, np.array([USUAL]))
-        s = wired_frequencies(linearise(expanded, shot), 0.0)[0]
+        wired = linearise(expanded, shot)
+        s = wired_frequencies(wired, 0.0)[0]
+        own = damping(s[counting(wired, 0.0, s[None])[0]]).min(initial=1.0)
         gain = _gain(network, shot, s)
         worst = None
         if corners:
@@ -68,6 +70,7 @@ def solve_loop(
         low_frequency_gain=None if gain is None else gain.low_frequency,
         crossover_Hz=None if gain is None else gain.crossover_Hz,
         phase_margin_deg=None if gain is None else gain.phase_margin_deg,
+        own_damping=float(own) if natural else None,
         worst=worst,
         natural=natural,
         table=() if gain is None else gain.table,

@@ -108,8 +108,10 @@ class Worst:
 class Loop:
     """The small-signal answers at the held short.
 
-    ``natural`` are the natural frequencies as (Hz, damping), slowest first, a pair once; ``table`` the loop gain as (Hz,
-    magnitude, phase in degrees, 0 where the feedback is negative).
+    ``own_damping`` is the least damping of the limiter's own modes, parts as drawn: of those whose damping rises by more
+    than a quarter with the shunt's transconductance taken out; 1 where none of them swings. ``natural`` are the natural
+    frequencies as (Hz, damping), slowest first, a pair once; ``table`` the loop gain as (Hz, magnitude, phase in degrees, 0
+    where the feedback is negative).
     """
 
     least_damping: float | None
@@ -118,6 +120,7 @@ class Loop:
     low_frequency_gain: float | None
     crossover_Hz: float | None
     phase_margin_deg: float | None
+    own_damping: float | None = None
     worst: Worst | None = None
     natural: tuple[tuple[float, float], ...] = ()
     table: tuple[tuple[float, float, float], ...] = ()
@@ -153,6 +156,12 @@ class Solution:
     """The point of greatest pass dissipation at each ambient, same corner."""
     high_locus: tuple[tuple[Point, ...], ...] = ()
     """The locus at each ambient, same corner, from the short outwards."""
+    unlimited: tuple[Point, ...] = ()
+    """The short at each ambient with the shunt taken out, as drawn."""
+    on_end: str | None = None
+    """Which end of the drive turns the pass device on: ``low`` or ``high``."""
+    sources: bool = False
+    """Whether the output current then flows out of the stage."""
     sensitivities: tuple[Sensitivity, ...] = ()
     """Of holds at usual ambient: relative per relative change of a resistor, B_F, supply or drive end; per volt of V_BE."""
     regulates: Regulates | None = None

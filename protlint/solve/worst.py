@@ -109,6 +109,17 @@ def find_worst(scope: Scope, opening: Scene) -> Worst:
     return min(found, key=lambda one: one.damping)
 
 
+def damping_at(scope: Scope, place: Worst, inner: Array) -> float:
+    """Return the damping that counts at one ambient, wiring and corner, ``inner`` as for :func:`opening_scene`."""
+    if place.ambient_degC is None or place.wiring_H is None:
+        return 1.0
+    position = np.array([[place.corner.get(f"{axis.device}.{axis.parameter}", 0.0)] for axis in scope.axes])
+    ambient = np.array([scope.ambients_degC.index(place.ambient_degC)])
+    _, wired = _linear(scope, _solve(scope, position.reshape(len(scope.axes), 1), ambient, inner))
+    s = wired_frequencies(wired, place.wiring_H)
+    return float(damping(np.where(counting(wired, place.wiring_H, s), s, np.inf)).min(initial=1.0))
+
+
 def _solve(scope: Scope, position: Array, ambient: NDArray[np.intp], inner: Array) -> Scene:
     """Solve lanes at corners, starting from inner voltages (ports, ambients)."""
     ambient_K = np.array(scope.ambients_degC)[ambient] + KELVIN

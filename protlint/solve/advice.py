@@ -1,0 +1,249 @@
+"""What to fit so that the limiting loop is well damped, and what each part that is there does to it.
+
+Each capacitor is taken out in turn, and the base stop bridged, to see what it does to the damping. Then the preferred
+values of IEC 60063 (E6) are tried from the smallest on, at the three usual places: collector to base of the shunt, from the
+drive to the far end of the sense resistance, base to emitter. The first one that reaches the aim in the worst of corners,
+ambients and fault wiring is advised, with what it does to the delay.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from protlint.quantities.series import within
+from protlint.solve.circuit import Circuit, Device
+from protlint.solve.delay import passing_ends, solve_step
+from protlint.solve.expanded import Expanded, expand
+from protlint.solve.loop import USUAL, WITH_CONTROL, Held, hold, solve_loop
+from protlint.solve.modes import damping
+from protlint.solve.network import compile_network
+from protlint.solve.parameters import LINK_OHM, CircuitError
+from protlint.solve.solution import Loop, Step, Worst
+from protlint.solve.wired import counting, linearise, look, wired_frequencies
+from protlint.solve.worst import Scene, damping_at, find_worst, make_scope, opening_scene
+
+AIM = 0.6
+COSTS = 0.05
+"""A part that lessens the damping by no more than this costs nothing worth naming."""
+
+LEAST_F, GREATEST_F = 10e-12, 10e-6
+SERIES = "E6"
+ADVISED = "advised capacitor"
+
+COLLECTOR_BASE, DRIVE_FAR, BASE_EMITTER = "collector to base", "drive to far end", "base to emitter"
+
+
+@dataclass(frozen=True, slots=True)
+class Effect:
+    """What a part does to the damping: its name, whether it is the base stop, and the damping without it, nominal and worst,
+    of the limiter's own modes."""
+
+    part: str
+    base_stop: bool
+    own_damping: float
+    worst_damping: float
+
+
+@dataclass(frozen=True, slots=True)
+class Fit:
+    """A capacitor to fit: its place in words and as nodes, its value, what has to go for it (None: nothing), the damping
+    then, nominal and worst, and the step then (None where it was not asked for or could not be worked out)."""
+
+    place: str
+    nodes: tuple[str, str]
+    farad: float
+    instead_of: str | None
+    own_damping: float
+    worst_damping: float
+    step: Step | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Advice:
+    """Advice on a loop.
+
+    The damping of the limiter's own modes, parts as drawn and at worst, whether that is enough, what each part does to it,
+    the part that costs the most (None: none does), and what to fit: where the damping is not enough, ``fit`` None means that
+    none of the usual places does. ``step`` is the step as drawn.
+    """
+
+    own_damping: float
+    worst_damping: float
+    enough: bool
+    effects: tuple[Effect, ...]
+    costs: str | None
+    fit: Fit | None
+    step: Step | None = None
+
+
+def advise(
+    circuit: Circuit, ambients_degC: tuple[float, float, float], *, short: str | None = None, delay: bool = True
+) -> Advice | str:
+    """Return advice on the circuit's loop, or the reason why there is none.
+
+    ``short`` as for ``protlint.solve.loop.solve_loop``; without ``delay`` the steps into the short are left out.
+    """
+    loop = solve_loop(circuit, ambients_degC, short=short)
+    if not isinstance(loop, Loop):
+        return loop
+    now = _figures(loop)
+    effects = tuple(_effects(circuit, ambients_degC, short))
+    dearest = max(effects, key=lambda one: one.worst_damping, default=None)
+    costs = dearest.part if dearest is not None and dearest.worst_damping > now[1] + COSTS else None
+    enough = now[1] >= AIM
+    fit = None if enough else _smallest(circuit, ambients_degC, short, None)
+    costing = next((one for one in circuit.devices if one.name == costs and one.kind == "capacitor"), None)
+    if fit is None and not enough and costing is not None:
+        fit = _smallest(_without(circuit, costing.name), ambients_degC, short, costing.name)
+    step = None
+    if delay:
+        step = _step(circuit, ambients_degC, short)
+        if fit is not None:
+            fit = replace(fit, step=_step(fitted(circuit, fit), ambients_degC, short))
+    return Advice(*now, enough, effects, costs, fit, step)
+
+
+def fitted(circuit: Circuit, fit: Fit) -> Circuit:
+    """Return the circuit with the advised capacitor in it, and without what has to go for it."""
+    if fit.instead_of is not None:
+        circuit = _without(circuit, fit.instead_of)
+    return _with(circuit, fit.nodes, fit.farad)
+
+
+def places(circuit: Circuit) -> dict[str, tuple[str, str]]:
+    """Return the usual places of a compensation capacitor by name, as pairs of nodes."""
+    shunt = next((one for one in circuit.devices if one.name in circuit.shunt), None)
+    if shunt is None:
+        return {}
+    upper, lower = shunt.nodes[0], shunt.nodes[-1]
+    ends = passing_ends(circuit)
+    far = ends[0][1] if ends else lower
+    found = {DRIVE_FAR: (_beyond_steering(circuit, upper, shunt.name), far)}
+    if shunt.kind in WITH_CONTROL:
+        base = shunt.nodes[1]
+        found = {COLLECTOR_BASE: (upper, base), **found, BASE_EMITTER: (base, lower)}
+    held = {*circuit.held, circuit.output, circuit.drive.node}
+    return {name: (a, b) for name, (a, b) in found.items() if a != b and not {a, b} <= held}
+
+
+def _figures(loop: Loop) -> tuple[float, float]:
+    """Return the damping of the limiter's own modes, nominal and worst."""
+    own = 1.0 if loop.own_damping is None else loop.own_damping
+    return own, own if loop.worst_damping is None else loop.worst_damping
+
+
+def _effects(circuit: Circuit, ambients_degC: tuple[float, float, float], short: str | None) -> Iterator[Effect]:
+    changed = [(one.name, False, _without(circuit, one.name)) for one in circuit.devices if one.kind == "capacitor"]
+    stop = base_stop(circuit)
+    if stop is not None:
+        bridged = tuple(replace(one, model={"R": LINK_OHM}) if one is stop else one for one in circuit.devices)
+        changed.append((stop.name, True, replace(circuit, devices=bridged)))
+    for name, is_stop, without in changed:
+        loop = solve_loop(without, ambients_degC, short=short)
+        if isinstance(loop, Loop):
+            yield Effect(name, is_stop, *_figures(loop))
+
+
+def base_stop(circuit: Circuit) -> Device | None:
+    """Return the resistor between the shunt's control terminal and the sense resistance, None where there is none."""
+    shunt = next((one for one in circuit.devices if one.name in circuit.shunt and one.kind in WITH_CONTROL), None)
+    if shunt is None:
+        return None
+    watched = {node for one in circuit.devices if one.name in circuit.sense for node in one.nodes} - {shunt.nodes[2]}
+    return next(
+        (
+            one
+            for one in circuit.devices
+            if one.kind == "resistor" and shunt.nodes[1] in one.nodes and watched & set(one.nodes) - {shunt.nodes[1]}
+        ),
+        None,
+    )
+
+
+def _smallest(
+    circuit: Circuit, ambients_degC: tuple[float, float, float], short: str | None, instead_of: str | None
+) -> Fit | None:
+    """Return the smallest capacitor that reaches the aim, the usual places in turn for each value."""
+    try:
+        bench = _bench(circuit, ambients_degC, short)
+    except CircuitError:
+        return None
+    for farad in within(LEAST_F, GREATEST_F, SERIES):
+        for trial in bench:
+            found = _tried(trial, farad)
+            if found is not None:
+                return Fit(trial.place, trial.nodes, farad, instead_of, *found)
+    return None
+
+
+@dataclass(frozen=True, slots=True)
+class _Trial:
+    """One place with a capacitor at it, ready for any value: ``known`` collects where smaller ones failed."""
+
+    place: str
+    nodes: tuple[str, str]
+    held: Held
+    expanded: Expanded
+    opening: Scene
+    ambients_degC: tuple[float, float, float]
+    known: list[Worst]
+
+
+def _bench(circuit: Circuit, ambients_degC: tuple[float, float, float], short: str | None) -> list[_Trial]:
+    """Return the places to try; capacitors move no operating point, so all share one solved scene."""
+    held = hold(compile_network(circuit), ambients_degC, short)
+    found: list[_Trial] = []
+    opening: Scene | None = None
+    for name, nodes in places(circuit).items():
+        expanded = expand(compile_network(_with(circuit, nodes, LEAST_F)), output="wired")
+        if opening is None:
+            opening = opening_scene(make_scope(held.stage, expanded, ambients_degC), held.short.operating.inner)
+        found.append(_Trial(name, nodes, held, expanded, opening, ambients_degC, []))
+    return found
+
+
+def _tried(trial: _Trial, farad: float) -> tuple[float, float] | None:
+    """Return nominal and worst damping with a value where the worst reaches the aim, else None.
+
+    Cheap questions first: the nominal circuit, then the places where smaller values failed.
+    """
+    passive = tuple(replace(one, model={"C": farad}) if one.name == ADVISED else one for one in trial.expanded.passive)
+    expanded = replace(trial.expanded, passive=passive)
+    nominal = linearise(expanded, look(expanded, trial.held.short, np.array([USUAL])))
+    s = wired_frequencies(nominal, 0.0)
+    own = float(damping(s[counting(nominal, 0.0, s)]).min(initial=1.0))
+    if own < AIM:
+        return None
+    scope = make_scope(trial.held.stage, expanded, trial.ambients_degC)
+    inner = trial.held.short.operating.inner
+    if any(damping_at(scope, one, inner) < AIM for one in trial.known):
+        return None
+    worst = find_worst(scope, trial.opening)
+    if worst.damping < AIM:
+        trial.known.append(worst)
+        return None
+    return own, worst.damping
+
+
+def _beyond_steering(circuit: Circuit, node: str, shunt: str) -> str:
+    """Return the drive's node: beyond a diode that alone joins the shunt's collector to it, else the node itself."""
+    others = [one for one in circuit.devices if node in one.nodes and one.name != shunt and one.kind != "capacitor"]
+    if len(others) == 1 and others[0].kind == "diode":
+        return next(end for end in others[0].nodes if end != node)
+    return node
+
+
+def _with(circuit: Circuit, nodes: tuple[str, str], farad: float) -> Circuit:
+    return replace(circuit, devices=(*circuit.devices, Device(ADVISED, "capacitor", nodes, {"C": farad})))
+
+
+def _without(circuit: Circuit, name: str) -> Circuit:
+    return replace(circuit, devices=tuple(one for one in circuit.devices if one.name != name))
+
+
+def _step(circuit: Circuit, ambients_degC: tuple[float, float, float], short: str | None) -> Step | None:
+    found = solve_step(circuit, ambients_degC, short=short)
+    return found if isinstance(found, Step) else None
