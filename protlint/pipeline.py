@@ -10,9 +10,10 @@ from typing import Literal
 
 from protlint.board.graph import Board, build_board
 from protlint.board.parts_list import PartsList, read_parts_list
+from protlint.checks.board_case import BoardCase
 from protlint.checks.case import Case
 from protlint.checks.catalogue import CheckRow, load_catalogue
-from protlint.checks.table import CHECKS, WITHOUT_SOLUTION
+from protlint.checks.table import BOARD_CHECKS, CHECKS, WITHOUT_SOLUTION
 from protlint.findings import LEVELS, Finding, Level, NotChecked, identifying_parts, stamp_fingerprints
 from protlint.limits import CheckSetting, LimiterLimits, Limits, load_limits, needs_of
 from protlint.netlist import read_netlist
@@ -52,7 +53,7 @@ class Review:
     """The whole answer for one netlist; limiters and findings in report order, the worst first.
 
     ``assumed`` is what was assumed about the board as a whole; ``remarks`` is said once, below everything: expired waivers,
-    waivers that match nothing, part data that contradicts itself.
+    waivers that match nothing, part data that contradicts itself, what could not be checked of the board as a whole.
     """
 
     board: Board
@@ -139,16 +140,35 @@ def review_netlist(netlist: Netlist, desk: Desk) -> Review:
     found = find_limiters(board, desk.rules)
     reviewed: list[ReviewedLimiter] = []
     findings: list[Finding] = []
+    cases: dict[str, Case] = {}
     solved = Memo()
     for limiter in found.limiters:
-        one, its_findings = _review_limiter(board, limiter, desk, solved)
+        one, case, its_findings = _review_limiter(board, limiter, desk, solved)
         reviewed.append(one)
+        cases[limiter.id] = case
         findings += its_findings
-    return _finish(board, found, reviewed, findings, desk)
+    more, unanswered = _ask_of_the_board(BoardCase(board, found, cases, desk.limits, desk.catalogue))
+    reviewed = [replace(one, not_checked=(*one.not_checked, *unanswered.pop(one.limiter.id, ()))) for one in reviewed]
+    not_asked = [f"{one.check} not checked: needs {one.needs}" for left in unanswered.values() for one in left]
+    return _finish(board, found, reviewed, findings + more, desk, not_asked)
 
 
-def _review_limiter(board: Board, limiter: Limiter, desk: Desk, solved: Memo) -> tuple[ReviewedLimiter, list[Finding]]:
-    """Return one limiter reviewed, with its findings; equal benches are solved once."""
+def _ask_of_the_board(whole: BoardCase) -> tuple[list[Finding], dict[str | None, list[NotChecked]]]:
+    """Put the checks of the whole board; return their findings, and by limiter what could not be checked."""
+    findings: list[Finding] = []
+    unanswered: dict[str | None, list[NotChecked]] = {}
+    for check, ask in BOARD_CHECKS.items():
+        for answer in ask(whole):
+            if isinstance(answer, Finding):
+                settings = (whole.needs_at(answer).checks, whole.limits.checks)
+                findings += _stamped((answer,), check, whole.rows, settings)
+            else:
+                unanswered.setdefault(answer.limiter, []).append(answer.what)
+    return findings, unanswered
+
+
+def _review_limiter(board: Board, limiter: Limiter, desk: Desk, solved: Memo) -> tuple[ReviewedLimiter, Case, list[Finding]]:
+    """Return one limiter reviewed, its case, and its findings; equal benches are solved once."""
     needs = needs_of(desk.limits, *_names(board, limiter))
     bench = build_bench(board, limiter, limits=desk.limits, needs=needs)
     solution = Solution(not_solved="; ".join(one.needs for one in bench.missing) or "its circuit is not known")
@@ -176,7 +196,7 @@ def _review_limiter(board: Board, limiter: Limiter, desk: Desk, solved: Memo) ->
         assumed=tuple(sentence for _, sentence in bench.assumed),
         bench=bench,
     )
-    return reviewed, findings
+    return reviewed, case, findings
 
 
 def _names(board: Board, limiter: Limiter) -> tuple[str, ...]:
@@ -205,12 +225,19 @@ def _stamped(
     return stamped
 
 
-def _finish(board: Board, found: Found, reviewed: list[ReviewedLimiter], findings: list[Finding], desk: Desk) -> Review:
+def _finish(
+    board: Board,
+    found: Found,
+    reviewed: list[ReviewedLimiter],
+    findings: list[Finding],
+    desk: Desk,
+    not_asked: Sequence[str],
+) -> Review:
     """Place, name, waive and sort the findings, and give every limiter its verdict."""
     findings = [_placed(board, finding) for finding in findings]
     known = {one.limiter.id: identifying_parts(one.limiter.roles) for one in reviewed}
     marked: Sequence[Finding] = stamp_fingerprints(findings, known)
-    remarks: tuple[str, ...] = tuple(desk.book.remarks)
+    remarks: tuple[str, ...] = (*desk.book.remarks, *not_asked)
     if desk.waivers is not None:
         marked, more = apply_waivers(marked, desk.waivers, on=desk.on)
         remarks += tuple(more)

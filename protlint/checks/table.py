@@ -15,8 +15,14 @@ from protlint.checks import (
     pass_area,
     pass_device,
     reverse,
+    second_road,
+    sets,
+    sharing,
     shunt,
+    unguarded,
+    wiring,
 )
+from protlint.checks.board_case import BoardAnswer, BoardCase
 from protlint.checks.case import Answer, Case
 
 CHECKS: Mapping[str, Callable[[Case], Iterable[Answer]]] = {
@@ -36,6 +42,7 @@ CHECKS: Mapping[str, Callable[[Case], Iterable[Answer]]] = {
     "pass-outside-safe-area": pass_area.pass_outside_safe_area,
     "foldback-locks-out": load.foldback_locks_out,
     "compensation-absent": loop.compensation_absent,
+    "share-unsensed": sharing.share_unsensed,
     "value-unreadable": inputs.value_unreadable,
     "part-data-missing": inputs.part_data_missing,
     "pins-unknown": inputs.pins_unknown,
@@ -48,3 +55,12 @@ WITHOUT_SOLUTION = frozenset(
     {"value-unreadable", "part-data-missing", "pins-unknown", "pin-on-two-nets", "part-data-contradicts"}
 )
 """Those that are asked even where the circuit could not be solved."""
+
+BOARD_CHECKS: Mapping[str, Callable[[BoardCase], Iterable[BoardAnswer]]] = {
+    **{fault: wiring.wiring_check(fault) for fault in wiring.WIRING_FAULTS},
+    "limiter-absent": unguarded.limiter_absent,
+    "second-road": second_road.second_road,
+    "halves-unequal": sets.halves_unequal,
+    "channels-unequal": sets.channels_unequal,
+}
+"""Asked of the whole board once, when every limiter has been asked."""

@@ -1,0 +1,218 @@
+"""Do limiters that belong together agree: the two halves of an output stage, and like channels."""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from statistics import median_low
+
+from protlint.checks.board_case import BoardAnswer, BoardCase, Unanswered
+from protlint.checks.case import ALL_ASSUMPTIONS, DRAWN, Case
+from protlint.checks.likeness import (
+    Change,
+    Spot,
+    Values,
+    change,
+    differing,
+    plain,
+    to_fit,
+    usual,
+    usual_holds_A,
+    values_of,
+    with_values,
+)
+from protlint.checks.sizing import meets
+from protlint.findings import Finding, NotChecked, WorkingLine
+from protlint.quantities import format_quantity
+from protlint.quantities.series import within
+from protlint.solve.answers import solve
+from protlint.solve.solution import Currents, Pair, Solution
+
+LEAST_CHANNELS = 3
+"""Two channels that differ do not tell which of them is odd."""
+
+REACH = 1.1
+"""How far around the sense resistance that goes as 1 / R preferred values are tried; the solved circuit decides."""
+
+
+@dataclass(frozen=True, slots=True)
+class Held:
+    """What a limiter holds at the usual ambient: as drawn, and from its low to its high end."""
+
+    ambient_degC: float
+    usual_A: float
+    range_A: Pair
+
+
+def halves_unequal(whole: BoardCase) -> Iterator[BoardAnswer]:
+    """Yield a finding where the two polarities of an output stage hold currents that no tolerance brings together."""
+    check = "halves-unequal"
+    for ids in whole.found.pairs:
+        halves = [(case, held) for case in map(whole.cases.__getitem__, ids) if (held := _held(case.solution.currents))]
+        if len(halves) < len(ids):
+            yield from (Unanswered(name, NotChecked(check, f"what {' and '.join(ids)} hold, solved")) for name in ids)
+            continue
+        (low, low_held), (high, high_held) = sorted(halves, key=lambda half: half[1].usual_A)
+        if _apart(low_held, high_held, low.threshold(check, "difference")):
+            yield _halves(high, high_held, low, low_held)
+
+
+def channels_unequal(whole: BoardCase) -> Iterator[BoardAnswer]:
+    """Yield a finding for each of three or more like limiters that has a value other than most and holds another current."""
+    for ids in whole.found.sets:
+        if len(ids) >= LEAST_CHANNELS:
+            cases = [whole.cases[name] for name in ids]
+            values = [values_of(case) for case in cases]
+            odd = _odd_spots(values)
+            for place, spots in enumerate(odd):
+                if spots:
+                    yield from _channel(cases, values, odd, place)
+
+
+def _held(rows: Sequence[Currents]) -> Held | None:
+    row = usual(rows)
+    if row is None or not row.holds_A or row.holds_range_A is None:
+        return None
+    return Held(row.ambient_degC, row.holds_A, row.holds_range_A)
+
+
+def _apart(one: Held, other: Held, most: float) -> bool:
+    """Tell whether two limiters hold currents more than a share of the smaller apart, with a gap between their ranges."""
+    gap = max(one.range_A[0], other.range_A[0]) > min(one.range_A[1], other.range_A[1])
+    return gap and max(one.usual_A, other.usual_A) > (1.0 + most) * min(one.usual_A, other.usual_A)
+
+
+def _halves(high: Case, high_held: Held, low: Case, low_held: Held) -> Finding:
+    changed, changes = _what_mends(high, low)
+    unlike = [one for case, beside in ((high, low), (low, high)) for one in _unlike(case, beside)]
+    ratio = high_held.usual_A / low_held.usual_A - 1.0
+    lines = []
+    for case, held in ((high, high_held), (low, low_held)):
+        lines.append(WorkingLine(f"holds, {case.limiter.id}", f"as drawn at {held.ambient_degC:g} degC", held.usual_A, "A"))
+        for end, value_A in zip(("low", "high"), held.range_A, strict=True):
+            lines.append(WorkingLine(f"its {end} end", "every tolerance at its worst", value_A, "A"))
+    lines.append(WorkingLine("difference", "of the usual values, over the smaller", ratio, ""))
+    parts = [part for one in unlike for part in one.parts]
+    return changed.finding(
+        "halves-unequal",
+        f"{high.limiter.id} holds {format_quantity(high_held.usual_A, 'A')}, the other half, {low.limiter.id}, "
+        f"{format_quantity(low_held.usual_A, 'A')}: {ratio:.0%} apart, more than tolerance makes up for",
+        parts=tuple(dict.fromkeys((*parts, *(part for case in (high, low) for part in case.parts("sense", "shunt"))))),
+        working=tuple(lines),
+        remedy=f"{to_fit(changes)}, so that {high.limiter.id} and {low.limiter.id} agree"
+        if changes
+        else "no sense resistance of one half brings the two together: compare drives, gains and presets",
+        assumption=high.assumes(*ALL_ASSUMPTIONS) or low.assumes(*ALL_ASSUMPTIONS),
+    )
+
+
+def _unlike(case: Case, beside: Case) -> tuple[Change, ...]:
+    """Return the changes that make a half like the other."""
+    return differing(case, values_of(beside), values_of(case))
+
+
+def _what_mends(high: Case, low: Case) -> tuple[Case, tuple[Change, ...]]:
+    """Return the half to change and the values that bring it to the other, found by solving it again.
+
+    The larger current comes down where what the board needs allows it: that is the careful side.
+    """
+    for case, beside in ((high, low), (low, high)):
+        for changes in _candidates(case, beside):
+            solution = solve(with_values(case, changes), case.limits.ambient_degC)
+            mine, its = _held(solution.currents), _held(beside.solution.currents)
+            most = case.threshold("halves-unequal", "difference")
+            if mine and its and not _apart(mine, its, most) and _meets_needs(case, solution):
+                return case, changes
+    return high, ()
+
+
+def _meets_needs(case: Case, solution: Solution) -> bool:
+    needs = case.needs
+    return (needs.carry_A is None and needs.cap_A is None) or meets(solution, needs.carry_A, needs.cap_A)
+
+
+def _candidates(case: Case, beside: Case) -> Iterator[tuple[Change, ...]]:
+    """Yield changes to try: every value as in the other half, then other sense resistances alone."""
+    unlike = _unlike(case, beside)
+    if unlike:
+        yield unlike
+    sense = case.limiter.elements["sense"]
+    now_ohm = case.board.elements[sense[0]].value
+    mine_A, its_A = usual_holds_A(case), usual_holds_A(beside)
+    if now_ohm and mine_A and its_A:
+        aim_ohm = now_ohm * mine_A / its_A
+        for series in ("E12", "E24"):
+            for value in sorted(within(aim_ohm / REACH, aim_ohm * REACH, series), key=lambda one: abs(one - aim_ohm)):
+                yield tuple(change(case, element, value) for element in sense)
+
+
+def _odd_spots(values: Sequence[Values]) -> list[tuple[Spot, ...]]:
+    """Return for every channel the spots where its values are not those of a strict majority."""
+    odd: list[list[Spot]] = [[] for _ in values]
+    for spot in sorted({spot for one in values for spot in one}):
+        there = [plain(one, spot) for one in values]
+        most, count = Counter(there).most_common(1)[0]
+        if 2 * count > len(values):
+            for place, its in enumerate(there):
+                if its != most:
+                    odd[place].append(spot)
+    return [tuple(one) for one in odd]
+
+
+def _channel(
+    cases: Sequence[Case], values: Sequence[Values], odd: Sequence[tuple[Spot, ...]], place: int
+) -> Iterator[BoardAnswer]:
+    """Yield what is to be said of a channel with odd values, held against those that are like it in all else."""
+    case, check = cases[place], "channels-unequal"
+    others = [cases[one] for one in _held_against(values, odd, place)]
+    changes = differing(case, values_of(others[0]), odd[place])
+    if not changes or any(_asked(case) != _asked(one) for one in others):
+        return
+    its_A = usual_holds_A(case)
+    solved = [held_A for held_A in map(usual_holds_A, others) if held_A is not None]
+    if its_A is None or not solved:
+        yield Unanswered(case.limiter.id, NotChecked(check, f"what {case.limiter.id} and the channels like it hold, solved"))
+        return
+    held_A = median_low(solved)
+    if abs(its_A / held_A - 1.0) <= case.threshold(check, "difference"):
+        return
+    alike = ", ".join(one.limiter.id for one in others)
+    lines = []
+    for one in changes:
+        lines += [
+            WorkingLine(f"value of {one.names}", "as drawn", one.now, one.unit),
+            WorkingLine("in most channels", f"as in {alike}", one.then, one.unit),
+        ]
+    lines += [
+        WorkingLine(f"holds, {case.limiter.id}", "solved as drawn", its_A, "A"),
+        WorkingLine("holds, the others", f"the same, {alike}", held_A, "A"),
+    ]
+    yield case.finding(
+        check,
+        f"{'; '.join(one.says() for one in changes)} of {len(cases)} like channels: this one holds "
+        f"{format_quantity(its_A, 'A')}, they hold {format_quantity(held_A, 'A')}",
+        parts=tuple(part for one in changes for part in one.parts),
+        working=tuple(lines),
+        remedy=f"{to_fit(changes)}, or state under [limiter] the carry and cap that {case.limiter.id} alone is meant for",
+        assumption=case.assumes(*DRAWN),
+    )
+
+
+def _held_against(values: Sequence[Values], odd: Sequence[tuple[Spot, ...]], place: int) -> list[int]:
+    """Return the channels to hold an odd one against.
+
+    They have the values of most wherever it has not, and are like it in all else; where there are none, those that have the
+    values of most everywhere; else those that have them in the first spot where it has not.
+    """
+    mine = set(odd[place])
+    as_most = [one for one in range(len(values)) if mine.isdisjoint(odd[one])]
+    elsewhere = sorted({spot for one in values for spot in one} - mine)
+    alike = [one for one in as_most if all(plain(values[one], spot) == plain(values[place], spot) for spot in elsewhere)]
+    in_first = [one for one in range(len(values)) if odd[place][0] not in odd[one]]
+    return alike or [one for one in as_most if not odd[one]] or in_first
+
+
+def _asked(case: Case) -> tuple[float | None, ...]:
+    """Return what the limits file asks of a limiter's current."""
+    return case.needs.carry_A, case.needs.cap_A, case.needs.regulate_A
