@@ -22,6 +22,8 @@ from protlint.partdata.book import Book, load_book
 from protlint.solve.answers import solve
 from protlint.solve.bench import Bench, build_bench
 from protlint.solve.circuit import Circuit
+from protlint.solve.comparison import Comparison, compare_formula
+from protlint.solve.dynamics import with_dynamics
 from protlint.solve.memo import Memo
 from protlint.solve.solution import Solution
 from protlint.topology.language import Rules, load_rules
@@ -46,6 +48,8 @@ class ReviewedLimiter:
     not_checked: tuple[NotChecked, ...] = ()
     assumed: tuple[str, ...] = ()
     bench: Bench = field(default_factory=lambda: Bench(None))
+    formula: Comparison | None = None
+    """The closed form beside the solved held short, None where none fits."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -174,6 +178,7 @@ def _review_limiter(board: Board, limiter: Limiter, desk: Desk, solved: Memo) ->
     solution = Solution(not_solved="; ".join(one.needs for one in bench.missing) or "its circuit is not known")
     if bench.circuit is not None:
         solution = solve(bench.circuit, desk.limits.ambient_degC, memo=solved)
+        solution = with_dynamics(bench.circuit, solution, desk.limits.ambient_degC, memo=solved)
     case = Case(board, limiter, bench, solution, needs, desk.limits, desk.catalogue)
     findings: list[Finding] = []
     not_checked = [NotChecked(what, case.limits_key(key)) for what, key in solution.not_checked]
@@ -195,6 +200,7 @@ def _review_limiter(board: Board, limiter: Limiter, desk: Desk, solved: Memo) ->
         not_checked=tuple(dict.fromkeys(not_checked)),
         assumed=tuple(sentence for _, sentence in bench.assumed),
         bench=bench,
+        formula=compare_formula(bench.circuit, solution) if bench.circuit is not None else None,
     )
     return reviewed, case, findings
 
