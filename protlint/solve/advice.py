@@ -21,7 +21,7 @@ from protlint.solve.loop import USUAL, WITH_CONTROL, Held, hold, solve_loop
 from protlint.solve.modes import damping
 from protlint.solve.network import compile_network
 from protlint.solve.parameters import LINK_OHM, CircuitError
-from protlint.solve.solution import Loop, Step, Worst
+from protlint.solve.solution import Advice, Effect, Fit, Loop, Step, Worst
 from protlint.solve.wired import counting, linearise, look, wired_frequencies
 from protlint.solve.worst import Scene, damping_at, find_worst, make_scope, opening_scene
 
@@ -36,60 +36,24 @@ ADVISED = "advised capacitor"
 COLLECTOR_BASE, DRIVE_FAR, BASE_EMITTER = "collector to base", "drive to far end", "base to emitter"
 
 
-@dataclass(frozen=True, slots=True)
-class Effect:
-    """What a part does to the damping: its name, whether it is the base stop, and the damping without it, nominal and worst,
-    of the limiter's own modes."""
-
-    part: str
-    base_stop: bool
-    own_damping: float
-    worst_damping: float
-
-
-@dataclass(frozen=True, slots=True)
-class Fit:
-    """A capacitor to fit: its place in words and as nodes, its value, what has to go for it (None: nothing), the damping
-    then, nominal and worst, and the step then (None where it was not asked for or could not be worked out)."""
-
-    place: str
-    nodes: tuple[str, str]
-    farad: float
-    instead_of: str | None
-    own_damping: float
-    worst_damping: float
-    step: Step | None = None
-
-
-@dataclass(frozen=True, slots=True)
-class Advice:
-    """Advice on a loop.
-
-    The damping of the limiter's own modes, parts as drawn and at worst, whether that is enough, what each part does to it,
-    the part that costs the most (None: none does), and what to fit: where the damping is not enough, ``fit`` None means that
-    none of the usual places does. ``step`` is the step as drawn.
-    """
-
-    own_damping: float
-    worst_damping: float
-    enough: bool
-    effects: tuple[Effect, ...]
-    costs: str | None
-    fit: Fit | None
-    step: Step | None = None
-
-
 def advise(
-    circuit: Circuit, ambients_degC: tuple[float, float, float], *, short: str | None = None, delay: bool = True
+    circuit: Circuit,
+    ambients_degC: tuple[float, float, float],
+    *,
+    short: str | None = None,
+    delay: bool = True,
+    loop: Loop | None = None,
+    step: Step | None = None,
 ) -> Advice | str:
     """Return advice on the circuit's loop, or the reason why there is none.
 
-    ``short`` as for ``protlint.solve.loop.solve_loop``; without ``delay`` the steps into the short are left out.
+    ``short`` as for ``protlint.solve.loop.solve_loop``; without ``delay`` the steps into the short are left out. ``loop``
+    and ``step`` are the circuit's own where they are known already.
     """
-    loop = solve_loop(circuit, ambients_degC, short=short)
-    if not isinstance(loop, Loop):
-        return loop
-    now = _figures(loop)
+    known = solve_loop(circuit, ambients_degC, short=short) if loop is None else loop
+    if not isinstance(known, Loop):
+        return known
+    now = _figures(known)
     effects = tuple(_effects(circuit, ambients_degC, short))
     dearest = max(effects, key=lambda one: one.worst_damping, default=None)
     costs = dearest.part if dearest is not None and dearest.worst_damping > now[1] + COSTS else None
@@ -98,9 +62,8 @@ def advise(
     costing = next((one for one in circuit.devices if one.name == costs and one.kind == "capacitor"), None)
     if fit is None and not enough and costing is not None:
         fit = _smallest(_without(circuit, costing.name), ambients_degC, short, costing.name)
-    step = None
     if delay:
-        step = _step(circuit, ambients_degC, short)
+        step = _step(circuit, ambients_degC, short) if step is None else step
         if fit is not None:
             fit = replace(fit, step=_step(fitted(circuit, fit), ambients_degC, short))
     return Advice(*now, enough, effects, costs, fit, step)

@@ -115,7 +115,7 @@ def prepare_step(circuit: Circuit, ambients_degC: tuple[float, float, float], sh
     held = hold(network, ambients_degC, short)
     usual = np.array([USUAL])
     final_run = held.short
-    begin_V = circuit.output_V if circuit.output_V is not None else _begin_V(held)
+    begin_V = circuit.output_V if circuit.output_V is not None else begin_voltage(held)
     begin = run_stage(held.stage, final_run.lanes.ambient_K[usual], output_V=np.array([begin_V]))
     if not begin.operating.converged[0]:
         raise CircuitError(f"no operating point was found with the output at {begin_V:.3g} V to begin the step from")
@@ -147,8 +147,14 @@ def prepare_step(circuit: Circuit, ambients_degC: tuple[float, float, float], sh
     )
 
 
-def _begin_V(held: Held) -> float:
-    """Return the output voltage that leaves pass device and sense resistance together 2 V."""
+def begin_voltage(held: Held) -> float:
+    """Return the output voltage that leaves pass device and sense resistance together 2 V.
+
+    Raises
+    ------
+    CircuitError
+        Where there is none.
+    """
     stage, circuit = held.stage, held.stage.network.circuit
     ends = passing_ends(circuit)
     if not ends:

@@ -1,14 +1,18 @@
-"""Loop and step of a solved limiter, added to its solution."""
+"""Loop, step and advice of a solved limiter, added to its solution."""
 
 from __future__ import annotations
 
 from dataclasses import replace
 
+from protlint.solve.advice import advise
 from protlint.solve.circuit import Circuit
 from protlint.solve.delay import solve_step
 from protlint.solve.loop import solve_loop
 from protlint.solve.memo import Memo
-from protlint.solve.solution import Loop, Solution, Step
+from protlint.solve.solution import Advice, Loop, Solution, Step
+
+ADVISED_BELOW = 0.42
+"""Advice costs many times what the loop does; a loop damped better gets none unless it grows somewhere."""
 
 
 def with_dynamics(
@@ -19,7 +23,8 @@ def with_dynamics(
     step: bool = True,
     memo: Memo | None = None,
 ) -> Solution:
-    """Return a solution with its loop and, unless ``step`` is false, the step into the short, which takes longer.
+    """Return a solution with its loop, advice where that is badly damped, and, unless ``step`` is false, the step into the
+    short, which takes longer.
 
     Where one of them cannot be worked out, ``loop_needs`` or ``step_needs`` say what is missing; where the circuit itself
     could not be solved, or both are there already, the solution comes back as it was. With a ``memo`` that the solution came
@@ -34,10 +39,18 @@ def with_dynamics(
     if step and complete.step is None and not complete.step_needs:
         found = solve_step(circuit, ambients_degC, short=solution.short)
         complete = replace(complete, step=found) if isinstance(found, Step) else replace(complete, step_needs=_needs(found))
+    if complete.loop is not None and complete.advice is None and _badly_damped(complete.loop):
+        advice = advise(circuit, ambients_degC, short=solution.short, delay=step, loop=complete.loop, step=complete.step)
+        complete = replace(complete, advice=advice if isinstance(advice, Advice) else None)
     # reasons name parts, so only what holds for any equal circuit is kept
     if memo is not None and not complete.loop_needs and not complete.step_needs:
         memo.keep(circuit, ambients_degC, complete)
     return complete
+
+
+def _badly_damped(loop: Loop) -> bool:
+    own, worst = loop.own_damping, loop.worst_damping
+    return (own is not None and own < ADVISED_BELOW) or (worst is not None and worst < 0.0)
 
 
 def _needs(reason: str) -> tuple[str, ...]:

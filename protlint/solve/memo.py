@@ -9,7 +9,7 @@ from typing import Any
 
 from protlint.solve.circuit import Circuit
 from protlint.solve.corners import NET_PARAMETERS
-from protlint.solve.solution import Loop, Point, Solution
+from protlint.solve.solution import Advice, Loop, Point, Solution
 
 Key = tuple[Any, ...]
 Names = tuple[tuple[str, ...], tuple[str, ...]]
@@ -120,10 +120,26 @@ def renamed(solution: Solution, devices: Mapping[str, str], nodes: Mapping[str, 
         at_carry=point(solution.at_carry),
         high_short=several(solution.high_short),
         high_worst=several(solution.high_worst),
+        unlimited=several(solution.unlimited),
         high_locus=tuple(several(points) for points in solution.high_locus),
         sensitivities=tuple(replace(one, device=owner(one.device, one.parameter)) for one in solution.sensitivities),
         corners={end: {step(text): position for text, position in steps.items()} for end, steps in solution.corners.items()},
         loop=loop(solution.loop),
+        advice=None if solution.advice is None else advice_renamed(solution.advice, devices, nodes),
         short=None if solution.short is None else nodes.get(solution.short, solution.short),
         shorts=tuple(replace(one, node=nodes.get(one.node, one.node), point=point(one.point)) for one in solution.shorts),
     )
+
+
+def advice_renamed(advice: Advice, devices: Mapping[str, str], nodes: Mapping[str, str]) -> Advice:
+    """Return advice with devices and nodes called by other names."""
+
+    def other(name: str | None) -> str | None:
+        return None if name is None else devices.get(name, name)
+
+    fit = advice.fit
+    if fit is not None:
+        ends = (nodes.get(fit.nodes[0], fit.nodes[0]), nodes.get(fit.nodes[1], fit.nodes[1]))
+        fit = replace(fit, nodes=ends, instead_of=other(fit.instead_of))
+    effects = tuple(replace(one, part=devices.get(one.part, one.part)) for one in advice.effects)
+    return replace(advice, effects=effects, costs=other(advice.costs), fit=fit)

@@ -138,7 +138,7 @@ def _step(motion: Motion, now: Instant, slope: Array, h: float, end_s: float) ->
     count = motion.expanded.unknown
     stores = motion.expanded.stores[:, :count]
     error = np.linalg.solve(matrices.system, rate * _ERROR * h * (stores.T @ third))
-    return after, _size(motion, after.voltages, error)
+    return after, _size(motion, after.voltages, error) if np.isfinite(error).all() else 1e9
 
 
 def _solve(motion: Motion, time_s: float, guess: Array, target: Array, rate: float) -> tuple[Instant, _Matrices] | None:
@@ -160,9 +160,9 @@ def _solve(motion: Motion, time_s: float, guess: Array, target: Array, rate: flo
             change = np.linalg.solve(matrices.system, -miss)
         except np.linalg.LinAlgError:
             return None
-        size = _size(motion, voltages, change)
-        if not np.isfinite(size):
+        if not np.isfinite(change).all():
             return None
+        size = _size(motion, voltages, change)
         voltages[:count] += change
         if size < NEWTON_SHARE:
             moved = matrices.capacitance @ (stores[:, :count] @ change)

@@ -137,6 +137,49 @@ class Step:
 
 
 @dataclass(frozen=True, slots=True)
+class Effect:
+    """What a part does to the damping: its name, whether it is the base stop, and the damping without it, nominal and worst,
+    of the limiter's own modes."""
+
+    part: str
+    base_stop: bool
+    own_damping: float
+    worst_damping: float
+
+
+@dataclass(frozen=True, slots=True)
+class Fit:
+    """A capacitor to fit: its place in words and as nodes, its value, what has to go for it (None: nothing), the damping
+    then, nominal and worst, and the step then (None where it was not asked for or could not be worked out)."""
+
+    place: str
+    nodes: tuple[str, str]
+    farad: float
+    instead_of: str | None
+    own_damping: float
+    worst_damping: float
+    step: Step | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Advice:
+    """Advice on a loop.
+
+    The damping of the limiter's own modes, parts as drawn and at worst, whether that is enough, what each part does to it,
+    the part that costs the most (None: none does), and what to fit: where the damping is not enough, ``fit`` None means that
+    none of the usual places does. ``step`` is the step as drawn.
+    """
+
+    own_damping: float
+    worst_damping: float
+    enough: bool
+    effects: tuple[Effect, ...]
+    costs: str | None
+    fit: Fit | None
+    step: Step | None = None
+
+
+@dataclass(frozen=True, slots=True)
 class Solution:
     """All that was worked out for one limiter.
 
@@ -167,6 +210,8 @@ class Solution:
     regulates: Regulates | None = None
     loop: Loop | None = None
     step: Step | None = None
+    advice: Advice | None = None
+    """Where the loop is badly damped."""
     loop_needs: tuple[str, ...] = ()
     """Why there is no loop: part-data keys, or what could not be found; the same of the step below."""
     step_needs: tuple[str, ...] = ()
