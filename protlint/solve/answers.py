@@ -42,13 +42,11 @@ def solve(circuit: Circuit, ambients_degC: tuple[float, float, float], *, memo: 
     try:
         if not all(-200.0 <= ambient <= 500.0 for ambient in ambients_degC):
             raise CircuitError(f"ambients of {', '.join(f'{ambient:g}' for ambient in ambients_degC)} degC make no sense")
-        stage, sweep, shorts = _worst_short(circuit, ambients_degC)
-        solution = replace(
-            _answers(stage, solve_nominal(stage, sweep), ambients_degC),
-            short=stage.short,
-            shorts=shorts,
-            assumed=_assumed(circuit),
-        )
+        # NaN marks what was not solved and goes through the arithmetic on purpose; none of it gets into a solution
+        with np.errstate(all="ignore"):
+            stage, sweep, shorts = _worst_short(circuit, ambients_degC)
+            answers = _answers(stage, solve_nominal(stage, sweep), ambients_degC)
+        solution = replace(answers, short=stage.short, shorts=shorts, assumed=_assumed(circuit))
     except CircuitError as reason:
         return Solution(not_solved=str(reason), assumed=_assumed(circuit))
     if memo is not None:
@@ -106,6 +104,9 @@ def _answers(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...]) -
         high_locus=tuple(
             points(stage, ranges.high_locus, np.flatnonzero(ranges.high_owner == place).tolist()) for place in ambients
         ),
+        unlimited=points(stage, nominal.unlimited, ambients),
+        on_end="high" if stage.on_end else "low",
+        sources=stage.way < 0.0,
         sensitivities=_sensitivities(stage, nominal),
         regulates=regulation(stage, nominal, USUAL) if stage.network.circuit.regulates else None,
         corners=_corner_steps(stage, ranges),

@@ -34,6 +34,7 @@ DAMP_AFTER = 20
 """Lanes that swing to and fro are damped from here on."""
 
 GMIN_STEPS_S = (1e-2, 1e-3, 1e-4, 1e-5, 1e-6, 1e-7, 1e-8, 1e-9, 1e-10, 1e-11, 1e-12)
+SOURCE_STEPS = 24
 LONGEST_GATE_STEP_V = 20.0
 FIRST_HOLD_S, LAST_HOLD_S = 10.0, 1e-9
 SETTLING_STEPS = 160
@@ -45,8 +46,11 @@ Charges = Callable[[Group, slice, Array, Evaluation], Evaluation]
 
 @dataclass(frozen=True, slots=True)
 class Operating:
-    """Solved lanes: inner junction voltages (ports, lanes), node voltages (nodes, lanes), currents into the circuit from
-    what holds the known nodes (known nodes, lanes), and which lanes converged (lanes,)."""
+    """Solved lanes; all voltages inside are zero where a lane did not converge.
+
+    Inner junction voltages (ports, lanes), node voltages (nodes, lanes), currents into the circuit from what holds the known
+    nodes (known nodes, lanes), and which lanes converged (lanes,).
+    """
 
     inner: Array
     node_V: Array
@@ -81,6 +85,8 @@ def solve_lanes(network: Network, lanes: Lanes, start: Array | None = None) -> O
             inner[:, stuck], voltages[:, stuck], converged[stuck] = _fall_back(
                 network, take(p, stuck), lanes.known_V[:, stuck]
             )
+            inner[:, ~converged] = 0.0
+            voltages[:, ~converged] = 0.0
         node_V = np.concatenate((voltages, lanes.known_V))
         return Operating(inner, node_V, _known_currents(network, p, inner, node_V), converged)
 
@@ -356,14 +362,14 @@ def _gmin_stepping(network: Network, p: Parameters, known_V: Array) -> tuple[Arr
 def _source_stepping(network: Network, p: Parameters, known_V: Array) -> tuple[Array, Array, NDArray[np.bool_]]:
     """Raise all known voltages from zero together, each step from the one before, halving steps that fail."""
     inner = np.zeros((network.ports, known_V.shape[1]))
-    reached, step = 0.0, 0.1
-    while True:
+    reached, step = 0.0, 0.25
+    for _ in range(SOURCE_STEPS):
         aim = min(1.0, reached + step)
         tried, voltages, converged = newton(network, p, aim * known_V, inner)
-        if not converged.all() and step > 1e-3:
+        if aim == 1.0 and converged.all():
+            return tried, voltages, converged
+        if converged.all():
+            inner, reached, step = tried, aim, 1.5 * step
+        else:
             step *= 0.5
-            continue
-        inner, reached = tried, aim
-        if reached == 1.0:
-            return inner, voltages, converged
-        step *= 1.5
+    return newton(network, p, known_V, inner)

@@ -30,6 +30,7 @@ LEAST_SOURCE_OHM = 1e-3
 """Resistance of a current-limited drive that states none."""
 
 LINK_AT_MOST_OHM = 1e-3
+GREATEST_V = 1e5
 
 
 @dataclass(frozen=True, slots=True)
@@ -216,7 +217,11 @@ def _scatter(incidence: Array, pairs: Sequence[tuple[int, int]]) -> Array:
 
 
 def _check_ends(circuit: Circuit) -> None:
-    drive = circuit.drive
+    drive, reach_V = circuit.drive, circuit.output_reach_V
+    if not all(abs(value) <= GREATEST_V for value in reach_V):
+        raise CircuitError(f"an output that reaches from {reach_V[0]:g} V to {reach_V[1]:g} V makes no sense")
+    if circuit.output_V is not None and not abs(circuit.output_V) <= GREATEST_V:
+        raise CircuitError(f"a working output voltage of {circuit.output_V:g} V makes no sense")
     if circuit.output == drive.node:
         raise CircuitError(f"the drive and the output are one net, {circuit.output}")
     if not circuit.shorts or any(node not in circuit.held for node in circuit.shorts):
@@ -228,7 +233,7 @@ def _check_ends(circuit: Circuit) -> None:
     ]
     for name, ends_V in ends:
         if not (
-            all(abs(value) <= 1e5 for value in (ends_V.low, ends_V.usual, ends_V.high))
+            all(abs(value) <= GREATEST_V for value in (ends_V.low, ends_V.usual, ends_V.high))
             and ends_V.low <= ends_V.usual <= ends_V.high
         ):
             raise CircuitError(f"{name}: {ends_V.low:g} V, {ends_V.usual:g} V, {ends_V.high:g} V make no range")

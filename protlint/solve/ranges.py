@@ -187,11 +187,12 @@ def _edge(stage: Stage, conditions: Conditions, run: Run) -> Array:
     inner = run.operating.inner.copy()
     # to begin with, the pass voltage follows the output volt by volt
     slope = np.full(len(output_V), stage.way)
+    low_V, high_V = run.lanes.known_V.min(axis=0), run.lanes.known_V.max(axis=0)
     far = np.flatnonzero(np.abs(miss_V) > _EDGE_V)
     for _ in range(_EDGE_STEPS):
         if not len(far):
             break
-        step_V = -miss_V[far] * slope[far]
+        step_V = np.clip(output_V[far] - miss_V[far] * slope[far], low_V[far], high_V[far]) - output_V[far]
         output_V[far] += step_V
         run = run_at(stage, conditions.pick(far), output_V[far], inner[:, far])
         new_V = pass_voltage(stage, run) - PASS_V

@@ -61,7 +61,7 @@ def _compliance(stage: Stage, nominal: Nominal, ambient: int) -> float:
     enough = np.flatnonzero(current >= COMPLIANCE_SHARE * nominal.holds_A[ambient])
     last = int(enough[-1]) if len(enough) else 0
     at_V = float(voltage[last])
-    if last + 1 < len(mine):
+    if last + 1 < len(mine) and current[last] != current[last + 1]:
         part = (current[last] - COMPLIANCE_SHARE * nominal.holds_A[ambient]) / (current[last] - current[last + 1])
         at_V += float(part * (voltage[last + 1] - voltage[last]))
     known_A = nominal.short.operating.known_A[:-2, ambient] * stage.way
