@@ -56,6 +56,8 @@ def _fault(match: Match, index: Index, rules: Rules) -> FaultMatch:
         elif cure.what == "replace":
             kind = cure.of[1] if match.pattern.polarity == "n" else MIRROR.get(cure.of[1], cure.of[1])
             replaces += [(part, kind) for part in _part_ids(match, index, cure.of[0])]
+        elif cure.what == "turn":
+            exchange += [((part, "anode"), (part, "cathode")) for part in _against(match, index, *cure.of)]
         else:
             parted += _part_ids(match, index, cure.of[0])
     return FaultMatch(
@@ -72,7 +74,7 @@ def _fault(match: Match, index: Index, rules: Rules) -> FaultMatch:
 
 
 def _has_parts(match: Match, cures: Sequence[Cure]) -> bool:
-    return all(match.elements.get(_split(cure.of[0])[0]) for cure in cures)
+    return all(match.elements.get(cure.of[0]) or match.elements.get(_split(cure.of[0])[0]) for cure in cures)
 
 
 def _split(connection: str) -> tuple[str, str]:
@@ -98,6 +100,22 @@ def _connections(match: Match, index: Index, word: str) -> list[Connection]:
 def _part_ids(match: Match, index: Index, role: str) -> list[str]:
     board = index.board
     return [board.parts[part].id for element in match.elements.get(role, ()) for part in board.elements[element].parts]
+
+
+def _against(match: Match, index: Index, role: str, first: str, last: str) -> list[str]:
+    """Return the diodes of a string that point the other way than from one net to another (mirrored, from the other)."""
+    if match.pattern.polarity == "p":
+        first, last = last, first
+    net, left, turned = match.nets[first], list(match.elements.get(role, ())), []
+    while left and net != match.nets[last]:
+        element = next(one for one in left if net in index.terminals[one].values())
+        left.remove(element)
+        ends = index.ends(element)
+        assert ends is not None
+        if ends[0] != net:
+            turned += [index.board.parts[part].id for part in index.board.elements[element].parts]
+        net = ends[1] if ends[0] == net else ends[0]
+    return turned
 
 
 def _sentence(template: str, match: Match, index: Index) -> str:

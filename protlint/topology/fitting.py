@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 
 from protlint.topology.flatten import Pattern
 from protlint.topology.index import Index
-from protlint.topology.plan import Node, Planner
+from protlint.topology.plan import Plans
 from protlint.topology.questions import holds, is_late
 from protlint.topology.search import Elements, State, search
 from protlint.topology.steps import Entry, make_task
@@ -52,22 +52,23 @@ class Match:
         return self.pattern.rule, self.pattern.polarity, roles
 
 
-class Fitter:
-    """Finds the matches of a list of patterns on one board."""
+def plans_for(patterns: Sequence[Pattern]) -> Plans:
+    """Return the plans to search for some patterns."""
+    return Plans([make_task(number, one.clauses, one.where, one.unites) for number, one in enumerate(patterns)])
 
-    def __init__(self, index: Index, patterns: Sequence[Pattern]) -> None:
+
+class Fitter:
+    """Finds the matches of a list of patterns on one board, by plans made for these patterns."""
+
+    def __init__(self, index: Index, patterns: Sequence[Pattern], plans: Plans) -> None:
         self.index = index
         self.patterns = patterns
-        self.planner = Planner(index)
-        self._starts: dict[tuple[int, int, tuple[str, ...], tuple[int, ...]], Node] = {}
+        self.planner = plans.planner(index.by_kind)
 
     def matches(self) -> list[Match]:
         """Return every match, each once, in board order of its parts."""
-        tasks = [
-            make_task(number, pattern.clauses, pattern.where, pattern.unites) for number, pattern in enumerate(self.patterns)
-        ]
         found: dict[Key, Match] = {}
-        for entry, state in search(self.index, self.planner, self.planner.root(tasks), State(())):
+        for entry, state in search(self.index, self.planner, self.planner.root, State(())):
             match = self._whole(self.patterns[entry.task.number], entry, state)
             if match is not None:
                 known = found.setdefault(match.key, match)
@@ -130,14 +131,15 @@ class Fitter:
     ) -> Iterator[tuple[dict[str, int], list[tuple[Clause, Elements]]]]:
         """Yield every place where an item fits with some of its nets bound, none of whose own parts is in another."""
         clauses = item.clauses if isinstance(item, Each) else (item,)
-        nets = tuple(match.nets[name] for name in match.nets if name in bound or not set(item.nets()) & {name})
-        names = tuple(name for name in match.nets if name in bound or not set(item.nets()) & {name})
+        free = set(item.nets()) - set(bound)
+        names = tuple(name for name in match.nets if name not in free)
+        nets = tuple(match.nets[name] for name in names)
         flags = tuple(self.index.flag[net] for net in nets)
         key = (id(pattern), id(item), names, flags)
-        node = self._starts.get(key)
+        node = self.planner.starts.get(key)
         if node is None:
             task = make_task(0, clauses, (), pattern.unites, zero=pattern.clauses)
-            node = self._starts[key] = self.planner.start(task, names, flags)
+            node = self.planner.starts[key] = self.planner.start(task, names, flags)
         taken: set[int] = set()
         found = []
         for entry, state in search(self.index, self.planner, node, State(nets, (), tuple(sorted(used)))):

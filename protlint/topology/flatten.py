@@ -197,6 +197,19 @@ def _rejoin(body: Body, clause: Clause) -> Body:
     return replace(body, items=tuple(items))
 
 
+def _nets_of(body: Body) -> Iterator[str]:
+    for item in body.items:
+        if isinstance(item, Either):
+            for _, branch in item.branches:
+                yield from _nets_of(branch)
+        else:
+            yield from item.nets()
+    for item in body.may:
+        yield from item.nets()
+    for test in body.where:
+        yield from test.nets()
+
+
 def _renamed(body: Body, names: Mapping[str, str]) -> Body:
     if not names:
         return body
@@ -241,7 +254,10 @@ def _choices(
             mistakes.say(item.form, f"shape {item.shape} joins {', '.join(shape.ports)}")
         else:
             for name, variant in shape.variants:
-                for labels, body in _expand(_renamed(variant, ports), shapes, mistakes, (*inside, item.shape)):
+                # What is no port is the shape's own: no name of the rule's can meet it by chance.
+                own = {net: f"{item.shape}.{net}" for net in _nets_of(variant) if net not in ports and net != ANY}
+                renamed = _renamed(variant, {**own, **ports})
+                for labels, body in _expand(renamed, shapes, mistakes, (*inside, item.shape)):
                     yield (name, *labels), body
     else:
         yield (), Body((item,))

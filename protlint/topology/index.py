@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from functools import cache
 
 from protlint.board.graph import Board
 from protlint.board.merge import unite
@@ -18,11 +19,21 @@ FREE, CROWD, RAIL = 0, 1, 2
 """How freely a net may be walked: an ordinary net, a crowded one (last), a supply (never)."""
 
 
+_BIT = {pair: 1 << place for place, pair in enumerate((kind, pin) for kind in PINS for pin in sorted(PINS[kind]))}
+
+
+@cache
+def pin_bits(kinds: tuple[str, ...], pin: str | None = None) -> int:
+    """Return the bits that stand in the mask of a net where a part of these kinds has such a pin (any, where None)."""
+    return sum(_BIT[kind, one] for kind in set(kinds) for one in PINS[kind] if pin in (None, one))
+
+
 class Index:
     """The lists of one board. A *net* here is the lowest board net among those that fuses join.
 
     ``kind[e]`` and ``terminals[e]`` (role to net) are an element's; ``at[n]`` lists (element, role) on a net; ``flag[n]`` is
-    :data:`FREE`, :data:`CROWD` or :data:`RAIL`; ``voltage_V[n]`` a supply's usual voltage.
+    :data:`FREE`, :data:`CROWD` or :data:`RAIL`; ``mask[n]`` holds the :func:`pin_bits` of what is on the net;
+    ``voltage_V[n]`` is a supply's usual voltage.
     """
 
     def __init__(self, board: Board) -> None:
@@ -47,10 +58,6 @@ class Index:
         self.by_kind: dict[str, list[int]] = {}
         for element, kind in enumerate(self.kind):
             self.by_kind.setdefault(kind, []).append(element)
-        self._bit = {
-            pair: 1 << place for place, pair in enumerate((kind, pin) for kind in PINS for pin in sorted(PINS[kind]))
-        }
-        self._bits: dict[tuple[tuple[str, ...], str | None], int] = {}
         self.mask = self._masks()
         self._open: dict[int, bool] = {}
         self._between: dict[tuple[int, int], list[int]] | None = None
@@ -60,17 +67,9 @@ class Index:
         """Return the board nets that a net here stands for."""
         return self.members.get(net, (net,))
 
-    def bits(self, kinds: tuple[str, ...], pin: str | None = None) -> int:
-        """Return the bits that stand in the mask of a net where a part of these kinds has such a pin (any, where None)."""
-        known = self._bits.get((kinds, pin))
-        if known is None:
-            wanted = {(kind, one) for kind in kinds for one in PINS[kind] if pin in (None, one)}
-            known = self._bits[kinds, pin] = sum(self._bit[pair] for pair in wanted)
-        return known
-
     def _masks(self) -> list[int]:
         """Return for every net a bit for each (kind, pin) on it, to tell at once what is not there."""
-        bit, kind = self._bit, self.kind
+        bit, kind = _BIT, self.kind
         masks = []
         for on_net in self.at:
             mask = 0

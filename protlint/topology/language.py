@@ -3,13 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from pathlib import Path
 
 from protlint.sources import FileError, data_folder, read_bytes, shown_name
 from protlint.topology.describe import describe
+from protlint.topology.fitting import plans_for
 from protlint.topology.flatten import Pattern, Resolved, check_pattern, flatten, resolve
 from protlint.topology.mistakes import Mistakes, RuleErrors
+from protlint.topology.plan import Plans
 from protlint.topology.read import read_rule_file
 from protlint.topology.terms import Rule, Shape
 
@@ -48,6 +50,8 @@ class Rules:
     resolved: Mapping[str, Resolved]
     patterns: tuple[Pattern, ...]
     fault_patterns: tuple[Pattern, ...]
+    plans: Plans = field(compare=False, repr=False)
+    """How to search for the patterns and the fault patterns, in that order."""
 
 
 def load_rules(extra_folders: Sequence[str | Path] = ()) -> Rules:
@@ -109,12 +113,15 @@ def read_rules(texts: Mapping[str, str]) -> Rules:
         patterns += flat
     mistakes.settle()
     described = {name: _described(one) for name, one in resolved.items()}
+    sound = tuple(one for one in patterns if not one.fault)
+    faults = tuple(one for one in patterns if one.fault)
     return Rules(
         topologies={name: one for name, one in described.items() if not rules[name].fault},
         faults={name: one for name, one in described.items() if rules[name].fault},
         resolved=resolved,
-        patterns=tuple(one for one in patterns if not one.fault),
-        fault_patterns=tuple(one for one in patterns if one.fault),
+        patterns=sound,
+        fault_patterns=faults,
+        plans=plans_for((*sound, *faults)),
     )
 
 

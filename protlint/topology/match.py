@@ -19,7 +19,7 @@ def find_limiters(board: Board, rules: Rules) -> Found:
     """Return every limiter on a board, in board order of its shunt, and every fault on what is left of it."""
     with no_collection():
         index = Index(board)
-        fitter = Fitter(index, (*rules.patterns, *rules.fault_patterns))
+        fitter = Fitter(index, (*rules.patterns, *rules.fault_patterns), rules.plans)
         matches = fitter.matches()
         remarks: list[str] = []
         limiters: list[Limiter] = []

@@ -7,13 +7,16 @@ never enumerated and a crowded net is left for last.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
-from protlint.topology.index import CROWD, FREE, RAIL, Index
+from protlint.topology.index import CROWD, FREE, RAIL, pin_bits
 from protlint.topology.questions import by_flags
 from protlint.topology.steps import NEW, AskStep, BridgeStep, Entry, PartStep, PathStep, Step, Task, is_anchor
-from protlint.topology.terms import ANY, MANY, Clause
+from protlint.topology.terms import ANY, MANY, PINS, Clause
+
+MOST_KEPT = 64
+"""Plans kept for boards of different make-up."""
 
 LONG = 3
 """Where a long walk between two bound nets ranks: after what leads only a little way, before a long walk into the open."""
@@ -36,15 +39,37 @@ class Node:
     branches: dict[Step, Branch] = field(default_factory=dict)
 
 
+class Plans:
+    """The plans for a list of tasks, made when asked for and kept: boards of much the same make-up share one."""
+
+    def __init__(self, tasks: Sequence[Task]) -> None:
+        self.tasks = tasks
+        self._planners: dict[tuple[tuple[str, int], ...], Planner] = {}
+
+    def planner(self, by_kind: Mapping[str, Sequence[int]]) -> Planner:
+        """Return the planner for a board with these elements by kind; numbers count by their power of two."""
+        sizes = {kind: len(elements).bit_length() for kind, elements in by_kind.items() if kind in PINS}
+        key = tuple(sorted(sizes.items()))
+        if key not in self._planners:
+            if len(self._planners) >= MOST_KEPT:
+                self._planners.clear()
+            self._planners[key] = Planner(self.tasks, sizes)
+        return self._planners[key]
+
+
 class Planner:
-    """Chooses steps for one board, by how many parts of each kind it has."""
+    """Chooses steps, given how many parts of each kind there are (any measure that orders them).
 
-    def __init__(self, index: Index) -> None:
-        self.index = index
-        self.counts = {kind: len(elements) for kind, elements in index.by_kind.items()}
+    ``root`` is where searches for the tasks begin; ``starts`` keeps the nodes of tasks that go on from bound nets.
+    """
+
+    def __init__(self, tasks: Sequence[Task], sizes: Mapping[str, int]) -> None:
+        self.sizes = sizes
         self._numbers: dict[int, tuple[Task, tuple[int, ...]]] = {}
+        self.starts: dict[tuple[object, ...], Node] = {}
+        self.root = self._root(tasks)
 
-    def root(self, tasks: Sequence[Task]) -> Node:
+    def _root(self, tasks: Sequence[Task]) -> Node:
         """Return the node where searches of tasks begin.
 
         A task begins at a part of a rare kind that is no resistor; a kind that another task has to begin at anyway costs
@@ -93,13 +118,14 @@ class Planner:
             branch = node.branches[step] = Branch([], self._needs(step))
         branch.entries.append(after)
 
-    def _needs(self, step: Step) -> tuple[tuple[int, int], ...]:
+    @staticmethod
+    def _needs(step: Step) -> tuple[tuple[int, int], ...]:
         """Return (slot, bits) pairs: the step leads nowhere unless one of the bits stands in the mask of the slot's net."""
         if isinstance(step, PartStep):
-            return tuple((slot, self.index.bits(step.kinds, pin)) for pin, slot in step.known)
+            return tuple((slot, pin_bits(step.kinds, pin)) for pin, slot in step.known)
         if isinstance(step, AskStep) or (isinstance(step, PathStep) and step.least == 0):
             return ()
-        return tuple((slot, self.index.bits(step.kinds)) for slot in (step.a, step.b) if slot != NEW)
+        return tuple((slot, pin_bits(step.kinds)) for slot in (step.a, step.b) if slot != NEW)
 
     def _next(self, entry: Entry, flags: Sequence[int]) -> tuple[Step, Entry] | Entry | None:
         """Return the next step and the entry after it, the entry itself where it is fulfilled, None where it cannot be."""
@@ -201,7 +227,7 @@ class Planner:
     def _counted(self, task: Task) -> tuple[int, ...]:
         known = self._numbers.get(id(task))
         if known is None:
-            numbers = tuple(sum(self.counts.get(kind, 0) for kind in clause.kinds) for clause in task.clauses)
+            numbers = tuple(sum(self.sizes.get(kind, 0) for kind in clause.kinds) for clause in task.clauses)
             known = self._numbers[id(task)] = task, numbers
         return known[1]
 

@@ -88,13 +88,28 @@ def _no_input(net: int, bound: Collection[int], index: Index, own: Collection[in
     return True
 
 
+FARTHEST = 16
+"""The most nets looked at to tell where a net leads."""
+
+
 def _leads_only_to(net: int, ends: Set[int], index: Index, own: Collection[int]) -> bool:
-    """Tell whether all that hangs on a net besides the match are capacitors, and resistors to some other nets."""
-    for element, _ in index.at[net]:
-        if element in own or index.kind[element] == "capacitor":
-            continue
-        if index.kind[element] != "resistor" or not set(index.terminals[element].values()) - {net} <= ends:
-            return False
+    """Tell whether all that hangs on a net besides the match leads to some other nets through resistors and diodes.
+
+    A capacitor leads nowhere: what is asked is what can hold the net at a voltage.
+    """
+    seen, waiting = {net}, [net]
+    while waiting:
+        here = waiting.pop()
+        for element, _ in index.at[here]:
+            if element in own or index.kind[element] == "capacitor":
+                continue
+            if index.kind[element] not in ("resistor", *DIRECTED):
+                return False
+            beyond = set(index.terminals[element].values()) - seen - ends
+            if len(seen) > FARTHEST or any(index.flag[one] for one in beyond):
+                return False
+            seen |= beyond
+            waiting += beyond
     return True
 
 

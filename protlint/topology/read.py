@@ -31,7 +31,7 @@ from protlint.topology.terms import (
     Test,
 )  # fmt: skip
 
-CURES = ("(exchange ROLE.PIN ROLE.PIN)", "(move ROLE.PIN NET)", "(replace ROLE KIND)", "(part ROLE)")
+CURES = ("(exchange ROLE.PIN ROLE.PIN)", "(move ROLE.PIN NET)", "(replace ROLE KIND)", "(part ROLE)", "(turn ROLE NET NET)")
 """The changes a fault may ask for."""
 
 

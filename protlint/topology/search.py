@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from itertools import chain
 from typing import NamedTuple
 
-from protlint.topology.index import CROWDED, Index
+from protlint.topology.index import CROWDED, Index, pin_bits
 from protlint.topology.plan import Node, Planner
 from protlint.topology.questions import holds
 from protlint.topology.steps import NEW, AskStep, BridgeStep, Entry, PartStep, PathStep, Step
@@ -143,7 +143,7 @@ def _paths(step: PathStep, state: State, index: Index) -> Iterable[Growth]:
     found: list[Growth] = []
     if step.least == 0 and target in (None, start):
         found.append((() if target is not None else (start,), (), ()))
-    if target == start or step.most == 0 or not index.mask[start] & index.bits(step.kinds):
+    if target == start or step.most == 0 or not index.mask[start] & pin_bits(step.kinds):
         return found
     if step.most == 1 or (target is not None and index.flag[start] and index.flag[target]):
         # Between two crowded nets only what joins them straight is looked for: neither is walked.

@@ -191,7 +191,8 @@ class Shape:
 @dataclass(frozen=True, slots=True)
 class Cure:
     """One change that makes a fault sound: ``exchange`` two connections, ``move`` one to a net, ``replace`` a part by one of
-    another kind, ``part`` the ends of one that are on one net. A connection is ``role.pin`` or ``role.net``."""
+    another kind, ``part`` the ends of one that are on one net, ``turn`` what does not point from one net to the other in a string of
+    diodes. A connection is ``role.pin`` or ``role.net``."""
 
     what: str
     of: tuple[str, ...]

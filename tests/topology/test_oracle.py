@@ -18,7 +18,7 @@ from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
 from protlint.board.graph import Board
-from protlint.topology.fitting import Fitter
+from protlint.topology.fitting import Fitter, plans_for
 from protlint.topology.flatten import Pattern
 from protlint.topology.index import RAIL, Index
 from protlint.topology.language import load_rules
@@ -156,7 +156,7 @@ def _hangs_together(mapping: dict[tuple[str, int], tuple[object, ...]], wanted: 
 
 def found_by_search(made: Board, pattern: Pattern) -> set[Group]:
     groups = set()
-    for match in Fitter(Index(made), [pattern]).matches():
+    for match in Fitter(Index(made), [pattern], plans_for([pattern])).matches():
         filled = [(role, frozenset(elements)) for role, elements in match.elements.items() if elements]
         groups.add(frozenset(filled))
     return groups
