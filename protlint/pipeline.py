@@ -8,11 +8,14 @@ from datetime import date
 from pathlib import Path
 from typing import Literal
 
-from protlint.board.graph import Board, build_board
-from protlint.board.parts_list import PartsList, read_parts_list
+from protlint.board.attributes import file_habits
+from protlint.board.graph import Board, BoardPart, build_board
+from protlint.board.parts_list import Difference, PartsList, differences, read_parts_list
 from protlint.checks.board_case import BoardCase
 from protlint.checks.case import Case
 from protlint.checks.catalogue import CheckRow, load_catalogue
+from protlint.checks.load import StartUp, start_up_of
+from protlint.checks.part_fails import IfPartFails, if_a_part_fails
 from protlint.checks.table import BOARD_CHECKS, CHECKS, WITHOUT_SOLUTION
 from protlint.findings import LEVELS, Finding, Level, NotChecked, identifying_parts, stamp_fingerprints
 from protlint.limits import CheckSetting, LimiterLimits, Limits, load_limits, needs_of
@@ -23,6 +26,7 @@ from protlint.solve.answers import solve
 from protlint.solve.bench import Bench, build_bench
 from protlint.solve.circuit import Circuit
 from protlint.solve.comparison import Comparison, compare_formula
+from protlint.solve.conditions import Known
 from protlint.solve.dynamics import with_dynamics
 from protlint.solve.memo import Memo
 from protlint.solve.solution import Solution
@@ -48,6 +52,10 @@ class ReviewedLimiter:
     not_checked: tuple[NotChecked, ...] = ()
     assumed: tuple[str, ...] = ()
     bench: Bench = field(default_factory=lambda: Bench(None))
+    if_a_part_fails: IfPartFails | None = None
+    """What the output passes with a part failed, None where the limiter was not solved."""
+    start_up: StartUp | None = None
+    """How the output comes up into the stated load capacitance, None where none is stated."""
     formula: Comparison | None = None
     """The closed form beside the solved held short, None where none fits."""
 
@@ -80,6 +88,18 @@ class Desk:
     parts_list: PartsList | None = None
     waivers: Waivers | None = None
     on: date | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class _Whole:
+    """A board under review: what every limiter's review shares."""
+
+    board: Board
+    desk: Desk
+    parts_by_id: Mapping[str, BoardPart]
+    differences: Mapping[str, tuple[Difference, ...]]
+    solved: Memo = field(default_factory=Memo)
+    known: Known = field(default_factory=Known)
 
 
 def set_up(
@@ -145,9 +165,9 @@ def review_netlist(netlist: Netlist, desk: Desk) -> Review:
     reviewed: list[ReviewedLimiter] = []
     findings: list[Finding] = []
     cases: dict[str, Case] = {}
-    solved = Memo()
+    shared = _Whole(board, desk, {part.id: part for part in board.parts}, _differences(board, desk))
     for limiter in found.limiters:
-        one, case, its_findings = _review_limiter(board, limiter, desk, solved)
+        one, case, its_findings = _review_limiter(shared, limiter)
         reviewed.append(one)
         cases[limiter.id] = case
         findings += its_findings
@@ -171,15 +191,40 @@ def _ask_of_the_board(whole: BoardCase) -> tuple[list[Finding], dict[str | None,
     return findings, unanswered
 
 
-def _review_limiter(board: Board, limiter: Limiter, desk: Desk, solved: Memo) -> tuple[ReviewedLimiter, Case, list[Finding]]:
+def _differences(board: Board, desk: Desk) -> dict[str, tuple[Difference, ...]]:
+    """Return what a parts list says otherwise than the netlist, by part id."""
+    if desk.parts_list is None:
+        return {}
+    habits = file_habits(board.netlist, desk.limits)
+    kinds = {part.id: part.kind for part in board.parts}
+    parts = [part for part in board.netlist.parts if part.id in kinds]
+    by_part: dict[str, tuple[Difference, ...]] = {}
+    for one in differences(parts, [kinds[part.id] for part in parts], habits, desk.parts_list):
+        by_part[one.part] = (*by_part.get(one.part, ()), one)
+    return by_part
+
+
+def _review_limiter(whole: _Whole, limiter: Limiter) -> tuple[ReviewedLimiter, Case, list[Finding]]:
     """Return one limiter reviewed, its case, and its findings; equal benches are solved once."""
+    board, desk = whole.board, whole.desk
     needs = needs_of(desk.limits, *_names(board, limiter))
     bench = build_bench(board, limiter, limits=desk.limits, needs=needs)
     solution = Solution(not_solved="; ".join(one.needs for one in bench.missing) or "its circuit is not known")
     if bench.circuit is not None:
-        solution = solve(bench.circuit, desk.limits.ambient_degC, memo=solved)
-        solution = with_dynamics(bench.circuit, solution, desk.limits.ambient_degC, memo=solved)
-    case = Case(board, limiter, bench, solution, needs, desk.limits, desk.catalogue)
+        solution = solve(bench.circuit, desk.limits.ambient_degC, memo=whole.solved)
+        solution = with_dynamics(bench.circuit, solution, desk.limits.ambient_degC, memo=whole.solved)
+    case = Case(
+        board,
+        limiter,
+        bench,
+        solution,
+        needs,
+        desk.limits,
+        desk.catalogue,
+        differences=whole.differences,
+        parts_by_id=whole.parts_by_id,
+        known=whole.known,
+    )
     findings: list[Finding] = []
     not_checked = [NotChecked(what, case.limits_key(key)) for what, key in solution.not_checked]
     if solution.not_solved is not None:
@@ -198,8 +243,10 @@ def _review_limiter(board: Board, limiter: Limiter, desk: Desk, solved: Memo) ->
         solution=solution,
         verdict="passes",
         not_checked=tuple(dict.fromkeys(not_checked)),
-        assumed=tuple(sentence for _, sentence in bench.assumed),
+        assumed=(*(sentence for _, sentence in bench.assumed), *dict.fromkeys(case.assumptions)),
         bench=bench,
+        if_a_part_fails=if_a_part_fails(case),
+        start_up=start_up_of(case),
         formula=compare_formula(bench.circuit, solution) if bench.circuit is not None else None,
     )
     return reviewed, case, findings
@@ -243,7 +290,8 @@ def _finish(
     findings = [_placed(board, finding) for finding in findings]
     known = {one.limiter.id: identifying_parts(one.limiter.roles) for one in reviewed}
     marked: Sequence[Finding] = stamp_fingerprints(findings, known)
-    remarks: tuple[str, ...] = (*desk.book.remarks, *not_asked)
+    listed = desk.parts_list.remarks if desk.parts_list is not None else ()
+    remarks: tuple[str, ...] = (*desk.book.remarks, *listed, *not_asked)
     if desk.waivers is not None:
         marked, more = apply_waivers(marked, desk.waivers, on=desk.on)
         remarks += tuple(more)
@@ -287,6 +335,6 @@ def _verdict(one: ReviewedLimiter, findings: Sequence[Finding], limits: Limits) 
         return "fails"
     if one.solution.not_solved is not None:
         return "not judged"
-    if one.bench.assumed or limits.assumed:
+    if one.assumed or limits.assumed:
         return "rests on assumptions"
     return "passes"

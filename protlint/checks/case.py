@@ -2,21 +2,26 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+import math
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
+from typing import TypeVar
 
 from protlint.board.graph import Board, BoardPart
 from protlint.board.parts_list import Difference
 from protlint.checks.catalogue import CheckRow
 from protlint.checks.derating import derated, share_of
 from protlint.findings import Finding, Level, NotChecked, WorkingLine
-from protlint.limits import UNSTATED, CheckSetting, LimiterLimits, Limits
+from protlint.limits import UNSTATED, CheckSetting, LimiterLimits, Limits, Range
 from protlint.partdata.book import Figure
 from protlint.solve.bench import Bench
 from protlint.solve.circuit import Circuit, Device
-from protlint.solve.solution import Point, Solution
+from protlint.solve.conditions import Condition, Known, solve_under
+from protlint.solve.solution import Currents, Point, Solution
 from protlint.toml_text import toml_key
 from protlint.topology.limiter import Limiter
+
+T = TypeVar("T")
 
 ALL_ASSUMPTIONS = ("drive", "short", "supply", "model", "tolerance", "circuit", "ambient_degC", "vbe_spread_V")
 """Everything a number can rest on that nobody stated: subjects of the bench, and fields of the limits file."""
@@ -43,6 +48,8 @@ class Case:
     differences: Mapping[str, tuple[Difference, ...]] = field(default_factory=dict)
     parts_by_id: Mapping[str, BoardPart] = field(default_factory=dict)
     assumptions: list[str] = field(default_factory=list)
+    known: Known = field(default_factory=Known)
+    """Points that were solved under stated conditions for this review, equal ones once."""
 
     @property
     def circuit(self) -> Circuit:
@@ -71,6 +78,32 @@ class Case:
         """Return a part of the board by id."""
         known = self.parts_by_id.get(part_id)
         return known if known is not None else next(part for part in self.board.parts if part.id == part_id)
+
+    def under(self, conditions: Sequence[Condition]) -> tuple[Point | None, ...]:
+        """Return the circuit's operating points under conditions.
+
+        Raises
+        ------
+        CircuitError : the circuit cannot be solved so at all.
+        """
+        return solve_under(self.circuit, conditions, self.known)
+
+    def at_ambients(self, points: Sequence[T]) -> list[tuple[Currents, T]]:
+        """Return points of all ambients with the row of currents of each; empty where one could not be solved."""
+        rows = self.solution.currents
+        return list(zip(rows, points, strict=True)) if len(rows) == len(points) else []
+
+    @property
+    def drive_ends_V(self) -> tuple[Range, Range]:
+        """Return the drive's off and on ends."""
+        drive = self.circuit.drive
+        ends = (drive.low_V, drive.high_V)
+        return ends if self.solution.on_end == "high" else ends[::-1]
+
+    @property
+    def lasts_s(self) -> float:
+        """How long a short lasts; for ever where the limits file does not say."""
+        return math.inf if self.needs.short_s is None else self.needs.short_s
 
     def device_parts(self, *roles: str) -> Iterator[tuple[str, tuple[str, ...]]]:
         """Yield (part id, names of its devices in the circuit) of the parts in the given roles that have any."""

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass, replace
 
@@ -113,7 +114,7 @@ def least_drive_resistance(case: Case, times: float, does: Callable[[Solution], 
     now_ohm = sum(case.device(name).model["R"] for name in names) if names else case.circuit.drive.resistance_ohm
     drive = case.circuit.drive
     points = [point for point in case.solution.high_short if point.drive_A]
-    if not points:
+    if not points or math.isinf(times):
         return None
     point = max(points, key=lambda one: abs(one.drive_A))
     end_V = max((drive.low_V.usual, drive.high_V.usual), key=lambda volts: abs(volts - point.output_V))
@@ -154,7 +155,7 @@ def driver_overloaded(case: Case) -> Iterator[Answer]:
         return
     upper_V, lower_V = _rails(case, part)
     worst = max(
-        zip(case.solution.currents, case.solution.high_short, strict=False),
+        case.at_ambients(case.solution.high_short),
         key=lambda pair: _driver_W(pair[1].drive_A, pair[1].drive_V, upper_V, lower_V),
         default=None,
     )

@@ -133,7 +133,7 @@ def _loads(case: Case, element: Element, part: BoardPart) -> Iterator[Load]:
     share = part_shares(element.tree, values_ohm)[part.index].current if len(values_ohm) > 1 else 1.0
     short_s = case.needs.short_s
     times = OVERLOAD_TIMES if short_s is not None and short_s <= OVERLOAD_S else 1.0
-    for point, row in zip(case.solution.high_short, case.solution.currents, strict=False):
+    for row, point in case.at_ambients(case.solution.high_short):
         yield Load("in the held short", row.ambient_degC, _current_A(point, names) * share, value_ohm, times)
     carried = case.solution.at_carry
     if carried is not None:

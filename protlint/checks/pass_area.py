@@ -68,15 +68,11 @@ def pass_outside_safe_area(case: Case) -> Iterator[Answer]:
 
 
 def locus_points(case: Case) -> Iterator[Stress]:
-    """Yield the locus at every ambient with every tolerance set for the most current, the hottest point and the short too.
-
-    The locus as drawn, its currents raised by what the tolerances add in the short.
-    """
-    solution = case.solution
-    lasts_s = math.inf if case.needs.short_s is None else case.needs.short_s
-    for row, short, worst in zip(solution.currents, solution.high_short, solution.high_worst, strict=False):
-        yield Stress("in the held short", row.ambient_degC, short, lasts_s)
-        yield Stress(f"with the output at {format_quantity(worst.output_V, 'V')}", row.ambient_degC, worst, lasts_s)
+    """Yield every point of the locus at every ambient, every tolerance set for the most current."""
+    for row, points in case.at_ambients(case.solution.high_locus):
+        for place, point in enumerate(points):
+            at = f"with the output at {format_quantity(point.output_V, 'V')}" if place else "in the held short"
+            yield Stress(at, row.ambient_degC, point, case.lasts_s)
 
 
 def _current_name(case: Case, part_id: str, name: str, peak: str) -> str:
@@ -109,7 +105,7 @@ def _on_the_curve(case: Case, part: BoardPart, points: list[Stress]) -> Place | 
     limit = case.rating(part.id, "tj_max")
     if limit is None:
         return case.rating_key(part.id, "tj_max")
-    lasts_s = points[0].lasts_s if points else math.inf
+    lasts_s = case.lasts_s
     curve = curve_for(entry.safe_area if entry is not None else (), lasts_s, case.threshold(CHECK, "dc_from"))
     if curve is None:
         kind = "dc" if math.isinf(lasts_s) else format_quantity(lasts_s, "s")

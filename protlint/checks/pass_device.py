@@ -57,12 +57,11 @@ def pass_overheated(case: Case) -> Iterator[Answer]:
 def stresses(case: Case) -> Iterator[Stress]:
     """Yield the held short and, where it is another, the point of greatest pass dissipation, at every ambient."""
     solution = case.solution
-    lasts_s = math.inf if case.needs.short_s is None else case.needs.short_s
-    for row, short, worst in zip(solution.currents, solution.high_short, solution.high_worst, strict=False):
-        yield Stress("in the held short", row.ambient_degC, short, lasts_s)
+    for row, (short, worst) in case.at_ambients(list(zip(solution.high_short, solution.high_worst, strict=False))):
+        yield Stress("in the held short", row.ambient_degC, short, case.lasts_s)
         if pass_power_W(case, worst) > WORTH_SAYING * pass_power_W(case, short):
             at = f"with the output at {format_quantity(worst.output_V, 'V')}"
-            yield Stress(at, row.ambient_degC, worst, lasts_s)
+            yield Stress(at, row.ambient_degC, worst, case.lasts_s)
 
 
 def heating(case: Case, part_id: str, stress: Stress) -> Heating:

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 from protlint.checks.case import DRAWN, Answer, Case
 from protlint.findings import Level, NotChecked, WorkingLine
 from protlint.quantities import format_quantity, preferred
-from protlint.solve.conditions import Condition, Ends, ends_of_drive, solve_under
+from protlint.solve.conditions import Condition
 from protlint.solve.parameters import CircuitError
 from protlint.solve.solution import Point
 
@@ -57,25 +57,24 @@ def reverse_base_emitter(case: Case) -> Iterator[Answer]:
 
 
 def _states(case: Case) -> Iterator[Stressed | NotChecked]:
-    circuit, short = case.circuit, case.solution.short
-    ambient_degC = case.limits.ambient_degC[1]
+    short = case.solution.short
+    if short is None:
+        return
+    short_V = case.circuit.held[short].usual
+    off, on = case.drive_ends_V
     try:
-        ends = None if short is None else ends_of_drive(circuit, circuit.held[short].usual, ambient_degC)
-        if short is None or ends is None:
-            yield NotChecked(CHECK, "which end of the drive turns the pass device off, which could not be solved")
-            return
-        short_V = circuit.held[short].usual
         if has_other_half(case):
             yield from _solved(case, f"the other half at work and the output at {short_V:g} V", _mirrored_V(case), short_V)
             return
-        off_V = ends.off_V.low if ends.off_V.usual < ends.on_V.usual else ends.off_V.high
+        off_V = off.low if off.usual < on.usual else off.high
         yield from _solved(case, f"the output at {short_V:g} V", off_V, short_V)
-        if not ends.sources:
+        if not case.solution.sources:
             return
         if not _held_up(case):
-            yield NotChecked(CHECK, f"{case.limits_key('load_capacitance')}, which would hold the output with the drive off")
+            if case.needs.load_capacitance_F is None:
+                yield NotChecked(CHECK, f"{case.limits_key('load_capacitance')}, which may hold the output up")
             return
-        highest_V = _highest_V(case, ends)
+        highest_V = _highest_V(case)
         if highest_V is None:
             yield NotChecked(CHECK, case.limits_key("output"))
             return
@@ -91,7 +90,7 @@ def _solved(
     case: Case, output: str, drive_V: float, output_V: float, *, supplied: bool = True
 ) -> Iterator[Stressed | NotChecked]:
     words = f"with the drive at {drive_V:g} V and {output}" if supplied else f"with the supplies off and {output}"
-    point = solve_under(case.circuit, [Condition(case.limits.ambient_degC[1], drive_V, output_V, supplied)])[0]
+    point = case.under([Condition(case.limits.ambient_degC[1], drive_V, output_V, supplied)])[0]
     yield Stressed(words, point) if point is not None else NotChecked(CHECK, f"the circuit {words}, which was not solved")
 
 
@@ -128,12 +127,13 @@ def _held_up(case: Case) -> bool:
     return held_F >= case.threshold(CHECK, "holds_up")
 
 
-def _highest_V(case: Case, ends: Ends) -> float | None:
+def _highest_V(case: Case) -> float | None:
     """Return the highest voltage the output can have: as stated, else what the stage gives with its drive on and no load."""
     if case.needs.output_V is not None:
         return case.needs.output_V
-    on_V = ends.on_V.high if ends.on_V.usual > ends.off_V.usual else ends.on_V.low
-    point = solve_under(case.circuit, [Condition(case.limits.ambient_degC[1], on_V, None)])[0]
+    off, on = case.drive_ends_V
+    on_V = on.high if on.usual > off.usual else on.low
+    point = case.under([Condition(case.limits.ambient_degC[1], on_V, None)])[0]
     return None if point is None else point.output_V
 
 

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 
@@ -11,7 +10,7 @@ from protlint.checks.thermal import Heating, Junction, in_free_air, junction
 from protlint.findings import NotChecked, WorkingLine
 from protlint.partdata.book import Figure
 from protlint.quantities import format_quantity, preferred
-from protlint.solve.conditions import Condition, solve_under
+from protlint.solve.conditions import Condition
 from protlint.solve.parameters import CircuitError
 from protlint.solve.solution import Currents, Point
 
@@ -36,7 +35,7 @@ def taken_by_shunt(case: Case) -> Mapping[str, tuple[Taken, ...]]:
     table: dict[str, tuple[Taken, ...]] = {}
     for part_id, names in case.device_parts("shunt"):
         rows = []
-        for row, point in zip(case.solution.currents, case.solution.high_short, strict=False):
+        for row, point in case.at_ambients(case.solution.high_short):
             state = max((point.states[name] for name in names), key=lambda one: abs(one.current_A))
             power_W = case.power_W(point, part_id)
             rows.append(Taken(part_id, row, point, abs(state.current_A), abs(state.voltage_V), power_W))
@@ -77,10 +76,9 @@ def hottest(case: Case, part_id: str, rows: tuple[Taken, ...]) -> tuple[Taken, J
 
 def _heated(case: Case, part_id: str, one: Taken) -> Junction | str:
     settles_s, holds_s = case.threshold("pass-overheated", "settles"), case.threshold("pass-overheated", "case_holds")
-    lasts_s = math.inf if case.needs.short_s is None else case.needs.short_s
     ambient_degC = one.row.ambient_degC + (case.needs.shunt_rise_K or 0.0)
-    heat = Heating(one.power_W, one.power_W, ambient_degC, lasts_s)
-    if lasts_s > holds_s:
+    heat = Heating(one.power_W, one.power_W, ambient_degC, case.lasts_s)
+    if case.lasts_s > holds_s:
         return in_free_air(case, part_id, heat)
     return junction(case, part_id, heat, settles_s=settles_s, case_holds_s=holds_s)
 
@@ -174,7 +172,7 @@ def _greatest_voltage(case: Case, part_id: str) -> tuple[float, str] | None:
             words.append(f"with the drive at its {end} end and {where}")
             conditions.append(Condition(ambient_degC, drive_V, output_V))
     try:
-        points = solve_under(circuit, conditions)
+        points = case.under(conditions)
     except CircuitError:
         return None
     names = case.devices_of(part_id)

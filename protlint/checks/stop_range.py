@@ -8,7 +8,7 @@ from protlint.checks.case import Case
 from protlint.checks.surge import Surge
 from protlint.quantities import preferred, within
 from protlint.solve.circuit import Circuit, Device
-from protlint.solve.conditions import Condition, ends_of_drive, solve_under
+from protlint.solve.conditions import Condition, solve_under
 from protlint.solve.parameters import CircuitError
 
 USUAL_LEAST_OHM = 47.0
@@ -125,14 +125,11 @@ def _holds(case: Case, circuit: Circuit, shunt: Device) -> list[tuple[float, flo
     short_V, ambients = circuit.held[case.solution.short].usual, case.limits.ambient_degC
     by_gain = []
     try:
-        ends = ends_of_drive(circuit, short_V, ambients[1])
-        if ends is None:
-            return None
-        conditions = [Condition(ambient, ends.on_V.usual, short_V) for ambient in ambients]
+        conditions = [Condition(ambient, case.drive_ends_V[1].usual, short_V) for ambient in ambients]
         for gain in shunt.hfe:
             model = {**shunt.model, "BF": gain, "XTB": 0.0}
             devices = tuple(replace(one, model=model) if one.name == shunt.name else one for one in circuit.devices)
-            by_gain.append(solve_under(replace(circuit, devices=devices), conditions))
+            by_gain.append(solve_under(replace(circuit, devices=devices), conditions, case.known))
     except CircuitError:
         return None
     pairs = []
@@ -144,7 +141,7 @@ def _holds(case: Case, circuit: Circuit, shunt: Device) -> list[tuple[float, flo
 
 
 def _stop_names(case: Case) -> tuple[str, ...]:
-    indices = case.limiter.elements.get("base_stop", ())
+    indices = case.limiter.elements.get("base-stop", ())
     return tuple(name for name, index in case.bench.element_of.items() if index in indices)
 
 

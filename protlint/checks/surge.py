@@ -6,15 +6,12 @@ whatever resistance there is: I_B = (V - V_junction) / (R_th + RB), V and R_th b
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from dataclasses import dataclass
 
 from protlint.checks.case import Case
 from protlint.findings import WorkingLine
 from protlint.quantities import format_quantity
 from protlint.solve.circuit import Device
-from protlint.solve.conditions import Condition, ends_of_drive, solve_under
-from protlint.solve.parameters import CircuitError
 from protlint.solve.resistive import behind, thevenin
 from protlint.solve.solution import Point
 
@@ -68,26 +65,11 @@ def shunt_of(case: Case) -> Device | None:
 
 def surge(case: Case, shunt: Device, junction_V: float) -> Surge | None:
     """Return the instant at its worst ambient, or None where the circuit without its shunt could not be solved."""
-    found = [_at(case, shunt, junction_V, point, ambient_degC) for ambient_degC, point in _unlimited(case)]
+    found = [
+        _at(case, shunt, junction_V, point, row.ambient_degC) for row, point in case.at_ambients(case.solution.unlimited)
+    ]
     solved = [one for one in found if one is not None]
     return max(solved, key=lambda one: (one.base_A, one.drop_V), default=None)
-
-
-def _unlimited(case: Case) -> Iterator[tuple[float, Point]]:
-    """Yield the operating point with the output shorted, the drive on and the shunt taken out, at every ambient."""
-    circuit, short = case.circuit, case.solution.short
-    if short is None:
-        return
-    short_V, ambients = circuit.held[short].usual, case.limits.ambient_degC
-    try:
-        ends = ends_of_drive(circuit, short_V, ambients[1])
-        if ends is None:
-            return
-        conditions = [Condition(ambient, ends.on_V.usual, short_V, shunt_in=False) for ambient in ambients]
-        points = solve_under(circuit, conditions)
-    except CircuitError:
-        return
-    yield from ((ambient, point) for ambient, point in zip(ambients, points, strict=True) if point is not None)
 
 
 def _at(case: Case, shunt: Device, junction_V: float, point: Point, ambient_degC: float) -> Surge | None:

@@ -7,17 +7,17 @@ end, an output that something else holds up, a supply that has gone.
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
-from protlint.limits import Range
 from protlint.solve.circuit import Circuit
 from protlint.solve.constants import KELVIN
 from protlint.solve.dc import solve_lanes
 from protlint.solve.devices import Array
 from protlint.solve.lanes import Lanes, known_voltages
 from protlint.solve.locus import Conditions, run_at, trace
+from protlint.solve.memo import canonical
 from protlint.solve.network import Network, compile_network
 from protlint.solve.solution import Point
 from protlint.solve.stage import Run, Stage, points, sweep_stage
@@ -38,26 +38,41 @@ class Condition:
     shunt_in: bool = True
 
 
-@dataclass(frozen=True, slots=True)
-class Ends:
-    """The drive's off and on ends, and whether the output current at the on end flows out of the stage."""
+@dataclass(slots=True)
+class Known:
+    """Points of one review by canonical circuit and conditions, with the device names they were solved under."""
 
-    off_V: Range
-    on_V: Range
-    sources: bool
+    kept: dict[object, tuple[tuple[str, ...], tuple[Point | None, ...]]] = field(default_factory=dict)
 
 
-def solve_under(circuit: Circuit, conditions: Sequence[Condition]) -> tuple[Point | None, ...]:
+def solve_under(circuit: Circuit, conditions: Sequence[Condition], known: Known | None = None) -> tuple[Point | None, ...]:
     """Return the nominal operating point under every condition, None where none was found.
 
     ``Point.output_A`` is the current into the circuit at the output; ``Point.output_V`` the output's voltage also where it
-    is open.
+    is open. With ``known`` an equal circuit, whatever its names, is solved once.
 
     Raises
     ------
     CircuitError
         Where the circuit cannot be solved at all, or has no open output that could be.
     """
+    if known is None:
+        return _solve_all(circuit, conditions)
+    key, (names, _) = canonical(circuit, ())
+    asked = (key, tuple(conditions))
+    if asked not in known.kept:
+        known.kept[asked] = (names, _solve_all(circuit, conditions))
+    then, points_then = known.kept[asked]
+    if then == names:
+        return points_then
+    called = dict(zip(then, names, strict=True))
+    return tuple(
+        None if point is None else replace(point, states={called.get(name, name): one for name, one in point.states.items()})
+        for point in points_then
+    )
+
+
+def _solve_all(circuit: Circuit, conditions: Sequence[Condition]) -> tuple[Point | None, ...]:
     found: dict[int, Point] = {}
     for is_open in (False, True):
         chosen = [place for place, one in enumerate(conditions) if (one.output_V is None) == is_open]
@@ -66,26 +81,6 @@ def solve_under(circuit: Circuit, conditions: Sequence[Condition]) -> tuple[Poin
             solved = _solve(network, circuit.output, [conditions[place] for place in chosen])
             found |= {place: point for place, point in zip(chosen, solved, strict=True) if point is not None}
     return tuple(found.get(place) for place in range(len(conditions)))
-
-
-def ends_of_drive(circuit: Circuit, short_V: float, ambient_degC: float) -> Ends | None:
-    """Return which end of the drive turns the pass device on: the one with the greater current into the short, shunt out.
-
-    None where neither end was solved.
-
-    Raises
-    ------
-    CircuitError
-        Where the circuit cannot be solved at all.
-    """
-    drive = circuit.drive
-    ends = (drive.low_V, drive.high_V)
-    tried = [Condition(ambient_degC, end.usual, short_V, shunt_in=False) for end in ends]
-    currents = [0.0 if point is None else point.output_A for point in solve_under(circuit, tried)]
-    if currents == [0.0, 0.0]:
-        return None
-    on = int(abs(currents[1]) > abs(currents[0]))
-    return Ends(ends[1 - on], ends[on], currents[on] < 0.0)
 
 
 def _solve(network: Network, output: str, conditions: Sequence[Condition]) -> list[Point | None]:

@@ -1,0 +1,69 @@
+"""What if a part fails: what the output then passes into a short, and which fuse stands in its way."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from protlint.checks.case import Case
+from protlint.solve.failures import failures
+
+
+@dataclass(frozen=True, slots=True)
+class PartFails:
+    """One part (or a bank or chain that stands for one) failed: its role, how, and what the output passes into the short,
+    as drawn at usual ambient; None where that could not be solved. ``of_holds`` is that over holds."""
+
+    parts: tuple[str, ...]
+    role: str
+    how: str
+    output_A: float | None
+    of_holds: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class IfPartFails:
+    """The table of one limiter, and the fuses upstream that the board names; none where ``fuses`` is empty."""
+
+    rows: tuple[PartFails, ...]
+    fuses: tuple[str, ...]
+
+
+def if_a_part_fails(case: Case) -> IfPartFails | None:
+    """Return what each failed part lets through, or None where the limiter was not solved."""
+    solution = case.solution
+    if case.bench.circuit is None or solution.short is None or solution.not_solved is not None:
+        return None
+    stops = case.limiter.elements.get("base-stop", ())
+    found = failures(
+        case.circuit,
+        stops=[name for name, index in case.bench.element_of.items() if index in stops],
+        on_V=case.drive_ends_V[1].usual,
+        short_V=case.circuit.held[solution.short].usual,
+        sources=solution.sources,
+        ambient_degC=case.limits.ambient_degC[1],
+        known=case.known,
+    )
+    holds_A = solution.held_short.output_A if solution.held_short is not None else 0.0
+    rows = []
+    for one in found:
+        element = case.board.elements[case.bench.element_of[one.device]]
+        parts = tuple(case.board.parts[index].id for index in element.parts)
+        of_holds = one.output_A / holds_A if one.output_A is not None and holds_A > 0.0 else None
+        rows.append(PartFails(parts, one.role, one.how, one.output_A, of_holds))
+    return IfPartFails(tuple(rows), fuses_upstream(case))
+
+
+def fuses_upstream(case: Case) -> tuple[str, ...]:
+    """Return the ids of the fuses in the load current's way: on the bench, and on its supplies."""
+    board, limiter = case.board, case.limiter
+    at_ends = {limiter.nets["far"], limiter.bound.get("load")}
+    supplies = [
+        net.index
+        for net in board.nets
+        if net.supply is not None
+        and net.supply.voltage_V.usual != 0.0
+        and (net.index in at_ends or net.name == case.solution.short)
+    ]
+    found = {index for net in supplies for index, _ in board.elements_at[net]} | set(case.bench.element_of.values())
+    fuses = (board.elements[index] for index in sorted(found) if board.elements[index].kind == "fuse")
+    return tuple(board.parts[part].id for fuse in fuses for part in fuse.parts)
