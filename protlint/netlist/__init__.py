@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from hashlib import sha256
 from pathlib import Path
 
@@ -14,7 +15,7 @@ from protlint.sources import InputError, decode_text, read_bytes
 
 __all__ = ["FILE_LIMIT", "LINE_LIMIT", "read_netlist", "read_netlist_bytes"]
 
-FILE_LIMIT = 500_000_000
+FILE_LIMIT = 250_000_000
 """Most bytes of a file."""
 LINE_LIMIT = 100_000_000
 """Most bytes of a line; a whole netlist on one line is legal, and a line longer than this is no netlist's."""
@@ -35,12 +36,17 @@ def read_netlist(path: str | Path, *, design: str | None = None, encoding: str |
     InputError : it is no EDIF 2 0 0, is damaged, uses what is refused by name, or is past a stated limit.
     UsageError : there is no such design or encoding.
     """
-    data, name = read_bytes(path, limit=FILE_LIMIT)
-    return read_netlist_bytes(data, name, design=design, encoding=encoding)
+    return _read(lambda: read_bytes(path, limit=FILE_LIMIT), design, encoding)
 
 
 def read_netlist_bytes(data: bytes, name: str, *, design: str | None = None, encoding: str | None = None) -> Netlist:
     """Read one design of an EDIF 2 0 0 netlist from bytes; ``name`` is what errors call it. See :func:`read_netlist`."""
+    return _read(lambda: (data, name), design, encoding)
+
+
+def _read(source: Callable[[], tuple[bytes, str]], design: str | None, encoding: str | None) -> Netlist:
+    """Read what ``source`` gives. Bytes, text and definitions are let go as soon as the next stage has what it needs."""
+    data, name = source()
     digest = sha256(data).hexdigest()
     _refuse_long_lines(data, name)
     decoded = decode_text(data, encoding, file=name)
@@ -49,12 +55,16 @@ def read_netlist_bytes(data: bytes, name: str, *, design: str | None = None, enc
         hint = ", unless it is UTF-16, which --encoding utf-16 reads" if data[:2] in (b"\xff\xfe", b"\xfe\xff") else ""
         raise Places(decoded.text, name).error(f"a NUL character: this is no text, and no EDIF{hint}", nul)
     del data
+    read_as = decoded.encoding + ("" if encoding else ", --encoding NAME takes another")
+    first, count, used = decoded.first_outside_ascii, decoded.outside_ascii, decoded.encoding
+    text = decoded.text
+    del decoded
     with no_collection():
-        edif, notes = read_definitions(decoded.text, name)
+        edif, notes = read_definitions(text, name)
+        del text
+        if first is not None:
+            notes.add("encoding", first, f"read as {read_as}", count=count)
         flat = flatten(edif, notes, design=design)
-        if decoded.first_outside_ascii is not None:
-            read_as = f"read as {decoded.encoding}" + ("" if encoding else ", --encoding NAME takes another")
-            notes.add("encoding", decoded.first_outside_ascii, read_as, count=decoded.outside_ascii)
         return Netlist(
             file=name,
             sha256=digest,
@@ -63,7 +73,7 @@ def read_netlist_bytes(data: bytes, name: str, *, design: str | None = None, enc
             nets=flat.nets,
             warnings=notes.warnings(),
             pins_on_two_nets=flat.pins_on_two_nets,
-            facts=facts_of(edif, flat, decoded.encoding),
+            facts=facts_of(edif, flat, used),
             duplicate_designators=flat.duplicate_designators,
         )
 

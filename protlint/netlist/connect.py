@@ -6,7 +6,7 @@ connectors join its sheets; ripper cells, and placed cells whose ports are one n
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 from protlint.netlist.definitions import Instance, Net, PortRef, Scope
@@ -18,13 +18,16 @@ from protlint.netlist.ports import Budget, Ports, element_of
 def wire(block: Block, notes: Notes, budget: Budget) -> Wiring:
     """Return the inside of a block whose ``children`` are known and wired; add to its ``shorts`` what its inside shorts.
 
+    The sheets of its contents are used up, which halves what is in memory when the netlist is made.
+
     Raises
     ------
     InputError : the file names more elements of arrays than ``budget`` has left.
     """
     wirer = _Wirer(block, notes, budget)
-    assert block.contents is not None
-    for sheet, children in zip(block.contents.sheets, block.children, strict=True):
+    sheets = block.contents.sheets if block.contents is not None else []
+    for children in block.children:
+        sheet = sheets.pop(0)
         instances: Scope[_Placed] = Scope()
         for instance, child in zip(sheet.instances, children, strict=True):
             wirer.place(instance, child, instances)
@@ -63,10 +66,10 @@ class Node:
 
 @dataclass(frozen=True, slots=True)
 class TwoNets:
-    """A pin of a part (its position in the placements, and the bit) on two nets: their nodes, the second one's place."""
+    """A pin of a part (its position in the placements) on two nets: their nodes, the second one's place."""
 
     placement: int
-    bit: int
+    pin: str
     nodes: tuple[int, int]
     line: int
     column: int
@@ -109,7 +112,7 @@ class _Wirer:
         self.on_two_nets: list[TwoNets] = []
         self.connectors = Ports(start=block.ports.width)
         for name in block.contents.connectors if block.contents is not None else ():
-            self.connectors.add(name)
+            self.connectors.connect(name)
 
     def place(self, instance: Instance, block: Block, instances: Scope[_Placed]) -> None:
         """Add what an instance places; of two with one identifier the first is what references mean."""
@@ -128,7 +131,7 @@ class _Wirer:
         for item in net.joined:
             if width == 1 and type(item) is PortRef and self._join_plain(item, start, instances):
                 continue
-            ends = [end for ref in item.refs for end in self._ends(ref, instances)]
+            ends = [end for ref in item.refs for end in self._ends(ref, net.name.text, instances)]
             if len(ends) != width and ends:
                 self.notes.add("width", item.offset, f"{item.port}, {len(ends)} wide, to {net.name.text}, {width} wide")
             # A plain net takes every element of what is wider; else elements meet in their order as far as both go.
@@ -145,11 +148,11 @@ class _Wirer:
         self._attach(placed.first, bit, node, ref.offset)
         return True
 
-    def _ends(self, ref: PortRef, instances: Scope[_Placed]) -> Sequence[tuple[int, int]]:
+    def _ends(self, ref: PortRef, net: str, instances: Scope[_Placed]) -> Sequence[tuple[int, int]]:
         """Return what a reference means: positions of placements, :data:`_OWN` for the block itself, each with a bit."""
         wanted = (ref.port, ref.member, ref.bundle)
         if ref.instance is None:
-            bits = self.block.ports.find(*wanted) or self.connectors.find(*wanted)
+            bits = self.block.ports.find(*wanted, text=net) or self.connectors.find(*wanted, text=net)
             if bits is None:
                 self.notes.add("reference", ref.offset, f"the port {ref.port}, which the cell {self._name} has not")
                 bits = self.connectors.undeclared(ref.port, ref.member)
@@ -160,7 +163,7 @@ class _Wirer:
         if placed is None or elements is None:
             self.notes.add("reference", ref.offset, f"the port {ref.port} of {ref.instance}, which is not there")
             return ()
-        bits = placed.block.ports.find(*wanted)
+        bits = placed.block.ports.find(*wanted, text=net)
         if bits is None:
             cell = placed.block.cell.name.text
             if placed.block.view is not None:  # of a cell that is not in the file no port is known
@@ -189,7 +192,8 @@ class _Wirer:
         if first == node:
             return
         if placement.block.is_part:
-            self.on_two_nets.append(TwoNets(position, bit, (first, node), *self.budget.places.at(offset)))
+            pin = placement.block.ports.text(bit)
+            self.on_two_nets.append(TwoNets(position, pin, (first, node), *self.budget.places.at(offset)))
             return
         self._unite(first, node)
         if placement.block.contents is not None:
@@ -206,16 +210,17 @@ class _Wirer:
     def finish(self) -> Wiring:
         """Unite what is shorted, number the nodes in the order of the file, and return the wiring."""
         for placement in self.placements:
-            for group in placement.block.shorts:
-                self._unite_all(placement.pins[bit][0] for bit in group if bit in placement.pins)
-        for group in self.block.shorts:
-            self._unite_all(self.own[bit] for bit in group if bit in self.own)
+            for one, other in placement.block.shorts.groups((bit, node) for bit, (node, _) in placement.pins.items()):
+                self._unite(one, other)
+        for one, other in self.block.shorts.groups(self.own.items()):
+            self._unite(one, other)
         number, nodes = self._numbered()
         ports = {bit: number[root(self.parents, node)] for bit, node in self.own.items() if bit < self.block.ports.width}
         together: dict[int, list[int]] = {}
         for bit, node in ports.items():
             together.setdefault(node, []).append(bit)
-        self.block.shorts += (tuple(bits) for bits in together.values() if len(bits) > 1)
+        for bits in together.values():
+            self.block.shorts.add(bits)
         for placement in self.placements:
             for bit, (node, offset) in placement.pins.items():
                 placement.pins[bit] = (number[root(self.parents, node)], offset)
@@ -225,11 +230,6 @@ class _Wirer:
             if first != second:
                 twice.append(replace(each, nodes=(first, second)))
         return Wiring(self.block, tuple(nodes), tuple(self.placements), ports, tuple(twice))
-
-    def _unite_all(self, members: Iterable[int]) -> None:
-        nodes = list(members)
-        for node in nodes[1:]:
-            self._unite(nodes[0], node)
 
     def _numbered(self) -> tuple[dict[int, int], list[Node]]:
         """Return the number of each root, and the nodes.

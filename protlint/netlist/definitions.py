@@ -127,9 +127,12 @@ class Sheet:
 
 @dataclass(frozen=True, slots=True)
 class Contents:
-    """The inside of a cell: its sheets, of which ``pages`` are pages, and the connectors that join sheets by name."""
+    """The inside of a cell: its sheets, of which ``pages`` are pages, and the connectors that join sheets by name.
 
-    sheets: tuple[Sheet, ...]
+    The list of sheets is emptied while they are wired.
+    """
+
+    sheets: list[Sheet]
     pages: int
     connectors: tuple[Name, ...]
 

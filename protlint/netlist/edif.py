@@ -113,6 +113,7 @@ class _Reader(FormParser):
     def read(self) -> tuple[Edif, Notes]:
         """Return the whole file's definitions."""
         forms = self.parse()
+        self.reducers = {}  # they hold the parser, and the parser the text
         if len(forms) > 1 and forms[1:] != ["\x1a"]:  # a control-Z closes files written under DOS
             offset = self.outside() if not all(type(form) is Form for form in forms) else forms[1].offset
             raise self.places.error("there is more after the end of (edif ...)", offset)
@@ -126,6 +127,10 @@ class _Reader(FormParser):
         designs = tuple(item for item in form if type(item) is Design)
         self._duplicates(libraries)
         return Edif(self._name(form), level, _program(form), libraries, designs, self.places), self.notes
+
+    def atom(self, token: str) -> str:
+        """Return a word as it is: where it stands tells what it is, and a netlist has very many."""
+        return token
 
     def head(self, token: str) -> str | None:
         """Return a keyword in lower case, None for those that are passed over."""
@@ -166,8 +171,8 @@ class _Reader(FormParser):
         if not isinstance(item, str) or not item:
             raise form.error(f"({form.head} ...) has no name")
         if _IDENTIFIER.fullmatch(item) is None:
-            self.notes.add("identifier", form.offset, repr(str(item)))
-        return Name(item, text or str(item).removeprefix("&"), dimensions)
+            self.notes.add("identifier", form.offset, repr(item))
+        return Name(item, text or item.removeprefix("&"), dimensions)
 
     def _dimensions(self, form: Form) -> tuple[int, ...]:
         sizes = [integer(item) for item in form[2:] if not isinstance(item, Form)]
@@ -228,24 +233,32 @@ class _Reader(FormParser):
         self._duplicates(nets)
         return Sheet(instances, nets)
 
-    def _contents(self, form: Form) -> Contents:
-        pages = list(items(form, "page"))
-        sheets = (form, *pages)
-        connectors = tuple(self._name(item) for sheet in sheets for item in items(sheet, "offpageconnector"))
-        return Contents(tuple(map(self._sheet, sheets)), len(pages), connectors)
+    def _contents(self, forms: Sequence[Form]) -> Contents | None:
+        """Return the contents of a view; several forms of them are one."""
+        pages = [page for form in forms for page in items(form, "page")]
+        sheets = (*forms, *pages)
+        connectors: dict[Name, None] = {}
+        seen: dict[str, str] = {}
+        for item in chain.from_iterable(items(sheet, "offpageconnector") for sheet in sheets):
+            name = self._name(item)
+            connectors[name] = None
+            if seen.setdefault(name.identifier, name.text) != name.text:
+                self.notes.add("duplicate", item.offset, repr(name.identifier))
+        return Contents(list(map(self._sheet, sheets)), len(pages), tuple(connectors)) if forms else None
 
     def _view(self, form: Form) -> View:
         found = by_head(form)
-        interface = next(iter(found.get("interface", ())), Form())
-        ports = tuple(self._port(port) for port in items(interface, "port", "portbundle"))
+        interfaces = found.get("interface", ())
+        ports = tuple(self._port(port) for interface in interfaces for port in items(interface, "port", "portbundle"))
         self._duplicates(ports)
+        stated = chain.from_iterable(self._properties(by_head(interface), "interface") for interface in interfaces)
         return View(
             name=self._name(form),
             kind=keyword(found.get("viewtype", ()), ""),
             ports=ports,
-            shorts=tuple(joined(item) for item in items(interface, "joined")),
-            properties=self._properties(by_head(interface), "interface") + self._properties(found, "interface"),
-            contents=next(map(self._contents, found.get("contents", ())), None),
+            shorts=tuple(joined(item) for interface in interfaces for item in items(interface, "joined")),
+            properties=(*stated, *self._properties(found, "interface")),
+            contents=self._contents(found.get("contents", ())),
             offset=form.offset,
         )
 

@@ -12,8 +12,7 @@ _LIBRARIES_SHOWN = 12
 
 def facts_of(edif: Edif, flat: Flat, encoding: str) -> dict[str, str]:
     """Return plain names and plain sentences, in the order to show them."""
-    placements = [placement for cell in flat.cells for placement in cell.wiring.placements]
-    joints = sum(placement.block.contents is None and not placement.block.is_part for placement in placements)
+    joints = sum(item is None for cell in flat.cells for item in cell.items)
     pins = [pin for part in flat.parts for pin in part.pins]
     facts = {
         "format": f"EDIF 2 0 0, level {edif.level}, read as {encoding}",
@@ -30,7 +29,7 @@ def facts_of(edif: Edif, flat: Flat, encoding: str) -> dict[str, str]:
     }
     if joints:
         facts["rippers and ties"] = f"{joints}, which join nets and are no parts"
-    sections = [len(members) for cell in flat.cells for members in cell.named.packages]
+    sections = [sections for cell in flat.cells for sections in cell.packages]
     if sections:
         facts["sections"] = f"{sum(sections)} parts are sections of {len(sections)} packages"
     return facts
@@ -43,7 +42,7 @@ def _libraries(libraries: Sequence[Library]) -> str:
 
 
 def _shape(flat: Flat) -> str:
-    views = [cell.wiring.block.view for cell in flat.cells]
+    views = [cell.block.view for cell in flat.cells]
     kinds = sorted({view.kind.upper() or "unnamed" for view in views if view is not None})
     pages = sum(view.contents.pages for view in views if view is not None and view.contents is not None)
     shape = f"{' and '.join(kinds)} views" if kinds else "a cell without contents"

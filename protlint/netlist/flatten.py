@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
+import sys
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 
-from protlint.netlist.connect import Node, Wiring, wire
+from protlint.netlist.connect import Node, TwoNets, Wiring, wire
 from protlint.netlist.definitions import Edif
 from protlint.netlist.hierarchy import Block, Directory, choose_top
 from protlint.netlist.model import DuplicateDesignator, Net, Part, Pin, PinOnTwoNets, Property
-from protlint.netlist.naming import NamedCell, name_cell
+from protlint.netlist.naming import name_cell
 from protlint.netlist.notes import Notes
 
 SIZE_LIMIT = 4_000_000
@@ -17,7 +18,7 @@ SIZE_LIMIT = 4_000_000
 
 
 def flatten(edif: Edif, notes: Notes, *, design: str | None = None) -> Flat:
-    """Return one design of a file, flattened.
+    """Return one design of a file, flattened. The definitions are used up: a file is flattened once.
 
     Raises
     ------
@@ -27,71 +28,72 @@ def flatten(edif: Edif, notes: Notes, *, design: str | None = None) -> Flat:
     directory = Directory(edif, notes)
     top, name, chosen_by = choose_top(directory, notes, design)
     order = [block for block in directory.bottom_up(top) if block.contents is not None]
-    wirings = {id(block): wire(block, notes, directory.budget) for block in order}
-    _refuse_too_large(order, wirings, edif)
     designated = any(
-        any(placement.instance.designators)
-        for wiring in wirings.values()
-        for placement in wiring.placements
-        if placement.block.is_part
+        child.is_part and any(instance.designators) for block in order for instance, child in directory.placed(block)
     )
-    cells = {}
-    for key, wiring in wirings.items():
-        named = name_cell(wiring, notes, edif.places, designated=designated)
-        cells[key] = UnfoldedCell(wiring, named, _templates(wiring, named, edif, notes))
+    cells: dict[int, UnfoldedCell] = {}
+    size: dict[int, int] = {}
+    for block in order:
+        wiring = wire(block, notes, directory.budget)
+        size[id(block)] = _size(wiring, size)
+        if size[id(block)] > SIZE_LIMIT:
+            message = (
+                f"flattened, {block.cell.name.text} has more than {SIZE_LIMIT} parts, nets and pins, the most that is read"
+            )
+            raise edif.places.error(message, block.cell.offset)
+        cells[id(block)] = _unfolded(wiring, edif, notes, designated=designated)
     unfolder = _Unfolder(cells)
     if id(top) in cells:
         unfolder.unfold(cells[id(top)])
     return unfolder.flat(name, top, chosen_by, designated=designated)
 
 
-def _refuse_too_large(order: Iterable[Block], wirings: Mapping[int, Wiring], edif: Edif) -> None:
-    """Add up, bottom up and before anything is unfolded, what each block holds."""
-    size: dict[int, int] = {}
-    for block in order:
-        wiring = wirings[id(block)]
-        size[id(block)] = len(wiring.nodes) + sum(
-            1 + len(placement.pins) + size.get(id(placement.block), 0) for placement in wiring.placements
-        )
-        if size[id(block)] > SIZE_LIMIT:
-            message = (
-                f"flattened, {block.cell.name.text} has more than {SIZE_LIMIT} parts, nets and pins; protlint reads no more"
-            )
-            raise edif.places.error(message, block.cell.offset)
+def _size(wiring: Wiring, size: Mapping[int, int]) -> int:
+    """Return how many parts, nets and pins a cell unfolds to, from the sizes of those it places."""
+    return len(wiring.nodes) + sum(1 + len(each.pins) + size.get(id(each.block), 0) for each in wiring.placements)
 
 
-def _templates(wiring: Wiring, named: NamedCell, edif: Edif, notes: Notes) -> list[_Template | None]:
-    """Return what is the same of a part wherever its cell is unfolded; None for placements that are no parts."""
+def _unfolded(wiring: Wiring, edif: Edif, notes: Notes, *, designated: bool) -> UnfoldedCell:
+    """Return a cell with all that is the same wherever it is placed; the wiring is not needed after it."""
+    named = name_cell(wiring, notes, edif.places, designated=designated)
     inherited: dict[int, dict[str, Property]] = {}
-    templates: list[_Template | None] = []
-    for placement, label in zip(wiring.placements, named.labels, strict=True):
+    items: list[Part | _InnerCell | None] = []
+    for placement, label, pins in zip(wiring.placements, named.labels, named.pins, strict=True):
         block, instance = placement.block, placement.instance
-        if label is None or not block.is_part:
-            templates.append(None)
-            continue
-        if id(block) not in inherited:
-            of_view = _by_name(block.view.properties, notes) if block.view is not None else {}
-            inherited[id(block)] = _by_name(block.cell.properties, notes) | of_view
-        own = _by_name(instance.properties, notes)
-        line, column = edif.places.at(instance.offset)
-        templates.append(
-            _Template(
-                designator=label.designator,
-                cell=block.cell.name.text,
-                library=block.library.name.text,
-                properties=inherited[id(block)] | own if own else inherited[id(block)],
-                line=line,
-                column=column,
-            )
-        )
-    return templates
+        if label is None:
+            items.append(None)
+        elif block.contents is not None:
+            items.append(_InnerCell(label.id, id(block), {bit: node for bit, (node, _) in placement.pins.items()}))
+        else:
+            if id(block) not in inherited:
+                of_view = () if block.view is None else block.view.properties
+                inherited[id(block)] = _by_name(block.cell.properties, notes) | _by_name(of_view, notes)
+            own = _by_name(instance.properties, notes)
+            properties = inherited[id(block)] | own if inherited[id(block)] and own else own or inherited[id(block)]
+            line, column = edif.places.at(instance.offset)
+            cell, library = block.cell.name.text, block.library.name.text
+            items.append(Part(label.id, label.designator, cell, library, properties, pins, line, column))
+    duplicates = [
+        (designator, members)
+        for members in named.twice
+        if (label := named.labels[members[0]]) is not None and (designator := label.designator) is not None
+    ]
+    return UnfoldedCell(
+        block=wiring.block,
+        nodes=wiring.nodes,
+        ports=wiring.ports,
+        items=items,
+        on_two_nets=wiring.on_two_nets,
+        duplicates=duplicates,
+        packages=[len(members) for members in named.packages],
+    )
 
 
 def _by_name(properties: Iterable[Property], notes: Notes) -> dict[str, Property]:
     """Return properties by name, in lower case; of two values the first counts."""
     result: dict[str, Property] = {}
     for each in properties:
-        first = result.setdefault(each.name.lower(), each)
+        first = result.setdefault(sys.intern(each.name.lower()), each)
         if first is not each and first.value != each.value:
             notes.add_at("property", (each.line, each.column), f"{each.name} is {first.value!r} and {each.value!r}")
     return result
@@ -135,27 +137,32 @@ class Flat:
 
 
 @dataclass(frozen=True, slots=True)
-class UnfoldedCell:
-    """A cell with contents, ready to unfold."""
+class _InnerCell:
+    """A cell with contents placed in another: its name there, and the node that each bit of its ports is on."""
 
-    wiring: Wiring
-    named: NamedCell
-    templates: Sequence[_Template | None]
+    id: str
+    cell: int
+    pins: Mapping[int, int]
 
 
 @dataclass(frozen=True, slots=True)
-class _Template:
-    """What all the parts have in common that one instance becomes."""
+class UnfoldedCell:
+    """A cell with contents, ready to unfold.
 
-    designator: str | None
-    cell: str
-    library: str
-    properties: Mapping[str, Property]
-    line: int
-    column: int
+    ``items`` holds its parts as they would be if it were the whole board, what else it places, and None for what only joins
+    nets; the other positions are positions in it. ``packages`` holds the number of sections of each package.
+    """
+
+    block: Block
+    nodes: Sequence[Node]
+    ports: Mapping[int, int]
+    items: Sequence[Part | _InnerCell | None]
+    on_two_nets: Sequence[TwoNets]
+    duplicates: Sequence[tuple[str, tuple[int, ...]]]
+    packages: Sequence[int]
 
 
-@dataclass(slots=True)
+@dataclass(frozen=True, slots=True)
 class _Frame:
     """One place where a cell is unfolded: the path to it, the board's net of each of its nodes, and what is still to do."""
 
@@ -185,65 +192,46 @@ class _Unfolder:
             self.levels = max(self.levels, len(stack))
             frame = stack[-1]
             for position in frame.remaining:
-                label = frame.cell.named.labels[position]
-                if label is None:
-                    continue
-                template = frame.cell.templates[position]
-                if template is not None:
-                    self._part(frame, position, template, label.id)
-                    continue
-                placement = frame.cell.wiring.placements[position]
-                given = {bit: frame.nets[node] for bit, (node, _) in placement.pins.items()}
-                stack.append(self._frame(self.cells[id(placement.block)], f"{frame.path}{label.id}/", given))
-                break
+                item = frame.cell.items[position]
+                if isinstance(item, _InnerCell):
+                    given = {bit: frame.nets[node] for bit, node in item.pins.items()}
+                    stack.append(self._frame(self.cells[item.cell], f"{frame.path}{item.id}/", given))
+                    break
+                if item is not None:
+                    self._part(frame, position, item)
             else:
                 self._close(frame)
                 stack.pop()
 
     def _frame(self, cell: UnfoldedCell, path: str, given: Mapping[int, int]) -> _Frame:
-        nets = [-1] * len(cell.wiring.nodes)
-        for bit, node in cell.wiring.ports.items():
+        nets = [-1] * len(cell.nodes)
+        for bit, node in cell.ports.items():
             nets[node] = given.get(bit, nets[node])
-        for node, net in enumerate(cell.wiring.nodes):
+        for node, net in enumerate(cell.nodes):
             if nets[node] < 0:
                 nets[node] = len(self.nets)
                 self.nets.append(replace(net, name=path + net.name) if path else net)
                 self.pins.append([])
-        return _Frame(cell, path, nets, iter(range(len(cell.wiring.placements))), {})
+        return _Frame(cell, path, nets, iter(range(len(cell.items))), {})
 
-    def _part(self, frame: _Frame, position: int, template: _Template, name: str) -> None:
+    def _part(self, frame: _Frame, position: int, part: Part) -> None:
         index = frame.parts[position] = len(self.parts)
-        pins = []
-        for number, pin in enumerate(frame.cell.named.pins[position]):
-            net = frame.nets[pin.node]
-            self.pins[net].append((index, number))
-            pins.append(Pin(pin.name, pin.number, net, pin.line, pin.column, pin.direction))
-        self.parts.append(
-            Part(
-                frame.path + name,
-                template.designator,
-                template.cell,
-                template.library,
-                template.properties,
-                tuple(pins),
-                template.line,
-                template.column,
-            )
-        )
+        if frame.path:  # the nodes of the first cell are the board's first nets, so its parts are what they will be
+            pins = (Pin(pin.name, pin.number, frame.nets[pin.net], pin.line, pin.column, pin.direction) for pin in part.pins)
+            part = replace(part, id=frame.path + part.id, pins=tuple(pins))
+        self.parts.append(part)
+        for number, pin in enumerate(part.pins):
+            self.pins[pin.net].append((index, number))
 
     def _close(self, frame: _Frame) -> None:
         """Tell, of a cell that is unfolded, what the file joins or calls twice."""
-        for twice in frame.cell.wiring.on_two_nets:
+        for twice in frame.cell.on_two_nets:
             first, second = (frame.nets[node] for node in twice.nodes)
-            if first != second and twice.placement in frame.parts:
-                pin = frame.cell.wiring.placements[twice.placement].block.ports.text(twice.bit)
+            if first != second:
                 part = frame.parts[twice.placement]
-                self.on_two_nets.append(PinOnTwoNets(part, pin, (first, second), twice.line, twice.column))
-        for positions in frame.cell.named.twice:
-            label = frame.cell.named.labels[positions[0]]
-            if label is not None and label.designator is not None:
-                parts = tuple(frame.parts[position] for position in positions)
-                self.duplicates.append(DuplicateDesignator(label.designator, parts))
+                self.on_two_nets.append(PinOnTwoNets(part, twice.pin, (first, second), twice.line, twice.column))
+        for designator, members in frame.cell.duplicates:
+            self.duplicates.append(DuplicateDesignator(designator, tuple(frame.parts[member] for member in members)))
 
     def flat(self, design: str, top: Block, chosen_by: str, *, designated: bool) -> Flat:
         """Return what was gathered."""

@@ -11,6 +11,7 @@ from __future__ import annotations
 
 import gc
 import re
+from array import array
 from bisect import bisect_right
 from collections.abc import Callable, Iterator, Mapping, Sequence
 from contextlib import contextmanager
@@ -82,20 +83,20 @@ class Atom(str):
 class Places:
     """Turns offsets into lines and columns, both from 1, columns in characters; CR, LF and CRLF all end a line."""
 
-    __slots__ = ("_starts", "file", "text")
+    __slots__ = ("_starts", "_text", "file")
 
     def __init__(self, text: str, file: str | None = None) -> None:
-        self.text = text
+        self._text = text
         self.file = file
         self._starts: Sequence[int] = ()
 
     def at(self, offset: int) -> tuple[int, int]:
         """Return (line, column) of the character at ``offset``."""
         if not self._starts:
-            text = self.text
+            text, self._text = self._text, ""  # not needed any more, and large
             if "\r" in text:
                 text = text.replace("\r\n", " \n").replace("\r", "\n")
-            self._starts = list(accumulate((len(line) + 1 for line in text.split("\n")), initial=0))
+            self._starts = array("q", accumulate((len(line) + 1 for line in text.split("\n")), initial=0))
         line = bisect_right(self._starts, offset)
         return line, offset - self._starts[line - 1] + 1
 

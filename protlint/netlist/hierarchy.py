@@ -7,7 +7,7 @@ from itertools import chain
 
 from protlint.netlist.definitions import Cell, Contents, Edif, Instance, Library, Name, Scope, View, ViewRef
 from protlint.netlist.notes import Notes
-from protlint.netlist.ports import Budget, Ports
+from protlint.netlist.ports import Budget, Ports, Shorts
 from protlint.sources import UsageError
 
 DEPTH_LIMIT = 100
@@ -41,8 +41,8 @@ def choose_view(cell: Cell, wanted: str | None, *, any_kind: bool = False) -> tu
 class Block:
     """A cell as instances see it: its ports, its contents where it has any, and which of its bits are one node.
 
-    A block without contents is a leaf. ``shorts`` holds groups of bits; what the contents short is added when they are
-    wired. ``children`` holds, sheet by sheet, the block that each instance places.
+    A block without contents is a leaf. ``shorts`` tells which of its bits are one; what the contents short is added when
+    they are wired. ``children`` holds, sheet by sheet, the block that each instance places.
     """
 
     def __init__(self, cell: Cell, library: Library, view: View | None, budget: Budget) -> None:
@@ -52,12 +52,13 @@ class Block:
         self.ports = Ports(each.ports for each in cell.views)
         self.contents: Contents | None = view.contents if view is not None and has_contents(view) else None
         self.children: list[list[Block]] = []
-        self.shorts: list[tuple[int, ...]] = []
+        self.shorts = Shorts()
         for joined in view.shorts if view is not None else ():
             bits = [[self.ports.find(ref.port, ref.member, ref.bundle) or () for ref in item.refs] for item in joined]
             items = [list(chain.from_iterable(item)) for item in bits]
             budget.spend(sum(map(len, items)) - len(items), cell.offset)
-            self.shorts += zip(*filter(None, items), strict=False)
+            for together in zip(*filter(None, items), strict=False):
+                self.shorts.add(together)
 
     @property
     def is_part(self) -> bool:
@@ -81,6 +82,8 @@ class Directory:
         self._libraries = Scope((library.name.identifier, library) for library in edif.libraries)
         self._cells = {id(each): Scope((cell.name.identifier, cell) for cell in each.cells) for each in edif.libraries}
         self._blocks: dict[tuple[int, int], Block] = {}
+        self._chosen: dict[tuple[int, str | None, bool], tuple[Block, bool]] = {}
+        self._anywhere: dict[str, tuple[Cell, Library] | None] = {}
         self._unknown: dict[str, Block] = {}
 
     def find(self, cell: str, library: str | None, here: Library | None) -> tuple[Cell, Library] | None:
@@ -91,17 +94,24 @@ class Directory:
 
     def find_anywhere(self, cell: str) -> tuple[Cell, Library] | None:
         """Return the first cell of a name in any library."""
-        return next((found for each in self.edif.libraries if (found := self.find(cell, None, each)) is not None), None)
+        if cell not in self._anywhere:
+            found = (self.find(cell, None, each) for each in self.edif.libraries)
+            self._anywhere[cell] = next(filter(None, found), None)
+        return self._anywhere[cell]
 
     def block(self, cell: Cell, library: Library, wanted: str | None, offset: int, *, any_kind: bool = False) -> Block:
         """Return a cell with the view to go by chosen; noted at ``offset`` where the one wanted is absent."""
-        view, present = choose_view(cell, wanted, any_kind=any_kind)
+        choice = (id(cell), wanted, any_kind)
+        if choice not in self._chosen:
+            view, present = choose_view(cell, wanted, any_kind=any_kind)
+            key = (id(cell), id(view))
+            if key not in self._blocks:
+                self._blocks[key] = Block(cell, library, view, self.budget)
+            self._chosen[choice] = self._blocks[key], present
+        block, present = self._chosen[choice]
         if not present:
             self._notes.add("view", offset, f"{wanted} of the cell {cell.name.text}")
-        key = (id(cell), id(view))
-        if key not in self._blocks:
-            self._blocks[key] = Block(cell, library, view, self.budget)
-        return self._blocks[key]
+        return block
 
     def meant(self, instance: Instance, inside: Block) -> Block:
         """Return the block that an instance inside another block places.

@@ -19,7 +19,7 @@ from protlint.netlist.connect import Placement, Wiring
 from protlint.netlist.definitions import Instance, PortInstance
 from protlint.netlist.forms import Places
 from protlint.netlist.hierarchy import Block
-from protlint.netlist.model import Property
+from protlint.netlist.model import Pin, Property
 from protlint.netlist.notes import Notes
 
 _PIN_NAME = ("name", "pin name", "pin_name", "pinname")
@@ -91,7 +91,7 @@ def _groups(placements: Sequence[Placement], labels: Sequence[Label | None]) -> 
     return [tuple(positions) for positions in members.values() if len(positions) > 1]
 
 
-def _are_sections(sections: Sequence[str | None], pins: Sequence[Sequence[NamedPin]], listed: int) -> bool:
+def _are_sections(sections: Sequence[str | None], pins: Sequence[Sequence[Pin]], listed: int) -> bool:
     """Tell whether parts of one designator are sections of one package, not different parts that were named alike.
 
     They are if each has a section's name of its own; if their one cell lists pin numbers for so many sections; or if each
@@ -106,13 +106,13 @@ def _are_sections(sections: Sequence[str | None], pins: Sequence[Sequence[NamedP
     for pin in (pin for each in pins for pin in each):
         key = pin.number or pin.name
         holders[key] += 1
-        if node_of.setdefault(key, pin.node) != pin.node:
+        if node_of.setdefault(key, pin.net) != pin.net:
             return False
     return all(any(holders[pin.number or pin.name] == 1 for pin in each) for each in pins)
 
 
 def _unique(
-    labels: Sequence[Label | None], packages: Sequence[Sequence[int]], pins: Sequence[Sequence[NamedPin]]
+    labels: Sequence[Label | None], packages: Sequence[Sequence[int]], pins: Sequence[Sequence[Pin]]
 ) -> tuple[Label | None, ...]:
     """Return the labels with ids that differ: sections numbered by their lowest pin, other namesakes in file order."""
     order = list(range(len(labels)))
@@ -136,14 +136,14 @@ def _unique(
     return tuple(result)
 
 
-def _lowest(pins: Sequence[NamedPin]) -> tuple[int, int]:
+def _lowest(pins: Sequence[Pin]) -> tuple[int, int]:
     numbers = [int(pin.number) for pin in pins if pin.number is not None and pin.number.isdecimal() and len(pin.number) < 9]
     return (0, min(numbers)) if numbers else (1, 0)
 
 
 def _pins(
     placement: Placement, label: Label, known: dict[tuple[int, int], _PortFacts], places: Places, *, sectioned: bool
-) -> tuple[NamedPin, ...]:
+) -> tuple[Pin, ...]:
     """Return the connected pins of a placement in the order of its cell's ports."""
     block = placement.block
     said: dict[int, PortInstance] = {}
@@ -162,7 +162,7 @@ def _pins(
         name = facts.text
         if name.isdecimal():
             name, number = named or name, number or name
-        result.append(NamedPin(name, number, facts.direction, node, *places.at(offset)))
+        result.append(Pin(name, number, node, *places.at(offset), facts.direction))
     return tuple(result)
 
 
@@ -198,18 +198,6 @@ def _pin_name(properties: Sequence[Property]) -> str | None:
 
 
 @dataclass(frozen=True, slots=True)
-class NamedPin:
-    """A connected pin: what people call it, its number, its node inside the cell and where the file connects it."""
-
-    name: str
-    number: str | None
-    direction: str | None
-    node: int
-    line: int
-    column: int
-
-
-@dataclass(frozen=True, slots=True)
 class Label:
     """What a placement is called inside its cell; ``position`` is its place in its package where it is a section of one."""
 
@@ -228,7 +216,7 @@ class NamedCell:
     """
 
     labels: tuple[Label | None, ...]
-    pins: tuple[tuple[NamedPin, ...], ...]
+    pins: tuple[tuple[Pin, ...], ...]
     packages: tuple[tuple[int, ...], ...]
     twice: tuple[tuple[int, ...], ...]
 

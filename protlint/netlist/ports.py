@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from bisect import bisect_right
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 
 from protlint.netlist.definitions import Name, Port, Scope
 from protlint.netlist.forms import Places
@@ -48,30 +48,35 @@ class Ports:
     """The ports of a cell, their elements numbered through as bits. Views of one cell share ports by name."""
 
     def __init__(self, views: Iterable[Sequence[Port]] = (), *, start: int = 0) -> None:
-        self.start = self.width = start
+        self.width = start
         self.plain: dict[str, int] = {}
         """The bits of ports that are no arrays, by identifier as declared: most references need no more."""
         self._scope: Scope[Slot] = Scope()
+        self._namesakes: dict[str, list[Slot]] = {}
+        self._by_text: dict[tuple[str, tuple[int, ...]], Slot] = {}
         self._slots: list[Slot] = []
         self._starts: list[int] = []
         for ports in views:
             before = self.width
             for port in ports:
                 found = self._scope.find(port.name.identifier)
-                # Two of one view that differ in case are two; of different views they are one.
-                if found is None or (found.start >= before and found.identifier != port.name.identifier):
-                    if not port.ports and not port.name.dimensions:
-                        self.plain[port.name.identifier] = self.width
+                # Two of one view that differ in case or in what people see are two; of different views they are one.
+                if found is None or (found.start >= before and (found.identifier, found.text) != port.name[:2]):
                     self._add(port, self._scope)
 
     def _add(self, port: Port, scope: Scope[Slot]) -> None:
         slot = Slot(port.name, self.width, port)
-        scope.add(port.name.identifier, slot)
         for inner in port.ports:
             self._add(inner, slot.inner)
         if not port.ports:
             self._fill(slot, port.name.width)
         slot.stop = self.width
+        identifier = port.name.identifier
+        if scope.add(identifier, slot) == "duplicate":
+            self._namesakes.setdefault(identifier, []).append(slot)
+            self.plain.pop(identifier, None)
+        elif scope is self._scope and not port.ports and not port.name.dimensions:
+            self.plain[identifier] = slot.start
 
     def _fill(self, slot: Slot, width: int) -> None:
         self._slots.append(slot)
@@ -79,23 +84,32 @@ class Ports:
         self.width += width
         slot.stop = self.width
 
-    def add(self, name: Name) -> Slot:
-        """Add a port that no interface declares, unless it is there; return it."""
-        slot = self._scope.find(name.identifier)
+    def connect(self, name: Name) -> None:
+        """Add an off-page connector: those that people see under one name are one, whatever their identifiers."""
+        slot = self._by_text.get(name[1:])
         if slot is None:
-            slot = Slot(name, self.width, None)
-            self._scope.add(name.identifier, slot)
+            slot = self._by_text[name[1:]] = Slot(name, self.width, None)
             self._fill(slot, name.width)
-        return slot
+        if self._scope.add(name.identifier, slot) == "duplicate" and self._scope.find(name.identifier) is not slot:
+            self._namesakes.setdefault(name.identifier, []).append(slot)
 
     def undeclared(self, port: str, member: tuple[int, ...]) -> range:
         """Add the port, or the one element, that a reference means and no interface declares; return its bit."""
         name = port + "".join(f"[{index}]" for index in member)
-        slot = self.add(Name(name, name.removeprefix("&")))
+        slot = self._scope.find(name)
+        if slot is None:
+            slot = Slot(Name(name, name.removeprefix("&")), self.width, None)
+            self._scope.add(name, slot)
+            self._fill(slot, 1)
         return range(slot.start, slot.stop)
 
-    def find(self, port: str, member: tuple[int, ...] = (), bundle: str | None = None) -> range | None:
-        """Return the bits that a reference means, None where it leads nowhere."""
+    def find(
+        self, port: str, member: tuple[int, ...] = (), bundle: str | None = None, *, text: str | None = None
+    ) -> range | None:
+        """Return the bits that a reference means, None where it leads nowhere.
+
+        Of two ports under one identifier, the one that people see as ``text``, the name of the net that refers to it.
+        """
         scope = self._scope
         if bundle is not None:
             holder = scope.find(bundle)
@@ -103,7 +117,10 @@ class Ports:
                 return None
             scope = holder.inner
         slot = scope.find(port)
-        return None if slot is None else slot.bits(member)
+        if slot is None:
+            return None
+        alike = self._namesakes.get(port, ()) if text is not None and slot.text != text else ()
+        return next((each for each in alike if each.text == text), slot).bits(member)
 
     def slot(self, bit: int) -> tuple[Slot, int]:
         """Return the port that a bit belongs to and its element."""
@@ -134,3 +151,37 @@ class Budget:
         if self.left < 0:
             message = f"the arrays of this file name more than {ELEMENTS_LIMIT} elements; protlint reads no more"
             raise self.places.error(message, offset)
+
+
+class Shorts:
+    """Which bits of a cell's ports are one node inside it."""
+
+    def __init__(self) -> None:
+        self._parents: dict[int, int] = {}
+
+    def add(self, bits: Iterable[int]) -> None:
+        """Make bits one."""
+        first: int | None = None
+        for bit in bits:
+            top = self._root(bit)
+            first = top if first is None else first
+            self._parents[top] = first
+
+    def groups(self, nodes: Iterable[tuple[int, int]]) -> Iterator[tuple[int, int]]:
+        """Yield, of (bit, node) pairs, the nodes that are one because their bits are, two at a time."""
+        if not self._parents:
+            return
+        seen: dict[int, int] = {}
+        for bit, node in nodes:
+            if bit in self._parents:
+                first = seen.setdefault(self._root(bit), node)
+                if first != node:
+                    yield first, node
+
+    def _root(self, bit: int) -> int:
+        parents = self._parents
+        parents.setdefault(bit, bit)
+        while parents[bit] != bit:
+            parents[bit] = parents[parents[bit]]
+            bit = parents[bit]
+        return bit

@@ -7,14 +7,14 @@ import re
 from collections.abc import Mapping
 from typing import Literal
 
-from protlint.netlist.forms import Atom, Form
+from protlint.netlist.forms import Form
 from protlint.netlist.model import Property, PropertyValue
 
 Origin = Literal["cell", "interface", "instance"]
 Scales = Mapping[str, float]
 """What one unit of a library's numbers is in SI units, by the lower-case name of the quantity."""
 
-_INTEGER = re.compile(r"[+-]?[0-9]{1,18}")
+_INTEGER = re.compile(r"[+-]?[0-9]{1,300}")
 
 
 def text_of(item: object) -> str | None:
@@ -28,12 +28,12 @@ def text_of(item: object) -> str | None:
         if len(item) == 1:
             return ""
         item = item[1]
-    return str(item) if isinstance(item, str) else None
+    return item if isinstance(item, str) else None
 
 
 def integer(item: object) -> int | None:
     """Return the integer an item is written as, None where it is none."""
-    return int(item) if isinstance(item, Atom) and _INTEGER.fullmatch(item) else None
+    return int(item) if isinstance(item, str) and _INTEGER.fullmatch(item) else None
 
 
 def number(item: object) -> float | str | None:

@@ -6,7 +6,7 @@ from collections.abc import Iterator, Mapping, Sequence
 from itertools import chain
 
 from protlint.netlist.definitions import Joined, PortList, PortRef, ViewRef
-from protlint.netlist.forms import Atom, Form
+from protlint.netlist.forms import Form
 from protlint.netlist.properties import integer, text_of
 
 
@@ -106,7 +106,7 @@ def joined(form: Form) -> Joined:
             continue
         if item[0] == "portref":
             inner = item[2] if len(item) == 3 and type(item[2]) is Form and len(item[2]) == 2 else ("", "")
-            if inner[0] == "instanceref" and type(inner[1]) is type(item[1]) is Atom:
+            if inner[0] == "instanceref" and type(inner[1]) is type(item[1]) is str:
                 ends.append(PortRef(item[1], inner[1], item.offset))  # nearly all are plain ones
             else:
                 ends.append(port_ref(item))
