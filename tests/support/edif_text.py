@@ -11,13 +11,14 @@ from protlint.netlist.model import Netlist
 
 @dataclass(frozen=True, slots=True)
 class Drawn:
-    """A part to be written: ``pins`` pairs a pin's name with its net, ``value`` and ``part_number`` may be empty."""
+    """A part to be written: ``pins`` pairs a pin's name with its net; ``value``, ``part_number`` and ``power`` may be empty."""
 
     designator: str
     cell: str
     pins: tuple[tuple[str, str], ...]
     value: str = ""
     part_number: str = ""
+    power: str = ""
 
 
 def flat_netlist(name: str, parts: Sequence[Drawn], *, remark: str) -> str:
@@ -47,7 +48,7 @@ def flat_netlist(name: str, parts: Sequence[Drawn], *, remark: str) -> str:
         reference = f"(viewRef NETLIST (cellRef {_identifier(part.cell)} (libraryRef PARTS)))"
         lines += [f"          (instance {numbers[part.designator]}", f"            {reference}"]
         lines += [f'            (designator "{part.designator}")']
-        for key, text in (("VALUE", part.value), ("PART_NUMBER", part.part_number)):
+        for key, text in (("VALUE", part.value), ("PART_NUMBER", part.part_number), ("POWER", part.power)):
             lines += [f'            (property {key} (string "{_escaped(text)}"))'] if text else []
         lines[-1] += ")"
     for net, pins_on in _nets(parts).items():
@@ -97,14 +98,15 @@ def drawn(netlist: Netlist) -> list[Drawn]:
         said = {key: str(item.value) for key, item in part.properties.items()}
         number = said.get("part_number", said.get("part number", ""))
         pins = tuple((pin.name, netlist.nets[pin.net].name) for pin in part.pins)
-        parts.append(Drawn(part.id, part.cell, pins, said.get("value", ""), number))
+        parts.append(Drawn(part.id, part.cell, pins, said.get("value", ""), number, said.get("power", "")))
     return parts
 
 
 def _placed(part: Drawn, place: int) -> Iterator[str]:
     yield f"    (INSTANCE {part.designator} (VIEWREF SYMBOL (CELLREF {_identifier(part.cell)} (LIBRARYREF DEVICES)))"
     yield f"      (TRANSFORM (ORIGIN (PT {100 + 60 * place} {200 + 20 * (place % 7)})))"
-    for key, text in (("Value", part.value), ('(RENAME Part_Number "Part Number")', part.part_number)):
+    named = {"Value": part.value, '(RENAME Part_Number "Part Number")': part.part_number, "Power": part.power}
+    for key, text in named.items():
         if text:
             yield f'      (PROPERTY {key} (STRING "{_escaped(text)}"))'
     yield "    )"
