@@ -115,7 +115,8 @@ class _Reader(FormParser):
         forms = self.parse()
         self.reducers = {}  # they hold the parser, and the parser the text
         if len(forms) > 1 and forms[1:] != ["\x1a"]:  # a control-Z closes files written under DOS
-            offset = self.outside() if not all(type(form) is Form for form in forms) else forms[1].offset
+            offset = getattr(forms[1], "offset", None)
+            offset = self.outside() if offset is None else offset
             raise self.places.error("there is more after the end of (edif ...)", offset)
         form = forms[0]
         for offset, raw in self.unpaired[:1]:

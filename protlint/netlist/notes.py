@@ -9,8 +9,8 @@ KINDS = {
     "encoding": "characters outside ASCII, whose code page no EDIF file states: {}",
     "percent": "a per cent sign without its partner in a string; it is kept as it stands, as in {}",
     "identifier": "a name that EDIF does not allow without a rename; it is taken as it stands: {}",
-    "duplicate": "one identifier for two things in one scope; both are kept, each reference goes to the one named like its net, "
-    "else to the first: {}",
+    "duplicate": "one identifier for two things in one scope; both are kept, and references go to the one named like their "
+    "net, else to the first: {}",
     "case": "identifiers that differ only in case, which EDIF takes as one; they are kept apart by their case: {}",
     "reference": "a reference that leads nowhere: {}",
     "view": "a view that is named and absent; the cell's best other view is taken: {}",
