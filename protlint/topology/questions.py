@@ -7,7 +7,7 @@ from collections.abc import Collection, Mapping, Set
 from protlint.topology.index import CONTROLLED, RAIL, Index
 from protlint.topology.terms import DIRECTED, Test
 
-LATE = frozenset({"no-input", "inner", "undriven", "closed", "held", "npn-follows", "pnp-follows"})
+LATE = frozenset({"no-input", "inner", "undriven", "closed", "held", "read", "twin", "npn-follows", "pnp-follows"})
 """Questions that can be answered only when every required part is known."""
 
 PASSIVE = frozenset({"resistor", "capacitor", "inductor", "fuse"}) | DIRECTED
@@ -71,6 +71,10 @@ def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int
             return _leads_only_to(net, set(nets.values()), index, own)
         case "held":
             return _leads_only_to(net, {*nets.values(), *index.voltage_V}, index, own)
+        case "read":
+            return _read(net, index, own)
+        case "twin":
+            return _twin(net, others[0], index, own)
         case "npn-follows" | "pnp-follows":
             return _followed(net, _FOLLOWERS[test.name], index, own)
         case "undriven":
@@ -111,6 +115,26 @@ def _leads_only_to(net: int, ends: Set[int], index: Index, own: Collection[int])
             seen |= beyond
             waiting += beyond
     return True
+
+
+def _read(net: int, index: Index, own: Collection[int]) -> bool:
+    """Tell whether an IC's pin is on a net, or behind a resistor of the net that leads nowhere else but to capacitors."""
+    for element, _ in index.at[net]:
+        if index.kind[element] == "ic":
+            return True
+        if index.kind[element] == "resistor" and element not in own:
+            for other in set(index.terminals[element].values()) - {net}:
+                kinds = {index.kind[one] for one, _ in index.at[other] if one != element} if not index.flag[other] else set()
+                if "ic" in kinds and kinds <= {"ic", "capacitor"}:
+                    return True
+    return False
+
+
+def _twin(base: int, emitter: int, index: Index, own: Collection[int]) -> bool:
+    return any(
+        element not in own and role == "base" and index.terminals[element].get("emitter") == emitter
+        for element, role in index.at[base]
+    )
 
 
 def _inner(net: int, index: Index, own: Collection[int]) -> bool:

@@ -37,7 +37,7 @@ ANY = "any"
 
 TESTS: Mapping[str, int] = {
     "ground": 1, "supply": 1, "lowest": 1, "highest": 1, "apart": 2, "same": 2, "busier": 2, "no-input": 1, "inner": 1,
-    "undriven": 1, "closed": 1, "held": 1, "npn-follows": 1, "pnp-follows": 1,
+    "undriven": 1, "closed": 1, "held": 1, "read": 1, "twin": 2, "npn-follows": 1, "pnp-follows": 1,
 }  # fmt: skip
 """Questions about nets, with the number of nets each takes; ``not``, ``or`` and ``and`` combine them."""
 
@@ -190,9 +190,12 @@ class Shape:
 
 @dataclass(frozen=True, slots=True)
 class Cure:
-    """One change that makes a fault sound: ``exchange`` two connections, ``move`` one to a net, ``replace`` a part by one of
-    another kind, ``part`` the ends of one that are on one net, ``turn`` what does not point from one net to the other in a string of
-    diodes. A connection is ``role.pin`` or ``role.net``."""
+    """One change that makes a fault sound.
+
+    ``exchange`` two connections, ``move`` one to a net, ``replace`` a part by one of another kind, ``part`` the ends of one
+    that are on one net, ``turn`` what does not point from one net to the other in a string of diodes. A connection is
+    ``role.pin`` or ``role.net``.
+    """
 
     what: str
     of: tuple[str, ...]
