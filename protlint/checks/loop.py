@@ -1,36 +1,214 @@
-"""Is the limiting loop stable."""
+"""Is the limiting loop damped: what its natural frequencies say, which part costs it, and what to fit."""
 
 from __future__ import annotations
 
 from collections.abc import Iterator
 
-from protlint.checks.case import Answer, Case
-from protlint.findings import WorkingLine
+from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
+from protlint.findings import Level, NotChecked, WorkingLine
+from protlint.quantities import format_quantity
+from protlint.solve.advice import AIM, DRIVE_FAR, GREATEST_F, LEAST_F, advise
+from protlint.solve.solution import Advice, Fit, Loop, Step
+
+DAMPING = "damping ratio -Re(s) / |s| of the generalised eigenvalues of G + sC"
+INJECTION = "R. D. Middlebrook, Int. J. Electronics 38, 1975"
 
 
 def compensation_absent(case: Case) -> Iterator[Answer]:
-    """Yield a finding where no capacitor shapes the loop, at a level that follows the computed damping."""
+    """Yield a finding where no capacitor shapes the loop: a note where the damping is good all the same, else a warning."""
     check = "compensation-absent"
-    if case.parts("compensation"):
+    if case.parts("compensation") or any(device.kind == "capacitor" for device in case.circuit.devices):
         return
     loop = case.solution.loop
-    if loop is None or loop.least_damping is None:
-        yield case.finding(
-            check,
-            "no capacitor shapes the limiting loop; its damping was not computed",
-            parts=case.parts("shunt"),
-            working=(),
-            remedy="a capacitor from the collector to the base of the shunt, sized by measuring the settling into a short",
-            level="note",
-        )
+    if loop is None or loop.own_damping is None:
+        yield from not_known(check, case.solution.loop_needs)
         return
-    damping = loop.worst_damping if loop.worst_damping is not None else loop.least_damping
-    poor = damping < case.threshold(check, "warning")
+    without = loop.worst_without_wiring
+    poor = loop.own_damping < case.threshold(check, "warning") or (without is not None and without.damping < 0.0)
     yield case.finding(
         check,
-        f"no capacitor shapes the limiting loop; its damping is {damping:.2g}, which is {'poor' if poor else 'enough'}",
+        f"no capacitor shapes the limiting loop; its damping of {said(loop)} is {'too little' if poor else 'enough'}",
         parts=case.parts("shunt"),
-        working=(WorkingLine("least damping", "natural frequencies of G + sC at the held short", damping, ""),),
-        remedy="fit a capacitor from the collector to the base of the shunt" if poor else None,
+        working=tuple(_working(case, loop)),
+        remedy=_remedy(case, _advice(case, loop)) if poor else None,
         level="warning" if poor else "note",
+        assumption=rests_on_assumptions(case),
     )
+
+
+def loop_undamped(case: Case) -> Iterator[Answer]:
+    """Yield a finding where the loop rings or oscillates with the parts as drawn, or oscillates within their spread."""
+    check = "loop-undamped"
+    loop = case.solution.loop
+    if loop is None or loop.own_damping is None:
+        yield from not_known(check, case.solution.loop_needs)
+        return
+    level = _level(case, check, loop)
+    if level is None:
+        return
+    advice = _advice(case, loop)
+    oscillates = "oscillates" if loop.own_damping < 0.0 else "can oscillate" if _grows(loop) else "rings"
+    cause = f"; {advice.costs} costs it" if advice is not None and advice.costs is not None else ""
+    yield case.finding(
+        check,
+        f"the limiting loop {oscillates}: its damping is {said(loop)}{cause}",
+        parts=(*case.parts("shunt"), *_costing_parts(case, advice)),
+        working=(*_working(case, loop), *_effects(advice), *_delays(advice)),
+        remedy=_remedy(case, advice),
+        level=level,
+        assumption=rests_on_assumptions(case),
+    )
+
+
+def said(loop: Loop) -> str:
+    """Return a loop's damping in words, as drawn and at worst."""
+    assert loop.own_damping is not None
+    at = (
+        f" at {format_quantity(loop.at_Hz, 'Hz')}"
+        if loop.at_Hz is not None and loop.own_damping == loop.least_damping
+        else ""
+    )
+    drawn = f"{loop.own_damping:.2g}{at} as drawn"
+    worst = loop.worst
+    if worst is None or worst.ambient_degC is None:
+        return drawn
+    wiring = f", {format_quantity(worst.wiring_H, 'H')} in the short" if worst.wiring_H else ""
+    return f"{drawn}, {worst.damping:.2g} at worst ({format_quantity(worst.ambient_degC, 'degC')}{wiring})"
+
+
+def not_known(check: str, needs: tuple[str, ...]) -> Iterator[NotChecked]:
+    """Yield what keeps a check from being asked, each key by itself."""
+    yield from (NotChecked(check, one) for one in needs or ("a held short that can be linearised",))
+
+
+def rests_on_assumptions(case: Case) -> bool:
+    """Tell whether loop and delay rest on something nobody stated: a device's charges, or anything the currents rest on.
+
+    What was assumed of charges is noted with the case.
+    """
+    assumed = [f"{device.name}: {sentence}" for device in case.circuit.devices for sentence in device.charges_assumed]
+    case.assumptions.extend(sentence for sentence in assumed if sentence not in case.assumptions)
+    return bool(assumed) or case.assumes(*ALL_ASSUMPTIONS)
+
+
+def charge_lines(case: Case) -> Iterator[WorkingLine]:
+    """Yield where the charges of devices come from that no model states."""
+    for device in case.circuit.devices:
+        words = [one for one in device.derived if "T_F" in one or "C_" in one] + list(device.charges_assumed)
+        if words:
+            yield WorkingLine(f"charges of {device.name}", ", ".join(words), None, "", "derived from its data-sheet figures")
+
+
+def _level(case: Case, check: str, loop: Loop) -> Level | None:
+    """Return the level of a badly damped loop: a note where it is only wiring in the short that can make it oscillate."""
+    assert loop.own_damping is not None
+    without = loop.worst_without_wiring
+    if loop.own_damping < case.threshold(check, "error") or (without is not None and without.damping < 0.0):
+        return "error"
+    if loop.own_damping < case.threshold(check, "warning"):
+        return "warning"
+    return "note" if _grows(loop) else None
+
+
+def _grows(loop: Loop) -> bool:
+    return loop.worst is not None and loop.worst.damping < 0.0
+
+
+def _working(case: Case, loop: Loop) -> Iterator[WorkingLine]:
+    yield WorkingLine(
+        "least damping", "of the limiter's own modes at the held short, as drawn", loop.own_damping, "", DAMPING
+    )
+    if loop.worst is not None:
+        yield WorkingLine("worst damping", _where(loop), loop.worst.damping, "", DAMPING)
+    if loop.low_frequency_gain is not None:
+        at = f"double injection at the base of {', '.join(case.parts('shunt'))}"
+        yield WorkingLine("loop gain at low frequency", at, loop.low_frequency_gain, "", INJECTION)
+    if loop.crossover_Hz is not None:
+        yield WorkingLine(
+            "crossover", "last frequency at which the loop gain falls below 1", loop.crossover_Hz, "Hz", INJECTION
+        )
+        yield WorkingLine("phase margin", "180 deg and the phase there", loop.phase_margin_deg, "deg", INJECTION)
+    yield from charge_lines(case)
+
+
+def _where(loop: Loop) -> str:
+    worst = loop.worst
+    if worst is None or worst.ambient_degC is None:
+        return "every spread, every ambient, 0 to 50 uH in the short: no mode of the limiter's swings"
+    corner = ", ".join(f"{name} {'high' if position > 0.0 else 'low'}" for name, position in worst.corner.items())
+    wiring = f"{format_quantity(worst.wiring_H or 0.0, 'H')} in the short"
+    return f"{format_quantity(worst.ambient_degC, 'degC')}, {wiring}" + (f", {corner}" if corner else "")
+
+
+def _effects(advice: Advice | None) -> Iterator[WorkingLine]:
+    for effect in advice.effects if advice is not None else ():
+        how = f"with {effect.part} bridged" if effect.base_stop else f"without {effect.part}"
+        yield WorkingLine(f"worst damping {how}", "solved again", effect.worst_damping, "", DAMPING)
+
+
+def _delays(advice: Advice | None) -> Iterator[WorkingLine]:
+    if advice is None:
+        return
+    for when, step in (("as drawn", advice.step), ("with the remedy", advice.fit.step if advice.fit is not None else None)):
+        if step is not None:
+            how = "step into the short, until the current is below 1.1 times holds for good"
+            yield WorkingLine(f"delay {when}", how if step.settles else "it does not settle", step.delay_s, "s")
+
+
+def _advice(case: Case, loop: Loop) -> Advice | None:
+    """Return the solution's advice, or work it out where the thresholds ask earlier than it does."""
+    if case.solution.advice is not None:
+        return case.solution.advice
+    found = advise(
+        case.circuit,
+        case.limits.ambient_degC,
+        short=case.solution.short,
+        delay=case.solution.step is not None,
+        loop=loop,
+        step=case.solution.step,
+    )
+    return found if isinstance(found, Advice) else None
+
+
+def _costing_parts(case: Case, advice: Advice | None) -> tuple[str, ...]:
+    """Return the ids of the parts behind the device that costs the damping, where they are not the shunt's."""
+    if advice is None or advice.costs is None:
+        return ()
+    element = case.board.elements[case.bench.element_of[advice.costs]]
+    return tuple(case.board.parts[index].id for index in element.parts)
+
+
+def _remedy(case: Case, advice: Advice | None) -> str | None:
+    if advice is None:
+        return None
+    fit = advice.fit
+    if fit is None:
+        span = f"{format_quantity(LEAST_F, 'F')} to {format_quantity(GREATEST_F, 'F')}"
+        return (
+            f"none of the usual places does: no capacitor of {span} from collector to base, from the drive to the far end "
+            f"or from base to emitter brings the damping to {AIM:g} at worst"
+        )
+    out = f"take {fit.instead_of} out and " if fit.instead_of is not None else ""
+    return (
+        f"{out}fit {format_quantity(fit.farad, 'F')} {_place(case, fit)} ({fit.nodes[0]} to {fit.nodes[1]}): "
+        f"damping {fit.own_damping:.2g}, {fit.worst_damping:.2g} at worst{_change(advice.step, fit.step)}"
+    )
+
+
+def _place(case: Case, fit: Fit) -> str:
+    if fit.place == DRIVE_FAR:
+        return "from the drive to the far end of the sense resistance"
+    return f"from {fit.place} of {', '.join(case.parts('shunt'))}"
+
+
+def _change(before: Step | None, after: Step | None) -> str:
+    """Return in words what a remedy does to the delay."""
+    if before is None or after is None:
+        return ""
+    return f"; the delay goes from {_delay(before)} to {_delay(after)}"
+
+
+def _delay(step: Step) -> str:
+    if step.delay_s is None:
+        return "no end"
+    return format_quantity(step.delay_s, "s") if step.delay_s > 0.0 else "none"

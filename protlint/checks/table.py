@@ -19,6 +19,7 @@ from protlint.checks import (
     sets,
     sharing,
     shunt,
+    timing,
     unguarded,
     wiring,
 )
@@ -42,6 +43,9 @@ CHECKS: Mapping[str, Callable[[Case], Iterable[Answer]]] = {
     "pass-outside-safe-area": pass_area.pass_outside_safe_area,
     "foldback-locks-out": load.foldback_locks_out,
     "compensation-absent": loop.compensation_absent,
+    "loop-undamped": loop.loop_undamped,
+    "trips-on-peaks": timing.trips_on_peaks,
+    "trips-late": timing.trips_late,
     "share-unsensed": sharing.share_unsensed,
     "value-unreadable": inputs.value_unreadable,
     "part-data-missing": inputs.part_data_missing,

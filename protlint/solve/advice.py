@@ -184,7 +184,7 @@ def _tried(trial: _Trial, farad: float) -> tuple[float, float] | None:
     inner = trial.held.short.operating.inner
     if any(damping_at(scope, one, inner) < AIM for one in trial.known):
         return None
-    worst = find_worst(scope, trial.opening)
+    worst = min(find_worst(scope, trial.opening), key=lambda one: one.damping)
     if worst.damping < AIM:
         trial.known.append(worst)
         return None

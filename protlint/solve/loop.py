@@ -18,7 +18,7 @@ from protlint.solve.linear import Snapshot, conductance_matrix, store_matrix
 from protlint.solve.modes import Complex, damping
 from protlint.solve.network import Network, compile_network
 from protlint.solve.parameters import CircuitError
-from protlint.solve.solution import Loop
+from protlint.solve.solution import Loop, Worst
 from protlint.solve.stage import Run, Stage, sweep_stage
 from protlint.solve.wired import counting, linearise, look, wired_frequencies
 from protlint.solve.worst import find_worst, make_scope, opening_scene
@@ -54,12 +54,13 @@ def solve_loop(
         s = wired_frequencies(wired, 0.0)[0]
         own = damping(s[counting(wired, 0.0, s[None])[0]]).min(initial=1.0)
         gain = _gain(network, shot, s)
-        worst = None
+        by_wiring: tuple[Worst, ...] = ()
         if corners:
             scope = make_scope(held.stage, expanded, ambients_degC)
-            worst = find_worst(scope, opening_scene(scope, held.short.operating.inner))
+            by_wiring = find_worst(scope, opening_scene(scope, held.short.operating.inner))
     except CircuitError as reason:
         return str(reason)
+    worst = min(by_wiring, key=lambda one: one.damping, default=None)
     natural = _natural(s)
     swinging = [one for one in natural if one[1] < 1.0]
     least = min(swinging, key=lambda one: one[1], default=(None, 1.0))
@@ -72,6 +73,7 @@ def solve_loop(
         phase_margin_deg=None if gain is None else gain.phase_margin_deg,
         own_damping=float(own) if natural else None,
         worst=worst,
+        worst_without_wiring=by_wiring[0] if by_wiring else None,
         natural=natural,
         table=() if gain is None else gain.table,
     )

@@ -9,7 +9,7 @@ from typing import Any
 
 from protlint.solve.circuit import Circuit
 from protlint.solve.corners import NET_PARAMETERS
-from protlint.solve.solution import Advice, Loop, Point, Solution
+from protlint.solve.solution import Advice, Loop, Point, Solution, Worst
 
 Key = tuple[Any, ...]
 Names = tuple[tuple[str, ...], tuple[str, ...]]
@@ -106,11 +106,13 @@ def renamed(solution: Solution, devices: Mapping[str, str], nodes: Mapping[str, 
         name, _, parameter = text.rpartition(".")
         return f"{owner(name, parameter)}.{parameter}"
 
+    def worst(old: Worst | None) -> Worst | None:
+        return None if old is None else replace(old, corner={step(text): place for text, place in old.corner.items()})
+
     def loop(old: Loop | None) -> Loop | None:
-        if old is None or old.worst is None:
-            return old
-        corner = {step(text): position for text, position in old.worst.corner.items()}
-        return replace(old, worst=replace(old.worst, corner=corner))
+        if old is None:
+            return None
+        return replace(old, worst=worst(old.worst), worst_without_wiring=worst(old.worst_without_wiring))
 
     return replace(
         solution,

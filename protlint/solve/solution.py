@@ -109,7 +109,8 @@ class Loop:
     """The small-signal answers at the held short.
 
     ``own_damping`` is the least damping of the limiter's own modes, parts as drawn: of those whose damping rises by more
-    than a quarter with the shunt's transconductance taken out; 1 where none of them swings. ``natural`` are the natural
+    than a quarter with the shunt's transconductance taken out; 1 where none of them swings. ``worst`` is the least over
+    every spread, ambient and fault wiring, ``worst_without_wiring`` with none in the short. ``natural`` are the natural
     frequencies as (Hz, damping), slowest first, a pair once; ``table`` the loop gain as (Hz, magnitude, phase in degrees, 0
     where the feedback is negative).
     """
@@ -122,6 +123,7 @@ class Loop:
     phase_margin_deg: float | None
     own_damping: float | None = None
     worst: Worst | None = None
+    worst_without_wiring: Worst | None = None
     natural: tuple[tuple[float, float], ...] = ()
     table: tuple[tuple[float, float, float], ...] = ()
 

@@ -79,23 +79,24 @@ def opening_scene(scope: Scope, inner: Array) -> Scene:
     return _solve(scope, position, np.concatenate((alone, np.repeat(alone, single.shape[1]))), inner)
 
 
-def find_worst(scope: Scope, opening: Scene) -> Worst:
-    """Find the least damping that counts, from the opening scene on."""
+def find_worst(scope: Scope, opening: Scene) -> tuple[Worst, ...]:
+    """Find the least damping that counts, from the opening scene on: one for each of :data:`WIRING_H`."""
     ambients = len(scope.ambients_degC)
     first, wired = _linear(scope, opening)
     nominal = np.flatnonzero(~first.position.any(axis=0))[:ambients]
-    found, signs, owners = [Worst(1.0)], [], []
+    found: dict[float, list[Worst]] = {wiring_H: [Worst(1.0)] for wiring_H in WIRING_H}
+    signs, owners = [], []
     for wiring_H in WIRING_H:
         s = wired_frequencies(wired, wiring_H)
         counts = counting(wired.pick(nominal), wiring_H, s[nominal])
         for lane, counting_here in zip(nominal, counts, strict=True):
             mine = np.flatnonzero(first.ambient == first.ambient[lane])
             own = _own(s[mine], counting_here)
-            found.append(_least(scope, first, mine, own, wiring_H))
+            found[wiring_H].append(_least(scope, first, mine, own, wiring_H))
             signs.append(_signs(first.position[:, mine], margin(own)))
             owners.append((wiring_H, first.ambient[lane]))
     if not owners:
-        return found[0]
+        return tuple(Worst(1.0) for _ in WIRING_H)
     inner = opening.run.operating.inner[:, :ambients]
     together = _solve(scope, np.array(signs).T, np.array([ambient for _, ambient in owners]), inner)
     last, wired = _linear(scope, together)
@@ -105,8 +106,8 @@ def find_worst(scope: Scope, opening: Scene) -> Worst:
             only = wired.pick(lanes)
             s = wired_frequencies(only, wiring_H)
             own = np.where(counting(only, wiring_H, s), s, np.inf)
-            found.append(_least(scope, last, lanes, own, wiring_H))
-    return min(found, key=lambda one: one.damping)
+            found[wiring_H].append(_least(scope, last, lanes, own, wiring_H))
+    return tuple(min(found[wiring_H], key=lambda one: one.damping) for wiring_H in WIRING_H)
 
 
 def damping_at(scope: Scope, place: Worst, inner: Array) -> float:

@@ -32,9 +32,7 @@ class Files:
 
 def plain(circuit: Circuit) -> Circuit:
     """Return the circuit without what no netlist states: the temperature coefficients of resistors."""
-    devices = tuple(
-        replace(one, model={"R": one.model["R"]}) if one.kind == "resistor" else one for one in circuit.devices
-    )
+    devices = tuple(replace(one, model={"R": one.model["R"]}) if one.kind == "resistor" else one for one in circuit.devices)
     return replace(circuit, devices=devices)
 
 
@@ -81,7 +79,7 @@ def _edif(circuit: Circuit) -> Iterator[str]:
 
 def _properties(device: Device) -> Iterator[tuple[str, str]]:
     if device.kind in ("resistor", "capacitor"):
-        yield "VALUE", f"{device.model['R' if device.kind == 'resistor' else 'C']:.9g}"
+        yield "VALUE", f"{device.model['R']:.9g}" if device.kind == "resistor" else f"{device.model['C'] * 1e12:.9g}p"
         if device.tolerance:
             yield "TOLERANCE", f"{device.tolerance * 100:.9g}%37%"
     else:

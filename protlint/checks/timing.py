@@ -1,0 +1,277 @@
+"""Is the limiter slow enough for the peaks that must pass, and quick enough for its pass device."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+
+from protlint.board.graph import BoardPart
+from protlint.checks.case import Answer, Case
+from protlint.checks.derating import derated, share_of
+from protlint.checks.loop import charge_lines, not_known, rests_on_assumptions
+from protlint.checks.safe_area import allowed, breakdown_share, curve_for, thermal_share
+from protlint.checks.sizing import least_carries_A, meets, resolve, solve_again
+from protlint.findings import NotChecked, WorkingLine
+from protlint.limits import Peak
+from protlint.quantities import format_quantity, preferred
+from protlint.quantities.series import within
+from protlint.solve.advice import BASE_EMITTER, base_stop, places
+from protlint.solve.circuit import Circuit, Device
+from protlint.solve.delay import rc_delay, solve_step
+from protlint.solve.loop import solve_loop
+from protlint.solve.peak import ride_through
+from protlint.solve.solution import Loop, Solution, Step
+
+LATE, PEAKS = "trips-late", "trips-on-peaks"
+AREA = "pass-outside-safe-area"
+FITTED = "fitted capacitor"
+MOST_F = 100e-6
+"""No larger capacitor is proposed at a shunt's base."""
+BY_HAND = "R C ln((m - p) / (m - 1)), the RC's answer to a step; any textbook on circuits"
+
+
+@dataclass(frozen=True, slots=True)
+class LetThrough:
+    """What a pass device is let into: for how long, the energy, the voltage across it in the short, the current of a pulse
+    of that energy, the current its safe area allows for that time, and where that comes from."""
+
+    lasts_s: float
+    energy_J: float
+    voltage_V: float
+    current_A: float
+    allowed_A: float
+    source: str
+
+    @property
+    def ratio(self) -> float:
+        """Return the current over what is allowed; infinite where nothing is."""
+        return self.current_A / self.allowed_A if self.allowed_A > 0.0 else float("inf")
+
+
+def trips_late(case: Case) -> Iterator[Answer]:
+    """Yield a finding for each pass device that what is let through before the limiter acts puts outside its safe area."""
+    step = case.solution.step
+    if step is None:
+        yield from not_known(LATE, case.solution.step_needs)
+        return
+    if not step.settles:
+        yield NotChecked(LATE, "a loop that settles in the short")
+        return
+    for part_id, names in case.device_parts("pass"):
+        part = case.part(part_id)
+        found = _let_through(case, part, names, step)
+        if isinstance(found, str):
+            yield NotChecked(LATE, found)
+        elif found is not None and found.ratio > case.threshold(LATE, "error"):
+            yield _late(case, part, names, found)
+
+
+def trips_on_peaks(case: Case) -> Iterator[Answer]:
+    """Yield a finding where a load peak that must pass is above what is carried and lasts longer than the delay."""
+    peak = case.needs.peak
+    if peak is None:
+        return
+    output_V = peak.output_V if peak.output_V is not None else case.circuit.output_V
+    solution = _at_output(case, output_V)
+    carries_A = least_carries_A(solution)
+    usual_A = solution.currents[1].carries_A if len(solution.currents) == 3 else None
+    if carries_A is None or usual_A is None:
+        yield NotChecked(PEAKS, case.limits_key("output"))
+        return
+    if peak.current_A <= carries_A or carries_A <= 0.0:
+        return
+    overdrive = peak.current_A / carries_A
+    before_A = min(case.needs.carry_A or 0.0, carries_A) / carries_A * usual_A
+    asked = replace(peak, current_A=overdrive * usual_A, output_V=output_V)
+    borne_s = _borne_s(case, case.circuit, asked, before_A)
+    if isinstance(borne_s, str):
+        yield from not_known(PEAKS, tuple(borne_s.split("; ")))
+        return
+    if borne_s >= peak.lasts_s:
+        return
+    at = f" at {format_quantity(output_V, 'V')}" if output_V is not None else ""
+    yield case.finding(
+        PEAKS,
+        f"a peak of {format_quantity(peak.current_A, 'A')} for {format_quantity(peak.lasts_s, 's')} does not pass: "
+        f"{format_quantity(carries_A, 'A')}{at} is carried for ever, and the output gives way "
+        f"{format_quantity(borne_s, 's')} into the peak",
+        parts=case.parts("sense", "shunt"),
+        working=(
+            WorkingLine("carries, low end", f"solved{at}, at the worst ambient", carries_A, "A"),
+            WorkingLine("overdrive", "peak over carries", overdrive, ""),
+            WorkingLine("borne for", "solved in time at that overdrive, rising in a twentieth of its time", borne_s, "s"),
+            *_by_hand(case, asked, before_A, usual_A),
+            *charge_lines(case),
+        ),
+        remedy=_peak_remedy(case, peak, asked, before_A, output_V),
+        assumption=rests_on_assumptions(case),
+    )
+
+
+def _let_through(case: Case, part: BoardPart, names: tuple[str, ...], step: Step) -> LetThrough | str | None:
+    """Return what a pass device is let into, the key of what is missing for it, or None where it is nothing."""
+    held = case.solution.held_short
+    if held is None or not step.delay_s or not step.pass_energy_J:
+        return None
+    limit = case.rating(part.id, "tj_max")
+    if limit is None:
+        return case.rating_key(part.id, "tj_max")
+    curve = curve_for(part.entry.safe_area if part.entry is not None else (), step.delay_s, case.threshold(AREA, "dc_from"))
+    if curve is None:
+        return f"{case.data_key(part.id, 'safe_area')} that lasts {format_quantity(step.delay_s, 's')}"
+    voltage_V = max(abs(held.states[name].voltage_V) for name in names)
+    hottest_degC = max(case.limits.ambient_degC)
+    left = thermal_share(hottest_degC, limit.value)
+    fet = part.kind in ("nmos", "pmos")
+    breakdown = left if fet else breakdown_share(hottest_degC, limit.value, case.threshold(AREA, "second_breakdown_left"))
+    derating = case.limits.derating
+    bound = allowed(
+        curve.points,
+        voltage_V,
+        thermal_left=left,
+        breakdown_left=breakdown * share_of(derating, part.kind, "current"),
+        power_share=share_of(derating, part.kind, "power"),
+    )
+    current_A = step.pass_energy_J / (step.delay_s * voltage_V)
+    source = derated(derating, part.kind, "current", curve.source)
+    return LetThrough(step.delay_s, step.pass_energy_J, voltage_V, current_A, bound.current_A, source)
+
+
+def _late(case: Case, part: BoardPart, names: tuple[str, ...], found: LetThrough) -> Answer:
+    lasts = format_quantity(found.lasts_s, "s")
+    step = case.solution.step
+    assert step is not None
+    return case.finding(
+        LATE,
+        f"{part.id} is let into {format_quantity(found.energy_J, 'J')} within {lasts} before the limiter acts, as much as "
+        f"{format_quantity(found.current_A, 'A')} at {format_quantity(found.voltage_V, 'V')}: {found.ratio:.2g} times what "
+        "its safe area allows",
+        parts=(part.id,),
+        working=(
+            WorkingLine(
+                "delay", "step into the short, until the current is below 1.1 times holds for good", found.lasts_s, "s"
+            ),
+            WorkingLine("peak", "greatest output current meanwhile", step.peak_A, "A"),
+            WorkingLine("energy", "into the pass device until then", found.energy_J, "J"),
+            WorkingLine(
+                "current of a pulse of that energy", "energy / (delay * voltage in the short)", found.current_A, "A"
+            ),
+            WorkingLine("allowed", "its case at the highest ambient", found.allowed_A, "A", found.source),
+            *charge_lines(case),
+        ),
+        remedy=_late_remedy(case, part, names, found),
+        assumption=rests_on_assumptions(case),
+        subject=part.id,
+    )
+
+
+def _late_remedy(case: Case, part: BoardPart, names: tuple[str, ...], found: LetThrough) -> str:
+    """Return the greatest smaller capacitor at the shunt's base that does, else the safe area to ask for."""
+    slowing = _base_capacitor(case.circuit)
+    if slowing is not None:
+        smaller = reversed(within(1e-10, 0.99 * slowing.model["C"], "E6"))
+        for farad in smaller:
+            circuit = _with_value(case.circuit, slowing.name, farad)
+            step = solve_step(circuit, case.limits.ambient_degC, short=case.solution.short)
+            if not isinstance(step, Step) or not _calm(case, circuit):
+                continue
+            then = _let_through(case, part, names, step)
+            if then is None or (isinstance(then, LetThrough) and then.ratio <= case.threshold(LATE, "error")):
+                return f"fit {format_quantity(farad, 'F')} as {slowing.name}: {format_quantity(step.delay_s or 0.0, 's')}"
+    current = format_quantity(preferred(found.current_A, "E24", "up"), "A")
+    return (
+        f"fit a device as {part.id} whose safe area ({format_quantity(found.lasts_s, 's')}) allows {current} at "
+        f"{format_quantity(found.voltage_V, 'V')}"
+    )
+
+
+def _peak_remedy(case: Case, peak: Peak, asked: Peak, before_A: float, output_V: float | None) -> str:
+    """Return the capacitor that lets the peak pass and keeps loop and pass device safe, else the sense resistance."""
+    ends = places(case.circuit).get(BASE_EMITTER)
+    known = _base_capacitor(case.circuit)
+    if ends is not None:
+        for farad in within(known.model["C"] * 1.01 if known is not None else 1e-9, MOST_F, "E6"):
+            circuit = _slowed(case.circuit, known, ends, farad)
+            borne_s = _borne_s(case, circuit, asked, before_A)
+            if isinstance(borne_s, str):
+                break
+            if borne_s >= peak.lasts_s:
+                if _calm(case, circuit) and _bears(case, circuit):
+                    shunt = ", ".join(case.parts("shunt"))
+                    what = f"as {known.name}" if known is not None else f"from base to emitter of {shunt}"
+                    return f"fit {format_quantity(farad, 'F')} {what} ({ends[0]} to {ends[1]})"
+                break
+    sense = [device for device in case.circuit.devices if device.name in case.circuit.sense]
+    now_ohm = sense[0].model["R"] if sense else 0.0
+    for value_ohm in reversed(within(0.2 * now_ohm, now_ohm, "E24")) if now_ohm > 0.0 else ():
+        solution = _at_output(case, output_V, factor=value_ohm / now_ohm)
+        if meets(solution, peak.current_A, None):
+            kept = meets(solution, None, case.needs.cap_A)
+            over = "" if kept else f", which passes more than the cap of {format_quantity(case.needs.cap_A or 0.0, 'A')}"
+            return f"fit {format_quantity(value_ohm, 'ohm')} as {', '.join(case.parts('sense'))}{over}"
+    return "neither a capacitor at the shunt's base nor a smaller sense resistance does: the drive gives out before the peak"
+
+
+def _borne_s(case: Case, circuit: Circuit, asked: Peak, before_A: float) -> float | str:
+    return ride_through(
+        circuit,
+        case.limits.ambient_degC,
+        peak_A=asked.current_A,
+        lasts_s=asked.lasts_s,
+        before_A=before_A,
+        output_V=asked.output_V,
+        short=case.solution.short,
+    )
+
+
+def _by_hand(case: Case, asked: Peak, before_A: float, carries_A: float) -> Iterator[WorkingLine]:
+    """Yield the RC formula's delay where there is an RC at the shunt's base."""
+    stop, slowing = base_stop(case.circuit), _base_capacitor(case.circuit)
+    if stop is None or slowing is None:
+        return
+    R, C = stop.model["R"], slowing.model["C"]
+    delay_s = rc_delay(R, C, before_A / carries_A, asked.current_A / carries_A)
+    yield WorkingLine("delay by the RC alone", f"{R:g} ohm, {format_quantity(C, 'F')}, by hand", delay_s, "s", BY_HAND)
+
+
+def _at_output(case: Case, output_V: float | None, *, factor: float = 1.0) -> Solution:
+    """Return the solution at an output voltage, with the sense resistance multiplied by a factor."""
+    if factor == 1.0 and output_V == case.circuit.output_V:
+        return case.solution
+    there = replace(case, bench=replace(case.bench, circuit=replace(case.circuit, output_V=output_V)))
+    return resolve(there, factor) if factor != 1.0 else solve_again(there, there.circuit)
+
+
+def _base_capacitor(circuit: Circuit) -> Device | None:
+    """Return the capacitor from base to emitter of the shunt, None where there is none."""
+    ends = places(circuit).get(BASE_EMITTER)
+    capacitors = (device for device in circuit.devices if device.kind == "capacitor")
+    return next((device for device in capacitors if ends is not None and set(device.nodes) == set(ends)), None)
+
+
+def _slowed(circuit: Circuit, known: Device | None, ends: tuple[str, str], farad: float) -> Circuit:
+    if known is not None:
+        return _with_value(circuit, known.name, farad)
+    return replace(circuit, devices=(*circuit.devices, Device(FITTED, "capacitor", ends, {"C": farad})))
+
+
+def _with_value(circuit: Circuit, name: str, farad: float) -> Circuit:
+    devices = tuple(replace(device, model={"C": farad}) if device.name == name else device for device in circuit.devices)
+    return replace(circuit, devices=devices)
+
+
+def _calm(case: Case, circuit: Circuit) -> bool:
+    """Tell whether a changed circuit's loop would give no finding."""
+    loop = solve_loop(circuit, case.limits.ambient_degC, short=case.solution.short)
+    if not isinstance(loop, Loop) or loop.own_damping is None or loop.worst is None:
+        return False
+    return loop.own_damping >= case.threshold("loop-undamped", "warning") and loop.worst.damping >= 0.0
+
+
+def _bears(case: Case, circuit: Circuit) -> bool:
+    """Tell whether the pass devices of a changed circuit would stay inside their safe areas, as far as those are known."""
+    step = solve_step(circuit, case.limits.ambient_degC, short=case.solution.short)
+    if not isinstance(step, Step) or not step.settles:
+        return False
+    found = [_let_through(case, case.part(part_id), names, step) for part_id, names in case.device_parts("pass")]
+    return all(one.ratio <= case.threshold(LATE, "error") for one in found if isinstance(one, LetThrough))
