@@ -6,11 +6,11 @@ import json
 from collections.abc import Sequence
 
 from protlint.findings import LEVELS
+from protlint.report.behaviour import ROLE_WORDS
 from protlint.report.figures import UNKNOWN, counted, figure, percent
 from protlint.report.layout import painted, wrapped
 from protlint.report.safe import json_text, terminal, throughout
 from protlint.report.shape import CAUTION, Document
-from protlint.report.text import ROLE_WORDS
 
 UNITS = {"carries_A": "A", "most_A": "A", "holds_A": "A", "damping": "", "pass_power_W": "W"}
 

@@ -7,32 +7,25 @@ bytes of a report; what is not finite or not known is null. ``review-1.schema.js
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable, Mapping, Sequence
-from dataclasses import asdict
-from typing import TYPE_CHECKING, Any
+from collections.abc import Mapping, Sequence
+from typing import TYPE_CHECKING
 
 from protlint import __version__
 from protlint.board.graph import Board, BoardPart
 from protlint.findings import Finding
 from protlint.limits import LimiterLimits
 from protlint.partdata.book import PartEntry
+from protlint.report.answers import answers, rounded, taken
 from protlint.report.shape import CAUTION, Document, summarised
-from protlint.solve.solution import Currents, Loop, Point, Step, Worst
 from protlint.topology.limiter import NETS, ROLES
 
 if TYPE_CHECKING:
     from protlint.pipeline import Review, ReviewedLimiter
 
-SIGNIFICANT_DIGITS = 6
-
 MEMORY = "memory"
 """How part data names a source that is none."""
 
-LOOP_KEYS = ("least_damping", "at_Hz", "worst_damping", "low_frequency_gain", "crossover_Hz", "phase_margin_deg")
-
-WORST_KEYS = ("damping", "at_Hz", "ambient_degC", "wiring_H")
-
-STEP_KEYS = ("settles", "delay_s", "peak_A", "pass_energy_J")
+WORKING = ("quantity", "formula", "value", "unit", "source")
 
 UNIT_OF_KIND = {"resistor": "ohm", "capacitor": "F", "inductor": "H", "zener": "V"}
 
@@ -55,7 +48,7 @@ def document(review: Review) -> Document:
             "nets": len(netlist.nets),
             "pins": sum(len(part.pins) for part in netlist.parts),
         },
-        "limits": {"file": review.limits.file, "ambient_degC": _numbers(review.limits.ambient_degC)},
+        "limits": {"file": review.limits.file, "ambient_degC": list(review.limits.ambient_degC)},
         "summary": summarised(limiters, findings),
         "limiters": limiters,
         "findings": findings,
@@ -68,18 +61,9 @@ def document(review: Review) -> Document:
     }
 
 
-def rounded(value: float | None) -> float | None:
-    """Return a number of six significant digits, or None where it is not finite."""
-    if value is None or not math.isfinite(value):
-        return None
-    return float(f"{value:.{SIGNIFICANT_DIGITS}g}") + 0.0
-
-
 def _limiter(item: ReviewedLimiter, review: Review, by_id: Mapping[str, BoardPart]) -> Document:
-    limiter, solution = item.limiter, item.solution
-    currents = [_currents(row) for row in solution.currents]
-    if not currents:
-        currents = [_currents(_no_currents(ambient)) for ambient in review.limits.ambient_degC]
+    limiter = item.limiter
+    worked_out = answers(item, review.limits.ambient_degC)
     return {
         "id": limiter.id,
         "topology": limiter.topology,
@@ -89,18 +73,8 @@ def _limiter(item: ReviewedLimiter, review: Review, by_id: Mapping[str, BoardPar
         "nets": {net: _net_name(review.board, limiter.nets.get(net)) for net in NETS},
         "parts": _parts(item, by_id),
         "needs": _needs(item.needs),
-        "currents": currents,
-        "in_hand": _in_hand(item.needs, currents),
-        "locus": [{"output_V": rounded(point.output_V), "holds_A": rounded(point.output_A)} for point in solution.locus],
-        "regulates": _plain(solution.regulates),
-        "loop": {**_keys(solution.loop, LOOP_KEYS), **_modes(solution.loop)},
-        "step": _keys(solution.step, STEP_KEYS),
-        "held_short": _point(solution.held_short),
-        "worst_point": _point(solution.worst_point),
-        "sensitivities": [_plain(row) for row in solution.sensitivities],
-        "short": solution.short,
-        "shorts": [{"net": one.node, "holds_A": _numbers(one.holds_A)} for one in solution.shorts],
-        "not_solved": solution.not_solved,
+        "in_hand": _in_hand(item.needs, worked_out["currents"]),
+        **worked_out,
         "assumed": list(dict.fromkeys(item.assumed)),
         "asked": _asked(item, review),
         "not_checked": [{"check": row.check, "needs": row.needs} for row in item.not_checked],
@@ -116,39 +90,6 @@ def _asked(item: ReviewedLimiter, review: Review) -> list[str]:
     settings = (item.needs.checks, review.limits.checks)
     levels = {check: next((one[check].level for one in settings if check in one), None) for check in CHECKS}
     return [check for check, level in levels.items() if level != "off"]
-
-
-def _currents(row: Currents) -> Document:
-    def of(name: str) -> float | None:
-        return rounded(getattr(row, name))
-
-    names = ("begins_A", "holds_A", "carries_A", "most_A", "unlimited_A", "shunt_A", "pass_A")
-    ranges = ("begins_range_A", "holds_range_A", "carries_range_A", "most_range_A")
-    return {
-        "ambient_degC": row.ambient_degC,
-        **{name: of(name) for name in names},
-        "limited_by": {"short": row.limited_by_short, "output": row.limited_by_output},
-        **{name: _pair(getattr(row, name)) for name in ranges},
-    }
-
-
-def _no_currents(ambient: float) -> Currents:
-    return Currents(ambient, None, None, None, None, None, None, None, None, None)
-
-
-def _keys(answers: Loop | Step | Worst | None, names: Sequence[str]) -> Document:
-    """Return the named answers, each null where there are none."""
-    return {name: _number(getattr(answers, name, None)) for name in names}
-
-
-def _modes(loop: Loop | None) -> Document:
-    """Return where the worst damping lies, and the natural frequencies as drawn."""
-    worst = _keys(loop.worst, WORST_KEYS) if loop is not None and loop.worst is not None else None
-    natural = loop.natural if loop is not None else ()
-    return {
-        "worst": worst,
-        "natural": [{"at_Hz": rounded(at_Hz), "damping": rounded(damping)} for at_Hz, damping in natural],
-    }
 
 
 def _in_hand(needs: LimiterLimits, currents: Sequence[Document]) -> Document:
@@ -176,7 +117,7 @@ def _needs(needs: LimiterLimits) -> Document:
         "short_continuous": needs.short_s == math.inf,
         "shorted_to": list(needs.shorted_to),
         "regulate_A": rounded(needs.regulate_A),
-        "peak": _plain(needs.peak),
+        "peak": taken(needs.peak, "current_A", "lasts_s", "output_V"),
     }
 
 
@@ -213,7 +154,7 @@ def _finding(finding: Finding, by_id: Mapping[str, BoardPart]) -> Document:
         "parts": list(finding.parts),
         "nets": list(finding.nets),
         "message": finding.message,
-        "working": [_plain(line) for line in finding.working],
+        "working": [taken(line, *WORKING) for line in finding.working],
         "remedy": finding.remedy,
         "assumption": finding.assumption,
         "file": finding.file,
@@ -243,35 +184,5 @@ def _place(part: BoardPart) -> Document:
     }
 
 
-def _point(point: Point | None) -> Document | None:
-    if point is None:
-        return None
-    return {
-        "output_V": rounded(point.output_V),
-        "output_A": rounded(point.output_A),
-        "devices": [{"device": name, **_plain(state)} for name, state in point.states.items()],
-    }
-
-
 def _net_name(board: Board, index: int | None) -> str | None:
     return None if index is None else board.nets[index].name
-
-
-def _plain(value: Any) -> Any:
-    """Return a dataclass of plain fields as a dict of rounded numbers and texts."""
-    return None if value is None else {key: _number(item) for key, item in asdict(value).items()}
-
-
-def _number(value: Any) -> Any:
-    return rounded(value) if isinstance(value, float) else value
-
-
-def _numbers(values: Iterable[float | None]) -> list[float | None]:
-    return [rounded(value) for value in values]
-
-
-def _pair(ends: tuple[float, float] | None) -> list[float] | None:
-    if ends is None:
-        return None
-    low, high = (rounded(end) for end in ends)
-    return None if low is None or high is None else [low, high]

@@ -11,7 +11,8 @@ from typing import TYPE_CHECKING
 
 from protlint.board.graph import Board, BoardPart
 from protlint.limits import Range
-from protlint.report.document import document, rounded
+from protlint.report.answers import rounded
+from protlint.report.document import document
 from protlint.report.shape import Document
 from protlint.solve.circuit import Circuit
 

@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 
+from protlint.report.behaviour import ROLE_WORDS
 from protlint.report.digest import MOST_NAMES, listed, place_of, times
 from protlint.report.figures import ambient, counted, figure
 from protlint.report.layout import painted, shortened, table, wrapped
 from protlint.report.safe import terminal, throughout
 from protlint.report.shape import Document
-from protlint.report.text import POLARITY_WORDS, ROLE_WORDS
+from protlint.report.text import POLARITY_WORDS
 
 STEPS = {"V_BE": (0.01, "+10 mV"), "V_F": (0.01, "+10 mV"), "V_TO": (0.1, "+0.1 V"), "B_F": (0.1, "+10 %")}
 """The change of a parameter for which its effect is told, where that is not one per cent: size, and in words."""
@@ -156,7 +157,7 @@ def _limiter(limiter: Document, colour: bool) -> list[str]:
     lines += _sensitivities(limiter["sensitivities"])
     lines += _states(limiter["held_short"])
     lines += _loop(limiter["loop"], limiter["loop_table"])
-    return lines
+    return lines + [line for text in _advice(limiter["advice"]) for line in wrapped(text, indent=8, first="    ")]
 
 
 def _nets(held: Sequence[Sequence[str]]) -> dict[str, list[str]]:
@@ -228,6 +229,21 @@ def _loop(loop: Document, gains: Sequence[Document]) -> list[str]:
         for one in gains[::every]
     ]
     return table(rows, indent=4, left=(0, 2))
+
+
+def _advice(advice: Document | None) -> Iterator[str]:
+    """Say what each part does to the damping of the limiter's own modes, and what would mend it."""
+    if advice is None:
+        return
+    for one in advice["effects"]:
+        yield f"without {one['part']}: damping {figure(one['own_damping'])}, {figure(one['worst_damping'])} at worst"
+    fit = advice["fit"]
+    if fit is not None:
+        instead = f" instead of {fit['instead_of']}" if fit["instead_of"] else ""
+        then = f"damping {figure(fit['own_damping'])}, {figure(fit['worst_damping'])} at worst"
+        yield f"with {figure(fit['farad'], 'F')} {fit['place']}{instead}: {then}"
+    elif not advice["enough"]:
+        yield "no capacitor in the usual places brings enough damping"
 
 
 def _worst(worst: Document | None) -> str:

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from typing import Any
 
 from protlint.findings import LEVELS
+from protlint.report.behaviour import ROLE_WORDS, sentences
 from protlint.report.digest import (
     Section,
     alike,
@@ -25,11 +26,6 @@ from protlint.report.shape import Document, boards_of
 
 INDEX_FROM = 12
 """From this many findings on an index by check stands above them."""
-
-ROLE_WORDS = {
-    "pass": "pass", "driver": "driver", "sense": "sense", "shunt": "shunt", "base_stop": "base stop", "preset": "preset",
-    "steering": "steering", "compensation": "compensation", "drive": "drive", "others": "also",
-}  # fmt: skip
 
 POLARITY_WORDS = {"n": "n type", "p": "p type"}
 
@@ -82,7 +78,9 @@ def _section(limiter: Document | None, name: str | None, found: Sequence[Documen
         title = f"{name}: not a working limiter" if name else "The board"
         lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
     else:
-        lines = _heading(limiter, colour) + _currents(limiter) + _behaviour(limiter)
+        lines = _heading(limiter, colour) + _currents(limiter)
+        said = [line for text in sentences(limiter) for line in wrapped(text, indent=4, first="  ")]
+        lines += ["", *said] if said else []
     for finding in found:
         lines += ["", *_finding(finding, colour)]
     if limiter is not None and limiter["not_checked"]:
@@ -147,45 +145,6 @@ def _spare(spare: float | None, need: float | None, scale: float) -> str:
     if spare is None or not need:
         return UNKNOWN
     return f"{three_digits(spare / scale)} ({percent(spare / need)})"
-
-
-def _behaviour(limiter: Document) -> list[str]:
-    """Say in a line each what the table has no room for: where limiting begins, the loop, the step, the drive."""
-    lines: list[str] = []
-    usual = limiter["currents"][len(limiter["currents"]) // 2]
-    facts = []
-    if usual["begins_A"] is not None:
-        facts.append(f"limiting begins at {figure(usual['begins_A'], 'A')}")
-    if usual["unlimited_A"] is not None:
-        facts.append(f"without the shunt {figure(usual['unlimited_A'], 'A')}")
-    if usual["shunt_A"] is not None:
-        facts.append(f"the shunt takes {figure(usual['shunt_A'], 'A')}")
-    if facts:
-        lines += wrapped(f"At {ambient(usual['ambient_degC'])}: {', '.join(facts)}.", indent=4, first="  ")
-    for place, words in (("output", "at the working output"), ("short", "in the short")):
-        at = [ambient(row["ambient_degC"]) for row in limiter["currents"] if row["limited_by"][place] == "drive"]
-        if at:
-            lines += wrapped(f"At {', '.join(at)} the drive gives out {words}, not the limiter.", indent=4, first="  ")
-    lines += _regulates(limiter["regulates"])
-    loop, step = limiter["loop"], limiter["step"]
-    if loop["least_damping"] is not None:
-        worst = f", {figure(loop['worst_damping'])} at worst" if loop["worst_damping"] is not None else ""
-        text = f"Loop: least damping {figure(loop['least_damping'])} at {figure(loop['at_Hz'], 'Hz')}{worst}."
-        lines += wrapped(text, indent=4, first="  ")
-    if step["settles"] is not None:
-        settled = f"settles after {figure(step['delay_s'], 's')}" if step["settles"] else "does not settle"
-        lines += wrapped(f"Step into the short: {settled}, peak {figure(step['peak_A'], 'A')}.", indent=4, first="  ")
-    return ["", *lines] if lines else []
-
-
-def _regulates(regulates: Document | None) -> list[str]:
-    if regulates is None:
-        return []
-    text = (
-        f"Regulates {figure(regulates['current_A'], 'A')}: {figure(regulates['per_supply_volt'], '%')} a supply volt, "
-        f"{figure(regulates['per_kelvin'], '%')} a kelvin, from {figure(regulates['compliance_V'], 'V')} up."
-    )
-    return wrapped(text, indent=4, first="  ")
 
 
 def _finding(finding: Document, colour: bool) -> list[str]:

@@ -11,7 +11,8 @@ import pytest
 from jsonschema import Draft202012Validator
 
 from protlint.report import document as document_module
-from protlint.report.document import document, rounded
+from protlint.report.answers import rounded
+from protlint.report.document import document
 from protlint.report.shape import Document, combined, rendered_json
 from tests.support.paths import ROOT
 from tests.support.sample_review import HOSTILE, PLAIN, sample_review

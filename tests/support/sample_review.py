@@ -10,6 +10,8 @@ from collections.abc import Mapping
 from dataclasses import replace
 
 from protlint.board.graph import Board, BoardNet, BoardPart, Element, Supply, Values
+from protlint.checks.load import StartUp
+from protlint.checks.part_fails import IfPartFails, PartFails
 from protlint.findings import Finding, NotChecked, Warning, WorkingLine, identifying_parts, stamp_fingerprints
 from protlint.limits import LimiterLimits, Limits, Range
 from protlint.netlist.model import Net, Netlist, Part, Pin, Property
@@ -17,7 +19,8 @@ from protlint.partdata.book import Figure, PartEntry
 from protlint.pipeline import Review, ReviewedLimiter
 from protlint.solve.bench import Bench
 from protlint.solve.circuit import Circuit, Device, Drive
-from protlint.solve.solution import Currents, Loop, Point, Sensitivity, Solution, State, Step, Worst
+from protlint.solve.comparison import Comparison, Failing
+from protlint.solve.solution import Advice, Currents, Effect, Fit, Loop, Point, Sensitivity, Solution, State, Step, Worst
 from protlint.topology.limiter import ROLES, Found, Limiter
 
 PLAIN = {"pass": "Q10", "sense": "R11", "shunt": "Q11", "base_stop": "R12", "drive": "R10", "out": "OUT", "name": "lamp.edf"}
@@ -67,6 +70,25 @@ def sample_review(names: Mapping[str, str] = PLAIN, *, notes: int = 0) -> Review
             not_checked=(NotChecked("trips-on-peaks", "limiter.Q10.peak"),),
             assumed=(DRIVE_ASSUMED, f"{names['shunt']}: BF taken as 100"),
             bench=_bench(names),
+            if_a_part_fails=IfPartFails(
+                (
+                    PartFails((names["sense"],), "sense", "open", 0.0, 0.0),
+                    PartFails((names["sense"],), "sense", "short", 1.4, 3.8),
+                    PartFails((names["base_stop"],), "base_stop", "open", None, None),
+                ),
+                ("F1",),
+            ),
+            start_up=StartUp(True, 3.2e-3, 0.021, 4.4),
+            formula=Comparison(
+                "plain",
+                "V_BE / R_S",
+                {"V_BE": 0.6, "R_S": 1.0},
+                0.6,
+                0.367,
+                -0.388,
+                (Failing("the shunt's V_BE is 0.6 V", 0.4, 0.9),),
+                0.367,
+            ),
         ),
         ReviewedLimiter(second, LimiterLimits(), None, Solution(not_solved="node N3 floats"), "not judged"),
         ReviewedLimiter(
@@ -284,6 +306,14 @@ def _solution(holds: float, names: Mapping[str, str]) -> Solution:
         locus=(short, Point(6.0, holds, {})),
         held_short=short,
         worst_point=short,
+        advice=Advice(
+            0.22,
+            0.19,
+            False,
+            (Effect(names["base_stop"], True, 0.3, 0.25),),
+            names["base_stop"],
+            Fit("collector to base of the shunt", ("DRV", "N1"), 1e-9, None, 0.7, 0.62),
+        ),
         sensitivities=(Sensitivity(names["sense"], "R", -0.9),),
         loop=Loop(
             0.223456789,
