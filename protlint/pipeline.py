@@ -226,7 +226,7 @@ def _review_limiter(whole: _Whole, limiter: Limiter) -> tuple[ReviewedLimiter, C
         known=whole.known,
     )
     findings: list[Finding] = []
-    not_checked = [NotChecked(what, case.limits_key(key)) for what, key in solution.not_checked]
+    not_checked = [NotChecked(what, case.limits_key(key) if key == "output" else key) for what, key in solution.not_checked]
     if solution.not_solved is not None:
         not_checked.append(NotChecked("currents", solution.not_solved))
     for check, ask in CHECKS.items():

@@ -5,6 +5,7 @@ Every function writes what it assumed, what it lacks and what holds each net int
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass, field
 
 from protlint.board.graph import Board
@@ -118,12 +119,12 @@ def short_nodes(place: Place, held: dict[str, Range], notes: Notes) -> tuple[str
     on the board hangs on, else (assumed) the board's farthest supply on that side.
     """
     board, output = place.board, place.board.nets[place.around.output].name
-    if place.needs.shorted_to:
-        return _stated_shorts(place, held, notes)
     from_V = power_V(place)
     if from_V is None:
         return ()
     sign = 1.0 if place.sources_current else -1.0
+    if place.needs.shorted_to:
+        return _stated_shorts(place, held, notes, lambda short_V: sign * (from_V - short_V) > 0.0)
     if sign * from_V > 0.0:
         ground = ground_net(board)
         if ground is not None:
@@ -162,7 +163,8 @@ def _nets_behind_loads(place: Place) -> set[int]:
     return nets
 
 
-def _stated_shorts(place: Place, held: dict[str, Range], notes: Notes) -> tuple[str, ...]:
+def _stated_shorts(place: Place, held: dict[str, Range], notes: Notes, draws: Callable[[float], bool]) -> tuple[str, ...]:
+    """Return the nodes of the supplies that ``shorted_to`` names; ``draws`` tells whether one at a voltage draws current."""
     nodes = []
     for name in place.needs.shorted_to:
         nets = [net.index for net in place.board.nets if name in net.names and net.supply is not None]
@@ -172,7 +174,13 @@ def _stated_shorts(place: Place, held: dict[str, Range], notes: Notes) -> tuple[
             nodes.append(_hold_elsewhere(place, name, held, notes))
         else:
             notes.missing.append(Missing("short", None, f"[supply] {toml_key(name)}, which shorted_to names"))
-    return tuple(nodes)
+    drawing = tuple(node for node in nodes if draws(held[node].usual))
+    if nodes and not drawing:
+        where = " and ".join(f"{node} at {held[node].usual:g} V" for node in nodes)
+        notes.missing.append(
+            Missing("short", None, f"another shorted_to: {where} draws no current through {place.limiter.id}")
+        )
+    return drawing
 
 
 def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive | None, int | None]:
