@@ -70,12 +70,12 @@ def _shorts(limiter: Document) -> Iterator[str]:
 def _loop(limiter: Document) -> Iterator[str]:
     loop, step = limiter["loop"], limiter["step"]
     if loop["least_damping"] is not None:
-        place = f" at {figure(loop['at_Hz'], 'Hz')}" if loop["at_Hz"] is not None else ""
-        worst = f", {figure(loop['worst_damping'])} at worst" if loop["worst_damping"] is not None else ""
-        yield f"Loop: least damping {figure(loop['least_damping'])}{place}{worst}."
+        worst = f"; {figure(loop['worst_damping'])} at worst" if loop["worst_damping"] is not None else ""
+        place = f"least damping {figure(loop['least_damping'])} at {figure(loop['at_Hz'], 'Hz')}"
+        yield f"Loop: {place if loop['at_Hz'] is not None else 'nothing swings as drawn'}{worst}."
     if step["settles"] is not None:
-        settled = f"settles after {figure(step['delay_s'], 's')}" if step["settles"] else "does not settle"
-        yield f"Step into the short: {settled}, peak {figure(step['peak_A'], 'A')}."
+        after = f"after {figure(step['delay_s'], 's')}" if step["delay_s"] else "at once"
+        yield f"Step into the short: {f'settles {after}' if step['settles'] else 'does not settle'}, peak {figure(step['peak_A'], 'A')}."
 
 
 def _start_up(start_up: Document | None) -> Iterator[str]:
