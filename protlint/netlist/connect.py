@@ -109,7 +109,7 @@ class _Wirer:
         self.parents: list[int] = []
         self.nets: list[tuple[int, Net]] = []
         self.own: dict[int, int] = {}
-        self.on_two_nets: list[TwoNets] = []
+        self.on_two_nets: dict[tuple[int, int, int], TwoNets] = {}
         self.connectors = Ports(start=block.ports.width)
         for name in block.contents.connectors if block.contents is not None else ():
             self.connectors.connect(name)
@@ -193,7 +193,8 @@ class _Wirer:
             return
         if placement.block.is_part:
             pin = placement.block.ports.text(bit)
-            self.on_two_nets.append(TwoNets(position, pin, (first, node), *self.budget.places.at(offset)))
+            twice = TwoNets(position, pin, (first, node), *self.budget.places.at(offset))
+            self.on_two_nets.setdefault((position, bit, node), twice)
             return
         self._unite(first, node)
         if placement.block.contents is not None:
@@ -225,7 +226,7 @@ class _Wirer:
             for bit, (node, offset) in placement.pins.items():
                 placement.pins[bit] = (number[root(self.parents, node)], offset)
         twice = []
-        for each in self.on_two_nets:
+        for each in self.on_two_nets.values():
             first, second = (number[root(self.parents, node)] for node in each.nodes)
             if first != second:
                 twice.append(replace(each, nodes=(first, second)))

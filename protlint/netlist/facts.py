@@ -29,6 +29,9 @@ def facts_of(edif: Edif, flat: Flat, encoding: str) -> dict[str, str]:
     }
     if joints:
         facts["rippers and ties"] = f"{joints}, which join nets and are no parts"
+    shorted = sum(cell.shorted for cell in flat.cells)
+    if shorted:
+        facts["joined inside"] = f"{shorted} parts, whose cells say that some of their pins are one"
     sections = [sections for cell in flat.cells for sections in cell.packages]
     if sections:
         facts["sections"] = f"{sum(sections)} parts are sections of {len(sections)} packages"

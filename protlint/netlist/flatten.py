@@ -15,6 +15,8 @@ from protlint.netlist.notes import Notes
 
 SIZE_LIMIT = 4_000_000
 """Most parts, nets and pins together of a flattened design: a short file can describe more than any memory holds."""
+NAMES_LIMIT = 500_000_000
+"""Most characters of the names of its parts and nets, which grow with every level of hierarchy."""
 
 
 def flatten(edif: Edif, notes: Notes, *, design: str | None = None) -> Flat:
@@ -32,25 +34,34 @@ def flatten(edif: Edif, notes: Notes, *, design: str | None = None) -> Flat:
         child.is_part and any(instance.designators) for block in order for instance, child in directory.placed(block)
     )
     cells: dict[int, UnfoldedCell] = {}
-    size: dict[int, int] = {}
+    sizes: dict[int, _Size] = {}
     for block in order:
-        wiring = wire(block, notes, directory.budget)
-        size[id(block)] = _size(wiring, size)
-        if size[id(block)] > SIZE_LIMIT:
-            message = (
-                f"flattened, {block.cell.name.text} has more than {SIZE_LIMIT} parts, nets and pins, the most that is read"
-            )
-            raise edif.places.error(message, block.cell.offset)
-        cells[id(block)] = _unfolded(wiring, edif, notes, designated=designated)
+        cell = _unfolded(wire(block, notes, directory.budget), edif, notes, designated=designated)
+        cells[id(block)], sizes[id(block)] = cell, _size(cell, sizes)
+        if sizes[id(block)].things > SIZE_LIMIT or sizes[id(block)].characters > NAMES_LIMIT:
+            message = f"flattened, {block.cell.name.text} has more than {SIZE_LIMIT} parts, nets and pins, or {NAMES_LIMIT}"
+            raise edif.places.error(f"{message} characters of names; no more is read", block.cell.offset)
     unfolder = _Unfolder(cells)
     if id(top) in cells:
         unfolder.unfold(cells[id(top)])
     return unfolder.flat(name, top, chosen_by, designated=designated)
 
 
-def _size(wiring: Wiring, size: Mapping[int, int]) -> int:
-    """Return how many parts, nets and pins a cell unfolds to, from the sizes of those it places."""
-    return len(wiring.nodes) + sum(1 + len(each.pins) + size.get(id(each.block), 0) for each in wiring.placements)
+def _size(cell: UnfoldedCell, sizes: Mapping[int, _Size]) -> _Size:
+    """Return what a cell unfolds to, from the sizes of those it places."""
+    things, named = len(cell.nodes), len(cell.nodes)
+    characters = sum(len(node.name) for node in cell.nodes)
+    for item in cell.items:
+        if isinstance(item, _InnerCell):
+            inner = sizes[item.cell]
+            things += inner.things
+            named += inner.named
+            characters += inner.characters + inner.named * (len(item.id) + 1)
+        elif item is not None:
+            things += 1 + len(item.pins)
+            named += 1
+            characters += len(item.id)
+    return _Size(things, named, characters)
 
 
 def _unfolded(wiring: Wiring, edif: Edif, notes: Notes, *, designated: bool) -> UnfoldedCell:
@@ -86,6 +97,7 @@ def _unfolded(wiring: Wiring, edif: Edif, notes: Notes, *, designated: bool) -> 
         on_two_nets=wiring.on_two_nets,
         duplicates=duplicates,
         packages=[len(members) for members in named.packages],
+        shorted=sum(placement.block.is_part and bool(placement.block.shorts) for placement in wiring.placements),
     )
 
 
@@ -137,6 +149,15 @@ class Flat:
 
 
 @dataclass(frozen=True, slots=True)
+class _Size:
+    """What a cell unfolds to: parts, nets and pins together, how many of them have a name, and the names' characters."""
+
+    things: int
+    named: int
+    characters: int
+
+
+@dataclass(frozen=True, slots=True)
 class _InnerCell:
     """A cell with contents placed in another: its name there, and the node that each bit of its ports is on."""
 
@@ -150,7 +171,8 @@ class UnfoldedCell:
     """A cell with contents, ready to unfold.
 
     ``items`` holds its parts as they would be if it were the whole board, what else it places, and None for what only joins
-    nets; the other positions are positions in it. ``packages`` holds the number of sections of each package.
+    nets; the other positions are positions in it. ``packages`` holds the number of sections of each
+    package, ``shorted`` how many parts join nets inside, because their cell says that some of its ports are one.
     """
 
     block: Block
@@ -160,6 +182,7 @@ class UnfoldedCell:
     on_two_nets: Sequence[TwoNets]
     duplicates: Sequence[tuple[str, tuple[int, ...]]]
     packages: Sequence[int]
+    shorted: int
 
 
 @dataclass(frozen=True, slots=True)
@@ -178,7 +201,6 @@ class _Unfolder:
 
     def __init__(self, cells: Mapping[int, UnfoldedCell]) -> None:
         self.cells = cells
-        self.levels = 0
         self.parts: list[Part] = []
         self.nets: list[Node] = []
         self.pins: list[list[tuple[int, int]]] = []
@@ -189,7 +211,6 @@ class _Unfolder:
         """Unfold the cell a board begins with, and every cell placed in it, each in the order of the file."""
         stack = [self._frame(top, "", {})]
         while stack:
-            self.levels = max(self.levels, len(stack))
             frame = stack[-1]
             for position in frame.remaining:
                 item = frame.cell.items[position]
@@ -241,7 +262,7 @@ class _Unfolder:
             cell=top.cell.name.text,
             chosen_by=chosen_by,
             designated=designated,
-            levels=self.levels,
+            levels=top.levels,
             parts=_distinct(self.parts),
             nets=tuple(nets),
             pins_on_two_nets=tuple(self.on_two_nets),

@@ -23,35 +23,35 @@ def has_contents(view: View) -> bool:
 
 
 def choose_view(cell: Cell, wanted: str | None, *, any_kind: bool = False) -> tuple[View | None, bool]:
-    """Return the view of a cell to go by, and whether the one wanted is there.
+    """Return the view of a cell to go by, and whether its contents count.
 
     The one wanted, if it has contents; else the best with contents, NETLIST before SCHEMATIC; else the one wanted or the
-    first. ``any_kind`` takes contents in a view of any kind as a last resort.
+    first, as a leaf. ``any_kind`` takes contents in a view of any kind as a last resort.
     """
     named = None if wanted is None else Scope((view.name.identifier, view) for view in cell.views).find(wanted)
-    present = wanted is None or named is not None
     if named is not None and has_contents(named):
-        return named, present
+        return named, True
     inside = [view for view in cell.views if has_contents(view) and (any_kind or view.kind in _KINDS_OF_CONTENTS)]
     if inside:
-        return min(inside, key=lambda view: _KINDS_OF_CONTENTS.get(view.kind, 2)), present
-    return named or next(iter(cell.views), None), present
+        return min(inside, key=lambda view: _KINDS_OF_CONTENTS.get(view.kind, 2)), True
+    return named or next(iter(cell.views), None), False
 
 
 class Block:
     """A cell as instances see it: its ports, its contents where it has any, and which of its bits are one node.
 
     A block without contents is a leaf. ``shorts`` tells which of its bits are one; what the contents short is added when
-    they are wired. ``children`` holds, sheet by sheet, the block that each instance places.
+    they are wired. ``children`` holds, sheet by sheet, the block that each instance places, ``levels`` how deep they go.
     """
 
-    def __init__(self, cell: Cell, library: Library, view: View | None, budget: Budget) -> None:
+    def __init__(self, cell: Cell, library: Library, view: View | None, budget: Budget, *, leaf: bool) -> None:
         self.cell = cell
         self.library = library
         self.view = view
         self.ports = Ports(each.ports for each in cell.views)
-        self.contents: Contents | None = view.contents if view is not None and has_contents(view) else None
+        self.contents: Contents | None = None if leaf or view is None else view.contents
         self.children: list[list[Block]] = []
+        self.levels = 0
         self.shorts = Shorts()
         for joined in view.shorts if view is not None else ():
             bits = [[self.ports.find(ref.port, ref.member, ref.bundle) or () for ref in item.refs] for item in joined]
@@ -81,7 +81,7 @@ class Directory:
         self._notes = notes
         self._libraries = Scope((library.name.identifier, library) for library in edif.libraries)
         self._cells = {id(each): Scope((cell.name.identifier, cell) for cell in each.cells) for each in edif.libraries}
-        self._blocks: dict[tuple[int, int], Block] = {}
+        self._blocks: dict[tuple[int, int, bool], Block] = {}
         self._chosen: dict[tuple[int, str | None, bool], tuple[Block, bool]] = {}
         self._anywhere: dict[str, tuple[Cell, Library] | None] = {}
         self._unknown: dict[str, Block] = {}
@@ -103,10 +103,11 @@ class Directory:
         """Return a cell with the view to go by chosen; noted at ``offset`` where the one wanted is absent."""
         choice = (id(cell), wanted, any_kind)
         if choice not in self._chosen:
-            view, present = choose_view(cell, wanted, any_kind=any_kind)
-            key = (id(cell), id(view))
+            view, inside = choose_view(cell, wanted, any_kind=any_kind)
+            key = (id(cell), id(view), inside)
             if key not in self._blocks:
-                self._blocks[key] = Block(cell, library, view, self.budget)
+                self._blocks[key] = Block(cell, library, view, self.budget, leaf=not inside)
+            present = wanted is None or Scope((each.name.identifier, each) for each in cell.views).find(wanted) is not None
             self._chosen[choice] = self._blocks[key], present
         block, present = self._chosen[choice]
         if not present:
@@ -140,7 +141,7 @@ class Directory:
         if key not in self._unknown:
             cell = Cell(Name(name, name.removeprefix("&")), "generic", (), (), 0)
             home = self._libraries.find(library) or Library(Name(library, library.removeprefix("&")), True, (), 0)
-            self._unknown[key] = Block(cell, home, None, self.budget)
+            self._unknown[key] = Block(cell, home, None, self.budget, leaf=True)
         return self._unknown[key]
 
     def bottom_up(self, top: Block) -> list[Block]:
@@ -148,7 +149,7 @@ class Directory:
 
         Raises
         ------
-        InputError : a cell contains itself, at the instance that closes the circle.
+        InputError : a cell contains itself, at the instance that closes the circle, or the hierarchy is too deep.
         """
         done: dict[int, Block] = {}
         road: list[tuple[Block, Iterator[tuple[Instance, Block]]]] = [(top, self.placed(top))]
@@ -160,9 +161,6 @@ class Directory:
                     names = [each.cell.name.text for each, _ in road]
                     circle = " > ".join([*names[names.index(child.cell.name.text) :], child.cell.name.text])
                     raise self.edif.places.error(f"a cell contains itself: {circle}", instance.offset)
-                if len(road) > DEPTH_LIMIT:
-                    message = f"a hierarchy more than {DEPTH_LIMIT} levels deep; protlint reads no deeper"
-                    raise self.edif.places.error(message, instance.offset)
                 if child.contents is not None and id(child) not in done:
                     road.append((child, self.placed(child)))
                     on_road.add(id(child))
@@ -171,6 +169,12 @@ class Directory:
                 road.pop()
                 on_road.discard(id(block))
                 done[id(block)] = block
+                block.levels = 1 + max((child.levels for children in block.children for child in children), default=0)
+                if block.levels > DEPTH_LIMIT:
+                    message = (
+                        f"{block.cell.name.text} is the top of more than {DEPTH_LIMIT} levels of hierarchy, the most read"
+                    )
+                    raise self.edif.places.error(message, block.cell.offset)
         return list(done.values())
 
     def placed(self, block: Block) -> Iterator[tuple[Instance, Block]]:
@@ -218,12 +222,11 @@ def choose_top(directory: Directory, notes: Notes, wanted: str | None) -> tuple[
 def _top_without_design(directory: Directory, notes: Notes) -> tuple[Block, str, str]:
     """Return the cell with contents that no other places; of several the one that places most."""
     edif = directory.edif
-    blocks = [
-        directory.block(cell, library, None, cell.offset, any_kind=True)
-        for library in edif.libraries
-        for cell in library.cells
-    ]
-    inside = [block for block in blocks if block.contents is not None]
+    cells = [(cell, library) for library in edif.libraries for cell in library.cells]
+    inside: list[Block] = []
+    for any_kind in (False, True):
+        blocks = (directory.block(*each, None, each[0].offset, any_kind=any_kind) for each in cells)
+        inside = inside or [block for block in blocks if block.contents is not None]
     if not inside:
         raise edif.places.error("there is no design in it, and no cell with contents: nothing is placed or connected", 0)
     placed = {id(child.cell) for block in inside for _, child in directory.placed(block) if child is not block}

@@ -167,6 +167,9 @@ class Shorts:
             first = top if first is None else first
             self._parents[top] = first
 
+    def __bool__(self) -> bool:
+        return bool(self._parents)
+
     def groups(self, nodes: Iterable[tuple[int, int]]) -> Iterator[tuple[int, int]]:
         """Yield, of (bit, node) pairs, the nodes that are one because their bits are, two at a time."""
         if not self._parents:

@@ -18,7 +18,7 @@ from tests.support.board_writer import CELLS, Habits, Truth, groups, random_boar
 from tests.support.paths import FIXTURES
 
 STEADY = settings(deadline=None, derandomize=True)
-MUTATIONS = int(os.environ.get("PROTLINT_MUTATIONS", "5000"))
+MUTATIONS = int(os.environ.get("PROTLINT_MUTATIONS", "2000"))
 """How many damaged files to read; set it to 10,000 and more for a thorough run."""
 
 

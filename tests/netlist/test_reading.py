@@ -15,7 +15,7 @@ import protlint
 import protlint.netlist
 from protlint.netlist import read_netlist, read_netlist_bytes
 from protlint.netlist.edif import ARRAY_LIMIT
-from protlint.netlist.flatten import SIZE_LIMIT
+from protlint.netlist.flatten import NAMES_LIMIT, SIZE_LIMIT
 from protlint.netlist.hierarchy import DEPTH_LIMIT
 from protlint.netlist.model import Netlist
 from protlint.netlist.ports import ELEMENTS_LIMIT
@@ -157,6 +157,32 @@ def test_a_blocks_port_on_two_nets_is_one_node() -> None:
     assert ["a block's port on two nets" in each.message for each in netlist.warnings] == [True]
 
 
+def test_a_part_whose_cell_joins_pins_inside() -> None:
+    jumper = cell("J", interface="(port A) (port B) (port C) (joined (portRef A) (portRef B))")
+    contents = placed("J1", "J") + net("N1", "J1.A") + net("N2", "J1.B") + net("N3", "J1.C")
+    netlist = read(board(contents, cells=jumper))
+    assert [(node.name, len(node.pins)) for node in netlist.nets] == [("N1", 2), ("N3", 1)]
+    assert netlist.facts["joined inside"].startswith("1 parts")
+
+
+def test_a_pin_on_three_nets_is_told_twice() -> None:
+    contents = placed("R1", "R") + net("N1", "R1.A") + net("N2", "R1.A", "R1.A") + net("N3", "R1.A")
+    netlist = read(board(contents))
+    told = [[netlist.nets[each].name for each in twice.nets] for twice in netlist.pins_on_two_nets]
+    assert told == [["N1", "N2"], ["N1", "N3"]]
+    assert [len(each.pins) for each in netlist.nets] == [1, 0, 0]
+
+
+def test_without_a_design_contents_of_a_layout_are_a_last_resort() -> None:
+    layout = (
+        "(cell ART (cellType GENERIC) (view L (viewType PCBLAYOUT) (interface)"
+        f" (contents {placed('V1', 'R') + placed('V2', 'R')})))"
+    )
+    assert [part.id for part in read(board(placed("R1", "R"), cells=RES + layout, design="")).parts] == ["R1"]
+    only_layout = f"{HEAD}{LIBRARY}{RES}{layout}))".encode()
+    assert [part.id for part in read(only_layout).parts] == ["V1", "V2"]
+
+
 def test_parts_with_unlike_designators_and_slashes() -> None:
     contents = (
         placed("I1", "R", '(designator "R1") (designator "K7")')
@@ -221,8 +247,18 @@ def test_a_hierarchy_of_more_parts_than_any_memory_holds() -> None:
 def test_the_deepest_hierarchy_that_is_read() -> None:
     netlist = read(board(placed("X", f"C{DEPTH_LIMIT - 2}"), cells=nest(DEPTH_LIMIT - 1, 1)))
     assert netlist.parts[0].id.count("/") == DEPTH_LIMIT - 1
-    with pytest.raises(InputError, match="levels deep"):
-        read(board(placed("X", f"C{DEPTH_LIMIT + 1}"), cells=nest(DEPTH_LIMIT + 2, 1)))
+    with pytest.raises(InputError, match="levels of hierarchy"):
+        read(board(placed("X", f"C{DEPTH_LIMIT - 1}"), cells=nest(DEPTH_LIMIT, 1)))
+    shallow_first = "".join(placed(f"X{level}", f"C{level}") for level in range(3000))
+    with pytest.raises(InputError, match="levels of hierarchy"):
+        read(board(shallow_first, cells=nest(3000, 1)))
+
+
+def test_names_that_grow_with_every_level() -> None:
+    long_name = "N" * 100_000
+    cells = nest(15, 2).replace("instance X0", f"instance {long_name}")
+    with pytest.raises(InputError, match=f"{NAMES_LIMIT} characters of names"):
+        read(board(placed("X", "C14"), cells=cells))
 
 
 def test_a_net_that_joins_itself() -> None:
