@@ -5,10 +5,11 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
-from protlint.checks.sizing import sense_remedy
+from protlint.checks.drive_resistor import greatest_drive_resistance
+from protlint.checks.sizing import least_carries_A, sense_remedy
 from protlint.findings import NotChecked, WorkingLine
 from protlint.quantities import format_quantity
-from protlint.solve.solution import Currents
+from protlint.solve.solution import Currents, Solution
 
 TRADE = "common practice of the trade"
 
@@ -45,19 +46,31 @@ def drive_insufficient(case: Case) -> Iterator[Answer]:
     if carry_A is None or carries_A >= carry_A or row.limited_by_output != "drive":
         return
     drive = case.parts("drive")
-    resistors = ", ".join(drive) if drive else "the drive"
-    share = carries_A / carry_A
     yield case.finding(
         "drive-insufficient",
         f"the drive gives out at {format_quantity(carries_A, 'A')} at {format_quantity(row.ambient_degC, 'degC')}, "
         f"before the {format_quantity(carry_A, 'A')} the board needs and before the limiter acts",
         parts=(*drive, *case.parts("pass")),
         working=_carry_working(case, row, carries_A, carry_A),
-        remedy=f"let {resistors} give {1.0 / share:.2g} times the drive, or fit a pass device of as much more hFE"
-        if share > 0.0
-        else f"{resistors} cannot turn the pass device on at all",
+        remedy=_more_drive(case, carries_A, carry_A),
         assumption=case.assumes(*ALL_ASSUMPTIONS),
     )
+
+
+def _more_drive(case: Case, carries_A: float, carry_A: float) -> str:
+    """Return the drive resistor that lets the stage carry what the board needs, or by how much drive or gain fall short."""
+
+    def does(solution: Solution) -> bool:
+        least_A = least_carries_A(solution)
+        return least_A is not None and least_A >= carry_A
+
+    fit = greatest_drive_resistance(case, does)
+    if fit is not None:
+        return fit
+    resistors = ", ".join(case.parts("drive")) or "the drive"
+    if carries_A <= 0.0:
+        return f"{resistors} cannot turn the pass device on at all there: give the drive more voltage"
+    return f"let {resistors} give {carry_A / carries_A:.2g} times the drive, or fit a pass device of as much more hFE"
 
 
 def cap_exceeded(case: Case) -> Iterator[Answer]:

@@ -2,18 +2,16 @@
 
 from __future__ import annotations
 
-import math
-from collections.abc import Callable, Iterator
+from collections.abc import Iterator
 from dataclasses import dataclass, replace
 
 from protlint.board.graph import BoardPart
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
+from protlint.checks.drive_resistor import least_drive_resistance
 from protlint.checks.shunt import CURRENT_RATING, Taken, hottest, taken_by_shunt
-from protlint.checks.sizing import solve_again
 from protlint.findings import Level, NotChecked, WorkingLine
 from protlint.limits import DriveLimits
-from protlint.quantities import format_quantity, within
-from protlint.solve.circuit import Circuit
+from protlint.quantities import format_quantity
 from protlint.solve.solution import Solution
 from protlint.solve.surroundings import Surroundings, survey_surroundings
 from protlint.toml_text import toml_key
@@ -102,42 +100,6 @@ def _resistance_to_fit(case: Case, part_id: str, worst: Excess) -> str:
         return fit
     limit_A = worst.allowed if worst.quantity == "current" else worst.allowed / max(worst.taken.voltage_V, 0.1)
     return f"limit the drive's current: {part_id} may take {format_quantity(limit_A, 'A')} of it"
-
-
-def least_drive_resistance(case: Case, times: float, does: Callable[[Solution], bool]) -> str | None:
-    """Return the least resistance of E24 in the drive with which ``does`` is true, found by solving; None where none is.
-
-    ``times`` is by how much the drive's current has to come down, for where to begin.
-    """
-    resistors = case.parts("drive")
-    names = tuple(dict.fromkeys(name for part in resistors for name in case.devices_of(part)))
-    now_ohm = sum(case.device(name).model["R"] for name in names) if names else case.circuit.drive.resistance_ohm
-    drive = case.circuit.drive
-    points = [point for point in case.solution.high_short if point.drive_A]
-    if not points or math.isinf(times):
-        return None
-    point = max(points, key=lambda one: abs(one.drive_A))
-    end_V = max((drive.low_V.usual, drive.high_V.usual), key=lambda volts: abs(volts - point.output_V))
-    guess_ohm = max(now_ohm, abs(end_V - point.output_V) / abs(point.drive_A), 1.0) * times
-    for ohm in within(max(now_ohm, guess_ohm / 3.0, 1.0), guess_ohm * 4.0, "E24"):
-        if ohm <= now_ohm:
-            continue
-        solution = solve_again(case, _with_drive(case.circuit, names, now_ohm, ohm))
-        if solution.not_solved is None and does(solution):
-            where = f"as {resistors[0]}" if len(resistors) == 1 else "in series with the drive"
-            return f"fit {format_quantity(ohm, 'ohm')} {where}"
-    return None
-
-
-def _with_drive(circuit: Circuit, names: tuple[str, ...], now_ohm: float, ohm: float) -> Circuit:
-    """Return the circuit with so much resistance in its drive."""
-    if not names:
-        return replace(circuit, drive=replace(circuit.drive, resistance_ohm=ohm))
-    devices = tuple(
-        replace(one, model={**one.model, "R": one.model["R"] * ohm / now_ohm}) if one.name in names else one
-        for one in circuit.devices
-    )
-    return replace(circuit, devices=devices)
 
 
 def driver_overloaded(case: Case) -> Iterator[Answer]:

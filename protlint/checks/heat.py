@@ -131,8 +131,7 @@ def _loads(case: Case, element: Element, part: BoardPart) -> Iterator[Load]:
     if not names or value_ohm <= 0.0:
         return
     share = part_shares(element.tree, values_ohm)[part.index].current if len(values_ohm) > 1 else 1.0
-    short_s = case.needs.short_s
-    times = OVERLOAD_TIMES if short_s is not None and short_s <= OVERLOAD_S else 1.0
+    times = overload_times(case)
     for row, point in case.at_ambients(case.solution.high_short):
         yield Load("in the held short", row.ambient_degC, _current_A(point, names) * share, value_ohm, times)
     carried = case.solution.at_carry
@@ -143,6 +142,11 @@ def _loads(case: Case, element: Element, part: BoardPart) -> Iterator[Load]:
             current_A *= carry_A / carried.output_A
         for row in case.solution.currents:
             yield Load("at carry", row.ambient_degC, current_A, value_ohm)
+
+
+def overload_times(case: Case) -> float:
+    """Return how many times its rating a resistor bears for as long as the short lasts."""
+    return OVERLOAD_TIMES if case.lasts_s <= OVERLOAD_S else 1.0
 
 
 def _current_A(point: Point, names: list[str]) -> float:

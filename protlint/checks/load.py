@@ -14,17 +14,25 @@ from dataclasses import dataclass
 from itertools import pairwise
 
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
+from protlint.checks.sizing import meets, solve_again, with_resistance
 from protlint.findings import NotChecked, WorkingLine
 from protlint.limits import LimiterLimits
-from protlint.quantities import format_quantity
+from protlint.quantities import format_quantity, within
+from protlint.solve.circuit import Circuit
 from protlint.solve.conditions import locus_at_corner
 from protlint.solve.parameters import CircuitError
-from protlint.solve.solution import Point
+from protlint.solve.solution import Point, Solution
 
 CHECK = "foldback-locks-out"
 
 LAMP_EXPONENT = 0.55
 """A tungsten filament's current goes as this power of its voltage; lamp makers' rule, from memory."""
+
+MOST_TIMES = 20.0
+"""By how much a preset's leg is raised at most."""
+
+LEAST_SHARE = 0.5
+"""To which share a sense resistance is lowered at most."""
 
 STEPS = 200
 BENDS = 0.95
@@ -72,7 +80,7 @@ def foldback_locks_out(case: Case) -> Iterator[Answer]:
     assert needs.output_V is not None and case.solution.short is not None
     short_V = case.circuit.held[case.solution.short].usual
     working_V = abs(needs.output_V - short_V)
-    lines = _least_lines(case)
+    lines = _least_lines(case, case.circuit, case.solution)
     if not lines:
         yield NotChecked(CHECK, "the locus with every tolerance set for the least, which could not be solved")
         return
@@ -97,7 +105,7 @@ def foldback_locks_out(case: Case) -> Iterator[Answer]:
             WorkingLine("the limiter gives in the short", "the same", line.current_A[0], "A"),
             WorkingLine("the limiter gives at the working output", "the same", line.at_A(working_V), "A"),
         ),
-        remedy=_remedy(needs, line, working_V),
+        remedy=_remedy(case, line, working_V),
         assumption=case.assumes(*ALL_ASSUMPTIONS),
     )
 
@@ -176,13 +184,14 @@ def _line(points: Sequence[Point], short_V: float) -> Line:
     return Line(tuple(volts for volts, _ in pairs), tuple(amperes for _, amperes in pairs))
 
 
-def _least_lines(case: Case) -> list[tuple[float, Line]]:
-    """Return the locus at every ambient with every tolerance set for the least current."""
-    short = case.solution.short
-    assert short is not None
-    short_V = case.circuit.held[short].usual
+def _least_lines(case: Case, circuit: Circuit, solution: Solution) -> list[tuple[float, Line]]:
+    """Return the locus of a solved circuit at every ambient with every tolerance set for the least current."""
+    short = solution.short
+    if short is None:
+        return []
+    short_V = circuit.held[short].usual
     try:
-        loci = locus_at_corner(case.circuit, short, case.limits.ambient_degC, case.solution.corners.get("low", {}))
+        loci = locus_at_corner(circuit, short, case.limits.ambient_degC, solution.corners.get("low", {}))
     except CircuitError:
         return []
     return [
@@ -213,13 +222,37 @@ def _formula(needs: LimiterLimits, working_V: float) -> str:
     return " + ".join(terms)
 
 
-def _remedy(needs: LimiterLimits, line: Line, working_V: float) -> str:
-    """Say by how much the limit has to be raised below the working point, or the load held back."""
+def _remedy(case: Case, line: Line, working_V: float) -> str:
+    """Return the preset's leg, or the sense resistance, with which the load starts and carry and cap are still met, found by
+    solving; else by how much the limit has to be raised."""
+    for role, down_to, up_to in (("preset.lower", 1.0, MOST_TIMES), ("sense", LEAST_SHARE, 1.0)):
+        indices = case.limiter.elements.get(role, ())
+        names = tuple(name for name, index in case.bench.element_of.items() if index in indices)
+        parts = [part for index in indices for part in case.board.elements[index].parts]
+        if len(names) != 1 or len(parts) != 1:
+            continue
+        now_ohm = case.device(names[0]).model["R"]
+        values = within(down_to * now_ohm, up_to * now_ohm, "E24")
+        for ohm in sorted((one for one in values if one != now_ohm), key=lambda one: abs(one / now_ohm - 1.0)):
+            if _starts(case, with_resistance(case.circuit, names, ohm / now_ohm), working_V):
+                return f"fit {format_quantity(ohm, 'ohm')} as {case.board.parts[parts[0]].id}"
     places = [working_V * step / STEPS for step in range(1, STEPS)]
-    times = max(load_A_at(needs, one, working_V) / max(line.at_A(one), 1e-9) for one in places)
-    at_V = max(places, key=lambda one: load_A_at(needs, one, working_V) / max(line.at_A(one), 1e-9))
-    taken = format_quantity(load_A_at(needs, at_V, working_V), "A")
+    times, at_V = max((load_A_at(case.needs, one, working_V) / max(line.at_A(one), 1e-9), one) for one in places)
+    taken = format_quantity(load_A_at(case.needs, at_V, working_V), "A")
     return (
-        f"fold back less, so that the limiter gives more than {taken} {format_quantity(at_V, 'V')} from the short "
-        f"({times:.3g} times what it does): raise the preset's leg to ground, or keep the load off until the output is up"
+        f"fold back less: the limiter has to give more than {taken} {format_quantity(at_V, 'V')} from the short, "
+        f"{times:.3g} times what it does; or keep the load off until the output is up"
     )
+
+
+def _starts(case: Case, circuit: Circuit, working_V: float) -> bool:
+    """Tell whether the load starts with a changed circuit that still meets carry and cap."""
+
+    def free(solution: Solution) -> bool:
+        lines = _least_lines(case, circuit, solution)
+        return bool(lines) and all(meets_at_V(one, case.needs, working_V) is None for _, one in lines)
+
+    if not free(case.solution):  # with the corners as they were: most values fall here, at little cost
+        return False
+    solution = solve_again(case, circuit)
+    return free(solution) and meets(solution, case.needs.carry_A, case.needs.cap_A)

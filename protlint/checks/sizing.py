@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Collection, Sequence
 from dataclasses import replace
 
 from protlint.checks.case import Case
+from protlint.checks.heat import overload_times, rating_to_fit_W, resistor_rating
 from protlint.quantities import format_quantity
 from protlint.quantities.series import within
 from protlint.solve.answers import solve
@@ -40,7 +41,7 @@ def sense_remedy(case: Case) -> str | None:
     for value_ohm in _candidates(lower_ohm, upper_ohm):
         solution = resolve(case, value_ohm / now_ohm)
         if meets(solution, carry_A, cap_A):
-            return _fit(case, value_ohm, len(sense))
+            return _fit(case, value_ohm, len(sense)) + _rated(case, value_ohm, solution)
     return _no_value(case, carries_A, most_A)
 
 
@@ -64,12 +65,7 @@ def _candidates(lower_ohm: float | None, upper_ohm: float | None) -> Sequence[fl
 
 def resolve(case: Case, factor: float) -> Solution:
     """Solve the case's circuit again with its sense resistance multiplied by ``factor``."""
-    circuit = case.circuit
-    devices = tuple(
-        replace(device, model={**device.model, "R": device.model["R"] * factor}) if device.name in circuit.sense else device
-        for device in circuit.devices
-    )
-    return solve_again(case, replace(circuit, devices=devices))
+    return solve_again(case, with_resistance(case.circuit, case.circuit.sense, factor))
 
 
 def solve_again(case: Case, circuit: Circuit) -> Solution:
@@ -105,6 +101,30 @@ def _fit(case: Case, value_ohm: float, count: int) -> str:
     if count > 1:
         return f"fit {value} as each of {', '.join(parts)}"
     return f"make {', '.join(parts)} {value} together"
+
+
+def _rated(case: Case, value_ohm: float, solution: Solution) -> str:
+    """Return the rating that the new sense resistor needs, where that is more than the one drawn; else nothing."""
+    parts = case.parts("sense")
+    rating = resistor_rating(case, case.part(parts[0])) if len(parts) == 1 else None
+    if rating is None:
+        return ""
+    share = case.threshold("sense-resistor-power", "warning")
+    needed_W = rating.power.value
+    for row, point in zip(solution.currents, solution.high_short, strict=False):
+        current_A = max(abs(point.states[name].current_A) for name in case.circuit.sense)
+        power_W = current_A**2 * value_ohm
+        needed_W = max(needed_W, rating_to_fit_W(power_W, rating, row.ambient_degC, share, overload_times(case)) or 0.0)
+    return f", rated {format_quantity(needed_W, 'W')}" if needed_W > rating.power.value else ""
+
+
+def with_resistance(circuit: Circuit, names: Collection[str], factor: float) -> Circuit:
+    """Return the circuit with the resistances of some of its devices multiplied by a factor."""
+    devices = tuple(
+        replace(one, model={**one.model, "R": one.model["R"] * factor}) if one.name in names else one
+        for one in circuit.devices
+    )
+    return replace(circuit, devices=devices)
 
 
 def _no_value(case: Case, carries_A: float, most_A: float) -> str:

@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 from protlint.checks.case import Case
+from protlint.checks.sizing import with_resistance
 from protlint.checks.surge import Surge
 from protlint.quantities import preferred, within
 from protlint.solve.circuit import Circuit, Device
@@ -57,8 +58,8 @@ def moves_for_the_stop(case: Case, shunt: Device, stop_ohm: float | None = None)
     ohm = now_ohm if stop_ohm is None else stop_ohm
     if stop_ohm is None and _by_hand(case, shunt, ohm) < SURELY_SMALL * case.threshold("base-stop-high", "share"):
         return Moves(0.0, 0.0, (0.0, 0.0), shunt.hfe, case.limits.ambient_degC[1])
-    with_it = _holds(case, _changed(circuit, names, ohm / now_ohm), shunt)
-    without = _holds(case, _changed(circuit, names, BRIDGED_OHM / now_ohm), shunt)
+    with_it = _holds(case, with_resistance(circuit, names, ohm / now_ohm), shunt)
+    without = _holds(case, with_resistance(circuit, names, BRIDGED_OHM / now_ohm), shunt)
     if with_it is None or without is None:
         return None
     found = []
@@ -156,12 +157,3 @@ def _now_ohm(case: Case) -> float:
     if not values:
         return 0.0
     return values[0] if _several_stops(case) else sum(values)
-
-
-def _changed(circuit: Circuit, names: tuple[str, ...], factor: float) -> Circuit:
-    """Return the circuit with the resistances of some of its devices multiplied by a factor."""
-    devices = tuple(
-        replace(one, model={**one.model, "R": one.model["R"] * factor}) if one.name in names else one
-        for one in circuit.devices
-    )
-    return replace(circuit, devices=devices)
