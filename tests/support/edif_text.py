@@ -11,7 +11,7 @@ from protlint.netlist.model import Netlist
 
 @dataclass(frozen=True, slots=True)
 class Drawn:
-    """A part to be written: ``pins`` pairs a pin's name with its net; ``value``, ``part_number`` and ``power`` may be empty."""
+    """A part to be written: ``pins`` pairs a pin's name with its net; the texts behind may be empty."""
 
     designator: str
     cell: str

@@ -1,0 +1,126 @@
+"""Other ways from a supply to the output: told where they give a current worth speaking of, and only there."""
+
+from __future__ import annotations
+
+import pytest
+
+from protlint.findings import Finding
+from protlint.pipeline import Review
+from tests.support.desk import found, unchecked
+from tests.support.judged import Job, follower, sink, source
+
+FOLLOWER, SINK, SOURCE = follower(), sink(), source()
+
+
+def with_parts(job: Job, *lines: str) -> Review:
+    """Return the review of a board with parts added."""
+    return job.drawn(("\nJ1 ", "\n" + "\n".join(lines) + "\nJ1 ")).review()
+
+
+def way(review: Review) -> Finding | None:
+    findings = found(review, "second-road")
+    assert len(findings) < 2
+    return findings[0] if findings else None
+
+
+def holds_A(job: Job) -> float:
+    held = job.review().limiters[0].solution.currents[1].holds_A
+    assert held is not None
+    return float(held)
+
+
+PAST_A_FOLLOWER = {
+    "a transistor": ("Q90 NPN QPN1 +24V B90 OUT", "U90 IC IC9 B=B90"),
+    "a transistor of the other polarity": ("Q90 PNP QPP1 OUT B90 +24V", "U90 IC IC9 B=B90"),
+    "a MOSFET": ("Q90 NMOS MPN1 +24V G90 OUT", "U90 IC IC9 B=G90"),
+    "the body diode of a MOSFET": ("Q90 NMOS MPN1 OUT G90 +24V", "U90 IC IC9 B=G90"),
+    "a diode": ("D90 DIODE 1N4007 +24V OUT",),
+    "a resistor": ("R90 RES 47 +24V OUT POWER:20W",),
+    "a resistor and a diode": ("R90 RES 47 +24V X90", "D90 DIODE 1N4007 X90 OUT"),
+    "an inductor": ("L90 IND 10u +24V OUT",),
+}
+QUIET = {
+    "a pull-up that gives next to nothing": ("R90 RES 10k +24V OUT",),
+    "a load to ground": ("R90 RES 47 OUT GND POWER:20W",),
+    "a diode to the supply": ("D90 DIODE 1N4007 OUT +24V",),
+    "a diode from ground": ("D90 DIODE 1N4007 GND OUT",),
+    "a transistor to ground": ("Q90 NPN QPN1 OUT B90 GND", "U90 IC IC9 B=B90"),
+    "a clamp above the supply": ("D90 ZENER - OUT +24V",),
+    "a divider": ("R90 RES 10k OUT X90", "R91 RES 10k X90 GND"),
+    "a capacitor": ("C90 CAP 10u +24V OUT",),
+    "a resistor to the negative supply": ("R90 RES 1k OUT -5V",),
+}
+
+
+@pytest.mark.parametrize("lines", PAST_A_FOLLOWER.values(), ids=PAST_A_FOLLOWER)
+def test_every_kind_of_way_past_a_follower_is_told(lines: tuple[str, ...]) -> None:
+    finding = way(with_parts(FOLLOWER, *lines))
+    assert finding is not None
+    resistive = any(line.startswith("R") for line in lines)
+    assert (finding.limiter, finding.level) == ("Q10", "error" if resistive else "warning")
+    assert finding.parts[0].endswith("90")
+    assert finding.remedy is not None
+    assert finding.nets[:2] == ("OUT", "+24V")
+
+
+@pytest.mark.parametrize("lines", QUIET.values(), ids=QUIET)
+def test_what_feeds_nothing_is_left_alone(lines: tuple[str, ...]) -> None:
+    assert way(with_parts(FOLLOWER, *lines)) is None
+
+
+def test_past_a_sink_it_is_the_way_to_ground_that_counts() -> None:
+    assert way(with_parts(SINK, "R90 RES 22 LAMP GND POWER:10W")) is not None
+    assert way(with_parts(SINK, "Q90 NMOS MPN1 LAMP G90 GND", "U90 IC IC9 B=G90")) is not None
+    assert way(with_parts(SINK, "R90 RES 22 +12V LAMP POWER:10W")) is None  # the load
+    assert way(with_parts(SINK, "D90 DIODE 1N4007 LAMP +12V")) is None  # a flyback diode
+
+
+def test_past_a_source_it_is_the_way_from_the_supply_that_counts() -> None:
+    assert way(with_parts(SOURCE, "D90 DIODE 1N4007 +15V OUT")) is not None
+    assert way(with_parts(SOURCE, "D90 DIODE 1N4007 GND OUT")) is None
+
+
+def test_five_per_cent_of_holds_is_the_bound() -> None:
+    """V / R of 24 V against 5 % of holds, by Ohm's law."""
+    at_ohm = 24.0 / (0.05 * holds_A(FOLLOWER))
+    assert way(with_parts(FOLLOWER, f"R90 RES {at_ohm * 1.01:.6g} +24V OUT")) is None
+    assert way(with_parts(FOLLOWER, f"R90 RES {at_ohm * 0.99:.6g} +24V OUT")) is not None
+
+
+def test_the_resistance_named_in_the_remedy_will_do() -> None:
+    finding = way(with_parts(FOLLOWER, "R90 RES 47 +24V OUT"))
+    assert finding is not None
+    assert finding.remedy is not None
+    value, unit = finding.remedy.rpartition("put ")[2].split()[:2]
+    ohm = float(value) * {"ohm": 1.0, "kohm": 1e3}[unit]
+    assert way(with_parts(FOLLOWER, "R90 RES 47 +24V X90", f"R91 RES {ohm:.6g} X90 OUT")) is None
+
+
+def test_moved_before_the_sense_resistor_it_is_no_second_way() -> None:
+    assert way(with_parts(FOLLOWER, "R90 RES 47 +24V SNS")) is None
+
+
+def test_a_current_that_breaks_the_cap_is_an_error() -> None:
+    """The cap is 0.8 A: the high end of most leaves room for some milliamperes, not for half an ampere."""
+    finding = way(with_parts(FOLLOWER, "R90 RES 47 +24V OUT"))
+    assert finding is not None
+    assert finding.level == "error"
+    far = way(with_parts(FOLLOWER.stated(cap="5 A"), "R90 RES 47 +24V OUT"))
+    assert far is not None
+    assert far.level == "warning"
+
+
+def test_a_second_limiter_on_the_same_output_is_limited_itself() -> None:
+    second = (
+        "R30 RES 680 DRV B3 POWER:1W", "Q30 NPN QPN1 +24V B3 S3", "R31 RES 1.2 S3 OUT POWER:2W", "R32 RES 150 S3 T3",
+        "Q31 NPN QSN1 B3 T3 OUT", "C31 CAP 10n B3 T3",
+    )  # fmt: skip
+    review = with_parts(FOLLOWER, *second)
+    assert {one.limiter.id for one in review.limiters} == {"Q10", "Q30"}
+    assert way(review) is None
+
+
+def test_a_way_whose_value_is_not_known_is_not_checked() -> None:
+    review = with_parts(FOLLOWER, "R90 RES odd +24V OUT")
+    assert way(review) is None
+    assert ("second-road", "the value of R90") in unchecked(review)
