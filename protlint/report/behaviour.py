@@ -75,7 +75,8 @@ def _loop(limiter: Document) -> Iterator[str]:
         yield f"Loop: {place if loop['at_Hz'] is not None else 'nothing swings as drawn'}{worst}."
     if step["settles"] is not None:
         after = f"after {figure(step['delay_s'], 's')}" if step["delay_s"] else "at once"
-        yield f"Step into the short: {f'settles {after}' if step['settles'] else 'does not settle'}, peak {figure(step['peak_A'], 'A')}."
+        settles = f"settles {after}" if step["settles"] else "does not settle"
+        yield f"Step into the short: {settles}, peak {figure(step['peak_A'], 'A')}."
 
 
 def _start_up(start_up: Document | None) -> Iterator[str]:
