@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
+from protlint.checks.let_through import too_much
 from protlint.findings import Level, NotChecked, WorkingLine
 from protlint.quantities import format_quantity
 from protlint.solve.advice import AIM, DRIVE_FAR, GREATEST_F, LEAST_F, advise
@@ -25,12 +26,13 @@ def compensation_absent(case: Case) -> Iterator[Answer]:
         return
     without = loop.worst_without_wiring
     poor = loop.own_damping < case.threshold(check, "warning") or (without is not None and without.damping < 0.0)
+    advice = _advice(case, loop) if poor else None
     yield case.finding(
         check,
         f"no capacitor shapes the limiting loop; its damping of {said(loop)} is {'too little' if poor else 'enough'}",
         parts=case.parts("shunt"),
         working=tuple(_working(case, loop)),
-        remedy=_remedy(case, _advice(case, loop)) if poor else None,
+        remedy=_remedy(case, advice, _fit(case, advice)) if poor else None,
         level="warning" if poor else "note",
         assumption=rests_on_assumptions(case),
     )
@@ -47,14 +49,15 @@ def loop_undamped(case: Case) -> Iterator[Answer]:
     if level is None:
         return
     advice = _advice(case, loop)
+    fit = _fit(case, advice)
     oscillates = "oscillates" if loop.own_damping < 0.0 else "can oscillate" if _grows(loop) else "rings"
     cause = f"; {advice.costs} costs it" if advice is not None and advice.costs is not None else ""
     yield case.finding(
         check,
         f"the limiting loop {oscillates}: its damping is {said(loop)}{cause}",
         parts=(*case.parts("shunt"), *_costing_parts(case, advice)),
-        working=(*_working(case, loop), *_effects(advice), *_delays(advice)),
-        remedy=_remedy(case, advice),
+        working=(*_working(case, loop), *_effects(advice), *_delays(advice, fit)),
+        remedy=_remedy(case, advice, fit),
         level=level,
         assumption=rests_on_assumptions(case),
     )
@@ -146,10 +149,10 @@ def _effects(advice: Advice | None) -> Iterator[WorkingLine]:
         yield WorkingLine(f"worst damping {how}", "solved again", effect.worst_damping, "", DAMPING)
 
 
-def _delays(advice: Advice | None) -> Iterator[WorkingLine]:
+def _delays(advice: Advice | None, fit: Fit | None) -> Iterator[WorkingLine]:
     if advice is None:
         return
-    for when, step in (("as drawn", advice.step), ("with the remedy", advice.fit.step if advice.fit is not None else None)):
+    for when, step in (("as drawn", advice.step), ("with the remedy", fit.step if fit is not None else None)):
         if step is not None:
             how = "step into the short, until the current is below 1.1 times holds for good"
             yield WorkingLine(f"delay {when}", how if step.settles else "it does not settle", step.delay_s, "s")
@@ -178,21 +181,27 @@ def _costing_parts(case: Case, advice: Advice | None) -> tuple[str, ...]:
     return tuple(case.board.parts[index].id for index in element.parts)
 
 
-def _remedy(case: Case, advice: Advice | None) -> str | None:
-    if advice is None:
+def _fit(case: Case, advice: Advice | None) -> Fit | None:
+    """Return the first way to calm the loop that does not make the limiter act too late, else the first."""
+    fits = advice.fits if advice is not None else ()
+    quick = (fit for fit in fits if fit.step is None or not too_much(case, fit.step))
+    return next(quick, fits[0] if fits else None)
+
+
+def _remedy(case: Case, advice: Advice | None, fit: Fit | None) -> str | None:
+    if advice is None or advice.enough:
         return None
-    fit = advice.fit
     if fit is None:
         span = f"{format_quantity(LEAST_F, 'F')} to {format_quantity(GREATEST_F, 'F')}"
         return (
             f"none of the usual places does: no capacitor of {span} from collector to base, from the drive to the far end "
             f"or from base to emitter brings the damping to {AIM:g} at worst"
         )
-    out = f"take {fit.instead_of} out and " if fit.instead_of is not None else ""
-    return (
-        f"{out}fit {format_quantity(fit.farad, 'F')} {_place(case, fit)} ({fit.nodes[0]} to {fit.nodes[1]}): "
-        f"damping {fit.own_damping:.2g}, {fit.worst_damping:.2g} at worst{_change(advice.step, fit.step)}"
-    )
+    todo = [f"take {fit.instead_of} out"] if fit.instead_of is not None else []
+    if fit.farad is not None:
+        todo.append(f"fit {format_quantity(fit.farad, 'F')} {_place(case, fit)} ({fit.nodes[0]} to {fit.nodes[1]})")
+    then = f"damping {fit.own_damping:.2g}, {fit.worst_damping:.2g} at worst{_change(advice.step, fit.step)}"
+    return f"{' and '.join(todo)}: {then}"
 
 
 def _place(case: Case, fit: Fit) -> str:

@@ -3,13 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 from protlint.board.graph import BoardPart
 from protlint.checks.case import Answer, Case
-from protlint.checks.derating import derated, share_of
+from protlint.checks.let_through import LATE, LetThrough, let_through, too_much
 from protlint.checks.loop import charge_lines, not_known, rests_on_assumptions
-from protlint.checks.safe_area import allowed, breakdown_share, curve_for, thermal_share
 from protlint.checks.sizing import least_carries_A, meets, resolve, solve_again
 from protlint.findings import NotChecked, WorkingLine
 from protlint.limits import Peak
@@ -22,30 +21,11 @@ from protlint.solve.loop import solve_loop
 from protlint.solve.peak import ride_through
 from protlint.solve.solution import Loop, Solution, Step
 
-LATE, PEAKS = "trips-late", "trips-on-peaks"
-AREA = "pass-outside-safe-area"
+PEAKS = "trips-on-peaks"
 FITTED = "fitted capacitor"
 MOST_F = 100e-6
 """No larger capacitor is proposed at a shunt's base."""
 BY_HAND = "R C ln((m - p) / (m - 1)), the RC's answer to a step; any textbook on circuits"
-
-
-@dataclass(frozen=True, slots=True)
-class LetThrough:
-    """What a pass device is let into: for how long, the energy, the voltage across it in the short, the current of a pulse
-    of that energy, the current its safe area allows for that time, and where that comes from."""
-
-    lasts_s: float
-    energy_J: float
-    voltage_V: float
-    current_A: float
-    allowed_A: float
-    source: str
-
-    @property
-    def ratio(self) -> float:
-        """Return the current over what is allowed; infinite where nothing is."""
-        return self.current_A / self.allowed_A if self.allowed_A > 0.0 else float("inf")
 
 
 def trips_late(case: Case) -> Iterator[Answer]:
@@ -59,7 +39,7 @@ def trips_late(case: Case) -> Iterator[Answer]:
         return
     for part_id, names in case.device_parts("pass"):
         part = case.part(part_id)
-        found = _let_through(case, part, names, step)
+        found = let_through(case, part, names, step)
         if isinstance(found, str):
             yield NotChecked(LATE, found)
         elif found is not None and found.ratio > case.threshold(LATE, "error"):
@@ -108,35 +88,6 @@ def trips_on_peaks(case: Case) -> Iterator[Answer]:
     )
 
 
-def _let_through(case: Case, part: BoardPart, names: tuple[str, ...], step: Step) -> LetThrough | str | None:
-    """Return what a pass device is let into, the key of what is missing for it, or None where it is nothing."""
-    held = case.solution.held_short
-    if held is None or not step.delay_s or not step.pass_energy_J:
-        return None
-    limit = case.rating(part.id, "tj_max")
-    if limit is None:
-        return case.rating_key(part.id, "tj_max")
-    curve = curve_for(part.entry.safe_area if part.entry is not None else (), step.delay_s, case.threshold(AREA, "dc_from"))
-    if curve is None:
-        return f"{case.data_key(part.id, 'safe_area')} that lasts {format_quantity(step.delay_s, 's')}"
-    voltage_V = max(abs(held.states[name].voltage_V) for name in names)
-    hottest_degC = max(case.limits.ambient_degC)
-    left = thermal_share(hottest_degC, limit.value)
-    fet = part.kind in ("nmos", "pmos")
-    breakdown = left if fet else breakdown_share(hottest_degC, limit.value, case.threshold(AREA, "second_breakdown_left"))
-    derating = case.limits.derating
-    bound = allowed(
-        curve.points,
-        voltage_V,
-        thermal_left=left,
-        breakdown_left=breakdown * share_of(derating, part.kind, "current"),
-        power_share=share_of(derating, part.kind, "power"),
-    )
-    current_A = step.pass_energy_J / (step.delay_s * voltage_V)
-    source = derated(derating, part.kind, "current", curve.source)
-    return LetThrough(step.delay_s, step.pass_energy_J, voltage_V, current_A, bound.current_A, source)
-
-
 def _late(case: Case, part: BoardPart, names: tuple[str, ...], found: LetThrough) -> Answer:
     lasts = format_quantity(found.lasts_s, "s")
     step = case.solution.step
@@ -175,7 +126,7 @@ def _late_remedy(case: Case, part: BoardPart, names: tuple[str, ...], found: Let
             step = solve_step(circuit, case.limits.ambient_degC, short=case.solution.short)
             if not isinstance(step, Step) or not _calm(case, circuit):
                 continue
-            then = _let_through(case, part, names, step)
+            then = let_through(case, part, names, step)
             if then is None or (isinstance(then, LetThrough) and then.ratio <= case.threshold(LATE, "error")):
                 return f"fit {format_quantity(farad, 'F')} as {slowing.name}: {format_quantity(step.delay_s or 0.0, 's')}"
     current = format_quantity(preferred(found.current_A, "E24", "up"), "A")
@@ -271,7 +222,4 @@ def _calm(case: Case, circuit: Circuit) -> bool:
 def _bears(case: Case, circuit: Circuit) -> bool:
     """Tell whether the pass devices of a changed circuit would stay inside their safe areas, as far as those are known."""
     step = solve_step(circuit, case.limits.ambient_degC, short=case.solution.short)
-    if not isinstance(step, Step) or not step.settles:
-        return False
-    found = [_let_through(case, case.part(part_id), names, step) for part_id, names in case.device_parts("pass")]
-    return all(one.ratio <= case.threshold(LATE, "error") for one in found if isinstance(one, LetThrough))
+    return isinstance(step, Step) and step.settles and not too_much(case, step)

@@ -58,22 +58,35 @@ def advise(
     dearest = max(effects, key=lambda one: one.worst_damping, default=None)
     costs = dearest.part if dearest is not None and dearest.worst_damping > now[1] + COSTS else None
     enough = now[1] >= AIM
-    fit = None if enough else _smallest(circuit, ambients_degC, short, None)
-    costing = next((one for one in circuit.devices if one.name == costs and one.kind == "capacitor"), None)
-    if fit is None and not enough and costing is not None:
-        fit = _smallest(_without(circuit, costing.name), ambients_degC, short, costing.name)
+    fits: list[Fit] = []
+    if not enough:
+        beside = _smallest(circuit, ambients_degC, short, None)
+        fits += [beside] if beside is not None else []
+        if dearest is not None and dearest.part == costs and not dearest.base_stop:
+            fits += _instead(circuit, ambients_degC, short, dearest)
     if delay:
         step = _step(circuit, ambients_degC, short) if step is None else step
-        if fit is not None:
-            fit = replace(fit, step=_step(fitted(circuit, fit), ambients_degC, short))
-    return Advice(*now, enough, effects, costs, fit, step)
+        fits = [replace(fit, step=_step(fitted(circuit, fit), ambients_degC, short)) for fit in fits]
+    return Advice(*now, enough, effects, costs, tuple(fits), step)
+
+
+def _instead(
+    circuit: Circuit, ambients_degC: tuple[float, float, float], short: str | None, dearest: Effect
+) -> Iterator[Fit]:
+    """Yield what to do without the capacitor that costs the most: nothing where that is enough, else what to fit then."""
+    if dearest.worst_damping >= AIM:
+        yield Fit("", ("", ""), None, dearest.part, dearest.own_damping, dearest.worst_damping)
+        return
+    found = _smallest(_without(circuit, dearest.part), ambients_degC, short, dearest.part)
+    if found is not None:
+        yield found
 
 
 def fitted(circuit: Circuit, fit: Fit) -> Circuit:
-    """Return the circuit with the advised capacitor in it, and without what has to go for it."""
+    """Return the circuit with what is advised done to it."""
     if fit.instead_of is not None:
         circuit = _without(circuit, fit.instead_of)
-    return _with(circuit, fit.nodes, fit.farad)
+    return circuit if fit.farad is None else _with(circuit, fit.nodes, fit.farad)
 
 
 def places(circuit: Circuit) -> dict[str, tuple[str, str]]:

@@ -139,9 +139,13 @@ def advice_renamed(advice: Advice, devices: Mapping[str, str], nodes: Mapping[st
     def other(name: str | None) -> str | None:
         return None if name is None else devices.get(name, name)
 
-    fit = advice.fit
-    if fit is not None:
-        ends = (nodes.get(fit.nodes[0], fit.nodes[0]), nodes.get(fit.nodes[1], fit.nodes[1]))
-        fit = replace(fit, nodes=ends, instead_of=other(fit.instead_of))
+    fits = tuple(
+        replace(
+            fit,
+            nodes=(nodes.get(fit.nodes[0], fit.nodes[0]), nodes.get(fit.nodes[1], fit.nodes[1])),
+            instead_of=other(fit.instead_of),
+        )
+        for fit in advice.fits
+    )
     effects = tuple(replace(one, part=devices.get(one.part, one.part)) for one in advice.effects)
-    return replace(advice, effects=effects, costs=other(advice.costs), fit=fit)
+    return replace(advice, effects=effects, costs=other(advice.costs), fits=fits)

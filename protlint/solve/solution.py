@@ -151,12 +151,13 @@ class Effect:
 
 @dataclass(frozen=True, slots=True)
 class Fit:
-    """A capacitor to fit: its place in words and as nodes, its value, what has to go for it (None: nothing), the damping
-    then, nominal and worst, and the step then (None where it was not asked for or could not be worked out)."""
+    """A way to calm a loop: a capacitor to fit (its place in words and as nodes, its value), a capacitor to take out, or
+    both; None or empty where there is nothing to do of a kind. With the damping of the limiter's own modes then, nominal
+    and worst, and the step then (None where it was not asked for or could not be worked out)."""
 
     place: str
     nodes: tuple[str, str]
-    farad: float
+    farad: float | None
     instead_of: str | None
     own_damping: float
     worst_damping: float
@@ -168,8 +169,9 @@ class Advice:
     """Advice on a loop.
 
     The damping of the limiter's own modes, parts as drawn and at worst, whether that is enough, what each part does to it,
-    the part that costs the most (None: none does), and what to fit: where the damping is not enough, ``fit`` None means that
-    none of the usual places does. ``step`` is the step as drawn.
+    the part that costs the most (None: none does), and the ways to calm it: first the smallest capacitor beside all that is
+    there, then without the capacitor that costs the most. Where the damping is not enough, no ``fits`` means that none of
+    the usual places does. ``step`` is the step as drawn.
     """
 
     own_damping: float
@@ -177,8 +179,13 @@ class Advice:
     enough: bool
     effects: tuple[Effect, ...]
     costs: str | None
-    fit: Fit | None
+    fits: tuple[Fit, ...]
     step: Step | None = None
+
+    @property
+    def fit(self) -> Fit | None:
+        """The first way, None where there is none."""
+        return self.fits[0] if self.fits else None
 
 
 @dataclass(frozen=True, slots=True)
