@@ -140,7 +140,8 @@ def test_standard_input_is_read(bench: Path) -> None:
 
 
 def test_a_waiver_keeps_the_finding_and_opens_the_gate(bench: Path) -> None:
-    protlint("review", BOARD, *FILES, "--save", "r.json", folder=bench)
+    first = protlint("review", BOARD, *FILES, "--save", "r.json", folder=bench)
+    assert (first.returncode, first.stderr) == (1, "")
     errors = [one["fingerprint"] for one in report_in(bench / "r.json")["findings"] if one["level"] == "error"]
     for name in errors:
         done = protlint("waive", BOARD, name, "--reason", "seen on the bench", "--by", "A. R.", "--until", "2030-01-01",
