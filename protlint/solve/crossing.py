@@ -48,21 +48,23 @@ def balance(
     *,
     share: float,
     from_V: Array,
-    from_A: Array,
+    from_A: Array | None,
     start: Array,
-    limits_V: tuple[float, float],
+    limits_V: tuple[float | Array, float | Array],
     drive_limit: float = 1.0,
-) -> Array:
-    """Return the output currents with the shunt where they fall to ``share`` of those without, NaN where none is found.
+) -> tuple[Array, Array, Array]:
+    """Find where the output current with the shunt falls to ``share`` of that without.
 
-    All arrays are (conditions,) but ``start``, inner voltages (ports, 2, conditions) with the shunt and without. The drive
-    begins at ``from_V``, where a nominal stage gives ``from_A``; ``limits_V`` are its off end and the farthest it may rise;
-    ``drive_limit`` multiplies the greatest current of a limited drive.
+    Returns drive voltages and output currents, NaN where none is found, and the inner voltages there. All arrays are
+    (conditions,) but inner voltages, (ports, 2, conditions) with the shunt and without. The drive begins at ``from_V``,
+    where a nominal stage gives ``from_A`` (None: the start is near enough); ``limits_V`` are its off end and the farthest it
+    may rise; ``drive_limit`` multiplies the greatest current of a limited drive.
     """
     count = len(from_V)
     off, end = limits_V
-    onward = 1.0 if end > off else -1.0
-    span = abs(end - off)
+    onward, span = np.sign(np.subtract(end, off)), np.abs(np.subtract(end, off))
+    low_V, high_V = np.minimum(off, end), np.maximum(off, end)
+    approach = 0 if from_A is None else _APPROACH
     both = conditions.pick(np.tile(np.arange(count), 2))
     lanes = stage_lanes(
         stage, both.ambient_K, corner=both.corner, drive_V=np.zeros(2 * count), shunt_in=np.repeat([1.0, 0.0], count)
@@ -70,28 +72,30 @@ def balance(
     with np.errstate(all="ignore"):
         pair = _pair(stage.network, lanes, drive_limit)
         work, drive_V = start.reshape(len(start), -1).copy(), from_V.copy()
-        result, settled = np.full(count, np.nan), np.zeros(count, dtype=bool)
+        settled = np.zeros(count, dtype=bool)
+        output_A = np.full(count, np.nan)
         for step in range(_STEPS):
             line, slope, advance = _linearised(pair, work)
             a, b = (stage.way * value.reshape(2, count) for value in (line, slope))
             over, over_slope = a[0] - share * a[1], b[0] - share * b[1]
-            if step < _APPROACH:
+            if step < approach and from_A is not None:
                 wanted = (from_A / share - a[1]) / b[1]
             else:
                 # short of the limiter's onset the excess still grows with the drive: the crossing lies further on
                 falling = onward * over_slope < 0.0
                 wanted = np.where(falling, -over / over_slope, drive_V + onward * _CREEP_SHARE * span)
             change = np.clip(wanted - drive_V, -_LONGEST_SHARE * span, _LONGEST_SHARE * span)
-            drive_V = np.clip(drive_V + change, min(limits_V), max(limits_V))
+            drive_V = np.clip(drive_V + change, low_V, high_V)
             new = limited(pair.network, pair.p, work, advance(np.tile(drive_V, 2)))
             moved = np.abs(new - work).max(axis=0, initial=0.0).reshape(2, count).max(axis=0)
             work = np.nan_to_num(new)
-            if step >= _APPROACH:
-                settled |= falling & (moved < CLOSE_V) & (np.abs(wanted - drive_V) < _CLOSE_SHARE * span)
-                result = np.where(settled, a[0] + b[0] * drive_V, np.nan)
+            if step >= approach:
+                settled = falling & (moved < CLOSE_V) & (np.abs(wanted - drive_V) < _CLOSE_SHARE * span)
+                output_A = a[0] + b[0] * drive_V
                 if settled.all():
                     break
-    return result
+    found_V, found_A = np.where(settled, drive_V, np.nan), np.where(settled, output_A, np.nan)
+    return found_V, found_A, work.reshape(start.shape)
 
 
 def _pair(network: Network, lanes: Lanes, drive_limit: float) -> _Pair:

@@ -23,7 +23,7 @@ def test_currents_agree_with_the_bench(name: str) -> None:
         assert currents.unlimited_A == pytest.approx(figures["unlimited_A"], rel=1e-4)
         assert currents.shunt_A == pytest.approx(figures["shunt_A"], rel=1e-3)
         if "begins_A" in figures:
-            assert currents.begins_A == pytest.approx(figures["begins_A"], rel=1e-3)
+            assert currents.begins_A == pytest.approx(figures["begins_A"], rel=1e-4)
         else:
             assert currents.begins_A is None
     usual = solution.currents[1]
