@@ -13,7 +13,8 @@ from pathlib import Path
 import pytest
 
 from protlint.board.graph import Board
-from protlint.pipeline import Review, review
+from protlint.netlist import read_netlist
+from protlint.pipeline import Desk, Review, review_netlist, set_up
 from tests.support.paths import FIXTURES
 
 CIRCUITS = sorted((FIXTURES / "lookalikes").glob("*.edf"))
@@ -25,8 +26,13 @@ output = "2 V"
 
 
 @cache
+def bare_desk() -> Desk:
+    return set_up()
+
+
+@cache
 def reviewed(path: Path) -> Review:
-    return review(path)
+    return review_netlist(read_netlist(path), bare_desk())
 
 
 def what_it_is(path: Path) -> str:
@@ -61,8 +67,9 @@ def test_every_part_of_it_is_known(path: Path) -> None:
 def test_nothing_is_said_where_limits_are_stated_either(tmp_path: Path) -> None:
     limits = tmp_path / "limits.toml"
     limits.write_text(ASKED, encoding="utf-8")
+    desk = set_up(limits=limits)
     for path in CIRCUITS:
-        found = review(path, limits=limits)
+        found = review_netlist(read_netlist(path), desk)
         assert (found.limiters, found.findings) == ((), ()), path.stem
 
 
