@@ -53,9 +53,9 @@ def find_ranges(stage: Stage, nominal: Nominal) -> Ranges:
     probe = _probe(stage, nominal)
     corner, found = extremes(lambda at, which: probe(at, existing[which]), figures.ravel()[existing], len(stage.axes))
     ends = np.full((2, figures.size), np.nan)
-    ends[:, existing] = found.reshape(2, -1)
+    ends[:, existing] = found.reshape(2, len(existing))
     corners = np.zeros((2, len(stage.axes), figures.size))
-    corners[:, :, existing] = corner.reshape(len(stage.axes), 2, -1).swapaxes(0, 1)
+    corners[:, :, existing] = corner.reshape(len(stage.axes), 2, len(existing)).swapaxes(0, 1)
     by_kind = {kind: ends.reshape(2, len(KINDS), -1)[:, place].copy() for place, kind in enumerate(KINDS)}
     _, holds, carries, most = (corners[:, :, place * ambients : (place + 1) * ambients] for place in range(len(KINDS)))
 
