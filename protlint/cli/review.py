@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from datetime import date
 from typing import Any
 
 import click
@@ -31,20 +30,7 @@ Exit code: 0 the gate holds, 1 it does not, 2 the work could not be done.
 @click.option("--gate", type=click.Choice(("error", "warning", "note", "never")), default="error", show_default=True,
               help="The least level that makes the exit code 1.")  # fmt: skip
 @click.option("--complete", is_flag=True, help="What was not checked closes the gate too.")
-def review(
-    netlist: tuple[str, ...],
-    limits: str | None,
-    parts: tuple[str, ...],
-    parts_list: str | None,
-    rules: tuple[str, ...],
-    design: str | None,
-    encoding: str | None,
-    waivers: str | None,
-    on: date | None,
-    save: tuple[str, ...],
-    gate: str,
-    complete: bool,
-) -> int:
+def review(netlist: tuple[str, ...], save: tuple[str, ...], gate: str, complete: bool, **files: Any) -> int:
     """Review every limiter of a board: what it does, what is wrong, what could not be checked.
 
     NETLIST is an EDIF 2 0 0 file; - reads standard input. Several netlists, and folders of them, are reviewed on all
@@ -56,15 +42,8 @@ def review(
     from protlint.report.digest import held_back
     from protlint.report.text import rendered_text
 
-    files = {
-        "limits": limits,
-        "parts": parts,
-        "parts_list": parts_list,
-        "waivers": waivers,
-        "rules": rules,
-        "on": on,
-    }
-    report, unread = _reviewed(netlist, files, {"design": design, "encoding": encoding})
+    reading = {name: files.pop(name) for name in ("design", "encoding")}
+    report, unread = _reviewed(netlist, files, reading)
     text = rendered_text(report, colour=colour_wanted())
     if len(unread) < report["summary"].get("boards", 1):
         faces.save(report, save)

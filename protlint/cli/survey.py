@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
+from typing import Any
 
 import click
 
@@ -21,16 +22,7 @@ Examples (`protlint demo bench` writes the files):
 @click.argument("netlist", type=PATH)
 @reading_options
 @click.option("--save", metavar="LIMITS.toml", type=PATH, help="Begin a limits file, with blanks for what is not known.")
-def survey(
-    netlist: str,
-    limits: str | None,
-    parts: tuple[str, ...],
-    parts_list: str | None,
-    rules: tuple[str, ...],
-    design: str | None,
-    encoding: str | None,
-    save: str | None,
-) -> int:
+def survey(netlist: str, save: str | None, **reading: Any) -> int:
     """Show what was read of a board, each limiter found on it, and what is missing.
 
     NETLIST is an EDIF 2 0 0 file; - reads standard input.
@@ -41,15 +33,7 @@ def survey(
     from protlint.report.survey import survey as surveyed
     from protlint.report.survey_text import rendered_survey
 
-    review = pipeline.review(
-        netlist,
-        limits=limits,
-        parts=parts,
-        parts_list=parts_list,
-        rules=rules,
-        design=design,
-        encoding=encoding,
-    )
+    review = pipeline.review(netlist, **reading)
     text = rendered_survey(surveyed(review), colour=colour_wanted())
     if save is not None:
         write_whole(save, rendered_skeleton(review))

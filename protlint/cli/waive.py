@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import difflib
 from datetime import date
+from typing import Any
 
 import click
 
@@ -27,20 +28,7 @@ Example (`protlint demo bench` writes the files):
 @click.option("--until", metavar="DATE", callback=as_date, help="The last day on which it is accepted.")
 @click.option("--waivers", metavar="FILE", type=PATH, default="waivers.toml", show_default=True, help="The file to add to.")
 @reading_options
-def waive(
-    netlist: str,
-    fingerprint: str,
-    reason: str,
-    by: str,
-    until: date | None,
-    waivers: str,
-    limits: str | None,
-    parts: tuple[str, ...],
-    parts_list: str | None,
-    rules: tuple[str, ...],
-    design: str | None,
-    encoding: str | None,
-) -> int:
+def waive(netlist: str, fingerprint: str, reason: str, by: str, until: date | None, waivers: str, **reading: Any) -> int:
     """Add a waiver for the finding FINGERPRINT of NETLIST; what stands in the waivers file stays as it is.
 
     The board is reviewed with the options given, so that only a finding that is there can be waived.
@@ -51,15 +39,7 @@ def waive(
     from protlint import pipeline
     from protlint.waivers import Waiver, add_waiver
 
-    review = pipeline.review(
-        netlist,
-        limits=limits,
-        parts=parts,
-        parts_list=parts_list,
-        rules=rules,
-        design=design,
-        encoding=encoding,
-    )
+    review = pipeline.review(netlist, **reading)
     names = [finding.fingerprint for finding in review.findings]
     if fingerprint not in names:
         near = difflib.get_close_matches(fingerprint, names, n=1)

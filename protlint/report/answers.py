@@ -63,7 +63,7 @@ def answers(item: ReviewedLimiter, ambients_degC: Sequence[float]) -> Document:
         else {
             **taken(advice, "own_damping", "worst_damping", "enough", "costs"),
             "effects": [taken(one, "part", "base_stop", "own_damping", "worst_damping") for one in advice.effects],
-            "fit": taken(advice.fit, "place", "farad", "instead_of", "own_damping", "worst_damping"),
+            "fits": [taken(fit, "place", "farad", "instead_of", "own_damping", "worst_damping") for fit in advice.fits],
         },
         "short": solution.short,
         "shorts": [{"net": one.node, "holds_A": [rounded(value) for value in one.holds_A]} for one in solution.shorts],

@@ -237,12 +237,12 @@ def _advice(advice: Document | None) -> Iterator[str]:
         return
     for one in advice["effects"]:
         yield f"without {one['part']}: damping {figure(one['own_damping'])}, {figure(one['worst_damping'])} at worst"
-    fit = advice["fit"]
-    if fit is not None:
-        instead = f" instead of {fit['instead_of']}" if fit["instead_of"] else ""
+    for fit in advice["fits"]:
+        ways = [f"{figure(fit['farad'], 'F')} {fit['place']}"] if fit["farad"] is not None else []
+        ways += [f"{fit['instead_of']} taken out"] if fit["instead_of"] else []
         then = f"damping {figure(fit['own_damping'])}, {figure(fit['worst_damping'])} at worst"
-        yield f"with {figure(fit['farad'], 'F')} {fit['place']}{instead}: {then}"
-    elif not advice["enough"]:
+        yield f"with {' and '.join(ways)}: {then}"
+    if not advice["fits"] and not advice["enough"]:
         yield "no capacitor in the usual places brings enough damping"
 
 

@@ -312,7 +312,7 @@ def _solution(holds: float, names: Mapping[str, str]) -> Solution:
             False,
             (Effect(names["base_stop"], True, 0.3, 0.25),),
             names["base_stop"],
-            Fit("collector to base of the shunt", ("DRV", "N1"), 1e-9, None, 0.7, 0.62),
+            (Fit("collector to base of the shunt", ("DRV", "N1"), 1e-9, None, 0.7, 0.62),),
         ),
         sensitivities=(Sensitivity(names["sense"], "R", -0.9),),
         loop=Loop(
