@@ -170,9 +170,10 @@ def _finding_rank(finding: Document) -> tuple[bool, int]:
     return finding["waived"] is not None, LEVELS.index(finding["level"])
 
 
-def _section_rank(section: Section) -> tuple[int, int]:
+def _section_rank(section: Section) -> tuple[int, int, bool]:
+    """Rank by verdict, then by the worst finding that counts; what does not even limit stands before what fails."""
     limiter, _, found = section
     level = min((LEVELS.index(finding["level"]) for finding in found if finding["waived"] is None), default=len(LEVELS))
     if limiter is not None:
-        return VERDICTS.index(limiter["verdict"]), level
-    return VERDICTS.index("fails" if level < LEVELS.index("note") else "passes"), level
+        return VERDICTS.index(limiter["verdict"]), level, True
+    return VERDICTS.index("fails" if level < LEVELS.index("note") else "passes"), level, False
