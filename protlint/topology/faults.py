@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 
 from protlint.board.assemble import is_link
 from protlint.board.graph import Board
@@ -17,15 +17,18 @@ from protlint.topology.terms import MIRROR, Cure
 Connection = tuple[str, str]
 """A part's id and the role of its pin."""
 
+STOPS = ("others.base-stop", "others.gate-stop")
+"""The roles of a resistor between the drive and a pass device."""
+
 
 def find_faults(index: Index, matches: Sequence[Match], rules: Rules, limiters: Sequence[Limiter]) -> tuple[FaultMatch, ...]:
     """Return the faults of a board, one a shunt, in board order of the shunts, from the matches of fault patterns."""
     sound = {role: _claimed(limiters, role) for role in ("shunt", "pass", "driver")}
     carriers, shunts = sound["pass"] | sound["driver"], sound["shunt"]
     found: dict[tuple[int, ...], Match] = {}
-    for match in sorted(
-        matches, key=lambda one: (-one.required, -rules.resolved[one.pattern.rule].rule.precedence, one.key)
-    ):
+    for match in sorted(matches, key=lambda one: _rank(one, rules)):
+        if not _touches_the_sense(match, index):
+            continue
         its_shunts = set(match.elements["shunt"])
         its_carriers = {*match.elements["pass"], *match.elements.get("driver", ())}
         # A carrier of a sound limiter has its shunt; what carries the load in one limiter, right or wrong, shunts no other.
@@ -35,6 +38,32 @@ def find_faults(index: Index, matches: Sequence[Match], rules: Rules, limiters: 
         carriers |= its_carriers
         shunts |= its_shunts
     return tuple(_fault(found[shunt], index, rules) for shunt in sorted(found))
+
+
+def _rank(match: Match, rules: Rules) -> tuple[object, ...]:
+    """Return a sort key: most required parts first, then the rule's precedence.
+
+    A resistor before the pass device counts for nothing and comes last: with no collector to tell where the drive is, that
+    is as likely the drive's own.
+    """
+    stops = sum(len(match.elements.get(role, ())) for role in STOPS)
+    return stops - match.required, -rules.resolved[match.pattern.rule].rule.precedence, stops, match.key
+
+
+def _touches_the_sense(match: Match, index: Index) -> bool:
+    """Tell whether a match's other parts are on both nets that the netlist joins its sense resistance to.
+
+    Where a link makes one net of the two, any limiter at the far end would fit otherwise.
+    """
+    board = index.board
+
+    def wired(elements: Iterable[int]) -> set[int]:
+        parts = (board.parts[part].part for element in elements for part in board.elements[element].parts)
+        return {pin.net for part in parts for pin in part.pins}
+
+    sense = match.elements.get("sense", ())
+    shorted = all(len(set(index.terminals[element].values())) == 1 for element in sense)
+    return not shorted or wired(sense) <= wired(match.own - set(sense))
 
 
 def _claimed(limiters: Sequence[Limiter], role: str) -> set[int]:

@@ -157,6 +157,8 @@ class Planner:
             count = task.clauses[place].count
             flag = FREE if known & free else CROWD if known & crowd else RAIL
             if known == join:
+                if flag == RAIL and _is_needed(task.clauses[place]) and join & (join - 1):
+                    return None  # what lies between two supplies belongs to anybody and nobody
                 # Whether something is between two nets is asked first, unless it takes a long walk or a crowd to tell.
                 at_once = flag == FREE and (count is None or count[1] == 1)
                 option = (0 if at_once else 1, flag, 0 if at_once else LONG, numbers[place], place)
