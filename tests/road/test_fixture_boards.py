@@ -27,6 +27,11 @@ def test_the_clean_board_gives_no_warning_and_no_error() -> None:
     assert [one for one in found.findings if one.level != "note"] == []
 
 
+def test_the_clean_board_leaves_nothing_unchecked() -> None:
+    found = reviewed("clean", "pier-lamps.edf")
+    assert {one.limiter.id: one.not_checked for one in found.limiters} == {"Q11": (), "Q21": (), "Q31": ()}
+
+
 def test_every_planted_fault_is_named_and_nothing_else() -> None:
     found = reviewed("demo", "slipway-lamps.edf")
     assert {(one.limiter, one.check, one.level) for one in found.findings} == PLANTED
