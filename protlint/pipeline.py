@@ -224,6 +224,7 @@ def _review_limiter(whole: _Whole, limiter: Limiter) -> tuple[ReviewedLimiter, C
         differences=whole.differences,
         parts_by_id=whole.parts_by_id,
         known=whole.known,
+        solved=whole.solved,
     )
     findings: list[Finding] = []
     not_checked = [NotChecked(what, case.limits_key(key) if key == "output" else key) for what, key in solution.not_checked]

@@ -17,6 +17,7 @@ from protlint.partdata.book import Figure
 from protlint.solve.bench import Bench
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.conditions import Condition, Known, solve_under
+from protlint.solve.memo import Memo
 from protlint.solve.solution import Currents, Point, Solution
 from protlint.toml_text import toml_key
 from protlint.topology.limiter import Limiter
@@ -49,7 +50,8 @@ class Case:
     parts_by_id: Mapping[str, BoardPart] = field(default_factory=dict)
     assumptions: list[str] = field(default_factory=list)
     known: Known = field(default_factory=Known)
-    """Points that were solved under stated conditions for this review, equal ones once."""
+    solved: Memo = field(default_factory=Memo)
+    """What was solved for this review, equal circuits once: points under stated conditions, and whole solutions."""
 
     @property
     def circuit(self) -> Circuit:

@@ -70,7 +70,7 @@ def resolve(case: Case, factor: float) -> Solution:
 
 def solve_again(case: Case, circuit: Circuit) -> Solution:
     """Solve a changed circuit at the case's ambients."""
-    return solve(circuit, case.limits.ambient_degC)
+    return solve(circuit, case.limits.ambient_degC, memo=case.solved)
 
 
 def meets(solution: Solution, carry_A: float | None, cap_A: float | None) -> bool:

@@ -12,7 +12,7 @@ import json
 import tempfile
 from collections.abc import Mapping
 from dataclasses import replace
-from functools import cache
+from functools import cache, lru_cache
 from pathlib import Path
 from typing import Any
 
@@ -113,14 +113,25 @@ def reviewed(
     listed: str | None = None,
     twice: tuple[PinOnTwoNets, ...] = (),
 ) -> Review:
-    """Return the review of a board; ``listed`` is a parts list, ``twice`` pins that the file joins to two nets."""
+    """Return the review of a board; ``listed`` is a parts list, ``twice`` pins that the file joins to two nets.
+
+    Equal ones are reviewed once.
+    """
+    limits_text = None if tables is None else toml(tables)
+    return _reviewed(board, limits_text, toml(part_data() if data is None else data), listed, twice)
+
+
+@lru_cache(maxsize=512)
+def _reviewed(
+    board: str, limits_text: str | None, parts: str, listed: str | None, twice: tuple[PinOnTwoNets, ...]
+) -> Review:
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
         known = {name: row.thresholds.keys() for name, row in catalogue().items()}
-        limits_file = None if tables is None else _written(folder / "limits.toml", toml(tables))
+        limits_file = None if limits_text is None else _written(folder / "limits.toml", limits_text)
         desk = Desk(
             limits=Limits() if limits_file is None else load_limits(limits_file, known_checks=known),
-            book=load_book([_written(folder / "parts.toml", toml(part_data() if data is None else data))]),
+            book=load_book([_written(folder / "parts.toml", parts)]),
             rules=rules(),
             catalogue=catalogue(),
             parts_list=None if listed is None else read_parts_list(_written(folder / "parts.csv", listed)),
