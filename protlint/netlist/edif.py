@@ -154,7 +154,8 @@ class _Reader(FormParser):
                 line, column = self.places.at(inner_at)
                 message = f"({outer} ...) is never closed; it is still open where ({inner} ...) begins at {line}:{column}"
                 return self.places.error(message, outer_at)
-        return self.places.error(f"({open_lists[-1][1]} ...) is never closed: the file ends inside it", open_lists[-1][0])
+        offset, head = open_lists[-1]
+        return self.places.error(f"({head or ''} ...) is never closed: the file ends inside it", offset)
 
     def _name(self, form: Form, position: int = 1) -> Name:
         """Return the name that a form defines, and note what EDIF does not allow in it."""
@@ -181,7 +182,7 @@ class _Reader(FormParser):
         if len(dimensions) != len(sizes) or not 1 <= len(dimensions) <= DIMENSIONS_LIMIT or min(dimensions) < 1:
             raise form.error(f"an array needs its number of elements, 1 or more, in up to {DIMENSIONS_LIMIT} dimensions")
         if prod(dimensions) > ARRAY_LIMIT:
-            raise form.error(f"an array of {prod(dimensions)} elements; protlint reads arrays of up to {ARRAY_LIMIT}")
+            raise form.error(f"an array of more than {ARRAY_LIMIT} elements, the most that is read")
         return dimensions
 
     def _properties(self, found: Mapping[str, Sequence[Form]], origin: Origin) -> tuple[Property, ...]:

@@ -22,19 +22,13 @@ def has_contents(view: View) -> bool:
     return view.contents is not None and any(sheet.instances or sheet.nets for sheet in view.contents.sheets)
 
 
-def choose_view(cell: Cell, wanted: str | None, *, any_kind: bool = False) -> tuple[View | None, bool]:
-    """Return the view of a cell to go by, and whether its contents count.
+def best_inside(cell: Cell, *, any_kind: bool = False) -> View | None:
+    """Return the view of a cell whose contents count where no reference names one: NETLIST before SCHEMATIC.
 
-    The one wanted, if it has contents; else the best with contents, NETLIST before SCHEMATIC; else the one wanted or the
-    first, as a leaf. ``any_kind`` takes contents in a view of any kind as a last resort.
+    ``any_kind`` takes contents in a view of any kind as a last resort.
     """
-    named = None if wanted is None else Scope((view.name.identifier, view) for view in cell.views).find(wanted)
-    if named is not None and has_contents(named):
-        return named, True
     inside = [view for view in cell.views if has_contents(view) and (any_kind or view.kind in _KINDS_OF_CONTENTS)]
-    if inside:
-        return min(inside, key=lambda view: _KINDS_OF_CONTENTS.get(view.kind, 2)), True
-    return named or next(iter(cell.views), None), False
+    return min(inside, key=lambda view: _KINDS_OF_CONTENTS.get(view.kind, 2), default=None)
 
 
 class Block:
@@ -44,11 +38,11 @@ class Block:
     they are wired. ``children`` holds, sheet by sheet, the block that each instance places, ``levels`` how deep they go.
     """
 
-    def __init__(self, cell: Cell, library: Library, view: View | None, budget: Budget, *, leaf: bool) -> None:
+    def __init__(self, cell: Cell, library: Library, view: View | None, ports: Ports, budget: Budget, *, leaf: bool) -> None:
         self.cell = cell
         self.library = library
         self.view = view
-        self.ports = Ports(each.ports for each in cell.views)
+        self.ports = ports
         self.contents: Contents | None = None if leaf or view is None else view.contents
         self.children: list[list[Block]] = []
         self.levels = 0
@@ -72,6 +66,16 @@ class Block:
         return max((len(" ".join(port.designators).split()) for port in ports), default=1)
 
 
+class _KnownCell:
+    """What is worked out once of a cell that is referred to: its views by name, its ports, its blocks by view."""
+
+    def __init__(self, cell: Cell) -> None:
+        self.views = Scope((view.name.identifier, view) for view in cell.views)
+        self.ports = Ports(view.ports for view in cell.views)
+        self.best = {any_kind: best_inside(cell, any_kind=any_kind) for any_kind in (False, True)}
+        self.blocks: dict[tuple[int, bool], Block] = {}
+
+
 class Directory:
     """All cells of a file, to look up what references mean."""
 
@@ -81,9 +85,8 @@ class Directory:
         self._notes = notes
         self._libraries = Scope((library.name.identifier, library) for library in edif.libraries)
         self._cells = {id(each): Scope((cell.name.identifier, cell) for cell in each.cells) for each in edif.libraries}
-        self._blocks: dict[tuple[int, int, bool], Block] = {}
-        self._chosen: dict[tuple[int, str | None, bool], tuple[Block, bool]] = {}
-        self._anywhere: dict[str, tuple[Cell, Library] | None] = {}
+        self._known: dict[int, _KnownCell] = {}
+        self._everywhere: Scope[tuple[Cell, Library]] | None = None
         self._unknown: dict[str, Block] = {}
 
     def find(self, cell: str, library: str | None, here: Library | None) -> tuple[Cell, Library] | None:
@@ -94,25 +97,28 @@ class Directory:
 
     def find_anywhere(self, cell: str) -> tuple[Cell, Library] | None:
         """Return the first cell of a name in any library."""
-        if cell not in self._anywhere:
-            found = (self.find(cell, None, each) for each in self.edif.libraries)
-            self._anywhere[cell] = next(filter(None, found), None)
-        return self._anywhere[cell]
+        if self._everywhere is None:
+            cells = ((each, library) for library in self.edif.libraries for each in library.cells)
+            self._everywhere = Scope((each.name.identifier, (each, library)) for each, library in cells)
+        return self._everywhere.find(cell)
 
     def block(self, cell: Cell, library: Library, wanted: str | None, offset: int, *, any_kind: bool = False) -> Block:
-        """Return a cell with the view to go by chosen; noted at ``offset`` where the one wanted is absent."""
-        choice = (id(cell), wanted, any_kind)
-        if choice not in self._chosen:
-            view, inside = choose_view(cell, wanted, any_kind=any_kind)
-            key = (id(cell), id(view), inside)
-            if key not in self._blocks:
-                self._blocks[key] = Block(cell, library, view, self.budget, leaf=not inside)
-            present = wanted is None or Scope((each.name.identifier, each) for each in cell.views).find(wanted) is not None
-            self._chosen[choice] = self._blocks[key], present
-        block, present = self._chosen[choice]
-        if not present:
+        """Return a cell with the view to go by chosen; noted at ``offset`` where the one wanted is absent.
+
+        The view wanted, if it has contents; else the best with contents; else the one wanted or the first, as a leaf.
+        """
+        known = self._known.get(id(cell))
+        if known is None:
+            known = self._known[id(cell)] = _KnownCell(cell)
+        named = None if wanted is None else known.views.find(wanted)
+        if wanted is not None and named is None:
             self._notes.add("view", offset, f"{wanted} of the cell {cell.name.text}")
-        return block
+        inside = named if named is not None and has_contents(named) else known.best[any_kind]
+        view = inside or named or next(iter(cell.views), None)
+        key = (id(view), inside is not None)
+        if key not in known.blocks:
+            known.blocks[key] = Block(cell, library, view, known.ports, self.budget, leaf=inside is None)
+        return known.blocks[key]
 
     def meant(self, instance: Instance, inside: Block) -> Block:
         """Return the block that an instance inside another block places.
@@ -141,7 +147,7 @@ class Directory:
         if key not in self._unknown:
             cell = Cell(Name(name, name.removeprefix("&")), "generic", (), (), 0)
             home = self._libraries.find(library) or Library(Name(library, library.removeprefix("&")), True, (), 0)
-            self._unknown[key] = Block(cell, home, None, self.budget, leaf=True)
+            self._unknown[key] = Block(cell, home, None, Ports(), self.budget, leaf=True)
         return self._unknown[key]
 
     def bottom_up(self, top: Block) -> list[Block]:

@@ -214,9 +214,9 @@ LIMITS = {
     "a large array of instances": (placed("(array R 60000)", "R") * 40, f"{ELEMENTS_LIMIT} elements"),
     "whole arrays joined over and over": (placed("(array R 60000)", "R") + net("X", *["R.A"] * 40), f"{ELEMENTS_LIMIT} el"),
     "arrays of nets": ("".join(net(f"(array N{number} 60000)") for number in range(40)), f"{ELEMENTS_LIMIT} elements"),
-    "an array past its own limit": (net(f"(array N {ARRAY_LIMIT + 1})"), f"up to {ARRAY_LIMIT}"),
+    "an array past its own limit": (net(f"(array N {ARRAY_LIMIT + 1})"), f"more than {ARRAY_LIMIT} elements"),
     "an array of too many dimensions": (net("(array N 2 2 2 2 2)"), "4 dimensions"),
-    "an array of more than any memory holds": (placed(f"(array R {2 * 10**9})", "R"), "2000000000 elements"),
+    "an array of more than any memory holds": (placed(f"(array R {2 * 10**9})", "R"), f"more than {ARRAY_LIMIT} elements"),
 }
 
 
