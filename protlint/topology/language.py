@@ -9,10 +9,11 @@ from pathlib import Path
 from protlint.sources import FileError, data_folder, read_bytes, shown_name
 from protlint.topology.describe import describe
 from protlint.topology.fitting import plans_for
-from protlint.topology.flatten import Pattern, Resolved, check_pattern, flatten, resolve
+from protlint.topology.flatten import Pattern, Resolved, flatten, resolve
 from protlint.topology.mistakes import Mistakes, RuleErrors
 from protlint.topology.plan import Plans
 from protlint.topology.read import read_rule_file
+from protlint.topology.slips import check_pattern
 from protlint.topology.terms import Rule, Shape
 
 __all__ = ["Described", "RuleErrors", "Rules", "load_rules", "read_rules"]
