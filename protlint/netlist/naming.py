@@ -104,11 +104,10 @@ def _are_sections(sections: Sequence[str | None], pins: Sequence[Sequence[Pin]],
     holders: Counter[str] = Counter()
     node_of: dict[str, int] = {}
     for pin in (pin for each in pins for pin in each):
-        key = pin.number or pin.name
-        holders[key] += 1
-        if node_of.setdefault(key, pin.net) != pin.net:
+        if pin.number is None or node_of.setdefault(pin.number, pin.net) != pin.net:
             return False
-    return all(any(holders[pin.number or pin.name] == 1 for pin in each) for each in pins)
+        holders[pin.number] += 1
+    return all(any(holders[pin.number or ""] == 1 for pin in each) for each in pins)
 
 
 def _unique(

@@ -157,6 +157,28 @@ def test_a_blocks_port_on_two_nets_is_one_node() -> None:
     assert ["a block's port on two nets" in each.message for each in netlist.warnings] == [True]
 
 
+def test_one_designator_on_parts_of_different_cells() -> None:
+    """A relay's coil and contact are one package by their pin numbers; a transistor and a diode are two parts."""
+    cells = (
+        cell("COIL", interface='(port P (designator "1")) (port N (designator "8"))')
+        + cell("CONTACT", interface='(port A (designator "3")) (port B (designator "4"))')
+        + cell("NPN", interface="(port B) (port C) (port E)")
+        + cell("DIODE", interface="(port A) (port K)")
+    )
+    contents = (
+        placed("I1", "COIL", '(designator "K1")')
+        + placed("I2", "CONTACT", '(designator "K1")')
+        + placed("I3", "NPN", '(designator "Q1")')
+        + placed("I4", "DIODE", '(designator "Q1")')
+        + net("N1", "I1.P", "I2.A", "I3.B", "I4.A")
+        + net("N2", "I1.N", "I2.B", "I3.C", "I4.K")
+    )
+    netlist = read(board(contents, cells=cells))
+    assert [part.id for part in netlist.parts] == ["K1#1", "K1#2", "Q1#1", "Q1#2"]
+    assert [(each.designator, each.parts) for each in netlist.duplicate_designators] == [("Q1", (2, 3))]
+    assert netlist.facts["sections"] == "2 parts are sections of 1 packages"
+
+
 def test_a_part_whose_cell_joins_pins_inside() -> None:
     jumper = cell("J", interface="(port A) (port B) (port C) (joined (portRef A) (portRef B))")
     contents = placed("J1", "J") + net("N1", "J1.A") + net("N2", "J1.B") + net("N3", "J1.C")
