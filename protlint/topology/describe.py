@@ -2,22 +2,45 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 
 from protlint.quantities.units import format_quantity
-from protlint.topology.terms import MANY, Body, Clause, Each, Either, Item, ShapeUse, Test
+from protlint.topology.terms import MANY, Body, Clause, Each, Either, Item, Shape, ShapeUse, Test
 
 
 def describe(body: Body, indent: str = "") -> Iterator[str]:
-    """Yield a line for every clause; alternatives and groups are indented below their own line."""
+    """Yield a line for every clause and test, what need not be there last; groups are indented below their own line."""
     for item in body.items:
         yield from _item(item, indent)
-    for optional in body.may:
-        lines = list(_item(optional, indent))
-        yield f"{lines[0]} (where present)"
-        yield from lines[1:]
     for test in body.where:
         yield f"{indent}where {_question(test)}"
+    if body.may:
+        yield f"{indent}and, where present:"
+    for optional in body.may:
+        yield from _item(optional, f"{indent}  ")
+
+
+def describe_shapes(body: Body, shapes: Mapping[str, Shape]) -> Iterator[str]:
+    """Yield what the shapes are that a body uses, and those inside them, each once: what it is, and its variants."""
+    waiting, seen = list(_shapes_in(body)), set[str]()
+    for name in waiting:
+        shape = shapes.get(name)
+        if shape is None or name in seen:
+            continue
+        seen.add(name)
+        yield f"{name}: {shape.says}"
+        yield f"  one of {', '.join(variant for variant, _ in shape.variants)}"
+        for _, variant_body in shape.variants:
+            waiting += _shapes_in(variant_body)
+
+
+def _shapes_in(body: Body) -> Iterator[str]:
+    for item in body.items:
+        if isinstance(item, ShapeUse):
+            yield item.shape
+        elif isinstance(item, Either):
+            for _, branch in item.branches:
+                yield from _shapes_in(branch)
 
 
 def _item(item: Item, indent: str) -> Iterator[str]:
@@ -27,8 +50,14 @@ def _item(item: Item, indent: str) -> Iterator[str]:
             yield f"{indent}  {name}:"
             yield from describe(branch, f"{indent}    ")
     elif isinstance(item, Each):
-        most = "more" if item.most == MANY else str(item.most)
-        yield f"{indent}each of {item.least} to {most}:" if item.most != MANY else f"{indent}each of {item.least} or {most}:"
+        often = (
+            "any number of times"
+            if item.least == 0
+            else "once or more"
+            if item.least == 1
+            else f"{item.least} times or more"
+        )
+        yield f"{indent}{often if item.most == MANY else f'{item.least} to {item.most} times'}:"
         for clause in item.clauses:
             yield from _item(clause, f"{indent}  ")
     elif isinstance(item, ShapeUse):
@@ -45,7 +74,7 @@ def _clause(clause: Clause) -> str:
     elif clause.count is None:
         text = f"{what} from {clause.ends[0]} to {clause.ends[1]}"
     else:
-        text = f"{_number(clause.count)} {what} in a row from {clause.ends[0]} to {clause.ends[1]}"
+        text = f"{_number(clause.count, what)} from {clause.ends[0]} to {clause.ends[1]}"
     if clause.along:
         text += ", anode first"
     if clause.under_ohm is not None:
@@ -57,11 +86,14 @@ def _clause(clause: Clause) -> str:
     return text
 
 
-def _number(count: tuple[int, int]) -> str:
+def _number(count: tuple[int, int], what: str) -> str:
     least, most = count
+    many = f"{what}s in a row" if " or " not in what else f"of {what} in a row"
+    if most == 1:
+        return what if least else f"no more than one {what}"
     if most == MANY:
-        return "any number of" if least == 0 else f"{least} or more"
-    return str(least) if least == most else f"{least} to {most}"
+        return f"any number of {many}" if least == 0 else f"{least} or more {many}"
+    return f"{least} {many}" if least == most else f"{least} to {most} {many}"
 
 
 _WORDS = {

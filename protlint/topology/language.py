@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 
 from protlint.sources import FileError, data_folder, read_bytes, shown_name
-from protlint.topology.describe import describe
+from protlint.topology.describe import describe, describe_shapes
 from protlint.topology.fitting import plans_for
 from protlint.topology.flatten import Pattern, Resolved, flatten, resolve
 from protlint.topology.mistakes import Mistakes, RuleErrors
@@ -113,7 +114,7 @@ def read_rules(texts: Mapping[str, str]) -> Rules:
                 check_pattern(pattern, one, mistakes)
         patterns += flat
     mistakes.settle()
-    described = {name: _described(one) for name, one in resolved.items()}
+    described = {name: _described(one, shapes) for name, one in resolved.items()}
     sound = tuple(one for one in patterns if not one.fault)
     faults = tuple(one for one in patterns if one.fault)
     return Rules(
@@ -126,15 +127,15 @@ def read_rules(texts: Mapping[str, str]) -> Rules:
     )
 
 
-def _described(one: Resolved) -> Described:
+def _described(one: Resolved, shapes: Mapping[str, Shape]) -> Described:
     rule = one.rule
     return Described(
         name=rule.name,
-        says=rule.says,
+        says=re.sub(r"\{(?:(others)\.)?([^{}]+)\}", lambda word: f"{'another' if word[1] else 'the'} {word[2]}", rule.says),
         cited=rule.cited,
         used=rule.used,
         drawing=rule.drawing,
-        clauses=tuple(describe(one.body)),
+        clauses=(*describe(one.body), *describe_shapes(one.body, shapes)),
         builds_on=one.ancestors,
         both_polarities=one.mirrored,
         file=rule.file,

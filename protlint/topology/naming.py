@@ -39,6 +39,7 @@ def _first_part(match: Match, role: str, board: Board) -> str:
 
 
 def _part_ids(board: Board, elements: Mapping[str, tuple[int, ...]], role: str) -> tuple[str, ...]:
+    """Return the part ids of a report role: in board order, but the sensed pass device first."""
     head = role.replace("_", "-")
     parts = [
         part
@@ -47,7 +48,8 @@ def _part_ids(board: Board, elements: Mapping[str, tuple[int, ...]], role: str) 
         for element in found
         for part in board.elements[element].parts
     ]
-    return tuple(board.parts[part].id for part in dict.fromkeys(parts))
+    first = parts[:1] if role == "pass" else []
+    return tuple(board.parts[part].id for part in dict.fromkeys((*first, *sorted(parts))))
 
 
 def _add_fuses(match: Match, index: Index) -> None:

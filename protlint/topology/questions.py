@@ -82,13 +82,14 @@ def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int
     raise KeyError(test.name)
 
 
-def _no_input(net: int, bound: Collection[int], index: Index, own: Collection[int]) -> bool:
+def _no_input(net: int, bound: Set[int], index: Index, own: Collection[int]) -> bool:
     """Tell whether no capacitor brings a signal onto a net from outside the match."""
+    held = bound | index.voltage_V.keys()
     for element, _ in index.at[net]:
         if index.kind[element] == "capacitor" and element not in own:
-            others = set(index.terminals[element].values()) - {net}
-            if not all(other in bound or other in index.voltage_V for other in others):
-                return False
+            for other in set(index.terminals[element].values()) - {net} - held:
+                if not _leads_only_to(other, held, index, own):
+                    return False
     return True
 
 

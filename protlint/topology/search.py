@@ -24,6 +24,9 @@ class State(NamedTuple):
     inside: tuple[int, ...] = ()
 
 
+PASSIVE = frozenset({"resistor", "capacitor"})
+"""What drives nothing: a net that holds only these is a joint on the way to what drives it."""
+
 Growth = tuple[tuple[int, ...], Elements, tuple[int, ...]]
 """What a step adds: nets newly bound, elements found, nets inside the path found."""
 
@@ -193,8 +196,9 @@ def _ways(step: PathStep, state: State, index: Index, start: int, target: int | 
                 is_end = target is None and length >= step.least and _is_free_end(net, step, state)
                 goes_on = net not in bound and index.is_open(net)
                 if step.until_driven:
-                    goes_on = goes_on and _is_joint(index, net)
-                    is_end = is_end and not goes_on
+                    behind = [index.kind[one] for one, _ in index.at[net] if one != element]
+                    goes_on = goes_on and "resistor" in behind and PASSIVE.issuperset(behind)
+                    is_end = is_end and not goes_on and (not behind or set(behind) != {"capacitor"})
                 if is_end:
                     yield (net,), elements, way.nets[1:]
                 if goes_on:
@@ -223,12 +227,6 @@ def _onward(
         other = ends[1] if forward else ends[0]
         if other not in passed:
             yield element, other
-
-
-def _is_joint(index: Index, net: int) -> bool:
-    """Tell whether a net holds only resistors and capacitors, two resistors or more: a joint, and no source of a drive."""
-    kinds = [index.kind[element] for element, _ in index.at[net]]
-    return kinds.count("resistor") > 1 and all(kind in ("resistor", "capacitor") for kind in kinds)
 
 
 _GROW: Mapping[type[Step], Callable[..., Iterable[Growth]]] = {

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from pathlib import Path
 
 import pytest
@@ -11,6 +12,7 @@ from protlint.topology.language import Rules, load_rules, read_rules
 from protlint.topology.match import find_limiters
 from protlint.topology.mistakes import RuleErrors
 from tests.support.boards import board
+from tests.support.paths import ROOT
 
 SOUND = """(topology plain
   (says "a limiter")
@@ -173,6 +175,14 @@ def test_a_users_folder_that_is_missing_empty_or_broken_is_said(tmp_path: Path) 
     with pytest.raises(RuleErrors) as caught:
         load_rules([tmp_path])
     assert {one.file for one in caught.value.mistakes} == {"broken.rule"}
+
+
+def test_the_examples_of_the_readme_are_rules() -> None:
+    text = (ROOT / "rules" / "README.md").read_text(encoding="utf-8")
+    blocks = re.findall(r"(?:^(?:    .*)?\n)+", text, re.MULTILINE)
+    code = [block for block in blocks if block.lstrip().startswith(("(topology", "(shape"))]
+    rules = read_rules({f"example {place}": block.split("(pass carrier")[0] for place, block in enumerate(code)})
+    assert list(rules.topologies) == ["watched-emitter", "divided-emitter"]
 
 
 def test_every_rule_of_our_own_says_what_it_is_and_where_it_comes_from() -> None:

@@ -90,3 +90,92 @@ def test_links_banks_and_chains_do_not_hide_it() -> None:
     text = SINK.replace("resistor R2 SNS GND =2", "resistor R2 SNS X =2\nresistor R4 X GND2 =1\nresistor R5 X GND2 =1")
     limiter, _ = only(text + "link NT1 GND GND2")
     assert limiter.roles["sense"] == ("R2", "R4", "R5")
+
+
+def test_complementary_halves_are_a_pair_and_like_channels_a_set() -> None:
+    halves = FOLLOWER + swapped(FOLLOWER).replace("Q1", "Q2").replace("R1", "R2").replace(" B", " BP").replace(" N", " NP")
+    _, found = found_on(halves.replace("DRV", "VAS").replace("connector J1 1=OUT 2=GND", ""))
+    assert [(one.id, one.polarity) for one in found.limiters] == [("Q10", "n"), ("Q20", "p")]
+    assert found.pairs == (("Q10", "Q20"),)
+    assert found.sets == ()
+    channels = "".join(
+        SINK.replace("Q", f"Q{n}").replace("R", f"R{n}").replace("OUT", f"OUT{n}").replace("BASE", f"BASE{n}")
+        .replace("SNS", f"SNS{n}").replace(" BS", f" BS{n}").replace("J1", f"J{n}").replace("U1", f"U{n}")
+        for n in (1, 2, 3)
+    ).replace("R32 SNS3 GND =2", "R32 SNS3 GND =3")  # fmt: skip
+    assert found_on(channels)[1].sets == (("Q11", "Q21", "Q31"),)
+
+
+def test_a_second_shunt_at_one_pass_device_is_a_limiter_of_its_own_name() -> None:
+    _, found = found_on(SINK + "resistor R4 SNS BS2 =470\nnpn Q3 BASE BS2 GND")
+    assert [one.id for one in found.limiters] == ["Q1", "Q1 (Q3)"]
+    assert [one.roles["base_stop"] for one in found.limiters] == [("R3",), ("R4",)]
+
+
+PLACES = {
+    "capacitor C1 BS GND": "base to emitter of the shunt",
+    "capacitor C1 BS BASE": "collector to base of the shunt",
+    "capacitor C1 BASE GND": "drive to far end",
+    "capacitor C1 BASE +12V": "drive to a supply",
+    "capacitor C1 BS +12V": "base of the shunt to a supply",
+    "capacitor C1 BS Z\nresistor R9 Z BASE": "collector to base of the shunt",
+    "capacitor C1 Z BASE\nresistor R9 Z BS": "collector to base of the shunt",
+    "resistor R9 BASE Z\ncapacitor C1 Z GND": "drive to far end",
+}
+
+
+@pytest.mark.parametrize("part", PLACES)
+def test_compensation_is_named_with_its_place(part: str) -> None:
+    limiter, _ = only(SINK + part)
+    assert set(limiter.roles["compensation"]) == ({"C1", "R9"} if "R9" in part else {"C1"})
+    assert limiter.places["C1"] == PLACES[part]
+
+
+def test_ground_counts_as_ground_where_the_far_end_is_the_output() -> None:
+    limiter, _ = only(FOLLOWER + "capacitor C1 B GND\ncapacitor C2 B OUT\ncapacitor C3 OUT GND")
+    assert limiter.roles["compensation"] == ("C1", "C2")
+    assert limiter.places == {"C1": "drive to ground", "C2": "drive to far end"}
+
+
+def test_what_else_fits_is_told() -> None:
+    text = FOLLOWER.replace("npn Q11 B N OUT", "npn Q11 B K OUT\nresistor R12 N K =100\nresistor R13 K GND =1000")
+    limiter, _ = only(text + "resistor R14 K OUT =1000")
+    assert limiter.topology == "foldback"
+    assert limiter.also_matched == ("preset-divider",)
+    assert limiter.roles["preset"] == ("R12", "R13", "R14")
+
+
+@pytest.mark.parametrize(
+    "spoiled",
+    [
+        SINK.replace("npn Q2 BASE BS GND", "npn Q2 BASE BS GND unfitted"),
+        SINK.replace("resistor R2 SNS GND =2", "resistor R2 SNS GND =2 unfitted"),
+        SINK.replace("resistor R2 SNS GND =2", "resistor R2 SNS GND =4700"),
+        SINK.replace("npn Q2 BASE BS GND", "npn Q2 FAULT BS GND"),
+        SINK.replace("npn Q2 BASE BS GND", "pnp Q2 BASE BS GND"),
+        SINK + "capacitor C9 BS INPUT\nconnector J9 1=INPUT",
+    ],
+)
+def test_what_is_no_limiter_is_not_found(spoiled: str) -> None:
+    assert found_on(spoiled)[1].limiters == ()
+
+
+def test_an_unreadable_sense_value_does_not_hide_a_limiter() -> None:
+    limiter, _ = only(SINK.replace("resistor R2 SNS GND =2", "resistor R2 SNS GND"))
+    assert limiter.roles["sense"] == ("R2",)
+
+
+def test_an_unnamed_rail_with_hundreds_of_parts_hides_nothing() -> None:
+    crowd = "\n".join(
+        f"resistor RX{n} VBULK NX{n} =10\nnpn QX{n} NX{n} NB{n} VBULK\nresistor RY{n} NB{n} VBULK" for n in range(99)
+    )
+    limiter, nets = only(SINK.replace("GND", "VBULK").replace("+12V", "VBULK2") + crowd)
+    assert (limiter.id, nets["far"]) == ("Q1", "VBULK")
+
+
+def test_the_order_of_the_file_changes_nothing_but_order() -> None:
+    lines = SINK.strip().splitlines()
+    for turn in range(1, len(lines)):
+        limiter, nets = only("\n".join(lines[turn:] + lines[:turn]))
+        assert limiter.roles == only(SINK)[0].roles
+        assert nets == only(SINK)[1]
