@@ -53,13 +53,14 @@ def report_in(path: Path) -> Any:
 def examples() -> list[str]:
     """Return the example commands of every help text, continued lines joined, in the order of the commands."""
     found = []
-    for name in ("demo", "survey", "rules", "review", "waive", "compare"):
+    for name in ("demo", "waive", "survey", "rules", "review", "compare"):
         text = (commands.commands[name].epilog or "").replace("\\\n", " ")
         found += [line.strip() for line in text.splitlines() if line.strip().startswith("protlint ")]
     return found
 
 
 def test_the_examples_of_every_help_text_work(tmp_path: Path) -> None:
+    """The board of one limiter stands in for the demo board, for speed, once the example that names a finding has run."""
     lines = examples()
     assert {line.split()[1] for line in lines} == set(commands.commands)
     for line in lines:
@@ -67,6 +68,8 @@ def test_the_examples_of_every_help_text_work(tmp_path: Path) -> None:
         assert done.returncode in (0, 1), f"{line}: {done.stderr}"
         assert done.stderr == "", line
         assert done.stdout
+        if line.startswith("protlint waive "):
+            (tmp_path / DEMO).write_text(lamp_netlist(), encoding="utf-8")
 
 
 def test_the_demo_says_what_to_run_and_that_works(tmp_path: Path) -> None:
