@@ -8,13 +8,12 @@ from dataclasses import dataclass
 
 from protlint.board.graph import BoardPart
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
-from protlint.checks.derating import derated, share_of
+from protlint.checks.derating import derated
 from protlint.checks.pass_device import Stress, heating
 from protlint.checks.safe_area import Bound, allowed, breakdown_share, curve_for, thermal_share
 from protlint.findings import NotChecked, WorkingLine
-from protlint.partdata.book import Figure
+from protlint.partdata.book import Figure, SafeArea
 from protlint.quantities import format_quantity, preferred
-from protlint.solve.solution import Point
 
 CHECK = "pass-outside-safe-area"
 
@@ -25,15 +24,22 @@ SOURCE = "log-log straight lines between the published corners; thermal bound ti
 
 
 @dataclass(frozen=True, slots=True)
-class Place:
-    """One point of the locus as a pass device sees it, with the bound that it comes nearest to or passes.
-
-    ``careful_only`` tells that it is outside only with the thermal derating taken for second breakdown as well.
-    """
+class Seen:
+    """One point of the locus as a pass device sees it: both devices of a Darlington part together."""
 
     stress: Stress
     voltage_V: float
     current_A: float
+
+
+@dataclass(frozen=True, slots=True)
+class Place:
+    """A point of the locus with the bound that it comes nearest to or passes, and the case's temperature there.
+
+    ``careful_only`` tells that it is outside only with the thermal derating taken for second breakdown as well.
+    """
+
+    seen: Seen
     case_degC: float
     ratio: float
     bound: Bound
@@ -43,97 +49,97 @@ class Place:
 
 def pass_outside_safe_area(case: Case) -> Iterator[Answer]:
     """Yield a finding for each pass device that leaves its safe operating area, at its worst point."""
-    points = list(locus_points(case))
     for part_id, _ in case.device_parts("pass"):
         part = case.part(part_id)
-        family = "mosfet" if part.kind in ("nmos", "pmos") else "bipolar"
-        voltage, current, peak = WALLS[family]
+        points = list(_along_the_locus(case, part))
+        if not points:
+            yield NotChecked(CHECK, "the locus at every ambient, which could not be solved")
+            continue
         places: list[Place] = []
-        for name, quantity in ((voltage, "voltage"), (_current_name(case, part_id, current, peak), "current")):
+        for quantity, name in _walls(case, part):
             may = case.allowed(part_id, name, quantity)
             if may is None:
                 yield NotChecked(CHECK, case.rating_key(part_id, name))
             else:
-                places.append(_at_the_wall(case, part, may, quantity, points))
-        found = _on_the_curve(case, part, points)
-        if isinstance(found, str):
-            yield NotChecked(CHECK, found)
+                places.append(_at_the_wall(case, may, quantity, points))
+        curve = _curve(case, part)
+        if isinstance(curve, str):
+            yield NotChecked(CHECK, curve)
         else:
-            places.append(found)
+            places.append(_on_the_curve(case, part, curve, points))
         worst = max(places, key=lambda place: (place.ratio > 1.0, not place.careful_only, place.ratio), default=None)
+        greatest_V = max(seen.voltage_V for seen in points)
         if worst is not None and worst.ratio > 1.0:
             yield _outside(case, part, worst)
-        elif not isinstance(found, str) and found.bound.at_most:
-            yield NotChecked(CHECK, f"{case.data_key(part_id, 'safe_area')} up to {format_quantity(found.voltage_V, 'V')}")
+        elif not isinstance(curve, str) and greatest_V > curve.points[-1][0]:
+            yield NotChecked(CHECK, f"{case.data_key(part_id, 'safe_area')} up to {format_quantity(greatest_V, 'V')}")
 
 
-def locus_points(case: Case) -> Iterator[Stress]:
+def _along_the_locus(case: Case, part: BoardPart) -> Iterator[Seen]:
     """Yield every point of the locus at every ambient, every tolerance set for the most current."""
+    names = case.devices_of(part.id)
     for row, points in case.at_ambients(case.solution.high_locus):
         for place, point in enumerate(points):
             at = f"with the output at {format_quantity(point.output_V, 'V')}" if place else "in the held short"
-            yield Stress(at, row.ambient_degC, point, case.lasts_s)
+            states = [point.states[name] for name in names]
+            yield Seen(
+                Stress(at, row.ambient_degC, point, case.lasts_s),
+                max(abs(state.voltage_V) for state in states),
+                sum(abs(state.current_A) for state in states),
+            )
 
 
-def _current_name(case: Case, part_id: str, name: str, peak: str) -> str:
-    """Return which current rating holds for the short: the peak's where the short is short enough for it."""
-    short_s = case.needs.short_s
-    brief = short_s is not None and short_s <= case.threshold(CHECK, "peak_lasts")
-    return peak if brief and case.rating(part_id, peak) is not None else name
+def _walls(case: Case, part: BoardPart) -> Iterator[tuple[str, str]]:
+    """Yield (quantity, rating) for voltage and current; a short that is brief enough is judged by the peak current."""
+    voltage, current, peak = WALLS["mosfet" if part.kind in ("nmos", "pmos") else "bipolar"]
+    brief = case.lasts_s <= case.threshold(CHECK, "peak_lasts")
+    yield "voltage", voltage
+    yield "current", peak if brief and case.rating(part.id, peak) is not None else current
 
 
-def _seen(case: Case, part: BoardPart, point: Point) -> tuple[float, float]:
-    """Return the voltage across a pass device and the current through it, both devices of a Darlington part together."""
-    states = [point.states[name] for name in case.devices_of(part.id) if name in point.states]
-    return max(abs(state.voltage_V) for state in states), sum(abs(state.current_A) for state in states)
-
-
-def _at_the_wall(case: Case, part: BoardPart, may: Figure, quantity: str, points: list[Stress]) -> Place:
+def _at_the_wall(case: Case, may: Figure, quantity: str, points: list[Seen]) -> Place:
     """Return the point that comes nearest to a voltage or current rating."""
     bound = Bound(may.value if quantity == "current" else 0.0, f"its {quantity} rating")
-    places = []
-    for stress in points:
-        voltage_V, current_A = _seen(case, part, stress.point)
-        ratio = (voltage_V if quantity == "voltage" else current_A) / may.value
-        places.append(Place(stress, voltage_V, current_A, stress.ambient_degC, ratio, bound, may.source))
-    return max(places, key=lambda place: place.ratio)
+    worst = max(points, key=lambda seen: seen.voltage_V if quantity == "voltage" else seen.current_A)
+    ratio = (worst.voltage_V if quantity == "voltage" else worst.current_A) / may.value
+    return Place(worst, worst.stress.ambient_degC, ratio, bound, may.source)
 
 
-def _on_the_curve(case: Case, part: BoardPart, points: list[Stress]) -> Place | str:
-    """Return the point that comes nearest to the published curve, or the key of what is missing."""
-    entry = part.entry
-    limit = case.rating(part.id, "tj_max")
-    if limit is None:
+def _curve(case: Case, part: BoardPart) -> SafeArea | str:
+    """Return the curve that holds for the short, or the key of what is missing."""
+    if case.rating(part.id, "tj_max") is None:
         return case.rating_key(part.id, "tj_max")
-    lasts_s = case.lasts_s
-    curve = curve_for(entry.safe_area if entry is not None else (), lasts_s, case.threshold(CHECK, "dc_from"))
+    curves = part.entry.safe_area if part.entry is not None else ()
+    curve = curve_for(curves, case.lasts_s, case.threshold(CHECK, "dc_from"))
     if curve is None:
-        kind = "dc" if math.isinf(lasts_s) else format_quantity(lasts_s, "s")
-        return f"{case.data_key(part.id, 'safe_area')} that lasts {kind}"
-    derating = case.limits.derating
-    shares = share_of(derating, part.kind, "power"), share_of(derating, part.kind, "current")
-    places: list[Place] = []
-    for stress in points:
-        voltage_V, current_A = _seen(case, part, stress.point)
-        case_degC = _case_degC(case, part, stress)
+        lasts = "dc" if math.isinf(case.lasts_s) else format_quantity(case.lasts_s, "s")
+        return f"{case.data_key(part.id, 'safe_area')} that lasts {lasts}"
+    return curve
+
+
+def _on_the_curve(case: Case, part: BoardPart, curve: SafeArea, points: list[Seen]) -> Place:
+    """Return the point that comes nearest to the published curve, or passes it most surely."""
+    limit = case.rating(part.id, "tj_max")
+    assert limit is not None
+    source = derated(case.limits.derating, part.kind, "current", curve.source)
+    left_at_limit = case.threshold(CHECK, "second_breakdown_left")
+    found: dict[bool, Place] = {}
+    for seen in points:
+        case_degC = _case_degC(case, part, seen.stress)
         left = thermal_share(case_degC, limit.value)
-        milder = breakdown_share(case_degC, limit.value, case.threshold(CHECK, "second_breakdown_left"))
-        if part.kind in ("nmos", "pmos"):
-            milder = left
+        milder = breakdown_share(case_degC, limit.value, left_at_limit) if part.kind not in ("nmos", "pmos") else left
         for breakdown_left, careful_only in ((milder, False), (left, True)):
             bound = allowed(
                 curve.points,
-                voltage_V,
+                seen.voltage_V,
                 thermal_left=left,
-                breakdown_left=breakdown_left * shares[1],
-                power_share=shares[0],
+                breakdown_left=breakdown_left * case.share(part.id, "current"),
+                power_share=case.share(part.id, "power"),
             )
-            ratio = current_A / bound.current_A if bound.current_A > 0.0 else math.inf
-            source = derated(derating, part.kind, "current", curve.source)
-            places.append(Place(stress, voltage_V, current_A, case_degC, ratio, bound, source, careful_only))
-    surely = max((place for place in places if not place.careful_only), key=lambda place: place.ratio)
-    carefully = max((place for place in places if place.careful_only), key=lambda place: place.ratio)
-    return surely if surely.ratio > 1.0 or carefully.ratio <= 1.0 else carefully
+            ratio = seen.current_A / bound.current_A if bound.current_A > 0.0 else math.inf
+            if careful_only not in found or ratio > found[careful_only].ratio:
+                found[careful_only] = Place(seen, case_degC, ratio, bound, source, careful_only)
+    return found[False] if found[False].ratio > 1.0 or found[True].ratio <= 1.0 else found[True]
 
 
 def _case_degC(case: Case, part: BoardPart, stress: Stress) -> float:
@@ -149,9 +155,9 @@ def _case_degC(case: Case, part: BoardPart, stress: Stress) -> float:
 
 
 def _outside(case: Case, part: BoardPart, worst: Place) -> Answer:
-    stress, ambient = worst.stress, format_quantity(worst.stress.ambient_degC, "degC")
+    stress, ambient = worst.seen.stress, format_quantity(worst.seen.stress.ambient_degC, "degC")
     lasts = "for ever" if math.isinf(stress.lasts_s) else f"for {format_quantity(stress.lasts_s, 's')}"
-    at = f"{format_quantity(worst.current_A, 'A')} at {format_quantity(worst.voltage_V, 'V')}"
+    at = f"{format_quantity(worst.seen.current_A, 'A')} at {format_quantity(worst.seen.voltage_V, 'V')}"
     careful = ", if second breakdown derates like its power" if worst.careful_only else ""
     return case.finding(
         CHECK,
@@ -159,8 +165,8 @@ def _outside(case: Case, part: BoardPart, worst: Place) -> Answer:
         f"allows{careful}",
         parts=(part.id,),
         working=(
-            WorkingLine("voltage across it", f"solved, {stress.condition}", worst.voltage_V, "V"),
-            WorkingLine("current", "solved, every tolerance set for the most", worst.current_A, "A"),
+            WorkingLine("voltage across it", f"solved, {stress.condition}", worst.seen.voltage_V, "V"),
+            WorkingLine("current", "solved, every tolerance set for the most", worst.seen.current_A, "A"),
             WorkingLine("case", "ambient + sink * power", worst.case_degC, "degC"),
             WorkingLine("allowed", f"by {worst.bound.by}, at that case", worst.bound.current_A, "A", worst.source),
             WorkingLine("current over allowed", "log-log between corners, derated", worst.ratio, "", SOURCE),
@@ -173,12 +179,13 @@ def _outside(case: Case, part: BoardPart, worst: Place) -> Answer:
 
 
 def _remedy(case: Case, part: BoardPart, worst: Place) -> str:
-    for quantity, value, unit in (("voltage", worst.voltage_V, "V"), ("current", worst.current_A, "A")):
+    seen = worst.seen
+    for quantity, value, unit in (("voltage", seen.voltage_V, "V"), ("current", seen.current_A, "A")):
         if worst.bound.by == f"its {quantity} rating":
-            needed = preferred(value / share_of(case.limits.derating, part.kind, quantity), "E24", "up")
+            needed = preferred(value / case.share(part.id, quantity), "E24", "up")
             return f"fit a device rated {format_quantity(needed, unit)} or more as {part.id}"
-    lasts = "dc" if math.isinf(worst.stress.lasts_s) else format_quantity(worst.stress.lasts_s, "s")
-    at = f"{format_quantity(preferred(worst.current_A, 'E24', 'up'), 'A')} at {format_quantity(worst.voltage_V, 'V')}"
+    lasts = "dc" if math.isinf(case.lasts_s) else format_quantity(case.lasts_s, "s")
+    at = f"{format_quantity(preferred(seen.current_A, 'E24', 'up'), 'A')} at {format_quantity(seen.voltage_V, 'V')}"
     return (
         f"fit a device as {part.id} whose safe area ({lasts}) allows {at} with its case at "
         f"{format_quantity(worst.case_degC, 'degC')}, or lower the limit to {1.0 / worst.ratio:.2g} of what it is"

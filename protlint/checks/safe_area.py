@@ -61,8 +61,8 @@ def allowed(
     if at_A is None:
         if voltage_V <= corners[0][0]:
             return by_power
-        beyond = Bound(corners[-1][1] * breakdown_left, "the curve's last corner", at_most=True)
-        return min(by_power, beyond, key=lambda bound: bound.current_A) if by_power.current_A < beyond.current_A else beyond
+        last_A = corners[-1][1] * breakdown_left
+        return Bound(min(by_power.current_A, last_A), "what is left at the curve's last corner", at_most=True)
     by_breakdown = Bound(at_A * breakdown_left, "second breakdown")
     return by_power if by_power.current_A <= by_breakdown.current_A else by_breakdown
 

@@ -17,6 +17,7 @@ from pathlib import Path
 from typing import Any
 
 from protlint.board.parts_list import read_parts_list
+from protlint.checks.case import Case
 from protlint.checks.catalogue import load_catalogue
 from protlint.findings import Finding
 from protlint.limits import Limits, load_limits
@@ -146,6 +147,12 @@ def the_one(review: Review) -> ReviewedLimiter:
     """Return the only limiter of a review."""
     (one,) = review.limiters
     return one
+
+
+def case_of(review: Review) -> Case:
+    """Return the case of a review's only limiter, as its checks were given it."""
+    one = the_one(review)
+    return Case(review.board, one.limiter, one.bench, one.solution, one.needs, review.limits, catalogue())
 
 
 def found(review: Review, check: str | None = None) -> list[Finding]:
