@@ -17,7 +17,7 @@ from protlint.solve.corners import extremes
 from protlint.solve.devices import Array, IntArray
 from protlint.solve.locus import PASS_V, Conditions, Loci, greatest, least_working, run_at, trace, working_edges
 from protlint.solve.nominal import Nominal, carried
-from protlint.solve.stage import Run, Stage, pass_power, pass_voltage
+from protlint.solve.stage import Run, Stage, pass_power, pass_voltage, short_voltage
 
 KINDS = ("begins", "holds", "carries", "most")
 
@@ -25,7 +25,7 @@ _CORNER_ROUNDS = 2
 _MOST_PROBES = (-0.25, -0.12, -0.06, -0.03, -0.015, 0.0, 0.015, 0.03, 0.06, 0.12, 0.25)
 """Where the greatest current is looked for around its nominal place, in shares of the locus."""
 _EDGE_V = 0.02
-_ROUNDING = 1e-9
+_ROUNDING = 1e-6
 """Ends are rounded outwards by this share, so that what lies on them lies within."""
 _EDGE_STEPS = 4
 """How near to its least working voltage the pass device has to be for the edge's current, and how often to try."""
@@ -152,6 +152,9 @@ def _static(stage: Stage, nominal: Nominal, conditions: Conditions, kind: IntArr
         probes.append((lanes, near_V[ambient[lanes]], nominal.most_inner))
     owner = np.concatenate([lanes for lanes, _, _ in probes])
     at_V = np.concatenate([voltage for _, voltage, _ in probes])
+    # a corner's locus starts at its own short: what lies beyond it is not of the locus
+    short_V = short_voltage(stage, conditions.corner, len(kind))[owner]
+    at_V = np.where((kind[owner] == 3) & (stage.way * (at_V - short_V) > 0.0), np.nan, at_V)
     start = np.concatenate([inner[:, ambient[lanes]] for lanes, _, inner in probes], axis=1)
     run = run_at(stage, conditions.pick(owner), at_V, start)
     result = np.full(len(kind), np.nan)

@@ -26,7 +26,7 @@ def holds_A(circuit: Circuit, ambient_degC: float = 27.0) -> float:
 
 
 def sensed_A(circuit: Circuit, ambient_degC: float = 27.0) -> float:
-    """The current through the sense resistance at the held short: what a book's limit means; the output gets the drive too."""
+    """The current through the sense resistance at the held short: a book's limit; the output gets the drive too."""
     held = solved(circuit, ambient_degC).held_short
     assert held is not None
     return abs(held.states["RS"].current_A)
