@@ -101,6 +101,8 @@ _WORDS = {
     "supply": "{0} is a supply",
     "lowest": "{0} is the lowest supply",
     "highest": "{0} is the highest supply",
+    "pulls-down": "{0} is a supply that turns a pass device between {1} and {2} off (down)",
+    "pulls-up": "{0} is a supply that turns a pass device between {1} and {2} off (up)",
     "apart": "{0} and {1} are not one net",
     "same": "{0} and {1} are one net",
     "busier": "{0} has more parts on it than {1}",

@@ -31,7 +31,7 @@ def by_flags(test: Test, flags: Mapping[str, int]) -> bool | None:
     is_rail = [flags[name] == RAIL for name in test.of if isinstance(name, str)]
     if test.name == "supply":
         return is_rail[0]
-    if test.name in ("ground", "lowest", "highest"):
+    if test.name in ("ground", "lowest", "highest", "pulls-down", "pulls-up"):
         return None if is_rail[0] else False
     if test.name in ("same", "apart") and is_rail[0] != is_rail[1]:
         return test.name == "apart"
@@ -57,6 +57,10 @@ def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int
             return voltage_V is not None and voltage_V == index.lowest_V
         case "highest":
             return voltage_V is not None and voltage_V == index.highest_V
+        case "pulls-down":
+            return _turns_off(voltage_V, others[0], others[1], index, 1.0)
+        case "pulls-up":
+            return _turns_off(voltage_V, others[0], others[1], index, -1.0)
         case "same":
             return net == others[0]
         case "apart":
@@ -80,6 +84,23 @@ def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int
         case "undriven":
             return all(element in own or index.kind[element] in PASSIVE for element, _ in index.at[net])
     raise KeyError(test.name)
+
+
+def _turns_off(voltage_V: float | None, load: int, far: int, index: Index, sign: float) -> bool:
+    """Tell whether a supply, tied to the control of a pass device, turns it off; ``sign`` is -1 for the mirror.
+
+    With its far end on a supply, a device of the N kind is turned off by what is no higher than that. A follower from a
+    positive supply is turned off by ground and below, one from ground or a negative supply by what is lower than that.
+    Where neither is known, by the board's lowest supply.
+    """
+    if voltage_V is None:
+        return False
+    if far in index.voltage_V:
+        return sign * (voltage_V - index.voltage_V[far]) <= 0.0
+    if load in index.voltage_V:
+        load_V = index.voltage_V[load]
+        return sign * voltage_V <= 0.0 if sign * load_V > 0.0 else sign * (voltage_V - load_V) < 0.0
+    return voltage_V == (index.lowest_V if sign > 0.0 else index.highest_V)
 
 
 def _no_input(net: int, bound: Set[int], index: Index, own: Collection[int]) -> bool:

@@ -23,6 +23,7 @@ DIRECTED = frozenset({"diode", "zener"})
 MIRROR = {
     "npn": "pnp", "pnp": "npn", "npn-darlington": "pnp-darlington", "pnp-darlington": "npn-darlington", "nmos": "pmos",
     "pmos": "nmos", "lowest": "highest", "highest": "lowest", "npn-follows": "pnp-follows", "pnp-follows": "npn-follows",
+    "pulls-down": "pulls-up", "pulls-up": "pulls-down",
 }  # fmt: skip
 """What ``mirrored`` swaps, besides the direction of ``along``."""
 
@@ -37,7 +38,8 @@ ANY = "any"
 
 TESTS: Mapping[str, int] = {
     "ground": 1, "supply": 1, "lowest": 1, "highest": 1, "apart": 2, "same": 2, "busier": 2, "no-input": 1, "inner": 1,
-    "undriven": 1, "closed": 1, "held": 1, "read": 1, "twin": 2, "npn-follows": 1, "pnp-follows": 1,
+    "undriven": 1, "closed": 1, "held": 1, "read": 1, "twin": 2, "npn-follows": 1, "pnp-follows": 1, "pulls-down": 3,
+    "pulls-up": 3,
 }  # fmt: skip
 """Questions about nets, with the number of nets each takes; ``not``, ``or`` and ``and`` combine them."""
 
