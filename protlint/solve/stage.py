@@ -126,7 +126,18 @@ def sweep_stage(
     if on_end == 0:
         rows = np.arange(2 * drives * count).reshape(2, drives, count)[:, ::-1].ravel()
         run, drive_V = run.pick(rows), drive_V[::-1]
-    return replace(stage, on_end=on_end, way=way), Sweep(run, drive_V, count)
+    sweep = Sweep(run, drive_V, count)
+    if _forward_current(stage, sweep.full_drive(1))[usual] < LEAST_OUTPUT_A:
+        raise CircuitError("the drive cannot turn the pass device on: it carries nothing in its forward sense")
+    return replace(stage, on_end=on_end, way=way), sweep
+
+
+def _forward_current(stage: Stage, run: Run) -> Array:
+    """Return the pass devices' greatest current in the forward sense (lanes,); infinite where none is named."""
+    table, circuit = states(stage.network, run), stage.network.circuit
+    signs = {device.name: -1.0 if device.kind in ("pnp", "pmos") else 1.0 for device in circuit.devices}
+    currents = [signs[name] * table[name][0] for name in circuit.pass_devices]
+    return np.max(currents, axis=0) if currents else np.full(run.lanes.count, np.inf)
 
 
 def run_stage(
