@@ -54,16 +54,11 @@ def if_a_part_fails(case: Case) -> IfPartFails | None:
 
 
 def fuses_upstream(case: Case) -> tuple[str, ...]:
-    """Return the ids of the fuses in the load current's way: on the bench, and on its supplies."""
+    """Return the ids of the fuses in the load current's way: at either end of the stage, and at the short."""
     board, limiter = case.board, case.limiter
-    at_ends = {limiter.nets["far"], limiter.bound.get("load")}
-    supplies = [
-        net.index
-        for net in board.nets
-        if net.supply is not None
-        and net.supply.voltage_V.usual != 0.0
-        and (net.index in at_ends or net.name == case.solution.short)
-    ]
-    found = {index for net in supplies for index, _ in board.elements_at[net]} | set(case.bench.element_of.values())
+    ends = [net for net in (limiter.nets["far"], limiter.bound.get("load")) if net is not None]
+    short = [net.index for net in board.nets if net.supply is not None and net.name == case.solution.short]
+    grounds = {net.index for net in board.nets if net.supply is not None and net.supply.voltage_V.usual == 0.0}
+    found = {index for net in (*ends, *short) if net not in grounds for index, _ in board.elements_at[net]}
     fuses = (board.elements[index] for index in sorted(found) if board.elements[index].kind == "fuse")
     return tuple(board.parts[part].id for fuse in fuses for part in fuse.parts)

@@ -8,6 +8,7 @@ from dataclasses import dataclass, replace
 
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.derating import share_of
+from protlint.checks.load import start_up_of
 from protlint.checks.thermal import Heating, Junction, allowed_rise_K, hottest_case_degC, junction, made_for_a_sink
 from protlint.findings import NotChecked, WorkingLine
 from protlint.quantities import format_quantity, preferred, within
@@ -55,13 +56,18 @@ def pass_overheated(case: Case) -> Iterator[Answer]:
 
 
 def stresses(case: Case) -> Iterator[Stress]:
-    """Yield the held short and, where it is another, the point of greatest pass dissipation, at every ambient."""
-    solution = case.solution
+    """Yield the held short, and the point of greatest pass dissipation where it is another, at every ambient.
+
+    The latter also for as long as a stated capacitance charges, where that is longer than a short lasts.
+    """
+    solution, charging = case.solution, start_up_of(case)
     for row, (short, worst) in case.at_ambients(list(zip(solution.high_short, solution.high_worst, strict=False))):
         yield Stress("in the held short", row.ambient_degC, short, case.lasts_s)
         if pass_power_W(case, worst) > WORTH_SAYING * pass_power_W(case, short):
             at = f"with the output at {format_quantity(worst.output_V, 'V')}"
             yield Stress(at, row.ambient_degC, worst, case.lasts_s)
+        if charging is not None and charging.lasts_s is not None and charging.lasts_s > case.lasts_s:
+            yield Stress("while the load's capacitance charges", row.ambient_degC, worst, charging.lasts_s)
 
 
 def heating(case: Case, part_id: str, stress: Stress) -> Heating:
