@@ -129,7 +129,7 @@ def _compare(by_hand: _Case, circuit: Circuit, held: Point, currents: Currents, 
         figure_A=figure,
         solved_A=holds_A,
         difference=holds_A / figure - 1.0 if figure else 0.0,
-        fails=tuple(sorted(fails, key=lambda one: -abs(one.explains))),
+        fails=tuple(sorted(fails, key=lambda one: (one.assumption != DRIVE, -abs(one.explains)))),
         put_right_A=put_right.figure(),
     )
 
