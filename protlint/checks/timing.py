@@ -141,7 +141,8 @@ def _peak_remedy(case: Case, peak: Peak, asked: Peak, before_A: float, output_V:
     ends = places(case.circuit).get(BASE_EMITTER)
     known = _base_capacitor(case.circuit)
     if ends is not None:
-        for farad in within(known.model["C"] * 1.01 if known is not None else 1e-9, MOST_F, "E6"):
+        least_F = max(_by_hand_F(case, asked), known.model["C"] * 1.01 if known is not None else 0.0)
+        for farad in within(min(least_F, MOST_F), MOST_F, "E6"):
             circuit = _slowed(case.circuit, known, ends, farad)
             borne_s = _borne_s(case, circuit, asked, before_A)
             if isinstance(borne_s, str):
@@ -183,6 +184,14 @@ def _by_hand(case: Case, asked: Peak, before_A: float, carries_A: float) -> Iter
     R, C = stop.model["R"], slowing.model["C"]
     delay_s = rc_delay(R, C, before_A / carries_A, asked.current_A / carries_A)
     yield WorkingLine("delay by the RC alone", f"{R:g} ohm, {format_quantity(C, 'F')}, by hand", delay_s, "s", BY_HAND)
+
+
+def _by_hand_F(case: Case, asked: Peak) -> float:
+    """Return a capacitance well below what the RC formula asks for at the shunt's base, to begin the search with."""
+    stop = base_stop(case.circuit)
+    R = stop.model["R"] if stop is not None else 1e3
+    longest_s = rc_delay(max(R, 1.0), 1.0, 0.0, asked.current_A / (case.solution.currents[1].carries_A or asked.current_A))
+    return max(1e-9, 0.1 * asked.lasts_s / longest_s)
 
 
 def _at_output(case: Case, output_V: float | None, *, factor: float = 1.0) -> Solution:

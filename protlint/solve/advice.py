@@ -15,7 +15,7 @@ import numpy as np
 
 from protlint.quantities.series import within
 from protlint.solve.circuit import Circuit, Device
-from protlint.solve.delay import passing_ends, solve_step
+from protlint.solve.delay import solve_step
 from protlint.solve.expanded import Expanded, expand
 from protlint.solve.loop import USUAL, WITH_CONTROL, Held, hold, solve_loop
 from protlint.solve.modes import damping
@@ -95,9 +95,7 @@ def places(circuit: Circuit) -> dict[str, tuple[str, str]]:
     if shunt is None:
         return {}
     upper, lower = shunt.nodes[0], shunt.nodes[-1]
-    ends = passing_ends(circuit)
-    far = ends[0][1] if ends else lower
-    found = {DRIVE_FAR: (_beyond_steering(circuit, upper, shunt.name), far)}
+    found = {DRIVE_FAR: (_beyond_steering(circuit, upper, shunt.name), _far_end(circuit, lower))}
     if shunt.kind in WITH_CONTROL:
         base = shunt.nodes[1]
         found = {COLLECTOR_BASE: (upper, base), **found, BASE_EMITTER: (base, lower)}
@@ -202,6 +200,14 @@ def _tried(trial: _Trial, farad: float) -> tuple[float, float] | None:
         trial.known.append(worst)
         return None
     return own, worst.damping
+
+
+def _far_end(circuit: Circuit, lower: str) -> str:
+    """Return the end of the first sense resistance that no pass device has, or the shunt's own lower terminal."""
+    terminals = {node for one in circuit.devices if one.name in circuit.pass_devices for node in one.nodes}
+    sense = next((one for one in circuit.devices if one.name in circuit.sense), None)
+    far = [] if sense is None or lower in sense.nodes else [node for node in sense.nodes if node not in terminals]
+    return far[0] if len(far) == 1 else lower
 
 
 def _beyond_steering(circuit: Circuit, node: str, shunt: str) -> str:

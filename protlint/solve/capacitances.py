@@ -9,7 +9,8 @@ What a model states stays as it is; what it leaves out comes from the ratings:
 - C_GD from C_rss, C_GS from C_iss - C_rss, and the body's from C_oss - C_rss;
 - a diode's C_JO from its stated capacitance.
 
-An emitter junction that nobody states is taken by its usual size beside the collector's, and said to be assumed.
+An emitter junction that nobody states is taken by its usual size beside the collector's, a diode's capacitance as usual for
+its kind; both are said to be assumed.
 """
 
 from __future__ import annotations
@@ -26,6 +27,8 @@ FORWARD = 1.7
 """A forward-biased emitter junction's depletion capacitance by that at no bias, with V_J and M at their defaults, FC 0.5."""
 EMITTER_BY_COLLECTOR = 2.5
 """Usual size of C_JE by C_JC of discrete transistors; common practice of the trade, from memory."""
+DIODE_F = {"diode": 4e-12, "zener": 100e-12}
+"""Usual capacitance at no bias of a small diode and of a zener; common practice of the trade, from memory."""
 LEAST_SHARE = 0.3
 """At least this share of 1 / (2 pi f_T) is transit time, whatever the current f_T is stated at."""
 
@@ -43,15 +46,18 @@ def capacitances_from(kind: str, ratings: Mapping[str, float], model: Mapping[st
     """Return the dynamic parameters that a part's ratings give and its model leaves out.
 
     ``kind`` is npn, pnp, nmos, pmos, diode or zener; ``ratings`` are SI values by the names of part data. Empty where the
-    ratings say nothing.
+    ratings say nothing and nothing is usual.
     """
     if kind in ("npn", "pnp"):
         return _bipolar(ratings, model)
     if kind in ("nmos", "pmos"):
         return _mosfet(ratings, model)
-    if "CJO" in model or "cj" not in ratings:
+    if "CJO" in model:
         return Charged({})
-    return Charged({"CJO": ratings["cj"]}, ("C_JO from its stated capacitance",))
+    if "cj" in ratings:
+        return Charged({"CJO": ratings["cj"]}, ("C_JO from its stated capacitance",))
+    usual_F = DIODE_F[kind]
+    return Charged({"CJO": usual_F}, assumed=(f"C_JO as {usual_F * 1e12:g} pF, usual for its kind",))
 
 
 def _bipolar(ratings: Mapping[str, float], model: Mapping[str, float]) -> Charged:

@@ -110,11 +110,14 @@ class Stored:
 
 @dataclass(frozen=True, slots=True)
 class BipolarCharges:
-    """Charge parameters of bipolar transistors; ``inverse_VTF`` is 1 / (1.44 VTF)."""
+    """Charge parameters of bipolar transistors.
 
-    emitter: Junction
-    collector: Junction
-    X_CJC: Array
+    ``junctions`` are base-emitter and base-collector (2, devices, lanes), ``outer`` that part of the latter which lies
+    outside the base resistance, None where no transistor has one; ``inverse_VTF`` is 1 / (1.44 VTF).
+    """
+
+    junctions: Junction
+    outer: Junction | None
     T_F: Array
     T_R: Array
     X_TF: Array
@@ -174,10 +177,16 @@ def charges_of(group: Group, ambient_K: Array) -> Charges | None:
     p = {name: np.array([one[name] for one in full]).reshape(-1, 1) for name in bounds}
     temperature = ambient_K + group.rise_K
     if group.family == "bipolar":
+        outside = 1.0 - p["XCJC"]
         return BipolarCharges(
-            emitter=_at(temperature, p["CJE"], p["VJE"], p["MJE"], p["FC"]),
-            collector=_at(temperature, p["CJC"], p["VJC"], p["MJC"], p["FC"]),
-            X_CJC=p["XCJC"],
+            junctions=_at(
+                temperature,
+                np.stack((p["CJE"], p["CJC"] * p["XCJC"])),
+                np.stack((p["VJE"], p["VJC"])),
+                np.stack((p["MJE"], p["MJC"])),
+                p["FC"],
+            ),
+            outer=_at(temperature, p["CJC"] * outside, p["VJC"], p["MJC"], p["FC"]) if outside.any() else None,
             T_F=p["TF"],
             T_R=p["TR"],
             X_TF=p["XTF"],
@@ -195,30 +204,27 @@ def bipolar_charges(inner: Array, outer_BC: Array, static: Bipolars, p: BipolarC
 
     ``inner`` are inner junction voltages (2, devices, lanes), ``outer_BC`` the base terminal's against the inner collector.
     """
-    v_be, v_bc = inner
     t = transport(inner, static)
-    q_e, c_e = depletion(v_be, p.emitter)
-    q_c, c_c = depletion(v_bc, p.collector)
-    q_x, c_x = depletion(outer_BC, p.collector)
-    on = v_be > 0.0
-    i_F = np.where(on, t.i_F, 0.0)
-    excess = more = by_BC = np.zeros_like(i_F)
+    charge, capacitance = np.zeros((3, *outer_BC.shape)), np.zeros((3, *outer_BC.shape))
+    charge[:2], capacitance[:2] = depletion(inner, p.junctions)
+    if p.outer is not None:
+        charge[2], capacitance[2] = depletion(outer_BC, p.outer)
+    on = inner[0] > 0.0
+    i_F, g_F = t.i_F * on, t.g_F * on
+    lent, lent_slope, by_BC = i_F, g_F, 0.0
     if p.X_TF.any():
         w = i_F / np.maximum(i_F + p.I_TF, 1e-300)
-        excess = p.X_TF * np.exp(np.minimum(v_bc * p.inverse_VTF, 50.0)) * np.where(p.I_TF > 0.0, w * w, 1.0)
-        more = excess * np.where(p.I_TF > 0.0, 3.0 - 2.0 * w, 1.0)
+        grows = p.I_TF > 0.0
+        excess = p.X_TF * np.exp(np.minimum(inner[1] * p.inverse_VTF, 50.0)) * np.where(grows, w * w, 1.0)
+        lent = i_F * (1.0 + excess)
+        lent_slope = g_F * (1.0 + excess * np.where(grows, 3.0 - 2.0 * w, 1.0))
         by_BC = i_F * excess * p.inverse_VTF
-    carried = i_F * (1.0 + excess) / t.q_B
-    slope = (np.where(on, t.g_F, 0.0) * (1.0 + more) - carried * t.q_B_by_BE) / t.q_B
-    return Stored(
-        charge=np.stack(
-            (q_e + p.T_F * carried, p.X_CJC * q_c + p.T_R * t.i_R, np.broadcast_to((1.0 - p.X_CJC) * q_x, v_bc.shape))
-        ),
-        capacitance=np.stack(
-            (c_e + p.T_F * slope, p.X_CJC * c_c + p.T_R * t.g_R, np.broadcast_to((1.0 - p.X_CJC) * c_x, v_bc.shape))
-        ),
-        cross=p.T_F * (by_BC - carried * t.q_B_by_BC) / t.q_B,
-    )
+    carried = lent / t.q_B
+    charge[0] += p.T_F * carried
+    charge[1] += p.T_R * t.i_R
+    capacitance[0] += p.T_F * (lent_slope - carried * t.q_B_by_BE) / t.q_B
+    capacitance[1] += p.T_R * t.g_R
+    return Stored(charge, capacitance, p.T_F * (by_BC - carried * t.q_B_by_BC) / t.q_B)
 
 
 def mosfet_charges(inner: Array, body_V: Array, p: MosfetCharges) -> Stored:

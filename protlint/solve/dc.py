@@ -13,7 +13,6 @@ supplies raised from zero (source stepping). What still does not converge is mar
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -22,7 +21,7 @@ from numpy.typing import NDArray
 from protlint.solve import devices
 from protlint.solve.devices import Array, Evaluation
 from protlint.solve.lanes import Lanes, Parameters, parameters, take
-from protlint.solve.network import Group, Network
+from protlint.solve.network import Network
 
 CLOSE_V = 2e-6
 """Newton's error falls with the square: a last step this small leaves less than 1e-8 of a thermal voltage."""
@@ -39,9 +38,6 @@ LONGEST_GATE_STEP_V = 20.0
 FIRST_HOLD_S, LAST_HOLD_S = 10.0, 1e-9
 SETTLING_STEPS = 160
 LONGEST_SETTLING_STEP_V = 0.5
-
-Charges = Callable[[Group, slice, Array, Evaluation], Evaluation]
-"""Adds a group's charge currents: (group, its rows of inner, inner of the group, static evaluation) to evaluation."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -111,13 +107,10 @@ def newton(
     start: Array,
     *,
     bridge_S: float = 0.0,
-    charges: Charges | None = None,
-    injected_A: Array | None = None,
 ) -> tuple[Array, Array, NDArray[np.bool_]]:
     """Iterate from ``start``; return inner voltages (ports, lanes), unknown node voltages, and which lanes converged.
 
-    ``bridge_S`` lies across every port (gmin stepping); ``charges`` adds charge currents to the devices; ``injected_A``
-    (unknown nodes, lanes) flows into the nodes.
+    ``bridge_S`` lies across every port (gmin stepping).
     """
     count, unknown = known_V.shape[1], network.unknown
     inner = np.empty((network.ports, count))
@@ -125,13 +118,11 @@ def newton(
     converged = np.zeros(count, dtype=bool)
     active = np.arange(count)
     matrix, right, outer_V = linear_part(network, p, known_V, bridge_S)
-    if injected_A is not None:
-        right = right + injected_A
     work = np.array(start, dtype=np.float64)
     to_ports = np.ascontiguousarray(network.incidence[:, :unknown])
     done = converged
     for _ in range(ITERATIONS):
-        folded = [fold(one) for one in evaluate(network, p, work, charges)]
+        folded = [fold(one) for one in evaluate(network, p, work)]
         port_V, companion, conductance = companions(network, folded, outer_V)
         system = matrix + (network.scatter @ conductance).reshape(matrix.shape)
         solved = eliminate(system, right - to_ports.T @ companion)
@@ -185,7 +176,7 @@ def settle(network: Network, p: Parameters, known_V: Array) -> Array:
     return work
 
 
-def evaluate(network: Network, p: Parameters, inner: Array, charges: Charges | None = None) -> list[Evaluation]:
+def evaluate(network: Network, p: Parameters, inner: Array) -> list[Evaluation]:
     """Evaluate every group at its inner voltages (ports, lanes), in the sense of NPN and N-channel devices."""
     results = []
     for group, record, present in zip(network.groups, p.records, p.present, strict=True):
@@ -198,7 +189,7 @@ def evaluate(network: Network, p: Parameters, inner: Array, charges: Charges | N
             result = devices.diode(rows, record, present)
         else:
             result = devices.limited_source(rows, record)
-        results.append(result if charges is None else charges(group, group.rows, rows, result))
+        results.append(result)
     return results
 
 

@@ -32,7 +32,7 @@ OVER = 1.1
 BEGIN_V = 2.0
 """What pass device and sense together have where no working output voltage is stated."""
 
-CLOSE_V, CLOSE_SHARE = 2e-3, 0.01
+CLOSE_V, CLOSE_SHARE = 5e-3, 0.03
 """At rest for good: every junction and store this near its final voltage, the current this near holds."""
 MOST_CROSSINGS = 40
 """A current that has risen past the level this often swings on."""
@@ -156,10 +156,8 @@ def begin_voltage(held: Held) -> float:
         Where there is none.
     """
     stage, circuit = held.stage, held.stage.network.circuit
-    ends = passing_ends(circuit)
-    if not ends:
-        raise CircuitError("the pass device and its sense resistance are not in one current path: output")
     place = {node: index for index, node in enumerate(stage.network.nodes)}
+    paths = _paths(circuit)
     short_V = float(held.short.output_V[USUAL])
     low_V, high_V = circuit.output_reach_V
     low_V, high_V = min(low_V, short_V), max(high_V, short_V)
@@ -171,7 +169,7 @@ def begin_voltage(held: Held) -> float:
         ambient_K = np.full(len(at_V), held.short.lanes.ambient_K[USUAL])
         run = run_stage(stage, ambient_K, output_V=at_V, start=np.broadcast_to(inner, (len(inner), len(at_V))))
         node_V = run.operating.node_V
-        across = np.min([np.abs(node_V[place[one]] - node_V[place[other]]) for one, other in ends], axis=0)
+        across = np.min([np.ptp(node_V[[place[node] for node in nodes]], axis=0) for nodes in paths], axis=0)
         under = np.flatnonzero((across < BEGIN_V) & run.operating.converged)
         if not len(under) or under[0] == 0:
             raise CircuitError(f"no output voltage leaves pass device and sense resistance {BEGIN_V:g} V: output")
@@ -182,17 +180,20 @@ def begin_voltage(held: Held) -> float:
     return left_V + float(share) * (right_V - left_V)
 
 
-def passing_ends(circuit: Circuit) -> list[tuple[str, str]]:
-    """Return, for each pass device with a sense resistance at its common terminal, the outer ends of the two."""
+def _paths(circuit: Circuit) -> list[tuple[str, ...]]:
+    """Return, for each pass device, the nodes that it and the sense resistance lie between: its ends and that one's.
+
+    Of several sense resistances the one at its common terminal counts, where one is there.
+    """
     nodes = {device.name: device.nodes for device in circuit.devices}
-    ends = []
+    paths = []
     for name in circuit.pass_devices:
-        first, common = nodes[name][0], nodes[name][-1]
-        for sense in circuit.sense:
-            if common in nodes[sense]:
-                far = nodes[sense][1] if nodes[sense][0] == common else nodes[sense][0]
-                ends.append((first, far))
-    return ends
+        ends = (nodes[name][0], nodes[name][-1])
+        at_it = [sense for sense in circuit.sense if ends[1] in nodes[sense]]
+        paths.append((*ends, *(node for sense in at_it or circuit.sense[:1] for node in nodes[sense])))
+    if not paths:
+        raise CircuitError("a pass device with a sense resistance")
+    return paths
 
 
 def _followed(trial: Trial) -> Step:

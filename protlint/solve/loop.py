@@ -22,9 +22,13 @@ from protlint.solve.solution import Loop, Worst
 from protlint.solve.stage import Run, Stage, sweep_stage
 from protlint.solve.wired import counting, linearise, look, wired_frequencies
 from protlint.solve.worst import find_worst, make_scope, opening_scene
+from protlint.toml_text import toml_key
 
 USUAL = 1
 """Place of the usual ambient among the three."""
+
+MOST_A = 1e5
+"""A drive that puts more into the circuit lies straight on a junction: no model says what happens then."""
 
 WITH_CONTROL = ("npn", "pnp", "nmos", "pmos")
 
@@ -85,7 +89,7 @@ def hold(network: Network, ambients_degC: tuple[float, float, float], short: str
     Raises
     ------
     CircuitError
-        Where no held short is found at the usual ambient.
+        Where no held short is found at the usual ambient, or one with absurd currents.
     """
     reason: CircuitError | None = None
     best: tuple[float, Held] | None = None
@@ -101,6 +105,9 @@ def hold(network: Network, ambients_degC: tuple[float, float, float], short: str
             best = (holds_A, Held(stage, run))
     if best is None:
         raise reason or CircuitError("no operating point was found with the output shorted")
+    greatest_A = float(np.abs(best[1].short.operating.known_A[:, USUAL]).max())
+    if greatest_A > MOST_A:
+        raise CircuitError(f"[drive.{toml_key(network.circuit.drive.node)}] current")
     return best[1]
 
 

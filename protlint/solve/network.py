@@ -8,8 +8,7 @@ Unknowns are the node voltages and the inner junction voltages of the devices (`
 inner voltages stand in rows of one array ``inner`` of shape (ports, lanes): first junction of every bipolar, second junction
 of every bipolar, the same for MOSFETs, then diodes, then the limited drive if there is one.
 
-The same pieces serve small signals (``Network.incidence`` with the conductances of ``Evaluation.current_slope``) and
-integration in time (charge currents added to ``port_A`` before ``outside`` folds in the series resistances).
+Small signals and integration in time stand on the same pieces with the inner nodes laid open (``protlint.solve.expanded``).
 """
 
 from __future__ import annotations

@@ -10,7 +10,7 @@ import numpy as np
 import pytest
 import scipy.integrate
 
-from protlint.solve.circuit import Circuit
+from protlint.solve.circuit import Circuit, Device
 from protlint.solve.delay import OVER, RAMP_S, prepare_step, rc_delay, solve_step
 from protlint.solve.linear import conductance_matrix, snapshot, store_matrix
 from protlint.solve.motion import at_rest, integrate
@@ -158,6 +158,38 @@ def test_the_network_rests_where_the_static_solver_says() -> None:
         rest = at_rest(trial.motion, trial.final, 1.0)
         assert np.abs(rest.voltages - trial.final).max() < 1e-5
         assert trial.read(rest).output_A == pytest.approx(trial.holds_A, rel=1e-6)
+
+
+def limited(circuit: Circuit, current_A: float) -> Circuit:
+    return replace(circuit, drive=replace(circuit.drive, current_A=current_A))
+
+
+def through_inductor(circuit: Circuit) -> Circuit:
+    """The circuit with 1 uH in the lead of its supply."""
+    devices = tuple(
+        replace(one, nodes=tuple("LEAD" if node == "+24V" else node for node in one.nodes)) for one in circuit.devices
+    )
+    return replace(circuit, devices=(*devices, Device("L1", "inductor", ("+24V", "LEAD"), {"L": 1e-6})))
+
+
+@pytest.mark.parametrize(
+    "circuit",
+    [
+        replace(bench_circuit("follower"), drive=replace(bench_circuit("follower").drive, resistance_ohm=300.0)),
+        limited(bench_circuit("follower"), 8e-3),
+        limited(bench_circuit("follower"), 50e-3),
+        through_inductor(bench_circuit("follower")),
+    ],
+    ids=["resistance", "current limit in force", "current limit out of reach", "inductor"],
+)
+def test_drives_and_inductors_rest_where_the_static_solver_says_and_are_followed(circuit: Circuit) -> None:
+    trial = prepare_step(circuit, AMBIENTS)
+    rest = at_rest(trial.motion, trial.final, 1.0)
+    assert trial.read(rest).output_A == pytest.approx(trial.holds_A, rel=1e-5)
+    step = solved(circuit)
+    assert step.settles
+    assert step.peak_A is not None
+    assert step.peak_A >= trial.holds_A
 
 
 @pytest.mark.parametrize(

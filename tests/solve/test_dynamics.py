@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 
 from protlint.solve.answers import solve
-from protlint.solve.capacitances import EMITTER_BY_COLLECTOR, capacitances_from, transit_time
+from protlint.solve.capacitances import DIODE_F, EMITTER_BY_COLLECTOR, capacitances_from, transit_time
 from protlint.solve.charges import charges_of, depletion, missing_charges
 from protlint.solve.circuit import Circuit
 from protlint.solve.derive import derive
@@ -139,7 +139,10 @@ def test_a_mosfet_s_and_a_diode_s_figures_give_theirs() -> None:
     charged = capacitances_from("nmos", {"ciss": 1.9e-9, "crss": 1e-10, "coss": 5e-10}, {})
     assert charged.model == pytest.approx({"CGD": 1e-10, "CGS": 1.8e-9, "CBD": 4e-10})
     assert capacitances_from("diode", {"cj": 4e-12}, {}).model == {"CJO": 4e-12}
-    assert not capacitances_from("diode", {}, {}).model
+    usual = capacitances_from("diode", {}, {})
+    assert usual.model == {"CJO": DIODE_F["diode"]}
+    assert usual.assumed
+    assert not capacitances_from("zener", {}, {"CJO": 1e-10}).model
     assert not capacitances_from("pmos", {"ciss": 1e-9}, {}).model
 
 
@@ -152,12 +155,13 @@ def test_depletion_charge_is_the_integral_of_its_capacitance(ambient_degC: float
     network = compile_network(bench_circuit("sink"))
     found = charges_of(network.groups[0], np.array([ambient_degC + 273.15]))
     assert found is not None
-    junction = found.emitter  # type: ignore[union-attr]
+    junction = found.junctions  # type: ignore[union-attr]
     volts = np.linspace(-10.0, 1.2, 20001)
-    charge, capacitance = (values[0] for values in depletion(volts[None, :], junction))
+    both = np.broadcast_to(volts, (2, 2, len(volts)))
+    charge, capacitance = (values[0, 0] for values in depletion(both, junction))
     middle = 0.5 * (capacitance[1:] + capacitance[:-1])
     assert charge[-1] - charge[0] == pytest.approx(float((middle * np.diff(volts)).sum()), rel=1e-6)
-    at_zero = float(depletion(np.zeros((1, 1)), junction)[1][0, 0])
+    at_zero = float(depletion(np.zeros((2, 2, 1)), junction)[1][0, 0, 0])
     # C_J rises by 4e-4 M a kelvin and a little more as V_J falls
     rise_K = ambient_degC - 27.0
     assert at_zero == pytest.approx(1e-9 * (1.0 + 0.33 * (4e-4 + 2.7e-3) * rise_K), rel=0.02)

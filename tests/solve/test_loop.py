@@ -195,6 +195,21 @@ def test_a_circuit_without_a_held_short_gives_the_reason() -> None:
     assert reason
 
 
+def test_a_drive_straight_on_a_junction_is_asked_for_its_current() -> None:
+    """12 V on the base of a model without series resistances, its emitter on ground."""
+    circuit = bench_circuit("sink")
+    devices = []
+    for one in circuit.devices:
+        if one.name == "Q1":
+            ideal = {name: value for name, value in one.model.items() if name not in ("RB", "RE", "RC", "IKF")}
+            devices.append(replace(one, nodes=(one.nodes[0], "DRV", one.nodes[2]), model=ideal))
+        elif one.name == "Q2":
+            devices.append(replace(one, nodes=("DRV", *one.nodes[1:])))
+        elif one.name != "R1":
+            devices.append(replace(one, model={"R": 0.0}) if one.name == "R2" else one)
+    assert solve_loop(replace(circuit, devices=tuple(devices)), AMBIENTS) == "[drive.DRV] current"
+
+
 def test_a_shunt_whose_base_is_held_has_natural_frequencies_and_no_loop_gain() -> None:
     circuit = bench_circuit("sink")
     held = tuple(
