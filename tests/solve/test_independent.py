@@ -10,7 +10,7 @@ from protlint.solve.dc import solve_lanes
 from protlint.solve.lanes import Lanes, known_voltages
 from protlint.solve.network import Network, compile_network
 from tests.support.circuits import bench_circuit, load_bench
-from tests.support.equations import node_equations, output_current
+from tests.support.equations import node_equations, output_current, start_near
 
 BENCH = load_bench()["circuits"]
 
@@ -33,24 +33,10 @@ def test_scipy_finds_the_same_solution(name: str, ambient_degC: float) -> None:
     drive_V = float(BENCH[name]["drive"]["to_V"])
     here, output_A = solved_here(compile_network(circuit), ambient_degC, output_V, drive_V)
     unknown, law = node_equations(circuit, ambient_degC, output_V, drive_V)
-    # inner nodes begin at their terminals, and some millivolts of disorder keep the start from being the answer
-    dice = np.random.default_rng(5)
-    start = np.array([here.get(node, here.get(_terminal(circuit, node), 0.0)) for node in unknown])
-    start = start + dice.uniform(-0.003, 0.003, len(start))
-    near = root(law, start, method="lm", tol=1e-14, options={"maxiter": 20000})
+    near = root(law, start_near(circuit, unknown, here), method="lm", tol=1e-14, options={"maxiter": 20000})
     found = root(law, near.x, method="hybr", tol=1e-14, options={"maxfev": 20000})
     assert np.abs(law(found.x)).max() < 1e-8
     assert output_current(circuit, ambient_degC, output_V, drive_V, found.x) == pytest.approx(output_A, rel=1e-5)
     for node, voltage in zip(unknown, found.x, strict=True):
         if node in here:
             assert voltage == pytest.approx(here[node], abs=1e-5)
-
-
-def _terminal(circuit: object, node: str) -> str:
-    """The terminal that an inner node belongs to."""
-    name, _, end = node.partition(".")
-    for device in getattr(circuit, "devices", ()):
-        if device.name == name and end:
-            order = "cbe" if device.kind in ("npn", "pnp") else "dgs"
-            return str(device.nodes[order.index(end)])
-    return node

@@ -6,7 +6,7 @@ Nothing here uses the solver's own equations: transistor and diode laws are spel
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 
 import numpy as np
 
@@ -40,6 +40,24 @@ def output_current(circuit: Circuit, ambient_degC: float, output_V: float, drive
     known |= {circuit.output: output_V, circuit.drive.node: drive_V}
     unknown, _ = node_equations(circuit, ambient_degC, output_V, drive_V)
     return _leaving(circuit, ambient_degC, known, unknown, voltages)[circuit.output]
+
+
+def start_near(circuit: Circuit, unknown: list[str], solved: Mapping[str, float]) -> np.ndarray:
+    """Return voltages near a solution: inner nodes at their terminals, and some millivolts of disorder."""
+    terminal = {
+        inner: outer
+        for device in circuit.devices
+        for inner, outer in zip(_inner_nodes(device), _outer_nodes(device), strict=True)
+    }
+    start = np.array([solved.get(node, solved.get(terminal.get(node, ""), 0.0)) for node in unknown])
+    return start + np.random.default_rng(5).uniform(-0.003, 0.003, len(start))
+
+
+def _outer_nodes(device: Device) -> tuple[str, ...]:
+    """Return the terminals that the inner nodes belong to."""
+    if device.kind in ("npn", "pnp"):
+        return device.nodes
+    return (device.nodes[0], device.nodes[2]) if device.kind in ("nmos", "pmos") else ()
 
 
 def _inner_nodes(device: Device) -> tuple[str, ...]:
