@@ -12,6 +12,7 @@ from protlint.checks.likeness import usual_holds_A
 from protlint.checks.sizing import greatest_most_A
 from protlint.findings import Finding, Level, NotChecked, WorkingLine
 from protlint.quantities import format_quantity, preferred
+from protlint.solve.surroundings import regulator_across
 
 LONGEST = 3
 """Parts in a row that are followed from the output to a supply."""
@@ -48,6 +49,7 @@ def second_road(whole: BoardCase) -> Iterator[BoardAnswer]:
         short_V, holds_A = _short_V(case), usual_holds_A(case)
         if short_V is None or holds_A is None:
             continue  # nothing of this limiter was solved, and that is said
+        yield from _regulator(case, holds_A)
         least_A = case.threshold("second-road", "share") * holds_A
         for road in roads(case, short_V, least_A, guarded):
             if road.resistance_ohm is None:
@@ -82,6 +84,34 @@ def _finding(case: Case, road: Road, drop_V: float, holds_A: float) -> Finding:
         level=level,
         assumption=level == "error" and case.assumes(*ALL_ASSUMPTIONS),
         subject=" ".join(parts),
+    )
+
+
+def _regulator(case: Case, holds_A: float) -> Iterator[Finding]:
+    """Yield a note where the limiter stands around the booster of a three-terminal regulator, whose own current reaches the
+    output past the sense resistance (by the data sheets of such regulators: I_O = I_booster + I_regulator)."""
+    board, nets, current_A = case.board, case.limiter.nets, case.circuit.drive.current_A
+    output = nets["output"]
+    drives = [net for net in (nets["drive"], nets["feed"]) if net is not None and output is not None]
+    found = [one for net in drives if (one := regulator_across(board, net, output or 0)) is not None]
+    if not found or current_A is None:
+        return
+    name = board.parts[found[0]].id
+    level, more = _against_the_cap(case, current_A)
+    yield case.finding(
+        "second-road",
+        f"{name} gives {_output_name(case)} a current of its own besides, up to {format_quantity(current_A, 'A')}",
+        parts=(name, *case.parts("sense")),
+        nets=(_output_name(case),),
+        working=(
+            WorkingLine("holds", f"what {case.limiter.id} itself lets into the short", holds_A, "A"),
+            WorkingLine(f"most of {name}", "limits file", current_A, "A"),
+            *more,
+        ),
+        remedy=f"take a cap with room for {format_quantity(current_A, 'A')} more than {case.limiter.id} passes",
+        level=level or "note",
+        assumption=level == "error" and case.assumes(*ALL_ASSUMPTIONS),
+        subject="regulator",
     )
 
 

@@ -11,7 +11,7 @@ from dataclasses import dataclass, field
 from protlint.board.graph import Board
 from protlint.limits import DriveLimits, LimiterLimits, Limits, Range
 from protlint.solve.circuit import Drive
-from protlint.solve.surroundings import Surroundings
+from protlint.solve.surroundings import Surroundings, regulator_across
 from protlint.toml_text import toml_key
 from protlint.topology.limiter import Limiter
 
@@ -193,6 +193,11 @@ def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive 
     lowest_V, highest_V = min(one.usual for one in held.values()), max(one.usual for one in held.values())
     lowest, highest = Range(lowest_V, lowest_V, lowest_V), Range(highest_V, highest_V, highest_V)
     if around.drive is not None:
+        regulator = regulator_across(board, around.drive, around.output)
+        if regulator is not None and (around.drive_entry is None or around.drive_entry.current_A is None):
+            key = f"[drive.{toml_key(board.nets[around.drive].name)}] current"
+            notes.missing.append(Missing("drive", None, f"{key}: the most that {board.parts[regulator].id} draws"))
+            return None, None
         return _driven(place, lowest, highest, notes), None
     if around.fed_by is not None:
         supply = board.nets[around.fed_by].supply

@@ -103,6 +103,19 @@ def drivers_on(board: Board, net: int) -> tuple[tuple[int, str], ...]:
     return tuple(found)
 
 
+REGULATOR_PINS = ({"in", "vin", "vi", "input"}, {"out", "vout", "vo", "output"})
+"""What the two ends of a three-terminal regulator are called."""
+
+
+def regulator_across(board: Board, net: int, output: int) -> int | None:
+    """Return the IC that takes its supply from a net and gives it on to the output, by board part: a three-terminal
+    regulator whose booster the net drives. None where there is none."""
+    taking, giving = REGULATOR_PINS
+    fed = {index for index, role in board.nets[net].pins if board.parts[index].kind == "ic" and role.casefold() in taking}
+    given = (index for index, role in board.nets[output].pins if index in fed and role.casefold() in giving)
+    return next(given, None)
+
+
 def _is_input(board: Board, index: int, net: int, role: str) -> bool:
     for pin in board.parts[index].part.pins:
         if role in (pin.name, pin.number) and pin.direction is not None:
@@ -138,6 +151,8 @@ def _find_drive(
     board: Board, limits: Limits, own: set[int], walls: set[int], starts: list[int], limiter: Limiter
 ) -> tuple[int | None, DriveLimits | None, tuple[tuple[int, str], ...], int | None]:
     """Return the nearest driving net (a ``[drive]`` entry beats all), or the supply that feeds the drive on."""
+    output = limiter.nets["output"]
+    assert output is not None
     best: dict[int, int] = {}
     queue = [(0, net) for net in starts]
     driven: list[tuple[int, int]] = []
@@ -154,7 +169,7 @@ def _find_drive(
             if board.nets[net].supply is not None:
                 fed.append((cost, net))
             continue
-        if drivers_on(board, net):
+        if drivers_on(board, net) or regulator_across(board, net, output) is not None:
             driven.append((cost, net))
             continue
         for index, _ in board.elements_at[net]:

@@ -6,7 +6,7 @@ import pytest
 
 from protlint.findings import Finding
 from protlint.pipeline import Review
-from tests.support.desk import found, unchecked
+from tests.support.desk import found, limits, reviewed, unchecked
 from tests.support.judged import Job, follower, sink, source
 
 FOLLOWER, SINK, SOURCE = follower(), sink(), source()
@@ -124,3 +124,44 @@ def test_a_way_whose_value_is_not_known_is_not_checked() -> None:
     review = with_parts(FOLLOWER, "R90 RES odd +24V OUT")
     assert way(review) is None
     assert ("second-road", "the value of R90") in unchecked(review)
+
+
+BOOSTER = """
+J1 CONN - VOUT GND
+J2 CONN - +10V GND
+R1 RES 3 +10V B POWER:3W
+Q1 PNP QPP1 VOUT B E
+R2 RES 0.27 +10V E POWER:5W
+R3 RES 1 E T
+Q2 PNP QPP1 B T +10V
+U1 IC REG5 IN=B OUT=VOUT GND=GND
+C1 CAP 1n B T
+"""
+
+
+def booster(cap: str = "9 A", **drive: str) -> Review:
+    """Return the review of a booster around a three-terminal regulator, its sense resistor in the supply lead."""
+    fixed = {"+10V": "10 V", "GND": "0 V"}
+    needs = {"output": "5 V", "cap": cap}
+    return reviewed(BOOSTER, limits(supply=fixed, drive={"B": drive} if drive else {}, limiter={"*": needs}))
+
+
+def test_a_booster_is_judged_with_what_its_regulator_draws_and_gives() -> None:
+    """I_O = I_booster + I_regulator: NEC three-terminal regulator manual G12702E, section 4.2."""
+    review = booster(low="2 V", high="10 V", current="1.9 A")
+    (limiter,) = review.limiters
+    held_A = limiter.solution.currents[1].holds_A
+    assert held_A == pytest.approx(0.75 / 0.27, rel=0.1)  # V_BE of a power transistor that takes over an ampere
+    finding = way(review)
+    assert finding is not None
+    assert (finding.level, finding.parts) == ("note", ("U1", "R2"))
+    most_A = limiter.solution.currents[0].most_range_A
+    assert most_A is not None
+    room = booster(f"{most_A[1] + 1.9 - 0.01} A", low="2 V", high="10 V", current="1.9 A")
+    assert (way(room) or finding).level == "error"
+
+
+def test_without_the_current_its_regulator_draws_a_booster_is_not_judged() -> None:
+    review = booster()
+    assert review.limiters[0].verdict == "not judged"
+    assert ("currents", "[drive.B] current: the most that U1 draws") in unchecked(review)
