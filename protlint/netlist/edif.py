@@ -130,7 +130,7 @@ class _Reader(FormParser):
         return Edif(self._name(form), level, _program(form), libraries, designs, self.places), self.notes
 
     def atom(self, token: str) -> str:
-        """Return a word as it is: where it stands tells what it is, and a netlist has very many."""
+        """Return a word as it is, but the same object in all its places: references are many and repeat what they name."""
         return token
 
     def head(self, token: str) -> str | None:

@@ -1,9 +1,9 @@
 """Text to positioned s-expressions: the one scanner behind netlists and rule files.
 
 ``FormParser`` is a :class:`sexpdata.Parser` and keeps its contract: made from a text, its :meth:`~FormParser.parse` returns
-the list of top-level expressions, lists as lists, words through :meth:`~FormParser.atom`, strings as ``str``. What changes
-is what netlists need: a backslash is an ordinary character, no word turns into a number, a truth value or an empty list,
-brackets, quotes and semicolons mean nothing, every list knows its place, and the scanning is one pass of one compiled
+the list of top-level expressions, lists as lists, words as :meth:`~FormParser.atom` makes them, strings as ``str``. What
+changes is what netlists need: a backslash is an ordinary character, no word turns into a number, a truth value or an empty
+list, brackets, quotes and semicolons mean nothing, every list knows its place, and the scanning is one pass of one compiled
 expression with a stack of its own, so that neither depth nor size can break it.
 """
 
@@ -75,7 +75,7 @@ def no_collection() -> Iterator[None]:
 
 
 class Atom(str):
-    """A word of the text that is not a string: a name, a keyword, an integer."""
+    """A word of a rule file, which is not a string."""
 
     __slots__ = ()
 
@@ -171,8 +171,8 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
         return head
 
     def atom(self, token: str) -> Any:
-        """Return what a word becomes; asked once for every distinct word."""
-        return Atom(token)
+        """Return what a word becomes: itself. Where a subclass says otherwise, it is asked once for every distinct word."""
+        return token
 
     def string_at(self, raw: str, offset: int) -> str:
         """Return a string that holds line ends or per cent signs as it was meant.
@@ -202,7 +202,9 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
         ------
         InputError : unbalanced parentheses, an unterminated string, nesting past :data:`NESTING_LIMIT`.
         """
-        heads, atoms, reducers, places = _Table(self.head), _Table(self.atom), self.reducers, self.places
+        heads, reducers, places = _Table(self.head), self.reducers, self.places
+        # Where words are made of what stands there, one serves for all its places; where they are not, looking it up costs more.
+        atoms = None if type(self).atom is FormParser.atom else _Table(self.atom)
         heads[None] = None if reducers else ""
         stack: list[Form] = []
         current = Form()
@@ -224,9 +226,9 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
                     elif first is None:
                         form = Form((head,)) if text is None else Form((head, text))
                     elif text is None:
-                        form = Form((head, atoms[first]))
+                        form = Form((head, first if atoms is None else atoms[first]))
                     else:
-                        form = Form((head, atoms[first], text))
+                        form = Form((head, first if atoms is None else atoms[first], text))
                     form.offset = match.start()
                     form.places = places
                     if closing is None:
@@ -243,8 +245,10 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
             elif kind > _STRING:
                 raise places.error("this string is never closed: its closing quote is missing", match.start())
             else:
-                if not skipped:
-                    current.append(atoms[match[_ATOM]] if kind == _ATOM else self.string_at(match[_STRING], match.start()))
+                if not skipped and kind == _STRING:
+                    current.append(self.string_at(match[_STRING], match.start()))
+                elif not skipped:
+                    current.append(match[_ATOM] if atoms is None else atoms[match[_ATOM]])
                 continue
             while closings:
                 closings -= 1
@@ -297,7 +301,10 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
 
 
 class _RuleParser(FormParser):
-    """Rule files: a string may run over several lines, and a per cent sign is only itself."""
+    """Rule files: words are told from strings, a string may run over several lines, a per cent sign is only itself."""
+
+    def atom(self, token: str) -> Atom:
+        return Atom(token)
 
     def string_at(self, raw: str, offset: int) -> str:
         return re.sub(r"\s*[\r\n]\s*", " ", raw)

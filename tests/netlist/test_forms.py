@@ -14,40 +14,45 @@ from tests.support.paths import FIXTURES
 STEADY = settings(deadline=None, derandomize=True)
 
 
-def tree(item: object) -> object:
-    """A parsed item as sexpdata gives it when it turns no word into anything else."""
-    if isinstance(item, Form):
-        return [tree(each) for each in item]
-    return sexpdata.Symbol(item) if isinstance(item, Atom) else item
+class Symbols(FormParser):
+    """Words as sexpdata gives them when it turns none into anything else."""
+
+    def atom(self, token: str) -> sexpdata.Symbol:
+        return sexpdata.Symbol(token)
+
+
+class Plain(sexpdata.Parser):  # type: ignore[misc]
+    """sexpdata's own scanner, told not to turn words into numbers, truth values or empty lists."""
+
+    def atom(self, token: str) -> sexpdata.Symbol:
+        return sexpdata.Symbol(token)
 
 
 def sexpdata_tree(text: str) -> object:
-    """The reading of sexpdata itself, told not to turn words into numbers, truth values or empty lists."""
-
-    class Plain(sexpdata.Parser):  # type: ignore[misc]
-        def atom(self, token: str) -> object:
-            return sexpdata.Symbol(token)
-
     return Plain(text, nil=None, true=None, line_comment="\0").parse()
+
+
+def tree(text: str) -> object:
+    return Symbols(text).parse()
 
 
 @pytest.mark.parametrize("name", ["flat-instances", "hierarchy-instances", "case", "no-design", "designs"])
 def test_the_tree_of_sexpdata_on_fixtures(name: str) -> None:
     text = (FIXTURES / "netlist" / "valid" / f"{name}.edf").read_text(encoding="utf-8")
-    assert tree(Form(FormParser(text).parse())) == sexpdata_tree(text)
+    assert tree(text) == sexpdata_tree(text)
 
 
 def test_the_tree_of_sexpdata_loads_where_no_word_is_special() -> None:
     text = (FIXTURES / "netlist" / "valid" / "flat-instances.edf").read_text(encoding="utf-8")
     plain = text.replace("2 0 0", "two zero zero").replace("Level 0", "Level none").replace("2026 2 3 10 0 0", "then")
     plain = plain.replace("'", "")
-    assert [sexpdata.loads(plain)] == tree(Form(FormParser(plain).parse()))
+    assert [sexpdata.loads(plain)] == tree(plain)
 
 
 def test_the_tree_of_sexpdata_with_strings_escaped_for_it() -> None:
     text = (FIXTURES / "netlist" / "valid" / "strings.edf").read_text(encoding="utf-8").replace("%", "")
     escaped = text.replace("\\", "\\\\")
-    assert tree(Form(FormParser(text).parse())) == sexpdata_tree(escaped)
+    assert tree(text) == sexpdata_tree(escaped)
 
 
 WORDS = st.text("abcXYZ_&019-+.[]';", min_size=1, max_size=6)
@@ -66,15 +71,22 @@ def written(item: object, blank: str) -> str:
 @STEADY
 @given(TREES, st.sampled_from([" ", "\n", "\t", "\r\n", " \f\v "]))
 def test_what_is_written_is_read(item: Form, blank: str) -> None:
-    read = FormParser(written(item, blank) + blank).parse()
-    assert read == [item]
-    assert tree(read[0]) == tree(item)
+    text = written(item, blank) + blank
+    assert FormParser(text).parse() == [item]
+    assert kinds(Symbols(text).parse()) == kinds([item])
+
+
+def kinds(item: object) -> object:
+    """What is a word, a string, a list."""
+    if isinstance(item, list):
+        return [kinds(each) for each in item]
+    return "word" if isinstance(item, Atom | sexpdata.Symbol) else "string"
 
 
 def test_words_stay_words() -> None:
     [form] = FormParser("(net INF nan t nil 1_000 1e5 0x10 -3 'a ;b [c])").parse()
     assert list(form) == ["net", "INF", "nan", "t", "nil", "1_000", "1e5", "0x10", "-3", "'a", ";b", "[c]"]
-    assert all(type(item) is Atom for item in form)
+    assert all(type(item) is str for item in form)
 
 
 def test_the_contract_of_the_parser_it_subclasses() -> None:
