@@ -70,10 +70,9 @@ def test_a_batch_of_corners_against_a_loop_and_against_scipy(name: str) -> None:
     at_once = seconds(batch) / CORNERS
     one_by_one = seconds(loop, 2) / LOOPED
     by_scipy = seconds(scipy, 1) / BY_SCIPY
-    print(
-        f"\n{name}: {CORNERS} corners in {1e3 * at_once * CORNERS:.1f} ms;"
-        f" the same solver corner by corner takes {one_by_one / at_once:.0f} times as long, scipy.optimize.root {by_scipy / at_once:.0f} times"
-    )
+    print(f"\n{name}: {CORNERS} corners in {1e3 * at_once * CORNERS:.1f} ms")
+    print(f"  the same solver corner by corner takes {one_by_one / at_once:.0f} times as long")
+    print(f"  scipy.optimize.root on plainly written equations takes {by_scipy / at_once:.0f} times as long")
 
 
 def test_a_limiter_complete_against_its_corners() -> None:
