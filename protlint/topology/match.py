@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Collection, Sequence
 
 from protlint.board.graph import Board
 from protlint.netlist.forms import no_collection
@@ -24,8 +24,11 @@ def find_limiters(board: Board, rules: Rules) -> Found:
         remarks: list[str] = []
         limiters: list[Limiter] = []
         sound = [match for match in matches if not match.pattern.fault]
-        for match, also in _one_for_each_shunt(sound, rules, board, remarks):
+        chosen = _one_for_each_shunt(sound, rules, board, remarks)
+        sensed = {element for match, _ in chosen for element in match.elements["pass"]}
+        for match, also in chosen:
             fitter.add_optional(match)
+            _leave_out_sensed(match, sensed)
             limiters.append(build_limiter(match, index, also, {one.id for one in limiters}))
         faults = find_faults(index, [match for match in matches if match.pattern.fault], rules, limiters)
     return Found(
@@ -62,6 +65,13 @@ def _one_for_each_shunt(
             part = board.parts[board.elements[shunt].parts[0]].id
             remarks.append(f"{part} fits {best.pattern.rule} and {', '.join(dict.fromkeys(level))} alike")
     return list(chosen.values())
+
+
+def _leave_out_sensed(match: Match, sensed: Collection[int]) -> None:
+    """Take pass devices that have a shunt of their own out of those beside this one that have none."""
+    beside = match.elements.get("pass.unsensed")
+    if beside:
+        match.elements["pass.unsensed"] = [element for element in beside if element not in sensed]
 
 
 def _rank(match: Match, rules: Rules) -> tuple[int, int]:

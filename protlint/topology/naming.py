@@ -64,7 +64,8 @@ def _add_fuses(match: Match, index: Index) -> None:
 
 def _report_net(match: Match, net: str, index: Index) -> int | None:
     for name, tests in match.pattern.nets.get(net, ()):
-        if name in match.nets and all(holds(test, match.nets, index) for test in tests):
+        asked = {name, *(one for test in tests for one in test.nets())}
+        if asked <= match.nets.keys() and all(holds(test, match.nets, index) for test in tests):
             return _output_net(match, name, index) if net == "output" else board_net(match, name, index)
     return None
 

@@ -28,6 +28,8 @@ def by_flags(test: Test, flags: Mapping[str, int]) -> bool | None:
         if decisive in answers:
             return decisive
         return None if None in answers else not decisive
+    if test.name in ("n-type", "p-type"):
+        return test.name == "n-type"
     is_rail = [flags[name] == RAIL for name in test.of if isinstance(name, str)]
     if test.name == "supply":
         return is_rail[0]
@@ -46,6 +48,8 @@ def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int
         return any(holds(one, nets, index, own) for one in test.of if isinstance(one, Test))
     if test.name == "and":
         return all(holds(one, nets, index, own) for one in test.of if isinstance(one, Test))
+    if test.name in ("n-type", "p-type"):
+        return test.name == "n-type"
     net, *others = (nets[name] for name in test.of if isinstance(name, str))
     voltage_V = index.voltage_V.get(net)
     match test.name:
@@ -65,8 +69,6 @@ def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int
             return net == others[0]
         case "apart":
             return net != others[0]
-        case "busier":
-            return len(index.at[net]) > len(index.at[others[0]])
         case "no-input":
             return _no_input(net, set(nets.values()), index, own)
         case "inner":

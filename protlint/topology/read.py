@@ -283,7 +283,7 @@ class _Reader:
             self.say(form, f"unknown test {form.head!r}: the tests are {', '.join((*TESTS, *sorted(COMBINING)))}")
             return None
         if len(form) != 1 + TESTS[form.head] or not all(isinstance(one, Atom) for one in form):
-            self.say(form, f"{form.head} takes {TESTS[form.head]} net name{'s' if TESTS[form.head] > 1 else ''}")
+            self.say(form, f"{form.head} takes {TESTS[form.head]} net name{'' if TESTS[form.head] == 1 else 's'}")
             return None
         return Test(form.head, tuple(map(str, form[1:])))
 

@@ -23,7 +23,7 @@ DIRECTED = frozenset({"diode", "zener"})
 MIRROR = {
     "npn": "pnp", "pnp": "npn", "npn-darlington": "pnp-darlington", "pnp-darlington": "npn-darlington", "nmos": "pmos",
     "pmos": "nmos", "lowest": "highest", "highest": "lowest", "npn-follows": "pnp-follows", "pnp-follows": "npn-follows",
-    "pulls-down": "pulls-up", "pulls-up": "pulls-down",
+    "pulls-down": "pulls-up", "pulls-up": "pulls-down", "n-type": "p-type", "p-type": "n-type",
 }  # fmt: skip
 """What ``mirrored`` swaps, besides the direction of ``along``."""
 
@@ -37,9 +37,9 @@ ANY = "any"
 """The net name that stands for whatever net there is."""
 
 TESTS: Mapping[str, int] = {
-    "ground": 1, "supply": 1, "lowest": 1, "highest": 1, "apart": 2, "same": 2, "busier": 2, "no-input": 1, "inner": 1,
+    "ground": 1, "supply": 1, "lowest": 1, "highest": 1, "apart": 2, "same": 2, "no-input": 1, "inner": 1,
     "undriven": 1, "closed": 1, "held": 1, "read": 1, "twin": 2, "npn-follows": 1, "pnp-follows": 1, "pulls-down": 3,
-    "pulls-up": 3,
+    "pulls-up": 3, "n-type": 0, "p-type": 0,
 }  # fmt: skip
 """Questions about nets, with the number of nets each takes; ``not``, ``or`` and ``and`` combine them."""
 
@@ -72,7 +72,7 @@ class Test:
         return Test(MIRROR.get(self.name, self.name), of)  # type: ignore[arg-type]
 
     def __str__(self) -> str:
-        return f"({self.name} {' '.join(map(str, self.of))})"
+        return f"({' '.join((self.name, *map(str, self.of)))})"
 
 
 @dataclass(frozen=True, slots=True)

@@ -179,3 +179,21 @@ def test_the_order_of_the_file_changes_nothing_but_order() -> None:
         limiter, nets = only("\n".join(lines[turn:] + lines[:turn]))
         assert limiter.roles == only(SINK)[0].roles
         assert nets == only(SINK)[1]
+
+
+def test_a_device_with_a_shunt_of_its_own_is_not_left_unsensed() -> None:
+    text = """
+    npn Q1 +12V B E1
+    npn Q2 +12V B E2
+    npn Q3 +12V B E3
+    resistor R1 E1 OUT =0.2
+    resistor R2 E2 OUT =0.2
+    resistor R3 E3 OUT =0.2
+    npn Q4 B E1 OUT
+    npn Q5 B E2 OUT
+    connector J1 1=OUT 2=GND
+    """
+    made, found = found_on(text)
+    assert [(one.id, one.roles["shunt"]) for one in found.limiters] == [("Q1", ("Q4",)), ("Q2", ("Q5",))]
+    for one in found.limiters:
+        assert [made.parts[made.elements[at].parts[0]].id for at in one.elements["pass.unsensed"]] == ["Q3"]
