@@ -14,7 +14,7 @@ from protlint.checks.derating import derated, share_of
 from protlint.findings import Finding, Level, NotChecked, WorkingLine
 from protlint.limits import UNSTATED, CheckSetting, LimiterLimits, Limits, Range
 from protlint.partdata.book import Figure
-from protlint.solve.bench import Bench
+from protlint.solve.bench import LATCH, TRIPPED_S, Bench
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.conditions import Condition, Known, solve_under
 from protlint.solve.memo import Memo
@@ -104,8 +104,10 @@ class Case:
 
     @property
     def lasts_s(self) -> float:
-        """How long a short lasts; for ever where the limits file does not say."""
-        return math.inf if self.needs.short_s is None else self.needs.short_s
+        """How long a short lasts: as the limits file says, else until a latch trips, else for ever."""
+        if self.needs.short_s is not None:
+            return self.needs.short_s
+        return TRIPPED_S if self.limiter.elements.get(LATCH) else math.inf
 
     def device_parts(self, *roles: str) -> Iterator[tuple[str, tuple[str, ...]]]:
         """Yield (part id, names of its devices in the circuit) of the parts in the given roles that have any."""

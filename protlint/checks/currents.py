@@ -9,6 +9,7 @@ from protlint.checks.drive_resistor import greatest_drive_resistance
 from protlint.checks.sizing import least_carries_A, sense_remedy
 from protlint.findings import NotChecked, WorkingLine
 from protlint.quantities import format_quantity
+from protlint.solve.bench import LATCH
 from protlint.solve.solution import Currents, Solution
 
 TRADE = "common practice of the trade"
@@ -22,6 +23,8 @@ def carry_not_met(case: Case) -> Iterator[Answer]:
         return
     row, carries_A = worst
     carry_A = case.needs.carry_A
+    if carry_A is not None and carries_A >= carry_A:
+        yield from _may_trip_before(case)
     if carry_A is None or carries_A >= carry_A or row.limited_by_output == "drive":
         return
     yield case.finding(
@@ -111,6 +114,20 @@ def _least_carries(case: Case) -> tuple[Currents, float] | None:
 
 def _high_most_A(row: Currents) -> float:
     return row.most_range_A[1] if row.most_range_A is not None else 0.0
+
+
+def _may_trip_before(case: Case) -> Iterator[Answer]:
+    """Say of a limiter that latches that its trip lies below what it carries without the latch."""
+    latching = [
+        case.board.parts[part].id
+        for index in case.limiter.elements.get(LATCH, ())
+        for part in case.board.elements[index].parts
+    ]
+    if latching:
+        yield NotChecked(
+            "carry-not-met",
+            f"the current at which {', '.join(latching)} trips: it lies below carries, how far is not solved",
+        )
 
 
 def _not_checked(case: Case, check: str) -> Iterator[Answer]:

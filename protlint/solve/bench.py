@@ -14,6 +14,13 @@ from protlint.solve.surroundings import MOST_DEVICES, Surroundings, survey_surro
 from protlint.toml_text import toml_key
 from protlint.topology.limiter import Limiter
 
+LATCH = "others.latch"
+"""The role of a transistor that holds the shunt on once it has tripped."""
+
+TRIPPED_S = 0.01
+"""Time in which a latch of two transistors has tripped for certain: a thousand times what its transistors need, and time
+enough for an RC before it; common practice of the trade."""
+
 
 @dataclass(frozen=True, slots=True)
 class Bench:
@@ -42,7 +49,7 @@ def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: Limite
     place = Place(board, limiter, around, limits, needs, _node_names(board, limiter, around))
     if len(around.elements) > MOST_DEVICES:
         return Bench(None, (_too_large(place),))
-    notes = Notes(assumed=[("circuit", sentence) for sentence in around.left_out])
+    notes = Notes(assumed=[("circuit", sentence) for sentence in (*around.left_out, *_latching(place))])
     held = hold_supplies(place, notes)
     shorts = short_nodes(place, held, notes)
     drive, feed = drive_of(place, held, notes)
@@ -76,6 +83,16 @@ def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: Limite
     return Bench(circuit, (), element_of, words, tuple(notes.assumed))
 
 
+def _latching(place: Place) -> list[str]:
+    board = place.board
+    names = [board.parts[part].id for index in place.limiter.elements.get(LATCH, ()) for part in board.elements[index].parts]
+    return [
+        f"{name}, which latches, is taken as a diode that passes the shunt's current: it trips somewhat below the figures "
+        f"given, and within {TRIPPED_S * 1e3:g} ms of a short"
+        for name in names
+    ]
+
+
 def _too_large(place: Place) -> Missing:
     net = place.limiter.nets["drive"]
     name = "?" if net is None else place.board.nets[net].name
@@ -96,6 +113,8 @@ def _nodes(place: Place, index: int, feed: int | None, feed_node: str) -> dict[s
     """Return an element's nodes by role; what a feeding supply gives the drive's parts comes from the feed's own node."""
     element = place.board.elements[index]
     nodes = {role: place.node_of[net] for role, net in element.terminals.items()}
+    if index in place.limiter.elements.get(LATCH, ()):
+        nodes["collector"] = nodes["base"]  # what it gives back to the shunt makes two states of one: here is the first
     carries_load = any(index in place.limiter.elements.get(role, ()) for role in ("pass", "driver", "sense", "shunt"))
     if feed is None or carries_load or index in place.around.power_path:
         return nodes

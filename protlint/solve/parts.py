@@ -41,6 +41,9 @@ def devices_of(place: Place, index: int, *, nodes: Mapping[str, str], notes: Not
         return _passive(place, element, parts, nodes, notes)
     part = parts[0]
     kind = element.kind.removesuffix("-darlington")
+    if kind not in TERMINALS:
+        notes.missing.append(Missing("circuit", part.id, f"a model of {part.id}: a {kind} is not modelled"))
+        return []
     if not set(TERMINALS[kind]) <= nodes.keys():
         notes.missing.append(Missing("part", part.id, f"pin roles of {part.id}, in [pins] or its part data"))
         return []

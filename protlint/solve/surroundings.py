@@ -68,7 +68,7 @@ def survey_surroundings(board: Board, limiter: Limiter, limits: Limits) -> Surro
     starts = [start] if limiter.nets["feed"] is None else [start, limiter.nets["feed"]]
     drive, entry, pins, fed_by = _find_drive(board, limits, own, walls, [net for net in starts if net is not None], limiter)
     stops = walls | ({drive} if drive is not None else set())
-    elements, left_out = _collect(board, own, stops, drive, limits)
+    elements, left_out = _collect(board, own, stops, drive)
     power_path = _path_to_supply(board, power)
     return Surroundings(
         elements=tuple(sorted(elements.union(power_path))),
@@ -204,7 +204,7 @@ def _feeding_supply(board: Board, fed: list[tuple[int, int]], limiter: Limiter) 
     return min(usable)[2] if usable else None
 
 
-def _collect(board: Board, own: set[int], stops: set[int], drive: int | None, limits: Limits) -> tuple[set[int], list[str]]:
+def _collect(board: Board, own: set[int], stops: set[int], drive: int | None) -> tuple[set[int], list[str]]:
     """Walk from the limiter's own elements; return the elements on the bench and what was left out of it."""
     elements = set(own)
     left_out: dict[int, str] = {}
