@@ -190,6 +190,8 @@ def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive 
     stays where it is.
     """
     around, board = place.around, place.board
+    if not held:
+        return None, None
     lowest_V, highest_V = min(one.usual for one in held.values()), max(one.usual for one in held.values())
     lowest, highest = Range(lowest_V, lowest_V, lowest_V), Range(highest_V, highest_V, highest_V)
     if around.drive is not None:
@@ -210,6 +212,8 @@ def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive 
     feed = place.limiter.nets["feed"]
     net = place.limiter.nets["drive"] if feed is None else feed
     name = "?" if net is None else board.nets[net].name
+    if net == around.power:  # its voltage is what is missing, and said to be
+        return None, None
     notes.missing.append(Missing("drive", None, f"[drive.{toml_key(name)}]: nothing on the board is seen to drive it"))
     return None, None
 

@@ -134,7 +134,7 @@ def _resistor(
     }
     values_ohm = {part.index: part.values.value or 0.0 for part in parts}
     if None in stated.values() and place.limits.assumes("resistor_tolerance"):
-        notes.assumed.append(("tolerance", f"{name}: {place.limits.resistor_tolerance * 100:g} %"))
+        notes.assumed.append(("tolerance", f"{name}: a tolerance of {place.limits.resistor_tolerance * 100:g} %"))
 
     def merged_ohm(sign: int) -> float:
         return merged_resistance(element.tree, lambda one: values_ohm[one] * (1.0 + sign * tolerance[one]))

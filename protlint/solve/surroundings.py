@@ -31,6 +31,9 @@ INPUT_NAMES = frozenset(
 )
 """Names of IC pins that take a signal and give none."""
 
+LEAD_AT_MOST_OHM = 10.0
+"""A larger resistor is not taken for one in a supply lead."""
+
 STEP_COST, TRANSISTOR_COST = 1, 3
 """A drive through passive parts is nearer than one behind a transistor."""
 
@@ -255,7 +258,7 @@ def _switched_by(board: Board, element: Element, stops: set[int], drive: int | N
 
 
 def _path_to_supply(board: Board, power: int, most_steps: int = 4) -> tuple[int, ...]:
-    """Return the series parts (fuse, inductor, diode, resistor) from the power side to the nearest supply, if any."""
+    """Return the series parts (fuse, inductor, diode, small resistor) from the power side to the nearest supply, if any."""
     if board.nets[power].supply is not None:
         return ()
     came: dict[int, tuple[int, int] | None] = {power: None}
@@ -268,12 +271,19 @@ def _path_to_supply(board: Board, power: int, most_steps: int = 4) -> tuple[int,
             continue
         for index, _ in board.elements_at[net]:
             element = board.elements[index]
-            if element.kind in PASSES_DC:
+            if _in_the_lead(element):
                 for other in other_nets(element, net):
                     if other not in came:
                         came[other] = (net, index)
                         queue.append((other, steps + 1))
     return ()
+
+
+def _in_the_lead(element: Element) -> bool:
+    """Tell whether an element may stand in a supply lead, with the whole load current through it."""
+    if element.kind == "resistor":
+        return element.value is not None and element.value <= LEAD_AT_MOST_OHM
+    return element.kind in ("fuse", "inductor", "diode")
 
 
 def _trace(came: Mapping[int, tuple[int, int] | None], net: int) -> tuple[int, ...]:
