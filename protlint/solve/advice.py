@@ -21,9 +21,9 @@ from protlint.solve.loop import USUAL, WITH_CONTROL, Held, hold, solve_loop
 from protlint.solve.modes import damping
 from protlint.solve.network import compile_network
 from protlint.solve.parameters import LINK_OHM, CircuitError
-from protlint.solve.solution import Advice, Effect, Fit, Loop, Step, Worst
+from protlint.solve.solution import Advice, Effect, Fit, Loop, Step
 from protlint.solve.wired import counting, linearise, look, wired_frequencies
-from protlint.solve.worst import Scene, damping_at, find_worst, make_scope, opening_scene
+from protlint.solve.worst import Scene, damping_at, find_worst, make_scope, opening_scene, scene_at
 
 AIM = 0.6
 COSTS = 0.05
@@ -155,7 +155,8 @@ def _smallest(
 
 @dataclass(frozen=True, slots=True)
 class _Trial:
-    """One place with a capacitor at it, ready for any value: ``known`` collects where smaller ones failed."""
+    """One place with a capacitor at it, ready for any value: ``known`` collects where smaller ones failed, each a scene and
+    the inductance in the short, the latest last."""
 
     place: str
     nodes: tuple[str, str]
@@ -163,7 +164,7 @@ class _Trial:
     expanded: Expanded
     opening: Scene
     ambients_degC: tuple[float, float, float]
-    known: list[Worst]
+    known: list[tuple[Scene, float]]
 
 
 def _bench(circuit: Circuit, ambients_degC: tuple[float, float, float], short: str | None) -> list[_Trial]:
@@ -192,12 +193,12 @@ def _tried(trial: _Trial, farad: float) -> tuple[float, float] | None:
     if own < AIM:
         return None
     scope = make_scope(trial.held.stage, expanded, trial.ambients_degC)
-    inner = trial.held.short.operating.inner
-    if any(damping_at(scope, one, inner) < AIM for one in trial.known):
+    if any(damping_at(scope, scene, wiring_H) < AIM for scene, wiring_H in reversed(trial.known)):
         return None
     worst = min(find_worst(scope, trial.opening), key=lambda one: one.damping)
     if worst.damping < AIM:
-        trial.known.append(worst)
+        scene = scene_at(scope, worst, trial.held.short.operating.inner)
+        trial.known.append((scene, worst.wiring_H or 0.0))
         return None
     return own, worst.damping
 

@@ -1,9 +1,9 @@
 """A limiter's linear circuit with wiring to the short, and which of its natural frequencies are the limiter's own.
 
 A mode is the limiter's where taking the shunt's transconductance out, at the same operating point, raises its damping by
-more than a quarter of itself, or to where it does not swing at all. Wiring and a board's output capacitance swing at dampings
-of a hundredth, of which a quarter is nothing: the rise has to be 0.25 at least where wiring lies in the short, 0.1 where none
-does. Which mode has become which is followed while the transconductance shrinks.
+more than a quarter of itself, or to where it does not swing at all. Wiring and a board's output capacitance swing at
+dampings of a hundredth, of which a quarter is nothing: the rise has to be 0.25 at least where wiring lies in the short, 0.1
+where none does. Which mode has become which is followed while the transconductance shrinks.
 """
 
 from __future__ import annotations

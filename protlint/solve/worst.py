@@ -84,41 +84,60 @@ def find_worst(scope: Scope, opening: Scene) -> tuple[Worst, ...]:
     ambients = len(scope.ambients_degC)
     first, wired = _linear(scope, opening)
     nominal = np.flatnonzero(~first.position.any(axis=0))[:ambients]
-    found: dict[float, list[Worst]] = {wiring_H: [Worst(1.0)] for wiring_H in WIRING_H}
+    found = {wiring_H: Worst(1.0) for wiring_H in WIRING_H}
     signs, owners = [], []
+    alone: list[tuple[float, NDArray[np.intp]]] = []
     for wiring_H in WIRING_H:
         s = wired_frequencies(wired, wiring_H)
         counts = counting(wired.pick(nominal), wiring_H, s[nominal])
+        found[wiring_H] = _least(scope, first, nominal, np.where(counts, s[nominal], np.inf), wiring_H)
         for lane, counting_here in zip(nominal, counts, strict=True):
             mine = np.flatnonzero(first.ambient == first.ambient[lane])
             own = _own(s[mine], counting_here)
-            found[wiring_H].append(_least(scope, first, mine, own, wiring_H))
             signs.append(_signs(first.position[:, mine], margin(own)))
             owners.append((wiring_H, first.ambient[lane]))
+            alone.append((wiring_H, mine[[int(np.argmin(damping(own).min(axis=1)))]]))
     if not owners:
-        return tuple(Worst(1.0) for _ in WIRING_H)
+        return tuple(found.values())
     inner = opening.run.operating.inner[:, :ambients]
     together = _solve(scope, np.array(signs).T, np.array([ambient for _, ambient in owners]), inner)
-    last, wired = _linear(scope, together)
+    last, wired_last = _linear(scope, together)
     for wiring_H in WIRING_H:
         lanes = np.flatnonzero([owners[lane][0] == wiring_H for lane in last.place])
         if len(lanes):
-            only = wired.pick(lanes)
-            s = wired_frequencies(only, wiring_H)
-            own = np.where(counting(only, wiring_H, s), s, np.inf)
-            found[wiring_H].append(_least(scope, last, lanes, own, wiring_H))
-    return tuple(min(found[wiring_H], key=lambda one: one.damping) for wiring_H in WIRING_H)
+            found[wiring_H] = min(found[wiring_H], _counted(scope, last, wired_last, lanes, wiring_H), key=_damping)
+    for wiring_H, lanes in alone:
+        # one axis by itself is hardly ever worse than all together; whose mode it is is asked only where it is
+        s = wired_frequencies(wired.pick(lanes), wiring_H)
+        if float(damping(s).min()) < found[wiring_H].damping:
+            found[wiring_H] = min(found[wiring_H], _counted(scope, first, wired, lanes, wiring_H), key=_damping)
+    return tuple(found.values())
 
 
-def damping_at(scope: Scope, place: Worst, inner: Array) -> float:
-    """Return the damping that counts at one ambient, wiring and corner, ``inner`` as for :func:`opening_scene`."""
-    if place.ambient_degC is None or place.wiring_H is None:
-        return 1.0
+def _damping(worst: Worst) -> float:
+    return worst.damping
+
+
+def _counted(scope: Scope, scene: Scene, wired: Wired, lanes: NDArray[np.intp], wiring_H: float) -> Worst:
+    """Return the least damping that counts among lanes of a scene."""
+    only = wired.pick(lanes)
+    s = wired_frequencies(only, wiring_H)
+    return _least(scope, scene, lanes, np.where(counting(only, wiring_H, s), s, np.inf), wiring_H)
+
+
+def scene_at(scope: Scope, place: Worst, inner: Array) -> Scene:
+    """Solve the one ambient and corner of a place that is one, ``inner`` as for :func:`opening_scene`."""
+    assert place.ambient_degC is not None
     position = np.array([[place.corner.get(f"{axis.device}.{axis.parameter}", 0.0)] for axis in scope.axes])
     ambient = np.array([scope.ambients_degC.index(place.ambient_degC)])
-    _, wired = _linear(scope, _solve(scope, position.reshape(len(scope.axes), 1), ambient, inner))
-    s = wired_frequencies(wired, place.wiring_H)
-    return float(damping(np.where(counting(wired, place.wiring_H, s), s, np.inf)).min(initial=1.0))
+    return _solve(scope, position.reshape(len(scope.axes), 1), ambient, inner)
+
+
+def damping_at(scope: Scope, scene: Scene, wiring_H: float) -> float:
+    """Return the least damping that counts in a scene with one inductance in the short."""
+    _, wired = _linear(scope, scene)
+    s = wired_frequencies(wired, wiring_H)
+    return float(damping(np.where(counting(wired, wiring_H, s), s, np.inf)).min(initial=1.0))
 
 
 def _solve(scope: Scope, position: Array, ambient: NDArray[np.intp], inner: Array) -> Scene:
