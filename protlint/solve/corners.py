@@ -130,8 +130,8 @@ def extremes(
 
     ``evaluate(corner (axes, lanes), figure (lanes,))`` returns the figures with those indices at those corners; ``nominal``
     (figures,) are their nominal values. Signs come from one axis at a time. Then, from all at their worst together, every
-    axis is tried again at its other positions, and kept where that is worse still, until nothing is: what one axis does can
-    turn round where the others lie. Returns corners (axes, 2 figures), lowest first, and the figures there (2 figures,). A
+    axis is tried again at its other end, and kept where that is worse still, until nothing is: what one axis does can turn
+    round where the others lie. Returns corners (axes, 2 figures), lowest first, and the figures there (2 figures,). A
     figure that does not exist is NaN and never an extreme.
     """
     figures = len(nominal)
@@ -170,15 +170,18 @@ def extremes(
 
 
 def _neighbours(corner: Array, columns: IntArray) -> tuple[Array, IntArray]:
-    """Return, for each column, the corners with one axis moved to each of its two other positions, and their column."""
-    axes = len(corner)
-    trial = np.repeat(corner[:, columns], 2 * axes, axis=1)
-    owner = np.repeat(columns, 2 * axes)
-    axis = np.tile(np.repeat(np.arange(axes), 2), len(columns))
-    lane = np.arange(trial.shape[1])
-    turn = np.tile([1.0, 2.0], axes * len(columns))
-    trial[axis, lane] = (trial[axis, lane] + 1.0 + turn) % 3.0 - 1.0
-    return trial, owner
+    """Return the corners that differ from chosen columns in one axis, turned to its other end (from nominal to either), and
+    the column of each."""
+    trials, owners = [], []
+    for column in columns:
+        here = corner[:, column]
+        at_end, nominal = np.flatnonzero(here != 0.0), np.flatnonzero(here == 0.0)
+        axis = np.concatenate((at_end, nominal, nominal))
+        trial = np.repeat(here[:, None], len(axis), axis=1)
+        trial[axis, np.arange(len(axis))] = np.concatenate((-here[at_end], -np.ones(len(nominal)), np.ones(len(nominal))))
+        trials.append(trial)
+        owners.append(np.full(len(axis), column))
+    return np.concatenate(trials, axis=1), np.concatenate(owners)
 
 
 def _moves(corner: Array, trials: Array, gains: Array, best: float) -> Array | None:

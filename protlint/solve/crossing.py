@@ -12,8 +12,9 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from protlint.solve.dc import CLOSE_V, companions, eliminate, evaluate, fold, inner_step, limited, linear_part, through
+from protlint.solve.dc import CLOSE_V, companions, evaluate, fold, inner_step, limited, linear_part, through
 from protlint.solve.devices import Array, Source
+from protlint.solve.elimination import eliminate
 from protlint.solve.lanes import Lanes, Parameters, parameters
 from protlint.solve.locus import Conditions
 from protlint.solve.network import Network
@@ -121,9 +122,9 @@ def _linearised(pair: _Pair, work: Array) -> tuple[Array, Array, Callable[[Array
     port_V, companion, conductance = companions(network, folded, pair.outer_V)
     companion_slope = through(network, folded, pair.outer_slope)
     ports = network.incidence[:, :unknown]
-    system = pair.matrix + (network.scatter @ conductance).reshape(pair.matrix.shape)
+    system = pair.matrix + network.scatter @ conductance
     sides = np.stack((pair.right - ports.T @ companion, pair.right_slope - ports.T @ companion_slope), axis=1)
-    solved = eliminate(system, sides)
+    solved = eliminate(network.pattern, system, sides)
 
     def at_output(node_V: Array, known_V: Array, port_A: Array) -> Array:
         drops = network.resistor_incidence[:, :unknown] @ node_V + network.resistor_incidence[:, unknown:] @ known_V

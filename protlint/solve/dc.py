@@ -20,6 +20,7 @@ from numpy.typing import NDArray
 
 from protlint.solve import devices
 from protlint.solve.devices import Array, Evaluation
+from protlint.solve.elimination import eliminate
 from protlint.solve.lanes import Lanes, Parameters, parameters, take
 from protlint.solve.network import Network
 
@@ -124,8 +125,8 @@ def newton(
     for _ in range(ITERATIONS):
         folded = [fold(one) for one in evaluate(network, p, work)]
         port_V, companion, conductance = companions(network, folded, outer_V)
-        system = matrix + (network.scatter @ conductance).reshape(matrix.shape)
-        solved = eliminate(system, right - to_ports.T @ companion)
+        system = matrix + network.scatter @ conductance
+        solved = eliminate(network.pattern, system, right - to_ports.T @ companion)
         new = limited(network, p, work, work + inner_step(network, folded, to_ports @ solved + outer_V - port_V))
         moved = np.abs(new - work).max(axis=0, initial=0.0)
         done = moved < CLOSE_V
@@ -142,7 +143,7 @@ def newton(
             converged[active[done]] = True
             left = np.flatnonzero(~done)
             active, work, p, solved = active[left], new[:, left], take(p, left), solved[:, left]
-            matrix, right, outer_V = matrix[:, :, left], right[:, left], outer_V[:, left]
+            matrix, right, outer_V = matrix[:, left], right[:, left], outer_V[:, left]
             done = np.zeros(len(left), dtype=bool)
     inner[:, active], voltages[:, active], converged[active] = work, solved, done
     return inner, voltages, converged
@@ -158,15 +159,14 @@ def settle(network: Network, p: Parameters, known_V: Array) -> Array:
     count, unknown = known_V.shape[1], network.unknown
     matrix, right, outer_V = linear_part(network, p, known_V, 0.0)
     to_ports = np.ascontiguousarray(network.incidence[:, :unknown])
-    diagonal = np.arange(unknown)
     voltages, hold_S = np.zeros((unknown, count)), np.full(count, FIRST_HOLD_S)
     work = np.zeros((network.ports, count))
     for _ in range(SETTLING_STEPS):
         folded = [fold(one) for one in evaluate(network, p, work)]
         port_V, companion, conductance = companions(network, folded, outer_V)
-        system = matrix + (network.scatter @ conductance).reshape(matrix.shape)
-        system[diagonal, diagonal] += hold_S
-        solved = eliminate(system, right - to_ports.T @ companion + hold_S * voltages)
+        system = matrix + network.scatter @ conductance
+        system[network.pattern.diagonal] += hold_S
+        solved = eliminate(network.pattern, system, right - to_ports.T @ companion + hold_S * voltages)
         new = limited(network, p, work, work + inner_step(network, folded, to_ports @ solved + outer_V - port_V))
         fair = np.abs(solved - voltages).max(axis=0, initial=0.0) < LONGEST_SETTLING_STEP_V
         work, voltages = np.where(fair, new, work), np.where(fair, solved, voltages)
@@ -193,39 +193,18 @@ def evaluate(network: Network, p: Parameters, inner: Array) -> list[Evaluation]:
     return results
 
 
-def eliminate(matrix: Array, right: Array) -> Array:
-    """Solve (n, n, lanes) systems for right sides (n, lanes) or (n, sides, lanes) by Gaussian elimination.
-
-    Nodal matrices bear elimination along the diagonal, without exchanges; a lane that does not comes out as infinite or NaN
-    and is caught.
-    The inputs are overwritten.
-    """
-    size = len(right)
-    for k in range(size - 1):
-        factor = matrix[k + 1 :, k] / matrix[k, k]
-        matrix[k + 1 :, k + 1 :] -= factor[:, None] * matrix[k, k + 1 :]
-        right[k + 1 :] -= (factor if right.ndim == 2 else factor[:, None]) * right[k]
-    for k in range(size - 1, -1, -1):
-        right[k] /= matrix[k, k]
-        right[:k] -= (matrix[:k, k] if right.ndim == 2 else matrix[:k, k, None]) * right[k]
-    return right
-
-
 def linear_part(network: Network, p: Parameters, known_V: Array, bridge_S: float) -> tuple[Array, Array, Array]:
-    """Return the resistors' nodal matrix, their right side, and the known voltages' part of the port voltages."""
+    """Return the resistors' nodal matrix (entries, lanes), their right side, and the known voltages' part of the port
+    voltages."""
     unknown, count = network.unknown, known_V.shape[1]
-    matrix = (network.resistor_scatter @ np.broadcast_to(p.conductance, (len(p.conductance), count))).reshape(
-        unknown, unknown, count
-    )
-    diagonal = np.arange(unknown)
-    matrix[diagonal, diagonal] += NODE_LEAK_S
+    matrix = network.resistor_scatter @ np.broadcast_to(p.conductance, (len(p.conductance), count))
+    matrix[network.pattern.diagonal] += NODE_LEAK_S
     into = network.resistor_incidence
     right = -into[:, :unknown].T @ (p.conductance * (into[:, unknown:] @ known_V))
     outer_V = network.incidence[:, unknown:] @ known_V
     if bridge_S:
-        ports = network.incidence[:, :unknown]
-        matrix += bridge_S * (ports.T @ ports)[:, :, None]
-        right -= bridge_S * (ports.T @ outer_V)
+        matrix += bridge_S * network.bridge_scatter[:, None]
+        right -= bridge_S * (network.incidence[:, :unknown].T @ outer_V)
     return matrix, right, outer_V
 
 

@@ -20,6 +20,7 @@ import numpy as np
 
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.devices import Array
+from protlint.solve.elimination import Pattern, least_degree_order, pattern_of, scatter
 from protlint.solve.parameters import LINK_OHM, CircuitError, complete
 
 DRIVE_SOURCE = "drive source"
@@ -55,8 +56,9 @@ class Network:
 
     ``incidence`` is (ports, nodes) with +1 at the control or positive end, -1 for the mirror types, so that every port sees
     an NPN or N-channel device; ``resistor_incidence`` (resistors, nodes).
-    ``scatter`` (unknown^2, conductances) adds the groups' port conductances into the nodal matrix, ``resistor_scatter``
-    the resistors'.
+    ``pattern`` is the structure of the nodal matrix of the unknown nodes, which stand in its order of elimination;
+    ``scatter`` (entries, conductances) adds the groups' port conductances into it, ``resistor_scatter`` the resistors',
+    ``bridge_scatter`` (entries,) one siemens across every port.
     """
 
     circuit: Circuit
@@ -68,8 +70,10 @@ class Network:
     resistor_base: dict[str, Array]
     incidence: Array
     resistor_incidence: Array
+    pattern: Pattern
     scatter: Array
     resistor_scatter: Array
+    bridge_scatter: Array
     limited_drive: bool
 
     @property
@@ -109,6 +113,9 @@ def compile_network(circuit: Circuit) -> Network:
         unknown = (*unknown, circuit.drive.node)
     _check_links(conducting, models, known, circuit)
     _check_floating(conducting, unknown, known, circuit.drive.node if not stiff else None)
+    together = [device.nodes for device in conducting]
+    unknown = least_degree_order(unknown, together)
+    pattern = pattern_of(unknown, together)
     place = {node: index for index, node in enumerate((*unknown, *known))}
 
     groups: list[Group] = []
@@ -158,8 +165,10 @@ def compile_network(circuit: Circuit) -> Network:
         resistor_base=resistor_base,
         incidence=incidence,
         resistor_incidence=resistor_incidence,
-        scatter=_scatter(incidence[:, : len(unknown)], pairs),
-        resistor_scatter=_scatter(resistor_incidence[:, : len(unknown)], [(row, row) for row in range(len(resistors))]),
+        pattern=pattern,
+        scatter=scatter(pattern, incidence[:, : len(unknown)], pairs),
+        resistor_scatter=scatter(pattern, resistor_incidence[:, : len(unknown)], _each_alone(len(resistors))),
+        bridge_scatter=scatter(pattern, incidence[:, : len(unknown)], _each_alone(len(incidence))).sum(axis=1),
         limited_drive=circuit.drive.current_A is not None,
     )
 
@@ -209,10 +218,8 @@ def _port_pairs(group: Group) -> list[tuple[int, int]]:
     ]
 
 
-def _scatter(incidence: Array, pairs: Sequence[tuple[int, int]]) -> Array:
-    nodes = incidence.shape[1]
-    columns = [np.outer(incidence[row], incidence[column]).ravel() for row, column in pairs]
-    return np.array(columns).T.copy() if columns else np.zeros((nodes * nodes, 0))
+def _each_alone(count: int) -> list[tuple[int, int]]:
+    return [(row, row) for row in range(count)]
 
 
 def _check_ends(circuit: Circuit) -> None:

@@ -49,13 +49,17 @@ def find_ranges(stage: Stage, nominal: Nominal) -> Ranges:
     """Find all ranges of a stage."""
     ambients = len(nominal.holds_A)
     figures = np.stack((nominal.begins.output_A, nominal.holds_A, nominal.carries_A, nominal.most_A))
-    existing = np.flatnonzero(np.isfinite(figures))
+    # where the locus is greatest in the short itself, what moves most is what moves holds
+    in_short = nominal.most_V == nominal.short.output_V
+    existing = np.flatnonzero(np.isfinite(np.concatenate((figures[:3], np.where(in_short, np.nan, figures[3])[None]))))
     probe = _probe(stage, nominal)
     corner, found = extremes(lambda at, which: probe(at, existing[which]), figures.ravel()[existing], len(stage.axes))
     ends = np.full((2, figures.size), np.nan)
     ends[:, existing] = found.reshape(2, len(existing))
     corners = np.zeros((2, len(stage.axes), figures.size))
     corners[:, :, existing] = corner.reshape(len(stage.axes), 2, len(existing)).swapaxes(0, 1)
+    of_most, of_holds = 3 * ambients + np.flatnonzero(in_short), ambients + np.flatnonzero(in_short)
+    ends[:, of_most], corners[:, :, of_most] = ends[:, of_holds], corners[:, :, of_holds]
     by_kind = {kind: ends.reshape(2, len(KINDS), -1)[:, place].copy() for place, kind in enumerate(KINDS)}
     _, holds, carries, most = (corners[:, :, place * ambients : (place + 1) * ambients] for place in range(len(KINDS)))
 
