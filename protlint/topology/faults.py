@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 
 from protlint.board.assemble import is_link
 from protlint.board.graph import Board
@@ -23,16 +23,16 @@ STOPS = ("others.base-stop", "others.gate-stop")
 
 def find_faults(index: Index, matches: Sequence[Match], rules: Rules, limiters: Sequence[Limiter]) -> tuple[FaultMatch, ...]:
     """Return the faults of a board, one a shunt, in board order of the shunts, from the matches of fault patterns."""
-    sound = {role: _claimed(limiters, role) for role in ("shunt", "pass", "driver")}
-    carriers, shunts = sound["pass"] | sound["driver"], sound["shunt"]
+    sound_carriers = {one for limiter in limiters for one in _of_role(limiter.elements, "pass", "driver")}
+    shunts = {one for limiter in limiters for one in _of_role(limiter.elements, "shunt")}
+    carriers = set(sound_carriers)
     found: dict[tuple[int, ...], Match] = {}
     for match in sorted(matches, key=lambda one: _rank(one, rules)):
         if not _touches_the_sense(match, index):
             continue
-        its_shunts = set(match.elements["shunt"])
-        its_carriers = {*match.elements["pass"], *match.elements.get("driver", ())}
+        its_shunts, its_carriers = _of_role(match.elements, "shunt"), _of_role(match.elements, "pass", "driver")
         # A carrier of a sound limiter has its shunt; what carries the load in one limiter, right or wrong, shunts no other.
-        if its_carriers & (sound["pass"] | sound["driver"] | shunts) or its_shunts & (carriers | shunts):
+        if its_carriers & (sound_carriers | shunts) or its_shunts & (carriers | shunts):
             continue
         found[tuple(sorted(its_shunts))] = match
         carriers |= its_carriers
@@ -66,8 +66,9 @@ def _touches_the_sense(match: Match, index: Index) -> bool:
     return not shorted or wired(sense) <= wired(match.own - set(sense))
 
 
-def _claimed(limiters: Sequence[Limiter], role: str) -> set[int]:
-    return {element for limiter in limiters for element in limiter.elements.get(role, ())}
+def _of_role(elements: Mapping[str, Sequence[int]], *heads: str) -> set[int]:
+    """Return the elements of all roles that begin with one of these words."""
+    return {one for role, found in elements.items() if role.split(".")[0] in heads for one in found}
 
 
 def _fault(match: Match, index: Index, rules: Rules) -> FaultMatch:

@@ -197,3 +197,20 @@ def test_a_device_with_a_shunt_of_its_own_is_not_left_unsensed() -> None:
     assert [(one.id, one.roles["shunt"]) for one in found.limiters] == [("Q1", ("Q4",)), ("Q2", ("Q5",))]
     for one in found.limiters:
         assert [made.parts[made.elements[at].parts[0]].id for at in one.elements["pass.unsensed"]] == ["Q3"]
+
+
+def test_a_shunt_behind_a_follower_that_drives_the_stage_is_a_fault() -> None:
+    text = """
+    npn Q1 +12V DRV M1
+    npn Q2 +12V M1 M2
+    npn Q3 +12V M2 E
+    resistor R1 E OUT =0.2
+    npn Q4 M1 E OUT
+    ic U1 OUT=DRV VCC=+12V GND=GND
+    connector J1 1=OUT 2=GND
+    """
+    made, found = found_on(text)
+    assert found.limiters == ()
+    (fault,) = found.faults
+    assert (fault.fault, fault.group.roles["shunt"]) == ("collector-not-on-the-drive", ("Q4",))
+    assert [(part, made.nets[net].name) for part, net in fault.moves] == [(("Q4", "collector"), "DRV")]
