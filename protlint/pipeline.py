@@ -16,7 +16,7 @@ from protlint.checks.case import Case
 from protlint.checks.catalogue import CheckRow, load_catalogue
 from protlint.checks.load import StartUp, start_up_of
 from protlint.checks.part_fails import IfPartFails, if_a_part_fails
-from protlint.checks.table import BOARD_CHECKS, CHECKS, WITHOUT_SOLUTION
+from protlint.checks.table import BOARD_CHECKS, BOUNDED, CHECKS, WITHOUT_SOLUTION
 from protlint.findings import LEVELS, Finding, Level, NotChecked, identifying_parts, stamp_fingerprints
 from protlint.limits import CheckSetting, LimiterLimits, Limits, load_limits, needs_of
 from protlint.netlist import read_netlist
@@ -232,6 +232,9 @@ def _review_limiter(whole: _Whole, limiter: Limiter) -> tuple[ReviewedLimiter, C
         not_checked.append(NotChecked("currents", solution.not_solved))
     for check, ask in CHECKS.items():
         if solution.not_solved is not None and check not in WITHOUT_SOLUTION:
+            continue
+        if check in BOUNDED and case.unbounded:
+            not_checked.append(NotChecked(check, case.drive_bound))
             continue
         answers = list(ask(case))
         not_checked += [answer for answer in answers if isinstance(answer, NotChecked)]

@@ -15,6 +15,7 @@ from protlint.findings import Finding, Level, NotChecked, WorkingLine
 from protlint.limits import UNSTATED, CheckSetting, LimiterLimits, Limits, Range
 from protlint.partdata.book import Figure
 from protlint.solve.bench import LATCH, TRIPPED_S, Bench
+from protlint.solve.boundary import FEED
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.conditions import Condition, Known, solve_under
 from protlint.solve.memo import Memo
@@ -23,6 +24,9 @@ from protlint.toml_text import toml_key
 from protlint.topology.limiter import Limiter
 
 T = TypeVar("T")
+
+UNBOUNDED_A = 1e3
+"""No limiter of a board holds as much: where a solved current does, the drive is stated too stiff."""
 
 ALL_ASSUMPTIONS = ("drive", "short", "supply", "model", "tolerance", "circuit", "ambient_degC", "vbe_spread_V")
 """Everything a number can rest on that nobody stated: subjects of the bench, and fields of the limits file."""
@@ -94,6 +98,20 @@ class Case:
         """Return points of all ambients with the row of currents of each; empty where one could not be solved."""
         rows = self.solution.currents
         return list(zip(rows, points, strict=True)) if len(rows) == len(points) else []
+
+    @property
+    def unbounded(self) -> bool:
+        """Tell whether nothing bounds a current of the held short, so that its figures mean nothing: a stiff drive straight
+        onto junctions."""
+        held = self.solution.high_short
+        return any(abs(state.current_A) > UNBOUNDED_A for point in held for state in point.states.values())
+
+    @property
+    def drive_bound(self) -> str:
+        """What would bound the drive: the limits-file key of its current; of a supply that feeds it, a resistance."""
+        node = self.circuit.drive.node
+        fed_by = node.removesuffix(FEED)
+        return f"[drive.{toml_key(node)}] current" if fed_by == node else f"a resistance between {fed_by} and the shunt"
 
     @property
     def drive_ends_V(self) -> tuple[Range, Range]:

@@ -41,12 +41,31 @@ def drive_unlimited(case: Case) -> Iterator[Answer]:
     check = "drive-unlimited"
     if case.circuit.drive.current_A is not None:
         return
+    if case.unbounded:
+        yield _unbounded(case)
+        return
     for part_id, rows in taken_by_shunt(case).items():
         found = list(_excesses(case, check, part_id, rows))
         yield from (one for one in found if isinstance(one, NotChecked))
         over = [one for one in found if isinstance(one, Excess) and one.ratio > 1.0]
         if over:
             yield _unlimited(case, part_id, max(over, key=lambda one: one.ratio))
+
+
+def _unbounded(case: Case) -> Answer:
+    """Say that nothing at all stands between the drive and the junctions."""
+    parts = case.parts("shunt")
+    node = case.circuit.drive.node
+    return case.finding(
+        "drive-unlimited",
+        f"nothing bounds what the drive on {node} gives: neither a resistance nor a stated limit stands between it and "
+        f"{', '.join(parts)}",
+        parts=parts,
+        working=(),
+        remedy=f"fit a resistor in series with the drive, or state {case.drive_bound}",
+        assumption=case.assumes(*ALL_ASSUMPTIONS),
+        subject="unbounded",
+    )
 
 
 def _excesses(case: Case, check: str, part_id: str, rows: tuple[Taken, ...]) -> Iterator[Excess | NotChecked]:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Sequence
 from dataclasses import replace
 
 from protlint.checks.case import Case
@@ -33,7 +33,7 @@ def least_drive_resistance(case: Case, times: float, does: Callable[[Solution], 
     end_V = max((drive.low_V.usual, drive.high_V.usual), key=lambda volts: abs(volts - point.output_V))
     guess_ohm = max(now_ohm, abs(end_V - point.output_V) / abs(point.drive_A), 1.0) * times
     values = within(max(now_ohm, guess_ohm / REACH, 1.0), guess_ohm * REACH, "E24")
-    return _first(case, names, now_ohm, (ohm for ohm in values if ohm > now_ohm), does)
+    return _first(case, names, now_ohm, [ohm for ohm in values if ohm > now_ohm], does)
 
 
 def greatest_drive_resistance(case: Case, does: Callable[[Solution], bool]) -> str | None:
@@ -43,7 +43,7 @@ def greatest_drive_resistance(case: Case, does: Callable[[Solution], bool]) -> s
     if not names:
         return None
     values = within(LEAST_SHARE * now_ohm, now_ohm, "E24")
-    return _first(case, names, now_ohm, (ohm for ohm in reversed(values) if ohm < now_ohm), does)
+    return _first(case, names, now_ohm, [ohm for ohm in reversed(values) if ohm < now_ohm], does)
 
 
 def _drive_resistors(case: Case) -> tuple[tuple[str, ...], float]:
@@ -53,15 +53,23 @@ def _drive_resistors(case: Case) -> tuple[tuple[str, ...], float]:
 
 
 def _first(
-    case: Case, names: tuple[str, ...], now_ohm: float, values: Iterable[float], does: Callable[[Solution], bool]
+    case: Case, names: tuple[str, ...], now_ohm: float, values: Sequence[float], does: Callable[[Solution], bool]
 ) -> str | None:
-    for ohm in values:
+    """Return the first of the values that does, as a remedy; once one does, all after it do: found by halving."""
+
+    def fits(ohm: float) -> bool:
         solution = solve_again(case, _with_drive(case.circuit, names, now_ohm, ohm))
-        if solution.not_solved is None and does(solution):
-            parts = case.parts("drive")
-            where = f"as {parts[0]}" if len(parts) == 1 else "in series with the drive"
-            return f"fit {format_quantity(ohm, 'ohm')} {where}"
-    return None
+        return solution.not_solved is None and does(solution)
+
+    low, high = 0, len(values)
+    while low < high:
+        middle = (low + high) // 2
+        low, high = (low, middle) if fits(values[middle]) else (middle + 1, high)
+    if low == len(values):
+        return None
+    parts = case.parts("drive")
+    where = f"as {parts[0]}" if len(parts) == 1 else "in series with the drive"
+    return f"fit {format_quantity(values[low], 'ohm')} {where}"
 
 
 def _with_drive(circuit: Circuit, names: tuple[str, ...], now_ohm: float, ohm: float) -> Circuit:

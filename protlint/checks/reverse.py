@@ -116,9 +116,15 @@ def has_other_half(case: Case) -> bool:
 
 
 def _mirrored_V(case: Case) -> float:
-    """Return the drive's voltage while an equal other half holds the short: as far on the other side of the output."""
+    """Return the drive's voltage while an equal other half holds the short: as far on the other side of the output as this
+    half's own drops, from base to emitter and across the sense resistance."""
     held = case.solution.held_short
-    return 0.0 if held is None else 2.0 * held.output_V - held.drive_V
+    if held is None:
+        return 0.0
+    drops = [sum(abs(held.states[name].control_V) for name in names) for _, names in case.device_parts("pass", "driver")]
+    sensed = max((abs(held.states[name].voltage_V) for name in case.circuit.sense), default=0.0)
+    sign = 1.0 if case.limiter.polarity == "n" else -1.0
+    return held.output_V - sign * (sum(drops) + sensed)
 
 
 def _held_up(case: Case) -> bool:

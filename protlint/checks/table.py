@@ -9,6 +9,7 @@ from protlint.checks import (
     currents,
     drive,
     heat,
+    hidden,
     inputs,
     load,
     loop,
@@ -60,11 +61,20 @@ WITHOUT_SOLUTION = frozenset(
 )
 """Those that are asked even where the circuit could not be solved."""
 
+BOUNDED = frozenset(
+    {
+        "base-stop-absent", "base-stop-low", "base-stop-high", "sense-resistor-power", "resistor-power", "driver-overloaded",
+        "shunt-overloaded", "reverse-base-emitter", "pass-overheated", "pass-outside-safe-area",
+    }
+)  # fmt: skip
+"""Those that are not asked where nothing bounds the drive: drive-unlimited then says all there is to say."""
+
 BOARD_CHECKS: Mapping[str, Callable[[BoardCase], Iterable[BoardAnswer]]] = {
     **{fault: wiring.wiring_check(fault) for fault in wiring.WIRING_FAULTS},
     "limiter-absent": unguarded.limiter_absent,
     "second-road": second_road.second_road,
     "halves-unequal": sets.halves_unequal,
     "channels-unequal": sets.channels_unequal,
+    "pins-unknown": hidden.hidden_by_unknown_pins,
 }
 """Asked of the whole board once, when every limiter has been asked."""

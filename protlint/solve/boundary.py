@@ -15,6 +15,9 @@ from protlint.solve.surroundings import Surroundings, regulator_across
 from protlint.toml_text import toml_key
 from protlint.topology.limiter import Limiter
 
+FEED = " (feed)"
+"""Behind a supply's name: the node of its own that a drive straight from that supply gets."""
+
 
 @dataclass(frozen=True, slots=True)
 class Missing:
@@ -204,7 +207,7 @@ def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive 
     if around.fed_by is not None:
         supply = board.nets[around.fed_by].supply
         assert supply is not None
-        node = f"{place.node_of[around.fed_by]} (feed)"
+        node = place.node_of[around.fed_by] + FEED
         notes.words[node] = f"feed from {board.nets[around.fed_by].name}: {supply.voltage_V.usual:g} V"
         if place.limiter.polarity == "n":
             return Drive(node=node, low_V=lowest, high_V=supply.voltage_V), around.fed_by

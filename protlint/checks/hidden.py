@@ -1,0 +1,80 @@
+"""Is there a limiter that nobody sees because the pins of its transistors cannot be told apart."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+from protlint.board.graph import Board, Element
+from protlint.checks.board_case import BoardAnswer, BoardCase
+from protlint.findings import Finding
+from protlint.solve.surroundings import CONTROL
+
+SENSE_OHM = 100.0
+"""Sense resistors of limiters are smaller; common practice of the trade."""
+
+CROWDED = 64
+"""A net with more on it is a supply, whatever it is called."""
+
+
+def hidden_by_unknown_pins(whole: BoardCase) -> Iterator[BoardAnswer]:
+    """Yield a finding for each pair of transistors that lie as pass device and shunt do, the pins of one or both unknown.
+
+    A small resistor stands between a net of the one and a net of the other, they share another net, and the other reaches
+    the near end of that resistor too, itself or through one more resistor.
+    """
+    board = whole.board
+    taken = {index for one in whole.found.limiters for indices in one.elements.values() for index in indices}
+    for element in board.elements:
+        if element.kind in CONTROL and element.index not in taken:
+            for other in _shunts_of(board, element):
+                if other.index not in taken and (_unknown(element) or _unknown(other)):
+                    taken |= {element.index, other.index}
+                    yield _suspected(board, element, other)
+
+
+def _unknown(element: Element) -> bool:
+    return CONTROL[element.kind] not in element.terminals
+
+
+def _shunts_of(board: Board, element: Element) -> Iterator[Element]:
+    """Yield the transistors that would fit as the shunt of a pass device."""
+    nets = set(element.terminals.values())
+    for near in sorted(nets):
+        if board.nets[near].supply is not None or len(board.elements_at[near]) > CROWDED:
+            continue
+        beside = _beyond_resistors(board, near) | {near}
+        for index, _ in board.elements_at[near]:
+            sense = board.elements[index]
+            if sense.kind != "resistor" or sense.value is None or not 0.0 < sense.value < SENSE_OHM:
+                continue
+            for far in set(sense.terminals.values()) - nets:
+                for other_index, _ in board.elements_at[far] if len(board.elements_at[far]) <= CROWDED else ():
+                    other = board.elements[other_index]
+                    its = set(other.terminals.values())
+                    if other.kind in CONTROL and its & beside and its & nets - {near, far}:
+                        yield other
+
+
+def _beyond_resistors(board: Board, net: int) -> set[int]:
+    return {
+        other
+        for index, _ in board.elements_at[net]
+        if board.elements[index].kind == "resistor"
+        for other in board.elements[index].terminals.values()
+    }
+
+
+def _suspected(board: Board, element: Element, other: Element) -> Finding:
+    parts = [board.parts[one.parts[0]] for one in (element, other)]
+    unknown = [part for part, one in zip(parts, (element, other), strict=True) if _unknown(one)]
+    names = ", ".join(part.id for part in unknown)
+    keys = " and ".join(dict.fromkeys(f"[pins.{part.part_number or part.part.cell}]" for part in unknown))
+    return Finding(
+        check="pins-unknown",
+        limiter=None,
+        parts=tuple(part.id for part in parts),
+        message=f"{parts[0].id} and {parts[1].id} lie as a limiter's pass device and shunt do, but nobody knows which pin "
+        f"of {names} is which",
+        remedy=f"state the roles of its pins in {keys} of the limits file or in its part data",
+        level="warning",
+    )

@@ -1,0 +1,71 @@
+"""Values, pins and part data: what keeps a limiter from being judged is named, with its part."""
+
+from __future__ import annotations
+
+from tests.support.desk import found, the_one, unchecked
+from tests.support.judged import Job, sink
+
+
+def test_an_unreadable_value_is_quoted_and_the_limiter_not_judged() -> None:
+    review = sink().drawn(("R2 RES 2.2", "R2 RES 2.2.2")).review()
+    (one,) = found(review, "value-unreadable")
+    assert one.parts == ("R2",)
+    assert '"2.2.2"' in one.message
+    assert the_one(review).verdict in ("fails", "not judged")
+
+
+def test_a_value_elsewhere_on_the_board_is_nobodys_business() -> None:
+    review = sink().drawn(("C1 CAP", "R9 RES ??? +12V LED\nC1 CAP")).review()
+    assert not found(review, "value-unreadable")
+
+
+def test_a_transistor_on_the_bench_with_unknown_pins_is_named() -> None:
+    # a level shifter between command and drive whose pins have numbers only
+    board = sink().drawn(
+        ("R1 RES 390 CMD BASE", "R1 RES 390 COL BASE"), ("Q1 NPN", "Q5 PNP QSP1 1=COL 2=CB 3=+12V\nR5 RES 1k CMD CB\nQ1 NPN")
+    )
+    review = board.review()
+    (one,) = found(review, "pins-unknown")
+    assert one.parts == ("Q5",)
+    assert "QSP1" in (one.remedy or "")
+    known = board.limited("pins", "QSP1", **{"1": "collector", "2": "base", "3": "emitter"}).review()
+    assert not found(known, "pins-unknown")
+
+
+def test_a_limiter_that_hides_behind_unknown_pins_is_suspected() -> None:
+    numbered = sink().drawn(("LAMP BASE SNS\n", "1=LAMP 2=BASE 3=SNS\n")).review()
+    assert numbered.limiters == ()
+    (one,) = found(numbered, "pins-unknown")
+    assert one.parts == ("Q1", "Q2")
+    known = sink().drawn(("LAMP BASE SNS\n", "1=LAMP 2=BASE 3=SNS\n"))
+    known = known.limited("pins", "QPN1", **{"1": "collector", "2": "base", "3": "emitter"})
+    assert not found(known.review(), "pins-unknown")
+    assert len(known.review().limiters) == 1
+
+
+def test_a_part_in_no_part_data_is_a_note_and_its_figures_an_assumption() -> None:
+    review = sink().drawn(("NPN QPN1", "NPN QXX9")).stated(cap="0.3 A").review()
+    (note,) = [one for one in review.findings if one.check == "part-data-missing"]
+    assert (note.level, note.parts) == ("note", ("Q1",))
+    assert all(one.level != "error" for one in found(review))
+    assert ("pass-overheated", "QXX9.ratings.tj_max") in unchecked(review)
+
+
+def test_a_parts_list_that_says_otherwise_is_named_with_its_line() -> None:
+    listed = Job(sink().board, sink().tables, listed="Designator,Value,Power\nR1,390,\nR2,2R7,0.5W\nR99,1k,\n")
+    parts = [(one.parts, one.level) for one in found(listed.review(), "part-data-contradicts")]
+    assert parts == [(("R2",), "warning"), (("R2",), "warning")]
+    assert all("parts.csv:3" in one.message for one in found(listed.review(), "part-data-contradicts"))
+
+
+def test_a_parts_list_about_parts_that_no_limiter_needs_is_left_alone() -> None:
+    board = sink().drawn(("C1 CAP", "R9 RES 1k +12V LED\nC1 CAP"))
+    listed = Job(board.board, board.tables, listed="Designator,Value\nR9,2k2\n")
+    assert not found(listed.review(), "part-data-contradicts")
+
+
+def test_thermal_figures_that_contradict_each_other_are_a_note() -> None:
+    review = sink().rated("QPN1", slope_case="0.4 W/K").review()
+    (one,) = [one for one in review.findings if one.check == "part-data-contradicts"]
+    assert (one.level, one.parts) == ("note", ("Q1",))
+    assert one.working
