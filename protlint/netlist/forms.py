@@ -203,7 +203,7 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
         InputError : unbalanced parentheses, an unterminated string, nesting past :data:`NESTING_LIMIT`.
         """
         heads, reducers, places = _Table(self.head), self.reducers, self.places
-        # Where words are made of what stands there, one serves for all its places; where they are not, looking it up costs more.
+        # Where words are made of what stands there, one serves all its places; where not, looking it up only costs.
         atoms = None if type(self).atom is FormParser.atom else _Table(self.atom)
         heads[None] = None if reducers else ""
         stack: list[Form] = []
