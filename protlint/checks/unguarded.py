@@ -26,6 +26,9 @@ OTHER_POLARITY = {
 }  # fmt: skip
 """What drives the output device of a complementary pair."""
 
+CROWDED = 64
+"""A net with more terminals than this is a rail, whatever its name: no lead of one device."""
+
 FARTHEST = 4
 """Resistors in a row through which somebody may watch a net."""
 
@@ -54,8 +57,9 @@ def limiter_absent(whole: BoardCase) -> Iterator[BoardAnswer]:
     """Yield a finding for each output that a power device feeds through a resistor that nothing watches, without a fuse."""
     check = "limiter-absent"
     by_output: dict[int, list[tuple[Stage, float]]] = {}
+    leaving = _leaving(whole)
     for stage in _stages(whole):
-        output = _output(whole, stage)
+        output = _output(whole, stage, leaving)
         if output is None or _fused(whole.board, stage) or _watched(whole.board, stage):
             continue
         rated_A = _rated_A(whole.board, stage.resistor)
@@ -90,7 +94,7 @@ def _stages(whole: BoardCase) -> Iterator[Stage]:
 
 
 def _with_resistor(board: Board, device: Element, near: int, load: int, control: int | None) -> Iterator[Stage]:
-    if board.nets[near].supply is not None:
+    if board.nets[near].supply is not None or len(board.elements_at[near]) > CROWDED:
         return
     for index, _ in board.elements_at[near]:
         resistor = board.elements[index]
@@ -103,7 +107,9 @@ def _with_resistor(board: Board, device: Element, near: int, load: int, control:
 def _driven_by_its_complement(board: Board, device: Element, near: int, control: int | None) -> bool:
     """Tell whether a device is the output of a complementary pair: its driver's emitter stands at its collector."""
     drivers = OTHER_POLARITY[device.kind]
-    return control is not None and any(
+    if control is None or len(board.elements_at[near]) > CROWDED:
+        return False
+    return any(
         role == "emitter"
         and board.elements[index].kind in drivers
         and board.elements[index].terminals.get("collector") == control
@@ -111,25 +117,23 @@ def _driven_by_its_complement(board: Board, device: Element, near: int, control:
     )
 
 
-def _output(whole: BoardCase, stage: Stage) -> int | None:
+def _leaving(whole: BoardCase) -> set[int]:
+    """Return the nets that leave the board, straight or through an inductor or a fuse, and the outputs of limiters."""
+    board = whole.board
+    leaving = {net.index for net in board.nets if any(board.parts[part].kind == "connector" for part, _ in net.pins)}
+    series = [set(one.terminals.values()) for one in board.elements if one.kind in ("inductor", "fuse")]
+    beyond = {net for ends in series if not leaving.isdisjoint(ends) for net in ends}
+    outputs = (limiter.nets["output"] for limiter in whole.found.limiters)
+    return leaving | beyond | {net for net in outputs if net is not None}
+
+
+def _output(whole: BoardCase, stage: Stage, leaving: Collection[int]) -> int | None:
     """Return the output net that a stage feeds from a supply, or None where it does not."""
     board = whole.board
     for supply, output in ((stage.load, stage.far), (stage.far, stage.load)):
         if board.nets[supply].supply is not None and board.nets[output].supply is None:
-            return output if _is_output(whole, output) else None
+            return output if output in leaving or _limits_speak_of(whole, output) else None
     return None
-
-
-def _is_output(whole: BoardCase, net: int) -> bool:
-    """Tell whether a net leaves the board, straight or through an inductor, or is known as an output otherwise."""
-    board = whole.board
-    if any(limiter.nets["output"] == net for limiter in whole.found.limiters) or _limits_speak_of(whole, net):
-        return True
-    beyond = [net]
-    for index, _ in board.elements_at[net]:
-        if board.elements[index].kind in ("inductor", "fuse"):
-            beyond += board.elements[index].terminals.values()
-    return any(board.parts[part].kind == "connector" for one in beyond for part, _ in board.nets[one].pins)
 
 
 def _limits_speak_of(whole: BoardCase, net: int) -> bool:
@@ -176,7 +180,7 @@ def _own_controls(board: Board, stage: Stage) -> set[int]:
     pending = [] if stage.control is None else [stage.control]
     while pending:
         net = pending.pop()
-        if net in own or board.nets[net].supply is not None:
+        if net in own or board.nets[net].supply is not None or len(board.elements_at[net]) > CROWDED:
             continue
         own.add(net)
         for index, role in board.elements_at[net]:
