@@ -14,7 +14,7 @@ import numpy as np
 
 from protlint.solve.dc import CLOSE_V, companions, evaluate, fold, inner_step, limited, linear_part, through
 from protlint.solve.devices import Array, Source
-from protlint.solve.elimination import eliminate
+from protlint.solve.elimination import eliminate, product
 from protlint.solve.lanes import Lanes, Parameters, parameters
 from protlint.solve.locus import Conditions
 from protlint.solve.network import Network
@@ -117,23 +117,28 @@ def _pair(network: Network, lanes: Lanes, drive_limit: float) -> _Pair:
 def _linearised(pair: _Pair, work: Array) -> tuple[Array, Array, Callable[[Array], Array]]:
     """Return the output current at no drive voltage and its slope (lanes,), and the function of drive voltages (lanes,) that
     gives the next inner voltages."""
-    network, unknown = pair.network, pair.network.unknown
+    network = pair.network
     folded = [fold(one) for one in evaluate(network, pair.p, work)]
     port_V, companion, conductance = companions(network, folded, pair.outer_V)
     companion_slope = through(network, folded, pair.outer_slope)
-    ports = network.incidence[:, :unknown]
-    system = pair.matrix + network.scatter @ conductance
-    sides = np.stack((pair.right - ports.T @ companion, pair.right_slope - ports.T @ companion_slope), axis=1)
+    ports, _ = network.port_parts
+    beside = np.flatnonzero(network.resistor_incidence[:, network.output])
+    of_unknown, of_known = (part[beside] for part in network.resistor_parts)
+    system = pair.matrix + product(network.scatter, conductance)
+    sides = np.stack(
+        (pair.right - product(ports.T, companion), pair.right_slope - product(ports.T, companion_slope)), axis=1
+    )
     solved = eliminate(network.pattern, system, sides)
 
     def at_output(node_V: Array, known_V: Array, port_A: Array) -> Array:
-        drops = network.resistor_incidence[:, :unknown] @ node_V + network.resistor_incidence[:, unknown:] @ known_V
-        through_A = port_A + through(network, folded, ports @ node_V)
+        through_A = port_A + through(network, folded, product(ports, node_V))
         at_ports: Array = network.incidence[:, network.output] @ through_A
-        return at_ports + network.resistor_incidence[:, network.output] @ (pair.p.conductance * drops)
+        drops = product(of_unknown, node_V) + product(of_known, known_V)
+        at_resistors: Array = network.resistor_incidence[beside, network.output] @ (pair.p.conductance[beside] * drops)
+        return at_ports + at_resistors
 
     def advance(drive_V: Array) -> Array:
-        across = ports @ (solved[:, 0] + drive_V * solved[:, 1]) + pair.outer_V + drive_V * pair.outer_slope
+        across = product(ports, solved[:, 0] + drive_V * solved[:, 1]) + pair.outer_V + drive_V * pair.outer_slope
         return work + inner_step(network, folded, across - port_V)
 
     line = at_output(solved[:, 0], pair.fixed_V, companion)

@@ -20,7 +20,7 @@ from numpy.typing import NDArray
 
 from protlint.solve import devices
 from protlint.solve.devices import Array, Evaluation
-from protlint.solve.elimination import eliminate
+from protlint.solve.elimination import eliminate, product
 from protlint.solve.lanes import Lanes, Parameters, parameters, take
 from protlint.solve.network import Network
 
@@ -120,14 +120,14 @@ def newton(
     active = np.arange(count)
     matrix, right, outer_V = linear_part(network, p, known_V, bridge_S)
     work = np.array(start, dtype=np.float64)
-    to_ports = np.ascontiguousarray(network.incidence[:, :unknown])
+    to_ports, _ = network.port_parts
     done = converged
     for _ in range(ITERATIONS):
         folded = [fold(one) for one in evaluate(network, p, work)]
         port_V, companion, conductance = companions(network, folded, outer_V)
-        system = matrix + network.scatter @ conductance
-        solved = eliminate(network.pattern, system, right - to_ports.T @ companion)
-        new = limited(network, p, work, work + inner_step(network, folded, to_ports @ solved + outer_V - port_V))
+        system = matrix + product(network.scatter, conductance)
+        solved = eliminate(network.pattern, system, right - product(to_ports.T, companion))
+        new = limited(network, p, work, work + inner_step(network, folded, product(to_ports, solved) + outer_V - port_V))
         moved = np.abs(new - work).max(axis=0, initial=0.0)
         done = moved < CLOSE_V
         lost = np.isnan(moved)
@@ -158,16 +158,16 @@ def settle(network: Network, p: Parameters, known_V: Array) -> Array:
     """
     count, unknown = known_V.shape[1], network.unknown
     matrix, right, outer_V = linear_part(network, p, known_V, 0.0)
-    to_ports = np.ascontiguousarray(network.incidence[:, :unknown])
+    to_ports, _ = network.port_parts
     voltages, hold_S = np.zeros((unknown, count)), np.full(count, FIRST_HOLD_S)
     work = np.zeros((network.ports, count))
     for _ in range(SETTLING_STEPS):
         folded = [fold(one) for one in evaluate(network, p, work)]
         port_V, companion, conductance = companions(network, folded, outer_V)
-        system = matrix + network.scatter @ conductance
+        system = matrix + product(network.scatter, conductance)
         system[network.pattern.diagonal] += hold_S
-        solved = eliminate(network.pattern, system, right - to_ports.T @ companion + hold_S * voltages)
-        new = limited(network, p, work, work + inner_step(network, folded, to_ports @ solved + outer_V - port_V))
+        solved = eliminate(network.pattern, system, right - product(to_ports.T, companion) + hold_S * voltages)
+        new = limited(network, p, work, work + inner_step(network, folded, product(to_ports, solved) + outer_V - port_V))
         fair = np.abs(solved - voltages).max(axis=0, initial=0.0) < LONGEST_SETTLING_STEP_V
         work, voltages = np.where(fair, new, work), np.where(fair, solved, voltages)
         hold_S = np.where(fair, hold_S * 0.4, np.minimum(hold_S * 8.0, 1e3))
@@ -196,15 +196,16 @@ def evaluate(network: Network, p: Parameters, inner: Array) -> list[Evaluation]:
 def linear_part(network: Network, p: Parameters, known_V: Array, bridge_S: float) -> tuple[Array, Array, Array]:
     """Return the resistors' nodal matrix (entries, lanes), their right side, and the known voltages' part of the port
     voltages."""
-    unknown, count = network.unknown, known_V.shape[1]
-    matrix = network.resistor_scatter @ np.broadcast_to(p.conductance, (len(p.conductance), count))
+    count = known_V.shape[1]
+    matrix = product(network.resistor_scatter, np.broadcast_to(p.conductance, (len(p.conductance), count)))
     matrix[network.pattern.diagonal] += NODE_LEAK_S
-    into = network.resistor_incidence
-    right = -into[:, :unknown].T @ (p.conductance * (into[:, unknown:] @ known_V))
-    outer_V = network.incidence[:, unknown:] @ known_V
+    of_unknown, of_known = network.resistor_parts
+    right = -product(of_unknown.T, p.conductance * product(of_known, known_V))
+    to_unknown, to_known = network.port_parts
+    outer_V = product(to_known, known_V)
     if bridge_S:
         matrix += bridge_S * network.bridge_scatter[:, None]
-        right -= bridge_S * (network.incidence[:, :unknown].T @ outer_V)
+        right -= bridge_S * product(to_unknown.T, outer_V)
     return matrix, right, outer_V
 
 
@@ -298,9 +299,8 @@ def limited(network: Network, p: Parameters, old: Array, new: Array) -> Array:
 def _known_currents(network: Network, p: Parameters, inner: Array, node_V: Array) -> Array:
     """Return the current that each known node's holder feeds into the circuit (known nodes, lanes)."""
     port_A = stack([one.port_A.reshape(-1, inner.shape[1]) for one in evaluate(network, p, inner)], inner.shape[1])
-    through = p.conductance * (network.resistor_incidence @ node_V)
-    known = slice(network.unknown, None)
-    return network.incidence[:, known].T @ port_A + network.resistor_incidence[:, known].T @ through
+    through = p.conductance * product(network.resistor_incidence, node_V)
+    return product(network.port_parts[1].T, port_A) + product(network.resistor_parts[1].T, through)
 
 
 def _fall_back(network: Network, p: Parameters, known_V: Array) -> tuple[Array, Array, NDArray[np.bool_]]:

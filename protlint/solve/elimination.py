@@ -15,6 +15,9 @@ import numpy as np
 
 from protlint.solve.devices import Array, IntArray
 
+_LARGEST_PRODUCT = 200_000
+"""Multiplications in one block of a product."""
+
 
 @dataclass(frozen=True, slots=True)
 class Pivot:
@@ -96,6 +99,22 @@ def eliminate(pattern: Pattern, matrix: Array, right: Array) -> Array:
             right[k] -= ((towards[:, None] if sides else towards) * right[pivot.others]).sum(axis=0)
         right[k] /= matrix[pivot.diagonal]
     return right
+
+
+def product(matrix: Array, lanes: Array) -> Array:
+    """Return a small matrix times many lanes (columns, lanes), in blocks.
+
+    A linear-algebra library splits larger products among threads, which for matrices this small costs more than it gains.
+    """
+    width = lanes.shape[1]
+    block = max(1, _LARGEST_PRODUCT // max(matrix.size, 1))
+    if width <= block:
+        whole: Array = matrix @ lanes
+        return whole
+    result = np.empty((len(matrix), width))
+    for first in range(0, width, block):
+        result[:, first : first + block] = matrix @ lanes[:, first : first + block]
+    return result
 
 
 def scatter(pattern: Pattern, incidence: Array, pairs: Sequence[tuple[int, int]]) -> Array:

@@ -55,7 +55,8 @@ class Network:
     """A compiled circuit; see the module's description for the order of nodes and ports.
 
     ``incidence`` is (ports, nodes) with +1 at the control or positive end, -1 for the mirror types, so that every port sees
-    an NPN or N-channel device; ``resistor_incidence`` (resistors, nodes).
+    an NPN or N-channel device; ``resistor_incidence`` (resistors, nodes). ``port_parts`` and ``resistor_parts`` are their
+    columns of unknown and of known nodes.
     ``pattern`` is the structure of the nodal matrix of the unknown nodes, which stand in its order of elimination;
     ``scatter`` (entries, conductances) adds the groups' port conductances into it, ``resistor_scatter`` the resistors',
     ``bridge_scatter`` (entries,) one siemens across every port.
@@ -70,6 +71,8 @@ class Network:
     resistor_base: dict[str, Array]
     incidence: Array
     resistor_incidence: Array
+    port_parts: tuple[Array, Array]
+    resistor_parts: tuple[Array, Array]
     pattern: Pattern
     scatter: Array
     resistor_scatter: Array
@@ -165,6 +168,8 @@ def compile_network(circuit: Circuit) -> Network:
         resistor_base=resistor_base,
         incidence=incidence,
         resistor_incidence=resistor_incidence,
+        port_parts=_parts(incidence, len(unknown)),
+        resistor_parts=_parts(resistor_incidence, len(unknown)),
         pattern=pattern,
         scatter=scatter(pattern, incidence[:, : len(unknown)], pairs),
         resistor_scatter=scatter(pattern, resistor_incidence[:, : len(unknown)], _each_alone(len(resistors))),
@@ -216,6 +221,10 @@ def _port_pairs(group: Group) -> list[tuple[int, int]]:
         for column in range(group.ports)
         for device in range(count)
     ]
+
+
+def _parts(incidence: Array, unknown: int) -> tuple[Array, Array]:
+    return np.ascontiguousarray(incidence[:, :unknown]), np.ascontiguousarray(incidence[:, unknown:])
 
 
 def _each_alone(count: int) -> list[tuple[int, int]]:

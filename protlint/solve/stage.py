@@ -15,6 +15,7 @@ from protlint.solve.constants import KELVIN
 from protlint.solve.corners import Axis, axes_of, held_voltages, variation
 from protlint.solve.dc import Operating, evaluate, solve_lanes
 from protlint.solve.devices import Array, IntArray
+from protlint.solve.elimination import product
 from protlint.solve.lanes import Lanes, Variation, known_voltages, parameters
 from protlint.solve.network import Network
 from protlint.solve.parameters import CircuitError
@@ -216,7 +217,7 @@ def states(network: Network, run: Run) -> dict[str, tuple[Array, Array, Array, A
         p = parameters(network, run.lanes)
         evaluations = evaluate(network, p, run.operating.inner)
     node_V = run.operating.node_V
-    across = network.incidence @ node_V
+    across = product(network.incidence, node_V)
     table: dict[str, tuple[Array, Array, Array, Array, Array]] = {}
     for group, evaluation in zip(network.groups, evaluations, strict=True):
         port_A = evaluation.port_A * group.sign
@@ -230,7 +231,7 @@ def states(network: Network, run: Run) -> dict[str, tuple[Array, Array, Array, A
             control_V = port_V[0, index]
             voltage = control_V - port_V[1, index]
             table[device.name] = (current, voltage, current * voltage + control * control_V, control, control_V)
-    drops = network.resistor_incidence @ node_V
+    drops = product(network.resistor_incidence, node_V)
     conductance = np.broadcast_to(p.conductance, drops.shape)
     for index, device in enumerate(network.resistors):
         current = drops[index] * conductance[index]
