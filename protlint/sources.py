@@ -74,7 +74,10 @@ def read_bytes(path: str | Path, *, limit: int | None = None) -> tuple[bytes, st
     """
     enough = -1 if limit is None else limit + 1
     if str(path) == "-":
-        return _within(limit, sys.stdin.buffer.read(enough), "<standard input>"), "<standard input>"
+        name = "<standard input>"
+        if sys.stdin is None:
+            raise FileError("there is none", file=name)
+        return _within(limit, sys.stdin.buffer.read(enough), name), name
     name = shown_name(path)
     try:
         with Path(path).open("rb") as stream:
@@ -140,7 +143,8 @@ def shown_name(path: str | Path) -> str:
     Relative with forward slashes where the file lies below the working folder, else the bare file name, so that the same
     input gives the same report wherever it lies.
     """
-    absolute = Path(path).absolute()
+    # Not resolved: a link goes by the name it was given, and only what leads up and down again is taken out.
+    absolute = Path(os.path.abspath(path))  # noqa: PTH100
     try:
         return absolute.relative_to(Path.cwd()).as_posix()
     except ValueError:
@@ -150,14 +154,16 @@ def shown_name(path: str | Path) -> str:
 def write_whole(path: str | Path, text: str) -> None:
     """Write a text file whole or not at all: into a temporary file beside it, then renamed over it.
 
+    A symbolic link goes on pointing where it did; the file it points to is written.
+
     Raises
     ------
     FileError : the file cannot be written; what stood there before still stands.
     """
-    target = Path(path)
+    target = Path(os.path.realpath(path))
     temporary: str | None = None
     try:
-        handle, temporary = tempfile.mkstemp(prefix=f".{target.name}.", dir=target.parent)
+        handle, temporary = tempfile.mkstemp(prefix=f".{target.name[:40]}.", dir=target.parent)
         with os.fdopen(handle, "w", encoding="utf-8", newline="\n") as stream:
             stream.write(text)
         umask = os.umask(0)
