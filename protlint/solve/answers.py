@@ -1,7 +1,8 @@
 """The answers: from a limiter's circuit to a ``Solution``.
 
-The order of work: the drive's on end; the held short at three ambients, with and without the shunt; the locus; the drive's
-sweep; the worst corners of every figure; sensitivities. Each step is one batch of lanes that starts from the step before.
+The order of work: the drive swept into the short at three ambients, with and without the shunt, which shows its on end,
+holds, and roughly where the limiter begins; the locus; the crossing itself; the worst corners of all figures; sensitivities.
+Each step is a batch of lanes or a few, started from the step before.
 """
 
 from __future__ import annotations
@@ -20,8 +21,8 @@ from protlint.solve.nominal import Nominal, solve_nominal
 from protlint.solve.parameters import CircuitError
 from protlint.solve.ranges import Ranges, find_ranges
 from protlint.solve.regulation import regulation
-from protlint.solve.solution import Currents, Pair, Sensitivity, Shorted, Solution
-from protlint.solve.stage import Run, Stage, Sweep, pass_power, points, run_stage, shunt_and_pass_current, sweep_stage
+from protlint.solve.solution import Currents, Pair, Point, Sensitivity, Shorted, Solution
+from protlint.solve.stage import Run, Stage, Sweep, points, run_stage, shunt_and_pass_current, sweep_stage
 
 DRIVE_SHARE = 0.9
 """Where holds is above this share of the unlimited current (the shunt out gains less than a ninth), the drive limits."""
@@ -86,7 +87,6 @@ def _answers(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...]) -
     ranges = find_ranges(stage, nominal)
     locus_run = _usual_locus(stage, nominal)
     locus = points(stage, locus_run, range(locus_run.lanes.count))
-    power = pass_power(stage, locus_run)
     held = points(stage, nominal.short, [USUAL])
     carry = (
         points(stage, nominal.carry, [USUAL]) if nominal.carry is not None and np.isfinite(nominal.carry_V[USUAL]) else ()
@@ -97,7 +97,7 @@ def _answers(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...]) -
         currents=tuple(_currents(nominal, ranges, shares, place, ambients_degC[place]) for place in ambients),
         locus=locus,
         held_short=held[0] if held else None,
-        worst_point=locus[int(np.argmax(power))] if locus else None,
+        worst_point=_hottest(locus, stage.network.circuit.pass_devices),
         at_carry=carry[0] if carry else None,
         high_short=points(stage, ranges.high_short, ambients),
         high_worst=points(stage, ranges.high_worst, ambients),
@@ -112,6 +112,13 @@ def _answers(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...]) -
         corners=_corner_steps(stage, ranges),
         not_checked=_not_checked(stage, nominal, ambients_degC),
     )
+
+
+def _hottest(locus: tuple[Point, ...], passing: tuple[str, ...]) -> Point | None:
+    """Return the point at which a pass device turns most power to heat."""
+    if not locus or not passing:
+        return None
+    return max(locus, key=lambda point: max(point.states[name].power_W for name in passing))
 
 
 def _usual_locus(stage: Stage, nominal: Nominal) -> Run:

@@ -48,6 +48,7 @@ class Failing:
 class Comparison:
     """A formula's figure beside the solved holds in the short at usual ambient.
 
+    ``fails`` comes with the one that explains most first, but the drive before all: where it gives out the rest follows.
     ``name`` is plain, preset, foldback, slope or diode string; ``formula`` its text; ``inputs`` what went into it, by
     symbol; ``difference`` solved over formula less 1; ``put_right_A`` the formula with all assumptions put right.
     """

@@ -28,10 +28,9 @@ CLOSE_V = 2e-6
 """Newton's error falls with the square: a last step this small leaves less than 1e-8 of a thermal voltage."""
 
 ITERATIONS = 30
+"""Of Newton's method before another way is tried; what converges does so in 5 to 15."""
 NODE_LEAK_S = 1e-13
 """From every unknown node to 0 V, so that what hangs on nothing but a capacitor has a voltage."""
-DAMP_AFTER = 20
-"""Lanes that swing to and fro are damped from here on."""
 
 GMIN_STEPS_S = (1e-2, 1e-3, 1e-4, 1e-5, 1e-6, 1e-7, 1e-8, 1e-9, 1e-10, 1e-11, 1e-12)
 SOURCE_STEPS = 24
@@ -102,12 +101,7 @@ def cold_start(network: Network, p: Parameters, count: int) -> Array:
 
 
 def newton(
-    network: Network,
-    p: Parameters,
-    known_V: Array,
-    start: Array,
-    *,
-    bridge_S: float = 0.0,
+    network: Network, p: Parameters, known_V: Array, start: Array, *, bridge_S: float = 0.0
 ) -> tuple[Array, Array, NDArray[np.bool_]]:
     """Iterate from ``start``; return inner voltages (ports, lanes), unknown node voltages, and which lanes converged.
 

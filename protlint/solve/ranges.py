@@ -24,11 +24,10 @@ KINDS = ("begins", "holds", "carries", "most")
 _CORNER_ROUNDS = 2
 _MOST_PROBES = (-0.25, -0.12, -0.06, -0.03, -0.015, 0.0, 0.015, 0.03, 0.06, 0.12, 0.25)
 """Where the greatest current is looked for around its nominal place, in shares of the locus."""
-_EDGE_V = 0.02
+_EDGE_V, _EDGE_STEPS = 0.02, 4
+"""How near to its least working voltage the pass device has to be for the edge's current, and how often to try."""
 _ROUNDING = 1e-6
 """Ends are rounded outwards by this share, so that what lies on them lies within."""
-_EDGE_STEPS = 4
-"""How near to its least working voltage the pass device has to be for the edge's current, and how often to try."""
 
 
 @dataclass(frozen=True, slots=True)

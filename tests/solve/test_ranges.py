@@ -10,6 +10,7 @@ import pytest
 
 from protlint.limits import Range
 from protlint.solve.answers import solve
+from protlint.solve.begins import drive_ends
 from protlint.solve.circuit import Circuit
 from protlint.solve.locus import Conditions, greatest, least_working, trace, working_edges
 from protlint.solve.network import compile_network
@@ -109,6 +110,49 @@ def test_samples_of_limiters_drawn_by_seed_lie_within_every_range(shape: str) ->
                 least = [edged.output_A[index] for lane in few if (index := least_working(edged, int(lane))) is not None]
                 assert currents.carries_range_A[0] - slack <= min(least)
                 assert max(least) <= currents.carries_range_A[1] + slack
+
+
+def brute_begins(stage: Stage, ambient_degC: float, corner: np.ndarray) -> np.ndarray:
+    """Where each corner begins on a fine sweep of the drive's usual range; NaN where it does not."""
+    points, count = 400, corner.shape[1]
+    off, on = drive_ends(stage)
+    run = run_stage(
+        stage,
+        np.full(2 * points * count, ambient_degC + KELVIN),
+        corner=np.tile(corner, 2 * points),
+        drive_V=np.tile(np.repeat(np.linspace(off, on, points), count), 2),
+        shunt_in=np.repeat([1.0, 0.0], points * count),
+    )
+    limited, unlimited = run.output_A.reshape(2, points, count)
+    found = np.full(count, np.nan)
+    for lane in range(count):
+        over = limited[:, lane] - 0.9 * unlimited[:, lane]
+        rows = np.flatnonzero((over[:-1] > 0.0) & (over[1:] <= 0.0) & (limited[1:, lane] > 0.05 * limited[-1, lane]))
+        if len(rows):
+            row = rows[-1]
+            part = over[row] / (over[row] - over[row + 1])
+            found[lane] = limited[row, lane] + part * (limited[row + 1, lane] - limited[row, lane])
+    return found
+
+
+@pytest.mark.parametrize("shape", sorted(SHAPES))
+def test_samples_of_begins_lie_within_its_range(shape: str) -> None:
+    for seed in range(EACH):
+        circuit = drawn(shape, 200 + seed)
+        solution = solve(circuit, AMBIENTS)
+        stage = stage_of(circuit, solution)
+        for currents in solution.currents[1:]:
+            if currents.begins_A is None:
+                continue
+            assert currents.begins_range_A is not None
+            low, high = currents.begins_range_A
+            assert low <= currents.begins_A <= high
+            corner = np.sign(np.random.default_rng(seed).uniform(-1.0, 1.0, (len(stage.axes), 12)))
+            found = brute_begins(stage, currents.ambient_degC, corner)
+            found = found[np.isfinite(found)]
+            # a sweep's straight lines between its points miss the crossing by some thousandths
+            assert (found >= low * 0.99).all()
+            assert (found <= high * 1.01).all()
 
 
 def test_a_corner_of_current_gain_is_the_bound_itself_at_every_temperature() -> None:
