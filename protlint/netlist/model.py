@@ -46,7 +46,10 @@ class Pin:
 class Part:
     """A placed leaf instance. ``properties`` is keyed by the folded (lower-case) name.
 
-    ``id`` is unique on the board: the designator, with the path in front inside hierarchy (``CH2/Q10``).
+    ``id`` is unique on the board: the designator, with the path in front inside hierarchy (``CH2/Q10``). Sections of one
+    package are parts of their own with the package's ``designator``: their ids are the sections' names (``Q1A``, ``Q1B``),
+    or ``Q1#1``, ``Q1#2`` by their lowest pins where the file names none; so are different parts of one designator, in the
+    order of the file. ``designator`` is None where the file gives none, or one that nobody has numbered yet (``R?``).
     """
 
     id: str
@@ -71,7 +74,11 @@ class Net:
 
 @dataclass(frozen=True, slots=True)
 class PinOnTwoNets:
-    """One pin that the file joins to two nets (their indices), with the line and column of the second joining."""
+    """One pin that the file joins to two nets (their indices), with the line and column of the second joining.
+
+    By the standard the two are one node. They are kept apart here, the pin on the first, so that both can be told; the board
+    unites them.
+    """
 
     part: int
     pin: str
