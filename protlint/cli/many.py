@@ -2,16 +2,21 @@
 
 from __future__ import annotations
 
+import contextlib
 import os
 import signal
 import sys
+import threading
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from concurrent.futures import Future, ProcessPoolExecutor, as_completed
 from concurrent.futures.process import BrokenProcessPool
-from multiprocessing import get_context
+from dataclasses import replace
+from multiprocessing import active_children, get_context, parent_process
+from multiprocessing.connection import wait
 from pathlib import Path
 from typing import Any
 
+from protlint.cli.shell import CANNOT
 from protlint.sources import FileError, ProtlintError, shown_name
 
 ENDINGS = (".edf", ".edif", ".edn")
@@ -34,8 +39,22 @@ def netlists_of(arguments: Sequence[str]) -> tuple[list[str], bool]:
     paths: list[str] = []
     for argument in arguments:
         paths += _in_folder(Path(argument)) if argument != "-" and Path(argument).is_dir() else [argument]
-    unique = list(dict.fromkeys(paths))
+    unique = list({_whole(path): path for path in paths}.values())
     return unique, len(arguments) > 1 or unique != list(arguments)
+
+
+def called(paths: Sequence[str]) -> dict[str, str]:
+    """Return what each netlist goes by; one outside the working folder with as much of its way as no other shares."""
+    names = {path: shown_name(path) for path in paths if path != "-"}
+    ways = {path: Path(_whole(path)).parts for path in names}
+    for path in names:
+        if Path.cwd() not in Path(_whole(path)).parents:
+            others = [way for other, way in ways.items() if other != path]
+            length = 1
+            while any(way[-length:] == ways[path][-length:] for way in others):
+                length += 1
+            names[path] = "/".join(ways[path][-length:])
+    return names
 
 
 def review_all(paths: Sequence[str], files: Mapping[str, Any], reading: Mapping[str, Any]) -> list[Answer]:
@@ -50,14 +69,20 @@ def review_all(paths: Sequence[str], files: Mapping[str, Any], reading: Mapping[
     from protlint import pipeline
 
     desk = pipeline.set_up(**files)
+    names = called(paths)
     here = [path for path in paths if path == "-" or not _worth_sharing(paths)]
-    elsewhere = [path for path in paths if path not in here]
+    elsewhere = {path: names[path] for path in paths if path not in here}
     answers: dict[str, Answer] = {}
     for path, answer in _with_progress(_on_all_cores(elsewhere, files, reading), len(elsewhere)):
         answers[path] = answer
-    for path, answer in _with_progress(((path, _answer(path, desk, reading)) for path in here), len(here)):
+    ours = ((path, _answer(path, names.get(path), desk, reading)) for path in here)
+    for path, answer in _with_progress(ours, len(here)):
         answers[path] = answer
     return [answers[path] for path in paths]
+
+
+def _whole(path: str) -> str:
+    return path if path == "-" else os.path.abspath(path)  # noqa: PTH100 - a link is another netlist than what it points to
 
 
 def _in_folder(folder: Path) -> list[str]:
@@ -86,19 +111,38 @@ def _cores() -> int:
 
 
 def _on_all_cores(
-    paths: Sequence[str], files: Mapping[str, Any], reading: Mapping[str, Any]
+    names: Mapping[str, str], files: Mapping[str, Any], reading: Mapping[str, Any]
 ) -> Iterator[tuple[str, Answer]]:
-    """Yield each netlist's answer as it comes."""
-    if not paths:
+    """Yield each netlist's answer as it comes; ``names`` are what the netlists go by."""
+    if not names:
         return
-    workers = min(_cores(), len(paths))
-    with ProcessPoolExecutor(workers, get_context("spawn"), initializer=_prepare, initargs=(files, reading)) as pool:
-        waiting: dict[Future[Answer], str] = {pool.submit(_work, path): path for path in paths}
+    workers = min(_cores(), len(names))
+    pool = ProcessPoolExecutor(workers, get_context("spawn"), initializer=_prepare, initargs=(files, reading))
+    try:
+        with _interrupts_put_off():
+            waiting: dict[Future[Answer], str] = {pool.submit(_work, *item): item[0] for item in names.items()}
         for future in as_completed(waiting):
             try:
                 yield waiting[future], future.result()
             except BrokenProcessPool:
-                yield waiting[future], _unread(waiting[future], "its review ended abruptly, perhaps for want of memory")
+                path = waiting[future]
+                yield path, _unread(names[path], "its review ended abruptly, perhaps for want of memory")
+    except BaseException:
+        for worker in active_children():
+            worker.terminate()
+        raise
+    finally:
+        pool.shutdown(cancel_futures=True)
+
+
+@contextlib.contextmanager
+def _interrupts_put_off() -> Iterator[None]:
+    """Start processes that an interrupt does not reach: the parent answers it, and a worker says nothing of its own."""
+    before = signal.signal(signal.SIGINT, signal.SIG_IGN)
+    try:
+        yield
+    finally:
+        signal.signal(signal.SIGINT, before)
 
 
 _worker: dict[str, Any] = {}
@@ -106,8 +150,7 @@ _worker: dict[str, Any] = {}
 
 
 def _prepare(files: Mapping[str, Any], reading: Mapping[str, Any]) -> None:
-    # The parent answers an interrupt; a worker just ends, without a trace of its own.
-    signal.signal(signal.SIGINT, signal.SIG_DFL)
+    threading.Thread(target=_end_with_the_parent, daemon=True).start()
     # Every core has a worker already: more threads for small matrices would only get in each other's way.
     os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
     from protlint import pipeline
@@ -115,23 +158,33 @@ def _prepare(files: Mapping[str, Any], reading: Mapping[str, Any]) -> None:
     _worker.update(desk=pipeline.set_up(**files), reading=reading)
 
 
-def _work(path: str) -> Answer:
-    return _answer(path, _worker["desk"], _worker["reading"])
+def _end_with_the_parent() -> None:
+    """Leave when the parent has gone, however it went: a pool's worker would wait for work for ever."""
+    parent = parent_process()
+    if parent is not None:
+        wait([parent.sentinel])
+        os._exit(CANNOT)
 
 
-def _answer(path: str, desk: Any, reading: Mapping[str, Any]) -> Answer:
+def _work(path: str, name: str) -> Answer:
+    return _answer(path, name, _worker["desk"], _worker["reading"])
+
+
+def _answer(path: str, name: str | None, desk: Any, reading: Mapping[str, Any]) -> Answer:
     from protlint import pipeline
     from protlint.netlist import read_netlist
     from protlint.report.document import document
 
     try:
-        return document(pipeline.review_netlist(read_netlist(path, **reading), desk))
+        netlist = read_netlist(path, **reading)
+        return document(pipeline.review_netlist(replace(netlist, file=name or netlist.file), desk))
     except ProtlintError as error:
-        return _unread(error.file or shown_name(path), error.message, error.line, error.column)
+        file = name if error.file == shown_name(path) else error.file
+        return _unread(file or shown_name(path), error.message, error.line, error.column)
     except (MemoryError, RecursionError) as error:
-        return _unread(shown_name(path), f"needs more memory than there is ({type(error).__name__})")
+        return _unread(name or path, f"needs more memory than there is ({type(error).__name__})")
     except Exception as error:
-        return _unread(shown_name(path), f"a fault of protlint's own ({type(error).__name__}: {error})")
+        return _unread(name or path, f"a fault of protlint's own ({type(error).__name__}: {error})")
 
 
 def _unread(file: str, message: str, line: int | None = None, column: int | None = None) -> Answer:

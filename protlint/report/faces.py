@@ -27,18 +27,25 @@ def check_targets(targets: Iterable[str]) -> None:
 
     Raises
     ------
-    UsageError : an ending is none of ours.
-    FileError : the folder a file is to stand in is missing.
+    UsageError : an ending is none of ours, or one file is to be saved twice.
+    FileError : the folder a file is to stand in is missing, or a folder stands where the file is to be, or a file where
+        the folder is.
     """
+    seen: set[Path] = set()
     for target in targets:
-        if not is_folder(target):
-            ending = Path(target).suffix.lower()
-            if ending not in FACES:
-                raise UsageError(
-                    f"the ending of a file to save is one of {', '.join(FACES)}, or / for a folder", file=target
-                )
-            if not Path(target).parent.is_dir():
-                raise FileError("there is no such folder to save in", file=shown_name(Path(target).parent))
+        path = Path(target)
+        if is_folder(target):
+            if path.exists() and not path.is_dir():
+                raise FileError("this is a file, not a folder to save in", file=shown_name(path))
+        elif path.suffix.lower() not in FACES:
+            raise UsageError(f"the ending of a file to save is one of {', '.join(FACES)}, or / for a folder", file=target)
+        elif not path.parent.is_dir():
+            raise FileError("there is no such folder to save in", file=shown_name(path.parent))
+        elif path.is_dir():
+            raise FileError("this is a folder, not a file to save", file=shown_name(path))
+        if path.absolute() in seen:
+            raise UsageError("this is to be saved twice", file=target)
+        seen.add(path.absolute())
 
 
 def is_folder(target: str) -> bool:

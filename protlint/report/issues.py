@@ -7,6 +7,7 @@ netlist of this run, so that nothing a person wrote, and nothing about another b
 from __future__ import annotations
 
 import re
+from collections import Counter
 from pathlib import Path
 
 from protlint.report.digest import place_of, waiver_of, working_line
@@ -20,10 +21,13 @@ ENDING = ".md"
 
 def rendered_issues(report: Document) -> dict[str, str]:
     """Return the tracker texts of a report by file name."""
-    several = "boards" in report
+    boards = boards_of(report)
+    stems = Counter(_slug(Path(board["netlist"]["file"]).stem) for board in boards)
     texts: dict[str, str] = {}
-    for board in boards_of(report):
-        lead = _slug(Path(board["netlist"]["file"]).stem) + "." if several else ""
+    for board in boards:
+        path = Path(board["netlist"]["file"])
+        stem = _slug(path.stem)
+        lead = f"{stem if stems[stem] == 1 else _slug(str(path.with_suffix('')))}." if "boards" in report else ""
         for finding in board["findings"]:
             name = lead + _slug(finding["fingerprint"])
             place = 2

@@ -14,7 +14,7 @@ import pytest
 
 from protlint import pipeline
 from protlint.cli import commands
-from protlint.cli.many import ENDINGS, netlists_of
+from protlint.cli.many import ENDINGS
 from protlint.cli.shell import TRACEBACK_VARIABLE, colour_wanted, run
 from protlint.sources import FileError, InputError
 from tests.support.paths import ROOT
@@ -272,22 +272,3 @@ def test_the_commit_hook_names_a_command_and_the_files_it_is_for() -> None:
     pattern = re.compile(entries["files"].strip("'"))
     assert all(pattern.search(f"hardware/board{ending}") for ending in ENDINGS)
     assert not pattern.search("hardware/board.edf.txt")
-
-
-def test_netlists_are_gathered_from_folders_in_a_stable_order(tmp_path: Path) -> None:
-    for name in ("b/two.EDF", "b/one.edif", "a.edn", "b/notes.txt", ".hidden/x.edf"):
-        path = tmp_path / name
-        path.parent.mkdir(exist_ok=True)
-        path.write_text("", encoding="utf-8")
-    paths, together = netlists_of([str(tmp_path), str(tmp_path / "a.edn")])
-    assert [Path(path).relative_to(tmp_path).as_posix() for path in paths] == ["a.edn", "b/one.edif", "b/two.EDF"]
-    assert together
-    assert netlists_of(["x.edf"]) == (["x.edf"], False)
-    assert netlists_of(["-"]) == (["-"], False)
-    with pytest.raises(FileError):
-        netlists_of([_empty(tmp_path)])
-
-
-def _empty(folder: Path) -> str:
-    (folder / "empty").mkdir()
-    return str(folder / "empty")

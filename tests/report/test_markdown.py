@@ -68,6 +68,13 @@ def test_boards_together(tmp_path: Path) -> None:
     assert {name.split(".")[0] for name in rendered_issues(report)} == {"a", "b"}
 
 
+def test_texts_of_boards_with_one_stem_are_told_apart_by_their_folders() -> None:
+    boards = [document(sample_review({**PLAIN, "name": name})) for name in ("left/lamp.edf", "right/lamp.edf", "b.edf")]
+    leads = {name.split(".")[0] for name in rendered_issues(combined(boards))}
+    assert leads == {"left-lamp", "right-lamp", "b"}
+    assert {name.split(".")[0] for name in rendered_issues(combined([boards[1], boards[0], boards[2]]))} == leads
+
+
 def report_of(notes: int, file: str = "lamp.edf") -> Document:
     return document(sample_review({**PLAIN, "name": file}, notes=notes))
 
@@ -106,6 +113,13 @@ def test_what_cannot_be_saved_is_refused_first(tmp_path: Path) -> None:
         check_targets([str(tmp_path / "x.pdf")])
     with pytest.raises(FileError):
         check_targets([str(tmp_path / "absent" / "x.json")])
+    (tmp_path / "folder.json").mkdir()
+    (tmp_path / "file").write_text("as it was", encoding="utf-8")
+    for target in (tmp_path / "folder.json", f"{tmp_path}/file/"):
+        with pytest.raises(FileError):
+            check_targets([str(target)])
+    with pytest.raises(UsageError):
+        check_targets([str(tmp_path / "x.json")] * 2)
     check_targets([str(tmp_path / "X.JSON"), str(tmp_path / "absent") + "/"])
 
 
