@@ -43,7 +43,8 @@ class Derived:
 
     ``driver_model`` is the first transistor's of a Darlington part. ``hfe`` bounds B_F (of each of its two transistors);
     ``vbe_spread_V`` how far V_BE (V_GS(th), V_F) may lie below and above, None where nothing widens the stated spread.
-    ``derived`` and ``assumed`` say in plain words what came from data-sheet figures and what from nowhere;
+    ``derived`` says in plain words what came from data-sheet figures, or stands at a figure usual for the kind that moves a
+    current by little; ``assumed`` what came from nowhere and verdicts rest on;
     ``charges_assumed`` what of its charges did, on which nothing rests but loop and delay.
     """
 
@@ -59,18 +60,23 @@ class Derived:
 @dataclass(slots=True)
 class _Words:
     derived: list[str] = field(default_factory=list)
+    usual: list[str] = field(default_factory=list)
     assumed: list[str] = field(default_factory=list)
 
+    def not_assumed(self) -> tuple[str, ...]:
+        """Return what was derived, and what stands at a figure usual for the kind and moves a current by little."""
+        return (*self.derived, *(f"{sentence}, usual for its kind" for sentence in self.usual))
 
-def derive(kind: str, ratings: Mapping[str, float], model: Model) -> Derived:
+
+def derive(kind: str, ratings: Mapping[str, float], model: Model, *, carries_load: bool = False) -> Derived:
     """Return the model of a part of a kind (npn pnp nmos pmos diode zener, or a bipolar with ``-darlington``).
 
     ``ratings`` are magnitudes in SI units by the names of part data; ``model`` its published parameters, empty where it has
-    none.
+    none. A bipolar of unknown size is taken as a power device where it ``carries_load``.
     """
     base = kind.removesuffix("-darlington")
     if base in ("npn", "pnp"):
-        found = _darlington(ratings, model) if base != kind else _bipolar(ratings, model)
+        found = _darlington(ratings, model) if base != kind else _bipolar(ratings, model, carries_load)
     elif base in ("nmos", "pmos"):
         found = _mosfet(base, ratings, model)
     else:
@@ -104,14 +110,15 @@ def saturation_current(I: float, V: float, N: float = 1.0, E_G: float = 1.11, X_
     return I * math.exp(-V / (N * V_T) + growth / N)
 
 
-def _bipolar(ratings: Mapping[str, float], model: Model) -> Derived:
+def _bipolar(ratings: Mapping[str, float], model: Model, carries_load: bool = False) -> Derived:
     words = _Words()
     hfe = _hfe(ratings, model, words)
     if model:
         return Derived(model, hfe=hfe, assumed=tuple(words.assumed))
     rated_A = ratings.get("ic")
     if rated_A is None:
-        rated_A = DEFAULT_IC_A["power" if ratings.get("power", 0.0) > 1.0 or "rth_jc" in ratings else "small"]
+        large = carries_load or ratings.get("power", 0.0) > 1.0 or "rth_jc" in ratings
+        rated_A = DEFAULT_IC_A["power" if large else "small"]
         words.assumed.append(f"a collector current rating of {rated_A:g} A")
     spread: Pair | None = None
     if "vbe" in ratings and "vbe_at" in ratings:
@@ -125,7 +132,7 @@ def _bipolar(ratings: Mapping[str, float], model: Model) -> Derived:
         V_BE, at_A = DEFAULT_V_BE, rated_A * DEFAULT_V_BE_SHARE
         spread = DEFAULT_V_BE_SPREAD
         words.assumed.append(f"V_BE {V_BE:g} V at {at_A:g} A, within {spread[0]:g} V")
-    words.assumed.append(f"an Early voltage of {DEFAULT_VAF:g} V and high injection from {rated_A:g} A")
+    words.usual.append(f"an Early voltage of {DEFAULT_VAF:g} V and high injection from {rated_A:g} A")
     made = {
         "IS": saturation_current(at_A, V_BE),
         "BF": math.sqrt(hfe[0] * hfe[1]),
@@ -133,7 +140,7 @@ def _bipolar(ratings: Mapping[str, float], model: Model) -> Derived:
         "IKF": rated_A,
         "XTB": 1.5,
     }
-    return Derived(made, {}, hfe, spread, tuple(words.derived), tuple(words.assumed))
+    return Derived(made, {}, hfe, spread, words.not_assumed(), tuple(words.assumed))
 
 
 def _hfe(ratings: Mapping[str, float], model: Model, words: _Words) -> Pair:
@@ -160,12 +167,12 @@ def _darlington(ratings: Mapping[str, float], model: Model) -> Derived:
     words = _Words()
     total = _hfe({**ratings, "hfe_max": ratings.get("hfe_max", 10.0 * ratings["hfe_min"])} if "hfe_min" in ratings else {
         "hfe_min": 1000.0, "hfe_max": 20000.0}, model, words)  # fmt: skip
-    words.assumed.append("its two transistors share current gain and base-emitter voltage evenly, without inner resistors")
+    words.usual.append("its two transistors share current gain and base-emitter voltage evenly, without inner resistors")
     hfe = (math.sqrt(total[0]), math.sqrt(total[1]))
     halves = {name: 0.5 * ratings[name] for name in ("vbe", "vbe_min", "vbe_max") if name in ratings}
     kept = {name: value for name, value in ratings.items() if not name.startswith(("vbe", "hfe"))}
     at = {"vbe_at": ratings["vbe_at"]} if "vbe_at" in ratings else {}
-    second = _bipolar({**kept, **halves, **at, "hfe_min": hfe[0], "hfe_max": hfe[1]}, model)
+    second = _bipolar({**kept, **halves, **at, "hfe_min": hfe[0], "hfe_max": hfe[1]}, model, True)
     first = {
         name: value * DRIVER_SHARE if name in ("IS", "IKF", "ISE", "CJE", "CJC") else value
         for name, value in second.model.items()
@@ -175,7 +182,7 @@ def _darlington(ratings: Mapping[str, float], model: Model) -> Derived:
         first,
         hfe,
         second.vbe_spread_V,
-        tuple(words.derived) + second.derived,
+        words.not_assumed() + second.derived,
         tuple(words.assumed) + second.assumed,
     )
 
@@ -202,14 +209,14 @@ def _mosfet(kind: str, ratings: Mapping[str, float], model: Model) -> Derived:
     # what the channel does not explain of the on-resistance is the drain's
     on_ohm = ratings.get("rds_on_typ", ratings.get("rds_on", 0.0))
     channel_ohm = 1.0 / (K_P * max(GATE_DRIVE_V - threshold, 1.0))
-    words.assumed.append(f"a channel-length modulation of {DEFAULT_LAMBDA:g} per volt")
+    words.usual.append(f"a channel-length modulation of {DEFAULT_LAMBDA:g} per volt")
     made = {
         "VTO": (threshold - math.sqrt(2.0 * at_A / K_P)) * (1.0 if kind == "nmos" else -1.0),
         "KP": K_P,
         "LAMBDA": DEFAULT_LAMBDA,
         "RD": max(on_ohm - channel_ohm, 0.0),
     }
-    return Derived(made, vbe_spread_V=spread, derived=tuple(words.derived), assumed=tuple(words.assumed))
+    return Derived(made, vbe_spread_V=spread, derived=words.not_assumed(), assumed=tuple(words.assumed))
 
 
 def _transconductance(ratings: Mapping[str, float], threshold_V: float, words: _Words) -> float:
@@ -223,7 +230,7 @@ def _transconductance(ratings: Mapping[str, float], threshold_V: float, words: _
     over_V = max(GATE_DRIVE_V - threshold_V, 1.0)
     if on_ohm is not None and on_ohm > 0.0:
         words.derived.append(f"K_P from R_DS(on) {on_ohm:g} ohm")
-        words.assumed.append("half of R_DS(on) in the channel")
+        words.usual.append("half of R_DS(on) in the channel")
         return 2.0 / (on_ohm * over_V)
     rated_A = ratings.get("id", 10.0)
     words.assumed.append(f"a transconductance that takes {rated_A:g} A at 4 V above the threshold")
@@ -242,11 +249,11 @@ def _diode(kind: str, ratings: Mapping[str, float], model: Model) -> Derived:
         V_F, spread = DEFAULT_V_F, DEFAULT_V_F_SPREAD
         at_A = 0.01 * ratings["if"] if "if" in ratings else DEFAULT_I_F
         words.assumed.append(f"V_F {V_F:g} V at {at_A:g} A, within {spread[0]:g} V")
-    words.assumed.append(f"an emission coefficient of {DIODE_N:g}")
+    words.usual.append(f"an emission coefficient of {DIODE_N:g}")
     made = {"IS": saturation_current(at_A, V_F, DIODE_N), "N": DIODE_N}
     if kind == "zener":
         made |= _breakdown(ratings, words)
-    return Derived(made, vbe_spread_V=spread, derived=tuple(words.derived), assumed=tuple(words.assumed))
+    return Derived(made, vbe_spread_V=spread, derived=words.not_assumed(), assumed=tuple(words.assumed))
 
 
 def _breakdown(ratings: Mapping[str, float], words: _Words) -> dict[str, float]:
@@ -258,7 +265,7 @@ def _breakdown(ratings: Mapping[str, float], words: _Words) -> dict[str, float]:
         return {}
     at_A = ratings.get("vz_at", 5e-3)
     if "vz_at" not in ratings:
-        words.assumed.append(f"the zener voltage holds at {at_A:g} A")
+        words.usual.append(f"the zener voltage holds at {at_A:g} A")
     words.derived.append(f"B_V from V_Z {V_Z:g} V at {at_A:g} A")
     slope_ohm = BOLTZMANN_V_PER_K * T0_K / at_A
     R_S = max(ratings.get("zz", 0.0) - slope_ohm, 0.0)

@@ -47,7 +47,7 @@ def devices_of(place: Place, index: int, *, nodes: Mapping[str, str], notes: Not
     if not set(TERMINALS[kind]) <= nodes.keys():
         notes.missing.append(Missing("part", part.id, f"pin roles of {part.id}, in [pins] or its part data"))
         return []
-    derived = _derived(element.kind, part)
+    derived = _derived(element.kind, part, carries_load=index in place.limiter.elements.get("pass", ()))
     notes.assumed += [("model", f"{part.id}: {sentence}") for sentence in derived.assumed]
     rise_K = _rise_K(place, index)
     hands = _darlington(part, derived, nodes) if element.kind.endswith("-darlington") else [(part.id, derived.model, nodes)]
@@ -87,13 +87,13 @@ def _spread_V(place: Place, derived: Derived, *, bipolar: bool) -> tuple[float, 
     return max(own_V[0], board_V[0]), max(own_V[1], board_V[1])
 
 
-def _derived(kind: str, part: BoardPart) -> Derived:
+def _derived(kind: str, part: BoardPart, *, carries_load: bool) -> Derived:
     """Return a part's model: its own, or one derived from its data-sheet figures, or the default of its kind."""
     entry = part.entry
     ratings = {name: figure.value for name, figure in entry.ratings.items()} if entry is not None else {}
     if kind == "zener" and "vz" not in ratings and part.values.value is not None:
         ratings["vz"] = part.values.value
-    return derive(kind, ratings, entry.model if entry is not None else {})
+    return derive(kind, ratings, entry.model if entry is not None else {}, carries_load=carries_load)
 
 
 def _passive(place: Place, element: Element, parts: list[BoardPart], nodes: Mapping[str, str], notes: Notes) -> list[Device]:

@@ -58,7 +58,7 @@ def test_a_bipolar_shows_the_base_emitter_voltage_and_the_gain_of_its_data_sheet
     assert found.model["TF"] == pytest.approx(0.53e-9, rel=0.01)
     assert found.model["CJC"] > 3.5e-12
     assert found.derived
-    assert found.assumed
+    assert not found.assumed
 
 
 def test_a_model_of_its_own_stays_as_it_is() -> None:
