@@ -20,7 +20,7 @@ from protlint.solve.circuit import Device
 from protlint.solve.dc import NODE_LEAK_S
 from protlint.solve.devices import Array
 from protlint.solve.network import Group, Network
-from protlint.solve.parameters import CircuitError
+from protlint.solve.parameters import LINK_OHM, CircuitError
 
 LONE_LEAK_S = 1e-8
 """From nodes that only capacitors touch to 0 V: they have to have a voltage, and 100 Mohm shapes no loop."""
@@ -54,8 +54,8 @@ class Expanded:
     turned round for mirror types, so that their voltages are those of NPN and N-channel devices. ``store_of`` says for each
     device store which of all the groups' stores, laid out group by group and kind by kind, it is; ``store_owner`` whose each
     store is; ``cross`` are the (row, column) pairs of stores of one bipolar whose charges depend on each other. ``passive``
-    are the capacitors and inductors behind the last stores. ``constant`` (unknowns, all nodes) holds the leaks and the
-    inductors' coupling.
+    are the capacitors and inductors behind the last stores. ``constant`` (unknowns, all nodes) holds the leaks, and of
+    the inductors their coupling and the resistance of a link, which the static solver takes them for.
     """
 
     network: Network
@@ -135,6 +135,7 @@ def expand(network: Network, *, output: Output = "held", split: str | None = Non
             continue
         own = index[_current(device)]
         rows.stores.append((_current(device), ""))
+        constant[own, own] = 0.0 if device.name == SHORT else -LINK_OHM
         for node, sign in zip(device.nodes, (1.0, -1.0), strict=True):
             constant[own, index[node]] += sign
             if index[node] < count:

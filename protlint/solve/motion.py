@@ -141,8 +141,12 @@ def _step(motion: Motion, now: Instant, slope: Array, h: float, end_s: float) ->
     return after, _size(motion, after.voltages, error) if np.isfinite(error).all() else 1e9
 
 
+@np.errstate(all="ignore")
 def _solve(motion: Motion, time_s: float, guess: Array, target: Array, rate: float) -> tuple[Instant, _Matrices] | None:
-    """Solve f(x) + A^T rate (q(x) - target) = injected; return the moment and the last linearisation, None where none is."""
+    """Solve f(x) + A^T rate (q(x) - target) = injected; return the moment and the last linearisation, None where none is.
+
+    A wild guess may overflow on its way; what is not finite is no solution.
+    """
     expanded = motion.expanded
     count, stores = expanded.unknown, expanded.stores
     rows = np.concatenate((expanded.resistances, expanded.junctions))
@@ -150,8 +154,7 @@ def _solve(motion: Motion, time_s: float, guess: Array, target: Array, rate: flo
     voltages[count:] = motion.known_V(time_s)
     injected = motion.injected_A(time_s)
     for _ in range(ITERATIONS):
-        with np.errstate(all="ignore"):
-            shot = snapshot(expanded, motion.at, voltages[:, None], motion.passive)
+        shot = snapshot(expanded, motion.at, voltages[:, None], motion.passive)
         through = np.concatenate((shot.conductance[:, 0] * (expanded.resistances @ voltages), shot.junction_A[:, 0]))
         charge_A = rate * (shot.charge[:, 0] - target)
         miss = rows[:, :count].T @ through + expanded.constant @ voltages + stores[:, :count].T @ charge_A - injected

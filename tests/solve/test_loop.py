@@ -221,6 +221,23 @@ def test_a_shunt_whose_base_is_held_has_natural_frequencies_and_no_loop_gain() -
     assert loop.natural
 
 
+def test_inductors_in_parallel_and_between_supplies_leave_the_loop_solvable() -> None:
+    circuit = bench_circuit("follower")
+    leads = tuple(replace(one, nodes=("LEAD", *one.nodes[1:])) if one.name == "Q10" else one for one in circuit.devices)
+
+    def fed(*inductors: tuple[str, float]) -> Loop:
+        coils = tuple(Device(name, "inductor", ("+24V", "LEAD"), {"L": henry}) for name, henry in inductors)
+        return solved(replace(circuit, devices=(*leads, *coils)))
+
+    whole, halves = fed(("L1", 1e-6)), fed(("L1", 2e-6), ("L2", 2e-6))
+    # what flows round in the two has a mode of its own, which only the resistance of the links lets die
+    assert np.array(halves.natural[1:]) == pytest.approx(np.array(whole.natural), rel=1e-3)
+    assert halves.natural[0][0] < 1.0
+    between = Device("L3", "inductor", ("+24V", "+24V B"), {"L": 1e-6})
+    held = {**circuit.held, "+24V B": fixed(24.0)}
+    assert solved(replace(circuit, held=held, devices=(*circuit.devices, between))).natural
+
+
 def test_capacitors_in_a_loop_and_in_series_add_no_modes_of_their_own() -> None:
     circuit = bench_circuit("follower")
     collector, base, emitter = shunt_of(circuit).nodes
