@@ -227,6 +227,9 @@ def _driven(place: Place, lowest: Range, highest: Range, notes: Notes) -> Drive:
     assert net is not None
     node = place.node_of[net]
     entry = place.around.drive_entry or _driver_entry(place)
+    own = _own_supplies(place, ("ic",))
+    if len({one.usual for one in own}) > 1:  # an IC does not reach beyond what feeds it
+        lowest, highest = (Range(one.usual, one.usual, one.usual) for one in (own[0], own[-1]))
     low, high = lowest, highest
     if entry is not None:
         short_of = entry.from_rails_V
@@ -261,16 +264,16 @@ def _driver_entry(place: Place) -> DriveLimits | None:
 
 def _rail(place: Place, fallback: Range, *, upper: bool) -> Range:
     """Return the lowest or highest supply on the driving part's own pins."""
-    voltages = []
-    for index, _ in place.around.drive_pins:
-        for net in place.board.parts[index].roles.values():
-            supply = place.board.nets[net].supply
-            if supply is not None:
-                voltages.append(supply.voltage_V)
-    if not voltages:
-        return fallback
-    ordered = sorted(voltages, key=lambda one: one.usual)
-    return ordered[-1 if upper else 0]
+    own = _own_supplies(place, ("ic", "connector"))
+    return own[-1 if upper else 0] if own else fallback
+
+
+def _own_supplies(place: Place, kinds: tuple[str, ...]) -> list[Range]:
+    """Return the supplies on the pins of what drives the net, where it is of one of these kinds, the lowest first."""
+    driving = [place.board.parts[index] for index, _ in place.around.drive_pins]
+    nets = {net for part in driving if part.kind in kinds for net in part.roles.values()}
+    supplies = [place.board.nets[net].supply for net in sorted(nets)]
+    return sorted((one.voltage_V for one in supplies if one is not None), key=lambda one: one.usual)
 
 
 def _moved(end: Range, step_V: float) -> Range:
