@@ -43,6 +43,9 @@ def _formula(formula: Document | None) -> Iterator[str]:
     """Put the hand calculation beside the solved figure, and say which of its assumptions fails."""
     if formula is None or formula["figure_A"] is None or formula["difference"] is None:
         return
+    if formula["figure_A"] <= 0.0:
+        yield f"By hand {formula['formula']} gives no current at all: the formula does not hold here."
+        return
     by_hand = f"By hand {formula['formula']} gives {figure(formula['figure_A'], 'A')}"
     if abs(formula["difference"]) <= AS_SOLVED:
         yield f"{by_hand}, as solved within 5 %."
