@@ -44,6 +44,11 @@ def spoiled(circuit: str) -> Iterator[tuple[str, Netlist]]:
     roles, nets = limiter["roles"], limiter["nets"]
     shunt, near, far = roles["shunt"][0], nets["sense"], nets["far"]
     yield "collector-emitter-swapped", edits.exchanged(netlist, (shunt, "collector"), (shunt, "emitter"))
+    if roles.get("base_stop"):
+        yield "base-on-far-end", edits.moved(netlist, shunt, "emitter", near)
+        yield "collector-not-on-the-drive", edits.exchanged(netlist, (shunt, "collector"), (shunt, "base"))
+    if is_supply(far):
+        yield "base-on-far-end", edits.exchanged(netlist, (shunt, "base"), (shunt, "emitter"))
     yield "shunt-polarity-wrong", edits.other_polarity(netlist, shunt)
     supplies = [net.name for net in netlist.nets if is_supply(net.name) and net.name not in (far, "GND")]
     if supplies:
@@ -55,6 +60,7 @@ def spoiled(circuit: str) -> Iterator[tuple[str, Netlist]]:
         if is_supply(far):
             both = edits.twice(netlist, is_supply)
             yield "wrong-device-sensed", edits.moved(both, f"A/{part}", pin, f"B/{near}")
+            yield "wrong-device-sensed", edits.moved(both, f"A/{shunt}", "collector", f"B/{nets['drive']}")
 
 
 def at_the_near_end(netlist: Netlist, limiter: dict[str, Any]) -> tuple[str, str]:
@@ -70,6 +76,7 @@ def is_supply(name: str) -> bool:
 
 
 CASES = [(circuit, fault, netlist) for circuit in CIRCUITS for fault, netlist in spoiled(circuit)]
+NAMES = [f"{circuit} {fault} {number}" for number, (circuit, fault, _) in enumerate(CASES)]
 
 
 def wiring(found: Review) -> list[Finding]:
@@ -89,7 +96,7 @@ def cured(found: Review, netlist: Netlist) -> Netlist:
     return netlist
 
 
-@pytest.mark.parametrize("circuit, fault, netlist", CASES, ids=[f"{circuit} {fault}" for circuit, fault, _ in CASES])
+@pytest.mark.parametrize("circuit, fault, netlist", CASES, ids=NAMES)
 def test_a_fault_is_told_with_its_cure_and_the_cure_holds(circuit: str, fault: str, netlist: Netlist) -> None:
     _, limiter = sound(circuit)
     copy = "A/" if fault == "wrong-device-sensed" else ""
