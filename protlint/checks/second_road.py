@@ -66,7 +66,7 @@ def _finding(case: Case, road: Road, drop_V: float, holds_A: float) -> Finding:
     said, level = "which nothing in this way limits", None
     if road.resistance_ohm:
         current_A = drop_V / road.resistance_ohm
-        said = f"{format_quantity(current_A, 'A')} into the short"
+        said = f"up to {format_quantity(current_A, 'A')} into the short"
         lines.append(WorkingLine("resistance", f"of {', '.join(parts)} in a row", road.resistance_ohm, "ohm"))
         lines.append(WorkingLine("current", "Ohm's law", current_A, "A"))
         level, more = _against_the_cap(case, current_A)
