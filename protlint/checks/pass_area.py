@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from protlint.board.graph import BoardPart
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.derating import derated
-from protlint.checks.pass_device import Stress, heating
+from protlint.checks.pass_device import LEAST_SINK_K_PER_W, Stress, heating
 from protlint.checks.safe_area import Bound, allowed, breakdown_share, curve_for, thermal_share
 from protlint.findings import NotChecked, WorkingLine
 from protlint.partdata.book import Figure, SafeArea
@@ -19,6 +19,8 @@ CHECK = "pass-outside-safe-area"
 
 WALLS = {"bipolar": ("vceo", "ic", "ic_peak"), "mosfet": ("vds", "id", "id_peak")}
 """The ratings for voltage, current for ever, and current for a short time."""
+
+HALVINGS = 30
 
 SOURCE = "log-log straight lines between the published corners; thermal bound times (T_J,max - T_C) / (T_J,max - 25 degC)"
 
@@ -119,27 +121,36 @@ def _curve(case: Case, part: BoardPart) -> SafeArea | str:
 
 def _on_the_curve(case: Case, part: BoardPart, curve: SafeArea, points: list[Seen]) -> Place:
     """Return the point that comes nearest to the published curve, or passes it most surely."""
-    limit = case.rating(part.id, "tj_max")
-    assert limit is not None
     source = derated(case.limits.derating, part.kind, "current", curve.source)
-    left_at_limit = case.threshold(CHECK, "second_breakdown_left")
     found: dict[bool, Place] = {}
     for seen in points:
         case_degC = _case_degC(case, part, seen.stress)
-        left = thermal_share(case_degC, limit.value)
-        milder = breakdown_share(case_degC, limit.value, left_at_limit) if part.kind not in ("nmos", "pmos") else left
-        for breakdown_left, careful_only in ((milder, False), (left, True)):
-            bound = allowed(
-                curve.points,
-                seen.voltage_V,
-                thermal_left=left,
-                breakdown_left=breakdown_left * case.share(part.id, "current"),
-                power_share=case.share(part.id, "power"),
-            )
+        for careful in (False, True):
+            bound = _bound(case, part, curve, seen.voltage_V, case_degC, careful=careful)
             ratio = seen.current_A / bound.current_A if bound.current_A > 0.0 else math.inf
-            if careful_only not in found or ratio > found[careful_only].ratio:
-                found[careful_only] = Place(seen, case_degC, ratio, bound, source, careful_only)
+            if careful not in found or ratio > found[careful].ratio:
+                found[careful] = Place(seen, case_degC, ratio, bound, source, careful)
     return found[False] if found[False].ratio > 1.0 or found[True].ratio <= 1.0 else found[True]
+
+
+def _bound(
+    case: Case, part: BoardPart, curve: SafeArea, voltage_V: float, case_degC: float, *, careful: bool = False
+) -> Bound:
+    """Return what a curve allows at a case temperature; ``careful`` derates second breakdown like the power."""
+    limit = case.rating(part.id, "tj_max")
+    assert limit is not None
+    left = thermal_share(case_degC, limit.value)
+    if not careful and part.kind not in ("nmos", "pmos"):
+        breakdown_left = breakdown_share(case_degC, limit.value, case.threshold(CHECK, "second_breakdown_left"))
+    else:
+        breakdown_left = left
+    return allowed(
+        curve.points,
+        voltage_V,
+        thermal_left=left,
+        breakdown_left=breakdown_left * case.share(part.id, "current"),
+        power_share=case.share(part.id, "power"),
+    )
 
 
 def _case_degC(case: Case, part: BoardPart, stress: Stress) -> float:
@@ -158,18 +169,26 @@ def _outside(case: Case, part: BoardPart, worst: Place) -> Answer:
     stress, ambient = worst.seen.stress, format_quantity(worst.seen.stress.ambient_degC, "degC")
     lasts = "for ever" if math.isinf(stress.lasts_s) else f"for {format_quantity(stress.lasts_s, 's')}"
     at = f"{format_quantity(worst.seen.current_A, 'A')} at {format_quantity(worst.seen.voltage_V, 'V')}"
+    too_much = f"{worst.ratio:.2g} times what {worst.bound.by} allows"
+    if math.isinf(worst.ratio):
+        too_much = f"and its case at {format_quantity(worst.case_degC, 'degC')} leaves it nothing"
     careful = ", if second breakdown derates like its power" if worst.careful_only else ""
     return case.finding(
         CHECK,
-        f"{part.id} is put to {at} {stress.condition} {lasts} at {ambient}, {worst.ratio:.2g} times what {worst.bound.by} "
-        f"allows{careful}",
+        f"{part.id} is put to {at} {stress.condition} {lasts} at {ambient}, {too_much}{careful}",
         parts=(part.id,),
         working=(
             WorkingLine("voltage across it", f"solved, {stress.condition}", worst.seen.voltage_V, "V"),
             WorkingLine("current", "solved, every tolerance set for the most", worst.seen.current_A, "A"),
             WorkingLine("case", "ambient + sink * power", worst.case_degC, "degC"),
             WorkingLine("allowed", f"by {worst.bound.by}, at that case", worst.bound.current_A, "A", worst.source),
-            WorkingLine("current over allowed", "log-log between corners, derated", worst.ratio, "", SOURCE),
+            WorkingLine(
+                "current over allowed",
+                "log-log between corners, derated",
+                None if math.isinf(worst.ratio) else worst.ratio,
+                "",
+                SOURCE,
+            ),
         ),
         remedy=_remedy(case, part, worst),
         level="warning" if worst.careful_only else None,
@@ -184,9 +203,38 @@ def _remedy(case: Case, part: BoardPart, worst: Place) -> str:
         if worst.bound.by == f"its {quantity} rating":
             needed = preferred(value / case.share(part.id, quantity), "E24", "up")
             return f"fit a device rated {format_quantity(needed, unit)} or more as {part.id}"
+    curve = _curve(case, part)
+    sink = None if isinstance(curve, str) else _sink_that_does(case, part, curve)
+    if sink is not None and sink >= LEAST_SINK_K_PER_W:
+        fit = format_quantity(preferred(sink, "E24", "down"), "K/W")
+        return f"give {part.id} a sink of {fit} or less, case to ambient"
     lasts = "dc" if math.isinf(case.lasts_s) else format_quantity(case.lasts_s, "s")
     at = f"{format_quantity(preferred(seen.current_A, 'E24', 'up'), 'A')} at {format_quantity(seen.voltage_V, 'V')}"
     return (
         f"fit a device as {part.id} whose safe area ({lasts}) allows {at} with its case at "
-        f"{format_quantity(worst.case_degC, 'degC')}, or lower the limit to {1.0 / worst.ratio:.2g} of what it is"
+        f"{format_quantity(worst.case_degC, 'degC')}"
     )
+
+
+def _sink_that_does(case: Case, part: BoardPart, curve: SafeArea) -> float | None:
+    """Return the thermal resistance from case to ambient that keeps the locus inside the curve, second breakdown derated
+    like the power; None where none does or the sink is not what heats the case."""
+    if case.needs.sink_K_per_W is None or case.lasts_s <= case.threshold("pass-overheated", "case_holds"):
+        return None
+    least = math.inf
+    for seen in _along_the_locus(case, part):
+        ambient_degC, heat = seen.stress.ambient_degC, heating(case, part.id, seen.stress)
+        cold, hot = ambient_degC, ambient_degC + case.needs.sink_K_per_W * heat.shared_W
+
+        def inside(case_degC: float, seen: Seen = seen) -> bool:
+            return _bound(case, part, curve, seen.voltage_V, case_degC, careful=True).current_A >= seen.current_A
+
+        if inside(hot):
+            continue
+        if not inside(cold):
+            return None
+        for _ in range(HALVINGS):
+            middle = 0.5 * (cold + hot)
+            cold, hot = (middle, hot) if inside(middle) else (cold, middle)
+        least = min(least, (cold - ambient_degC) / heat.shared_W)
+    return least if math.isfinite(least) else None

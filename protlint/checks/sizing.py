@@ -36,6 +36,8 @@ def sense_remedy(case: Case) -> str | None:
     carry_A, cap_A = case.needs.carry_A, case.needs.cap_A
     upper_ohm = now_ohm * carries_A / carry_A if carry_A else None
     lower_ohm = now_ohm * most_A / cap_A if cap_A else None
+    if carries_A <= 0.0 or most_A <= 0.0:
+        return "no sense value meets it: at the working output the stage passes nothing, whatever the sense resistance"
     if upper_ohm is not None and lower_ohm is not None and lower_ohm > upper_ohm * REACH:
         return _no_value(case, carries_A, most_A)
     for value_ohm in _candidates(lower_ohm, upper_ohm):

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator
 from dataclasses import replace
 
@@ -90,13 +91,13 @@ def trips_on_peaks(case: Case) -> Iterator[Answer]:
 
 def _late(case: Case, part: BoardPart, names: tuple[str, ...], found: LetThrough) -> Answer:
     lasts = format_quantity(found.lasts_s, "s")
+    times = f"{found.ratio:.2g} times" if math.isfinite(found.ratio) else "more than"
     step = case.solution.step
     assert step is not None
     return case.finding(
         LATE,
         f"{part.id} is let into {format_quantity(found.energy_J, 'J')} within {lasts} before the limiter acts, as much as "
-        f"{format_quantity(found.current_A, 'A')} at {format_quantity(found.voltage_V, 'V')}: {found.ratio:.2g} times what "
-        "its safe area allows",
+        f"{format_quantity(found.current_A, 'A')} at {format_quantity(found.voltage_V, 'V')}: {times} what its safe area allows",
         parts=(part.id,),
         working=(
             WorkingLine(

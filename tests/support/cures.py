@@ -187,7 +187,7 @@ def cures() -> Iterator[Cure]:
         return job.stated(short=f"{figure(text, 's'):g} s", carry=None)
 
     yield Cure("pass-overheated", "no sink will do: a shorter short", hopeless, briefer)
-    area = [{"lasts": "dc", "points": [["1 V", "8 A"], ["5 V", "2 A"], ["40 V", "0.05 A"]]}]
+    area = [{"lasts": "dc", "points": [["1 V", "8 A"], ["5 V", "1 A"], ["40 V", "0.05 A"]]}]
 
     def larger(job: Job, text: str) -> Job:
         return job.knowing(
@@ -198,6 +198,11 @@ def cures() -> Iterator[Cure]:
         )
 
     yield Cure("pass-outside-safe-area", "curve", sink().knowing("QPN1", safe_area=area), larger)
+    warm = [{"lasts": "dc", "points": [["1 V", "8 A"], ["5 V", "1.2 A"], ["40 V", "0.2 A"]]}]
+    yield Cure(
+        "pass-outside-safe-area", "sink", sink().stated(sink="16 K/W").knowing("QPN1", safe_area=warm),
+        lambda job, text: cooled(job, figure(text, "K/W")), lambda job, text: cooled(job, up(figure(text, "K/W"))),
+    )  # fmt: skip
     yield Cure("pass-outside-safe-area", "V_CEO", sink().rated("QPN1", vceo="10 V"), **rating("QPN1", "vceo", "V"))
     yield Cure("pass-outside-safe-area", "current rating", sink().rated("QPN1", ic="0.2 A"), **rating("QPN1", "ic", "A"))
     yield Cure(

@@ -1,0 +1,65 @@
+"""The sense resistance to fit: within the window, with the rating it needs, or the plain statement that none will do."""
+
+from __future__ import annotations
+
+import re
+
+import pytest
+
+from protlint.checks.sizing import greatest_most_A, least_carries_A
+from protlint.quantities.series import hundredths
+from tests.support.cures import figure, resistor
+from tests.support.desk import found, the_one
+from tests.support.judged import Job, follower, sink
+
+
+def spread(job: Job) -> float:
+    solution = the_one(job.review()).solution
+    least, most = least_carries_A(solution), greatest_most_A(solution)
+    assert least is not None
+    assert most is not None
+    return most / least
+
+
+def test_both_needs_are_met_over_all_corners() -> None:
+    job = sink().stated(carry="0.35 A", cap="0.6 A")
+    (ill,) = found(job.review(), "carry-not-met")
+    solution = the_one(resistor(job, "R2", figure(ill.remedy or "", "ohm")).review()).solution
+    least, most = least_carries_A(solution), greatest_most_A(solution)
+    assert least is not None
+    assert most is not None
+    assert least >= 0.35
+    assert most <= 0.6
+
+
+def test_a_narrow_window_takes_a_value_of_e96() -> None:
+    # the limit spreads by some 1.40 over tolerance and temperature; a window of 1.42 has room for few values
+    assert spread(sink()) == pytest.approx(1.40, abs=0.01)
+    (ill,) = found(sink().stated(carry="0.2 A", cap="0.284 A").review(), "cap-exceeded")
+    ohm = figure(ill.remedy or "", "ohm")
+    assert round(100 * ohm) in hundredths("E96")
+    assert round(100 * ohm) not in hundredths("E24")
+
+
+def test_a_window_narrower_than_the_spread_is_said_with_what_could_be_had() -> None:
+    (ill,) = found(sink().stated(carry="0.25 A", cap="0.3 A").review(), "cap-exceeded")
+    said = ill.remedy or ""
+    assert said.startswith("no sense value meets both")
+    achievable = re.search(r"at least ([0-9.]+) A", said)
+    assert achievable
+    assert float(achievable[1]) == pytest.approx(0.25 * spread(sink()), rel=0.01)
+    # with that cap a value is found
+    wider = sink().stated(carry="0.25 A", cap=f"{float(achievable[1]) * 1.02} A").review()
+    assert not [one for one in found(wider, "cap-exceeded") if (one.remedy or "").startswith("no sense value")]
+
+
+def test_a_smaller_resistance_comes_with_the_rating_it_needs() -> None:
+    job = sink().drawn(("SNS GND POWER:1W", "SNS GND POWER:0.4W")).stated(carry="0.4 A", cap=None)
+    (ill,) = found(job.review(), "carry-not-met")
+    # some 0.62 A through 1.3 ohm: 0.5 W, to be at most 80 % of the rating
+    assert figure(ill.remedy or "", "W") == 0.75
+
+
+def test_a_stage_that_passes_nothing_is_no_matter_of_the_sense_resistor() -> None:
+    (ill,) = [one for one in found(follower().stated(output="25 V").review()) if one.check.startswith(("carry", "drive"))]
+    assert "nothing" in (ill.remedy or "") or "cannot" in (ill.remedy or "")
