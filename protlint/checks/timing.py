@@ -97,7 +97,8 @@ def _late(case: Case, part: BoardPart, names: tuple[str, ...], found: LetThrough
     return case.finding(
         LATE,
         f"{part.id} is let into {format_quantity(found.energy_J, 'J')} within {lasts} before the limiter acts, as much as "
-        f"{format_quantity(found.current_A, 'A')} at {format_quantity(found.voltage_V, 'V')}: {times} what its safe area allows",
+        f"{format_quantity(found.current_A, 'A')} at {format_quantity(found.voltage_V, 'V')}: {times} what its safe area "
+        "allows",
         parts=(part.id,),
         working=(
             WorkingLine(
