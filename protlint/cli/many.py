@@ -118,8 +118,9 @@ def _on_all_cores(
         return
     workers = min(_cores(), len(names))
     pool = ProcessPoolExecutor(workers, get_context("spawn"), initializer=_prepare, initargs=(files, reading))
+    before = signal.signal(signal.SIGTERM, _leave)
     try:
-        with _interrupts_put_off():
+        with _undisturbed():
             waiting: dict[Future[Answer], str] = {pool.submit(_work, *item): item[0] for item in names.items()}
         for future in as_completed(waiting):
             try:
@@ -129,20 +130,35 @@ def _on_all_cores(
                 yield path, _unread(names[path], "its review ended abruptly, perhaps for want of memory")
     except BaseException:
         for worker in active_children():
-            worker.terminate()
+            worker.kill()
         raise
     finally:
         pool.shutdown(cancel_futures=True)
+        signal.signal(signal.SIGTERM, before)
+
+
+def _leave(number: int, _frame: object) -> None:
+    """Leave in an orderly way where an order to end would leave the workers alone, with the exit code shells give for it."""
+    raise SystemExit(128 + number)
 
 
 @contextlib.contextmanager
-def _interrupts_put_off() -> Iterator[None]:
-    """Start processes that an interrupt does not reach: the parent answers it, and a worker says nothing of its own."""
-    before = signal.signal(signal.SIGINT, signal.SIG_IGN)
+def _undisturbed() -> Iterator[None]:
+    """Start processes whole, and such that no interrupt and no order to end reaches them: the parent answers those."""
+    orders: list[int] = []
+    stopping = (signal.SIGINT, signal.SIGTERM)
+    before = {number: signal.signal(number, lambda number, _frame: orders.append(number)) for number in stopping}
+    # What this thread holds back its processes hold back; what another thread of this process takes is noted above.
+    held = signal.pthread_sigmask(signal.SIG_BLOCK, stopping) if hasattr(signal, "pthread_sigmask") else None
     try:
         yield
     finally:
-        signal.signal(signal.SIGINT, before)
+        if held is not None:
+            signal.pthread_sigmask(signal.SIG_SETMASK, held)
+        for number, handler in before.items():
+            signal.signal(number, handler)
+    for order in orders:
+        signal.raise_signal(order)
 
 
 _worker: dict[str, Any] = {}

@@ -74,7 +74,7 @@ def test_an_end_from_outside_leaves_no_file_no_trace_and_no_process(how: signal.
         process.send_signal(how)
     _, said = process.communicate(timeout=60)
     assert said.decode().split() == (["interrupted"] if how == signal.SIGINT else [])
-    assert process.returncode == (2 if how == signal.SIGINT else -how)
+    assert process.returncode == (2 if how == signal.SIGINT else 128 + how)
     assert not (tmp_path / "r.json").exists()
     patience = time.monotonic() + 60.0
     while left_over(process.pid) and time.monotonic() < patience:
