@@ -34,6 +34,9 @@ ALL_ASSUMPTIONS = ("drive", "short", "supply", "model", "tolerance", "circuit", 
 DRAWN = ("drive", "short", "supply", "model", "circuit", "ambient_degC")
 """What a figure rests on that is solved as drawn, without tolerances."""
 
+VOLTAGES = ("drive", "short", "supply", "circuit")
+"""What the voltages rest on that a junction has to block: the ambient and the models hardly move them."""
+
 
 @dataclass(frozen=True, slots=True)
 class Case:

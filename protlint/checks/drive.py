@@ -9,9 +9,10 @@ from protlint.board.graph import BoardPart
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.drive_resistor import least_drive_resistance
 from protlint.checks.shunt import CURRENT_RATING, Taken, hottest, taken_by_shunt
+from protlint.checks.sizing import meets
 from protlint.findings import Level, NotChecked, WorkingLine
 from protlint.limits import DriveLimits
-from protlint.quantities import format_quantity
+from protlint.quantities import format_quantity, preferred
 from protlint.solve.solution import Solution
 from protlint.solve.surroundings import Surroundings, survey_surroundings
 from protlint.toml_text import toml_key
@@ -112,12 +113,19 @@ def _resistance_to_fit(case: Case, part_id: str, worst: Excess) -> str:
     def does(solution: Solution) -> bool:
         rows = taken_by_shunt(replace(case, solution=solution))[part_id]
         found = [one for one in _excesses(case, "drive-unlimited", part_id, rows) if isinstance(one, Excess)]
+        if case.needs.carry_A is not None and meets(case.solution, case.needs.carry_A, None):
+            found = found if meets(solution, case.needs.carry_A, None) else []
         return bool(found) and all(one.ratio <= 1.0 for one in found)
 
     fit = least_drive_resistance(case, worst.ratio, does)
     if fit is not None:
         return fit
-    limit_A = worst.allowed if worst.quantity == "current" else worst.allowed / max(worst.taken.voltage_V, 0.1)
+    if worst.quantity == "current":
+        needed_A = preferred(
+            worst.value / (case.threshold("drive-unlimited", "share") * case.share(part_id, "current")), "E24", "up"
+        )
+        return f"the stage needs that drive: fit a shunt rated {format_quantity(needed_A, 'A')} or more as {part_id}"
+    limit_A = worst.allowed / max(worst.taken.voltage_V, 0.1)
     return f"limit the drive's current: {part_id} may take {format_quantity(limit_A, 'A')} of it"
 
 

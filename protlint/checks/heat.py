@@ -169,7 +169,9 @@ def _burns(case: Case, check: str, part: BoardPart, load: Load, rating: Rating, 
     ambient = format_quantity(load.ambient_degC, "degC")
     allowed_W = rating.at_W(load.ambient_degC) * load.times
     how = f"full to {rating.knee_degC:g} degC, none at {rating.zero_degC:g} degC"
+    source = "IEC 60115-1"
     if load.times != 1.0:
+        source += ", its overload test from memory"
         how += f", {load.times:g} times that for no more than {OVERLOAD_S:g} s"
     share = f", {_ratio(load.power_W, allowed_W) * 100.0:.3g} % of the" if allowed_W > 0.0 else "; the rating leaves"
     return case.finding(
@@ -187,7 +189,7 @@ def _burns(case: Case, check: str, part: BoardPart, load: Load, rating: Rating, 
                 "Joule's law",
             ),
             WorkingLine("rating", "at its knee or below", rating.power.value, "W", _source(case, rating.power.source)),
-            WorkingLine(f"allowed at {ambient}", how, allowed_W, "W", "IEC 60115-1"),
+            WorkingLine(f"allowed at {ambient}", how, allowed_W, "W", source),
         ),
         remedy=_bigger(case, check, part, load, rating),
         level=level,

@@ -22,7 +22,7 @@ WALLS = {"bipolar": ("vceo", "ic", "ic_peak"), "mosfet": ("vds", "id", "id_peak"
 
 HALVINGS = 30
 
-SOURCE = "log-log straight lines between the published corners; thermal bound times (T_J,max - T_C) / (T_J,max - 25 degC)"
+SOURCE = "data sheets' derating: thermal bound times (T_J,max - T_C) / (T_J,max - 25 degC); of second breakdown from memory"
 
 
 @dataclass(frozen=True, slots=True)
@@ -167,7 +167,7 @@ def _case_degC(case: Case, part: BoardPart, stress: Stress) -> float:
 
 def _outside(case: Case, part: BoardPart, worst: Place) -> Answer:
     stress, ambient = worst.seen.stress, format_quantity(worst.seen.stress.ambient_degC, "degC")
-    lasts = "for ever" if math.isinf(stress.lasts_s) else f"for {format_quantity(stress.lasts_s, 's')}"
+    lasts = "continuously" if math.isinf(stress.lasts_s) else f"for {format_quantity(stress.lasts_s, 's')}"
     at = f"{format_quantity(worst.seen.current_A, 'A')} at {format_quantity(worst.seen.voltage_V, 'V')}"
     too_much = f"{worst.ratio:.2g} times what {worst.bound.by} allows"
     if math.isinf(worst.ratio):

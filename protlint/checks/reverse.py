@@ -10,12 +10,13 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 
-from protlint.checks.case import DRAWN, Answer, Case
+from protlint.checks.case import VOLTAGES, Answer, Case
 from protlint.findings import Level, NotChecked, WorkingLine
+from protlint.partdata.book import Figure
 from protlint.quantities import format_quantity, preferred
 from protlint.solve.conditions import Condition
 from protlint.solve.parameters import CircuitError
-from protlint.solve.solution import Point
+from protlint.solve.solution import Point, State
 
 CHECK = "reverse-base-emitter"
 
@@ -194,7 +195,7 @@ def _junction(case: Case, part_id: str, names: tuple[str, ...], worst: Stressed)
         ),
         remedy=f"fit a diode of {rated} or more across it: anode to the {ends[0]} of {part_id}, cathode to its {ends[1]}",
         level=level,
-        assumption=case.assumes(*DRAWN),
+        assumption=case.assumes(*VOLTAGES),
         subject=part_id,
     )
 
@@ -204,28 +205,31 @@ def _collector_junction(case: Case, part_id: str, name: str, solved: list[Stress
     sign = 1.0 if case.part(part_id).kind.startswith("npn") else -1.0
     forward = [(one.point.states[name], one.words) for one in solved]
     forward = [(state, words) for state, words in forward if sign * (state.control_V - state.voltage_V) > 0.0]
+    found: list[tuple[float, str, float, Figure, State, str]] = []
     for pin, rating_name in (("collector", "ic"), ("base", "ib")):
         currents = [(abs(one.control_A if pin == "base" else one.current_A), one, words) for one, words in forward]
         if not currents or (worst := max(currents, key=lambda row: row[0]))[0] < LEAST_A:
             continue
         current_A, state, words = worst
-        allowed = case.allowed(part_id, rating_name, "current")
-        if allowed is None:
+        may = case.allowed(part_id, rating_name, "current")
+        if may is None:
             yield NotChecked(CHECK, case.rating_key(part_id, rating_name))
-            continue
-        if current_A <= allowed.value:
-            continue
-        rated = format_quantity(preferred(max(1.5 * abs(state.voltage_V), 10.0), "E6", "up"), "V")
-        yield case.finding(
-            CHECK,
-            f"the collector junction of {part_id} conducts {format_quantity(current_A, 'A')} {words}, its {pin} may take "
-            f"{format_quantity(allowed.value, 'A')}",
-            parts=(part_id,),
-            working=(
-                WorkingLine(f"{pin} current", f"solved {words}", current_A, "A"),
-                WorkingLine("it may take", rating_name, allowed.value, "A", allowed.source),
-            ),
-            remedy=f"fit a diode of {rated} or more in series with the collector of {part_id}, the way the shunt conducts",
-            assumption=case.assumes(*DRAWN),
-            subject=f"{part_id} {pin}",
-        )
+        elif current_A > may.value:
+            found.append((current_A / may.value, pin, current_A, may, state, words))
+    if not found:
+        return
+    _, pin, current_A, may, state, words = max(found, key=lambda row: row[0])
+    rated = format_quantity(preferred(max(1.5 * abs(state.voltage_V), 10.0), "E6", "up"), "V")
+    yield case.finding(
+        CHECK,
+        f"the collector junction of {part_id} conducts {format_quantity(current_A, 'A')} {words}, its {pin} may take "
+        f"{format_quantity(may.value, 'A')}",
+        parts=(part_id,),
+        working=(
+            WorkingLine(f"{pin} current", f"solved {words}", current_A, "A"),
+            WorkingLine("it may take", f"its {pin} current rating", may.value, "A", may.source),
+        ),
+        remedy=f"fit a diode of {rated} or more in series with the collector of {part_id}, the way the shunt conducts",
+        assumption=case.assumes(*VOLTAGES),
+        subject=f"{part_id} collector junction",
+    )

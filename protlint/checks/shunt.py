@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 
-from protlint.checks.case import ALL_ASSUMPTIONS, DRAWN, Answer, Case
+from protlint.checks.case import ALL_ASSUMPTIONS, VOLTAGES, Answer, Case
 from protlint.checks.thermal import Heating, Junction, in_free_air, junction
 from protlint.findings import NotChecked, WorkingLine
 from protlint.partdata.book import Figure
@@ -153,7 +153,7 @@ def _voltage(case: Case, part_id: str) -> Iterator[Answer]:
             WorkingLine("it may have", "V_CEO", allowed.value, "V", allowed.source),
         ),
         remedy=f"fit a shunt rated {format_quantity(needed, 'V')} or more as {part_id}",
-        assumption=case.assumes(*DRAWN),
+        assumption=case.assumes(*VOLTAGES),
         subject=f"{part_id} voltage",
     )
 
