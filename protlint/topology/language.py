@@ -23,6 +23,10 @@ ENDING = ".rule"
 """What a rule file's name ends in."""
 
 
+PART_WORDS = {"pass": "pass device", "driver": "driver", "sense": "sense resistor", "shunt": "shunt"}
+"""The parts that sentences of faults speak of; any other name in them is a net's."""
+
+
 @dataclass(frozen=True, slots=True)
 class Described:
     """A topology or a fault as ``protlint rules NAME`` shows it.
@@ -127,11 +131,19 @@ def read_rules(texts: Mapping[str, str]) -> Rules:
     )
 
 
+def _in_general(word: re.Match[str]) -> str:
+    """Return what stands for the name of a part or a net where a rule is told by itself."""
+    role = word[2].split(".")[0]
+    if role not in PART_WORDS:
+        return f"net {word[2]}"
+    return f"{'another' if word[1] else 'the'} {PART_WORDS[role]}"
+
+
 def _described(one: Resolved, shapes: Mapping[str, Shape]) -> Described:
     rule = one.rule
     return Described(
         name=rule.name,
-        says=re.sub(r"\{(?:(others)\.)?([^{}]+)\}", lambda word: f"{'another' if word[1] else 'the'} {word[2]}", rule.says),
+        says=re.sub(r"\{(?:(others)\.)?([^{}]+)\}", _in_general, rule.says),
         cited=rule.cited,
         used=rule.used,
         drawing=rule.drawing,
