@@ -8,7 +8,7 @@ from dataclasses import dataclass, replace
 from protlint.board.graph import BoardPart
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.drive_resistor import least_drive_resistance
-from protlint.checks.shunt import CURRENT_RATING, Taken, hottest, taken_by_shunt
+from protlint.checks.shunt import NOT_SOLVED, Taken, current_rating, hottest, taken_by_shunt
 from protlint.checks.sizing import meets
 from protlint.findings import Level, NotChecked, WorkingLine
 from protlint.limits import DriveLimits
@@ -46,6 +46,9 @@ def drive_unlimited(case: Case) -> Iterator[Answer]:
         yield _unbounded(case)
         return
     for part_id, rows in taken_by_shunt(case).items():
+        if not rows:
+            yield NotChecked(check, NOT_SOLVED)
+            continue
         found = list(_excesses(case, check, part_id, rows))
         yield from (one for one in found if isinstance(one, NotChecked))
         over = [one for one in found if isinstance(one, Excess) and one.ratio > 1.0]
@@ -70,7 +73,7 @@ def _unbounded(case: Case) -> Answer:
 
 
 def _excesses(case: Case, check: str, part_id: str, rows: tuple[Taken, ...]) -> Iterator[Excess | NotChecked]:
-    name = CURRENT_RATING[case.part(part_id).kind]
+    name = current_rating(case.part(part_id).kind)
     rated = case.allowed(part_id, name, "current")
     if rated is None:
         yield NotChecked(check, case.rating_key(part_id, name))
@@ -112,6 +115,8 @@ def _unlimited(case: Case, part_id: str, worst: Excess) -> Answer:
 def _resistance_to_fit(case: Case, part_id: str, worst: Excess) -> str:
     def does(solution: Solution) -> bool:
         rows = taken_by_shunt(replace(case, solution=solution))[part_id]
+        if not rows:
+            return False
         found = [one for one in _excesses(case, "drive-unlimited", part_id, rows) if isinstance(one, Excess)]
         if case.needs.carry_A is not None and meets(case.solution, case.needs.carry_A, None):
             found = found if meets(solution, case.needs.carry_A, None) else []
@@ -149,6 +154,7 @@ def driver_overloaded(case: Case) -> Iterator[Answer]:
         default=None,
     )
     if worst is None:
+        yield NotChecked(check, NOT_SOLVED)
         return
     row, point = worst
     taken_W = _driver_W(point.drive_A, point.drive_V, upper_V, lower_V)

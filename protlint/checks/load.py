@@ -9,9 +9,9 @@ filament colder than that still warms up.
 
 from __future__ import annotations
 
+from bisect import bisect_right
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
-from itertools import pairwise
 
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.sizing import meets, solve_again, with_resistance
@@ -47,14 +47,15 @@ class Line:
     current_A: tuple[float, ...]
 
     def at_A(self, distance_V: float) -> float:
-        """Return the current at a distance, straight between points."""
-        pairs = list(zip(self.distance_V, self.current_A, strict=True))
-        if distance_V <= pairs[0][0]:
-            return pairs[0][1]
-        for (low_V, low_A), (high_V, high_A) in pairwise(pairs):
-            if distance_V <= high_V:
-                return low_A + (high_A - low_A) * (distance_V - low_V) / (high_V - low_V) if high_V > low_V else low_A
-        return pairs[-1][1]
+        """Return the current at a distance, straight between points, level outside them."""
+        place = bisect_right(self.distance_V, distance_V)
+        if place == 0:
+            return self.current_A[0]
+        if place == len(self.distance_V):
+            return self.current_A[-1]
+        low_V, high_V = self.distance_V[place - 1 : place + 1]
+        low_A, high_A = self.current_A[place - 1 : place + 1]
+        return low_A + (high_A - low_A) * (distance_V - low_V) / (high_V - low_V)
 
 
 @dataclass(frozen=True, slots=True)

@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 
 from protlint.board.graph import BoardPart
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.derating import derated
-from protlint.checks.pass_device import LEAST_SINK_K_PER_W, Stress, heating
+from protlint.checks.pass_device import LEAST_SINK_K_PER_W, Stress, on_the_sink_names
 from protlint.checks.safe_area import Bound, allowed, breakdown_share, curve_for, thermal_share
+from protlint.checks.thermal import made_for_a_sink
 from protlint.findings import NotChecked, WorkingLine
 from protlint.partdata.book import Figure, SafeArea
 from protlint.quantities import format_quantity, preferred
@@ -123,8 +124,9 @@ def _on_the_curve(case: Case, part: BoardPart, curve: SafeArea, points: list[See
     """Return the point that comes nearest to the published curve, or passes it most surely."""
     source = derated(case.limits.derating, part.kind, "current", curve.source)
     found: dict[bool, Place] = {}
+    case_at = _case_at(case, part)
     for seen in points:
-        case_degC = _case_degC(case, part, seen.stress)
+        case_degC = case_at(seen)
         for careful in (False, True):
             bound = _bound(case, part, curve, seen.voltage_V, case_degC, careful=careful)
             ratio = seen.current_A / bound.current_A if bound.current_A > 0.0 else math.inf
@@ -153,16 +155,27 @@ def _bound(
     )
 
 
-def _case_degC(case: Case, part: BoardPart, stress: Stress) -> float:
-    """Return the temperature of the case, where nothing tells better the ambient: a case is no cooler than that."""
-    heat = heating(case, part.id, stress)
+def _case_at(case: Case, part: BoardPart) -> Callable[[Seen], float]:
+    """Return the function that gives the case's temperature at a point of the locus.
+
+    Where nothing tells better it is the ambient: a case is no cooler than that.
+    """
     to_case, to_air = case.rating(part.id, "rth_jc"), case.rating(part.id, "rth_ja")
-    for_ever = stress.lasts_s > case.threshold("pass-overheated", "case_holds")
-    if heat.sink_K_per_W is not None:
-        return heat.ambient_degC + heat.sink_K_per_W * (heat.shared_W if for_ever else heat.before_shared_W)
-    if to_air is not None and to_case is not None and to_air.value <= 5.0 * to_case.value:
-        return heat.ambient_degC + (to_air.value - to_case.value) * (heat.own_W if for_ever else heat.before_W)
-    return heat.ambient_degC
+    before = case.solution.at_carry
+    for_ever = case.lasts_s > case.threshold("pass-overheated", "case_holds")
+    own, shared, per_W = case.devices_of(part.id), on_the_sink_names(case), case.needs.sink_K_per_W
+    heats = shared if per_W is not None else own
+    if per_W is None:
+        in_air = to_air is not None and to_case is not None and not made_for_a_sink(to_case, to_air)
+        per_W = to_air.value - to_case.value if in_air and to_air is not None and to_case is not None else 0.0
+    assert per_W is not None
+
+    def at(seen: Seen) -> float:
+        point = seen.stress.point if for_ever else before
+        watts = 0.0 if point is None else sum(point.states[name].power_W for name in heats)
+        return seen.stress.ambient_degC + per_W * watts
+
+    return at
 
 
 def _outside(case: Case, part: BoardPart, worst: Place) -> Answer:
@@ -222,9 +235,10 @@ def _sink_that_does(case: Case, part: BoardPart, curve: SafeArea) -> float | Non
     if case.needs.sink_K_per_W is None or case.lasts_s <= case.threshold("pass-overheated", "case_holds"):
         return None
     least = math.inf
+    case_at = _case_at(case, part)
     for seen in _along_the_locus(case, part):
-        ambient_degC, heat = seen.stress.ambient_degC, heating(case, part.id, seen.stress)
-        cold, hot = ambient_degC, ambient_degC + case.needs.sink_K_per_W * heat.shared_W
+        cold, hot = seen.stress.ambient_degC, case_at(seen)
+        shared_W = (hot - cold) / case.needs.sink_K_per_W
 
         def inside(case_degC: float, seen: Seen = seen) -> bool:
             return _bound(case, part, curve, seen.voltage_V, case_degC, careful=True).current_A >= seen.current_A
@@ -236,5 +250,5 @@ def _sink_that_does(case: Case, part: BoardPart, curve: SafeArea) -> float | Non
         for _ in range(HALVINGS):
             middle = 0.5 * (cold + hot)
             cold, hot = (middle, hot) if inside(middle) else (cold, middle)
-        least = min(least, (cold - ambient_degC) / heat.shared_W)
+        least = min(least, (cold - seen.stress.ambient_degC) / shared_W)
     return least if math.isfinite(least) else None

@@ -9,6 +9,7 @@ from dataclasses import dataclass, replace
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.derating import share_of
 from protlint.checks.load import start_up_of
+from protlint.checks.shunt import NOT_SOLVED
 from protlint.checks.thermal import Heating, Junction, allowed_rise_K, hottest_case_degC, junction, made_for_a_sink
 from protlint.findings import NotChecked, WorkingLine
 from protlint.quantities import format_quantity, preferred, within
@@ -47,6 +48,8 @@ def pass_overheated(case: Case) -> Iterator[Answer]:
                 continue
             found.append((stress, heat, answer))
         if not found:
+            if not case.at_ambients(case.solution.high_short):
+                yield NotChecked(check, NOT_SOLVED)
             continue
         if any(one.assumed for _, _, one in found):
             case.assumptions.append(ASSUMED_IMPEDANCE.format(part=part_id))
@@ -91,10 +94,19 @@ def on_the_sink(case: Case, part_id: str) -> bool:
     return made_for_a_sink(case.rating(part_id, "rth_jc"), case.rating(part_id, "rth_ja"))
 
 
+def on_the_sink_names(case: Case) -> tuple[str, ...]:
+    """Return the names of the devices on the limiter's sink."""
+    return tuple(
+        name
+        for part_id in dict.fromkeys(case.parts("pass", "driver"))
+        if on_the_sink(case, part_id)
+        for name in case.devices_of(part_id)
+    )
+
+
 def pass_power_W(case: Case, point: Point) -> float:
     """Return what everything on the sink dissipates together."""
-    parts = dict.fromkeys(case.parts("pass", "driver"))
-    return sum(case.power_W(point, part_id) for part_id in parts if on_the_sink(case, part_id))
+    return sum(point.states[name].power_W for name in on_the_sink_names(case))
 
 
 def _overheated(case: Case, part_id: str, stress: Stress, worst: Junction, remedy: str) -> Answer:

@@ -9,13 +9,13 @@ from protlint.checks.case import ALL_ASSUMPTIONS, VOLTAGES, Answer, Case
 from protlint.checks.thermal import Heating, Junction, in_free_air, junction
 from protlint.findings import NotChecked, WorkingLine
 from protlint.partdata.book import Figure
+from protlint.partdata.ratings import RATINGS_OF
 from protlint.quantities import format_quantity, preferred
 from protlint.solve.conditions import Condition
 from protlint.solve.parameters import CircuitError
 from protlint.solve.solution import Currents, Point
 
-CURRENT_RATING = {"npn": "ic", "pnp": "ic", "diode": "if", "zener": "if"}
-"""The rating that bounds a shunt device's current."""
+NOT_SOLVED = "the held short at every ambient, which could not be solved"
 
 
 @dataclass(frozen=True, slots=True)
@@ -28,6 +28,11 @@ class Taken:
     current_A: float
     voltage_V: float
     power_W: float
+
+
+def current_rating(kind: str) -> str:
+    """Return the name of the rating that bounds the current of a part of a kind."""
+    return next(name for name in ("ic", "id", "if") if name in RATINGS_OF[kind])
 
 
 def taken_by_shunt(case: Case) -> Mapping[str, tuple[Taken, ...]]:
@@ -47,8 +52,11 @@ def shunt_overloaded(case: Case) -> Iterator[Answer]:
     """Yield findings for each shunt part that takes too much current or power in the held short, or too much voltage."""
     check = "shunt-overloaded"
     for part_id, rows in taken_by_shunt(case).items():
+        if not rows:
+            yield NotChecked(check, NOT_SOLVED)
+            continue
         part = case.part(part_id)
-        name = CURRENT_RATING[part.kind]
+        name = current_rating(part.kind)
         allowed = case.allowed(part_id, name, "current")
         if allowed is None:
             yield NotChecked(check, case.rating_key(part_id, name))
@@ -59,7 +67,7 @@ def shunt_overloaded(case: Case) -> Iterator[Answer]:
             yield NotChecked(check, hot)
         elif hot is not None and hot[1].too_hot:
             yield _too_much_power(case, *hot)
-        if part.kind in ("npn", "pnp"):
+        if part.kind.startswith(("npn", "pnp")):
             yield from _voltage(case, part_id)
 
 
@@ -176,7 +184,7 @@ def _greatest_voltage(case: Case, part_id: str) -> tuple[float, str] | None:
     except CircuitError:
         return None
     names = case.devices_of(part_id)
-    sign = 1.0 if case.part(part_id).kind == "npn" else -1.0
+    sign = 1.0 if case.part(part_id).kind.startswith("npn") else -1.0
     volts = [
         (sign * point.states[name].voltage_V, said)
         for point, said in zip(points, words, strict=True)
