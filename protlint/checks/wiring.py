@@ -54,7 +54,8 @@ def _changed(match: FaultMatch) -> list[str]:
 
 def _working(board: Board, match: FaultMatch) -> tuple[WorkingLine, ...]:
     """Say of every connection that is wrong where it is and where it belongs."""
-    parts = {part.id: part for part in board.parts if part.id in set(_changed(match))}
+    changed = set(_changed(match))
+    parts = {part.id: part for part in board.parts if part.id in changed}
     lines = []
     for one, other in match.exchange:
         nets = [board.nets[parts[part].roles[pin]].name for part, pin in (one, other)]

@@ -37,6 +37,9 @@ LEAD_AT_MOST_OHM = 10.0
 STEP_COST, TRANSISTOR_COST = 1, 3
 """A drive through passive parts is nearer than one behind a transistor."""
 
+FARTHEST, MOST_NETS = 12, 100
+"""What lies beyond as many steps, or behind as many nets, is not taken for a drive or a control."""
+
 
 @dataclass(frozen=True, slots=True)
 class Surroundings:
@@ -162,7 +165,7 @@ def _find_drive(
     fed: list[tuple[int, int]] = []
     while queue:
         cost, net = heapq.heappop(queue)
-        if net in best:
+        if net in best or cost > FARTHEST or len(best) > MOST_NETS:
             continue
         best[net] = cost
         entry = drive_entry_at(board, net, limits)
@@ -239,7 +242,7 @@ def _switched_by(board: Board, element: Element, stops: set[int], drive: int | N
     """Return the driven net, other than the drive, that a transistor's control leads to through passive parts."""
     control = element.terminals.get(CONTROL[element.kind])
     queue, seen, found = deque([control] if control is not None else []), set(), None
-    while queue:
+    while queue and len(seen) < MOST_NETS:
         net = queue.popleft()
         if net in seen:
             continue
