@@ -20,26 +20,29 @@ def facts_of(edif: Edif, flat: Flat, encoding: str) -> dict[str, str]:
         "design": f"{flat.design}, cell {flat.cell}; chosen by {flat.chosen_by}",
         "libraries": _libraries(edif.libraries),
         "drawn as": _shape(flat),
-        "parts": f"{len(flat.parts)} of {len({(part.library, part.cell) for part in flat.parts})} cells",
-        "nets": f"{len(flat.nets)}, {sum(len(net.pins) < 2 for net in flat.nets)} of them with fewer than two pins",
+        "parts": f"{len(flat.parts)} of {_counted(len({(part.library, part.cell) for part in flat.parts}), 'cell')}",
+        "nets": f"{len(flat.nets)}, {sum(len(net.pins) < 2 for net in flat.nets) or 'none'} of them with fewer than two pins",
         "pins": f"{len(pins)} connected",
         "designators": _designators(flat),
-        "pin numbers": f"known of {sum(pin.number is not None for pin in pins)} pins",
-        "pin names": f"more than a number at {sum(not pin.name.isdecimal() for pin in pins)} pins",
+        "pin numbers": f"known of {sum(pin.number is not None for pin in pins)} of {_counted(len(pins), 'pin')}",
+        "pin names": f"more than a number at {sum(not pin.name.isdecimal() for pin in pins)} of {_counted(len(pins), 'pin')}",
     }
     if joints:
         facts["rippers and ties"] = f"{joints}, which join nets and are no parts"
     shorted = sum(cell.shorted for cell in flat.cells)
     if shorted:
-        facts["joined inside"] = f"{shorted} parts, whose cells say that some of their pins are one"
+        facts["joined inside"] = f"{_counted(shorted, 'part')}, whose cells say that some of their pins are one"
     sections = [sections for cell in flat.cells for sections in cell.packages]
     if sections:
-        facts["sections"] = f"{sum(sections)} parts are sections of {len(sections)} packages"
+        facts["sections"] = f"{_counted(sum(sections), 'part')} are sections of {_counted(len(sections), 'package')}"
     return facts
 
 
 def _libraries(libraries: Sequence[Library]) -> str:
-    told = [f"{each.name.text} ({'external, ' if each.external else ''}{len(each.cells)} cells)" for each in libraries]
+    told = [
+        f"{each.name.text} ({'external, ' if each.external else ''}{_counted(len(each.cells), 'cell')})"
+        for each in libraries
+    ]
     more = len(told) - _LIBRARIES_SHOWN
     return ", ".join(told[:_LIBRARIES_SHOWN]) + (f" and {more} more" if more > 0 else "") or "none"
 
@@ -49,8 +52,10 @@ def _shape(flat: Flat) -> str:
     kinds = sorted({view.kind.upper() or "unnamed" for view in views if view is not None})
     pages = sum(view.contents.pages for view in views if view is not None and view.contents is not None)
     shape = f"{' and '.join(kinds)} views" if kinds else "a cell without contents"
-    shape += f", {pages} pages" if pages else ""
-    return shape + (f", {flat.levels} levels of hierarchy, {len(flat.cells)} cells" if flat.levels > 1 else ", flat")
+    shape += f", {_counted(pages, 'page')}" if pages else ""
+    return shape + (
+        f", {flat.levels} levels of hierarchy, {_counted(len(flat.cells), 'cell')}" if flat.levels > 1 else ", flat"
+    )
 
 
 def _designators(flat: Flat) -> str:
@@ -58,5 +63,9 @@ def _designators(flat: Flat) -> str:
     if not flat.designated:
         source = "no designator in the file: the names of the instances are taken"
     else:
-        source = f"{len(flat.parts) - without} from designators"
-    return f"{source}, {without} parts without one" if without else source
+        source = f"{len(flat.parts) - without} stated in the file"
+    return f"{source}, {_counted(without, 'part')} without one" if without else source
+
+
+def _counted(count: int, word: str) -> str:
+    return f"{count} {word}" if count == 1 else f"{count} {word}s"

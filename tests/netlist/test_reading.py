@@ -63,7 +63,7 @@ def test_the_public_name_and_the_file_facts() -> None:
     assert netlist.sha256 == hashlib.sha256(path.read_bytes()).hexdigest()
     assert netlist.file.endswith("flat.edf")
     assert netlist.facts["written by"] == "Netwriter 7.1"
-    assert netlist.facts["libraries"] == "PARTS (2 cells), BOARD (1 cells)"
+    assert netlist.facts["libraries"] == "PARTS (2 cells), BOARD (1 cell)"
 
 
 def test_standard_input(monkeypatch: pytest.MonkeyPatch) -> None:
@@ -176,7 +176,7 @@ def test_one_designator_on_parts_of_different_cells() -> None:
     netlist = read(board(contents, cells=cells))
     assert [part.id for part in netlist.parts] == ["K1#1", "K1#2", "Q1#1", "Q1#2"]
     assert [(each.designator, each.parts) for each in netlist.duplicate_designators] == [("Q1", (2, 3))]
-    assert netlist.facts["sections"] == "2 parts are sections of 1 packages"
+    assert netlist.facts["sections"] == "2 parts are sections of 1 package"
 
 
 def test_a_part_whose_cell_joins_pins_inside() -> None:
@@ -184,7 +184,7 @@ def test_a_part_whose_cell_joins_pins_inside() -> None:
     contents = placed("J1", "J") + net("N1", "J1.A") + net("N2", "J1.B") + net("N3", "J1.C")
     netlist = read(board(contents, cells=jumper))
     assert [(node.name, len(node.pins)) for node in netlist.nets] == [("N1", 2), ("N3", 1)]
-    assert netlist.facts["joined inside"].startswith("1 parts")
+    assert netlist.facts["joined inside"].startswith("1 part,")
 
 
 def test_a_pin_on_three_nets_is_told_twice() -> None:
