@@ -216,6 +216,13 @@ def inputs() -> Iterator[Scenario]:
     yield Scenario("value-unreadable", "value", sink(), sink().drawn(("R2 RES 2.2", "R2 RES two")), "error")
     unknown = sink().drawn(("NPN QPN1", "NPN QXX9"))
     yield Scenario("part-data-missing", "type", sink(), unknown, "note")
+    numbered = sink().drawn(
+        ("R1 RES 390 CMD BASE", "R1 RES 390 COL BASE"), ("Q1 NPN", "Q5 PNP QSP1 1=COL 2=CB 3=+12V\nR5 RES 1k CMD CB\nQ1 NPN")
+    )
+    named = numbered.limited("pins", "QSP1", **{"1": "collector", "2": "base", "3": "emitter"})
+    yield Scenario("pins-unknown", "pin roles of a level shifter", named, numbered, "error")
+    hidden = sink().drawn(("LAMP BASE SNS\n", "1=LAMP 2=BASE 3=SNS\n"))
+    yield Scenario("pins-unknown", "pin roles of the pass device", sink(), hidden, "warning")
     listed = sink()
     agreed = Job(listed.board, listed.tables, listed.data, "Designator,Value\nR2,2R2\nR1,390\n")
     differs = Job(listed.board, listed.tables, listed.data, "Designator,Value\nR2,2R7\nR1,390\n")
