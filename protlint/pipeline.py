@@ -20,6 +20,7 @@ from protlint.checks.table import BOARD_CHECKS, BOUNDED, CHECKS, WITHOUT_SOLUTIO
 from protlint.findings import LEVELS, Finding, Level, NotChecked, identifying_parts, stamp_fingerprints
 from protlint.limits import CheckSetting, LimiterLimits, Limits, load_limits, needs_of
 from protlint.netlist import read_netlist
+from protlint.netlist.forms import no_collection
 from protlint.netlist.model import Netlist
 from protlint.partdata.book import Book, load_book
 from protlint.solve.answers import solve
@@ -64,8 +65,8 @@ class ReviewedLimiter:
 class Review:
     """The whole answer for one netlist; limiters and findings in report order, the worst first.
 
-    ``assumed`` is what was assumed about the board as a whole; ``remarks`` is said once, below everything: expired waivers,
-    waivers that match nothing, part data that contradicts itself, what could not be checked of the board as a whole.
+    ``assumed`` is what was assumed about the board as a whole, ``not_checked`` what could not be checked of it; ``remarks``
+    is said once, below everything: expired waivers, waivers that match nothing, part data that contradicts itself.
     """
 
     board: Board
@@ -74,7 +75,8 @@ class Review:
     limiters: tuple[ReviewedLimiter, ...]
     findings: tuple[Finding, ...]
     assumed: tuple[str, ...] = ()
-    remarks: tuple[str, ...] = field(default_factory=tuple)
+    remarks: tuple[str, ...] = ()
+    not_checked: tuple[NotChecked, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -160,6 +162,11 @@ def review(
 
 def review_netlist(netlist: Netlist, desk: Desk) -> Review:
     """Review every limiter of a netlist that is already read."""
+    with no_collection():
+        return _reviewed(netlist, desk)
+
+
+def _reviewed(netlist: Netlist, desk: Desk) -> Review:
     board = build_board(netlist, limits=desk.limits, book=desk.book, parts_list=desk.parts_list)
     found = find_limiters(board, desk.rules)
     reviewed: list[ReviewedLimiter] = []
@@ -173,8 +180,8 @@ def review_netlist(netlist: Netlist, desk: Desk) -> Review:
         findings += its_findings
     more, unanswered = _ask_of_the_board(BoardCase(board, found, cases, desk.limits, desk.catalogue))
     reviewed = [replace(one, not_checked=(*one.not_checked, *unanswered.pop(one.limiter.id, ()))) for one in reviewed]
-    not_asked = [f"{one.check} not checked: needs {one.needs}" for left in unanswered.values() for one in left]
-    return _finish(board, found, reviewed, findings + more, desk, not_asked)
+    of_the_board = [one for left in unanswered.values() for one in left]
+    return _finish(board, found, reviewed, findings + more, desk, of_the_board)
 
 
 def _ask_of_the_board(whole: BoardCase) -> tuple[list[Finding], dict[str | None, list[NotChecked]]]:
@@ -288,14 +295,14 @@ def _finish(
     reviewed: list[ReviewedLimiter],
     findings: list[Finding],
     desk: Desk,
-    not_asked: Sequence[str],
+    not_checked: Sequence[NotChecked],
 ) -> Review:
     """Place, name, waive and sort the findings, and give every limiter its verdict."""
     findings = [_placed(board, finding) for finding in findings]
     known = {one.limiter.id: identifying_parts(one.limiter.roles) for one in reviewed}
     marked: Sequence[Finding] = stamp_fingerprints(findings, known)
     listed = desk.parts_list.remarks if desk.parts_list is not None else ()
-    remarks: tuple[str, ...] = (*desk.book.remarks, *listed, *not_asked)
+    remarks: tuple[str, ...] = (*desk.book.remarks, *listed)
     if desk.waivers is not None:
         marked, more = apply_waivers(marked, desk.waivers, on=desk.on)
         remarks += tuple(more)
@@ -311,6 +318,7 @@ def _finish(
         ),
         assumed=tuple(board.assumed) + tuple(desk.limits.assumed),
         remarks=remarks,
+        not_checked=tuple(dict.fromkeys(not_checked)),
     )
 
 

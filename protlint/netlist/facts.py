@@ -14,6 +14,8 @@ def facts_of(edif: Edif, flat: Flat, encoding: str) -> dict[str, str]:
     """Return plain names and plain sentences, in the order to show them."""
     joints = sum(item is None for cell in flat.cells for item in cell.items)
     pins = [pin for part in flat.parts for pin in part.pins]
+    short = sum(len(net.pins) < 2 for net in flat.nets)
+    numbers, names = sum(pin.number is not None for pin in pins), sum(not pin.name.isdecimal() for pin in pins)
     facts = {
         "format": f"EDIF 2 0 0, level {edif.level}, read as {encoding}",
         "written by": edif.program or "not stated",
@@ -21,11 +23,11 @@ def facts_of(edif: Edif, flat: Flat, encoding: str) -> dict[str, str]:
         "libraries": _libraries(edif.libraries),
         "drawn as": _shape(flat),
         "parts": f"{len(flat.parts)} of {_counted(len({(part.library, part.cell) for part in flat.parts}), 'cell')}",
-        "nets": f"{len(flat.nets)}, {sum(len(net.pins) < 2 for net in flat.nets) or 'none'} of them with fewer than two pins",
+        "nets": f"{len(flat.nets)}, {short or 'none'} of them with fewer than two pins",
         "pins": f"{len(pins)} connected",
         "designators": _designators(flat),
-        "pin numbers": f"known of {sum(pin.number is not None for pin in pins)} of {_counted(len(pins), 'pin')}",
-        "pin names": f"more than a number at {sum(not pin.name.isdecimal() for pin in pins)} of {_counted(len(pins), 'pin')}",
+        "pin numbers": f"known of {numbers} of {_counted(len(pins), 'pin')}",
+        "pin names": f"more than a number at {names} of {_counted(len(pins), 'pin')}",
     }
     if joints:
         facts["rippers and ties"] = f"{joints}, which join nets and are no parts"

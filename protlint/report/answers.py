@@ -25,6 +25,8 @@ LOOP = (
     "least_damping", "at_Hz", "worst_damping", "low_frequency_gain", "crossover_Hz", "phase_margin_deg", "own_damping",
 )  # fmt: skip
 
+WORST = ("damping", "at_Hz", "ambient_degC", "wiring_H")
+
 STEP = ("settles", "delay_s", "peak_A", "pass_energy_J")
 
 STATE = ("current_A", "voltage_V", "power_W", "control_A", "control_V")
@@ -109,10 +111,11 @@ def _unsolved(ambient_degC: float) -> Currents:
 
 def _loop(loop: Loop | None) -> Document:
     if loop is None:
-        return {**dict.fromkeys(LOOP), "worst": None, "natural": []}
+        return {**dict.fromkeys(LOOP), "worst": None, "worst_without_wiring": None, "natural": []}
     return {
         **taken(loop, *LOOP),
-        "worst": taken(loop.worst, "damping", "at_Hz", "ambient_degC", "wiring_H"),
+        "worst": taken(loop.worst, *WORST),
+        "worst_without_wiring": taken(loop.worst_without_wiring, *WORST),
         "natural": [{"at_Hz": rounded(at_Hz), "damping": rounded(damping)} for at_Hz, damping in loop.natural],
     }
 

@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 
-from protlint.report.figures import ambient, figure, percent
+from protlint.report.figures import ambient, current, damping, figure, percent
 from protlint.report.shape import Document
 
 ROLE_WORDS = {
@@ -16,43 +16,58 @@ AS_SOLVED = 0.05
 """Within this a formula's figure is as good as the solved one."""
 
 
+HOW = {"short": "shorted"}
+
+NOTHING = 1e-3
+"""A current below this share of holds is next to nothing."""
+
+
 def sentences(limiter: Document) -> Iterator[str]:
     """Yield what is known of a solved limiter beside its currents, one sentence each."""
     yield from _begins(limiter)
-    for place, words in (("output", "at the working output"), ("short", "in the short")):
-        at = [ambient(row["ambient_degC"]) for row in limiter["currents"] if row["limited_by"][place] == "drive"]
-        if at:
-            yield f"At {', '.join(at)} the drive gives out {words}, not the limiter."
+    yield from _drive(limiter["currents"])
     yield from _formula(limiter["formula"])
     yield from _regulates(limiter["regulates"])
     yield from _shorts(limiter)
     yield from _loop(limiter)
     yield from _start_up(limiter["start_up"])
-    yield from _if_a_part_fails(limiter["if_a_part_fails"])
+    yield from _if_a_part_fails(limiter)
 
 
 def _begins(limiter: Document) -> Iterator[str]:
     usual = limiter["currents"][len(limiter["currents"]) // 2]
-    words = (("begins_A", "limiting begins at"), ("unlimited_A", "without the shunt"), ("shunt_A", "the shunt takes"))
-    facts = [f"{said} {figure(usual[key], 'A')}" for key, said in words if usual[key] is not None]
+    words = (("begins_A", "limiting begins at {}"), ("unlimited_A", "without the shunt {} would flow"),
+             ("shunt_A", "the shunt takes {}"))  # fmt: skip
+    facts = [said.format(current(usual[key], usual["holds_A"])) for key, said in words if usual[key] is not None]
     if facts:
-        yield f"At {ambient(usual['ambient_degC'])}: {', '.join(facts)}."
+        yield f"At {ambient(usual['ambient_degC'])} {'; '.join(facts)}."
+
+
+def _drive(currents: Sequence[Document]) -> Iterator[str]:
+    """Say where the drive gives out, told together where it does so in both places at the same ambients."""
+    places: dict[str, list[str]] = {}
+    for place, words in (("output", "at the working output"), ("short", "in the short")):
+        at = [ambient(row["ambient_degC"]) for row in currents if row["limited_by"][place] == "drive"]
+        if at:
+            where = "at every ambient" if len(at) == len(currents) else f"at {' and '.join(at)}"
+            places.setdefault(where, []).append(words)
+    for where, there in places.items():
+        yield f"The drive gives out {' and '.join(there)}, not the limiter, {where}."
 
 
 def _formula(formula: Document | None) -> Iterator[str]:
     """Put the hand calculation beside the solved figure, and say which of its assumptions fails."""
     if formula is None or formula["figure_A"] is None or formula["difference"] is None:
         return
-    if formula["figure_A"] <= 0.0:
-        yield f"By hand {formula['formula']} gives no current at all: the formula does not hold here."
-        return
+    difference = formula["difference"]
     by_hand = f"By hand {formula['formula']} gives {figure(formula['figure_A'], 'A')}"
-    if abs(formula["difference"]) <= AS_SOLVED:
+    if abs(difference) <= AS_SOLVED:
         yield f"{by_hand}, as solved within 5 %."
         return
-    more = f"{percent(abs(formula['difference']))} {'more' if formula['difference'] > 0.0 else 'less'}"
-    fails = "; nor that ".join(one["assumption"] for one in formula["fails"])
-    yield f"{by_hand}; solved, {more}" + (f": it does not hold that {fails}." if fails else ".")
+    comparable = formula["figure_A"] > 0.0 and difference <= 1.0
+    shift = f", {percent(abs(difference))} {'more' if difference > 0.0 else 'less'}" if comparable else ""
+    fails = "; ".join(one["assumption"] for one in formula["fails"])
+    yield f"{by_hand}, solved {figure(formula['solved_A'], 'A')}{shift}" + (f". Not so here: {fails}." if fails else ".")
 
 
 def _regulates(regulates: Document | None) -> Iterator[str]:
@@ -71,15 +86,26 @@ def _shorts(limiter: Document) -> Iterator[str]:
 
 
 def _loop(limiter: Document) -> Iterator[str]:
+    """Tell the damping of the limiter's own modes as drawn, over the spreads, and with wiring in the short."""
     loop, step = limiter["loop"], limiter["step"]
-    if loop["least_damping"] is not None:
-        worst = f"; {figure(loop['worst_damping'])} at worst" if loop["worst_damping"] is not None else ""
-        place = f"least damping {figure(loop['least_damping'])} at {figure(loop['at_Hz'], 'Hz')}"
-        yield f"Loop: {place if loop['at_Hz'] is not None else 'nothing swings as drawn'}{worst}."
+    own = loop["own_damping"] if loop["own_damping"] is not None else loop["least_damping"]
+    if own is not None:
+        at = f" at {figure(loop['at_Hz'], 'Hz')}" if loop["at_Hz"] is not None and own == loop["least_damping"] else ""
+        drawn = "nothing swings as drawn" if own >= 1.0 else f"damping {damping(own)}{at} as drawn"
+        yield f"Loop: {'; '.join([drawn, *_worst(loop)])}."
     if step["settles"] is not None:
         after = f"after {figure(step['delay_s'], 's')}" if step["delay_s"] else "at once"
         settles = f"settles {after}" if step["settles"] else "does not settle"
         yield f"Step into the short: {settles}, peak {figure(step['peak_A'], 'A')}."
+
+
+def _worst(loop: Document) -> Iterator[str]:
+    told = None
+    for worst in (loop["worst_without_wiring"], loop["worst"]):
+        if worst is not None and worst["ambient_degC"] is not None and worst != told:
+            wiring = f"with {figure(worst['wiring_H'], 'H')} in the short" if worst["wiring_H"] else "within every spread"
+            yield f"{damping(worst['damping'])} at worst {wiring}"
+            told = worst
 
 
 def _start_up(start_up: Document | None) -> Iterator[str]:
@@ -94,15 +120,17 @@ def _start_up(start_up: Document | None) -> Iterator[str]:
     )
 
 
-def _if_a_part_fails(table: Document | None) -> Iterator[str]:
+def _if_a_part_fails(limiter: Document) -> Iterator[str]:
     """Say what the output passes into the short with a part failed."""
+    table, usual = limiter["if_a_part_fails"], limiter["currents"][len(limiter["currents"]) // 2]
     if table is None or not table["rows"]:
         return
-    cases = []
+    cases: dict[str, list[str]] = {}
     for row in table["rows"]:
-        times = f" ({figure(row['of_holds'])} times)" if row["of_holds"] is not None and row["of_holds"] > 1.1 else ""
-        cases.append(
-            f"{ROLE_WORDS[row['role']]} {'+'.join(row['parts'])} {row['how']} {figure(row['output_A'], 'A')}{times}"
-        )
-    fuses = f"; upstream stands {', '.join(table['fuses'])}" if table["fuses"] else "; no fuse upstream is named"
-    yield f"If a part fails: {', '.join(cases)}{fuses}."
+        times = f" ({row['of_holds']:.2g} times holds)" if row["of_holds"] is not None and row["of_holds"] > 1.1 else ""
+        passes = "not known" if row["output_A"] is None else current(row["output_A"], usual["holds_A"], NOTHING)
+        name = f"{ROLE_WORDS[row['role']]} {'+'.join(row['parts'])}"
+        cases.setdefault(name, []).append(f"{HOW.get(row['how'], row['how'])} {passes}{times}")
+    told = "; ".join(f"{name} {', '.join(hows)}" for name, hows in cases.items())
+    fuses = f"upstream stands {', '.join(table['fuses'])}" if table["fuses"] else "no fuse upstream is named"
+    yield f"Into the short with a part failed: {told}; {fuses}."

@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Sequence
+import re
+from collections.abc import Iterator, Mapping, Sequence
 
 from protlint.findings import LEVELS
 from protlint.report.figures import counted, figure
@@ -12,14 +13,25 @@ from protlint.report.shape import VERDICTS, Document, boards_of
 Section = tuple[Document | None, str | None, list[Document]]
 """A limiter (None for findings of none), its id, and its findings."""
 
+OF_SEVERAL = {"fails": "fail", "rests on assumptions": "rest on assumptions", "passes": "pass"}
+"""Verdicts as they are said of several limiters."""
+
 MOST_NAMES = 12
 """Names listed before the rest is counted."""
+
+_DESIGNATORS = re.compile(r"\S*[A-Z]\S*\d\S*")
+"""Names of parts in front of an assumption, of a bank with a plus between them: one word with a letter and a number."""
+
+_OF_PART = re.compile(r"(?<= property of )[^\s,]+")
+_KEY = re.compile(r"(\\?\[.+?\\?\]) (.+)")
+"""A table of the limits file and its key, as ``[limiter.Q10] carry``; Markdown escapes the brackets."""
 
 
 def summary_line(board: Document) -> str:
     """Return the count of limiters, verdicts and findings in one sentence."""
     summary = board["summary"]
-    verdicts = [f"{word} {summary[word.replace(' ', '_')]}" for word in VERDICTS if summary[word.replace(" ", "_")]]
+    counts = {word: summary[word.replace(" ", "_")] for word in VERDICTS}
+    verdicts = [f"{count} {word if count == 1 else OF_SEVERAL.get(word, word)}" for word, count in counts.items() if count]
     found = counted(summary["limiters"], "limiter") if summary["limiters"] else "no limiter found"
     parts = [found + (f" ({', '.join(verdicts)})" if verdicts else "")]
     parts += [counted(summary[f"{level}s"], level) for level in LEVELS]
@@ -111,7 +123,7 @@ def assumptions(board: Document) -> list[str]:
         parts = {part["id"] for part in limiter["parts"]}
         for text in limiter["assumed"]:
             name, colon, rest = text.partition(": ")
-            of_part = bool(colon) and (name in parts or set(name.split("+")) <= parts)
+            of_part = bool(colon) and (name in parts or _DESIGNATORS.fullmatch(name) is not None)
             sentence = rest if of_part else text
             key = _without_nets(sentence, limiter)
             said.setdefault(key, sentence)
@@ -158,12 +170,42 @@ def from_memory(board: Document) -> list[str]:
     ]
 
 
-def unchecked(rows: Sequence[Document]) -> list[tuple[str, str]]:
-    """Return what is needed and the checks that need it, each need once."""
-    by_need: dict[str, list[str]] = {}
+def unchecked(rows: Sequence[Document]) -> list[str]:
+    """Return what is needed and the checks that need it: each need once, the keys of one table together."""
+    checks: dict[str, list[str]] = {}
     for row in rows:
-        by_need.setdefault(row["needs"], []).append(row["check"])
-    return [(need, ", ".join(dict.fromkeys(checks))) for need, checks in by_need.items()]
+        checks.setdefault(row["needs"], []).append(row["check"])
+    told: dict[str, list[str]] = {}
+    for need, names in _parts_together({need: ", ".join(dict.fromkeys(names)) for need, names in checks.items()}):
+        key = _KEY.match(need)
+        if key is not None:
+            told.setdefault(key[1], []).append(f"{key[2]} ({names})")
+        else:
+            told.setdefault(f"{need} ({names})", [])
+    return [f"{start} {'; '.join(keys)}".rstrip() for start, keys in told.items()]
+
+
+def left_open(limiter: Document) -> list[Document]:
+    """Return what was not checked of a limiter but for what kept it from being solved, which is told by itself."""
+    return [row for row in limiter["not_checked"] if row["needs"] != limiter["not_solved"]]
+
+
+def _parts_together(needs: Mapping[str, str]) -> Iterator[tuple[str, str]]:
+    """Yield needs with their checks; those that differ only in the part whose property is needed are one."""
+    alike: dict[tuple[str, str], list[str]] = {}
+    for need, names in needs.items():
+        part = _OF_PART.search(need)
+        blank = need if part is None else f"{need[: part.start()]}\0{need[part.end() :]}"
+        alike.setdefault((blank, names), []).append(part.group() if part is not None else "")
+    for (blank, names), parts in alike.items():
+        yield blank.replace("\0", ", ".join(parts)), names
+
+
+def sentence(finding: Document) -> str:
+    """Return a finding's message with a capital, unless it begins with the name of a part or a net."""
+    said: str = finding["message"]
+    names = (*finding["parts"], *finding["nets"], finding["limiter"] or "")
+    return said if any(name and said.startswith(name) for name in names) else said[:1].upper() + said[1:]
 
 
 def _finding_rank(finding: Document) -> tuple[bool, int]:

@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING
 
 from protlint import __version__
 from protlint.board.graph import Board, BoardPart
-from protlint.findings import Finding
+from protlint.findings import Finding, NotChecked
 from protlint.limits import LimiterLimits
 from protlint.partdata.book import PartEntry
 from protlint.report.answers import answers, rounded, taken
@@ -35,6 +35,7 @@ def document(review: Review) -> Document:
     by_id = {part.id: part for part in review.board.parts}
     limiters = [_limiter(item, review, by_id) for item in review.limiters]
     findings = [_finding(finding, by_id) for finding in review.findings]
+    not_checked = [_unchecked(row) for row in review.not_checked]
     netlist = review.board.netlist
     return {
         "report": 1,
@@ -49,9 +50,10 @@ def document(review: Review) -> Document:
             "pins": sum(len(part.pins) for part in netlist.parts),
         },
         "limits": {"file": review.limits.file, "ambient_degC": list(review.limits.ambient_degC)},
-        "summary": summarised(limiters, findings),
+        "summary": summarised(limiters, findings, not_checked),
         "limiters": limiters,
         "findings": findings,
+        "not_checked": not_checked,
         "warnings": [
             {"message": warning.message, "line": warning.line, "column": warning.column, "count": warning.count}
             for warning in netlist.warnings
@@ -77,8 +79,12 @@ def _limiter(item: ReviewedLimiter, review: Review, by_id: Mapping[str, BoardPar
         **worked_out,
         "assumed": list(dict.fromkeys(item.assumed)),
         "asked": _asked(item, review),
-        "not_checked": [{"check": row.check, "needs": row.needs} for row in item.not_checked],
+        "not_checked": [_unchecked(row) for row in item.not_checked],
     }
+
+
+def _unchecked(row: NotChecked) -> Document:
+    return {"check": row.check, "needs": row.needs}
 
 
 def _asked(item: ReviewedLimiter, review: Review) -> list[str]:

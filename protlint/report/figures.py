@@ -13,12 +13,24 @@ UNKNOWN = "-"
 
 MOST_DECIMALS = 3
 
+RATIO_DECIMALS = 4
+
 
 def figure(value: float | None, unit: str = "") -> str:
-    """Return a value with its unit as people write it, ``367 mA``, or a dash."""
+    """Return a value with its unit as people write it, ``367 mA``, or a dash; a bare ratio four decimals at most."""
     if value is None or not math.isfinite(value):
         return UNKNOWN
-    return format_quantity(value, unit)
+    return format_quantity(value if unit or abs(value) >= 0.1**RATIO_DECIMALS else 0.0, unit)
+
+
+def damping(ratio: float) -> str:
+    """Return a damping ratio with two digits, no more than three decimals: ``0.82``, ``0.036``, ``-0.2``."""
+    return f"{round(float(f'{ratio:.2g}'), MOST_DECIMALS) + 0.0:g}"
+
+
+def current(value: float, beside: float | None, share: float = 1e-6) -> str:
+    """Return a current, or that it is nothing to speak of beside another: below a share of it."""
+    return "next to nothing" if beside and abs(value) < share * abs(beside) else figure(value, "A")
 
 
 def unit_for(values: Iterable[float | None], unit: str) -> tuple[str, float]:
@@ -41,6 +53,14 @@ def triple(ends: Sequence[float] | None, usual: float | None) -> str:
 def three_digits(value: float) -> str:
     """Return a number with three significant digits, noughts kept: ``1.20``."""
     return "0" if value == 0.0 else f"{value:.{_decimals(value)}f}"
+
+
+def aligned(value: float | None, unit: str = "A") -> str:
+    """Return a value with its unit and noughts kept, so that a column of them stands in line, or a dash."""
+    if value is None:
+        return UNKNOWN
+    prefixed, scale = unit_for([value], unit)
+    return f"{three_digits(value / scale)} {prefixed}"
 
 
 def percent(ratio: float) -> str:

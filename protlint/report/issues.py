@@ -10,7 +10,7 @@ import re
 from collections import Counter
 from pathlib import Path
 
-from protlint.report.digest import place_of, waiver_of, working_line
+from protlint.report.digest import place_of, sentence, waiver_of, working_line
 from protlint.report.safe import markdown, throughout
 from protlint.report.sarif import artifact_uri
 from protlint.report.shape import Document, boards_of
@@ -69,10 +69,10 @@ def _issue(finding: Document, board: Document, caution: str) -> str:
     safe: Document = throughout(finding, markdown)
     netlist = throughout(board["netlist"], markdown)
     whom = safe["limiter"] or "the board"
-    lines = [mark(board["netlist"]["file"]), f"# {safe['check']}: {whom}", "", safe["message"], ""]
+    lines = [mark(board["netlist"]["file"]), f"# {safe['check']}: {whom}", "", f"{sentence(safe)}.", ""]
     if safe["waived"] is not None:
         lines += [f"**Waived:** {waiver_of(safe)}", ""]
-    lines += [f"**Remedy:** {safe['remedy']}", ""] if safe["remedy"] else []
+    lines += [f"**Remedy:** {safe['remedy']}.", ""] if safe["remedy"] else []
     lines += ["Rests on an assumption.", ""] if safe["assumption"] else []
     if safe["working"]:
         lines += ["Working:", "", *(f"- {working_line(line)}" for line in safe["working"]), ""]

@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Collection, Iterable, Sequence
 from xml.etree import ElementTree
 
-from protlint.report.digest import place_of, waiver_of, working_line
+from protlint.report.digest import left_open, place_of, sentence, waiver_of, working_line
 from protlint.report.safe import throughout, xml
 from protlint.report.shape import CAUTION, Document, boards_of
 
@@ -29,7 +29,7 @@ def rendered_junit(report: Document) -> str:
             _suite(root, f"{prefix}{limiter['id']} ({limiter['topology']})", board, found, limiter)
         known = {limiter["id"] for limiter in board["limiters"]}
         others = [finding for finding in board["findings"] if finding["limiter"] not in known]
-        if others or not board["limiters"]:
+        if others or board["not_checked"] or not board["limiters"]:
             _suite(root, f"{prefix}the board", board, others, None)
     if safe.get("unread"):
         _unread(root, safe["unread"])
@@ -47,15 +47,15 @@ def _suite(
     by_check: dict[str, list[Document]] = {}
     for finding in findings:
         by_check.setdefault(finding["check"], []).append(finding)
-    skipped = _skipped(limiter["not_checked"] if limiter else (), by_check)
+    skipped = _skipped(left_open(limiter) if limiter else board["not_checked"], by_check)
     for check, found in by_check.items():
         _case(suite, check, place, found)
     for check, needs in skipped.items():
         case = ElementTree.SubElement(suite, "testcase", name=check, classname=place)
-        ElementTree.SubElement(case, "skipped", message=f"not checked: needs {', '.join(needs)}")
+        ElementTree.SubElement(case, "skipped", message=f"not checked: needs {'; '.join(needs)}")
     if limiter is not None:
         _passed(suite, limiter, place, {*by_check, *skipped})
-    elif not findings:
+    elif not findings and not skipped:
         ElementTree.SubElement(suite, "testcase", name="no limiter found", classname=place)
     if len(root) == 1:
         ElementTree.SubElement(suite, "system-out").text = CAUTION
@@ -78,7 +78,7 @@ def _case(suite: ElementTree.Element, check: str, place: str, findings: Sequence
     others = [one for one in findings if one not in counting]
     if counting:
         worst = min(counting, key=lambda one: FAILING_LEVELS.index(one["level"]))
-        failure = ElementTree.SubElement(case, "failure", type=worst["level"], message=worst["message"])
+        failure = ElementTree.SubElement(case, "failure", type=worst["level"], message=sentence(worst))
         failure.text = _told(counting)
     elif all(one["waived"] is not None for one in findings):
         reasons = ", ".join(dict.fromkeys(one["waived"] for one in findings))
@@ -93,7 +93,7 @@ def _told(findings: Iterable[Document]) -> str:
 
 def _lines(finding: Document) -> list[str]:
     level = finding["level"] if finding["waived"] is None else f"waived {finding['level']}"
-    lines = [f"{level}: {finding['message']}"]
+    lines = [f"{level}: {sentence(finding)}"]
     for line in finding["working"]:
         lines.append(f"  {working_line(line)}")
     lines += [f"remedy: {finding['remedy']}"] if finding["remedy"] else []

@@ -15,7 +15,9 @@ COLUMNS = 80
 TIED = "\0"
 """Stands for a blank that is no place to break; texts hold none, for they are escaped."""
 
-_BEFORE_UNIT = re.compile(r"(?<=\d) (?=(?:[pnumkMG]?(?:A|V|W|ohm|F|H|Hz|s|J)|%|degC|K|K/W)(?![\w/]))")
+_BEFORE_UNIT = re.compile(
+    r"(?<=\d) (?=(?:[pnumkMG]?(?:A|V|W|ohm|F|H|Hz|s|J)|%|degC|K|K/W|(?:error|warning|note|limiter|part|net)s?)(?![\w/]))"
+)
 
 COLOURS = {
     "error": "31", "fails": "31",

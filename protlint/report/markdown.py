@@ -8,9 +8,11 @@ from protlint.findings import LEVELS
 from protlint.report.digest import (
     assumptions,
     from_memory,
+    left_open,
     place_of,
     remarks,
     sections,
+    sentence,
     summary_line,
     unchecked,
     waiver_of,
@@ -45,7 +47,7 @@ def finding_lines(finding: Document, *, working: bool = True) -> list[str]:
     """Return one finding as a list item with its working below it; the texts in it are escaped already."""
     parts = f" ({', '.join(finding['parts'])})" if finding["parts"] else ""
     whom = f"**{finding['limiter']}**" if finding["limiter"] else "**the board**"
-    lines = [f"- {whom}{parts}: {finding['check']}. {finding['message']}"]
+    lines = [f"- {whom}{parts}: {finding['check']}. {sentence(finding)}"]
     if finding["waived"] is not None:
         lines.append(f"  Waived: {waiver_of(finding)}")
     lines += [f"  Remedy: {finding['remedy']}"] if finding["remedy"] else []
@@ -112,10 +114,10 @@ def _folded(title: str, lines: Sequence[str]) -> list[str]:
 
 
 def _not_checked(board: Document) -> list[str]:
-    texts = []
+    texts = [f"the board, for want of {need}" for need in unchecked(board["not_checked"])]
     for limiter in board["limiters"]:
-        texts += [f"{limiter['id']}: {checks}: needs {need}" for need, checks in unchecked(limiter["not_checked"])]
-        texts += [f"{limiter['id']}: could not be solved: {limiter['not_solved']}"] if limiter["not_solved"] else []
+        texts += [f"{limiter['id']} could not be solved: {limiter['not_solved']}"] if limiter["not_solved"] else []
+        texts += [f"{limiter['id']}, for want of {need}" for need in unchecked(left_open(limiter))]
     return texts
 
 

@@ -13,7 +13,7 @@ from urllib.parse import quote
 
 from protlint import __version__
 from protlint.checks.catalogue import CheckRow, load_catalogue
-from protlint.report.digest import place_of, times, waiver_of
+from protlint.report.digest import left_open, place_of, times, waiver_of
 from protlint.report.figures import figure
 from protlint.report.safe import json_text, terminal, throughout
 from protlint.report.shape import CAUTION, Document, boards_of
@@ -155,19 +155,22 @@ def _notifications(board: Document, artifact: Document, index_of: Mapping[str, i
         said = message(warning["message"] + times(warning["count"]))
         location = {"physicalLocation": _physical(artifact, warning)}
         notifications.append({"level": "warning", "message": said, "locations": [location]})
+    notifications += (_unchecked(None, row, index_of) for row in board["not_checked"])
     for limiter in board["limiters"]:
-        for row in limiter["not_checked"]:
-            text = f"{limiter['id']}: {row['check']} was not checked; it needs {row['needs']}."
-            known = (
-                {"associatedRule": {"id": row["check"], "index": index_of[row["check"]]}} if row["check"] in index_of else {}
-            )
-            notifications.append({"level": "note", "message": message(text), **known})
+        notifications += (_unchecked(limiter["id"], row, index_of) for row in left_open(limiter))
         if limiter["not_solved"]:
             text = f"{limiter['id']} could not be solved: {limiter['not_solved']}."
             notifications.append({"level": "warning", "message": message(text)})
     notifications += ({"level": "note", "message": message(f"Assumed: {text}.")} for text in board["assumed"])
     notifications += ({"level": "warning", "message": message(text)} for text in board["remarks"])
     return notifications
+
+
+def _unchecked(limiter: str | None, row: Document, index_of: Mapping[str, int]) -> Document:
+    whom = f"{limiter}: " if limiter is not None else ""
+    said = message(f"{whom}{row['check']} was not checked; it needs {row['needs']}.")
+    known = {"associatedRule": {"id": row["check"], "index": index_of[row["check"]]}} if row["check"] in index_of else {}
+    return {"level": "note", "message": said, **known}
 
 
 def _unread(error: Document) -> Document:

@@ -67,8 +67,8 @@ def _without_idle_waivers(boards: list[Document]) -> tuple[list[Document], list[
     return cleared, everywhere
 
 
-def summarised(limiters: Sequence[Document], findings: Sequence[Document]) -> Document:
-    """Return the counts a report opens with; waived findings count as waived only."""
+def summarised(limiters: Sequence[Document], findings: Sequence[Document], not_checked: Sequence[Document] = ()) -> Document:
+    """Return the counts a report opens with; waived findings count as waived only. ``not_checked`` is the board's own."""
     verdicts = [item["verdict"] for item in limiters]
     counted = [item["level"] for item in findings if item["waived"] is None]
     return {
@@ -76,5 +76,5 @@ def summarised(limiters: Sequence[Document], findings: Sequence[Document]) -> Do
         **{verdict.replace(" ", "_"): verdicts.count(verdict) for verdict in VERDICTS},
         **{f"{level}s": counted.count(level) for level in LEVELS},
         "waived": len(findings) - len(counted),
-        "not_checked": sum(len(item["not_checked"]) for item in limiters),
+        "not_checked": len(not_checked) + sum(len(item["not_checked"]) for item in limiters),
     }

@@ -144,7 +144,7 @@ def _limiters(review: Review) -> Iterable[list[str]]:
     for name in [*stated, *(name for name in parts if name not in stated)]:
         item, needs = parts.get(name), stated.get(name, LimiterLimits())
         about = f"  # {_about(item)}" if item is not None else ""
-        yield [f"[limiter.{toml_key(name)}]{about}", *_limiter_rows(needs, blanks=item is not None)]
+        yield [f"[limiter.{toml_key(name)}]{about}", *_limiter_rows(needs, item.needs if item is not None else None)]
 
 
 def _about(item: ReviewedLimiter) -> str:
@@ -152,13 +152,14 @@ def _about(item: ReviewedLimiter) -> str:
     return terminal("; ".join([item.limiter.topology, *names]))
 
 
-def _limiter_rows(needs: LimiterLimits, *, blanks: bool) -> list[str]:
+def _limiter_rows(needs: LimiterLimits, known: LimiterLimits | None) -> list[str]:
+    """Write what a table states, and of a limiter on the board a blank for what neither it nor another table states."""
     rows = []
     for key, field_name, unit, meaning in LIMITER_KEYS:
         value = getattr(needs, field_name)
         if value is not None:
             rows.append(f"{key} = {quantity(value, unit)}")
-        elif blanks:
+        elif known is not None and getattr(known, field_name) is None:
             rows.append(f'# {key} = " {unit}"  # {meaning}')
     for key, field_name, unit in OTHER_LIMITER_KEYS:
         value = getattr(needs, field_name)

@@ -63,6 +63,7 @@ def survey(review: Review) -> Document:
             for fault in review.found.faults
         ],
         "warnings": report["warnings"],
+        "not_checked": report["not_checked"],
         "assumed": report["assumed"],
         "remarks": [*review.found.remarks, *review.remarks],
     }

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Iterator, Sequence
 
 from protlint.report.behaviour import ROLE_WORDS
-from protlint.report.digest import MOST_NAMES, listed, place_of, times
+from protlint.report.digest import MOST_NAMES, assumptions, listed, place_of, times
 from protlint.report.figures import ambient, counted, figure
 from protlint.report.layout import painted, shortened, table, wrapped
 from protlint.report.safe import terminal, throughout
@@ -25,24 +25,40 @@ def rendered_survey(facts: Document, *, colour: bool = False) -> str:
     safe: Document = throughout(facts, terminal)
     netlist = safe["netlist"]
     title = (
-        f"{netlist['file']}: design {netlist['design']}, {counted(netlist['parts'], 'part')}, "
+        f"{netlist['file']}: {counted(len(safe['limiters']), 'limiter') if safe['limiters'] else 'no limiter'} found; "
+        f"design {netlist['design']}, {counted(netlist['parts'], 'part')}, "
         f"{counted(netlist['nets'], 'net')}, {counted(netlist['pins'], 'connected pin')}"
     )
     lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
     sections = (
+        ("Limiters", _limiters(safe["limiters"], colour)),
+        ("Drawn wrong", _faults(safe["faults"])),
+        ("What is missing", _missing(safe)),
+        ("Assumed", _items(_assumed(safe))),
         ("How it was read", _reading(safe)),
         ("Parts", _parts(safe)),
         ("Supplies", _supplies(safe["supplies"])),
-        ("What is missing", _missing(safe)),
-        ("Limiters", _limiters(safe["limiters"], colour)),
-        ("Drawn wrong", _faults(safe["faults"])),
-        ("Assumed", _items(safe["assumed"])),
         ("Remarks", _items(safe["remarks"])),
     )
     for heading, body in sections:
         if body:
             lines += ["", painted(heading, "heading", colour=colour), *body]
     return "\n".join([*lines, "", *wrapped(safe["caution"])]) + "\n"
+
+
+def _assumed(facts: Document) -> list[str]:
+    """Return what was assumed, of each device of a circuit as well, every sentence once."""
+    limiters = [
+        {
+            **limiter,
+            "assumed": [
+                *limiter["assumed"],
+                *(f"{device['name']}: {text}" for device in limiter["devices"] for text in device["assumed"]),
+            ],
+        }
+        for limiter in facts["limiters"]
+    ]
+    return assumptions({**facts, "limiters": limiters})
 
 
 def _items(texts: Iterable[str]) -> list[str]:
@@ -138,26 +154,22 @@ def _limiter(limiter: Document, colour: bool) -> list[str]:
         if names
     ]
     lines += wrapped("; ".join(roles), indent=6, first="    ")
-    for held, nets in _nets(limiter["held"]).items():
-        lines += wrapped(f"{', '.join(nets)}: {held}", indent=8, first="    ")
     drive = limiter["drive_ends"]
+    driven = drive["node"] if drive is not None else None
+    held = _nets([pair for pair in limiter["held"] if pair[0] != driven])
+    if held:
+        lines += wrapped("; ".join(f"{', '.join(nets)} {words}" for words, nets in held.items()), indent=6, first="    ")
     if drive is not None:
-        lines += wrapped(_drive(drive), indent=8, first="    ")
+        lines += wrapped(_drive(drive), indent=6, first="    ")
     if limiter["shorts"]:
-        lines += wrapped(f"a short ties the output to {', '.join(limiter['shorts'])}", indent=8, first="    ")
-    lines += [line for need in limiter["missing"] for line in wrapped(f"missing: {need}", indent=8, first="    ")]
-    assumed = [
-        *limiter["assumed"],
-        *(f"{device['name']}: {text}" for device in limiter["devices"] for text in device["assumed"]),
-    ]
-    for text in dict.fromkeys(assumed):
-        lines += wrapped(f"assumed: {text}", indent=8, first="    ")
+        lines += wrapped(f"a short ties the output to {', '.join(limiter['shorts'])}", indent=6, first="    ")
+    lines += [line for need in limiter["missing"] for line in wrapped(f"missing: {need}", indent=6, first="    ")]
     if limiter["also_matched"]:
-        lines += wrapped(f"also fits: {', '.join(limiter['also_matched'])}", indent=8, first="    ")
+        lines += wrapped(f"also fits: {', '.join(limiter['also_matched'])}", indent=6, first="    ")
     lines += _sensitivities(limiter["sensitivities"])
     lines += _states(limiter["held_short"])
     lines += _loop(limiter["loop"], limiter["loop_table"])
-    return lines + [line for text in _advice(limiter["advice"]) for line in wrapped(text, indent=8, first="    ")]
+    return lines + [line for text in _advice(limiter["advice"]) for line in wrapped(text, indent=6, first="    ")]
 
 
 def _nets(held: Sequence[Sequence[str]]) -> dict[str, list[str]]:
@@ -195,7 +207,7 @@ def _sensitivities(rows: Sequence[Document]) -> list[str]:
             moves.append((row["relative"] * step, f"{name} {words}"))
     moves.sort(key=lambda move: -abs(move[0]))
     texts = [f"{'+' if change > 0.0 else ''}{100.0 * change:.2g} % for {words}" for change, words in moves[:MOST_MOVES]]
-    return wrapped(f"holds moves by {', '.join(texts)}", indent=8, first="    ") if texts else []
+    return wrapped(f"holds moves by {', '.join(texts)}", indent=6, first="    ") if texts else []
 
 
 def _states(point: Document | None) -> list[str]:

@@ -12,20 +12,28 @@ from protlint.report.digest import (
     alike,
     assumptions,
     from_memory,
+    left_open,
     place_of,
     remarks,
     sections,
+    sentence,
     summary_line,
     unchecked,
     waiver_of,
 )
-from protlint.report.figures import UNKNOWN, ambient, counted, figure, percent, three_digits, triple, unit_for
+from protlint.report.figures import UNKNOWN, aligned, ambient, counted, figure, percent, three_digits, triple, unit_for
 from protlint.report.layout import painted, shortened, table, width, wrapped
 from protlint.report.safe import terminal, throughout
 from protlint.report.shape import Document, boards_of
 
 INDEX_FROM = 12
 """From this many findings on an index by check stands above them."""
+
+OVERVIEW_FROM = 2
+"""A single limiter needs no overview."""
+
+MOST_ROWS = 30
+"""Of an overview; the sections below have them all."""
 
 POLARITY_WORDS = {"n": "n type", "p": "p type"}
 
@@ -48,15 +56,38 @@ def _board(board: Document, colour: bool) -> list[str]:
     lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
     if not board["limiters"] and not board["findings"]:
         lines += ["", *wrapped("`protlint survey` on this file shows what was read and what is missing.", indent=2)]
+    groups = alike(sections(board))
+    lines += _overview(groups, colour)
     if len(board["findings"]) >= INDEX_FROM:
         lines += _index(board["findings"], colour)
-    for group in alike(sections(board)):
+    for group in groups:
         limiter, name, found = group[0]
         lines += ["", *_section(limiter, name, found, colour), *_alike(group, colour)]
+    lines += _listing("Not checked of the board, for want of", unchecked(board["not_checked"]), colour)
     lines += _listing("Assumed", assumptions(board), colour)
     lines += _listing("From memory, to be held against a data sheet", from_memory(board), colour)
     lines += _listing("Remarks", remarks(board), colour)
     return lines
+
+
+def _overview(groups: Sequence[Sequence[Section]], colour: bool) -> list[str]:
+    """Put the limiters of a board in rows, the worst first: what each gives at its worst against what the board needs."""
+    rows = [["limiter", "verdict", "carries", "needed", "most", "cap", "holds"]]
+    for group in groups:
+        limiter = group[0][0]
+        if limiter is None:
+            continue
+        more = f" +{len(group) - 1}" if len(group) > 1 else ""
+        hand, needs = limiter["in_hand"], limiter["needs"]
+        holds = limiter["currents"][len(limiter["currents"]) // 2]["holds_A"]
+        figures = (hand["least_carries_A"], needs["carry_A"], hand["greatest_most_A"], needs["cap_A"], holds)
+        rows.append([shortened(limiter["id"], 16) + more, limiter["verdict"], *map(aligned, figures)])
+    if len(rows) <= OVERVIEW_FROM:
+        return []
+    shown = rows[: MOST_ROWS + 1]
+    rest = [f"  and {len(rows) - len(shown)} more"] if len(rows) > len(shown) else []
+    title = painted("Overview: carries and most at their worst, holds as drawn", "heading", colour=colour)
+    return ["", title, *table(shown, left=(0, 1)), *rest]
 
 
 def _index(findings: Sequence[Document], colour: bool) -> list[str]:
@@ -78,13 +109,13 @@ def _section(limiter: Document | None, name: str | None, found: Sequence[Documen
         title = f"{name}: not a working limiter" if name else "The board"
         lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
     else:
-        lines = _heading(limiter, colour) + _currents(limiter)
-        said = [line for text in sentences(limiter) for line in wrapped(text, indent=4, first="  ")]
-        lines += ["", *said] if said else []
+        lines = _heading(limiter, found, colour) + _currents(limiter)
     for finding in found:
         lines += ["", *_finding(finding, colour)]
-    if limiter is not None and limiter["not_checked"]:
-        lines += ["", *_not_checked(limiter["not_checked"], colour)]
+    if limiter is not None:
+        told = [line for text in sentences(limiter) for line in wrapped(text, indent=6, first="    ")]
+        lines += ["", "  " + painted("how it behaves", "heading", colour=colour), *told] if told else []
+        lines += _not_checked(limiter, colour)
     return lines
 
 
@@ -100,26 +131,45 @@ def _alike(group: Sequence[Section], colour: bool) -> list[str]:
     return lines
 
 
-def _heading(limiter: Document, colour: bool) -> list[str]:
+def _heading(limiter: Document, found: Sequence[Document], colour: bool) -> list[str]:
+    """Say the verdict in words with the figures it stands on, then what the limiter is made of."""
     verdict = limiter["verdict"]
-    kind = f"{limiter['topology']}, {POLARITY_WORDS.get(limiter['polarity'], limiter['polarity'])}"
-    lines = wrapped(f"{limiter['id']} {verdict}: {kind}", indent=2, first="")
-    head = limiter["id"] + " "
-    if lines[0].startswith(head + verdict):
-        rest = lines[0][len(head) + len(verdict) :]
-        lines[0] = painted(limiter["id"], "heading", colour=colour) + " " + painted(verdict, verdict, colour=colour) + rest
+    head = f"{limiter['id']} {verdict}"
+    lines = wrapped(f"{head}{_why(limiter, found)}", indent=2, first="")
+    if lines[0].startswith(head):
+        lines[0] = (
+            f"{painted(limiter['id'], 'heading', colour=colour)} {painted(verdict, verdict, colour=colour)}"
+            f"{lines[0][len(head) :]}"
+        )
     roles = [f"{ROLE_WORDS[role]} {', '.join(parts)}" for role, parts in limiter["roles"].items() if parts]
-    lines += wrapped("; ".join(roles), indent=4, first="  ")
+    kind = f"{limiter['topology']}, {POLARITY_WORDS.get(limiter['polarity'], limiter['polarity'])}"
+    lines += wrapped(f"{kind}: {'; '.join(roles)}", indent=4, first="  ")
     nets = [f"{role} {net}" for role, net in limiter["nets"].items() if net is not None]
     if nets:
         lines += wrapped("nets: " + ", ".join(nets), indent=4, first="  ")
     return lines
 
 
+def _why(limiter: Document, found: Sequence[Document]) -> str:
+    """Name the errors, and what is carried and passed against what is needed, or else what is held."""
+    if limiter["not_solved"]:
+        return f": {limiter['not_solved']}"
+    errors = dict.fromkeys(one["check"] for one in found if one["level"] == "error" and one["waived"] is None)
+    names = f" {', '.join(errors)}" if errors else ""
+    hand, needs, usual = limiter["in_hand"], limiter["needs"], limiter["currents"][len(limiter["currents"]) // 2]
+    wanted = (
+        (f"carries {figure(hand['least_carries_A'], 'A')} at least", needs["carry_A"], "needed"),
+        (f"most {figure(hand['greatest_most_A'], 'A')}", needs["cap_A"], "allowed"),
+    )
+    facts = [f"{says} ({figure(need, 'A')} {word})" for says, need, word in wanted if need is not None]
+    held = f"holds {figure(usual['holds_A'], 'A')} in a short at {ambient(usual['ambient_degC'])}"
+    return f"{names}: {', '.join(facts) or held}"
+
+
 def _currents(limiter: Document) -> list[str]:
     """Show carries, most and holds at the three ambients against what the board needs."""
     if limiter["not_solved"]:
-        return ["", *wrapped(f"could not be solved: {limiter['not_solved']}", indent=4, first="  ")]
+        return []
     columns = ("carries", "most", "holds")
     needs, hand, currents = limiter["needs"], limiter["in_hand"], limiter["currents"]
     unit, scale = unit_for((row[f"{name}_A"] for row in currents for name in columns), "A")
@@ -155,7 +205,7 @@ def _finding(finding: Document, colour: bool) -> list[str]:
     lead = f"  {level:<7} "
     lines = wrapped(finding["check"] + place + mark, indent=indent, first=lead)
     lines[0] = lines[0].replace(level, painted(level, level, colour=colour), 1)
-    lines += wrapped(finding["message"], indent=indent)
+    lines += wrapped(sentence(finding), indent=indent)
     if finding["remedy"]:
         lines += wrapped(f"remedy: {finding['remedy']}", indent=indent)
     lines += _steps(finding["working"], indent, colour)
@@ -171,14 +221,13 @@ def _steps(working: Sequence[Document], indent: int, colour: bool) -> list[str]:
     figures = [f"{line['quantity']} {figure(line['value'], line['unit'])}" for line in working if line["value"] is not None]
     if not figures:
         return []
-    return [painted(line, "quiet", colour=colour) for line in wrapped(f"from: {', '.join(figures)}", indent=indent)]
+    return [painted(line, "quiet", colour=colour) for line in wrapped(f"from: {'; '.join(figures)}", indent=indent)]
 
 
-def _not_checked(rows: Sequence[Document], colour: bool) -> list[str]:
-    lines = ["  " + painted("not checked", "warning", colour=colour)]
-    for need, checks in unchecked(rows):
-        lines += wrapped(f"{checks}: needs {need}", indent=6, first="    - ")
-    return lines
+def _not_checked(limiter: Document, colour: bool) -> list[str]:
+    """List what was not checked by what it needs; what kept the limiter from being solved its heading has told."""
+    items = [line for text in unchecked(left_open(limiter)) for line in wrapped(text, indent=6, first="    - ")]
+    return ["", "  " + painted("not checked, for want of", "warning", colour=colour), *items] if items else []
 
 
 def _listing(title: str, texts: Sequence[str], colour: bool) -> list[str]:

@@ -120,7 +120,7 @@ R2 RES 0.47 E2 OUT POWER:5W
 def test_a_power_rating_that_is_not_known_is_said() -> None:
     review = review_of(SINK, (" POWER:1W", ""))
     assert absent(review) is None
-    assert any("limiter-absent" in one and "R2" in one for one in review.remarks)
+    assert any(one.check == "limiter-absent" and "R2" in one.needs for one in review.not_checked)
 
 
 def test_what_the_remedy_proposes_is_a_limiter() -> None:

@@ -12,8 +12,13 @@ from jsonschema import Draft202012Validator
 
 from protlint.report import document as document_module
 from protlint.report.answers import rounded
+from protlint.report.digest import held_back
 from protlint.report.document import document
+from protlint.report.junit import rendered_junit
+from protlint.report.markdown import rendered_markdown
+from protlint.report.sarif import rendered_sarif
 from protlint.report.shape import Document, combined, rendered_json
+from protlint.report.text import rendered_text
 from tests.support.paths import ROOT
 from tests.support.sample_review import HOSTILE, PLAIN, sample_review
 
@@ -66,6 +71,15 @@ def test_the_schema_refuses_a_missing_and_an_unknown_key() -> None:
     report = document(sample_review())
     assert errors({key: value for key, value in report.items() if key != "warnings"})
     assert errors({**report, "extra": 1})
+
+
+def test_what_was_not_checked_of_the_board_counts_as_what_was_not_checked_of_its_limiters() -> None:
+    report = document(replace(sample_review(), limiters=()))
+    assert report["not_checked"] == [{"check": "limiter-absent", "needs": "the power rating of R77"}]
+    assert held_back(report, "never", complete=True) == ["1 not checked"]
+    assert held_back(report, "never") == []
+    for text in (rendered_text(report), rendered_markdown(report), rendered_sarif(report), rendered_junit(report)):
+        assert "the power rating of R77" in text
 
 
 def test_a_limiter_without_a_solution_has_every_key_with_null() -> None:

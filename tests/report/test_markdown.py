@@ -25,7 +25,7 @@ def unescaped(text: str) -> str:
 
 def test_counts_table_and_levels() -> None:
     text = rendered_markdown(document(sample_review(notes=3)))
-    assert "3 limiters (fails 1, not judged 1, passes 1), 2 errors, 0 warnings, 3 notes, 1 waived" in text
+    assert "3 limiters (1 fails, 1 not judged, 1 passes), 2 errors, 0 warnings, 3 notes, 1 waived" in text
     assert "| Q10 | fails | emitter-sensed | 0.279 A | 0.7 A | 0.443 A | 1.2 A | 0.349 / 0.367 / 0.385 A |" in text
     assert "### Errors (2)" in text
     assert "<summary>Notes (3)</summary>" in text

@@ -99,7 +99,7 @@ def test_a_waiver_is_a_suppression() -> None:
 def test_what_was_not_checked_is_notified() -> None:
     notifications = log_of(document(sample_review()))["runs"][0]["invocations"][0]["toolExecutionNotifications"]
     texts = [one["message"]["text"] for one in notifications]
-    assert any("trips-on-peaks" in text and "limiter.Q10.peak" in text for text in texts)
+    assert any("trips-on-peaks" in text and "[limiter.Q10] peak" in text for text in texts)
     assert any("node N3 floats" in text for text in texts)
 
 

@@ -73,7 +73,7 @@ def test_it_shows_what_was_read_and_how_each_limiter_is_held() -> None:
     for expected in (
         "from designator forms",
         "emitter-sensed",
-        "+12V: held at 12 V",
+        "+12V held at 12 V",
         "through 1 kohm, assumed",
         "also fits: two-transistor-sink",
         "no part data for QSN1",

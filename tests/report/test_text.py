@@ -37,7 +37,7 @@ def test_what_a_person_needs_is_there() -> None:
         "-0.421 (-60 %)",
         "carries 0.282 A",
         "remedy: fit 0.36 ohm in place of R11",
-        "limiter.Q10.peak",
+        "[limiter.Q10] peak (trips-on-peaks); load (foldback-locks-out)",
         "node N3 floats",
         "resistors that state no tolerance have 1 %",
         "lamp.edf:12:5",

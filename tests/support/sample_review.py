@@ -67,7 +67,14 @@ def sample_review(names: Mapping[str, str] = PLAIN, *, notes: int = 0) -> Review
             circuit=_circuit(names),
             solution=_solution(0.367, names),
             verdict="fails",
-            not_checked=(NotChecked("trips-on-peaks", "limiter.Q10.peak"),),
+            not_checked=(
+                NotChecked("trips-on-peaks", f"[limiter.{first.id}] peak"),
+                NotChecked("foldback-locks-out", f"[limiter.{first.id}] load"),
+                *(
+                    NotChecked("resistor-power", f"a POWER property of {names[role]}, or ratings")
+                    for role in ("sense", "drive")
+                ),
+            ),
             assumed=(DRIVE_ASSUMED, f"{names['shunt']}: BF taken as 100"),
             bench=_bench(names),
             if_a_part_fails=IfPartFails(
@@ -90,7 +97,14 @@ def sample_review(names: Mapping[str, str] = PLAIN, *, notes: int = 0) -> Review
                 0.367,
             ),
         ),
-        ReviewedLimiter(second, LimiterLimits(), None, Solution(not_solved="node N3 floats"), "not judged"),
+        ReviewedLimiter(
+            second,
+            LimiterLimits(),
+            None,
+            Solution(not_solved="node N3 floats"),
+            "not judged",
+            not_checked=(NotChecked("currents", "node N3 floats"),),
+        ),
         ReviewedLimiter(
             third,
             LimiterLimits(carry_A=0.2),
@@ -141,6 +155,7 @@ def sample_review(names: Mapping[str, str] = PLAIN, *, notes: int = 0) -> Review
         findings=stamp_fingerprints(findings, named),
         assumed=("resistors that state no tolerance have 1 %",),
         remarks=("lamp-waivers.toml:7: this waiver matches nothing",),
+        not_checked=(NotChecked("limiter-absent", "the power rating of R77"),),
     )
 
 
@@ -322,7 +337,9 @@ def _solution(holds: float, names: Mapping[str, str]) -> Solution:
             41.0,
             8.1e5,
             38.0,
-            worst=Worst(0.19, 1.1e6, 85.0, 5e-7, {"R11.R": -1.0}),
+            own_damping=0.223456789,
+            worst=Worst(0.0345678, 1.1e6, 85.0, 5e-7, {"R11.R": -1.0}),
+            worst_without_wiring=Worst(0.19, 1.15e6, 85.0, 0.0, {"R11.R": -1.0}),
             natural=((2.1e4, 1.0), (1.2e6, 0.223456789)),
             table=tuple((10.0**decade, 41.0 / decade, -30.0 * decade) for decade in range(1, 8)),
         ),

@@ -1,0 +1,103 @@
+"""What the faces tell alike: needs gathered, sentences begun, figures with sensible digits, behaviour in words."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import pytest
+
+from protlint.report.behaviour import sentences
+from protlint.report.digest import sentence, unchecked
+from protlint.report.document import document
+from protlint.report.figures import aligned, current, damping, figure
+from protlint.report.safe import markdown, throughout
+from tests.support.sample_review import sample_review
+
+ROWS = [
+    {"check": check, "needs": needs}
+    for check, needs in (
+        ("carries", "[limiter.Q10] output"),
+        ("carry-not-met", "[limiter.Q10] carry"),
+        ("resistor-power", "a POWER property of R1, or ratings.power"),
+        ("drive-insufficient", "[limiter.Q10] carry"),
+        ("resistor-power", "a POWER property of R2, or ratings.power"),
+        ("sense-resistor-power", "a POWER property of R3, or ratings.power"),
+        ("base-stop-low", "QSN1.ratings.ib"),
+    )
+]
+
+
+def told(**changes: Any) -> str:
+    """Return the sentences on the first limiter of the sample, with some of its answers changed."""
+    return " ".join(sentences({**document(sample_review())["limiters"][0], **changes}))
+
+
+def test_what_is_needed_is_told_once_keys_and_parts_together() -> None:
+    needs = [
+        "[limiter.Q10] output (carries); carry (carry-not-met, drive-insufficient)",
+        "a POWER property of R1, R2, or ratings.power (resistor-power)",
+        "a POWER property of R3, or ratings.power (sense-resistor-power)",
+        "QSN1.ratings.ib (base-stop-low)",
+    ]
+    assert unchecked(ROWS) == needs
+    assert unchecked(throughout(ROWS, markdown)) == [markdown(need) for need in needs]
+
+
+@pytest.mark.parametrize(
+    ("message", "said"),
+    [("the shunt is off", "The shunt is off"), ("q11 is off", "q11 is off"), ("out is on", "out is on"), ("", "")],
+)
+def test_a_sentence_begins_with_a_capital_and_a_name_as_it_is_written(message: str, said: str) -> None:
+    assert sentence({"message": message, "parts": ["q11"], "nets": ["out"], "limiter": None}) == said
+
+
+@pytest.mark.parametrize(
+    ("shown", "text"),
+    [
+        (figure(5.09e-14), "0"),
+        (figure(0.223457), "0.223"),
+        (figure(-0.0123), "-0.0123"),
+        (damping(0.0364), "0.036"),
+        (damping(-0.2004), "-0.2"),
+        (damping(4e-5), "0"),
+        (damping(-4e-5), "0"),
+        (aligned(0.16), "0.160 A"),
+        (aligned(None), "-"),
+        (aligned(0.0123), "12.3 mA"),
+        (current(3.4e-12, 0.3), "next to nothing"),
+        (current(3.4e-6, 0.3), "3.4 uA"),
+        (current(0.0, None), "0 A"),
+    ],
+)
+def test_figures_have_sensible_digits(shown: str, text: str) -> None:
+    assert shown == text
+
+
+def test_the_damping_is_told_as_drawn_within_the_spreads_and_with_wiring() -> None:
+    text = told()
+    assert (
+        "damping 0.22 at 1.2 MHz as drawn; 0.19 at worst within every spread; 0.035 at worst with 500 nH in the short"
+        in text
+    )
+    loop = document(sample_review())["limiters"][0]["loop"]
+    assert "nothing swings as drawn" in told(loop={**loop, "own_damping": 1.0})
+    bare = {**loop, "worst": loop["worst_without_wiring"]}
+    assert told(loop=bare).count("at worst") == 1
+
+
+def test_a_hand_calculation_gone_astray_is_not_told_in_per_cent() -> None:
+    formula = document(sample_review())["limiters"][0]["formula"]
+    assert "solved 0.367 A, 39 % less. Not so here: the shunt's V_BE is 0.6 V." in told()
+    for figure_A, difference in ((-0.44, -13.7), (0.01, 35.7)):
+        text = told(formula={**formula, "figure_A": figure_A, "difference": difference})
+        assert "solved 0.367 A. Not so here" in text
+
+
+def test_where_the_drive_gives_out_is_told_once_for_the_same_ambients() -> None:
+    rows = document(sample_review())["limiters"][0]["currents"]
+    every = [{**row, "limited_by": {"short": "drive", "output": "drive"}} for row in rows]
+    assert "The drive gives out at the working output and in the short, not the limiter, at every ambient." in told(
+        currents=every
+    )
+    some = [*every[:2], rows[2]]
+    assert "not the limiter, at -10 degC and 27 degC." in told(currents=some)
