@@ -12,8 +12,6 @@ from protlint.quantities import format_quantity
 from protlint.solve.bench import LATCH
 from protlint.solve.solution import Currents, Solution
 
-TRADE = "common practice of the trade"
-
 
 def carry_not_met(case: Case) -> Iterator[Answer]:
     """Yield a finding where the limiter may cut into the current the board needs."""
@@ -97,7 +95,7 @@ def cap_exceeded(case: Case) -> Iterator[Answer]:
         working=(
             WorkingLine("most, usual", "greatest current over all output voltages, as drawn", row.most_A, "A"),
             WorkingLine("most, high end", "the same with every tolerance at its worst", most_A, "A"),
-            WorkingLine("cap", "limits file", cap_A, "A", TRADE),
+            WorkingLine("cap", "limits file", cap_A, "A"),
         ),
         remedy=sense_remedy(case),
         assumption=case.assumes(*ALL_ASSUMPTIONS),
@@ -146,5 +144,5 @@ def _carry_working(case: Case, row: Currents, carries_A: float, carry_A: float) 
     return (
         WorkingLine("carries, usual", f"solved at {format_quantity(row.ambient_degC, 'degC')}, {at}", row.carries_A, "A"),
         WorkingLine("carries, low end", "the same with every tolerance at its worst", carries_A, "A"),
-        WorkingLine("carry", "limits file", carry_A, "A", TRADE),
+        WorkingLine("carry", "limits file", carry_A, "A"),
     )

@@ -7,7 +7,7 @@ from collections.abc import Iterator
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.let_through import too_much
 from protlint.findings import Level, NotChecked, WorkingLine
-from protlint.quantities import format_quantity
+from protlint.quantities import format_quantity, format_ratio
 from protlint.solve.advice import AIM, DRIVE_FAR, GREATEST_F, LEAST_F, advise
 from protlint.solve.solution import Advice, Fit, Loop, Step
 
@@ -27,9 +27,11 @@ def compensation_absent(case: Case) -> Iterator[Answer]:
     without = loop.worst_without_wiring
     poor = loop.own_damping < case.threshold(check, "warning") or (without is not None and without.damping < 0.0)
     advice = _advice(case, loop) if poor else None
+    drawn, worst = said(loop)
+    verdict = "is too little" if poor else "is enough"
     yield case.finding(
         check,
-        f"no capacitor shapes the limiting loop; its damping of {said(loop)} is {'too little' if poor else 'enough'}",
+        f"no capacitor shapes the limiting loop; as drawn its damping of {drawn} {verdict}{f'; {worst}' if worst else ''}",
         parts=case.parts("shunt"),
         working=tuple(_working(case, loop)),
         remedy=_remedy(case, advice, _fit(case, advice)) if poor else None,
@@ -54,7 +56,7 @@ def loop_undamped(case: Case) -> Iterator[Answer]:
     cause = f"; {advice.costs} costs it" if advice is not None and advice.costs is not None else ""
     yield case.finding(
         check,
-        f"the limiting loop {oscillates}: its damping is {said(loop)}{cause}",
+        f"the limiting loop {oscillates}: as drawn its damping is {', '.join(filter(None, said(loop)))}{cause}",
         parts=(*case.parts("shunt"), *_costing_parts(case, advice)),
         working=(*_working(case, loop), *_effects(advice), *_delays(advice, fit)),
         remedy=_remedy(case, advice, fit),
@@ -63,20 +65,20 @@ def loop_undamped(case: Case) -> Iterator[Answer]:
     )
 
 
-def said(loop: Loop) -> str:
-    """Return a loop's damping in words, as drawn and at worst."""
+def said(loop: Loop) -> tuple[str, str]:
+    """Return a loop's damping in words, as drawn and at worst; the latter empty where nothing swings there."""
     assert loop.own_damping is not None
     at = (
         f" at {format_quantity(loop.at_Hz, 'Hz')}"
         if loop.at_Hz is not None and loop.own_damping == loop.least_damping
         else ""
     )
-    drawn = f"{loop.own_damping:.2g}{at} as drawn"
+    drawn = f"{format_ratio(loop.own_damping)}{at}"
     worst = loop.worst
     if worst is None or worst.ambient_degC is None:
-        return drawn
+        return drawn, ""
     wiring = f", {format_quantity(worst.wiring_H, 'H')} in the short" if worst.wiring_H else ""
-    return f"{drawn}, {worst.damping:.2g} at worst ({format_quantity(worst.ambient_degC, 'degC')}{wiring})"
+    return drawn, f"at worst it is {format_ratio(worst.damping)} ({format_quantity(worst.ambient_degC, 'degC')}{wiring})"
 
 
 def not_known(check: str, needs: tuple[str, ...]) -> Iterator[NotChecked]:
@@ -200,8 +202,8 @@ def _remedy(case: Case, advice: Advice | None, fit: Fit | None) -> str | None:
     todo = [f"take {fit.instead_of} out"] if fit.instead_of is not None else []
     if fit.farad is not None:
         todo.append(f"fit {format_quantity(fit.farad, 'F')} {_place(case, fit)} ({fit.nodes[0]} to {fit.nodes[1]})")
-    then = f"damping {fit.own_damping:.2g}, {fit.worst_damping:.2g} at worst{_change(advice.step, fit.step)}"
-    return f"{' and '.join(todo)}: {then}"
+    then = f"damping {format_ratio(fit.own_damping)}, {format_ratio(fit.worst_damping)} at worst"
+    return f"{' and '.join(todo)}: {then}{_change(advice.step, fit.step)}"
 
 
 def _place(case: Case, fit: Fit) -> str:

@@ -6,7 +6,7 @@ value texts of a schematic, :mod:`~protlint.quantities.series` holds IEC 60063. 
 """
 
 from protlint.quantities.series import preferred, within
-from protlint.quantities.units import DIMENSIONS, format_quantity, read_any, read_quantity, read_range
+from protlint.quantities.units import DIMENSIONS, format_quantity, format_ratio, read_any, read_quantity, read_range
 from protlint.quantities.valuetext import Comma, ValueText, read_beside, read_value
 
 __all__ = [
@@ -14,6 +14,7 @@ __all__ = [
     "Comma",
     "ValueText",
     "format_quantity",
+    "format_ratio",
     "preferred",
     "read_any",
     "read_beside",

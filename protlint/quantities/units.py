@@ -134,6 +134,11 @@ def read_any(text: str) -> float:
     raise ValueError(f'expected a quantity with its unit, such as "80 %" or "0.3 V", not "{text}"')
 
 
+def format_ratio(value: float) -> str:
+    """Return a ratio that is near 1 or 0, such as a damping, for people: two digits, no more than three decimals."""
+    return f"{round(float(f'{value:.2g}'), 3) + 0.0:g}"
+
+
 def format_quantity(value: float, unit: str, digits: int = 3) -> str:
     """Return a quantity for people: ``digits`` significant figures and an SI prefix in steps of a thousand.
 

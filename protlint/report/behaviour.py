@@ -4,7 +4,8 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 
-from protlint.report.figures import ambient, current, damping, figure, percent
+from protlint.quantities import format_ratio
+from protlint.report.figures import ambient, current, figure, percent
 from protlint.report.shape import Document
 
 ROLE_WORDS = {
@@ -91,7 +92,7 @@ def _loop(limiter: Document) -> Iterator[str]:
     own = loop["own_damping"] if loop["own_damping"] is not None else loop["least_damping"]
     if own is not None:
         at = f" at {figure(loop['at_Hz'], 'Hz')}" if loop["at_Hz"] is not None and own == loop["least_damping"] else ""
-        drawn = "nothing swings as drawn" if own >= 1.0 else f"damping {damping(own)}{at} as drawn"
+        drawn = "nothing swings as drawn" if own >= 1.0 else f"damping {format_ratio(own)}{at} as drawn"
         yield f"Loop: {'; '.join([drawn, *_worst(loop)])}."
     if step["settles"] is not None:
         after = f"after {figure(step['delay_s'], 's')}" if step["delay_s"] else "at once"
@@ -104,7 +105,7 @@ def _worst(loop: Document) -> Iterator[str]:
     for worst in (loop["worst_without_wiring"], loop["worst"]):
         if worst is not None and worst["ambient_degC"] is not None and worst != told:
             wiring = f"with {figure(worst['wiring_H'], 'H')} in the short" if worst["wiring_H"] else "within every spread"
-            yield f"{damping(worst['damping'])} at worst {wiring}"
+            yield f"{format_ratio(worst['damping'])} at worst {wiring}"
             told = worst
 
 

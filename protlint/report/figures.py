@@ -23,11 +23,6 @@ def figure(value: float | None, unit: str = "") -> str:
     return format_quantity(value if unit or abs(value) >= 0.1**RATIO_DECIMALS else 0.0, unit)
 
 
-def damping(ratio: float) -> str:
-    """Return a damping ratio with two digits, no more than three decimals: ``0.82``, ``0.036``, ``-0.2``."""
-    return f"{round(float(f'{ratio:.2g}'), MOST_DECIMALS) + 0.0:g}"
-
-
 def current(value: float, beside: float | None, share: float = 1e-6) -> str:
     """Return a current, or that it is nothing to speak of beside another: below a share of it."""
     return "next to nothing" if beside and abs(value) < share * abs(beside) else figure(value, "A")

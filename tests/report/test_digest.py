@@ -6,10 +6,11 @@ from typing import Any
 
 import pytest
 
+from protlint.quantities import format_ratio
 from protlint.report.behaviour import sentences
 from protlint.report.digest import sentence, unchecked
 from protlint.report.document import document
-from protlint.report.figures import aligned, current, damping, figure
+from protlint.report.figures import aligned, current, figure
 from protlint.report.safe import markdown, throughout
 from tests.support.sample_review import sample_review
 
@@ -57,10 +58,10 @@ def test_a_sentence_begins_with_a_capital_and_a_name_as_it_is_written(message: s
         (figure(5.09e-14), "0"),
         (figure(0.223457), "0.223"),
         (figure(-0.0123), "-0.0123"),
-        (damping(0.0364), "0.036"),
-        (damping(-0.2004), "-0.2"),
-        (damping(4e-5), "0"),
-        (damping(-4e-5), "0"),
+        (format_ratio(0.0364), "0.036"),
+        (format_ratio(-0.2004), "-0.2"),
+        (format_ratio(4e-5), "0"),
+        (format_ratio(-4e-5), "0"),
         (aligned(0.16), "0.160 A"),
         (aligned(None), "-"),
         (aligned(0.0123), "12.3 mA"),
