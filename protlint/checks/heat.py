@@ -175,7 +175,7 @@ def _burns(case: Case, check: str, part: BoardPart, load: Load, rating: Rating, 
     if load.times != 1.0:
         source += ", its overload test from memory"
         how += f", {load.times:g} times that for no more than {OVERLOAD_S:g} s"
-    share = f", {_ratio(load.power_W, allowed_W) * 100.0:.3g} % of the" if allowed_W > 0.0 else "; the rating leaves"
+    share = f", {format_quantity(_ratio(load.power_W, allowed_W), '%')} of the" if allowed_W > 0.0 else "; the rating leaves"
     return case.finding(
         check,
         f"{part.id} takes {format_quantity(load.power_W, 'W')} {load.condition} at {ambient}{share} "
@@ -239,7 +239,7 @@ def _voltage(case: Case, check: str, part: BoardPart, load: Load) -> Iterator[An
     yield case.finding(
         check,
         f"{part.id} has {format_quantity(load.voltage_V, 'V')} across it {load.condition} at "
-        f"{format_quantity(load.ambient_degC, 'degC')}, {ratio * 100.0:.3g} % of what its element may bear",
+        f"{format_quantity(load.ambient_degC, 'degC')}, {format_quantity(ratio, '%')} of what its element may bear",
         parts=(part.id,),
         working=(
             WorkingLine(

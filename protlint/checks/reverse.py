@@ -187,7 +187,7 @@ def _junction(case: Case, part_id: str, names: tuple[str, ...], worst: Stressed)
     yield case.finding(
         CHECK,
         f"the base-emitter junction of {part_id} has {format_quantity(reverse_V, 'V')} in reverse {worst.words}, "
-        f"{ratio * 100.0:.3g} % of the {format_quantity(allowed.value, 'V')} it may have",
+        f"{format_quantity(ratio, '%')} of the {format_quantity(allowed.value, 'V')} it may have",
         parts=(part_id,),
         working=(
             WorkingLine("reverse voltage", f"solved {worst.words}", reverse_V, "V"),

@@ -61,7 +61,8 @@ def _formula(formula: Document | None) -> Iterator[str]:
     if formula is None or formula["figure_A"] is None or formula["difference"] is None:
         return
     difference = formula["difference"]
-    by_hand = f"By hand {formula['formula']} gives {figure(formula['figure_A'], 'A')}"
+    gives = figure(formula["figure_A"], "A") if formula["figure_A"] > 0.0 else "no current at all"
+    by_hand = f"By hand {formula['formula']} gives {gives}"
     if abs(difference) <= AS_SOLVED:
         yield f"{by_hand}, as solved within 5 %."
         return

@@ -92,6 +92,7 @@ def test_a_hand_calculation_gone_astray_is_not_told_in_per_cent() -> None:
     for figure_A, difference in ((-0.44, -13.7), (0.01, 35.7)):
         text = told(formula={**formula, "figure_A": figure_A, "difference": difference})
         assert "solved 0.367 A. Not so here" in text
+        assert ("no current at all" in text) == (figure_A < 0.0)
 
 
 def test_where_the_drive_gives_out_is_told_once_for_the_same_ambients() -> None:
