@@ -95,6 +95,14 @@ def test_a_hand_calculation_gone_astray_is_not_told_in_per_cent() -> None:
         assert ("no current at all" in text) == (figure_A < 0.0)
 
 
+def test_how_many_times_holds_a_failed_part_lets_through_is_a_plain_number() -> None:
+    table = document(sample_review())["limiters"][0]["if_a_part_fails"]
+    rows = [{**table["rows"][1], "of_holds": 177.4}, {**table["rows"][0], "of_holds": 1e-9, "output_A": 1e-9}]
+    text = told(if_a_part_fails={**table, "rows": rows})
+    assert "(180 times holds)" in text
+    assert "open next to nothing" in text
+
+
 def test_where_the_drive_gives_out_is_told_once_for_the_same_ambients() -> None:
     rows = document(sample_review())["limiters"][0]["currents"]
     every = [{**row, "limited_by": {"short": "drive", "output": "drive"}} for row in rows]
