@@ -254,6 +254,7 @@ def _value(found: re.Match[str], dimension: str) -> _Field:
     return _Field("value", found[0], number, named.get("letter"), bare)
 
 
+@lru_cache(maxsize=8192)
 def read_beside(text: str, kind: str) -> float | None:
     """Return the first tolerance (a fraction), power (W) or voltage (V) that a text states, or None.
 

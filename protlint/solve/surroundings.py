@@ -241,7 +241,9 @@ def _collect(board: Board, own: set[int], stops: set[int], drive: int | None) ->
 def _switched_by(board: Board, element: Element, stops: set[int], drive: int | None) -> int | None:
     """Return the driven net, other than the drive, that a transistor's control leads to through passive parts."""
     control = element.terminals.get(CONTROL[element.kind])
-    queue, seen, found = deque([control] if control is not None else []), set(), None
+    queue = deque([control] if control is not None else [])
+    seen: set[int] = set()
+    found: int | None = None
     while queue and len(seen) < MOST_NETS:
         net = queue.popleft()
         if net in seen:
