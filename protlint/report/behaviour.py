@@ -129,11 +129,8 @@ def _if_a_part_fails(limiter: Document) -> Iterator[str]:
         return
     cases: dict[str, list[str]] = {}
     for row in table["rows"]:
-        times = (
-            f" ({float(format(row['of_holds'], '.2g')):g} times holds)"
-            if row["of_holds"] is not None and row["of_holds"] > 1.1
-            else ""
-        )
+        share = row["of_holds"] or 0.0
+        times = f" ({float(f'{share:.2g}'):g} times holds)" if share > 1.1 else ""
         passes = "not known" if row["output_A"] is None else current(row["output_A"], usual["holds_A"], NOTHING)
         name = f"{ROLE_WORDS[row['role']]} {'+'.join(row['parts'])}"
         cases.setdefault(name, []).append(f"{HOW.get(row['how'], row['how'])} {passes}{times}")

@@ -72,6 +72,23 @@ def shortened(text: str, columns: int) -> str:
     return kept + ".."
 
 
+def tail(text: str, columns: int) -> str:
+    """Return the end of a text cut to a width, with a mark where it was cut: paths tell their parts apart at the end."""
+    return text if width(text) <= columns else shortened(text[::-1], columns)[::-1]
+
+
+def fitting(names: Sequence[str], columns: int) -> str:
+    """Return as many names as there is room for, the rest counted."""
+    most, shown = len(names), ", ".join(names)
+    while width(shown) > columns and most > 1:
+        most -= 1
+        shown = f"{', '.join(names[:most])} and {len(names) - most} more"
+    if width(shown) <= columns:
+        return shown
+    rest = shown.removeprefix(names[0])
+    return tail(names[0], columns - width(rest)) + rest
+
+
 def padded(text: str, columns: int, *, right: bool = False) -> str:
     """Return a text filled with blanks to a width."""
     blanks = " " * max(0, columns - width(text))

@@ -22,7 +22,7 @@ from protlint.report.digest import (
     waiver_of,
 )
 from protlint.report.figures import UNKNOWN, aligned, ambient, counted, figure, percent, three_digits, triple, unit_for
-from protlint.report.layout import painted, shortened, table, width, wrapped
+from protlint.report.layout import COLUMNS, fitting, painted, shortened, table, tail, width, wrapped
 from protlint.report.safe import terminal, throughout
 from protlint.report.shape import Document, boards_of
 
@@ -81,9 +81,11 @@ def _overview(groups: Sequence[Sequence[Section]], colour: bool) -> list[str]:
         hand, needs = limiter["in_hand"], limiter["needs"]
         holds = limiter["currents"][len(limiter["currents"]) // 2]["holds_A"]
         figures = (hand["least_carries_A"], needs["carry_A"], hand["greatest_most_A"], needs["cap_A"], holds)
-        rows.append([shortened(limiter["id"], 16) + more, limiter["verdict"], *map(aligned, figures)])
+        rows.append([limiter["id"] + more, limiter["verdict"], *map(aligned, figures)])
     if len(rows) <= OVERVIEW_FROM:
         return []
+    room = COLUMNS - sum(2 + max(width(row[column]) for row in rows) for column in range(1, len(rows[0])))
+    rows = [[tail(name, room - 2), *cells] for name, *cells in rows]
     shown = rows[: MOST_ROWS + 1]
     rest = [f"  and {len(rows) - len(shown)} more"] if len(rows) > len(shown) else []
     title = painted("Overview: carries and most at their worst, holds as drawn", "heading", colour=colour)
@@ -98,9 +100,9 @@ def _index(findings: Sequence[Document], colour: bool) -> list[str]:
             groups.setdefault((LEVELS.index(finding["level"]), finding["check"]), []).append(finding)
     lines = ["", painted("Findings by check", "heading", colour=colour)]
     for (level, check), found in sorted(groups.items()):
-        names = dict.fromkeys(finding["limiter"] or "the board" for finding in found)
+        names = list(dict.fromkeys(finding["limiter"] or "the board" for finding in found))
         lead = f"  {len(found):>4} {LEVELS[level]:<7} {shortened(check, 30):<30}  "
-        lines.append(lead + shortened(", ".join(names), 80 - width(lead)))
+        lines.append(lead + fitting(names, COLUMNS - width(lead)))
     return lines
 
 

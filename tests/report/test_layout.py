@@ -7,7 +7,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from protlint.report.figures import counted, figure, percent, triple, unit_for
-from protlint.report.layout import painted, shortened, table, width, wrapped
+from protlint.report.layout import fitting, painted, shortened, table, tail, width, wrapped
 
 
 @pytest.mark.parametrize(("text", "columns"), [("abc", 3), ("電流", 4), ("e\u0301", 1), ("", 0), ("Ω", 1)])
@@ -39,6 +39,26 @@ def test_shortened_text_says_that_it_is() -> None:
     assert shortened("abcdef", 6) == "abcdef"
     assert shortened("abcdefg", 6) == "abcd.."
     assert width(shortened("電" * 10, 7)) <= 7
+
+
+def test_a_path_too_long_keeps_its_end() -> None:
+    assert tail("CH2/Q10", 7) == "CH2/Q10"
+    assert tail("LEFT/CH2/Q10", 8) == "..H2/Q10"
+
+
+@pytest.mark.parametrize(
+    ("names", "columns", "shown"),
+    [
+        (["Q1", "Q2", "Q3"], 10, "Q1, Q2, Q3"),
+        (["Q1", "Q2", "Q3", "Q4"], 13, "Q1 and 3 more"),
+        (["Q1", "Q2", "Q3", "Q4"], 16, "Q1, Q2, Q3, Q4"),
+        (["LEFT/CH2/Q10", "Q2"], 16, "..Q10 and 1 more"),
+        (["LEFT/CH2/Q10"], 6, "../Q10"),
+    ],
+)
+def test_names_that_do_not_fit_are_counted(names: list[str], columns: int, shown: str) -> None:
+    assert fitting(names, columns) == shown
+    assert width(shown) <= columns
 
 
 def test_paint_is_a_code_around_the_text_or_nothing() -> None:
