@@ -52,7 +52,7 @@ def test_a_path_too_long_keeps_its_end() -> None:
         (["Q1", "Q2", "Q3"], 10, "Q1, Q2, Q3"),
         (["Q1", "Q2", "Q3", "Q4"], 13, "Q1 and 3 more"),
         (["Q1", "Q2", "Q3", "Q4"], 16, "Q1, Q2, Q3, Q4"),
-        (["LEFT/CH2/Q10", "Q2"], 16, "..Q10 and 1 more"),
+        (["LEFT/CH2/Q10", "Q2"], 15, "..10 and 1 more"),
         (["LEFT/CH2/Q10"], 6, "../Q10"),
     ],
 )
