@@ -191,7 +191,9 @@ def _moves_holds(was: Report | None, now: Report | None, old: Report) -> float |
     if was is None or now is None or not was["value"] or not now["value"]:
         return None
     found = [row["relative"] for row in old["sensitivities"] if row["device"] == was["id"] and row["parameter"] == "R"]
-    return float((now["value"] / was["value"]) ** found[0] - 1.0) if found and found[0] is not None else None
+    if not found or found[0] is None:
+        return None
+    return float(f"{(now['value'] / was['value']) ** found[0] - 1.0:.6g}")
 
 
 def _findings(before: Report, after: Report, pairs: Sequence[Pair]) -> dict[str, Any]:

@@ -74,6 +74,23 @@ def test_one_of_like_channels_changed_is_the_one_told() -> None:
     assert [(change["before"], change["after"]) for change in changed] == [("Q14", "Q14")]
 
 
+def test_what_the_limits_file_asks_now_is_told_in_words() -> None:
+    before, after = report(), report()
+    needs = after["limiters"][0]["needs"]
+    needs |= {"carry_A": None, "short_continuous": True, "shorted_to": ["GND", "-5V"]}
+    needs["peak"] = {"current_A": 1.5, "lasts_s": 0.02, "output_V": None}
+    after["limiters"][0]["loop"]["least_damping"] = None
+    text = " ".join(rendered_comparison(comparison_document(compare(before, after))).split())
+    for told in (
+        "carry 0.7 A, now not stated",
+        "a continuous short not stated, now stated",
+        "shorted_to not stated, now GND, -5V",
+        "peak not stated, now 1.5 A for 20 ms",
+        "damping: 0.223, now not known",
+    ):
+        assert told in text
+
+
 def test_added_and_removed_limiters() -> None:
     before, after = report(), report()
     gone = after["limiters"].pop()

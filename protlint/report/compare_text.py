@@ -22,7 +22,11 @@ WORDS = {
     "pass_power_W": "pass device, held short",
 }
 
-UNIT_OF_NEED = {"carry_A": "A", "cap_A": "A", "output_V": "V", "short_s": "s", "regulate_A": "A"}
+NEEDS = {
+    "carry_A": ("carry", "A"), "cap_A": ("cap", "A"), "output_V": ("output", "V"), "short_s": ("short", "s"),
+    "short_continuous": ("a continuous short", ""), "regulate_A": ("regulate", "A"),
+}  # fmt: skip
+"""Keys of the limits file by those of a report that differ from them, with their units."""
 
 CHANGES = ("new", "risen", "gone")
 
@@ -68,7 +72,7 @@ def comparison_document(comparison: Document) -> Document:
 
 
 def held_back_by(comparison: Document, gate: str) -> list[str]:
-    """Return why a gate on new findings does not hold: ``new:error`` counts what is new as an error or has risen to one."""
+    """Return why a gate on new findings does not hold; what was less before and is an error now is a new error too."""
     if gate == "never":
         return []
     levels = [str(level) for level in LEVELS]
@@ -92,16 +96,27 @@ def _limiter(change: Document, colour: bool) -> list[str]:
     if change["figures"] and not change["parts"]:
         lines += wrapped("no part of it changed: supplies, drive, part data or limits did", indent=4, first="  - ")
     for key, pair in change["needs"].items():
-        unit = UNIT_OF_NEED.get(key)
-        was, now = (figure(pair[side], unit) if unit else str(pair[side]) for side in ("before", "after"))
-        lines += wrapped(f"limits file: {key.rpartition('_')[0] or key} {was}, now {now}", indent=4, first="  - ")
+        name, unit = NEEDS.get(key, (key, ""))
+        was, now = (_need(pair[side], unit) for side in ("before", "after"))
+        lines += wrapped(f"limits file: {name} {was}, now {now}", indent=4, first="  - ")
     return lines
+
+
+def _need(value: object, unit: str) -> str:
+    if value is None or value is False or value == []:
+        return "not stated"
+    if isinstance(value, dict):
+        return f"{figure(value['current_A'], 'A')} for {figure(value['lasts_s'], 's')}"
+    if isinstance(value, list):
+        return ", ".join(value)
+    return "stated" if isinstance(value, bool) or not isinstance(value, int | float) else figure(value, unit)
 
 
 def _shift(pair: Document, unit: str) -> str:
     was, now = pair["before"], pair["after"]
     shift = f" ({'+' if now > was else ''}{percent(now / was - 1.0)})" if was and now is not None else ""
-    return f"{figure(was, unit)}, now {figure(now, unit)}{shift}"
+    old, new = ("not known" if value is None else figure(value, unit) for value in (was, now))
+    return f"{old}, now {new}{shift}"
 
 
 def _part(part: Document) -> str:
