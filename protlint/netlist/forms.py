@@ -26,18 +26,17 @@ NESTING_LIMIT = 200
 """Deepest nesting read; real netlists stay below 20."""
 
 _WHITE = r"[ \t\r\n\f\v]"
-_WORD = r'[^ \t\r\n\f\v()"]++'
-_CLOSING = r"(\)[) \t\r\n\f\v]*+)"
+_IN_WORD = r'[^ \t\r\n\f\v()"]'
+_WORD = _IN_WORD + "++"
+_CLOSING = r"[) \t\r\n\f\v]*+"
 _TOKEN = re.compile(
-    # A list's head, a first word and a plain first string come with its opening, and so do closings that follow at once:
-    # most lists of a netlist are one match, and matches are what scanning costs.
-    rf'\({_WHITE}*+({_WORD})?{_WHITE}*+({_WORD})?{_WHITE}*+(?:"([^"%\r\n]*+)"{_WHITE}*+)?{_CLOSING}?'
-    rf"|{_CLOSING}"
-    rf"|({_WORD})"
-    rf'|"([^"]*+)"'
-    rf'|(")'
+    # A list's head, two words and a plain string come with its opening, and so do closings that follow at once: most lists
+    # of a netlist are one match, and matches are what scanning costs. Words and closings that are not there match as
+    # nothing, which costs less than a group left out; everything else that can stand in a text is the last group.
+    rf"\({_WHITE}*+({_IN_WORD}*+){_WHITE}*+({_IN_WORD}*+){_WHITE}*+({_IN_WORD}*+){_WHITE}*+"
+    rf'(?:"([^"%\r\n]*+)"{_WHITE}*+)?({_CLOSING})'
+    rf'|(\){_CLOSING}|{_WORD}|"[^"]*+"?)'
 )
-_CLOSED, _CLOSE, _ATOM, _STRING = 4, 5, 6, 7  # the expression's groups that a match can end with, after a list's beginning
 _OUTLINE = re.compile(rf'\({_WHITE}*+((?:{_WORD})?)|\)|"[^"]*+"?|{_WORD}')
 _PERCENT = re.compile(r"%(\d+(?: +\d+)*) *%|%")
 
@@ -205,33 +204,33 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
         heads, reducers, places = _Table(self.head), self.reducers, self.places
         # Where words are made of what stands there, one serves all its places; where not, looking it up only costs.
         atoms = None if type(self).atom is FormParser.atom else _Table(self.atom)
-        heads[None] = None if reducers else ""
+        heads[""] = None if reducers else ""
         stack: list[Form] = []
         current = Form()
         skipped = 0  # how many lists are open in the one being passed over, itself included
         for match in _TOKEN.finditer(self.string):
-            kind = match.lastindex or 0
-            if kind <= _CLOSED:
-                word, first, text, closing, _, _, _, _ = match.groups()
+            word, first, second, text, closing, other = match.groups()
+            if other is None:
                 if skipped or (head := heads[word]) is None:
                     skipped += 1
-                    if closing is None:
+                    if not closing:
                         if len(stack) + skipped > NESTING_LIMIT:
                             raise self._too_deep(match.start())
                         continue
                     closings = closing.count(")")
                 else:
-                    if word is None:
-                        form = Form() if text is None else Form((text,))
-                    elif first is None:
-                        form = Form((head,)) if text is None else Form((head, text))
-                    elif text is None:
-                        form = Form((head, first if atoms is None else atoms[first]))
-                    else:
-                        form = Form((head, first if atoms is None else atoms[first], text))
+                    form = Form()  # empty, since filling it costs less than handing its items over in a tuple
                     form.offset = match.start()
                     form.places = places
-                    if closing is None:
+                    if word:
+                        form.append(head)
+                        if first:
+                            form.append(first if atoms is None else atoms[first])
+                            if second:
+                                form.append(second if atoms is None else atoms[second])
+                    if text is not None:
+                        form.append(text)
+                    if not closing:
                         stack.append(current)
                         current = form
                         if len(stack) > NESTING_LIMIT:
@@ -240,15 +239,17 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
                     reduce = reducers.get(form[0]) if reducers else None
                     current.append(form if reduce is None else reduce(form))
                     closings = closing.count(")") - 1
-            elif kind == _CLOSE:
-                closings = match[_CLOSE].count(")")
-            elif kind > _STRING:
-                raise places.error("this string is never closed: its closing quote is missing", match.start())
+            elif (mark := other[0]) == ")":
+                closings = other.count(")")
+            elif mark == '"':
+                if len(other) == 1 or other[-1] != '"':
+                    raise places.error("this string is never closed: its closing quote is missing", match.start())
+                if not skipped:
+                    current.append(self.string_at(other[1:-1], match.start()))
+                continue
             else:
-                if not skipped and kind == _STRING:
-                    current.append(self.string_at(match[_STRING], match.start()))
-                elif not skipped:
-                    current.append(match[_ATOM] if atoms is None else atoms[match[_ATOM]])
+                if not skipped:
+                    current.append(other if atoms is None else atoms[other])
                 continue
             while closings:
                 closings -= 1

@@ -83,6 +83,27 @@ def kinds(item: object) -> object:
     return "word" if isinstance(item, Atom | sexpdata.Symbol) else "string"
 
 
+@pytest.mark.parametrize("blank", ["", " ", "\r\n\t"])
+@pytest.mark.parametrize("strings", [(), ("",), ("s (t)",), ("50 % 2%",), ("s", "t")])
+@pytest.mark.parametrize("words", range(6))
+def test_lists_of_every_shape_close_on_each_other(words: int, strings: tuple[str, ...], blank: str) -> None:
+    items = [Atom(word) for word in "abcdef"[:words]] + list(strings)
+    inner = (
+        "(" + blank + (" " + blank).join(map(str, items[:words])) + blank.join(f'"{each}"' for each in strings) + blank + ")"
+    )
+    text = f"(x{blank}{inner}{inner}{blank}(y{blank}{inner}){blank}z)"
+    [form] = read_forms(text, "shapes")
+    assert form == ["x", items, items, ["y", items], "z"]
+    assert kinds(form) == kinds([Atom("x"), items, items, [Atom("y"), items], Atom("z")])
+    first = len("(x" + blank)
+    assert (form[1].offset, form[2].offset) == (first, first + len(inner))
+    if strings:
+        cut = text[: text.rindex('"')]
+        with pytest.raises(InputError, match="this string is never closed") as caught:
+            read_forms(cut, "shapes")
+        assert (caught.value.line, caught.value.column) == Places(cut).at(cut.rindex('"'))
+
+
 def test_words_stay_words() -> None:
     [form] = FormParser("(net INF nan t nil 1_000 1e5 0x10 -3 'a ;b [c])").parse()
     assert list(form) == ["net", "INF", "nan", "t", "nil", "1_000", "1e5", "0x10", "-3", "'a", ";b", "[c]"]
