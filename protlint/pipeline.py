@@ -18,6 +18,7 @@ from protlint.checks.load import StartUp, start_up_of
 from protlint.checks.part_fails import IfPartFails, if_a_part_fails
 from protlint.checks.table import BOARD_CHECKS, BOUNDED, CHECKS, WITHOUT_SOLUTION
 from protlint.findings import LEVELS, Finding, Level, NotChecked, identifying_parts, stamp_fingerprints
+from protlint.idle import idle_tables
 from protlint.limits import CheckSetting, LimiterLimits, Limits, load_limits, needs_of
 from protlint.netlist import read_netlist
 from protlint.netlist.forms import no_collection
@@ -66,7 +67,7 @@ class Review:
     """The whole answer for one netlist; limiters and findings in report order, the worst first.
 
     ``assumed`` is what was assumed about the board as a whole, ``not_checked`` what could not be checked of it; ``remarks``
-    is said once, below everything: expired waivers, waivers that match nothing, part data that contradicts itself.
+    is said once, below everything: expired waivers, waivers and limits that fit nothing, part data that contradicts itself.
     """
 
     board: Board
@@ -107,10 +108,10 @@ class _Whole:
 def set_up(
     *,
     limits: str | Path | None = None,
-    parts: Sequence[str | Path] = (),
+    parts: str | Path | Sequence[str | Path] = (),
     parts_list: str | Path | None = None,
     waivers: str | Path | None = None,
-    rules: Sequence[str | Path] = (),
+    rules: str | Path | Sequence[str | Path] = (),
     on: date | None = None,
 ) -> Desk:
     """Read every file but the netlist.
@@ -120,6 +121,7 @@ def set_up(
     ProtlintError : a file is missing or wrong, with file, line and column.
     """
     catalogue = load_catalogue()
+    parts, rules = _several(parts), _several(rules)
     return Desk(
         limits=load_limits(limits, known_checks={name: row.thresholds.keys() for name, row in catalogue.items()}),
         book=load_book(parts),
@@ -131,14 +133,18 @@ def set_up(
     )
 
 
+def _several(paths: str | Path | Sequence[str | Path]) -> Sequence[str | Path]:
+    return (paths,) if isinstance(paths, str | Path) else paths
+
+
 def review(
     path: str | Path,
     *,
     limits: str | Path | None = None,
-    parts: Sequence[str | Path] = (),
+    parts: str | Path | Sequence[str | Path] = (),
     parts_list: str | Path | None = None,
     waivers: str | Path | None = None,
-    rules: Sequence[str | Path] = (),
+    rules: str | Path | Sequence[str | Path] = (),
     design: str | None = None,
     encoding: str | None = None,
     on: date | None = None,
@@ -148,7 +154,8 @@ def review(
     Parameters
     ----------
     path : the EDIF netlist; ``-`` is standard input.
-    limits, parts, parts_list, waivers, rules : the user's files, as the command's options of the same names.
+    limits, parts, parts_list, waivers, rules : the user's files, as the command's options of the same names; of part data
+        and rules one or several.
     design, encoding : which of several designs, and the file's encoding where it is not to be found out.
     on : the day that waivers are judged by; today where None.
 
@@ -302,7 +309,10 @@ def _finish(
     known = {one.limiter.id: identifying_parts(one.limiter.roles) for one in reviewed}
     marked: Sequence[Finding] = stamp_fingerprints(findings, known)
     listed = desk.parts_list.remarks if desk.parts_list is not None else ()
-    remarks: tuple[str, ...] = (*desk.book.remarks, *listed)
+    spoken_of = [name for one in reviewed for name in _names(board, one.limiter)]
+    spoken_of += [name for finding in marked for name in (*finding.parts, *finding.nets)]
+    idle = idle_tables(desk.limits, board, spoken_of)
+    remarks: tuple[str, ...] = (*desk.book.remarks, *listed, *idle)
     if desk.waivers is not None:
         marked, more = apply_waivers(marked, desk.waivers, on=desk.on)
         remarks += tuple(more)

@@ -15,7 +15,7 @@ FLOORS = (
     ("cli",),
     ("report",),
     ("pipeline", "compare"),
-    ("waivers",),
+    ("waivers", "idle"),
     ("checks",),
     ("solve",),
     ("topology",),

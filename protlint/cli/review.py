@@ -26,7 +26,13 @@ Exit code: 0 the gate holds, 1 it does not, 2 the work could not be done.
 @reading_options
 @click.option("--waivers", metavar="FILE", type=PATH, help="Findings that were looked at and accepted.")
 @click.option("--on", metavar="DATE", callback=as_date, help="Judge waivers as on this day.")
-@click.option("--save", metavar="FILE", type=PATH, multiple=True, help="Save the report; its ending says how. Repeatable.")
+@click.option(
+    "--save",
+    metavar="FILE",
+    type=PATH,
+    multiple=True,
+    help="Save it as .json .sarif .xml or .md, or as texts in a folder/. Repeatable.",
+)
 @click.option("--gate", type=click.Choice(("error", "warning", "note", "never")), default="error", show_default=True,
               help="The least level that makes the exit code 1.")  # fmt: skip
 @click.option("--complete", is_flag=True, help="What was not checked closes the gate too.")

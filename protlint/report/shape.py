@@ -11,6 +11,7 @@ from typing import Any
 
 from protlint import __version__
 from protlint.findings import LEVELS
+from protlint.idle import ON_THIS_BOARD
 from protlint.report.safe import json_text
 from protlint.waivers import MATCHES_NOTHING
 
@@ -28,7 +29,7 @@ CAUTION = (
 
 def combined(documents: Iterable[Document], unread: Iterable[Mapping[str, Any]] = ()) -> Document:
     """Return one report over several netlists: their reports in order, and the files that could not be reviewed."""
-    boards, idle = _without_idle_waivers(list(documents))
+    boards, idle = _without_idle(list(documents))
     failed = [{key: error.get(key) for key in ("file", "line", "column", "message")} for error in unread]
     summaries = [board["summary"] for board in boards]
     return {
@@ -57,13 +58,15 @@ def rendered_json(report: Document) -> str:
     return json_text(json.dumps(report, ensure_ascii=False, indent=2, allow_nan=False)) + "\n"
 
 
-def _without_idle_waivers(boards: list[Document]) -> tuple[list[Document], list[str]]:
-    """Take the remarks on idle waivers out of the boards, and return those that every board makes."""
-    idle = [[text for text in board["remarks"] if text.endswith(MATCHES_NOTHING)] for board in boards]
+IDLE = (MATCHES_NOTHING, ON_THIS_BOARD)
+"""How remarks end on what one file says of no board in particular: they count where every board makes them."""
+
+
+def _without_idle(boards: list[Document]) -> tuple[list[Document], list[str]]:
+    """Take the remarks on idle waivers and limits out of the boards, and return those that every board makes."""
+    idle = [[text for text in board["remarks"] if text.endswith(IDLE)] for board in boards]
     everywhere = [text for text in idle[0] if all(text in others for others in idle)] if idle else []
-    cleared = [
-        {**board, "remarks": [text for text in board["remarks"] if not text.endswith(MATCHES_NOTHING)]} for board in boards
-    ]
+    cleared = [{**board, "remarks": [text for text in board["remarks"] if not text.endswith(IDLE)]} for board in boards]
     return cleared, everywhere
 
 

@@ -30,7 +30,7 @@ def test_the_clean_board_gives_no_warning_and_no_error() -> None:
 def test_the_clean_board_leaves_nothing_unchecked() -> None:
     found = reviewed("clean", "pier-lamps.edf")
     assert {one.limiter.id: one.not_checked for one in found.limiters} == {"Q11": (), "Q21": (), "Q31": ()}
-    assert found.not_checked == ()
+    assert found.not_checked == found.remarks == ()
 
 
 def test_every_planted_fault_is_named_and_nothing_else() -> None:

@@ -1,0 +1,55 @@
+"""Tables of a limits file that speak of nothing on the board are named; those that speak of something are not."""
+
+from __future__ import annotations
+
+import pytest
+
+from protlint.report.document import document
+from protlint.report.shape import combined
+from tests.support.desk import limits, reviewed
+
+BOARD = """
+Q10 NPN QPN1 OUT DRV SNS
+Q11 NPN QSN1 DRV SNS GND
+R10 RES 1K CMD DRV POWER:1W
+R11 RES 1R SNS GND POWER:5W
+J1  CONN - 1=OUT 2=+12V 3=GND
+U1  BUFFER BUF7 A=CMD
+"""
+
+FITTING = limits(
+    supply={"+12v": "12 V", "GND": "0 V", "EARTH": "0 V", "REMOTE": "24 V"},
+    drive={"CMD": {"high": "5 V"}, "U1.A": {"high": "5 V"}},
+    driver={"buf7": {"power": "1 W"}},
+    limiter={"*": {"carry": "0.1 A"}, "q1?": {"cap": "2 A"}, "R11": {"short": "1 s"}, "OUT": {"shorted_to": "REMOTE"}},
+    pins={"npn": {"C": "collector", "B": "base", "E": "emitter"}, "BUF*": {"A": "none"}},
+)
+
+
+def test_what_fits_is_not_remarked_upon() -> None:
+    assert reviewed(BOARD, FITTING).remarks == ()
+
+
+@pytest.mark.parametrize(
+    ("tables", "told"),
+    [
+        ({"supply": {"+12W": "12 V"}}, '[supply] "+12W" fits no net'),
+        ({"drive": {"cmd": {"high": "5 V"}}}, "[drive.cmd] fits no net and no pin"),
+        ({"drive": {"U1.9": {"high": "5 V"}}}, '[drive."U1.9"] fits no net and no pin'),
+        ({"driver": {"BUF8": {"power": "1 W"}}}, "[driver.BUF8] fits no part number"),
+        ({"limiter": {"Q99": {"carry": "1 A"}}}, "[limiter.Q99] fits no limiter"),
+        ({"limiter": {"R10": {"carry": "1 A"}}}, "[limiter.R10] fits no limiter"),
+        ({"pins": {"SOT99": {"1": "base"}}}, "[pins.SOT99] fits no cell and no part number"),
+    ],
+)
+def test_what_fits_nothing_is_named(tables: dict[str, object], told: str) -> None:
+    (remark,) = reviewed(BOARD, limits(**tables)).remarks
+    assert remark == f"limits.toml: {told} on this board"
+
+
+def test_of_several_boards_only_what_fits_none_is_named() -> None:
+    tables = limits(limiter={"Q10": {"carry": "0.1 A"}, "Q99": {"carry": "0.1 A"}})
+    boards = [document(reviewed(text, tables)) for text in (BOARD, BOARD.replace("Q10", "Q20"))]
+    report = combined(boards)
+    assert report["remarks"] == ["limits.toml: [limiter.Q99] fits no limiter on this board"]
+    assert all(board["remarks"] == [] for board in report["boards"])
