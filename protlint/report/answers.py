@@ -17,6 +17,9 @@ if TYPE_CHECKING:
 
 SIGNIFICANT_DIGITS = 6
 
+MODE_DIGITS = 3
+"""Of natural frequencies: of a stiff circuit's fastest ones numerical libraries agree on no more."""
+
 CURRENTS = ("begins_A", "holds_A", "carries_A", "most_A", "unlimited_A", "shunt_A", "pass_A")
 
 RANGES = ("begins_range_A", "holds_range_A", "carries_range_A", "most_range_A")
@@ -73,11 +76,11 @@ def answers(item: ReviewedLimiter, ambients_degC: Sequence[float]) -> Document:
     }
 
 
-def rounded(value: float | None) -> float | None:
-    """Return a number of six significant digits, or None where it is not finite."""
+def rounded(value: float | None, digits: int = SIGNIFICANT_DIGITS) -> float | None:
+    """Return a number of so many significant digits, or None where it is not finite."""
     if value is None or not math.isfinite(value):
         return None
-    return float(f"{value:.{SIGNIFICANT_DIGITS}g}") + 0.0
+    return float(f"{value:.{digits}g}") + 0.0
 
 
 def taken(value: object, *names: str) -> Any:
@@ -116,7 +119,10 @@ def _loop(loop: Loop | None) -> Document:
         **taken(loop, *LOOP),
         "worst": taken(loop.worst, *WORST),
         "worst_without_wiring": taken(loop.worst_without_wiring, *WORST),
-        "natural": [{"at_Hz": rounded(at_Hz), "damping": rounded(damping)} for at_Hz, damping in loop.natural],
+        "natural": [
+            {"at_Hz": rounded(at_Hz, MODE_DIGITS), "damping": rounded(damping, MODE_DIGITS)}
+            for at_Hz, damping in loop.natural
+        ],
     }
 
 
