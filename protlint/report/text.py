@@ -74,8 +74,10 @@ def _overview(groups: Sequence[Sequence[Section]], colour: bool) -> list[str]:
     """Put the limiters of a board in rows, the worst first: what each gives at its worst against what the board needs."""
     rows = [["limiter", "verdict", "carries", "needed", "most", "cap", "holds"]]
     for group in groups:
-        limiter = group[0][0]
+        limiter, name, found = group[0]
         if limiter is None:
+            wrong = name is not None and any(one["level"] == "error" for one in found)
+            rows += [[str(name), "does not limit", *[UNKNOWN] * 5]] if wrong else []
             continue
         more = f" +{len(group) - 1}" if len(group) > 1 else ""
         hand, needs = limiter["in_hand"], limiter["needs"]
