@@ -5,6 +5,7 @@ from __future__ import annotations
 import pytest
 
 from protlint.limits import Range
+from protlint.partdata.book import load_book
 from protlint.solve import formulas
 from protlint.solve.answers import solve
 from protlint.solve.circuit import Circuit, Device, Drive
@@ -47,7 +48,9 @@ def test_class_ab_stage_that_gives_up_its_bias_at_100_ma() -> None:
     )
     assert sensed_A(ideal_follower(shunt, 6.51, 2e-3), AT_25_MV_DEGC) == pytest.approx(0.1, rel=2e-3)
     # the drive that leaves 2.99 uA to the shunt beside the pass device's base current at 75 mA
-    assert holds_A(ideal_follower(shunt, 6.51, 2.99e-6 + 0.075 / 1e5), AT_25_MV_DEGC) == pytest.approx(0.075, rel=2e-3)
+    circuit = ideal_follower(shunt, 6.51, 2.99e-6 + 0.075 / 1e5)
+    assert holds_A(circuit, AT_25_MV_DEGC) == pytest.approx(0.075, rel=2e-3)
+    assert 6.51 * sensed_A(circuit, AT_25_MV_DEGC) == pytest.approx(0.488, abs=1e-3)
 
 
 def test_class_ab_stage_that_gives_up_its_bias_at_150_ma() -> None:
@@ -79,6 +82,20 @@ def test_sink_limit_of_the_741(sense_ohm: float, limit_A: float) -> None:
 def test_series_regulator_of_one_ohm() -> None:
     """US Army TC 9-62 (23 June 2005), para 4-131: 1 ohm and 0.6 V limit at 0.6 A."""
     assert holds_A(ideal_follower(ideal_bipolar(0.6, 1e-3), 1.0, 1e-3)) == pytest.approx(0.6, rel=2e-3)
+
+
+@pytest.mark.parametrize(("V_BE", "limit_A"), [(0.5, 0.25), (0.6, 0.3), (0.7, 0.35)])
+def test_two_ohm_as_people_reckon_it(V_BE: float, limit_A: float) -> None:
+    """Common practice of the trade, no publication: 2 ohm and 0.6 V are taken as 300 mA; 0.5 V to 0.7 V cover the spread."""
+    assert sensed_A(ideal_follower(ideal_bipolar(V_BE, 1e-3), 2.0, 1e-3)) == pytest.approx(limit_A, rel=2e-3)
+
+
+def test_almost_any_small_transistor_serves_as_the_shunt_at_12_volt() -> None:
+    """Common practice of the trade, no publication; what it has to bear of 12 V through 1 kohm follows from Ohm's law."""
+    small = [entry for entry in load_book().entries.values() if entry.kind in ("npn", "pnp") and "power" in entry.ratings]
+    serving = [entry for entry in small if entry.ratings["vceo"].value >= 12.0 and entry.ratings["ic"].value >= 0.012]
+    assert len(small) > 20
+    assert len(serving) >= 0.9 * len(small)
 
 
 def test_operational_amplifier_regulator_in_and_out_of_its_limit() -> None:
