@@ -11,6 +11,12 @@ from typing import Literal
 Level = Literal["error", "warning", "note"]
 """The three levels of a finding; the words are SARIF 2.1.0's."""
 
+FOR_WANT_OF = "for want of "
+"""How it begins why a circuit was not solved, where it is data that lack."""
+
+UNSOLVED = "currents"
+"""What was not checked of a limiter whose circuit could not be solved: all that follows from its currents."""
+
 LEVELS: tuple[Level, ...] = ("error", "warning", "note")
 """Worst first."""
 

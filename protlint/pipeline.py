@@ -17,7 +17,16 @@ from protlint.checks.catalogue import CheckRow, load_catalogue
 from protlint.checks.load import StartUp, start_up_of
 from protlint.checks.part_fails import IfPartFails, if_a_part_fails
 from protlint.checks.table import BOARD_CHECKS, BOUNDED, CHECKS, WITHOUT_SOLUTION
-from protlint.findings import LEVELS, Finding, Level, NotChecked, identifying_parts, stamp_fingerprints
+from protlint.findings import (
+    FOR_WANT_OF,
+    LEVELS,
+    UNSOLVED,
+    Finding,
+    Level,
+    NotChecked,
+    identifying_parts,
+    stamp_fingerprints,
+)
 from protlint.idle import idle_tables
 from protlint.limits import CheckSetting, LimiterLimits, Limits, load_limits, needs_of
 from protlint.netlist import read_netlist
@@ -223,7 +232,8 @@ def _review_limiter(whole: _Whole, limiter: Limiter) -> tuple[ReviewedLimiter, C
     board, desk = whole.board, whole.desk
     needs = needs_of(desk.limits, *_names(board, limiter))
     bench = build_bench(board, limiter, limits=desk.limits, needs=needs)
-    solution = Solution(not_solved="; ".join(one.needs for one in bench.missing) or "its circuit is not known")
+    lacking = "; ".join(one.needs for one in bench.missing)
+    solution = Solution(not_solved=f"{FOR_WANT_OF}{lacking}" if lacking else "its circuit is not known")
     if bench.circuit is not None:
         solution = solve(bench.circuit, desk.limits.ambient_degC, memo=whole.solved)
         solution = with_dynamics(bench.circuit, solution, desk.limits.ambient_degC, memo=whole.solved)
@@ -243,7 +253,7 @@ def _review_limiter(whole: _Whole, limiter: Limiter) -> tuple[ReviewedLimiter, C
     findings: list[Finding] = []
     not_checked = [NotChecked(what, case.limits_key(key) if key == "output" else key) for what, key in solution.not_checked]
     if solution.not_solved is not None:
-        not_checked.append(NotChecked("currents", solution.not_solved))
+        not_checked.append(NotChecked(UNSOLVED, solution.not_solved.removeprefix(FOR_WANT_OF)))
     for check, ask in CHECKS.items():
         if solution.not_solved is not None and check not in WITHOUT_SOLUTION:
             continue

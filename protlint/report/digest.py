@@ -6,7 +6,7 @@ import json
 import re
 from collections.abc import Iterator, Mapping, Sequence
 
-from protlint.findings import LEVELS
+from protlint.findings import FOR_WANT_OF, LEVELS, UNSOLVED
 from protlint.report.figures import counted, figure
 from protlint.report.shape import VERDICTS, Document, boards_of
 
@@ -187,7 +187,13 @@ def unchecked(rows: Sequence[Document]) -> list[str]:
 
 def left_open(limiter: Document) -> list[Document]:
     """Return what was not checked of a limiter but for what kept it from being solved, which is told by itself."""
-    return [row for row in limiter["not_checked"] if row["needs"] != limiter["not_solved"]]
+    return [row for row in limiter["not_checked"] if not limiter["not_solved"] or row["check"] != UNSOLVED]
+
+
+def unsolved(limiter: Document) -> str:
+    """Return why a limiter was not solved: ``not solved for want of ...`` or ``not solved: ...``."""
+    why: str = limiter["not_solved"]
+    return f"not solved {why}" if why.startswith(FOR_WANT_OF) else f"not solved: {why}"
 
 
 def _parts_together(needs: Mapping[str, str]) -> Iterator[tuple[str, str]]:

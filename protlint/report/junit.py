@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Collection, Iterable, Sequence
 from xml.etree import ElementTree
 
-from protlint.report.digest import left_open, place_of, sentence, waiver_of, working_line
+from protlint.report.digest import left_open, place_of, sentence, unsolved, waiver_of, working_line
 from protlint.report.safe import throughout, xml
 from protlint.report.shape import CAUTION, Document, boards_of
 
@@ -110,7 +110,7 @@ def _passed(suite: ElementTree.Element, limiter: Document, place: str, told: Col
             ElementTree.SubElement(suite, "testcase", name=check, classname=place)
     if limiter["not_solved"]:
         case = ElementTree.SubElement(suite, "testcase", name="solved", classname=place)
-        ElementTree.SubElement(case, "skipped", message=f"not judged: {limiter['not_solved']}")
+        ElementTree.SubElement(case, "skipped", message=f"not judged, {unsolved(limiter)}")
 
 
 def _unread(root: ElementTree.Element, errors: Sequence[Document]) -> None:

@@ -15,6 +15,7 @@ from protlint.report.digest import (
     sentence,
     summary_line,
     unchecked,
+    unsolved,
     waiver_of,
     working_line,
 )
@@ -116,7 +117,7 @@ def _folded(title: str, lines: Sequence[str]) -> list[str]:
 def _not_checked(board: Document) -> list[str]:
     texts = [f"the board, for want of {need}" for need in unchecked(board["not_checked"])]
     for limiter in board["limiters"]:
-        texts += [f"{limiter['id']} could not be solved: {limiter['not_solved']}"] if limiter["not_solved"] else []
+        texts += [f"{limiter['id']} was {unsolved(limiter)}"] if limiter["not_solved"] else []
         texts += [f"{limiter['id']}, for want of {need}" for need in unchecked(left_open(limiter))]
     return texts
 

@@ -13,7 +13,7 @@ from urllib.parse import quote
 
 from protlint import __version__
 from protlint.checks.catalogue import CheckRow, load_catalogue
-from protlint.report.digest import left_open, place_of, times, waiver_of
+from protlint.report.digest import left_open, place_of, times, unsolved, waiver_of
 from protlint.report.figures import figure
 from protlint.report.safe import json_text, terminal, throughout
 from protlint.report.shape import CAUTION, Document, boards_of
@@ -159,7 +159,7 @@ def _notifications(board: Document, artifact: Document, index_of: Mapping[str, i
     for limiter in board["limiters"]:
         notifications += (_unchecked(limiter["id"], row, index_of) for row in left_open(limiter))
         if limiter["not_solved"]:
-            text = f"{limiter['id']} could not be solved: {limiter['not_solved']}."
+            text = f"{limiter['id']} was {unsolved(limiter)}."
             notifications.append({"level": "warning", "message": message(text)})
     notifications += ({"level": "note", "message": message(f"Assumed: {text}.")} for text in board["assumed"])
     notifications += ({"level": "warning", "message": message(text)} for text in board["remarks"])

@@ -8,7 +8,7 @@ import pytest
 
 from protlint.quantities import format_ratio
 from protlint.report.behaviour import sentences
-from protlint.report.digest import sentence, unchecked
+from protlint.report.digest import left_open, sentence, unchecked, unsolved
 from protlint.report.document import document
 from protlint.report.figures import aligned, current, figure
 from protlint.report.safe import markdown, throughout
@@ -42,6 +42,20 @@ def test_what_is_needed_is_told_once_keys_and_parts_together() -> None:
     ]
     assert unchecked(ROWS) == needs
     assert unchecked(throughout(ROWS, markdown)) == [markdown(need) for need in needs]
+
+
+@pytest.mark.parametrize(
+    ("why", "told"),
+    [
+        ("for want of a value of R1", "not solved for want of a value of R1"),
+        ("node N3 floats", "not solved: node N3 floats"),
+    ],
+)
+def test_why_a_limiter_was_not_solved_is_told_once(why: str, told: str) -> None:
+    rows = [{"check": "currents", "needs": why}, {"check": "value-unreadable", "needs": "[attributes] value"}]
+    limiter = {"not_solved": why, "not_checked": rows}
+    assert unsolved(limiter) == told
+    assert left_open(limiter) == rows[1:]
 
 
 @pytest.mark.parametrize(
