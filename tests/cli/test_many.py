@@ -48,11 +48,17 @@ def test_netlists_of_one_name_outside_the_working_folder_are_told_apart(
 
 
 def started(folder: Path) -> subprocess.Popen[bytes]:
-    """Start a review of many boards in a session of its own, as a terminal would."""
+    """Start a review of many boards in a session of its own, as a terminal would: interrupts are not ignored."""
     for number in range(24):
         (folder / f"b{number}.edf").write_text(lamp_netlist(sense=f"{number + 1}R"), encoding="utf-8")
-    command = [str(COMMAND), "review", ".", "--save", "r.json"]
-    return subprocess.Popen(command, cwd=folder, stdout=subprocess.DEVNULL, stderr=subprocess.PIPE, start_new_session=True)
+    return subprocess.Popen(
+        [str(COMMAND), "review", ".", "--save", "r.json"],
+        cwd=folder,
+        stdout=subprocess.DEVNULL,
+        stderr=subprocess.PIPE,
+        start_new_session=True,
+        preexec_fn=lambda: signal.signal(signal.SIGINT, signal.SIG_DFL),
+    )
 
 
 def left_over(session: int) -> list[str]:
