@@ -235,11 +235,9 @@ def load_toml(path: str | Path) -> TomlFile:
     Raises
     ------
     FileError : the file cannot be read.
-    InputError : it is not UTF-8 or not TOML, with line and column.
+    InputError : it is not UTF-8 or not TOML, with line and column, or larger than any person writes.
     """
-    content, name = read_bytes(path)
-    if len(content) > LARGEST_TOML:
-        raise InputError(f"larger than {LARGEST_TOML // 1_000_000} MB, no file of settings", file=name)
+    content, name = read_bytes(path, limit=LARGEST_TOML)
     try:
         text = content.decode("utf-8-sig").replace("\r\n", "\n")
     except UnicodeDecodeError as error:

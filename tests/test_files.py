@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import sys
+from collections.abc import Callable
 from pathlib import Path
 
 import pytest
 
-from protlint.sources import FileError, read_bytes, shown_name, write_whole
+from protlint.board.parts_list import read_parts_list
+from protlint.sources import FileError, InputError, load_toml, read_bytes, shown_name, write_whole
 
 
 @pytest.mark.parametrize(
@@ -41,6 +43,13 @@ def test_a_file_is_written_whole_under_any_name_a_file_can_have(tmp_path: Path) 
     write_whole(target, "µ\n")
     assert target.read_bytes() == b"\xc2\xb5\n"
     assert list(tmp_path.iterdir()) == [target]
+
+
+@pytest.mark.skipif(not Path("/dev/zero").exists(), reason="SKIPPED: this machine has no endless file")
+@pytest.mark.parametrize("reader", [load_toml, read_parts_list])
+def test_an_endless_file_is_read_no_further_than_makes_sense(reader: Callable[[str], object]) -> None:
+    with pytest.raises(InputError, match="the most that is read"):
+        reader("/dev/zero")
 
 
 def test_what_stood_there_stands_where_writing_fails(tmp_path: Path) -> None:

@@ -25,6 +25,9 @@ DESIGNATORS = (
 )  # fmt: skip
 """Headings of the column that names the parts."""
 
+LARGEST = 100_000_000
+"""Bytes of a file; the parts list of a large board is a thousandth of it."""
+
 MOST_IN_A_RANGE = 10_000
 """``R1-R20000`` is a typing error."""
 
@@ -84,7 +87,7 @@ def read_parts_list(path: str | Path) -> PartsList:
     FileError : the file cannot be read.
     InputError : no row has the headings of a parts list, or the file is no CSV text, with the line.
     """
-    content, name = read_bytes(path)
+    content, name = read_bytes(path, limit=LARGEST)
     text = _decoded(content, name)
     delimiter, heading, columns, designators = _heading(text, name)
     parts: dict[str, ListedPart] = {}

@@ -22,6 +22,9 @@ A JSON report is what `protlint review --save before.json` wrote.
 Exit code: 0 the gate holds, 1 it does not, 2 the work could not be done.
 """
 
+LARGEST_REPORT = 500_000_000
+"""Bytes; a report is twice its netlist at most, of which 250 MB are read."""
+
 GATES = ("new:error", "new:warning", "new:note", "never")
 
 
@@ -78,7 +81,7 @@ def _report(path: str, reading: dict[str, Any]) -> dict[str, Any]:
 
 
 def _read_report(path: str) -> dict[str, Any]:
-    content, name = read_bytes(path)
+    content, name = read_bytes(path, limit=LARGEST_REPORT)
     try:
         report = json.loads(content)
     except json.JSONDecodeError as error:

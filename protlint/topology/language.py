@@ -22,6 +22,9 @@ __all__ = ["Described", "RuleErrors", "Rules", "load_rules", "read_rules"]
 ENDING = ".rule"
 """What a rule file's name ends in."""
 
+LARGEST_RULE_FILE = 4_000_000
+"""Bytes; what a person writes is a thousandth of it."""
+
 
 PART_WORDS = {"pass": "pass device", "driver": "driver", "sense": "sense resistor", "shunt": "shunt"}
 """The parts that sentences of faults speak of; any other name in them is a net's."""
@@ -81,7 +84,7 @@ def load_rules(extra_folders: Sequence[str | Path] = ()) -> Rules:
         if not paths:
             raise FileError(f"no file here ends in {ENDING}", file=shown_name(folder))
         for path in paths:
-            content, name = read_bytes(path)
+            content, name = read_bytes(path, limit=LARGEST_RULE_FILE)
             try:
                 texts[name] = content.decode("utf-8-sig")
             except UnicodeDecodeError as error:
