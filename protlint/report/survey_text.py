@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 from collections.abc import Iterable, Iterator, Sequence
 
 from protlint.report.behaviour import ROLE_WORDS
@@ -137,13 +138,25 @@ def _limiters(limiters: Sequence[Document], colour: bool) -> list[str]:
     if not limiters:
         return ["  none found"]
     lines: list[str] = []
+    shown: dict[str, str] = {}
     for place, limiter in enumerate(limiters):
         lines += [""] if place else []
-        lines += _limiter(limiter, colour)
+        figures = _figures(limiter)
+        like = shown.setdefault(figures, limiter["id"]) if figures is not None else limiter["id"]
+        lines += _limiter(limiter, colour, None if like == limiter["id"] else like)
     return lines
 
 
-def _limiter(limiter: Document, colour: bool) -> list[str]:
+def _figures(limiter: Document) -> str | None:
+    """Return what was solved for, apart from names, so that like channels are told once; None where nothing was."""
+    if limiter["held_short"] is None:
+        return None
+    states = [[value for key, value in device.items() if key != "device"] for device in limiter["held_short"]["devices"]]
+    moves = [[row["parameter"], row["relative"]] for row in limiter["sensitivities"]]
+    return json.dumps([limiter["topology"], limiter["polarity"], states, moves, limiter["loop"], limiter["loop_table"]])
+
+
+def _limiter(limiter: Document, colour: bool, like: str | None) -> list[str]:
     kind = f"{limiter['topology']}, {POLARITY_WORDS.get(limiter['polarity'], limiter['polarity'])}"
     lines = wrapped(f"{limiter['id']}: {kind}", indent=4, first="  ")
     lines = [painted(line, "heading", colour=colour) for line in lines]
@@ -166,6 +179,8 @@ def _limiter(limiter: Document, colour: bool) -> list[str]:
     lines += [line for need in limiter["missing"] for line in wrapped(f"missing: {need}", indent=6, first="    ")]
     if limiter["also_matched"]:
         lines += wrapped(f"also fits: {', '.join(limiter['also_matched'])}", indent=6, first="    ")
+    if like is not None:
+        return [*lines, *wrapped(f"currents, voltages and loop as {like}", indent=6, first="    ")]
     lines += _sensitivities(limiter["sensitivities"])
     lines += _states(limiter["held_short"])
     lines += _loop(limiter["loop"], limiter["loop_table"])

@@ -82,6 +82,17 @@ def test_it_shows_what_was_read_and_how_each_limiter_is_held() -> None:
         assert expected in text
 
 
+def test_figures_of_like_channels_are_told_once() -> None:
+    facts = survey(sample_review())
+    first = facts["limiters"][0]
+    other = {**first, "id": "Q77", "held_short": {**first["held_short"], "output_A": first["held_short"]["output_A"]}}
+    text = rendered_survey({**facts, "limiters": [first, other]})
+    assert text.count("in the held short") == 1
+    assert "currents, voltages and loop as Q10" in text
+    unlike = {**other, "sensitivities": []}
+    assert rendered_survey({**facts, "limiters": [first, unlike]}).count("in the held short") == 2
+
+
 @pytest.mark.parametrize("name", HOSTILE)
 def test_no_name_acts_in_survey_or_skeleton(name: str, tmp_path: Path) -> None:
     review = sample_review({**PLAIN, **dict.fromkeys(("pass", "sense", "out", "name"), name)})
