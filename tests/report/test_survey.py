@@ -87,10 +87,10 @@ def test_figures_of_like_channels_are_told_once() -> None:
     first = facts["limiters"][0]
     other = {**first, "id": "Q77", "held_short": {**first["held_short"], "output_A": first["held_short"]["output_A"]}}
     text = rendered_survey({**facts, "limiters": [first, other]})
-    assert text.count("in the held short") == 1
+    assert text.count("in the held short  current") == 1
     assert "currents, voltages and loop as Q10" in text
     unlike = {**other, "sensitivities": []}
-    assert rendered_survey({**facts, "limiters": [first, unlike]}).count("in the held short") == 2
+    assert rendered_survey({**facts, "limiters": [first, unlike]}).count("in the held short  current") == 2
 
 
 @pytest.mark.parametrize("name", HOSTILE)
