@@ -13,9 +13,12 @@ from protlint.checks.derating import STANDARDS
 from protlint.cli import commands
 from protlint.limits import load_limits
 from protlint.partdata.book import load_book
+from protlint.report.document import document
 from protlint.report.faces import FACES
+from protlint.report.shape import combined
 from tests.support.lamps import lamp_limits, lamp_netlist
 from tests.support.paths import ROOT
+from tests.support.sample_review import sample_review
 
 README = (ROOT / "README.md").read_text(encoding="utf-8")
 DEVELOPERS = (ROOT / "DEVELOPERS.md").read_text(encoding="utf-8")
@@ -82,6 +85,16 @@ def test_every_option_and_command_named_is_there() -> None:
     assert set(re.findall(r"`protlint ([a-z]+)", README + DEVELOPERS)) <= set(commands.commands)
     endings = re.findall(r"^\| `(\.[a-z]+)` \|", README, re.MULTILINE)
     assert endings == list(FACES)
+
+
+def test_every_key_of_the_json_report_named_is_there() -> None:
+    paragraph = README.split("The JSON report holds,")[1].split("\n\n")[0]
+    report = document(sample_review())
+    combination = combined([report])
+    known = {*report, *report["limiters"][0], *report["findings"][0], *combination}
+    named = set(re.findall(r"`(\w+)`", paragraph))
+    assert len(named) > 15
+    assert named <= known
 
 
 def test_every_file_named_to_developers_is_there() -> None:
