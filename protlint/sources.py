@@ -254,5 +254,6 @@ def load_toml(path: str | Path) -> TomlFile:
             raise InputError(f"not TOML: {error}", file=name) from None
         end = text.count("\n") + 1, len(text) - text.rfind("\n")
         line, column = (int(said[2]), int(said[3])) if said[2] else end
-        raise InputError(f"not TOML: {said[1]}", file=name, line=line, column=column) from None
+        names = re.sub(r"\((?:'[^()']*',? ?)+\)", lambda found: ".".join(re.findall(r"'([^']*)'", found[0])), said[1])
+        raise InputError(f"not TOML: {names}", file=name, line=line, column=column) from None
     return TomlFile(file=name, tables=tables, text=text)

@@ -43,6 +43,13 @@ def test_odd_content_is_one_clear_error(tmp_path: Path, content: bytes) -> None:
     assert "\n" not in str(caught.value)
 
 
+def test_a_table_that_stands_twice_is_named_as_people_write_it(tmp_path: Path) -> None:
+    path = tmp_path / "twice.toml"
+    path.write_text("[a.b]\n[a.b]\n", encoding="utf-8")
+    with pytest.raises(InputError, match=r"^twice\.toml:2:\d+: not TOML: Cannot declare a\.b twice$"):
+        load_toml(path)
+
+
 @given(content=st.binary(max_size=60) | st.text(alphabet="[]{}=\"'#.,\n ab1", max_size=40).map(lambda text: text.encode()))
 def test_any_bytes_are_tables_or_one_clear_error(tmp_path_factory: pytest.TempPathFactory, content: bytes) -> None:
     path = tmp_path_factory.mktemp("toml") / "any.toml"
