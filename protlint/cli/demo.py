@@ -9,7 +9,7 @@ import click
 
 from protlint.cli.options import PATH
 from protlint.cli.shell import say
-from protlint.sources import FileError, UsageError, data_folder, shown_name
+from protlint.sources import FileError, UsageError, data_folder, shown_name, write_whole
 
 EXAMPLES = """\b
 Example:
@@ -32,10 +32,10 @@ def demo(folder: str) -> int:
             raise UsageError("this file is there already; it is not written over", file=shown_name(target / path.name))
     try:
         target.mkdir(parents=True, exist_ok=True)
-        for path in files:
-            (target / path.name).write_bytes(path.read_bytes())
     except OSError as error:
         raise FileError(f"cannot be written ({error.strerror})", file=shown_name(folder)) from None
+    for path in files:
+        write_whole(target / path.name, path.read_bytes().decode("utf-8"))
     say(_what_next(target, [path.name for path in files]))
     return 0
 
