@@ -8,7 +8,7 @@ from typing import Any
 
 import click
 
-from protlint.cli.options import PATH, reading_options
+from protlint.cli.options import PATH, as_date, reading_options
 from protlint.cli.shell import colour_wanted, say
 from protlint.sources import InputError, UsageError, read_bytes, write_whole
 
@@ -33,6 +33,7 @@ GATES = ("new:error", "new:warning", "new:note", "never")
 @click.argument("after", type=PATH)
 @reading_options
 @click.option("--waivers", metavar="FILE", type=PATH, help="Findings that were looked at and accepted.")
+@click.option("--on", metavar="DATE", callback=as_date, help="Judge waivers as on this day.")
 @click.option("--save", metavar="FILE.json", type=PATH, help="Save the comparison too.")
 @click.option("--gate", type=click.Choice(GATES), default="new:error", show_default=True,
               help="The least level of a new finding that makes the exit code 1.")  # fmt: skip

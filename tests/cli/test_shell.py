@@ -135,6 +135,16 @@ def test_options_reach_the_review(reviewed: list[Any], capsys: pytest.CaptureFix
     }
 
 
+def test_the_day_that_waivers_are_judged_by_reaches_a_comparison(
+    reviewed: list[Any], capsys: pytest.CaptureFixture[str]
+) -> None:
+    assert run(commands, ["compare", "a.edf", "b.edf", "--waivers", "w.toml", "--on", "2027-01-02"]) == 0
+    assert [(arguments, given["on"].isoformat()) for arguments, given in reviewed] == [
+        (("a.edf",), "2027-01-02"),
+        (("b.edf",), "2027-01-02"),
+    ]
+
+
 def test_faces_are_saved_beside_the_text(reviewed: list[Any], tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     names = ("a.json", "a.sarif", "a.xml", "a.md")
     saves = [option for name in names for option in ("--save", str(tmp_path / name))]
