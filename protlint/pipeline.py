@@ -264,6 +264,10 @@ def _review_limiter(whole: _Whole, limiter: Limiter) -> tuple[ReviewedLimiter, C
         not_checked += [answer for answer in answers if isinstance(answer, NotChecked)]
         found = (answer for answer in answers if isinstance(answer, Finding))
         findings += _stamped(found, check, desk.catalogue, (needs.checks, desk.limits.checks))
+    if case.unbounded:
+        not_checked.append(NotChecked(UNSOLVED, case.drive_bound))
+        solution = Solution(not_solved=f"{FOR_WANT_OF}{case.drive_bound}", assumed=solution.assumed)
+        case = replace(case, solution=solution)
     reviewed = ReviewedLimiter(
         limiter=limiter,
         needs=needs,

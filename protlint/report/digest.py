@@ -191,9 +191,9 @@ def left_open(limiter: Document) -> list[Document]:
 
 
 def unsolved(limiter: Document) -> str:
-    """Return why a limiter was not solved: ``not solved for want of ...`` or ``not solved: ...``."""
+    """Return why a limiter was not solved, to follow a word that says so: ``for want of ...`` or ``: ...``."""
     why: str = limiter["not_solved"]
-    return f"not solved {why}" if why.startswith(FOR_WANT_OF) else f"not solved: {why}"
+    return f" {why}" if why.startswith(FOR_WANT_OF) else f": {why}"
 
 
 def _parts_together(needs: Mapping[str, str]) -> Iterator[tuple[str, str]]:

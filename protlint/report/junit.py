@@ -110,7 +110,7 @@ def _passed(suite: ElementTree.Element, limiter: Document, place: str, told: Col
             ElementTree.SubElement(suite, "testcase", name=check, classname=place)
     if limiter["not_solved"]:
         case = ElementTree.SubElement(suite, "testcase", name="solved", classname=place)
-        ElementTree.SubElement(case, "skipped", message=f"not judged, {unsolved(limiter)}")
+        ElementTree.SubElement(case, "skipped", message=f"not judged{unsolved(limiter)}")
 
 
 def _unread(root: ElementTree.Element, errors: Sequence[Document]) -> None:

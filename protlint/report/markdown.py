@@ -117,7 +117,7 @@ def _folded(title: str, lines: Sequence[str]) -> list[str]:
 def _not_checked(board: Document) -> list[str]:
     texts = [f"the board, for want of {need}" for need in unchecked(board["not_checked"])]
     for limiter in board["limiters"]:
-        texts += [f"{limiter['id']} was {unsolved(limiter)}"] if limiter["not_solved"] else []
+        texts += [f"{limiter['id']} was not solved{unsolved(limiter)}"] if limiter["not_solved"] else []
         texts += [f"{limiter['id']}, for want of {need}" for need in unchecked(left_open(limiter))]
     return texts
 

@@ -159,7 +159,7 @@ def _notifications(board: Document, artifact: Document, index_of: Mapping[str, i
     for limiter in board["limiters"]:
         notifications += (_unchecked(limiter["id"], row, index_of) for row in left_open(limiter))
         if limiter["not_solved"]:
-            text = f"{limiter['id']} was {unsolved(limiter)}."
+            text = f"{limiter['id']} was not solved{unsolved(limiter)}."
             notifications.append({"level": "warning", "message": message(text)})
     notifications += ({"level": "note", "message": message(f"Assumed: {text}.")} for text in board["assumed"])
     notifications += ({"level": "warning", "message": message(text)} for text in board["remarks"])

@@ -158,7 +158,7 @@ def _heading(limiter: Document, found: Sequence[Document], colour: bool) -> list
 def _why(limiter: Document, found: Sequence[Document]) -> str:
     """Name the errors, and what is carried and passed against what is needed, or else what is held."""
     if limiter["not_solved"]:
-        return f", {unsolved(limiter)}"
+        return unsolved(limiter)
     errors = dict.fromkeys(one["check"] for one in found if one["level"] == "error" and one["waived"] is None)
     names = f" {', '.join(errors)}" if errors else ""
     hand, needs, usual = limiter["in_hand"], limiter["needs"], limiter["currents"][len(limiter["currents"]) // 2]

@@ -71,7 +71,8 @@ def test_a_drive_that_nothing_bounds_is_said_once_and_nothing_is_made_of_its_fig
     )  # fmt: skip
     job = bare.limited("drive", "BASE", low="0 V", high="12 V").knowing("QSN1", model={"IS": 1e-14, "BF": 100.0})
     review = job.review()
-    assert the_one(review).solution.not_solved is None
+    assert the_one(review).solution.not_solved == "for want of [drive.BASE] current"
+    assert the_one(review).solution.currents == ()
     (one,) = found(review, "drive-unlimited")
     assert one.working == ()
     assert {check for check, needs in unchecked(review) if needs == "[drive.BASE] current"} >= {"pass-overheated"}

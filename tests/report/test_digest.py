@@ -47,8 +47,8 @@ def test_what_is_needed_is_told_once_keys_and_parts_together() -> None:
 @pytest.mark.parametrize(
     ("why", "told"),
     [
-        ("for want of a value of R1", "not solved for want of a value of R1"),
-        ("node N3 floats", "not solved: node N3 floats"),
+        ("for want of a value of R1", " for want of a value of R1"),
+        ("node N3 floats", ": node N3 floats"),
     ],
 )
 def test_why_a_limiter_was_not_solved_is_told_once(why: str, told: str) -> None:

@@ -33,6 +33,15 @@ def test_the_clean_board_leaves_nothing_unchecked() -> None:
     assert found.not_checked == found.remarks == ()
 
 
+def test_a_drive_that_nothing_bounds_gives_no_figures() -> None:
+    """A stiff drive straight onto junctions: by their law any current, so none is told."""
+    found = review(FIXTURES / "circuits" / "opamp-output-source-half.edf")
+    (one,) = found.limiters
+    assert (one.verdict, one.solution.currents, one.if_a_part_fails) == ("not judged", (), None)
+    assert ("currents", "[drive.B14] current") in {(left.check, left.needs) for left in one.not_checked}
+    assert [finding.check for finding in found.findings] == ["drive-unlimited"]
+
+
 def test_every_planted_fault_is_named_and_nothing_else() -> None:
     found = reviewed("demo", "slipway-lamps.edf")
     assert {(one.limiter, one.check, one.level) for one in found.findings} == PLANTED
