@@ -26,6 +26,9 @@ from protlint.report.shape import Document, boards_of
 MOST_CHARACTERS = 60_000
 """Code hosts cut or refuse comments of more than 65,536 characters."""
 
+MOST_ERRORS, MOST_UNREAD = 40, 50
+"""Errors, and files that could not be reviewed, as many as a table of boards is followed by."""
+
 BUDGETS = ((True, 10_000), (False, 10_000), (False, 60), (False, 12))
 """Tried in turn until the text is short enough: with or without working, and the most findings of a level to list."""
 
@@ -40,8 +43,37 @@ def rendered_markdown(report: Document) -> str:
         lines += _folded("Remarks", [f"- {text}" for text in safe["remarks"]]) if "boards" in safe else []
         text = "\n".join([*lines, f"_{safe['caution']}_"]) + "\n"
         if len(text) <= MOST_CHARACTERS:
+            return text
+    return _brief(safe)
+
+
+def _brief(report: Document) -> str:
+    """Return a table of the boards, the worst first, and the errors, as far as it all stays short."""
+    boards = sorted(boards_of(report), key=lambda board: [-board["summary"][f"{level}s"] for level in LEVELS])
+    counted = ("limiters", "errors", "warnings", "notes", "waived", "not_checked")
+    head = [
+        f"## protlint: {len(boards)} {'board' if len(boards) == 1 else 'boards'}",
+        "",
+        summary_line(report) + ".",
+        "",
+        f"| board | {' | '.join(name.replace('_', ' ') for name in counted)} |",
+        f"|{'---|' * (len(counted) + 1)}",
+    ]
+    errors = [one for board in boards for one in board["findings"] if one["level"] == "error" and one["waived"] is None]
+    listed = _findings("Errors", errors, False, MOST_ERRORS, folded=False)
+    if len("\n".join(listed)) > MOST_CHARACTERS // 2:
+        listed = []
+    foot = ["", *listed, *_unread(report.get("unread", [])[:MOST_UNREAD]), f"_{report['caution']}_"]
+    room = MOST_CHARACTERS - len("\n".join([*head, *foot])) - 100
+    rows: list[str] = []
+    for board in boards:
+        row = f"| {board['netlist']['file']} | {' | '.join(str(board['summary'][name]) for name in counted)} |"
+        room -= len(row) + 1
+        if room < 0:
             break
-    return text
+        rows.append(row)
+    more = [f"\nand {len(boards) - len(rows)} more boards; the JSON report has them all"] if len(rows) < len(boards) else []
+    return "\n".join([*head, *rows, *more, *foot]) + "\n"
 
 
 def finding_lines(finding: Document, *, working: bool = True) -> list[str]:

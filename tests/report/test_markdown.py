@@ -68,6 +68,22 @@ def test_boards_together(tmp_path: Path) -> None:
     assert {name.split(".")[0] for name in rendered_issues(report)} == {"a", "b"}
 
 
+def test_of_more_boards_than_a_comment_holds_a_table_is_left_the_worst_first() -> None:
+    one = document(sample_review(notes=30))
+    quiet = {**one, "findings": [], "summary": {**one["summary"], "errors": 0, "warnings": 0, "notes": 0}}
+    boards = [{**quiet, "netlist": {**one["netlist"], "file": f"quiet-{number}.edf"}} for number in range(3000)]
+    report = combined([*boards, one], [{"file": "broken.edf", "line": 3, "column": 9, "message": "not EDIF"}] * 100)
+    text = rendered_markdown(report)
+    assert len(text) <= MOST_CHARACTERS
+    assert "3101 boards" not in text and "## protlint: 3001 boards" in text
+    rows = [line for line in text.splitlines() if ".edf |" in line]
+    assert rows[0].startswith("| lamp.edf | 3 | 2 | 0 | 30 |")
+    assert f"and {3001 - len(rows)} more boards" in text
+    assert text.count("broken.edf:3:9") == 50
+    assert "### Errors (2)" in text
+    assert CAUTION in text
+
+
 def test_texts_of_boards_with_one_stem_are_told_apart_by_their_folders() -> None:
     boards = [document(sample_review({**PLAIN, "name": name})) for name in ("left/lamp.edf", "right/lamp.edf", "b.edf")]
     leads = {name.split(".")[0] for name in rendered_issues(combined(boards))}
