@@ -13,14 +13,15 @@ UNKNOWN = "-"
 
 MOST_DECIMALS = 3
 
-RATIO_DECIMALS = 4
+LEAST, LEAST_RATIO = 1e-18, 1e-4
+"""Of quantities with a unit (a thousandth of the least prefix) and of bare ratios: what is smaller prints as 0."""
 
 
 def figure(value: float | None, unit: str = "") -> str:
-    """Return a value with its unit as people write it, ``367 mA``, or a dash; a bare ratio four decimals at most."""
+    """Return a value with its unit as people write it, ``367 mA``, or a dash; what no prefix or ratio can tell from 0 is 0."""
     if value is None or not math.isfinite(value):
         return UNKNOWN
-    return format_quantity(value if unit or abs(value) >= 0.1**RATIO_DECIMALS else 0.0, unit)
+    return format_quantity(0.0 if abs(value) < (LEAST if unit else LEAST_RATIO) else value, unit)
 
 
 def current(value: float, beside: float | None, share: float = 1e-6) -> str:
