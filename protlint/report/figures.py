@@ -18,7 +18,7 @@ LEAST, LEAST_RATIO = 1e-18, 1e-4
 
 
 def figure(value: float | None, unit: str = "") -> str:
-    """Return a value with its unit as people write it, ``367 mA``, or a dash; what no prefix or ratio can tell from 0 is 0."""
+    """Return a value with its unit as people write it, ``367 mA``, or a dash; what is next to nothing is 0."""
     if value is None or not math.isfinite(value):
         return UNKNOWN
     return format_quantity(0.0 if abs(value) < (LEAST if unit else LEAST_RATIO) else value, unit)
