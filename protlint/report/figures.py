@@ -14,14 +14,16 @@ UNKNOWN = "-"
 MOST_DECIMALS = 3
 
 LEAST, LEAST_RATIO = 1e-18, 1e-4
-"""Of quantities with a unit (a thousandth of the least prefix) and of bare ratios: what is smaller prints as 0."""
+"""Of quantities that take prefixes (a thousandth of the least one) and of those that take none: less prints as 0."""
+
+PLAIN = ("", "%", "deg", "degC", "K")
 
 
 def figure(value: float | None, unit: str = "") -> str:
     """Return a value with its unit as people write it, ``367 mA``, or a dash; what is next to nothing is 0."""
     if value is None or not math.isfinite(value):
         return UNKNOWN
-    return format_quantity(0.0 if abs(value) < (LEAST if unit else LEAST_RATIO) else value, unit)
+    return format_quantity(0.0 if abs(value) < (LEAST_RATIO if unit in PLAIN else LEAST) else value, unit)
 
 
 def current(value: float, beside: float | None, share: float = 1e-6) -> str:

@@ -72,6 +72,7 @@ def test_a_sentence_begins_with_a_capital_and_a_name_as_it_is_written(message: s
         (figure(5.09e-14), "0"),
         (figure(4.66e-22, "W"), "0 W"),
         (figure(1.4e-14, "A"), "14 fA"),
+        (figure(-7.01e-6, "deg"), "0 deg"),
         (figure(0.223457), "0.223"),
         (figure(-0.0123), "-0.0123"),
         (format_ratio(0.0364), "0.036"),
