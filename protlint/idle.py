@@ -6,7 +6,7 @@ from collections.abc import Iterable, Iterator
 
 from protlint.board.graph import Board, BoardPart
 from protlint.limits import Limits, fits
-from protlint.toml_text import toml_key
+from protlint.toml.text import toml_key
 
 ON_THIS_BOARD = "on this board"
 """How such a remark ends; of several boards it counts only where it is made of all."""

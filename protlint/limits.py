@@ -13,8 +13,8 @@ from pathlib import Path
 from typing import Any
 
 from protlint.findings import LEVELS, Level
-from protlint.sources import load_toml
-from protlint.tables import Span, Table, nearest
+from protlint.toml.file import load_toml
+from protlint.toml.tables import Span, Table, nearest
 
 ATTRIBUTES = ("value", "part_number", "power", "tolerance", "footprint", "voltage")
 """What a property can tell of a part."""

@@ -13,9 +13,10 @@ from pathlib import Path
 
 from protlint.findings import Finding
 from protlint.limits import fits
-from protlint.sources import UsageError, load_toml, read_bytes, write_whole
-from protlint.tables import Table
-from protlint.toml_text import toml_string
+from protlint.sources import UsageError, read_bytes, write_whole
+from protlint.toml.file import load_toml
+from protlint.toml.tables import Table
+from protlint.toml.text import toml_string
 
 MATCHES_NOTHING = "this waiver matches nothing"
 """How the remark on an idle waiver ends; of several boards it counts only where it is idle on all."""

@@ -9,7 +9,8 @@ from pathlib import Path
 import pytest
 
 from protlint.board.parts_list import read_parts_list
-from protlint.sources import FileError, InputError, load_toml, read_bytes, shown_name, write_whole
+from protlint.sources import FileError, InputError, read_bytes, shown_name, write_whole
+from protlint.toml.file import load_toml
 
 
 @pytest.mark.parametrize(

@@ -24,9 +24,8 @@ FLOORS = (
     ("partdata",),
     ("limits",),
     ("findings",),
-    ("tables",),
+    ("toml",),
     ("quantities", "sources"),
-    ("toml_places", "toml_text"),
 )
 """Top to bottom; a module imports from its own room and from floors below."""
 

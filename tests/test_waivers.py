@@ -10,7 +10,7 @@ import pytest
 
 from protlint.findings import Finding, stamp_fingerprints
 from protlint.sources import InputError, UsageError
-from protlint.toml_text import toml_key, toml_string
+from protlint.toml.text import toml_key, toml_string
 from protlint.waivers import Waiver, add_waiver, apply_waivers, load_waivers
 
 FINDINGS = stamp_fingerprints(

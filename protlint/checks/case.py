@@ -20,7 +20,7 @@ from protlint.solve.circuit import Circuit, Device
 from protlint.solve.conditions import Condition, Known, solve_under
 from protlint.solve.memo import Memo
 from protlint.solve.solution import Currents, Point, Solution
-from protlint.toml_text import toml_key
+from protlint.toml.text import toml_key
 from protlint.topology.limiter import Limiter
 
 T = TypeVar("T")

@@ -9,7 +9,8 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 
 from protlint.findings import LEVELS, Level
-from protlint.sources import InputError, data_folder, load_toml
+from protlint.sources import InputError, data_folder
+from protlint.toml.file import load_toml
 
 
 @dataclass(frozen=True, slots=True)

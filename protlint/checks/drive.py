@@ -15,7 +15,7 @@ from protlint.limits import DriveLimits
 from protlint.quantities import format_quantity, preferred
 from protlint.solve.solution import Solution
 from protlint.solve.surroundings import Surroundings, survey_surroundings
-from protlint.toml_text import toml_key
+from protlint.toml.text import toml_key
 
 
 @dataclass(frozen=True, slots=True)

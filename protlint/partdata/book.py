@@ -12,8 +12,8 @@ from pathlib import Path
 from protlint.limits import pin_roles
 from protlint.partdata.identities import Contradiction, careful
 from protlint.partdata.ratings import MODEL_OF, RATINGS, RATINGS_OF, Figure
-from protlint.sources import load_toml
-from protlint.tables import Table
+from protlint.toml.file import load_toml
+from protlint.toml.tables import Table
 
 __all__ = ["Book", "Contradiction", "Figure", "HfePoint", "PartEntry", "SafeArea", "TransientPoint", "load_book"]
 

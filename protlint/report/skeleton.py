@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING
 from protlint.limits import CheckSetting, DriveLimits, LimiterLimits, Limits, Range, load_limits
 from protlint.report.safe import terminal
 from protlint.report.survey import ROLED_KINDS
-from protlint.toml_text import toml_key, toml_string
+from protlint.toml.text import toml_key, toml_string
 
 if TYPE_CHECKING:
     from protlint.pipeline import Review, ReviewedLimiter

@@ -11,7 +11,7 @@ from protlint.solve.boundary import Missing, Notes, Place, drive_of, hold_suppli
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.parts import devices_of
 from protlint.solve.surroundings import MOST_DEVICES, Surroundings, survey_surroundings
-from protlint.toml_text import toml_key
+from protlint.toml.text import toml_key
 from protlint.topology.limiter import Limiter
 
 LATCH = "others.latch"

@@ -12,7 +12,7 @@ from protlint.board.graph import Board
 from protlint.limits import DriveLimits, LimiterLimits, Limits, Range
 from protlint.solve.circuit import Drive
 from protlint.solve.surroundings import Surroundings, regulator_across
-from protlint.toml_text import toml_key
+from protlint.toml.text import toml_key
 from protlint.topology.limiter import Limiter
 
 FEED = " (feed)"

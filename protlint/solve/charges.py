@@ -32,7 +32,7 @@ from protlint.solve.devices import Array, Bipolars, transport
 from protlint.solve.lanes import junction_potential
 from protlint.solve.network import Group
 from protlint.solve.parameters import Bounds, within_bounds
-from protlint.toml_text import toml_key
+from protlint.toml.text import toml_key
 
 BIPOLAR: Final[Bounds] = {
     "CJE": (0.0, 0.0, 1e-3),

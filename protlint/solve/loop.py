@@ -22,7 +22,7 @@ from protlint.solve.solution import Loop, Worst
 from protlint.solve.stage import Run, Stage, sweep_stage
 from protlint.solve.wired import counting, linearise, look, wired_frequencies
 from protlint.solve.worst import find_worst, make_scope, opening_scene
-from protlint.toml_text import toml_key
+from protlint.toml.text import toml_key
 
 USUAL = 1
 """Place of the usual ambient among the three."""

@@ -9,7 +9,7 @@ from pathlib import Path
 
 from protlint.limits import Range
 from protlint.solve.circuit import Circuit, Device
-from protlint.toml_text import toml_key
+from protlint.toml.text import toml_key
 
 PORTS = {
     "npn": "C B E", "pnp": "C B E", "nmos": "D G S", "pmos": "D G S", "diode": "A K", "zener": "A K",

@@ -24,7 +24,7 @@ from protlint.limits import Limits, load_limits
 from protlint.netlist.model import Net, Netlist, Part, Pin, PinOnTwoNets, Property
 from protlint.partdata.book import load_book
 from protlint.pipeline import Desk, Review, ReviewedLimiter, review_netlist
-from protlint.toml_text import toml_key, toml_string
+from protlint.toml.text import toml_key, toml_string
 from protlint.topology.language import load_rules
 from tests.support.paths import FIXTURES
 

@@ -11,7 +11,8 @@ from dataclasses import dataclass
 from typing import Any
 
 from protlint.quantities import DIMENSIONS, read_any, read_quantity, read_range
-from protlint.sources import InputError, TomlFile
+from protlint.sources import InputError
+from protlint.toml.file import TomlFile
 
 Span = tuple[float, float, float]
 """Low, usual and high."""

@@ -10,7 +10,7 @@ from typing import Any
 from hypothesis import given
 from hypothesis import strategies as st
 
-from protlint.toml_places import key_places
+from protlint.toml.places import key_places
 from tests.support.paths import ROOT
 
 KEYS = st.one_of(

@@ -8,9 +8,10 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from protlint.sources import LARGEST_TOML, InputError, load_toml
-from protlint.tables import Table
-from protlint.toml_places import key_places
+from protlint.sources import InputError
+from protlint.toml.file import LARGEST_TOML, load_toml
+from protlint.toml.places import key_places
+from protlint.toml.tables import Table
 
 
 def test_a_key_has_its_line_and_column_and_an_unknown_one_that_of_its_holder(tmp_path: Path) -> None:
