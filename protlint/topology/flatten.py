@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass, replace
 from itertools import product
+from typing import Any
 
 from protlint.topology.mistakes import Mistakes
 from protlint.topology.terms import ANY, Body, Clause, Each, Either, Item, Rule, Shape, ShapeUse, Test
@@ -73,9 +74,10 @@ def resolve(rules: Mapping[str, Rule], mistakes: Mistakes) -> dict[str, Resolved
 def flatten(resolved: Resolved, shapes: Mapping[str, Shape], mistakes: Mistakes) -> list[Pattern]:
     """Return the flat patterns of a rule, its mirror images behind them."""
     patterns = []
+    bounded = _once_each(lambda item: _bounded(item, resolved.bounds))
     for labels, body in _expand(resolved.body, shapes, mistakes, ()):
         clauses, again = [], []
-        for item in (_bounded(item, resolved.bounds) for item in body.items):
+        for item in map(bounded, body.items):
             if isinstance(item, Clause):
                 clauses.append(item)
             elif isinstance(item, Each):
@@ -90,7 +92,22 @@ def flatten(resolved: Resolved, shapes: Mapping[str, Shape], mistakes: Mistakes)
                 resolved.nets,
             )
         )  # fmt: skip
-    return patterns + [_mirrored(one) for one in patterns] if resolved.mirrored else patterns
+    if not resolved.mirrored:
+        return patterns
+    mirrored = _once_each(lambda item: item.mirrored())
+    return patterns + [_mirrored(one, mirrored) for one in patterns]
+
+
+def _once_each(change: Callable[[Any], Any]) -> Callable[[Any], Any]:
+    """Return a change that is made once of each object: what alternatives are multiplied out of stands in many patterns."""
+    done: dict[int, tuple[Any, Any]] = {}
+
+    def changed(item: Any) -> Any:
+        if id(item) not in done:
+            done[id(item)] = item, change(item)
+        return done[id(item)][1]
+
+    return changed
 
 
 def _bounded(item: Item, bounds: Mapping[str, float]) -> Item:
@@ -103,17 +120,17 @@ def _bounded(item: Item, bounds: Mapping[str, float]) -> Item:
     return item
 
 
-def _mirrored(pattern: Pattern) -> Pattern:
+def _mirrored(pattern: Pattern, mirrored: Callable[[Any], Any]) -> Pattern:
     def tests(choices: tuple[tuple[str, tuple[Test, ...]], ...]) -> tuple[tuple[str, tuple[Test, ...]], ...]:
-        return tuple((name, tuple(test.mirrored() for test in asked)) for name, asked in choices)
+        return tuple((name, tuple(map(mirrored, asked))) for name, asked in choices)
 
     return replace(
         pattern,
         polarity="p",
-        clauses=tuple(one.mirrored() for one in pattern.clauses),
-        again=tuple(one.mirrored() for one in pattern.again),
-        may=tuple(one.mirrored() for one in pattern.may),
-        where=tuple(one.mirrored() for one in pattern.where),
+        clauses=tuple(map(mirrored, pattern.clauses)),
+        again=tuple(map(mirrored, pattern.again)),
+        may=tuple(map(mirrored, pattern.may)),
+        where=tuple(map(mirrored, pattern.where)),
         nets={net: tests(choices) for net, choices in pattern.nets.items()},
     )
 

@@ -96,11 +96,15 @@ class Clause:
     place: str | None = None
     when: tuple[Test, ...] = ()
     until_driven: bool = False
+    _nets: tuple[str, ...] = field(init=False, compare=False, repr=False)
+
+    def __post_init__(self) -> None:
+        names = self.ends if self.ends is not None else [net for _, net in self.pins]
+        object.__setattr__(self, "_nets", tuple([name for name in names if name != ANY]))
 
     def nets(self) -> tuple[str, ...]:
         """Return the net names it joins, ``any`` left out."""
-        names = self.ends if self.ends is not None else tuple(net for _, net in self.pins)
-        return tuple(name for name in names if name != ANY)
+        return self._nets
 
     def renamed(self, names: Mapping[str, str]) -> Clause:
         """Return the same clause joined to nets of other names."""
