@@ -11,6 +11,9 @@ from dataclasses import dataclass, field
 
 from protlint.limits import Range
 
+FEED = " (feed)"
+"""Behind a supply's name: the node of its own that a drive straight from that supply gets."""
+
 
 @dataclass(frozen=True, slots=True)
 class Device:

@@ -11,6 +11,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from protlint.solve.circuit import FEED, Drive
 from protlint.solve.constants import KELVIN
 from protlint.solve.corners import Axis, axes_of, held_voltages, variation
 from protlint.solve.dc import Operating, evaluate, solve_lanes
@@ -20,10 +21,13 @@ from protlint.solve.lanes import Lanes, Variation, known_voltages, parameters
 from protlint.solve.network import Network
 from protlint.solve.parameters import CircuitError
 from protlint.solve.solution import Point, State
+from protlint.toml.text import toml_key
 
 SWEEP_POINTS = 33
 LEAST_OUTPUT_A = 1e-6
 """A stage whose drive moves less than this drives nothing."""
+LEAST_CONTROL_SHARE = 1e-3
+"""Nor does a drive control a stage that moves its unlimited current by less than this share of it."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -122,6 +126,8 @@ def sweep_stage(
     greatest = float(ends[on_end])
     if abs(greatest) < LEAST_OUTPUT_A:
         raise CircuitError(f"the drive cannot turn the pass device on: {abs(greatest):.2g} A into the short at most")
+    if abs(float(ends[1] - ends[0])) < LEAST_CONTROL_SHARE * abs(greatest):
+        raise CircuitError(_uncontrolled(drive, abs(greatest)))
     way = 1.0 if greatest > 0.0 else -1.0
     run = replace(run, output_A=way * run.output_A)
     if on_end == 0:
@@ -131,6 +137,15 @@ def sweep_stage(
     if _forward_current(stage, sweep.full_drive(1))[usual] < LEAST_OUTPUT_A:
         raise CircuitError("the drive cannot turn the pass device on: it carries nothing in its forward sense")
     return replace(stage, on_end=on_end, way=way), sweep
+
+
+def _uncontrolled(drive: Drive, unlimited_A: float) -> str:
+    """Say that both ends of a drive give the same, and what would help."""
+    low_V, high_V, node = drive.low_V.usual, drive.high_V.usual, drive.node.removesuffix(FEED)
+    return (
+        f"the drive at {node} does not control the stage: at {low_V:g} V as at {high_V:g} V it passes {unlimited_A:.3g} A "
+        f"without the shunt; fit what pulls the pass device off, or state [drive.{toml_key(node)}] low and high"
+    )
 
 
 def _forward_current(stage: Stage, run: Run) -> Array:
