@@ -12,6 +12,9 @@ from protlint.findings import LEVELS, Level
 from protlint.sources import InputError, data_folder
 from protlint.toml.file import load_toml
 
+TEXTS = ("level", "says", "why", "formula", "source", "example")
+"""What every row states."""
+
 
 @dataclass(frozen=True, slots=True)
 class Threshold:
@@ -28,7 +31,7 @@ class CheckRow:
 
     ``level`` is the level of a finding that states none of its own; ``says`` what is wrong when the check fires, ``why``
     the reason to care, ``formula`` how it is computed, ``source`` where formula and thresholds were published (or
-    ``common practice of the trade``, or ``memory``).
+    ``common practice of the trade``, or ``memory``), ``example`` the board among protlint's examples that it fires on.
     """
 
     name: str
@@ -37,6 +40,7 @@ class CheckRow:
     why: str
     formula: str
     source: str
+    example: str
     thresholds: Mapping[str, Threshold]
 
 
@@ -51,7 +55,7 @@ def load_catalogue() -> Mapping[str, CheckRow]:
     rows = {}
     for name, table in document.tables.items():
         line, column = document.place((name,))
-        missing = [key for key in ("level", "says", "why", "formula", "source") if not isinstance(table.get(key), str)]
+        missing = [key for key in TEXTS if not isinstance(table.get(key), str)]
         if missing:
             raise InputError(f"check {name} lacks {', '.join(missing)}", file=document.file, line=line, column=column)
         if table["level"] not in LEVELS:
@@ -64,6 +68,7 @@ def load_catalogue() -> Mapping[str, CheckRow]:
             why=table["why"],
             formula=table["formula"],
             source=table["source"],
+            example=table["example"],
             thresholds={
                 key: Threshold(float(row["value"]), row.get("unit", ""), row["says"])
                 for key, row in table.get("thresholds", {}).items()

@@ -6,7 +6,7 @@ from collections.abc import Iterator
 
 from protlint.board.graph import Board, Element
 from protlint.checks.board_case import BoardAnswer, BoardCase
-from protlint.findings import Finding
+from protlint.findings import Finding, WorkingLine
 from protlint.solve.surroundings import CONTROL
 
 SENSE_OHM = 100.0
@@ -75,6 +75,13 @@ def _suspected(board: Board, element: Element, other: Element) -> Finding:
         parts=tuple(part.id for part in parts),
         message=f"{parts[0].id} and {parts[1].id} lie as a limiter's pass device and shunt do, but nobody knows which pin "
         f"of {names} is which",
+        working=tuple(
+            WorkingLine(
+                f"{part.id} pin {pin.number or pin.name}", f"on {board.nets[pin.net].name}, its role not known", None, ""
+            )
+            for part in unknown
+            for pin in part.part.pins
+        ),
         remedy=f"state the roles of its pins in {keys} of the limits file or in its part data",
         level="warning",
     )

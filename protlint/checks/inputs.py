@@ -22,7 +22,13 @@ def value_unreadable(case: Case) -> Iterator[Answer]:
             "value-unreadable",
             f"{part_id} {said}{why}",
             parts=(part_id,),
-            working=(),
+            working=(
+                WorkingLine(
+                    f"value of {part_id}", f'"{text}" is no IEC 60062 code and no number with an SI prefix', None, ""
+                ),
+            )
+            if text
+            else (),
             remedy=f"write the value of {part_id} as a number with its unit (4k7, 0.22R, 100n)",
             subject=part_id,
         )
@@ -35,11 +41,14 @@ def part_data_missing(case: Case) -> Iterator[Answer]:
         if part.kind == "resistor" or part.entry is not None:
             continue
         number = f"part number {part.part_number}" if part.part_number else "no part number"
+        own = f"{part_id}: "
+        taken = [said.removeprefix(own) for about, said in case.bench.assumed if about == "model" and said.startswith(own)]
+        instead = "figures usual for its kind were taken, with a wide spread" if taken else "no figure of it is known"
         yield case.finding(
             "part-data-missing",
-            f"{part_id} ({number}) is in no part data: figures usual for its kind were taken, with a wide spread",
+            f"{part_id} ({number}) is in no part data: {instead}",
             parts=(part_id,),
-            working=(),
+            working=tuple(WorkingLine(f"taken for {part_id}", said, None, "") for said in taken),
             remedy="add its ratings to a part-data file and give it with --parts"
             if part.part_number
             else f"give {part_id} a part number",
@@ -58,7 +67,12 @@ def pins_unknown(case: Case) -> Iterator[Answer]:
             "pins-unknown",
             f"the roles of the pins of {part.id} are not known (its pins: {pins})",
             parts=(part.id,),
-            working=(),
+            working=tuple(
+                WorkingLine(
+                    f"pin {pin.number or pin.name}", f"on {case.board.nets[pin.net].name}, its role not known", None, ""
+                )
+                for pin in part.part.pins
+            ),
             remedy=f"state them in [pins.{part.part_number or part.part.cell}] of the limits file or in its part data",
             subject=part.id,
         )
@@ -78,7 +92,7 @@ def pin_on_two_nets(case: Case) -> Iterator[Answer]:
             f"pin {doubt.pin} of {part.id} is joined to {first} and to {second}; they were taken for one net",
             parts=(part.id,),
             nets=(first, second),
-            working=(),
+            working=(WorkingLine(f"{part.id}.{doubt.pin}", f"listed under {first} and under {second}", None, ""),),
             remedy=f"join pin {doubt.pin} of {part.id} to one net only, or name the two alike",
             subject=f"{part.id} {doubt.pin}",
         )
@@ -94,7 +108,10 @@ def part_data_contradicts(case: Case) -> Iterator[Answer]:
                 f"{part_id}: the netlist gives its {one.attribute.replace('_', ' ')} as {one.netlist}, the parts list "
                 f"({one.file}:{one.line}) as {one.parts_list}; the netlist counts here",
                 parts=(part_id,),
-                working=(),
+                working=(
+                    WorkingLine("netlist", one.netlist, None, ""),
+                    WorkingLine("parts list", one.parts_list, None, "", f"{one.file}:{one.line}"),
+                ),
                 remedy=f"make {one.attribute.replace('_', ' ')} of {part_id} {one.netlist} in both, or {one.parts_list}",
                 level="warning",
                 subject=f"{part_id} {one.attribute}",

@@ -3,11 +3,15 @@
 from __future__ import annotations
 
 import difflib
+from typing import TYPE_CHECKING
 
 import click
 
 from protlint.cli.options import PATH
 from protlint.cli.shell import colour_wanted, say
+
+if TYPE_CHECKING:
+    from protlint.checks.catalogue import CheckRow
 
 EXAMPLES = """\b
 Examples:
@@ -35,18 +39,25 @@ def rules(name: str | None, folders: tuple[str, ...]) -> int:
         near = difflib.get_close_matches(name, names, n=1, cutoff=0.5)
         hint = f"did you mean {near[0]}?" if near else "`protlint rules` lists them all"
         raise click.UsageError(f"no topology, fault or check is called {name!r}: {hint}")
-    say(rendered_rule(name, known, catalogue, colour=colour_wanted()) + (_example(name) if name in catalogue else ""))
+    say(
+        rendered_rule(name, known, catalogue, colour=colour_wanted())
+        + (_example(catalogue[name]) if name in catalogue else "")
+    )
     return 0
 
 
-def _example(name: str) -> str:
-    """Return a check's working on the demo board, or nothing where it finds nothing there."""
+def _example(row: CheckRow) -> str:
+    """Return what a check says of its example board, which is reviewed for it."""
     from protlint import pipeline
     from protlint.report.rules_text import rendered_example
     from protlint.sources import data_folder
 
-    folder = data_folder("demo", "fixtures/demo")
-    board = next(iter(sorted(folder.glob("*.edf"))))
-    review = pipeline.review(board, limits=folder / "limits.toml", parts=(folder / "parts.toml",))
-    found = next((finding for finding in review.findings if finding.check == name), None)
-    return "" if found is None else f"\n{rendered_example(found)}"
+    folder = data_folder("examples", "fixtures/examples")
+    listed = folder / f"{row.example}.csv"
+    review = pipeline.review(
+        folder / f"{row.example}.edf",
+        limits=folder / f"{row.example}.toml",
+        parts=folder / "parts.toml",
+        parts_list=listed if listed.exists() else None,
+    )
+    return "\n" + rendered_example(row, next(finding for finding in review.findings if finding.check == row.name))

@@ -88,9 +88,10 @@ def times(count: int) -> str:
 
 
 def working_line(line: Document) -> str:
-    """Return one line of a calculation: what, how much, and from what."""
+    """Return one line of a calculation: what, how much where it is a figure, and from what."""
     source = f" ({line['source']})" if line["source"] else ""
-    return f"{line['quantity']}: {figure(line['value'], line['unit'])}, {line['formula']}{source}"
+    value = f"{figure(line['value'], line['unit'])}, " if line["value"] is not None else ""
+    return f"{line['quantity']}: {value}{line['formula']}{source}"
 
 
 def listed(names: Sequence[str], most: int = MOST_NAMES) -> str:

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import asdict
 from typing import TYPE_CHECKING
 
 from protlint.checks.catalogue import CheckRow
 from protlint.findings import Finding
+from protlint.report.digest import working_line
 from protlint.report.figures import figure
 from protlint.report.layout import painted, width, wrapped
 from protlint.report.safe import terminal
@@ -48,13 +50,11 @@ def rendered_rule(name: str, rules: Rules, catalogue: Mapping[str, CheckRow], *,
     return "\n\n".join("\n".join(block) for block in blocks) + "\n"
 
 
-def rendered_example(finding: Finding) -> str:
-    """Return what a check said of the demo board, with its working filled in."""
-    lines = _fact("example", f"on the demo board, which is invented: {finding.message}")
+def rendered_example(row: CheckRow, finding: Finding) -> str:
+    """Return what a check said of its example board, with its working filled in."""
+    lines = _fact("example", f"on {row.example}.edf, an invented board: {finding.message}")
     for line in finding.working:
-        source = f" ({line.source})" if line.source else ""
-        text = f"{line.quantity}: {figure(line.value, line.unit)}, {line.formula}{source}"
-        lines += wrapped(terminal(text), indent=16, first=" " * 14)
+        lines += wrapped(terminal(working_line(asdict(line))), indent=16, first=" " * 14)
     if finding.remedy:
         lines += wrapped(f"remedy: {terminal(finding.remedy)}", indent=16, first=" " * 14)
     return "\n".join(lines) + "\n"

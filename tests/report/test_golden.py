@@ -34,6 +34,7 @@ ROW = CheckRow(
     why="the load starves",
     formula="low end of carries < carry",
     source="common practice of the trade",
+    example="bare-sink",
     thresholds={"small": Threshold(1.0, "V", "below this it is a note")},
 )
 """A catalogue of one check, so that a new check does not change these files."""

@@ -19,7 +19,7 @@ from tests.support.paths import ROOT
 def wheel(tmp_path_factory: pytest.TempPathFactory) -> Path:
     """Build the wheel from a copy of the checkout; skip, loudly, where the build tools cannot be had."""
     folder = tmp_path_factory.mktemp("wheel")
-    kept = ("protlint", "rules", "fixtures/demo", "README.md", "pyproject.toml")
+    kept = ("protlint", "rules", "fixtures/demo", "fixtures/examples", "README.md", "pyproject.toml")
     for name in kept:
         source, target = ROOT / name, folder / "source" / name
         target.parent.mkdir(parents=True, exist_ok=True)
@@ -56,6 +56,7 @@ def test_a_wheel_in_an_empty_folder_works(wheel: Path, tmp_path: Path) -> None:
     assert reviewed.returncode == 1, reviewed.stderr
     assert (empty / "review.json").exists()
     assert "emitter-sensed" in run("rules").stdout
+    assert "on worn-sink.edf" in run("rules", "base-stop-low").stdout
 
 
 def test_the_installation_under_test_reads_the_checkouts_own_rules() -> None:
