@@ -9,7 +9,7 @@ from pathlib import Path
 from typing import Literal
 
 from protlint.board.attributes import file_habits
-from protlint.board.graph import Board, BoardPart, build_board
+from protlint.board.graph import Board, build_board
 from protlint.board.parts_list import Difference, PartsList, differences, read_parts_list
 from protlint.checks.board_case import BoardCase
 from protlint.checks.case import Case
@@ -108,7 +108,6 @@ class _Whole:
 
     board: Board
     desk: Desk
-    parts_by_id: Mapping[str, BoardPart]
     differences: Mapping[str, tuple[Difference, ...]]
     solved: Memo = field(default_factory=Memo)
     known: Known = field(default_factory=Known)
@@ -188,7 +187,7 @@ def _reviewed(netlist: Netlist, desk: Desk) -> Review:
     reviewed: list[ReviewedLimiter] = []
     findings: list[Finding] = []
     cases: dict[str, Case] = {}
-    shared = _Whole(board, desk, {part.id: part for part in board.parts}, _differences(board, desk))
+    shared = _Whole(board, desk, _differences(board, desk))
     for limiter in found.limiters:
         one, case, its_findings = _review_limiter(shared, limiter)
         reviewed.append(one)
@@ -246,7 +245,6 @@ def _review_limiter(whole: _Whole, limiter: Limiter) -> tuple[ReviewedLimiter, C
         desk.limits,
         desk.catalogue,
         differences=whole.differences,
-        parts_by_id=whole.parts_by_id,
         known=whole.known,
         solved=whole.solved,
     )
@@ -350,8 +348,9 @@ def _placed(board: Board, finding: Finding) -> Finding:
     """Give a finding the place in the netlist where its first part stands."""
     if finding.file is not None:
         return finding
-    part = next((one.part for one in board.parts if one.id == finding.parts[0]), None) if finding.parts else None
-    return replace(finding, file=board.netlist.file, line=part.line if part else None, column=part.column if part else None)
+    found = board.part_of.get(finding.parts[0]) if finding.parts else None
+    line, column = (None, None) if found is None else (found.part.line, found.part.column)
+    return replace(finding, file=board.netlist.file, line=line, column=column)
 
 
 def _rank(finding: Finding) -> int:

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import cached_property
 from typing import TYPE_CHECKING
 
 from protlint.limits import Limits, Range
@@ -109,7 +110,7 @@ class Element:
     tree: object
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class Board:
     """The whole board. ``elements_at[n]`` lists (element index, role) on net n; not-fitted parts and links are in none."""
 
@@ -120,21 +121,39 @@ class Board:
     elements_at: tuple[tuple[tuple[int, str], ...], ...]
     assumed: tuple[str, ...] = ()
 
+    @cached_property
+    def part_of(self) -> Mapping[str, BoardPart]:
+        """The parts by id."""
+        return {part.id: part for part in self.parts}
+
+    @cached_property
+    def supplies(self) -> tuple[BoardNet, ...]:
+        """The nets that are held at a voltage."""
+        return tuple(net for net in self.nets if net.supply is not None)
+
+    @cached_property
+    def net_names(self) -> tuple[str, ...]:
+        """One name for every net, unlike any other's: a second net of a name is called ``name (2)``."""
+        count: dict[str, int] = {}
+        names = []
+        for net in self.nets:
+            name = net.names[0]
+            count[name] = count.get(name, 0) + 1
+            names.append(name if count[name] == 1 else f"{name} ({count[name]})")
+        return tuple(names)
+
     def graph(self) -> nx.MultiGraph[object]:
         """Return the public graph: nodes ``("part", id)`` and ``("net", name)``, one edge per pin, the pin as its key.
 
-        Node attributes are ``kind`` for a part and ``names`` for a net; an edge's key is the terminal's role or the pin's
-        name. A second net of one name is called ``name (2)``.
+        A net goes by its name in ``net_names``. Node attributes are ``kind`` for a part and ``names`` for a net; an edge's
+        key is the terminal's role or the pin's name.
         """
         import networkx as nx
 
         graph: nx.MultiGraph[object] = nx.MultiGraph()
         for part in self.parts:
             graph.add_node(("part", part.id), kind=part.kind)
-        count: dict[str, int] = {}
-        for net in self.nets:
-            count[net.name] = count.get(net.name, 0) + 1
-            name = net.name if count[net.name] == 1 else f"{net.name} ({count[net.name]})"
+        for net, name in zip(self.nets, self.net_names, strict=True):
             graph.add_node(("net", name), names=net.names)
             for part_index, role in net.pins:
                 graph.add_edge(("part", self.parts[part_index].id), ("net", name), key=role)

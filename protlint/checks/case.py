@@ -15,8 +15,7 @@ from protlint.findings import Finding, Level, NotChecked, WorkingLine
 from protlint.limits import UNSTATED, CheckSetting, LimiterLimits, Limits, Range
 from protlint.partdata.book import Figure
 from protlint.solve.bench import LATCH, TRIPPED_S, Bench
-from protlint.solve.boundary import FEED
-from protlint.solve.circuit import Circuit, Device
+from protlint.solve.circuit import FEED, Circuit, Device
 from protlint.solve.conditions import Condition, Known, solve_under
 from protlint.solve.memo import Memo
 from protlint.solve.solution import Currents, Point, Solution
@@ -42,8 +41,8 @@ VOLTAGES = ("drive", "short", "supply", "circuit")
 class Case:
     """One limiter before the checks.
 
-    ``rows`` is the catalogue, ``differences`` what a parts list says otherwise than the netlist, by part id; ``parts_by_id``
-    may be given so that it is made once for a board. ``assumptions`` collects what a check had to assume besides.
+    ``rows`` is the catalogue, ``differences`` what a parts list says otherwise than the netlist, by part id.
+    ``assumptions`` collects what a check had to assume besides.
     """
 
     board: Board
@@ -54,7 +53,6 @@ class Case:
     limits: Limits
     rows: Mapping[str, CheckRow]
     differences: Mapping[str, tuple[Difference, ...]] = field(default_factory=dict)
-    parts_by_id: Mapping[str, BoardPart] = field(default_factory=dict)
     assumptions: list[str] = field(default_factory=list)
     known: Known = field(default_factory=Known)
     solved: Memo = field(default_factory=Memo)
@@ -85,8 +83,7 @@ class Case:
 
     def part(self, part_id: str) -> BoardPart:
         """Return a part of the board by id."""
-        known = self.parts_by_id.get(part_id)
-        return known if known is not None else next(part for part in self.board.parts if part.id == part_id)
+        return self.board.part_of[part_id]
 
     def under(self, conditions: Sequence[Condition]) -> tuple[Point | None, ...]:
         """Return the circuit's operating points under conditions.

@@ -57,8 +57,8 @@ def fuses_upstream(case: Case) -> tuple[str, ...]:
     """Return the ids of the fuses in the load current's way: at either end of the stage, and at the short."""
     board, limiter = case.board, case.limiter
     ends = [net for net in (limiter.nets["far"], limiter.bound.get("load")) if net is not None]
-    short = [net.index for net in board.nets if net.supply is not None and net.name == case.solution.short]
-    grounds = {net.index for net in board.nets if net.supply is not None and net.supply.voltage_V.usual == 0.0}
+    short = [net.index for net in board.supplies if net.name == case.solution.short]
+    grounds = {net.index for net in board.supplies if net.supply and net.supply.voltage_V.usual == 0.0}
     found = {index for net in (*ends, *short) if net not in grounds for index, _ in board.elements_at[net]}
     fuses = (board.elements[index] for index in sorted(found) if board.elements[index].kind == "fuse")
     return tuple(board.parts[part].id for fuse in fuses for part in fuse.parts)

@@ -6,13 +6,13 @@ from collections.abc import Collection, Iterator
 from dataclasses import dataclass
 
 from protlint.board.graph import Board, Element
+from protlint.board.regulators import regulator_across
 from protlint.checks.board_case import BoardAnswer, BoardCase, Unanswered
 from protlint.checks.case import ALL_ASSUMPTIONS, Case
 from protlint.checks.likeness import usual_holds_A
 from protlint.checks.sizing import greatest_most_A
 from protlint.findings import Finding, Level, NotChecked, WorkingLine
 from protlint.quantities import format_quantity, preferred
-from protlint.solve.surroundings import regulator_across
 
 LONGEST = 3
 """Parts in a row that are followed from the output to a supply."""
@@ -143,7 +143,7 @@ def roads(case: Case, short_V: float, least_A: float, guarded: Collection[int]) 
     board, output = case.board, case.limiter.nets["output"]
     assert output is not None
     sign = 1.0 if _sources(case) else -1.0
-    reach_V = max((sign * (net.supply.voltage_V.usual - short_V) for net in board.nets if net.supply), default=0.0)
+    reach_V = max((sign * (net.supply.voltage_V.usual - short_V) for net in board.supplies if net.supply), default=0.0)
     solved = set(case.bench.element_of.values())
     stack: list[tuple[int, tuple[Element, ...], tuple[str, ...]]] = [(output, (), ())]
     while stack:

@@ -55,7 +55,7 @@ def _changed(match: FaultMatch) -> list[str]:
 def _working(board: Board, match: FaultMatch) -> tuple[WorkingLine, ...]:
     """Say of every connection that is wrong where it is and where it belongs."""
     changed = set(_changed(match))
-    parts = {part.id: part for part in board.parts if part.id in changed}
+    parts = {part: board.part_of[part] for part in changed}
     lines = []
     for one, other in match.exchange:
         nets = [board.nets[parts[part].roles[pin]].name for part, pin in (one, other)]
@@ -65,14 +65,9 @@ def _working(board: Board, match: FaultMatch) -> tuple[WorkingLine, ...]:
     for part, kind in match.replaces:
         lines.append(WorkingLine(part, f"of kind {_kind(parts[part])}; the place takes {_article(kind)}", None, ""))
     for part in match.parts_ends:
-        nets = list(dict.fromkeys(board.nets[net].name for net in _part(board, part).roles.values()))
+        nets = list(dict.fromkeys(board.nets[net].name for net in board.part_of[part].roles.values()))
         lines.append(WorkingLine(f"drop across {part}", f"both ends on {', '.join(nets)}", 0.0, "V"))
     return tuple(lines)
-
-
-def _part(board: Board, part_id: str) -> BoardPart:
-    """Return a part of the board by id."""
-    return next(part for part in board.parts if part.id == part_id)
 
 
 def _line(connection: tuple[str, str], now: str, then: str) -> WorkingLine:

@@ -7,7 +7,7 @@ bytes of a report; what is not finite or not known is null. ``review-1.schema.js
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from protlint import __version__
@@ -32,9 +32,8 @@ UNIT_OF_KIND = {"resistor": "ohm", "capacitor": "F", "inductor": "H", "zener": "
 
 def document(review: Review) -> Document:
     """Return the JSON report of one netlist, version 1: every promised key, null where unknown."""
-    by_id = {part.id: part for part in review.board.parts}
-    limiters = [_limiter(item, review, by_id) for item in review.limiters]
-    findings = [_finding(finding, by_id) for finding in review.findings]
+    limiters = [_limiter(item, review) for item in review.limiters]
+    findings = [_finding(finding, review.board) for finding in review.findings]
     not_checked = [_unchecked(row) for row in review.not_checked]
     netlist = review.board.netlist
     return {
@@ -63,7 +62,7 @@ def document(review: Review) -> Document:
     }
 
 
-def _limiter(item: ReviewedLimiter, review: Review, by_id: Mapping[str, BoardPart]) -> Document:
+def _limiter(item: ReviewedLimiter, review: Review) -> Document:
     limiter = item.limiter
     worked_out = answers(item, review.limits.ambient_degC)
     return {
@@ -73,7 +72,7 @@ def _limiter(item: ReviewedLimiter, review: Review, by_id: Mapping[str, BoardPar
         "verdict": item.verdict,
         "roles": {role: list(limiter.roles.get(role, ())) for role in ROLES},
         "nets": {net: _net_name(review.board, limiter.nets.get(net)) for net in NETS},
-        "parts": _parts(item, by_id),
+        "parts": _parts(item, review.board),
         "needs": _needs(item.needs),
         "in_hand": _in_hand(item.needs, worked_out["currents"]),
         **worked_out,
@@ -127,12 +126,12 @@ def _needs(needs: LimiterLimits) -> Document:
     }
 
 
-def _parts(item: ReviewedLimiter, by_id: Mapping[str, BoardPart]) -> list[Document]:
+def _parts(item: ReviewedLimiter, board: Board) -> list[Document]:
     """List the limiter's parts once each, in the order of the roles, with what is known of them."""
     listed: dict[str, Document] = {}
     for role in ROLES:
         for name in item.limiter.roles.get(role, ()):
-            part = by_id.get(name)
+            part = board.part_of.get(name)
             listed.setdefault(
                 name,
                 {
@@ -152,7 +151,7 @@ def _parts(item: ReviewedLimiter, by_id: Mapping[str, BoardPart]) -> list[Docume
     return list(listed.values())
 
 
-def _finding(finding: Finding, by_id: Mapping[str, BoardPart]) -> Document:
+def _finding(finding: Finding, board: Board) -> Document:
     return {
         "check": finding.check,
         "level": finding.level or "warning",
@@ -166,7 +165,7 @@ def _finding(finding: Finding, by_id: Mapping[str, BoardPart]) -> Document:
         "file": finding.file,
         "line": finding.line,
         "column": finding.column,
-        "places": [_place(by_id[name]) for name in dict.fromkeys(finding.parts) if name in by_id],
+        "places": [_place(board.part_of[name]) for name in dict.fromkeys(finding.parts) if name in board.part_of],
         "fingerprint": finding.fingerprint,
         "waived": finding.waived,
         "waived_by": finding.waived_by,

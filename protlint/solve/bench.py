@@ -10,7 +10,7 @@ from protlint.limits import LimiterLimits, Limits
 from protlint.solve.boundary import Missing, Notes, Place, drive_of, hold_supplies, short_nodes
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.parts import devices_of
-from protlint.solve.surroundings import MOST_DEVICES, Surroundings, survey_surroundings
+from protlint.solve.surroundings import MOST_DEVICES, survey_surroundings
 from protlint.toml.text import toml_key
 from protlint.topology.limiter import Limiter
 
@@ -46,7 +46,7 @@ class Bench:
 def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: LimiterLimits) -> Bench:
     """Return the circuit of a limiter as it stands on its board, or what is missing for it."""
     around = survey_surroundings(board, limiter, limits)
-    place = Place(board, limiter, around, limits, needs, _node_names(board, limiter, around))
+    place = Place(board, limiter, around, limits, needs)
     if len(around.elements) > MOST_DEVICES:
         return Bench(None, (_too_large(place),))
     notes = Notes(assumed=[("circuit", sentence) for sentence in (*around.left_out, *_latching(place))])
@@ -97,16 +97,6 @@ def _too_large(place: Place) -> Missing:
     net = place.limiter.nets["drive"]
     name = "?" if net is None else place.board.nets[net].name
     return Missing("circuit", None, f"[drive.{toml_key(name)}]: more than {MOST_DEVICES} parts hang on this drive")
-
-
-def _node_names(board: Board, limiter: Limiter, around: Surroundings) -> dict[int, str]:
-    """Return a node name for every net of the board, the net's own; a second net of one name gets a number behind it."""
-    names: dict[int, str] = {}
-    count: dict[str, int] = {}
-    for net in board.nets:
-        count[net.name] = count.get(net.name, 0) + 1
-        names[net.index] = net.name if count[net.name] == 1 else f"{net.name} ({count[net.name]})"
-    return names
 
 
 def _nodes(place: Place, index: int, feed: int | None, feed_node: str) -> dict[str, str]:

@@ -5,18 +5,16 @@ Every function writes what it assumed, what it lacks and what holds each net int
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 
 from protlint.board.graph import Board
+from protlint.board.regulators import regulator_across
 from protlint.limits import DriveLimits, LimiterLimits, Limits, Range
-from protlint.solve.circuit import Drive
-from protlint.solve.surroundings import Surroundings, regulator_across
+from protlint.solve.circuit import FEED, Drive
+from protlint.solve.surroundings import Surroundings
 from protlint.toml.text import toml_key
 from protlint.topology.limiter import Limiter
-
-FEED = " (feed)"
-"""Behind a supply's name: the node of its own that a drive straight from that supply gets."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -49,7 +47,11 @@ class Place:
     around: Surroundings
     limits: Limits
     needs: LimiterLimits
-    node_of: dict[int, str]
+
+    @property
+    def node_of(self) -> Sequence[str]:
+        """The node that stands for each net of the board: the nets' own names."""
+        return self.board.net_names
 
     def usual_V(self, net: int) -> float | None:
         """Return a net's usual voltage where it is a supply."""
@@ -98,7 +100,7 @@ def _hold_elsewhere(place: Place, name: str, held: dict[str, Range], notes: Note
 
 def ground_net(board: Board) -> int | None:
     """Return the 0 V net with the most pins, or None where the board has none."""
-    grounds = [(-len(net.pins), net.index) for net in board.nets if net.supply and net.supply.voltage_V.usual == 0.0]
+    grounds = [(-len(net.pins), net.index) for net in board.supplies if net.supply and net.supply.voltage_V.usual == 0.0]
     return min(grounds)[1] if grounds else None
 
 
@@ -141,7 +143,7 @@ def short_nodes(place: Place, held: dict[str, Range], notes: Notes) -> tuple[str
         return ("0 V",)
     beyond = {
         net.index: abs(net.supply.voltage_V.usual - from_V)
-        for net in board.nets
+        for net in board.supplies
         if net.supply and sign * (from_V - net.supply.voltage_V.usual) > 0.0
     }
     loaded = beyond.keys() & _nets_behind_loads(place)
@@ -170,7 +172,7 @@ def _stated_shorts(place: Place, held: dict[str, Range], notes: Notes, draws: Ca
     """Return the nodes of the supplies that ``shorted_to`` names; ``draws`` tells whether one at a voltage draws current."""
     nodes = []
     for name in place.needs.shorted_to:
-        nets = [net.index for net in place.board.nets if name in net.names and net.supply is not None]
+        nets = [net.index for net in place.board.supplies if name in net.names]
         if nets:
             nodes.append(_hold(place, nets[0], held, notes))
         elif name in place.limits.supplies_V:
@@ -199,10 +201,8 @@ def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive 
     lowest, highest = Range(lowest_V, lowest_V, lowest_V), Range(highest_V, highest_V, highest_V)
     if around.drive is not None:
         regulator = regulator_across(board, around.drive, around.output)
-        if regulator is not None and (around.drive_entry is None or around.drive_entry.current_A is None):
-            key = f"[drive.{toml_key(board.nets[around.drive].name)}] current"
-            notes.missing.append(Missing("drive", None, f"{key}: the most that {board.parts[regulator].id} draws"))
-            return None, None
+        if regulator is not None:
+            return _drawn_by(place, regulator, lowest, highest, notes), None
         return _driven(place, lowest, highest, notes), None
     if around.fed_by is not None:
         supply = board.nets[around.fed_by].supply
@@ -226,7 +226,7 @@ def _driven(place: Place, lowest: Range, highest: Range, notes: Notes) -> Drive:
     net = place.around.drive
     assert net is not None
     node = place.node_of[net]
-    entry = place.around.drive_entry or _driver_entry(place)
+    entry = place.around.drive_entry or _driver_entry(place, [index for index, _ in place.around.drive_pins])
     own = _own_supplies(place, ("ic",))
     if len({one.usual for one in own}) > 1:  # an IC does not reach beyond what feeds it
         lowest, highest = (Range(one.usual, one.usual, one.usual) for one in (own[0], own[-1]))
@@ -252,10 +252,34 @@ def _driven(place: Place, lowest: Range, highest: Range, notes: Notes) -> Drive:
     )
 
 
-def _driver_entry(place: Place) -> DriveLimits | None:
-    """Return the ``[driver]`` entry of the part that drives the net, by its part number."""
+def _drawn_by(place: Place, regulator: int, lowest: Range, highest: Range, notes: Notes) -> Drive | None:
+    """Return the drive of a booster: what a three-terminal regulator draws, from nothing up to its own limit.
+
+    A source of half the supplies' span over that limit, cut off at the limit, lets what is drawn rise evenly.
+    """
+    net, part = place.around.drive, place.board.parts[regulator]
+    assert net is not None
+    entry = place.around.drive_entry or _driver_entry(place, (regulator,))
+    if entry is None or entry.current_A is None:
+        node, number = toml_key(place.node_of[net]), part.part_number
+        key = f"[drive.{node}] current" if number is None else f"[driver.{toml_key(number)}] current"
+        notes.missing.append(Missing("drive", None, f"{key}: the most that {part.id} draws"))
+        return None
+    low, high = entry.low_V or lowest, entry.high_V or highest
+    notes.words[place.node_of[net]] = f"{part.id} draws up to {entry.current_A:g} A from it"
+    return Drive(
+        node=place.node_of[net],
+        low_V=low,
+        high_V=high,
+        resistance_ohm=entry.resistance_ohm or 0.5 * (high.usual - low.usual) / entry.current_A,
+        current_A=entry.current_A,
+    )
+
+
+def _driver_entry(place: Place, parts: Sequence[int]) -> DriveLimits | None:
+    """Return the ``[driver]`` entry of the first of some parts that has one, by its part number."""
     drivers = {name.casefold(): entry for name, entry in place.limits.drivers.items()}
-    for index, _ in place.around.drive_pins:
+    for index in parts:
         number = place.board.parts[index].part_number
         if number is not None and number.casefold() in drivers:
             return drivers[number.casefold()]

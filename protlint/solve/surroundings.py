@@ -13,6 +13,7 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 
 from protlint.board.graph import Board, Element
+from protlint.board.regulators import regulator_across
 from protlint.limits import DriveLimits, Limits
 from protlint.topology.limiter import Limiter
 
@@ -70,7 +71,7 @@ def survey_surroundings(board: Board, limiter: Limiter, limits: Limits) -> Surro
     far, start = limiter.nets["far"], limiter.nets["drive"]
     assert output is not None and far is not None and start is not None
     power = _power_side(board, limiter, output, far)
-    walls = {output, power} | {net.index for net in board.nets if net.supply is not None}
+    walls = {output, power} | {net.index for net in board.supplies}
     starts = [start] if limiter.nets["feed"] is None else [start, limiter.nets["feed"]]
     drive, entry, pins, fed_by = _find_drive(board, limits, own, walls, [net for net in starts if net is not None], limiter)
     stops = walls | ({drive} if drive is not None else set())
@@ -107,19 +108,6 @@ def drivers_on(board: Board, net: int) -> tuple[tuple[int, str], ...]:
         if part.kind == "connector" or (part.kind == "ic" and not _is_input(board, index, net, role)):
             found.append((index, role))
     return tuple(found)
-
-
-REGULATOR_PINS = ({"in", "vin", "vi", "input"}, {"out", "vout", "vo", "output"})
-"""What the two ends of a three-terminal regulator are called."""
-
-
-def regulator_across(board: Board, net: int, output: int) -> int | None:
-    """Return the IC that takes its supply from a net and gives it on to the output, by board part: a three-terminal
-    regulator whose booster the net drives. None where there is none."""
-    taking, giving = REGULATOR_PINS
-    fed = {index for index, role in board.nets[net].pins if board.parts[index].kind == "ic" and role.casefold() in taking}
-    given = (index for index, role in board.nets[output].pins if index in fed and role.casefold() in giving)
-    return next(given, None)
 
 
 def _is_input(board: Board, index: int, net: int, role: str) -> bool:
