@@ -7,7 +7,9 @@ from collections.abc import Collection, Mapping, Set
 from protlint.topology.index import CONTROLLED, RAIL, Index
 from protlint.topology.terms import DIRECTED, Test
 
-LATE = frozenset({"no-input", "inner", "undriven", "closed", "held", "read", "twin", "npn-follows", "pnp-follows"})
+LATE = frozenset(
+    {"no-input", "inner", "undriven", "closed", "held", "bare", "read", "twin", "regulator", "npn-follows", "pnp-follows"}
+)
 """Questions that can be answered only when every required part is known."""
 
 PASSIVE = frozenset({"resistor", "capacitor", "inductor", "fuse"}) | DIRECTED
@@ -76,6 +78,8 @@ def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int
         case "closed":
             return _leads_only_to(net, set(nets.values()), index, own)
         case "held":
+        case "bare":
+            return voltage_V is None and _leads_only_to(net, set(nets.values()) - index.voltage_V.keys(), index, own)
             return _leads_only_to(net, {*nets.values(), *index.voltage_V}, index, own)
         case "read":
             return _read(net, index, own)
