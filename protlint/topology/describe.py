@@ -112,9 +112,10 @@ _WORDS = {
     "undriven": "nothing outside this group drives {0}",
     "closed": "nothing hangs on {0} that leads out of this group",
     "held": "nothing hangs on {0} but what leads to this group or to a supply",
-    "bare": "nothing hangs on {0} but what leads to this group, past no supply",
+    "nearer": "a smaller resistor leads from {0} to {1} than to {2}",
     "read": "an IC reads {0}, straight or through a resistor",
     "twin": "another transistor has its base on {0} and its emitter on {1}, as in a current mirror",
+    "regulator": "an IC takes its supply from {0} and gives it on to {1}, as a three-terminal regulator does",
     "npn-follows": "the emitter of an NPN or the source of an N-channel device outside this group drives {0}",
     "pnp-follows": "the emitter of a PNP or the source of a P-channel device outside this group drives {0}",
 }

@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Collection, Mapping, Set
 
+from protlint.board.regulators import regulator_across
 from protlint.topology.index import CONTROLLED, RAIL, Index
 from protlint.topology.terms import DIRECTED, Test
 
 LATE = frozenset(
-    {"no-input", "inner", "undriven", "closed", "held", "bare", "read", "twin", "regulator", "npn-follows", "pnp-follows"}
+    {"no-input", "inner", "undriven", "closed", "held", "nearer", "read", "twin", "regulator", "npn-follows", "pnp-follows"}
 )
 """Questions that can be answered only when every required part is known."""
 
@@ -77,14 +79,17 @@ def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int
             return _inner(net, index, own)
         case "closed":
             return _leads_only_to(net, set(nets.values()), index, own)
+        case "nearer":
+            return _resistance_ohm(net, others[0], index) < _resistance_ohm(net, others[1], index)
         case "held":
-        case "bare":
-            return voltage_V is None and _leads_only_to(net, set(nets.values()) - index.voltage_V.keys(), index, own)
             return _leads_only_to(net, {*nets.values(), *index.voltage_V}, index, own)
         case "read":
             return _read(net, index, own)
         case "twin":
             return _twin(net, others[0], index, own)
+        case "regulator":
+            ends = [(taking, giving) for taking in index.board_nets(net) for giving in index.board_nets(others[0])]
+            return any(regulator_across(index.board, taking, giving) is not None for taking, giving in ends)
         case "npn-follows" | "pnp-follows":
             return _followed(net, _FOLLOWERS[test.name], index, own)
         case "undriven":
@@ -156,6 +161,13 @@ def _read(net: int, index: Index, own: Collection[int]) -> bool:
                 if "ic" in kinds and kinds <= {"ic", "capacitor"}:
                     return True
     return False
+
+
+def _resistance_ohm(net: int, other: int, index: Index) -> float:
+    """Return the least resistance of a resistor between two nets; infinite where there is none, or none of known value."""
+    joining = (one for one in index.between(net, other, ("resistor",)) if set(index.terminals[one].values()) == {net, other})
+    values = (index.board.elements[element].value for element in joining)
+    return min((value for value in values if value is not None), default=math.inf)
 
 
 def _twin(base: int, emitter: int, index: Index, own: Collection[int]) -> bool:

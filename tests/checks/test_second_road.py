@@ -139,11 +139,15 @@ C1 CAP 1n B T
 """
 
 
-def booster(cap: str = "9 A", **drive: str) -> Review:
-    """Return the review of a booster around a three-terminal regulator, its sense resistor in the supply lead."""
-    fixed = {"+10V": "10 V", "GND": "0 V"}
-    needs = {"output": "5 V", "cap": cap}
-    return reviewed(BOOSTER, limits(supply=fixed, drive={"B": drive} if drive else {}, limiter={"*": needs}))
+def booster(cap: str = "9 A", *, board: str = BOOSTER, driver: str | None = None, **drive: str) -> Review:
+    """Return the review of a booster around a three-terminal regulator, its sense resistor in the supply lead.
+
+    What the regulator draws at most is stated for its part number (``driver``), or as a drive of its own.
+    """
+    fixed, stated = {"+10V": "10 V", "GND": "0 V"}, {"drive": {"B": drive} if drive else {}}
+    if driver is not None:
+        stated["driver"] = {"REG5": {"current": driver}}
+    return reviewed(board, limits(supply=fixed, limiter={"*": {"output": "5 V", "cap": cap}}, **stated))
 
 
 def test_a_booster_is_judged_with_what_its_regulator_draws_and_gives() -> None:
@@ -164,4 +168,32 @@ def test_a_booster_is_judged_with_what_its_regulator_draws_and_gives() -> None:
 def test_without_the_current_its_regulator_draws_a_booster_is_not_judged() -> None:
     review = booster()
     assert review.limiters[0].verdict == "not judged"
-    assert ("currents", "[drive.B] current: the most that U1 draws") in unchecked(review)
+    assert ("currents", "[driver.REG5] current: the most that U1 draws") in unchecked(review)
+    nameless = booster(board=BOOSTER.replace("REG5", "-"))
+    assert ("currents", "[drive.B] current: the most that U1 draws") in unchecked(nameless)
+
+
+def test_a_booster_is_solved_with_what_its_regulator_draws() -> None:
+    """I_1(max) = V_BE2 / R2: NEC three-terminal regulator manual G12702E, section 4.2; here with the base stop's drop. What
+    the shunt takes is what the regulator draws less what comes to it by the booster's base and the resistor beside it."""
+    review = booster(driver="1.9 A")
+    (limiter,) = review.limiters
+    assert limiter.limiter.topology == "regulator-booster"
+    assert not limiter.assumed
+    held, row = limiter.solution.held_short, limiter.solution.currents[1]
+    assert held is not None
+    shunt, booster_, beside = (held.states[name] for name in ("Q2", "Q1", "R1"))
+    assert held.drive_A == pytest.approx(-1.9)
+    assert row.holds_A == pytest.approx((-shunt.control_V - shunt.control_A * 1.0) / 0.27 - -booster_.control_A, rel=0.01)
+    assert -shunt.current_A - booster_.control_A + beside.current_A == pytest.approx(1.9, rel=1e-6)
+    assert row.begins_A is not None
+    assert row.holds_A is not None
+    assert row.unlimited_A is not None
+    assert 0.5 * row.holds_A < row.begins_A < row.holds_A < 0.5 * row.unlimited_A
+
+
+def test_a_booster_of_a_small_shunt_is_told_that_it_has_to_bear_the_regulator() -> None:
+    """The shunt has to bear the short-circuit current of the regulator: common practice of the trade, told beside the circuit
+    in makers' data sheets of three-terminal regulators (from memory)."""
+    told = found(booster(board=BOOSTER.replace("Q2 PNP QPP1", "Q2 PNP QSP1"), driver="1.9 A"), "shunt-overloaded")
+    assert {(one.level, one.parts) for one in told} == {("error", ("Q2",))}
