@@ -70,8 +70,10 @@ def _united_nets(
             whose = netlist.parts[twice.part].id
             assumed.append(f"pin {twice.pin} of {whose} is on two supplies, {names}; they are taken as apart")
     for part, known in zip(netlist.parts, seen, strict=True):
+        if not is_link(known):
+            continue
         nets = tuple(sorted({pin.net for pin in part.pins}))
-        if not is_link(known) or len(nets) < 2:
+        if len(nets) < 2:
             continue
         joined.append(nets)
         if len({voltage_V(net) for net in nets} - {None}) > 1:
@@ -82,7 +84,9 @@ def _united_nets(
 
 def _roles(part: Part, known: SeenPart, index_of: Sequence[int]) -> dict[str, int]:
     """Return every terminal's net by role; a pin without a role, or a second net under one, goes by the pin's own name."""
-    roles: dict[str, int] = {}
+    roles = {role: index_of[part.pins[positions[0]].net] for role, positions in known.roles.items()}
+    if len(roles) == len(part.pins):  # one pin each, as nearly all parts have it
+        return roles
     placed: set[int] = set()
     for role, positions in known.roles.items():
         for position in positions:
@@ -113,19 +117,19 @@ def _nets(
     limits: Limits,
     supply_of: Callable[[Sequence[str], Limits], Supply | None],
 ) -> tuple[BoardNet, ...]:
-    names: list[list[str]] = [[] for _ in range(count)]
+    names: list[tuple[str, ...]] = [()] * count
     for net, index in zip(netlist.nets, index_of, strict=True):
         if net.name not in names[index]:
-            names[index].append(net.name)
+            names[index] += (net.name,)
     pins: list[list[tuple[int, str]]] = [[] for _ in range(count)]
     for part in parts:
         for role, index in part.roles.items():
             pins[index].append((part.index, role))
     nets = []
-    for index in range(count):
-        if len(names[index]) > 1:
-            names[index].sort(key=lambda name: supply_of((name,), limits) is None)
-        nets.append(BoardNet(index, tuple(names[index]), tuple(pins[index]), supply_of(names[index], limits)))
+    for index, of_net in enumerate(names):
+        if len(of_net) > 1:
+            of_net = tuple(sorted(of_net, key=lambda name: supply_of((name,), limits) is None))
+        nets.append(BoardNet(index, of_net, tuple(pins[index]), supply_of(of_net, limits)))
     return tuple(nets)
 
 
@@ -162,12 +166,10 @@ def _passable(parts: Sequence[BoardPart], nets: Sequence[BoardNet], limits: Limi
     test point, a link and a part that is not fitted take no current: they do not count.
     """
     spoken_of = limits.drives.keys() | limits.limiters.keys()
-    passable = []
-    for net in nets:
-        others = (parts[part] for part, _ in net.pins)
-        free = all(_takes_no_current(part) or _is_plain_resistor(part) for part in others)
-        passable.append(free and net.supply is None and spoken_of.isdisjoint(net.names))
-    return passable
+    free = [_is_plain_resistor(part) or _takes_no_current(part) for part in parts]
+    return [
+        net.supply is None and all([free[part] for part, _ in net.pins]) and spoken_of.isdisjoint(net.names) for net in nets
+    ]
 
 
 _TEST_POINT = re.compile(r"(?i)(?:.*/)?(?:TP|TEST)[-_]?[0-9]+[A-Z]?$|.*test[ _-]?(?:point|pad)")

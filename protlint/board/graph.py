@@ -180,22 +180,11 @@ class SeenPart:
 def build_board(netlist: Netlist, *, limits: Limits, book: Book, parts_list: PartsList | None = None) -> Board:
     """Return the board of a netlist: kinds, roles, values, supplies, links gone, banks and chains merged.
 
-    A parts list fills what the netlist's properties leave open. A resistor without part data of its own goes by its size.
+    A parts list fills what the netlist's properties leave open.
     """
     from protlint.board.assemble import assemble
-    from protlint.board.attributes import file_habits, part_number, read_values
-    from protlint.board.kinds import identify
+    from protlint.board.seeing import see_parts
     from protlint.board.supplies import supply_of
 
-    habits = file_habits(netlist, limits)
-    seen = []
-    for part in netlist.parts:
-        listed = parts_list.listed(part) if parts_list is not None else None
-        number = part_number(part, habits, book=book, listed=listed)
-        entry = book.find(number) if number else None
-        who = identify(part, number, entry, limits)
-        values = read_values(part, who.kind, habits, listed=listed)
-        if entry is None and values.footprint is not None:
-            entry = book.find_size(who.kind, values.footprint)
-        seen.append(SeenPart(who.kind, who.roles, who.kind_from, who.roles_from, number, values, entry, who.sections))
+    seen = see_parts(netlist, limits=limits, book=book, parts_list=parts_list)
     return assemble(netlist, seen, limits=limits, supply_of=supply_of)

@@ -12,6 +12,7 @@ import re
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from functools import lru_cache
+from string import ascii_letters
 
 from protlint.limits import Limits, fits
 from protlint.netlist.model import Part
@@ -178,11 +179,17 @@ def _by_words(text: str) -> tuple[str, str]:
     return "", ""
 
 
+def class_letters(part: Part) -> str:
+    """Return the letters that a part's designator begins with."""
+    name = (part.designator or part.id).rpartition("/")[2]
+    return name[: len(name) - len(name.lstrip(ascii_letters))]
+
+
 def _by_letter(part: Part) -> tuple[str, str]:
     """Return the kind by the designator's class letter and what its pins say to that."""
-    letter = re.match(r"[A-Za-z]*", (part.designator or part.id).rpartition("/")[2])
-    kind = _LETTERS.get(letter[0].casefold() if letter else "", "")
-    told = f"class letter {letter[0]} and its pins" if letter else ""
+    letters = class_letters(part)
+    kind = _LETTERS.get(letters.casefold(), "")
+    told = f"class letter {letters} and its pins"
     if kind == "transistor":
         family = _family_by_names(part)
         return "unknown", f"{_NO_POLARITY} ({told})" if family else "a class letter and pins that do not tell a transistor"

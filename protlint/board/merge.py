@@ -110,6 +110,8 @@ def merge_resistances(resistances: Sequence[Resistance], passable: Sequence[bool
 
 def parts_of(tree: Tree) -> tuple[int, ...]:
     """Return the board part indices in a merge tree, in board order."""
+    if isinstance(tree, int):
+        return (tree,)
     found: list[int] = []
     stack = [tree]
     while stack:
