@@ -90,7 +90,8 @@ def _within(limit: int | None, data: bytes, name: str) -> bytes:
 def decode_text(data: bytes, encoding: str | None = None, *, file: str | None = None) -> Decoded:
     """Return the text of a file whose encoding nothing declares, decided once for the whole of it.
 
-    The encoding asked for; else UTF-8 where the bytes are that; else cp1252, or latin-1 where a byte means nothing in it.
+    The encoding asked for; else UTF-16 where its byte order mark stands in front; else UTF-8 where the bytes are that; else
+    cp1252, or latin-1 where a byte means nothing in it.
 
     Raises
     ------
@@ -98,7 +99,8 @@ def decode_text(data: bytes, encoding: str | None = None, *, file: str | None = 
     InputError : the bytes are not in the encoding asked for.
     """
     if encoding is None:
-        for guess in ("utf-8", "cp1252"):
+        marked = data[:2] in (codecs.BOM_UTF16_LE, codecs.BOM_UTF16_BE)
+        for guess in ("utf-16", "utf-8", "cp1252") if marked else ("utf-8", "cp1252"):
             with contextlib.suppress(UnicodeDecodeError):
                 return _decoded(data.decode(guess), guess)
         return _decoded(data.decode("latin-1"), "latin-1")

@@ -19,6 +19,8 @@ FILE_LIMIT = 250_000_000
 """Most bytes of a file."""
 LINE_LIMIT = 100_000_000
 """Most bytes of a line; a whole netlist on one line is legal, and a line longer than this is no netlist's."""
+_PACKED = {b"\x1f\x8b": "gzip", b"PK\x03\x04": "zip", b"BZh": "bzip2", b"\xfd7zXZ": "xz", b"7z\xbc\xaf": "7z"}
+"""What packed files begin with."""
 
 
 def read_netlist(path: str | Path, *, design: str | None = None, encoding: str | None = None) -> Netlist:
@@ -28,7 +30,8 @@ def read_netlist(path: str | Path, *, design: str | None = None, encoding: str |
     ----------
     path : the file, or ``-`` for standard input.
     design : the name of the design, where the file has several; the first by default.
-    encoding : how bytes outside ASCII are meant; by default UTF-8 where the file is that, else cp1252.
+    encoding : how bytes outside ASCII are meant; by default UTF-16 where the file is marked as that, UTF-8 where it is
+        that, else cp1252.
 
     Raises
     ------
@@ -48,11 +51,13 @@ def _read(source: Callable[[], tuple[bytes, str]], design: str | None, encoding:
     """Read what ``source`` gives. Bytes, text and definitions are let go as soon as the next stage has what it needs."""
     data, name = source()
     digest = sha256(data).hexdigest()
+    _refuse_packed(data, name)
     _refuse_long_lines(data, name)
     decoded = decode_text(data, encoding, file=name)
     nul = decoded.text.find("\0")
     if nul >= 0:
-        hint = ", unless it is UTF-16, which --encoding utf-16 reads" if data[:2] in (b"\xff\xfe", b"\xfe\xff") else ""
+        unmarked = {b"(\0": "utf-16-le", b"\0(": "utf-16-be"}.get(data[:2])
+        hint = f", unless it is UTF-16, which --encoding {unmarked} reads" if unmarked else ""
         raise Places(decoded.text, name).error(f"a NUL character: this is no text, and no EDIF{hint}", nul)
     del data
     read_as = decoded.encoding + ("" if encoding else ", --encoding NAME takes another")
@@ -76,6 +81,12 @@ def _read(source: Callable[[], tuple[bytes, str]], design: str | None, encoding:
             facts=facts_of(edif, flat, used),
             duplicate_designators=flat.duplicate_designators,
         )
+
+
+def _refuse_packed(data: bytes, name: str) -> None:
+    for mark, program in _PACKED.items():
+        if data.startswith(mark):
+            raise InputError(f"a file packed with {program}: unpack it first", file=name, line=1, column=1)
 
 
 def _refuse_long_lines(data: bytes, name: str) -> None:

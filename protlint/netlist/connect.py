@@ -9,14 +9,14 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
-from protlint.netlist.definitions import Instance, Net, PortRef, Scope
+from protlint.netlist.definitions import GlobalRef, Instance, Name, Net, PortRef, Scope
 from protlint.netlist.hierarchy import Block
 from protlint.netlist.notes import Notes
-from protlint.netlist.ports import Budget, Ports, element_of
+from protlint.netlist.ports import Budget, Globals, Ports, element_of
 
 
-def wire(block: Block, notes: Notes, budget: Budget) -> Wiring:
-    """Return the inside of a block whose ``children`` are known and wired; add to its ``shorts`` what its inside shorts.
+def wire(block: Block, notes: Notes, budget: Budget, design_wide: Globals) -> Wiring:
+    """Return the inside of a block whose ``children`` are known and wired; add to it what its inside shorts and leads out.
 
     The sheets of its contents are used up, which halves what is in memory when the netlist is made.
 
@@ -24,7 +24,7 @@ def wire(block: Block, notes: Notes, budget: Budget) -> Wiring:
     ------
     InputError : the file names more elements of arrays than ``budget`` has left.
     """
-    wirer = _Wirer(block, notes, budget)
+    wirer = _Wirer(block, notes, budget, design_wide)
     sheets = block.contents.sheets if block.contents is not None else []
     for children in block.children:
         sheet = sheets.pop(0)
@@ -101,10 +101,11 @@ _OWN = -1
 class _Wirer:
     """Gathers the nodes of one block. A node is a member of a union-find forest until :meth:`finish` numbers them."""
 
-    def __init__(self, block: Block, notes: Notes, budget: Budget) -> None:
+    def __init__(self, block: Block, notes: Notes, budget: Budget, design_wide: Globals) -> None:
         self.block = block
         self.notes = notes
         self.budget = budget
+        self.design_wide = design_wide
         self.placements: list[Placement] = []
         self.parents: list[int] = []
         self.nets: list[tuple[int, Net]] = []
@@ -148,8 +149,11 @@ class _Wirer:
         self._attach(placed.first, bit, node, ref.offset)
         return True
 
-    def _ends(self, ref: PortRef, net: str, instances: Scope[_Placed]) -> Sequence[tuple[int, int]]:
+    def _ends(self, ref: PortRef | GlobalRef, net: str, instances: Scope[_Placed]) -> Sequence[tuple[int, int]]:
         """Return what a reference means: positions of placements, :data:`_OWN` for the block itself, each with a bit."""
+        if isinstance(ref, GlobalRef):
+            self.notes.add("global", ref.offset, ref.port)
+            return [(_OWN, self._lead_out(self.design_wide.bit(ref.port), ref))]
         wanted = (ref.port, ref.member, ref.bundle)
         if ref.instance is None:
             bits = self.block.ports.find(*wanted, text=net) or self.connectors.find(*wanted, text=net)
@@ -167,14 +171,22 @@ class _Wirer:
         if bits is None:
             cell = placed.block.cell.name.text
             if placed.block.view is not None:  # of a cell that is not in the file no port is known
-                self.notes.add(
-                    "reference", ref.offset, f"the port {ref.port} of {ref.instance}, which the cell {cell} has not"
-                )
+                port = ref.port + "".join(f"[{index}]" for index in ref.member)
+                self.notes.add("reference", ref.offset, f"the port {port} of {ref.instance}, which the cell {cell} has not")
             if placed.block.contents is not None:
                 return ()
             bits = placed.block.ports.undeclared(ref.port, ref.member)
         self.budget.spend(len(elements) * len(bits) - 1, ref.offset)
         return [(element, bit) for element in elements for bit in bits]
+
+    def _lead_out(self, bit: int, ref: GlobalRef) -> int:
+        """Let what is of one name in the whole design reach out of the block, by a node of that name; return its bit."""
+        if bit not in self.own:
+            self.block.globals[bit] = ref
+            self.own[bit] = len(self.parents)
+            self.nets.append((len(self.parents), Net(Name(ref.port, ref.port.removeprefix("&")), (), ref.offset)))
+            self.parents.append(len(self.parents))
+        return bit
 
     def _elements(self, placed: _Placed, ref: PortRef) -> range | None:
         name = placed.instance.name
@@ -200,6 +212,12 @@ class _Wirer:
         if placement.block.contents is not None:
             self.notes.add("block pin", offset, f"{placement.block.ports.text(bit)} of {placement.instance.name.text}")
 
+    def _note_strange(self, placement: Placement, bit: int) -> None:
+        block, (_, offset) = placement.block, placement.pins[bit]
+        view = "the view with contents" if block.view is None else block.view.name.text
+        port = f"the port {block.ports.text(bit)} of {placement.instance.name.text}"
+        self.notes.add("reference", offset, f"{port}, which the view {view} of the cell {block.cell.name.text} has not")
+
     def _unite(self, one: int, other: int) -> None:
         one, other = root(self.parents, one), root(self.parents, other)
         self.parents[max(one, other)] = min(one, other)
@@ -211,6 +229,10 @@ class _Wirer:
     def finish(self) -> Wiring:
         """Unite what is shorted, number the nodes in the order of the file, and return the wiring."""
         for placement in self.placements:
+            for bit in placement.pins.keys() & placement.block.strange if placement.block.strange else ():
+                self._note_strange(placement, bit)
+            for bit, ref in placement.block.globals.items():
+                placement.pins[bit] = (self.own[self._lead_out(bit, ref)], ref.offset)
             for one, other in placement.block.shorts.groups((bit, node) for bit, (node, _) in placement.pins.items()):
                 self._unite(one, other)
         for one, other in self.block.shorts.groups(self.own.items()):
@@ -222,6 +244,7 @@ class _Wirer:
             together.setdefault(node, []).append(bit)
         for bits in together.values():
             self.block.shorts.add(bits)
+        self.block.strange = self.block.strange.difference(ports)
         for placement in self.placements:
             for bit, (node, offset) in placement.pins.items():
                 placement.pins[bit] = (number[root(self.parents, node)], offset)
@@ -241,7 +264,8 @@ class _Wirer:
         led_out: dict[int, set[str]] = {}
         for bit, node in self.own.items():
             ports = self.block.ports if bit < self.block.ports.width else self.connectors
-            led_out.setdefault(root(self.parents, node), set()).add(ports.text(bit))
+            text = ports.text(bit) if bit >= 0 else self.block.globals[bit].port.removeprefix("&")
+            led_out.setdefault(root(self.parents, node), set()).add(text)
         places = self.budget.places
         number: dict[int, int] = {}
         nodes: list[Node] = []

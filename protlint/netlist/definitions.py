@@ -45,6 +45,18 @@ class PortRef(NamedTuple):
         return (self,)
 
 
+class GlobalRef(NamedTuple):
+    """A reference to what goes by one name in the whole design."""
+
+    port: str
+    offset: int
+
+    @property
+    def refs(self) -> tuple[GlobalRef, ...]:
+        """Itself: it is as wide as one port."""
+        return (self,)
+
+
 @dataclass(frozen=True, slots=True)
 class PortList:
     """Several references that count as one array."""
@@ -62,7 +74,8 @@ class PortList:
         return " ".join(ref.port for ref in self.refs)
 
 
-Joined = tuple[PortRef | PortList, ...]
+Shorted = tuple[PortRef | PortList, ...]
+Joined = tuple[PortRef | PortList | GlobalRef, ...]
 
 
 @dataclass(frozen=True, slots=True)
@@ -144,7 +157,7 @@ class View:
     name: Name
     kind: str
     ports: tuple[Port, ...]
-    shorts: tuple[Joined, ...]
+    shorts: tuple[Shorted, ...]
     properties: tuple[Property, ...]
     contents: Contents | None
     offset: int

@@ -32,7 +32,7 @@ from protlint.netlist.grammar import LEVELS, REFUSED, USED, may_hold
 from protlint.netlist.model import Property
 from protlint.netlist.notes import Notes
 from protlint.netlist.properties import Origin, Scales, integer, read_property, read_scales, text_of
-from protlint.netlist.references import by_head, designators, first, items, joined, keyword, member, view_refs, word
+from protlint.netlist.references import by_head, designators, first, items, joined, keyword, member, shorted, view_refs, word
 from protlint.sources import InputError
 
 ARRAY_LIMIT = 65_536
@@ -97,6 +97,8 @@ class _Reader(FormParser):
         refuse = dict.fromkeys(REFUSED, self._refuse)
         reducers: dict[str, Callable[[Form], object]] = {
             "edifversion": self._version,
+            "keywordalias": self._alias,
+            "viewmap": self._view_map,
             "technology": self._technology,
             "instance": self._instance,
             "net": self._net,
@@ -109,12 +111,14 @@ class _Reader(FormParser):
         super().__init__(text, file=file, reducers=refuse | reducers)
         self.notes = Notes(self.places)
         self._scales: Scales = {}
+        self._aliases: dict[str, str] = {}
+        self._met: set[str] = set()
 
     def read(self) -> tuple[Edif, Notes]:
         """Return the whole file's definitions."""
         forms = self.parse()
         self.reducers = {}  # they hold the parser, and the parser the text
-        if len(forms) > 1 and forms[1:] != ["\x1a"]:  # a control-Z closes files written under DOS
+        if any(not isinstance(each, str) or each.strip("\x1a") for each in forms[1:]):  # control-Z closes files of DOS
             offset = getattr(forms[1], "offset", None)
             offset = self.outside() if offset is None else offset
             raise self.places.error("there is more after the end of (edif ...)", offset)
@@ -136,7 +140,12 @@ class _Reader(FormParser):
     def head(self, token: str) -> str | None:
         """Return a keyword in lower case, None for those that are passed over."""
         keyword = token.lower()
+        self._met.add(keyword)
+        keyword = self._meant(keyword)
         return keyword if keyword in USED or keyword in REFUSED else None
+
+    def _meant(self, keyword: str) -> str:
+        return self._aliases.get(keyword, keyword)
 
     def unclosed(self) -> InputError:
         """Return the error about what is never closed: where something begins inside what cannot hold it, its holder.
@@ -146,10 +155,11 @@ class _Reader(FormParser):
         """
         for open_lists in self.open_lists():
             inner_at, inner = open_lists[-1]
-            if inner not in LEVELS:
+            meant = self._meant(inner)
+            if meant not in LEVELS:
                 continue
-            holder = next((head for _, head in reversed(open_lists[:-1]) if head in LEVELS), None)
-            if holder is not None and not may_hold(holder, inner):
+            holder = next((head for _, word in reversed(open_lists[:-1]) if (head := self._meant(word)) in LEVELS), None)
+            if holder is not None and not may_hold(holder, meant):
                 outer_at, outer = open_lists[-2]
                 line, column = self.places.at(inner_at)
                 message = f"({outer} ...) is never closed; it is still open where ({inner} ...) begins at {line}:{column}"
@@ -258,7 +268,7 @@ class _Reader(FormParser):
             name=self._name(form),
             kind=keyword(found.get("viewtype", ()), ""),
             ports=ports,
-            shorts=tuple(joined(item) for interface in interfaces for item in items(interface, "joined")),
+            shorts=tuple(shorted(item) for interface in interfaces for item in items(interface, "joined")),
             properties=(*stated, *self._properties(found, "interface")),
             contents=self._contents(found.get("contents", ())),
             offset=form.offset,
@@ -288,6 +298,34 @@ class _Reader(FormParser):
             raise form.error("(design ...) names no cell")
         library = first(cell, "libraryref")
         return Design(self._name(form), word(cell), None if library is None else word(library), form.offset)
+
+    def _alias(self, form: Form) -> Form:
+        """Take another word for a keyword, given as (keywordAlias new known), which is from memory of the standard.
+
+        Should a writer mean the two words the other way round, its new word is one of EDIF's own, and refused.
+        """
+        new, known = word(form).lower(), word(form, 2).lower()
+        if new in USED or new in REFUSED:
+            raise form.error(f"(keywordAlias {new} {known}): another meaning for the keyword {new} is not read")
+        if new in self._met:
+            raise form.error(f"(keywordAlias {new} {known}): {new} stands in front of its alias already")
+        self._aliases[new] = self._meant(known)
+        return form
+
+    def _view_map(self, form: Form) -> Form:
+        """Check that a viewMap says no more of ports than what is taken for granted: those of one name are the same.
+
+        Raises
+        ------
+        InputError : ports of different names are said to be the same.
+        """
+        for each in items(form, "portmap"):
+            names = {member(item)[0].removeprefix("&").lower() for item in items(each, "portref")}
+            if len(names) > 1 or first(each, "portgroup") is not None:
+                raise each.error(
+                    "a viewMap whose views call their ports differently is not read; export the netlist without it"
+                )
+        return form
 
     def _technology(self, form: Form) -> None:
         self._scales = read_scales(form)

@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Sequence
 
 from protlint.netlist.definitions import Edif, Library
 from protlint.netlist.flatten import Flat
 
 _LIBRARIES_SHOWN = 12
+_NAMES_SHOWN = 6
 
 
 def facts_of(edif: Edif, flat: Flat, encoding: str) -> dict[str, str]:
@@ -29,6 +31,10 @@ def facts_of(edif: Edif, flat: Flat, encoding: str) -> dict[str, str]:
         "pin numbers": f"known of {numbers} of {_counted(len(pins), 'pin')}",
         "pin names": f"more than a number at {names} of {_counted(len(pins), 'pin')}",
     }
+    alike = [name for name, count in Counter(net.name for net in flat.nets).items() if count > 1]
+    if alike:
+        more = f" and {len(alike) - _NAMES_SHOWN} more" if len(alike) > _NAMES_SHOWN else ""
+        facts["nets named alike"] = f"{', '.join(alike[:_NAMES_SHOWN])}{more}: nothing joins them, so they are kept apart"
     if joints:
         facts["rippers and ties"] = f"{joints}, which join nets and are no parts"
     shorted = sum(cell.shorted for cell in flat.cells)

@@ -36,7 +36,7 @@ def flatten(edif: Edif, notes: Notes, *, design: str | None = None) -> Flat:
     cells: dict[int, UnfoldedCell] = {}
     sizes: dict[int, _Size] = {}
     for block in order:
-        cell = _unfolded(wire(block, notes, directory.budget), edif, notes, designated=designated)
+        cell = _unfolded(wire(block, notes, directory.budget, directory.globals), edif, notes, designated=designated)
         cells[id(block)], sizes[id(block)] = cell, _size(cell, sizes)
         if sizes[id(block)].things > SIZE_LIMIT or sizes[id(block)].characters > NAMES_LIMIT:
             message = f"flattened, {block.cell.name.text} has more than {SIZE_LIMIT} parts, nets and pins, or {NAMES_LIMIT}"

@@ -9,7 +9,8 @@ USED = frozenset((
     "cell", "celltype", "viewmap", "view", "viewtype", "interface", "contents", "page", "offpageconnector",
     "port", "portbundle", "listofports", "direction", "designator",
     "instance", "portinstance", "net", "netbundle", "listofnets", "joined", "portref", "portlist", "instanceref",
-    "viewref", "viewlist", "cellref", "libraryref", "member", "rename", "name", "array",
+    "viewref", "viewlist", "cellref", "libraryref", "globalportref", "member", "rename", "name", "array",
+    "portmap", "portgroup", "keywordalias",
     "property", "parameter", "parameterassign", "string", "stringdisplay", "integer", "number", "e",
     "boolean", "true", "false", "minomax", "mnm", "undefined", "unconstrained", "point", "pt",
 ))
@@ -17,9 +18,7 @@ USED = frozenset((
 """Everything else is passed over, with all that stands in it."""
 
 REFUSED = {
-    "keywordalias": "keyword aliases",
     "keyworddefine": "keyword macros",
-    "globalportref": "global port references",
     "instancebackannotate": "back-annotations in a viewMap",
     "netbackannotate": "back-annotations in a viewMap",
     "portbackannotate": "back-annotations in a viewMap",

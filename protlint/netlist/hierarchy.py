@@ -5,9 +5,9 @@ from __future__ import annotations
 from collections.abc import Iterator
 from itertools import chain
 
-from protlint.netlist.definitions import Cell, Contents, Edif, Instance, Library, Name, Scope, View, ViewRef
+from protlint.netlist.definitions import Cell, Contents, Edif, GlobalRef, Instance, Library, Name, Scope, View, ViewRef
 from protlint.netlist.notes import Notes
-from protlint.netlist.ports import Budget, Ports, Shorts
+from protlint.netlist.ports import Budget, Globals, Ports, Shorts
 from protlint.sources import UsageError
 
 DEPTH_LIMIT = 100
@@ -35,7 +35,9 @@ class Block:
     """A cell as instances see it: its ports, its contents where it has any, and which of its bits are one node.
 
     A block without contents is a leaf. ``shorts`` tells which of its bits are one; what the contents short is added when
-    they are wired. ``children`` holds, sheet by sheet, the block that each instance places, ``levels`` how deep they go.
+    they are wired, and so are the ``globals`` that reach out of it, by bit. ``strange`` holds the bits of ports that other
+    views of the cell have and the contents know nothing of. ``children`` holds, sheet by sheet, the block that each instance
+    places, ``levels`` how deep they go.
     """
 
     def __init__(self, cell: Cell, library: Library, view: View | None, ports: Ports, budget: Budget, *, leaf: bool) -> None:
@@ -46,6 +48,11 @@ class Block:
         self.contents: Contents | None = None if leaf or view is None else view.contents
         self.children: list[list[Block]] = []
         self.levels = 0
+        self.globals: dict[int, GlobalRef] = {}
+        self.strange: frozenset[int] = frozenset()
+        if self.contents is not None and view is not None and len(cell.views) > 1:
+            known = (ports.find(port.name.identifier) or () for port in view.ports)
+            self.strange = frozenset(range(ports.width)).difference(*known)
         self.shorts = Shorts()
         for joined in view.shorts if view is not None else ():
             bits = [[self.ports.find(ref.port, ref.member, ref.bundle) or () for ref in item.refs] for item in joined]
@@ -82,6 +89,7 @@ class Directory:
     def __init__(self, edif: Edif, notes: Notes) -> None:
         self.edif = edif
         self.budget = Budget(edif.places)
+        self.globals = Globals()
         self._notes = notes
         self._libraries = Scope((library.name.identifier, library) for library in edif.libraries)
         self._cells = {id(each): Scope((cell.name.identifier, cell) for cell in each.cells) for each in edif.libraries}
@@ -133,7 +141,8 @@ class Directory:
         for ref in instance.views:
             found = self.find_anywhere(ref.cell or own)
             if found is not None:
-                detail = f"the cell {ref.cell}, not in the library {ref.library or inside.library.name.text} but in another"
+                library = ref.library or inside.library.name.text
+                detail = f"the cell {ref.cell}, not in the library {library}; that of {found[1].name.text} is taken"
                 self._notes.add("reference", instance.offset, detail)
                 return self.block(*found, ref.view, instance.offset)
         ref = instance.views[0] if instance.views else ViewRef(None, "", None)

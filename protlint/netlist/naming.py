@@ -73,9 +73,12 @@ def _label(placement: Placement, notes: Notes, *, designated: bool) -> Label | N
         return None
     instance = placement.instance
     section, package = section_and_package(instance, notes)
-    name = section or package or instance.name.text
-    if placement.element is not None:
-        name = f"{name}[{placement.element}]"
+    each = (package or "").split()
+    if placement.element is not None and len(each) == instance.name.width and section is None:
+        package = name = each[placement.element]  # one designator for each element of an array
+    else:
+        name = section or package or instance.name.text
+        name = name if placement.element is None else f"{name}[{placement.element}]"
     if package is None and not designated:
         package = name
     position = section_position(section, package) if section and package else None

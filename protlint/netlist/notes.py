@@ -15,6 +15,7 @@ KINDS = {
     "reference": "a reference that leads nowhere: {}",
     "view": "a view that is named and absent; the cell's best other view is taken: {}",
     "designs": "{}",
+    "global": "a globalPortRef: all of one name are taken as one net of the whole design: {}",
     "width": "things of different width are joined: {}",
     "block pin": "a block's port on two nets, which are taken as one: {}",
     "property": "one property with two values; the first counts: {}",

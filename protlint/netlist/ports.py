@@ -133,6 +133,17 @@ class Ports:
         return f"{slot.text}[{element}]" if slot.dimensions else slot.text
 
 
+class Globals:
+    """What ``globalPortRef`` names: one node in the whole design for each name, as a bit below zero, which no port has."""
+
+    def __init__(self) -> None:
+        self._bits: dict[str, int] = {}
+
+    def bit(self, name: str) -> int:
+        """Return the bit of a name; EDIF compares names without regard to case."""
+        return self._bits.setdefault(name.removeprefix("&").lower(), -1 - len(self._bits))
+
+
 class Budget:
     """How many elements of arrays a file may still name."""
 

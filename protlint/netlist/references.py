@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping, Sequence
 from itertools import chain
 
-from protlint.netlist.definitions import Joined, PortList, PortRef, ViewRef
+from protlint.netlist.definitions import GlobalRef, Joined, PortList, PortRef, Shorted, ViewRef
 from protlint.netlist.forms import Form
 from protlint.netlist.properties import integer, text_of
 
@@ -94,13 +94,13 @@ def port_ref(form: Form) -> PortRef:
     elif inner is not None and inner.head == "viewref":
         inner = None
     if inner is not None:
-        raise inner.error(f"({inner.head} ...) inside another reference reaches into another level, which is not read")
+        raise inner.error("this reference inside another reaches into another level of the hierarchy, which is not read")
     return PortRef(port, instance, form.offset, element, bundle, instance_element)
 
 
 def joined(form: Form) -> Joined:
-    """Return what a ``joined`` form joins."""
-    ends: list[PortRef | PortList] = []
+    """Return what the ``joined`` of a net joins."""
+    ends: list[PortRef | PortList | GlobalRef] = []
     for item in form:
         if type(item) is not Form or not item:
             continue
@@ -111,8 +111,23 @@ def joined(form: Form) -> Joined:
             else:
                 ends.append(port_ref(item))
         elif item[0] == "portlist":
-            refs = tuple(map(port_ref, items(item, "portref")))
-            ends += [PortList(refs)] if refs else []
+            ends += _port_list(item)
+        elif item[0] == "globalportref":
+            ends.append(GlobalRef(word(item), item.offset))
+    return tuple(ends)
+
+
+def shorted(form: Form) -> Shorted:
+    """Return the ports that the ``joined`` of an interface says are one inside.
+
+    Raises
+    ------
+    InputError : it names something else than ports.
+    """
+    _no_global(form)
+    ends: list[PortRef | PortList] = []
+    for item in items(form, "portref", "portlist"):
+        ends += [port_ref(item)] if item[0] == "portref" else _port_list(item)
     return tuple(ends)
 
 
@@ -131,6 +146,18 @@ def view_refs(found: Mapping[str, Sequence[Form]]) -> tuple[ViewRef, ...]:
             )
         )
     return tuple(refs)
+
+
+def _port_list(form: Form) -> list[PortList]:
+    _no_global(form)
+    refs = tuple(map(port_ref, items(form, "portref")))
+    return [PortList(refs)] if refs else []
+
+
+def _no_global(form: Form) -> None:
+    stray = first(form, "globalportref")
+    if stray is not None:
+        raise stray.error("a globalPortRef is read in the joined of a net only")
 
 
 def _inner(form: Form) -> Form | None:

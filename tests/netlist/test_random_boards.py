@@ -18,8 +18,8 @@ from tests.support.board_writer import CELLS, Habits, Truth, groups, random_boar
 from tests.support.paths import FIXTURES
 
 STEADY = settings(deadline=None, derandomize=True)
-MUTATIONS = int(os.environ.get("PROTLINT_MUTATIONS", "2000"))
-"""How many damaged files to read; set it to 10,000 and more for a thorough run."""
+MUTATIONS = int(os.environ.get("PROTLINT_MUTATIONS", "10000"))
+"""How many damaged files to read."""
 
 
 def read(text: str) -> Netlist:
@@ -92,7 +92,8 @@ ODD = (
     b"()", b"(())", b"-1", b"(name)", b'"x"', b"9" * 30, b"(array X 70000)", b"(array X 3)", b"(member A 0 1)",
     b"(net)", b"(rename)", b"(string)", b"(e 1 99999)", b"(designator (string))", b"(viewRef V)", b"(portRef P (portRef Q))",
     b"(portList)", b"(property A (number (e)))", b"(scale 0 0 (unit))", b"(joined)", b"(listOfPorts (portBundle))",
-    b"(cellType RIPPER)",
+    b"(cellType RIPPER)", b"(globalPortRef G)", b"(globalPortRef A)", b"(keywordAlias N net)",
+    b"(viewMap (portMap (portRef A)))",
 )  # fmt: skip
 """What stands in no sane file."""
 

@@ -121,8 +121,12 @@ def test_encodings_asked_for() -> None:
 def test_text_of_another_kind() -> None:
     with pytest.raises(InputError, match=r"x.edf:2:3: a NUL character"):
         read(b"(edif x\nab\0")
-    with pytest.raises(InputError, match="--encoding utf-16"):
-        read(board("").decode().encode("utf-16"))
+    assert [part.id for part in read(board(placed("R1", "R")).decode().encode("utf-16")).parts] == ["R1"]
+    for unmarked in ("utf-16-le", "utf-16-be"):
+        with pytest.raises(InputError, match=f"--encoding {unmarked} reads"):
+            read(board("").decode().encode(unmarked))
+    with pytest.raises(InputError, match="packed with zip: unpack it first"):
+        read(b"PK\x03\x04" + bytes(100))
     with pytest.raises(InputError, match="1:1: this is something else"):
         read(bytes(range(1, 256)) * 50)
 
@@ -185,6 +189,33 @@ def test_a_part_whose_cell_joins_pins_inside() -> None:
     netlist = read(board(contents, cells=jumper))
     assert [(node.name, len(node.pins)) for node in netlist.nets] == [("N1", 2), ("N3", 1)]
     assert netlist.facts["joined inside"].startswith("1 part,")
+
+
+def test_a_global_reaches_what_no_port_joins() -> None:
+    """A cell two levels down, the cell between knowing nothing of it; and a global that a block also leads out by a port."""
+    leaf = cell("LEAF", placed("R1", "R") + net("Q", "R1.A").replace("(portRef", "(globalPortRef G) (portRef"))
+    both = cell("BOTH", "(net Q (joined (portRef P) (globalPortRef G)))", "(port P)")
+    contents = placed("X1", "MID") + placed("X2", "BOTH") + placed("R2", "R") + net("N", "X2.P", "R2.A")
+    netlist = read(board(contents, cells=RES + leaf + cell("MID", placed("I", "LEAF")) + both))
+    assert [(each.name, len(each.pins)) for each in netlist.nets] == [("G", 2)]
+    assert [each.count for each in netlist.warnings] == [2]
+
+
+def test_a_list_under_an_alias_that_is_never_closed() -> None:
+    text = board(net("X", "Y") + net("Z", "Y")).decode()
+    text = text.replace("(keywordLevel 0)", "(keywordLevel 1) (keywordAlias N net)").replace("(net ", "(N ")
+    assert [each.name for each in read(text.encode()).nets] == ["X"]
+    with pytest.raises(
+        InputError, match=r"x.edf:4:80: \(n ...\) is never closed; it is still open where \(n ...\) begins at 4:105"
+    ):
+        read(text.replace("(joined (portRef Y)))", "(joined (portRef Y))", 1).encode())
+
+
+def test_nets_that_only_their_names_join_are_told() -> None:
+    pages = "".join(f"(page P{number} {placed('R', 'R')} {net('GND', 'R.A')})" for number in range(2))
+    netlist = read(board(pages))
+    assert [(each.name, len(each.pins)) for each in netlist.nets] == [("GND", 1), ("GND", 1)]
+    assert netlist.facts["nets named alike"] == "GND: nothing joins them, so they are kept apart"
 
 
 def test_a_pin_on_three_nets_is_told_twice() -> None:
