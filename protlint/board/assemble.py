@@ -168,7 +168,7 @@ def _passable(parts: Sequence[BoardPart], nets: Sequence[BoardNet], limits: Limi
     spoken_of = limits.drives.keys() | limits.limiters.keys()
     free = [_is_plain_resistor(part) or _takes_no_current(part) for part in parts]
     return [
-        net.supply is None and all([free[part] for part, _ in net.pins]) and spoken_of.isdisjoint(net.names) for net in nets
+        net.supply is None and all(free[part] for part, _ in net.pins) and spoken_of.isdisjoint(net.names) for net in nets
     ]
 
 

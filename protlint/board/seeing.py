@@ -50,6 +50,6 @@ def _as_written(part: Part, listed: Mapping[str, str] | None) -> Hashable:
     """
     said = tuple([(item.name, item.value.__class__, item.value) for item in part.properties.values()])
     pins = tuple([(pin.name, pin.number) for pin in part.pins])
-    own_name = any([value == part.designator for _, _, value in said])
+    own_name = any(value == part.designator for _, _, value in said)
     several = len({pin.net for pin in part.pins}) > 1
     return part.cell, class_letters(part), said, pins, own_name, several, tuple(listed.items()) if listed else ()
