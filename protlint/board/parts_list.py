@@ -11,7 +11,7 @@ import io
 import math
 import re
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 from pathlib import Path
 
 from protlint.board.attributes import SPELLINGS, Habits, plain_name, read_values
@@ -144,7 +144,7 @@ def differences(parts: Sequence[Part], kinds: Sequence[str], habits: Habits, lis
         row = listed.row(part)
         if row is None:
             continue
-        bare = replace(part, properties={})
+        bare = part._replace(properties={})
         drawn, written = read_values(part, kind, habits), read_values(bare, kind, habits, listed=row.attributes)
         pairs: dict[str, tuple[float | None, float | None]] = {
             "value": (drawn.value, written.value),

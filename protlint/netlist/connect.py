@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from typing import NamedTuple
 
 from protlint.netlist.definitions import GlobalRef, Instance, Name, Net, PortRef, Scope
 from protlint.netlist.hierarchy import Block
@@ -44,8 +45,7 @@ def root(parents: list[int], member: int) -> int:
     return member
 
 
-@dataclass(frozen=True, slots=True)
-class Placement:
+class Placement(NamedTuple):
     """One thing placed: an instance, or with ``element`` one of an array of them. ``pins`` maps a bit of its ports to the
     node it is on and the place where the file says so."""
 
@@ -55,8 +55,7 @@ class Placement:
     pins: dict[int, tuple[int, int]]
 
 
-@dataclass(frozen=True, slots=True)
-class Node:
+class Node(NamedTuple):
     """What is one inside a cell, with the name and place of one of its nets."""
 
     name: str
@@ -86,8 +85,7 @@ class Wiring:
     on_two_nets: tuple[TwoNets, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class _Placed:
+class _Placed(NamedTuple):
     """An instance as references see it: its block, and where its elements begin among the placements."""
 
     instance: Instance

@@ -90,8 +90,7 @@ class Port:
     offset: int
 
 
-@dataclass(frozen=True, slots=True)
-class PortInstance:
+class PortInstance(NamedTuple):
     """What an instance says of one of its ports."""
 
     port: str
@@ -100,8 +99,7 @@ class PortInstance:
     properties: tuple[Property, ...]
 
 
-@dataclass(frozen=True, slots=True)
-class ViewRef:
+class ViewRef(NamedTuple):
     """A reference to a view of a cell; what is not said is None and means the enclosing one."""
 
     view: str | None
@@ -109,8 +107,7 @@ class ViewRef:
     library: str | None
 
 
-@dataclass(frozen=True, slots=True)
-class Instance:
+class Instance(NamedTuple):
     """A cell placed in another. ``views`` lists the references it offers; the first that leads somewhere counts."""
 
     name: Name
@@ -121,8 +118,7 @@ class Instance:
     offset: int
 
 
-@dataclass(frozen=True, slots=True)
-class Net:
+class Net(NamedTuple):
     """A net with all that it and its subnets join."""
 
     name: Name

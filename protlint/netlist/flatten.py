@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import sys
 from collections.abc import Iterable, Iterator, Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 from protlint.netlist.connect import Node, TwoNets, Wiring, wire
 from protlint.netlist.definitions import Edif
@@ -124,7 +124,7 @@ def _distinct(parts: Sequence[Part]) -> tuple[Part, ...]:
             number += 1
             name = f"{part.id}#{number}"
         seen.add(name)
-        result.append(replace(part, id=name))
+        result.append(part._replace(id=name))
     return tuple(result)
 
 
@@ -231,7 +231,7 @@ class _Unfolder:
         for node, net in enumerate(cell.nodes):
             if nets[node] < 0:
                 nets[node] = len(self.nets)
-                self.nets.append(replace(net, name=path + net.name) if path else net)
+                self.nets.append(net._replace(name=path + net.name) if path else net)
                 self.pins.append([])
         return _Frame(cell, path, nets, iter(range(len(cell.items))), {})
 
@@ -239,7 +239,7 @@ class _Unfolder:
         index = frame.parts[position] = len(self.parts)
         if frame.path:  # the nodes of the first cell are the board's first nets, so its parts are what they will be
             pins = (Pin(pin.name, pin.number, frame.nets[pin.net], pin.line, pin.column, pin.direction) for pin in part.pins)
-            part = replace(part, id=frame.path + part.id, pins=tuple(pins))
+            part = part._replace(id=frame.path + part.id, pins=tuple(pins))
         self.parts.append(part)
         for number, pin in enumerate(part.pins):
             self.pins[pin.net].append((index, number))

@@ -1,21 +1,21 @@
 """The flat netlist: what is placed on the board and what is connected to what.
 
-This is the whole of what the upper floors know of EDIF. Parts, pins and nets are kept in the order of the file.
+This is the whole of what the upper floors know of EDIF. Parts, pins and nets are kept in the order of the file. What a board
+has by the hundred thousand is a named tuple, which is made three times as fast as a frozen dataclass.
 """
 
 from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import Literal
+from typing import Literal, NamedTuple
 
 from protlint.findings import Warning
 
 PropertyValue = str | int | float | bool
 
 
-@dataclass(frozen=True, slots=True)
-class Property:
+class Property(NamedTuple):
     """A property of a part, with the place it was written and where it came from."""
 
     name: str
@@ -26,8 +26,7 @@ class Property:
     unit: str | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class Pin:
+class Pin(NamedTuple):
     """One connected pin of a part.
 
     ``name`` is the port's name as people see it; ``number`` the pin number where the file gives one; ``net`` the index of
@@ -42,8 +41,7 @@ class Pin:
     direction: str | None = None
 
 
-@dataclass(frozen=True, slots=True)
-class Part:
+class Part(NamedTuple):
     """A placed leaf instance. ``properties`` is keyed by the folded (lower-case) name.
 
     ``id`` is unique on the board: the designator, with the path in front inside hierarchy (``CH2/Q10``). Sections of one
@@ -62,8 +60,7 @@ class Part:
     column: int
 
 
-@dataclass(frozen=True, slots=True)
-class Net:
+class Net(NamedTuple):
     """A net of the board. ``pins`` are pairs of a part's index in :attr:`Netlist.parts` and a pin's in ``Part.pins``."""
 
     name: str

@@ -13,7 +13,8 @@ from __future__ import annotations
 import re
 from collections import Counter
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
+from typing import NamedTuple
 
 from protlint.netlist.connect import Placement, Wiring
 from protlint.netlist.definitions import Instance, PortInstance
@@ -134,7 +135,7 @@ def _unique(
         while name == label.id or name in taken:
             last[label.id] += 1
             name = f"{label.id}#{last[label.id]}"
-        result[position] = replace(label, id=name)
+        result[position] = label._replace(id=name)
     return tuple(result)
 
 
@@ -199,8 +200,7 @@ def _pin_name(properties: Sequence[Property]) -> str | None:
     return None
 
 
-@dataclass(frozen=True, slots=True)
-class Label:
+class Label(NamedTuple):
     """What a placement is called inside its cell; ``position`` is its place in its package where it is a section of one."""
 
     id: str

@@ -49,8 +49,8 @@ def moved(netlist: Netlist, part: str, role: str, net: str) -> Netlist:
     target = names.index(net) if net in names else len(names)
 
     def change(one: Part) -> Part:
-        pins = tuple(replace(pin, net=target) if is_role(pin, role) else pin for pin in one.pins)
-        return replace(one, pins=pins)
+        pins = tuple(pin._replace(net=target) if is_role(pin, role) else pin for pin in one.pins)
+        return one._replace(pins=pins)
 
     return changed(netlist, part, change, () if net in names else (net,))
 
@@ -66,9 +66,9 @@ def other_polarity(netlist: Netlist, part: str) -> Netlist:
 
     def change(one: Part) -> Part:
         properties = {
-            key: replace(item, value=OTHER.get(str(item.value), item.value)) for key, item in one.properties.items()
+            key: item._replace(value=OTHER.get(str(item.value), item.value)) for key, item in one.properties.items()
         }
-        return replace(one, cell=OTHER[one.cell], properties=properties)
+        return one._replace(cell=OTHER[one.cell], properties=properties)
 
     return changed(netlist, part, change)
 
@@ -98,6 +98,6 @@ def twice(netlist: Netlist, shared: Callable[[str], bool]) -> Netlist:
                 names.append(name)
             numbers[index] = names.index(name)
         for part in netlist.parts:
-            pins = tuple(replace(pin, net=numbers[pin.net]) for pin in part.pins)
-            parts.append(replace(part, id=f"{copy}/{part.id}", pins=pins))
+            pins = tuple(pin._replace(net=numbers[pin.net]) for pin in part.pins)
+            parts.append(part._replace(id=f"{copy}/{part.id}", pins=pins))
     return rebuilt(netlist, parts, names)
