@@ -231,12 +231,14 @@ class _Wirer:
                 self._note_strange(placement, bit)
             for bit, ref in placement.block.globals.items():
                 placement.pins[bit] = (self.own[self._lead_out(bit, ref)], ref.offset)
-            for one, other in placement.block.shorts.groups((bit, node) for bit, (node, _) in placement.pins.items()):
-                self._unite(one, other)
+            if placement.block.shorts:
+                for one, other in placement.block.shorts.groups((bit, node) for bit, (node, _) in placement.pins.items()):
+                    self._unite(one, other)
         for one, other in self.block.shorts.groups(self.own.items()):
             self._unite(one, other)
-        number, nodes = self._numbered()
-        ports = {bit: number[root(self.parents, node)] for bit, node in self.own.items() if bit < self.block.ports.width}
+        top_number, nodes = self._numbered()
+        number = [top_number[root(self.parents, node)] for node in range(len(self.parents))]
+        ports = {bit: number[node] for bit, node in self.own.items() if bit < self.block.ports.width}
         together: dict[int, list[int]] = {}
         for bit, node in ports.items():
             together.setdefault(node, []).append(bit)
@@ -245,10 +247,10 @@ class _Wirer:
         self.block.strange = self.block.strange.difference(ports)
         for placement in self.placements:
             for bit, (node, offset) in placement.pins.items():
-                placement.pins[bit] = (number[root(self.parents, node)], offset)
+                placement.pins[bit] = (number[node], offset)
         twice = []
         for each in self.on_two_nets.values():
-            first, second = (number[root(self.parents, node)] for node in each.nodes)
+            first, second = (number[node] for node in each.nodes)
             if first != second:
                 twice.append(replace(each, nodes=(first, second)))
         return Wiring(self.block, tuple(nodes), tuple(self.placements), ports, tuple(twice))

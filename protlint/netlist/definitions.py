@@ -26,7 +26,7 @@ class Name(NamedTuple):
     @property
     def width(self) -> int:
         """How many elements it has; 1 for what is no array."""
-        return prod(self.dimensions)
+        return prod(self.dimensions) if self.dimensions else 1
 
 
 class PortRef(NamedTuple):

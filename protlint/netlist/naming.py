@@ -158,14 +158,16 @@ def _pins(
         facts = known.get((id(block), bit))
         if facts is None:
             facts = known[id(block), bit] = _port_facts(block, bit)
-        here = said.get(bit)
-        number = None if here is None else _number(_split(here.designators), facts, label.position, sectioned=sectioned)
-        number = number or _number(facts.numbers, facts, label.position, sectioned=sectioned)
-        named = (None if here is None else _pin_name(here.properties)) or facts.named
-        name = facts.text
-        if name.isdecimal():
-            name, number = named or name, number or name
-        result.append(Pin(name, number, node, *places.at(offset), facts.direction))
+        line, column = places.at(offset)
+        here = said.get(bit) if said else None
+        if here is None and facts.called is not None:
+            name, number = facts.called
+        else:
+            number = None if here is None else _number(_split(here.designators), facts, label.position, sectioned=sectioned)
+            number = number or _number(facts.numbers, facts, label.position, sectioned=sectioned)
+            named = (None if here is None else _pin_name(here.properties)) or facts.named
+            name, number = _called(facts.text, number, named)
+        result.append(Pin(name, number, node, line, column, facts.direction))
     return tuple(result)
 
 
@@ -174,8 +176,15 @@ def _port_facts(block: Block, bit: int) -> _PortFacts:
     port = slot.port
     text = block.ports.text(bit)
     if port is None:
-        return _PortFacts(text, None, (), None, element, 1)
-    return _PortFacts(text, port.direction, _split(port.designators), _pin_name(port.properties), element, port.name.width)
+        return _PortFacts(text, None, (), None, element, 1, _called(text, None, None))
+    numbers, named = _split(port.designators), _pin_name(port.properties)
+    called = _called(text, next(iter(numbers), None), named) if len(numbers) < 2 else None
+    return _PortFacts(text, port.direction, numbers, named, element, port.name.width, called)
+
+
+def _called(text: str, number: str | None, named: str | None) -> tuple[str, str | None]:
+    """Return a pin's name and number; where a port is called by its number, the pin's Name property is its name."""
+    return (named or text, number or text) if text.isdecimal() else (text, number)
 
 
 def _number(numbers: Sequence[str], facts: _PortFacts, position: int | None, *, sectioned: bool) -> str | None:
@@ -225,7 +234,10 @@ class NamedCell:
 
 @dataclass(frozen=True, slots=True)
 class _PortFacts:
-    """What a cell says of one bit of its ports: its name, the pin numbers listed for it, and a Name property."""
+    """What a cell says of one bit of its ports: its name, the pin numbers listed for it, and a Name property.
+
+    ``called`` is the name and number of the pin wherever its instance says nothing of it; None where that takes a closer look.
+    """
 
     text: str
     direction: str | None
@@ -233,3 +245,4 @@ class _PortFacts:
     named: str | None
     element: int
     width: int
+    called: tuple[str, str | None] | None
