@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Collection, Mapping, Set
 
+from protlint.board.regulators import regulator_across
 from protlint.topology.index import CONTROLLED, RAIL, Index
 from protlint.topology.terms import DIRECTED, Test
 
@@ -86,6 +87,9 @@ def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int
             return _read(net, index, own)
         case "twin":
             return _twin(net, others[0], index, own)
+        case "regulator":
+            ends = [(taking, giving) for taking in index.board_nets(net) for giving in index.board_nets(others[0])]
+            return any(regulator_across(index.board, taking, giving) is not None for taking, giving in ends)
         case "npn-follows" | "pnp-follows":
             return _followed(net, _FOLLOWERS[test.name], index, own)
         case "undriven":
