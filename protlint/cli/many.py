@@ -100,41 +100,63 @@ def _in_folder(folder: Path) -> list[str]:
 
 def _worth_sharing(paths: Sequence[str]) -> bool:
     """Tell whether there is more work than starting other processes costs."""
-    if _cores() == 1 or len(paths) < 2:
+    if cores() == 1 or len(paths) < 2:
         return False
     sizes = [Path(path).stat().st_size for path in paths if Path(path).is_file()]
     return len(paths) > FEW or sum(sizes) > SMALL_BYTES
 
 
-def _cores() -> int:
+def cores() -> int:
+    """Return how many cores this process may use."""
     return len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else os.cpu_count() or 1
 
 
 def _on_all_cores(
     names: Mapping[str, str], files: Mapping[str, Any], reading: Mapping[str, Any]
 ) -> Iterator[tuple[str, Answer]]:
-    """Yield each netlist's answer as it comes; ``names`` are what the netlists go by."""
-    if not names:
-        return
-    workers = min(_cores(), len(names))
+    """Yield each netlist's answer as it comes; ``names`` are what the netlists go by.
+
+    A worker that is ended from outside, as for want of memory, takes its pool with it: what was left is then done one
+    after another, and only a netlist that ends its worker again is lost.
+    """
+    left, workers = dict(names), cores()
+    while left:
+        for path, answer in _in_a_pool(left, min(workers, len(left)), files, reading):
+            del left[path]
+            yield path, answer
+        if left and workers == 1:
+            # Work is taken in order: the first without an answer is the one that was being done.
+            path = next(iter(left))
+            yield path, _unread(left.pop(path), "its review ended abruptly twice, perhaps for want of memory")
+        workers = 1
+
+
+def _in_a_pool(
+    names: Mapping[str, str], workers: int, files: Mapping[str, Any], reading: Mapping[str, Any]
+) -> Iterator[tuple[str, Answer]]:
+    """Yield the answers that a pool of workers gives before one of them is ended from outside, if any is."""
     pool = ProcessPoolExecutor(workers, get_context("spawn"), initializer=_prepare, initargs=(files, reading))
     before = signal.signal(signal.SIGTERM, _leave)
     try:
         with _undisturbed():
             waiting: dict[Future[Answer], str] = {pool.submit(_work, *item): item[0] for item in names.items()}
         for future in as_completed(waiting):
-            try:
+            if not isinstance(future.exception(), BrokenProcessPool):
                 yield waiting[future], future.result()
-            except BrokenProcessPool:
-                path = waiting[future]
-                yield path, _unread(names[path], "its review ended abruptly, perhaps for want of memory")
+            else:
+                _kill_workers()
     except BaseException:
-        for worker in active_children():
-            worker.kill()
+        _kill_workers()
         raise
     finally:
         pool.shutdown(cancel_futures=True)
         signal.signal(signal.SIGTERM, before)
+
+
+def _kill_workers() -> None:
+    """End the workers at once: they heed no order to end, so that a pool would wait for them for ever."""
+    for worker in active_children():
+        worker.kill()
 
 
 def _leave(number: int, _frame: object) -> None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import os
 import shutil
 import signal
@@ -11,9 +12,9 @@ from pathlib import Path
 
 import pytest
 
-from protlint.cli.many import called, netlists_of
+from protlint.cli.many import called, cores, netlists_of
 from protlint.sources import FileError
-from tests.support.command import COMMAND
+from tests.support.command import COMMAND, protlint
 from tests.support.lamps import lamp_netlist
 
 
@@ -86,3 +87,32 @@ def test_an_end_from_outside_leaves_no_file_no_trace_and_no_process(how: signal.
     while left_over(process.pid) and time.monotonic() < patience:
         time.sleep(0.1)
     assert left_over(process.pid) == []
+
+
+ENDED_FROM_OUTSIDE = """
+import os, signal, sys
+
+def end(event, arguments):
+    if event == "open" and str(arguments[0]).endswith(("b3.edf", "b7.edf")):
+        os.kill(os.getpid(), signal.SIGKILL)
+
+sys.addaudithook(end)
+"""
+"""A ``sitecustomize`` that ends every process that opens one of two netlists, as a system short of memory would."""
+
+
+@pytest.mark.skipif(
+    os.name != "posix" or cores() == 1, reason="SKIPPED: no workers here, or no signal that ends one at once"
+)
+def test_a_netlist_that_ends_its_worker_is_the_only_one_lost(tmp_path: Path) -> None:
+    for number in range(9):
+        (tmp_path / f"b{number}.edf").write_text(lamp_netlist(sense=f"{number + 1}R"), encoding="utf-8")
+    (tmp_path / "site").mkdir()
+    (tmp_path / "site" / "sitecustomize.py").write_text(ENDED_FROM_OUTSIDE, encoding="utf-8")
+    done = protlint("review", ".", "--save", "r.json", folder=tmp_path, PYTHONPATH=str(tmp_path / "site"))
+    assert done.returncode == 2
+    said = "its review ended abruptly twice, perhaps for want of memory"
+    assert done.stderr.splitlines() == [f"{name}: {said}" for name in ("b3.edf", "b7.edf")]
+    report = json.loads((tmp_path / "r.json").read_text(encoding="utf-8"))
+    assert [board["netlist"]["file"] for board in report["boards"]] == [f"b{number}.edf" for number in (0, 1, 2, 4, 5, 6, 8)]
+    assert [error["file"] for error in report["unread"]] == ["b3.edf", "b7.edf"]
