@@ -236,7 +236,7 @@ class NamedCell:
 class _PortFacts:
     """What a cell says of one bit of its ports: its name, the pin numbers listed for it, and a Name property.
 
-    ``called`` is the name and number of the pin wherever its instance says nothing of it; None where that takes a closer look.
+    ``called`` is the name and number of a pin of which its instance says nothing; None where that takes a closer look.
     """
 
     text: str
