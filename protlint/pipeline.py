@@ -14,6 +14,7 @@ from protlint.board.parts_list import Difference, PartsList, differences, read_p
 from protlint.checks.board_case import BoardCase
 from protlint.checks.case import Case
 from protlint.checks.catalogue import CheckRow, load_catalogue
+from protlint.checks.derating import derating_remarks
 from protlint.checks.load import StartUp, start_up_of
 from protlint.checks.part_fails import IfPartFails, if_a_part_fails
 from protlint.checks.table import BOARD_CHECKS, BOUNDED, CHECKS, WITHOUT_SOLUTION
@@ -324,7 +325,7 @@ def _finish(
     spoken_of = [name for one in reviewed for name in _names(board, one.limiter)]
     spoken_of += [name for finding in marked for name in (*finding.parts, *finding.nets)]
     idle = idle_tables(desk.limits, board, spoken_of)
-    remarks: tuple[str, ...] = (*desk.book.remarks, *listed, *idle)
+    remarks: tuple[str, ...] = (*desk.book.remarks, *listed, *derating_remarks(desk.limits.derating), *idle)
     if desk.waivers is not None:
         marked, more = apply_waivers(marked, desk.waivers, on=desk.on)
         remarks += tuple(more)

@@ -31,7 +31,8 @@ class CheckRow:
 
     ``level`` is the level of a finding that states none of its own; ``says`` what is wrong when the check fires, ``why``
     the reason to care, ``formula`` how it is computed, ``source`` where formula and thresholds were published (or
-    ``common practice of the trade``, or ``memory``), ``example`` the board among protlint's examples that it fires on.
+    ``common practice of the trade``, or ``memory``), ``example`` the board among protlint's examples that it fires on,
+    ``figures`` the figures of part data that it looks at besides the circuit's models, by the role of the part.
     """
 
     name: str
@@ -42,6 +43,7 @@ class CheckRow:
     source: str
     example: str
     thresholds: Mapping[str, Threshold]
+    figures: Mapping[str, tuple[str, ...]]
 
 
 def load_catalogue() -> Mapping[str, CheckRow]:
@@ -73,5 +75,6 @@ def load_catalogue() -> Mapping[str, CheckRow]:
                 key: Threshold(float(row["value"]), row.get("unit", ""), row["says"])
                 for key, row in table.get("thresholds", {}).items()
             },
+            figures={role: tuple(names) for role, names in table.get("figures", {}).items()},
         )
     return rows

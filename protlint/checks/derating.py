@@ -77,3 +77,11 @@ def derated(derating: str, kind: str, quantity: str, source: str) -> str:
     """Return a rating's source with the standard that lessens it: ``data sheet, times 0.65 (ECSS-Q-ST-30-11C; memory)``."""
     share = share_of(derating, kind, quantity)
     return source if share == 1.0 else f"{source}, times {share:g} ({STANDARDS[derating].source})"
+
+
+def derating_remarks(derating: str) -> tuple[str, ...]:
+    """Return what a report has to say of a standard whatever its verdicts are: where its figures come from."""
+    source = STANDARDS[derating].source
+    return (
+        (f"every rating is derated by figures of {source.replace('; ', ', from ')}: hold them against it",) if source else ()
+    )

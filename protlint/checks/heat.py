@@ -103,6 +103,10 @@ def _power(case: Case, check: str, part: BoardPart, loads: list[Load]) -> Iterat
     worst = max(loads, key=lambda load: _ratio(load.power_W, rating.at_W(load.ambient_degC) * load.times))
     allowed_W = rating.at_W(worst.ambient_degC) * worst.times
     level = _level(case, check, _ratio(worst.power_W, allowed_W))
+    if level is None and _level(case, check, max(_ratio(one.power_W, rating.at_W(one.ambient_degC)) for one in loads)):
+        case.assumptions.append(
+            f"{part.id}: {OVERLOAD_TIMES:g} times its rating for {OVERLOAD_S:g} s, from memory of IEC 60115-1"
+        )
     if level is not None:
         yield _burns(case, check, part, worst, rating, level)
 

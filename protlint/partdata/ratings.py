@@ -97,6 +97,15 @@ RATINGS: dict[str, Rating] = {
     "tolerance": Rating("fraction", "spread of the value, either way"),
 }
 
+STATIC_FIGURES = (
+    "model", "hfe_min", "hfe_max", "vbe", "vbe_min", "vbe_max", "vgs_th", "vgs_th_min", "vgs_th_max", "gfs", "gfs_min",
+    "rds_on", "rds_on_typ", "vf", "vz", "vz_min", "vz_max", "zz", "resistance",
+)  # fmt: skip
+"""Of what a part's model for direct current is made: its model, or the ratings it is derived from."""
+
+DYNAMIC_FIGURES = ("ft", "cob", "cib", "ciss", "coss", "crss", "cj")
+"""Of what capacitances and transit times are made where the model states none."""
+
 _HEAT = ("power", "power_at", "slope", "power_case", "power_case_at", "slope_case", "tj_max", "rth_jc", "rth_ja")
 _BIPOLAR = (
     *_HEAT, "vceo", "vcbo", "vebo", "ic", "ic_peak", "ib", "hfe_min", "hfe_max", "hfe_at", "vbe", "vbe_min", "vbe_max",

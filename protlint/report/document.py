@@ -7,15 +7,17 @@ bytes of a report; what is not finite or not known is null. ``review-1.schema.js
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING
 
 from protlint import __version__
 from protlint.board.graph import Board, BoardPart
-from protlint.findings import Finding, NotChecked
+from protlint.findings import Finding, NotChecked, WorkingLine
 from protlint.limits import LimiterLimits
 from protlint.partdata.book import PartEntry
+from protlint.partdata.ratings import STATIC_FIGURES
 from protlint.report.answers import answers, rounded, taken
+from protlint.report.memory import FROM_MEMORY, behind, in_use, on_memory
 from protlint.report.shape import CAUTION, Document, summarised
 from protlint.topology.limiter import NETS, ROLES
 
@@ -33,7 +35,8 @@ UNIT_OF_KIND = {"resistor": "ohm", "capacitor": "F", "inductor": "H", "zener": "
 def document(review: Review) -> Document:
     """Return the JSON report of one netlist, version 1: every promised key, null where unknown."""
     limiters = [_limiter(item, review) for item in review.limiters]
-    findings = [_finding(finding, review.board) for finding in review.findings]
+    memory = {limiter["id"]: on_memory(limiter) for limiter in limiters}
+    findings = [_finding(finding, review.board, memory.get(finding.limiter or "", {})) for finding in review.findings]
     not_checked = [_unchecked(row) for row in review.not_checked]
     netlist = review.board.netlist
     return {
@@ -151,7 +154,9 @@ def _parts(item: ReviewedLimiter, board: Board) -> list[Document]:
     return list(listed.values())
 
 
-def _finding(finding: Finding, board: Board) -> Document:
+def _finding(finding: Finding, board: Board, memory: Mapping[str, str]) -> Document:
+    remembered = behind(finding.check, memory)
+    last = [WorkingLine(FROM_MEMORY, remembered, None, "", MEMORY)] if remembered else []
     return {
         "check": finding.check,
         "level": finding.level or "warning",
@@ -159,7 +164,7 @@ def _finding(finding: Finding, board: Board) -> Document:
         "parts": list(finding.parts),
         "nets": list(finding.nets),
         "message": finding.message,
-        "working": [taken(line, *WORKING) for line in finding.working],
+        "working": [taken(line, *WORKING) for line in (*finding.working, *last)],
         "remedy": finding.remedy,
         "assumption": finding.assumption,
         "file": finding.file,
@@ -173,9 +178,16 @@ def _finding(finding: Finding, board: Board) -> Document:
 
 
 def _from_memory(entry: PartEntry) -> list[str]:
-    """Name the figures of a part that nobody has held against a data sheet yet."""
-    names = [name for name, rating in entry.ratings.items() if rating.source == MEMORY]
-    return names + (["model"] if entry.model and entry.model_source == MEMORY else [])
+    """Name the figures of a part that something rests on and that nobody has held against a data sheet yet."""
+    idle = set(STATIC_FIGURES) - {"hfe_min", "hfe_max"} if entry.model else set()
+    if "vbe_min" not in entry.ratings:
+        idle.add("vbe_max")  # alone it tells no usual V_BE
+    sources = [(name, rating.source) for name, rating in entry.ratings.items()]
+    sources += [("model", entry.model_source or "")] if entry.model else []
+    sources += [("safe_area", curve.source) for curve in entry.safe_area]
+    sources += [("transient", point.source) for point in entry.transient]
+    wanted = in_use() - idle | {"model"}
+    return list(dict.fromkeys(name for name, source in sources if source == MEMORY and name in wanted))
 
 
 def _place(part: BoardPart) -> Document:

@@ -20,6 +20,7 @@ from protlint.report.digest import (
     working_line,
 )
 from protlint.report.figures import UNKNOWN, ambient, figure, triple, unit_for
+from protlint.report.memory import remembered, resting
 from protlint.report.safe import markdown, throughout
 from protlint.report.shape import Document, boards_of
 
@@ -38,7 +39,8 @@ def rendered_markdown(report: Document) -> str:
     safe: Document = throughout(report, markdown)
     text = ""
     for working, most in BUDGETS:
-        lines = [line for board in boards_of(safe) for line in _board(board, working, most)]
+        boards = zip(boards_of(safe), boards_of(report), strict=True)
+        lines = [line for board, raw in boards for line in _board(board, raw, working, most)]
         lines += _unread(safe.get("unread", []))
         lines += _folded("Remarks", [f"- {text}" for text in safe["remarks"]]) if "boards" in safe else []
         text = "\n".join([*lines, f"_{safe['caution']}_"]) + "\n"
@@ -89,7 +91,8 @@ def finding_lines(finding: Document, *, working: bool = True) -> list[str]:
     return lines + ([f"  - {working_line(line)}" for line in finding["working"]] if working else [])
 
 
-def _board(board: Document, working: bool, most: int) -> list[str]:
+def _board(board: Document, raw: Document, working: bool, most: int) -> list[str]:
+    """Show one board; ``raw`` is the same before its texts were escaped, for what is looked up by name."""
     lines = [f"## protlint: {board['netlist']['file']}", "", summary_line(board) + ".", ""]
     lines += _limiters(board)
     for level in LEVELS:
@@ -100,6 +103,8 @@ def _board(board: Document, working: bool, most: int) -> list[str]:
     lines += _folded("Not checked", [f"- {text}" for text in _not_checked(board)])
     lines += _folded("Assumed", [f"- {text}" for text in assumptions(board)])
     lines += _folded("From memory, to be held against a data sheet", [f"- {text}" for text in from_memory(board)])
+    rests = [markdown(f"{limiter['id']}: {text}") for limiter in raw["limiters"] for text in resting(limiter)]
+    lines += _folded("What rests on figures from memory", [f"- {text}" for text in rests])
     lines += _folded("Remarks", [f"- {text}" for text in remarks(board)])
     return lines
 
@@ -119,7 +124,7 @@ def _limiters(board: Document) -> list[str]:
         holds = f"{triple(ends, row['holds_A'] / scale)} {unit}" if row["holds_A"] is not None else UNKNOWN
         cells = (
             limiter["id"],
-            limiter["verdict"],
+            limiter["verdict"] + remembered(limiter),
             limiter["topology"],
             figure(hand["least_carries_A"], "A"),
             figure(needs["carry_A"], "A"),

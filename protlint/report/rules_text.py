@@ -101,6 +101,8 @@ def _check(row: CheckRow, colour: bool) -> list[str]:
     for name, limit in row.thresholds.items():
         lines += _fact("threshold", f"{name} = {figure(limit.value, limit.unit)}: {limit.says}")
     lines += _fact("source", row.source)
+    for role, figures in row.figures.items():
+        lines += _fact("part data", f"{', '.join(figures)} of the {role.replace('_', ' ')}")
     lines += ["", *wrapped(f"In the limits file: [checks] {row.name} = {_example(row)}", indent=4, first="  ")]
     return lines
 

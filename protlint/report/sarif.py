@@ -15,6 +15,7 @@ from protlint import __version__
 from protlint.checks.catalogue import CheckRow, load_catalogue
 from protlint.report.digest import left_open, place_of, times, unsolved, waiver_of
 from protlint.report.figures import figure
+from protlint.report.memory import resting
 from protlint.report.safe import json_text, terminal, throughout
 from protlint.report.shape import CAUTION, Document, boards_of
 
@@ -161,6 +162,10 @@ def _notifications(board: Document, artifact: Document, index_of: Mapping[str, i
         if limiter["not_solved"]:
             text = f"{limiter['id']} was not solved{unsolved(limiter)}."
             notifications.append({"level": "warning", "message": message(text)})
+        for text in resting(limiter):
+            notifications.append(
+                {"level": "note", "message": message(f"{limiter['id']} rests on figures from memory: {text}.")}
+            )
     notifications += ({"level": "note", "message": message(f"Assumed: {text}.")} for text in board["assumed"])
     notifications += ({"level": "warning", "message": message(text)} for text in board["remarks"])
     return notifications

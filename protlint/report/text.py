@@ -24,6 +24,7 @@ from protlint.report.digest import (
 )
 from protlint.report.figures import UNKNOWN, aligned, ambient, counted, figure, percent, three_digits, triple, unit_for
 from protlint.report.layout import COLUMNS, fitting, painted, shortened, table, tail, width, wrapped
+from protlint.report.memory import FROM_MEMORY, remembered, resting
 from protlint.report.safe import terminal, throughout
 from protlint.report.shape import Document, boards_of
 
@@ -121,6 +122,8 @@ def _section(limiter: Document | None, name: str | None, found: Sequence[Documen
         told = [line for text in sentences(limiter) for line in wrapped(text, indent=6, first="    ")]
         lines += ["", "  " + painted("how it behaves", "heading", colour=colour), *told] if told else []
         lines += _not_checked(limiter, colour)
+        rests = [line for text in resting(limiter) for line in wrapped(text, indent=6, first="    - ")]
+        lines += ["", "  " + painted("rests on figures from memory", "heading", colour=colour), *rests] if rests else []
     return lines
 
 
@@ -140,7 +143,7 @@ def _heading(limiter: Document, found: Sequence[Document], colour: bool) -> list
     """Say the verdict in words with the figures it stands on, then what the limiter is made of."""
     verdict = limiter["verdict"]
     head = f"{limiter['id']} {verdict}"
-    lines = wrapped(f"{head}{_why(limiter, found)}", indent=2, first="")
+    lines = wrapped(f"{head}{remembered(limiter)}{_why(limiter, found)}", indent=2, first="")
     if lines[0].startswith(head):
         lines[0] = (
             f"{painted(limiter['id'], 'heading', colour=colour)} {painted(verdict, verdict, colour=colour)}"
@@ -214,6 +217,8 @@ def _finding(finding: Document, colour: bool) -> list[str]:
     if finding["remedy"]:
         lines += wrapped(f"remedy: {finding['remedy']}", indent=indent)
     lines += _steps(finding["working"], indent, colour)
+    for line in finding["working"]:
+        lines += wrapped(f"from memory: {line['formula']}", indent=indent) if line["quantity"] == FROM_MEMORY else []
     if finding["waived"] is not None:
         lines += wrapped(f"waived {finding['level']}: {waiver_of(finding)}", indent=indent)
     where = f"{place_of(finding)} {finding['fingerprint']}"

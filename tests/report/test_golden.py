@@ -36,6 +36,7 @@ ROW = CheckRow(
     source="common practice of the trade",
     example="bare-sink",
     thresholds={"small": Threshold(1.0, "V", "below this it is a note")},
+    figures={},
 )
 """A catalogue of one check, so that a new check does not change these files."""
 

@@ -1,0 +1,83 @@
+"""Which verdicts of a limiter rest on figures from memory: told by check, each figure with its parts."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from functools import cache
+
+from protlint.checks.catalogue import load_catalogue
+from protlint.checks.table import WITHOUT_SOLUTION
+from protlint.checks.wiring import WIRING_FAULTS
+from protlint.partdata.ratings import DYNAMIC_FIGURES, STATIC_FIGURES
+from protlint.report.shape import Document
+
+FROM_MEMORY = "from memory"
+"""What the line of a finding's working is called that names the figures from memory behind it."""
+
+CURRENTS = "currents, and all that follows from them"
+LOOP = "loop and delay"
+OF_THE_LOOP = ("compensation-absent", "loop-undamped", "trips-on-peaks", "trips-late")
+NOT_SOLVED_FOR = {*WITHOUT_SOLUTION, *WIRING_FAULTS, "limiter-absent"}
+"""Checks that ask for connections and texts, not for currents."""
+
+
+def on_memory(limiter: Document) -> dict[str, str]:
+    """Return the figures from memory by what rests on them: the currents, the loop, a check; empty where nothing does."""
+    if limiter["not_solved"]:
+        return {}
+    known = {part["id"]: part["from_memory"] for part in limiter["parts"]}
+    figures: dict[str, Mapping[str, tuple[str, ...]]] = {
+        CURRENTS: dict.fromkeys(limiter["roles"], STATIC_FIGURES),
+        LOOP: dict.fromkeys(limiter["roles"], DYNAMIC_FIGURES),
+        **{check: _figures()[check] for check in limiter["asked"]},
+    }
+    found = {what: _named(limiter, known, by_role) for what, by_role in figures.items()}
+    return {what: text for what, text in found.items() if text}
+
+
+def behind(check: str, by_check: Mapping[str, str]) -> str:
+    """Return all figures from memory that a finding of a check rests on, as :func:`on_memory` names them."""
+    if check in NOT_SOLVED_FOR:
+        return ""
+    what = (check, CURRENTS, *([LOOP] if check in OF_THE_LOOP else []))
+    return "; ".join(by_check[one] for one in what if one in by_check)
+
+
+def resting(limiter: Document) -> list[str]:
+    """Return a sentence for each set of figures from memory: the checks that rest on it, and the figures."""
+    checks: dict[str, list[str]] = {}
+    for what, text in on_memory(limiter).items():
+        checks.setdefault(text, []).append(what)
+    return [f"{', '.join(names)}: {text}" for text, names in checks.items()]
+
+
+def remembered(limiter: Document) -> str:
+    """Return what follows the word of a verdict that no finding qualifies, where it rests on figures from memory."""
+    if limiter["not_solved"] or not any(part["from_memory"] for part in limiter["parts"]):
+        return ""
+    return {"passes": ", on figures from memory", "rests on assumptions": " and on figures from memory"}.get(
+        limiter["verdict"], ""
+    )
+
+
+@cache
+def in_use() -> frozenset[str]:
+    """Return the names of all figures of part data that anything rests on."""
+    looked_at = (names for by_role in _figures().values() for names in by_role.values())
+    return frozenset({*STATIC_FIGURES, *DYNAMIC_FIGURES}.union(*looked_at))
+
+
+@cache
+def _figures() -> Mapping[str, Mapping[str, tuple[str, ...]]]:
+    return {row.name: row.figures for row in load_catalogue().values()}
+
+
+def _named(limiter: Document, known: Mapping[str, Sequence[str]], figures: Mapping[str, tuple[str, ...]]) -> str:
+    """Name the figures from memory of the parts in some roles: ``tj_max, rth_jc of Q1, Q2; ib of Q3``."""
+    parts: dict[tuple[str, ...], list[str]] = {}
+    for role, names in figures.items():
+        for part in limiter["roles"].get(role, ()):
+            own = tuple(name for name in names if name in known.get(part, ()))
+            if own and part not in parts.setdefault(own, []):
+                parts[own].append(part)
+    return "; ".join(f"{', '.join(own)} of {', '.join(ids)}" for own, ids in parts.items() if ids)
