@@ -105,3 +105,14 @@ def test_complementary_types_are_of_opposite_polarity_and_equal_strength(npn: st
 def test_contradicting_data_sheets_are_known_by_name() -> None:
     told = {entry.part_number for entry in BOOK.entries.values() if entry.contradictions}
     assert told == {"2N2907A", "2N3791", "2N3792", "MJL3281A", "MJL1302A"}
+
+
+def test_base_current_ratings_are_from_memory_and_such_as_the_collector_current_asks_for() -> None:
+    """From memory, all: at most the collector current, and at least a fiftieth of it (of a Darlington a thousandth)."""
+    rated = {name: entry for name, entry in BOOK.entries.items() if "ib" in entry.ratings}
+    assert len(rated) > 80
+    for name, entry in rated.items():
+        base, collector = entry.ratings["ib"], entry.ratings["ic"]
+        assert base.source == "memory", name
+        least = 1000.0 if entry.kind.endswith("darlington") else 50.0
+        assert collector.value / least <= base.value <= collector.value, name
