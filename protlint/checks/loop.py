@@ -52,7 +52,7 @@ def loop_undamped(case: Case) -> Iterator[Answer]:
         return
     advice = _advice(case, loop)
     fit = _fit(case, advice)
-    oscillates = "oscillates" if loop.own_damping < 0.0 else "can oscillate" if _grows(loop) else "rings"
+    oscillates = "oscillates" if loop.own_damping < 0.0 else "can oscillate" if loop.can_grow else "rings"
     cause = f"; {advice.costs} costs it" if advice is not None and advice.costs is not None else ""
     yield case.finding(
         check,
@@ -112,11 +112,7 @@ def _level(case: Case, check: str, loop: Loop) -> Level | None:
         return "error"
     if loop.own_damping < case.threshold(check, "warning"):
         return "warning"
-    return "note" if _grows(loop) else None
-
-
-def _grows(loop: Loop) -> bool:
-    return loop.worst is not None and loop.worst.damping < 0.0
+    return "note" if loop.can_grow else None
 
 
 def _working(case: Case, loop: Loop) -> Iterator[WorkingLine]:

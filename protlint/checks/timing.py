@@ -227,7 +227,7 @@ def _calm(case: Case, circuit: Circuit) -> bool:
     loop = solve_loop(circuit, case.limits.ambient_degC, short=case.solution.short)
     if not isinstance(loop, Loop) or loop.own_damping is None or loop.worst is None:
         return False
-    return loop.own_damping >= case.threshold("loop-undamped", "warning") and loop.worst.damping >= 0.0
+    return loop.own_damping >= case.threshold("loop-undamped", "warning") and not loop.can_grow
 
 
 def _bears(case: Case, circuit: Circuit) -> bool:

@@ -49,8 +49,7 @@ def with_dynamics(
 
 
 def _badly_damped(loop: Loop) -> bool:
-    own, worst = loop.own_damping, loop.worst_damping
-    return (own is not None and own < ADVISED_BELOW) or (worst is not None and worst < 0.0)
+    return (loop.own_damping is not None and loop.own_damping < ADVISED_BELOW) or loop.can_grow
 
 
 def _needs(reason: str) -> tuple[str, ...]:

@@ -8,6 +8,9 @@ from dataclasses import dataclass, field
 Pair = tuple[float, float]
 """A low and a high end."""
 
+WIRING_TAKES_UP = 1e-3
+"""Damping that the resistance of any real wiring adds, which no netlist states."""
+
 
 @dataclass(frozen=True, slots=True)
 class Currents:
@@ -126,6 +129,13 @@ class Loop:
     worst_without_wiring: Worst | None = None
     natural: tuple[tuple[float, float], ...] = ()
     table: tuple[tuple[float, float, float], ...] = ()
+
+    @property
+    def can_grow(self) -> bool:
+        """Whether a mode of the limiter's grows somewhere: within every spread, or with wiring by more than that takes up."""
+        without, worst = self.worst_without_wiring, self.worst
+        grows = without is not None and without.damping < 0.0
+        return grows or (worst is not None and worst.damping < -WIRING_TAKES_UP)
 
 
 @dataclass(frozen=True, slots=True)

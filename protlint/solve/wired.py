@@ -1,9 +1,9 @@
 """A limiter's linear circuit with wiring to the short, and which of its natural frequencies are the limiter's own.
 
 A mode is the limiter's where taking the shunt's transconductance out, at the same operating point, raises its damping by
-more than a quarter of itself, or to where it does not swing at all. Wiring and a board's output capacitance swing at
-dampings of a hundredth, of which a quarter is nothing: the rise has to be 0.25 at least where wiring lies in the short, 0.1
-where none does. Which mode has become which is followed while the transconductance shrinks.
+more than a quarter of itself, or to where it does not swing at all. A board's output capacitance swings against wiring at
+dampings of a thousandth, of which a quarter is nothing anybody could measure: a rise below 0.02, to which dampings agree
+with an outside simulator, is none. Which mode has become which is followed while the transconductance shrinks.
 """
 
 from __future__ import annotations
@@ -31,7 +31,7 @@ from protlint.solve.modes import Basis, Complex, Mask, damping, independent, nat
 from protlint.solve.stage import Run
 
 RAISED_BY = 0.25
-LEAST_RISE, LEAST_RISE_WIRED = 0.1, 0.25
+LEAST_RISE = 0.02
 STILL = 1.0 - 1e-6
 """A damping above is that of a real pole, by its rounding."""
 
@@ -112,8 +112,7 @@ def counting(wired: Wired, wiring_H: float, s: Complex) -> Mask:
     """Tell which of the natural frequencies ``s`` (lanes, modes) swing or grow and are the limiter's own."""
     now = damping(s)
     swings = np.isfinite(s) & ((np.abs(s.imag) > 0.0) | (s.real > 0.0))
-    least = LEAST_RISE if wiring_H == 0.0 else LEAST_RISE_WIRED
-    asked = np.minimum(now + np.maximum(RAISED_BY * np.abs(now), least), STILL)
+    asked = np.minimum(now + np.maximum(RAISED_BY * np.abs(now), LEAST_RISE), STILL)
     bare = damping(_frequencies(wired, port_resistances(_left(wired, 0.0), wired.A), wired.c, wiring_H))
     # where nothing at all is damped that little without the shunt, there is nothing to follow
     counts: Mask = swings & (bare.min(axis=1, initial=1.0)[:, None] > asked)
