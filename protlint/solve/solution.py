@@ -132,7 +132,7 @@ class Loop:
 
     @property
     def can_grow(self) -> bool:
-        """Whether a mode of the limiter's grows somewhere: within every spread, or with wiring by more than that takes up."""
+        """Whether a mode of the limiter's grows within every spread, or with wiring by more than that takes up."""
         without, worst = self.worst_without_wiring, self.worst
         grows = without is not None and without.damping < 0.0
         return grows or (worst is not None and worst.damping < -WIRING_TAKES_UP)

@@ -124,7 +124,7 @@ def test_the_wiring_s_own_mode_does_not_count() -> None:
 
 @pytest.mark.parametrize("wiring_H", WIRING_H[1:])
 @pytest.mark.parametrize("farad", [1e-6, 1e-5, 1e-4])
-def test_output_capacitors_ring_against_the_wiring_of_a_sink_with_or_without_its_shunt(farad: float, wiring_H: float) -> None:
+def test_output_capacitors_ring_against_a_sink_s_wiring_with_or_without_its_shunt(farad: float, wiring_H: float) -> None:
     """A collector damps next to nothing, limited or not: dampings of a thousandth and less are not the limiter's."""
     circuit = replace(bench_circuit("sink"), output_capacitance_F=farad)
     own, foreign = at_wiring(circuit, wiring_H)
@@ -138,7 +138,7 @@ def test_output_capacitors_ring_against_the_wiring_of_a_sink_with_or_without_its
 
 @pytest.mark.parametrize("wiring_H", WIRING_H[1:])
 @pytest.mark.parametrize("farad", [1e-6, 1e-5, 1e-4])
-def test_output_capacitors_ring_more_against_the_wiring_of_a_follower_that_limits(farad: float, wiring_H: float) -> None:
+def test_output_capacitors_ring_more_against_a_follower_s_wiring_when_it_limits(farad: float, wiring_H: float) -> None:
     """A tank beside a resistance R has the damping sqrt(L / C) / 2 R; the loop gain T makes R of a follower (1 + T) times
     as large. So taking the shunt out raises the damping by T times itself: the mode counts where that is more than 0.02.
 
