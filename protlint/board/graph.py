@@ -1,7 +1,8 @@
 """The board as circuit people see it: parts with kinds and roles, nets with voltages, banks and chains as one.
 
 Two views of one board: the public networkx ``MultiGraph`` (part nodes, net nodes, the pin as edge key), and the plain
-index of nets and elements that matching and solving run on.
+index of nets and elements that matching and solving run on. Parts, nets and elements are never changed once they are made;
+they are not frozen because a board has tens of thousands, and freezing costs more than all that is in them.
 """
 
 from __future__ import annotations
@@ -46,7 +47,7 @@ class Values:
     unreadable: str | None = None
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(slots=True)
 class BoardPart:
     """A placed part with what protlint made of it. ``roles`` maps a terminal's role to the index of its board net."""
 
@@ -76,7 +77,7 @@ class Supply:
     known_from: str
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(slots=True)
 class BoardNet:
     """A net after links are gone. ``names`` holds every united netlist net's name, the shown one first."""
 
@@ -92,7 +93,7 @@ class BoardNet:
         return self.names[0]
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(slots=True)
 class Element:
     """What matching and solving see: one part, or resistors merged from banks and unbranched chains.
 
