@@ -27,27 +27,56 @@ def solved(circuit: Circuit) -> Step:
     return step
 
 
-@pytest.mark.parametrize(("name", "case", "figures"), bench_cases("step_into_short"))
-def test_steps_agree_with_the_bench(name: str, case: str, figures: dict[str, Any]) -> None:
-    """Source: fixtures/bench-circuits.json, a general-purpose simulator's transient runs.
+CREEPING = {
+    ("sink", "100 nF base to emitter of the shunt"),
+    ("sink", "1 uF base to emitter of the shunt"),
+    ("source_pnp", "as drawn"),
+}
+"""Bench cases whose current creeps past 1.1 times holds, so that a long time step of the bench's runs moves their delay."""
 
-    Its delays are the last of its own time points above the level, so they fall short of the crossing by up to one of its
-    steps; where the current creeps past the level that is a tenth of the delay, and of the energy. So the delay may be up to
-    10 % (and 1 ns) longer, no shorter; and at the bench's own delay the current is 1.1 times holds within 1 %, the energy
-    the bench's within 2 %. The same runs with short steps are in test_delay_simulated.py.
-    """
+
+def test_all_steps_into_the_short_beside_the_bench() -> None:
+    """A table of every case, ours, the bench file's and the ratio; the figures are held below."""
+    print()
+    for name, case, figures in bench_cases("step_into_short"):
+        step = solved(bench_case(name, case))
+        print(f"{name}, {case}: settles {step.settles} / {figures['settles']}")
+        for key in ("delay_s", "peak_A", "pass_energy_J"):
+            ours, theirs = getattr(step, key), figures[key]
+            ratio = f"{ours / theirs:.4f}" if ours and theirs else "-"
+            print(f"    {key:14} {ours!s:24} {theirs!s:10} {ratio}")
+        assert step.settles == figures["settles"]
+
+
+@pytest.mark.parametrize(
+    ("name", "case", "figures"), [one for one in bench_cases("step_into_short") if one[:2] not in CREEPING]
+)
+def test_steps_agree_with_the_bench(name: str, case: str, figures: dict[str, Any]) -> None:
+    """Source: fixtures/bench-circuits.json, a general-purpose simulator's transient runs; delay and energy within 1.5 %."""
     step = solved(bench_case(name, case))
     assert step.settles == figures["settles"]
     assert step.peak_A == pytest.approx(figures["peak_A"], rel=2e-3)
     if not figures["settles"]:
-        assert step.delay_s is None
-        assert step.pass_energy_J is None
+        assert (step.delay_s, step.pass_energy_J) == (None, None)
         return
+    assert step.delay_s == pytest.approx(figures["delay_s"], rel=0.015)
+    assert step.pass_energy_J == pytest.approx(figures["pass_energy_J"], rel=0.015)
+
+
+@pytest.mark.parametrize(("name", "case", "figures"), [one for one in bench_cases("step_into_short") if one[:2] in CREEPING])
+def test_steps_that_creep_past_the_level_take_a_time_step_longer_than_the_bench_says(
+    name: str, case: str, figures: dict[str, Any]
+) -> None:
+    """The bench's delay is the last of its own time points above the level, up to a step of 200 ns before the crossing, and
+    its energy ends there. So ours may be as much longer, no shorter; at the bench's own delay the current is 1.1 times holds
+    within 1 %, the energy the bench's within 0.5 %. That long steps give the bench's figures and short ones ours is shown
+    live in test_delay_simulated.py.
+    """
+    step = solved(bench_case(name, case))
+    assert step.settles
+    assert step.peak_A == pytest.approx(figures["peak_A"], rel=5e-4)
     assert step.delay_s is not None
-    assert figures["delay_s"] * 0.995 - 1e-9 <= step.delay_s <= figures["delay_s"] * 1.1 + 1e-9
-    if not figures["delay_s"]:
-        assert step.pass_energy_J == 0.0
-        return
+    assert figures["delay_s"] < step.delay_s < min(figures["delay_s"] + 200e-9, 1.1 * figures["delay_s"])
     trial = prepare_step(bench_case(name, case), AMBIENTS)
     times, currents, energies = [0.0], [trial.read(trial.start).output_A], [0.0]
     power = trial.read(trial.start).pass_W[0]
@@ -60,7 +89,7 @@ def test_steps_agree_with_the_bench(name: str, case: str, figures: dict[str, Any
         if at.time_s > figures["delay_s"]:
             break
     assert np.interp(figures["delay_s"], times, currents) / trial.holds_A == pytest.approx(OVER, rel=0.01)
-    assert np.interp(figures["delay_s"], times, energies) == pytest.approx(figures["pass_energy_J"], rel=0.02)
+    assert np.interp(figures["delay_s"], times, energies) == pytest.approx(figures["pass_energy_J"], rel=0.005)
 
 
 @pytest.mark.parametrize(("name", "farad"), [("sink", 1e-8), ("follower", 3e-8)])

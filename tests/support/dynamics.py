@@ -161,34 +161,46 @@ def simulated_gain(circuit: Circuit, frequency_Hz: Sequence[float], *, output_V:
 
 
 def simulated_step(
-    circuit: Circuit, *, begin_V: float, short_V: float, drive_V: float, until_s: float, points: int = 4000
+    circuit: Circuit,
+    *,
+    begin_V: float,
+    short_V: float,
+    drive_V: float,
+    until_s: float,
+    longest_s: float,
+    rests_s: float = 0.0,
 ) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Run ngspice through the step into the short in 100 ns; return times, output currents into the circuit, and the power
-    into the output device's collector and base."""
+    """Run ngspice through the step into the short in 100 ns; return times from its start, output currents into the circuit,
+    and the power into the output device's collector and base, at the simulator's own time points.
+
+    ``longest_s`` is the longest time step; the circuit rests for ``rests_s`` before, which moves the time points.
+    """
     passing = next(device for device in circuit.devices if device.name == circuit.pass_devices[0])
     static = [device for device in circuit.devices if device.kind not in ("capacitor", "inductor")]
     number = static.index(passing)
     output = ngspice._node(circuit.output)
+    rest = f"0 {begin_V!r} " if rests_s else ""
+    ramp = f"pwl({rest}{rests_s!r} {begin_V!r} {rests_s + 1e-7!r} {short_V!r})"
     lines = [
-        f"voutput {output} 0 pwl(0 {begin_V!r} 100n {short_V!r})" if line.startswith("voutput ") else line
+        f"voutput {output} 0 {ramp}" if line.startswith("voutput ") else line
         for line in moving_deck(circuit, output_V=begin_V, drive_V=drive_V)
     ]
     collector, base, emitter = (f"v({ngspice._node(node)})" for node in passing.nodes)
     # the branch voltages of the device, and its terminal currents as the simulator has them
     power = f"({collector}-{emitter})*@q{number}[ic]+({base}-{emitter})*@q{number}[ib]"
-    longest = repr(until_s / points)
     with tempfile.TemporaryDirectory() as folder:
         data = Path(folder) / "out.data"
         commands = (
             f"save all @q{number}[ic] @q{number}[ib]",
-            f"tran {longest} {until_s!r} 0 {longest}",
+            f"tran {longest_s!r} {rests_s + until_s!r} 0 {longest_s!r}",
             f"let power = {power}",
             f"wrdata {data} i(voutput) power",
         )
         printed = run_deck(lines, commands)
         assert data.exists(), printed
         rows = np.loadtxt(data)
-    return rows[:, 0], -rows[:, 1], rows[:, 3]
+    moving = rows[:, 0] >= rests_s * (1.0 - 1e-9)
+    return rows[moving, 0] - rests_s, -rows[moving, 1], rows[moving, 3]
 
 
 def last_above(times: np.ndarray, currents: np.ndarray, level: float) -> float:
