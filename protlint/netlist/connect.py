@@ -229,6 +229,7 @@ class _Wirer:
         for placement in self.placements:
             for bit in placement.pins.keys() & placement.block.strange if placement.block.strange else ():
                 self._note_strange(placement, bit)
+            self.budget.spend(len(placement.block.globals), placement.instance.offset)
             for bit, ref in placement.block.globals.items():
                 placement.pins[bit] = (self.own[self._lead_out(bit, ref)], ref.offset)
             if placement.block.shorts:

@@ -9,7 +9,7 @@ from protlint.netlist.definitions import Name, Port, Scope
 from protlint.netlist.forms import Places
 
 ELEMENTS_LIMIT = 1_000_000
-"""Most elements of arrays that one file may name, however few characters that takes."""
+"""Most elements of arrays and ends of globals that one file may name, however few characters that takes."""
 
 
 def element_of(dimensions: tuple[int, ...], member: tuple[int, ...]) -> int | None:
@@ -145,7 +145,7 @@ class Globals:
 
 
 class Budget:
-    """How many elements of arrays a file may still name."""
+    """How many elements of arrays, and ends of globals, a file may still name."""
 
     def __init__(self, places: Places) -> None:
         self.places = places
@@ -160,7 +160,7 @@ class Budget:
         """
         self.left -= elements
         if self.left < 0:
-            message = f"the arrays of this file name more than {ELEMENTS_LIMIT} elements; protlint reads no more"
+            message = f"the arrays and globals of this file name more than {ELEMENTS_LIMIT} elements; protlint reads no more"
             raise self.places.error(message, offset)
 
 

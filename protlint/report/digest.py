@@ -116,6 +116,7 @@ def assumptions(board: Document) -> list[str]:
 
     Sentences that differ in the names of a limiter's own nets alone are one assumption, told with the first one's names.
     """
+    unlike: set[str] = set()
     said: dict[str, str] = {}
     touched: dict[str, list[str]] = {}
     for text in board["assumed"]:
@@ -127,9 +128,15 @@ def assumptions(board: Document) -> list[str]:
             of_part = bool(colon) and (name in parts or _DESIGNATORS.fullmatch(name) is not None)
             sentence = rest if of_part else text
             key = _without_nets(sentence, limiter)
-            said.setdefault(key, sentence)
+            if said.setdefault(key, sentence) != sentence:
+                unlike.add(key)
             touched.setdefault(key, []).append(name if of_part else limiter["id"])
-    return [f"{said[key]} ({listed(list(dict.fromkeys(names)))})" if names else said[key] for key, names in touched.items()]
+    told = []
+    for key, names in touched.items():
+        first, *others = dict.fromkeys(names) if names else ("",)
+        every = f"{first}, and on nets of their own {listed(others)}" if key in unlike else listed([first, *others])
+        told.append(f"{said[key]} ({every})" if names else said[key])
+    return told
 
 
 def _without_nets(text: str, limiter: Document) -> str:

@@ -9,8 +9,9 @@ from collections import Counter
 from collections.abc import Iterable
 from typing import TYPE_CHECKING
 
+from protlint.board.attributes import file_habits
 from protlint.board.graph import Board, BoardPart
-from protlint.limits import Range
+from protlint.limits import ATTRIBUTES, Limits, Range
 from protlint.report.answers import rounded
 from protlint.report.document import document
 from protlint.report.shape import Document
@@ -35,14 +36,17 @@ def survey(review: Review) -> Document:
     return {
         "caution": report["caution"],
         "netlist": report["netlist"],
-        "reading": [[name, str(sentence)] for name, sentence in board.netlist.facts.items()],
+        "reading": [
+            *([name, str(sentence)] for name, sentence in board.netlist.facts.items()),
+            *_habits(board, review.limits),
+        ],
         "kinds": _counted((part.kind, part.kind_from) for part in board.parts),
         "pins": _counted((part.kind, part.roles_from) for part in board.parts if part.kind in ROLED_KINDS),
         "values": _values(board),
         "unknown": {
             "kind": [part.id for part in board.parts if part.kind == "unknown"],
             "pins": [part.id for part in board.parts if part.kind in ROLED_KINDS and not part.roles],
-            "part_data": _types_without_data(board),
+            "part_data": _types_without_data(board, {part["id"] for one in report["limiters"] for part in one["parts"]}),
         },
         "supplies": [
             {"net": net.name, **_ends(net.supply.voltage_V), "known_from": net.supply.known_from}
@@ -67,6 +71,28 @@ def survey(review: Review) -> Document:
         "assumed": report["assumed"],
         "remarks": [*review.found.remarks, *review.remarks],
     }
+
+
+def _habits(board: Board, limits: Limits) -> list[list[str]]:
+    """Tell which properties of the file tell what, and what its commas mean where its values have any."""
+    if not board.netlist.parts:
+        return []
+    habits = file_habits(board.netlist, limits)
+    told = [
+        [
+            f"{attribute.replace('_', ' ')} from",
+            ", ".join(f"{name} ({count})" for name, count in habits.found[attribute].items()),
+        ]
+        for attribute in ATTRIBUTES
+        if habits.found[attribute]
+    ]
+    silent = [attribute.replace("_", " ") for attribute in ATTRIBUTES if not habits.found[attribute]]
+    if silent:
+        told.append(["no property tells", ", ".join(silent)])
+    properties = (part.properties.get(key) for part in board.netlist.parts for key in habits.names["value"])
+    if any(item is not None and "," in str(item.value) for item in properties):
+        told.append(["commas", habits.comma_from])
+    return told
 
 
 def _counted(pairs: Iterable[tuple[str, str]]) -> list[Document]:
@@ -96,13 +122,14 @@ def _values(board: Board) -> Document:
     }
 
 
-def _types_without_data(board: Board) -> list[Document]:
-    """List the semiconductor types of which nothing is known, with the parts of each."""
+def _types_without_data(board: Board, of_limiters: set[str]) -> list[Document]:
+    """List the semiconductor types of which nothing is known, with the parts of each; those that limiters use come first."""
     lacking: dict[str, list[str]] = {}
     for part in board.parts:
         if part.kind in ROLED_KINDS and part.entry is None:
             lacking.setdefault(_type_of(part), []).append(part.id)
-    return [{"part_number": number, "parts": parts} for number, parts in lacking.items()]
+    types = sorted(lacking.items(), key=lambda each: of_limiters.isdisjoint(each[1]))
+    return [{"part_number": number, "parts": parts} for number, parts in types]
 
 
 def _type_of(part: BoardPart) -> str:

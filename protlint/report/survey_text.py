@@ -99,13 +99,22 @@ def _sources(row: Document) -> str:
 
 
 def _supplies(supplies: Sequence[Document]) -> list[str]:
-    rows = [[supply["net"], _range(supply), f"by {supply['known_from']}"] for supply in supplies[:MOST_NAMES]]
+    alike: dict[tuple[str, str, str], list[str]] = {}
+    for supply in supplies:  # one inside each of many like blocks is told once
+        inside, _, name = supply["net"].rpartition("/")
+        key = (name if inside else f"/{name}", _range(supply), supply["known_from"])
+        alike.setdefault(key, []).append(supply["net"])
+    told = list(alike.items())
+    rows = [
+        [f"{nets[0]} and {len(nets) - 1} alike" if nets[1:] else nets[0], held, f"by {known_from}"]
+        for (_, held, known_from), nets in told[:MOST_NAMES]
+    ]
     if any(len(row[0]) > 30 for row in rows):
         lines = [line for row in rows for line in wrapped(": ".join(row), indent=4, first="  ")]
     else:
         lines = table(rows, left=(0, 1, 2))
-    if len(supplies) > MOST_NAMES:
-        lines.append(f"  and {len(supplies) - MOST_NAMES} more")
+    if len(told) > MOST_NAMES:
+        lines.append(f"  and {len(told) - MOST_NAMES} more")
     return lines
 
 
@@ -129,8 +138,10 @@ def _missing(facts: Document) -> list[str]:
     ]
     if len(values["unreadable"]) > MOST_NAMES:
         texts.append(f"and {len(values['unreadable']) - MOST_NAMES} more values not read")
-    for row in unknown["part_data"]:
+    for row in unknown["part_data"][:MOST_NAMES]:
         texts.append(f"no part data for {row['part_number']} (--parts): {listed(row['parts'])}")
+    if len(unknown["part_data"]) > MOST_NAMES:
+        texts.append(f"no part data for {listed([row['part_number'] for row in unknown['part_data'][MOST_NAMES:]])}")
     return _items(texts)
 
 
@@ -148,12 +159,15 @@ def _limiters(limiters: Sequence[Document], colour: bool) -> list[str]:
 
 
 def _figures(limiter: Document) -> str | None:
-    """Return what was solved for, apart from names, so that like channels are told once; None where nothing was."""
+    """Return what was held and solved for, apart from names, so that like channels are told once; None where nothing was."""
     if limiter["held_short"] is None:
         return None
     states = [[value for key, value in device.items() if key != "device"] for device in limiter["held_short"]["devices"]]
     moves = [[row["parameter"], row["relative"]] for row in limiter["sensitivities"]]
-    return json.dumps([limiter["topology"], limiter["polarity"], states, moves, limiter["loop"], limiter["loop_table"]])
+    held = [words for _, words in limiter["held"]]
+    drive = {key: value for key, value in (limiter["drive_ends"] or {}).items() if key != "node"}
+    kind = [limiter["topology"], limiter["polarity"], held, drive]
+    return json.dumps([kind, states, moves, limiter["loop"], limiter["loop_table"]])
 
 
 def _limiter(limiter: Document, colour: bool, like: str | None) -> list[str]:
@@ -170,17 +184,20 @@ def _limiter(limiter: Document, colour: bool, like: str | None) -> list[str]:
     drive = limiter["drive_ends"]
     driven = drive["node"] if drive is not None else None
     held = _nets([pair for pair in limiter["held"] if pair[0] != driven])
-    if held:
+    if like is not None:
+        own = f"output {limiter['nets']['output']}" + (f", drive {driven}" if driven is not None else "")
+        lines += wrapped(f"{own}; held, driven and solved as {like}", indent=6, first="    ")
+    elif held:
         lines += wrapped("; ".join(f"{', '.join(nets)} {words}" for words, nets in held.items()), indent=6, first="    ")
-    if drive is not None:
+    if drive is not None and like is None:
         lines += wrapped(_drive(drive), indent=6, first="    ")
-    if limiter["shorts"]:
+    if limiter["shorts"] and like is None:
         lines += wrapped(f"a short ties the output to {', '.join(limiter['shorts'])}", indent=6, first="    ")
     lines += [line for need in limiter["missing"] for line in wrapped(f"missing: {need}", indent=6, first="    ")]
     if limiter["also_matched"]:
         lines += wrapped(f"also fits: {', '.join(limiter['also_matched'])}", indent=6, first="    ")
     if like is not None:
-        return [*lines, *wrapped(f"currents, voltages and loop as {like}", indent=6, first="    ")]
+        return lines
     lines += _sensitivities(limiter["sensitivities"])
     lines += _states(limiter["held_short"])
     lines += _loop(limiter["loop"], limiter["loop_table"])

@@ -283,6 +283,13 @@ def test_what_is_too_large_is_refused_in_bounded_time(name: str) -> None:
     assert time.perf_counter() - started < 60  # a bound on hanging, no measure of speed
 
 
+def test_globals_that_every_one_of_many_cells_leads_out() -> None:
+    busy = cell("BUSY", "".join(f"(net N{number} (joined (globalPortRef G{number})))" for number in range(1000)))
+    contents = "".join(placed(f"X{number}", "BUSY") for number in range(1500))
+    with pytest.raises(InputError, match=f"globals of this file name more than {ELEMENTS_LIMIT} elements"):
+        read(board(contents, cells=busy))
+
+
 def nest(levels: int, width: int) -> str:
     """Cells each of which places the one before ``width`` times, with a net apiece."""
     cells = [RES, cell("C0", placed("R1", "R"))]

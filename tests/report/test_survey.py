@@ -88,7 +88,7 @@ def test_figures_of_like_channels_are_told_once() -> None:
     other = {**first, "id": "Q77", "held_short": {**first["held_short"], "output_A": first["held_short"]["output_A"]}}
     text = rendered_survey({**facts, "limiters": [first, other]})
     assert text.count("in the held short  current") == 1
-    assert "currents, voltages and loop as Q10" in text
+    assert "held, driven and solved as Q10" in text
     unlike = {**other, "sensitivities": []}
     assert rendered_survey({**facts, "limiters": [first, unlike]}).count("in the held short  current") == 2
 

@@ -98,7 +98,7 @@ def test_assumptions_that_differ_in_net_names_alone_are_one() -> None:
         }
         for number in (1, 2, 3)
     ]
-    assert "  - the drive on F1 is stiff (Q1, Q2, Q3)" in rendered_text(report)
+    assert "  - the drive on F1 is stiff (Q1, and on nets of their own Q2, Q3)" in rendered_text(report)
 
 
 def test_colour_only_where_asked() -> None:

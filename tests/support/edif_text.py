@@ -31,12 +31,12 @@ def flat_netlist(name: str, parts: Sequence[Drawn], *, remark: str) -> str:
     ]  # fmt: skip
     for cell, pins in _cells(parts).items():
         lines += [
-            f"    (cell {_name(cell)}",
+            f"    (cell {name_of(cell)}",
             "      (cellType GENERIC)",
             "      (view NETLIST",
             "        (viewType NETLIST)",
         ]
-        lines += ["        (interface", *(f"          (port {_name(pin)} (direction INOUT))" for pin in pins)]
+        lines += ["        (interface", *(f"          (port {name_of(pin)} (direction INOUT))" for pin in pins)]
         lines[-1] += ")))"
     lines[-1] += ")"
     lines += [
@@ -45,15 +45,15 @@ def flat_netlist(name: str, parts: Sequence[Drawn], *, remark: str) -> str:
         "        (interface)", "        (contents",
     ]  # fmt: skip
     for part in parts:
-        reference = f"(viewRef NETLIST (cellRef {_identifier(part.cell)} (libraryRef PARTS)))"
+        reference = f"(viewRef NETLIST (cellRef {identifier(part.cell)} (libraryRef PARTS)))"
         lines += [f"          (instance {numbers[part.designator]}", f"            {reference}"]
         lines += [f'            (designator "{part.designator}")']
         for key, text in (("VALUE", part.value), ("PART_NUMBER", part.part_number), ("POWER", part.power)):
             lines += [f'            (property {key} (string "{_escaped(text)}"))'] if text else []
         lines[-1] += ")"
     for net, pins_on in _nets(parts).items():
-        lines += [f"          (net {_name(net)}", "            (joined"]
-        lines += [f"              (portRef {_identifier(pin)} (instanceRef {numbers[part]}))" for part, pin in pins_on]
+        lines += [f"          (net {name_of(net)}", "            (joined"]
+        lines += [f"              (portRef {identifier(pin)} (instanceRef {numbers[part]}))" for part, pin in pins_on]
         lines[-1] += "))"
     lines[-1] += "))))"
     lines += [f"  (design {name}", f"    (cellRef {name} (libraryRef DESIGN))))"]
@@ -69,15 +69,15 @@ def schematic_pages(name: str, parts: Sequence[Drawn], *, remark: str, pages: in
         "(EXTERNAL DEVICES (EDIFLEVEL 0) (TECHNOLOGY (NUMBERDEFINITION) (FIGUREGROUP WIRE (COLOR 0 0 100)))",
     ]  # fmt: skip
     for cell, pins in _cells(parts).items():
-        lines += [f"(CELL {_name(cell)} (CELLTYPE GENERIC) (VIEW SYMBOL (VIEWTYPE SCHEMATIC) (INTERFACE"]
-        lines += [f"  (PORT {_name(pin)} (DIRECTION INOUT))" for pin in pins]
+        lines += [f"(CELL {name_of(cell)} (CELLTYPE GENERIC) (VIEW SYMBOL (VIEWTYPE SCHEMATIC) (INTERFACE"]
+        lines += [f"  (PORT {name_of(pin)} (DIRECTION INOUT))" for pin in pins]
         lines += ["  (SYMBOL (FIGURE WIRE (RECTANGLE (PT 0 0) (PT 40 20)))))))"]
     nets = _nets(parts)
     page_of = {part.designator: place * pages // len(parts) for place, part in enumerate(parts)}
     shared = {net for net, pins in nets.items() if len({page_of[part] for part, _ in pins}) > 1}
     lines += [")", f"(LIBRARY BOARD (EDIFLEVEL 0) (TECHNOLOGY (NUMBERDEFINITION)) (CELL {name} (CELLTYPE GENERIC)"]
     lines += ["(VIEW DRAWING (VIEWTYPE SCHEMATIC) (INTERFACE) (CONTENTS"]
-    lines += [f"  (OFFPAGECONNECTOR {_name(net)})" for net in nets if net in shared]
+    lines += [f"  (OFFPAGECONNECTOR {name_of(net)})" for net in nets if net in shared]
     for page in range(pages):
         lines += [f"  (PAGE PAGE{page + 1} (PAGESIZE (RECTANGLE (PT 0 0) (PT 1600 1000)))"]
         for place, part in enumerate(one for one in parts if page_of[one.designator] == page):
@@ -103,7 +103,7 @@ def drawn(netlist: Netlist) -> list[Drawn]:
 
 
 def _placed(part: Drawn, place: int) -> Iterator[str]:
-    yield f"    (INSTANCE {part.designator} (VIEWREF SYMBOL (CELLREF {_identifier(part.cell)} (LIBRARYREF DEVICES)))"
+    yield f"    (INSTANCE {part.designator} (VIEWREF SYMBOL (CELLREF {identifier(part.cell)} (LIBRARYREF DEVICES)))"
     yield f"      (TRANSFORM (ORIGIN (PT {100 + 60 * place} {200 + 20 * (place % 7)})))"
     named = {"Value": part.value, '(RENAME Part_Number "Part Number")': part.part_number, "Power": part.power}
     for key, text in named.items():
@@ -114,9 +114,9 @@ def _placed(part: Drawn, place: int) -> Iterator[str]:
 
 def _wired(net: str, pins: Sequence[tuple[str, str]], number: int, *, connector: bool) -> Iterator[str]:
     yield f'    (NET (RENAME N{number:05} "{_escaped(net)}") (JOINED'
-    yield from (f"        (PORTREF {_identifier(pin)} (INSTANCEREF {part}))" for part, pin in pins)
+    yield from (f"        (PORTREF {identifier(pin)} (INSTANCEREF {part}))" for part, pin in pins)
     if connector:
-        yield f"        (PORTREF {_identifier(net)})"
+        yield f"        (PORTREF {identifier(net)})"
     yield f"      ) (FIGURE WIRE (PATH (POINTLIST (PT {10 * number} 0) (PT {10 * number} 50)))))"
 
 
@@ -136,15 +136,16 @@ def _nets(parts: Sequence[Drawn]) -> dict[str, list[tuple[str, str]]]:
     return nets
 
 
-def _identifier(text: str) -> str:
+def identifier(text: str) -> str:
     """Return an EDIF identifier for a name: what it cannot hold becomes an underscore, a digit in front gets ``&``."""
     safe = re.sub(r"[^A-Za-z0-9_]", lambda found: {"+": "P_", "-": "M_"}.get(found[0], "_"), text)
     return safe if safe[:1].isalpha() else f"&{safe}"
 
 
-def _name(text: str) -> str:
-    identifier = _identifier(text)
-    return identifier if identifier == text else f'(rename {identifier} "{_escaped(text)}")'
+def name_of(text: str) -> str:
+    """Return a name's definition: the identifier alone where that is the name."""
+    safe = identifier(text)
+    return safe if safe == text else f'(rename {safe} "{_escaped(text)}")'
 
 
 def _escaped(text: str) -> str:
