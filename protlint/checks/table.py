@@ -57,8 +57,11 @@ CHECKS: Mapping[str, Callable[[Case], Iterable[Answer]]] = {
 """Asked of every limiter."""
 
 WITHOUT_SOLUTION = frozenset(
-    {"value-unreadable", "part-data-missing", "pins-unknown", "pin-on-two-nets", "part-data-contradicts"}
-)
+    {
+        "value-unreadable", "part-data-missing", "pins-unknown", "pin-on-two-nets", "part-data-contradicts",
+        *wiring.WIRING_FAULTS,
+    }
+)  # fmt: skip
 """Those that are asked even where the circuit could not be solved."""
 
 BOUNDED = frozenset(
@@ -78,3 +81,6 @@ BOARD_CHECKS: Mapping[str, Callable[[BoardCase], Iterable[BoardAnswer]]] = {
     "pins-unknown": hidden.hidden_by_unknown_pins,
 }
 """Asked of the whole board once, when every limiter has been asked."""
+
+OF_NO_LIMITER = frozenset({"limiter-absent"})
+"""Those of the whole board that ask nothing of a limiter that was found."""

@@ -91,12 +91,13 @@ def _unchecked(row: NotChecked) -> Document:
 
 def _asked(item: ReviewedLimiter, review: Review) -> list[str]:
     """Name the checks that the limiter was put to; one that found nothing and is not under not checked has passed."""
-    from protlint.checks.table import CHECKS
+    from protlint.checks.table import BOARD_CHECKS, CHECKS, OF_NO_LIMITER, WITHOUT_SOLUTION
 
+    put = [check for check in dict.fromkeys((*CHECKS, *BOARD_CHECKS)) if check not in OF_NO_LIMITER]
     if item.solution.not_solved is not None:
-        return []
+        put = [check for check in put if check in WITHOUT_SOLUTION]
     settings = (item.needs.checks, review.limits.checks)
-    levels = {check: next((one[check].level for one in settings if check in one), None) for check in CHECKS}
+    levels = {check: next((one[check].level for one in settings if check in one), None) for check in put}
     return [check for check, level in levels.items() if level != "off"]
 
 

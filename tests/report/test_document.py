@@ -10,6 +10,8 @@ from dataclasses import replace
 import pytest
 from jsonschema import Draft202012Validator
 
+from protlint.checks.table import BOARD_CHECKS, CHECKS, WITHOUT_SOLUTION
+from protlint.limits import CheckSetting
 from protlint.report import document as document_module
 from protlint.report.answers import rounded
 from protlint.report.digest import held_back
@@ -80,6 +82,16 @@ def test_what_was_not_checked_of_the_board_counts_as_what_was_not_checked_of_its
     assert held_back(report, "never") == []
     for text in (rendered_text(report), rendered_markdown(report), rendered_sarif(report), rendered_junit(report)):
         assert "the power rating of R77" in text
+
+
+def test_the_checks_a_limiter_was_put_to_are_all_those_that_are_not_off() -> None:
+    review = sample_review()
+    asked = {limiter["id"]: set(limiter["asked"]) for limiter in document(review)["limiters"]}
+    assert asked["Q10"] == {*CHECKS, *BOARD_CHECKS} - {"limiter-absent"}
+    assert asked["CH2/Q20"] == WITHOUT_SOLUTION
+    off = {"second-road": CheckSetting(level="off"), "cap-exceeded": CheckSetting(level="off")}
+    told = document(replace(review, limits=replace(review.limits, checks=off)))["limiters"]
+    assert {name for limiter in told if limiter["id"] == "Q10" for name in asked["Q10"] - set(limiter["asked"])} == set(off)
 
 
 def test_a_limiter_without_a_solution_has_every_key_with_null() -> None:
