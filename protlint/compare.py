@@ -1,13 +1,15 @@
 """Two reports compared: what a revision changed on the limiters, which part did it, and which findings are new or gone.
 
-Limiters are matched by structure, so that renumbered designators and renamed nets make no noise. Both sides are reports of
-single netlists in the shape of ``review-1.schema.json``.
+Limiters are matched by structure, so that renumbered designators and renamed nets make no noise; of several netlists on a
+side, boards by what their files are called. Both sides are reports in the shape of ``review-1.schema.json``.
 """
 
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
+from functools import partial
+from pathlib import PurePosixPath
 from typing import Any
 
 from protlint.findings import LEVELS
@@ -25,6 +27,80 @@ FIGURES = ("carries_A", "most_A", "holds_A", "damping", "pass_power_W")
 """What a comparison follows, at usual ambient."""
 
 
+NO_BOARD: Report = {"netlist": None, "limiters": [], "findings": []}
+"""Stands for a board that is on the other side only."""
+
+
+def compare_together(before: Report, after: Report) -> dict[str, Any]:
+    """Return what changed from one side to the other, where a side may be a report of several netlists.
+
+    A board that is on one side only has all its limiters and findings added and new, or removed and gone. One that could
+    not be reviewed on either side is not compared.
+
+    Raises
+    ------
+    KeyError, TypeError, IndexError, AttributeError : one of them is not a report.
+    """
+    compared, not_compared = [], []
+    for pair in matched_boards(*([*side.get("boards", [side]), *side.get("unread", [])] for side in (before, after))):
+        unread = [one for one in pair if one is not None and "netlist" not in one]
+        not_compared += [dict(one) for one in unread]
+        if not unread:
+            compared.append(compare(*(NO_BOARD if one is None else one for one in pair)))
+    return {"compare": 1, "boards": compared, "not_compared": not_compared}
+
+
+def matched_boards(before: Sequence[Report], after: Sequence[Report]) -> list[tuple[Report | None, Report | None]]:
+    """Pair the boards of two sides: those after in their order, with None where none was before; then those only before.
+
+    Boards go by their file: the whole name, the name below the folder that all of the side lie in, as much of its end as
+    only one on each side has; then, for those renamed, by content, and by design.
+    """
+    if len(before) == len(after) == 1:
+        return [(before[0], after[0])]
+    left, right = dict(enumerate(before)), dict(enumerate(after))
+    pairs: dict[int, Report] = {}
+    below = {id(board): _below(_way(board), side) for side in (before, after) for board in side}
+    longest = max((len(_way(board)) for board in (*before, *after)), default=0)
+    stages: list[Callable[[Report], Any]] = [_way, lambda board: below[id(board)]]
+    stages += [partial(_ending, length=length) for length in range(longest, 0, -1)]
+    stages += [partial(_fact, name=name) for name in ("sha256", "design")]
+    for stage in stages:
+        ours, theirs = (_alone({place: stage(board) for place, board in side.items()}) for side in (left, right))
+        for key in ours.keys() & theirs.keys():
+            pairs[theirs[key]] = left.pop(ours[key])
+            del right[theirs[key]]
+    return [(pairs.get(place), board) for place, board in enumerate(after)] + [(board, None) for board in left.values()]
+
+
+def _way(board: Report) -> tuple[str, ...]:
+    """Return the parts of a board's file name."""
+    return PurePosixPath(board["netlist"]["file"] if "netlist" in board else board["file"] or "").parts
+
+
+def _ending(board: Report, *, length: int) -> tuple[str, ...]:
+    return _way(board)[-length:]
+
+
+def _fact(board: Report, *, name: str) -> Any:
+    return board["netlist"][name] if "netlist" in board else None
+
+
+def _below(way: tuple[str, ...], side: Sequence[Report]) -> tuple[str, ...]:
+    """Return what is left of a way without the folders that all boards of a side lie in."""
+    folders = [_way(board)[:-1] for board in side]
+    shared = next(
+        (length for length in range(len(way) - 1, 0, -1) if all(one[:length] == way[:length] for one in folders)), 0
+    )
+    return way[shared:]
+
+
+def _alone(keys: Mapping[int, Any]) -> dict[Any, int]:
+    """Return the places of keys that stand once."""
+    often = Counter(keys.values())
+    return {key: place for place, key in keys.items() if key and often[key] == 1}
+
+
 def compare(before: Report, after: Report) -> dict[str, Any]:
     """Return what changed from one report to the other, as plain data.
 
@@ -36,8 +112,8 @@ def compare(before: Report, after: Report) -> dict[str, Any]:
     changes = [_change(old, new) for old, new in pairs]
     return {
         "compare": 1,
-        "before": dict(before["netlist"]),
-        "after": dict(after["netlist"]),
+        "before": before["netlist"] and dict(before["netlist"]),
+        "after": after["netlist"] and dict(after["netlist"]),
         "limiters": {
             "added": [{"id": one["id"], "topology": one["topology"], "verdict": one["verdict"]} for one in added],
             "removed": [{"id": one["id"], "topology": one["topology"], "verdict": one["verdict"]} for one in removed],

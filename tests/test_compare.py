@@ -3,16 +3,17 @@
 from __future__ import annotations
 
 import copy
+import hashlib
 import json
 from typing import Any
 
 import pytest
 
-from protlint.compare import compare
+from protlint.compare import compare, compare_together, matched_boards
 from protlint.report.compare_text import comparison_document, held_back_by, rendered_comparison
 from protlint.report.document import document
 from protlint.report.layout import COLUMNS, width
-from protlint.report.shape import Document
+from protlint.report.shape import Document, combined
 from tests.report.test_text import ACTING
 from tests.support.sample_review import HOSTILE, PLAIN, sample_review
 
@@ -125,6 +126,77 @@ def test_a_fault_moved_to_another_part_is_new_where_nothing_was_renumbered() -> 
     fault.update(parts=["Q41"], fingerprint="collector-emitter-swapped-other")
     comparison = compare(before, after)
     assert len(comparison["findings"]["new"]) == len(comparison["findings"]["gone"]) == 1
+
+
+def called(*files: str, **designs: str) -> list[dict[str, Any]]:
+    """Return boards of which only the names matter; each is of a content and a design of its own unless it is given."""
+    return [{"netlist": {"file": file, "sha256": object(), "design": designs.get(file[0], file + "!")}} for file in files]
+
+
+@pytest.mark.parametrize(
+    ("before", "after", "pairs"),
+    [
+        (["old/a.edf", "old/b.edf"], ["new/b.edf", "new/a.edf"], [1, 0]),
+        (["a.edf", "x/a.edf"], ["x/a.edf", "a.edf"], [1, 0]),
+        (["old/main.edf", "old/x/main.edf"], ["new/main.edf", "new/y/main.edf"], [0, 1]),
+        (["old/1/main.edf", "old/2/main.edf"], ["new/2/main.edf", "new/3/main.edf"], [1, 0]),
+        (["one.edf"], ["two.edf"], [0]),
+        (["a.edf"], ["b.edf", "sub/a.edf"], [None, 0]),
+        (["old/p-r1.edf", "old/q.edf"], ["new/p-r2.edf", "new/q.edf"], [None, 1]),
+    ],
+)
+def test_boards_go_by_their_files(before: list[str], after: list[str], pairs: list[int | None]) -> None:
+    ours, theirs = called(*before), called(*after)
+    found = {id(new): old for old, new in matched_boards(ours, theirs)}
+    wanted = [None if place is None else ours[place] for place in pairs]
+    assert [found[id(new)] for new in theirs] == wanted
+    assert [old for old, new in matched_boards(ours, theirs) if new is None] == [one for one in ours if one not in wanted]
+
+
+def test_a_renamed_board_goes_by_its_design_and_one_of_several_of_a_design_by_its_content() -> None:
+    before, after = called("p-r1.edf", "q.edf", p="PSU"), called("q.edf", "p-r2.edf", p="PSU")
+    assert [(old, new) for old, new in matched_boards(before, after)] == [(before[1], after[0]), (before[0], after[1])]
+    twins, renamed = called("p1.edf", "p2.edf", p="PSU"), called("p3.edf", "p4.edf", p="PSU")
+    renamed[1]["netlist"]["sha256"] = twins[0]["netlist"]["sha256"]
+    assert (twins[0], renamed[1]) in matched_boards(twins, renamed)
+
+
+def together(*names: str, unread: tuple[str, ...] = ()) -> Document:
+    """Return a report of several boards with the sample's limiters."""
+    boards = [report({**PLAIN, "name": name}) for name in names]
+    for board, name in zip(boards, names, strict=True):
+        board["netlist"] |= {"design": name, "sha256": hashlib.sha256(name.encode()).hexdigest()}
+    return combined(boards, [{"file": name, "line": 3, "column": 9, "message": "not EDIF"} for name in unread])
+
+
+def test_boards_added_removed_and_unread_are_told_and_the_gate_is_over_all() -> None:
+    before = together("old/a.edf", "old/b.edf", "old/c.edf")
+    after = together("new/a.edf", "new/d.edf", unread=("new/c.edf",))
+    after["boards"][0]["findings"].append({**after["boards"][0]["findings"][0], "check": "cap-exceeded"})
+    comparison = comparison_document(compare_together(before, after))
+    files = [[side and side["file"] for side in (one["before"], one["after"])] for one in comparison["boards"]]
+    assert files == [["old/a.edf", "new/a.edf"], [None, "new/d.edf"], ["old/b.edf", None]]
+    assert [one["file"] for one in comparison["not_compared"]] == ["new/c.edf"]
+    (on_a,) = comparison["boards"][0]["findings"]["new"]
+    on_d = comparison["boards"][1]["findings"]["new"]
+    assert on_a["check"] == "cap-exceeded"
+    errors = 1 + sum(one["level"] == "error" and one["waived"] is None for one in on_d)
+    assert errors > 1
+    assert held_back_by(comparison, "new:error") == [f"{errors} new errors"]
+    text = rendered_comparison(comparison)
+    assert "new/d.edf, added: limiters 3 added; " in text
+    assert "old/b.edf, removed: limiters 3 removed; " in text
+    assert "  - new/c.edf:3:9: not EDIF" in text
+    assert max(width(line) for line in text.splitlines()) <= COLUMNS
+
+
+def test_boards_that_did_not_change_are_named_only() -> None:
+    side = together("a.edf", "b.edf")
+    comparison = comparison_document(compare_together(side, report({**PLAIN, "name": "a.edf"})))
+    assert "\nUnchanged: a.edf\n" in rendered_comparison(comparison)
+    assert held_back_by(comparison, "new:note") == []
+    same = comparison_document(compare_together(side, side))
+    assert "\nUnchanged: a.edf, b.edf\n" in rendered_comparison(same)
 
 
 @pytest.mark.parametrize("name", HOSTILE)

@@ -8,8 +8,8 @@ from typing import Any
 
 import click
 
-from protlint.cli.options import PATH, as_date, reading_options
-from protlint.cli.shell import colour_wanted, say
+from protlint.cli.options import PATH, as_date, named_files, reading_options, refuse_to_write_over
+from protlint.cli.shell import CANNOT, colour_wanted, complain, say
 from protlint.sources import InputError, UsageError, read_bytes, write_whole
 
 EXAMPLES = """\b
@@ -38,13 +38,17 @@ GATES = ("new:error", "new:warning", "new:note", "never")
 @click.option("--gate", type=click.Choice(GATES), default="new:error", show_default=True,
               help="The least level of a new finding that makes the exit code 1.")  # fmt: skip
 def compare(before: str, after: str, save: str | None, gate: str, **reading: Any) -> int:
-    """Compare two revisions, each a netlist or a JSON report.
+    """Compare two revisions, each a netlist, a JSON report, or a folder of netlists.
 
-    Limiters are matched by structure: renumbered designators and renamed nets make no noise.
+    Limiters are matched by structure: renumbered designators and renamed nets make no noise. Of several netlists, in
+    folders or in a report on several, those whose files are called alike are compared.
     """
+    targets = [save] if save is not None else []
     if save is not None and Path(save).suffix.lower() != ".json":
         raise UsageError("a comparison to save ends in .json", file=save)
+    refuse_to_write_over(targets, (before, after, *named_files(reading)))
     from protlint import compare as comparing
+    from protlint.cli.many import errors_of
     from protlint.report.compare_text import (
         comparison_document,
         held_back_by,
@@ -52,33 +56,32 @@ def compare(before: str, after: str, save: str | None, gate: str, **reading: Any
         rendered_comparison_json,
     )
 
-    reports = [_report(path, reading) for path in (before, after)]
+    how = {name: reading.pop(name) for name in ("design", "encoding")}
+    reports = [_report(path, reading, how) for path in (before, after)]
+    several = any("boards" in report for report in reports)
     try:
-        comparison = comparison_document(comparing.compare(*reports))
+        comparison = comparison_document((comparing.compare_together if several else comparing.compare)(*reports))
     except (KeyError, TypeError, IndexError, AttributeError, ValueError):
         raise InputError("one of them is no report of this version: review it again", file=f"{before}, {after}") from None
     text = rendered_comparison(comparison, colour=colour_wanted())
-    if save is not None:
-        write_whole(save, rendered_comparison_json(comparison))
+    for target in targets:
+        write_whole(target, rendered_comparison_json(comparison))
     reasons = held_back_by(comparison, gate)
     verdict = f"does not hold: {', '.join(reasons)}" if reasons else "holds"
     say(f"{text}\nThe gate ({gate}) {verdict}.\n")
-    return int(bool(reasons))
+    unread = comparison.get("not_compared", [])
+    for line in errors_of(unread):
+        complain(line)
+    return CANNOT if unread else int(bool(reasons))
 
 
-def _report(path: str, reading: dict[str, Any]) -> dict[str, Any]:
-    """Return a report: read from JSON, or made of a netlist.
-
-    Raises
-    ------
-    InputError : it is JSON, but not a report of a single netlist.
-    """
+def _report(path: str, files: dict[str, Any], reading: dict[str, Any]) -> dict[str, Any]:
+    """Return a report: read from JSON, or made of a netlist or a folder of them."""
     if Path(path).suffix.lower() == ".json":
         return _read_report(path)
-    from protlint import pipeline
-    from protlint.report.document import document
+    from protlint.cli.many import reviewed
 
-    return document(pipeline.review(path, **reading))
+    return reviewed((path,), files, reading)
 
 
 def _read_report(path: str) -> dict[str, Any]:
@@ -91,6 +94,4 @@ def _read_report(path: str) -> dict[str, Any]:
         raise InputError("not JSON", file=name) from None
     if not isinstance(report, dict) or report.get("report") != 1:
         raise InputError("not a protlint report, version 1", file=name)
-    if "boards" in report:
-        raise InputError("a report of several netlists; compare their single reports", file=name)
     return report

@@ -17,7 +17,7 @@ from pathlib import Path
 from typing import Any
 
 from protlint.cli.shell import CANNOT
-from protlint.sources import FileError, ProtlintError, shown_name
+from protlint.sources import FileError, ProtlintError, UsageError, shown_name
 
 ENDINGS = (".edf", ".edif", ".edn")
 """What a netlist in a folder ends in."""
@@ -29,14 +29,44 @@ Answer = dict[str, Any]
 """A report, or where ``unread`` is set the place and message of what went wrong."""
 
 
+def reviewed(netlists: Sequence[str], files: Mapping[str, Any], reading: Mapping[str, Any]) -> dict[str, Any]:
+    """Return the report of a netlist, or of several and of folders one together, those that cannot be reviewed in it.
+
+    ``files`` are the keyword arguments of :func:`protlint.pipeline.set_up`, ``reading`` those of ``read_netlist``.
+
+    Raises
+    ------
+    ProtlintError : a folder holds no netlist, a file is missing or wrong; of several netlists one besides them.
+    """
+    from protlint import pipeline
+    from protlint.report.document import document
+    from protlint.report.shape import combined
+
+    paths, together = netlists_of(netlists)
+    if not together:
+        return document(pipeline.review(paths[0], **files, **reading))
+    answers = review_all(paths, files, reading)
+    failed = [answer for answer in answers if "unread" in answer]
+    return combined((answer for answer in answers if "unread" not in answer), failed)
+
+
+def errors_of(unread: Sequence[Mapping[str, Any]]) -> list[str]:
+    """Return what could not be reviewed as lines for standard error."""
+    places = ("file", "line", "column")
+    return [str(ProtlintError(error["message"], **{key: error[key] for key in places})) for error in unread]
+
+
 def netlists_of(arguments: Sequence[str]) -> tuple[list[str], bool]:
     """Return the netlists that arguments name, folders opened, and whether they make a combined report.
 
     Raises
     ------
     FileError : a folder holds no netlist.
+    UsageError : a name is empty, which would be the working folder.
     """
     paths: list[str] = []
+    if "" in arguments:
+        raise UsageError("a netlist without a name: is a variable of the command line empty?")
     for argument in arguments:
         paths += _in_folder(Path(argument)) if argument != "-" and Path(argument).is_dir() else [argument]
     unique = list({_whole(path): path for path in paths}.values())

@@ -7,6 +7,7 @@ from collections.abc import Sequence
 
 from protlint.findings import LEVELS
 from protlint.report.behaviour import ROLE_WORDS
+from protlint.report.digest import place_of
 from protlint.report.figures import UNKNOWN, counted, figure, percent
 from protlint.report.layout import painted, wrapped
 from protlint.report.safe import json_text, terminal, throughout
@@ -34,31 +35,68 @@ CHANGES = ("new", "risen", "gone")
 def rendered_comparison(comparison: Document, *, colour: bool = False) -> str:
     """Return a comparison as text."""
     safe: Document = throughout(comparison, terminal)
-    limiters, findings = safe["limiters"], safe["findings"]
-    counts = [
-        f"{len(findings['new'])} new",
-        f"{len(findings['risen'])} risen",
-        f"{len(findings['gone'])} gone",
-        f"{findings['unchanged']} unchanged",
-    ]
-    title = (
-        f"{safe['before']['file']} to {safe['after']['file']}: limiters {len(limiters['added'])} added, "
-        f"{len(limiters['removed'])} removed, {len(limiters['changed'])} changed, {limiters['unchanged']} unchanged; "
-        f"findings {', '.join(counts)}"
+    lines = _together(safe, colour) if "boards" in safe else _board(safe, colour)
+    return "\n".join([*lines, "", *wrapped(safe["caution"])]) + "\n"
+
+
+def _together(comparison: Document, colour: bool) -> list[str]:
+    """Tell of every board that changed, came or went; name the others."""
+    boards = comparison["boards"]
+    changed = [board for board in boards if not _unchanged(board)]
+    came, went = (sum(board[side] is None for board in boards) for side in ("before", "after"))
+    same = [board["after"]["file"] for board in boards if _unchanged(board)]
+    counts = {"added": came, "removed": went, "changed": len(changed) - came - went, "unchanged": len(same)}
+    said = ", ".join(f"{count} {word}" for word, count in counts.items() if count)
+    title = f"{counted(len(boards), 'board')} together: {said or 'none compared'}; {_counts(boards)}"
+    lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
+    for board in changed:
+        lines += ["", *_board(board, colour)]
+    if same:
+        lines += ["", *wrapped(f"Unchanged: {', '.join(same)}", indent=2, first="")]
+    if comparison["not_compared"]:
+        items = [f"{place_of(error)}: {error['message']}" for error in comparison["not_compared"]]
+        lines += ["", painted("Not compared", "heading", colour=colour)]
+        lines += [line for item in items for line in wrapped(item, indent=4, first="  - ")]
+    return lines
+
+
+def _unchanged(board: Document) -> bool:
+    kinds = (board["limiters"][word] for word in ("added", "removed", "changed"))
+    return None not in (board["before"], board["after"]) and not any(
+        (*kinds, *(board["findings"][word] for word in CHANGES))
     )
+
+
+def _board(comparison: Document, colour: bool) -> list[str]:
+    limiters, findings = comparison["limiters"], comparison["findings"]
+    before, after = comparison["before"], comparison["after"]
+    if before is None:
+        said = f"{after['file']}, added"
+    elif after is None:
+        said = f"{before['file']}, removed"
+    else:
+        said = f"{before['file']} to {after['file']}"
+    title = f"{said}: {_counts([comparison])}"
     lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
     for word in ("added", "removed"):
         for limiter in limiters[word]:
-            lines += [
-                "",
-                *wrapped(f"{limiter['id']} {word}: {limiter['topology']}, {limiter['verdict']}", indent=2, first=""),
-            ]
+            text = f"{limiter['id']} {word}: {limiter['topology']}, {limiter['verdict']}"
+            lines += ["", *wrapped(text, indent=2, first="")]
     for change in limiters["changed"]:
         lines += ["", *_limiter(change, colour)]
     for word in CHANGES:
         lines += _findings(word, findings[word], colour)
-    lines += ["", *wrapped(safe["caution"])]
-    return "\n".join(lines) + "\n"
+    return lines
+
+
+def _counts(boards: Sequence[Document]) -> str:
+    """Count what happened to limiters and findings over boards."""
+    told = []
+    for things, words in (("limiters", ("added", "removed", "changed")), ("findings", CHANGES)):
+        counts = {word: sum(len(board[things][word]) for board in boards) for word in words}
+        counts["unchanged"] = sum(board[things]["unchanged"] for board in boards)
+        told.append(f"{things} {', '.join(f'{count} {word}' for word, count in counts.items() if count) or 'none'}")
+    return "; ".join(told)
 
 
 def rendered_comparison_json(comparison: Document) -> str:
@@ -76,7 +114,8 @@ def held_back_by(comparison: Document, gate: str) -> list[str]:
     if gate == "never":
         return []
     levels = [str(level) for level in LEVELS]
-    found = [*comparison["findings"]["new"], *comparison["findings"]["risen"]]
+    boards = comparison.get("boards", [comparison])
+    found = [finding for board in boards for word in ("new", "risen") for finding in board["findings"][word]]
     reasons = []
     for level in levels[: levels.index(gate.removeprefix("new:")) + 1]:
         count = sum(finding["level"] == level and finding["waived"] is None for finding in found)
