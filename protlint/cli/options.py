@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+import os
+from collections.abc import Callable, Iterable, Mapping
 from datetime import date
 from typing import Any
 
 import click
+
+from protlint.sources import UsageError
 
 Command = Callable[..., Any]
 
@@ -38,3 +41,26 @@ def as_date(_context: click.Context, _option: click.Parameter, text: str | None)
         return date.fromisoformat(text)
     except ValueError:
         raise click.BadParameter(f"{text!r} is no date: write it as 2027-06-30") from None
+
+
+FILES = ("limits", "parts", "parts_list", "waivers")
+"""The options that name files to be read, as commands are given them."""
+
+
+def named_files(options: Mapping[str, Any]) -> list[str]:
+    """Return the files that options name."""
+    given = [options.get(name) for name in FILES]
+    return [file for one in given if one for file in ([one] if isinstance(one, str) else one)]
+
+
+def refuse_to_write_over(targets: Iterable[str], inputs: Iterable[str]) -> None:
+    """Refuse to save over what is read.
+
+    Raises
+    ------
+    UsageError : a file to save is one of the inputs, be it by another name.
+    """
+    read = {os.path.realpath(file) for file in inputs}
+    for target in targets:
+        if os.path.realpath(target) in read:
+            raise UsageError("this file is read: save under another name", file=target)

@@ -6,9 +6,8 @@ from typing import Any
 
 import click
 
-from protlint.cli.options import PATH, as_date, reading_options
+from protlint.cli.options import PATH, as_date, named_files, reading_options, refuse_to_write_over
 from protlint.cli.shell import CANNOT, colour_wanted, complain, say
-from protlint.sources import ProtlintError
 
 EXAMPLES = """\b
 Examples (`protlint demo bench` writes the files):
@@ -45,36 +44,20 @@ def review(netlist: tuple[str, ...], save: tuple[str, ...], gate: str, complete:
     from protlint.report import faces
 
     faces.check_targets(save)
+    refuse_to_write_over(save, (*netlist, *named_files(files)))
+    from protlint.cli.many import errors_of, reviewed
     from protlint.report.digest import held_back
     from protlint.report.text import rendered_text
 
     reading = {name: files.pop(name) for name in ("design", "encoding")}
-    report, unread = _reviewed(netlist, files, reading)
+    report = reviewed(netlist, files, reading)
+    unread = report.get("unread", [])
     text = rendered_text(report, colour=colour_wanted())
     if len(unread) < report["summary"].get("boards", 1):
         faces.save(report, save)
     reasons = held_back(report, gate, complete=complete)
     verdict = f"does not hold: {', '.join(reasons)}" if reasons else "holds"
     say(f"{text}\nThe gate ({gate}) {verdict}.\n")
-    for error in unread:
-        complain(str(error))
+    for line in errors_of(unread):
+        complain(line)
     return CANNOT if unread else int(bool(reasons))
-
-
-def _reviewed(
-    netlists: tuple[str, ...], files: dict[str, Any], reading: dict[str, Any]
-) -> tuple[dict[str, Any], list[ProtlintError]]:
-    """Return the report, and of several netlists the errors of those that could not be reviewed."""
-    from protlint import pipeline
-    from protlint.cli.many import netlists_of, review_all
-    from protlint.report.document import document
-    from protlint.report.shape import combined
-
-    paths, together = netlists_of(netlists)
-    if not together:
-        return document(pipeline.review(paths[0], **files, **reading)), []
-    answers = review_all(paths, files, reading)
-    failed = [answer for answer in answers if "unread" in answer]
-    report = combined((answer for answer in answers if "unread" not in answer), failed)
-    places = ("file", "line", "column")
-    return report, [ProtlintError(answer["message"], **{key: answer[key] for key in places}) for answer in failed]

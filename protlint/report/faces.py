@@ -28,10 +28,10 @@ def check_targets(targets: Iterable[str]) -> None:
     Raises
     ------
     UsageError : an ending is none of ours, or one file is to be saved twice.
-    FileError : the folder a file is to stand in is missing, or a folder stands where the file is to be, or a file where
-        the folder is.
+    FileError : the folder a file is to stand in is missing or takes no file, or a folder stands where the file is to be,
+        or a file where the folder is.
     """
-    seen: set[Path] = set()
+    seen: set[str] = set()
     for target in targets:
         path = Path(target)
         if is_folder(target):
@@ -43,9 +43,12 @@ def check_targets(targets: Iterable[str]) -> None:
             raise FileError("there is no such folder to save in", file=shown_name(path.parent))
         elif path.is_dir():
             raise FileError("this is a folder, not a file to save", file=shown_name(path))
-        if path.absolute() in seen:
+        elif not os.access(path.parent, os.W_OK):
+            raise FileError("this folder takes no file", file=shown_name(path.parent))
+        whole = os.path.realpath(target)
+        if whole in seen:
             raise UsageError("this is to be saved twice", file=target)
-        seen.add(path.absolute())
+        seen.add(whole)
 
 
 def is_folder(target: str) -> bool:

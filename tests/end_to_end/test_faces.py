@@ -227,6 +227,52 @@ def test_a_revision_is_compared(bench: Path) -> None:
     assert "carry-not-met" in {one["check"] for one in report_in(bench / "c.json")["findings"]["new"]}
 
 
+def test_folders_of_boards_are_compared_board_by_board(
+    bench: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    monkeypatch.chdir(bench)
+    for folder, boards in {"old": {"a": "2R2", "b": "10R"}, "new": {"a": "22R", "b": "10R", "c": "10R"}}.items():
+        (bench / folder).mkdir()
+        for name, sense in boards.items():
+            text = lamp_netlist(sense=sense).replace("(design LAMPS", f"(design {name}")
+            (bench / folder / f"{name}.edf").write_text(text, encoding="utf-8")
+        assert answered(capsys, "review", folder, *FILES, "--save", f"{folder}.json", "--gate", "never")[0] == 0
+    code, out, err = answered(capsys, "compare", "old", "new", *FILES, "--save", "c.json")
+    assert (code, err) == (1, "")
+    assert "Unchanged: new/b.edf" in out
+    saved = (bench / "c.json").read_bytes()
+    assert answered(capsys, "compare", "old.json", "new.json", "--save", "c.json") == (code, out, err)
+    assert (bench / "c.json").read_bytes() == saved
+    added = next(one for one in report_in(bench / "c.json")["boards"] if one["before"] is None)
+    assert added["after"]["file"] == "new/c.edf"
+    (bench / "new" / "b.edf").write_text("(edif broken", encoding="utf-8")
+    code, out, err = answered(capsys, "compare", "old.json", "new", *FILES, "--gate", "never")
+    assert (code, "Not compared" in out, err.startswith("new/b.edf:1:")) == (2, True, True)
+    assert "b.edf, removed" not in out
+
+
+@pytest.mark.parametrize(
+    "arguments",
+    [
+        ("review", BOARD, "--limits", "in.md", "--save", "in.md"),
+        ("review", BOARD, "--parts-list", "in.md", "--save", "./bench/../in.md"),
+        ("review", "in.json", "--save", "in.json"),
+        ("compare", "in.json", BOARD, "--save", "in.json"),
+        ("compare", "in.json", BOARD, "--save", "link.json"),
+    ],
+)
+def test_what_is_read_is_not_written_over(
+    arguments: tuple[str, ...], bench: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> None:
+    monkeypatch.chdir(bench)
+    for name in ("in.md", "in.json"):
+        (bench / name).write_text("as it was", encoding="utf-8")
+    (bench / "link.json").symlink_to("in.json")
+    code, out, err = answered(capsys, *arguments)
+    assert (code, out, err) == (2, "", f"{arguments[-1]}: this file is read: save under another name\n")
+    assert {(bench / name).read_text(encoding="utf-8") for name in ("in.md", "in.json")} == {"as it was"}
+
+
 BAD = {
     "empty": b"",
     "not EDIF": b"hello",
@@ -269,6 +315,7 @@ def test_the_installed_command_says_the_same_of_a_bad_netlist(bench: Path) -> No
         (("review", BOARD, "--limits", "wrong-unit.toml"), "wrong-unit.toml:2:"),
         (("review", BOARD, "--waivers", "unknown-key.toml"), "unknown-key.toml:1:"),
         (("review", BOARD, "--encoding", "no-such"), ""),
+        (("review", ""), "a netlist without a name"),
         (("compare", "list.json", BOARD), "list.json: "),
         (("compare", "half.json", BOARD), "half.json:1:"),
         (("compare", "thin.json", BOARD), ""),
