@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Iterator
 
-from protlint.board.graph import Board, BoardPart
+from protlint.board.graph import Board
 from protlint.limits import Limits, fits
 from protlint.toml.text import toml_key
 
@@ -30,7 +30,7 @@ def _idle(limits: Limits, board: Board, spoken_of: tuple[str, ...]) -> Iterator[
         if name.casefold() not in folded and name not in elsewhere and voltage.usual != 0.0:
             yield f"[supply] {toml_key(name)}", "net"
     for name in limits.drives:
-        if name not in nets and not any(name == pin for part in board.parts for pin in _pins_of(part, name)):
+        if name not in nets and not board.nets_of_pin(name):
             yield f"[drive.{toml_key(name)}]", "net and no pin"
     numbers = {part.part_number for part in board.parts if part.part_number is not None}
     for name in limits.drivers:
@@ -43,9 +43,3 @@ def _idle(limits: Limits, board: Board, spoken_of: tuple[str, ...]) -> Iterator[
     for name in limits.pins:
         if not any(fits(name, one) for one in types):
             yield f"[pins.{toml_key(name)}]", "cell and no part number"
-
-
-def _pins_of(part: BoardPart, name: str) -> Iterator[str]:
-    """Yield what a part's pins go by in the limits file, where a name can be one of them."""
-    if name.startswith(f"{part.id}."):
-        yield from (f"{part.id}.{label}" for pin in part.part.pins for label in (pin.number, pin.name))

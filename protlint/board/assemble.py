@@ -39,7 +39,7 @@ def assemble(
     for element in elements:
         for role, net in element.terminals.items():
             at[net].append((element.index, role))
-    return Board(netlist, parts, nets, elements, tuple(map(tuple, at)), tuple(assumed))
+    return Board(netlist, parts, nets, elements, tuple(map(tuple, at)), tuple(assumed), tuple(index_of))
 
 
 def is_link(part: BoardPart | SeenPart) -> bool:

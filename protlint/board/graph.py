@@ -113,7 +113,10 @@ class Element:
 
 @dataclass(frozen=True)
 class Board:
-    """The whole board. ``elements_at[n]`` lists (element index, role) on net n; not-fitted parts and links are in none."""
+    """The whole board. ``elements_at[n]`` lists (element index, role) on net n; not-fitted parts and links are in none.
+
+    ``net_of`` gives for every net of the netlist the index of the board net that it became.
+    """
 
     netlist: Netlist
     parts: tuple[BoardPart, ...]
@@ -121,6 +124,7 @@ class Board:
     elements: tuple[Element, ...]
     elements_at: tuple[tuple[tuple[int, str], ...], ...]
     assumed: tuple[str, ...] = ()
+    net_of: tuple[int, ...] = ()
 
     @cached_property
     def part_of(self) -> Mapping[str, BoardPart]:
@@ -142,6 +146,13 @@ class Board:
             count[name] = count.get(name, 0) + 1
             names.append(name if count[name] == 1 else f"{name} ({count[name]})")
         return tuple(names)
+
+    def nets_of_pin(self, name: str) -> frozenset[int]:
+        """Return the nets of a pin called by its part's id and its own number or name (``U1.6``); empty where there is none."""
+        dots = [place for place, letter in enumerate(name) if letter == "."]  # ids and pin names may hold dots too
+        spelled = [(self.part_of.get(name[:dot]), name[dot + 1 :]) for dot in dots]
+        pins = [(pin, label) for part, label in spelled if part is not None for pin in part.part.pins]
+        return frozenset(self.net_of[pin.net] for pin, label in pins if label in (pin.number, pin.name))
 
     def graph(self) -> nx.MultiGraph[object]:
         """Return the public graph: nodes ``("part", id)`` and ``("net", name)``, one edge per pin, the pin as its key.

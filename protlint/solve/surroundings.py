@@ -122,13 +122,9 @@ def drive_entry_at(board: Board, net: int, limits: Limits) -> DriveLimits | None
     for name in board.nets[net].names:
         if name in limits.drives:
             return limits.drives[name]
-    for index, _ in board.nets[net].pins:
-        part = board.parts[index]
-        for pin in part.part.pins:
-            for label in (pin.number, pin.name):
-                key = f"{part.id}.{label}"
-                if key in limits.drives and any(one == index for one, _ in board.nets[net].pins):
-                    return limits.drives[key]
+    for key, entry in limits.drives.items():
+        if net in board.nets_of_pin(key):
+            return entry
     return None
 
 

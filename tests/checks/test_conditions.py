@@ -111,3 +111,19 @@ def test_of_a_mosfet_the_supply_over_the_loops_resistance_counts() -> None:
     instant = surge(case, shunt, 0.8)
     assert instant is not None
     assert instant.sense_A == pytest.approx(24.0 / (1.0 + 0.05))
+
+
+@pytest.mark.parametrize(("pin", "assumed"), [("Y", False), ("A", True)])
+def test_a_drive_stated_of_a_pin_counts_on_the_net_of_that_pin_alone(pin: str, assumed: bool) -> None:
+    board = """
+    Q10 NPN QPN1 OUT DRV SNS
+    Q11 NPN QSN1 DRV SNS GND
+    R10 RES 1K CMD DRV
+    R11 RES 1R SNS GND
+    J1  CONN - 1=OUT 2=+12V 3=GND
+    U1  BUFFER BUF7 Y=CMD A=REF
+    """
+    stated = limits(drive={f"U1.{pin}": {"low": "0 V", "high": "5 V"}})
+    circuit = case_of(Job(board, stated).review()).circuit
+    assert circuit.drive.node == "CMD"
+    assert circuit.drive.assumed is assumed

@@ -10,6 +10,7 @@ from protlint.board.graph import Board, SeenPart, Values
 from protlint.limits import Limits
 from protlint.netlist.model import Part, Pin
 from tests.support.boards import TERMINALS, netlist, supply_of
+from tests.support.edif_text import Drawn
 
 KINDS = {
     "resistor": 46, "capacitor": 26, "npn": 8, "pnp": 5, "nmos": 3, "pmos": 2, "diode": 6, "zener": 1, "inductor": 1,
@@ -21,10 +22,41 @@ ON_GROUND, ON_SUPPLY = 0.15, 0.05
 """The share of all pins on ground, and on each of two supplies."""
 
 
+Made = tuple[str, str, list[tuple[str, str]], float | None]
+"""A part: its kind, designator, (pin, net) pairs, and ohms where it is a resistor."""
+
+TYPES = {
+    "QP": "BD139",
+    "QS": "BC337-25",
+    "npn": "BC847B",
+    "pnp": "BC857B",
+    "nmos": "2N7002",
+    "pmos": "BSS84",
+    "diode": "1N4148",
+}
+"""Part numbers, by kind and for the limiters' own transistors."""
+
+
 def crowd(parts: int, *, limiters: int = 8, seed: int = 1) -> Board:
-    """Return a board of about ``parts`` parts with emitter-sensed limiters ``QP1``, ``QP2`` ... among them."""
+    """Return a board of ``parts`` parts with emitter-sensed limiters ``QP1``, ``QP2`` ... among them."""
+    return _board(_made(parts, limiters, seed))
+
+
+def crowd_drawn(parts: int, *, limiters: int = 8, seed: int = 1) -> list[Drawn]:
+    """Return such a board to be written as EDIF, with part numbers and values, its limiters driven from a supply."""
+    drawn = []
+    for kind, designator, joins, value_ohm in _made(parts, limiters, seed):
+        if designator.startswith("RD"):
+            joins = [("1", "+12V"), *joins[1:]]
+        value = "" if value_ohm is None else f"{value_ohm:g}"
+        value = "100n" if kind == "capacitor" else value
+        drawn.append(Drawn(designator, kind.upper(), tuple(joins), value, TYPES.get(designator[:2], TYPES.get(kind, ""))))
+    return drawn
+
+
+def _made(parts: int, limiters: int, seed: int) -> list[Made]:
     chance = random.Random(seed)
-    made: list[tuple[str, str, list[tuple[str, str]], float | None]] = []
+    made: list[Made] = []
     kinds, weights = list(KINDS), list(KINDS.values())
     free_nets = max(4, parts * 7 // 10)
     for number in range(parts - 5 * limiters):
@@ -38,12 +70,12 @@ def crowd(parts: int, *, limiters: int = 8, seed: int = 1) -> Board:
         made += [
             ("npn", f"QP{number}", list(zip(npn, (out, base, near), strict=True)), None),
             ("npn", f"QS{number}", list(zip(npn, (base, tap, "GND"), strict=True)), None),
-            ("resistor", f"RS{number}", [("1", near), ("2", "GND")], 2.0),
+            ("resistor", f"RS{number}", [("1", near), ("2", "GND")], 2.0 + number / 10.0),
             ("resistor", f"RB{number}", [("1", near), ("2", tap)], 1e3),
             ("resistor", f"RD{number}", [("1", _net(chance, free_nets)), ("2", base)], 1e3),
         ]
     chance.shuffle(made)
-    return _board(made)
+    return made
 
 
 def _net(chance: random.Random, free_nets: int) -> str:
@@ -57,7 +89,7 @@ def _net(chance: random.Random, free_nets: int) -> str:
     return f"N{chance.randrange(free_nets)}"
 
 
-def _board(made: Sequence[tuple[str, str, list[tuple[str, str]], float | None]]) -> Board:
+def _board(made: Sequence[Made]) -> Board:
     numbers: dict[str, int] = {}
     parts, seen = [], []
     for kind, designator, joins, value in made:
