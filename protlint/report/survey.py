@@ -44,8 +44,10 @@ def survey(review: Review) -> Document:
         "pins": _counted((part.kind, part.roles_from) for part in board.parts if part.kind in ROLED_KINDS),
         "values": _values(board),
         "unknown": {
-            "kind": [part.id for part in board.parts if part.kind == "unknown"],
-            "pins": [part.id for part in board.parts if part.kind in ROLED_KINDS and not part.roles],
+            "kind": _gathered((part.part.cell, part.id) for part in board.parts if part.kind == "unknown"),
+            "pins": _gathered(
+                (_type_of(part), part.id) for part in board.parts if part.kind in ROLED_KINDS and not part.roles
+            ),
             "part_data": _types_without_data(board, {part["id"] for one in report["limiters"] for part in one["parts"]}),
         },
         "supplies": [
@@ -104,6 +106,14 @@ def _counted(pairs: Iterable[tuple[str, str]]) -> list[Document]:
         {"kind": kind, "count": known.total(), "known_from": [[source, count] for source, count in known.items()]}
         for kind, known in counts.items()
     ]
+
+
+def _gathered(pairs: Iterable[tuple[str, str]]) -> list[Document]:
+    """Gather parts by the cell or type number that they have in common, in order of appearance."""
+    parts: dict[str, list[str]] = {}
+    for name, part in pairs:
+        parts.setdefault(name, []).append(part)
+    return [{"of": name, "parts": ids} for name, ids in parts.items()]
 
 
 def _values(board: Board) -> Document:

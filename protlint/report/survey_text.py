@@ -20,6 +20,9 @@ MOST_MOVES = 4
 
 MOST_GAINS = 13
 
+MOST_PARTS = 4
+"""Parts named of one cell whose kind or pins are not known."""
+
 
 def rendered_survey(facts: Document, *, colour: bool = False) -> str:
     """Return a survey as text; ``colour`` adds the colours of a terminal."""
@@ -126,11 +129,9 @@ def _range(ends: Document) -> str:
 
 def _missing(facts: Document) -> list[str]:
     unknown, values = facts["unknown"], facts["values"]
-    texts = []
-    if unknown["kind"]:
-        texts.append(f"kind not known: {listed(unknown['kind'])}")
-    if unknown["pins"]:
-        texts.append(f"pin roles not known ([pins] in the limits file): {listed(unknown['pins'])}")
+    texts: list[str] = []
+    texts += _of_each("kind of the cell {} not known", unknown["kind"])
+    texts += _of_each("pin roles of {} not known ([pins] in the limits file)", unknown["pins"])
     if values["absent"]:
         texts.append(f"no value: {listed(values['absent'])}")
     texts += [
@@ -143,6 +144,14 @@ def _missing(facts: Document) -> list[str]:
     if len(unknown["part_data"]) > MOST_NAMES:
         texts.append(f"no part data for {listed([row['part_number'] for row in unknown['part_data'][MOST_NAMES:]])}")
     return _items(texts)
+
+
+def _of_each(says: str, rows: Sequence[Document]) -> list[str]:
+    """Say something of every cell or type, with its parts; of many, only the names of the last ones."""
+    texts = [f"{says.format(row['of'])}: {listed(row['parts'], MOST_PARTS)}" for row in rows[:MOST_NAMES]]
+    if len(rows) > MOST_NAMES:
+        texts.append(says.format(listed([row["of"] for row in rows[MOST_NAMES:]])))
+    return texts
 
 
 def _limiters(limiters: Sequence[Document], colour: bool) -> list[str]:

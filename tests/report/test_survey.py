@@ -93,6 +93,30 @@ def test_figures_of_like_channels_are_told_once() -> None:
     assert rendered_survey({**facts, "limiters": [first, unlike]}).count("in the held short  current") == 2
 
 
+def test_a_large_board_is_told_by_what_its_parts_have_in_common() -> None:
+    facts = survey(sample_review())
+    rows = [{"of": f"CELL{number}", "parts": [f"X{number}_{part}" for part in range(6)]} for number in range(14)]
+    types = [{"part_number": f"QT{number}", "parts": [f"Q{number}"]} for number in range(14)]
+    volts = {"low": 5.0, "usual": 5.0, "high": 5.0, "known_from": "net name"}
+    supplies = [{"net": net, **volts} for net in ("+5V", *(f"CARD{card}/+5V" for card in range(9)))]
+    unknown = {"kind": rows, "pins": rows[:1], "part_data": types}
+    plain = " ".join(rendered_survey({**facts, "unknown": unknown, "supplies": supplies}).split())
+    assert "kind of the cell CELL0 not known: X0_0, X0_1, X0_2, X0_3 and 2 more - kind of the cell CELL1" in plain
+    assert "kind of the cell CELL12, CELL13 not known" in plain
+    assert "pin roles of CELL0 not known ([pins] in the limits file): X0_0" in plain
+    assert "no part data for QT11 (--parts): Q11 - no part data for QT12, QT13" in plain
+    assert "Supplies +5V 5 V by net name CARD0/+5V and 8 alike 5 V by net name" in plain
+
+
+def test_types_that_limiters_use_come_first_of_those_without_data() -> None:
+    review = sample_review()
+    used = next(part.part_number for part in review.board.parts if part.id == "Q10")
+    first = review.board.parts[0]
+    other = replace(first, part=first.part._replace(id="D99"), kind="diode", part_number="QD1", entry=None)
+    facts = survey(replace(review, board=replace(review.board, parts=(other, *review.board.parts))))
+    assert [row["part_number"] for row in facts["unknown"]["part_data"]] == [used, "QD1"]
+
+
 @pytest.mark.parametrize("name", HOSTILE)
 def test_no_name_acts_in_survey_or_skeleton(name: str, tmp_path: Path) -> None:
     review = sample_review({**PLAIN, **dict.fromkeys(("pass", "sense", "out", "name"), name)})
