@@ -13,7 +13,7 @@ from urllib.parse import quote
 
 from protlint import __version__
 from protlint.checks.catalogue import CheckRow, load_catalogue
-from protlint.report.digest import left_open, place_of, times, unsolved, waiver_of
+from protlint.report.digest import left_open, place_of, sentence, times, unsolved, waiver_of
 from protlint.report.figures import figure
 from protlint.report.memory import resting
 from protlint.report.safe import json_text, terminal, throughout
@@ -41,10 +41,11 @@ def rendered_sarif(report: Document) -> str:
         artifact = {"uri": uris[place], "index": unique.index(uris[place])}
         results += (_result(finding, board, artifact, index_of) for finding in board["findings"])
         notifications += _notifications(board, artifact, index_of)
-    if "boards" in safe:
-        notifications += ({"level": "warning", "message": message(text)} for text in safe["remarks"])
+    remarks = [text for board in boards_of(safe) for text in board["remarks"]] + (
+        safe["remarks"] if "boards" in safe else []
+    )
     unread = safe.get("unread", [])
-    notifications += (_unread(error) for error in unread)
+    notifications += (_told("error", f"{place_of(error)}: {error['message']}") for error in unread)
     run = {
         "tool": {
             "driver": {
@@ -56,7 +57,13 @@ def rendered_sarif(report: Document) -> str:
                 "rules": rules,
             }
         },
-        "invocations": [{"executionSuccessful": not unread, "toolExecutionNotifications": notifications}],
+        "invocations": [
+            {
+                "executionSuccessful": not unread,
+                "toolExecutionNotifications": notifications,
+                "toolConfigurationNotifications": [_told("warning", text) for text in remarks],
+            }
+        ],
         "artifacts": [
             {
                 "location": {"uri": uri},
@@ -103,7 +110,12 @@ def _rules(catalogue: Mapping[str, CheckRow], used: Iterable[str]) -> list[Docum
 
 
 def _sentence(text: str) -> str:
-    return text[:1].upper() + text[1:].rstrip(".") + "."
+    return text[:1].upper() + _ended(text[1:])
+
+
+def _ended(text: str) -> str:
+    """Return a text with a full stop, as messages are to have (3.11.3)."""
+    return text.rstrip(".") + "."
 
 
 def _result(finding: Document, board: Document, artifact: Document, index_of: Mapping[str, int]) -> Document:
@@ -114,7 +126,7 @@ def _result(finding: Document, board: Document, artifact: Document, index_of: Ma
         "ruleId": finding["check"],
         "ruleIndex": index_of[finding["check"]],
         "level": finding["level"],
-        "message": message(_sentence(finding["message"]) + remedy),
+        "message": message(_ended(sentence(finding)) + remedy),
         "locations": [{"physicalLocation": _physical(artifact, place), "logicalLocations": _logical(finding, board)}],
         "relatedLocations": [
             {"id": number, "physicalLocation": _physical(artifact, one), "message": message(one["part"])}
@@ -136,11 +148,14 @@ def _physical(artifact: Document, place: Document) -> Document:
 
 
 def _logical(finding: Document, board: Document) -> list[Document]:
-    """Name the limiter and the parts, qualified by the design (3.33)."""
+    """Name the limiter and the parts by the last step of their way, and qualified by the design (3.33)."""
     design = board["netlist"]["design"]
     named = [(finding["limiter"], "limiter")] if finding["limiter"] else []
     named += [(part, "part") for part in dict.fromkeys(finding["parts"])]
-    return [{"name": name, "fullyQualifiedName": f"{design}/{name}", "kind": kind} for name, kind in named]
+    return [
+        {"name": name.rpartition("/")[2] or name, "fullyQualifiedName": f"{design}/{name}", "kind": kind}
+        for name, kind in named
+    ]
 
 
 def _suppressions(finding: Document) -> list[Document]:
@@ -153,30 +168,25 @@ def _suppressions(finding: Document) -> list[Document]:
 def _notifications(board: Document, artifact: Document, index_of: Mapping[str, int]) -> list[Document]:
     notifications = []
     for warning in board["warnings"]:
-        said = message(warning["message"] + times(warning["count"]))
         location = {"physicalLocation": _physical(artifact, warning)}
-        notifications.append({"level": "warning", "message": said, "locations": [location]})
+        notifications.append({**_told("warning", warning["message"] + times(warning["count"])), "locations": [location]})
     notifications += (_unchecked(None, row, index_of) for row in board["not_checked"])
     for limiter in board["limiters"]:
         notifications += (_unchecked(limiter["id"], row, index_of) for row in left_open(limiter))
         if limiter["not_solved"]:
-            text = f"{limiter['id']} was not solved{unsolved(limiter)}."
-            notifications.append({"level": "warning", "message": message(text)})
-        for text in resting(limiter):
-            notifications.append(
-                {"level": "note", "message": message(f"{limiter['id']} rests on figures from memory: {text}.")}
-            )
-    notifications += ({"level": "note", "message": message(f"Assumed: {text}.")} for text in board["assumed"])
-    notifications += ({"level": "warning", "message": message(text)} for text in board["remarks"])
+            notifications.append(_told("warning", f"{limiter['id']} was not solved{unsolved(limiter)}"))
+        notifications += (
+            _told("note", f"{limiter['id']} rests on figures from memory: {text}") for text in resting(limiter)
+        )
+    notifications += (_told("note", f"Assumed: {text}") for text in board["assumed"])
     return notifications
+
+
+def _told(level: str, text: str) -> Document:
+    return {"level": level, "message": message(_ended(text))}
 
 
 def _unchecked(limiter: str | None, row: Document, index_of: Mapping[str, int]) -> Document:
     whom = f"{limiter}: " if limiter is not None else ""
-    said = message(f"{whom}{row['check']} was not checked; it needs {row['needs']}.")
     known = {"associatedRule": {"id": row["check"], "index": index_of[row["check"]]}} if row["check"] in index_of else {}
-    return {"level": "note", "message": said, **known}
-
-
-def _unread(error: Document) -> Document:
-    return {"level": "error", "message": message(f"{place_of(error)}: {error['message']}")}
+    return {**_told("note", f"{whom}{row['check']} was not checked; it needs {row['needs']}"), **known}

@@ -14,6 +14,7 @@ from protlint.report.document import document
 from protlint.report.sarif import FINGERPRINT_KEY, artifact_uri, message, rendered_sarif
 from protlint.report.shape import Document, combined
 from tests.support.sample_review import HOSTILE, PLAIN, sample_review
+from tests.support.sarif_prose import prose_errors
 
 BROKEN = {"file": "broken.edf", "line": 3, "column": 9, "message": "not EDIF"}
 
@@ -22,47 +23,72 @@ def log_of(report: Document) -> Any:
     return json.loads(rendered_sarif(report))
 
 
-def prose_errors(log: Any) -> list[str]:
-    """Check what the standard asks beyond its schema; the section numbers are the standard's, from memory."""
-    errors = []
-    for run in log["runs"]:
-        rules, artifacts = run["tool"]["driver"]["rules"], run["artifacts"]
-        names = [rule["id"] for rule in rules]
-        if len(set(names)) != len(names):
-            errors.append("3.19.23: rule ids repeat")
-        if len({artifact["location"]["uri"] for artifact in artifacts}) != len(artifacts):
-            errors.append("3.14.15: artifacts repeat")
-        for notification in run["invocations"][0]["toolExecutionNotifications"]:
-            rule = notification.get("associatedRule")
-            if rule is not None and names[rule["index"]] != rule["id"]:
-                errors.append("3.52: associated rule and index differ")
-        fingerprints = []
-        for result in run["results"]:
-            if names[result["ruleIndex"]] != result["ruleId"]:
-                errors.append("3.27.6: rule id and index differ")
-            if result["level"] == "none":
-                errors.append("3.27.10: a failing result has a level")
-            if "suppressions" not in result:
-                errors.append("3.27.23: suppressions on some results only")
-            identities = [location["id"] for location in result["relatedLocations"]]
-            if len(set(identities)) != len(identities):
-                errors.append("3.28.2: location ids repeat")
-            for location in (*result["locations"], *result["relatedLocations"]):
-                where = location["physicalLocation"]["artifactLocation"]
-                if artifacts[where["index"]]["location"]["uri"] != where["uri"]:
-                    errors.append("3.4.5: artifact and index differ")
-            fingerprints.append((result["locations"][0]["physicalLocation"]["artifactLocation"]["uri"],
-                                 result["partialFingerprints"][FINGERPRINT_KEY]))  # fmt: skip
-        if len(set(fingerprints)) != len(fingerprints):
-            errors.append("3.27.17: fingerprints repeat")
-    return errors
-
-
 def test_it_is_valid() -> None:
     log = log_of(document(sample_review(notes=200)))
     assert validation_errors(log) == []
     assert prose_errors(log) == []
     assert len(log["runs"][0]["results"]) == 203
+
+
+def changed(*steps: Any) -> Any:
+    """Return a change of a log: the value at a way through its only run, replaced (or taken out where it is ``...``)."""
+    *way, last, value = steps
+
+    def change(run: Any) -> None:
+        for step in way:
+            run = run[step]
+        if value is ...:
+            del run[last]
+        elif last == "append":
+            run.append(value)
+        else:
+            run[last] = value
+
+    return change
+
+
+RESULT = ("results", 0)
+PLACE = (*RESULT, "locations", 0, "physicalLocation")
+DRIVER = ("tool", "driver")
+CALL = ("invocations", 0)
+
+BROKEN_PROSE = {
+    "3.19.23": changed(*DRIVER, "rules", "append", {"id": "carry-not-met"}),
+    "3.19.12": changed(*DRIVER, "semanticVersion", "1"),
+    "3.49.7": changed(*DRIVER, "rules", 0, {"id": "carry-not-met", "name": "carry-not-met"}),
+    "3.49.9": changed(*DRIVER, "rules", 0, "shortDescription", "text", "no stop"),
+    "3.14.15": changed("artifacts", "append", {"location": {"uri": "lamp.edf"}, "hashes": {"sha-256": "0" * 64}}),
+    "3.24.11": changed("artifacts", 0, "hashes", {"SHA256": "0" * 64}),
+    "3.4.5": changed(*PLACE, "artifactLocation", "index", 1),
+    "3.4.3": changed("artifacts", 0, "location", "uri", "../a b.edf"),
+    "3.4.4": changed(*PLACE, "artifactLocation", "uriBaseId", "ROOT"),
+    "3.52.5": changed(*CALL, "toolExecutionNotifications", 0, "associatedRule", {"id": "carry-not-met", "index": 1}),
+    "3.20.14": changed(*CALL, "toolExecutionNotifications", 0, "level", "error"),
+    "3.14.23": changed("results", None),
+    "3.27.23": changed(*RESULT, "suppressions", ...),
+    "3.27.6": changed(*RESULT, "ruleIndex", 1),
+    "3.27.10": changed(*RESULT, "kind", "pass"),
+    "3.28.2": changed(*RESULT, "relatedLocations", 1, "id", 1),
+    "3.27.22": changed(*RESULT, "relatedLocations", 0, "message", ...),
+    "3.27.17": changed(*RESULT, "partialFingerprints", {"protlint": "x"}),
+    "3.35.4": changed("results", 1, "suppressions", 0, "justification", ""),
+    "3.35.5": changed("results", 1, "suppressions", 0, "location", {}),
+    "3.30.5": changed(*PLACE, "region", "startLine", 0),
+    "3.30.7": changed(*PLACE, "region", "endLine", 1),
+    "3.14.17": changed("columnKind", ...),
+    "3.33.5": changed(*RESULT, "locations", 0, "logicalLocations", 0, "name", "other"),
+    "3.11.5": changed(*RESULT, "message", "text", "The {0}."),
+    "3.11.6": changed(*RESULT, "message", "text", "See [this](9)."),
+    "3.11.3": changed(*RESULT, "message", "text", "no stop"),
+}
+"""For every prose rule a log that breaks it and no other, so that none of them passes whatever comes."""
+
+
+@pytest.mark.parametrize("section", BROKEN_PROSE)
+def test_every_prose_rule_is_held(section: str) -> None:
+    log = log_of(document(sample_review()))
+    BROKEN_PROSE[section](log["runs"][0])
+    assert section in {error.split(":")[0] for error in prose_errors(log)}
 
 
 def test_boards_together_are_one_valid_run_and_the_unread_are_notified() -> None:
@@ -73,7 +99,7 @@ def test_boards_together_are_one_valid_run_and_the_unread_are_notified() -> None
     (run,) = log["runs"]
     assert run["invocations"][0]["executionSuccessful"] is False
     said = [(one["level"], one["message"]["text"]) for one in run["invocations"][0]["toolExecutionNotifications"]]
-    assert ("error", "broken.edf:3:9: not EDIF") in said
+    assert ("error", "broken.edf:3:9: not EDIF.") in said
     assert {result["locations"][0]["physicalLocation"]["artifactLocation"]["index"] for result in run["results"]} == {0, 1}
 
 
