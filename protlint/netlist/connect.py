@@ -117,6 +117,8 @@ class _Wirer:
         """Add what an instance places; of two with one identifier the first is what references mean."""
         instances.add(instance.name.identifier, _Placed(instance, block, len(self.placements)))
         self.budget.spend(instance.name.width - 1, instance.offset)
+        if not block.is_part and block.contents is None and block.ports.width > 1 and not block.shorts:
+            self.notes.add("ripper", instance.offset, f"{instance.name.text}, a {block.cell.name.text}")
         for element in range(instance.name.width) if instance.name.dimensions else (None,):
             self.placements.append(Placement(instance, element, block, {}))
 

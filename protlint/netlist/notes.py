@@ -16,6 +16,7 @@ KINDS = {
     "view": "a view that is named and absent; the cell's best other view is taken: {}",
     "designs": "{}",
     "global": "a globalPortRef: all of one name are taken as one net of the whole design: {}",
+    "ripper": "a ripper or tie whose cell says not which of its ports are one; nothing is joined through it: {}",
     "width": "things of different width are joined: {}",
     "block pin": "a block's port on two nets, which are taken as one: {}",
     "property": "one property with two values; the first counts: {}",

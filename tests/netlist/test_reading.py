@@ -218,6 +218,16 @@ def test_nets_that_only_their_names_join_are_told() -> None:
     assert netlist.facts["nets named alike"] == "GND: nothing joins them, so they are kept apart"
 
 
+def test_a_ripper_that_does_not_say_what_it_joins() -> None:
+    ripper = cell("RIP", interface="(port A) (port B)").replace("GENERIC", "RIPPER")
+    mark = cell("MARK", interface="(port A)").replace("GENERIC", "TIE")
+    contents = placed("X1", "RIP") + placed("X2", "MARK") + placed("R1", "R") + net("N", "R1.A", "X1.A", "X2.A")
+    netlist = read(board(contents + net("M", "R1.B", "X1.B"), cells=RES + ripper + mark))
+    assert [(each.name, len(each.pins)) for each in netlist.nets] == [("N", 1), ("M", 1)]
+    [warning] = netlist.warnings
+    assert ("nothing is joined through it: X1, a RIP" in warning.message, warning.line, warning.count) == (True, 6, 1)
+
+
 def test_a_pin_on_three_nets_is_told_twice() -> None:
     contents = placed("R1", "R") + net("N1", "R1.A") + net("N2", "R1.A", "R1.A") + net("N3", "R1.A")
     netlist = read(board(contents))
