@@ -6,17 +6,24 @@ its ``until`` a waiver no longer counts.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+import contextlib
+import os
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from datetime import date, datetime
 from pathlib import Path
 
 from protlint.findings import Finding
 from protlint.limits import fits
-from protlint.sources import UsageError, read_bytes, write_whole
+from protlint.sources import FileError, UsageError, read_bytes, shown_name, write_whole
 from protlint.toml.file import load_toml
 from protlint.toml.tables import Table
 from protlint.toml.text import toml_string
+
+try:
+    import fcntl
+except ImportError:  # not a POSIX system
+    fcntl = None  # type: ignore[assignment]
 
 MATCHES_NOTHING = "this waiver matches nothing"
 """How the remark on an idle waiver ends; of several boards it counts only where it is idle on all."""
@@ -84,38 +91,70 @@ def apply_waivers(
         if not covered:
             remarks.append(f"{place}: {MATCHES_NOTHING}")
         elif waiver.until is not None and today > waiver.until:
-            names = ", ".join(finding.fingerprint for finding in covered)
-            remarks.append(
-                f"{place}: this waiver ended on {waiver.until.isoformat()}; what it covered counts again: {names}"
-            )
+            counting = [one.fingerprint for one in covered if not any(other.covers(one) for other in live)]
+            again = f"; what it covered counts again: {', '.join(counting)}" if counting else ""
+            remarks.append(f"{place}: this waiver ended on {waiver.until.isoformat()}{again}")
     return marked, tuple(remarks)
 
 
-def add_waiver(path: str | Path, waiver: Waiver) -> None:
+def add_waiver(path: str | Path, waiver: Waiver, *, on: date | None = None) -> None:
     """Add a waiver at the end of a file, made where it is absent; every line that stands there stays as it is.
+
+    ``on`` is the day it is added; today where None.
 
     Raises
     ------
     FileError : the file cannot be read or written.
     InputError : what stands in the file is no waivers file.
-    UsageError : the fingerprint is waived already.
+    UsageError : the fingerprint is waived already, or the waiver would end before it begins.
     """
-    before = ""
-    if Path(path).exists():
-        standing = load_waivers(path)
-        for other in standing.entries:
-            if other.fingerprint == waiver.fingerprint and waiver.fingerprint is not None:
-                raise UsageError(f"already waived by {other.by}", file=standing.file, line=other.line, column=other.column)
-        before = read_bytes(path)[0].decode("utf-8")
-    line_end = "\r\n" if "\r\n" in before else "\n"
-    if before and not before.endswith("\n"):
-        before += line_end
-    rows = ["", "[[waiver]]"] if before else ["[[waiver]]"]
+    today = on or date.today()
+    if waiver.until is not None and waiver.until < today:
+        raise UsageError(f"{waiver.until.isoformat()} is past: such a waiver covers nothing")
+    with _alone_in(Path(path).parent):
+        before = ""
+        if Path(path).exists():
+            _refuse_another(load_waivers(path), waiver, today)
+            before = read_bytes(path)[0].decode("utf-8")
+        write_whole(path, before + _written(waiver, before))
+
+
+def _refuse_another(standing: Waivers, waiver: Waiver, today: date) -> None:
+    for other in standing.entries:
+        if other.fingerprint == waiver.fingerprint and waiver.fingerprint is not None:
+            past = other.until is not None and other.until < today
+            until = f" until {other.until}" if other.until is not None else ""
+            message = f"already waived by {other.by}{until}{', which is past: put a later date there' if past else ''}"
+            raise UsageError(message, file=standing.file, line=other.line, column=other.column)
+
+
+def _written(waiver: Waiver, before: str) -> str:
+    """Return a waiver as it goes behind what stands in a file, with the line ends that are in use there."""
+    rows = [""] * (bool(before) + (bool(before) and not before.endswith("\n"))) + ["[[waiver]]"]
     for key in ("fingerprint", "check", "part", "reason", "by"):
         text = getattr(waiver, key)
         rows += [f"{key} = {toml_string(text)}"] if text is not None else []
     rows += [f"until = {waiver.until.isoformat()}"] if waiver.until is not None else []
-    write_whole(path, before + line_end.join(rows) + line_end)
+    line_end = "\r\n" if "\r\n" in before else "\n"
+    return line_end.join(rows) + line_end
+
+
+@contextlib.contextmanager
+def _alone_in(folder: Path) -> Iterator[None]:
+    """Let no other process that adds a waiver in a folder come between, where the system can lock a folder."""
+    if fcntl is None:
+        yield
+        return
+    try:
+        place = os.open(folder, os.O_RDONLY)
+    except OSError as error:
+        raise FileError(f"cannot be written in ({error.strerror})", file=shown_name(folder)) from None
+    try:
+        with contextlib.suppress(OSError):  # a file system that has no locks
+            fcntl.flock(place, fcntl.LOCK_EX)
+        yield
+    finally:
+        os.close(place)
 
 
 def _waiver(table: Table) -> Waiver:

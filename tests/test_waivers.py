@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from concurrent.futures import ThreadPoolExecutor
 from datetime import date
 from pathlib import Path
 
@@ -95,13 +96,43 @@ def test_adding_one_keeps_every_byte_that_stood_there(tmp_path: Path) -> None:
     path = tmp_path / "waivers.toml"
     path.write_bytes(text.encode("utf-8"))
     new = Waiver(reason='the "driver"\ngives 5 mA', by="Ö. R.", fingerprint="new", until=date(2027, 6, 30))
-    add_waiver(path, new)
+    add_waiver(path, new, on=date(2027, 1, 1))
     assert path.read_bytes().startswith(text.encode("utf-8"))
     loaded = load_waivers(path).entries
     assert [(one.fingerprint, one.reason, one.by, one.until) for one in loaded] == [
         ("old", "a", "b", None),
         ("new", new.reason, new.by, new.until),
     ]
+
+
+def test_one_that_ended_is_not_said_to_count_again_where_another_covers_the_same(tmp_path: Path) -> None:
+    text = f'[[waiver]]\nfingerprint = "{FINDINGS[0].fingerprint}"\nreason = "seen"\nby = "A. R."\n'
+    found, (remark,) = marks(tmp_path, f"{text}until = 2027-06-30\n{text}", date(2028, 1, 1))
+    assert found[0] == "seen"
+    assert remark.endswith("waivers.toml:1:3: this waiver ended on 2027-06-30")
+
+
+def test_one_that_is_past_is_not_added_and_one_that_ended_is_pointed_at(tmp_path: Path) -> None:
+    path, day = tmp_path / "waivers.toml", date(2027, 6, 30)
+    waiver = Waiver(reason="a", by="b", fingerprint="x", until=day)
+    with pytest.raises(UsageError, match="2027-06-30 is past"):
+        add_waiver(path, waiver, on=date(2027, 7, 1))
+    assert not path.exists()
+    add_waiver(path, waiver, on=day)
+    with pytest.raises(UsageError, match=r"already waived by b until 2027-06-30$"):
+        add_waiver(path, waiver, on=day)
+    with pytest.raises(UsageError, match="which is past: put a later date there") as caught:
+        add_waiver(path, Waiver(reason="a", by="b", fingerprint="x"), on=date(2027, 7, 1))
+    assert (caught.value.line, caught.value.column) == (1, 3)
+
+
+def test_none_is_lost_where_several_add_at_once(tmp_path: Path) -> None:
+    pytest.importorskip("fcntl", reason="SKIPPED: this system has no locks on folders")
+    path = tmp_path / "waivers.toml"
+    names = [f"check-{number}" for number in range(40)]
+    with ThreadPoolExecutor(8) as pool:
+        list(pool.map(lambda name: add_waiver(path, Waiver(reason="a", by="b", fingerprint=name)), names))
+    assert sorted(one.fingerprint or "" for one in load_waivers(path).entries) == sorted(names)
 
 
 def test_adding_one_makes_the_file_and_refuses_it_twice(tmp_path: Path) -> None:

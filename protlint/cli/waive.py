@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import difflib
+import shlex
 from datetime import date
 from typing import Any
 
@@ -42,9 +43,9 @@ def waive(netlist: str, fingerprint: str, reason: str, by: str, until: date | No
     review = pipeline.review(netlist, **reading)
     names = [finding.fingerprint for finding in review.findings]
     if fingerprint not in names:
-        near = difflib.get_close_matches(fingerprint, names, n=1)
-        hint = f"; did you mean {near[0]}?" if near else ""
+        near = difflib.get_close_matches(fingerprint.lower(), names, n=1)
+        hint = f"; did you mean {near[0]}?" if near else "; `protlint review` ends each finding with what it is called"
         raise UsageError(f"no finding of this board is called {fingerprint}{hint}", file=review.board.netlist.file)
     add_waiver(waivers, Waiver(reason=reason, by=by, fingerprint=fingerprint, until=until))
-    say(f"Added to {shown_name(waivers)}: {fingerprint}\nReview with --waivers {waivers} from now on.\n")
+    say(f"Added to {shown_name(waivers)}: {fingerprint}\nReview with --waivers {shlex.quote(waivers)} from now on.\n")
     return 0

@@ -166,14 +166,14 @@ def test_a_waiver_keeps_the_finding_and_opens_the_gate(
     assert answered(capsys, "review", BOARD, *FILES, "--save", "r.json")[::2] == (1, "")
     errors = [one["fingerprint"] for one in report_in(bench / "r.json")["findings"] if one["level"] == "error"]
     for name in errors:
-        done = protlint("waive", BOARD, name, "--reason", "seen on the bench", "--by", "A. R.", "--until", "2030-01-01",
+        done = protlint("waive", BOARD, name, "--reason", "seen on the bench", "--by", "A. R.", "--until", "2099-01-01",
                         *FILES, folder=bench)  # fmt: skip
         assert done.returncode == 0, done.stderr
     options = ("--waivers", "waivers.toml", "--save", "r.json")
-    assert answered(capsys, "review", BOARD, *FILES, *options, "--on", "2029-12-31")[0] == 0
+    assert answered(capsys, "review", BOARD, *FILES, *options, "--on", "2098-12-31")[0] == 0
     report = report_in(bench / "r.json")
     assert sorted(one["fingerprint"] for one in report["findings"] if one["waived"] == "seen on the bench") == sorted(errors)
-    assert answered(capsys, "review", BOARD, *FILES, *options, "--on", "2030-01-02")[0] == 1
+    assert answered(capsys, "review", BOARD, *FILES, *options, "--on", "2099-01-02")[0] == 1
     assert len(report_in(bench / "r.json")["remarks"]) == len(errors)
     code, _, err = answered(capsys, "waive", BOARD, errors[0], "--reason", "x", "--by", "y", *FILES)
     assert (code, "already waived" in err) == (2, True)
