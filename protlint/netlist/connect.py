@@ -158,7 +158,7 @@ class _Wirer:
         if ref.instance is None:
             bits = self.block.ports.find(*wanted, text=net) or self.connectors.find(*wanted, text=net)
             if bits is None:
-                self.notes.add("reference", ref.offset, f"the port {ref.port}, which the cell {self._name} has not")
+                self.notes.add("port", ref.offset, f"{ref.port} of the cell {self._name}")
                 bits = self.connectors.undeclared(ref.port, ref.member)
             self.budget.spend(len(bits) - 1, ref.offset)
             return [(_OWN, bit) for bit in bits]
@@ -169,12 +169,13 @@ class _Wirer:
             return ()
         bits = placed.block.ports.find(*wanted, text=net)
         if bits is None:
+            port = ref.port + "".join(f"[{index}]" for index in ref.member)
             cell = placed.block.cell.name.text
-            if placed.block.view is not None:  # of a cell that is not in the file no port is known
-                port = ref.port + "".join(f"[{index}]" for index in ref.member)
-                self.notes.add("reference", ref.offset, f"the port {port} of {ref.instance}, which the cell {cell} has not")
             if placed.block.contents is not None:
+                self.notes.add("reference", ref.offset, f"the port {port} of {ref.instance}, which the cell {cell} has not")
                 return ()
+            if placed.block.view is not None:  # of a cell that is not in the file no port is known
+                self.notes.add("port", ref.offset, f"{port} of {ref.instance}, a {cell}")
             bits = placed.block.ports.undeclared(ref.port, ref.member)
         self.budget.spend(len(elements) * len(bits) - 1, ref.offset)
         return [(element, bit) for element in elements for bit in bits]

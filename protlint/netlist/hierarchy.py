@@ -142,13 +142,13 @@ class Directory:
             found = self.find_anywhere(ref.cell or own)
             if found is not None:
                 library = ref.library or inside.library.name.text
-                detail = f"the cell {ref.cell}, not in the library {library}; that of {found[1].name.text} is taken"
-                self._notes.add("reference", instance.offset, detail)
+                detail = f"{ref.cell}, sought in {library}, found in {found[1].name.text}"
+                self._notes.add("library", instance.offset, detail)
                 return self.block(*found, ref.view, instance.offset)
         ref = instance.views[0] if instance.views else ViewRef(None, "", None)
         name, library = ref.cell or "", ref.library or inside.library.name.identifier
-        detail = f"the cell {name} of {instance.name.text}" if name else f"{instance.name.text} names no cell"
-        self._notes.add("reference", instance.offset, detail)
+        detail = f"{name} for {instance.name.text}" if name else f"{instance.name.text} names no cell"
+        self._notes.add("cell", instance.offset, detail)
         return self._unknown_block(name, library)
 
     def _unknown_block(self, name: str, library: str) -> Block:

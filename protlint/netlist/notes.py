@@ -12,7 +12,10 @@ KINDS = {
     "duplicate": "one identifier for two things in one scope; both are kept, and references go to the one named like their "
     "net, else to the first: {}",
     "case": "identifiers that differ only in case, which EDIF takes as one; they are kept apart by their case: {}",
-    "reference": "a reference that leads nowhere: {}",
+    "reference": "a reference that leads nowhere, and joins nothing: {}",
+    "library": "a cell that is not in the library a reference names; one of its name elsewhere is taken: {}",
+    "cell": "a cell that is not in the file; what is placed of it is kept as a part: {}",
+    "port": "a port that its cell does not declare; it is taken as one all the same: {}",
     "view": "a view that is named and absent; the cell's best other view is taken: {}",
     "designs": "{}",
     "global": "a globalPortRef: all of one name are taken as one net of the whole design: {}",

@@ -44,7 +44,9 @@ def survey(review: Review) -> Document:
         "pins": _counted((part.kind, part.roles_from) for part in board.parts if part.kind in ROLED_KINDS),
         "values": _values(board),
         "unknown": {
-            "kind": _gathered((part.part.cell, part.id) for part in board.parts if part.kind == "unknown"),
+            "kind": _gathered(
+                (part.part.cell or "that is not named", part.id) for part in board.parts if part.kind == "unknown"
+            ),
             "pins": _gathered(
                 (_type_of(part), part.id) for part in board.parts if part.kind in ROLED_KINDS and not part.roles
             ),
