@@ -79,15 +79,29 @@ class WorkingLine:
 
 
 @dataclass(frozen=True, slots=True)
+class Fit:
+    """A part that a remedy fits: its value in SI units, and its rated dissipation where that matters."""
+
+    part: str
+    value: float
+    power_W: float | None = None
+
+
+Remedy = tuple[str | None, tuple[Fit, ...]]
+"""What to do in words (None where it cannot be told), and the parts it fits: none where it is no matter of values."""
+
+
+@dataclass(frozen=True, slots=True)
 class Finding:
     """One check's answer about one limiter (or, with ``limiter`` None, about the board) when something is wrong.
 
     A check fills in ``check``, ``limiter``, ``parts``, ``nets``, ``subject``, ``message``, ``working``, ``remedy``,
-    ``assumption`` and, where the catalogue gives it several levels, ``level``. The pipeline stamps the rest.
+    ``fits``, ``assumption`` and, where the catalogue gives it several levels, ``level``. The pipeline stamps the rest.
 
     ``subject`` tells two findings of one check about the same parts apart (a quantity, a net's role, never a net's
     name or a number that moves with values); it goes into the fingerprint and is not printed.
     ``assumption`` is true where the verdict rests on an assumed value: such a finding is never an error.
+    ``fits`` is what the remedy fits, so that it can be judged beforehand what comes of it.
     ``waived`` is the reason a waiver gives, ``waived_by`` who gave it.
     """
 
@@ -101,6 +115,7 @@ class Finding:
     assumption: bool = False
     subject: str = ""
     level: Level | None = None
+    fits: tuple[Fit, ...] = ()
     file: str | None = None
     line: int | None = None
     column: int | None = None

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from datetime import date
 from pathlib import Path
@@ -11,25 +11,26 @@ from typing import Literal
 from protlint.board.attributes import file_habits
 from protlint.board.graph import Board, build_board
 from protlint.board.parts_list import Difference, PartsList, differences, read_parts_list
+from protlint.checks.afterwards import foretold
+from protlint.checks.asking import ask, with_levels
 from protlint.checks.board_case import BoardCase
 from protlint.checks.case import Case
 from protlint.checks.catalogue import CheckRow, load_catalogue
 from protlint.checks.derating import derating_remarks
 from protlint.checks.load import StartUp, start_up_of
 from protlint.checks.part_fails import IfPartFails, if_a_part_fails
-from protlint.checks.table import BOARD_CHECKS, BOUNDED, CHECKS, WITHOUT_SOLUTION
+from protlint.checks.table import BOARD_CHECKS
 from protlint.findings import (
     FOR_WANT_OF,
     LEVELS,
     UNSOLVED,
     Finding,
-    Level,
     NotChecked,
     identifying_parts,
     stamp_fingerprints,
 )
 from protlint.idle import idle_tables
-from protlint.limits import CheckSetting, LimiterLimits, Limits, load_limits, needs_of
+from protlint.limits import LimiterLimits, Limits, load_limits, needs_of
 from protlint.netlist import read_netlist
 from protlint.netlist.forms import no_collection
 from protlint.netlist.model import Netlist
@@ -204,11 +205,11 @@ def _ask_of_the_board(whole: BoardCase) -> tuple[list[Finding], dict[str | None,
     """Put the checks of the whole board; return their findings, and by limiter what could not be checked."""
     findings: list[Finding] = []
     unanswered: dict[str | None, list[NotChecked]] = {}
-    for check, ask in BOARD_CHECKS.items():
-        for answer in ask(whole):
+    for check, put in BOARD_CHECKS.items():
+        for answer in put(whole):
             if isinstance(answer, Finding):
                 settings = (whole.needs_at(answer).checks, whole.limits.checks)
-                findings += _stamped((answer,), check, whole.rows, settings)
+                findings += with_levels((answer,), check, whole.rows, settings)
             else:
                 unanswered.setdefault(answer.limiter, []).append(answer.what)
     return findings, unanswered
@@ -249,20 +250,12 @@ def _review_limiter(whole: _Whole, limiter: Limiter) -> tuple[ReviewedLimiter, C
         known=whole.known,
         solved=whole.solved,
     )
-    findings: list[Finding] = []
     not_checked = [NotChecked(what, case.limits_key(key) if key == "output" else key) for what, key in solution.not_checked]
     if solution.not_solved is not None:
         not_checked.append(NotChecked(UNSOLVED, solution.not_solved.removeprefix(FOR_WANT_OF)))
-    for check, ask in CHECKS.items():
-        if solution.not_solved is not None and check not in WITHOUT_SOLUTION:
-            continue
-        if check in BOUNDED and case.unbounded:
-            not_checked.append(NotChecked(check, case.drive_bound))
-            continue
-        answers = list(ask(case))
-        not_checked += [answer for answer in answers if isinstance(answer, NotChecked)]
-        found = (answer for answer in answers if isinstance(answer, Finding))
-        findings += _stamped(found, check, desk.catalogue, (needs.checks, desk.limits.checks))
+    findings, unanswered = ask(case)
+    findings = foretold(case, findings)
+    not_checked += unanswered
     if case.unbounded:
         not_checked.append(NotChecked(UNSOLVED, case.drive_bound))
         solution = Solution(not_solved=f"{FOR_WANT_OF}{case.drive_bound}", assumed=solution.assumed)
@@ -288,25 +281,6 @@ def _names(board: Board, limiter: Limiter) -> tuple[str, ...]:
     output = limiter.nets["output"]
     nets = board.nets[output].names if output is not None else ()
     return (limiter.id, *limiter.roles.get("pass", ()), *limiter.roles.get("sense", ()), *nets)
-
-
-def _stamped(
-    findings: Iterable[Finding],
-    check: str,
-    catalogue: Mapping[str, CheckRow],
-    settings: Sequence[Mapping[str, CheckSetting]],
-) -> list[Finding]:
-    """Give findings their level: the user's for the check, else the check's own; assumptions are never errors."""
-    chosen = next((one[check].level for one in settings if check in one and one[check].level is not None), None)
-    if chosen == "off":
-        return []
-    stamped = []
-    for finding in findings:
-        level: Level = chosen or finding.level or catalogue[check].level  # type: ignore[assignment]
-        if finding.assumption and level == "error":
-            level = "warning"
-        stamped.append(replace(finding, level=level))
-    return stamped
 
 
 def _finish(

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from protlint.checks.case import DRAWN, Answer, Case
 from protlint.checks.stop_range import StopRange, moves_for_the_stop, stop_range
 from protlint.checks.surge import Surge, shunt_of, surge
-from protlint.findings import Level, NotChecked, WorkingLine
+from protlint.findings import Fit, Level, NotChecked, Remedy, WorkingLine
 from protlint.partdata.book import Figure
 from protlint.quantities import format_quantity
 from protlint.solve.circuit import Device
@@ -84,6 +84,7 @@ def base_stop_high(case: Case) -> Iterator[Answer]:
     if moves.share <= most:
         return
     low, high = moves.hfe
+    remedy, fits = _what_will_do(case, shunt)
     yield case.finding(
         check,
         f"{', '.join(stops)} lets the limit move by {moves.share * 100.0:.2g} % with the gain of {part_id}, "
@@ -97,7 +98,8 @@ def base_stop_high(case: Case) -> Iterator[Answer]:
             WorkingLine("moves without it", "the same with the base stop bridged", moves.without, ""),
             WorkingLine("moves for its sake", "the difference of the two, over holds", moves.share, ""),
         ),
-        remedy=_what_will_do(case, shunt),
+        remedy=remedy,
+        fits=fits,
         assumption=case.assumes(*DRAWN),
     )
 
@@ -117,6 +119,7 @@ def _base(case: Case, check: str) -> Base | NotChecked | None:
 def _finding(case: Case, check: str, base: Base, said: str, level: Level, stops: tuple[str, ...] = ()) -> Answer:
     may = "" if base.rating is None else f", its rating is {format_quantity(base.rating.value, 'A')}"
     lines = base.surge.lines()
+    remedy, fits = _what_will_do(case, base.device, base.surge)
     if base.rating is not None:
         lines += (WorkingLine("base current rating", "part data", base.rating.value, "A", base.rating.source),)
     return case.finding(
@@ -124,13 +127,14 @@ def _finding(case: Case, check: str, base: Base, said: str, level: Level, stops:
         f"{said}: up to {format_quantity(base.surge.base_A, 'A')} into the base before the loop acts{may}",
         parts=(*stops, base.part_id),
         working=lines,
-        remedy=_what_will_do(case, base.device, base.surge),
+        remedy=remedy,
+        fits=fits,
         level=level,
         assumption=level == "error" and case.assumes(*DRAWN),
     )
 
 
-def _what_will_do(case: Case, shunt: Device, instant: Surge | None = None) -> str:
+def _what_will_do(case: Case, shunt: Device, instant: Surge | None = None) -> Remedy:
     """Return the base stops that will do, as a remedy."""
     known = instant or surge(case, shunt, case.threshold("base-stop-absent", "junction"))
     stops, part_id = case.parts("base_stop"), case.parts("shunt")[0]
@@ -140,10 +144,12 @@ def _what_will_do(case: Case, shunt: Device, instant: Surge | None = None) -> st
         most = format_quantity(found.most_ohm, "ohm")
         return (
             f"no base stop does both: {least} or more keeps the base current down, {most} or less keeps the limit from "
-            f"following the gain; fit a shunt with less spread of gain, or one that bears more base current"
+            f"following the gain; fit a shunt with less spread of gain, or one that bears more base current",
+            (),
         )
     where = f"in series with the base of {part_id}"
     if stops:
         where = f"as {stops[0]}" if len(stops) == 1 else f"for {', '.join(stops)} together"
     upto = "" if found.most_ohm is None else f" ({least} to {format_quantity(found.most_ohm, 'ohm')} will do, E24)"
-    return f"fit {format_quantity(found.to_fit_ohm, 'ohm')} {where}{upto}"
+    fits = (Fit(stops[0], found.to_fit_ohm),) if len(stops) == 1 else ()
+    return f"fit {format_quantity(found.to_fit_ohm, 'ohm')} {where}{upto}", fits

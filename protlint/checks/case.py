@@ -11,10 +11,10 @@ from protlint.board.graph import Board, BoardPart
 from protlint.board.parts_list import Difference
 from protlint.checks.catalogue import CheckRow
 from protlint.checks.derating import derated, share_of
-from protlint.findings import Finding, Level, NotChecked, WorkingLine
+from protlint.findings import Finding, Fit, Level, NotChecked, WorkingLine
 from protlint.limits import UNSTATED, CheckSetting, LimiterLimits, Limits, Range
 from protlint.partdata.book import Figure
-from protlint.solve.bench import LATCH, TRIPPED_S, Bench
+from protlint.solve.bench import Bench
 from protlint.solve.circuit import FEED, Circuit, Device
 from protlint.solve.conditions import Condition, Known, solve_under
 from protlint.solve.memo import Memo
@@ -122,10 +122,8 @@ class Case:
 
     @property
     def lasts_s(self) -> float:
-        """How long a short lasts: as the limits file says, else until a latch trips, else for ever."""
-        if self.needs.short_s is not None:
-            return self.needs.short_s
-        return TRIPPED_S if self.limiter.elements.get(LATCH) else math.inf
+        """How long a short lasts: as the limits file says, else for ever."""
+        return self.needs.short_s if self.needs.short_s is not None else math.inf
 
     def device_parts(self, *roles: str) -> Iterator[tuple[str, tuple[str, ...]]]:
         """Yield (part id, names of its devices in the circuit) of the parts in the given roles that have any."""
@@ -194,6 +192,7 @@ class Case:
         assumption: bool = False,
         subject: str = "",
         nets: tuple[str, ...] = (),
+        fits: tuple[Fit, ...] = (),
     ) -> Finding:
         """Return a finding about this limiter."""
         return Finding(
@@ -207,6 +206,7 @@ class Case:
             level=level,
             assumption=assumption,
             subject=subject,
+            fits=fits,
         )
 
 

@@ -7,9 +7,8 @@ from collections.abc import Iterator
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.drive_resistor import greatest_drive_resistance
 from protlint.checks.sizing import least_carries_A, sense_remedy
-from protlint.findings import NotChecked, WorkingLine
+from protlint.findings import NotChecked, Remedy, WorkingLine
 from protlint.quantities import format_quantity
-from protlint.solve.bench import LATCH
 from protlint.solve.solution import Currents, Solution
 
 
@@ -21,17 +20,17 @@ def carry_not_met(case: Case) -> Iterator[Answer]:
         return
     row, carries_A = worst
     carry_A = case.needs.carry_A
-    if carry_A is not None and carries_A >= carry_A:
-        yield from _may_trip_before(case)
     if carry_A is None or carries_A >= carry_A or row.limited_by_output == "drive":
         return
+    remedy, fits = sense_remedy(case)
     yield case.finding(
         "carry-not-met",
         f"carries at least {format_quantity(carries_A, 'A')} at {format_quantity(row.ambient_degC, 'degC')}, "
         f"{format_quantity(carry_A - carries_A, 'A')} less than the {format_quantity(carry_A, 'A')} the board needs",
         parts=case.parts("sense", "shunt"),
         working=_carry_working(case, row, carries_A, carry_A),
-        remedy=sense_remedy(case),
+        remedy=remedy,
+        fits=fits,
         assumption=case.assumes(*ALL_ASSUMPTIONS),
     )
 
@@ -47,18 +46,20 @@ def drive_insufficient(case: Case) -> Iterator[Answer]:
     if carry_A is None or carries_A >= carry_A or row.limited_by_output != "drive":
         return
     drive = case.parts("drive")
+    remedy, fits = _more_drive(case, carries_A, carry_A)
     yield case.finding(
         "drive-insufficient",
         f"the drive gives out at {format_quantity(carries_A, 'A')} at {format_quantity(row.ambient_degC, 'degC')}, "
         f"before the {format_quantity(carry_A, 'A')} the board needs and before the limiter acts",
         parts=(*drive, *case.parts("pass")),
         working=_carry_working(case, row, carries_A, carry_A),
-        remedy=_more_drive(case, carries_A, carry_A),
+        remedy=remedy,
+        fits=fits,
         assumption=case.assumes(*ALL_ASSUMPTIONS),
     )
 
 
-def _more_drive(case: Case, carries_A: float, carry_A: float) -> str:
+def _more_drive(case: Case, carries_A: float, carry_A: float) -> Remedy:
     """Return the drive resistor that lets the stage carry what the board needs, or by how much drive or gain fall short."""
 
     def does(solution: Solution) -> bool:
@@ -70,8 +71,8 @@ def _more_drive(case: Case, carries_A: float, carry_A: float) -> str:
         return fit
     resistors = ", ".join(case.parts("drive")) or "the drive"
     if carries_A <= 0.0:
-        return f"{resistors} cannot turn the pass device on at all there: give the drive more voltage"
-    return f"let {resistors} give {carry_A / carries_A:.2g} times the drive, or fit a pass device of as much more hFE"
+        return f"{resistors} cannot turn the pass device on at all there: give the drive more voltage", ()
+    return f"let {resistors} give {carry_A / carries_A:.2g} times the drive, or fit a pass device of as much more hFE", ()
 
 
 def cap_exceeded(case: Case) -> Iterator[Answer]:
@@ -87,6 +88,7 @@ def cap_exceeded(case: Case) -> Iterator[Answer]:
     most_A = _high_most_A(row)
     if most_A <= cap_A:
         return
+    remedy, fits = sense_remedy(case)
     yield case.finding(
         "cap-exceeded",
         f"passes up to {format_quantity(most_A, 'A')} at {format_quantity(row.ambient_degC, 'degC')}, "
@@ -97,7 +99,8 @@ def cap_exceeded(case: Case) -> Iterator[Answer]:
             WorkingLine("most, high end", "the same with every tolerance at its worst", most_A, "A"),
             WorkingLine("cap", "limits file", cap_A, "A"),
         ),
-        remedy=sense_remedy(case),
+        remedy=remedy,
+        fits=fits,
         assumption=case.assumes(*ALL_ASSUMPTIONS),
     )
 
@@ -112,20 +115,6 @@ def _least_carries(case: Case) -> tuple[Currents, float] | None:
 
 def _high_most_A(row: Currents) -> float:
     return row.most_range_A[1] if row.most_range_A is not None else 0.0
-
-
-def _may_trip_before(case: Case) -> Iterator[Answer]:
-    """Say of a limiter that latches that its trip lies below what it carries without the latch."""
-    latching = [
-        case.board.parts[part].id
-        for index in case.limiter.elements.get(LATCH, ())
-        for part in case.board.elements[index].parts
-    ]
-    if latching:
-        yield NotChecked(
-            "carry-not-met",
-            f"the current at which {', '.join(latching)} trips: it lies below carries, how far is not solved",
-        )
 
 
 def _not_checked(case: Case, check: str) -> Iterator[Answer]:

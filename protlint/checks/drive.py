@@ -10,7 +10,8 @@ from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.drive_resistor import least_drive_resistance
 from protlint.checks.shunt import NOT_SOLVED, Taken, current_rating, hottest, taken_by_shunt
 from protlint.checks.sizing import meets
-from protlint.findings import Level, NotChecked, WorkingLine
+from protlint.checks.thermal import Junction
+from protlint.findings import Level, NotChecked, Remedy, WorkingLine
 from protlint.limits import DriveLimits
 from protlint.quantities import format_quantity, preferred
 from protlint.solve.solution import Solution
@@ -27,8 +28,9 @@ class Excess:
     rated: float
     allowed: float
     unit: str
-    source: str
+    source: str | None
     taken: Taken
+    junction: Junction | None = None
 
     @property
     def ratio(self) -> float:
@@ -86,7 +88,7 @@ def _excesses(case: Case, check: str, part_id: str, rows: tuple[Taken, ...]) -> 
         yield NotChecked(check, hot)
     elif hot is not None:
         taken, junction = hot
-        yield Excess("power", taken.power_W, junction.allowed_W, junction.allowed_W, "W", "derated at that ambient", taken)
+        yield Excess("power", taken.power_W, junction.allowed_W, junction.allowed_W, "W", None, taken, junction)
 
 
 def _unlimited(case: Case, part_id: str, worst: Excess) -> Answer:
@@ -95,6 +97,7 @@ def _unlimited(case: Case, part_id: str, worst: Excess) -> Answer:
     level: Level = "error" if worst.value > worst.rated else "warning"
     ambient = format_quantity(worst.taken.row.ambient_degC, "degC")
     value, allowed = format_quantity(worst.value, worst.unit), format_quantity(worst.allowed, worst.unit)
+    remedy, fits = _resistance_to_fit(case, part_id, worst)
     what = "half its current rating" if worst.quantity == "current" else "what it may dissipate there"
     return case.finding(
         "drive-unlimited",
@@ -103,16 +106,24 @@ def _unlimited(case: Case, part_id: str, worst: Excess) -> Answer:
         working=(
             WorkingLine("the drive gives", "solved in the held short", abs(worst.taken.point.drive_A), "A"),
             WorkingLine(f"shunt {worst.quantity}", "solved, every tolerance set for the most", worst.value, worst.unit),
-            WorkingLine("it may take", what, worst.allowed, worst.unit, worst.source),
+            *(worst.junction.lines if worst.junction is not None else ()),
+            WorkingLine(
+                "it may take",
+                worst.junction.allowed_how if worst.junction is not None else what,
+                worst.allowed,
+                worst.unit,
+                worst.source,
+            ),
         ),
-        remedy=_resistance_to_fit(case, part_id, worst),
+        remedy=remedy,
+        fits=fits,
         level=level,
         assumption=case.assumes(*ALL_ASSUMPTIONS),
         subject=worst.quantity,
     )
 
 
-def _resistance_to_fit(case: Case, part_id: str, worst: Excess) -> str:
+def _resistance_to_fit(case: Case, part_id: str, worst: Excess) -> Remedy:
     def does(solution: Solution) -> bool:
         rows = taken_by_shunt(replace(case, solution=solution))[part_id]
         if not rows:
@@ -129,9 +140,9 @@ def _resistance_to_fit(case: Case, part_id: str, worst: Excess) -> str:
         needed_A = preferred(
             worst.value / (case.threshold("drive-unlimited", "share") * case.share(part_id, "current")), "E24", "up"
         )
-        return f"the stage needs that drive: fit a shunt rated {format_quantity(needed_A, 'A')} or more as {part_id}"
+        return f"the stage needs that drive: fit a shunt rated {format_quantity(needed_A, 'A')} or more as {part_id}", ()
     limit_A = worst.allowed / max(worst.taken.voltage_V, 0.1)
-    return f"limit the drive's current: {part_id} may take {format_quantity(limit_A, 'A')} of it"
+    return f"limit the drive's current: {part_id} may take {format_quantity(limit_A, 'A')} of it", ()
 
 
 def driver_overloaded(case: Case) -> Iterator[Answer]:
@@ -166,6 +177,8 @@ def driver_overloaded(case: Case) -> Iterator[Answer]:
     def does(solution: Solution) -> bool:
         return all(_driver_W(one.drive_A, one.drive_V, upper_V, lower_V) <= power_W for one in solution.high_short)
 
+    less = f"let it give no more than {format_quantity(power_W / drop_V, 'A')}"
+    remedy, fits = least_drive_resistance(case, taken_W / power_W, does) or (less, ())
     yield case.finding(
         check,
         f"{name} takes {format_quantity(taken_W, 'W')} itself while the short is held at "
@@ -177,8 +190,8 @@ def driver_overloaded(case: Case) -> Iterator[Answer]:
             WorkingLine("power", f"{drop_V:.3g} V * {abs(point.drive_A):.3g} A", taken_W, "W", "Joule's law"),
             WorkingLine("it may take", "limits file or part data", power_W, "W"),
         ),
-        remedy=least_drive_resistance(case, taken_W / power_W, does)
-        or f"let it give no more than {format_quantity(power_W / drop_V, 'A')}",
+        remedy=remedy,
+        fits=fits,
         assumption=case.assumes(*ALL_ASSUMPTIONS),
     )
 

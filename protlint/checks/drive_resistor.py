@@ -8,6 +8,7 @@ from dataclasses import replace
 
 from protlint.checks.case import Case
 from protlint.checks.sizing import solve_again, with_resistance
+from protlint.findings import Fit, Remedy
 from protlint.quantities import format_quantity, within
 from protlint.solve.circuit import Circuit
 from protlint.solve.solution import Solution
@@ -19,7 +20,7 @@ LEAST_SHARE = 0.05
 """A drive resistor is not made smaller than this share of itself: something else is wrong then."""
 
 
-def least_drive_resistance(case: Case, times: float, does: Callable[[Solution], bool]) -> str | None:
+def least_drive_resistance(case: Case, times: float, does: Callable[[Solution], bool]) -> Remedy | None:
     """Return the least resistance of E24 in the drive with which ``does`` is true, found by solving; None where none is.
 
     ``times`` is by how much the drive's current has to come down, for where to begin.
@@ -36,7 +37,7 @@ def least_drive_resistance(case: Case, times: float, does: Callable[[Solution], 
     return _first(case, names, now_ohm, [ohm for ohm in values if ohm > now_ohm], does)
 
 
-def greatest_drive_resistance(case: Case, does: Callable[[Solution], bool]) -> str | None:
+def greatest_drive_resistance(case: Case, does: Callable[[Solution], bool]) -> Remedy | None:
     """Return the greatest resistance of E24 in the drive, below the one drawn, with which ``does`` is true; None where none
     is or there is no drive resistor."""
     names, now_ohm = _drive_resistors(case)
@@ -54,7 +55,7 @@ def _drive_resistors(case: Case) -> tuple[tuple[str, ...], float]:
 
 def _first(
     case: Case, names: tuple[str, ...], now_ohm: float, values: Sequence[float], does: Callable[[Solution], bool]
-) -> str | None:
+) -> Remedy | None:
     """Return the first of the values that does, as a remedy; once one does, all after it do: found by halving."""
 
     def fits(ohm: float) -> bool:
@@ -69,7 +70,8 @@ def _first(
         return None
     parts = case.parts("drive")
     where = f"as {parts[0]}" if len(parts) == 1 else "in series with the drive"
-    return f"fit {format_quantity(values[low], 'ohm')} {where}"
+    fitted = tuple(Fit(part, values[low]) for part in parts) if names and len(parts) == 1 else ()
+    return f"fit {format_quantity(values[low], 'ohm')} {where}", fitted
 
 
 def _with_drive(circuit: Circuit, names: tuple[str, ...], now_ohm: float, ohm: float) -> Circuit:

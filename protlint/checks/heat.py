@@ -10,7 +10,7 @@ from protlint.board.graph import BoardPart, Element
 from protlint.board.shares import part_shares
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.derating import derated, share_of
-from protlint.findings import Level, NotChecked, WorkingLine
+from protlint.findings import Fit, Level, NotChecked, WorkingLine
 from protlint.partdata.book import Figure
 from protlint.quantities import format_quantity, preferred
 from protlint.solve.solution import Point
@@ -180,6 +180,7 @@ def _burns(case: Case, check: str, part: BoardPart, load: Load, rating: Rating, 
         source += ", its overload test from memory"
         how += f", {load.times:g} times that for no more than {OVERLOAD_S:g} s"
     share = f", {format_quantity(_ratio(load.power_W, allowed_W), '%')} of the" if allowed_W > 0.0 else "; the rating leaves"
+    remedy, fits = _bigger(case, check, part, load, rating)
     return case.finding(
         check,
         f"{part.id} takes {format_quantity(load.power_W, 'W')} {load.condition} at {ambient}{share} "
@@ -197,7 +198,8 @@ def _burns(case: Case, check: str, part: BoardPart, load: Load, rating: Rating, 
             WorkingLine("rating", "at its knee or below", rating.power.value, "W", _source(case, rating.power.source)),
             WorkingLine(f"allowed at {ambient}", how, allowed_W, "W", source),
         ),
-        remedy=_bigger(case, check, part, load, rating),
+        remedy=remedy,
+        fits=fits,
         level=level,
         assumption=case.assumes(*ALL_ASSUMPTIONS),
         subject=part.id,
@@ -217,12 +219,13 @@ def rating_to_fit_W(power_W: float, rating: Rating, ambient_degC: float, share: 
     return next((sold for sold in COMMON_RATINGS_W if sold >= needed_W), preferred(needed_W, "E6", "up"))
 
 
-def _bigger(case: Case, check: str, part: BoardPart, load: Load, rating: Rating) -> str:
+def _bigger(case: Case, check: str, part: BoardPart, load: Load, rating: Rating) -> tuple[str, tuple[Fit, ...]]:
     """Return the rating to fit: the next one sold that stays below the warning threshold at that ambient."""
     sold_W = rating_to_fit_W(load.power_W, rating, load.ambient_degC, case.threshold(check, "warning"), load.times)
     if sold_W is None:
-        return f"fit a resistor that may dissipate at {format_quantity(load.ambient_degC, 'degC')} as {part.id}"
-    return f"fit {format_quantity(load.resistance_ohm, 'ohm')} rated {format_quantity(sold_W, 'W')} as {part.id}"
+        return f"fit a resistor that may dissipate at {format_quantity(load.ambient_degC, 'degC')} as {part.id}", ()
+    fit = f"fit {format_quantity(load.resistance_ohm, 'ohm')} rated {format_quantity(sold_W, 'W')} as {part.id}"
+    return fit, (Fit(part.id, load.resistance_ohm, sold_W),)
 
 
 def _voltage(case: Case, check: str, part: BoardPart, load: Load) -> Iterator[Answer]:

@@ -15,7 +15,7 @@ from dataclasses import dataclass
 
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.sizing import meets, solve_again, with_resistance
-from protlint.findings import NotChecked, WorkingLine
+from protlint.findings import Fit, NotChecked, Remedy, WorkingLine
 from protlint.limits import LimiterLimits
 from protlint.quantities import format_quantity, within
 from protlint.solve.circuit import Circuit
@@ -94,9 +94,11 @@ def foldback_locks_out(case: Case) -> Iterator[Answer]:
         return
     stuck_V, ambient_degC, line = min(found)
     load_A, gives_A = load_A_at(needs, stuck_V, working_V), line.at_A(stuck_V)
+    where = "in the short" if stuck_V < working_V / STEPS else f"{format_quantity(stuck_V, 'V')} from the short"
+    remedy, fits = _remedy(case, line, working_V)
     yield case.finding(
         CHECK,
-        f"the load locks the output out: {format_quantity(stuck_V, 'V')} from the short it takes "
+        f"the load locks the output out: {where} it takes "
         f"{format_quantity(load_A, 'A')} and the limiter gives {format_quantity(gives_A, 'A')} at "
         f"{format_quantity(ambient_degC, 'degC')}; the output works at {format_quantity(working_V, 'V')}",
         parts=case.parts("preset", "sense", "shunt"),
@@ -106,7 +108,8 @@ def foldback_locks_out(case: Case) -> Iterator[Answer]:
             WorkingLine("the limiter gives in the short", "the same", line.current_A[0], "A"),
             WorkingLine("the limiter gives at the working output", "the same", line.at_A(working_V), "A"),
         ),
-        remedy=_remedy(case, line, working_V),
+        remedy=remedy,
+        fits=fits,
         assumption=case.assumes(*ALL_ASSUMPTIONS),
     )
 
@@ -219,11 +222,11 @@ def _formula(needs: LimiterLimits, working_V: float) -> str:
     elif needs.load_ohm is not None:
         terms.append(f"V / {format_quantity(needs.load_ohm, 'ohm')}")
     if needs.load_current_A is not None:
-        terms.append(format_quantity(needs.load_current_A, "A"))
+        terms.append(f"a constant {format_quantity(needs.load_current_A, 'A')}")
     return " + ".join(terms)
 
 
-def _remedy(case: Case, line: Line, working_V: float) -> str:
+def _remedy(case: Case, line: Line, working_V: float) -> Remedy:
     """Return the preset's leg, or the sense resistance, with which the load starts and carry and cap are still met, found by
     solving; else by how much the limit has to be raised."""
     for role, down_to, up_to in (("preset.lower", 1.0, MOST_TIMES), ("sense", LEAST_SHARE, 1.0)):
@@ -236,13 +239,15 @@ def _remedy(case: Case, line: Line, working_V: float) -> str:
         values = within(down_to * now_ohm, up_to * now_ohm, "E24")
         for ohm in sorted((one for one in values if one != now_ohm), key=lambda one: abs(one / now_ohm - 1.0)):
             if _starts(case, with_resistance(case.circuit, names, ohm / now_ohm), working_V):
-                return f"fit {format_quantity(ohm, 'ohm')} as {case.board.parts[parts[0]].id}"
+                name = case.board.parts[parts[0]].id
+                return f"fit {format_quantity(ohm, 'ohm')} as {name}", (Fit(name, ohm),)
     places = [working_V * step / STEPS for step in range(1, STEPS)]
     times, at_V = max((load_A_at(case.needs, one, working_V) / max(line.at_A(one), 1e-9), one) for one in places)
     taken = format_quantity(load_A_at(case.needs, at_V, working_V), "A")
     return (
         f"fold back less: the limiter has to give more than {taken} {format_quantity(at_V, 'V')} from the short, "
-        f"{times:.3g} times what it does; or keep the load off until the output is up"
+        f"{times:.3g} times what it does; or keep the load off until the output is up",
+        (),
     )
 
 

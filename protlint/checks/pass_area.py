@@ -21,6 +21,8 @@ CHECK = "pass-outside-safe-area"
 WALLS = {"bipolar": ("vceo", "ic", "ic_peak"), "mosfet": ("vds", "id", "id_peak")}
 """The ratings for voltage, current for ever, and current for a short time."""
 
+VOLTAGE = "its voltage rating"
+
 HALVINGS = 30
 
 SOURCE = "data sheets' derating: thermal bound times (T_J,max - T_C) / (T_J,max - 25 degC); of second breakdown from memory"
@@ -193,14 +195,12 @@ def _outside(case: Case, part: BoardPart, worst: Place) -> Answer:
         working=(
             WorkingLine("voltage across it", f"solved, {stress.condition}", worst.seen.voltage_V, "V"),
             WorkingLine("current", "solved, every tolerance set for the most", worst.seen.current_A, "A"),
-            WorkingLine("case", "ambient + sink * power", worst.case_degC, "degC"),
-            WorkingLine("allowed", f"by {worst.bound.by}, at that case", worst.bound.current_A, "A", worst.source),
+            *_allowed_working(case, part, worst),
             WorkingLine(
-                "current over allowed",
-                "log-log between corners, derated",
+                "over what is allowed",
+                "voltage over its rating" if worst.bound.by == VOLTAGE else "current over what is allowed",
                 None if math.isinf(worst.ratio) else worst.ratio,
                 "",
-                SOURCE,
             ),
         ),
         remedy=_remedy(case, part, worst),
@@ -208,6 +208,36 @@ def _outside(case: Case, part: BoardPart, worst: Place) -> Answer:
         assumption=case.assumes(*ALL_ASSUMPTIONS) or worst.careful_only,
         subject=part.id,
     )
+
+
+def _allowed_working(case: Case, part: BoardPart, worst: Place) -> Iterator[WorkingLine]:
+    """Yield how what is allowed comes about: a rating, or the curve at 25 degC and the share that the case leaves of it."""
+    bound, case_degC = worst.bound, worst.case_degC
+    if bound.by == VOLTAGE:
+        yield WorkingLine("allowed", bound.by, worst.seen.voltage_V / worst.ratio, "V", worst.source)
+        return
+    if math.isnan(bound.cold_A):
+        yield WorkingLine("allowed", bound.by, bound.current_A, "A", worst.source)
+        return
+    limit, ambient_degC, sink_K_per_W = (
+        case.rating(part.id, "tj_max"),
+        worst.seen.stress.ambient_degC,
+        case.needs.sink_K_per_W,
+    )
+    assert limit is not None
+    heated = "the ambient, and what heats it before or in free air"
+    if sink_K_per_W:
+        watts = format_quantity((case_degC - ambient_degC) / sink_K_per_W, "W")
+        heated = f"{format_quantity(ambient_degC, 'degC')} + {watts} * {format_quantity(sink_K_per_W, 'K/W')}"
+    yield WorkingLine("case", heated, case_degC, "degC")
+    yield WorkingLine("allowed with the case at 25 degC", bound.how, bound.cold_A, "A", worst.source)
+    thermal = f"({limit.value:g} - {case_degC:.4g}) / ({limit.value:g} - 25)"
+    left = f"{thermal}, derated" if bound.left < thermal_share(case_degC, limit.value) else thermal
+    if bound.left > thermal_share(case_degC, limit.value):
+        left_at_limit = case.threshold(CHECK, "second_breakdown_left")
+        left = f"1 - (1 - {left_at_limit:g}) * (1 - {thermal})"
+    yield WorkingLine("left of it at that case", left, bound.left, "", SOURCE)
+    yield WorkingLine("allowed", "the product of the two", bound.current_A, "A")
 
 
 def _remedy(case: Case, part: BoardPart, worst: Place) -> str:

@@ -126,7 +126,7 @@ def _overheated(case: Case, part_id: str, stress: Stress, worst: Junction, remed
             WorkingLine("voltage across it", "solved", abs(state.voltage_V), "V"),
             WorkingLine("power", "all that flows into it", worst.own_W, "W", "Joule's law"),
             *worst.lines,
-            WorkingLine("it may take", "where its junction is at what it may reach", worst.allowed_W, "W"),
+            WorkingLine("it may take", worst.allowed_how, worst.allowed_W, "W"),
         ),
         remedy=remedy,
         assumption=case.assumes(*ALL_ASSUMPTIONS) or worst.assumed,
@@ -144,18 +144,27 @@ def _cooler(case: Case, part_id: str, found: list[tuple[Stress, Heating, Junctio
             return f"give {part_id} a sink of {format_quantity(value, 'K/W')} or less, case to ambient"
     limit = case.rating(part_id, "tj_max")
     assert limit is not None
-    base_degC = worst.from_degC if not math.isinf(heat.lasts_s) else heat.ambient_degC
-    room_K = allowed_rise_K(case.limits.derating, case.part(part_id).kind, limit.value, base_degC)
-    if room_K <= 0.0:
+
+    def room_K(from_degC: float) -> float:
+        return allowed_rise_K(case.limits.derating, case.part(part_id).kind, limit.value, from_degC)
+
+    brief = not math.isinf(heat.lasts_s)
+    cold_degC = worst.from_degC if brief else heat.ambient_degC
+    if room_K(cold_degC) <= 0.0:
         return f"{part_id} cannot work at {format_quantity(heat.ambient_degC, 'degC')}: its junction may reach no more"
-    per_W = preferred(room_K / worst.own_W, "E24", "down")
-    to = "case" if worst.on_sink or not math.isinf(heat.lasts_s) else "free air"
+    on_this_sink = worst.on_sink and room_K(worst.from_degC) > 0.0
+    from_degC = worst.from_degC if on_this_sink else cold_degC
+    per_W = preferred(room_K(from_degC) / worst.own_W, "E24", "down")
+    to = "case" if worst.on_sink or brief else "free air"
     why = "no sink will do: " if worst.on_sink else ""
+    sink = " on the same sink" if on_this_sink and heat.sink_K_per_W else ""
+    shared_K_per_W = (worst.from_degC - cold_degC) / worst.own_W
+    bearable_W = room_K(cold_degC) / (worst.per_W + shared_K_per_W)
     lasts_s = _time_for(case, part_id, heat)
     shorter = f", or end the short within {format_quantity(lasts_s, 's')}" if lasts_s is not None else ""
     return (
-        f"{why}fit a device with {format_quantity(per_W, 'K/W')} or less from junction to {to} as {part_id}, or let it take "
-        f"no more than {format_quantity(room_K / worst.per_W, 'W')}{shorter}"
+        f"{why}fit a device with {format_quantity(per_W, 'K/W')} or less from junction to {to}{sink} as {part_id}, or let "
+        f"it take no more than {format_quantity(bearable_W, 'W')}{shorter}"
     )
 
 

@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import pairwise
 
 from protlint.partdata.book import SafeArea
@@ -20,11 +20,17 @@ Corners = Sequence[tuple[float, float]]
 
 @dataclass(frozen=True, slots=True)
 class Bound:
-    """What may flow at a voltage and what bounds it; ``at_most`` where the curve ends before that voltage: it is no more."""
+    """What may flow at a voltage and what bounds it; ``at_most`` where the curve ends before that voltage: it is no more.
+
+    ``cold_A`` is what may flow with the case at 25 degC, ``how`` where that comes from, ``left`` the share left of it.
+    """
 
     current_A: float
     by: str
     at_most: bool = False
+    cold_A: float = math.nan
+    how: str = ""
+    left: float = 1.0
 
 
 def curve_for(curves: Sequence[SafeArea], lasts_s: float, dc_from_s: float) -> SafeArea | None:
@@ -55,15 +61,37 @@ def allowed(
     ``thermal_left`` and ``breakdown_left`` are the shares of the thermal bound and of the curve itself that are left at that
     temperature; ``power_share`` derates the thermal bound once more.
     """
-    power_W = max(volts * amperes for volts, amperes in corners) * thermal_left * power_share
-    by_power = Bound(power_W / voltage_V if voltage_V > 0.0 else math.inf, "power")
+    greatest_W = max(volts * amperes for volts, amperes in corners)
+    left = thermal_left * power_share
+    cold_A = greatest_W / voltage_V if voltage_V > 0.0 else math.inf
+    by_power = Bound(
+        cold_A * left,
+        "power",
+        cold_A=cold_A,
+        how=f"the curve's greatest power, {greatest_W:.3g} W, over the voltage",
+        left=left,
+    )
     at_A = on_curve_A(corners, voltage_V)
     if at_A is None:
         if voltage_V <= corners[0][0]:
             return by_power
-        last_A = corners[-1][1] * breakdown_left
-        return Bound(min(by_power.current_A, last_A), "what is left at the curve's last corner", at_most=True)
-    by_breakdown = Bound(at_A * breakdown_left, "second breakdown")
+        last_A = corners[-1][1]
+        ends = Bound(
+            last_A * breakdown_left,
+            "what is left at the curve's last corner",
+            at_most=True,
+            cold_A=last_A,
+            how=f"the curve's last corner, {corners[-1][0]:g} V",
+            left=breakdown_left,
+        )
+        return replace(ends, current_A=min(by_power.current_A, ends.current_A))
+    by_breakdown = Bound(
+        at_A * breakdown_left,
+        "second breakdown",
+        cold_A=at_A,
+        how="on the curve, straight between corners on log-log scales",
+        left=breakdown_left,
+    )
     return by_power if by_power.current_A <= by_breakdown.current_A else by_breakdown
 
 

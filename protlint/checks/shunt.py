@@ -128,6 +128,7 @@ def _too_much_power(case: Case, worst: Taken, hot: Junction) -> Answer:
             WorkingLine("voltage across it", "solved", worst.voltage_V, "V"),
             WorkingLine("power", "all that flows into it", worst.power_W, "W", "Joule's law"),
             *hot.lines,
+            WorkingLine("it may take", hot.allowed_how, hot.allowed_W, "W"),
         ),
         remedy=remedy,
         assumption=case.assumes(*ALL_ASSUMPTIONS) or hot.assumed,

@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Collection, Sequence
-from dataclasses import replace
+from dataclasses import dataclass, replace
 
 from protlint.checks.case import Case
-from protlint.checks.heat import overload_times, rating_to_fit_W, resistor_rating
+from protlint.findings import Fit, Remedy
 from protlint.quantities import format_quantity
 from protlint.quantities.series import within
 from protlint.solve.answers import solve
@@ -19,32 +19,58 @@ REACH = 1.15
 MOST_TRIES = 8
 
 
-def sense_remedy(case: Case) -> str | None:
+@dataclass(frozen=True, slots=True)
+class Sense:
+    """The sense resistance as it is drawn: its resistance between the ends, and what one part of it has of that.
+
+    ``of_whole`` is 1 for a single resistor, the count of equal ones in a bank, one over it in a chain; None where the
+    parts are unlike, so that no one preferred value stands for all.
+    """
+
+    parts: tuple[str, ...]
+    now_ohm: float
+    of_whole: float | None
+
+    def part_ohm(self, whole_ohm: float) -> float:
+        """Return the value of each part, or of all together where they are unlike."""
+        return whole_ohm * (self.of_whole or 1.0)
+
+
+def sense_of(case: Case) -> Sense | None:
+    """Return the sense resistance of a case, or None where its circuit has none."""
+    sense = [device for device in case.circuit.devices if device.name in case.circuit.sense]
+    if not sense:
+        return None
+    now_ohm, parts = sense[0].model["R"], case.parts("sense")
+    values = {case.part(part).values.value or 0.0 for part in parts}
+    return Sense(parts, now_ohm, values.pop() / now_ohm if len(values) == 1 else None)
+
+
+def sense_remedy(case: Case) -> Remedy:
     """Return what sense resistance to fit, or the plain statement that none will do; None where it cannot be told.
 
     The limit goes nearly as 1 / R, so carry bounds the resistance from above and cap from below. Values of E24 inside that
-    window, then of E96, are solved over all corners until one meets both.
+    window, then of E96, are solved over all corners until one meets both. In a bank or chain they are those of each part.
     """
-    circuit = case.circuit
-    sense = [device for device in circuit.devices if device.name in circuit.sense]
-    if not sense or case.solution.not_solved is not None:
-        return None
-    now_ohm = sense[0].model["R"]
+    sense = sense_of(case)
+    if sense is None or case.solution.not_solved is not None:
+        return None, ()
     carries_A, most_A = least_carries_A(case.solution), greatest_most_A(case.solution)
     if carries_A is None or most_A is None:
-        return None
+        return None, ()
     carry_A, cap_A = case.needs.carry_A, case.needs.cap_A
-    upper_ohm = now_ohm * carries_A / carry_A if carry_A else None
-    lower_ohm = now_ohm * most_A / cap_A if cap_A else None
+    upper_ohm = sense.now_ohm * carries_A / carry_A if carry_A else None
+    lower_ohm = sense.now_ohm * most_A / cap_A if cap_A else None
     if carries_A <= 0.0 or most_A <= 0.0:
-        return "no sense value meets it: at the working output the stage passes nothing, whatever the sense resistance"
+        return "no sense value meets it: at the working output the stage passes nothing, whatever the sense resistance", ()
     if upper_ohm is not None and lower_ohm is not None and lower_ohm > upper_ohm * REACH:
-        return _no_value(case, carries_A, most_A)
-    for value_ohm in _candidates(lower_ohm, upper_ohm):
-        solution = resolve(case, value_ohm / now_ohm)
-        if meets(solution, carry_A, cap_A):
-            return _fit(case, value_ohm, len(sense)) + _rated(case, value_ohm, solution)
-    return _no_value(case, carries_A, most_A)
+        return _no_value(case, carries_A, most_A), ()
+    ends = (None if end is None else sense.part_ohm(end) for end in (lower_ohm, upper_ohm))
+    for part_ohm in _candidates(*ends):
+        factor = part_ohm / sense.part_ohm(sense.now_ohm)
+        if meets(resolve(case, factor), carry_A, cap_A):
+            return _fit(case, sense, part_ohm, factor)
+    return _no_value(case, carries_A, most_A), ()
 
 
 def _candidates(lower_ohm: float | None, upper_ohm: float | None) -> Sequence[float]:
@@ -95,29 +121,16 @@ def greatest_most_A(solution: Solution) -> float | None:
     return max(ends) if ends and len(ends) == len(solution.currents) else None
 
 
-def _fit(case: Case, value_ohm: float, count: int) -> str:
-    parts = case.parts("sense")
-    value = format_quantity(value_ohm, "ohm")
-    if len(parts) == 1:
-        return f"fit {value} as {parts[0]}"
-    if count > 1:
-        return f"fit {value} as each of {', '.join(parts)}"
-    return f"make {', '.join(parts)} {value} together"
-
-
-def _rated(case: Case, value_ohm: float, solution: Solution) -> str:
-    """Return the rating that the new sense resistor needs, where that is more than the one drawn; else nothing."""
-    parts = case.parts("sense")
-    rating = resistor_rating(case, case.part(parts[0])) if len(parts) == 1 else None
-    if rating is None:
-        return ""
-    share = case.threshold("sense-resistor-power", "warning")
-    needed_W = rating.power.value
-    for row, point in zip(solution.currents, solution.high_short, strict=False):
-        current_A = max(abs(point.states[name].current_A) for name in case.circuit.sense)
-        power_W = current_A**2 * value_ohm
-        needed_W = max(needed_W, rating_to_fit_W(power_W, rating, row.ambient_degC, share, overload_times(case)) or 0.0)
-    return f", rated {format_quantity(needed_W, 'W')}" if needed_W > rating.power.value else ""
+def _fit(case: Case, sense: Sense, part_ohm: float, factor: float) -> Remedy:
+    value, names = format_quantity(part_ohm, "ohm"), ", ".join(sense.parts)
+    if sense.of_whole is None:
+        fits = tuple(Fit(part, (case.part(part).values.value or 0.0) * factor) for part in sense.parts)
+        return f"make {names} {value} together", fits
+    fits = tuple(Fit(part, part_ohm) for part in sense.parts)
+    if len(sense.parts) == 1:
+        return f"fit {value} as {names}", fits
+    together = f" ({format_quantity(sense.now_ohm * factor, 'ohm')} together)" if sense.of_whole != 1.0 else ""
+    return f"fit {value} as each of {names}{together}", fits
 
 
 def with_resistance(circuit: Circuit, names: Collection[str], factor: float) -> Circuit:

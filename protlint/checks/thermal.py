@@ -45,8 +45,8 @@ class Junction:
     """How hot a junction gets, what it may reach, what its part may take there, and the lines behind it.
 
     ``from_degC`` is what the junction rises above, by ``per_W`` for each watt of its own: the case, or the ambient in free
-    air. ``assumed`` tells that the transient impedance was taken, not given; ``on_sink`` that the case is on a sink (of
-    0 K/W where none is stated and none would do).
+    air. ``allowed_how`` is how ``allowed_W`` comes about. ``assumed`` tells that the transient impedance was taken, not
+    given; ``on_sink`` that the case is on a sink (of 0 K/W where none is stated and none would do).
     """
 
     degC: float
@@ -56,6 +56,7 @@ class Junction:
     own_W: float
     allowed_W: float
     lines: tuple[WorkingLine, ...]
+    allowed_how: str = ""
     assumed: bool = False
     on_sink: bool = False
 
@@ -189,22 +190,32 @@ class _Part:
         per_W: float,
         rated: Figure | None,
         lines: tuple[WorkingLine, ...],
-        **how: bool,
+        **what: bool,
     ) -> Junction:
         """Return the junction that rises above ``from_degC``; ``rated`` is the power that may be taken at most."""
         derating, kind = self.case.limits.derating, self.case.part(self.part_id).kind
         limit_degC = junction_limit_degC(derating, self.tj_max_degC)
+        share, resistance = share_of(derating, kind, "power"), format_quantity(per_W, "K/W")
         allowed_W = allowed_rise_K(derating, kind, self.tj_max_degC, from_degC) / per_W
-        if rated is not None:
-            allowed_W = min(allowed_W, share_of(derating, kind, "power") * rated.value)
+        how = f"({limit_degC:g} degC - {from_degC:.4g} degC) / {resistance}"
+        if share * (self.tj_max_degC - from_degC) < limit_degC - from_degC:
+            how = f"{share:g} * ({self.tj_max_degC:g} degC - {from_degC:.4g} degC) / {resistance}"
+        if rated is not None and share * rated.value < allowed_W:
+            allowed_W, how = share * rated.value, "its rated power" if share == 1.0 else f"{share:g} times its rated power"
         degC = from_degC + per_W * heat.own_W
         last = WorkingLine(
-            "junction", f"{from_degC:.4g} degC + {heat.own_W:.3g} W * {per_W:.3g} K/W", degC, "degC", "T_J = T_C + P R_th"
+            "junction",
+            f"{from_degC:.4g} degC + {format_quantity(heat.own_W, 'W')} * {resistance}",
+            degC,
+            "degC",
+            "T_J = T_C + P R_th",
         )
         may = WorkingLine(
             "it may reach", derated(derating, kind, "power", "tj_max of its part data"), limit_degC, "degC", None
         )
-        return Junction(degC, limit_degC, from_degC, per_W, heat.own_W, max(0.0, allowed_W), (*lines, last, may), **how)
+        return Junction(
+            degC, limit_degC, from_degC, per_W, heat.own_W, max(0.0, allowed_W), (*lines, last, may), how, **what
+        )
 
 
 def _for_a_time(part: _Part, heat: Heating, settles_s: float) -> Junction | str:

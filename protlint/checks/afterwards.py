@@ -1,0 +1,99 @@
+"""What comes of a remedy: the board with other values fitted is judged again before they are advised."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from dataclasses import replace
+
+from protlint.board.graph import BoardPart
+from protlint.board.shares import merged_resistance
+from protlint.checks.asking import ask
+from protlint.checks.case import Case
+from protlint.findings import LEVELS, Finding, Fit
+from protlint.quantities import format_quantity
+from protlint.solve.answers import solve
+from protlint.solve.bench import build_bench
+from protlint.solve.dynamics import with_dynamics
+
+POWER_CHECKS = ("sense-resistor-power", "resistor-power")
+
+NO_RATING_W = 1e-9
+"""Stands for the rating of a sense resistor that states none, so that the rating it needs is found."""
+
+
+def foretold(case: Case, findings: Sequence[Finding]) -> list[Finding]:
+    """Return the findings with remedies that say what rating a new value needs, and what else it asks for."""
+    return [_foretold(case, one, findings) if one.remedy and _changes(case, one) else one for one in findings]
+
+
+def _changes(case: Case, finding: Finding) -> bool:
+    """Tell whether a remedy gives a part another value, not a rating alone."""
+    return any(fit.value != case.part(fit.part).values.value for fit in finding.fits)
+
+
+def _foretold(case: Case, finding: Finding, findings: Sequence[Finding]) -> Finding:
+    changed = fitted(case, finding.fits)
+    if changed is None:
+        return finding
+    after, _ = ask(changed)
+    own = {fit.part for fit in finding.fits}
+    burns = [one for one in after if one.check in POWER_CHECKS and own.issuperset(one.parts) and one.fits]
+    smaller = any(fit.value < (case.part(fit.part).values.value or 0.0) for fit in finding.fits)
+    before = {(one.check, one.parts, one.subject): one for one in findings}
+    asked: dict[str, list[str]] = {}
+    for one in after:
+        known = before.get((one.check, one.parts, one.subject))
+        worse = known is None or _rank(one) < _rank(known) or (smaller and one.remedy != known.remedy)
+        if one.remedy and one not in burns and one.level != "note" and one.check != finding.check and worse:
+            asked.setdefault(one.remedy, []).append(one.check)
+    also = "; and ".join(f"{', '.join(dict.fromkeys(checks))}: {remedy}" for remedy, checks in asked.items())
+    remedy = f"{finding.remedy}{_rated(burns, len(own))}" + (f"; then also {also}" if also else "")
+    return replace(finding, remedy=remedy)
+
+
+def _rated(burns: Sequence[Finding], count: int) -> str:
+    """Return the rating that the parts fitted need, where it is more than they have."""
+    if not burns:
+        return ""
+    needed_W = max(fit.power_W or 0.0 for one in burns for fit in one.fits)
+    return f", {'each ' if count > 1 else ''}rated {format_quantity(needed_W, 'W')}"
+
+
+def fitted(case: Case, fits: Iterable[Fit]) -> Case | None:
+    """Return the case of the same limiter with parts of other values, solved; None where it cannot be solved."""
+    values = {fit.part: fit.value for fit in fits}
+    sense = case.parts("sense")
+    parts = tuple(
+        _with_value(part, values[part.id], part.id in sense) if part.id in values else part for part in case.board.parts
+    )
+
+    def ohms(index: int) -> float:
+        return parts[index].values.value or 0.0
+
+    elements = tuple(
+        replace(one, value=merged_resistance(one.tree, ohms))
+        if any(parts[index].id in values for index in one.parts)
+        else one
+        for one in case.board.elements
+    )
+    board = replace(case.board, parts=parts, elements=elements)
+    bench = build_bench(board, case.limiter, limits=case.limits, needs=case.needs)
+    if bench.circuit is None:
+        return None
+    ambients_degC = case.limits.ambient_degC
+    solution = solve(bench.circuit, ambients_degC, memo=case.solved)
+    if solution.not_solved is not None:
+        return None
+    solution = with_dynamics(bench.circuit, solution, ambients_degC, memo=case.solved)
+    return replace(case, board=board, bench=bench, solution=solution, assumptions=[])
+
+
+def _with_value(part: BoardPart, value: float, sense: bool) -> BoardPart:
+    """Return a resistor with another value; a sense resistor whose rating nobody knows gets next to none."""
+    known = part.values.power_W is not None or (part.entry is not None and "power" in part.entry.ratings)
+    power_W = part.values.power_W if known or not sense else NO_RATING_W
+    return replace(part, values=replace(part.values, value=value, power_W=power_W))
+
+
+def _rank(finding: Finding) -> int:
+    return LEVELS.index(finding.level) if finding.level is not None else len(LEVELS)

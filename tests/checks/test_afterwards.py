@@ -1,0 +1,104 @@
+"""What a remedy that fits a value says beforehand: the rating it needs, and the findings it would bring."""
+
+from __future__ import annotations
+
+import re
+
+import pytest
+
+from protlint.findings import Finding
+from tests.support.cures import figure, powered, resistor
+from tests.support.desk import found
+from tests.support.judged import Job, folding, sink
+
+BANK = sink().drawn(
+    ("R2 RES 2.2 SNS GND POWER:1W", "R2 RES 4.7 SNS GND POWER:0.25W\nR8 RES 4.7 SNS GND POWER:0.25W"),
+)
+CHAIN = sink().drawn(
+    ("R2 RES 2.2 SNS GND POWER:1W", "R2 RES 1.1 SNS MID POWER:0.25W\nR8 RES 1.1 MID GND POWER:0.25W"),
+)
+UNLIKE = sink().drawn(
+    ("R2 RES 2.2 SNS GND POWER:1W", "R2 RES 3.3 SNS GND POWER:1W\nR8 RES 6.8 SNS GND POWER:1W"),
+)
+SLOPING = folding().drawn(
+    ("R63 RES 1k8 STOP GND POWER:0.5W", "R63 RES 22k STOP +20V POWER:0.5W\nR64 RES 330 STOP OUT POWER:0.25W")
+)
+"""The same stage with a slope: its limit falls as the voltage across the pass device rises."""
+
+
+def ill(job: Job, check: str) -> Finding:
+    (finding,) = found(job.review(), check)
+    return finding
+
+
+def said(job: Job, check: str) -> str:
+    return ill(job, check).remedy or ""
+
+
+def each(job: Job, text: str, names: tuple[str, ...]) -> Job:
+    """Return the job with the value, and the rating where one is said, fitted as each of some resistors."""
+    for name in names:
+        job = resistor(job, name, figure(text, "ohm"))
+        job = powered(job, name, figure(text, "W")) if "rated" in text else job
+    return job
+
+
+@pytest.mark.parametrize(("job", "carry"), [(BANK, "0.4 A"), (CHAIN, "0.4 A")], ids=["bank", "chain"])
+def test_in_a_bank_and_in_a_chain_it_is_the_value_and_the_rating_of_each(job: Job, carry: str) -> None:
+    wanting = job.stated(carry=carry, cap=None, sink="2 K/W")
+    remedy = said(wanting, "carry-not-met")
+    assert re.match(r"fit \S+ m?ohm as each of R2, R8 \(\S+ m?ohm together\), each rated \S+ m?W$", remedy), remedy
+    assert found(each(wanting, remedy, ("R2", "R8")).review()) == []
+
+
+def test_unlike_parts_of_a_bank_are_told_what_they_make_together() -> None:
+    remedy = said(UNLIKE.stated(carry="0.3 A", cap=None), "carry-not-met")
+    assert remedy.startswith("make R2, R8 1."), remedy
+
+
+def test_a_sense_resistor_whose_rating_nobody_knows_is_told_the_one_it_needs() -> None:
+    job = sink().drawn(("SNS GND POWER:1W", "SNS GND")).stated(carry="0.4 A", cap=None, sink="2 K/W")
+    # some 0.62 A through 1.3 ohm: 0.5 W, to be at most 80 % of the rating
+    assert figure(said(job, "carry-not-met"), "W") == 0.75
+
+
+@pytest.mark.parametrize("drawn", ["14 K/W", "20 K/W"], ids=["new", "worse than before"])
+def test_what_a_value_would_bring_is_said_with_how_it_is_mended(drawn: str) -> None:
+    job = sink().stated(carry="0.4 A", cap=None, sink=drawn)
+    remedy = said(job, "carry-not-met")
+    value, _, rest = remedy.partition("; then also ")
+    assert rest.startswith("pass-overheated, pass-outside-safe-area: give Q1 a sink of ")
+    fitted = resistor(job, "R2", figure(value, "ohm"))
+    assert {one.check for one in found(fitted.review())} == {"pass-overheated", "pass-outside-safe-area"}
+    assert found(fitted.stated(sink=f"{figure(rest, 'K/W')} K/W").review()) == []
+
+
+@pytest.mark.parametrize(
+    ("job", "check", "fit"),
+    [
+        (folding().stated(carry="1.5 A", cap=None, load=None, sink="0.1 K/W"), "drive-insufficient", "R60"),
+        (folding().stated(cap="1.2 A", carry=None, load=None), "cap-exceeded", "R61"),
+        (SLOPING.stated(carry="1 A", cap=None, load=None, sink="0.1 K/W"), "carry-not-met", "R61"),
+    ],
+    ids=["foldback, drive", "foldback, cap", "slope, carry"],
+)
+def test_with_a_preset_all_that_comes_of_a_new_value_is_said(job: Job, check: str, fit: str) -> None:
+    before = {one.check for one in found(job.review())}
+    remedy = said(job, check)
+    after = each(job, remedy.partition("; then also ")[0], (fit,)).review()
+    new = {one.check for one in found(after)} - before
+    assert check not in {one.check for one in found(after)}
+    assert all(f"{one}: " in remedy for one in new), (remedy, new)
+
+
+def test_a_drive_resistor_comes_with_the_rating_it_needs() -> None:
+    weak = sink().drawn(("R1 RES 390 CMD BASE POWER:0.25W", "R1 RES 2k2 CMD BASE POWER:0.0125W")).stated(carry="0.25 A")
+    remedy = said(weak, "drive-insufficient")
+    assert "rated" in remedy
+    assert "drive-insufficient" not in {one.check for one in found(each(weak, remedy, ("R1",)).review())}
+    assert "resistor-power" not in {one.check for one in found(each(weak, remedy, ("R1",)).review())}
+
+
+def test_nothing_is_added_where_nothing_comes_of_it() -> None:
+    remedy = said(sink().stated(carry="0.35 A", cap="0.6 A"), "carry-not-met")
+    assert re.fullmatch(r"fit \S+ ohm as R2", remedy)
