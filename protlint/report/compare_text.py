@@ -10,7 +10,7 @@ from protlint.report.behaviour import ROLE_WORDS
 from protlint.report.digest import place_of
 from protlint.report.figures import UNKNOWN, counted, figure, percent
 from protlint.report.layout import painted, wrapped
-from protlint.report.safe import json_text, terminal, throughout
+from protlint.report.safe import json_text, readable, throughout
 from protlint.report.shape import CAUTION, Document
 
 UNITS = {"carries_A": "A", "most_A": "A", "holds_A": "A", "damping": "", "pass_power_W": "W"}
@@ -34,7 +34,7 @@ CHANGES = ("new", "risen", "gone")
 
 def rendered_comparison(comparison: Document, *, colour: bool = False) -> str:
     """Return a comparison as text."""
-    safe: Document = throughout(comparison, terminal)
+    safe: Document = throughout(comparison, readable)
     lines = _together(safe, colour) if "boards" in safe else _board(safe, colour)
     return "\n".join([*lines, "", *wrapped(safe["caution"])]) + "\n"
 

@@ -22,6 +22,9 @@ MARKDOWN_LEADING = re.compile(r"^([-+=:]|\d+[.)](?=\s|$))")
 MARKDOWN_LINKED = re.compile(r"(?i)[@#!%~&$](?=\w)|:(?=[a-z][\w+-]*:)|\b(https?|ftp|mailto)(?=:)|\bwww(?=\.)")
 """What trackers turn into links by themselves: mentions, references, addresses; an empty comment keeps them text."""
 
+LONG_NAME = re.compile(r"[^\s,;:()]{161,}")
+"""What nobody reads to its end."""
+
 XML_BREAK = re.compile("[^\t\n\r\x20-\ud7ff\ue000-\ufffd\U00010000-\U0010ffff]")
 
 
@@ -41,6 +44,11 @@ def terminal(text: str) -> str:
     return SUSPECT.sub(_escaped_for_terminal, text)
 
 
+def readable(text: str) -> str:
+    """Return text fit for a terminal whose longest names show their two ends, and how much lies between."""
+    return LONG_NAME.sub(lambda match: f"{match[0][:100]}..({len(match[0]) - 130} more)..{match[0][-30:]}", terminal(text))
+
+
 def xml(text: str) -> str:
     """Return text fit for XML 1.0 and whoever shows it; markup is the XML writer's to escape."""
     return XML_BREAK.sub(lambda match: _code(match.group()), terminal(text))
@@ -48,7 +56,7 @@ def xml(text: str) -> str:
 
 def markdown(text: str) -> str:
     """Return text that stands in Markdown as itself: no markup, no mention, no link, no table cell, no math."""
-    escaped = MARKDOWN_ACTING.sub(lambda match: "\\" + match.group(), terminal(text))
+    escaped = MARKDOWN_ACTING.sub(lambda match: "\\" + match.group(), readable(text))
     escaped = MARKDOWN_LEADING.sub(lambda match: match.group()[:-1] + "\\" + match.group()[-1], escaped)
     return MARKDOWN_LINKED.sub(lambda match: match.group() + "<!-- -->", escaped)
 

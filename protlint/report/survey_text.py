@@ -9,7 +9,7 @@ from protlint.report.behaviour import ROLE_WORDS
 from protlint.report.digest import MOST_NAMES, assumptions, listed, place_of, times
 from protlint.report.figures import ambient, counted, figure
 from protlint.report.layout import painted, shortened, table, wrapped
-from protlint.report.safe import terminal, throughout
+from protlint.report.safe import readable, throughout
 from protlint.report.shape import Document
 from protlint.report.text import POLARITY_WORDS
 
@@ -26,7 +26,7 @@ MOST_PARTS = 4
 
 def rendered_survey(facts: Document, *, colour: bool = False) -> str:
     """Return a survey as text; ``colour`` adds the colours of a terminal."""
-    safe: Document = throughout(facts, terminal)
+    safe: Document = throughout(facts, readable)
     netlist = safe["netlist"]
     title = (
         f"{netlist['file']}: {counted(len(safe['limiters']), 'limiter') if safe['limiters'] else 'no limiter'} found; "

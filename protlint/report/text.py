@@ -25,7 +25,7 @@ from protlint.report.digest import (
 from protlint.report.figures import UNKNOWN, aligned, ambient, counted, figure, percent, three_digits, triple, unit_for
 from protlint.report.layout import COLUMNS, fitting, painted, shortened, table, tail, width, wrapped
 from protlint.report.memory import FROM_MEMORY, remembered, resting
-from protlint.report.safe import terminal, throughout
+from protlint.report.safe import readable, throughout
 from protlint.report.shape import Document, boards_of
 
 INDEX_FROM = 12
@@ -42,7 +42,7 @@ POLARITY_WORDS = {"n": "n type", "p": "p type"}
 
 def rendered_text(report: Document, *, colour: bool = False) -> str:
     """Return the report as text lines of 80 columns; ``colour`` adds the colours of a terminal."""
-    safe: Document = throughout(report, terminal)
+    safe: Document = throughout(report, readable)
     lines: list[str] = []
     for board in boards_of(safe):
         lines += [*_board(board, colour), ""]

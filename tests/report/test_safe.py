@@ -10,7 +10,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from protlint.report.safe import json_text, markdown, terminal, throughout, xml
+from protlint.report.safe import json_text, markdown, readable, terminal, throughout, xml
 from tests.support.sample_review import HOSTILE
 
 ANY_TEXT = st.text(alphabet=st.characters(), max_size=40) | st.sampled_from(HOSTILE)
@@ -27,6 +27,15 @@ def test_nothing_steers_a_terminal_or_a_log(text: str) -> None:
 @given(st.text(alphabet=st.characters(min_codepoint=0x20, max_codepoint=0x7E, exclude_characters=":#"), max_size=40))
 def test_ordinary_text_stays_as_it_is(text: str) -> None:
     assert terminal(text) == text == xml(text)
+
+
+@given(ANY_TEXT, st.integers(1, 3))
+def test_the_longest_names_show_their_ends(text: str, times: int) -> None:
+    name = "Q" + "n" * 1998 + "7"
+    shown = readable(f"{name} of {text}, {name}: " * times)
+    assert shown.count("..(1870 more)..") == 2 * times
+    assert max(map(len, re.split(r"[\s,;:()]", shown))) <= 160
+    assert readable("n" * 160) == "n" * 160
 
 
 @given(ANY_TEXT)
