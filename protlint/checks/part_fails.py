@@ -4,14 +4,18 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from protlint.checks.case import Case
+from protlint.checks.case import UNBOUNDED_A, Case
 from protlint.solve.failures import failures
 
 
 @dataclass(frozen=True, slots=True)
 class PartFails:
     """One part (or a bank or chain that stands for one) failed: its role, how, and what the output passes into the short,
-    as drawn at usual ambient; None where that could not be solved. ``of_holds`` is that over holds."""
+    as drawn at usual ambient; None where that could not be solved. ``of_holds`` is that over holds.
+
+    No model holds beyond what the pass devices are rated for, and they do not: where the circuit would pass more,
+    ``output_A`` is that rating and ``of_holds`` None, for only the supply and the wiring bound it then.
+    """
 
     parts: tuple[str, ...]
     role: str
@@ -48,9 +52,22 @@ def if_a_part_fails(case: Case) -> IfPartFails | None:
     for one in found:
         element = case.board.elements[case.bench.element_of[one.device]]
         parts = tuple(case.board.parts[index].id for index in element.parts)
-        of_holds = one.output_A / holds_A if one.output_A is not None and holds_A > 0.0 else None
-        rows.append(PartFails(parts, one.role, one.how, one.output_A, of_holds))
+        output_A, bears_A = one.output_A, _bears_A(case)
+        of_holds = output_A / holds_A if output_A is not None and holds_A > 0.0 else None
+        if output_A is not None and output_A > bears_A:
+            output_A, of_holds = bears_A, None
+        rows.append(PartFails(parts, one.role, one.how, output_A, of_holds))
     return IfPartFails(tuple(rows), fuses_upstream(case))
+
+
+def _bears_A(case: Case) -> float:
+    """Return the current that the pass devices are rated for together, the peak one where known."""
+    total_A = 0.0
+    for part_id in case.parts("pass"):
+        ratings = [case.rating(part_id, name) for name in ("ic_peak", "id_peak", "ic", "id")]
+        known = [rating.value for rating in ratings if rating is not None]
+        total_A += known[0] if known else UNBOUNDED_A
+    return total_A
 
 
 def fuses_upstream(case: Case) -> tuple[str, ...]:

@@ -19,6 +19,9 @@ AS_SOLVED = 0.05
 
 HOW = {"short": "shorted"}
 
+TRIPS = 1.5
+"""What begins so many times above what it holds is a latch: it has tripped there."""
+
 NOTHING = 1e-3
 """A current below this share of holds is next to nothing."""
 
@@ -37,7 +40,12 @@ def sentences(limiter: Document) -> Iterator[str]:
 
 def _begins(limiter: Document) -> Iterator[str]:
     usual = limiter["currents"][len(limiter["currents"]) // 2]
-    words = (("begins_A", "limiting begins at {}"), ("unlimited_A", "without the shunt {} would flow"),
+    begins_A, holds_A = usual["begins_A"], usual["holds_A"]
+    if begins_A is not None and holds_A is not None and begins_A > TRIPS * holds_A:
+        begins = f"it trips at {{}} and then passes {current(holds_A, begins_A)} until the drive is taken away"
+    else:
+        begins = "limiting begins at {}"
+    words = (("begins_A", begins), ("unlimited_A", "without the shunt {} would flow"),
              ("shunt_A", "the shunt takes {}"))  # fmt: skip
     facts = [said.format(current(usual[key], usual["holds_A"])) for key, said in words if usual[key] is not None]
     if facts:
@@ -132,6 +140,8 @@ def _if_a_part_fails(limiter: Document) -> Iterator[str]:
         share = row["of_holds"] or 0.0
         times = f" ({float(f'{share:.2g}'):g} times holds)" if share > 1.1 else ""
         passes = "not known" if row["output_A"] is None else current(row["output_A"], usual["holds_A"], NOTHING)
+        if row["output_A"] and row["of_holds"] is None and usual["holds_A"]:
+            passes = f"more than the {passes} that the pass device bears, as much as supply and wiring give"
         name = f"{ROLE_WORDS[row['role']]} {'+'.join(row['parts'])}"
         cases.setdefault(name, []).append(f"{HOW.get(row['how'], row['how'])} {passes}{times}")
     told = "; ".join(f"{name} {', '.join(hows)}" for name, hows in cases.items())

@@ -5,6 +5,8 @@ from __future__ import annotations
 import pytest
 
 from protlint.checks.part_fails import IfPartFails, PartFails
+from protlint.report.document import document
+from protlint.report.text import rendered_text
 from tests.support.desk import the_one
 from tests.support.judged import SOUND, Job, gated, sink
 
@@ -38,12 +40,20 @@ def test_without_its_shunt_or_its_base_stop_nothing_limits(name: str) -> None:
 
 
 def test_a_shorted_sense_resistor_lets_more_through_than_no_limiter() -> None:
-    short, unlimited = row(gated(), "sense", "short"), row(gated(), "shunt", "open")
+    short, unlimited = row(sink(), "sense", "short"), row(sink(), "shunt", "open")
     assert short.output_A is not None
     assert unlimited.output_A is not None
     assert short.output_A > unlimited.output_A
     assert short.of_holds is not None
-    assert short.of_holds > 10.0
+    assert short.of_holds > 2.0
+
+
+def test_what_only_supply_and_wiring_bound_is_told_as_more_than_the_pass_device_bears() -> None:
+    short = row(gated(), "sense", "short")
+    assert (short.output_A, short.of_holds) == (20.0, None)
+    assert row(gated().rated("MPN1", id_peak="50 A"), "sense", "short").output_A == 50.0
+    text = " ".join(rendered_text(document(gated().review())).split())
+    assert "shorted more than the 20 A that the pass device bears, as much as supply and wiring give" in text
 
 
 @pytest.mark.parametrize("name", SOUND)
