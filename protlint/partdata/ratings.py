@@ -88,6 +88,15 @@ RATINGS: dict[str, Rating] = {
     "vz_max": Rating("voltage", "zener voltage, greatest"),
     "vz_at": Rating("current", "current for vz"),
     "zz": Rating("resistance", "differential resistance at vz_at"),
+    # Thyristors.
+    "igt": Rating("current", "gate current that fires it, typical"),
+    "igt_max": Rating("current", "gate current that fires it, greatest"),
+    "vgt": Rating("voltage", "gate to cathode where it fires, typical"),
+    "vgt_max": Rating("voltage", "gate to cathode where it fires, greatest"),
+    "ih": Rating("current", "anode current that keeps it on, typical"),
+    "rgk": Rating("resistance", "gate to cathode outside, for which ih holds"),
+    "vtm": Rating("voltage", "anode to cathode when on, at vtm_at"),
+    "vtm_at": Rating("current", "anode current for vtm"),
     # Passive parts.
     "zero_at": Rating("temperature", "temperature at which a resistor's derated power is zero"),
     "voltage_max": Rating("voltage", "highest voltage across the part"),
@@ -99,7 +108,8 @@ RATINGS: dict[str, Rating] = {
 
 STATIC_FIGURES = (
     "model", "hfe_min", "hfe_max", "vbe", "vbe_min", "vbe_max", "vgs_th", "vgs_th_min", "vgs_th_max", "gfs", "gfs_min",
-    "rds_on", "rds_on_typ", "vf", "vz", "vz_min", "vz_max", "zz", "resistance",
+    "rds_on", "rds_on_typ", "vf", "vz", "vz_min", "vz_max", "zz", "igt", "igt_max", "vgt", "vgt_max", "ih", "rgk", "vtm",
+    "resistance",
 )  # fmt: skip
 """Of what a part's model for direct current is made: its model, or the ratings it is derived from."""
 
@@ -126,7 +136,7 @@ RATINGS_OF: dict[str, tuple[str, ...]] = {
     "pmos": _MOSFET,
     "diode": _DIODE,
     "zener": (*_DIODE, "vz", "vz_min", "vz_max", "vz_at", "zz"),
-    "thyristor": (*_HEAT, "vr", "if", "if_peak"),
+    "thyristor": (*_HEAT, "vr", "if", "if_peak", "igt", "igt_max", "vgt", "vgt_max", "ih", "rgk", "vtm", "vtm_at"),
     "resistor": ("power", "power_at", "zero_at", "voltage_max", "current_max", "tcr", "tolerance"),
     "capacitor": ("voltage_max", "tolerance"),
     "inductor": ("current_max", "resistance", "tolerance"),

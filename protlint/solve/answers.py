@@ -11,9 +11,11 @@ from dataclasses import replace
 
 import numpy as np
 
+from protlint.solve.begins import nowhere
 from protlint.solve.circuit import Circuit
 from protlint.solve.corners import one_at_a_time, small_steps
 from protlint.solve.devices import Array
+from protlint.solve.latch import settle, with_trips
 from protlint.solve.locus import PASS_V, Loci, fill, run_at
 from protlint.solve.memo import Memo
 from protlint.solve.network import compile_network
@@ -46,7 +48,11 @@ def solve(circuit: Circuit, ambients_degC: tuple[float, float, float], *, memo: 
         # NaN marks what was not solved and goes through the arithmetic on purpose; none of it gets into a solution
         with np.errstate(all="ignore"):
             stage, sweep, shorts = _worst_short(circuit, ambients_degC)
-            answers = _answers(stage, solve_nominal(stage, sweep), ambients_degC)
+            nominal = solve_nominal(stage, sweep)
+            if circuit.latch:
+                answers = with_trips(stage, _answers(stage, replace(nominal, begins=nowhere(nominal.begins)), ambients_degC))
+            else:
+                answers = _answers(stage, nominal, ambients_degC)
         solution = replace(answers, short=stage.short, shorts=shorts, assumed=_assumed(circuit))
     except CircuitError as reason:
         return Solution(not_solved=str(reason), assumed=_assumed(circuit))
@@ -68,6 +74,7 @@ def _worst_short(circuit: Circuit, ambients_degC: tuple[float, ...]) -> tuple[St
     for node in circuit.shorts:
         try:
             stage, sweep = sweep_stage(network, node, ambients_degC, USUAL)
+            sweep = settle(stage, sweep) if circuit.latch else sweep
         except CircuitError as error:
             reason = reason or error
             shorts.append(Shorted(node, (None,) * len(ambients_degC), None))

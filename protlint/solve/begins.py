@@ -34,6 +34,12 @@ class Begins:
     inner: Array
 
 
+def nowhere(begins: Begins) -> Begins:
+    """Return crossings that are none: a latch trips instead."""
+    none = np.full_like(begins.output_A, np.nan)
+    return Begins(none, none, begins.inner)
+
+
 @dataclass(frozen=True, slots=True)
 class _Grid:
     """Drive voltages and output currents with and without the shunt (points, conditions), and inner voltages (ports, 2,

@@ -17,10 +17,6 @@ from protlint.topology.limiter import Limiter
 LATCH = "others.latch"
 """The role of a transistor that holds the shunt on once it has tripped."""
 
-TRIPPED_S = 0.01
-"""Time in which a latch of two transistors has tripped for certain: a thousand times what its transistors need, and time
-enough for an RC before it; common practice of the trade."""
-
 
 @dataclass(frozen=True, slots=True)
 class Bench:
@@ -49,7 +45,7 @@ def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: Limite
     place = Place(board, limiter, around, limits, needs)
     if len(around.elements) > MOST_DEVICES:
         return Bench(None, (_too_large(place),))
-    notes = Notes(assumed=[("circuit", sentence) for sentence in (*around.left_out, *_latching(place))])
+    notes = Notes(assumed=[("circuit", sentence) for sentence in around.left_out])
     held = hold_supplies(place, notes)
     shorts = short_nodes(place, held, notes)
     drive, feed = drive_of(place, held, notes)
@@ -68,7 +64,7 @@ def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: Limite
         drive=drive,
         output=place.node_of[around.output],
         shorts=shorts,
-        shunt=_named(limiter, "shunt", element_of),
+        shunt=_transistors(devices, _named(limiter, "shunt", element_of)),
         pass_devices=_named(limiter, "pass", element_of),
         sense=_named(limiter, "sense", element_of),
         output_V=needs.output_V,
@@ -76,6 +72,7 @@ def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: Limite
         ground_leg=_has_ground_leg(place),
         regulates=_regulates(place),
         output_capacitance_F=_output_capacitance_F(place),
+        latch=_latch(board, limiter, devices, element_of),
         assumed=tuple(sentence for _, sentence in notes.assumed),
     )
     notes.words[circuit.output] = "the output"
@@ -83,14 +80,21 @@ def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: Limite
     return Bench(circuit, (), element_of, words, tuple(notes.assumed))
 
 
-def _latching(place: Place) -> list[str]:
-    board = place.board
-    names = [board.parts[part].id for index in place.limiter.elements.get(LATCH, ()) for part in board.elements[index].parts]
-    return [
-        f"{name}, which latches, is taken as a diode that passes the shunt's current: it trips somewhat below the figures "
-        f"given, and within {TRIPPED_S * 1e3:g} ms of a short"
-        for name in names
-    ]
+def _transistors(devices: list[Device], names: tuple[str, ...]) -> tuple[str, ...]:
+    """Return which of some devices are no resistors: a thyristor brings its gate's."""
+    resistors = {device.name for device in devices if device.kind == "resistor"}
+    return tuple(name for name in names if name not in resistors)
+
+
+def _latch(board: Board, limiter: Limiter, devices: list[Device], element_of: Mapping[str, int]) -> tuple[str, ...]:
+    """Return the transistors that hold the shunt on: of a pair the other one, of a thyristor its inner PNP."""
+    others = limiter.elements.get(LATCH, ())
+    fired = [one for one in limiter.elements.get("shunt", ()) if board.elements[one].kind == "thyristor"]
+    return tuple(
+        device.name
+        for device in devices
+        if element_of[device.name] in others or (element_of[device.name] in fired and device.kind == "pnp")
+    )
 
 
 def _too_large(place: Place) -> Missing:
@@ -103,8 +107,6 @@ def _nodes(place: Place, index: int, feed: int | None, feed_node: str) -> dict[s
     """Return an element's nodes by role; what a feeding supply gives the drive's parts comes from the feed's own node."""
     element = place.board.elements[index]
     nodes = {role: place.node_of[net] for role, net in element.terminals.items()}
-    if index in place.limiter.elements.get(LATCH, ()):
-        nodes["collector"] = nodes["base"]  # what it gives back to the shunt makes two states of one: here is the first
     carries_load = any(index in place.limiter.elements.get(role, ()) for role in ("pass", "driver", "sense", "shunt"))
     if feed is None or carries_load or index in place.around.power_path:
         return nodes

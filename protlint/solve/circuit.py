@@ -65,7 +65,8 @@ class Circuit:
     never empty; ``pass_devices`` and ``shunt`` device names (a diode string has several shunt devices);
     ``output_V`` the working output voltage where stated; ``output_reach_V`` the lowest and highest voltage the output can
     have (the supplies around it); ``ground_leg`` true where the limit depends on the output voltage by design (a preset leg
-    to ground or to the far supply); ``output_capacitance_F`` the board's capacitors at the output, together.
+    to ground or to the far supply); ``output_capacitance_F`` the board's capacitors at the output, together; ``latch`` the
+    transistors that hold the shunt on once it has tripped.
     """
 
     devices: tuple[Device, ...]
@@ -82,3 +83,4 @@ class Circuit:
     regulates: bool = False
     assumed: tuple[str, ...] = field(default_factory=tuple)
     output_capacitance_F: float = 0.0
+    latch: tuple[str, ...] = ()

@@ -91,9 +91,10 @@ class _Case:
 
 
 def compare_formula(circuit: Circuit, solution: Solution, *, usual: int = 1) -> Comparison | None:
-    """Return the comparison at the usual ambient (an index), or None where no closed form fits or nothing was solved."""
+    """Return the comparison at the usual ambient (an index), or None where no closed form fits (a latch has none) or
+    nothing was solved."""
     held, currents = solution.held_short, solution.currents[usual] if solution.currents else None
-    if held is None or currents is None or currents.holds_A is None or currents.holds_A <= 0.0:
+    if held is None or currents is None or currents.holds_A is None or currents.holds_A <= 0.0 or circuit.latch:
         return None
     devices = {device.name: device for device in circuit.devices}
     shunts = [devices[name] for name in circuit.shunt]

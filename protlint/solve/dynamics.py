@@ -14,6 +14,9 @@ from protlint.solve.solution import Advice, Loop, Solution, Step
 ADVISED_BELOW = 0.42
 """Advice costs many times what the loop does; a loop damped better gets none unless it grows somewhere."""
 
+LATCHED = "how a latch swings and how soon it trips, which are not worked out"
+"""What is not told of a limiter that trips and stays."""
+
 
 def with_dynamics(
     circuit: Circuit,
@@ -33,6 +36,8 @@ def with_dynamics(
     if solution.not_solved is not None:
         return solution
     complete = solution
+    if circuit.latch:
+        return replace(solution, loop_needs=(LATCHED,), step_needs=(LATCHED,))
     if complete.loop is None and not complete.loop_needs:
         loop = solve_loop(circuit, ambients_degC, short=solution.short)
         complete = replace(complete, loop=loop) if isinstance(loop, Loop) else replace(complete, loop_needs=_needs(loop))

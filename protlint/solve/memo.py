@@ -78,7 +78,8 @@ def canonical(circuit: Circuit, ambients_degC: tuple[float, ...]) -> tuple[Key, 
         nodes[circuit.output],
         tuple(nodes[node] for node in circuit.shorts),
         tuple(
-            tuple(devices.get(name, -1) for name in names) for names in (circuit.shunt, circuit.pass_devices, circuit.sense)
+            tuple(devices.get(name, -1) for name in names)
+            for names in (circuit.shunt, circuit.pass_devices, circuit.sense, circuit.latch)
         ),
         (circuit.output_V, circuit.output_reach_V, circuit.ground_leg, circuit.regulates, circuit.output_capacitance_F),
         ambients_degC,

@@ -25,7 +25,7 @@ Bounds = Mapping[str, tuple[float, float, float]]
 
 BIPOLAR: Final[Bounds] = {
     "IS": (1e-16, 1e-30, 1e-2),
-    "BF": (100.0, 0.5, 1e5),
+    "BF": (100.0, 1e-2, 1e5),
     "NF": (1.0, 0.5, 3.0),
     "VAF": (math.inf, 1.0, math.inf),
     "IKF": (math.inf, 1e-6, math.inf),

@@ -9,6 +9,8 @@ from protlint.board.shares import merged_resistance
 from protlint.solve.boundary import Missing, Notes, Place
 from protlint.solve.circuit import Device
 from protlint.solve.derive import Derived, derive
+from protlint.solve.thyristor import ANODE, NEEDED, two_transistors
+from protlint.toml.text import toml_key
 
 TERMINALS = {
     "npn": ("collector", "base", "emitter"),
@@ -41,6 +43,8 @@ def devices_of(place: Place, index: int, *, nodes: Mapping[str, str], notes: Not
         return _passive(place, element, parts, nodes, notes)
     part = parts[0]
     kind = element.kind.removesuffix("-darlington")
+    if kind == "thyristor":
+        return _thyristor(place, index, part, nodes, notes)
     if kind not in TERMINALS:
         notes.missing.append(Missing("circuit", part.id, f"a model of {part.id}: a {kind} is not modelled"))
         return []
@@ -141,6 +145,48 @@ def _resistor(
 
     usual_ohm, high_ohm = merged_ohm(0), merged_ohm(1)
     return [Device(name=name, kind="resistor", nodes=ends, model={"R": usual_ohm}, tolerance=high_ohm / usual_ohm - 1.0)]
+
+
+def _thyristor(place: Place, index: int, part: BoardPart, nodes: Mapping[str, str], notes: Notes) -> list[Device]:
+    """Return a thyristor's two transistors, the one at the gate under the part's own name, and its gate resistance."""
+    if not {"anode", "gate", "cathode"} <= nodes.keys():
+        notes.missing.append(Missing("part", part.id, f"pin roles of {part.id}, in [pins] or its part data"))
+        return []
+    ratings = {} if part.entry is None else {name: figure.value for name, figure in part.entry.ratings.items()}
+    number = part.part_number if part.entry is None else part.entry.part_number
+    lacking = [name for name in NEEDED if name not in ratings]
+    if lacking:
+        keys = [f"{toml_key(number)}.ratings.{name}" for name in lacking] if number else ["a part number", *lacking]
+        notes.missing += [Missing("part", part.id, f"a model of {part.id}: {', '.join(keys)}")]
+        return []
+    pair = two_transistors(ratings)
+    notes.assumed += [("model", f"{part.id}: {sentence}") for sentence in pair.assumed]
+    below_V, above_V = place.limits.vbe_spread_V
+    spread_V = (below_V, above_V if pair.above_V is None else max(above_V, pair.above_V))
+    rise_K, inner = _rise_K(place, index), f"{part.id} inner layer"
+    anode, gate, cathode = nodes["anode"], nodes["gate"], nodes["cathode"]
+    return [
+        Device(
+            part.id,
+            "npn",
+            (inner, gate, cathode),
+            pair.npn,
+            vbe_spread_V=spread_V,
+            assumed=pair.assumed,
+            derived=pair.derived,
+            rise_K=rise_K,
+            part_number=number or "",
+        ),
+        Device(part.id + ANODE, "pnp", (gate, inner, anode), pair.pnp, rise_K=rise_K, part_number=number or ""),
+        Device(
+            f"{part.id} gate",
+            "resistor",
+            (gate, cathode),
+            {"R": pair.gate_ohm, "TC1": pair.gate_per_K},
+            tolerance=pair.gate_spread,
+            rise_K=rise_K,
+        ),
+    ]
 
 
 def _darlington(
