@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import re
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
@@ -75,6 +76,34 @@ class PartEntry:
     contradictions: tuple[Contradiction, ...] = ()
     transient: tuple[TransientPoint, ...] = ()
     """The transient thermal impedance to the case, rising in time."""
+
+    def gains_at(self, ic_A: float) -> dict[str, float]:
+        """Return ``hfe_min`` and, where a greatest gain is known, ``hfe_max`` at a collector current; empty without points.
+
+        Between points the gain runs straight on logarithmic scales, as data sheets draw it; beyond the last it falls on as
+        it did before, below the first it stays. Where the greatest gain is stated at one current only, it is taken to move
+        as the least does.
+        """
+        if not self.hfe_points:
+            return {}
+        least = self._least_at(ic_A)
+        known = [(point.ic_A, point.most) for point in self.hfe_points if point.most is not None]
+        if not known and {"hfe_max", "hfe_at"} <= self.ratings.keys():
+            known = [(self.ratings["hfe_at"].value, self.ratings["hfe_max"].value)]
+        if not known:
+            return {"hfe_min": least}
+        at_A, most = min(known, key=lambda one: abs(math.log(one[0] / ic_A)))
+        return {"hfe_min": least, "hfe_max": max(least, most * least / self._least_at(at_A))}
+
+    def _least_at(self, ic_A: float) -> float:
+        points = self.hfe_points
+        if ic_A <= points[0].ic_A or len(points) == 1:
+            return points[0].least
+        low, high = next(((one, two) for one, two in pairwise(points) if ic_A <= two.ic_A), points[-2:])
+        slope = math.log(high.least / low.least) / math.log(high.ic_A / low.ic_A)
+        slope = min(slope, 0.0) if ic_A > high.ic_A else slope
+        start = high if ic_A > high.ic_A else low
+        return start.least * (ic_A / start.ic_A) ** slope
 
 
 @dataclass(frozen=True, slots=True)

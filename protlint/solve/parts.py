@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from typing import Any
 
 from protlint.board.graph import BoardPart, Element
 from protlint.board.shares import merged_resistance
@@ -51,7 +52,7 @@ def devices_of(place: Place, index: int, *, nodes: Mapping[str, str], notes: Not
     if not set(TERMINALS[kind]) <= nodes.keys():
         notes.missing.append(Missing("part", part.id, f"pin roles of {part.id}, in [pins] or its part data"))
         return []
-    derived = _derived(element.kind, part, carries_load=index in place.limiter.elements.get("pass", ()))
+    derived = _derived(element.kind, part, **_load(place, index))
     notes.assumed += [("model", f"{part.id}: {sentence}") for sentence in derived.assumed]
     rise_K = _rise_K(place, index)
     hands = _darlington(part, derived, nodes) if element.kind.endswith("-darlington") else [(part.id, derived.model, nodes)]
@@ -91,13 +92,27 @@ def _spread_V(place: Place, derived: Derived, *, bipolar: bool) -> tuple[float, 
     return max(own_V[0], board_V[0]), max(own_V[1], board_V[1])
 
 
-def _derived(kind: str, part: BoardPart, *, carries_load: bool) -> Derived:
-    """Return a part's model: its own, or one derived from its data-sheet figures, or the default of its kind."""
+def _derived(kind: str, part: BoardPart, *, carries_load: bool = False, carried_A: float | None = None) -> Derived:
+    """Return a part's model: its own, or one derived from its data-sheet figures, or the default of its kind.
+
+    Without a model of its own a device has the gain that its data sheet gives at the current the board needs of it.
+    """
     entry = part.entry
     ratings = {name: figure.value for name, figure in entry.ratings.items()} if entry is not None else {}
+    if entry is not None and not entry.model and carried_A is not None:
+        ratings |= entry.gains_at(carried_A)
     if kind == "zener" and "vz" not in ratings and part.values.value is not None:
         ratings["vz"] = part.values.value
     return derive(kind, ratings, entry.model if entry is not None else {}, carries_load=carries_load)
+
+
+def _load(place: Place, index: int) -> dict[str, Any]:
+    """Return whether a part carries the load current and, where the board states what it needs, its share of that."""
+    sharing = place.limiter.elements.get("pass", ())
+    if index not in sharing:
+        return {}
+    needed_A = place.needs.carry_A or place.needs.regulate_A
+    return {"carries_load": True, "carried_A": needed_A / len(sharing) if needed_A else None}
 
 
 def _passive(place: Place, element: Element, parts: list[BoardPart], nodes: Mapping[str, str], notes: Notes) -> list[Device]:

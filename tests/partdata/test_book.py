@@ -148,3 +148,19 @@ def test_every_rating_has_a_dimension_and_belongs_to_a_kind() -> None:
     used = {name for names in RATINGS_OF.values() for name in names}
     assert used == set(RATINGS)
     assert set(MODEL_OF) <= set(RATINGS_OF)
+
+
+def test_the_gain_at_a_current_runs_through_the_points_of_the_data_sheet() -> None:
+    """2N3904 data sheet: 40 at 0.1 mA, 70 at 1 mA, 100 to 300 at 10 mA, 60 at 50 mA, 30 at 100 mA; 2N3055: 20 to 70 at 4 A,
+    5 at 10 A."""
+    book = load_book()
+    small, power = book.find("2N3904"), book.find("2N3055")
+    assert small is not None and power is not None
+    for ic_A, least in ((1e-4, 40.0), (1e-3, 70.0), (1e-2, 100.0), (0.05, 60.0), (0.1, 30.0)):
+        assert small.gains_at(ic_A)["hfe_min"] == pytest.approx(least)
+    assert small.gains_at(0.01) == pytest.approx({"hfe_min": 100.0, "hfe_max": 300.0})
+    assert small.gains_at(0.05)["hfe_max"] == pytest.approx(180.0)
+    assert small.gains_at(0.03)["hfe_min"] == pytest.approx(100.0 * 3.0 ** (math.log(0.6) / math.log(5.0)))
+    assert power.gains_at(1.0) == pytest.approx({"hfe_min": 20.0, "hfe_max": 70.0})
+    assert power.gains_at(10.0)["hfe_min"] == pytest.approx(5.0)
+    assert power.gains_at(12.0)["hfe_min"] < 5.0

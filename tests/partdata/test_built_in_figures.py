@@ -5,6 +5,8 @@ from __future__ import annotations
 import pytest
 
 from protlint.partdata.book import load_book
+from tests.support.desk import the_one
+from tests.support.judged import sink
 
 BOOK = load_book()
 
@@ -116,3 +118,14 @@ def test_base_current_ratings_are_from_memory_and_such_as_the_collector_current_
         assert base.source == "memory", name
         least = 1000.0 if entry.kind.endswith("darlington") else 50.0
         assert collector.value / least <= base.value <= collector.value, name
+
+
+@pytest.mark.parametrize(("carry", "gains"), [("10 mA", (100.0, 300.0)), ("50 mA", (60.0, 180.0)), ("0.1 A", (30.0, 90.0))])
+def test_a_pass_device_has_the_gain_of_its_data_sheet_at_the_current_that_is_needed(
+    carry: str, gains: tuple[float, float]
+) -> None:
+    """2N3904 data sheet: least gain 100 (to 300) at 10 mA, 60 at 50 mA, 30 at 100 mA."""
+    circuit = the_one(sink().drawn(("QPN1", "2N3904")).stated(carry=carry).review()).circuit
+    assert circuit is not None
+    (device,) = [device for device in circuit.devices if device.name == "Q1"]
+    assert device.hfe == pytest.approx(gains)
