@@ -2,14 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Collection, Iterable, Iterator
 
 from protlint.board.graph import Board
 from protlint.limits import Limits, fits
+from protlint.toml.tables import nearest
 from protlint.toml.text import toml_key
 
 ON_THIS_BOARD = "on this board"
-"""How such a remark ends; of several boards it counts only where it is made of all."""
+"""How such a remark ends, but for the nearest name that is there; of several boards it counts only where all make it."""
+
+MOST_NAMES = 2_000
+"""Among more, looking for the nearest takes longer than it is worth."""
 
 
 def idle_tables(limits: Limits, board: Board, spoken_of: Iterable[str]) -> tuple[str, ...]:
@@ -19,27 +23,35 @@ def idle_tables(limits: Limits, board: Board, spoken_of: Iterable[str]) -> tuple
     where a short is tied to it, and so may a ground.
     """
     names = tuple(dict.fromkeys(spoken_of))
-    return tuple(f"{limits.file}: {table} fits no {what} {ON_THIS_BOARD}" for table, what in _idle(limits, board, names))
+    return tuple(
+        f"{limits.file}: {table.format(toml_key(name))} fits no {what} {ON_THIS_BOARD}{_nearest(name, known)}"
+        for table, name, what, known in _idle(limits, board, names)
+    )
 
 
-def _idle(limits: Limits, board: Board, spoken_of: tuple[str, ...]) -> Iterator[tuple[str, str]]:
+def _nearest(name: str, known: Collection[str]) -> str:
+    return nearest(name, sorted(known)) if len(known) <= MOST_NAMES else ""
+
+
+def _idle(limits: Limits, board: Board, spoken_of: tuple[str, ...]) -> Iterator[tuple[str, str, str, Collection[str]]]:
+    """Yield each idle table, the name in it, what that could be, and the names of such that the board has."""
     nets = {name for net in board.nets for name in net.names}
     folded = {name.casefold() for name in nets}
     elsewhere = {name for needs in limits.limiters.values() for name in needs.shorted_to}
     for name, voltage in limits.supplies_V.items():
         if name.casefold() not in folded and name not in elsewhere and voltage.usual != 0.0:
-            yield f"[supply] {toml_key(name)}", "net"
+            yield "[supply] {}", name, "net", nets
     for name in limits.drives:
         if name not in nets and not board.nets_of_pin(name):
-            yield f"[drive.{toml_key(name)}]", "net and no pin"
+            yield "[drive.{}]", name, "net and no pin", nets
     numbers = {part.part_number for part in board.parts if part.part_number is not None}
     for name in limits.drivers:
         if name.casefold() not in {number.casefold() for number in numbers}:
-            yield f"[driver.{toml_key(name)}]", "part number"
+            yield "[driver.{}]", name, "part number", numbers
     for name in limits.limiters:
         if name != "*" and not any(fits(name, one) for one in spoken_of):
-            yield f"[limiter.{toml_key(name)}]", "limiter"
+            yield "[limiter.{}]", name, "limiter", spoken_of
     types = numbers | {part.part.cell for part in board.parts}
     for name in limits.pins:
         if not any(fits(name, one) for one in types):
-            yield f"[pins.{toml_key(name)}]", "cell and no part number"
+            yield "[pins.{}]", name, "cell and no part number", types

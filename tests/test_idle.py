@@ -33,10 +33,10 @@ def test_what_fits_is_not_remarked_upon() -> None:
 @pytest.mark.parametrize(
     ("tables", "told"),
     [
-        ({"supply": {"+12W": "12 V"}}, '[supply] "+12W" fits no net'),
-        ({"drive": {"cmd": {"high": "5 V"}}}, "[drive.cmd] fits no net and no pin"),
+        ({"supply": {"+48V": "48 V"}}, '[supply] "+48V" fits no net'),
+        ({"drive": {"STAGE": {"high": "5 V"}}}, "[drive.STAGE] fits no net and no pin"),
         ({"drive": {"U1.9": {"high": "5 V"}}}, '[drive."U1.9"] fits no net and no pin'),
-        ({"driver": {"BUF8": {"power": "1 W"}}}, "[driver.BUF8] fits no part number"),
+        ({"driver": {"AMP1": {"power": "1 W"}}}, "[driver.AMP1] fits no part number"),
         ({"limiter": {"Q99": {"carry": "1 A"}}}, "[limiter.Q99] fits no limiter"),
         ({"limiter": {"R10": {"carry": "1 A"}}}, "[limiter.R10] fits no limiter"),
         ({"pins": {"SOT99": {"1": "base"}}}, "[pins.SOT99] fits no cell and no part number"),
@@ -44,7 +44,22 @@ def test_what_fits_is_not_remarked_upon() -> None:
 )
 def test_what_fits_nothing_is_named(tables: dict[str, object], told: str) -> None:
     (remark,) = reviewed(BOARD, limits(**tables)).remarks
-    assert remark == f"limits.toml: {told} on this board"
+    assert remark.partition("; did you mean ")[0] == f"limits.toml: {told} on this board"
+
+
+@pytest.mark.parametrize(
+    ("tables", "near"),
+    [
+        ({"supply": {"+12W": "12 V"}}, "+12V"),
+        ({"drive": {"cmd": {"high": "5 V"}}}, "CMD"),
+        ({"driver": {"BUF8": {"power": "1 W"}}}, "BUF7"),
+        ({"limiter": {"Q100": {"carry": "1 A"}}}, "Q10"),
+        ({"pins": {"RESI": {"1": "base"}}}, "RES"),
+    ],
+)
+def test_the_nearest_name_is_hinted_at(tables: dict[str, object], near: str) -> None:
+    (remark,) = reviewed(BOARD, limits(**tables)).remarks
+    assert remark.endswith(f' on this board; did you mean "{near}"?')
 
 
 def test_of_several_boards_only_what_fits_none_is_named() -> None:

@@ -13,6 +13,7 @@ from protlint import __version__
 from protlint.findings import LEVELS
 from protlint.idle import ON_THIS_BOARD
 from protlint.report.safe import json_text
+from protlint.toml.tables import HINT
 from protlint.waivers import MATCHES_NOTHING
 
 Document = dict[str, Any]
@@ -63,11 +64,18 @@ IDLE = (MATCHES_NOTHING, ON_THIS_BOARD)
 
 
 def _without_idle(boards: list[Document]) -> tuple[list[Document], list[str]]:
-    """Take the remarks on idle waivers and limits out of the boards, and return those that every board makes."""
-    idle = [[text for text in board["remarks"] if text.endswith(IDLE)] for board in boards]
+    """Take the remarks on idle waivers and limits out of the boards, and return those that every board makes.
+
+    Each board has its own nearest name to hint at, so the remarks stand without it.
+    """
+    idle = [[bare for text in board["remarks"] if (bare := _bare(text)).endswith(IDLE)] for board in boards]
     everywhere = [text for text in idle[0] if all(text in others for others in idle)] if idle else []
-    cleared = [{**board, "remarks": [text for text in board["remarks"] if not text.endswith(IDLE)]} for board in boards]
+    cleared = [{**board, "remarks": [one for one in board["remarks"] if not _bare(one).endswith(IDLE)]} for board in boards]
     return cleared, everywhere
+
+
+def _bare(remark: str) -> str:
+    return remark.partition(HINT)[0]
 
 
 def summarised(limiters: Sequence[Document], findings: Sequence[Document], not_checked: Sequence[Document] = ()) -> Document:

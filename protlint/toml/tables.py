@@ -18,11 +18,15 @@ Span = tuple[float, float, float]
 """Low, usual and high."""
 
 
+HINT = "; did you mean "
+"""How it begins which known word is nearest to one that is not known."""
+
+
 def nearest(word: str, known: Iterable[str]) -> str:
     """Return ``; did you mean "..."?`` where a known word is near, else nothing."""
     names = {name.casefold(): name for name in known}
     close = difflib.get_close_matches(word.casefold(), names, n=1, cutoff=0.6)
-    return f'; did you mean "{names[close[0]]}"?' if close else ""
+    return f'{HINT}"{names[close[0]]}"?' if close else ""
 
 
 @dataclass(frozen=True, slots=True)
