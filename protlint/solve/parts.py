@@ -172,7 +172,7 @@ def _thyristor(place: Place, index: int, part: BoardPart, nodes: Mapping[str, st
     lacking = [name for name in NEEDED if name not in ratings]
     if lacking:
         keys = [f"{toml_key(number)}.ratings.{name}" for name in lacking] if number else ["a part number", *lacking]
-        notes.missing += [Missing("part", part.id, f"a model of {part.id}: {', '.join(keys)}")]
+        notes.missing += [Missing("circuit", part.id, f"a model of {part.id}: {', '.join(keys)}")]
         return []
     pair = two_transistors(ratings)
     notes.assumed += [("model", f"{part.id}: {sentence}") for sentence in pair.assumed]

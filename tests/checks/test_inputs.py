@@ -69,3 +69,12 @@ def test_thermal_figures_that_contradict_each_other_are_a_note() -> None:
     (one,) = [one for one in review.findings if one.check == "part-data-contradicts"]
     assert (one.level, one.parts) == ("note", ("Q1",))
     assert one.working
+
+
+def test_a_thyristor_that_no_data_knows_is_told_by_what_is_missing_not_by_its_pins() -> None:
+    """A kind without usual figures: nothing is said to be taken in their place."""
+    review = sink().drawn(("Q2 NPN QSN1 BASE STOP GND", "Q2 SCR XYZ9 A=BASE G=STOP K=GND")).review()
+    (finding,) = found(review, "part-data-missing")
+    assert finding.message.endswith("is in no part data: no figure of it is known")
+    assert not found(review, "pins-unknown")
+    assert any("XYZ9.ratings.igt" in needs for _, needs in unchecked(review))
