@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from bisect import bisect_right
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 
 from protlint.checks.case import Case
@@ -95,19 +97,32 @@ def _least_ohm(case: Case, instant: Surge | None) -> float:
 
 
 def _most_ohm(case: Case, shunt: Device) -> float | None:
-    """Return the greatest value of E24 that moves the limit by no more than the threshold; found by halving."""
+    """Return the greatest value of E24 that moves the limit by no more than the threshold; None where one is not solved."""
     values = within(1.0, GREATEST_OHM, "E24")
-    low, high = 0, len(values) - 1
-    while low < high:
-        middle = (low + high + 1) // 2
-        moves = moves_for_the_stop(case, shunt, values[middle])
-        if moves is None:
-            return None
-        if moves.share <= case.threshold("base-stop-high", "share"):
-            low = middle
-        else:
-            high = middle - 1
-    return values[low]
+    most = case.threshold("base-stop-high", "share")
+    tried: dict[int, Moves | None] = {}
+
+    def will_do(place: int) -> bool:
+        moves = tried[place] = moves_for_the_stop(case, shunt, values[place])
+        return moves is not None and moves.share <= most
+
+    by_hand_ohm = most / max(_by_hand(case, shunt, 1.0), most / GREATEST_OHM)
+    found = _last(will_do, len(values), near=bisect_right(values, by_hand_ohm) - 1)
+    return None if None in tried.values() else values[found]
+
+
+def _last(will_do: Callable[[int], bool], count: int, *, near: int) -> int:
+    """Return the last of ``count`` places that will do, 0 where none does; they do up to some place, which lies near one."""
+    low, high, step = -1, count, 1
+    place = min(max(near, 0), count - 1)
+    while low < place < high:
+        low, high = (place, high) if will_do(place) else (low, place)
+        place = place + step if low == place else place - step
+        step *= 2
+    while high - low > 1:
+        middle = (low + high) // 2
+        low, high = (middle, high) if will_do(middle) else (low, middle)
+    return max(low, 0)
 
 
 def _by_hand(case: Case, shunt: Device, stop_ohm: float) -> float:
