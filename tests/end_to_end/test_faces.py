@@ -20,7 +20,7 @@ from sarif_kit.validate import validation_errors
 
 from protlint.cli import commands
 from protlint.cli.shell import run
-from tests.support.command import COMMAND, protlint
+from tests.support.command import protlint
 from tests.support.lamps import lamp_limits, lamp_netlist
 from tests.support.paths import FIXTURES, ROOT
 from tests.support.sample_review import HOSTILE
@@ -372,20 +372,6 @@ def test_hostile_names_in_a_netlist_act_in_no_face(bench: Path) -> None:
     ElementTree.fromstring((bench / "r.xml").read_bytes())
     found = {limiter["id"] for limiter in report_in(bench / "r.json")["limiters"]}
     assert found == {names[f"Q{number}"] for number in range(1, len(hostile) + 1)}
-
-
-def test_the_recipe_of_the_readme_runs(bench: Path) -> None:
-    """The lines after the set-up, as a build would run them; the set-up itself is what runs these tests."""
-    text = (ROOT / "README.md").read_text(encoding="utf-8").split("## In a repository")[1]
-    lines = [line.strip() for line in text.splitlines() if line.startswith("    .venv/bin/protlint review ")]
-    assert lines
-    shutil.copytree(bench / "bench", bench / "hardware")
-    (bench / "hardware" / "lamps.edf").rename(bench / "hardware" / "board.edf")
-    script = "\n".join(["set -e", *(line.replace(".venv/bin/protlint", shlex.quote(str(COMMAND))) for line in lines)])
-    done = subprocess.run(["sh", "-c", script], cwd=bench, capture_output=True, text=True, timeout=300, check=False)
-    assert (done.returncode, done.stderr) == (0, "")
-    assert validation_errors(report_in(bench / "protlint.sarif")) == []
-    assert report_in(bench / "protlint.json")["summary"]["limiters"] == 1
 
 
 def test_a_board_of_two_hundred_limiters_is_readable_in_every_face(bench: Path) -> None:
