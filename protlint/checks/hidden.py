@@ -23,6 +23,8 @@ def hidden_by_unknown_pins(whole: BoardCase) -> Iterator[BoardAnswer]:
     the near end of that resistor too, itself or through one more resistor.
     """
     board = whole.board
+    if not any(_unknown(element) for element in board.elements if element.kind in CONTROL):
+        return
     taken = {index for one in whole.found.limiters for indices in one.elements.values() for index in indices}
     for element in board.elements:
         if element.kind in CONTROL and element.index not in taken:

@@ -120,7 +120,7 @@ def _driven_by_its_complement(board: Board, device: Element, near: int, control:
 def _leaving(whole: BoardCase) -> set[int]:
     """Return the nets that leave the board, straight or through an inductor or a fuse, and the outputs of limiters."""
     board = whole.board
-    leaving = {net.index for net in board.nets if any(board.parts[part].kind == "connector" for part, _ in net.pins)}
+    leaving = {net for part in board.parts if part.kind == "connector" for net in part.roles.values()}
     series = [set(one.terminals.values()) for one in board.elements if one.kind in ("inductor", "fuse")]
     beyond = {net for ends in series if not leaving.isdisjoint(ends) for net in ends}
     outputs = (limiter.nets["output"] for limiter in whole.found.limiters)
