@@ -5,6 +5,7 @@ from __future__ import annotations
 import json
 import os
 import random
+from itertools import product
 
 import pytest
 from hypothesis import given, settings
@@ -63,6 +64,8 @@ def test_all_habits_give_one_netlist(seed: int) -> None:
         Habits(case="mixed", renames=True),
         Habits(pages=3, drawing=True),
         Habits(line_end="\r", wrap=20, pages=1, case="upper"),
+        Habits(globals=True, pages=4, renames=True),
+        Habits(aliases=True, case="mixed", drawing=True),
     ]
     for habits in flat_habits:
         text, _ = write(board, habits, seed)
@@ -76,6 +79,7 @@ def test_the_writer_uses_every_cell_and_every_habit() -> None:
     assert {each.pages for each in habits} == {0, 1, 4}
     assert {each.blocks for each in habits} == {0, 2, 5}
     assert {each.wrap for each in habits} == {0, 33, 80}
+    assert {(each.globals, each.aliases, each.blocks > 0) for each in habits} == set(product((False, True), repeat=3))
 
 
 def test_damaged_files_give_a_netlist_or_one_clear_error() -> None:

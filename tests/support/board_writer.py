@@ -22,6 +22,8 @@ CELLS = {
 LETTERS = {"RES": "R", "CAP": "C", "DIODE": "D", "NPN": "Q", "NMOS": "M", "OPAMP": "U"}
 VALUES = ("10K", "4K7", "0R68 1W", "100n", "22uF 35V", 'say "so"', "1%", "R\\E\\S\\", "", "two\nlines", "47к")
 RAILS = ("GND", "+24V", "-15V", "VCC")
+ALIASES = {"net": "N", "instance": "I", "joined": "J", "portRef": "P", "property": "PR", "view": "GND", "figure": "F"}
+"""Other words for keywords, some of them identifiers as well."""
 
 Truth = dict[str, dict[str, str]]
 """Part id to pin name to the name of a net; two pins are connected where the names are the same."""
@@ -29,7 +31,10 @@ Truth = dict[str, dict[str, str]]
 
 @dataclass(frozen=True, slots=True)
 class Habits:
-    """How an exporter writes. ``case`` is ``as is``, ``upper``, ``lower`` or ``mixed``, of keywords and of references."""
+    """How an exporter writes. ``case`` is ``as is``, ``upper``, ``lower`` or ``mixed``, of keywords and of references.
+
+    With ``globals`` rails go by ``globalPortRef`` wherever they are, and by no port or connector.
+    """
 
     wrap: int = 0
     line_end: str = "\n"
@@ -39,6 +44,8 @@ class Habits:
     designators: bool = True
     renames: bool = False
     drawing: bool = False
+    globals: bool = False
+    aliases: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -79,6 +86,8 @@ def random_habits(seed: int) -> Habits:
         designators=chance.random() < 0.6,
         renames=chance.random() < 0.5,
         drawing=chance.random() < 0.5,
+        globals=chance.random() < 0.25,
+        aliases=chance.random() < 0.25,
     )
 
 
@@ -86,6 +95,8 @@ def write(board: Sequence[Placed], habits: Habits, seed: int = 0) -> tuple[str, 
     """Return the board as EDIF, and what a reader must find in it."""
     writer = _Writer(habits, random.Random(seed))
     text = writer.file(board)
+    if habits.aliases:
+        text = _aliased(text)
     if habits.case != "as is":
         text = _recased(text, habits.case, random.Random(seed + 1))
     if habits.wrap:
@@ -168,7 +179,7 @@ class _Writer:
                 for net in part.nets:
                     if net and seen.setdefault(net, number) != number:
                         crossing.add(net)
-        return crossing
+        return crossing - set(RAILS) if self.habits.globals else crossing
 
     def cell(
         self, name: str, parts: Sequence[Placed], ports: Sequence[str], path: str, inner: dict[str, tuple[str, list[str]]]
@@ -184,6 +195,7 @@ class _Writer:
             for net in nets:
                 joined[0].setdefault(net, []).append(f"(portRef {self.identifier('P_' + net)} (instanceRef {instance}))")
         several = {net for each in joined for net in each if sum(net in other for other in joined) > 1}
+        several -= set(RAILS) if self.habits.globals else set()
         for net in sorted(several - set(ports)):
             self.lines.append(f"(offPageConnector {self.name('O_' + net)})")
         for number, (sheet, nets) in enumerate(zip(sheets, joined, strict=True), 1):
@@ -197,6 +209,7 @@ class _Writer:
             for net, ends in nets.items():
                 out = f"(portRef {self.identifier('P_' + net)})" if net in ports else ""
                 out = f"(portRef {self.identifier('O_' + net)})" if not out and net in several else out
+                out = f"(globalPortRef {self.identifier(net)})" if self.habits.globals and net in RAILS else out
                 self.lines.append(f"(net {self.name(net)} (joined {out} {' '.join(ends)}){self.furniture()})")
             if self.habits.pages:
                 self.lines.append(")")
@@ -237,6 +250,17 @@ class _Writer:
 
 def _tokens(text: str) -> Iterator[str]:
     yield from re.findall(r'"[^"]*"|[()]|[^\s()"]+', text)
+
+
+def _aliased(text: str) -> str:
+    """Write keywords by other words."""
+    said = " ".join(f"(keywordAlias {alias} {known})" for known, alias in ALIASES.items())
+
+    def token(match: re.Match[str]) -> str:
+        return f"({ALIASES.get(match[1], match[1])}" if match[1] else match[0]
+
+    plain = re.sub(r'"[^"]*"|\((\w+)', token, text)
+    return plain.replace("(keywordLevel 0)", f"(keywordLevel 1) {said}")
 
 
 def _recased(text: str, case: str, chance: random.Random) -> str:
