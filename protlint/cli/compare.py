@@ -61,16 +61,16 @@ def compare(before: str, after: str, save: str | None, gate: str, **reading: Any
     several = any("boards" in report for report in reports)
     try:
         comparison = comparison_document((comparing.compare_together if several else comparing.compare)(*reports))
+        text = rendered_comparison(comparison, colour=colour_wanted())
+        unread = errors_of(comparison.get("not_compared", []))
     except (KeyError, TypeError, IndexError, AttributeError, ValueError):
         raise InputError("one of them is no report of this version: review it again", file=f"{before}, {after}") from None
-    text = rendered_comparison(comparison, colour=colour_wanted())
     for target in targets:
         write_whole(target, rendered_comparison_json(comparison))
     reasons = held_back_by(comparison, gate)
     verdict = f"does not hold: {', '.join(reasons)}" if reasons else "holds"
     say(f"{text}\nThe gate ({gate}) {verdict}.\n")
-    unread = comparison.get("not_compared", [])
-    for line in errors_of(unread):
+    for line in unread:
         complain(line)
     return CANNOT if unread else int(bool(reasons))
 

@@ -100,7 +100,8 @@ def review_all(paths: Sequence[str], files: Mapping[str, Any], reading: Mapping[
 
     desk = pipeline.set_up(**files)
     names = called(paths)
-    here = [path for path in paths if path == "-" or not _worth_sharing(paths)]
+    # What is no file on a disk, such as a pipe, another process may have no way to.
+    here = [path for path in paths if path == "-" or not Path(path).is_file() or not _worth_sharing(paths)]
     elsewhere = {path: names[path] for path in paths if path not in here}
     answers: dict[str, Answer] = {}
     for path, answer in _with_progress(_on_all_cores(elsewhere, files, reading), len(elsewhere)):
@@ -120,7 +121,7 @@ def _in_folder(folder: Path) -> list[str]:
         path
         for path in folder.rglob("*")
         if path.suffix.lower() in ENDINGS
-        and path.is_file()
+        and (path.is_file() or (path.is_symlink() and not path.is_dir()))  # a link that leads nowhere is told of
         and not any(part.startswith(".") for part in path.relative_to(folder).parts)
     )
     if not found:

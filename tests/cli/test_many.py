@@ -33,6 +33,22 @@ def test_netlists_are_gathered_from_folders_in_a_stable_order(tmp_path: Path) ->
         netlists_of([_empty(tmp_path)])
 
 
+@pytest.mark.skipif(os.name != "posix", reason="SKIPPED: no links and no pipes here")
+def test_a_link_that_leads_nowhere_is_told_and_pipes_are_read(tmp_path: Path) -> None:
+    (tmp_path / "b").mkdir()
+    (tmp_path / "b" / "gone.edf").symlink_to("nowhere.edf")
+    (tmp_path / "b" / "round.edf").symlink_to("round.edf")
+    (tmp_path / "b" / "up.edf").symlink_to("..")
+    (tmp_path / "board.txt").write_text(lamp_netlist(), encoding="utf-8")
+    line = f"{COMMAND} review b {' '.join(['<(cat board.txt)'] * 5)} --save r.json --gate never"
+    done = subprocess.run(["bash", "-c", line], cwd=tmp_path, capture_output=True, text=True, timeout=300, check=False)
+    assert done.returncode == 2
+    assert done.stderr.splitlines()[0] == "b/gone.edf: no such file"
+    assert done.stderr.splitlines()[1].startswith("b/round.edf: cannot be read (")
+    assert len(done.stderr.splitlines()) == 2
+    assert len(json.loads((tmp_path / "r.json").read_text(encoding="utf-8"))["boards"]) == 5
+
+
 def _empty(folder: Path) -> str:
     (folder / "empty").mkdir()
     return str(folder / "empty")

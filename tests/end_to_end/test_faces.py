@@ -319,6 +319,8 @@ def test_the_installed_command_says_the_same_of_a_bad_netlist(bench: Path) -> No
         (("compare", "list.json", BOARD), "list.json: "),
         (("compare", "half.json", BOARD), "half.json:1:"),
         (("compare", "thin.json", BOARD), ""),
+        (("compare", "boards.json", BOARD), ""),
+        (("compare", "unread.json", BOARD), ""),
         (("rules", "--rules", "absent"), "absent: "),
     ],
 )
@@ -336,6 +338,8 @@ def test_other_bad_input_is_one_clear_line(
         "list.json": "[]",
         "half.json": '{"report": 1,',
         "thin.json": '{"report": 1}',
+        "boards.json": '{"report": 1, "boards": [[]]}',
+        "unread.json": '{"report": 1, "boards": [], "unread": [{"file": "x.edf"}]}',
     }
     for file, text in texts.items():
         (bench / file).write_text(text, encoding="utf-8")
