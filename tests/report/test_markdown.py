@@ -2,20 +2,29 @@
 
 from __future__ import annotations
 
+import html
 import re
 from pathlib import Path
 
 import pytest
+from markdown_it import MarkdownIt
 
 from protlint.report.document import document
 from protlint.report.faces import check_targets, save
 from protlint.report.issues import mark, rendered_issues
 from protlint.report.markdown import MOST_CHARACTERS, rendered_markdown
+from protlint.report.safe import readable
 from protlint.report.shape import CAUTION, Document, combined
 from protlint.sources import FileError, UsageError
 from tests.support.sample_review import HOSTILE, PLAIN, sample_review
 
 OURS = re.compile(r"</?(details|summary)>|<!-- -->|<!-- written by protlint [^<>]*-->")
+
+ELEMENTS = {
+    "h1", "h2", "h3", "p", "ul", "li", "strong", "em", "br", "details", "summary",
+    "table", "thead", "tbody", "tr", "th", "td",
+}  # fmt: skip
+"""What our Markdown is made of."""
 
 
 def unescaped(text: str) -> str:
@@ -56,6 +65,21 @@ def test_hostile_names_do_not_act(name: str) -> None:
         tables = [line for line in bare.split("\n") if "|" in line]
         assert {line.count("|") for line in tables} <= {9}
         assert all(line.startswith("|") for line in tables)
+
+
+@pytest.mark.parametrize("name", HOSTILE)
+def test_a_reader_of_commonmark_shows_hostile_names_as_they_are(name: str) -> None:
+    """Read by markdown-it-py, an implementation of CommonMark 0.31 with the tables of code hosts."""
+    names = {**PLAIN, **dict.fromkeys(("pass", "sense", "out", "name"), name)}
+    report = document(sample_review(names, notes=2))
+    reader = MarkdownIt("commonmark", {"html": True, "linkify": False}).enable("table")
+    texts = [rendered_markdown(report), *rendered_issues(report).values()]
+    for text in texts:
+        page = reader.render(text)
+        elements = set(re.findall(r"<([a-z][a-z0-9]*)", page))
+        assert elements <= ELEMENTS
+    shown = " ".join(html.unescape(re.sub(r"<[^>]*>", "", reader.render(texts[0]))).split())
+    assert " ".join(readable(name).split()) in shown
 
 
 def test_boards_together(tmp_path: Path) -> None:
