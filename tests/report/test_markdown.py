@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import html
+import os
 import re
 from pathlib import Path
 
@@ -69,7 +70,7 @@ def test_hostile_names_do_not_act(name: str) -> None:
 
 @pytest.mark.parametrize("name", HOSTILE)
 def test_a_reader_of_commonmark_shows_hostile_names_as_they_are(name: str) -> None:
-    """Read by markdown-it-py, an implementation of CommonMark 0.31 with the tables of code hosts."""
+    """Read by markdown-it-py, an implementation of CommonMark, with the tables that code hosts add."""
     names = {**PLAIN, **dict.fromkeys(("pass", "sense", "out", "name"), name)}
     report = document(sample_review(names, notes=2))
     reader = MarkdownIt("commonmark", {"html": True, "linkify": False}).enable("table")
@@ -160,7 +161,17 @@ def test_what_cannot_be_saved_is_refused_first(tmp_path: Path) -> None:
             check_targets([str(target)])
     with pytest.raises(UsageError):
         check_targets([str(tmp_path / "x.json")] * 2)
+    (tmp_path / "link.json").symlink_to("x.json")
+    with pytest.raises(UsageError):
+        check_targets([str(tmp_path / "x.json"), str(tmp_path / "link.json")])
     check_targets([str(tmp_path / "X.JSON"), str(tmp_path / "absent") + "/"])
+
+
+def test_a_folder_that_takes_no_file_is_refused_before_the_work(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """The system's answer is put in its mouth: to root, who may run this, every folder is open."""
+    monkeypatch.setattr(os, "access", lambda path, mode: not (Path(path) == tmp_path and mode == os.W_OK))
+    with pytest.raises(FileError, match="this folder takes no file"):
+        check_targets([str(tmp_path / "x.json")])
 
 
 def test_where_one_face_fails_nothing_is_written(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
