@@ -27,7 +27,7 @@ FIGURES = ("carries_A", "most_A", "holds_A", "damping", "pass_power_W")
 """What a comparison follows, at usual ambient."""
 
 
-NO_BOARD: Report = {"netlist": None, "limiters": [], "findings": []}
+NO_BOARD: Report = {"netlist": None, "limiters": [], "findings": [], "remarks": []}
 """Stands for a board that is on the other side only."""
 
 
@@ -121,6 +121,10 @@ def compare(before: Report, after: Report) -> dict[str, Any]:
             "unchanged": sum(not (change["parts"] or change["figures"] or change["words"]) for change in changes),
         },
         "findings": _findings(before, after, pairs),
+        "remarks": {
+            "new": [text for text in after["remarks"] if text not in before["remarks"]],
+            "gone": [text for text in before["remarks"] if text not in after["remarks"]],
+        },
     }
 
 

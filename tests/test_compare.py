@@ -92,6 +92,17 @@ def test_what_the_limits_file_asks_now_is_told_in_words() -> None:
         assert told in text
 
 
+def test_what_the_limits_file_fits_no_longer_is_told() -> None:
+    before, after = report(), report()
+    after["remarks"] = [*before["remarks"], "limits.toml: [drive.CMD] fits no net and no pin on this board"]
+    comparison = compare(before, after)
+    assert comparison["remarks"] == {"new": after["remarks"][-1:], "gone": []}
+    assert "fits no net and no pin" in rendered_comparison(comparison_document(comparison))
+    back = compare(after, before)
+    assert back["remarks"]["gone"] == after["remarks"][-1:]
+    assert "fits no net" not in rendered_comparison(comparison_document(back))
+
+
 def test_added_and_removed_limiters() -> None:
     before, after = report(), report()
     gone = after["limiters"].pop()

@@ -86,6 +86,9 @@ def _board(comparison: Document, colour: bool) -> list[str]:
         lines += ["", *_limiter(change, colour)]
     for word in CHANGES:
         lines += _findings(word, findings[word], colour)
+    if before is not None and comparison["remarks"]["new"]:
+        lines += ["", painted("Remarks that are new", "heading", colour=colour)]
+        lines += [line for text in comparison["remarks"]["new"] for line in wrapped(text, indent=4, first="  - ")]
     return lines
 
 
