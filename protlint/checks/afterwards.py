@@ -17,8 +17,9 @@ from protlint.solve.dynamics import with_dynamics
 
 POWER_CHECKS = ("sense-resistor-power", "resistor-power")
 
-NO_RATING_W = 1e-9
-"""Stands for the rating of a sense resistor that states none, so that the rating it needs is found."""
+UNRATED_W = {True: 1e-9, False: 0.1}
+"""Stand for the rating of a resistor that states none, so that the rating it needs is found: of a sense resistor any, of
+another one that is more than the small ones have."""
 
 
 def foretold(case: Case, findings: Sequence[Finding]) -> list[Finding]:
@@ -89,9 +90,9 @@ def fitted(case: Case, fits: Iterable[Fit]) -> Case | None:
 
 
 def _with_value(part: BoardPart, value: float, sense: bool) -> BoardPart:
-    """Return a resistor with another value; a sense resistor whose rating nobody knows gets next to none."""
+    """Return a resistor with another value; one whose rating nobody knows with next to none, or that of a small one."""
     known = part.values.power_W is not None or (part.entry is not None and "power" in part.entry.ratings)
-    power_W = part.values.power_W if known or not sense else NO_RATING_W
+    power_W = part.values.power_W if known else UNRATED_W[sense]
     return replace(part, values=replace(part.values, value=value, power_W=power_W))
 
 

@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 
 from protlint.checks.case import DRAWN, Answer, Case
-from protlint.checks.stop_range import StopRange, moves_for_the_stop, stop_range
+from protlint.checks.stop_range import Moves, StopRange, moves_for_the_stop, stop_range
 from protlint.checks.surge import Surge, shunt_of, surge
 from protlint.findings import Fit, Level, NotChecked, Remedy, WorkingLine
 from protlint.partdata.book import Figure
@@ -96,12 +96,17 @@ def base_stop_high(case: Case) -> Iterator[Answer]:
             ),
             WorkingLine(f"holds, hFE {high:g}", "the same", moves.with_A[1], "A"),
             WorkingLine("moves without it", "the same with the base stop bridged", moves.without, ""),
-            WorkingLine("moves for its sake", "the difference of the two, over holds", moves.share, ""),
+            WorkingLine("moves for its sake", _share_of_holds(moves), moves.share, ""),
         ),
         remedy=remedy,
         fits=fits,
         assumption=case.assumes(*DRAWN),
     )
+
+
+def _share_of_holds(moves: Moves) -> str:
+    least, most = (format_quantity(amperes, "A") for amperes in sorted(moves.with_A))
+    return f"({most} - {least}) / {format_quantity(moves.with_A[1], 'A')} - {moves.without:.3g}"
 
 
 def _base(case: Case, check: str) -> Base | NotChecked | None:

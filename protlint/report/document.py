@@ -7,7 +7,7 @@ bytes of a report; what is not finite or not known is null. ``review-1.schema.js
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from protlint import __version__
@@ -17,7 +17,7 @@ from protlint.limits import LimiterLimits
 from protlint.partdata.book import PartEntry
 from protlint.partdata.ratings import STATIC_FIGURES
 from protlint.report.answers import answers, rounded, taken
-from protlint.report.memory import FROM_MEMORY, behind, in_use, on_memory
+from protlint.report.memory import FROM_MEMORY, behind, in_use
 from protlint.report.shape import CAUTION, Document, summarised
 from protlint.topology.limiter import NETS, ROLES
 
@@ -35,8 +35,8 @@ UNIT_OF_KIND = {"resistor": "ohm", "capacitor": "F", "inductor": "H", "zener": "
 def document(review: Review) -> Document:
     """Return the JSON report of one netlist, version 1: every promised key, null where unknown."""
     limiters = [_limiter(item, review) for item in review.limiters]
-    memory = {limiter["id"]: on_memory(limiter) for limiter in limiters}
-    findings = [_finding(finding, review.board, memory.get(finding.limiter or "", {})) for finding in review.findings]
+    by_id = {limiter["id"]: limiter for limiter in limiters}
+    findings = [_finding(finding, review.board, by_id.get(finding.limiter or "")) for finding in review.findings]
     not_checked = [_unchecked(row) for row in review.not_checked]
     netlist = review.board.netlist
     return {
@@ -155,8 +155,8 @@ def _parts(item: ReviewedLimiter, board: Board) -> list[Document]:
     return list(listed.values())
 
 
-def _finding(finding: Finding, board: Board, memory: Mapping[str, str]) -> Document:
-    remembered = behind(finding.check, memory)
+def _finding(finding: Finding, board: Board, limiter: Document | None) -> Document:
+    remembered = behind(finding.check, limiter, finding.parts) if limiter is not None else ""
     last = [WorkingLine(FROM_MEMORY, remembered, None, "", MEMORY)] if remembered else []
     return {
         "check": finding.check,

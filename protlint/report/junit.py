@@ -10,7 +10,7 @@ from collections.abc import Collection, Iterable, Sequence
 from xml.etree import ElementTree
 
 from protlint.report.digest import left_open, place_of, sentence, unsolved, waiver_of, working_line
-from protlint.report.memory import behind, on_memory
+from protlint.report.memory import behind
 from protlint.report.safe import throughout, xml
 from protlint.report.shape import CAUTION, Document, boards_of
 
@@ -107,12 +107,11 @@ def _lines(finding: Document) -> list[str]:
 def _passed(suite: ElementTree.Element, limiter: Document, place: str, told: Collection[str]) -> None:
     """Write a case for every check that was asked and found nothing, or one skip where the circuit was not solved; it is
     bare but for the figures from memory that it rests on."""
-    memory = on_memory(limiter)
     for check in limiter["asked"]:
         if check not in told:
             case = ElementTree.SubElement(suite, "testcase", name=check, classname=place)
-            if behind(check, memory):
-                ElementTree.SubElement(case, "system-out").text = f"from memory: {behind(check, memory)}"
+            if behind(check, limiter):
+                ElementTree.SubElement(case, "system-out").text = f"from memory: {behind(check, limiter)}"
     if limiter["not_solved"]:
         case = ElementTree.SubElement(suite, "testcase", name="solved", classname=place)
         ElementTree.SubElement(case, "skipped", message=f"not judged{unsolved(limiter)}")

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from functools import cache
 
 from protlint.checks.catalogue import load_catalogue
@@ -25,7 +25,7 @@ def on_memory(limiter: Document) -> dict[str, str]:
     """Return the figures from memory by what rests on them: the currents, the loop, a check; empty where nothing does."""
     if limiter["not_solved"]:
         return {}
-    known = {part["id"]: part["from_memory"] for part in limiter["parts"]}
+    known = _known(limiter)
     figures: dict[str, Mapping[str, tuple[str, ...]]] = {
         CURRENTS: dict.fromkeys(limiter["roles"], STATIC_FIGURES),
         LOOP: dict.fromkeys(limiter["roles"], DYNAMIC_FIGURES),
@@ -35,12 +35,17 @@ def on_memory(limiter: Document) -> dict[str, str]:
     return {what: text for what, text in found.items() if text}
 
 
-def behind(check: str, by_check: Mapping[str, str]) -> str:
-    """Return all figures from memory that a finding of a check rests on, as :func:`on_memory` names them."""
-    if check in NOT_SOLVED_FOR:
+def behind(check: str, limiter: Document, parts: Collection[str] | None = None) -> str:
+    """Return all figures from memory that a check of a limiter rests on; of a finding's own ``parts`` only where given.
+
+    What the currents rest on is told whatever the parts.
+    """
+    if check in NOT_SOLVED_FOR or limiter["not_solved"]:
         return ""
-    what = (check, CURRENTS, *([LOOP] if check in OF_THE_LOOP else []))
-    return "; ".join(by_check[one] for one in what if one in by_check)
+    by_check = on_memory(limiter)
+    own = _named(limiter, _known(limiter, parts), _figures().get(check, {}))
+    rest = (by_check.get(one, "") for one in (CURRENTS, *([LOOP] if check in OF_THE_LOOP else [])))
+    return "; ".join(text for text in (own, *rest) if text)
 
 
 def resting(limiter: Document) -> list[str]:
@@ -70,6 +75,10 @@ def in_use() -> frozenset[str]:
 @cache
 def _figures() -> Mapping[str, Mapping[str, tuple[str, ...]]]:
     return {row.name: row.figures for row in load_catalogue().values()}
+
+
+def _known(limiter: Document, parts: Collection[str] | None = None) -> dict[str, Sequence[str]]:
+    return {part["id"]: part["from_memory"] for part in limiter["parts"] if parts is None or part["id"] in parts}
 
 
 def _named(limiter: Document, known: Mapping[str, Sequence[str]], figures: Mapping[str, tuple[str, ...]]) -> str:
