@@ -25,7 +25,10 @@ Examples:
 @click.argument("name", required=False)
 @click.option("--rules", "folders", metavar="FOLDER", type=PATH, multiple=True, help="Rule files of your own. Repeatable.")
 def rules(name: str | None, folders: tuple[str, ...]) -> int:
-    """List the topologies, faults and checks, or show NAME in full: what, why, formula, thresholds, source."""
+    """List the topologies, faults and checks, or show NAME in full: what, why, formula, thresholds, source.
+
+    A check is shown with an example of its working, computed on a small board that comes with protlint.
+    """
     from protlint.checks.catalogue import load_catalogue
     from protlint.report.rules_text import names_of, rendered_list, rendered_rule
     from protlint.topology.language import load_rules
