@@ -62,22 +62,19 @@ def _rated(burns: Sequence[Finding], count: int) -> str:
 
 def fitted(case: Case, fits: Iterable[Fit]) -> Case | None:
     """Return the case of the same limiter with parts of other values, solved; None where it cannot be solved."""
-    values = {fit.part: fit.value for fit in fits}
-    sense = case.parts("sense")
-    parts = tuple(
-        _with_value(part, values[part.id], part.id in sense) if part.id in values else part for part in case.board.parts
-    )
+    sense, parts = case.parts("sense"), list(case.board.parts)
+    changed = {case.part(fit.part).index: fit.value for fit in fits}
+    for index, value in changed.items():
+        parts[index] = _with_value(parts[index], value, parts[index].id in sense)
 
     def ohms(index: int) -> float:
         return parts[index].values.value or 0.0
 
-    elements = tuple(
-        replace(one, value=merged_resistance(one.tree, ohms))
-        if any(parts[index].id in values for index in one.parts)
-        else one
+    elements = [
+        one if changed.keys().isdisjoint(one.parts) else replace(one, value=merged_resistance(one.tree, ohms))
         for one in case.board.elements
-    )
-    board = replace(case.board, parts=parts, elements=elements)
+    ]
+    board = replace(case.board, parts=tuple(parts), elements=tuple(elements))
     bench = build_bench(board, case.limiter, limits=case.limits, needs=case.needs)
     if bench.circuit is None:
         return None
