@@ -104,7 +104,8 @@ class Case:
         """Tell whether nothing bounds a current of the held short, so that its figures mean nothing: a stiff drive straight
         onto junctions."""
         held = self.solution.high_short
-        return any(abs(state.current_A) > UNBOUNDED_A for point in held for state in point.states.values())
+        currents_A = (state.current_A for point in held for state in point.states.values())
+        return any(abs(current_A) > UNBOUNDED_A for current_A in (*currents_A, *(point.drive_A for point in held)))
 
     @property
     def drive_bound(self) -> str:

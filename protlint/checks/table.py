@@ -67,7 +67,8 @@ WITHOUT_SOLUTION = frozenset(
 BOUNDED = frozenset(
     {
         "base-stop-absent", "base-stop-low", "base-stop-high", "sense-resistor-power", "resistor-power", "driver-overloaded",
-        "shunt-overloaded", "reverse-base-emitter", "pass-overheated", "pass-outside-safe-area",
+        "shunt-overloaded", "reverse-base-emitter", "pass-overheated", "pass-outside-safe-area", "compensation-absent",
+        "loop-undamped", "trips-on-peaks", "trips-late",
     }
 )  # fmt: skip
 """Those that are not asked where nothing bounds the drive: drive-unlimited then says all there is to say."""

@@ -1,4 +1,4 @@
-"""A latch's figures: what it trips at, what it passes before and afterwards. Where it trips is found in ``tripping``."""
+"""A latch's figures: what it trips at, and what it passes before and afterwards (``protlint.solve.tripping``)."""
 
 from __future__ import annotations
 
@@ -12,11 +12,10 @@ from numpy.typing import NDArray
 from protlint.solve.constants import KELVIN
 from protlint.solve.corners import extremes
 from protlint.solve.devices import Array, IntArray
-from protlint.solve.locus import Conditions, run_at
-from protlint.solve.solution import Currents, Point, Solution
-from protlint.solve.stage import Stage, Sweep, points, short_voltage
-from protlint.solve.thyristor import ANODE
-from protlint.solve.tripping import HeldBase, Tripping, find, hold_base, refine, scan
+from protlint.solve.locus import PASS_V, Conditions, run_at
+from protlint.solve.solution import Currents, Solution
+from protlint.solve.stage import Stage, Sweep, pass_voltage, points, short_voltage
+from protlint.solve.tripping import Tripping, raise_drive, run_with
 
 _SHARES = (0.0, 0.3, 0.6, 0.9)
 """Places between the short and the farthest the output can go, where no working output voltage is stated."""
@@ -27,24 +26,10 @@ _ROUNDING = 1e-6
 
 
 def settle(stage: Stage, sweep: Sweep) -> Sweep:
-    """Return the sweep with its on end, shunt in, where the latch stands once the drive has risen to there.
-
-    Raises
-    ------
-    CircuitError
-        Where the shunt's emitter is on no net whose voltage is known.
-    """
-    held = hold_base(stage)
-    short = sweep.full_drive(0)
-    conditions = Conditions(short.lanes.ambient_K)
-    plane = scan(held, conditions, np.full(sweep.ambients, np.nan))
-    last = plane.injected_A[:, -1]
-    start = short.operating.inner.copy()
-    for ambient in range(sweep.ambients):
-        rises = np.flatnonzero((last[:-1, ambient] <= 0.0) & (last[1:, ambient] > 0.0))
-        if len(rises):
-            start[:, ambient] = plane.inner[:, rises[0] + 1, -1, ambient]
-    run = run_at(stage, conditions, None, start)
+    """Return the sweep with its on end, shunt in, where the latch stands once the drive has risen to there."""
+    conditions = Conditions(sweep.full_drive(0).lanes.ambient_K)
+    tripping = raise_drive(stage, conditions, np.full(sweep.ambients, np.nan))
+    run = run_at(stage, conditions, None, tripping.after)
     whole = sweep.run
     first = (len(sweep.drive_V) - 1) * sweep.ambients
     lanes = np.arange(first, first + sweep.ambients)
@@ -64,73 +49,61 @@ def with_trips(stage: Stage, solution: Solution) -> Solution:
     Holds stays what it passes afterwards. Where the latch does not stay on there is no begins, and the rest is as of a
     limiter without a latch.
     """
-    held, circuit, rows = hold_base(stage), stage.network.circuit, solution.currents
+    circuit, rows, stated = stage.network.circuit, solution.currents, stage.network.circuit.output_V is not None
     ambients = len(rows)
-    ambient_K = np.array([row.ambient_degC for row in rows]) + KELVIN
     places_V = _places(stage, ambients)
-    conditions = Conditions(np.tile(ambient_K, len(places_V)))
+    conditions = Conditions(np.tile(np.array([row.ambient_degC for row in rows]) + KELVIN, len(places_V)))
     output_V = places_V.ravel()
-    folds = find(held, conditions, output_V)
-    passes_A = folds.output_A.reshape(len(places_V), ambients)
-    known = circuit.output_V is not None or not circuit.ground_leg
-    first = 1 if circuit.output_V is not None else 0
-    working = passes_A[first:] if known else np.full_like(passes_A, np.nan)
-    index = np.arange(ambients)
-    of_begins = index
-    of_carries = (first + _best(working, np.nanargmin)) * ambients + index
+    tripping = raise_drive(stage, conditions, output_V)
+    run = run_with(stage, conditions, output_V, tripping.drive, tripping.inner)
+    working = np.isnan(output_V) | stated | (pass_voltage(stage, run) >= PASS_V)
+    passes_A = np.where(working, tripping.output_A, np.nan).reshape(len(places_V), ambients)
+    first, index = int(stated), np.arange(ambients)
+    of_carries = (first + _best(passes_A[first:], np.nanargmin)) * ambients + index
     of_most = _best(passes_A, np.nanargmax) * ambients + index
-    wanted = np.unique(np.concatenate((of_begins, of_carries, of_most)))
-    wanted = wanted[np.isfinite(folds.output_A[wanted])]
-    ends = np.full((2, folds.output_A.size), np.nan)
-    if len(wanted):
-        ends[:, wanted] = _ranges(held, conditions, output_V, folds, wanted)
-    changed = []
-    for ambient, row in enumerate(rows):
-        begins, carries, most = (int(of[ambient]) for of in (of_begins, of_carries, of_most))
-        changed.append(_changed(row, folds.output_A, ends, begins, carries if known else None, most))
+    wanted = np.unique(np.concatenate((index, of_carries, of_most)))
+    ends = np.full((2, passes_A.size), np.nan)
+    ends[:, wanted] = _ranges(stage, conditions, output_V, tripping.output_A, wanted)
+    known = stated or not circuit.ground_leg
+    changed = [
+        _changed(row, tripping, ends, place, int(of_carries[place]) if known else None, int(of_most[place]))
+        for place, row in enumerate(rows)
+    ]
     usual = ambients // 2
-    at_carry = _point(held, folds, int(of_carries[usual])) if known else None
+    tripped = points(stage, run, [int(of_carries[usual])]) if known and changed[usual].begins_A is not None else ()
     return replace(
         solution,
         currents=tuple(changed),
-        at_carry=at_carry or solution.at_carry,
+        at_carry=tripped[0] if tripped else solution.at_carry,
         regulates=None,
-        not_checked=tuple(solution.not_checked) + _untripped(stage, changed),
+        not_checked=solution.not_checked + _untripped(changed),
     )
 
 
-def _changed(row: Currents, passes_A: Array, ends: Array, begins: int, carries: int | None, most: int) -> Currents:
-    """Return a row of currents with the places of its figures among the folds put in."""
+def _changed(row: Currents, tripping: Tripping, ends: Array, begins: int, carries: int | None, most: int) -> Currents:
+    """Return a row of currents with its figures from where they stand in ``tripping``."""
 
-    def figure(place: int | None) -> float | None:
-        return float(passes_A[place]) if place is not None and np.isfinite(passes_A[place]) else None
+    def figure(place: int) -> float | None:
+        return float(tripping.output_A[place]) if np.isfinite(tripping.output_A[place]) else None
 
-    def pair(place: int | None) -> tuple[float, float] | None:
-        if place is None or not np.isfinite(ends[:, place]).all():
-            return None
-        return float(ends[0, place]), float(ends[1, place])
+    def pair(place: int) -> tuple[float, float] | None:
+        return (float(ends[0, place]), float(ends[1, place])) if np.isfinite(ends[:, place]).all() else None
 
     trips_A = figure(begins)
-    if trips_A is None or row.holds_A is None or row.holds_A > _TRIPPED_SHARE * trips_A:
+    if not tripping.trips[begins] or trips_A is None or row.holds_A is None or row.holds_A > _TRIPPED_SHARE * trips_A:
         return replace(row, begins_A=None, begins_range_A=None)
-    trips = figure(carries) is not None
-    most_A, most_range = max(figure(most) or 0.0, row.holds_A or 0.0), pair(most)
+    most_A, most_range = max(figure(most) or 0.0, row.holds_A), pair(most)
     if most_range is not None and row.holds_range_A is not None:
         most_range = (max(most_range[0], row.holds_range_A[0]), max(most_range[1], row.holds_range_A[1]))
-    return replace(
-        row,
-        begins_A=trips_A,
-        begins_range_A=pair(begins),
-        carries_A=figure(carries) if trips else row.carries_A,
-        carries_range_A=pair(carries) if trips else row.carries_range_A,
-        most_A=most_A,
-        most_range_A=most_range,
-        limited_by_output="limiter" if trips else row.limited_by_output,
-    )
+    changed = replace(row, begins_A=trips_A, begins_range_A=pair(begins), most_A=most_A, most_range_A=most_range)
+    if carries is None:
+        return changed
+    by = "limiter" if tripping.trips[carries] else row.limited_by_output
+    return replace(changed, carries_A=figure(carries), carries_range_A=pair(carries), limited_by_output=by)
 
 
-def _untripped(stage: Stage, rows: Sequence[Currents]) -> tuple[tuple[str, str], ...]:
-    names = " and ".join(name.removesuffix(ANODE) for name in stage.network.circuit.latch)
+def _untripped(rows: Sequence[Currents]) -> tuple[tuple[str, str], ...]:
+    """Say at which ambients the latch does not stay on, or may not; no part is named, as equal circuits share the words."""
     never = [f"{row.ambient_degC:g} degC" for row in rows if row.begins_A is None]
     may_not = [
         f"{row.ambient_degC:g} degC"
@@ -139,22 +112,21 @@ def _untripped(stage: Stage, rows: Sequence[Currents]) -> tuple[tuple[str, str],
         and row.holds_range_A is not None
         and row.holds_range_A[1] > _TRIPPED_SHARE * row.begins_range_A[1]
     ]
-    wants = f"a drive that makes {names} trip and keeps it on"
+    wants = "a drive that makes the latch trip and keeps it on"
     told = [f"{wants}: as it is stated it does not, at {', '.join(never)}"] if never else []
     told += [f"{wants} over every spread: at worst it does not, at {', '.join(may_not)}"] if may_not else []
     return tuple(("begins", one) for one in told)
 
 
-def _ranges(held: HeldBase, conditions: Conditions, output_V: Array, folds: Tripping, wanted: IntArray) -> Array:
-    """Return the low and the high ends of folds (2, wanted)."""
+def _ranges(stage: Stage, conditions: Conditions, output_V: Array, nominal_A: Array, wanted: IntArray) -> Array:
+    """Return the low and the high ends of what passes untripped at the conditions wanted (2, wanted)."""
 
     def evaluate(corner: Array, which: IntArray) -> Array:
         place = wanted[which]
-        at = Conditions(conditions.ambient_K[place], corner)
-        return refine(held, at, output_V[place], folds.pick(place)).output_A
+        return raise_drive(stage, Conditions(conditions.ambient_K[place], corner), output_V[place]).output_A
 
-    nominal = folds.output_A[wanted]
-    _, found = extremes(evaluate, nominal, len(held.stage.axes))
+    nominal = nominal_A[wanted]
+    _, found = extremes(evaluate, nominal, len(stage.axes))
     low, high = found.reshape(2, len(wanted))
     return np.stack((np.fmin(low, nominal) * (1.0 - _ROUNDING), np.fmax(high, nominal) * (1.0 + _ROUNDING)))
 
@@ -174,13 +146,6 @@ def _places(stage: Stage, ambients: int) -> Array:
 def _best(values: Array, choose: Callable[..., IntArray]) -> IntArray:
     """Return the row of each column's least or greatest value, the first where there is none."""
     return choose(np.where(np.isfinite(values).any(axis=0), values, 0.0), axis=0)
-
-
-def _point(held: HeldBase, folds: Tripping, place: int) -> Point | None:
-    if folds.run is None or not np.isfinite(folds.output_A[place]):
-        return None
-    found = points(held.stage, folds.run, [place])
-    return found[0] if found else None
 
 
 def _put(values: NDArray[Any], lanes: IntArray, new: NDArray[Any]) -> NDArray[Any]:

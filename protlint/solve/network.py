@@ -27,7 +27,8 @@ DRIVE_SOURCE = "drive source"
 """Name of the node behind the drive's resistance or current limit."""
 
 LEAST_SOURCE_OHM = 1e-3
-"""Resistance of a current-limited drive that states none."""
+"""Resistance of a drive that states none, where its current is limited or goes straight into a junction: there a stiff one
+would mean currents beyond all numbers."""
 
 LINK_AT_MOST_OHM = 1e-3
 GREATEST_V = 1e5
@@ -108,7 +109,7 @@ def compile_network(circuit: Circuit) -> Network:
         raise CircuitError("two devices share one name")
     held = tuple(node for node in circuit.held if node not in (circuit.output, circuit.drive.node))
     _check_ends(circuit)
-    stiff = circuit.drive.resistance_ohm == 0.0 and circuit.drive.current_A is None
+    stiff = circuit.drive.resistance_ohm == 0.0 and circuit.drive.current_A is None and not _drives_a_junction(circuit)
     known = (*held, circuit.output, circuit.drive.node if stiff else DRIVE_SOURCE)
     conducting = [device for device in circuit.devices if device.kind != "capacitor"]
     unknown = tuple(dict.fromkeys(node for device in conducting for node in device.nodes if node not in known))
@@ -146,7 +147,7 @@ def compile_network(circuit: Circuit) -> Network:
 
     resistors = tuple(device for device in conducting if device.kind in ("resistor", "inductor"))
     if circuit.drive.current_A is None and not stiff:
-        source = {"R": circuit.drive.resistance_ohm}
+        source = {"R": circuit.drive.resistance_ohm or LEAST_SOURCE_OHM}
         resistors = (*resistors, Device(DRIVE_SOURCE, "resistor", (DRIVE_SOURCE, circuit.drive.node), source))
         models[DRIVE_SOURCE] = complete(resistors[-1])
     resistor_base = {
@@ -175,6 +176,16 @@ def compile_network(circuit: Circuit) -> Network:
         resistor_scatter=scatter(pattern, resistor_incidence[:, : len(unknown)], _each_alone(len(resistors))),
         bridge_scatter=scatter(pattern, incidence[:, : len(unknown)], _each_alone(len(incidence))).sum(axis=1),
         limited_drive=circuit.drive.current_A is not None,
+    )
+
+
+def _drives_a_junction(circuit: Circuit) -> bool:
+    """Tell whether the drive's node is that of a base or a diode."""
+    node = circuit.drive.node
+    return any(
+        node == device.nodes[1] if device.kind in ("npn", "pnp") else node in device.nodes
+        for device in circuit.devices
+        if device.kind in ("npn", "pnp", "diode", "zener")
     )
 
 

@@ -95,8 +95,9 @@ def sweep_stage(
 ) -> tuple[Stage, Sweep]:
     """Sweep the drive into a short at every ambient; return the stage, and the sweep from its off end to its on end.
 
-    The on end is the one with the greater unlimited output current at the usual ambient (an index). ``drives`` is how many
-    drive voltages are solved; 2 are enough where only the stage is wanted.
+    The on end is the one at which the pass devices carry more without the shunt at the usual ambient (an index): of a stage
+    of two halves the other one may give the output more at the other end. ``drives`` is how many drive voltages are
+    solved; 2 are enough where only the stage is wanted.
 
     Raises
     ------
@@ -122,21 +123,24 @@ def sweep_stage(
     ends = Sweep(run, drive_V, count).current(1)[[0, -1], usual]
     if np.isnan(ends).all():
         raise CircuitError("no operating point was found with the output shorted")
-    on_end = int(np.nanargmax(np.abs(ends)))
+    most_A = float(np.nanmax(np.abs(ends)))
+    if most_A < LEAST_OUTPUT_A:
+        raise CircuitError(f"the drive cannot turn the pass device on: {most_A:.2g} A into the short at most")
+    last = drives * count
+    carried = _forward_current(stage, run.pick(np.array([last + usual, 2 * last - count + usual])))
+    weights = carried if np.isfinite(carried).any() else np.abs(ends)
+    on_end = int(np.nanargmax(weights))
     greatest = float(ends[on_end])
-    if abs(greatest) < LEAST_OUTPUT_A:
-        raise CircuitError(f"the drive cannot turn the pass device on: {abs(greatest):.2g} A into the short at most")
-    if abs(float(ends[1] - ends[0])) < LEAST_CONTROL_SHARE * abs(greatest):
+    if weights[on_end] < LEAST_OUTPUT_A:
+        raise CircuitError("the drive cannot turn the pass device on: it carries nothing in its forward sense")
+    if abs(float(weights[1] - weights[0])) < LEAST_CONTROL_SHARE * abs(float(weights[on_end])):
         raise CircuitError(_uncontrolled(drive, abs(greatest)))
     way = 1.0 if greatest > 0.0 else -1.0
     run = replace(run, output_A=way * run.output_A)
     if on_end == 0:
         rows = np.arange(2 * drives * count).reshape(2, drives, count)[:, ::-1].ravel()
         run, drive_V = run.pick(rows), drive_V[::-1]
-    sweep = Sweep(run, drive_V, count)
-    if _forward_current(stage, sweep.full_drive(1))[usual] < LEAST_OUTPUT_A:
-        raise CircuitError("the drive cannot turn the pass device on: it carries nothing in its forward sense")
-    return replace(stage, on_end=on_end, way=way), sweep
+    return replace(stage, on_end=on_end, way=way), Sweep(run, drive_V, count)
 
 
 def _uncontrolled(drive: Drive, unlimited_A: float) -> str:

@@ -60,7 +60,7 @@ def test_it_trips_and_passes_on_what_a_simulator_says(board: str) -> None:
     one = the_one(latched(board))
     for row in one.solution.currents:
         trips_A, after_A = simulated(circuit_of(latched(board)), row.ambient_degC)
-        assert row.begins_A == pytest.approx(trips_A, rel=5e-3)
+        assert row.begins_A == pytest.approx(trips_A, rel=1e-2)
         assert row.holds_A == pytest.approx(after_A, rel=2e-3)
         assert after_A < 0.5 * trips_A
 
@@ -72,7 +72,7 @@ def test_a_drive_that_does_not_keep_it_on_is_told() -> None:
     most_A, after_A = simulated(circuit_of(latched(WEAK)), 27.0)
     assert (row.begins_A, row.holds_A) == (None, pytest.approx(after_A, rel=2e-3))
     assert after_A > 0.5 * most_A
-    assert any(check == "begins" and "Q2 trip" in needs for check, needs in unchecked(latched(WEAK)))
+    assert any(check == "begins" and "the latch trip" in needs for check, needs in unchecked(latched(WEAK)))
 
 
 @pytest.mark.parametrize("board", [LATCHED, FIRED], ids=["pair", "thyristor"])
