@@ -80,8 +80,12 @@ def rendered_sarif(report: Document) -> str:
 
 
 def artifact_uri(file: str) -> str:
-    """Return a file's name as a relative URI reference (RFC 3986)."""
-    return quote(file.encode("utf-8", "surrogatepass"), safe="/")
+    """Return a file's name as a relative URI reference (RFC 3986); bytes that are no UTF-8 stand as they are."""
+    try:
+        name = file.encode("utf-8", "surrogateescape")
+    except UnicodeEncodeError:
+        name = file.encode("utf-8", "surrogatepass")
+    return quote(name, safe="/")
 
 
 def message(text: str) -> Document:

@@ -149,7 +149,12 @@ def test_hostile_names(name: str) -> None:
 
 @pytest.mark.parametrize(
     ("file", "uri"),
-    [("a b.edf", "a%20b.edf"), ("x:y/ü.edf", "x%3Ay/%C3%BC.edf"), ("<standard input>", "%3Cstandard%20input%3E")],
+    [
+        ("a b.edf", "a%20b.edf"),
+        ("x:y/ü.edf", "x%3Ay/%C3%BC.edf"),
+        ("<standard input>", "%3Cstandard%20input%3E"),
+        ("\udcff\u2028.edf", "%FF%E2%80%A8.edf"),
+    ],
 )
 def test_uris(file: str, uri: str) -> None:
     assert artifact_uri(file) == uri
