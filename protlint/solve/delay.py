@@ -19,6 +19,7 @@ from protlint.solve.expanded import Expanded, expand
 from protlint.solve.lanes import parameters
 from protlint.solve.linear import condition, passive_values, unfold
 from protlint.solve.loop import USUAL, Held, hold
+from protlint.solve.modes import damping
 from protlint.solve.motion import Instant, Motion, at_rest, integrate
 from protlint.solve.network import compile_network
 from protlint.solve.parameters import CircuitError
@@ -33,10 +34,13 @@ BEGIN_V = 2.0
 """What pass device and sense together have where no working output voltage is stated."""
 
 CLOSE_V, CLOSE_SHARE = 5e-3, 0.03
-"""At rest for good: every junction and store this near its final voltage, the current this near holds."""
+"""At rest for good: for a whole period every junction and store this near its final voltage, the current this near holds."""
+RINGS_BELOW = 0.6
+"""A mode damped more overshoots by less than a tenth, so that its period need not be waited for."""
 MOST_CROSSINGS = 40
 """A current that has risen past the level this often swings on."""
-MOST_STEPS = 20000
+MOST_STEPS, MOST_S = 20000, 1e3
+"""A step is followed so far and no further; no limiter is as slow."""
 SWINGS = 10.0
 """Periods of a growing mode that are followed."""
 
@@ -52,8 +56,8 @@ class Course:
 
 @dataclass(frozen=True, slots=True)
 class Trial:
-    """A step to follow: the motion, where it begins and ends, holds, what reads a moment, and the slowest mode that grows at
-    the end (None: all decay)."""
+    """A step to follow: the motion, where it begins and ends, holds, what reads a moment, the longest period of a mode that
+    rings there, and the slowest mode that grows there (None: all decay)."""
 
     expanded: Expanded
     motion: Motion
@@ -61,6 +65,7 @@ class Trial:
     final: Array
     holds_A: float
     read: Callable[[Instant], Course]
+    period_s: float
     grows_Hz: float | None
 
 
@@ -136,6 +141,7 @@ def prepare_step(circuit: Circuit, ambients_degC: tuple[float, float, float], sh
     wired = expand(network, output="wired")
     s = wired_frequencies(linearise(wired, look(wired, final_run, usual)), 0.0)[0]
     growing = np.abs(s[np.isfinite(s) & (s.real > 0.0)])
+    ringing = np.abs(s[np.isfinite(s) & (damping(s) < RINGS_BELOW)])
     return Trial(
         expanded=expanded,
         motion=motion,
@@ -143,6 +149,7 @@ def prepare_step(circuit: Circuit, ambients_degC: tuple[float, float, float], sh
         final=final,
         holds_A=float(final_run.output_A[USUAL]),
         read=_reader(expanded, held.stage.way),
+        period_s=float(2.0 * np.pi / ringing.min(initial=np.inf)),
         grows_Hz=float(growing.min() / (2.0 * np.pi)) if len(growing) else None,
     )
 
@@ -202,14 +209,16 @@ def _followed(trial: Trial) -> Step:
     course = [trial.read(trial.start)]
     crossings = 0
     until_s = math.inf if trial.grows_Hz is None else RAMP_S + SWINGS / trial.grows_Hz
-    rests = False
+    close_s, rests = math.inf, False
     for instant in integrate(trial.motion, trial.start, (RAMP_S,)):
         course.append(trial.read(instant))
         crossings += course[-2].output_A <= level_A < course[-1].output_A
-        if instant.time_s > RAMP_S and trial.grows_Hz is None and _rests(trial, instant, course[-1]):
-            rests = True
+        close = instant.time_s > RAMP_S and trial.grows_Hz is None and _is_close(trial, instant, course[-1])
+        close_s = min(close_s, instant.time_s) if close else math.inf
+        rests = instant.time_s - close_s >= trial.period_s
+        if rests:
             break
-        if crossings > MOST_CROSSINGS or instant.time_s > until_s or len(course) > MOST_STEPS:
+        if crossings > MOST_CROSSINGS or instant.time_s > min(until_s, MOST_S) or len(course) > MOST_STEPS:
             break
     peak_A = max(trial.holds_A, *(one.output_A for one in course))
     last = max((place for place, one in enumerate(course) if one.output_A > level_A), default=None)
@@ -232,15 +241,28 @@ def _reader(expanded: Expanded, way: float) -> Callable[[Instant], Course]:
     rows = np.concatenate((expanded.resistances, expanded.junctions))
     output = expanded.index(expanded.network.circuit.output)
     into, stored = rows[:, output], expanded.stores[:, output]
+    led = _led(expanded, output)
     of_rows, of_stores = _rows_of_passing(expanded)
 
     def read(instant: Instant) -> Course:
-        output_A = float(into @ instant.through_A + stored @ instant.charge_A)
+        output_A = float(into @ instant.through_A + stored @ instant.charge_A + led @ instant.voltages)
         power = of_rows @ (instant.through_A * (rows @ instant.voltages))
         power += of_stores @ (instant.charge_A * (expanded.stores @ instant.voltages))
         return Course(instant.time_s, way * output_A, power)
 
     return read
+
+
+def _led(expanded: Expanded, output: int) -> Array:
+    """Return which inductors' currents flow out of the output's node (1) or into it (-1), as a row over all nodes."""
+    inductors = [device for device in expanded.passive if device.kind == "inductor"]
+    first = expanded.unknown - len(inductors)
+    led = np.zeros(len(expanded.nodes))
+    for place, device in enumerate(inductors, start=first):
+        led[place] = sum(
+            sign for node, sign in zip(device.nodes, (1.0, -1.0), strict=True) if node == expanded.nodes[output]
+        )
+    return led
 
 
 def _rows_of_passing(expanded: Expanded) -> tuple[Array, Array]:
@@ -262,7 +284,7 @@ def _rows_of_passing(expanded: Expanded) -> tuple[Array, Array]:
     return np.array(rows).reshape(len(rows), -1), np.array(stores).reshape(len(rows), -1)
 
 
-def _rests(trial: Trial, instant: Instant, at: Course) -> bool:
+def _is_close(trial: Trial, instant: Instant, at: Course) -> bool:
     """Tell whether a moment is so near the held short that only its own modes, which all decay, are left."""
     expanded = trial.expanded
     inductors = sum(device.kind == "inductor" for device in expanded.passive)

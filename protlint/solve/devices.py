@@ -274,6 +274,10 @@ def mosfet(inner: Array, p: Mosfets, present: Array | float = 1.0) -> Evaluation
     i_d = lengthening * core
     g_m = lengthening * linear
     g_ds = lengthening * (over - linear) + p.K_P * p.LAMBDA * core
+    if p.GAMMA is not None:
+        # a rising current raises the threshold that it flows against
+        rising = np.where(turned, 0.0, 0.5 * p.GAMMA * p.R_S / np.sqrt(p.PHI + p.R_S * i_d))
+        g_m, g_ds = g_m / (1.0 + rising * g_m), g_ds / (1.0 + rising * g_m)
     by_gs, by_gd = g_m + g_ds, -g_ds
     if any_turned:
         # with the ends changed over, the gate works against the drain: I_D = -f(v_GD, -v_DS)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterator
 from dataclasses import replace
 from typing import Any
 
@@ -11,12 +12,12 @@ import pytest
 import scipy.integrate
 
 from protlint.solve.circuit import Circuit, Device
-from protlint.solve.delay import OVER, RAMP_S, prepare_step, rc_delay, solve_step
+from protlint.solve.delay import OVER, RAMP_S, Trial, prepare_step, rc_delay, solve_step
 from protlint.solve.linear import conductance_matrix, snapshot, store_matrix
-from protlint.solve.motion import at_rest, integrate
+from protlint.solve.motion import Instant, at_rest, integrate
 from protlint.solve.solution import Step
 from tests.support.circuits import bench_circuit
-from tests.support.dynamics import bench_case, bench_cases, shunt_of, with_capacitor
+from tests.support.dynamics import bench_case, bench_cases, moving_shape, shunt_of, with_capacitor
 
 AMBIENTS = (-10.0, 27.0, 85.0)
 
@@ -187,6 +188,40 @@ def test_the_network_rests_where_the_static_solver_says() -> None:
         rest = at_rest(trial.motion, trial.final, 1.0)
         assert np.abs(rest.voltages - trial.final).max() < 1e-5
         assert trial.read(rest).output_A == pytest.approx(trial.holds_A, rel=1e-6)
+
+
+def test_a_current_that_comes_through_an_inductor_counts() -> None:
+    """1 nH in the lead of the output changes nothing that 100 ns could show; the current then is the inductor's."""
+    circuit = bench_case("sink", "100 nF base to emitter of the shunt")
+    led = tuple(
+        replace(one, nodes=tuple("LEAD" if node == "OUT" else node for node in one.nodes)) for one in circuit.devices
+    )
+    for ends in (("LEAD", "OUT"), ("OUT", "LEAD")):
+        behind = solved(replace(circuit, devices=(*led, Device("L1", "inductor", ends, {"L": 1e-9}))))
+        plain = solved(circuit)
+        assert behind.peak_A == pytest.approx(plain.peak_A, rel=1e-3)
+        assert behind.delay_s == pytest.approx(plain.delay_s, rel=2e-3)
+        assert behind.pass_energy_J == pytest.approx(plain.pass_energy_J, rel=2e-3)
+
+
+def test_a_ringing_current_that_passes_its_final_value_is_not_at_rest() -> None:
+    """Once all is as it will be in the end, but moving: the next crests are above the level again."""
+    circuit = moving_shape("nmos follower", 4)
+    trial = prepare_step(circuit, AMBIENTS)
+    step = solved(circuit)
+    assert step.delay_s is not None
+    later = [
+        trial.read(one) for one in until(trial, step.delay_s + 3.0 * trial.period_s) if one.time_s > 1.01 * step.delay_s
+    ]
+    assert len(later) > 50
+    assert max(one.output_A for one in later) < OVER * trial.holds_A
+
+
+def until(trial: Trial, last_s: float) -> Iterator[Instant]:
+    for instant in integrate(trial.motion, trial.start, (RAMP_S,)):
+        if instant.time_s > last_s:
+            return
+        yield instant
 
 
 def limited(circuit: Circuit, current_A: float) -> Circuit:

@@ -17,6 +17,7 @@ from protlint.solve.circuit import Circuit, Device
 from protlint.solve.parameters import KINDS
 from tests.support import ngspice
 from tests.support.circuits import bench_circuit, load_bench
+from tests.support.shapes import drawn
 
 ADDED = "C99"
 UNITS = {"pF": 1e-12, "nF": 1e-9, "uF": 1e-6}
@@ -83,6 +84,49 @@ def random_circuit(seed: int) -> Circuit:
     return circuit
 
 
+def on_end_V(circuit: Circuit) -> float:
+    """Return the drive's end that turns the pass device on: high for an N-type first device, low for a P-type one."""
+    first = next(device for device in circuit.devices if device.kind in ("npn", "pnp", "nmos", "pmos"))
+    return (circuit.drive.high_V if first.kind in ("npn", "nmos") else circuit.drive.low_V).usual
+
+
+def moving_shape(shape: str, seed: int) -> Circuit:
+    """Return a drawn circuit of a shape with charges for every device, capacitors at the shunt or none, and, every other
+    time, a capacitor at its output and an inductor from there to the short."""
+    circuit, rng = drawn(shape, seed), np.random.default_rng([seed, *shape.encode()])
+
+    def about(usual: float, spread: float = 2.0) -> float:
+        return float(usual * spread ** rng.uniform(-1.0, 1.0))
+
+    def charged(device: Device) -> dict[str, float]:
+        if device.kind in ("npn", "pnp"):
+            size = 30.0 if device.name in circuit.pass_devices else 1.0
+            more = {"CJE": about(30e-12 * size), "CJC": about(10e-12 * size), "TF": about(0.5e-9 * size**0.8)}
+            more |= {"TR": about(1e-8), "MJE": float(rng.uniform(0.25, 0.5)), "VJC": float(rng.uniform(0.5, 0.9))}
+            return more | {"XCJC": float(rng.choice([1.0, 0.6]))}
+        if device.kind in ("nmos", "pmos"):
+            # published overlap capacitances are by metre of channel width, which is 1 um here
+            return {"CGSO": about(1e-3), "CGDO": about(1e-4), "CBD": about(3e-10), "PB": float(rng.uniform(0.6, 0.9))}
+        if device.kind in ("diode", "zener"):
+            return {"CJO": about(10e-12, 4.0), "VJ": float(rng.uniform(0.5, 1.0)), "M": 0.4, "TT": about(5e-9)}
+        return {}
+
+    devices = [replace(device, model={**device.model, **charged(device)}) for device in circuit.devices]
+    ends = [devices[[one.name for one in devices].index(circuit.shunt[0])].nodes[0]]
+    last = next(one for one in devices if one.name == circuit.shunt[-1])
+    ends += [*last.nodes[1:-1], last.nodes[-1]]
+    for number in range(int(rng.integers(0, 3))):
+        first, second = sorted(rng.choice(len(ends), 2, replace=False).tolist())
+        value = {"C": float(10.0 ** rng.uniform(-11.0, -7.5))}
+        devices.append(Device(f"C{90 + number}", "capacitor", (ends[first], ends[second]), value))
+    if rng.random() < 0.5:
+        devices = [replace(one, nodes=tuple("BOARD" if node == "OUT" else node for node in one.nodes)) for one in devices]
+        devices.append(Device("L90", "inductor", ("BOARD", "OUT"), {"L": float(10.0 ** rng.uniform(-7.0, -5.0))}))
+        devices.append(Device("C89", "capacitor", ("BOARD", "GND"), {"C": float(10.0 ** rng.uniform(-9.0, -6.0))}))
+        devices.append(Device("R89", "resistor", ("BOARD", "GND"), {"R": about(300.0)}))
+    return replace(circuit, devices=tuple(devices))
+
+
 def moving_deck(circuit: Circuit, *, output_V: float, drive_V: float, cut: str | None = None) -> list[str]:
     """Return a deck with capacitors, inductors and the devices' dynamic parameters.
 
@@ -127,11 +171,16 @@ def run_deck(lines: Sequence[str], commands: Sequence[str], *, timeout_s: float 
 
 
 def simulated_poles(circuit: Circuit, *, output_V: float, drive_V: float) -> np.ndarray:
-    """Return the poles (rad/s) that ngspice finds, empty where its analysis fails."""
+    """Return the poles (rad/s) that ngspice finds, empty where its analysis fails or stalls at its first guess, 1e8.
+
+    It gets behavioural sources wrong, so a drive with a current limit cannot be asked about.
+    """
+    assert circuit.drive.current_A is None
     node = ngspice._node(shunt_of(circuit).nodes[1])
     text = run_deck(moving_deck(circuit, output_V=output_V, drive_V=drive_V), (f"pz {node} 0 {node} 0 cur pol", "print all"))
     found = re.findall(r"pole\(\d+\) = ([-+.\deE]+),([-+.\deE]+)", text)
-    return np.array([complex(float(real), float(imaginary)) for real, imaginary in found])
+    poles = np.array([complex(float(real), float(imaginary)) for real, imaginary in found])
+    return poles[:0] if (np.abs(np.abs(poles) / 1e8 - 1.0) < 0.01).any() else poles
 
 
 def simulated_gain(circuit: Circuit, frequency_Hz: Sequence[float], *, output_V: float, drive_V: float) -> np.ndarray:
@@ -171,27 +220,28 @@ def simulated_step(
     rests_s: float = 0.0,
 ) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """Run ngspice through the step into the short in 100 ns; return times from its start, output currents into the circuit,
-    and the power into the output device's collector and base, at the simulator's own time points.
+    and the power into the (first) output device at its terminals, at the simulator's own time points.
 
     ``longest_s`` is the longest time step; the circuit rests for ``rests_s`` before, which moves the time points.
     """
     passing = next(device for device in circuit.devices if device.name == circuit.pass_devices[0])
-    static = [device for device in circuit.devices if device.kind not in ("capacitor", "inductor")]
-    number = static.index(passing)
     output = ngspice._node(circuit.output)
     rest = f"0 {begin_V!r} " if rests_s else ""
     ramp = f"pwl({rest}{rests_s!r} {begin_V!r} {rests_s + 1e-7!r} {short_V!r})"
+    first, control, common = (ngspice._node(node) for node in passing.nodes)
     lines = [
-        f"voutput {output} 0 {ramp}" if line.startswith("voutput ") else line
+        f"voutput {output} 0 {ramp}"
+        if line.startswith("voutput ")
+        else line.replace(f" {first} {control} {common}", f" nfirst ncontrol {common}", 1)
+        if line[0] in "QM"
+        else line
         for line in moving_deck(circuit, output_V=begin_V, drive_V=drive_V)
     ]
-    collector, base, emitter = (f"v({ngspice._node(node)})" for node in passing.nodes)
-    # the branch voltages of the device, and its terminal currents as the simulator has them
-    power = f"({collector}-{emitter})*@q{number}[ic]+({base}-{emitter})*@q{number}[ib]"
+    lines += [f"vfirst {first} nfirst 0", f"vcontrol {control} ncontrol 0"]
+    power = f"(v({first})-v({common}))*i(vfirst)+(v({control})-v({common}))*i(vcontrol)"
     with tempfile.TemporaryDirectory() as folder:
         data = Path(folder) / "out.data"
         commands = (
-            f"save all @q{number}[ic] @q{number}[ib]",
             f"tran {longest_s!r} {rests_s + until_s!r} 0 {longest_s!r}",
             f"let power = {power}",
             f"wrdata {data} i(voutput) power",
