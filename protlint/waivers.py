@@ -11,7 +11,7 @@ import os
 from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from datetime import date, datetime
-from pathlib import Path
+from pathlib import Path, PurePosixPath
 
 from protlint.findings import Finding
 from protlint.limits import fits
@@ -28,24 +28,31 @@ except ImportError:  # not a POSIX system
 MATCHES_NOTHING = "this waiver matches nothing"
 """How the remark on an idle waiver ends; of several boards it counts only where it is idle on all."""
 
-KEYS = ("fingerprint", "check", "part", "reason", "by", "until")
+KEYS = ("fingerprint", "check", "part", "board", "reason", "by", "until")
 
 
 @dataclass(frozen=True, slots=True)
 class Waiver:
-    """One waiver: by ``fingerprint``, or by ``check`` and ``part`` (globs), and where it stands in its file."""
+    """One waiver: by ``fingerprint``, or by ``check`` and ``part`` (globs), and where it stands in its file.
+
+    ``board`` is the end of a netlist's file name (globs), where one waivers file serves several boards: designators, and
+    with them fingerprints, may be the same on two of them.
+    """
 
     reason: str
     by: str
     fingerprint: str | None = None
     check: str | None = None
     part: str | None = None
+    board: str | None = None
     until: date | None = None
     line: int = 1
     column: int = 1
 
     def covers(self, finding: Finding) -> bool:
         """Tell whether the waiver speaks of a finding."""
+        if self.board is not None and not PurePosixPath(finding.file or "").match(self.board):
+            return False
         if self.fingerprint is not None:
             return self.fingerprint == finding.fingerprint
         names = (*finding.parts, *((finding.limiter,) if finding.limiter else ()))
@@ -121,7 +128,7 @@ def add_waiver(path: str | Path, waiver: Waiver, *, on: date | None = None) -> N
 
 def _refuse_another(standing: Waivers, waiver: Waiver, today: date) -> None:
     for other in standing.entries:
-        if other.fingerprint == waiver.fingerprint and waiver.fingerprint is not None:
+        if (other.fingerprint, other.board) == (waiver.fingerprint, waiver.board) and waiver.fingerprint is not None:
             past = other.until is not None and other.until < today
             until = f" until {other.until}" if other.until is not None else ""
             message = f"already waived by {other.by}{until}{', which is past: put a later date there' if past else ''}"
@@ -131,7 +138,7 @@ def _refuse_another(standing: Waivers, waiver: Waiver, today: date) -> None:
 def _written(waiver: Waiver, before: str) -> str:
     """Return a waiver as it goes behind what stands in a file, with the line ends that are in use there."""
     rows = [""] * (bool(before) + (bool(before) and not before.endswith("\n"))) + ["[[waiver]]"]
-    for key in ("fingerprint", "check", "part", "reason", "by"):
+    for key in KEYS[:-1]:
         text = getattr(waiver, key)
         rows += [f"{key} = {toml_string(text)}"] if text is not None else []
     rows += [f"until = {waiver.until.isoformat()}"] if waiver.until is not None else []
@@ -174,6 +181,7 @@ def _waiver(table: Table) -> Waiver:
         fingerprint=texts["fingerprint"],
         check=texts["check"],
         part=texts["part"],
+        board=texts["board"],
         until=_until(table),
         line=line,
         column=column,

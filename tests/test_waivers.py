@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from concurrent.futures import ThreadPoolExecutor
+from dataclasses import replace
 from datetime import date
 from pathlib import Path
 
@@ -53,6 +54,17 @@ def test_by_check_and_part_with_globs(tmp_path: Path, check: str, part: str, exp
     found, remarks = marks(tmp_path, text)
     assert [mark is not None for mark in found] == expected
     assert remarks == ()
+
+
+@pytest.mark.parametrize(
+    ("board", "covered"),
+    [("hw/left/lamp.edf", True), ("lamp.edf", True), ("left/*.edf", True), ("right/lamp.edf", False), ("amp.edf", False)],
+)
+def test_of_several_boards_one_can_be_meant(tmp_path: Path, board: str, covered: bool) -> None:
+    finding = replace(FINDINGS[0], file="hw/left/lamp.edf")
+    text = f'[[waiver]]\nfingerprint = "{finding.fingerprint}"\nboard = "{board}"\nreason = "seen"\nby = "A. R."\n'
+    (marked,), remarks = apply_waivers([finding], load_waivers(written(tmp_path, text)))
+    assert (marked.waived is not None, remarks == ()) == (covered, covered)
 
 
 def test_one_that_matches_nothing_is_told_with_its_place(tmp_path: Path) -> None:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 import textwrap
+from dataclasses import replace
 from pathlib import Path
 
 import pytest
@@ -11,11 +12,13 @@ import pytest
 from protlint.checks.catalogue import load_catalogue
 from protlint.checks.derating import STANDARDS
 from protlint.cli import commands
+from protlint.findings import Finding
 from protlint.limits import load_limits
 from protlint.partdata.book import load_book
 from protlint.report.document import document
 from protlint.report.faces import FACES
 from protlint.report.shape import combined
+from protlint.waivers import load_waivers
 from tests.support.lamps import lamp_limits, lamp_netlist
 from tests.support.paths import ROOT
 from tests.support.sample_review import sample_review
@@ -68,6 +71,16 @@ def test_the_part_data_shown_is_part_data(tmp_path: Path) -> None:
     entry = load_book([path]).find("QSN1")
     assert entry is not None
     assert (entry.kind, entry.ratings["vceo"].value, entry.model["BF"]) == ("npn", 40.0, 200)
+
+
+def test_the_waiver_shown_is_one(tmp_path: Path) -> None:
+    path = tmp_path / "waivers.toml"
+    text = README.split("by hand more can be said:\n")[1].split("\n\n`protlint compare")[0]
+    path.write_text(textwrap.dedent(text), encoding="utf-8")
+    (waiver,) = load_waivers(path).entries
+    finding = Finding("base-stop-absent", "Q10", ("Q11",), "said", file="hardware/board.edf")
+    assert waiver.covers(finding)
+    assert not waiver.covers(replace(finding, file="hardware/other.edf"))
 
 
 def test_the_python_shown_runs(tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> None:
