@@ -21,8 +21,17 @@ Examples:
 """
 
 
+def _beginning_with(_context: click.Context, _argument: click.Parameter, begun: str) -> list[str]:
+    """Return the names that complete one that was begun, as click asks for them."""
+    from protlint.checks.catalogue import load_catalogue
+    from protlint.report.rules_text import names_of
+    from protlint.topology.language import load_rules
+
+    return [name for name in names_of(load_rules(), load_catalogue()) if name.startswith(begun)]
+
+
 @click.command(short_help="List the topologies, faults and checks, or show one in full.", epilog=EXAMPLES)
-@click.argument("name", required=False)
+@click.argument("name", required=False, shell_complete=_beginning_with)
 @click.option("--rules", "folders", metavar="FOLDER", type=PATH, multiple=True, help="Rule files of your own. Repeatable.")
 def rules(name: str | None, folders: tuple[str, ...]) -> int:
     """List the topologies, faults and checks, or show NAME in full: what, why, formula, thresholds, source.

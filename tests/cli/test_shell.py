@@ -274,6 +274,17 @@ def test_completion_as_the_help_documents_it(shell: str) -> None:
     assert "review" in offered.stdout
 
 
+def test_completion_knows_the_names_of_rules_options_and_levels() -> None:
+    for words, offered in (
+        ("rules base-stop-a", "base-stop-absent"),
+        ("review --comp", "--complete"),
+        ("review --gate e", "error"),
+    ):
+        count = str(len(words.split()))
+        asked = {"_PROTLINT_COMPLETE": "bash_complete", "COMP_WORDS": f"protlint {words}", "COMP_CWORD": count}
+        assert protlint(env={**os.environ, **asked}).stdout == f"plain,{offered}\n"
+
+
 def test_the_commit_hook_names_a_command_and_the_files_it_is_for() -> None:
     text = (ROOT / ".pre-commit-hooks.yaml").read_text(encoding="utf-8")
     entries = dict(re.findall(r"^(?:- |  )(\w+): (.*)$", text, re.MULTILINE))
