@@ -68,8 +68,9 @@ class Folded:
     conductance: Array
 
 
-def solve_lanes(network: Network, lanes: Lanes, start: Array | None = None) -> Operating:
-    """Solve every lane, from ``start`` (ports, lanes or 1) or from cold; falls back on stepping where Newton fails."""
+def solve_lanes(network: Network, lanes: Lanes, start: Array | None = None, *, insist: bool = True) -> Operating:
+    """Solve every lane, from ``start`` (ports, lanes or 1) or from cold; falls back on stepping where Newton fails, unless
+    ``insist`` is false: what does not lie near its start is then not wanted."""
     with np.errstate(all="ignore"):
         p = parameters(network, lanes)
         begin = (
@@ -78,9 +79,10 @@ def solve_lanes(network: Network, lanes: Lanes, start: Array | None = None) -> O
         inner, voltages, converged = newton(network, p, lanes.known_V, begin)
         if not converged.all():
             stuck = np.flatnonzero(~converged)
-            inner[:, stuck], voltages[:, stuck], converged[stuck] = _fall_back(
-                network, take(p, stuck), lanes.known_V[:, stuck]
-            )
+            if insist:
+                inner[:, stuck], voltages[:, stuck], converged[stuck] = _fall_back(
+                    network, take(p, stuck), lanes.known_V[:, stuck]
+                )
             inner[:, ~converged] = 0.0
             voltages[:, ~converged] = 0.0
         node_V = np.concatenate((voltages, lanes.known_V))

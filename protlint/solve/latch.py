@@ -63,7 +63,7 @@ def with_trips(stage: Stage, solution: Solution) -> Solution:
     of_most = _best(passes_A, np.nanargmax) * ambients + index
     wanted = np.unique(np.concatenate((index, of_carries, of_most)))
     ends = np.full((2, passes_A.size), np.nan)
-    ends[:, wanted] = _ranges(stage, conditions, output_V, tripping.output_A, wanted)
+    ends[:, wanted] = _ranges(stage, conditions, output_V, tripping, wanted)
     known = stated or not circuit.ground_leg
     changed = [
         _changed(row, tripping, ends, place, int(of_carries[place]) if known else None, int(of_most[place]))
@@ -118,14 +118,15 @@ def _untripped(rows: Sequence[Currents]) -> tuple[tuple[str, str], ...]:
     return tuple(("begins", one) for one in told)
 
 
-def _ranges(stage: Stage, conditions: Conditions, output_V: Array, nominal_A: Array, wanted: IntArray) -> Array:
+def _ranges(stage: Stage, conditions: Conditions, output_V: Array, tripping: Tripping, wanted: IntArray) -> Array:
     """Return the low and the high ends of what passes untripped at the conditions wanted (2, wanted)."""
 
     def evaluate(corner: Array, which: IntArray) -> Array:
         place = wanted[which]
-        return raise_drive(stage, Conditions(conditions.ambient_K[place], corner), output_V[place]).output_A
+        at = Conditions(conditions.ambient_K[place], corner)
+        return raise_drive(stage, at, output_V[place], tripping.off[:, place]).output_A
 
-    nominal = nominal_A[wanted]
+    nominal = tripping.output_A[wanted]
     _, found = extremes(evaluate, nominal, len(stage.axes))
     low, high = found.reshape(2, len(wanted))
     return np.stack((np.fmin(low, nominal) * (1.0 - _ROUNDING), np.fmax(high, nominal) * (1.0 + _ROUNDING)))

@@ -171,11 +171,13 @@ def run_stage(
     shunt_in: Array | None = None,
     known_V: Array | None = None,
     start: Array | None = None,
+    insist: bool = True,
 ) -> Run:
     """Solve lanes, all arrays (lanes,) but ``corner`` (axes, lanes) and ``start`` (ports, lanes).
 
     ``axes`` stand for the stage's own; ``output_V`` None or NaN holds the output in the short, ``drive_V`` None holds the
-    drive at its on end, both as the corner has them. ``known_V`` (known nodes, lanes) overrides all three.
+    drive at its on end, both as the corner has them. ``known_V`` (known nodes, lanes) overrides all three. ``insist`` is
+    as for ``protlint.solve.dc.solve_lanes``.
     """
     lanes = stage_lanes(
         stage,
@@ -187,7 +189,7 @@ def run_stage(
         shunt_in=shunt_in,
         known_V=known_V,
     )
-    operating = solve_lanes(stage.network, lanes, start)
+    operating = solve_lanes(stage.network, lanes, start, insist=insist)
     return Run(lanes, operating, lanes.known_V[-2], stage.way * operating.output_A)
 
 

@@ -28,12 +28,13 @@ _LARGEST_MOVE_V, _ASLEEP_V = 0.04, 0.2
 @dataclass(frozen=True, slots=True)
 class Tripping:
     """How far the drive rises before the latch takes over, by condition: as a share of its way, 1 where it does not; the
-    output current there, NaN where not solved; inner voltages there, and those of the first state after it."""
+    output current there, NaN where not solved; inner voltages there, in the first state after it, and with the drive off."""
 
     drive: Array
     output_A: Array
     inner: Array
     after: Array
+    off: Array
 
     @property
     def trips(self) -> NDArray[np.bool_]:
@@ -42,13 +43,14 @@ class Tripping:
         return tripped
 
 
-def raise_drive(stage: Stage, conditions: Conditions, output_V: Array) -> Tripping:
-    """Raise the drive until the latch trips, the output held at voltages (conditions,), NaN in the short."""
+def raise_drive(stage: Stage, conditions: Conditions, output_V: Array, off: Array | None = None) -> Tripping:
+    """Raise the drive until the latch trips, the output held at voltages (conditions,), NaN in the short; ``off`` are inner
+    voltages to begin with."""
     count = len(output_V)
     drive, step = np.zeros(count), np.full(count, _FIRST_STEP)
-    run = run_with(stage, conditions, output_V, drive, None)
+    run = run_with(stage, conditions, output_V, drive, off, insist=True)
     output_A, inner = run.output_A.copy(), run.operating.inner.copy()
-    after, junctions = inner.copy(), _junctions(stage)
+    first, after, junctions = inner.copy(), inner.copy(), _junctions(stage)
     going = np.isfinite(output_A)
     for _ in range(_MOST_STEPS):
         lanes = np.flatnonzero(going)
@@ -67,7 +69,7 @@ def raise_drive(stage: Stage, conditions: Conditions, output_V: Array) -> Trippi
         step[up] = np.minimum(step[up] * _GROWS, _FIRST_STEP)
         step[down] *= _SHRINKS
         going[lanes] = (drive[lanes] < 1.0) & (step[lanes] >= _LEAST_STEP) & ~at_top
-    return Tripping(drive, output_A, inner, np.where(drive < 1.0, after, inner))
+    return Tripping(drive, output_A, inner, np.where(drive < 1.0, after, inner), first)
 
 
 def _junctions(stage: Stage) -> list[int]:
@@ -78,8 +80,10 @@ def _junctions(stage: Stage) -> list[int]:
     return [group.rows.start + place for place, device in enumerate(group.devices) if device.name in names]
 
 
-def run_with(stage: Stage, conditions: Conditions, output_V: Array, drive: Array, start: Array | None) -> Run:
-    """Run conditions with the drive at shares of its way (conditions,)."""
+def run_with(
+    stage: Stage, conditions: Conditions, output_V: Array, drive: Array, start: Array | None, *, insist: bool = False
+) -> Run:
+    """Run conditions with the drive at shares of its way (conditions,), from a start; ``insist`` as for ``run_stage``."""
     corner = conditions.corner
     axes = () if corner is None else stage.axes
     _, ends_V = held_voltages(stage.network, axes, np.zeros((0, len(drive))) if corner is None else corner)
@@ -91,4 +95,5 @@ def run_with(stage: Stage, conditions: Conditions, output_V: Array, drive: Array
         output_V=output_V,
         drive_V=off_V + drive * (on_V - off_V),
         start=start,
+        insist=insist,
     )
