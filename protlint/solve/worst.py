@@ -4,7 +4,8 @@ Fault wiring of 0, 0.5, 5 and 50 uH lies between the output, with the board's ca
 makes weakly damped modes, shunt or no shunt; only the limiter's own modes count (``protlint.solve.wired``).
 
 Corners are those of ``protlint.solve.corners``, and capacitors with a stated tolerance: signs from one axis at a time, then
-all at their worst together.
+all at their worst together. Beside the signs that lessen the damping with each wiring stand those that raise the shunt's
+transconductance, for what only swings once it is large; every corner is asked about with every wiring.
 """
 
 from __future__ import annotations
@@ -95,17 +96,20 @@ def find_worst(scope: Scope, opening: Scene) -> tuple[Worst, ...]:
             mine = np.flatnonzero(first.ambient == first.ambient[lane])
             own = _own(s[mine], counting_here)
             signs.append(_signs(first.position[:, mine], margin(own)))
-            owners.append((wiring_H, first.ambient[lane]))
+            owners.append(first.ambient[lane])
             alone.append((wiring_H, mine[[int(np.argmin(damping(own).min(axis=1)))]]))
+    for lane in nominal:
+        mine = np.flatnonzero(first.ambient == first.ambient[lane])
+        signs.append(_signs(first.position[:, mine], -wired.source[:, mine].sum(axis=0)))
+        owners.append(first.ambient[lane])
     if not owners:
         return tuple(found.values())
     inner = opening.run.operating.inner[:, :ambients]
-    together = _solve(scope, np.array(signs).T, np.array([ambient for _, ambient in owners]), inner)
+    together = _solve(scope, np.array(signs).T, np.array(owners), inner)
     last, wired_last = _linear(scope, together)
     for wiring_H in WIRING_H:
-        lanes = np.flatnonzero([owners[lane][0] == wiring_H for lane in last.place])
-        if len(lanes):
-            found[wiring_H] = min(found[wiring_H], _counted(scope, last, wired_last, lanes, wiring_H), key=_damping)
+        every = np.arange(len(last.place))
+        found[wiring_H] = min(found[wiring_H], _counted(scope, last, wired_last, every, wiring_H), key=_damping)
     for wiring_H, lanes in alone:
         # one axis by itself is hardly ever worse than all together; whose mode it is is asked only where it is
         s = wired_frequencies(wired.pick(lanes), wiring_H)
