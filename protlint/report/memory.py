@@ -17,6 +17,9 @@ FROM_MEMORY = "from memory"
 CURRENTS = "currents, and all that follows from them"
 LOOP = "loop and delay"
 OF_THE_LOOP = ("compensation-absent", "loop-undamped", "trips-on-peaks", "trips-late")
+OF_KIND = {"sense-resistor-power": "resistor", "resistor-power": "resistor", "driver-overloaded": "ic"}
+"""What kind of part a check is about, where others stand in the same roles."""
+
 NOT_SOLVED_FOR = {*WITHOUT_SOLUTION, *WIRING_FAULTS, "limiter-absent"}
 """Checks that ask for connections and texts, not for currents."""
 
@@ -29,9 +32,9 @@ def on_memory(limiter: Document) -> dict[str, str]:
     figures: dict[str, Mapping[str, tuple[str, ...]]] = {
         CURRENTS: dict.fromkeys(limiter["roles"], STATIC_FIGURES),
         LOOP: dict.fromkeys(limiter["roles"], DYNAMIC_FIGURES),
-        **{check: _figures()[check] for check in limiter["asked"]},
     }
     found = {what: _named(limiter, known, by_role) for what, by_role in figures.items()}
+    found |= {check: _looked_at(check, limiter, known) for check in limiter["asked"] if _applies(check, limiter)}
     return {what: text for what, text in found.items() if text}
 
 
@@ -43,7 +46,7 @@ def behind(check: str, limiter: Document, parts: Collection[str] | None = None) 
     if check in NOT_SOLVED_FOR or limiter["not_solved"]:
         return ""
     by_check = on_memory(limiter)
-    own = _named(limiter, _known(limiter, parts), _figures().get(check, {}))
+    own = _looked_at(check, limiter, _known(limiter, parts)) if _applies(check, limiter) else ""
     rest = (by_check.get(one, "") for one in (CURRENTS, *([LOOP] if check in OF_THE_LOOP else [])))
     return "; ".join(text for text in (own, *rest) if text)
 
@@ -75,6 +78,19 @@ def in_use() -> frozenset[str]:
 @cache
 def _figures() -> Mapping[str, Mapping[str, tuple[str, ...]]]:
     return {row.name: row.figures for row in load_catalogue().values()}
+
+
+def _applies(check: str, limiter: Document) -> bool:
+    """Tell whether a limiter has what a check of base stops is about."""
+    stops = bool(limiter["roles"]["base_stop"] or limiter["roles"]["preset"])
+    return {"base-stop-absent": not stops, "base-stop-low": stops, "base-stop-high": stops}.get(check, True)
+
+
+def _looked_at(check: str, limiter: Document, known: Mapping[str, Sequence[str]]) -> str:
+    """Name the figures from memory that a check looks at itself."""
+    kind = OF_KIND.get(check)
+    alike = {part["id"] for part in limiter["parts"] if kind in (None, part["kind"])}
+    return _named(limiter, {part: names for part, names in known.items() if part in alike}, _figures().get(check, {}))
 
 
 def _known(limiter: Document, parts: Collection[str] | None = None) -> dict[str, Sequence[str]]:

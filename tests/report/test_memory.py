@@ -87,3 +87,13 @@ def test_the_figures_that_the_catalogue_names_are_figures_of_part_data() -> None
 def test_a_derating_standard_from_memory_is_told_whatever_the_verdicts() -> None:
     remarks = sink().board_of(derating="ECSS-Q-ST-30-11C").review().remarks
     assert any("ECSS-Q-ST-30-11C, from memory" in text for text in remarks)
+
+
+def test_a_check_is_said_to_rest_only_on_parts_it_is_about() -> None:
+    """A base stop that is there cannot be absent, and a diode in the preset is no resistor."""
+    report = on(remembered(sink(), "QSN1", ib="40 mA"))
+    assert on_memory(report["limiters"][0]) == dict.fromkeys(("base-stop-low", "reverse-base-emitter"), "ib of Q2")
+    (limiter,) = on(sink())["limiters"]
+    diode = {**limiter["parts"][0], "id": "D1", "kind": "diode", "from_memory": ["power"]}
+    limiter = {**limiter, "parts": [*limiter["parts"], diode], "roles": {**limiter["roles"], "preset": ["D1"]}}
+    assert on_memory(limiter) == {}
