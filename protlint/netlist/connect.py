@@ -230,8 +230,9 @@ class _Wirer:
     def finish(self) -> Wiring:
         """Unite what is shorted, number the nodes in the order of the file, and return the wiring."""
         for placement in self.placements:
-            for bit in placement.pins.keys() & placement.block.strange if placement.block.strange else ():
-                self._note_strange(placement, bit)
+            if placement.block.known is not None:
+                for bit in sorted(placement.pins.keys() - placement.block.known):
+                    self._note_strange(placement, bit)
             self.budget.spend(len(placement.block.globals), placement.instance.offset)
             for bit, ref in placement.block.globals.items():
                 placement.pins[bit] = (self.own[self._lead_out(bit, ref)], ref.offset)
@@ -248,7 +249,8 @@ class _Wirer:
             together.setdefault(node, []).append(bit)
         for bits in together.values():
             self.block.shorts.add(bits)
-        self.block.strange = self.block.strange.difference(ports)
+        if self.block.known is not None:
+            self.block.known.update(ports)
         for placement in self.placements:
             for bit, (node, offset) in placement.pins.items():
                 placement.pins[bit] = (number[node], offset)

@@ -37,6 +37,8 @@ from protlint.sources import InputError
 
 ARRAY_LIMIT = 65_536
 """Most elements of one array; real buses stay below 1,024."""
+NAME_LIMIT = 1_000
+"""Most characters of an array's name or designator, which every element repeats."""
 DIMENSIONS_LIMIT = 4
 """Most dimensions of an array."""
 
@@ -184,7 +186,10 @@ class _Reader(FormParser):
             raise form.error(f"({form.head} ...) has no name")
         if _IDENTIFIER.fullmatch(item) is None:
             self.notes.add("identifier", form.offset, repr(item))
-        return Name(item, text or item.removeprefix("&"), dimensions)
+        name = Name(item, text or item.removeprefix("&"), dimensions)
+        if dimensions and len(name.text) > NAME_LIMIT:
+            raise form.error(f"an array's name of more than {NAME_LIMIT} characters, the most that is read")
+        return name
 
     def _dimensions(self, form: Form) -> tuple[int, ...]:
         sizes = [integer(item) for item in form[2:] if not isinstance(item, Form)]
@@ -219,10 +224,13 @@ class _Reader(FormParser):
 
     def _instance(self, form: Form) -> Instance:
         found = by_head(form)
+        name, designated = self._name(form), designators(found.get("designator", ()))
+        if name.dimensions and any(len(text) > NAME_LIMIT and len(text.split()) != name.width for text in designated):
+            raise form.error(f"an array's designator of more than {NAME_LIMIT} characters, the most that is read")
         return Instance(
-            name=self._name(form),
+            name=name,
             views=view_refs(found),
-            designators=designators(found.get("designator", ())),
+            designators=designated,
             properties=self._properties(found, "instance"),
             ports=tuple(map(self._port_instance, found.get("portinstance", ()))),
             offset=form.offset,

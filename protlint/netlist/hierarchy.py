@@ -35,9 +35,9 @@ class Block:
     """A cell as instances see it: its ports, its contents where it has any, and which of its bits are one node.
 
     A block without contents is a leaf. ``shorts`` tells which of its bits are one; what the contents short is added when
-    they are wired, and so are the ``globals`` that reach out of it, by bit. ``strange`` holds the bits of ports that other
-    views of the cell have and the contents know nothing of. ``children`` holds, sheet by sheet, the block that each instance
-    places, ``levels`` how deep they go.
+    they are wired, and so are the ``globals`` that reach out of it, by bit. ``known`` holds, where a cell has several views,
+    the bits of ports that the one with the contents declares, and those it uses once it is wired. ``children`` holds, sheet
+    by sheet, the block that each instance places, ``levels`` how deep they go.
     """
 
     def __init__(self, cell: Cell, library: Library, view: View | None, ports: Ports, budget: Budget, *, leaf: bool) -> None:
@@ -49,10 +49,9 @@ class Block:
         self.children: list[list[Block]] = []
         self.levels = 0
         self.globals: dict[int, GlobalRef] = {}
-        self.strange: frozenset[int] = frozenset()
+        self.known: set[int] | None = None
         if self.contents is not None and view is not None and len(cell.views) > 1:
-            known = (ports.find(port.name.identifier) or () for port in view.ports)
-            self.strange = frozenset(range(ports.width)).difference(*known)
+            self.known = {bit for port in view.ports for bit in ports.find(port.name.identifier) or ()}
         self.shorts = Shorts()
         for joined in view.shorts if view is not None else ():
             bits = [[self.ports.find(ref.port, ref.member, ref.bundle) or () for ref in item.refs] for item in joined]

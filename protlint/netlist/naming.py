@@ -14,6 +14,7 @@ import re
 from collections import Counter
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import NamedTuple
 
 from protlint.netlist.connect import Placement, Wiring
@@ -74,7 +75,7 @@ def _label(placement: Placement, notes: Notes, *, designated: bool) -> Label | N
         return None
     instance = placement.instance
     section, package = section_and_package(instance, notes)
-    each = (package or "").split()
+    each = _split((package or "",))
     if placement.element is not None and len(each) == instance.name.width and section is None:
         package = name = each[placement.element]  # one designator for each element of an array
     else:
@@ -187,7 +188,7 @@ def _called(text: str, number: str | None, named: str | None) -> tuple[str, str 
     return (named or text, number or text) if text.isdecimal() else (text, number)
 
 
-def _number(numbers: Sequence[str], facts: _PortFacts, position: int | None, *, sectioned: bool) -> str | None:
+def _number(numbers: tuple[str, ...], facts: _PortFacts, position: int | None, *, sectioned: bool) -> str | None:
     """Return the pin number out of those listed: one an element of an array, or one a section of a package."""
     if len(numbers) < 2:
         return numbers[0] if numbers else None
@@ -195,10 +196,17 @@ def _number(numbers: Sequence[str], facts: _PortFacts, position: int | None, *, 
         return numbers[facts.element]
     if position is not None and position < len(numbers):
         return numbers[position]
-    return None if sectioned else " ".join(numbers)
+    return None if sectioned or facts.width > 1 else _together(numbers)
 
 
-def _split(designators: Sequence[str]) -> tuple[str, ...]:
+@lru_cache(maxsize=64)
+def _together(numbers: tuple[str, ...]) -> str:
+    return " ".join(numbers)
+
+
+@lru_cache(maxsize=64)
+def _split(designators: tuple[str, ...]) -> tuple[str, ...]:
+    """Return the texts of a blank-separated list, the same object for all elements of an array, which all ask for it."""
     return tuple(" ".join(designators).split())
 
 

@@ -52,7 +52,7 @@ class Ports:
         self.plain: dict[str, int] = {}
         """The bits of ports that are no arrays, by identifier as declared: most references need no more."""
         self._scope: Scope[Slot] = Scope()
-        self._namesakes: dict[str, list[Slot]] = {}
+        self._namesakes: dict[str, dict[str, Slot]] = {}
         self._by_text: dict[tuple[str, tuple[int, ...]], Slot] = {}
         self._slots: list[Slot] = []
         self._starts: list[int] = []
@@ -73,7 +73,7 @@ class Ports:
         slot.stop = self.width
         identifier = port.name.identifier
         if scope.add(identifier, slot) == "duplicate":
-            self._namesakes.setdefault(identifier, []).append(slot)
+            self._namesakes.setdefault(identifier, {}).setdefault(slot.text, slot)
             self.plain.pop(identifier, None)
         elif scope is self._scope and not port.ports and not port.name.dimensions:
             self.plain[identifier] = slot.start
@@ -91,7 +91,7 @@ class Ports:
             slot = self._by_text[name[1:]] = Slot(name, self.width, None)
             self._fill(slot, name.width)
         if self._scope.add(name.identifier, slot) == "duplicate" and self._scope.find(name.identifier) is not slot:
-            self._namesakes.setdefault(name.identifier, []).append(slot)
+            self._namesakes.setdefault(name.identifier, {}).setdefault(slot.text, slot)
 
     def undeclared(self, port: str, member: tuple[int, ...]) -> range:
         """Add the port, or the one element, that a reference means and no interface declares; return its bit."""
@@ -119,8 +119,9 @@ class Ports:
         slot = scope.find(port)
         if slot is None:
             return None
-        alike = self._namesakes.get(port, ()) if text is not None and slot.text != text else ()
-        return next((each for each in alike if each.text == text), slot).bits(member)
+        if text is not None and slot.text != text and port in self._namesakes:
+            slot = self._namesakes[port].get(text, slot)
+        return slot.bits(member)
 
     def slot(self, bit: int) -> tuple[Slot, int]:
         """Return the port that a bit belongs to and its element."""

@@ -278,6 +278,11 @@ LIMITS = {
     "whole arrays joined over and over": (placed("(array R 60000)", "R") + net("X", *["R.A"] * 40), f"{ELEMENTS_LIMIT} el"),
     "arrays of nets": ("".join(net(f"(array N{number} 60000)") for number in range(40)), f"{ELEMENTS_LIMIT} elements"),
     "an array past its own limit": (net(f"(array N {ARRAY_LIMIT + 1})"), f"more than {ARRAY_LIMIT} elements"),
+    "an array with a long name": (net(f'(array (rename N "{"n" * 1001}") 60000)'), "name of more than 1000 characters"),
+    "an array with a long designator": (
+        placed("(array R 60000)", "R", f'(designator "{"R " * 700}")'),
+        "designator of more than 1000 characters",
+    ),
     "an array of too many dimensions": (net("(array N 2 2 2 2 2)"), "4 dimensions"),
     "an array of more than any memory holds": (placed(f"(array R {2 * 10**9})", "R"), f"more than {ARRAY_LIMIT} elements"),
 }
@@ -291,6 +296,22 @@ def test_what_is_too_large_is_refused_in_bounded_time(name: str) -> None:
         read(board(contents))
     assert caught.value.line == 4
     assert time.perf_counter() - started < 60  # a bound on hanging, no measure of speed
+
+
+def test_long_lists_of_pin_numbers_and_designators_for_arrays() -> None:
+    """One list each, not one copy for every element: 65,536 copies of 400 kB are more than any memory holds."""
+    listed = " ".join(map(str, range(ARRAY_LIMIT)))
+    cells = RES + cell("IC", interface=f'(port (array D {ARRAY_LIMIT}) (designator "{listed}"))')
+    cells += cell("PLAIN", interface=f"(port (array D {ARRAY_LIMIT}))")
+    contents = placed("U1", "IC") + placed("U2", "PLAIN", f'(portInstance D (designator "{listed}"))')
+    contents += placed("U3", "PLAIN", '(portInstance D (designator "1 2 3"))')
+    contents += placed(f"(array ROW {ARRAY_LIMIT})", "R", f'(designator "{listed}")')
+    contents += net(f"(array N {ARRAY_LIMIT})", "U1.D", "U2.D", "U3.D")
+    netlist = read(board(contents, cells=cells))
+    first, second, third = netlist.parts[:3]
+    assert first.pins[40_000].number == second.pins[40_000].number == "40000"
+    assert third.pins[2].number is None
+    assert netlist.parts[-1].designator == str(ARRAY_LIMIT - 1)
 
 
 def test_globals_that_every_one_of_many_cells_leads_out() -> None:
