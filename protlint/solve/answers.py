@@ -223,6 +223,10 @@ def _not_checked(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...
             found.append(("limited_by", f"no operating point was found without the shunt at {ambient:g} degC"))
         if circuit.output_V is not None and not np.isfinite(nominal.carries_A[place]):
             found.append(("carries", f"no operating point was found at the working output voltage at {ambient:g} degC"))
+        lost_V = [output_V for owner, output_V in nominal.loci.lost if owner == place]
+        if lost_V:
+            between = f"from {min(lost_V):.3g} V to {max(lost_V):.3g} V" if len(lost_V) > 1 else f"at {lost_V[0]:.3g} V"
+            found.append(("most", f"no operating point was found with the output {between}, at {ambient:g} degC"))
     if circuit.output_V is None and circuit.ground_leg:
         found.append(("carries", "output"))
     elif circuit.output_V is None and not np.isfinite(nominal.carry_V).any():

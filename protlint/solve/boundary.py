@@ -210,8 +210,10 @@ def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive 
         node = place.node_of[around.fed_by] + FEED
         notes.words[node] = f"feed from {board.nets[around.fed_by].name}: {supply.voltage_V.usual:g} V"
         if place.limiter.polarity == "n":
-            return Drive(node=node, low_V=lowest, high_V=supply.voltage_V), around.fed_by
-        return Drive(node=node, low_V=supply.voltage_V, high_V=highest), around.fed_by
+            return Drive(
+                node=node, low_V=lowest, high_V=supply.voltage_V, high_is=place.node_of[around.fed_by]
+            ), around.fed_by
+        return Drive(node=node, low_V=supply.voltage_V, high_V=highest, low_is=place.node_of[around.fed_by]), around.fed_by
     feed = place.limiter.nets["feed"]
     net = place.limiter.nets["drive"] if feed is None else feed
     name = "?" if net is None else board.nets[net].name

@@ -46,7 +46,8 @@ class Device:
 class Drive:
     """What drives the limiter's stage: the node it holds and its two stated ends.
 
-    Which end turns the pass device on hardest is found by solving. ``current_A`` None means stiff.
+    Which end turns the pass device on hardest is found by solving. ``current_A`` None means stiff. ``low_is`` and
+    ``high_is`` name the held net that an end is one with, a supply that feeds the drive: the two then vary together.
     """
 
     node: str
@@ -55,6 +56,8 @@ class Drive:
     resistance_ohm: float = 0.0
     current_A: float | None = None
     assumed: bool = False
+    low_is: str | None = None
+    high_is: str | None = None
 
 
 @dataclass(frozen=True, slots=True)

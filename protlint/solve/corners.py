@@ -2,8 +2,8 @@
 
 An *axis* is one thing with a stated spread: a resistor's value within its tolerance, a bipolar's V_BE (I_S exp(-dV/(NF V_T))
 at the solved temperature) or B_F within its bounds (the bound itself at every temperature), a diode's forward voltage, a
-MOSFET's threshold, a supply, either end of the drive. A *corner* is an array (axes, lanes) of positions from -1, the low
-end, over 0, nominal, to +1, the high end.
+MOSFET's threshold, a supply, either end of the drive (one that is a supply itself moves with it). A *corner* is an array
+(axes, lanes) of positions from -1, the low end, over 0, nominal, to +1, the high end.
 """
 
 from __future__ import annotations
@@ -47,8 +47,9 @@ def axes_of(network: Network) -> tuple[Axis, ...]:
     circuit = network.circuit
     for index, node in enumerate(network.held):
         found += _range_axes(node, "V", "held", index, circuit.held[node])
-    found += _range_axes(circuit.drive.node, "low_V", "drive", 0, circuit.drive.low_V)
-    found += _range_axes(circuit.drive.node, "high_V", "drive", 1, circuit.drive.high_V)
+    for row, name in enumerate(DRIVE_ENDS):
+        if row not in _followed(network):
+            found += _range_axes(circuit.drive.node, name, "drive", row, _drive_end(circuit, row))
     return tuple(found)
 
 
@@ -69,7 +70,11 @@ def small_steps(network: Network, ambient_K: float, share: float = 0.005, vbe_V:
             found.append(replace(axis, low=-vbe_V, high=vbe_V))
     circuit = network.circuit
     ends = [(node, "V", "held", index, circuit.held[node]) for index, node in enumerate(network.held)]
-    ends += [(circuit.drive.node, name, "drive", row, _drive_end(circuit, row)) for row, name in enumerate(DRIVE_ENDS)]
+    ends += [
+        (circuit.drive.node, name, "drive", row, _drive_end(circuit, row))
+        for row, name in enumerate(DRIVE_ENDS)
+        if row not in _followed(network)
+    ]
     for node, name, place, index, usual_range in ends:
         if usual_range.usual:
             step = abs(usual_range.usual) * share
@@ -115,6 +120,8 @@ def held_voltages(network: Network, axes: Sequence[Axis], corner: Array) -> tupl
             held[axis.index] = _between(axis, position, circuit.held[axis.device].usual)
         elif axis.place == "drive":
             ends[axis.index] = _between(axis, position, _drive_end(circuit, axis.index).usual)
+    for row, place in _followed(network).items():
+        ends[row] = held[place]
     return held, ends
 
 
@@ -211,6 +218,12 @@ def _device_axes(network: Network) -> list[Axis]:
                 low, high = device.hfe if device.hfe is not None else (0.0, 0.0)
                 found.append(Axis(device.name, "B_F", "bf", index, low, high))
     return found
+
+
+def _followed(network: Network) -> dict[int, int]:
+    """Return which ends of the drive (0 low, 1 high) are one with a held net, and its place among those."""
+    drive, places = network.circuit.drive, {node: place for place, node in enumerate(network.held)}
+    return {row: places[node] for row, node in enumerate((drive.low_is, drive.high_is)) if node in places}
 
 
 def _range_axes(node: str, parameter: str, place: str, index: int, limits: Range) -> list[Axis]:

@@ -93,8 +93,9 @@ def _changed(row: Currents, tripping: Tripping, ends: Array, begins: int, carrie
     if not tripping.trips[begins] or trips_A is None or row.holds_A is None or row.holds_A > _TRIPPED_SHARE * trips_A:
         return replace(row, begins_A=None, begins_range_A=None)
     most_A, most_range = max(figure(most) or 0.0, row.holds_A), pair(most)
-    if most_range is not None and row.holds_range_A is not None:
-        most_range = (max(most_range[0], row.holds_range_A[0]), max(most_range[1], row.holds_range_A[1]))
+    for other in (row.holds_range_A, pair(carries) if carries is not None else None):
+        if most_range is not None and other is not None:
+            most_range = (max(most_range[0], other[0]), max(most_range[1], other[1]))
     changed = replace(row, begins_A=trips_A, begins_range_A=pair(begins), most_A=most_A, most_range_A=most_range)
     if carries is None:
         return changed

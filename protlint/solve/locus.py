@@ -38,13 +38,15 @@ class Conditions:
 
 @dataclass(frozen=True, slots=True)
 class Loci:
-    """The points of all loci: whose condition each is, output voltage and current, least pass voltage, inner voltages."""
+    """The points of all loci: whose condition each is, output voltage and current, least pass voltage, inner voltages; and
+    (condition, output voltage) of the points that were not solved and are not among them."""
 
     owner: IntArray
     output_V: Array
     output_A: Array
     pass_V: Array
     inner: Array
+    lost: tuple[tuple[int, float], ...] = ()
 
     def of(self, condition: int) -> IntArray:
         """Return the indices of one condition's points, from the short outwards."""
@@ -148,6 +150,7 @@ def _merged(first: Loci, second: Loci, order: IntArray) -> Loci:
         np.concatenate((first.output_A, second.output_A))[order],
         np.concatenate((first.pass_V, second.pass_V))[order],
         np.concatenate((first.inner, second.inner), axis=1)[:, order],
+        first.lost,
     )
 
 
@@ -176,12 +179,16 @@ def _scale(loci: Loci) -> Array:
 
 
 def _until_run_out(loci: Loci) -> Loci:
-    """Drop what lies beyond the first point with (almost) no current left, and points that were not solved."""
+    """Drop what lies beyond the first point with (almost) no current left, and points that were not solved, noting these."""
     scale = _scale(loci)
-    keep = np.isfinite(loci.output_A)
+    solved = np.isfinite(loci.output_A)
+    keep, wanted = solved.copy(), np.ones(len(solved), dtype=bool)
     for condition in range(len(scale)):
         mine = np.flatnonzero((loci.owner == condition) & keep)
         spent = np.flatnonzero(loci.output_A[mine] <= RUN_OUT_SHARE * scale[condition])
         if len(spent):
             keep[mine[spent[0] + 1 :]] = False
-    return Loci(loci.owner[keep], loci.output_V[keep], loci.output_A[keep], loci.pass_V[keep], loci.inner[:, keep])
+            wanted[(loci.owner == condition) & (np.arange(len(wanted)) > mine[spent[0]])] = False
+    missed = np.flatnonzero(wanted & ~solved)
+    lost = tuple(zip(loci.owner[missed].tolist(), loci.output_V[missed].tolist(), strict=True))
+    return Loci(loci.owner[keep], loci.output_V[keep], loci.output_A[keep], loci.pass_V[keep], loci.inner[:, keep], lost)
