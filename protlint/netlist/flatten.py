@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import sys
+from collections import ChainMap
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
@@ -15,6 +16,8 @@ from protlint.netlist.notes import Notes
 
 SIZE_LIMIT = 4_000_000
 """Most parts, nets and pins together of a flattened design: a short file can describe more than any memory holds."""
+COPIED_PROPERTIES = 100
+"""Most properties of a cell that each of its parts gets a copy of; real cells have twenty."""
 NAMES_LIMIT = 500_000_000
 """Most characters of the names of its parts and nets, which grow with every level of hierarchy."""
 
@@ -80,7 +83,7 @@ def _unfolded(wiring: Wiring, edif: Edif, notes: Notes, *, designated: bool) -> 
                 of_view = () if block.view is None else block.view.properties
                 inherited[id(block)] = _by_name(block.cell.properties, notes) | _by_name(of_view, notes)
             own = _by_name(instance.properties, notes)
-            properties = inherited[id(block)] | own if inherited[id(block)] and own else own or inherited[id(block)]
+            properties = _inheriting(own, inherited[id(block)])
             line, column = edif.places.at(instance.offset)
             cell, library = block.cell.name.text, block.library.name.text
             items.append(Part(label.id, label.designator, cell, library, properties, pins, line, column))
@@ -99,6 +102,13 @@ def _unfolded(wiring: Wiring, edif: Edif, notes: Notes, *, designated: bool) -> 
         packages=[len(members) for members in named.packages],
         shorted=sum(placement.block.is_part and bool(placement.block.shorts) for placement in wiring.placements),
     )
+
+
+def _inheriting(own: dict[str, Property], inherited: dict[str, Property]) -> Mapping[str, Property]:
+    """Return a part's properties, its own before its cell's: copied, unless many copies of many would outgrow the file."""
+    if not own or not inherited:
+        return own or inherited
+    return inherited | own if len(inherited) <= COPIED_PROPERTIES else ChainMap(own, inherited)
 
 
 def _by_name(properties: Iterable[Property], notes: Notes) -> dict[str, Property]:

@@ -15,7 +15,7 @@ import protlint
 import protlint.netlist
 from protlint.netlist import read_netlist, read_netlist_bytes
 from protlint.netlist.edif import ARRAY_LIMIT
-from protlint.netlist.flatten import NAMES_LIMIT, SIZE_LIMIT
+from protlint.netlist.flatten import COPIED_PROPERTIES, NAMES_LIMIT, SIZE_LIMIT
 from protlint.netlist.hierarchy import DEPTH_LIMIT
 from protlint.netlist.model import Netlist
 from protlint.netlist.ports import ELEMENTS_LIMIT
@@ -312,6 +312,19 @@ def test_long_lists_of_pin_numbers_and_designators_for_arrays() -> None:
     assert first.pins[40_000].number == second.pins[40_000].number == "40000"
     assert third.pins[2].number is None
     assert netlist.parts[-1].designator == str(ARRAY_LIMIT - 1)
+
+
+def test_parts_share_the_many_properties_of_a_cell() -> None:
+    many = "".join(f'(property P{number} (string "{number}"))' for number in range(COPIED_PROPERTIES + 1))
+    listed = cell("C", interface="(port A)").replace("(view", f"{many} (view")
+    contents = "".join(
+        placed(f"U{number}", "C", '(property p1 (string "own")) (property X (string "x"))') for number in (1, 2)
+    )
+    one, other = read(board(contents, cells=listed)).parts
+    assert len(one.properties) == COPIED_PROPERTIES + 2
+    assert [one.properties[name].value for name in ("p0", "p1", "x")] == ["0", "own", "x"]
+    assert one.properties["p0"] is other.properties["p0"]
+    assert list(one.properties)[:2] == ["p0", "p1"]
 
 
 def test_globals_that_every_one_of_many_cells_leads_out() -> None:
