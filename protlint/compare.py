@@ -32,22 +32,22 @@ NO_BOARD: Report = {"netlist": None, "limiters": [], "findings": [], "remarks": 
 
 
 def compare_together(before: Report, after: Report) -> dict[str, Any]:
-    """Return what changed from one side to the other, where a side may be a report of several netlists.
+    """Return what changed from one report of several netlists to another.
 
     A board that is on one side only has all its limiters and findings added and new, or removed and gone. One that could
     not be reviewed on either side is not compared.
 
     Raises
     ------
-    KeyError, TypeError, IndexError, AttributeError : one of them is not a report.
+    KeyError, TypeError, IndexError, AttributeError : one of them is not a report of several netlists.
     """
     compared, not_compared = [], []
-    for pair in matched_boards(*([*side.get("boards", [side]), *side.get("unread", [])] for side in (before, after))):
+    for pair in matched_boards(*([*side["boards"], *side["unread"]] for side in (before, after))):
         unread = [one for one in pair if one is not None and "netlist" not in one]
-        not_compared += [dict(one) for one in unread]
+        not_compared += [dict(one) for one in unread if one not in not_compared]
         if not unread:
             compared.append(compare(*(NO_BOARD if one is None else one for one in pair)))
-    return {"compare": 1, "boards": compared, "not_compared": not_compared}
+    return {"compare": 1, "boards": compared, "not_compared": not_compared, "remarks": _remarks(before, after)}
 
 
 def matched_boards(before: Sequence[Report], after: Sequence[Report]) -> list[tuple[Report | None, Report | None]]:
@@ -121,10 +121,15 @@ def compare(before: Report, after: Report) -> dict[str, Any]:
             "unchanged": sum(not (change["parts"] or change["figures"] or change["words"]) for change in changes),
         },
         "findings": _findings(before, after, pairs),
-        "remarks": {
-            "new": [text for text in after["remarks"] if text not in before["remarks"]],
-            "gone": [text for text in before["remarks"] if text not in after["remarks"]],
-        },
+        "remarks": _remarks(before, after),
+    }
+
+
+def _remarks(before: Report, after: Report) -> dict[str, list[str]]:
+    """Return the remarks that only one side makes."""
+    return {
+        "new": [text for text in after["remarks"] if text not in before["remarks"]],
+        "gone": [text for text in before["remarks"] if text not in after["remarks"]],
     }
 
 

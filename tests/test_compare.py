@@ -201,11 +201,26 @@ def test_boards_added_removed_and_unread_are_told_and_the_gate_is_over_all() -> 
     assert max(width(line) for line in text.splitlines()) <= COLUMNS
 
 
+def test_boards_without_limiters_that_came_or_went_are_named_only() -> None:
+    bare = {**report({**PLAIN, "name": "bare.edf"}), "limiters": [], "findings": []}
+    side = together("a.edf", "b.edf")
+    more = combined([*side["boards"], bare])
+    text = rendered_comparison(comparison_document(compare_together(side, more)))
+    assert "3 boards together: 1 added, 2 unchanged; " in text
+    assert "\nAdded, without a limiter: bare.edf\n" in text
+    back = rendered_comparison(comparison_document(compare_together(more, side)))
+    assert "3 boards together: 1 removed, 2 unchanged; " in back
+    assert "\nRemoved, without a limiter: bare.edf\n" in back
+
+
 def test_boards_that_did_not_change_are_named_only() -> None:
     side = together("a.edf", "b.edf")
-    comparison = comparison_document(compare_together(side, report({**PLAIN, "name": "a.edf"})))
+    comparison = comparison_document(compare_together(side, combined([report({**PLAIN, "name": "a.edf"})])))
     assert "\nUnchanged: a.edf\n" in rendered_comparison(comparison)
     assert held_back_by(comparison, "new:note") == []
+    noted = {**side, "remarks": ["limits.toml: [limiter.Q99] fits no limiter on this board"]}
+    text = rendered_comparison(comparison_document(compare_together(side, noted)))
+    assert "\nRemarks that are new\n  - limits.toml: [limiter.Q99] fits no limiter" in text
     same = comparison_document(compare_together(side, side))
     assert "\nUnchanged: a.edf, b.edf\n" in rendered_comparison(same)
 

@@ -55,11 +55,14 @@ def compare(before: str, after: str, save: str | None, gate: str, **reading: Any
         rendered_comparison,
         rendered_comparison_json,
     )
+    from protlint.report.shape import combined
 
     how = {name: reading.pop(name) for name in ("design", "encoding")}
     reports = [_report(path, reading, how) for path in (before, after)]
     several = any("boards" in report for report in reports)
     try:
+        if several:
+            reports = [report if "boards" in report else combined([report]) for report in reports]
         comparison = comparison_document((comparing.compare_together if several else comparing.compare)(*reports))
         text = rendered_comparison(comparison, colour=colour_wanted())
         unread = errors_of(comparison.get("not_compared", []))

@@ -42,29 +42,37 @@ def rendered_comparison(comparison: Document, *, colour: bool = False) -> str:
 def _together(comparison: Document, colour: bool) -> list[str]:
     """Tell of every board that changed, came or went; name the others."""
     boards = comparison["boards"]
-    changed = [board for board in boards if not _unchanged(board)]
+    changed = [board for board in boards if _happened(board)]
     came, went = (sum(board[side] is None for board in boards) for side in ("before", "after"))
-    same = [board["after"]["file"] for board in boards if _unchanged(board)]
-    counts = {"added": came, "removed": went, "changed": len(changed) - came - went, "unchanged": len(same)}
+    still = [board for board in boards if not _happened(board)]
+    same = [board["after"]["file"] for board in still if None not in (board["before"], board["after"])]
+    counts = {"added": came, "removed": went, "changed": len(boards) - came - went - len(same), "unchanged": len(same)}
     said = ", ".join(f"{count} {word}" for word, count in counts.items() if count)
     title = f"{counted(len(boards), 'board')} together: {said or 'none compared'}; {_counts(boards)}"
     lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
     for board in changed:
         lines += ["", *_board(board, colour)]
-    if same:
-        lines += ["", *wrapped(f"Unchanged: {', '.join(same)}", indent=2, first="")]
-    if comparison["not_compared"]:
-        items = [f"{place_of(error)}: {error['message']}" for error in comparison["not_compared"]]
-        lines += ["", painted("Not compared", "heading", colour=colour)]
-        lines += [line for item in items for line in wrapped(item, indent=4, first="  - ")]
-    return lines
+    added = [board["after"]["file"] for board in still if board["before"] is None]
+    removed = [board["before"]["file"] for board in still if board["after"] is None]
+    listed = {"Unchanged": same, "Added, without a limiter": added, "Removed, without a limiter": removed}
+    for what, files in listed.items():
+        lines += ["", *wrapped(f"{what}: {', '.join(files)}", indent=2, first="")] if files else []
+    errors = [f"{place_of(error)}: {error['message']}" for error in comparison["not_compared"]]
+    lines += _listed("Remarks that are new", comparison["remarks"]["new"], colour)
+    return lines + _listed("Not compared", errors, colour)
 
 
-def _unchanged(board: Document) -> bool:
+def _listed(title: str, texts: Sequence[str], colour: bool) -> list[str]:
+    """Return texts as items under a title, or nothing for none."""
+    items = [line for text in texts for line in wrapped(text, indent=4, first="  - ")]
+    return ["", painted(title, "heading", colour=colour), *items] if items else []
+
+
+def _happened(board: Document) -> bool:
+    """Tell whether there is more to say of a board than that it is there, or there no more."""
     kinds = (board["limiters"][word] for word in ("added", "removed", "changed"))
-    return None not in (board["before"], board["after"]) and not any(
-        (*kinds, *(board["findings"][word] for word in CHANGES))
-    )
+    new = board["remarks"]["new"] if board["before"] is not None else []
+    return any((*kinds, *(board["findings"][word] for word in CHANGES), new))
 
 
 def _board(comparison: Document, colour: bool) -> list[str]:
@@ -86,10 +94,7 @@ def _board(comparison: Document, colour: bool) -> list[str]:
         lines += ["", *_limiter(change, colour)]
     for word in CHANGES:
         lines += _findings(word, findings[word], colour)
-    if before is not None and comparison["remarks"]["new"]:
-        lines += ["", painted("Remarks that are new", "heading", colour=colour)]
-        lines += [line for text in comparison["remarks"]["new"] for line in wrapped(text, indent=4, first="  - ")]
-    return lines
+    return lines + _listed("Remarks that are new", comparison["remarks"]["new"] if before is not None else [], colour)
 
 
 def _counts(boards: Sequence[Document]) -> str:
