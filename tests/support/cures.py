@@ -76,10 +76,10 @@ def rating(part: str, name: str, unit: str, weaker: Callable[[float], float] = d
     }
 
 
-def with_rating(job: Job, text: str) -> Job:
+def with_rating(job: Job, text: str, name: str = "R2") -> Job:
     """Fit a sense resistance with the rating that the remedy gives it."""
-    fitted = resistor(job, "R2", figure(text, "ohm"))
-    return powered(fitted, "R2", figure(text, "W")) if " W" in text else fitted
+    fitted = resistor(job, name, figure(text, "ohm"))
+    return powered(fitted, name, figure(text, "W")) if "rated" in text else fitted
 
 
 def cures() -> Iterator[Cure]:
@@ -220,5 +220,19 @@ def cures() -> Iterator[Cure]:
         assert said
         return Job(job.board, job.tables, listed=f"Designator,Value\nR2,{said[1]}\n")
 
+    high = source().stated(carry="0.35 A", cap=None, sink="1 K/W")
+    yield Cure(
+        "carry-not-met", "P type", high, lambda job, text: with_rating(job, text, "R21"),
+        lambda job, text: resistor(job, "R21", up(figure(text, "ohm"))),
+    )  # fmt: skip
+    yield Cure("cap-exceeded", "P type", source().stated(cap="0.28 A", carry=None), **ohms("R21", down))
+    yield Cure(
+        "sense-resistor-power", "P type", source().drawn(("+15V SNS POWER:1W", "+15V SNS POWER:0.125W")), **watts("R21")
+    )
+    yield Cure("base-stop-low", "P type", source().rated("QSP1", ib="16 mA"), **ohms("R22", down))
+    yield Cure(
+        "pass-overheated", "P type", source().stated(sink="40 K/W"), lambda job, text: cooled(job, figure(text, "K/W")),
+        lambda job, text: cooled(job, up(figure(text, "K/W"))),
+    )  # fmt: skip
     listed = Job(sink().board, sink().tables, listed="Designator,Value\nR2,2R7\n")
     yield Cure("part-data-contradicts", "parts list", listed, agreed)
