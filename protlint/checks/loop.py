@@ -8,7 +8,7 @@ from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.let_through import too_much
 from protlint.findings import Level, NotChecked, WorkingLine
 from protlint.quantities import format_quantity, format_ratio
-from protlint.solve.advice import AIM, DRIVE_FAR, GREATEST_F, LEAST_F, advise
+from protlint.solve.advice import AIM, DRIVE_FAR, GREATEST_F, LEAST_F, advise, elsewhere
 from protlint.solve.solution import Advice, Fit, Loop, Step
 
 DAMPING = "damping ratio -Re(s) / |s| of the generalised eigenvalues of G + sC"
@@ -180,10 +180,20 @@ def _costing_parts(case: Case, advice: Advice | None) -> tuple[str, ...]:
 
 
 def _fit(case: Case, advice: Advice | None) -> Fit | None:
-    """Return the first way to calm the loop that does not make the limiter act too late, else the first."""
+    """Return the first way to calm the loop that does not make the limiter act too late, another place's if need be, else
+    the first."""
     fits = advice.fits if advice is not None else ()
-    quick = (fit for fit in fits if fit.step is None or not too_much(case, fit.step))
-    return next(quick, fits[0] if fits else None)
+    if not fits:
+        return None
+    quick = next((fit for fit in fits if not _too_late(case, fit)), None)
+    if quick is None and fits[0].instead_of is None:
+        others = elsewhere(case.circuit, case.limits.ambient_degC, fits[0].place, short=case.solution.short)
+        quick = next((fit for fit in others if not _too_late(case, fit)), None)
+    return quick if quick is not None else fits[0]
+
+
+def _too_late(case: Case, fit: Fit) -> bool:
+    return fit.step is not None and too_much(case, fit.step)
 
 
 def _remedy(case: Case, advice: Advice | None, fit: Fit | None) -> str | None:
@@ -199,7 +209,8 @@ def _remedy(case: Case, advice: Advice | None, fit: Fit | None) -> str | None:
     if fit.farad is not None:
         todo.append(f"fit {format_quantity(fit.farad, 'F')} {_place(case, fit)} ({fit.nodes[0]} to {fit.nodes[1]})")
     then = f"damping {format_ratio(fit.own_damping)}, {format_ratio(fit.worst_damping)} at worst"
-    return f"{' and '.join(todo)}: {then}{_change(advice.step, fit.step)}"
+    late = f"; that is too long for what {', '.join(case.parts('pass'))} may take meanwhile" if _too_late(case, fit) else ""
+    return f"{' and '.join(todo)}: {then}{_change(advice.step, fit.step)}{late}"
 
 
 def _place(case: Case, fit: Fit) -> str:

@@ -70,6 +70,16 @@ def advise(
     return Advice(*now, enough, effects, costs, tuple(fits), step)
 
 
+def elsewhere(
+    circuit: Circuit, ambients_degC: tuple[float, float, float], place: str, *, short: str | None = None
+) -> Iterator[Fit]:
+    """Yield, for each of the other usual places, the smallest capacitor there that reaches the aim, with the step then."""
+    for other in places(circuit):
+        found = _smallest(circuit, ambients_degC, short, None, only=other) if other != place else None
+        if found is not None:
+            yield replace(found, step=_step(fitted(circuit, found), ambients_degC, short))
+
+
 def _instead(
     circuit: Circuit, ambients_degC: tuple[float, float, float], short: str | None, dearest: Effect
 ) -> Iterator[Fit]:
@@ -138,11 +148,16 @@ def base_stop(circuit: Circuit) -> Device | None:
 
 
 def _smallest(
-    circuit: Circuit, ambients_degC: tuple[float, float, float], short: str | None, instead_of: str | None
+    circuit: Circuit,
+    ambients_degC: tuple[float, float, float],
+    short: str | None,
+    instead_of: str | None,
+    *,
+    only: str | None = None,
 ) -> Fit | None:
-    """Return the smallest capacitor that reaches the aim, the usual places in turn for each value."""
+    """Return the smallest capacitor that reaches the aim, the usual places (or the ``only`` one) in turn for each value."""
     try:
-        bench = _bench(circuit, ambients_degC, short)
+        bench = [trial for trial in _bench(circuit, ambients_degC, short) if only in (None, trial.place)]
     except CircuitError:
         return None
     for farad in within(LEAST_F, GREATEST_F, SERIES):
