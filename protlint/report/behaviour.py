@@ -101,12 +101,14 @@ def _loop(limiter: Document) -> Iterator[str]:
     own = loop["own_damping"] if loop["own_damping"] is not None else loop["least_damping"]
     if own is not None:
         at = f" at {figure(loop['at_Hz'], 'Hz')}" if loop["at_Hz"] is not None and own == loop["least_damping"] else ""
-        drawn = "nothing swings as drawn" if own >= 1.0 else f"damping {format_ratio(own)}{at} as drawn"
-        yield f"Loop: {'; '.join([drawn, *_worst(loop)])}."
+        drawn = f"damping {format_ratio(own)}{at} as drawn{' (nothing swings)' if own >= 1.0 else ''}"
+        worst = ", ".join(_worst(loop))
+        yield f"Loop: {drawn}{f'; at worst {worst}' if worst else ''}."
     if step["settles"] is not None:
         after = f"after {figure(step['delay_s'], 's')}" if step["delay_s"] else "at once"
         settles = f"settles {after}" if step["settles"] else "does not settle"
-        yield f"Step into the short: {settles}, peak {figure(step['peak_A'], 'A')}."
+        energy = f", {figure(step['pass_energy_J'], 'J')} into the pass device" if step["pass_energy_J"] else ""
+        yield f"Step into the short: {settles}, peak {figure(step['peak_A'], 'A')}{energy}."
 
 
 def _worst(loop: Document) -> Iterator[str]:
@@ -114,7 +116,7 @@ def _worst(loop: Document) -> Iterator[str]:
     for worst in (loop["worst_without_wiring"], loop["worst"]):
         if worst is not None and worst["ambient_degC"] is not None and worst != told:
             wiring = f"with {figure(worst['wiring_H'], 'H')} in the short" if worst["wiring_H"] else "within every spread"
-            yield f"{format_ratio(worst['damping'])} at worst {wiring}"
+            yield f"{format_ratio(worst['damping'])} {wiring}"
             told = worst
 
 

@@ -94,11 +94,10 @@ def test_figures_have_sensible_digits(shown: str, text: str) -> None:
 def test_the_damping_is_told_as_drawn_within_the_spreads_and_with_wiring() -> None:
     text = told()
     assert (
-        "damping 0.22 at 1.2 MHz as drawn; 0.19 at worst within every spread; 0.035 at worst with 500 nH in the short"
-        in text
+        "Loop: damping 0.22 at 1.2 MHz as drawn; at worst 0.19 within every spread, 0.035 with 500 nH in the short." in text
     )
     loop = document(sample_review())["limiters"][0]["loop"]
-    assert "nothing swings as drawn" in told(loop={**loop, "own_damping": 1.0})
+    assert "damping 1 as drawn (nothing swings); at worst" in told(loop={**loop, "own_damping": 1.0})
     bare = {**loop, "worst": loop["worst_without_wiring"]}
     assert told(loop=bare).count("at worst") == 1
 
