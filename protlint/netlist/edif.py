@@ -172,6 +172,8 @@ class _Reader(FormParser):
     def _name(self, form: Form, position: int = 1) -> Name:
         """Return the name that a form defines, and note what EDIF does not allow in it."""
         item = form[position] if len(form) > position else None
+        if type(item) is str and _IDENTIFIER.fullmatch(item):
+            return Name(item, item.removeprefix("&"))
         dimensions: tuple[int, ...] = ()
         text: str | None = None
         if type(item) is Form and item.head == "array":
@@ -201,8 +203,8 @@ class _Reader(FormParser):
         return dimensions
 
     def _properties(self, found: Mapping[str, Sequence[Form]], origin: Origin) -> tuple[Property, ...]:
-        forms = chain(found.get("property", ()), found.get("parameter", ()), found.get("parameterassign", ()))
-        return tuple(read_property(item, self._name(item).text, origin, self._scales) for item in forms)
+        forms = (*found.get("property", ()), *found.get("parameter", ()), *found.get("parameterassign", ()))
+        return tuple([read_property(item, self._name(item).text, origin, self._scales) for item in forms])
 
     def _port(self, form: Form) -> Port:
         found = by_head(form)

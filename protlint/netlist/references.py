@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from itertools import chain
 
 from protlint.netlist.definitions import GlobalRef, Joined, PortList, PortRef, Shorted, ViewRef
 from protlint.netlist.forms import Form
@@ -28,7 +27,10 @@ def by_head(form: Form) -> dict[str, list[Form]]:
 
 def first(form: Form, head: str) -> Form | None:
     """Return the first list inside a form that begins with ``head``."""
-    return next(items(form, head), None)
+    for item in form:
+        if type(item) is Form and item and item[0] == head:
+            return item
+    return None
 
 
 def keyword(forms: Sequence[Form], default: str) -> str:
@@ -38,7 +40,9 @@ def keyword(forms: Sequence[Form], default: str) -> str:
 
 def designators(forms: Sequence[Form]) -> tuple[str, ...]:
     """Return the texts of ``designator`` forms, without repetitions: of two, a section and its package."""
-    texts = (text_of(item) for item in forms)
+    if not forms:
+        return ()
+    texts = [text_of(item) for item in forms]
     return tuple(dict.fromkeys(text.strip() for text in texts if text is not None))
 
 
@@ -50,6 +54,8 @@ def word(form: Form, position: int = 1) -> str:
     InputError : there is none.
     """
     item = form[position] if len(form) > position else None
+    if type(item) is str:
+        return item
     if type(item) is Form and item.head == "name" and len(item) > 1:
         item = item[1]
     if not isinstance(item, str):
@@ -134,8 +140,8 @@ def shorted(form: Form) -> Shorted:
 def view_refs(found: Mapping[str, Sequence[Form]]) -> tuple[ViewRef, ...]:
     """Return the views an instance offers, the first that leads somewhere being meant, out of its lists by head."""
     refs = []
-    listed = (items(each, "viewref") for each in found.get("viewlist", ()))
-    for item in chain(found.get("viewref", ()), found.get("cellref", ()), *listed):
+    listed = [item for each in found.get("viewlist", ()) for item in items(each, "viewref")]
+    for item in (*found.get("viewref", ()), *found.get("cellref", ()), *listed):
         cell = item if item[0] == "cellref" else first(item, "cellref")
         library = None if cell is None else first(cell, "libraryref")
         refs.append(
