@@ -36,8 +36,7 @@ import sys, time
 started = time.process_time()
 import protlint.pipeline, protlint.report.document, protlint.report.text
 imported = time.process_time()
-reviewed = protlint.pipeline.review(sys.argv[1])
-protlint.report.text.rendered_text(protlint.report.document.document(reviewed))
+protlint.report.text.rendered_text(protlint.report.document.document(protlint.pipeline.review(sys.argv[1])))
 """
 TOLD = "import json; print(json.dumps([imported - started, time.process_time() - imported]))"
 
@@ -70,6 +69,5 @@ def test_a_whole_review_against_bare_loads(tmp_path: Path) -> None:
             f"{(import_s + review_s) / (bare_import_s + bare_s):.2f}"
         )
         assert len(read_netlist(file).parts) == len(parts)
-        found = review(file).limiters
-        assert len(found) == LIMITERS
-        assert all(one.solution.not_solved is None for one in found)
+        solved = {one.limiter.id for one in review(file).limiters if one.solution.not_solved is None}
+        assert solved >= {f"QP{number}" for number in range(1, LIMITERS + 1)}  # chance may make others

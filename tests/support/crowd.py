@@ -21,6 +21,8 @@ KINDS = {
 ON_GROUND, ON_SUPPLY = 0.15, 0.05
 """The share of all pins on ground, and on each of two supplies."""
 
+NEAR = 4
+"""How many nets away a part is joined on a board that is drawn."""
 
 Made = tuple[str, str, list[tuple[str, str]], float | None]
 """A part: its kind, designator, (pin, net) pairs, and ohms where it is a resistor."""
@@ -43,9 +45,12 @@ def crowd(parts: int, *, limiters: int = 8, seed: int = 1) -> Board:
 
 
 def crowd_drawn(parts: int, *, limiters: int = 8, seed: int = 1) -> list[Drawn]:
-    """Return such a board to be written as EDIF, with part numbers and values, its limiters driven from a supply."""
+    """Return such a board to be written as EDIF, with part numbers and values, its limiters driven from a supply.
+
+    Its nets are short, as those of real boards: a part is joined to those drawn near it, or to a supply.
+    """
     drawn = []
-    for kind, designator, joins, value_ohm in _made(parts, limiters, seed):
+    for kind, designator, joins, value_ohm in _made(parts, limiters, seed, reach=NEAR):
         if designator.startswith("RD"):
             joins = [("1", "+12V"), *joins[1:]]
         value = "" if value_ohm is None else f"{value_ohm:g}"
@@ -54,7 +59,8 @@ def crowd_drawn(parts: int, *, limiters: int = 8, seed: int = 1) -> list[Drawn]:
     return drawn
 
 
-def _made(parts: int, limiters: int, seed: int) -> list[Made]:
+def _made(parts: int, limiters: int, seed: int, *, reach: int | None = None) -> list[Made]:
+    """Return the parts; ``reach`` is how far a part's nets lie from its own place among the nets, anywhere where None."""
     chance = random.Random(seed)
     made: list[Made] = []
     kinds, weights = list(KINDS), list(KINDS.values())
@@ -63,7 +69,9 @@ def _made(parts: int, limiters: int, seed: int) -> list[Made]:
         kind = chance.choices(kinds, weights)[0]
         pins = TERMINALS.get(kind, tuple(str(pin + 1) for pin in range(8 if kind == "ic" else 2)))
         value = chance.choice((10.0, 100.0, 1e3, 1e4)) if kind == "resistor" else None
-        made.append((kind, f"X{number}", [(pin, _net(chance, free_nets)) for pin in pins], value))
+        place = number * 7 // 10
+        free = range(free_nets) if reach is None else range(max(0, place - reach), place + reach + 1)
+        made.append((kind, f"X{number}", [(pin, _net(chance, free)) for pin in pins], value))
     for number in range(1, limiters + 1):
         out, base, near, tap = (f"{name}{number}" for name in ("OUT", "BASE", "NEAR", "TAP"))
         npn = TERMINALS["npn"]
@@ -71,14 +79,14 @@ def _made(parts: int, limiters: int, seed: int) -> list[Made]:
             ("npn", f"QP{number}", list(zip(npn, (out, base, near), strict=True)), None),
             ("npn", f"QS{number}", list(zip(npn, (base, tap, "GND"), strict=True)), None),
             ("resistor", f"RS{number}", [("1", near), ("2", "GND")], 2.0 + number / 10.0),
-            ("resistor", f"RB{number}", [("1", near), ("2", tap)], 1e3),
-            ("resistor", f"RD{number}", [("1", _net(chance, free_nets)), ("2", base)], 1e3),
+            ("resistor", f"RB{number}", [("1", near), ("2", tap)], 220.0),
+            ("resistor", f"RD{number}", [("1", _net(chance, range(free_nets))), ("2", base)], 1e3),
         ]
     chance.shuffle(made)
     return made
 
 
-def _net(chance: random.Random, free_nets: int) -> str:
+def _net(chance: random.Random, free: range) -> str:
     where = chance.random()
     if where < ON_GROUND:
         return "GND"
@@ -86,7 +94,7 @@ def _net(chance: random.Random, free_nets: int) -> str:
         return "+12V"
     if where < ON_GROUND + 2 * ON_SUPPLY:
         return "-12V"
-    return f"N{chance.randrange(free_nets)}"
+    return f"N{chance.choice(free)}"
 
 
 def _board(made: Sequence[Made]) -> Board:
