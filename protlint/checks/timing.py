@@ -130,7 +130,8 @@ def _late_remedy(case: Case, part: BoardPart, names: tuple[str, ...], found: Let
                 continue
             then = let_through(case, part, names, step)
             if then is None or (isinstance(then, LetThrough) and then.ratio <= case.threshold(LATE, "error")):
-                return f"fit {format_quantity(farad, 'F')} as {slowing.name}: {format_quantity(step.delay_s or 0.0, 's')}"
+                acts = f"{format_quantity(step.delay_s, 's')} into the short" if step.delay_s else "at once"
+                return f"fit {format_quantity(farad, 'F')} as {slowing.name}: the limiter then acts {acts}"
     current = format_quantity(preferred(found.current_A, "E24", "up"), "A")
     return (
         f"fit a device as {part.id} whose safe area ({format_quantity(found.lasts_s, 's')}) allows {current} at "
