@@ -11,17 +11,21 @@ from protlint.topology.limiter import FaultMatch
 
 WIRING_FAULTS = (
     "collector-emitter-swapped",
+    "base-emitter-swapped",
+    "shunt-pins-exchanged",
     "base-on-far-end",
     "shunt-polarity-wrong",
     "collector-not-on-the-drive",
     "sense-bypassed",
     "wrong-device-sensed",
+    "pass-pins-exchanged",
+    "pass-polarity-wrong",
 )
-"""The checks that a fault rule answers."""
+"""The checks that a fault rule answers, or a transistor that stands turned round."""
 
 
 def wiring_check(fault: str) -> Callable[[BoardCase], Iterator[BoardAnswer]]:
-    """Return the check that yields a finding for every place where a fault rule of this name fits."""
+    """Return the check that yields a finding for every fault of this name that matching found."""
 
     def check(whole: BoardCase) -> Iterator[BoardAnswer]:
         for match in whole.found.faults:
@@ -40,10 +44,20 @@ def _finding(board: Board, match: FaultMatch) -> Finding:
         limiter=group.id,
         parts=tuple(dict.fromkeys(named)),
         nets=tuple(dict.fromkeys(board.nets[net].name for net in group.nets.values() if net is not None)),
-        message=f"{match.says}; as drawn nothing limits the current of {', '.join(group.roles['pass'])}",
+        message=f"{match.says}; {_consequence(match)}",
         working=_working(board, match),
         remedy=_remedy(board, match),
     )
+
+
+def _consequence(match: FaultMatch) -> str:
+    """Say what comes of a fault; the pass device is not named for what it does not do."""
+    shunt, carrier = (", ".join(match.group.roles[role]) for role in ("shunt", "pass"))
+    if match.beside:
+        return f"as drawn it does not do its part in the limiter of {shunt}"
+    if match.fault.startswith("pass-"):
+        return f"as drawn the drive does not control the load current, and {shunt} limits nothing"
+    return f"as drawn nothing limits the current of {carrier}"
 
 
 def _changed(match: FaultMatch) -> list[str]:

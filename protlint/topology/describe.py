@@ -112,6 +112,7 @@ _WORDS = {
     "undriven": "nothing outside this group drives {0}",
     "closed": "nothing hangs on {0} that leads out of this group",
     "held": "nothing hangs on {0} but what leads to this group or to a supply",
+    "leaves": "a connector, an inductor or a fuse hangs on {0}",
     "nearer": "a smaller resistor leads from {0} to {1} than to {2}",
     "read": "an IC reads {0}, straight or through a resistor",
     "twin": "another transistor has its base on {0} and its emitter on {1}, as in a current mirror",

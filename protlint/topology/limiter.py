@@ -57,6 +57,10 @@ class FaultMatch:
     replaces: tuple[tuple[str, str], ...] = ()
     parts_ends: tuple[str, ...] = ()
     links: tuple[str, ...] = ()
+    turned: str | None = None
+    """The transistor that stands turned round, where that is all that is wrong."""
+    beside: bool = False
+    """Whether the rest is a sound limiter, which only lacks that transistor."""
 
 
 @dataclass(frozen=True, slots=True)

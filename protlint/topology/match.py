@@ -13,6 +13,8 @@ from protlint.topology.language import Rules
 from protlint.topology.limiter import Found, Limiter
 from protlint.topology.naming import build_limiter
 from protlint.topology.sets import find_pairs, find_sets
+from protlint.topology.settle import settled
+from protlint.topology.turned import find_turned
 
 
 def find_limiters(board: Board, rules: Rules) -> Found:
@@ -22,22 +24,35 @@ def find_limiters(board: Board, rules: Rules) -> Found:
         fitter = Fitter(index, (*rules.patterns, *rules.fault_patterns), rules.plans)
         matches = fitter.matches()
         remarks: list[str] = []
-        limiters: list[Limiter] = []
-        sound = [match for match in matches if not match.pattern.fault]
-        chosen = _one_for_each_shunt(sound, rules, board, remarks)
-        sensed = {element for match, _ in chosen for element in match.elements["pass"]}
-        for match, also in chosen:
-            fitter.add_optional(match)
-            _leave_out_sensed(match, sensed)
-            limiters.append(build_limiter(match, index, also, {one.id for one in limiters}))
+        limiters = _sound(fitter, matches, rules, remarks)
         faults = find_faults(index, [match for match in matches if match.pattern.fault], rules, limiters)
+        turned = find_turned(index, limiters, lambda piece: _sound_on(piece, rules))
     return Found(
         limiters=tuple(limiters),
-        faults=faults,
+        faults=settled(faults, turned, index),
         remarks=tuple(remarks),
         pairs=find_pairs(limiters),
         sets=find_sets(board, limiters),
     )
+
+
+def _sound_on(board: Board, rules: Rules) -> list[Limiter]:
+    """Return the limiters of a small board, nothing else of it being asked."""
+    fitter = Fitter(Index(board), (*rules.patterns, *rules.fault_patterns), rules.plans)
+    return _sound(fitter, fitter.matches(), rules, [])
+
+
+def _sound(fitter: Fitter, matches: Sequence[Match], rules: Rules, remarks: list[str]) -> list[Limiter]:
+    """Return the limiter of every shunt that sound rules fit, with all that may belong to it."""
+    board = fitter.index.board
+    limiters: list[Limiter] = []
+    chosen = _one_for_each_shunt([match for match in matches if not match.pattern.fault], rules, board, remarks)
+    sensed = {element for match, _ in chosen for element in match.elements["pass"]}
+    for match, also in chosen:
+        fitter.add_optional(match)
+        _leave_out_sensed(match, sensed)
+        limiters.append(build_limiter(match, fitter.index, also, {one.id for one in limiters}))
+    return limiters
 
 
 def _one_for_each_shunt(

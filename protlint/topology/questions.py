@@ -10,8 +10,11 @@ from protlint.topology.index import CONTROLLED, RAIL, Index
 from protlint.topology.terms import DIRECTED, Test
 
 LATE = frozenset(
-    {"no-input", "inner", "undriven", "closed", "held", "nearer", "read", "twin", "regulator", "npn-follows", "pnp-follows"}
-)
+    {
+        "no-input", "inner", "undriven", "closed", "held", "leaves", "nearer", "read", "twin", "regulator", "npn-follows",
+        "pnp-follows",
+    }
+)  # fmt: skip
 """Questions that can be answered only when every required part is known."""
 
 PASSIVE = frozenset({"resistor", "capacitor", "inductor", "fuse"}) | DIRECTED
@@ -79,6 +82,8 @@ def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int
             return _inner(net, index, own)
         case "closed":
             return _leads_only_to(net, set(nets.values()), index, own)
+        case "leaves":
+            return leaves(net, index)
         case "nearer":
             return _resistance_ohm(net, others[0], index) < _resistance_ohm(net, others[1], index)
         case "held":
@@ -161,6 +166,15 @@ def _read(net: int, index: Index, own: Collection[int]) -> bool:
                 if "ic" in kinds and kinds <= {"ic", "capacitor"}:
                     return True
     return False
+
+
+LEAVING = frozenset({"connector", "inductor", "fuse"})
+"""What leads off the board, or to what leads off it."""
+
+
+def leaves(net: int, index: Index) -> bool:
+    """Tell whether something that leads off the board is on a net."""
+    return any(index.kind[element] in LEAVING for element, _ in index.at[net])
 
 
 def _resistance_ohm(net: int, other: int, index: Index) -> float:

@@ -48,7 +48,7 @@ def spoiled(circuit: str) -> Iterator[tuple[str, Netlist]]:
         yield "base-on-far-end", edits.moved(netlist, shunt, "emitter", near)
         yield "collector-not-on-the-drive", edits.exchanged(netlist, (shunt, "collector"), (shunt, "base"))
     if is_supply(far):
-        yield "base-on-far-end", edits.exchanged(netlist, (shunt, "base"), (shunt, "emitter"))
+        yield "base-emitter-swapped", edits.exchanged(netlist, (shunt, "base"), (shunt, "emitter"))
     yield "shunt-polarity-wrong", edits.other_polarity(netlist, shunt)
     supplies = [net.name for net in netlist.nets if is_supply(net.name) and net.name not in (far, "GND")]
     if supplies:

@@ -173,6 +173,12 @@ def wiring() -> Iterator[Scenario]:
     ways = {
         "collector-emitter-swapped": (("Q2 NPN QSN1 BASE STOP GND", "Q2 NPN QSN1 GND STOP BASE"),
                                       ("Q21 PNP QSP1 BASE STOP +15V", "Q21 PNP QSP1 +15V STOP BASE")),
+        "base-emitter-swapped": (("Q2 NPN QSN1 BASE STOP GND", "Q2 NPN QSN1 BASE GND STOP"),
+                                 ("Q21 PNP QSP1 BASE STOP +15V", "Q21 PNP QSP1 BASE +15V STOP")),
+        "shunt-pins-exchanged": (("Q2 NPN QSN1 BASE STOP GND", "Q2 NPN QSN1 GND BASE STOP"),
+                                 ("Q21 PNP QSP1 BASE STOP +15V", "Q21 PNP QSP1 +15V BASE STOP")),
+        "pass-pins-exchanged": (("LAMP BASE SNS", "SNS BASE LAMP"), ("OUT BASE SNS", "BASE OUT SNS")),
+        "pass-polarity-wrong": (("NPN QPN1", "PNP QPP1"), ("PNP QPP1", "NPN QPN1")),
         "base-on-far-end": (("R3 RES 100 SNS STOP", "R3 RES 100 GND STOP"),
                             ("R22 RES 150 SNS STOP", "R22 RES 150 +15V STOP")),
         "shunt-polarity-wrong": (("Q2 NPN QSN1", "Q2 PNP QSP1"), ("Q21 PNP QSP1", "Q21 NPN QSN1")),

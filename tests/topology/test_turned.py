@@ -1,0 +1,168 @@
+"""Every transistor of every limiter turned every way it can be drawn: named, with exactly the change that undoes it.
+
+Of each circuit of fixtures/circuits one pass device, driver, shunt or latching transistor at a time has two pins exchanged,
+all three pins shifted round, or the other polarity, and both. Two pins exchanged is a slip at the schematic; all three is
+what a symbol or footprint of another package does.
+"""
+
+from __future__ import annotations
+
+import tomllib
+from collections import Counter
+from collections.abc import Iterator
+from dataclasses import dataclass
+from functools import cache
+from itertools import permutations
+from pathlib import Path
+
+import pytest
+
+from protlint.board.graph import Board
+from protlint.netlist import read_netlist
+from protlint.netlist.model import Netlist
+from protlint.topology.limiter import FaultMatch, Found
+from tests.support import edits
+from tests.support.paths import FIXTURES
+from tests.topology.test_faults import found_on
+
+PINS = {
+    "npn": ("collector", "base", "emitter"), "nmos": ("drain", "gate", "source"), "thyristor": ("anode", "gate", "cathode"),
+}  # fmt: skip
+ALIKE = {
+    "pnp": "npn", "npn-darlington": "npn", "pnp-darlington": "npn", "pmos": "nmos",
+}  # fmt: skip
+ONE_OF_ITS_KIND = ("thyristor",)
+"""What has no other polarity."""
+
+Stands = tuple[str, tuple[str, ...]]
+"""How a transistor stands: its kind, and the nets of its pins."""
+
+LEAST_RIGHT = 0.98
+"""The share of all that is found with exactly the cure that undoes it, and nothing else said."""
+
+LEAST_RIGHT_SHUNT = 1.0
+"""The same of shunts alone."""
+
+
+@dataclass(frozen=True, eq=False)
+class Slip:
+    circuit: str
+    role: str
+    part: str
+    how: str
+    drawn: Netlist
+    sound: Stands
+
+
+def stands(board: Board, part: str) -> Stands:
+    one = board.part_of[part]
+    return one.kind, tuple(board.nets[one.roles[pin]].name for pin in pins_of(one.kind))
+
+
+def pins_of(kind: str) -> tuple[str, ...]:
+    return PINS[ALIKE.get(kind, kind)]
+
+
+@cache
+def slips() -> tuple[Slip, ...]:
+    return tuple(one for path in sorted((FIXTURES / "circuits").glob("*.edf")) for one in _slips_of(path))
+
+
+def _slips_of(path: Path) -> Iterator[Slip]:
+    wanted = tomllib.loads(path.with_suffix(".toml").read_text(encoding="utf-8"))["limiter"]
+    netlist = read_netlist(path)
+    board, _ = found_on(netlist)
+    roles = {role: parts for role, parts in wanted[0]["roles"].items() if role in ("pass", "driver", "shunt", "others")}
+    for role, parts in roles.items() if len(wanted) == 1 else ():
+        for part in parts:
+            kind = board.part_of[part].kind
+            if ALIKE.get(kind, kind) not in PINS:
+                continue
+            pins, sound = pins_of(kind), stands(board, part)
+            for order in permutations(range(3)):
+                drawn = netlist
+                for pin, place in zip(pins, order, strict=True):
+                    drawn = edits.moved(drawn, part, pin, sound[1][place])
+                turned = sum(place != index for index, place in enumerate(order))
+                if turned:
+                    yield Slip(path.stem, role, part, f"{turned} pins", drawn, sound)
+                if kind not in ONE_OF_ITS_KIND:
+                    other = edits.other_polarity(drawn, part)
+                    yield Slip(path.stem, role, part, f"polarity, {turned} pins" if turned else "polarity", other, sound)
+
+
+def undone(board: Board, fault: FaultMatch, part: str) -> Stands:
+    """Return how a transistor stands once a fault's cure is applied."""
+    one = board.part_of[part]
+    kind, roles = one.kind, {pin: board.nets[net].name for pin, net in one.roles.items()}
+    for (first, pin), (second, other) in fault.exchange:
+        if first == second == part:
+            roles[pin], roles[other] = roles[other], roles[pin]
+    for (moved, pin), net in fault.moves:
+        if moved == part:
+            roles[pin] = board.nets[net].name
+    kind = next((new for replaced, new in fault.replaces if replaced == part), kind)
+    return kind, tuple(roles[pin] for pin in pins_of(kind))
+
+
+@cache
+def answer(slip: Slip) -> str:
+    """Return what is said of a slip: ``right``, ``named otherwise``, ``still a limiter`` or ``nothing``."""
+    board, found = found_on(slip.drawn)
+    if any(fault.turned == slip.part and undone(board, fault, slip.part) == slip.sound for fault in found.faults):
+        return "right" if len(found.faults) == 1 else "named otherwise"
+    return "named otherwise" if found.faults else "still a limiter" if found.limiters else "nothing"
+
+
+def test_the_table_of_transistors_turned_round(capsys: pytest.CaptureFixture[str]) -> None:
+    """Print what is said of every slip, by the transistor's role and by what was done to it."""
+    said = Counter((slip.role, slip.how, answer(slip)) for slip in slips())
+    answers = ("right", "named otherwise", "still a limiter", "nothing")
+    lines = ["", f"{'turned round':<34}" + "".join(f"{one:>17}" for one in answers)]
+    for role, how in sorted({(role, how) for role, how, _ in said}):
+        lines.append(f"{role + ': ' + how:<34}" + "".join(f"{said[role, how, one] or '-':>17}" for one in answers))
+    total = {one: sum(number for (_, _, what), number in said.items() if what == one) for one in answers}
+    lines.append(f"{'together':<34}" + "".join(f"{total[one]:>17}" for one in answers))
+    with capsys.disabled():
+        print("\n".join(lines))
+    assert total["nothing"] == 0
+    assert total["right"] >= LEAST_RIGHT * sum(total.values())
+    shunts = [answer(slip) for slip in slips() if slip.role == "shunt"]
+    assert shunts.count("right") >= LEAST_RIGHT_SHUNT * len(shunts)
+
+
+def the_only_one(circuit: str, part: str, *pairs: tuple[str, str], other: bool = False) -> tuple[FaultMatch, Found]:
+    netlist = read_netlist(FIXTURES / "circuits" / f"{circuit}.edf")
+    for one, two in pairs:
+        netlist = edits.exchanged(netlist, (part, one), (part, two))
+    _, found = found_on(edits.other_polarity(netlist, part) if other else netlist)
+    (fault,) = found.faults
+    return fault, found
+
+
+@pytest.mark.parametrize(
+    "circuit, part, pairs, other, name",
+    [
+        ("sink-npn", "Q2", [("collector", "emitter")], False, "collector-emitter-swapped"),
+        ("follower-pnp", "Q2", [("base", "emitter")], False, "base-emitter-swapped"),
+        ("sink-npn", "Q2", [("collector", "base")], False, "collector-not-on-the-drive"),
+        ("sink-npn", "Q2", [("collector", "base"), ("base", "emitter")], False, "shunt-pins-exchanged"),
+        ("sink-npn", "Q2", [("collector", "emitter")], True, "shunt-polarity-wrong"),
+        ("latched-thyristor", "T1", [("anode", "cathode")], False, "shunt-pins-exchanged"),
+        ("latched-pair-pnp", "Q3", [("base", "emitter")], False, "shunt-pins-exchanged"),
+        ("mosfet-low-side", "M1", [("drain", "source")], False, "pass-pins-exchanged"),
+        ("sink-npn", "Q1", [], True, "pass-polarity-wrong"),
+    ],
+)
+def test_each_way_has_its_name(circuit: str, part: str, pairs: list[tuple[str, str]], other: bool, name: str) -> None:
+    fault, _ = the_only_one(circuit, part, *pairs, other=other)
+    assert (fault.fault, fault.turned) == (name, part)
+    assert part in fault.says
+
+
+def test_a_turned_device_beside_others_leaves_their_limiter() -> None:
+    fault, found = the_only_one("parallel-common-sense", "Q1", ("collector", "emitter"))
+    (limiter,) = found.limiters
+    assert fault.beside
+    assert "Q1" not in limiter.roles["pass"]
+    assert "Q1" in fault.group.roles["pass"]
