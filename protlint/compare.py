@@ -110,6 +110,7 @@ def compare(before: Report, after: Report) -> dict[str, Any]:
     """
     pairs, removed, added = matched(before["limiters"], after["limiters"])
     changes = [_change(old, new) for old, new in pairs]
+    changed = [change for change in changes if any(change[what] for what in ("parts", "figures", "words", "needs"))]
     return {
         "compare": 1,
         "before": before["netlist"] and dict(before["netlist"]),
@@ -117,8 +118,8 @@ def compare(before: Report, after: Report) -> dict[str, Any]:
         "limiters": {
             "added": [{"id": one["id"], "topology": one["topology"], "verdict": one["verdict"]} for one in added],
             "removed": [{"id": one["id"], "topology": one["topology"], "verdict": one["verdict"]} for one in removed],
-            "changed": [change for change in changes if change["parts"] or change["figures"] or change["words"]],
-            "unchanged": sum(not (change["parts"] or change["figures"] or change["words"]) for change in changes),
+            "changed": changed,
+            "unchanged": len(changes) - len(changed),
         },
         "findings": _findings(before, after, pairs),
         "remarks": _remarks(before, after),

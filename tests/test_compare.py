@@ -92,6 +92,15 @@ def test_what_the_limits_file_asks_now_is_told_in_words() -> None:
         assert told in text
 
 
+def test_a_need_that_changed_alone_is_told() -> None:
+    after = report()
+    after["limiters"][0]["needs"]["carry_A"] = 0.8
+    comparison = compare(report(), after)
+    assert [change["needs"] for change in comparison["limiters"]["changed"]] == [{"carry_A": {"before": 0.7, "after": 0.8}}]
+    assert comparison["limiters"]["unchanged"] == 2
+    assert "limits file: carry 0.7 A, now 0.8 A" in rendered_comparison(comparison_document(comparison))
+
+
 def test_what_the_limits_file_fits_no_longer_is_told() -> None:
     before, after = report(), report()
     after["remarks"] = [*before["remarks"], "limits.toml: [drive.CMD] fits no net and no pin on this board"]
