@@ -112,10 +112,10 @@ class Loop:
     """The small-signal answers at the held short.
 
     ``own_damping`` is the least damping of the limiter's own modes, parts as drawn: of those whose damping rises by more
-    than a quarter with the shunt's transconductance taken out; 1 where none of them swings. ``worst`` is the least over
-    every spread, ambient and fault wiring, ``worst_without_wiring`` with none in the short. ``natural`` are the natural
-    frequencies as (Hz, damping), slowest first, a pair once; ``table`` the loop gain as (Hz, magnitude, phase in degrees, 0
-    where the feedback is negative).
+    than a quarter, and 0.02, with the shunt's transconductance taken out; 1 where none of them swings. ``worst`` is the
+    least over every spread, ambient and fault wiring, ``worst_without_wiring`` with none in the short. ``natural`` are the
+    natural frequencies as (Hz, damping), slowest first, a pair once; ``table`` the loop gain as (Hz, magnitude, phase in
+    degrees, 0 where the feedback is negative).
     """
 
     least_damping: float | None
