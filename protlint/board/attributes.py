@@ -226,13 +226,13 @@ def _beside(part: Part, attribute: str, habits: Habits, listed: Mapping[str, str
 
 
 def _bare(text: str, attribute: str) -> float | None:
-    """A number without its unit in a property whose name says what it is: watts, volts, per cent (from 1 upward)."""
+    """A number without its unit in a property whose name says what it is: watts, volts, per cent (1 to 100)."""
     found = re.fullmatch(r"([0-9]+(?:[.,][0-9]+)?)(?:/([1-9][0-9]*))?", text.replace(" ", ""))
     if found is None:
         return None
     number = float(found[1].replace(",", ".")) / float(found[2] or 1.0)
     if attribute == "tolerance":
-        return number / 100.0 if number >= 1.0 else None
+        return number / 100.0 if 1.0 <= number <= 100.0 else None
     return number if number > 0.0 else None
 
 

@@ -221,6 +221,7 @@ def _side(kind: str, found: re.Match[str]) -> float | None:
 def _value_patterns(dimension: str) -> tuple[re.Pattern[str], ...]:
     letters = "|".join(sorted(_POWERS[dimension], key=len, reverse=True))
     spelled = "|".join(_SPELLED.get(dimension, ())) or "(?!)"
+    ohms = "E" if dimension == "resistance" else "(?!)"  # 22E is 22 ohm in some houses; 4E7 may be a power of ten
     unit, tolerance = f"(?i:{_UNITS[dimension]})", f"(?P<letter>[{''.join(_TOLERANCES)}])"
     return (
         re.compile(rf"(?P<whole>[0-9]{{1,4}})(?P<power>{letters})(?P<rest>[0-9]{{1,3}})(?:{unit}|{tolerance})?{_END}"),
@@ -230,6 +231,7 @@ def _value_patterns(dimension: str) -> tuple[re.Pattern[str], ...]:
         ),
         re.compile(rf"(?P<number>{_NUM})\s*(?P<power>{letters}){tolerance}?{_END}"),
         re.compile(rf"(?P<number>{_NUM})\s*(?P<power>(?i:{spelled})){_END}"),
+        re.compile(rf"(?P<number>{_NUM}){ohms}{_END}"),
         re.compile(rf"(?P<number>{_NUM}(?:[eE][+-][0-9]{{1,2}})?){_END}"),
     )
 
@@ -299,6 +301,6 @@ def _no_value(piece: str, dimension: str) -> str:
         patterns = _value_patterns(other)[:-1] if other != dimension else ()
         if any((found := pattern.fullmatch(piece)) and not _is_other_unit(found, other) for pattern in patterns):
             return f"{'an' if other[0] in 'aeiou' else 'a'} {other}, no {dimension}"
-    if dimension == "resistance" and re.fullmatch(r"[0-9]+E[0-9]*", piece):
+    if dimension == "resistance" and re.fullmatch(r"[0-9]+E[0-9]+", piece):
         return "E may stand for ohm or for a power of ten"
     return f"no {dimension} can be read from it"
