@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import replace
 
 from protlint.board.graph import BoardPart
@@ -14,6 +14,9 @@ from protlint.quantities import format_quantity
 from protlint.solve.answers import solve
 from protlint.solve.bench import build_bench
 from protlint.solve.dynamics import with_dynamics
+
+MOST_TOLD = 2
+"""Of more remedies that another remedy asks for, only the checks are named."""
 
 POWER_CHECKS = ("sense-resistor-power", "resistor-power")
 
@@ -47,9 +50,15 @@ def _foretold(case: Case, finding: Finding, findings: Sequence[Finding]) -> Find
         worse = known is None or _rank(one) < _rank(known) or (smaller and one.remedy != known.remedy)
         if one.remedy and one not in burns and one.level != "note" and one.check != finding.check and worse:
             asked.setdefault(one.remedy, []).append(one.check)
-    also = "; and ".join(f"{', '.join(dict.fromkeys(checks))}: {remedy}" for remedy, checks in asked.items())
-    remedy = f"{finding.remedy}{_rated(burns, len(own))}" + (f"; then also {also}" if also else "")
-    return replace(finding, remedy=remedy)
+    return replace(finding, remedy=f"{finding.remedy}{_rated(burns, len(own))}{_also(asked)}")
+
+
+def _also(asked: Mapping[str, Sequence[str]]) -> str:
+    """Tell what else comes of a value: each remedy with its checks, of many the checks alone."""
+    if len(asked) > MOST_TOLD:
+        return f"; then also {', '.join(dict.fromkeys(check for checks in asked.values() for check in checks))} come up"
+    told = (f"{', '.join(dict.fromkeys(checks))}: {remedy}" for remedy, checks in asked.items())
+    return f"; then also {'; and '.join(told)}" if asked else ""
 
 
 def _rated(burns: Sequence[Finding], count: int) -> str:

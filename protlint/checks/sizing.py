@@ -125,7 +125,8 @@ def _fit(case: Case, sense: Sense, part_ohm: float, factor: float) -> Remedy:
     value, names = format_quantity(part_ohm, "ohm"), ", ".join(sense.parts)
     if sense.of_whole is None:
         fits = tuple(Fit(part, (case.part(part).values.value or 0.0) * factor) for part in sense.parts)
-        return f"make {names} {value} together", fits
+        apart = len(case.circuit.sense) > 1
+        return f"make {names} {f'{factor:.3g} times what they are' if apart else f'{value} together'}", fits
     fits = tuple(Fit(part, part_ohm) for part in sense.parts)
     if len(sense.parts) == 1:
         return f"fit {value} as {names}", fits
