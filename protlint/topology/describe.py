@@ -114,6 +114,7 @@ _WORDS = {
     "held": "nothing hangs on {0} but what leads to this group or to a supply",
     "leaves": "a connector, an inductor or a fuse hangs on {0}",
     "nearer": "a smaller resistor leads from {0} to {1} than to {2}",
+    "pulled": "a resistor outside this group joins {0} to a supply",
     "read": "an IC reads {0}, straight or through a resistor",
     "twin": "another transistor has its base on {0} and its emitter on {1}, as in a current mirror",
     "regulator": "an IC takes its supply from {0} and gives it on to {1}, as a three-terminal regulator does",

@@ -11,8 +11,8 @@ from protlint.topology.terms import DIRECTED, Test
 
 LATE = frozenset(
     {
-        "no-input", "inner", "undriven", "closed", "held", "leaves", "nearer", "read", "twin", "regulator", "npn-follows",
-        "pnp-follows",
+        "no-input", "inner", "undriven", "closed", "held", "leaves", "nearer", "pulled", "read", "twin", "regulator",
+        "npn-follows", "pnp-follows",
     }
 )  # fmt: skip
 """Questions that can be answered only when every required part is known."""
@@ -88,6 +88,9 @@ def holds(test: Test, nets: Mapping[str, int], index: Index, own: Collection[int
             return _resistance_ohm(net, others[0], index) < _resistance_ohm(net, others[1], index)
         case "held":
             return _leads_only_to(net, {*nets.values(), *index.voltage_V}, index, own)
+        case "pulled":
+            beside = (one for one in index.on_net(net, ("resistor",)) if one not in own)
+            return any(end in index.voltage_V for one in beside for end in index.terminals[one].values() if end != net)
         case "read":
             return _read(net, index, own)
         case "twin":

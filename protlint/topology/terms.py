@@ -38,8 +38,8 @@ ANY = "any"
 
 TESTS: Mapping[str, int] = {
     "ground": 1, "supply": 1, "lowest": 1, "highest": 1, "apart": 2, "same": 2, "no-input": 1, "inner": 1,
-    "undriven": 1, "closed": 1, "held": 1, "leaves": 1, "nearer": 3, "read": 1, "twin": 2, "npn-follows": 1,
-    "pnp-follows": 1, "pulls-down": 3, "pulls-up": 3, "regulator": 2, "n-type": 0, "p-type": 0,
+    "undriven": 1, "closed": 1, "held": 1, "leaves": 1, "nearer": 3, "pulled": 1, "read": 1, "twin": 2,
+    "npn-follows": 1, "pnp-follows": 1, "pulls-down": 3, "pulls-up": 3, "regulator": 2, "n-type": 0, "p-type": 0,
 }  # fmt: skip
 """Questions about nets, with the number of nets each takes; ``not``, ``or`` and ``and`` combine them."""
 
