@@ -148,7 +148,7 @@ class Board:
         return tuple(names)
 
     def nets_of_pin(self, name: str) -> frozenset[int]:
-        """Return the nets of a pin called by its part's id and its own number or name (``U1.6``); empty where there is none."""
+        """Return the nets of a pin called by its part's id and its number or name (``U1.6``); empty where there is none."""
         dots = [place for place, letter in enumerate(name) if letter == "."]  # ids and pin names may hold dots too
         spelled = [(self.part_of.get(name[:dot]), name[dot + 1 :]) for dot in dots]
         pins = [(pin, label) for part, label in spelled if part is not None for pin in part.part.pins]

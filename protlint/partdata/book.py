@@ -103,7 +103,7 @@ class PartEntry:
         slope = math.log(high.least / low.least) / math.log(high.ic_A / low.ic_A)
         slope = min(slope, 0.0) if ic_A > high.ic_A else slope
         start = high if ic_A > high.ic_A else low
-        return start.least * (ic_A / start.ic_A) ** slope
+        return start.least * math.pow(ic_A / start.ic_A, slope)
 
 
 @dataclass(frozen=True, slots=True)

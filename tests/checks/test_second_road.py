@@ -193,7 +193,7 @@ def test_a_booster_is_solved_with_what_its_regulator_draws() -> None:
 
 
 def test_a_booster_of_a_small_shunt_is_told_that_it_has_to_bear_the_regulator() -> None:
-    """The shunt has to bear the short-circuit current of the regulator: common practice of the trade, told beside the circuit
-    in makers' data sheets of three-terminal regulators (from memory)."""
+    """The shunt has to bear the regulator's short-circuit current: common practice of the trade, told beside the circuit in
+    makers' data sheets of three-terminal regulators (from memory)."""
     told = found(booster(board=BOOSTER.replace("Q2 PNP QPP1", "Q2 PNP QSP1"), driver="1.9 A"), "shunt-overloaded")
     assert {(one.level, one.parts) for one in told} == {("error", ("Q2",))}
