@@ -69,16 +69,26 @@ def faults_of(netlist: Netlist, limiter: dict[str, Any], path: Path) -> Iterator
     """Yield (fault, netlist with that fault drawn into it)."""
     roles, nets = limiter["roles"], limiter["nets"]
     shunt, near, far = roles["shunt"][0], nets["sense"], nets["far"]
-    if limiter["topology"].startswith("latched"):
-        return  # no fault rule asks about latches yet
     if len(roles["shunt"]) > 1:
         yield "shunt-polarity-wrong", edits.exchanged(netlist, (shunt, "anode"), (shunt, "cathode"))
         return
-    yield "collector-emitter-swapped", edits.exchanged(netlist, (shunt, "collector"), (shunt, "emitter"))
-    yield "shunt-polarity-wrong", edits.other_polarity(netlist, shunt)
+    collector, base = "collector", "base"
+    if limiter["topology"] == "latched-thyristor":
+        collector, base = "anode", "gate"
+        yield "shunt-pins-exchanged", edits.exchanged(netlist, (shunt, "anode"), (shunt, "cathode"))
+        yield "shunt-pins-exchanged", edits.exchanged(netlist, (shunt, "gate"), (shunt, "cathode"))
+        yield "shunt-pins-exchanged", edits.exchanged(netlist, (shunt, "gate"), (shunt, "anode"))
+    else:
+        yield "collector-emitter-swapped", edits.exchanged(netlist, (shunt, "collector"), (shunt, "emitter"))
+        yield "base-emitter-swapped", edits.exchanged(netlist, (shunt, "base"), (shunt, "emitter"))
+        yield "shunt-polarity-wrong", edits.other_polarity(netlist, shunt)
+    for latch in (part for part in roles.get("others", ()) if limiter["topology"] == "latched-pair" and part[0] == "Q"):
+        yield "shunt-pins-exchanged", edits.exchanged(netlist, (latch, "collector"), (latch, "emitter"))
+        yield "shunt-pins-exchanged", edits.exchanged(netlist, (latch, "base"), (latch, "emitter"))
+        yield "shunt-pins-exchanged", edits.exchanged(netlist, (latch, "collector"), (latch, "base"))
     supplies = [net.name for net in netlist.nets if is_supply(net.name) and net.name not in ("GND", far)]
     if supplies:
-        yield "collector-not-on-the-drive", edits.moved(netlist, shunt, "collector", supplies[0])
+        yield "collector-not-on-the-drive", edits.moved(netlist, shunt, collector, supplies[0])
     drivers = roles.get("driver", [])
     if len(drivers) == 1 and "compound" not in path.stem:
         second_base = edits.net_of(netlist, drivers[0], "emitter")
@@ -88,7 +98,7 @@ def faults_of(netlist: Netlist, limiter: dict[str, Any], path: Path) -> Iterator
     yield "sense-bypassed", edits.with_link(netlist, near, far)
     resistors = [part for part in (*roles.get("base_stop", ()), *roles.get("preset", ())) if part.startswith("R")]
     stop = [(part, end) for part in resistors for end in "12" if edits.net_of(netlist, part, end) == near]
-    part, pin = stop[0] if stop else (shunt, "base")
+    part, pin = stop[0] if stop else (shunt, base)
     yield "base-on-far-end", edits.moved(netlist, part, pin, far)
     if is_supply(far):
         both = edits.twice(netlist, is_supply)
@@ -125,7 +135,7 @@ def test_a_fault_is_found_on_its_shunt_and_its_cure_holds(case: Case) -> None:
         return
     fault = only_fault(case)
     assert fault is not None
-    assert all(part in fault.says for part in fault.group.roles["shunt"])
+    assert all(part in fault.says for part in ((fault.turned,) if fault.turned else fault.group.roles["shunt"]))
     assert fault.exchange or fault.moves or fault.replaces or fault.parts_ends
     board, _ = found_on(case.drawn)
     _, after = found_on(cured(board, case.drawn, fault))
