@@ -61,6 +61,8 @@ class Rules:
     fault_patterns: tuple[Pattern, ...]
     plans: Plans = field(compare=False, repr=False)
     """How to search for the patterns and the fault patterns, in that order."""
+    sound_plans: Plans = field(compare=False, repr=False)
+    """How to search for the patterns alone."""
 
 
 def load_rules(extra_folders: Sequence[str | Path] = ()) -> Rules:
@@ -124,13 +126,15 @@ def read_rules(texts: Mapping[str, str]) -> Rules:
     described = {name: _described(one, shapes) for name, one in resolved.items()}
     sound = tuple(one for one in patterns if not one.fault)
     faults = tuple(one for one in patterns if one.fault)
+    plans = plans_for((*sound, *faults))
     return Rules(
         topologies={name: one for name, one in described.items() if not rules[name].fault},
         faults={name: one for name, one in described.items() if rules[name].fault},
         resolved=resolved,
         patterns=sound,
         fault_patterns=faults,
-        plans=plans_for((*sound, *faults)),
+        plans=plans,
+        sound_plans=Plans(plans.tasks[: len(sound)]),
     )
 
 
