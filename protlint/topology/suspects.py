@@ -54,8 +54,11 @@ def suspected_groups(index: Index, limiters: Sequence[Limiter]) -> Iterator[Grou
     taken = {element for one in limiters for elements in one.elements.values() for element in elements}
     seen = set()
     for near, far in _sense_resistors(index):
-        for carrier, is_right in _carriers(index, near, taken):
-            for core, shunts in _turned_apart(index, near, far, carrier, is_right, taken | {carrier}):
+        carriers = _carriers(index, near, taken)
+        found = list(_shunts(index, near, far, taken)) if carriers else []
+        for carrier, is_right in carriers if found or _has_diodes(index, far) else ():
+            apart = [(shunt, takes) for shunt, takes in found if shunt != carrier]
+            for core, shunts in _turned_apart(index, far, near, carrier, is_right, apart, taken | {carrier}):
                 if (core, shunts, carrier) not in seen:
                     seen.add((core, shunts, carrier))
                     yield Group(core, frozenset(shunts), (carrier,))
@@ -91,16 +94,25 @@ def _carriers(index: Index, near: int, taken: Set[int]) -> list[tuple[int, bool]
 
 
 def _turned_apart(
-    index: Index, near: int, far: int, carrier: int, is_right: bool, taken: Set[int]
+    index: Index,
+    far: int,
+    near: int,
+    carrier: int,
+    is_right: bool,
+    shunts: Sequence[tuple[int, Set[int]]],
+    taken: Set[int],
 ) -> Iterator[tuple[tuple[int, ...], tuple[int, ...]]]:
     """Yield which elements to try (one or several), and the shunt, for one pass device at one sense resistance."""
-    pins = index.terminals[carrier]
-    shunts = list(_shunts(index, near, far, taken))
-    if not shunts and not _has_diodes(index, far):
+    rows_end = _has_diodes(index, far)
+    if not shunts and not rows_end:
         return
+    pins = index.terminals[carrier]
     drives = _drives(index, [pins[CONTROL[index.kind[carrier]]]], {carrier})
-    any_drives = _drives(index, [net for net in pins.values() if net != near], {carrier})
-    beyond = _beyond_drivers(index, drives, taken) if is_right else {}
+    any_drives: set[int] = set()
+    beyond: dict[int, set[int]] = {}
+    if rows_end or any(takes for _, takes in shunts):  # else the shunt itself is what stands wrong
+        any_drives = _drives(index, [net for net in pins.values() if net != near], {carrier})
+        beyond = _beyond_drivers(index, drives, taken) if is_right else {}
     for shunt, takes in shunts:
         all_pins = set(index.terminals[shunt].values())
         if is_right and not drives.isdisjoint(_takes(index, all_pins - {far})):
@@ -110,7 +122,7 @@ def _turned_apart(
             own = all_pins | drives
             others = dict.fromkeys(one for net in all_pins for one in _free(index, net, taken) if one != shunt)
             yield from (((one,), (shunt,)) for one in others if len(own & set(index.terminals[one].values())) > 1)
-    if not _has_diodes(index, far):
+    if not rows_end:
         return
     for drive in sorted(any_drives.union(*beyond.values())):
         for row in _rows(index, drive, far):
