@@ -171,8 +171,9 @@ def _thyristor(place: Place, index: int, part: BoardPart, nodes: Mapping[str, st
     number = part.part_number if part.entry is None else part.entry.part_number
     lacking = [name for name in NEEDED if name not in ratings]
     if lacking:
-        keys = [f"{toml_key(number)}.ratings.{name}" for name in lacking] if number else ["a part number", *lacking]
-        notes.missing += [Missing("circuit", part.id, f"a model of {part.id}: {', '.join(keys)}")]
+        keys = ", ".join(f"{toml_key(number)}.ratings.{name}" if number else f"ratings.{name}" for name in lacking)
+        first = "" if number else f"a part number for {part.id}, then its "
+        notes.missing += [Missing("circuit", part.id, f"a model of {part.id}: {first}{keys}")]
         return []
     pair = two_transistors(ratings)
     notes.assumed += [("model", f"{part.id}: {sentence}") for sentence in pair.assumed]
