@@ -166,3 +166,44 @@ def test_a_turned_device_beside_others_leaves_their_limiter() -> None:
     assert fault.beside
     assert "Q1" not in limiter.roles["pass"]
     assert "Q1" in fault.group.roles["pass"]
+
+
+CORE = ("drive", "take", "load", "near", "far", "tap")
+"""The nets of a rule between which a shunt's pin may be mistaken."""
+
+LEAST_MOVED = 0.2
+"""The share of single pins moved to a neighbouring net that is told as a wiring fault: of the rest, most look like a circuit
+of another kind (a transistor that turns a gate off, a detector), and nothing but a missing limiter can be told of them."""
+
+
+def moved_shunts() -> Iterator[tuple[str, str, Netlist]]:
+    """Yield (pin, where to, netlist) for each pin of each shunt moved to each other net of its limiter."""
+    for path in sorted((FIXTURES / "circuits").glob("*.edf")):
+        netlist = read_netlist(path)
+        board, found = found_on(netlist)
+        limiter = found.limiters[0]
+        nets = {name: board.nets[limiter.bound[name]].name for name in CORE if name in limiter.bound}
+        part = limiter.roles["shunt"][0]
+        kind = board.part_of[part].kind
+        if len(found.limiters) > 1 or ALIKE.get(kind, kind) not in PINS:
+            continue
+        for pin, here in zip(pins_of(kind), stands(board, part)[1], strict=True):
+            for where, net in {net: name for name, net in reversed(nets.items()) if net != here}.items():
+                yield pin, net, edits.moved(netlist, part, pin, where)
+
+
+def test_the_table_of_single_pins_moved(capsys: pytest.CaptureFixture[str]) -> None:
+    """Print what is said where one pin of a shunt is on another net of its limiter."""
+    said: Counter[tuple[str, str, str]] = Counter()
+    answers = ("a fault", "still a limiter", "nothing")
+    for pin, where, drawn in moved_shunts():
+        _, found = found_on(drawn)
+        said[pin, where, "a fault" if found.faults else "still a limiter" if found.limiters else "nothing"] += 1
+    lines = ["", f"{'moved, to':<34}" + "".join(f"{one:>17}" for one in answers)]
+    for pin, where in sorted({(pin, where) for pin, where, _ in said}):
+        lines.append(f"{pin + ' to ' + where:<34}" + "".join(f"{said[pin, where, one] or '-':>17}" for one in answers))
+    total = {one: sum(number for (_, _, what), number in said.items() if what == one) for one in answers}
+    lines.append(f"{'together':<34}" + "".join(f"{total[one]:>17}" for one in answers))
+    with capsys.disabled():
+        print("\n".join(lines))
+    assert total["a fault"] >= LEAST_MOVED * sum(total.values())
