@@ -44,6 +44,13 @@ def spoiled(circuit: str) -> Iterator[tuple[str, Netlist]]:
     roles, nets = limiter["roles"], limiter["nets"]
     shunt, near, far = roles["shunt"][0], nets["sense"], nets["far"]
     yield "collector-emitter-swapped", edits.exchanged(netlist, (shunt, "collector"), (shunt, "emitter"))
+    rotated = edits.exchanged(netlist, (shunt, "collector"), (shunt, "base"))
+    yield "shunt-pins-exchanged", edits.exchanged(rotated, (shunt, "base"), (shunt, "emitter"))
+    carrier = roles["pass"][0]
+    ends = ("drain", "source") if carrier.startswith("M") else ("collector", "emitter")
+    yield "pass-pins-exchanged", edits.exchanged(netlist, *((carrier, end) for end in ends))
+    if is_supply(far):
+        yield "pass-polarity-wrong", edits.other_polarity(netlist, carrier)
     if roles.get("base_stop"):
         yield "base-on-far-end", edits.moved(netlist, shunt, "emitter", near)
         yield "collector-not-on-the-drive", edits.exchanged(netlist, (shunt, "collector"), (shunt, "base"))
