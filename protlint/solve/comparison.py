@@ -11,10 +11,12 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
-from protlint.solve import formulas
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.parameters import LINK_OHM
 from protlint.solve.solution import Currents, Point, Solution
+
+V_BE_BY_HAND = 0.6
+"""What a silicon transistor's base-emitter voltage is taken as by hand [V]; common practice of the trade."""
 
 LARGEST_DIFFERENCE = 0.05
 FAILING_SHARE = 0.1
@@ -26,6 +28,9 @@ FORMULAS: Mapping[str, str] = {
     "slope": "(V_BE (G_1 + G_2 + ...) - V G_2) / (R_S G_1), G = 1 / R, V from the output to the supply",
     "diode string": "(n - m) V_BE / R_S, n diodes beside m base-emitter junctions",
 }
+"""What is written down by hand, by name. Plain: US Army TC 9-62 (2005), para 4-131. Foldback: LM723 data sheet (ST), table of
+formulas. The others follow from the same node equation at the shunt's base, the diode string from the loop past its junctions.
+"""
 
 BASE_EMITTER = "the shunt's V_BE is 0.6 V"
 DIODE_DROP = "every junction drops 0.6 V"
@@ -167,7 +172,7 @@ def _shunt_case(circuit: Circuit, shunts: Sequence[Device], devices: Mapping[str
     near, R_S = sense
     sign = _sign(shunts[0])
     if base == near:
-        return _Case(R_S=R_S, R_1=0.0, V_BE=formulas.V_BE_BY_HAND)
+        return _Case(R_S=R_S, R_1=0.0, V_BE=V_BE_BY_HAND)
     R_1, name = None, "plain"
     legs: list[tuple[float, float]] = []
     for device in circuit.devices:
@@ -187,7 +192,7 @@ def _shunt_case(circuit: Circuit, shunts: Sequence[Device], devices: Mapping[str
             return None
     if R_1 is None:
         return None
-    return _Case(R_S=R_S, R_1=R_1, V_BE=formulas.V_BE_BY_HAND, legs=tuple(legs), name=name)
+    return _Case(R_S=R_S, R_1=R_1, V_BE=V_BE_BY_HAND, legs=tuple(legs), name=name)
 
 
 def _string_case(circuit: Circuit, diodes: Sequence[Device], devices: Mapping[str, Device]) -> _Case | None:
@@ -200,9 +205,7 @@ def _string_case(circuit: Circuit, diodes: Sequence[Device], devices: Mapping[st
         sense = _sense(circuit, devices, far)
         beside = None if sense is None else _junctions_between(circuit, top, sense[0])
         if sense is not None and beside is not None:
-            return _Case(
-                R_S=sense[1], R_1=0.0, V_BE=formulas.V_BE_BY_HAND, junctions=(len(diodes), beside), name="diode string"
-            )
+            return _Case(R_S=sense[1], R_1=0.0, V_BE=V_BE_BY_HAND, junctions=(len(diodes), beside), name="diode string")
     return None
 
 

@@ -13,9 +13,9 @@ from protlint.solve import devices
 from protlint.solve.circuit import Circuit, Device, Drive
 from protlint.solve.constants import BOLTZMANN_V_PER_K, KELVIN, T0_K
 from protlint.solve.dc import solve_lanes
-from protlint.solve.formulas import base_emitter_slope
 from protlint.solve.lanes import Lanes, known_voltages, parameters
 from protlint.solve.network import compile_network
+from tests.support.by_hand import base_emitter_slope
 from tests.support.circuits import fixed
 
 FULL = {"VAF": 60.0, "VAR": 12.0, "IKF": 0.1, "IKR": 0.02, "ISE": 1e-13, "NE": 1.6, "ISC": 3e-13, "NC": 1.8, "BR": 3.0}

@@ -2,14 +2,16 @@
 
 from __future__ import annotations
 
+import doctest
+
 import pytest
 
 from protlint.limits import Range
 from protlint.partdata.book import load_book
-from protlint.solve import formulas
 from protlint.solve.answers import solve
 from protlint.solve.circuit import Circuit, Device, Drive
 from protlint.solve.solution import Solution
+from tests.support import by_hand
 from tests.support.circuits import fixed
 from tests.support.ideal import AT_25_MV_DEGC, ideal_bipolar, ideal_follower, resistor, with_saturation_current
 
@@ -43,9 +45,7 @@ def test_class_ab_stage_that_gives_up_its_bias_at_100_ma() -> None:
     """Sedra and Smith, *Microelectronic Circuits*, problem D12.43: I_S 1e-14 A takes 2 mA at 100 mA with 6.51 ohm; at 75 mA
     it takes 2.99 uA."""
     shunt = with_saturation_current(1e-14, ambient_degC=AT_25_MV_DEGC)
-    assert formulas.base_emitter_voltage(2e-3, 1e-14, temperature_K=AT_25_MV_DEGC + 273.15) == pytest.approx(
-        0.6505, abs=1e-4
-    )
+    assert by_hand.base_emitter_voltage(2e-3, 1e-14, temperature_K=AT_25_MV_DEGC + 273.15) == pytest.approx(0.6505, abs=1e-4)
     assert sensed_A(ideal_follower(shunt, 6.51, 2e-3), AT_25_MV_DEGC) == pytest.approx(0.1, rel=2e-3)
     # the drive that leaves 2.99 uA to the shunt beside the pass device's base current at 75 mA
     circuit = ideal_follower(shunt, 6.51, 2.99e-6 + 0.075 / 1e5)
@@ -70,10 +70,10 @@ def test_sink_limit_of_the_741(sense_ohm: float, limit_A: float) -> None:
     20.2 mA, twice the resistance at 10 mA. The 19 uA of the input stage and 50 kohm from memory."""
     input_stage_A = 19e-6
     temperature_K = AT_25_MV_DEGC + 273.15
-    mirror_V = formulas.base_emitter_voltage(input_stage_A, 1e-14, temperature_K=temperature_K)
+    mirror_V = by_hand.base_emitter_voltage(input_stage_A, 1e-14, temperature_K=temperature_K)
     assert mirror_V == pytest.approx(0.534, abs=5e-4)
     shunt_A = input_stage_A + mirror_V / 50e3
-    assert formulas.base_emitter_voltage(shunt_A, 1e-14, temperature_K=temperature_K) == pytest.approx(0.545, abs=5e-4)
+    assert by_hand.base_emitter_voltage(shunt_A, 1e-14, temperature_K=temperature_K) == pytest.approx(0.545, abs=5e-4)
     shunt = with_saturation_current(1e-14, ambient_degC=AT_25_MV_DEGC)
     circuit = ideal_follower(shunt, sense_ohm, shunt_A + limit_A / 1e5, supply_V=15.0)
     assert sensed_A(circuit, AT_25_MV_DEGC) == pytest.approx(limit_A, rel=3e-3)
@@ -145,11 +145,11 @@ def test_lm723_limits_65_ma_with_10_ohm() -> None:
 )
 def test_foldback_designs(output_V: float, knee_A: float, short_A: float, k: float, sense_ohm: float) -> None:
     """The law of the LM723 data sheet (ST), table of foldback formulas, with V_SENSE 0.6 V: knee and short as designed."""
-    assert formulas.foldback_design(0.6, output_V, knee_A, short_A) == pytest.approx((k, sense_ohm), abs=1e-4)
+    assert by_hand.foldback_design(0.6, output_V, knee_A, short_A) == pytest.approx((k, sense_ohm), abs=1e-4)
     lower = 1e3
     upper = lower * (1.0 / k - 1.0)
     for at_V, limit_A in ((0.0, short_A), (output_V, knee_A)):
-        assert formulas.foldback_limit(0.6, sense_ohm, upper, lower, at_V) == pytest.approx(limit_A, rel=1e-3)
+        assert by_hand.foldback_limit(0.6, sense_ohm, upper, lower, at_V) == pytest.approx(limit_A, rel=1e-3)
         more = (resistor("R1", "SNS", "B", upper), resistor("R2", "B", "GND", lower))
         shunt = ideal_bipolar(0.6, 1e-4)
         circuit = ideal_follower(
@@ -161,8 +161,8 @@ def test_foldback_designs(output_V: float, knee_A: float, short_A: float, k: flo
 def test_divider_preset() -> None:
     """(V_BE / R_S)(1 + R_1 / R_2) + I_B R_1 / R_S, the node equation at the shunt's base: 0.22 ohm, 220 ohm, 220 ohm and
     0.62 V give 5.64 A, 20 uA of base current 0.02 A more."""
-    assert formulas.preset_limit(0.62, 0.22, 220.0, 220.0) == pytest.approx(5.64, abs=5e-3)
-    assert formulas.preset_limit(0.62, 0.22, 220.0, 220.0, I_B=20e-6) == pytest.approx(5.66, abs=5e-3)
+    assert by_hand.preset_limit(0.62, 0.22, 220.0, 220.0) == pytest.approx(5.64, abs=5e-3)
+    assert by_hand.preset_limit(0.62, 0.22, 220.0, 220.0, I_B=20e-6) == pytest.approx(5.66, abs=5e-3)
     more = (resistor("R1", "SNS", "B", 220.0), resistor("R2", "B", "OUT", 220.0))
     for gain, limit_A in ((1e5, 5.636), (100.0, 5.656)):
         shunt = ideal_bipolar(0.62, 2e-3, B_F=gain)
@@ -174,16 +174,16 @@ def test_slope_limiter() -> None:
     """V_BE (G_1 + G_2 + G_3) = I R_S (G_1 + G_2) + V_CE G_2, the node equation at the shunt's base: 0.22 ohm, 220 ohm,
     10 kohm, 270 ohm, 0.62 V give 5.07 A at V_CE 0, 0.173 A at 50 V, none at 51.8 V, and 65.5 W at most, at 25.9 V."""
     parts = (0.62, 0.22, 220.0, 10e3, 270.0)
-    assert formulas.slope_limit(*parts, 0.0) == pytest.approx(5.07, abs=5e-3)
-    assert formulas.slope_limit(*parts, 50.0) == pytest.approx(0.173, abs=1e-3)
-    assert formulas.slope_limit(*parts, 51.8) == pytest.approx(0.0, abs=5e-3)
-    power_W, at_V = formulas.slope_greatest_power(*parts)
+    assert by_hand.slope_limit(*parts, 0.0) == pytest.approx(5.07, abs=5e-3)
+    assert by_hand.slope_limit(*parts, 50.0) == pytest.approx(0.173, abs=1e-3)
+    assert by_hand.slope_limit(*parts, 51.8) == pytest.approx(0.0, abs=5e-3)
+    power_W, at_V = by_hand.slope_greatest_power(*parts)
     assert (power_W, at_V) == pytest.approx((65.5, 25.9), rel=2e-3)
-    assert formulas.slope_limit(*parts, at_V) * at_V == pytest.approx(power_W, rel=1e-9)
+    assert by_hand.slope_limit(*parts, at_V) * at_V == pytest.approx(power_W, rel=1e-9)
     supply_V = 60.0
     more = (resistor("R1", "SNS", "B", 220.0), resistor("R2", "SUP", "B", 10e3), resistor("R3", "B", "OUT", 270.0))
     for V_CE in (10.0, 25.9, 50.0):
-        limit_A = formulas.slope_limit(*parts, V_CE)
+        limit_A = by_hand.slope_limit(*parts, V_CE)
         shunt = ideal_bipolar(0.62, 1e-3)
         # the output stands below the sense resistance's upper end by its drop
         output_V = supply_V - V_CE - limit_A * 0.22
@@ -194,12 +194,6 @@ def test_slope_limiter() -> None:
         assert held is not None
         # the output also gets what the divider's third leg carries
         assert held.states["RS"].current_A == pytest.approx(limit_A, rel=4e-3)
-
-
-def test_slope_without_its_leg_is_a_preset() -> None:
-    """Identity: with no conductance to the supply the slope law becomes the divider preset's."""
-    plain = formulas.slope_limit(0.62, 0.22, 220.0, 1e15, 270.0, 30.0)
-    assert plain == pytest.approx(formulas.preset_limit(0.62, 0.22, 220.0, 270.0), rel=1e-9)
 
 
 def test_booster_of_a_three_terminal_regulator() -> None:
@@ -283,3 +277,9 @@ def test_bench_reading_of_a_sink_lies_within_the_printed_ranges() -> None:
     assert currents.holds_range_A[0] < 0.371 < currents.holds_range_A[1]
     assert currents.begins_A == pytest.approx(0.300, rel=0.1)
     assert currents.holds_A == pytest.approx(0.371, rel=0.1)
+
+
+def test_the_closed_forms_give_what_their_examples_say() -> None:
+    found = doctest.testmod(by_hand)
+    assert found.failed == 0
+    assert found.attempted > 0

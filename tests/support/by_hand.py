@@ -1,9 +1,9 @@
-"""Closed forms for limiters, as working people calculate them by hand: flat functions on SI numbers.
+"""Closed forms for limiters, as working people calculate them by hand: flat functions on SI numbers, to hold solved circuits
+against.
 
-Every form neglects something; ``protlint.solve.comparison`` says what, circuit by circuit. Symbols: V_BE the shunt's
-base-emitter voltage, R_S the sense resistance, R_1 from the sense resistance to the shunt's base, R_2 (and R_3) from the
-base elsewhere, I_B the shunt's base current, V_O the output voltage above the divider's other end, V_CE the voltage from the
-sense resistance to the supply.
+Every form neglects something. Symbols: V_BE the shunt's base-emitter voltage, R_S the sense resistance, R_1 from the sense
+resistance to the shunt's base, R_2 (and R_3) from the base elsewhere, I_B the shunt's base current, V_O the output voltage
+above the divider's other end, V_CE the voltage from the sense resistance to the supply.
 """
 
 from __future__ import annotations
@@ -11,36 +11,6 @@ from __future__ import annotations
 import math
 
 from protlint.solve.constants import BOLTZMANN_V_PER_K, T0_K
-
-V_BE_BY_HAND = 0.6
-"""What a silicon transistor's base-emitter voltage is taken as by hand; common practice of the trade."""
-
-
-def plain_limit(V_BE: float, R_S: float, *, R_1: float = 0.0, I_B: float = 0.0) -> float:
-    """Return the limit of a plain limiter, V_BE / R_S, with the base stop's drop (V_BE + I_B R_1) / R_S.
-
-    Parameters
-    ----------
-    V_BE, R_S, R_1, I_B
-        Base-emitter voltage [V], sense resistance and base stop [ohm], base current [A].
-
-    Returns
-    -------
-    float
-        Output current [A].
-
-    Examples
-    --------
-    A series regulator with 1 ohm and 0.6 V:
-
-    >>> plain_limit(0.6, 1.0)
-    0.6
-
-    References
-    ----------
-    US Army TC 9-62 (2005), para 4-131.
-    """
-    return (V_BE + I_B * R_1) / R_S
 
 
 def preset_limit(V_BE: float, R_S: float, R_1: float, R_2: float, *, I_B: float = 0.0) -> float:
@@ -164,24 +134,6 @@ def slope_greatest_power(V_BE: float, R_S: float, R_1: float, R_2: float, R_3: f
     G_1, G_2, G_3 = 1.0 / R_1, 1.0 / R_2, 1.0 / R_3
     pull = V_BE * (G_1 + G_2 + G_3)
     return pull * pull / (4.0 * R_S * (G_1 + G_2) * G_2), pull / (2.0 * G_2)
-
-
-def diode_string_limit(diodes: int, junctions: int, R_S: float, *, V_BE: float = V_BE_BY_HAND) -> float:
-    """Return the limit of a string of diodes past base-emitter junctions and sense resistance, (n - m) V_BE / R_S.
-
-    Parameters
-    ----------
-    diodes, junctions
-        Diodes in the string, base-emitter junctions beside it.
-    R_S, V_BE
-        Sense resistance [ohm], voltage of every junction [V].
-
-    Returns
-    -------
-    float
-        Output current [A].
-    """
-    return (diodes - junctions) * V_BE / R_S
 
 
 def base_emitter_voltage(I_C: float, I_S: float, *, temperature_K: float = T0_K, N_F: float = 1.0) -> float:
