@@ -20,14 +20,13 @@ Corners = Sequence[tuple[float, float]]
 
 @dataclass(frozen=True, slots=True)
 class Bound:
-    """What may flow at a voltage and what bounds it; ``at_most`` where the curve ends before that voltage: it is no more.
+    """What may flow at a voltage and what bounds it; where the curve ends before that voltage it is no more than this.
 
     ``cold_A`` is what may flow with the case at 25 degC, ``how`` where that comes from, ``left`` the share left of it.
     """
 
     current_A: float
     by: str
-    at_most: bool = False
     cold_A: float = math.nan
     how: str = ""
     left: float = 1.0
@@ -79,7 +78,6 @@ def allowed(
         ends = Bound(
             last_A * breakdown_left,
             "what is left at the curve's last corner",
-            at_most=True,
             cold_A=last_A,
             how=f"the curve's last corner, {corners[-1][0]:g} V",
             left=breakdown_left,

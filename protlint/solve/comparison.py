@@ -28,9 +28,8 @@ FORMULAS: Mapping[str, str] = {
     "slope": "(V_BE (G_1 + G_2 + ...) - V G_2) / (R_S G_1), G = 1 / R, V from the output to the supply",
     "diode string": "(n - m) V_BE / R_S, n diodes beside m base-emitter junctions",
 }
-"""What is written down by hand, by name. Plain: US Army TC 9-62 (2005), para 4-131. Foldback: LM723 data sheet (ST), table of
-formulas. The others follow from the same node equation at the shunt's base, the diode string from the loop past its junctions.
-"""
+"""What is written down by hand, by name. Plain: US Army TC 9-62 (2005), para 4-131. Foldback: LM723 data sheet (ST), table
+of formulas. Preset and slope: the node equation at the shunt's base. Diode string: the sum of voltages round its loop."""
 
 BASE_EMITTER = "the shunt's V_BE is 0.6 V"
 DIODE_DROP = "every junction drops 0.6 V"

@@ -24,7 +24,6 @@ class Memo:
     """Solutions of one review by canonical circuit and ambients, with the names they were solved under."""
 
     kept: OrderedDict[Key, tuple[Names, Solution]] = field(default_factory=OrderedDict)
-    hits: int = 0
 
     def recall(self, circuit: Circuit, ambients_degC: tuple[float, ...]) -> Solution | None:
         """Return the solution of an equal circuit under this circuit's names, or None."""
@@ -33,7 +32,6 @@ class Memo:
         if found is None:
             return None
         self.kept.move_to_end(key)
-        self.hits += 1
         then, solution = found
         assumed = circuit.assumed + tuple(sentence for device in circuit.devices for sentence in device.assumed)
         devices, nodes = (dict(zip(old, new, strict=True)) for old, new in zip(then, names, strict=True))

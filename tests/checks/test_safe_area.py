@@ -30,8 +30,7 @@ def test_below_the_first_corner_the_curves_power_bounds() -> None:
 
 def test_beyond_the_last_corner_no_more_than_there_is_known() -> None:
     bound = allowed(MJ15003, 120.0, thermal_left=1.0, breakdown_left=1.0)
-    assert bound.at_most
-    assert bound.current_A == 1.0
+    assert (bound.current_A, bound.by) == (1.0, "what is left at the curve's last corner")
 
 
 def test_heat_takes_the_thermal_bound_faster_than_second_breakdown() -> None:

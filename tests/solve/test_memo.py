@@ -45,9 +45,7 @@ def test_a_recalled_solution_is_the_one_that_solving_gives(name: str) -> None:
     circuit = bench_circuit(name)
     solve(circuit, AMBIENTS, memo=memo)
     other = called_otherwise(circuit, "CH2")
-    recalled = solve(other, AMBIENTS, memo=memo)
-    assert memo.hits == 1
-    assert recalled == solve(other, AMBIENTS)
+    assert memo.recall(other, AMBIENTS) == solve(other, AMBIENTS, memo=memo) == solve(other, AMBIENTS)
 
 
 def test_names_that_devices_and_nets_share_do_not_mix_up() -> None:
@@ -60,8 +58,7 @@ def test_names_that_devices_and_nets_share_do_not_mix_up() -> None:
     other = replace(circuit, devices=devices, drive=replace(circuit.drive, node="Q1"))
     memo = Memo()
     solve(circuit, AMBIENTS, memo=memo)
-    assert solve(other, AMBIENTS, memo=memo) == solve(other, AMBIENTS)
-    assert memo.hits == 1
+    assert memo.recall(other, AMBIENTS) == solve(other, AMBIENTS, memo=memo) == solve(other, AMBIENTS)
 
 
 def test_anything_that_matters_makes_another_circuit() -> None:
@@ -76,10 +73,9 @@ def test_anything_that_matters_makes_another_circuit() -> None:
         replace(circuit, output_V=6.0),
         replace(circuit, drive=replace(circuit.drive, current_A=0.01)),
     ):
-        solve(other, AMBIENTS, memo=memo)
-    solve(circuit, (-10.0, 25.0, 85.0), memo=memo)
-    assert memo.hits == 0
-    assert len(memo.kept) == 7
+        assert memo.recall(other, AMBIENTS) is None
+    assert memo.recall(circuit, (-10.0, 25.0, 85.0)) is None
+    assert memo.recall(circuit, AMBIENTS) is not None
 
 
 def test_the_memory_is_bounded(monkeypatch: pytest.MonkeyPatch) -> None:
@@ -88,8 +84,7 @@ def test_the_memory_is_bounded(monkeypatch: pytest.MonkeyPatch) -> None:
     for output_V in (2.0, 3.0, 4.0):
         solve(replace(bench_circuit("sink"), output_V=output_V), AMBIENTS, memo=memo)
     assert len(memo.kept) == 2
-    solve(replace(bench_circuit("sink"), output_V=2.0), AMBIENTS, memo=memo)
-    assert memo.hits == 0
+    assert memo.recall(replace(bench_circuit("sink"), output_V=2.0), AMBIENTS) is None
 
 
 def test_a_circuit_that_cannot_be_solved_is_not_kept() -> None:
