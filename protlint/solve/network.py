@@ -22,6 +22,7 @@ from protlint.solve.circuit import Circuit, Device
 from protlint.solve.devices import Array
 from protlint.solve.elimination import Pattern, least_degree_order, pattern_of, scatter
 from protlint.solve.parameters import LINK_OHM, CircuitError, complete
+from protlint.solve.solvable import check_ends, check_floating, check_links
 
 DRIVE_SOURCE = "drive source"
 """Name of the node behind the drive's resistance or current limit."""
@@ -30,8 +31,8 @@ LEAST_SOURCE_OHM = 1e-3
 """Resistance of a drive that states none, where its current is limited or goes straight into a junction: there a stiff one
 would mean currents beyond all numbers."""
 
-LINK_AT_MOST_OHM = 1e-3
-GREATEST_V = 1e5
+PORT_FAMILIES = (("bipolar", ("npn", "pnp"), 2), ("mosfet", ("nmos", "pmos"), 2), ("diode", ("diode", "zener"), 1))
+"""Families of devices in the order of their ports: name, kinds, ports of a device."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -108,43 +109,21 @@ def compile_network(circuit: Circuit) -> Network:
     if len(models) != len(circuit.devices):
         raise CircuitError("two devices share one name")
     held = tuple(node for node in circuit.held if node not in (circuit.output, circuit.drive.node))
-    _check_ends(circuit)
+    check_ends(circuit)
     stiff = circuit.drive.resistance_ohm == 0.0 and circuit.drive.current_A is None and not _drives_a_junction(circuit)
     known = (*held, circuit.output, circuit.drive.node if stiff else DRIVE_SOURCE)
     conducting = [device for device in circuit.devices if device.kind != "capacitor"]
     unknown = tuple(dict.fromkeys(node for device in conducting for node in device.nodes if node not in known))
     if not stiff and circuit.drive.node not in unknown:
         unknown = (*unknown, circuit.drive.node)
-    _check_links(conducting, models, known, circuit)
-    _check_floating(conducting, unknown, known, circuit.drive.node if not stiff else None)
+    check_links(conducting, models, known, circuit)
+    check_floating(conducting, unknown, known, circuit.drive.node if not stiff else None)
     together = [device.nodes for device in conducting]
     unknown = least_degree_order(unknown, together)
     pattern = pattern_of(unknown, together)
     place = {node: index for index, node in enumerate((*unknown, *known))}
 
-    groups: list[Group] = []
-    port_ends: list[tuple[int, int]] = []
-    for family, kinds, ports in (
-        ("bipolar", ("npn", "pnp"), 2),
-        ("mosfet", ("nmos", "pmos"), 2),
-        ("diode", ("diode", "zener"), 1),
-    ):
-        members = tuple(device for device in conducting if device.kind in kinds)
-        if not members:
-            continue
-        ends = [[place[node] for node in device.nodes] for device in members]
-        start = len(port_ends)
-        if ports == 2:
-            port_ends += [(control, common) for _, control, common in ends]
-            port_ends += [(control, other) for other, control, _ in ends]
-        else:
-            port_ends += [(anode, cathode) for anode, cathode in ends]
-        groups.append(_group(family, members, ports, slice(start, len(port_ends)), models, circuit.shunt))
-    if circuit.drive.current_A is not None:
-        row = len(port_ends)
-        port_ends.append((place[DRIVE_SOURCE], place[circuit.drive.node]))
-        groups.append(_group("drive", (), 1, slice(row, row + 1), models, ()))
-
+    groups, port_ends = _groups(circuit, conducting, models, place)
     resistors = tuple(device for device in conducting if device.kind in ("resistor", "inductor"))
     if circuit.drive.current_A is None and not stiff:
         source = {"R": circuit.drive.resistance_ohm or LEAST_SOURCE_OHM}
@@ -177,6 +156,31 @@ def compile_network(circuit: Circuit) -> Network:
         bridge_scatter=scatter(pattern, incidence[:, : len(unknown)], _each_alone(len(incidence))).sum(axis=1),
         limited_drive=circuit.drive.current_A is not None,
     )
+
+
+def _groups(
+    circuit: Circuit, conducting: Sequence[Device], models: dict[str, dict[str, float]], place: dict[str, int]
+) -> tuple[list[Group], list[tuple[int, int]]]:
+    """Return the devices' groups in the order of their ports, and the two nodes of every port."""
+    groups: list[Group] = []
+    port_ends: list[tuple[int, int]] = []
+    for family, kinds, ports in PORT_FAMILIES:
+        members = tuple(device for device in conducting if device.kind in kinds)
+        if not members:
+            continue
+        ends = [[place[node] for node in device.nodes] for device in members]
+        start = len(port_ends)
+        if ports == 2:
+            port_ends += [(control, common) for _, control, common in ends]
+            port_ends += [(control, other) for other, control, _ in ends]
+        else:
+            port_ends += [(anode, cathode) for anode, cathode in ends]
+        groups.append(_group(family, members, ports, slice(start, len(port_ends)), models, circuit.shunt))
+    if circuit.drive.current_A is not None:
+        row = len(port_ends)
+        port_ends.append((place[DRIVE_SOURCE], place[circuit.drive.node]))
+        groups.append(_group("drive", (), 1, slice(row, row + 1), models, ()))
+    return groups, port_ends
 
 
 def _drives_a_junction(circuit: Circuit) -> bool:
@@ -240,91 +244,3 @@ def _parts(incidence: Array, unknown: int) -> tuple[Array, Array]:
 
 def _each_alone(count: int) -> list[tuple[int, int]]:
     return [(row, row) for row in range(count)]
-
-
-def _check_ends(circuit: Circuit) -> None:
-    drive, reach_V = circuit.drive, circuit.output_reach_V
-    if not all(abs(value) <= GREATEST_V for value in reach_V):
-        raise CircuitError(f"an output that reaches from {reach_V[0]:g} V to {reach_V[1]:g} V makes no sense")
-    if circuit.output_V is not None and not abs(circuit.output_V) <= GREATEST_V:
-        raise CircuitError(f"a working output voltage of {circuit.output_V:g} V makes no sense")
-    if circuit.output == drive.node:
-        raise CircuitError(f"the drive and the output are one net, {circuit.output}")
-    if not circuit.shorts or any(node not in circuit.held for node in circuit.shorts):
-        raise CircuitError("no held net a short could tie the output to")
-    ends = [
-        *circuit.held.items(),
-        (f"the drive's low end at {drive.node}", drive.low_V),
-        (f"its high end at {drive.node}", drive.high_V),
-    ]
-    for name, ends_V in ends:
-        if not (
-            all(abs(value) <= GREATEST_V for value in (ends_V.low, ends_V.usual, ends_V.high))
-            and ends_V.low <= ends_V.usual <= ends_V.high
-        ):
-            raise CircuitError(f"{name}: {ends_V.low:g} V, {ends_V.usual:g} V, {ends_V.high:g} V make no range")
-    if not 0.0 <= drive.resistance_ohm <= 1e12:
-        raise CircuitError(f"the drive's resistance of {drive.resistance_ohm:g} ohm makes no sense")
-    if drive.current_A is not None and not 0.0 < drive.current_A <= 1e4:
-        raise CircuitError(f"a drive that gives {drive.current_A:g} A at most drives nothing")
-    names = {device.name for device in circuit.devices}
-    missing = [name for name in (*circuit.shunt, *circuit.pass_devices, *circuit.sense) if name not in names]
-    if missing:
-        raise CircuitError(f"{missing[0]} is not among the circuit's devices")
-
-
-def _joined(pairs: Iterable[tuple[str, str]]) -> dict[str, str]:
-    """Return each node's representative after joining the pairs."""
-    parent: dict[str, str] = {}
-
-    def root(node: str) -> str:
-        parent.setdefault(node, node)
-        while parent[node] != node:
-            parent[node] = parent[parent[node]]
-            node = parent[node]
-        return node
-
-    for a, b in pairs:
-        parent[root(a)] = root(b)
-    return {node: root(node) for node in list(parent)}
-
-
-def _check_links(
-    conducting: Sequence[Device], models: dict[str, dict[str, float]], known: Sequence[str], circuit: Circuit
-) -> None:
-    links = [
-        (device.nodes[0], device.nodes[1])
-        for device in conducting
-        if device.kind == "inductor" or (device.kind == "resistor" and models[device.name]["R"] <= LINK_AT_MOST_OHM)
-    ]
-    joined = _joined(links)
-    by_root: dict[str, str] = {}
-    for node in known:
-        if node not in joined:
-            continue
-        other = by_root.setdefault(joined[node], node)
-        if other == node:
-            continue
-        both_held = other in circuit.held and node in circuit.held
-        if not both_held or circuit.held[other].usual != circuit.held[node].usual:
-            raise CircuitError(f"{other} and {node} are joined by a link though each is held at its own voltage")
-
-
-def _check_floating(conducting: Sequence[Device], unknown: Sequence[str], known: Sequence[str], driven: str | None) -> None:
-    paths: list[tuple[str, str]] = []
-    for device in conducting:
-        first, *others = device.nodes
-        if device.kind in ("nmos", "pmos"):
-            others = others[1:]
-        paths += [(first, other) for other in others]
-    paths += [(node, known[0]) for node in known]
-    if driven is not None:
-        paths.append((driven, known[0]))
-    joined = _joined(paths)
-    anchored = joined[known[0]]
-    active = {
-        node: device.name for device in conducting if device.kind not in ("resistor", "inductor") for node in device.nodes
-    }
-    for node in unknown:
-        if joined.get(node) != anchored and node in active:
-            raise CircuitError(f"net {node} at {active[node]} hangs on nothing: no path holds its voltage")
