@@ -1,31 +1,21 @@
 """Two reports compared: what a revision changed on the limiters, which part did it, and which findings are new or gone.
 
-Limiters are matched by structure, so that renumbered designators and renamed nets make no noise; of several netlists on a
-side, boards by what their files are called. Both sides are reports in the shape of ``review-1.schema.json``.
+``protlint.pairing`` finds what is held against what. Both sides are reports in the shape of ``review-1.schema.json``.
 """
 
 from __future__ import annotations
 
-from collections import Counter
-from collections.abc import Callable, Mapping, Sequence
-from functools import partial
-from pathlib import PurePosixPath
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 from protlint.findings import LEVELS
-
-Report = Mapping[str, Any]
-Pair = tuple[Report, Report]
+from protlint.pairing import Pair, Report, matched, matched_boards, type_of
 
 SAME = 1e-3
 """Relative change below which a figure counts as the same: the rounding of reports and solvers stays far below it."""
 
-LEAST_LIKENESS = 5.0
-"""Below this two limiters are not one limiter changed, but one gone and one new."""
-
 FIGURES = ("carries_A", "most_A", "holds_A", "damping", "pass_power_W")
 """What a comparison follows, at usual ambient."""
-
 
 NO_BOARD: Report = {"netlist": None, "limiters": [], "findings": [], "remarks": []}
 """Stands for a board that is on the other side only."""
@@ -48,57 +38,6 @@ def compare_together(before: Report, after: Report) -> dict[str, Any]:
         if not unread:
             compared.append(compare(*(NO_BOARD if one is None else one for one in pair)))
     return {"compare": 1, "boards": compared, "not_compared": not_compared, "remarks": _remarks(before, after)}
-
-
-def matched_boards(before: Sequence[Report], after: Sequence[Report]) -> list[tuple[Report | None, Report | None]]:
-    """Pair the boards of two sides: those after in their order, with None where none was before; then those only before.
-
-    Boards go by their file: the whole name, the name below the folder that all of the side lie in, as much of its end as
-    only one on each side has; then, for those renamed, by content, and by design.
-    """
-    if len(before) == len(after) == 1:
-        return [(before[0], after[0])]
-    left, right = dict(enumerate(before)), dict(enumerate(after))
-    pairs: dict[int, Report] = {}
-    below = {id(board): _below(_way(board), side) for side in (before, after) for board in side}
-    longest = max((len(_way(board)) for board in (*before, *after)), default=0)
-    stages: list[Callable[[Report], Any]] = [_way, lambda board: below[id(board)]]
-    stages += [partial(_ending, length=length) for length in range(longest, 0, -1)]
-    stages += [partial(_fact, name=name) for name in ("sha256", "design")]
-    for stage in stages:
-        ours, theirs = (_alone({place: stage(board) for place, board in side.items()}) for side in (left, right))
-        for key in ours.keys() & theirs.keys():
-            pairs[theirs[key]] = left.pop(ours[key])
-            del right[theirs[key]]
-    return [(pairs.get(place), board) for place, board in enumerate(after)] + [(board, None) for board in left.values()]
-
-
-def _way(board: Report) -> tuple[str, ...]:
-    """Return the parts of a board's file name."""
-    return PurePosixPath(board["netlist"]["file"] if "netlist" in board else board["file"] or "").parts
-
-
-def _ending(board: Report, *, length: int) -> tuple[str, ...]:
-    return _way(board)[-length:]
-
-
-def _fact(board: Report, *, name: str) -> Any:
-    return board["netlist"][name] if "netlist" in board else None
-
-
-def _below(way: tuple[str, ...], side: Sequence[Report]) -> tuple[str, ...]:
-    """Return what is left of a way without the folders that all boards of a side lie in."""
-    folders = [_way(board)[:-1] for board in side]
-    shared = next(
-        (length for length in range(len(way) - 1, 0, -1) if all(one[:length] == way[:length] for one in folders)), 0
-    )
-    return way[shared:]
-
-
-def _alone(keys: Mapping[int, Any]) -> dict[Any, int]:
-    """Return the places of keys that stand once."""
-    often = Counter(keys.values())
-    return {key: place for place, key in keys.items() if key and often[key] == 1}
 
 
 def compare(before: Report, after: Report) -> dict[str, Any]:
@@ -132,63 +71,6 @@ def _remarks(before: Report, after: Report) -> dict[str, list[str]]:
         "new": [text for text in after["remarks"] if text not in before["remarks"]],
         "gone": [text for text in before["remarks"] if text not in after["remarks"]],
     }
-
-
-def matched(before: Sequence[Report], after: Sequence[Report]) -> tuple[list[Pair], list[Report], list[Report]]:
-    """Pair limiters of two reports, and return the pairs, those only before and those only after.
-
-    Limiters that are alike part by part are paired first (of several, those of one name or one output net); the rest by
-    likeness, the likest first.
-    """
-    pairs: list[tuple[int, int]] = []
-    left, right = dict(enumerate(before)), dict(enumerate(after))
-    for alike in (_by_name, _by_output, _by_structure):
-        waiting: dict[Any, list[int]] = {}
-        for place, limiter in left.items():
-            waiting.setdefault(alike(limiter), []).append(place)
-        for place, limiter in list(right.items()):
-            same = waiting.get(alike(limiter))
-            if same:
-                pairs.append((same.pop(0), place))
-                del left[pairs[-1][0]], right[place]
-    scored = sorted(
-        ((-_likeness(old, new), i, j) for i, old in left.items() for j, new in right.items()),
-    )
-    for score, i, j in scored:
-        if -score >= LEAST_LIKENESS and i in left and j in right:
-            pairs.append((i, j))
-            del left[i], right[j]
-    return [(before[i], after[j]) for i, j in sorted(pairs)], list(left.values()), list(right.values())
-
-
-def _by_structure(limiter: Report) -> Any:
-    parts = Counter((part["role"], *_type(part)) for part in limiter["parts"])
-    return limiter["topology"], limiter["polarity"], frozenset(parts.items())
-
-
-def _by_output(limiter: Report) -> Any:
-    return _by_structure(limiter), limiter["nets"]["output"]
-
-
-def _by_name(limiter: Report) -> Any:
-    return _by_output(limiter), limiter["id"]
-
-
-def _type(part: Report) -> tuple[Any, ...]:
-    """Return what a part is, apart from its name."""
-    return part["kind"], part["part_number"], part["value"]
-
-
-def _likeness(old: Report, new: Report) -> float:
-    """Return how much two limiters have in common: names weigh little, structure weighs more."""
-    if old["polarity"] != new["polarity"]:
-        return 0.0
-    score = 3.0 if old["topology"] == new["topology"] else 0.0
-    score += 2.0 if old["id"] == new["id"] else 0.0
-    score += sum(1.0 for net in old["nets"] if old["nets"][net] is not None and old["nets"][net] == new["nets"].get(net))
-    ours, theirs = (Counter((part["role"], *_type(part)) for part in one["parts"]) for one in (old, new))
-    shared, whole = (ours & theirs).total(), max(ours.total(), theirs.total(), 1)
-    return score + 4.0 * shared / whole
 
 
 def _change(old: Report, new: Report) -> dict[str, Any]:
@@ -251,7 +133,7 @@ def _changed_parts(old: Report, new: Report) -> list[dict[str, Any]]:
         ours = [part for part in old["parts"] if part["role"] == role]
         theirs = [part for part in new["parts"] if part["role"] == role]
         for part in list(ours):
-            same = next((other for other in theirs if _type(other) == _type(part)), None)
+            same = next((other for other in theirs if type_of(other) == type_of(part)), None)
             if same is not None:
                 ours.remove(part)
                 theirs.remove(same)
@@ -325,4 +207,4 @@ def _key(
         return finding["check"], places[limiter], tuple(sorted(roles.get((limiter, part), "") for part in finding["parts"]))
     if not renumbered:
         return finding["check"], None, finding["fingerprint"]
-    return finding["check"], None, tuple(sorted(str(_type(place)) for place in finding["places"]))
+    return finding["check"], None, tuple(sorted(str(type_of(place)) for place in finding["places"]))

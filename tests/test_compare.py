@@ -9,7 +9,8 @@ from typing import Any
 
 import pytest
 
-from protlint.compare import compare, compare_together, matched_boards
+from protlint.compare import compare, compare_together
+from protlint.pairing import matched_boards
 from protlint.report.compare_text import comparison_document, held_back_by, rendered_comparison
 from protlint.report.document import document
 from protlint.report.layout import COLUMNS, width

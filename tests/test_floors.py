@@ -15,7 +15,7 @@ FLOORS = (
     ("cli",),
     ("report",),
     ("pipeline", "compare"),
-    ("waivers", "idle"),
+    ("waivers", "idle", "pairing"),
     ("checks",),
     ("solve",),
     ("topology",),
