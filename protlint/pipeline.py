@@ -30,7 +30,8 @@ from protlint.findings import (
     stamp_fingerprints,
 )
 from protlint.idle import idle_tables
-from protlint.limits import LimiterLimits, Limits, load_limits, needs_of
+from protlint.limits import LimiterLimits, Limits, needs_of
+from protlint.limits_file import load_limits
 from protlint.netlist import read_netlist
 from protlint.netlist.forms import no_collection
 from protlint.netlist.model import Netlist

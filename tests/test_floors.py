@@ -22,7 +22,7 @@ FLOORS = (
     ("board",),
     ("netlist",),
     ("partdata",),
-    ("limits",),
+    ("limits", "limits_file"),
     ("findings",),
     ("toml",),
     ("quantities", "sources"),

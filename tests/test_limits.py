@@ -10,7 +10,8 @@ from pathlib import Path
 
 import pytest
 
-from protlint.limits import CheckSetting, DriveLimits, LimiterLimits, Limits, Peak, Range, fits, load_limits, needs_of
+from protlint.limits import CheckSetting, DriveLimits, LimiterLimits, Limits, Peak, Range, fits, needs_of
+from protlint.limits_file import load_limits
 from protlint.sources import FileError, InputError
 from tests.support.paths import FIXTURES
 
@@ -147,6 +148,7 @@ def test_a_missing_file_and_a_folder(tmp_path: Path) -> None:
 
 def test_a_file_without_compound_units_leaves_pint_alone() -> None:
     program = (
-        f"import sys; from protlint.limits import load_limits; load_limits({str(FULL)!r}); sys.exit('pint' in sys.modules)"
+        f"import sys; from protlint.limits_file import load_limits; load_limits({str(FULL)!r}); "
+        "sys.exit('pint' in sys.modules)"
     )
     assert subprocess.run([sys.executable, "-c", program], check=False).returncode == 0

@@ -6,7 +6,7 @@ from collections.abc import Iterable, Mapping, Sequence
 from itertools import pairwise
 from pathlib import Path
 
-from protlint.limits import pin_roles
+from protlint.limits_file import pin_roles
 from protlint.partdata.entry import HfePoint, PartEntry, SafeArea, TransientPoint
 from protlint.partdata.identities import Contradiction, careful
 from protlint.partdata.ratings import MODEL_OF, RATINGS, RATINGS_OF, Figure

@@ -9,7 +9,8 @@ import math
 from collections.abc import Iterable, Mapping
 from typing import TYPE_CHECKING
 
-from protlint.limits import CheckSetting, DriveLimits, LimiterLimits, Limits, Range, load_limits
+from protlint.limits import CheckSetting, DriveLimits, LimiterLimits, Limits, Range
+from protlint.limits_file import load_limits
 from protlint.report.safe import terminal
 from protlint.report.survey import ROLED_KINDS
 from protlint.toml.text import toml_key, toml_string

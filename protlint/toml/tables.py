@@ -19,7 +19,7 @@ Span = tuple[float, float, float]
 
 
 HINT = "; did you mean "
-"""How it begins which known word is nearest to one that is not known."""
+"""Begins the hint at the known word that is nearest to an unknown one."""
 
 
 def nearest(word: str, known: Iterable[str]) -> str:

@@ -13,7 +13,7 @@ from protlint.checks.catalogue import load_catalogue
 from protlint.checks.derating import STANDARDS
 from protlint.cli import commands
 from protlint.findings import Finding
-from protlint.limits import load_limits
+from protlint.limits_file import load_limits
 from protlint.partdata.book import load_book
 from protlint.report.document import document
 from protlint.report.faces import FACES

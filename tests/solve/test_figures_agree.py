@@ -19,7 +19,8 @@ import numpy as np
 import pytest
 
 from protlint.board.graph import build_board
-from protlint.limits import Range, load_limits, needs_of
+from protlint.limits import Range, needs_of
+from protlint.limits_file import load_limits
 from protlint.netlist import read_netlist
 from protlint.partdata.book import load_book
 from protlint.solve import locus

@@ -20,7 +20,8 @@ from protlint.board.parts_list import read_parts_list
 from protlint.checks.case import Case
 from protlint.checks.catalogue import load_catalogue
 from protlint.findings import Finding
-from protlint.limits import Limits, load_limits
+from protlint.limits import Limits
+from protlint.limits_file import load_limits
 from protlint.netlist.model import Net, Netlist, Part, Pin, PinOnTwoNets, Property
 from protlint.partdata.book import load_book
 from protlint.pipeline import Desk, Review, ReviewedLimiter, review_netlist

@@ -16,7 +16,7 @@ from typing import Any
 import pytest
 
 from protlint.board.graph import build_board
-from protlint.limits import load_limits
+from protlint.limits_file import load_limits
 from protlint.netlist import read_netlist, read_netlist_bytes
 from protlint.netlist.model import Netlist
 from protlint.partdata.book import load_book
