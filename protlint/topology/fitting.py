@@ -60,10 +60,10 @@ def plans_for(patterns: Sequence[Pattern]) -> Plans:
 class Fitter:
     """Finds the matches of a list of patterns on one board, by plans made for these patterns."""
 
-    def __init__(self, index: Index, patterns: Sequence[Pattern], plans: Plans) -> None:
+    def __init__(self, index: Index, patterns: Sequence[Pattern], plans: Plans, *, piece: bool = False) -> None:
         self.index = index
         self.patterns = patterns
-        self.planner = plans.planner(index.by_kind)
+        self.planner = plans.of_pieces if piece else plans.planner(index.by_kind)
 
     def matches(self) -> list[Match]:
         """Return every match, each once, in board order of its parts."""

@@ -38,7 +38,7 @@ def find_limiters(board: Board, rules: Rules) -> Found:
 
 def _sound_on(board: Board, rules: Rules) -> list[Limiter]:
     """Return the limiters of a small board, nothing else of it being asked."""
-    fitter = Fitter(Index(board), rules.patterns, rules.sound_plans)
+    fitter = Fitter(Index(board), rules.patterns, rules.sound_plans, piece=True)
     return _sound(fitter, fitter.matches(), rules, [])
 
 

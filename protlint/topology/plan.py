@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
+from functools import cached_property
 
 from protlint.topology.index import CROWD, FREE, RAIL, pin_bits
 from protlint.topology.questions import by_flags
@@ -45,6 +46,11 @@ class Plans:
     def __init__(self, tasks: Sequence[Task]) -> None:
         self.tasks = tasks
         self._planners: dict[tuple[tuple[str, int], ...], Planner] = {}
+
+    @cached_property
+    def of_pieces(self) -> Planner:
+        """The planner for small pieces of boards, whatever is on them: one for all costs less than the best for each."""
+        return Planner(self.tasks, dict.fromkeys(PINS, 1))
 
     def planner(self, by_kind: Mapping[str, Sequence[int]]) -> Planner:
         """Return the planner for a board with these elements by kind; numbers count by their power of two."""
