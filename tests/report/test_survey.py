@@ -10,15 +10,8 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from protlint.limits import (
-    CheckSetting,
-    DriveLimits,
-    LimiterLimits,
-    Limits,
-    Peak,
-    Range,
-    load_limits,
-)
+from protlint.limits import CheckSetting, DriveLimits, LimiterLimits, Limits, Peak, Range
+from protlint.limits_file import load_limits
 from protlint.pipeline import Review
 from protlint.quantities import read_quantity
 from protlint.report.layout import COLUMNS, width
