@@ -46,7 +46,7 @@ from protlint.solve.memo import Memo
 from protlint.solve.solution import Solution
 from protlint.topology.language import Rules, load_rules
 from protlint.topology.limiter import Found, Limiter
-from protlint.topology.match import find_limiters
+from protlint.topology.outputs import find_on_board
 from protlint.waivers import Waivers, apply_waivers, load_waivers
 
 Verdict = Literal["passes", "fails", "rests on assumptions", "not judged"]
@@ -186,13 +186,14 @@ def review_netlist(netlist: Netlist, desk: Desk) -> Review:
 
 def _reviewed(netlist: Netlist, desk: Desk) -> Review:
     board = build_board(netlist, limits=desk.limits, book=desk.book, parts_list=desk.parts_list)
-    found = find_limiters(board, desk.rules)
+    found, boards = find_on_board(board, desk.rules)
     reviewed: list[ReviewedLimiter] = []
     findings: list[Finding] = []
     cases: dict[str, Case] = {}
     shared = _Whole(board, desk, _differences(board, desk))
     for limiter in found.limiters:
-        one, case, its_findings = _review_limiter(shared, limiter)
+        its_board = boards.get(limiter.id, board)
+        one, case, its_findings = _review_limiter(replace(shared, board=its_board), limiter)
         reviewed.append(one)
         cases[limiter.id] = case
         findings += its_findings
