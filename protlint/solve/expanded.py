@@ -128,18 +128,11 @@ def expand(network: Network, *, output: Output = "held", split: str | None = Non
     constant = np.zeros((count, len(nodes)))
     for place, node in enumerate(rows.inner):
         constant[place, place] = LONE_LEAK_S if node in lone else NODE_LEAK_S
+    for device in inductors:
+        _couple(constant, device, index)
     rows.store_owner += [device.name for device in passive]
-    for device in passive:
-        if device.kind != "inductor":
-            rows.stores.append((device.nodes[0], device.nodes[1]))
-            continue
-        own = index[_current(device)]
-        rows.stores.append((_current(device), ""))
-        constant[own, own] = 0.0 if device.name == SHORT else -LINK_OHM
-        for node, sign in zip(device.nodes, (1.0, -1.0), strict=True):
-            constant[own, index[node]] += sign
-            if index[node] < count:
-                constant[index[node], own] += sign
+    rows.stores += [(device.nodes[0], device.nodes[1]) for device in passive if device.kind != "inductor"]
+    rows.stores += [(_current(device), "") for device in inductors]
     resistors = [
         ("", "") if device.kind == "inductor" else (device.nodes[0], device.nodes[1]) for device in network.resistors
     ]
@@ -157,6 +150,16 @@ def expand(network: Network, *, output: Output = "held", split: str | None = Non
         passive=passive,
         constant=constant,
     )
+
+
+def _couple(constant: Array, inductor: Device, index: dict[str, int]) -> None:
+    """Add an inductor: its current flows out of one node into the other, and the voltage between them drives it."""
+    own = index[_current(inductor)]
+    constant[own, own] = 0.0 if inductor.name == SHORT else -LINK_OHM
+    for node, sign in zip(inductor.nodes, (1.0, -1.0), strict=True):
+        constant[own, index[node]] += sign
+        if index[node] < len(constant):
+            constant[index[node], own] += sign
 
 
 def split_node(device: str) -> str:

@@ -12,7 +12,7 @@ import math
 import os
 import signal
 import time
-from collections.abc import Callable, Iterator
+from collections.abc import Iterator
 from contextlib import contextmanager
 from dataclasses import replace
 from types import FrameType
@@ -28,21 +28,12 @@ from protlint.topology.index import Index
 from protlint.topology.language import Rules, load_rules
 from protlint.topology.match import find_limiters
 from tests.support.crowd import crowd
+from tests.support.stopwatch import seconds
 
 PARTS = int(os.environ.get("PROTLINT_BENCH_PARTS", "1000"))
 LARGEST = int(os.environ.get("PROTLINT_BENCH_LINE", "4000"))
 PROMISED = 100
 LIMITERS = 8
-
-
-def seconds(function: Callable[[], object], times: int = 3) -> float:
-    """The least of several runs."""
-    best = math.inf
-    for _ in range(times):
-        started = time.process_time()
-        function()
-        best = min(best, time.process_time() - started)
-    return best
 
 
 def sink_pattern() -> Pattern:

@@ -14,8 +14,6 @@ import os
 import re
 import subprocess
 import sys
-import time
-from collections.abc import Callable
 from pathlib import Path
 
 import pytest
@@ -25,6 +23,7 @@ from protlint.netlist import read_netlist_bytes
 from protlint.netlist.forms import FormParser, no_collection
 from tests.support.board_writer import Habits, random_board, write
 from tests.support.paths import SHARED
+from tests.support.stopwatch import seconds
 
 PARTS = int(os.environ.get("PROTLINT_BENCH_PARTS", "1500"))
 LARGEST = int(os.environ.get("PROTLINT_BENCH_LINE", "4000"))
@@ -34,16 +33,6 @@ REAL = SHARED / "real-edif" / "aes.edf.gz"
 def board_text(parts: int, habits: Habits | None = None) -> str:
     """A generated board; without backslashes, which sexpdata takes as escapes."""
     return write(random_board(parts, seed=1), habits or Habits(), seed=1)[0].replace("\\", "")
-
-
-def seconds(function: Callable[[], object], times: int = 3) -> float:
-    """The least of several runs."""
-    best = math.inf
-    for _ in range(times):
-        started = time.process_time()
-        function()
-        best = min(best, time.process_time() - started)
-    return best
 
 
 def texts() -> list[tuple[str, str]]:

@@ -6,10 +6,7 @@ Nothing is asserted on a clock. Small by default; ``PROTLINT_BENCH_CORNERS=1000`
 
 from __future__ import annotations
 
-import math
 import os
-import time
-from collections.abc import Callable
 from dataclasses import replace
 
 import numpy as np
@@ -23,21 +20,12 @@ from protlint.solve.network import compile_network
 from protlint.solve.stage import Stage, run_stage, sweep_stage
 from tests.support.circuits import bench_circuit, load_bench
 from tests.support.equations import node_equations, start_near
+from tests.support.stopwatch import seconds
 
 CORNERS = int(os.environ.get("PROTLINT_BENCH_CORNERS", "200"))
 LOOPED, BY_SCIPY = 20, 3
 AMBIENTS = (-10.0, 27.0, 85.0)
 NAMES = sorted(load_bench()["circuits"])
-
-
-def seconds(function: Callable[[], object], times: int = 5) -> float:
-    """The least process time of several runs."""
-    best = math.inf
-    for _ in range(times):
-        started = time.process_time()
-        function()
-        best = min(best, time.process_time() - started)
-    return best
 
 
 def corners_of(stage: Stage, count: int) -> np.ndarray:
@@ -67,7 +55,7 @@ def test_a_batch_of_corners_against_a_loop_and_against_scipy(name: str) -> None:
             root(law, start, method="lm")
 
     assert loop() == pytest.approx(batch()[:LOOPED].tolist(), rel=1e-9)
-    at_once = seconds(batch) / CORNERS
+    at_once = seconds(batch, 5) / CORNERS
     one_by_one = seconds(loop, 2) / LOOPED
     by_scipy = seconds(scipy, 1) / BY_SCIPY
     print(f"\n{name}: {CORNERS} corners in {1e3 * at_once * CORNERS:.1f} ms")
