@@ -241,7 +241,10 @@ def diode_charges(inner: Array, current_A: Array, slope_S: Array, p: DiodeCharge
 
 
 def depletion(v: Array, p: Junction) -> tuple[Array, Array]:
-    """Return the depletion charge (C) and capacitance (F) of junctions at their voltages."""
+    """Return the depletion charge (C) and capacitance (F) of junctions at their voltages (devices, lanes).
+
+    C_J (1 - v/V_J)^-M and its integral up to v = FC V_J, the tangent and its integral beyond.
+    """
     edge = p.FC * p.V_J
     below = np.minimum(v, edge)
     beyond = v - below

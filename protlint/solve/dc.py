@@ -69,8 +69,11 @@ class Folded:
 
 
 def solve_lanes(network: Network, lanes: Lanes, start: Array | None = None, *, insist: bool = True) -> Operating:
-    """Solve every lane, from ``start`` (ports, lanes or 1) or from cold; falls back on stepping where Newton fails, unless
-    ``insist`` is false: what does not lie near its start is then not wanted."""
+    """Solve every lane, from ``start`` (ports, lanes or 1) or from cold.
+
+    Where Newton's method fails other ways are tried, one after the other; not so where ``insist`` is false, which asks only
+    for what lies near the start. Lanes that are not solved are marked, never raised.
+    """
     with np.errstate(all="ignore"):
         p = parameters(network, lanes)
         begin = (
@@ -206,7 +209,8 @@ def linear_part(network: Network, p: Parameters, known_V: Array, bridge_S: float
 
 
 def fold(evaluation: Evaluation) -> Folded:
-    """Work out what a group looks like from outside its series resistances."""
+    """Return what a group looks like from outside its series resistances: its conductances by port voltages, in siemens
+    [row, column, device, lane], are ``current_slope`` times the inverse of ``voltage_slope``."""
     m, g = evaluation.voltage_slope, evaluation.current_slope
     if len(m) == 1:
         inverse = 1.0 / m
@@ -221,7 +225,8 @@ def fold(evaluation: Evaluation) -> Folded:
 
 
 def companions(network: Network, folded: list[Folded], outer_V: Array) -> tuple[Array, Array, Array]:
-    """Stack the groups' port voltages, what their currents would be at no port voltage, and their conductances."""
+    """Return, of all groups, the port voltages (ports, lanes) that the inner ones make, the currents (ports, lanes) of the
+    straight lines through the present point at no port voltage, and their slopes (conductances, lanes)."""
     lanes = outer_V.shape[1]
     port_V, companion, conductance = [], [], []
     for group, one in zip(network.groups, folded, strict=True):
@@ -234,7 +239,7 @@ def companions(network: Network, folded: list[Folded], outer_V: Array) -> tuple[
 
 
 def through(network: Network, folded: list[Folded], across_V: Array) -> Array:
-    """Return conductances times port voltages (ports, lanes)."""
+    """Return the port currents (ports, lanes) that port voltages (ports, lanes) drive through the groups' conductances."""
     lanes = across_V.shape[1]
     parts = [
         _times(one.conductance, across_V[group.rows].reshape(one.evaluation.port_V.shape)).reshape(-1, lanes)
@@ -252,7 +257,7 @@ def _times(block: Array, across: Array) -> Array:
 
 
 def inner_step(network: Network, folded: list[Folded], miss: Array) -> Array:
-    """Return Newton's step of the inner voltages that takes up the port voltages' miss."""
+    """Return Newton's step of the inner voltages (ports, lanes) that takes up what the port voltages (ports, lanes) miss."""
     steps = []
     for group, one in zip(network.groups, folded, strict=True):
         across = miss[group.rows].reshape(one.evaluation.port_V.shape)
@@ -261,14 +266,15 @@ def inner_step(network: Network, folded: list[Folded], miss: Array) -> Array:
 
 
 def stack(parts: list[Array], lanes: int) -> Array:
-    """Stack the groups' rows; no copy where there is but one group."""
+    """Return the groups' rows, each (ports, lanes), one below the other; no copy where there is but one group."""
     if len(parts) == 1:
         return parts[0]
     return np.concatenate(parts) if parts else np.zeros((0, lanes))
 
 
 def limited(network: Network, p: Parameters, old: Array, new: Array) -> Array:
-    """Shorten steps beyond what a device's equations can be trusted for; a device taken out rests at 0 V."""
+    """Return the new inner voltages (ports, lanes) with steps from the old ones shortened to where a device's equations can be
+    trusted; a device that is taken out rests at 0 V. ``new`` is overwritten."""
     for group, record, present in zip(network.groups, p.records, p.present, strict=True):
         was = old[group.rows].reshape(group.ports, -1, old.shape[1])
         now = new[group.rows].reshape(group.ports, -1, old.shape[1])

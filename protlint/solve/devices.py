@@ -338,7 +338,8 @@ def limited_source(inner: Array, p: Source) -> Evaluation:
 
 
 def critical_voltage(V_N: Array, I_S: Array) -> Array:
-    """Return the voltage at which a junction's characteristic bends most: V_N ln(V_N / (sqrt(2) I_S)), V_N = N V_T."""
+    """Return the voltage at which a junction's characteristic bends most: V_N ln(V_N / (sqrt(2) I_S)), V_N = N V_T
+    (Nagel 1975)."""
     voltage: Array = V_N * np.log(V_N / (np.sqrt(2.0) * I_S))
     return voltage
 
@@ -368,7 +369,10 @@ def _with_series(inner: Array, current: Array, slope: Array, side: Array, contro
 
 
 def base_resistance(p: Bipolars, q_b: Array, i_b: Array) -> Array:
-    """Return the base resistance at high injection; its own slope is left out of the Jacobian (it only slows, never shifts).
+    """Return the base resistance in ohms at high injection, at base charges and base currents (devices, lanes).
+
+    Its own slope is left out of the Jacobian, which slows the iteration and shifts no solution. From the charge,
+    RBM + (RB - RBM) / q_B; where IRB is given, J. R. Hauser's crowding (IEEE Transactions on Electron Devices ED-11, 1964):
 
     RBM + 3 (RB - RBM) (tan z - z) / (z tan^2 z), z = (-1 + sqrt(1 + 144 I_B / (pi^2 IRB))) / ((24/pi^2) sqrt(I_B/IRB)).
     """

@@ -66,7 +66,7 @@ def natural_frequencies(R: Array, c: Array, basis: Basis) -> Complex:
 
 
 def damping(s: Complex) -> Array:
-    """Return the damping of natural frequencies; 1 for those left out."""
+    """Return the damping -Re(s) / |s| of natural frequencies in rad/s, any shape; 1 for those left out."""
     size = np.abs(s)
     known = np.isfinite(size)
     ratio: Array = np.where(known, -s.real / np.where(known, size, 1.0), 1.0)

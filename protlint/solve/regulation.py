@@ -18,7 +18,8 @@ _STEP_K = 1.0
 def regulation(stage: Stage, nominal: Nominal, ambient: int) -> Regulates | None:
     """Return the regulated current and what moves it at one ambient (an index), or None where it was not solved.
 
-    The supply volt is that of the drive's on end together with every held net at the same voltage: they are one supply.
+    The supply's change is that of the drive's on end together with every net that is held at the same voltage: they are one
+    supply.
     """
     current_A = float(nominal.holds_A[ambient])
     if not np.isfinite(current_A) or current_A <= 0.0:
