@@ -16,7 +16,7 @@ from pathlib import Path
 
 from protlint.netlist import read_netlist
 from protlint.pipeline import review
-from tests.support.crowd import crowd_drawn
+from tests.support.crowd import EXPORTED, crowd_drawn
 from tests.support.edif_text import flat_netlist, schematic_pages
 
 PARTS = int(os.environ.get("PROTLINT_BENCH_PARTS", "2000"))
@@ -53,8 +53,10 @@ def spent(work: str, file: Path, times: int = 3) -> tuple[float, float]:
 
 def test_a_whole_review_against_bare_loads(tmp_path: Path) -> None:
     parts = crowd_drawn(PARTS, limiters=LIMITERS)
+    told = crowd_drawn(PARTS, limiters=LIMITERS, more=EXPORTED)
     boards = {
-        "flat": flat_netlist("CROWD", parts, remark=REMARK),
+        "flat and bare": flat_netlist("CROWD", parts, remark=REMARK),
+        "flat with the properties of exports": flat_netlist("CROWD", told, remark=REMARK),
         "drawn on pages": schematic_pages("CROWD", parts, remark=REMARK, pages=8),
     }
     for name, text in boards.items():
@@ -62,9 +64,9 @@ def test_a_whole_review_against_bare_loads(tmp_path: Path) -> None:
         file.write_text(text, encoding="utf-8")
         bare_import_s, bare_s = spent(LOADS, file)
         import_s, review_s = spent(REVIEW, file)
-        size_MB = file.stat().st_size / 1e6
+        each = file.stat().st_size / PARTS
         print(
-            f"\n{name}, {PARTS} parts, {size_MB:.1f} MB: sexpdata.loads {bare_s:.2f} s; the whole review {review_s:.2f} s, "
+            f"\n{name}, {PARTS} parts of {each:.0f} bytes: sexpdata.loads {bare_s:.2f} s; the whole review {review_s:.2f} s, "
             f"{review_s / bare_s:.2f} of it; with the imports ({bare_import_s:.2f} and {import_s:.2f} s) "
             f"{(import_s + review_s) / (bare_import_s + bare_s):.2f}"
         )

@@ -27,6 +27,13 @@ NEAR = 4
 Made = tuple[str, str, list[tuple[str, str]], float | None]
 """A part: its kind, designator, (pin, net) pairs, and ohms where it is a resistor."""
 
+Properties = tuple[tuple[str, str], ...]
+EXPORTED: Properties = (
+    ("FOOTPRINT", "SMD_0805"), ("TOLERANCE", "1 %"), ("MANUFACTURER", "An invented maker"), ("STOCK_CODE", "AB-0047-1133"),
+    ("DESCRIPTION", "A part as stock lists describe it, with a few words"), ("ROOM", "SHEET 12"), ("FITTED", "yes"),
+)  # fmt: skip
+"""What exporters write of every part besides its value: such boards have some 700 bytes a part."""
+
 TYPES = {
     "QP": "BD139",
     "QS": "BC337-25",
@@ -44,10 +51,11 @@ def crowd(parts: int, *, limiters: int = 8, seed: int = 1) -> Board:
     return _board(_made(parts, limiters, seed))
 
 
-def crowd_drawn(parts: int, *, limiters: int = 8, seed: int = 1) -> list[Drawn]:
+def crowd_drawn(parts: int, *, limiters: int = 8, seed: int = 1, more: Properties = ()) -> list[Drawn]:
     """Return such a board to be written as EDIF, with part numbers and values, its limiters driven from a supply.
 
-    Its nets are short, as those of real boards: a part is joined to those drawn near it, or to a supply.
+    Its nets are short, as those of real boards: a part is joined to those drawn near it, or to a supply. Every part has
+    ``more`` properties besides.
     """
     drawn = []
     for kind, designator, joins, value_ohm in _made(parts, limiters, seed, reach=NEAR):
@@ -55,7 +63,8 @@ def crowd_drawn(parts: int, *, limiters: int = 8, seed: int = 1) -> list[Drawn]:
             joins = [("1", "+12V"), *joins[1:]]
         value = "" if value_ohm is None else f"{value_ohm:g}"
         value = "100n" if kind == "capacitor" else value
-        drawn.append(Drawn(designator, kind.upper(), tuple(joins), value, TYPES.get(designator[:2], TYPES.get(kind, ""))))
+        number = TYPES.get(designator[:2], TYPES.get(kind, ""))
+        drawn.append(Drawn(designator, kind.upper(), tuple(joins), value, number, more=more))
     return drawn
 
 

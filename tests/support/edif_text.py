@@ -19,6 +19,8 @@ class Drawn:
     value: str = ""
     part_number: str = ""
     power: str = ""
+    more: tuple[tuple[str, str], ...] = ()
+    """Further properties, by name, for flat netlists."""
 
 
 def flat_netlist(name: str, parts: Sequence[Drawn], *, remark: str) -> str:
@@ -48,7 +50,7 @@ def flat_netlist(name: str, parts: Sequence[Drawn], *, remark: str) -> str:
         reference = f"(viewRef NETLIST (cellRef {identifier(part.cell)} (libraryRef PARTS)))"
         lines += [f"          (instance {numbers[part.designator]}", f"            {reference}"]
         lines += [f'            (designator "{part.designator}")']
-        for key, text in (("VALUE", part.value), ("PART_NUMBER", part.part_number), ("POWER", part.power)):
+        for key, text in (("VALUE", part.value), ("PART_NUMBER", part.part_number), ("POWER", part.power), *part.more):
             lines += [f'            (property {key} (string "{_escaped(text)}"))'] if text else []
         lines[-1] += ")"
     for net, pins_on in _nets(parts).items():
