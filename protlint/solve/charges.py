@@ -28,7 +28,8 @@ import numpy as np
 
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.constants import T0_K
-from protlint.solve.devices import Array, Bipolars, transport
+from protlint.solve.devices import Array
+from protlint.solve.gummel_poon import Bipolars, transport
 from protlint.solve.lanes import junction_potential
 from protlint.solve.network import Group
 from protlint.solve.parameters import Bounds, within_bounds

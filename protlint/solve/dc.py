@@ -18,7 +18,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from protlint.solve import devices
+from protlint.solve import devices, gummel_poon
 from protlint.solve.devices import Array, Evaluation
 from protlint.solve.elimination import eliminate, product
 from protlint.solve.lanes import Lanes, Parameters, parameters, take
@@ -97,7 +97,7 @@ def cold_start(network: Network, p: Parameters, count: int) -> Array:
     inner = np.zeros((network.ports, count))
     for group, record in zip(network.groups, p.records, strict=True):
         rows = inner[group.rows].reshape(group.ports, -1, count)
-        if isinstance(record, devices.Bipolars):
+        if isinstance(record, gummel_poon.Bipolars):
             rows[0] = record.V_crit[0]
         elif isinstance(record, devices.Mosfets):
             rows[0] = record.V_TO + 0.5
@@ -180,8 +180,8 @@ def evaluate(network: Network, p: Parameters, inner: Array) -> list[Evaluation]:
     results = []
     for group, record, present in zip(network.groups, p.records, p.present, strict=True):
         rows = inner[group.rows].reshape(group.ports, -1, inner.shape[1])
-        if isinstance(record, devices.Bipolars):
-            result = devices.bipolar(rows, record, present)
+        if isinstance(record, gummel_poon.Bipolars):
+            result = gummel_poon.bipolar(rows, record, present)
         elif isinstance(record, devices.Mosfets):
             result = devices.mosfet(rows, record, present)
         elif isinstance(record, devices.Diodes):
@@ -273,12 +273,12 @@ def stack(parts: list[Array], lanes: int) -> Array:
 
 
 def limited(network: Network, p: Parameters, old: Array, new: Array) -> Array:
-    """Return the new inner voltages (ports, lanes) with steps from the old ones shortened to where a device's equations can be
+    """Return the new inner voltages (ports, lanes), steps from the old ones shortened to where a device's equations can be
     trusted; a device that is taken out rests at 0 V. ``new`` is overwritten."""
     for group, record, present in zip(network.groups, p.records, p.present, strict=True):
         was = old[group.rows].reshape(group.ports, -1, old.shape[1])
         now = new[group.rows].reshape(group.ports, -1, old.shape[1])
-        if isinstance(record, devices.Bipolars):
+        if isinstance(record, gummel_poon.Bipolars):
             now[...] = devices.junction_step(was, now, record.per_V[:2], record.V_crit)
         elif isinstance(record, devices.Mosfets):
             now[0] = was[0] + np.clip(now[0] - was[0], -LONGEST_GATE_STEP_V, LONGEST_GATE_STEP_V)

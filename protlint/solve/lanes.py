@@ -10,13 +10,13 @@ from typing import Any, cast
 
 import numpy as np
 
-from protlint.solve import devices
+from protlint.solve import devices, gummel_poon
 from protlint.solve.constants import BOLTZMANN_V_PER_K, T0_K
 from protlint.solve.devices import Array, IntArray
 from protlint.solve.network import LEAST_SOURCE_OHM, Group, Network
 from protlint.solve.parameters import LINK_OHM
 
-Record = devices.Bipolars | devices.Mosfets | devices.Diodes | devices.Source
+Record = gummel_poon.Bipolars | devices.Mosfets | devices.Diodes | devices.Source
 
 
 @dataclass(frozen=True, slots=True)
@@ -122,7 +122,7 @@ def _pick(values: Array, lanes: IntArray) -> Array:
     return values if values.shape[-1] == 1 else values[..., lanes]
 
 
-def _bipolars(group: Group, temperature_K: Array, shift_V: Array | None, bf: Array | None) -> devices.Bipolars:
+def _bipolars(group: Group, temperature_K: Array, shift_V: Array | None, bf: Array | None) -> gummel_poon.Bipolars:
     p = group.base
     V_T = devices.thermal_voltage(temperature_K)
     growth = devices.junction_growth(temperature_K, p["EG"], p["XTI"])
@@ -137,7 +137,7 @@ def _bipolars(group: Group, temperature_K: Array, shift_V: Array | None, bf: Arr
     leaks = bool(p["ISC"].any())
     N_V = np.stack((p["NF"] * V_T, p["NR"] * V_T, p["NE"] * V_T))
     current = np.stack((I_S, I_S, p["ISE"] * np.exp(growth / p["NE"]) / beta))
-    return devices.Bipolars(
+    return gummel_poon.Bipolars(
         I=current,
         per_V=1.0 / N_V,
         V_crit=devices.critical_voltage(N_V[:2], current[:2]),

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from protlint.solve import devices
+from protlint.solve import gummel_poon
 from protlint.solve.charges import (
     BipolarCharges,
     Charges,
@@ -195,7 +195,7 @@ def _series_ohm(expanded: Expanded, p: Parameters, inner: Array, evaluations: Se
     found = np.empty((len(expanded.series), inner.shape[1]))
     for place, series in enumerate(expanded.series):
         record = p.records[series.group]
-        if not isinstance(record, devices.Bipolars):
+        if not isinstance(record, gummel_poon.Bipolars):
             value = getattr(record, series.name)
         elif series.name != "R_B":
             value = record.R_side[("R_E", "R_C").index(series.name)]
@@ -204,7 +204,7 @@ def _series_ohm(expanded: Expanded, p: Parameters, inner: Array, evaluations: Se
         else:
             rows = inner[expanded.network.groups[series.group].rows].reshape(2, -1, inner.shape[1])
             base_A = evaluations[series.group].port_A.sum(axis=0)
-            value = devices.base_resistance(record, devices.transport(rows, record).q_B, base_A)
+            value = gummel_poon.base_resistance(record, gummel_poon.transport(rows, record).q_B, base_A)
         found[place] = value[series.row]
     return found
 
@@ -227,7 +227,7 @@ def _device_stores(
         else:
             third = _third(expanded, place + 2 * count, count, stored, rows[1])
             if isinstance(p, BipolarCharges):
-                assert isinstance(record, devices.Bipolars)
+                assert isinstance(record, gummel_poon.Bipolars)
                 found = bipolar_charges(rows, third, record, p)
                 assert found.cross is not None
                 cross.append(found.cross)

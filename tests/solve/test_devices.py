@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 from scipy.special import wrightomega
 
-from protlint.solve import devices
+from protlint.solve import devices, gummel_poon
 from protlint.solve.circuit import Circuit, Device, Drive
 from protlint.solve.constants import BOLTZMANN_V_PER_K, KELVIN, T0_K
 from protlint.solve.dc import solve_lanes
@@ -62,7 +62,7 @@ def test_slopes_are_the_derivatives_of_voltages_and_currents(
     network = compile_network(circuit)
     p = parameters(network, lanes_for(circuit, temperature, np.zeros(count), np.zeros(count)))
     evaluations: dict[type, Callable[..., devices.Evaluation]] = {
-        devices.Bipolars: devices.bipolar,
+        gummel_poon.Bipolars: gummel_poon.bipolar,
         devices.Mosfets: devices.mosfet,
         devices.Diodes: devices.diode,
     }
