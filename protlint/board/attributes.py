@@ -61,10 +61,10 @@ class Habits:
 
 def file_habits(netlist: Netlist, limits: Limits) -> Habits:
     """Return the habits of a file: its property names, the limits file's own first, and what its commas mean."""
+    counted = Counter([(key, item.name) for part in netlist.parts for key, item in part.properties.items()])
     written: dict[str, Counter[str]] = {}
-    for part in netlist.parts:
-        for key, item in part.properties.items():
-            written.setdefault(key, Counter())[item.name] += 1
+    for (key, name), count in counted.items():
+        written.setdefault(key, Counter())[name] = count
     by_plain: dict[str, list[str]] = {}
     for key in written:
         by_plain.setdefault(plain_name(key), []).append(key)

@@ -113,6 +113,7 @@ class _Reader(FormParser):
         super().__init__(text, file=file, reducers=refuse | reducers)
         self.notes = Notes(self.places)
         self._scales: Scales = {}
+        self._property_names: dict[str, str] = {}
         self._aliases: dict[str, str] = {}
         self._met: set[str] = set()
 
@@ -204,7 +205,17 @@ class _Reader(FormParser):
 
     def _properties(self, found: Mapping[str, Sequence[Form]], origin: Origin) -> tuple[Property, ...]:
         forms = (*found.get("property", ()), *found.get("parameter", ()), *found.get("parameterassign", ()))
-        return tuple([read_property(item, self._name(item).text, origin, self._scales) for item in forms])
+        return tuple([read_property(item, self._property_name(item), origin, self._scales) for item in forms])
+
+    def _property_name(self, form: Form) -> str:
+        """Return the name of a property as people see it: the same few on every part, so plain ones are looked up."""
+        name = form[1] if len(form) > 1 else None
+        known = self._property_names.get(name) if type(name) is str else None
+        if known is None:
+            known = self._name(form).text
+            if type(name) is str and _IDENTIFIER.fullmatch(name):
+                self._property_names[name] = known
+        return known
 
     def _port(self, form: Form) -> Port:
         found = by_head(form)

@@ -66,7 +66,7 @@ def test_a_whole_review_against_bare_loads(tmp_path: Path) -> None:
         import_s, review_s = spent(REVIEW, file)
         each = file.stat().st_size / PARTS
         print(
-            f"\n{name}, {PARTS} parts of {each:.0f} bytes: sexpdata.loads {bare_s:.2f} s; the whole review {review_s:.2f} s, "
+            f"\n{name}, {PARTS} parts of {each:.0f} bytes: sexpdata.loads {bare_s:.2f} s; the review {review_s:.2f} s, "
             f"{review_s / bare_s:.2f} of it; with the imports ({bare_import_s:.2f} and {import_s:.2f} s) "
             f"{(import_s + review_s) / (bare_import_s + bare_s):.2f}"
         )
