@@ -12,13 +12,12 @@ import math
 import os
 import signal
 import time
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import replace
 from types import FrameType
 
 import networkx as nx
-import pytest
 
 from protlint.board.graph import Board
 from protlint.netlist.forms import no_collection
@@ -93,7 +92,7 @@ def at_most(limit_s: float) -> Iterator[None]:
         signal.signal(signal.SIGPROF, before)
 
 
-def test_one_pattern_against_vf2(capsys: pytest.CaptureFixture[str]) -> None:
+def test_one_pattern_against_vf2(show: Callable[[Sequence[str]], None]) -> None:
     board = crowd(PARTS, limiters=LIMITERS)
     pattern = sink_pattern()
     plans = plans_for([pattern])
@@ -123,15 +122,18 @@ def test_one_pattern_against_vf2(capsys: pytest.CaptureFixture[str]) -> None:
     assert len(found) >= LIMITERS
     assert theirs == found if finished else theirs <= found
     bound = "" if finished else "more than "
-    with capsys.disabled():
-        print(f"\n{PARTS} parts, one pattern: {our_s * 1e3:.1f} ms, VF2 {bound}{their_s:.2f} s")
-        print(f"          that is {bound}{their_s / our_s:.0f} times as fast")
+    show(
+        [
+            f"{PARTS} parts, one pattern: {our_s * 1e3:.1f} ms, VF2 {bound}{their_s:.2f} s",
+            f"          that is {bound}{their_s / our_s:.0f} times as fast",
+        ]
+    )
 
 
-def test_all_rules_and_how_time_grows(capsys: pytest.CaptureFixture[str]) -> None:
+def test_all_rules_and_how_time_grows(show: Callable[[Sequence[str]], None]) -> None:
     rules = load_rules()
     sizes = [size for size in (1000, 2000, 5000, 10_000, 20_000, 50_000, 100_000, 200_000) if size <= max(LARGEST, 2000)]
-    lines, points = [""], []
+    lines, points = [], []
     for size in sizes:
         board = crowd(size, limiters=LIMITERS)
         with no_collection():
@@ -147,8 +149,7 @@ def test_all_rules_and_how_time_grows(capsys: pytest.CaptureFixture[str]) -> Non
     mean_x, mean_y = (sum(values) / len(points) for values in zip(*points, strict=True))
     slope = sum((x - mean_x) * (y - mean_y) for x, y in points) / sum((x - mean_x) ** 2 for x, _ in points)
     lines.append(f"         time grows as parts to the power of {slope:.2f}")
-    with capsys.disabled():
-        print("\n".join(lines))
+    show(lines)
 
 
 def _ids(board: Board, rules: Rules) -> set[str]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable, Sequence
 from functools import cache
 
 import pytest
@@ -63,12 +64,11 @@ def test_nothing_is_said_of_the_good_channel() -> None:
     assert {one.limiter.id: one.verdict for one in reviewed().limiters}["Q11"] == "passes"
 
 
-def test_the_table_of_channels(capsys: pytest.CaptureFixture[str]) -> None:
+def test_the_table_of_channels(show: Callable[[Sequence[str]], None]) -> None:
     """Print what each channel was given and what was said of it."""
-    lines = ["", f"{'channel':<9}{'drawn':<30}said"]
+    lines = [f"{'channel':<9}{'drawn':<30}said"]
     for channel, fault in FAULTS.items():
         said = ", ".join(f"{finding.check} ({finding.level})" for finding in of(channel))
         lines.append(f"{channel:<9}{fault or 'sound':<30}{said or 'nothing'}")
-    with capsys.disabled():
-        print("\n".join(lines))
+    show(lines)
     assert all(bool(of(channel)) == (fault is not None) for channel, fault in FAULTS.items())

@@ -7,6 +7,7 @@ one that asks something of every output.
 from __future__ import annotations
 
 import re
+from collections.abc import Callable, Sequence
 from functools import cache
 from pathlib import Path
 
@@ -79,15 +80,14 @@ def test_there_are_enough_and_each_is_of_its_own_kind() -> None:
     assert len({what_it_is(path) for path in CIRCUITS}) == len(CIRCUITS)
 
 
-def test_the_table_of_look_alikes(capsys: pytest.CaptureFixture[str]) -> None:
+def test_the_table_of_look_alikes(show: Callable[[Sequence[str]], None]) -> None:
     """Print every look-alike, alarmed or quiet."""
-    lines, alarmed = [""], 0
+    lines, alarmed = [], 0
     for path in CIRCUITS:
         found = reviewed(path)
         said = [one.limiter.topology for one in found.limiters] + [one.check for one in found.findings]
         alarmed += bool(said)
         lines.append(f"{path.stem:<36}{'alarmed: ' + ', '.join(said) if said else 'quiet':<10}  {what_it_is(path)}"[:125])
     lines.append(f"{len(CIRCUITS)} look-alikes, {alarmed} alarmed, {len(CIRCUITS) - alarmed} quiet")
-    with capsys.disabled():
-        print("\n".join(lines))
+    show(lines)
     assert alarmed == 0

@@ -6,7 +6,7 @@ The faults are drawn into the circuits of fixtures/circuits, one at a time.
 from __future__ import annotations
 
 import tomllib
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
 from functools import cache
 from pathlib import Path
@@ -147,11 +147,11 @@ def test_a_fault_is_found_on_its_shunt_and_its_cure_holds(case: Case) -> None:
         assert restored == {case.topology}
 
 
-def test_the_table_of_faults(capsys: pytest.CaptureFixture[str]) -> None:
+def test_the_table_of_faults(show: Callable[[Sequence[str]], None]) -> None:
     """Print for every fault and topology how many of the drawn ones are found; and how many are known not to be told."""
     faults = sorted({case.fault for case in cases()})
     topologies = sorted({case.topology for case in cases()})
-    lines = ["", f"{'found of drawn':<30}" + "".join(f"{topology[:12]:>14}" for topology in topologies)]
+    lines = [f"{'found of drawn':<30}" + "".join(f"{topology[:12]:>14}" for topology in topologies)]
     missed = 0
     for fault in faults:
         cells = []
@@ -161,6 +161,5 @@ def test_the_table_of_faults(capsys: pytest.CaptureFixture[str]) -> None:
             missed += sum(only_fault(case) is None and (case.circuit, case.fault) not in NOT_TOLD_APART for case in drawn)
             cells.append(f"{found} of {len(drawn)}" if drawn else "-")
         lines.append(f"{fault:<30}" + "".join(f"{cell:>14}" for cell in cells))
-    with capsys.disabled():
-        print("\n".join(lines))
+    show(lines)
     assert missed == 0
