@@ -110,6 +110,9 @@ def identify(part: Part, part_number: str | None, entry: PartEntry | None, limit
     return Identity(kind, kind_from, roles, roles_from, sections)
 
 
+UNTOLD_TRANSISTOR = "a class letter and pins that do not tell a transistor"
+"""What is said of a part that goes by a transistor's class letter and has only numbers for pins."""
+
 _NO_POLARITY = "a transistor of unknown polarity"
 
 
@@ -149,7 +152,7 @@ def _by_letter(part: Part) -> tuple[str, str]:
     told = f"class letter {letters} and its pins"
     if kind == "transistor":
         family = family_by_names(part)
-        return "unknown", f"{_NO_POLARITY} ({told})" if family else "a class letter and pins that do not tell a transistor"
+        return "unknown", f"{_NO_POLARITY} ({told})" if family else UNTOLD_TRANSISTOR
     if kind in ("", "ic"):
         return ("ic", told) if kind and part.pins else ("unknown", "nothing tells what it is")
     if FAMILY.get(kind) == "two" and len(part.pins) > 2:

@@ -2,15 +2,20 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Collection, Iterator
 
 from protlint.board.graph import Board, Element
-from protlint.checks.board_case import BoardAnswer, BoardCase
-from protlint.findings import Finding, WorkingLine
+from protlint.board.kinds import UNTOLD_TRANSISTOR
+from protlint.checks.board_case import BoardAnswer, BoardCase, Unanswered
+from protlint.findings import Finding, NotChecked, WorkingLine
 from protlint.solve.surroundings import CONTROL
+from protlint.toml.text import toml_key
 
 SENSE_OHM = 100.0
 """Sense resistors of limiters are smaller; common practice of the trade."""
+
+MOST_NAMED = 6
+"""Parts of one type that are named before the rest are counted."""
 
 CROWDED = 64
 """A net with more on it is a supply, whatever it is called."""
@@ -20,8 +25,17 @@ def hidden_by_unknown_pins(whole: BoardCase) -> Iterator[BoardAnswer]:
     """Yield a finding for each pair of transistors that lie as pass device and shunt do, the pins of one or both unknown.
 
     A small resistor stands between a net of the one and a net of the other, they share another net, and the other reaches
-    the near end of that resistor too, itself or through one more resistor.
+    the near end of that resistor too, itself or through one more resistor. Of every other transistor that nobody can place,
+    say what would tell.
     """
+    suspected: set[str] = set()
+    for finding in _suspicions(whole):
+        suspected.update(finding.parts)
+        yield finding
+    yield from _unplaced(whole.board, suspected)
+
+
+def _suspicions(whole: BoardCase) -> Iterator[Finding]:
     board = whole.board
     if not any(_unknown(element) for element in board.elements if element.kind in CONTROL):
         return
@@ -32,6 +46,23 @@ def hidden_by_unknown_pins(whole: BoardCase) -> Iterator[BoardAnswer]:
                 if other.index not in taken and (_unknown(element) or _unknown(other)):
                     taken |= {element.index, other.index}
                     yield _suspected(board, element, other)
+
+
+def _unplaced(board: Board, suspected: Collection[str]) -> Iterator[Unanswered]:
+    """Yield, for each type of transistor whose pins or kind nobody knows, the key that would let a limiter be found."""
+    wanted: dict[str, list[str]] = {}
+    for part in board.parts:
+        name = part.part_number or part.part.cell
+        if part.id in suspected:
+            continue
+        if part.kind in CONTROL and CONTROL[part.kind] not in part.roles and not part.sections:
+            wanted.setdefault(f"[pins.{toml_key(name)}]", []).append(part.id)
+        elif part.kind_from == UNTOLD_TRANSISTOR:
+            wanted.setdefault(f"[{toml_key(name)}] kind, in a file for --parts", []).append(part.id)
+    for key, parts in wanted.items():
+        more = f" and {len(parts) - MOST_NAMED} more" if len(parts) > MOST_NAMED else ""
+        whose = f"{', '.join(parts[:MOST_NAMED])}{more}"
+        yield Unanswered(None, NotChecked(f"whether a limiter is at {whose}", key))
 
 
 def _unknown(element: Element) -> bool:

@@ -26,6 +26,9 @@ VALUED_KINDS = ("resistor", "capacitor", "inductor")
 ROLED_KINDS = ("npn", "pnp", "npn-darlington", "pnp-darlington", "nmos", "pmos", "diode", "zener", "thyristor")
 """Kinds whose pins are not alike, so that their roles have to be known."""
 
+TELLING_ROLES = frozenset(("base", "gate", "anode"))
+"""Roles one of which each of those kinds has where its pins are known; pins that are not go by their numbers."""
+
 
 def survey(review: Review) -> Document:
     """Return what a survey shows of a review."""
@@ -48,7 +51,9 @@ def survey(review: Review) -> Document:
                 (part.part.cell or "that is not named", part.id) for part in board.parts if part.kind == "unknown"
             ),
             "pins": _gathered(
-                (_type_of(part), part.id) for part in board.parts if part.kind in ROLED_KINDS and not part.roles
+                (_type_of(part), part.id)
+                for part in board.parts
+                if part.kind in ROLED_KINDS and not part.sections and TELLING_ROLES.isdisjoint(part.roles)
             ),
             "part_data": _types_without_data(board, {part["id"] for one in report["limiters"] for part in one["parts"]}),
         },

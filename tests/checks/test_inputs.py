@@ -78,3 +78,12 @@ def test_a_thyristor_that_no_data_knows_is_told_by_what_is_missing_not_by_its_pi
     assert finding.message.endswith("is in no part data: no figure of it is known")
     assert not found(review, "pins-unknown")
     assert any("XYZ9.ratings.igt" in needs for _, needs in unchecked(review))
+
+
+def test_a_transistor_that_nobody_can_place_is_not_passed_in_silence() -> None:
+    """A pass device beyond the reach of its shunt (a driver lies between), numbered; a shunt of no known kind, numbered."""
+    apart = sink().drawn(("LAMP BASE SNS\n", "1=LAMP 2=MID 3=SNS\n"), ("R1 RES", "Q6 NPN QPN1 C=LAMP B=BASE E=MID\nR1 RES"))
+    (one,) = apart.review().not_checked
+    assert (one.needs, one.check) == ("[pins.QPN1]", "whether a limiter is at Q1")
+    named = apart.limited("pins", "QPN1", **{"1": "collector", "2": "base", "3": "emitter"}).review()
+    assert named.not_checked == ()

@@ -93,6 +93,8 @@ def test_every_entry_has_a_source_for_every_figure_and_no_copied_model() -> None
         ("2SC5200", "2SA1943"),
         ("BC847B", "BC857B"),
         ("BD139", "BD140"),
+        ("BC546B", "BC556B"),
+        ("MJE3055T", "MJE2955T"),
     ],
 )
 def test_complementary_types_are_of_opposite_polarity_and_equal_strength(npn: str, pnp: str) -> None:

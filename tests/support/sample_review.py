@@ -224,7 +224,7 @@ def _board(names: Mapping[str, str]) -> Board:
             part=part,
             kind=KINDS[role],
             kind_from="property",
-            roles={"1": 2, "2": 3},
+            roles={"base": 2, "emitter": 3} if KINDS[role] == "npn" else {"1": 2, "2": 3},
             roles_from="port names",
             part_number="QSN1" if KINDS[role] == "npn" else None,
             values=Values(text="1R", value=VALUES.get(role)),
