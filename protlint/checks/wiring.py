@@ -13,6 +13,7 @@ WIRING_FAULTS = (
     "collector-emitter-swapped",
     "base-emitter-swapped",
     "shunt-pins-exchanged",
+    "shunt-pin-misplaced",
     "base-on-far-end",
     "shunt-polarity-wrong",
     "collector-not-on-the-drive",
@@ -21,7 +22,7 @@ WIRING_FAULTS = (
     "pass-pins-exchanged",
     "pass-polarity-wrong",
 )
-"""The checks that a fault rule answers, or a transistor that stands turned round."""
+"""The checks that a fault rule answers, or a transistor that stands turned round or has a pin astray."""
 
 
 def wiring_check(fault: str) -> Callable[[BoardCase], Iterator[BoardAnswer]]:

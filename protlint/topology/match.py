@@ -26,10 +26,10 @@ def find_limiters(board: Board, rules: Rules) -> Found:
         remarks: list[str] = []
         limiters = _sound(fitter, matches, rules, remarks)
         faults = find_faults(index, [match for match in matches if match.pattern.fault], rules, limiters)
-        turned = find_turned(index, limiters, lambda piece: _sound_on(piece, rules))
+        tried = find_turned(index, limiters, lambda piece: _sound_on(piece, rules))
     return Found(
         limiters=tuple(limiters),
-        faults=settled(faults, turned, index),
+        faults=settled(faults, tried, index),
         remarks=tuple(remarks),
         pairs=find_pairs(limiters),
         sets=find_sets(board, limiters),

@@ -1,4 +1,4 @@
-"""Transistors that lie together as those of a limiter do, whichever way each of them stands."""
+"""Transistors that lie together as those of a limiter do, whichever way each of them stands, or but for one pin."""
 
 from __future__ import annotations
 
@@ -29,6 +29,10 @@ LEAD = {
 }
 """The pin of a shunt of each kind that is on the far end, and the one that is on the drive."""
 
+RESISTOR = frozenset({"resistor"})
+HANGING = frozenset({"resistor", "capacitor"})
+"""What lies between the sense resistance and a shunt's base."""
+
 STRING = 4
 """The most diodes in a row that are taken for a shunt."""
 
@@ -38,12 +42,14 @@ class Group:
     """Elements of which one may stand turned round: ``core`` are those to try, ``shunts`` what the limiter's shunt is.
 
     ``beside`` are what they stand with: a pass device, or, ``in_limiter``, a sound limiter that lacks only one of the core.
+    Where there are ``moves``, the shunt stands as it should but for one pin, which belongs on one of these nets.
     """
 
     core: tuple[int, ...]
     shunts: frozenset[int]
     beside: tuple[int, ...]
     in_limiter: bool = False
+    moves: tuple[tuple[str, int], ...] = ()
 
 
 def suspected_groups(index: Index, limiters: Sequence[Limiter]) -> Iterator[Group]:
@@ -55,13 +61,18 @@ def suspected_groups(index: Index, limiters: Sequence[Limiter]) -> Iterator[Grou
     seen = set()
     for near, far in _sense_resistors(index):
         carriers = _carriers(index, near, taken)
-        found = list(_shunts(index, near, far, taken)) if carriers else []
+        taps = _onward(index, (near,), STOPS, RESISTOR, far) if carriers else {}
+        found = list(_shunts(index, taps, far, taken))
         for carrier, is_right in carriers if found or _has_diodes(index, far) else ():
             apart = [(shunt, takes) for shunt, takes in found if shunt != carrier]
             for core, shunts in _turned_apart(index, far, near, carrier, is_right, apart, taken | {carrier}):
                 if (core, shunts, carrier) not in seen:
                     seen.add((core, shunts, carrier))
                     yield Group(core, frozenset(shunts), (carrier,))
+        for carrier in (one for one, is_right in carriers if is_right):
+            for shunt, moves in _with_a_pin_astray(index, taps, far, carrier, taken | {carrier}):
+                if moves:
+                    yield Group((shunt,), frozenset({shunt}), (carrier,), moves=moves)
     for limiter in limiters:
         yield from _beside(index, limiter, taken)
 
@@ -136,16 +147,58 @@ def _carrier_or_driver(carrier: int, takes: Set[int], any_drives: Set[int], beyo
     yield from (driver for driver, nets in beyond.items() if not takes.isdisjoint(nets))
 
 
-def _shunts(index: Index, near: int, far: int, taken: Set[int]) -> Iterator[tuple[int, Set[int]]]:
+def _shunts(index: Index, taps: Iterable[int], far: int, taken: Set[int]) -> Iterator[tuple[int, Set[int]]]:
     """Yield the transistors that may be the shunt across a sense resistance, with pins at its far end and on what leads to
     its near end, and the nets they take the drive from, as they stand: none where they stand wrong."""
-    for tap in _through(index, (near,), STOPS):
+    for tap in taps:
         for shunt in _free(index, tap, taken):
             pins, kind = index.terminals[shunt], index.kind[shunt]
             if far in pins.values():
                 lead, take = LEAD[kind]
                 stands = pins[lead] == far and pins[CONTROL[kind]] == tap
                 yield shunt, _takes(index, {pins[take]}) if stands else set()
+
+
+def _with_a_pin_astray(
+    index: Index, taps: Iterable[int], far: int, carrier: int, taken: Set[int]
+) -> Iterator[tuple[int, tuple[tuple[str, int], ...]]]:
+    """Yield the transistors of which two pins stand as those of a pass device's shunt, with where the third may belong.
+
+    The third is on another net of the limiter, or together with another pin: on any other net it makes a circuit of its own.
+    A base has left a resistor hanging, or is straight on the load: else it makes a mirror, or a junction used as a diode.
+    """
+    pins = index.terminals[carrier]
+    near = next(iter(taps))
+    load = next((net for pin, net in pins.items() if pin != CONTROL[index.kind[carrier]] and net != near), near)
+    taps = [net for net in taps if net != load]
+    around = dict.fromkeys((*taps, *(net for net in (far, load, *pins.values()) if index.flag[net] == FREE)))
+    astray: list[tuple[int, str]] = []
+    for shunt in dict.fromkeys(one for net in around for one in _free(index, net, taken)):
+        own, (lead, take) = index.terminals[shunt], LEAD[index.kind[shunt]]
+        base, emitter, collector = own[CONTROL[index.kind[shunt]]], own[lead], own[take]
+        if base in taps and emitter == far:
+            if collector in taps or collector in (far, load):
+                astray.append((shunt, take))
+        elif base in taps and (emitter in taps or emitter == load or emitter in _takes(index, {collector})):
+            astray.append((shunt, lead))
+        elif emitter == far and base not in taps and (base in (load, far) or base in _takes(index, {collector})):
+            astray.append((shunt, CONTROL[index.kind[shunt]]))
+    if not astray:
+        return
+    hanging = [net for net in taps if net != near and _hangs(index, net)]
+    takes = _takes(index, _drives(index, [pins[CONTROL[index.kind[carrier]]]], {carrier}))
+    for shunt, pin in astray:
+        own, (lead, take) = index.terminals[shunt], LEAD[index.kind[shunt]]
+        if pin == take:
+            yield shunt, tuple((pin, net) for net in sorted(takes - {near, far, *own.values()}))
+        elif own[take] in takes:
+            bases = hanging or ([near] if own[pin] == load else [])
+            yield shunt, ((pin, far),) if pin == lead else tuple((pin, net) for net in bases)
+
+
+def _hangs(index: Index, net: int) -> bool:
+    """Tell whether a net is as a shunt's base leaves it: nothing there but passives, and perhaps a latch's collector."""
+    return all(index.kind[one] in HANGING or pin == "collector" for one, pin in index.at[net])
 
 
 def _takes(index: Index, nets: Iterable[int]) -> set[int]:
@@ -208,16 +261,17 @@ def _free(index: Index, net: int, taken: Set[int]) -> list[int]:
 
 def _through(index: Index, nets: Iterable[int], steps: int) -> dict[int, None]:
     """Return some nets and those that so many resistors lead to from them, past no supply."""
-    return _onward(index, nets, steps, frozenset({"resistor"}))
+    return _onward(index, nets, steps, RESISTOR)
 
 
-def _onward(index: Index, nets: Iterable[int], steps: int, kinds: Set[str]) -> dict[int, None]:
-    """Return some nets and those that so many parts of these kinds lead to from them, past no supply and no crowd."""
+def _onward(index: Index, nets: Iterable[int], steps: int, kinds: Set[str], past: int | None = None) -> dict[int, None]:
+    """Return some nets and those that so many parts of these kinds lead to from them, past no supply, no crowd and not
+    the net ``past``."""
     found = dict.fromkeys(nets)
     edge = list(found)
     for _ in range(steps):
         leading = [element for net in edge for element, _ in index.at[net] if index.kind[element] in kinds]
         onward = (net for element in leading for net in index.terminals[element].values())
-        edge = [net for net in dict.fromkeys(onward) if net not in found and index.flag[net] == FREE]
+        edge = [net for net in dict.fromkeys(onward) if net not in found and net != past and index.flag[net] == FREE]
         found.update(dict.fromkeys(edge))
     return found

@@ -1,7 +1,8 @@
-"""Transistors that stand with their pins in another order, or of the other polarity, than a sound limiter would have them.
+"""Transistors that stand otherwise than a sound limiter would have them: turned round, or with one pin on a wrong net of it.
 
 What a wrong symbol or footprint does is the commonest slip of all. It is found by trying: of transistors that lie together
-as those of a limiter do, one at a time is turned every way there is, and the sound rules are asked again.
+as those of a limiter do, one at a time is turned every way there is, and the sound rules are asked again. Of a shunt that
+stands right but for one pin, that pin is moved to where it may belong.
 """
 
 from __future__ import annotations
@@ -12,10 +13,11 @@ from itertools import permutations
 
 from protlint.board.graph import Board, Element
 from protlint.topology.excerpt import Excerpt, excerpt
+from protlint.topology.faults import STOPS
 from protlint.topology.index import Index
 from protlint.topology.likely import is_likely
 from protlint.topology.limiter import FaultMatch, Limiter
-from protlint.topology.suspects import SENSE_OHM, Group, suspected_groups
+from protlint.topology.suspects import LEAD, SENSE_OHM, Group, suspected_groups
 from protlint.topology.terms import MIRROR, PINS
 
 Finder = Callable[[Board], Sequence[Limiter]]
@@ -46,7 +48,7 @@ class Attempt:
 
 
 def find_turned(index: Index, limiters: Sequence[Limiter], sound: Finder) -> tuple[FaultMatch, ...]:
-    """Return a fault for each group of transistors of which one, turned, makes a sound limiter; best first.
+    """Return a fault for each group of transistors of which one, turned or a pin moved, makes a sound limiter; best first.
 
     ``sound`` finds the sound limiters of a board.
     """
@@ -56,19 +58,26 @@ def find_turned(index: Index, limiters: Sequence[Limiter], sound: Finder) -> tup
     for group in suspected_groups(index, limiters):
         piece = excerpt(board, (*group.core, *group.shunts, *group.beside))
         core, shunts = ([piece.elements.index(one) for one in some] for some in (group.core, sorted(group.shunts)))
-        key = (piece.key, tuple(core), tuple(shunts))
+        moves = None
+        if group.moves:
+            moves = tuple((pin, piece.nets.index(net)) for pin, net in group.moves if net in piece.nets)
+        key = (piece.key, tuple(core), tuple(shunts), moves)
         if key not in tried:
-            tried[key] = list(_attempts(piece, core, shunts, sound))
+            tried[key] = list(_attempts(piece, core, shunts, moves, sound))
         for attempt in tried[key]:
             found.append(_fault(index, piece, attempt, group))
     found.sort(key=lambda one: one[0])
     return tuple(fault for _, fault in found)
 
 
-def _attempts(piece: Excerpt, core: Sequence[int], shunts: Sequence[int], sound: Finder) -> Iterator[Attempt]:
-    """Yield every way to turn one element of the core that makes it part of a sound limiter of these shunts."""
+def _attempts(
+    piece: Excerpt, core: Sequence[int], shunts: Sequence[int], moves: Sequence[tuple[str, int]] | None, sound: Finder
+) -> Iterator[Attempt]:
+    """Yield every way to turn one element of the core, or move a pin of it, that makes it part of a sound limiter of these
+    shunts."""
     for one in core:
-        for turned in _turned(piece.board.elements[one]):
+        element = piece.board.elements[one]
+        for turned in _turned(element) if moves is None else _moved(element, moves):
             for limiter in sound(piece.with_element(turned)):
                 role = next((role for role in TURNED_ROLES if one in _in_role(limiter, role)), None)
                 if role is not None and set(shunts) & set(limiter.elements["shunt"]) and _senses(piece.board, limiter):
@@ -96,6 +105,12 @@ def _turned(element: Element) -> Iterator[Element]:
                 yield replace(element, kind=kind, terminals=dict(zip(pins, order, strict=True)))
 
 
+def _moved(element: Element, moves: Sequence[tuple[str, int]]) -> Iterator[Element]:
+    """Yield an element with one pin on another net, by each of some moves."""
+    for pin, net in moves:
+        yield replace(element, terminals={**element.terminals, pin: net})
+
+
 def _fault(index: Index, piece: Excerpt, attempt: Attempt, group: Group) -> tuple[tuple[object, ...], FaultMatch]:
     """Return what is wrong as a fault, behind a sort key: likely limiters first, then what takes the least change."""
     board, limiter = index.board, piece.on_whole_board(attempt.limiter)
@@ -104,20 +119,28 @@ def _fault(index: Index, piece: Excerpt, attempt: Attempt, group: Group) -> tupl
     belongs = {pin: piece.nets[net] for pin, net in attempt.element.terminals.items()}
     pins = [pin for pin in belongs if element.terminals[pin] != belongs[pin]]
     other = attempt.element.kind != element.kind
+    if group.moves:
+        name = _name_moved(index, element, pins[0], limiter)
+        says = _sentence_moved(index, part.id, element, pins[0], limiter)
+    else:
+        name = _name(attempt.role, pins, other)
+        says = _sentence(board, part.id, element, pins, attempt.element.kind if other else None)
     fault = FaultMatch(
-        fault=_name(attempt.role, pins, other),
+        fault=name,
         spoils=limiter.topology,
         group=limiter,
-        says=_sentence(board, part.id, element, pins, attempt.element.kind if other else None),
+        says=says,
         exchange=(((part.id, pins[0]), (part.id, pins[1])),) if len(pins) == 2 else (),
-        moves=tuple(((part.id, pin), belongs[pin]) for pin in pins) if len(pins) > 2 else (),
+        moves=tuple(((part.id, pin), belongs[pin]) for pin in pins) if len(pins) != 2 else (),
         replaces=((part.id, attempt.element.kind),) if other else (),
-        turned=part.id,
+        turned=None if group.moves else part.id,
         beside=group.in_limiter,
     )
     place = TURNED_ROLES.index(attempt.role)
     likely = is_likely(limiter, index, part.id)
-    rank = (not likely, (len(pins) + 1) // 2 + other, place, part.index, -len(limiter.bound), fault.spoils)
+    # Of a resistor before the pass device nobody knows which side the shunt was to be on: it is as likely the drive's own.
+    stops = sum(len(limiter.elements.get(role, ())) for role in STOPS) if group.moves else 0
+    rank = (not likely, (len(pins) + 1) // 2 + other, place, part.index, stops, -len(limiter.bound), fault.spoils)
     return rank, fault
 
 
@@ -128,6 +151,39 @@ def _name(role: str, pins: Sequence[str], other: bool) -> str:
     if role != "shunt":
         return "pass-polarity-wrong" if other else "pass-pins-exchanged"
     return "shunt-polarity-wrong" if other else EXCHANGED.get(frozenset(pins), "shunt-pins-exchanged")
+
+
+def _name_moved(index: Index, element: Element, pin: str, limiter: Limiter) -> str:
+    """Return the check for a shunt one pin of which is on a wrong net of its limiter."""
+    lead, take = LEAD[element.kind]
+    if pin == take:
+        return "collector-not-on-the-drive"
+    on_far = pin != lead and index.net_of[element.terminals[pin]] == index.net_of[limiter.bound["far"]]
+    return "base-on-far-end" if on_far else "shunt-pin-misplaced"
+
+
+def _sentence_moved(index: Index, name: str, element: Element, pin: str, limiter: Limiter) -> str:
+    """Say where the pin of a shunt stands, and what the shunt does there."""
+    board = index.board
+    here = element.terminals[pin]
+    with_it = next((one for one, net in element.terminals.items() if one != pin and net == here), None)
+    net, far = board.nets[here].name, board.nets[limiter.bound["far"]].name
+    lead, take = LEAD[element.kind]
+    sense, carrier = ", ".join(limiter.roles["sense"]), ", ".join(limiter.roles["pass"])
+    if with_it is None:
+        does = "it takes no drive away" if pin == take else f"it does not see the drop across {sense}"
+        belongs = {take: f"the drive of {carrier}", lead: f"{far}, the far end of {sense}"}.get(
+            pin, f"the near end of {sense}"
+        )
+        return f"the {pin} of {name} is on {net}, not on {belongs}: {does}"
+    pair = [one for one in ORDER if one in (pin, with_it)]
+    if set(pair) == {lead, take}:
+        does = "it takes no drive away"
+    elif take not in pair:
+        does = "it never turns on"
+    else:
+        does = "it is a diode, and takes no drive away" if pin == take else f"it is a diode from the drive to {far}"
+    return f"{pair[0]} and {pair[1]} of {name} are both on {net}: {does}"
 
 
 def _sentence(board: Board, name: str, element: Element, pins: Sequence[str], place_takes: str | None) -> str:

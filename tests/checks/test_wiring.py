@@ -46,6 +46,7 @@ def spoiled(circuit: str) -> Iterator[tuple[str, Netlist]]:
     yield "collector-emitter-swapped", edits.exchanged(netlist, (shunt, "collector"), (shunt, "emitter"))
     rotated = edits.exchanged(netlist, (shunt, "collector"), (shunt, "base"))
     yield "shunt-pins-exchanged", edits.exchanged(rotated, (shunt, "base"), (shunt, "emitter"))
+    yield "shunt-pin-misplaced", edits.moved(netlist, shunt, "emitter", nets["drive"])
     carrier = roles["pass"][0]
     ends = ("drain", "source") if carrier.startswith("M") else ("collector", "emitter")
     yield "pass-pins-exchanged", edits.exchanged(netlist, *((carrier, end) for end in ends))

@@ -177,6 +177,8 @@ def wiring() -> Iterator[Scenario]:
                                  ("Q21 PNP QSP1 BASE STOP +15V", "Q21 PNP QSP1 BASE +15V STOP")),
         "shunt-pins-exchanged": (("Q2 NPN QSN1 BASE STOP GND", "Q2 NPN QSN1 GND BASE STOP"),
                                  ("Q21 PNP QSP1 BASE STOP +15V", "Q21 PNP QSP1 +15V BASE STOP")),
+        "shunt-pin-misplaced": (("Q2 NPN QSN1 BASE STOP GND", "Q2 NPN QSN1 BASE STOP STOP"),
+                                ("Q21 PNP QSP1 BASE STOP +15V", "Q21 PNP QSP1 BASE STOP BASE")),
         "pass-pins-exchanged": (("LAMP BASE SNS", "SNS BASE LAMP"), ("OUT BASE SNS", "BASE OUT SNS")),
         "pass-polarity-wrong": (("NPN QPN1", "PNP QPP1"), ("PNP QPP1", "NPN QPN1")),
         "base-on-far-end": (("R3 RES 100 SNS STOP", "R3 RES 100 GND STOP"),
