@@ -36,7 +36,7 @@ class Sense:
         return whole_ohm * (self.of_whole or 1.0)
 
 
-def sense_of(case: Case) -> Sense | None:
+def _sense_of(case: Case) -> Sense | None:
     """Return the sense resistance of a case, or None where its circuit has none."""
     sense = [device for device in case.circuit.devices if device.name in case.circuit.sense]
     if not sense:
@@ -52,7 +52,7 @@ def sense_remedy(case: Case) -> Remedy:
     The limit goes nearly as 1 / R, so carry bounds the resistance from above and cap from below. Values of E24 inside that
     window, then of E96, are solved over all corners until one meets both. In a bank or chain they are those of each part.
     """
-    sense = sense_of(case)
+    sense = _sense_of(case)
     if sense is None or case.solution.not_solved is not None:
         return None, ()
     carries_A, most_A = least_carries_A(case.solution), greatest_most_A(case.solution)

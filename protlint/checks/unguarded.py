@@ -164,7 +164,7 @@ def _watched(board: Board, stage: Stage) -> bool:
             return True
         for index, role in board.elements_at[net]:
             element = board.elements[index]
-            if element.kind in LEAD and element.index != stage.device.index and _watches(element, role, net, own):
+            if element.kind in LEAD and element.index != stage.device.index and _watches(element, role, own):
                 return True
             if element.kind == "resistor" and index != stage.resistor.index and steps < FARTHEST:
                 for other in element.terminals.values():
@@ -191,7 +191,7 @@ def _own_controls(board: Board, stage: Stage) -> set[int]:
     return own
 
 
-def _watches(element: Element, role: str, net: int, own: Collection[int]) -> bool:
+def _watches(element: Element, role: str, own: Collection[int]) -> bool:
     """Tell whether a transistor's pin on the lead watches it: its control, or the emitter of one that is no driver."""
     lead, _, control = LEAD[element.kind]
     if role == control:

@@ -45,7 +45,7 @@ def reviewed(netlists: Sequence[str], files: Mapping[str, Any], reading: Mapping
     paths, together = netlists_of(netlists)
     if not together:
         return document(pipeline.review(paths[0], **files, **reading))
-    answers = review_all(paths, files, reading)
+    answers = _review_all(paths, files, reading)
     failed = [answer for answer in answers if "unread" in answer]
     return combined((answer for answer in answers if "unread" not in answer), failed)
 
@@ -87,7 +87,7 @@ def called(paths: Sequence[str]) -> dict[str, str]:
     return names
 
 
-def review_all(paths: Sequence[str], files: Mapping[str, Any], reading: Mapping[str, Any]) -> list[Answer]:
+def _review_all(paths: Sequence[str], files: Mapping[str, Any], reading: Mapping[str, Any]) -> list[Answer]:
     """Return a report or an error for each netlist, in the order given.
 
     ``files`` are the keyword arguments of :func:`protlint.pipeline.set_up`, ``reading`` those of ``read_netlist``.

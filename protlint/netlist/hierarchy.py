@@ -17,17 +17,17 @@ _KINDS_OF_CONTENTS = {"netlist": 0, "schematic": 1}
 """The kinds of view whose contents say what is placed and connected, the better one first."""
 
 
-def has_contents(view: View) -> bool:
+def _has_contents(view: View) -> bool:
     """Tell whether anything stands inside a view; an empty ``contents`` is a black box."""
     return view.contents is not None and any(sheet.instances or sheet.nets for sheet in view.contents.sheets)
 
 
-def best_inside(cell: Cell, *, any_kind: bool = False) -> View | None:
+def _best_inside(cell: Cell, *, any_kind: bool = False) -> View | None:
     """Return the view of a cell whose contents count where no reference names one: NETLIST before SCHEMATIC.
 
     ``any_kind`` takes contents in a view of any kind as a last resort.
     """
-    inside = [view for view in cell.views if has_contents(view) and (any_kind or view.kind in _KINDS_OF_CONTENTS)]
+    inside = [view for view in cell.views if _has_contents(view) and (any_kind or view.kind in _KINDS_OF_CONTENTS)]
     return min(inside, key=lambda view: _KINDS_OF_CONTENTS.get(view.kind, 2), default=None)
 
 
@@ -78,7 +78,7 @@ class _KnownCell:
     def __init__(self, cell: Cell) -> None:
         self.views = Scope((view.name.identifier, view) for view in cell.views)
         self.ports = Ports(view.ports for view in cell.views)
-        self.best = {any_kind: best_inside(cell, any_kind=any_kind) for any_kind in (False, True)}
+        self.best = {any_kind: _best_inside(cell, any_kind=any_kind) for any_kind in (False, True)}
         self.blocks: dict[tuple[int, bool], Block] = {}
 
 
@@ -120,7 +120,7 @@ class Directory:
         named = None if wanted is None else known.views.find(wanted)
         if wanted is not None and named is None:
             self._notes.add("view", offset, f"{wanted} of the cell {cell.name.text}")
-        inside = named if named is not None and has_contents(named) else known.best[any_kind]
+        inside = named if named is not None and _has_contents(named) else known.best[any_kind]
         view = inside or named or next(iter(cell.views), None)
         key = (id(view), inside is not None)
         if key not in known.blocks:

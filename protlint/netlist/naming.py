@@ -50,7 +50,7 @@ def name_cell(wiring: Wiring, notes: Notes, places: Places, *, designated: bool)
     return NamedCell(_unique(labels, packages, pins), tuple(pins), tuple(packages), tuple(twice))
 
 
-def section_and_package(instance: Instance, notes: Notes) -> tuple[str | None, str | None]:
+def _section_and_package(instance: Instance, notes: Notes) -> tuple[str | None, str | None]:
     """Return the section and the package that an instance's designators name, None where they name none."""
     texts = [text for text in instance.designators if text]
     if len(texts) < 2:
@@ -62,7 +62,7 @@ def section_and_package(instance: Instance, notes: Notes) -> tuple[str | None, s
     return None, texts[0]
 
 
-def section_position(section: str, package: str) -> int | None:
+def _section_position(section: str, package: str) -> int | None:
     """Return the place of a section in its package from 0: ``Q1A`` and ``U2-1`` are the first of Q1 and U2."""
     rest = section[len(package) :].strip(" -_.:/").lower()
     if len(rest) == 1 and "a" <= rest <= "z":
@@ -74,7 +74,7 @@ def _label(placement: Placement, notes: Notes, *, designated: bool) -> Label | N
     if placement.block.contents is None and not placement.block.is_part:
         return None
     instance = placement.instance
-    section, package = section_and_package(instance, notes)
+    section, package = _section_and_package(instance, notes)
     each = _split((package or "",))
     if placement.element is not None and len(each) == instance.name.width and section is None:
         package = name = each[placement.element]  # one designator for each element of an array
@@ -83,7 +83,7 @@ def _label(placement: Placement, notes: Notes, *, designated: bool) -> Label | N
         name = name if placement.element is None else f"{name}[{placement.element}]"
     if package is None and not designated:
         package = name
-    position = section_position(section, package) if section and package else None
+    position = _section_position(section, package) if section and package else None
     return Label(name, None if package is None or package.endswith("?") else package, section, position)
 
 

@@ -79,7 +79,7 @@ def member(form: Form, position: int = 1) -> tuple[str, tuple[int, ...]]:
     return word(item), indices
 
 
-def port_ref(form: Form) -> PortRef:
+def _port_ref(form: Form) -> PortRef:
     """Return a ``portRef``; the instance may stand behind the bundle that holds the port.
 
     Raises
@@ -115,7 +115,7 @@ def joined(form: Form) -> Joined:
             if inner[0] == "instanceref" and type(inner[1]) is type(item[1]) is str:
                 ends.append(PortRef(item[1], inner[1], item.offset))  # nearly all are plain ones
             else:
-                ends.append(port_ref(item))
+                ends.append(_port_ref(item))
         elif item[0] == "portlist":
             ends += _port_list(item)
         elif item[0] == "globalportref":
@@ -133,7 +133,7 @@ def shorted(form: Form) -> Shorted:
     _no_global(form)
     ends: list[PortRef | PortList] = []
     for item in items(form, "portref", "portlist"):
-        ends += [port_ref(item)] if item[0] == "portref" else _port_list(item)
+        ends += [_port_ref(item)] if item[0] == "portref" else _port_list(item)
     return tuple(ends)
 
 
@@ -156,7 +156,7 @@ def view_refs(found: Mapping[str, Sequence[Form]]) -> tuple[ViewRef, ...]:
 
 def _port_list(form: Form) -> list[PortList]:
     _no_global(form)
-    refs = tuple(map(port_ref, items(form, "portref")))
+    refs = tuple(map(_port_ref, items(form, "portref")))
     return [PortList(refs)] if refs else []
 
 

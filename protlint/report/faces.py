@@ -34,7 +34,7 @@ def check_targets(targets: Iterable[str]) -> None:
     seen: set[str] = set()
     for target in targets:
         path = Path(target)
-        if is_folder(target):
+        if _is_folder(target):
             if path.exists() and not path.is_dir():
                 raise FileError("this is a file, not a folder to save in", file=shown_name(path))
         elif path.suffix.lower() not in FACES:
@@ -51,7 +51,7 @@ def check_targets(targets: Iterable[str]) -> None:
         seen.add(whole)
 
 
-def is_folder(target: str) -> bool:
+def _is_folder(target: str) -> bool:
     """Tell whether a target asks for the folder of tracker texts: it ends in a slash."""
     return target.endswith(("/", os.sep))
 
@@ -64,10 +64,10 @@ def save(report: Document, targets: Iterable[str]) -> None:
     FileError : a file cannot be written.
     """
     listed = tuple(targets)
-    files = [(target, FACES[Path(target).suffix.lower()](report)) for target in listed if not is_folder(target)]
+    files = [(target, FACES[Path(target).suffix.lower()](report)) for target in listed if not _is_folder(target)]
     texts = rendered_issues(report)
     for target, text in files:
         write_whole(target, text)
     for target in listed:
-        if is_folder(target):
+        if _is_folder(target):
             save_issues(target, report, texts)

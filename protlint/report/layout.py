@@ -90,7 +90,7 @@ def fitting(names: Sequence[str], columns: int) -> str:
     return tail(names[0], columns - width(rest)) + rest
 
 
-def padded(text: str, columns: int, *, right: bool = False) -> str:
+def _padded(text: str, columns: int, *, right: bool = False) -> str:
     """Return a text filled with blanks to a width."""
     blanks = " " * max(0, columns - width(text))
     return blanks + text if right else text + blanks
@@ -104,7 +104,7 @@ def table(rows: Sequence[Sequence[str]], *, indent: int = 2, left: Iterable[int]
     widths = [max(width(row[column]) for row in rows) for column in range(len(rows[0]))]
     lines = []
     for row in rows:
-        cells = [padded(cell, widths[column], right=column not in lefts) for column, cell in enumerate(row)]
+        cells = [_padded(cell, widths[column], right=column not in lefts) for column, cell in enumerate(row)]
         lines.append((" " * indent + (" " * gap).join(cells)).rstrip())
     return lines
 

@@ -78,7 +78,7 @@ def _brief(report: Document) -> str:
     return "\n".join([*head, *rows, *more, *foot]) + "\n"
 
 
-def finding_lines(finding: Document, *, working: bool = True) -> list[str]:
+def _finding_lines(finding: Document, *, working: bool = True) -> list[str]:
     """Return one finding as a list item with its working below it; the texts in it are escaped already."""
     parts = f" ({', '.join(finding['parts'])})" if finding["parts"] else ""
     whom = f"**{finding['limiter']}**" if finding["limiter"] else "**the board**"
@@ -139,7 +139,7 @@ def _limiters(board: Document) -> list[str]:
 def _findings(title: str, found: Sequence[Document], working: bool, most: int, *, folded: bool) -> list[str]:
     if not found:
         return []
-    lines = [line for finding in found[:most] for line in finding_lines(finding, working=working)]
+    lines = [line for finding in found[:most] for line in _finding_lines(finding, working=working)]
     if len(found) > most:
         lines.append(f"- and {len(found) - most} more; the JSON report has them all")
     title = f"{title} ({len(found)})"

@@ -127,13 +127,13 @@ def renamed(solution: Solution, devices: Mapping[str, str], nodes: Mapping[str, 
         sensitivities=tuple(replace(one, device=owner(one.device, one.parameter)) for one in solution.sensitivities),
         corners={end: {step(text): position for text, position in steps.items()} for end, steps in solution.corners.items()},
         loop=loop(solution.loop),
-        advice=None if solution.advice is None else advice_renamed(solution.advice, devices, nodes),
+        advice=None if solution.advice is None else _advice_renamed(solution.advice, devices, nodes),
         short=None if solution.short is None else nodes.get(solution.short, solution.short),
         shorts=tuple(replace(one, node=nodes.get(one.node, one.node), point=point(one.point)) for one in solution.shorts),
     )
 
 
-def advice_renamed(advice: Advice, devices: Mapping[str, str], nodes: Mapping[str, str]) -> Advice:
+def _advice_renamed(advice: Advice, devices: Mapping[str, str], nodes: Mapping[str, str]) -> Advice:
     """Return advice with devices and nodes called by other names."""
 
     def other(name: str | None) -> str | None:

@@ -1,1 +1,1 @@
-"""Helpers that several test modules share."""
+"""What several test modules share."""

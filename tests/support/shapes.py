@@ -14,7 +14,7 @@ from protlint.limits import Range
 from protlint.solve.circuit import Circuit, Device, Drive
 from tests.support.circuits import load_bench
 
-SMALL, POWER, MEDIUM, SMALL_P, POWER_P, GATE = "QSN1", "QPN1", "QDN1", "QSP1", "QPP1", "MPN1"
+SMALL, POWER, MEDIUM, SMALL_P, POWER_P = "QSN1", "QPN1", "QDN1", "QSP1", "QPP1"
 TYPES = load_bench()["models_at_27_degC"]
 TWIN = {"npn": "pnp", "pnp": "npn", "nmos": "pmos", "pmos": "nmos"}
 
