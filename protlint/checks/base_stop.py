@@ -92,7 +92,10 @@ def base_stop_high(case: Case) -> Iterator[Answer]:
         parts=(*stops, part_id),
         working=(
             WorkingLine(
-                f"holds, hFE {low:g}", f"solved with the base stop, {moves.ambient_degC:g} degC", moves.with_A[0], "A"
+                f"holds, hFE {low:g}",
+                f"solved with the base stop, {moves.ambient_degC:g} degC{moves.words}",
+                moves.with_A[0],
+                "A",
             ),
             WorkingLine(f"holds, hFE {high:g}", "the same", moves.with_A[1], "A"),
             WorkingLine("moves without it", "the same with the base stop bridged", moves.without, ""),

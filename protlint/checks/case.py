@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, field
-from typing import TypeVar
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from dataclasses import dataclass, field, replace
+from typing import Any, TypeVar
 
 from protlint.board.graph import Board, BoardPart
 from protlint.board.parts_list import Difference
@@ -57,6 +57,8 @@ class Case:
     known: Known = field(default_factory=Known)
     solved: Memo = field(default_factory=Memo)
     """What was solved for this review, equal circuits once: points under stated conditions, and whole solutions."""
+    worked_out: dict[str, Any] = field(init=False, default_factory=dict, repr=False, compare=False)
+    """What several checks ask of this very case; a changed one begins anew."""
 
     @property
     def circuit(self) -> Circuit:
@@ -84,6 +86,17 @@ class Case:
     def part(self, part_id: str) -> BoardPart:
         """Return a part of the board by id."""
         return self.board.part_of[part_id]
+
+    def changed(self, circuit: Circuit, solution: Solution) -> Case:
+        """Return the case of the same limiter with another circuit, and what that comes to."""
+        return replace(self, bench=replace(self.bench, circuit=circuit), solution=solution)
+
+    def once(self, what: str, work: Callable[[], T]) -> T:
+        """Return what ``work`` gives, worked out when it is first asked for."""
+        if what not in self.worked_out:
+            self.worked_out[what] = work()
+        found: T = self.worked_out[what]
+        return found
 
     def under(self, conditions: Sequence[Condition]) -> tuple[Point | None, ...]:
         """Return the circuit's operating points under conditions.

@@ -9,7 +9,7 @@ from protlint.checks.drive_resistor import greatest_drive_resistance
 from protlint.checks.sizing import least_carries_A, sense_remedy
 from protlint.findings import NotChecked, Remedy, WorkingLine
 from protlint.quantities import format_quantity
-from protlint.solve.solution import Currents, Solution
+from protlint.solve.solution import Currents
 
 
 def carry_not_met(case: Case) -> Iterator[Answer]:
@@ -62,8 +62,8 @@ def drive_insufficient(case: Case) -> Iterator[Answer]:
 def _more_drive(case: Case, carries_A: float, carry_A: float) -> Remedy:
     """Return the drive resistor that lets the stage carry what the board needs, or by how much drive or gain fall short."""
 
-    def does(solution: Solution) -> bool:
-        least_A = least_carries_A(solution)
+    def does(changed: Case) -> bool:
+        least_A = least_carries_A(changed.solution)
         return least_A is not None and least_A >= carry_A
 
     fit = greatest_drive_resistance(case, does)

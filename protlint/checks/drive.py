@@ -2,19 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-from dataclasses import dataclass, replace
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
 
 from protlint.board.graph import BoardPart
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.drive_resistor import least_drive_resistance
-from protlint.checks.shunt import NOT_SOLVED, Taken, current_rating, hottest, taken_by_shunt
+from protlint.checks.ends import HELD_MOST, NOT_SOLVED, Held, held_shorts
+from protlint.checks.shunt import Taken, current_rating, hottest, taken_by_shunt
 from protlint.checks.sizing import meets
 from protlint.checks.thermal import Junction
 from protlint.findings import Level, NotChecked, Remedy, WorkingLine
-from protlint.limits import DriveLimits
+from protlint.limits import DriveLimits, Range
 from protlint.quantities import format_quantity, preferred
-from protlint.solve.solution import Solution
 from protlint.solve.surroundings import Surroundings, survey_surroundings
 from protlint.toml.text import toml_key
 
@@ -104,8 +104,8 @@ def _unlimited(case: Case, part_id: str, worst: Excess) -> Answer:
         f"{named} leaves {part_id} {value} to take away in the held short at {ambient}, more than {allowed}, {what}",
         parts=(*drive, part_id),
         working=(
-            WorkingLine("the drive gives", "solved in the held short", abs(worst.taken.point.drive_A), "A"),
-            WorkingLine(f"shunt {worst.quantity}", "solved, every tolerance set for the most", worst.value, worst.unit),
+            WorkingLine("the drive gives", f"{HELD_MOST}{worst.taken.words}", abs(worst.taken.point.drive_A), "A"),
+            WorkingLine(f"shunt {worst.quantity}", "the same", worst.value, worst.unit),
             *(worst.junction.lines if worst.junction is not None else ()),
             WorkingLine(
                 "it may take",
@@ -124,13 +124,13 @@ def _unlimited(case: Case, part_id: str, worst: Excess) -> Answer:
 
 
 def _resistance_to_fit(case: Case, part_id: str, worst: Excess) -> Remedy:
-    def does(solution: Solution) -> bool:
-        rows = taken_by_shunt(replace(case, solution=solution))[part_id]
+    def does(changed: Case) -> bool:
+        rows = taken_by_shunt(changed)[part_id]
         if not rows:
             return False
         found = [one for one in _excesses(case, "drive-unlimited", part_id, rows) if isinstance(one, Excess)]
         if case.needs.carry_A is not None and meets(case.solution, case.needs.carry_A, None):
-            found = found if meets(solution, case.needs.carry_A, None) else []
+            found = found if meets(changed.solution, case.needs.carry_A, None) else []
         return bool(found) and all(one.ratio <= 1.0 for one in found)
 
     fit = least_drive_resistance(case, worst.ratio, does)
@@ -158,24 +158,23 @@ def driver_overloaded(case: Case) -> Iterator[Answer]:
     if power_W is None:
         yield NotChecked(check, _power_key(case, part, around))
         return
-    upper_V, lower_V = _rails(case, part)
-    worst = max(
-        case.at_ambients(case.solution.high_short),
-        key=lambda pair: _driver_W(pair[1].drive_A, pair[1].drive_V, upper_V, lower_V),
-        default=None,
-    )
+    rails, below_V = _rails(case, part), _below_rails_V(case, part, entry)
+
+    def takes_W(held: Held) -> float:
+        return _stays_V(rails, below_V, held) * abs(held.short.drive_A)
+
+    worst = max(_with_rails(case), key=takes_W, default=None)
     if worst is None:
         yield NotChecked(check, NOT_SOLVED)
         return
-    row, point = worst
-    taken_W = _driver_W(point.drive_A, point.drive_V, upper_V, lower_V)
+    row, point, taken_W = worst.row, worst.short, takes_W(worst)
     if taken_W <= power_W:
         return
     name = part.id if part is not None else f"what drives {case.circuit.drive.node}"
-    drop_V = abs((upper_V if point.drive_A > 0.0 else lower_V) - point.drive_V)
+    drop_V = _stays_V(rails, below_V, worst)
 
-    def does(solution: Solution) -> bool:
-        return all(_driver_W(one.drive_A, one.drive_V, upper_V, lower_V) <= power_W for one in solution.high_short)
+    def does(changed: Case) -> bool:
+        return all(takes_W(held) <= power_W for held in _with_rails(changed))
 
     less = f"let it give no more than {format_quantity(power_W / drop_V, 'A')}"
     remedy, fits = least_drive_resistance(case, taken_W / power_W, does) or (less, ())
@@ -185,7 +184,7 @@ def driver_overloaded(case: Case) -> Iterator[Answer]:
         f"{format_quantity(row.ambient_degC, 'degC')}, it may take {format_quantity(power_W, 'W')}",
         parts=(part.id,) if part is not None else case.parts("drive"),
         working=(
-            WorkingLine("the drive gives", "solved in the held short, every tolerance set for the most", point.drive_A, "A"),
+            WorkingLine("the drive gives", f"{HELD_MOST}{worst.words}", point.drive_A, "A"),
             WorkingLine("at", "solved at the drive's net", point.drive_V, "V"),
             WorkingLine("power", f"{drop_V:.3g} V * {abs(point.drive_A):.3g} A", taken_W, "W", "Joule's law"),
             WorkingLine("it may take", "limits file or part data", power_W, "W"),
@@ -196,21 +195,44 @@ def driver_overloaded(case: Case) -> Iterator[Answer]:
     )
 
 
-def _driver_W(drive_A: float, drive_V: float, upper_V: float, lower_V: float) -> float:
-    """Return what stays in a driver that sources from its upper rail or sinks to its lower one."""
-    return abs((upper_V if drive_A > 0.0 else lower_V) - drive_V) * abs(drive_A)
+def _with_rails(case: Case) -> list[Held]:
+    """Return the held shorts, of those at stated ends these alone: the driver's rails are at the same ends then."""
+    found = held_shorts(case)
+    return [held for held in found if held.ends is not None] or found
+
+
+def _stays_V(rails: Sequence[tuple[str, Range]], below_V: float | None, held: Held) -> float:
+    """Return what stays across a driver that sources from its upper rail or sinks to its lower one.
+
+    Where its swing is stated from its rails, by ``below_V``, these move with it.
+    """
+    sources, ends = held.short.drive_A > 0.0, held.ends
+    if ends is not None and below_V is not None:
+        rail_V = ends.high_V + below_V if sources else ends.low_V - below_V
+    else:
+        known_V = {} if ends is None else ends.held_V
+        volts = [known_V.get(name, limits.high if sources else limits.low) for name, limits in rails]
+        rail_V = max(volts) if sources else min(volts)
+    return abs(rail_V - held.short.drive_V)
+
+
+def _below_rails_V(case: Case, part: BoardPart | None, entry: DriveLimits | None) -> float | None:
+    """Return how near its rails a driver reaches, where its swing is stated so."""
+    stated = entry or _entry_of(case, part)
+    return None if stated is None else stated.from_rails_V
+
+
+def _entry_of(case: Case, part: BoardPart | None) -> DriveLimits | None:
+    """Return what the limits file says of a driving part's type."""
+    drivers = {name.casefold(): one for name, one in case.limits.drivers.items()}
+    return None if part is None else drivers.get((part.part_number or "").casefold())
 
 
 def _allowed_W(case: Case, part: BoardPart | None, entry: DriveLimits | None) -> float | None:
-    if entry is not None and entry.power_W is not None:
-        return entry.power_W
-    if part is None:
-        return None
-    drivers = {name.casefold(): one for name, one in case.limits.drivers.items()}
-    stated = drivers.get((part.part_number or "").casefold())
-    if stated is not None and stated.power_W is not None:
-        return stated.power_W
-    rating = case.rating(part.id, "power")
+    for stated in (entry, _entry_of(case, part)):
+        if stated is not None and stated.power_W is not None:
+            return stated.power_W
+    rating = None if part is None else case.rating(part.id, "power")
     return None if rating is None else rating.value
 
 
@@ -221,9 +243,8 @@ def _power_key(case: Case, part: BoardPart | None, around: Surroundings) -> str:
     return f"[drive.{toml_key(case.board.nets[net].name if net is not None else '?')}] power"
 
 
-def _rails(case: Case, part: BoardPart | None) -> tuple[float, float]:
-    """Return the driver's upper and lower supply: those on its own pins, else the circuit's farthest."""
-    supplies = [case.board.nets[net].supply for net in part.roles.values()] if part is not None else []
-    volts = [one.voltage_V for one in supplies if one is not None]
-    volts = volts if len(volts) > 1 else list(case.circuit.held.values())
-    return max(one.high for one in volts), min(one.low for one in volts)
+def _rails(case: Case, part: BoardPart | None) -> list[tuple[str, Range]]:
+    """Return the driver's supplies by net: those on its own pins, else the circuit's."""
+    nets = [case.board.nets[net] for net in part.roles.values()] if part is not None else []
+    own = [(net.name, net.supply.voltage_V) for net in nets if net.supply is not None]
+    return own if len(own) > 1 else list(case.circuit.held.items())

@@ -11,7 +11,6 @@ from protlint.checks.sizing import solve_again, with_resistance
 from protlint.findings import Fit, Remedy
 from protlint.quantities import format_quantity, within
 from protlint.solve.circuit import Circuit
-from protlint.solve.solution import Solution
 
 REACH = 4.0
 """How far above what a hand calculation gives values are tried."""
@@ -20,8 +19,9 @@ LEAST_SHARE = 0.05
 """A drive resistor is not made smaller than this share of itself: something else is wrong then."""
 
 
-def least_drive_resistance(case: Case, times: float, does: Callable[[Solution], bool]) -> Remedy | None:
-    """Return the least resistance of E24 in the drive with which ``does`` is true, found by solving; None where none is.
+def least_drive_resistance(case: Case, times: float, does: Callable[[Case], bool]) -> Remedy | None:
+    """Return the least resistance of E24 in the drive with which ``does`` is true of the case so changed, found by
+    solving; None where none is.
 
     ``times`` is by how much the drive's current has to come down, for where to begin.
     """
@@ -37,7 +37,7 @@ def least_drive_resistance(case: Case, times: float, does: Callable[[Solution], 
     return _first(case, names, now_ohm, [ohm for ohm in values if ohm > now_ohm], does)
 
 
-def greatest_drive_resistance(case: Case, does: Callable[[Solution], bool]) -> Remedy | None:
+def greatest_drive_resistance(case: Case, does: Callable[[Case], bool]) -> Remedy | None:
     """Return the greatest resistance of E24 in the drive, below the one drawn, with which ``does`` is true; None where none
     is or there is no drive resistor."""
     names, now_ohm = _drive_resistors(case)
@@ -54,13 +54,14 @@ def _drive_resistors(case: Case) -> tuple[tuple[str, ...], float]:
 
 
 def _first(
-    case: Case, names: tuple[str, ...], now_ohm: float, values: Sequence[float], does: Callable[[Solution], bool]
+    case: Case, names: tuple[str, ...], now_ohm: float, values: Sequence[float], does: Callable[[Case], bool]
 ) -> Remedy | None:
     """Return the first of the values that does, as a remedy; once one does, all after it do: found by halving."""
 
     def fits(ohm: float) -> bool:
-        solution = solve_again(case, _with_drive(case.circuit, names, now_ohm, ohm))
-        return solution.not_solved is None and does(solution)
+        circuit = _with_drive(case.circuit, names, now_ohm, ohm)
+        solution = solve_again(case, circuit)
+        return solution.not_solved is None and does(case.changed(circuit, solution))
 
     low, high = 0, len(values)
     while low < high:

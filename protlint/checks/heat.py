@@ -10,6 +10,7 @@ from protlint.board.graph import BoardPart, Element
 from protlint.board.shares import part_shares
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.derating import derated, share_of
+from protlint.checks.ends import HELD_MOST, NOT_SOLVED, at_carry, held_shorts
 from protlint.findings import Fit, Level, NotChecked, WorkingLine
 from protlint.partdata.book import Figure
 from protlint.quantities import format_quantity, preferred
@@ -48,7 +49,8 @@ class Rating:
 class Load:
     """What one resistor bears in one condition at one ambient: its current, and how often its rating that may be there.
 
-    ``times`` is how many times its rating the part bears for as long as the condition lasts.
+    ``how`` is how the current was found; ``times`` is how many times its rating the part bears for as long as the condition
+    lasts.
     """
 
     condition: str
@@ -56,6 +58,7 @@ class Load:
     current_A: float
     resistance_ohm: float
     times: float = 1.0
+    how: str = ""
 
     @property
     def power_W(self) -> float:
@@ -89,7 +92,7 @@ def _resistors(case: Case, check: str, indices: Iterable[int]) -> Iterator[Answe
             part = case.board.parts[part_index]
             loads = list(_loads(case, element, part))
             if not case.at_ambients(case.solution.high_short):
-                yield NotChecked(check, "the held short at every ambient, which could not be solved")
+                yield NotChecked(check, NOT_SOLVED)
             elif loads:
                 yield from _power(case, check, part, loads)
                 yield from _voltage(case, check, part, max(loads, key=lambda load: load.voltage_V))
@@ -130,7 +133,7 @@ def _rating_key(case: Case, part: BoardPart) -> str:
 
 
 def _loads(case: Case, element: Element, part: BoardPart) -> Iterator[Load]:
-    """Yield what a resistor bears in the held short and at carry, at every ambient."""
+    """Yield what a resistor bears in the held short and at carry, at every ambient and every end of the stated ranges."""
     values_ohm = {index: case.board.parts[index].values.value or 0.0 for index in element.parts}
     names = [name for name, index in case.bench.element_of.items() if index == element.index]
     value_ohm = values_ohm[part.index]
@@ -138,16 +141,16 @@ def _loads(case: Case, element: Element, part: BoardPart) -> Iterator[Load]:
         return
     share = part_shares(element.tree, values_ohm)[part.index].current if len(values_ohm) > 1 else 1.0
     times = overload_times(case)
-    for row, point in case.at_ambients(case.solution.high_short):
-        yield Load("in the held short", row.ambient_degC, _current_A(point, names) * share, value_ohm, times)
-    carried = case.solution.at_carry
-    if carried is not None:
+    for held in held_shorts(case):
+        current_A = _current_A(held.short, names) * share
+        yield Load("in the held short", held.row.ambient_degC, current_A, value_ohm, times, f"{HELD_MOST}{held.words}")
+    for carried, ends in at_carry(case):
         current_A = _current_A(carried, names) * share
         carry_A = case.needs.carry_A
         if carry_A is not None and element.index in case.limiter.elements.get("sense", ()) and carried.output_A > carry_A:
             current_A *= carry_A / carried.output_A
         for row in case.solution.currents:
-            yield Load("at carry", row.ambient_degC, current_A, value_ohm)
+            yield Load("at carry", row.ambient_degC, current_A, value_ohm, how=f"solved at carry, as drawn{ends}")
 
 
 def overload_times(case: Case) -> float:
@@ -187,7 +190,7 @@ def _burns(case: Case, check: str, part: BoardPart, load: Load, rating: Rating, 
         f"{format_quantity(allowed_W, 'W')} it may take there",
         parts=(part.id,),
         working=(
-            WorkingLine("current", f"solved {load.condition}, every tolerance set for the most", load.current_A, "A"),
+            WorkingLine("current", load.how, load.current_A, "A"),
             WorkingLine(
                 "power",
                 f"({format_quantity(load.current_A, 'A')})^2 * {format_quantity(load.resistance_ohm, 'ohm')}",
@@ -249,6 +252,7 @@ def _voltage(case: Case, check: str, part: BoardPart, load: Load) -> Iterator[An
         f"{format_quantity(load.ambient_degC, 'degC')}, {format_quantity(ratio, '%')} of what its element may bear",
         parts=(part.id,),
         working=(
+            WorkingLine("current", load.how, load.current_A, "A"),
             WorkingLine(
                 "voltage",
                 f"{format_quantity(load.current_A, 'A')} * {format_quantity(load.resistance_ohm, 'ohm')}",

@@ -6,8 +6,9 @@ from dataclasses import dataclass
 
 from protlint.board.graph import BoardPart
 from protlint.checks.case import Case
-from protlint.checks.derating import derated, share_of
-from protlint.checks.safe_area import allowed, breakdown_share, curve_for, thermal_share
+from protlint.checks.derating import share_of
+from protlint.checks.safe_area import allowed, allowed_lines, breakdown_share, curve_for, thermal_share
+from protlint.findings import WorkingLine
 from protlint.quantities import format_quantity
 from protlint.solve.solution import Step
 
@@ -18,14 +19,14 @@ AREA = "pass-outside-safe-area"
 @dataclass(frozen=True, slots=True)
 class LetThrough:
     """What a pass device is let into: for how long, the energy, the voltage across it in the short, the current of a pulse
-    of that energy, the current its safe area allows for that time, and where that comes from."""
+    of that energy, the current its safe area allows for that time, and how that comes about."""
 
     lasts_s: float
     energy_J: float
     voltage_V: float
     current_A: float
     allowed_A: float
-    source: str
+    lines: tuple[WorkingLine, ...]
 
     @property
     def ratio(self) -> float:
@@ -58,8 +59,17 @@ def let_through(case: Case, part: BoardPart, names: tuple[str, ...], step: Step)
         power_share=share_of(derating, part.kind, "power"),
     )
     current_A = step.pass_energy_J / (step.delay_s * voltage_V)
-    source = derated(derating, part.kind, "current", curve.source)
-    return LetThrough(step.delay_s, step.pass_energy_J, voltage_V, current_A, bound.current_A, source)
+    lines = allowed_lines(
+        bound,
+        curve,
+        case_degC=hottest_degC,
+        tj_max_degC=limit.value,
+        left_at_limit=case.threshold(AREA, "second_breakdown_left"),
+        derated=(share_of(derating, part.kind, "power"), share_of(derating, part.kind, "current")),
+        standard=derating,
+    )
+    at_case = WorkingLine("case", "the highest ambient", hottest_degC, "degC")
+    return LetThrough(step.delay_s, step.pass_energy_J, voltage_V, current_A, bound.current_A, (at_case, *lines))
 
 
 def too_much(case: Case, step: Step) -> bool:

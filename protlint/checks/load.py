@@ -14,13 +14,14 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
+from protlint.checks.ends import ends_of
 from protlint.checks.sizing import meets, solve_again, with_resistance
 from protlint.findings import Fit, NotChecked, Remedy, WorkingLine
 from protlint.limits import LimiterLimits
 from protlint.quantities import format_quantity, within
 from protlint.solve.circuit import Circuit
-from protlint.solve.conditions import locus_at_corner
 from protlint.solve.parameters import CircuitError
+from protlint.solve.range_ends import loci_at
 from protlint.solve.solution import Point, Solution
 
 CHECK = "foldback-locks-out"
@@ -59,6 +60,17 @@ class Line:
 
 
 @dataclass(frozen=True, slots=True)
+class Least:
+    """The limiter at its least: at one ambient, with the stated ranges at the ends that ``words`` tell; how far from the
+    short the output then works."""
+
+    ambient_degC: float
+    words: str
+    working_V: float
+    line: Line
+
+
+@dataclass(frozen=True, slots=True)
 class StartUp:
     """How the output comes up into the load's capacitance: whether it does, how long that takes, what the pass devices take
     meanwhile altogether, and the greatest of their power."""
@@ -78,21 +90,19 @@ def foldback_locks_out(case: Case) -> Iterator[Answer]:
     if missing is not None:
         yield NotChecked(CHECK, missing)
         return
-    assert needs.output_V is not None and case.solution.short is not None
-    short_V = case.circuit.held[case.solution.short].usual
-    working_V = abs(needs.output_V - short_V)
-    lines = _least_lines(case, case.circuit, case.solution)
+    lines = _least_lines(case)
     if not lines:
         yield NotChecked(CHECK, "the locus with every tolerance set for the least, which could not be solved")
         return
     found = []
-    for ambient_degC, line in lines:
-        stuck = meets_at_V(line, needs, working_V)
-        if stuck is not None:
-            found.append((stuck, ambient_degC, line))
+    for one in lines:
+        stuck_V = meets_at_V(one.line, needs, one.working_V)
+        if stuck_V is not None:
+            found.append((stuck_V, one))
     if not found:
         return
-    stuck_V, ambient_degC, line = min(found)
+    stuck_V, worst = min(found, key=lambda pair: pair[0])
+    line, working_V = worst.line, worst.working_V
     load_A, gives_A = load_A_at(needs, stuck_V, working_V), line.at_A(stuck_V)
     where = "in the short" if stuck_V < working_V / STEPS else f"{format_quantity(stuck_V, 'V')} from the short"
     remedy, fits = _remedy(case, line, working_V)
@@ -100,10 +110,10 @@ def foldback_locks_out(case: Case) -> Iterator[Answer]:
         CHECK,
         f"the load locks the output out: {where} it takes "
         f"{format_quantity(load_A, 'A')} and the limiter gives {format_quantity(gives_A, 'A')} at "
-        f"{format_quantity(ambient_degC, 'degC')}; the output works at {format_quantity(working_V, 'V')}",
+        f"{format_quantity(worst.ambient_degC, 'degC')}; the output works at {format_quantity(working_V, 'V')}",
         parts=case.parts("preset", "sense", "shunt"),
         working=(
-            WorkingLine("the limiter gives", "solved there, every tolerance set for the least", gives_A, "A"),
+            WorkingLine("the limiter gives", f"solved there, every tolerance set for the least{worst.words}", gives_A, "A"),
             WorkingLine("the load takes", _formula(needs, working_V), load_A, "A"),
             WorkingLine("the limiter gives in the short", "the same", line.current_A[0], "A"),
             WorkingLine("the limiter gives at the working output", "the same", line.at_A(working_V), "A"),
@@ -168,7 +178,10 @@ def start_up(line: Line, needs: LimiterLimits, working_V: float, pass_V: Sequenc
 
 
 def start_up_of(case: Case) -> StartUp | None:
-    """Return how a case's output comes up into its stated capacitance, as drawn at usual ambient; None where not known."""
+    """Return how a case's output comes up into its stated capacitance, as drawn at usual ambient; None where not known.
+
+    A figure to tell, at the usual value of everything; the checks heat the pass device for that time at every end.
+    """
     needs, short = case.needs, case.solution.short
     if needs.load_capacitance_F is None or needs.output_V is None or short is None or not case.solution.locus:
         return None
@@ -188,21 +201,25 @@ def _line(points: Sequence[Point], short_V: float) -> Line:
     return Line(tuple(volts for volts, _ in pairs), tuple(amperes for _, amperes in pairs))
 
 
-def _least_lines(case: Case, circuit: Circuit, solution: Solution) -> list[tuple[float, Line]]:
-    """Return the locus of a solved circuit at every ambient with every tolerance set for the least current."""
-    short = solution.short
-    if short is None:
+def _least_lines(case: Case) -> list[Least]:
+    """Return the locus of a solved case at every ambient and every end of the stated ranges, with every other tolerance set
+    for the least current."""
+    solution, output_V = case.solution, case.needs.output_V
+    if solution.short is None or output_V is None:
         return []
-    short_V = circuit.held[short].usual
     try:
-        loci = locus_at_corner(circuit, short, case.limits.ambient_degC, solution.corners.get("low", {}))
+        ends = ends_of(case, at=solution.corners.get("low", {}))
+        corners = [one.corner for one in ends]
+        loci = loci_at(case.circuit, solution.short, case.limits.ambient_degC, corners, case.known)
     except CircuitError:
         return []
-    return [
-        (ambient_degC, _line(points, short_V))
-        for ambient_degC, points in zip(case.limits.ambient_degC, loci, strict=True)
-        if len(points) > 1
-    ]
+    found = []
+    for one, by_ambient in zip(ends, loci, strict=True):
+        short_V = one.held_V[solution.short]
+        for ambient_degC, points in zip(case.limits.ambient_degC, by_ambient, strict=True):
+            if len(points) > 1:
+                found.append(Least(ambient_degC, one.words, abs(output_V - short_V), _line(points, short_V)))
+    return found
 
 
 def _missing(case: Case) -> str | None:
@@ -238,7 +255,7 @@ def _remedy(case: Case, line: Line, working_V: float) -> Remedy:
         now_ohm = case.device(names[0]).model["R"]
         values = within(down_to * now_ohm, up_to * now_ohm, "E24")
         for ohm in sorted((one for one in values if one != now_ohm), key=lambda one: abs(one / now_ohm - 1.0)):
-            if _starts(case, with_resistance(case.circuit, names, ohm / now_ohm), working_V):
+            if _starts(case, with_resistance(case.circuit, names, ohm / now_ohm)):
                 name = case.board.parts[parts[0]].id
                 return f"fit {format_quantity(ohm, 'ohm')} as {name}", (Fit(name, ohm),)
     places = [working_V * step / STEPS for step in range(1, STEPS)]
@@ -251,12 +268,12 @@ def _remedy(case: Case, line: Line, working_V: float) -> Remedy:
     )
 
 
-def _starts(case: Case, circuit: Circuit, working_V: float) -> bool:
+def _starts(case: Case, circuit: Circuit) -> bool:
     """Tell whether the load starts with a changed circuit that still meets carry and cap."""
 
     def free(solution: Solution) -> bool:
-        lines = _least_lines(case, circuit, solution)
-        return bool(lines) and all(meets_at_V(one, case.needs, working_V) is None for _, one in lines)
+        lines = _least_lines(case.changed(circuit, solution))
+        return bool(lines) and all(meets_at_V(one.line, case.needs, one.working_V) is None for one in lines)
 
     if not free(case.solution):  # with the corners as they were: most values fall here, at little cost
         return False

@@ -33,7 +33,8 @@ class IfPartFails:
 
 
 def if_a_part_fails(case: Case) -> IfPartFails | None:
-    """Return what each failed part lets through, or None where the limiter was not solved."""
+    """Return what each failed part lets through, everything else at its usual value, or None where the limiter was not
+    solved: a table to compare with holds, judged by no check."""
     solution = case.solution
     if case.bench.circuit is None or solution.short is None or solution.not_solved is not None:
         return None

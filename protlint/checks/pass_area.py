@@ -9,8 +9,9 @@ from dataclasses import dataclass
 from protlint.board.graph import BoardPart
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.derating import derated
+from protlint.checks.ends import at_carry, held_shorts
 from protlint.checks.pass_device import LEAST_SINK_K_PER_W, Stress, on_the_sink_names
-from protlint.checks.safe_area import Bound, allowed, breakdown_share, curve_for, thermal_share
+from protlint.checks.safe_area import Bound, allowed, allowed_lines, breakdown_share, curve_for, thermal_share
 from protlint.checks.thermal import made_for_a_sink
 from protlint.findings import NotChecked, WorkingLine
 from protlint.partdata.book import Figure, SafeArea
@@ -24,8 +25,6 @@ WALLS = {"bipolar": ("vceo", "ic", "ic_peak"), "mosfet": ("vds", "id", "id_peak"
 VOLTAGE = "its voltage rating"
 
 HALVINGS = 30
-
-SOURCE = "data sheets' derating: thermal bound times (T_J,max - T_C) / (T_J,max - 25 degC); of second breakdown from memory"
 
 
 @dataclass(frozen=True, slots=True)
@@ -81,14 +80,15 @@ def pass_outside_safe_area(case: Case) -> Iterator[Answer]:
 
 
 def _along_the_locus(case: Case, part: BoardPart) -> Iterator[Seen]:
-    """Yield every point of the locus at every ambient, every tolerance set for the most current."""
+    """Yield every point of the locus at every ambient, every tolerance set for the most current, and at every end of the
+    stated ranges."""
     names = case.devices_of(part.id)
-    for row, points in case.at_ambients(case.solution.high_locus):
-        for place, point in enumerate(points):
+    for held in held_shorts(case):
+        for place, point in enumerate(held.locus):
             at = f"with the output at {format_quantity(point.output_V, 'V')}" if place else "in the held short"
             states = [point.states[name] for name in names]
             yield Seen(
-                Stress(at, row.ambient_degC, point, case.lasts_s),
+                Stress(at, held.row.ambient_degC, point, case.lasts_s, held.words),
                 max(abs(state.voltage_V) for state in states),
                 sum(abs(state.current_A) for state in states),
             )
@@ -158,12 +158,13 @@ def _bound(
 
 
 def _case_at(case: Case, part: BoardPart) -> Callable[[Seen], float]:
-    """Return the function that gives the case's temperature at a point of the locus.
+    """Return the function that gives the case's temperature at a point of the locus: by what heats it there, or, in a brief
+    short, before it, at the end of the stated ranges that heats it most.
 
     Where nothing tells better it is the ambient: a case is no cooler than that.
     """
     to_case, to_air = case.rating(part.id, "rth_jc"), case.rating(part.id, "rth_ja")
-    before = case.solution.at_carry
+    before = [point for point, _ in at_carry(case)]
     for_ever = case.lasts_s > case.threshold("pass-overheated", "case_holds")
     own, shared, per_W = case.devices_of(part.id), on_the_sink_names(case), case.needs.sink_K_per_W
     heats = shared if per_W is not None else own
@@ -173,8 +174,8 @@ def _case_at(case: Case, part: BoardPart) -> Callable[[Seen], float]:
     assert per_W is not None
 
     def at(seen: Seen) -> float:
-        point = seen.stress.point if for_ever else before
-        watts = 0.0 if point is None else sum(point.states[name].power_W for name in heats)
+        points = [seen.stress.point] if for_ever else before
+        watts = max((sum(point.states[name].power_W for name in heats) for point in points), default=0.0)
         return seen.stress.ambient_degC + per_W * watts
 
     return at
@@ -193,7 +194,7 @@ def _outside(case: Case, part: BoardPart, worst: Place) -> Answer:
         f"{part.id} is put to {at} {stress.condition} {lasts} at {ambient}, {too_much}{careful}",
         parts=(part.id,),
         working=(
-            WorkingLine("voltage across it", f"solved, {stress.condition}", worst.seen.voltage_V, "V"),
+            WorkingLine("voltage across it", f"solved, {stress.condition}{stress.words}", worst.seen.voltage_V, "V"),
             WorkingLine("current", "solved, every tolerance set for the most", worst.seen.current_A, "A"),
             *_allowed_working(case, part, worst),
             WorkingLine(
@@ -230,14 +231,17 @@ def _allowed_working(case: Case, part: BoardPart, worst: Place) -> Iterator[Work
         watts = format_quantity((case_degC - ambient_degC) / sink_K_per_W, "W")
         heated = f"{format_quantity(ambient_degC, 'degC')} + {watts} * {format_quantity(sink_K_per_W, 'K/W')}"
     yield WorkingLine("case", heated, case_degC, "degC")
-    yield WorkingLine("allowed with the case at 25 degC", bound.how, bound.cold_A, "A", worst.source)
-    thermal = f"({limit.value:g} - {case_degC:.4g}) / ({limit.value:g} - 25)"
-    left = f"{thermal}, derated" if bound.left < thermal_share(case_degC, limit.value) else thermal
-    if bound.left > thermal_share(case_degC, limit.value):
-        left_at_limit = case.threshold(CHECK, "second_breakdown_left")
-        left = f"1 - (1 - {left_at_limit:g}) * (1 - {thermal})"
-    yield WorkingLine("left of it at that case", left, bound.left, "", SOURCE)
-    yield WorkingLine("allowed", "the product of the two", bound.current_A, "A")
+    curve = _curve(case, part)
+    assert not isinstance(curve, str)  # something was held against it
+    yield from allowed_lines(
+        bound,
+        curve,
+        case_degC=case_degC,
+        tj_max_degC=limit.value,
+        left_at_limit=case.threshold(CHECK, "second_breakdown_left"),
+        derated=(case.share(part.id, "power"), case.share(part.id, "current")),
+        standard=case.limits.derating,
+    )
 
 
 def _remedy(case: Case, part: BoardPart, worst: Place) -> str:

@@ -8,8 +8,8 @@ from dataclasses import dataclass, replace
 
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.derating import share_of
+from protlint.checks.ends import NOT_SOLVED, at_carry, held_shorts
 from protlint.checks.load import start_up_of
-from protlint.checks.shunt import NOT_SOLVED
 from protlint.checks.thermal import Heating, Junction, allowed_rise_K, hottest_case_degC, junction, made_for_a_sink
 from protlint.findings import NotChecked, WorkingLine
 from protlint.quantities import format_quantity, preferred, within
@@ -26,12 +26,13 @@ LEAST_SINK_K_PER_W = 0.1
 
 @dataclass(frozen=True, slots=True)
 class Stress:
-    """One solved point that heats the pass devices: in words, at an ambient, for a time."""
+    """One solved point that heats the pass devices: in words, at an ambient, for a time, at which ends of stated ranges."""
 
     condition: str
     ambient_degC: float
     point: Point
     lasts_s: float
+    words: str = ""
 
 
 def pass_overheated(case: Case) -> Iterator[Answer]:
@@ -59,31 +60,38 @@ def pass_overheated(case: Case) -> Iterator[Answer]:
 
 
 def stresses(case: Case) -> Iterator[Stress]:
-    """Yield the held short, and the point of greatest pass dissipation where it is another, at every ambient.
+    """Yield the held short, and the point of greatest pass dissipation where it is another, at every ambient and every end
+    of the stated ranges.
 
-    The latter also for as long as a stated capacitance charges, where that is longer than a short lasts.
+    The latter also for as long as a stated capacitance charges, as drawn and at usual ambient, where that is longer than a
+    short lasts.
     """
-    solution, charging = case.solution, start_up_of(case)
-    for row, (short, worst) in case.at_ambients(list(zip(solution.high_short, solution.high_worst, strict=False))):
-        yield Stress("in the held short", row.ambient_degC, short, case.lasts_s)
+    charging = start_up_of(case)
+    for held in held_shorts(case):
+        ambient_degC, short = held.row.ambient_degC, held.short
+        worst = max(held.locus, key=lambda point: pass_power_W(case, point))
+        yield Stress("in the held short", ambient_degC, short, case.lasts_s, held.words)
         if pass_power_W(case, worst) > WORTH_SAYING * pass_power_W(case, short):
             at = f"with the output at {format_quantity(worst.output_V, 'V')}"
-            yield Stress(at, row.ambient_degC, worst, case.lasts_s)
+            yield Stress(at, ambient_degC, worst, case.lasts_s, held.words)
         if charging is not None and charging.lasts_s is not None and charging.lasts_s > case.lasts_s:
-            yield Stress("while the load's capacitance charges", row.ambient_degC, worst, charging.lasts_s)
+            yield Stress("while the load's capacitance charges", ambient_degC, worst, charging.lasts_s, held.words)
 
 
 def heating(case: Case, part_id: str, stress: Stress) -> Heating:
-    """Return what heats a part at a solved point; a stated sink is shared by all that is on it."""
-    before = case.solution.at_carry
+    """Return what heats a part at a solved point; a stated sink is shared by all that is on it.
+
+    What it takes before is the most at any end of the stated ranges.
+    """
+    before = [point for point, _ in at_carry(case)]
     return Heating(
         own_W=case.power_W(stress.point, part_id),
         shared_W=pass_power_W(case, stress.point),
         ambient_degC=stress.ambient_degC,
         lasts_s=stress.lasts_s,
         sink_K_per_W=case.needs.sink_K_per_W if on_the_sink(case, part_id) else None,
-        before_W=case.power_W(before, part_id) if before is not None else 0.0,
-        before_shared_W=pass_power_W(case, before) if before is not None else 0.0,
+        before_W=max((case.power_W(point, part_id) for point in before), default=0.0),
+        before_shared_W=max((pass_power_W(case, point) for point in before), default=0.0),
     )
 
 
@@ -122,7 +130,9 @@ def _overheated(case: Case, part_id: str, stress: Stress, worst: Junction, remed
         f"{part_id} takes {format_quantity(worst.own_W, 'W')} {stress.condition}{lasts} at {ambient}: {said}",
         parts=(part_id,),
         working=(
-            WorkingLine("current", f"{stress.condition}, every tolerance set for the most", abs(state.current_A), "A"),
+            WorkingLine(
+                "current", f"{stress.condition}, every tolerance set for the most{stress.words}", abs(state.current_A), "A"
+            ),
             WorkingLine("voltage across it", "solved", abs(state.voltage_V), "V"),
             WorkingLine("power", "all that flows into it", worst.own_W, "W", "Joule's law"),
             *worst.lines,

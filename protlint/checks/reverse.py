@@ -2,20 +2,23 @@
 
 Solved with the drive at its off end while the load holds the output at its return; and, where something holds the output up
 (a capacitor of some size), with the output at its highest, no load, and the drive at its off end, or every supply at 0 V.
-In a push-pull stage the other half keeps the drive near the output: there it is solved with that half at work.
+In a push-pull stage the other half keeps the drive near the output: there it is solved with that half at work. Each is
+solved at every end of the supplies' and the drive's stated ranges, and the worst counts.
 """
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 from protlint.checks.case import VOLTAGES, Answer, Case
+from protlint.checks.ends import drive_V, ends_of
 from protlint.findings import Level, NotChecked, WorkingLine
 from protlint.partdata.book import Figure
 from protlint.quantities import format_quantity, preferred
 from protlint.solve.conditions import Condition
 from protlint.solve.parameters import CircuitError
+from protlint.solve.range_ends import Ends
 from protlint.solve.solution import Point, State
 
 CHECK = "reverse-base-emitter"
@@ -58,41 +61,68 @@ def reverse_base_emitter(case: Case) -> Iterator[Answer]:
 
 
 def _states(case: Case) -> Iterator[Stressed | NotChecked]:
+    """Yield the points at which a junction may be driven backwards, each at every end of the stated ranges."""
     short = case.solution.short
     if short is None:
         return
-    short_V = case.circuit.held[short].usual
-    off, on = case.drive_ends_V
     try:
+        ends = ends_of(case, on_end=False, off_end=True)
         if has_other_half(case):
-            yield from _solved(case, f"the other half at work and the output at {short_V:g} V", _mirrored_V(case), short_V)
+            below_V = _mirrored_V(case)
+            yield from _solved(
+                case,
+                [
+                    _asked(
+                        case, one, "the other half at work and the output", one.held_V[short], one.held_V[short] - below_V
+                    )
+                    for one in ends
+                ],
+            )
             return
-        off_V = off.low if off.usual < on.usual else off.high
-        yield from _solved(case, f"the output at {short_V:g} V", off_V, short_V)
-        if not case.solution.sources:
-            return
-        if not _held_up(case):
+        asked = [_asked(case, one, "the output", one.held_V[short]) for one in ends]
+        if case.solution.sources and not _held_up(case):
             if case.needs.load_capacitance_F is None:
                 yield NotChecked(CHECK, f"{case.limits_key('load_capacitance')}, which may hold the output up")
-            return
-        highest_V = _highest_V(case)
-        if highest_V is None:
-            yield NotChecked(CHECK, case.limits_key("output"))
-            return
-        yield from _solved(case, f"the output held at {highest_V:.3g} V without a load", off_V, highest_V)
-        if _returned_by_a_diode(case):
-            highest_V = min(DIODE_DROP_V, abs(highest_V)) * (1.0 if highest_V >= 0.0 else -1.0)
-        yield from _solved(case, f"the output held at {highest_V:.3g} V", 0.0, highest_V, supplied=False)
+        elif case.solution.sources:
+            highest_V = _highest_V(case, ends)
+            if highest_V is None:
+                yield NotChecked(CHECK, case.limits_key("output"))
+            else:
+                asked += _held_up_states(case, ends, highest_V)
+        yield from _solved(case, asked)
     except CircuitError as reason:
         yield NotChecked(CHECK, f"the circuit with its drive off: {reason}")
 
 
-def _solved(
-    case: Case, output: str, drive_V: float, output_V: float, *, supplied: bool = True
-) -> Iterator[Stressed | NotChecked]:
-    words = f"with the drive at {drive_V:g} V and {output}" if supplied else f"with the supplies off and {output}"
-    point = case.under([Condition(case.limits.ambient_degC[1], drive_V, output_V, supplied)])[0]
-    yield Stressed(words, point) if point is not None else NotChecked(CHECK, f"the circuit {words}, which was not solved")
+def _held_up_states(case: Case, ends: Sequence[Ends], highest_V: Sequence[float]) -> list[tuple[str, Condition]]:
+    """Return what is asked where something holds the output up: the drive off, without a load; and the supplies off."""
+    asked = [
+        _asked(case, one, "the output held", output_V, load=" without a load")
+        for one, output_V in zip(ends, highest_V, strict=True)
+    ]
+    left_V, charged = max(zip(highest_V, ends, strict=True), key=lambda pair: abs(pair[0]))
+    left = f", left by {charged.words.strip(' ()')}" if charged.words and case.needs.output_V is None else ""
+    if _returned_by_a_diode(case):
+        left_V, left = min(DIODE_DROP_V, abs(left_V)) * (1.0 if left_V >= 0.0 else -1.0), ""
+    words = f"with the supplies off and the output held at {left_V:.3g} V{left}"
+    return [*asked, (words, Condition(case.limits.ambient_degC[1], 0.0, left_V, supplied=False))]
+
+
+def _asked(
+    case: Case, ends: Ends, output: str, output_V: float, off_V: float | None = None, load: str = ""
+) -> tuple[str, Condition]:
+    """Return a condition with the drive at its off end, or where the other half keeps it, and its words."""
+    at_V = drive_V(case, ends, on=False) if off_V is None else off_V
+    words = f"with the drive at {at_V:.4g} V and {output} at {output_V:.4g} V{load}{ends.words}"
+    return words, Condition(case.limits.ambient_degC[1], at_V, output_V, corner=ends.corner)
+
+
+def _solved(case: Case, asked: Sequence[tuple[str, Condition]]) -> Iterator[Stressed | NotChecked]:
+    points = case.under([condition for _, condition in asked])
+    for (words, _), point in zip(asked, points, strict=True):
+        yield (
+            Stressed(words, point) if point is not None else NotChecked(CHECK, f"the circuit {words}, which was not solved")
+        )
 
 
 def has_other_half(case: Case) -> bool:
@@ -117,15 +147,14 @@ def has_other_half(case: Case) -> bool:
 
 
 def _mirrored_V(case: Case) -> float:
-    """Return the drive's voltage while an equal other half holds the short: as far on the other side of the output as this
-    half's own drops, from base to emitter and across the sense resistance."""
+    """Return how far the drive's voltage lies below the output's while an equal other half holds the short: as far on the
+    other side of it as this half's own drops, from base to emitter and across the sense resistance."""
     held = case.solution.held_short
     if held is None:
         return 0.0
     drops = [sum(abs(held.states[name].control_V) for name in names) for _, names in case.device_parts("pass", "driver")]
     sensed = max((abs(held.states[name].voltage_V) for name in case.circuit.sense), default=0.0)
-    sign = 1.0 if case.limiter.polarity == "n" else -1.0
-    return held.output_V - sign * (sum(drops) + sensed)
+    return (1.0 if case.limiter.polarity == "n" else -1.0) * (sum(drops) + sensed)
 
 
 def _held_up(case: Case) -> bool:
@@ -134,14 +163,19 @@ def _held_up(case: Case) -> bool:
     return held_F >= case.threshold(CHECK, "holds_up")
 
 
-def _highest_V(case: Case) -> float | None:
-    """Return the highest voltage the output can have: as stated, else what the stage gives with its drive on and no load."""
+def _highest_V(case: Case, ends: Sequence[Ends]) -> list[float] | None:
+    """Return the highest voltage the output can have at each of some ends: as stated, else what the stage gives with its
+    drive on, at the end of that which gives the most, and no load."""
     if case.needs.output_V is not None:
-        return case.needs.output_V
-    off, on = case.drive_ends_V
-    on_V = on.high if on.usual > off.usual else on.low
-    point = case.under([Condition(case.limits.ambient_degC[1], on_V, None)])[0]
-    return None if point is None else point.output_V
+        return [case.needs.output_V] * len(ends)
+    drive, on = case.circuit.drive, case.drive_ends_V[1]
+    is_high = case.solution.on_end == "high"
+    follows = (drive.high_is if is_high else drive.low_is) is not None
+    most_V = on.high if is_high else on.low
+    asked = [(drive_V(case, one, on=True) if follows else most_V, one.corner) for one in ends]
+    points = case.under([Condition(case.limits.ambient_degC[1], on_V, None, corner=corner) for on_V, corner in asked])
+    found = [point.output_V for point in points if point is not None]
+    return found if len(found) == len(ends) else None
 
 
 def _returned_by_a_diode(case: Case) -> bool:

@@ -9,11 +9,21 @@ curve's greatest power and the current ratings bound it, beyond the last corner 
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from itertools import pairwise
 
+from protlint.findings import WorkingLine
 from protlint.partdata.book import SafeArea
+from protlint.quantities import format_quantity
+
+BY_POWER = "power"
+"""The thermal bound of a safe area."""
+
+SAFE_AREA_DEGC = 25.0
+"""Case temperature that safe areas are drawn for."""
+
+SOURCE = "data sheets' derating: thermal bound times (T_J,max - T_C) / (T_J,max - 25 degC); of second breakdown from memory"
 
 Corners = Sequence[tuple[float, float]]
 
@@ -65,7 +75,7 @@ def allowed(
     cold_A = greatest_W / voltage_V if voltage_V > 0.0 else math.inf
     by_power = Bound(
         cold_A * left,
-        "power",
+        BY_POWER,
         cold_A=cold_A,
         how=f"the curve's greatest power, {greatest_W:.3g} W, over the voltage",
         left=left,
@@ -101,3 +111,34 @@ def thermal_share(case_degC: float, tj_max_degC: float) -> float:
 def breakdown_share(case_degC: float, tj_max_degC: float, left_at_limit: float) -> float:
     """Return the share of the second-breakdown bound left at a case temperature: in a straight line to ``left_at_limit``."""
     return 1.0 - (1.0 - left_at_limit) * (1.0 - thermal_share(case_degC, tj_max_degC))
+
+
+def allowed_lines(
+    bound: Bound,
+    curve: SafeArea,
+    *,
+    case_degC: float,
+    tj_max_degC: float,
+    left_at_limit: float,
+    derated: tuple[float, float],
+    standard: str,
+) -> Iterator[WorkingLine]:
+    """Yield how what a curve allows comes about: what it allows with the case at 25 degC, and what is left of that.
+
+    ``left_at_limit`` is what :func:`breakdown_share` was given, ``derated`` the shares of power and current that a derating
+    ``standard`` leaves.
+    """
+    lasts = "dc" if math.isinf(curve.lasts_s) else format_quantity(curve.lasts_s, "s")
+    yield WorkingLine(
+        "allowed with the case at 25 degC", f"safe area, {lasts}: {bound.how}", bound.cold_A, "A", curve.source
+    )
+    thermal = f"({tj_max_degC:g} - {case_degC:.4g}) / ({tj_max_degC:g} - 25)"
+    share = derated[0 if bound.by == BY_POWER else 1]
+    how = thermal
+    if not math.isclose(bound.left, share * thermal_share(case_degC, tj_max_degC), rel_tol=1e-9, abs_tol=1e-12):
+        how = f"1 - (1 - {left_at_limit:g}) * (1 - {thermal})"
+    elif case_degC <= SAFE_AREA_DEGC:
+        how = f"all: no warmer than {SAFE_AREA_DEGC:g} degC"
+    times = "" if share == 1.0 else f", times {share:g} ({standard})"
+    yield WorkingLine("left of it at that case", f"{how}{times}", bound.left, "", SOURCE)
+    yield WorkingLine("allowed", "the product of the two", bound.current_A, "A")

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Collection, Iterator
 from dataclasses import dataclass
 
-from protlint.board.graph import Board, Element
+from protlint.board.graph import Board, Element, Supply
 from protlint.board.regulators import regulator_across
 from protlint.checks.board_case import BoardAnswer, BoardCase, Unanswered
 from protlint.checks.case import ALL_ASSUMPTIONS, Case
@@ -26,7 +26,8 @@ Step = tuple[Element, int, str]
 
 @dataclass(frozen=True, slots=True)
 class Road:
-    """A way from a supply to the output: its elements from the output on, how each conducts, the supply's net and voltage.
+    """A way from a supply to the output: its elements from the output on, how each conducts, the supply's net and its
+    voltage at that end of its range which drives the most; ``end`` says which in words, empty without a range.
 
     ``resistance_ohm`` is what limits its current, 0 where nothing does, None where a value is not known.
     """
@@ -35,6 +36,7 @@ class Road:
     hows: tuple[str, ...]
     supply: int
     supply_V: float
+    end: str
     resistance_ohm: float | None
 
 
@@ -62,7 +64,7 @@ def second_road(whole: BoardCase) -> Iterator[BoardAnswer]:
 def _finding(case: Case, road: Road, drop_V: float, holds_A: float) -> Finding:
     board, parts = case.board, _parts(case, road)
     supply, output = board.nets[road.supply].name, _output_name(case)
-    lines = [WorkingLine("voltage", f"from {supply} to the short", drop_V, "V")]
+    lines = [WorkingLine("voltage", f"from {supply}{road.end} to the short", drop_V, "V")]
     said, level = "which nothing in this way limits", None
     if road.resistance_ohm:
         current_A = drop_V / road.resistance_ohm
@@ -143,16 +145,20 @@ def roads(case: Case, short_V: float, least_A: float, guarded: Collection[int]) 
     board, output = case.board, case.limiter.nets["output"]
     assert output is not None
     sign = 1.0 if _sources(case) else -1.0
-    reach_V = max((sign * (net.supply.voltage_V.usual - short_V) for net in board.supplies if net.supply), default=0.0)
+    reach_V = max((sign * (_most_V(net.supply, sign) - short_V) for net in board.supplies if net.supply), default=0.0)
     solved = set(case.bench.element_of.values())
     stack: list[tuple[int, tuple[Element, ...], tuple[str, ...]]] = [(output, (), ())]
     while stack:
         net, elements, hows = stack.pop()
         supply = board.nets[net].supply
         if supply is not None and net != output:
-            supply_V = supply.voltage_V.usual
+            supply_V, limits = _most_V(supply, sign), supply.voltage_V
+            if board.nets[net].name == case.solution.short:
+                continue  # from the short's own net nothing flows into the short
             if sign * (supply_V - short_V) > _drop_V(elements, hows):
-                yield Road(elements, hows, net, supply_V, _resistance_ohm(elements))
+                name = "high" if sign > 0.0 else "low"
+                end = f" at its {name} end, {format_quantity(supply_V, 'V')}," if limits.low < limits.high else ""
+                yield Road(elements, hows, net, supply_V, end, _resistance_ohm(elements))
             continue
         if len(elements) == LONGEST or (elements and len(board.elements_at[net]) > CROWDED):
             continue
@@ -161,6 +167,11 @@ def roads(case: Case, short_V: float, least_A: float, guarded: Collection[int]) 
                 continue
             if ((_resistance_ohm((*elements, element)) or 0.0) * least_A) < reach_V:
                 stack.append((other, (*elements, element), (*hows, how)))
+
+
+def _most_V(supply: Supply, sign: float) -> float:
+    """Return the end of a supply's range that brings most current to the output (``sign`` 1) or takes most away (-1)."""
+    return supply.voltage_V.high if sign > 0.0 else supply.voltage_V.low
 
 
 def _steps(board: Board, net: int, sign: float) -> Iterator[Step]:
@@ -212,9 +223,12 @@ def _sources(case: Case) -> bool:
 
 
 def _short_V(case: Case) -> float | None:
+    """Return the short's voltage at that end of its range which takes the most from a second way; None without one."""
     circuit = case.bench.circuit
     held = None if circuit is None else circuit.held.get(case.solution.short or "")
-    return None if held is None else held.usual
+    if held is None:
+        return None
+    return held.low if _sources(case) else held.high
 
 
 def _parts(case: Case, road: Road) -> tuple[str, ...]:

@@ -6,6 +6,7 @@ from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 
 from protlint.checks.case import ALL_ASSUMPTIONS, VOLTAGES, Answer, Case
+from protlint.checks.ends import HELD_MOST, NOT_SOLVED, ends_of, held_shorts
 from protlint.checks.thermal import Heating, Junction, in_free_air, junction
 from protlint.findings import NotChecked, WorkingLine
 from protlint.partdata.book import Figure
@@ -15,12 +16,10 @@ from protlint.solve.conditions import Condition
 from protlint.solve.parameters import CircuitError
 from protlint.solve.solution import Currents, Point
 
-NOT_SOLVED = "the held short at every ambient, which could not be solved"
-
 
 @dataclass(frozen=True, slots=True)
 class Taken:
-    """What one shunt part takes in the held short at one ambient."""
+    """What one shunt part takes in the held short at one ambient; ``words`` say at which ends of stated ranges."""
 
     part_id: str
     row: Currents
@@ -28,6 +27,7 @@ class Taken:
     current_A: float
     voltage_V: float
     power_W: float
+    words: str
 
 
 def current_rating(kind: str) -> str:
@@ -36,14 +36,16 @@ def current_rating(kind: str) -> str:
 
 
 def taken_by_shunt(case: Case) -> Mapping[str, tuple[Taken, ...]]:
-    """Return what each shunt part takes in the held short, every tolerance set for the most, at every ambient."""
+    """Return what each shunt part takes in the held short, every tolerance set for the most and at every end of the stated
+    ranges, at every ambient."""
     table: dict[str, tuple[Taken, ...]] = {}
     for part_id, names in case.device_parts("shunt"):
         rows = []
-        for row, point in case.at_ambients(case.solution.high_short):
+        for held in held_shorts(case):
+            point = held.short
             state = max((point.states[name] for name in names), key=lambda one: abs(one.current_A))
             power_W = case.power_W(point, part_id)
-            rows.append(Taken(part_id, row, point, abs(state.current_A), abs(state.voltage_V), power_W))
+            rows.append(Taken(part_id, held.row, point, abs(state.current_A), abs(state.voltage_V), power_W, held.words))
         table[part_id] = tuple(rows)
     return table
 
@@ -101,7 +103,7 @@ def _too_much_current(case: Case, worst: Taken, allowed: Figure) -> Iterator[Ans
         f"{format_quantity(worst.row.ambient_degC, 'degC')}, it may take {format_quantity(allowed.value, 'A')}",
         parts=(worst.part_id,),
         working=(
-            WorkingLine("shunt current", "solved in the held short, every tolerance set for the most", worst.current_A, "A"),
+            WorkingLine("shunt current", f"{HELD_MOST}{worst.words}", worst.current_A, "A"),
             WorkingLine("it may take", "its current rating", allowed.value, "A", allowed.source),
         ),
         remedy=f"fit a shunt rated {needed} or more as {worst.part_id}",
@@ -138,7 +140,7 @@ def _too_much_power(case: Case, worst: Taken, hot: Junction) -> Answer:
 
 def _voltage(case: Case, part_id: str) -> Iterator[Answer]:
     """Yield a finding where the shunt, the limiter off, has more than V_CEO across it anywhere in the drive's and output's
-    range: the drive at either extreme, the output in the short or open."""
+    range: the drive at either end, the output in the short or open, at every end of what is stated as a range."""
     check = "shunt-overloaded"
     allowed = case.allowed(part_id, "vceo", "voltage")
     if allowed is None:
@@ -168,19 +170,17 @@ def _voltage(case: Case, part_id: str) -> Iterator[Answer]:
 
 
 def _greatest_voltage(case: Case, part_id: str) -> tuple[float, str] | None:
-    circuit, short = case.circuit, case.solution.short
+    short = case.solution.short
     if short is None:
         return None
-    ambient_degC = case.limits.ambient_degC[1]
-    short_V = circuit.held[short]
-    outputs = {f"the output at {volts:g} V": volts for volts in (short_V.low, short_V.high)} | {"the output open": None}
-    drives = {"low": circuit.drive.low_V.low, "high": circuit.drive.high_V.high}
     words, conditions = [], []
-    for end, drive_V in drives.items():
-        for where, output_V in outputs.items():
-            words.append(f"with the drive at its {end} end and {where}")
-            conditions.append(Condition(ambient_degC, drive_V, output_V))
     try:
+        for ends in ends_of(case, off_end=True):
+            short_V = ends.held_V[short]
+            for end, drive_V in (("low", ends.low_V), ("high", ends.high_V)):
+                for where, output_V in ((f"the output at {short_V:g} V", short_V), ("the output open", None)):
+                    words.append(f"with the drive at its {end} end and {where}{ends.words}")
+                    conditions.append(Condition(case.limits.ambient_degC[1], drive_V, output_V, corner=ends.corner))
         points = case.under(conditions)
     except CircuitError:
         return None

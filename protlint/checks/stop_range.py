@@ -7,6 +7,7 @@ from collections.abc import Callable
 from dataclasses import dataclass, replace
 
 from protlint.checks.case import Case
+from protlint.checks.ends import drive_V, ends_of
 from protlint.checks.sizing import with_resistance
 from protlint.checks.surge import Surge
 from protlint.quantities import preferred, within
@@ -29,13 +30,14 @@ BRIDGED_OHM = 1e-3
 @dataclass(frozen=True, slots=True)
 class Moves:
     """How holds moves from the least to the greatest gain of the shunt: with the base stop, without it, and the difference,
-    relative to holds, at the ambient where that is greatest."""
+    relative to holds, at the ambient and the ends of the stated ranges (in words) where that is greatest."""
 
     share: float
     without: float
     with_A: tuple[float, float]
     hfe: tuple[float, float]
     ambient_degC: float
+    words: str = ""
 
 
 @dataclass(frozen=True, slots=True)
@@ -65,12 +67,10 @@ def moves_for_the_stop(case: Case, shunt: Device, stop_ohm: float | None = None)
     if with_it is None or without is None:
         return None
     found = []
-    for ambient_degC, (low_A, high_A), (bare_low_A, bare_high_A) in zip(
-        case.limits.ambient_degC, with_it, without, strict=True
-    ):
+    for (ambient_degC, words, low_A, high_A), (_, _, bare_low_A, bare_high_A) in zip(with_it, without, strict=True):
         bare = abs(bare_low_A - bare_high_A) / bare_high_A
         share = abs(low_A - high_A) / high_A - bare
-        found.append(Moves(share, bare, (low_A, high_A), shunt.hfe, ambient_degC))
+        found.append(Moves(share, bare, (low_A, high_A), shunt.hfe, ambient_degC, words))
     return max(found, key=lambda one: one.share)
 
 
@@ -135,25 +135,29 @@ def _by_hand(case: Case, shunt: Device, stop_ohm: float) -> float:
     return shunt_A * stop_ohm * (1.0 / shunt.hfe[0] - 1.0 / shunt.hfe[1]) / min(drops)
 
 
-def _holds(case: Case, circuit: Circuit, shunt: Device) -> list[tuple[float, float]] | None:
-    """Return holds at the least and the greatest gain of the shunt, at every ambient; None where a point was not solved."""
+def _holds(case: Case, circuit: Circuit, shunt: Device) -> list[tuple[float, str, float, float]] | None:
+    """Return ambient, ends of the stated ranges in words, and holds at the least and the greatest gain of the shunt, for
+    every ambient and every end; None where a point was not solved."""
     assert shunt.hfe is not None and case.solution.short is not None
-    short_V, ambients = circuit.held[case.solution.short].usual, case.limits.ambient_degC
     by_gain = []
     try:
-        conditions = [Condition(ambient, case.drive_ends_V[1].usual, short_V) for ambient in ambients]
+        places = [(ambient_degC, one) for ambient_degC in case.limits.ambient_degC for one in ends_of(case)]
+        conditions = [
+            Condition(ambient_degC, drive_V(case, one, on=True), one.held_V[case.solution.short], corner=one.corner)
+            for ambient_degC, one in places
+        ]
         for gain in shunt.hfe:
             model = {**shunt.model, "BF": gain, "XTB": 0.0}
             devices = tuple(replace(one, model=model) if one.name == shunt.name else one for one in circuit.devices)
             by_gain.append(solve_under(replace(circuit, devices=devices), conditions, case.known))
     except CircuitError:
         return None
-    pairs = []
-    for low, high in zip(*by_gain, strict=True):
+    rows = []
+    for (ambient_degC, one), low, high in zip(places, *by_gain, strict=True):
         if low is None or high is None or high.output_A == 0.0:
             return None
-        pairs.append((abs(low.output_A), abs(high.output_A)))
-    return pairs
+        rows.append((ambient_degC, one.words, abs(low.output_A), abs(high.output_A)))
+    return rows
 
 
 def _stop_names(case: Case) -> tuple[str, ...]:

@@ -6,12 +6,17 @@ whatever resistance there is: I_B = (V - V_junction) / (R_th + RB), V and R_th b
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 from protlint.checks.case import Case
+from protlint.checks.ends import drive_V, ends_of
 from protlint.findings import WorkingLine
 from protlint.quantities import format_quantity
 from protlint.solve.circuit import Device
+from protlint.solve.conditions import Condition
+from protlint.solve.parameters import CircuitError
+from protlint.solve.range_ends import Ends
 from protlint.solve.resistive import behind, thevenin
 from protlint.solve.solution import Point
 
@@ -20,8 +25,9 @@ KIRCHHOFF = "Kirchhoff's voltage law"
 
 @dataclass(frozen=True, slots=True)
 class Surge:
-    """The instant at the ambient where it is worst: the unlimited current through each sense resistance and how it was
-    found, the drop across the sense resistance, and what the base sees: voltage, resistance, RB."""
+    """The instant at the ambient and the ends of the stated ranges where it is worst: the unlimited current through each
+    sense resistance and how it was found, the drop across the sense resistance, and what the base sees: voltage,
+    resistance, RB."""
 
     ambient_degC: float
     sense_A: float
@@ -65,19 +71,41 @@ def shunt_of(case: Case) -> Device | None:
 
 def surge(case: Case, shunt: Device, junction_V: float) -> Surge | None:
     """Return the instant at its worst ambient, or None where the circuit without its shunt could not be solved."""
-    found = [
-        _at(case, shunt, junction_V, point, row.ambient_degC) for row, point in case.at_ambients(case.solution.unlimited)
-    ]
+    found = [_at(case, shunt, junction_V, *place) for place in _unlimited(case)]
     solved = [one for one in found if one is not None]
     return max(solved, key=lambda one: (one.base_A, one.drop_V), default=None)
 
 
-def _at(case: Case, shunt: Device, junction_V: float, point: Point, ambient_degC: float) -> Surge | None:
+def _unlimited(case: Case) -> list[tuple[float, Ends, Point]]:
+    """Return the short with the shunt taken out, parts as drawn, at every ambient and every end of the stated ranges; empty
+    where one was not solved."""
+    short = case.solution.short
+    if short is None:
+        return []
+    try:
+        ends = ends_of(case)
+        usual = case.at_ambients(case.solution.unlimited)
+        if not usual or not ends[0].words:
+            return [(row.ambient_degC, ends[0], point) for row, point in usual]
+        places = [(ambient_degC, one) for ambient_degC in case.limits.ambient_degC for one in ends]
+        points = case.under(
+            [
+                Condition(ambient_degC, drive_V(case, one, on=True), one.held_V[short], shunt_in=False, corner=one.corner)
+                for ambient_degC, one in places
+            ]
+        )
+    except CircuitError:
+        return []
+    solved = [(*place, point) for place, point in zip(places, points, strict=True) if point is not None]
+    return solved if len(solved) == len(places) else []
+
+
+def _at(case: Case, shunt: Device, junction_V: float, ambient_degC: float, ends: Ends, point: Point) -> Surge | None:
     circuit, short = case.circuit, case.solution.short
     senses = [device for device in circuit.devices if device.name in circuit.sense]
     if short is None or not senses:
         return None
-    known_V = {node: limits.usual for node, limits in circuit.held.items()} | {circuit.output: circuit.held[short].usual}
+    known_V = {**ends.held_V, circuit.output: ends.held_V[short]}
     _, base, emitter = shunt.nodes
     sign = 1.0 if shunt.kind == "npn" else -1.0
     currents = {}
@@ -95,7 +123,7 @@ def _at(case: Case, shunt: Device, junction_V: float, point: Point, ambient_degC
     return Surge(
         ambient_degC=ambient_degC,
         sense_A=greatest,
-        how=how,
+        how=f"{how}{ends.words}",
         sense_ohm=sense_ohm,
         drop_V=greatest * sense_ohm,
         seen_V=sign * seen_V,
@@ -105,7 +133,7 @@ def _at(case: Case, shunt: Device, junction_V: float, point: Point, ambient_degC
     )
 
 
-def _by_supply_A(case: Case, sense: Device, near: str, known_V: dict[str, float]) -> tuple[float, str] | None:
+def _by_supply_A(case: Case, sense: Device, near: str, known_V: Mapping[str, float]) -> tuple[float, str] | None:
     """Return what a MOSFET's loop passes: the supply over the loop's resistance, for its gate may rise with its drain."""
     circuit = case.circuit
     for device in circuit.devices:

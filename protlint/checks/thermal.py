@@ -15,15 +15,13 @@ from itertools import pairwise
 
 from protlint.checks.case import Case
 from protlint.checks.derating import derated, junction_limit_degC, share_of
+from protlint.checks.safe_area import SAFE_AREA_DEGC
 from protlint.findings import WorkingLine
 from protlint.partdata.book import Figure, PartEntry
 from protlint.quantities import format_quantity
 
 SINKABLE = 5.0
 """A package whose resistance to free air is this many times that to its case is made for a sink."""
-
-SAFE_AREA_DEGC = 25.0
-"""Case temperature that safe areas are drawn for."""
 
 
 @dataclass(frozen=True, slots=True)

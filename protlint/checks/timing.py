@@ -30,7 +30,11 @@ BY_HAND = "R C ln((m - p) / (m - 1)), the RC's answer to a step; any textbook on
 
 
 def trips_late(case: Case) -> Iterator[Answer]:
-    """Yield a finding for each pass device that what is let through before the limiter acts puts outside its safe area."""
+    """Yield a finding for each pass device that what is let through before the limiter acts puts outside its safe area.
+
+    The step is the solution's, everything at its usual value: following it at every end of the stated ranges would cost more
+    than the whole review.
+    """
     step = case.solution.step
     if step is None:
         yield from not_known(LATE, case.solution.step_needs)
@@ -48,7 +52,10 @@ def trips_late(case: Case) -> Iterator[Answer]:
 
 
 def trips_on_peaks(case: Case) -> Iterator[Answer]:
-    """Yield a finding where a load peak that must pass is above what is carried and lasts longer than the delay."""
+    """Yield a finding where a load peak that must pass is above what is carried and lasts longer than the delay.
+
+    What is carried is the low end over every spread; the time at that overdrive is solved with everything as usual.
+    """
     peak = case.needs.peak
     if peak is None:
         return
@@ -106,16 +113,22 @@ def _late(case: Case, part: BoardPart, names: tuple[str, ...], found: LetThrough
             ),
             WorkingLine("peak", "greatest output current meanwhile", step.peak_A, "A"),
             WorkingLine("energy", "into the pass device until then", found.energy_J, "J"),
+            WorkingLine("voltage across it", "solved in the held short, as drawn", found.voltage_V, "V"),
             WorkingLine(
                 "current of a pulse of that energy", "energy / (delay * voltage in the short)", found.current_A, "A"
             ),
-            WorkingLine("allowed", "its case at the highest ambient", found.allowed_A, "A", found.source),
+            *found.lines,
+            WorkingLine("over what is allowed", "current over what is allowed", _ratio(found), ""),
             *charge_lines(case),
         ),
         remedy=_late_remedy(case, part, names, found),
         assumption=rests_on_assumptions(case),
         subject=part.id,
     )
+
+
+def _ratio(found: LetThrough) -> float | None:
+    return found.ratio if math.isfinite(found.ratio) else None
 
 
 def _late_remedy(case: Case, part: BoardPart, names: tuple[str, ...], found: LetThrough) -> str:
@@ -201,7 +214,7 @@ def _at_output(case: Case, output_V: float | None, *, factor: float = 1.0) -> So
     """Return the solution at an output voltage, with the sense resistance multiplied by a factor."""
     if factor == 1.0 and output_V == case.circuit.output_V:
         return case.solution
-    there = replace(case, bench=replace(case.bench, circuit=replace(case.circuit, output_V=output_V)))
+    there = case.changed(replace(case.circuit, output_V=output_V), case.solution)
     return resolve(there, factor) if factor != 1.0 else solve_again(there, there.circuit)
 
 

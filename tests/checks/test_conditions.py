@@ -81,7 +81,7 @@ def test_a_drive_that_nothing_bounds_is_said_once_and_nothing_is_made_of_its_fig
 
 def test_the_instant_before_the_loop_acts_by_hand() -> None:
     # I_B = (I_unl R_S - 0.8 V) / (R_th + RB): 100 ohm base stop, 2.2 ohm sense resistor, 10 ohm RB
-    case = case_of(sink().review())
+    case = case_of(sink().supplied().review())
     shunt = shunt_of(case)
     assert shunt is not None
     instant = surge(case, shunt, 0.8)
@@ -110,7 +110,8 @@ def test_of_a_mosfet_the_supply_over_the_loops_resistance_counts() -> None:
     assert shunt is not None
     instant = surge(case, shunt, 0.8)
     assert instant is not None
-    assert instant.sense_A == pytest.approx(24.0 / (1.0 + 0.05))
+    assert instant.sense_A == pytest.approx(1.05 * 24.0 / (1.0 + 0.05))  # 24 V 5 % at its high end
+    assert instant.how.endswith("(+24V at its high end, 25.2 V)")
 
 
 @pytest.mark.parametrize(("pin", "assumed"), [("Y", False), ("A", True)])

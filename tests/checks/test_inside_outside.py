@@ -8,12 +8,12 @@ import pytest
 
 from protlint.checks.catalogue import load_catalogue
 from protlint.pipeline import Review
-from tests.support import scenarios, scenarios_of_boards
+from tests.support import scenarios, scenarios_of_boards, scenarios_of_ranges
 from tests.support.desk import found
 from tests.support.judged import SOUND
 from tests.support.scenarios import Scenario
 
-GROUPS = (*scenarios.GROUPS, *scenarios_of_boards.GROUPS)
+GROUPS = (*scenarios.GROUPS, *scenarios_of_boards.GROUPS, *scenarios_of_ranges.GROUPS)
 TALLY: dict[str, dict[str, int]] = {}
 TRIED: set[str] = set()
 """The groups that were put to the test: all of them, unless somebody asked for one."""

@@ -96,7 +96,7 @@ def test_a_load_that_is_not_stated_is_asked_for_and_only_of_a_limit_that_follows
 
 def test_starting_counts_for_a_short_that_is_cut_off_sooner() -> None:
     # 20 ms of short are borne; 220 ms of charging are not
-    job = follower().stated(short="20 ms", sink="4 K/W", load_capacitance="10 mF", output="12 V")
+    job = follower().supplied().stated(short="20 ms", sink="4 K/W", load_capacitance="10 mF", output="12 V")
     job = job.knowing("QPN1", transient=[{"lasts": "20 ms", "impedance": "0.5 K/W"}, {"lasts": "1 s", "impedance": "8 K/W"}])
     job = job.rated("QPN1", rth_jc="8 K/W", power_case=None)
     (one,) = found(job.review(), "pass-overheated")

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import re
 from dataclasses import replace
 
@@ -187,6 +188,13 @@ def test_what_is_let_through_is_held_against_the_safe_area_for_that_time() -> No
     lines = {line.quantity: line.value for line in finding.working}
     assert lines["delay"] == step.delay_s
     assert lines["energy"] == step.pass_energy_J
+    # by hand: on log-log scales from 8 A at 1 V to 0.05 A at 80 V; the case at 70 degC leaves 1 - 0.55 * 45 / 125 of it
+    volts = lines["voltage across it"] or 0.0
+    cold_A = 8.0 * (0.05 / 8.0) ** (math.log(volts) / math.log(80.0))
+    assert lines["allowed with the case at 25 degC"] == pytest.approx(cold_A)
+    assert lines["allowed"] == pytest.approx(cold_A * (1.0 - 0.55 * 45.0 / 125.0))
+    pulse_A = step.pass_energy_J / (step.delay_s * volts)  # type: ignore[operator]
+    assert lines["over what is allowed"] == pytest.approx(pulse_A / (lines["allowed"] or 0.0))
     assert not found(quick, "trips-late")
 
 

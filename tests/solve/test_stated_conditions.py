@@ -8,8 +8,11 @@ import pytest
 
 from protlint.solve.answers import solve
 from protlint.solve.circuit import Circuit, Device, Drive
-from protlint.solve.conditions import Condition, Known, locus_at_corner, solve_under
+from protlint.solve.conditions import Condition, Known, solve_under
+from protlint.solve.corners import axes_of
 from protlint.solve.failures import failures
+from protlint.solve.network import compile_network
+from protlint.solve.range_ends import loci_at, positions
 from protlint.solve.resistive import behind, thevenin
 from tests.support.circuits import bench_circuit, fixed
 
@@ -76,7 +79,8 @@ def test_the_locus_at_a_corner_begins_at_that_corners_held_short(name: str) -> N
     ends = solution.currents[1].holds_range_A
     assert ends is not None
     for end, corner in zip(ends, ("low", "high"), strict=True):
-        points = locus_at_corner(circuit, circuit.shorts[0], AMBIENTS, solution.corners[corner])[1]
+        at = positions(axes_of(compile_network(circuit)), solution.corners[corner])
+        points = loci_at(circuit, circuit.shorts[0], AMBIENTS, [at], Known())[0][1]
         assert len(points) > 40
         assert points[0].output_A == pytest.approx(end, rel=1e-3)
 

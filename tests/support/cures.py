@@ -229,7 +229,7 @@ def cures() -> Iterator[Cure]:
     yield Cure(
         "sense-resistor-power", "P type", source().drawn(("+15V SNS POWER:1W", "+15V SNS POWER:0.125W")), **watts("R21")
     )
-    yield Cure("base-stop-low", "P type", source().rated("QSP1", ib="16 mA"), **ohms("R22", down))
+    yield Cure("base-stop-low", "P type", source().rated("QSP1", ib="18 mA"), **ohms("R22", down))
     yield Cure(
         "pass-overheated", "P type", source().stated(sink="40 K/W"), lambda job, text: cooled(job, figure(text, "K/W")),
         lambda job, text: cooled(job, up(figure(text, "K/W"))),

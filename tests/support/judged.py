@@ -99,6 +99,12 @@ class Job:
         """Return the job with keys of another limits table set."""
         return self._limits(table, name, keys)
 
+    def supplied(self, **volts: str) -> Job:
+        """Return the job with supplies stated otherwise; without any, every supply stated without its range."""
+        stated = self.tables["supply"]
+        plain = {name: " ".join(text.split()[:2]) for name, text in stated.items()}
+        return replace(self, tables={**self.tables, "supply": {**stated, **volts} if volts else plain})
+
     def board_of(self, **keys: Any) -> Job:
         """Return the job with keys of ``[board]`` set."""
         tables = {**self.tables, "board": {**self.tables["board"], **keys}}

@@ -58,11 +58,16 @@ def currents() -> Iterator[Scenario]:
     yield both("drive-insufficient", "carry", gives_A, lambda one: weak.stated(carry=f"{one} A"), outside_is_less=False)
 
 
+def plain() -> Job:
+    """The sink with its supply stated without a range, so that figures as drawn are those of the checks."""
+    return sink().supplied()
+
+
 def base_stops() -> Iterator[Scenario]:
-    bare = sink().drawn(
+    bare = plain().drawn(
         ("R3 RES 100 SNS STOP POWER:0.125W", ""), ("BASE STOP GND", "BASE SNS GND"), ("10n BASE STOP", "10n BASE SNS")
     )
-    yield Scenario("base-stop-absent", "base stop", sink(), bare.rated("QSN1", ib="150 mA"), "warning")
+    yield Scenario("base-stop-absent", "base stop", plain(), bare.rated("QSN1", ib="150 mA"), "warning")
     drop_V = greatest(solved(bare).unlimited, lambda point: point.states["R2"].voltage_V)
     yield both(
         "base-stop-absent",
@@ -70,20 +75,26 @@ def base_stops() -> Iterator[Scenario]:
         (drop_V - 0.8) / (2.2 + 10.0),
         lambda one: bare.rated("QSN1", ib=f"{one} A"),
     )
-    drop_V = greatest(solved(sink()).unlimited, lambda point: point.states["R2"].voltage_V)
+    drop_V = greatest(solved(plain()).unlimited, lambda point: point.states["R2"].voltage_V)
     base_A = (drop_V - 0.8) / (2.2 + 100.0 + 10.0)
     for share, level in ((0.5, "warning"), (1.0, "error")):
         yield both(
             "base-stop-low", f"base current rating, {level}", base_A / share,
-            lambda one: sink().rated("QSN1", ib=f"{one} A"), level=level,
+            lambda one: plain().rated("QSN1", ib=f"{one} A"), level=level,
         )  # fmt: skip
     at_12_V = (12.0 / (1.0 + 0.05) - 0.8) / (1.0 + 560.0 + 10.0)
-    on_12_V = gated().drawn(("+24V", "+12V"), ("R42 RES 1k5", "R42 RES 560")).stated(shorted_to=["+12V"])
+    on_12_V = gated().supplied().drawn(("+24V", "+12V"), ("R42 RES 1k5", "R42 RES 560")).stated(shorted_to=["+12V"])
     yield both(
         "base-stop-low", "of a MOSFET the supply over the loop's resistance", 2.0 * at_12_V,
         lambda one: on_12_V.rated("QSN1", ib=f"{one} A"), level="warning",
     )  # fmt: skip
-    yield Scenario("base-stop-high", "base stop", gated().drawn(("1k5", "1k8")), gated().drawn(("1k5", "2k0")), "warning")
+    yield Scenario(
+        "base-stop-high",
+        "base stop",
+        gated().supplied().drawn(("1k5", "1k8")),
+        gated().supplied().drawn(("1k5", "2k0")),
+        "warning",
+    )
 
 
 def resistors() -> Iterator[Scenario]:

@@ -35,13 +35,17 @@ def p_type() -> Iterator[Scenario]:
     weak = source().drawn(("R20 RES 820", "R20 RES 8k2"))
     gives_A = min(row.carries_range_A[0] for row in solved(weak).currents if row.carries_range_A)
     yield both("drive-insufficient", "P type", gives_A, lambda one: weak.stated(carry=f"{one} A"), outside_is_less=False)
-    drop_V = greatest(solved(source()).unlimited, lambda point: abs(point.states["R21"].voltage_V))
-    base_A = (drop_V - 0.8) / (2.2 + 150.0 + source().data["QSP1"]["model"]["RB"])
-    yield both("base-stop-low", "P type", base_A, lambda one: source().rated("QSP1", ib=f"{one} A"))
-    bare = source().drawn(
-        ("R22 RES 150 SNS STOP POWER:0.125W", ""), ("BASE STOP +15V", "BASE SNS +15V"), ("10n BASE STOP", "10n BASE SNS")
+    drop_V = greatest(solved(source().supplied()).unlimited, lambda point: abs(point.states["R21"].voltage_V))
+    base_A = (drop_V - 0.8) / (2.2 + 150.0 + source().supplied().data["QSP1"]["model"]["RB"])
+    yield both("base-stop-low", "P type", base_A, lambda one: source().supplied().rated("QSP1", ib=f"{one} A"))
+    bare = (
+        source()
+        .supplied()
+        .drawn(
+            ("R22 RES 150 SNS STOP POWER:0.125W", ""), ("BASE STOP +15V", "BASE SNS +15V"), ("10n BASE STOP", "10n BASE SNS")
+        )
     )
-    yield Scenario("base-stop-absent", "P type", source(), bare.rated("QSP1", ib="1 A"), "warning")
+    yield Scenario("base-stop-absent", "P type", source().supplied(), bare.rated("QSP1", ib="1 A"), "warning")
     sense_W = greatest(held, lambda point: point.states["R21"].current_A ** 2 * 2.2)
     yield both(
         "sense-resistor-power", "P type", sense_W,
@@ -59,7 +63,9 @@ def p_type() -> Iterator[Scenario]:
     yield both("pass-outside-safe-area", "P type", most_V, lambda one: source().rated("QPP1", vceo=f"{one} V"))
 
     def pushed(volts: float) -> Job:
-        board = source().drawn(("BASE STOP +15V", "TAKE STOP +15V"), ("C21 CAP", "D1 DIODE QSD1 TAKE BASE\nC21 CAP"))
+        board = (
+            source().supplied().drawn(("BASE STOP +15V", "TAKE STOP +15V"), ("C21 CAP", "D1 DIODE QSD1 TAKE BASE\nC21 CAP"))
+        )
         return board.knowing("QSD1", **DIODE).limited("drive", "PULL", high=f"{15.0 + volts} V")
 
     yield both("reverse-base-emitter", "P type", 6.0, pushed, outside_is_less=False)
@@ -112,7 +118,7 @@ def loops() -> Iterator[Scenario]:
 def boards() -> Iterator[Scenario]:
     holds_A = solved(follower()).currents[1].holds_A or 0.0
     yield both(
-        "second-road", "a resistor's share", 24.0 / (0.05 * holds_A),
+        "second-road", "a resistor's share", 1.05 * 24.0 / (0.05 * holds_A),
         lambda ohm: follower().stated(cap="5 A").drawn(("\nJ1 ", f"\nR90 RES {ohm:.6g} +24V OUT\nJ1 ")), level="warning",
     )  # fmt: skip
     unguarded = "J1 CONN - LAMP +24V\nJ2 CONN - CMD GND\nR1 RES 390 CMD BASE\nQ1 NPN QPN1 LAMP BASE SNS\n"
