@@ -107,7 +107,6 @@ def _answers(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...]) -
         worst_point=_hottest(locus, stage.network.circuit.pass_devices),
         at_carry=carry[0] if carry else None,
         high_short=points(stage, ranges.high_short, ambients),
-        high_worst=points(stage, ranges.high_worst, ambients),
         high_locus=tuple(
             points(stage, ranges.high_locus, np.flatnonzero(ranges.high_owner == place).tolist()) for place in ambients
         ),

@@ -17,7 +17,7 @@ from protlint.solve.corners import extremes
 from protlint.solve.devices import Array, IntArray
 from protlint.solve.locus import PASS_V, Conditions, Loci, greatest, least_working, run_at, trace, working_edges
 from protlint.solve.nominal import Nominal, carried
-from protlint.solve.stage import Run, Stage, pass_power, pass_voltage, short_voltage
+from protlint.solve.stage import Run, Stage, pass_voltage, short_voltage
 
 KINDS = ("begins", "holds", "carries", "most")
 
@@ -33,13 +33,12 @@ _ROUNDING = 1e-6
 @dataclass(frozen=True, slots=True)
 class Ranges:
     """Ranges by kind, each (2, ambients), low then high, NaN where there is none; the corners of holds (2, axes, ambients),
-    low then high; and at the high corner of holds the runs into the short and at the point of greatest pass dissipation, one
-    lane an ambient, and the run along the locus with each lane's ambient (an index)."""
+    low then high; and at the high corner of holds the run into the short, one lane an ambient, and the run along the locus
+    with each lane's ambient (an index)."""
 
     by_kind: dict[str, Array]
     holds_corner: Array
     high_short: Run
-    high_worst: Run
     high_locus: Run
     high_owner: IntArray
 
@@ -80,7 +79,6 @@ def find_ranges(stage: Stage, nominal: Nominal) -> Ranges:
         by_kind=by_kind,
         holds_corner=holds,
         high_short=run_at(stage, conditions.pick(high), None, grid[:, 0, high]),
-        high_worst=_hottest(stage, conditions, loci, high, along, locus, grid[:, 0, high]),
         high_locus=locus,
         high_owner=loci.owner[along] - 4 * ambients,
     )
@@ -95,21 +93,6 @@ def _from_loci(loci: Loci, choose: Callable[[Loci, int], int | None], first: int
         if index is not None and np.isfinite(known[end, ambient]):
             result[end, ambient] = loci.output_A[index]
     return result
-
-
-def _hottest(
-    stage: Stage, conditions: Conditions, loci: Loci, chosen: IntArray, mine: IntArray, run: Run, start: Array
-) -> Run:
-    """Return the run at each chosen condition's point of greatest pass dissipation; ``run`` is along their loci, the points
-    ``mine``."""
-    power = np.nan_to_num(pass_power(stage, run), nan=-np.inf)
-    at_V, begin = np.full(len(chosen), np.nan), start.copy()
-    for column, condition in enumerate(chosen):
-        lanes = np.flatnonzero(loci.owner[mine] == condition)
-        if len(lanes):
-            top = mine[lanes[int(np.argmax(power[lanes]))]]
-            at_V[column], begin[:, column] = loci.output_V[top], loci.inner[:, top]
-    return run_at(stage, conditions.pick(chosen), at_V, begin)
 
 
 def _probe(stage: Stage, nominal: Nominal) -> Callable[[Array, IntArray], Array]:

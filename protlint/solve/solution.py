@@ -214,8 +214,6 @@ class Solution:
     at_carry: Point | None = None
     high_short: tuple[Point, ...] = ()
     """The held short at each ambient with every corner set for the most current."""
-    high_worst: tuple[Point, ...] = ()
-    """The point of greatest pass dissipation at each ambient, same corner."""
     high_locus: tuple[tuple[Point, ...], ...] = ()
     """The locus at each ambient, same corner, from the short outwards."""
     unlimited: tuple[Point, ...] = ()

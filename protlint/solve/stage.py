@@ -225,13 +225,6 @@ def pass_voltage(stage: Stage, run: Run) -> Array:
     return np.min(across, axis=0) if across else np.full(node_V.shape[1], np.inf)
 
 
-def pass_power(stage: Stage, run: Run) -> Array:
-    """Return the greatest dissipation of any pass device (lanes,)."""
-    table = states(stage.network, run)
-    powers = [table[name][2] for name in stage.network.circuit.pass_devices]
-    return np.max(powers, axis=0) if powers else np.zeros(run.lanes.count)
-
-
 def states(network: Network, run: Run) -> dict[str, tuple[Array, Array, Array, Array, Array]]:
     """Return every device's current, voltage, power, control current and control voltage, each (lanes,)."""
     with np.errstate(all="ignore"):
