@@ -8,7 +8,7 @@ import re
 import subprocess
 import sys
 from pathlib import Path
-from typing import Any
+from typing import Any, TextIO
 
 import pytest
 
@@ -206,34 +206,24 @@ def test_an_error_that_quotes_a_name_does_not_act(
     assert not any(line.lstrip().startswith("::") or "##" in line for line in shown.splitlines())
 
 
+def rules_into(stream: TextIO) -> subprocess.CompletedProcess[str]:
+    """Run a command whose standard output goes into a stream."""
+    command = [sys.executable, "-m", "protlint", "rules"]
+    return subprocess.run(command, stdout=stream, stderr=subprocess.PIPE, text=True, cwd=ROOT, timeout=60, check=False)
+
+
 def test_a_closed_pipe_is_no_error() -> None:
     reading, writing = os.pipe()
     os.close(reading)
     with os.fdopen(writing, "w") as stream:
-        done = subprocess.run(
-            [sys.executable, "-m", "protlint", "rules"],
-            stdout=stream,
-            stderr=subprocess.PIPE,
-            text=True,
-            cwd=ROOT,
-            timeout=60,
-            check=False,
-        )
+        done = rules_into(stream)
     assert (done.returncode, done.stderr) == (0, "")
 
 
 @pytest.mark.skipif(not Path("/dev/full").exists(), reason="this machine has no /dev/full to write to")
 def test_a_full_disk_is_one_clear_error() -> None:
     with Path("/dev/full").open("w") as stream:
-        done = subprocess.run(
-            [sys.executable, "-m", "protlint", "rules"],
-            stdout=stream,
-            stderr=subprocess.PIPE,
-            text=True,
-            cwd=ROOT,
-            timeout=60,
-            check=False,
-        )
+        done = rules_into(stream)
     assert done.returncode == 2
     (line,) = done.stderr.splitlines()
     assert line.startswith("<standard output>: cannot be written")

@@ -18,7 +18,7 @@ from protlint.solve.derive import Derived, derive
 from protlint.solve.lanes import Lanes, known_voltages
 from protlint.solve.network import compile_network
 from tests.support.by_hand import base_emitter_voltage
-from tests.support.circuits import fixed
+from tests.support.circuits import around, fixed
 
 AT_25_DEGC = 298.15
 EMPTY = Circuit((), {"GND": fixed(0.0)}, Drive("DRV", fixed(0.0), fixed(5.0)), "OUT", ("GND",), (), (), ())
@@ -27,17 +27,7 @@ EMPTY = Circuit((), {"GND": fixed(0.0)}, Drive("DRV", fixed(0.0), fixed(5.0)), "
 def current(kind: str, model: dict[str, float], first_V: float, control_V: float) -> float:
     """Current into the first terminal with the last one at ground."""
     nodes = ("OUT", "DRV", "GND") if kind in ("npn", "nmos", "pnp", "pmos") else ("OUT", "GND")
-    circuit = Circuit(
-        devices=(Device("X", kind, nodes, model),),
-        held={"GND": fixed(0.0), "SUP": fixed(10.0)},
-        drive=Drive("DRV", fixed(0.0), fixed(5.0)),
-        output="OUT",
-        shorts=("SUP",),
-        shunt=(),
-        pass_devices=(),
-        sense=(),
-    )
-    network = compile_network(circuit)
+    network = compile_network(around(Device("X", kind, nodes, model)))
     held = np.zeros((len(network.held), 1))
     known = known_voltages(network, held, np.array([first_V]), np.array([control_V]))
     return float(solve_lanes(network, Lanes(np.array([AT_25_DEGC]), known)).output_A[0])

@@ -16,23 +16,9 @@ from protlint.solve.dc import solve_lanes
 from protlint.solve.lanes import Lanes, known_voltages, parameters
 from protlint.solve.network import compile_network
 from tests.support.by_hand import base_emitter_slope
-from tests.support.circuits import fixed
+from tests.support.circuits import around, fixed
 
 FULL = {"VAF": 60.0, "VAR": 12.0, "IKF": 0.1, "IKR": 0.02, "ISE": 1e-13, "NE": 1.6, "ISC": 3e-13, "NC": 1.8, "BR": 3.0}
-
-
-def around(device: Device) -> Circuit:
-    """A circuit that holds a device's terminals: first at OUT, second at DRV (or ground), third at ground."""
-    return Circuit(
-        devices=(device,),
-        held={"GND": fixed(0.0), "SUP": fixed(5.0)},
-        drive=Drive("DRV", fixed(0.0), fixed(5.0)),
-        output="OUT",
-        shorts=("SUP",),
-        shunt=(),
-        pass_devices=(),
-        sense=(),
-    )
 
 
 def lanes_for(circuit: Circuit, temperature_K: np.ndarray, output_V: np.ndarray, drive_V: np.ndarray) -> Lanes:

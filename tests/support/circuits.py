@@ -40,6 +40,20 @@ def fixed(volts: float) -> Range:
     return Range(volts, volts, volts)
 
 
+def around(device: Device) -> Circuit:
+    """A circuit that holds a device's terminals: first at OUT, second at DRV (or ground), third at ground."""
+    return Circuit(
+        devices=(device,),
+        held={"GND": fixed(0.0), "SUP": fixed(5.0)},
+        drive=Drive("DRV", fixed(0.0), fixed(5.0)),
+        output="OUT",
+        shorts=("SUP",),
+        shunt=(),
+        pass_devices=(),
+        sense=(),
+    )
+
+
 def bench_circuit(name: str, *, tolerance: float = 0.01, vbe_spread_V: float = 0.03, hfe: bool = True) -> Circuit:
     """Build one of the solved bench circuits."""
     data = load_bench()
