@@ -87,7 +87,7 @@ def base_stop_high(case: Case) -> Iterator[Answer]:
     remedy, fits = _what_will_do(case, shunt)
     yield case.finding(
         check,
-        f"{', '.join(stops)} lets the limit move by {moves.share * 100.0:.2g} % with the gain of {part_id}, "
+        f"{', '.join(stops)} lets the limit move by {format_quantity(moves.share, '%', 2)} with the gain of {part_id}, "
         f"from {low:g} to {high:g}",
         parts=(*stops, part_id),
         working=(

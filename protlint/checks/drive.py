@@ -171,7 +171,7 @@ def driver_overloaded(case: Case) -> Iterator[Answer]:
     if taken_W <= power_W:
         return
     name = part.id if part is not None else f"what drives {case.circuit.drive.node}"
-    drop_V = _stays_V(rails, below_V, worst)
+    drop_V, given = _stays_V(rails, below_V, worst), format_quantity(abs(point.drive_A), "A")
 
     def does(changed: Case) -> bool:
         return all(takes_W(held) <= power_W for held in _with_rails(changed))
@@ -186,7 +186,7 @@ def driver_overloaded(case: Case) -> Iterator[Answer]:
         working=(
             WorkingLine("the drive gives", f"{HELD_MOST}{worst.words}", point.drive_A, "A"),
             WorkingLine("at", "solved at the drive's net", point.drive_V, "V"),
-            WorkingLine("power", f"{drop_V:.3g} V * {abs(point.drive_A):.3g} A", taken_W, "W", "Joule's law"),
+            WorkingLine("power", f"{format_quantity(drop_V, 'V')} * {given}", taken_W, "W", "Joule's law"),
             WorkingLine("it may take", "limits file or part data", power_W, "W"),
         ),
         remedy=remedy,

@@ -232,10 +232,8 @@ def _missing(case: Case) -> str | None:
 def _formula(needs: LimiterLimits, working_V: float) -> str:
     terms = []
     if needs.load_ohm is not None and needs.load_cold_ohm is not None:
-        cold = format_quantity(needs.load_cold_ohm, "ohm")
-        terms.append(
-            f"a lamp: {working_V / needs.load_ohm:.3g} A (V / {working_V:.3g} V)^{LAMP_EXPONENT}, at most V / {cold}"
-        )
+        cold, warm = format_quantity(needs.load_cold_ohm, "ohm"), format_quantity(working_V / needs.load_ohm, "A")
+        terms.append(f"a lamp: {warm} (V / {format_quantity(working_V, 'V')})^{LAMP_EXPONENT}, at most V / {cold}")
     elif needs.load_ohm is not None:
         terms.append(f"V / {format_quantity(needs.load_ohm, 'ohm')}")
     if needs.load_current_A is not None:
@@ -262,7 +260,7 @@ def _remedy(case: Case, line: Line, working_V: float) -> Remedy:
     times, at_V = max((load_A_at(case.needs, one, working_V) / max(line.at_A(one), 1e-9), one) for one in places)
     taken = format_quantity(load_A_at(case.needs, at_V, working_V), "A")
     return (
-        f"fold back less: the limiter has to give more than {taken} {format_quantity(at_V, 'V')} from the short, "
+        f"fold back less: the limiter has to give more than {taken} at {format_quantity(at_V, 'V')} from the short, "
         f"{times:.3g} times what it does; or keep the load off until the output is up",
         (),
     )

@@ -194,8 +194,13 @@ def _outside(case: Case, part: BoardPart, worst: Place) -> Answer:
         f"{part.id} is put to {at} {stress.condition} {lasts} at {ambient}, {too_much}{careful}",
         parts=(part.id,),
         working=(
-            WorkingLine("voltage across it", f"solved, {stress.condition}{stress.words}", worst.seen.voltage_V, "V"),
-            WorkingLine("current", "solved, every tolerance set for the most", worst.seen.current_A, "A"),
+            WorkingLine(
+                "voltage across it",
+                stress.how,
+                worst.seen.voltage_V,
+                "V",
+            ),
+            WorkingLine("current", "the same", worst.seen.current_A, "A"),
             *_allowed_working(case, part, worst),
             WorkingLine(
                 "over what is allowed",

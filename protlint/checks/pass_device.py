@@ -34,6 +34,11 @@ class Stress:
     lasts_s: float
     words: str = ""
 
+    @property
+    def how(self) -> str:
+        """Tell how its figures come about."""
+        return f"solved {self.condition}, every tolerance set for the most{self.words}"
+
 
 def pass_overheated(case: Case) -> Iterator[Answer]:
     """Yield a finding for each pass device or driver whose junction gets too hot."""
@@ -131,7 +136,10 @@ def _overheated(case: Case, part_id: str, stress: Stress, worst: Junction, remed
         parts=(part_id,),
         working=(
             WorkingLine(
-                "current", f"{stress.condition}, every tolerance set for the most{stress.words}", abs(state.current_A), "A"
+                "current",
+                stress.how,
+                abs(state.current_A),
+                "A",
             ),
             WorkingLine("voltage across it", "solved", abs(state.voltage_V), "V"),
             WorkingLine("power", "all that flows into it", worst.own_W, "W", "Joule's law"),

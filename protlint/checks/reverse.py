@@ -104,7 +104,7 @@ def _held_up_states(case: Case, ends: Sequence[Ends], highest_V: Sequence[float]
     left = f", left by {charged.words.strip(' ()')}" if charged.words and case.needs.output_V is None else ""
     if _returned_by_a_diode(case):
         left_V, left = min(DIODE_DROP_V, abs(left_V)) * (1.0 if left_V >= 0.0 else -1.0), ""
-    words = f"with the supplies off and the output held at {left_V:.3g} V{left}"
+    words = f"with the supplies off and the output held at {format_quantity(left_V, 'V')}{left}"
     return [*asked, (words, Condition(case.limits.ambient_degC[1], 0.0, left_V, supplied=False))]
 
 
@@ -113,7 +113,8 @@ def _asked(
 ) -> tuple[str, Condition]:
     """Return a condition with the drive at its off end, or where the other half keeps it, and its words."""
     at_V = drive_V(case, ends, on=False) if off_V is None else off_V
-    words = f"with the drive at {at_V:.4g} V and {output} at {output_V:.4g} V{load}{ends.words}"
+    drive, held = format_quantity(at_V, "V"), format_quantity(output_V, "V")
+    words = f"with the drive at {drive} and {output} at {held}{load}{ends.words}"
     return words, Condition(case.limits.ambient_degC[1], at_V, output_V, corner=ends.corner)
 
 

@@ -77,7 +77,7 @@ def allowed(
         cold_A * left,
         BY_POWER,
         cold_A=cold_A,
-        how=f"the curve's greatest power, {greatest_W:.3g} W, over the voltage",
+        how=f"the curve's greatest power, {format_quantity(greatest_W, 'W')}, over the voltage",
         left=left,
     )
     at_A = on_curve_A(corners, voltage_V)
@@ -89,7 +89,7 @@ def allowed(
             last_A * breakdown_left,
             "what is left at the curve's last corner",
             cold_A=last_A,
-            how=f"the curve's last corner, {corners[-1][0]:g} V",
+            how=f"the curve's last corner, {format_quantity(corners[-1][0], 'V')}",
             left=breakdown_left,
         )
         return replace(ends, current_A=min(by_power.current_A, ends.current_A))

@@ -97,7 +97,7 @@ def _halves(high: Case, high_held: Held, low: Case, low_held: Held) -> Finding:
     return changed.finding(
         "halves-unequal",
         f"{high.limiter.id} holds {format_quantity(high_held.usual_A, 'A')}, the other half, {low.limiter.id}, "
-        f"{format_quantity(low_held.usual_A, 'A')}: {ratio:.0%} apart, more than tolerance makes up for",
+        f"{format_quantity(low_held.usual_A, 'A')}: {format_quantity(ratio, '%')} apart, more than tolerance makes up for",
         parts=tuple(dict.fromkeys((*parts, *(part for case in (high, low) for part in case.parts("sense", "shunt"))))),
         working=tuple(lines),
         remedy=f"{to_fit(changes)}, so that {high.limiter.id} and {low.limiter.id} agree"

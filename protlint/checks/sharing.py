@@ -115,7 +115,9 @@ def _reasons(case: Case, shares: list[Share]) -> tuple[list[str], list[WorkingLi
                 WorkingLine(f"mismatch of {share.part_id}", "spread of its control voltage over that drop", ratio, ""),
             ]
             if ratio > most:
-                reasons.append(f"the spread of {share.part_id} is {ratio:.0%} of the drop across {resistor}")
+                reasons.append(
+                    f"the spread of {share.part_id} is {format_quantity(ratio, '%')} of the drop across {resistor}"
+                )
     return reasons, lines, lacking
 
 

@@ -178,7 +178,8 @@ def _greatest_voltage(case: Case, part_id: str) -> tuple[float, str] | None:
         for ends in ends_of(case, off_end=True):
             short_V = ends.held_V[short]
             for end, drive_V in (("low", ends.low_V), ("high", ends.high_V)):
-                for where, output_V in ((f"the output at {short_V:g} V", short_V), ("the output open", None)):
+                at = f"the output at {format_quantity(short_V, 'V')}"
+                for where, output_V in ((at, short_V), ("the output open", None)):
                     words.append(f"with the drive at its {end} end and {where}{ends.words}")
                     conditions.append(Condition(case.limits.ambient_degC[1], drive_V, output_V, corner=ends.corner))
         points = case.under(conditions)

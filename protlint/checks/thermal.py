@@ -248,7 +248,11 @@ def _on_sink(part: _Part, heat: Heating, to_case: Figure, sink_K_per_W: float) -
     lines = (
         WorkingLine("thermal resistance", "junction to case", to_case.value, "K/W", to_case.source),
         WorkingLine(
-            "case", f"{heat.ambient_degC:g} degC + {heat.shared_W:.3g} W * {sink_K_per_W:.3g} K/W", case_degC, "degC", source
+            "case",
+            f"{heat.ambient_degC:g} degC + {format_quantity(heat.shared_W, 'W')} * {format_quantity(sink_K_per_W, 'K/W')}",
+            case_degC,
+            "degC",
+            source,
         ),
     )
     return part.settled(heat, case_degC, to_case.value, part.rating("power_case"), lines, on_sink=True)

@@ -199,7 +199,9 @@ def _by_hand(case: Case, asked: Peak, before_A: float, carries_A: float) -> Iter
         return
     R, C = stop.model["R"], slowing.model["C"]
     delay_s = rc_delay(R, C, before_A / carries_A, asked.current_A / carries_A)
-    yield WorkingLine("delay by the RC alone", f"{R:g} ohm, {format_quantity(C, 'F')}, by hand", delay_s, "s", BY_HAND)
+    yield WorkingLine(
+        "delay by the RC alone", f"{format_quantity(R, 'ohm')}, {format_quantity(C, 'F')}, by hand", delay_s, "s", BY_HAND
+    )
 
 
 def _by_hand_F(case: Case, asked: Peak) -> float:

@@ -6,8 +6,7 @@ from collections.abc import Collection, Mapping, Sequence
 from functools import cache
 
 from protlint.checks.catalogue import load_catalogue
-from protlint.checks.table import WITHOUT_SOLUTION
-from protlint.checks.wiring import WIRING_FAULTS
+from protlint.checks.table import OF_NO_LIMITER, WITHOUT_SOLUTION
 from protlint.partdata.ratings import DYNAMIC_FIGURES, STATIC_FIGURES
 from protlint.report.shape import Document
 
@@ -20,7 +19,7 @@ OF_THE_LOOP = ("compensation-absent", "loop-undamped", "trips-on-peaks", "trips-
 OF_KIND = {"sense-resistor-power": "resistor", "resistor-power": "resistor", "driver-overloaded": "ic"}
 """What kind of part a check is about, where others stand in the same roles."""
 
-NOT_SOLVED_FOR = {*WITHOUT_SOLUTION, *WIRING_FAULTS, "limiter-absent"}
+NOT_SOLVED_FOR = WITHOUT_SOLUTION | OF_NO_LIMITER
 """Checks that ask for connections and texts, not for currents."""
 
 

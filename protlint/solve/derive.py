@@ -15,6 +15,7 @@ import math
 from collections.abc import Mapping
 from dataclasses import dataclass, field, replace
 
+from protlint.quantities import format_quantity
 from protlint.solve.capacitances import capacitances_from
 from protlint.solve.constants import BOLTZMANN_V_PER_K, T0_K
 
@@ -119,20 +120,22 @@ def _bipolar(ratings: Mapping[str, float], model: Model, carries_load: bool = Fa
     if rated_A is None:
         large = carries_load or ratings.get("power", 0.0) > 1.0 or "rth_jc" in ratings
         rated_A = DEFAULT_IC_A["power" if large else "small"]
-        words.assumed.append(f"a collector current rating of {rated_A:g} A")
+        words.assumed.append(f"a collector current rating of {format_quantity(rated_A, 'A')}")
     spread: Pair | None = None
     if "vbe" in ratings and "vbe_at" in ratings:
         V_BE, at_A = ratings["vbe"], ratings["vbe_at"]
-        words.derived.append(f"I_S from V_BE {V_BE:g} V at {at_A:g} A")
+        words.derived.append(f"I_S from V_BE {V_BE:g} V at {format_quantity(at_A, 'A')}")
     elif {"vbe_min", "vbe_max", "vbe_at"} <= ratings.keys():
         V_BE, at_A = 0.5 * (ratings["vbe_min"] + ratings["vbe_max"]), ratings["vbe_at"]
         spread = (V_BE - ratings["vbe_min"], ratings["vbe_max"] - V_BE)
-        words.derived.append(f"I_S from V_BE {ratings['vbe_min']:g} V to {ratings['vbe_max']:g} V at {at_A:g} A")
+        words.derived.append(
+            f"I_S from V_BE {ratings['vbe_min']:g} V to {ratings['vbe_max']:g} V at {format_quantity(at_A, 'A')}"
+        )
     else:
         V_BE, at_A = DEFAULT_V_BE, rated_A * DEFAULT_V_BE_SHARE
         spread = DEFAULT_V_BE_SPREAD
-        words.assumed.append(f"V_BE {V_BE:g} V at {at_A:g} A, within {spread[0]:g} V")
-    words.usual.append(f"an Early voltage of {DEFAULT_VAF:g} V and high injection from {rated_A:g} A")
+        words.assumed.append(f"V_BE {V_BE:g} V at {format_quantity(at_A, 'A')}, within {spread[0]:g} V")
+    words.usual.append(f"an Early voltage of {DEFAULT_VAF:g} V and high injection from {format_quantity(rated_A, 'A')}")
     made = {
         "IS": saturation_current(at_A, V_BE),
         "BF": math.sqrt(hfe[0] * hfe[1]),
@@ -224,16 +227,16 @@ def _transconductance(ratings: Mapping[str, float], threshold_V: float, words: _
     g_fs = ratings.get("gfs", 1.5 * ratings["gfs_min"] if "gfs_min" in ratings else None)
     at_A = ratings.get("gfs_at", 0.5 * ratings["id"] if "id" in ratings else None)
     if g_fs is not None and at_A is not None:
-        words.derived.append(f"K_P from g_fs {g_fs:g} S at {at_A:g} A")
+        words.derived.append(f"K_P from g_fs {g_fs:g} S at {format_quantity(at_A, 'A')}")
         return g_fs * g_fs / (2.0 * at_A)
     on_ohm = ratings.get("rds_on_typ", ratings.get("rds_on"))
     over_V = max(GATE_DRIVE_V - threshold_V, 1.0)
     if on_ohm is not None and on_ohm > 0.0:
-        words.derived.append(f"K_P from R_DS(on) {on_ohm:g} ohm")
+        words.derived.append(f"K_P from R_DS(on) {format_quantity(on_ohm, 'ohm')}")
         words.usual.append("half of R_DS(on) in the channel")
         return 2.0 / (on_ohm * over_V)
     rated_A = ratings.get("id", 10.0)
-    words.assumed.append(f"a transconductance that takes {rated_A:g} A at 4 V above the threshold")
+    words.assumed.append(f"a transconductance that takes {format_quantity(rated_A, 'A')} at 4 V above the threshold")
     return rated_A / 8.0
 
 
@@ -244,11 +247,11 @@ def _diode(kind: str, ratings: Mapping[str, float], model: Model) -> Derived:
     spread: Pair | None = None
     if "vf" in ratings and "vf_at" in ratings:
         V_F, at_A = ratings["vf"], ratings["vf_at"]
-        words.derived.append(f"I_S from V_F {V_F:g} V at {at_A:g} A")
+        words.derived.append(f"I_S from V_F {V_F:g} V at {format_quantity(at_A, 'A')}")
     else:
         V_F, spread = DEFAULT_V_F, DEFAULT_V_F_SPREAD
         at_A = 0.01 * ratings["if"] if "if" in ratings else DEFAULT_I_F
-        words.assumed.append(f"V_F {V_F:g} V at {at_A:g} A, within {spread[0]:g} V")
+        words.assumed.append(f"V_F {V_F:g} V at {format_quantity(at_A, 'A')}, within {spread[0]:g} V")
     words.usual.append(f"an emission coefficient of {DIODE_N:g}")
     made = {"IS": saturation_current(at_A, V_F, DIODE_N), "N": DIODE_N}
     if kind == "zener":
@@ -265,8 +268,8 @@ def _breakdown(ratings: Mapping[str, float], words: _Words) -> dict[str, float]:
         return {}
     at_A = ratings.get("vz_at", 5e-3)
     if "vz_at" not in ratings:
-        words.usual.append(f"the zener voltage holds at {at_A:g} A")
-    words.derived.append(f"B_V from V_Z {V_Z:g} V at {at_A:g} A")
+        words.usual.append(f"the zener voltage holds at {format_quantity(at_A, 'A')}")
+    words.derived.append(f"B_V from V_Z {V_Z:g} V at {format_quantity(at_A, 'A')}")
     slope_ohm = BOLTZMANN_V_PER_K * T0_K / at_A
     R_S = max(ratings.get("zz", 0.0) - slope_ohm, 0.0)
     return {"BV": V_Z - at_A * R_S, "IBV": at_A, "NBV": 1.0, "RS": R_S}
