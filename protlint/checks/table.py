@@ -6,6 +6,7 @@ from collections.abc import Callable, Iterable, Mapping
 
 from protlint.checks import (
     base_stop,
+    bypassed,
     currents,
     drive,
     heat,
@@ -75,6 +76,7 @@ BOUNDED = frozenset(
 
 BOARD_CHECKS: Mapping[str, Callable[[BoardCase], Iterable[BoardAnswer]]] = {
     **{fault: wiring.wiring_check(fault) for fault in wiring.WIRING_FAULTS},
+    "sense-bypassed": bypassed.sense_bypassed,
     "limiter-absent": unguarded.limiter_absent,
     "second-road": second_road.second_road,
     "halves-unequal": sets.halves_unequal,

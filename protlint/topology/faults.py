@@ -27,8 +27,10 @@ def find_faults(index: Index, matches: Sequence[Match], rules: Rules, limiters: 
     shunts = {one for limiter in limiters for one in _of_role(limiter.elements, "shunt")}
     carriers = set(sound_carriers)
     found: dict[tuple[int, ...], Match] = {}
-    for match in sorted(matches, key=lambda one: _rank(one, rules)):
-        if not _touches_the_sense(match, index):
+    shorted: set[int] = set()
+    for match in sorted(matches, key=lambda one: _rank(one, rules, index)):
+        bypassed = set(match.elements["sense"]) if _is_shorted(match, index) else set()
+        if bypassed and (bypassed & shorted or not _touches_the_sense(match, index)):
             continue
         its_shunts, its_carriers = _of_role(match.elements, "shunt"), _of_role(match.elements, "pass", "driver")
         # A carrier of a sound limiter has its shunt; what carries the load in one limiter, right or wrong, shunts no other.
@@ -37,21 +39,31 @@ def find_faults(index: Index, matches: Sequence[Match], rules: Rules, limiters: 
         found[tuple(sorted(its_shunts))] = match
         carriers |= its_carriers
         shunts |= its_shunts
+        shorted |= bypassed
     return tuple(_fault(found[shunt], index, rules) for shunt in sorted(found))
 
 
-def _rank(match: Match, rules: Rules) -> tuple[object, ...]:
+def _rank(match: Match, rules: Rules, index: Index) -> tuple[object, ...]:
     """Return a sort key: most required parts first, then the rule's precedence.
 
     A resistor before the pass device counts for nothing and comes last: with no collector to tell where the drive is, that
-    is as likely the drive's own.
+    is as likely the drive's own. Resistors shorted on a supply would fit every stage there: the first is the first stage's.
     """
     stops = sum(len(match.elements.get(role, ())) for role in STOPS)
-    return stops - match.required, -rules.resolved[match.pattern.rule].rule.precedence, stops, match.key
+    in_order = [
+        index.board.elements[match.elements[role][0]].parts[0] for role in ("shunt", "sense") if match.elements.get(role)
+    ]
+    return stops - match.required, -rules.resolved[match.pattern.rule].rule.precedence, stops, in_order, match.key
+
+
+def _is_shorted(match: Match, index: Index) -> bool:
+    """Tell whether a match has a sense resistance, with both ends on one net."""
+    sense = match.elements.get("sense", ())
+    return bool(sense) and all(len(set(index.terminals[element].values())) == 1 for element in sense)
 
 
 def _touches_the_sense(match: Match, index: Index) -> bool:
-    """Tell whether a match's other parts are on both nets that the netlist joins its sense resistance to.
+    """Tell whether a match's other parts are on both nets that the netlist joins its shorted sense resistance to.
 
     Where a link makes one net of the two, any limiter at the far end would fit otherwise.
     """
@@ -61,9 +73,8 @@ def _touches_the_sense(match: Match, index: Index) -> bool:
         parts = (board.parts[part].part for element in elements for part in board.elements[element].parts)
         return {pin.net for part in parts for pin in part.pins}
 
-    sense = match.elements.get("sense", ())
-    shorted = all(len(set(index.terminals[element].values())) == 1 for element in sense)
-    return not shorted or wired(sense) <= wired(match.own - set(sense))
+    sense = match.elements["sense"]
+    return wired(sense) <= wired(match.own - set(sense))
 
 
 def _of_role(elements: Mapping[str, Sequence[int]], *heads: str) -> set[int]:
@@ -99,7 +110,7 @@ def _fault(match: Match, index: Index, rules: Rules) -> FaultMatch:
         moves=tuple(moves),
         replaces=tuple(replaces),
         parts_ends=tuple(parted),
-        links=_links_across(index.board, parted),
+        links=links_across(index.board, parted),
     )
 
 
@@ -161,7 +172,7 @@ def _sentence(template: str, match: Match, index: Index) -> str:
     return re.sub(r"\{([^{}]+)\}", named, template)
 
 
-def _links_across(board: Board, parts: Sequence[str]) -> tuple[str, ...]:
+def links_across(board: Board, parts: Sequence[str]) -> tuple[str, ...]:
     """Return the links that join what the ends of some parts were joined to in the netlist."""
     links = []
     for part in board.parts if parts else ():

@@ -8,6 +8,9 @@ from protlint.topology.questions import leaves
 
 CONTROLS = ("base", "gate")
 
+BOOSTER = "regulator-booster"
+"""The topology whose output is known to lie between ground and its supply."""
+
 
 def is_likely(limiter: Limiter, index: Index, turned: str | None = None) -> bool:
     """Tell whether supplies and connectors stand where such a limiter has them.
@@ -18,10 +21,33 @@ def is_likely(limiter: Limiter, index: Index, turned: str | None = None) -> bool
     """
     bound = {name: index.net_of[net] for name, net in limiter.bound.items()}
     load, far, drive = (bound.get(name) for name in ("load", "far", "drive"))
-    if _driven_by_supply(limiter, index, turned) or _against_the_supplies(limiter.polarity, load, far, index):
+    if is_driven_by_supply(limiter, index, turned) or _against_the_supplies(limiter.polarity, load, far, index):
         return False
     drive_leaves, load_leaves = (net is not None and leaves(net, index) for net in (drive, load))
     return load in index.voltage_V or load_leaves or not drive_leaves
+
+
+def runs_against_supplies(limiter: Limiter, index: Index) -> bool:
+    """Tell whether the current of a limiter would have to flow from a lower supply to a higher one.
+
+    Only what is certain counts: both ends of the path are on supplies, or it is a regulator's booster, whose output lies
+    between ground and its supply.
+    """
+    bound = {name: index.voltage_V.get(index.net_of[net]) for name, net in limiter.bound.items()}
+    load_V, far_V = bound.get("load"), bound.get("far")
+    if limiter.topology == BOOSTER and load_V is None:
+        load_V = 0.0
+    if load_V is None or far_V is None:
+        return False
+    return load_V < far_V if limiter.polarity == "n" else load_V > far_V
+
+
+def is_driven_by_supply(limiter: Limiter, index: Index, turned: str | None = None) -> bool:
+    """Tell whether a supply is on the control of a pass device or driver, but for one that is to stand otherwise."""
+    board = index.board
+    devices = {one for role, ones in limiter.elements.items() if role.split(".")[0] in ("pass", "driver") for one in ones}
+    others = (one for one in devices if turned not in {board.parts[part].id for part in board.elements[one].parts})
+    return any(index.terminals[one].get(pin) in index.voltage_V for one in others for pin in CONTROLS)
 
 
 def _against_the_supplies(polarity: str, load: int | None, far: int | None, index: Index) -> bool:
@@ -31,10 +57,3 @@ def _against_the_supplies(polarity: str, load: int | None, far: int | None, inde
     if load_V is not None and far_V is not None:
         return sign * (load_V - far_V) <= 0.0
     return first_V != last_V and ((load_V is None and far_V == last_V) or (far_V is None and load_V == first_V))
-
-
-def _driven_by_supply(limiter: Limiter, index: Index, turned: str | None) -> bool:
-    board = index.board
-    devices = {one for role, ones in limiter.elements.items() if role.split(".")[0] in ("pass", "driver") for one in ones}
-    others = (one for one in devices if turned not in {board.parts[part].id for part in board.elements[one].parts})
-    return any(index.terminals[one].get(pin) in index.voltage_V for one in others for pin in CONTROLS)

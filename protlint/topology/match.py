@@ -6,6 +6,7 @@ from collections.abc import Collection, Sequence
 
 from protlint.board.graph import Board
 from protlint.netlist.forms import no_collection
+from protlint.topology.doubtful import doubtful_among, explained
 from protlint.topology.faults import find_faults
 from protlint.topology.fitting import Fitter, Match
 from protlint.topology.index import Index
@@ -24,12 +25,16 @@ def find_limiters(board: Board, rules: Rules) -> Found:
         fitter = Fitter(index, (*rules.patterns, *rules.fault_patterns), rules.plans)
         matches = fitter.matches()
         remarks: list[str] = []
-        limiters = _sound(fitter, matches, rules, remarks)
+        fitting = _sound(fitter, matches, rules, remarks)
+        doubtful = doubtful_among(fitting, index)
+        limiters = [one for one in fitting if one not in doubtful]
         faults = find_faults(index, [match for match in matches if match.pattern.fault], rules, limiters)
         tried = find_turned(index, limiters, lambda piece: _sound_on(piece, rules))
+        kept, told = explained(doubtful, settled(faults, tried, index), index)
+        limiters = [one for one in fitting if one in kept or one not in doubtful]
     return Found(
         limiters=tuple(limiters),
-        faults=settled(faults, tried, index),
+        faults=told,
         remarks=tuple(remarks),
         pairs=find_pairs(limiters),
         sets=find_sets(board, limiters),

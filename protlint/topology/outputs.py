@@ -7,7 +7,9 @@ from dataclasses import replace
 
 from protlint.board.graph import Board
 from protlint.board.outputs import outputs_named_as_supplies, with_outputs_free
+from protlint.topology.index import Index
 from protlint.topology.language import Rules
+from protlint.topology.likely import runs_against_supplies
 from protlint.topology.limiter import Found
 from protlint.topology.match import find_limiters
 from protlint.topology.sets import find_pairs, find_sets
@@ -24,7 +26,8 @@ def find_on_board(board: Board, rules: Rules) -> tuple[Found, Mapping[str, Board
         return found, {}
     free = with_outputs_free(board, outputs)
     freed = find_limiters(free, rules)
-    making = [one for one in freed.limiters if one.nets["output"] in outputs]
+    named = Index(board)
+    making = [one for one in freed.limiters if one.nets["output"] in outputs and not runs_against_supplies(one, named)]
     faults = [one for one in freed.faults if one.group.nets["output"] in outputs]
     taken = {shunt for one in (*making, *(fault.group for fault in faults)) for shunt in one.elements["shunt"]}
     others = [one for one in found.limiters if taken.isdisjoint(one.elements["shunt"])]

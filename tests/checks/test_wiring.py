@@ -18,6 +18,7 @@ from protlint.netlist import read_netlist
 from protlint.netlist.model import Netlist
 from protlint.pipeline import Desk, Review, review_netlist, set_up
 from tests.support import edits
+from tests.support.desk import found, limits, reviewed
 from tests.support.paths import FIXTURES
 
 CIRCUITS = (
@@ -150,3 +151,58 @@ def test_a_limits_file_sets_the_level_by_the_pass_device() -> None:
     set_off = LimiterLimits(checks={"collector-emitter-swapped": CheckSetting(level="off")})
     limits = replace(desk.limits, limiters={"Q1": set_off})
     assert wiring(review_netlist(netlist, replace(desk, limits=limits))) == []
+
+
+SINK = """
+J{n}1 CONN - LAMP{n} +24V
+J{n}2 CONN - CMD{n} GND
+R{n}1 RES 390 CMD{n} BASE{n}
+Q{n}1 NPN QPN1 LAMP{n} BASE{n} GND
+Q{n}2 NPN QSN1 BASE{n} STOP{n} GND
+R{n}3 RES 100 GND STOP{n}
+R{n}2 RES 2.2 GND GND POWER:1W
+"""
+SUPPLIES = {"+24V": "24 V", "GND": "0 V"}
+
+
+def bypassed(board: str) -> list[Finding]:
+    return found(reviewed(board, limits(supply=SUPPLIES)), "sense-bypassed")
+
+
+@pytest.mark.parametrize("order", ["12", "21", "interleaved"])
+def test_stages_on_one_ground_are_each_told_of_a_resistor_of_their_own(order: str) -> None:
+    one, two = (SINK.format(n=n).splitlines() for n in ("12" if order == "interleaved" else order))
+    lines = [line for pair in zip(one, two, strict=True) for line in pair] if order == "interleaved" else one + two
+    told = {finding.parts[:2] for finding in bypassed("\n".join(lines))}
+    assert told == {("Q12", "R12"), ("Q22", "R22")}
+
+
+LONE = """
+J1 CONN - LAMP +24V
+J2 CONN - CMD GND
+R1 RES 390 CMD BASE
+Q1 NPN QPN1 LAMP BASE GND
+R2 RES 2.2 GND GND POWER:1W
+"""
+
+
+@pytest.mark.parametrize(
+    "change, told",
+    [
+        (("", ""), True),
+        (("R2 RES 2.2 GND GND", "R2 RES 220 GND GND"), False),
+        (("NPN QPN1", "NPN QSN1"), False),
+        (("R2 RES 2.2 GND GND", "R2 RES 2.2 CMD CMD"), False),
+    ],
+    ids=["told", "too large", "small transistor", "elsewhere"],
+)
+def test_a_small_resistor_shorted_beside_a_power_device_is_a_note(change: tuple[str, str], told: bool) -> None:
+    findings = bypassed(LONE.replace(*change))
+    assert [(one.level, one.parts) for one in findings] == ([("note", ("R2", "Q1"))] if told else [])
+
+
+def test_a_link_across_a_lone_sense_resistor_is_named() -> None:
+    board = LONE.replace("BASE GND", "BASE SNS").replace("2.2 GND GND", "2.2 SNS GND") + "R9 RES 0 SNS GND\n"
+    (finding,) = bypassed(board)
+    assert finding.remedy == "take out R9, which shorts R2"
+    assert bypassed(board.replace("R9 RES 0 SNS GND\n", "")) == []

@@ -67,7 +67,8 @@ def test_the_setting_shown_for_a_check_is_one_the_limits_file_takes(name: str) -
 WITHOUT_FIGURES = {
     "collector-emitter-swapped", "base-emitter-swapped", "shunt-pins-exchanged", "shunt-pin-misplaced", "base-on-far-end",
     "shunt-polarity-wrong", "collector-not-on-the-drive", "wrong-device-sensed", "pass-pins-exchanged",
-    "pass-polarity-wrong", "value-unreadable", "part-data-missing", "pins-unknown", "pin-on-two-nets", "part-data-contradicts",
+    "pass-polarity-wrong", "value-unreadable", "part-data-missing", "pins-unknown", "pin-on-two-nets",
+    "part-data-contradicts",
 }  # fmt: skip
 """Checks of connections and texts: their working says what stands where, not how much."""
 

@@ -62,11 +62,14 @@ def exchanged(netlist: Netlist, one: tuple[str, str], other: tuple[str, str]) ->
 
 
 def other_polarity(netlist: Netlist, part: str) -> Netlist:
-    """Return the netlist with a transistor of the other polarity in a part's place."""
+    """Return the netlist with a transistor of the other polarity in a part's place; of a type without a known complement
+    the number goes, which would tell the polarity against the cell."""
 
     def change(one: Part) -> Part:
         properties = {
-            key: item._replace(value=OTHER.get(str(item.value), item.value)) for key, item in one.properties.items()
+            key: item._replace(value=OTHER.get(str(item.value), item.value))
+            for key, item in one.properties.items()
+            if str(item.value) in OTHER
         }
         return one._replace(cell=OTHER[one.cell], properties=properties)
 
