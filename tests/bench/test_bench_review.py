@@ -19,7 +19,7 @@ from protlint.pipeline import review
 from tests.support.crowd import EXPORTED, crowd_drawn
 from tests.support.edif_text import flat_netlist, schematic_pages
 
-PARTS = int(os.environ.get("PROTLINT_BENCH_PARTS", "2000"))
+PARTS = int(os.environ.get("PROTLINT_BENCH_PARTS", "500"))
 LIMITERS = 8
 REMARK = "an invented crowd of parts"
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 
 import pytest
 
@@ -15,17 +15,8 @@ from tests.support.scenarios import Scenario
 
 GROUPS = (*scenarios.GROUPS, *scenarios_of_boards.GROUPS, *scenarios_of_ranges.GROUPS)
 TALLY: dict[str, dict[str, int]] = {}
-TRIED: set[str] = set()
+TRIED: set[Callable[[], Iterator[Scenario]]] = set()
 """The groups that were put to the test: all of them, unless somebody asked for one."""
-
-
-@pytest.fixture(scope="module", autouse=True)
-def table() -> Iterator[None]:
-    """Print what came of it, check by check."""
-    yield
-    print("\ncheck                      found missed false")
-    for check, counts in sorted(TALLY.items()):
-        print(f"{check:26s} {counts['found']:5d} {counts['missed']:6d} {counts['false']:5d}")
 
 
 def levels(review: Review, check: str) -> list[str]:
@@ -34,7 +25,7 @@ def levels(review: Review, check: str) -> list[str]:
 
 @pytest.mark.parametrize("group", GROUPS, ids=lambda group: group.__name__)
 def test_outside_is_found_and_inside_is_not(group: Callable[[], Iterator[Scenario]]) -> None:
-    TRIED.add(group.__name__)
+    TRIED.add(group)
     wrong = []
     for scenario in group():
         counts = TALLY.setdefault(scenario.check, dict.fromkeys(("found", "missed", "false"), 0))
@@ -46,9 +37,12 @@ def test_outside_is_found_and_inside_is_not(group: Callable[[], Iterator[Scenari
     assert wrong == []
 
 
-def test_every_check_of_the_catalogue_was_put_to_the_test() -> None:
+def test_every_check_of_the_catalogue_was_put_to_the_test(show: Callable[[Sequence[str]], None]) -> None:
+    """And a table of what came of it, check by check."""
     if len(TRIED) < len(GROUPS):
         pytest.skip("SKIPPED: only some groups of scenarios were run")
+    rows = [f"{check:26s} {one['found']:5d} {one['missed']:6d} {one['false']:5d}" for check, one in sorted(TALLY.items())]
+    show([f"{'check':26s} found missed false", *rows])
     assert set(TALLY) == set(load_catalogue())
 
 

@@ -20,7 +20,6 @@ from protlint.board.parts_list import read_parts_list
 from protlint.checks.case import Case
 from protlint.checks.catalogue import load_catalogue
 from protlint.findings import Finding
-from protlint.limits import Limits
 from protlint.limits_file import load_limits
 from protlint.netlist.model import Net, Netlist, Part, Pin, PinOnTwoNets, Property
 from protlint.partdata.book import load_book
@@ -132,7 +131,7 @@ def _reviewed(
         known = {name: row.thresholds.keys() for name, row in catalogue().items()}
         limits_file = None if limits_text is None else _written(folder / "limits.toml", limits_text)
         desk = Desk(
-            limits=Limits() if limits_file is None else load_limits(limits_file, known_checks=known),
+            limits=load_limits(limits_file, known_checks=known),
             book=load_book([_written(folder / "parts.toml", parts)]),
             rules=rules(),
             catalogue=catalogue(),
