@@ -74,7 +74,7 @@ def survey_surroundings(board: Board, limiter: Limiter, limits: Limits) -> Surro
     walls = {output, power} | {net.index for net in board.supplies}
     starts = [start] if limiter.nets["feed"] is None else [start, limiter.nets["feed"]]
     drive, entry, pins, fed_by = _find_drive(board, limits, own, walls, [net for net in starts if net is not None], limiter)
-    stops = walls | ({drive} if drive is not None else set())
+    stops = walls | _stated_drives(board, limits) | ({drive} if drive is not None else set())
     elements, left_out = _collect(board, own, stops, drive)
     power_path = _path_to_supply(board, power)
     return Surroundings(
@@ -126,6 +126,12 @@ def drive_entry_at(board: Board, net: int, limits: Limits) -> DriveLimits | None
         if net in board.nets_of_pin(key):
             return entry
     return None
+
+
+def _stated_drives(board: Board, limits: Limits) -> set[int]:
+    """Return the nets with a ``[drive]`` entry. What stands behind the drive of another limiter is told by that entry."""
+    named = {net.index for net in board.nets if any(name in limits.drives for name in net.names)} if limits.drives else set()
+    return named.union(*(board.nets_of_pin(key) for key in limits.drives))
 
 
 def other_nets(element: Element, net: int) -> Iterator[int]:
