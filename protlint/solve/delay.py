@@ -8,11 +8,12 @@ output current falls below 1.1 times holds.
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
+from protlint.quantities import format_quantity
 from protlint.solve.circuit import Circuit
 from protlint.solve.devices import Array
 from protlint.solve.expanded import Expanded, expand
@@ -37,12 +38,15 @@ CLOSE_V, CLOSE_SHARE = 5e-3, 0.03
 """At rest for good: for a whole period every junction and store this near its final voltage, the current this near holds."""
 RINGS_BELOW = 0.6
 """A mode damped more overshoots by less than a tenth, so that its period need not be waited for."""
-MOST_CROSSINGS = 40
-"""A current that has risen past the level this often swings on."""
-MOST_STEPS, MOST_S = 20000, 1e3
-"""A step is followed so far and no further; no limiter is as slow."""
+SUSTAINED_OVER, SUSTAINED_SHARE = 6, 1e-3
+"""A current whose swings past the level have not fallen by this share of their height over so many swings on; where a mode
+grows, one whose swings have not risen by it gets no higher."""
+MOST_STEPS, MOST_S = 5000, 1e3
+"""A step is followed so far and no further: no limiter is as slow, and one that rings longer is hardly damped."""
+MOST_GROWING_STEPS = 1500
+"""The same where a mode grows: only the peak is still asked for."""
 SWINGS = 10.0
-"""Periods of a growing mode that are followed."""
+"""Periods of a growing mode that are followed at most."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -74,10 +78,11 @@ def solve_step(circuit: Circuit, ambients_degC: tuple[float, float, float], *, s
 
     ``short`` is the net the output is shorted to, by default the one of ``circuit.shorts`` with the greatest holds. The
     energy is what goes into the pass device that takes the most until the delay is over. Where the current swings on, delay
-    and energy are None.
+    and energy are None. One that still rings when it has been followed as far as is worth while, and falls all the time,
+    has no answer: the reason says how long it was followed.
     """
     try:
-        return _followed(prepare_step(circuit, ambients_degC, short))
+        return follow(prepare_step(circuit, ambients_degC, short))
     except CircuitError as reason:
         return str(reason)
 
@@ -203,28 +208,45 @@ def _paths(circuit: Circuit) -> list[tuple[str, ...]]:
     return paths
 
 
-def _followed(trial: Trial) -> Step:
-    """Follow a step until it rests, or swings on, and read its figures."""
+def follow(trial: Trial) -> Step:
+    """Follow a step until it rests, or swings on, and read its figures.
+
+    Raises
+    ------
+    CircuitError
+        Where it still rings when it has been followed as far as is worth while.
+    """
     level_A = OVER * trial.holds_A
     course = [trial.read(trial.start)]
-    crossings = 0
-    until_s = math.inf if trial.grows_Hz is None else RAMP_S + SWINGS / trial.grows_Hz
+    tops: list[float] = []
+    grows = trial.grows_Hz is not None
+    until_s = min(MOST_S, RAMP_S + SWINGS / trial.grows_Hz if trial.grows_Hz else math.inf)
+    most_steps = MOST_GROWING_STEPS if grows else MOST_STEPS
     close_s, rests = math.inf, False
     for instant in integrate(trial.motion, trial.start, (RAMP_S,)):
         course.append(trial.read(instant))
-        crossings += course[-2].output_A <= level_A < course[-1].output_A
-        close = instant.time_s > RAMP_S and trial.grows_Hz is None and _is_close(trial, instant, course[-1])
+        now_A = course[-1].output_A
+        if course[-2].output_A <= level_A < now_A:
+            change = _change(tops, trial.holds_A)
+            if change is not None and (change < SUSTAINED_SHARE if grows else change > -SUSTAINED_SHARE):
+                grows = True
+                break
+            tops.append(now_A)
+        elif tops:
+            tops[-1] = max(tops[-1], now_A)
+        close = instant.time_s > RAMP_S and not grows and _is_close(trial, instant, course[-1])
         close_s = min(close_s, instant.time_s) if close else math.inf
         rests = instant.time_s - close_s >= trial.period_s
-        if rests:
-            break
-        if crossings > MOST_CROSSINGS or instant.time_s > min(until_s, MOST_S) or len(course) > MOST_STEPS:
+        if rests or instant.time_s > until_s or len(course) > most_steps:
             break
     peak_A = max(trial.holds_A, *(one.output_A for one in course))
     last = max((place for place, one in enumerate(course) if one.output_A > level_A), default=None)
     quiet = last is None or course[last].time_s < 0.5 * course[-1].time_s
-    if trial.grows_Hz is not None or crossings > MOST_CROSSINGS or not (rests or quiet):
+    if grows:
         return Step(settles=False, delay_s=None, peak_A=peak_A, pass_energy_J=None)
+    if not (rests or quiet):
+        lasts = format_quantity(course[-1].time_s, "s")
+        raise CircuitError(f"an end of the step into the short, which still rings after {lasts}, {len(tops)} swings")
     if last is None or last + 1 == len(course):
         return Step(settles=True, delay_s=0.0, peak_A=peak_A, pass_energy_J=0.0)
     before, after = course[last], course[last + 1]
@@ -234,6 +256,14 @@ def _followed(trial: Trial) -> Step:
     powers = np.array([one.pass_W for one in course[: last + 1]] + [before.pass_W + share * (after.pass_W - before.pass_W)])
     energy = 0.5 * (np.diff(times)[:, None] * (powers[:-1] + powers[1:])).sum(axis=0)
     return Step(settles=True, delay_s=delay_s, peak_A=peak_A, pass_energy_J=float(energy.max(initial=0.0)))
+
+
+def _change(tops: Sequence[float], holds_A: float) -> float | None:
+    """Return by what share of itself the height of the swings past the level has changed over the last few, from the
+    greatest current of each; None where there are not enough yet."""
+    if len(tops) <= SUSTAINED_OVER:
+        return None
+    return (tops[-1] - holds_A) / (tops[-1 - SUSTAINED_OVER] - holds_A) - 1.0
 
 
 def _reader(expanded: Expanded, way: float) -> Callable[[Instant], Course]:

@@ -11,10 +11,12 @@ import numpy as np
 import pytest
 import scipy.integrate
 
+from protlint.solve import delay
 from protlint.solve.circuit import Circuit, Device
-from protlint.solve.delay import OVER, RAMP_S, Trial, prepare_step, rc_delay, solve_step
+from protlint.solve.delay import OVER, RAMP_S, Trial, follow, prepare_step, rc_delay, solve_step
 from protlint.solve.linear import conductance_matrix, snapshot, store_matrix
 from protlint.solve.motion import Instant, at_rest, integrate
+from protlint.solve.parameters import CircuitError
 from protlint.solve.solution import Step
 from tests.support.circuits import bench_circuit
 from tests.support.dynamics import bench_case, bench_cases, moving_shape, shunt_of, with_capacitor
@@ -279,3 +281,33 @@ def test_missing_dynamic_data_is_named_by_key() -> None:
     assert solve_step(bench_circuit("nmos_sink"), AMBIENTS) == (
         "Q40.model.CGS or Q40.ratings.ciss; Q40.model.CGD or Q40.ratings.crss"
     )
+
+
+def weakly_damped(farad: float) -> Circuit:
+    """The Darlington stage with a capacitor from base to emitter of its shunt: hardly damped at 0.24 nF, not at 1 nF."""
+    circuit = bench_circuit("darlington_follower")
+    _, base, emitter = shunt_of(circuit).nodes
+    return with_capacitor(circuit, (base, emitter), farad)
+
+
+def test_a_damped_stage_that_rings_on_is_not_called_oscillating(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Held against a level just above holds it is above it again and again, lower each time."""
+    trial = prepare_step(weakly_damped(0.24e-9), AMBIENTS)
+    assert trial.grows_Hz is None
+    monkeypatch.setattr(delay, "MOST_STEPS", 600)
+    with pytest.raises(CircuitError, match=r"still rings after \S+ us, \d+ swings"):
+        follow(replace(trial, holds_A=trial.holds_A / OVER * 1.0001))
+    monkeypatch.undo()
+    settled = solve_step(weakly_damped(0.24e-9), AMBIENTS)
+    assert isinstance(settled, Step)
+    assert settled.settles
+
+
+def test_swings_that_do_not_fall_any_more_are_known_without_the_modes() -> None:
+    trial = prepare_step(weakly_damped(1e-9), AMBIENTS)
+    assert trial.grows_Hz is not None
+    step = follow(replace(trial, grows_Hz=None))
+    assert not step.settles
+    known = solve_step(weakly_damped(1e-9), AMBIENTS)
+    assert isinstance(known, Step)
+    assert step.peak_A == pytest.approx(known.peak_A, rel=1e-3)
