@@ -7,6 +7,7 @@ from collections.abc import Callable, Iterator
 from protlint.board.graph import Board, BoardPart
 from protlint.checks.board_case import BoardAnswer, BoardCase
 from protlint.findings import Finding, WorkingLine
+from protlint.topology.likely import CONTROLS
 from protlint.topology.limiter import FaultMatch
 
 WIRING_FAULTS = (
@@ -45,19 +46,26 @@ def _finding(board: Board, match: FaultMatch) -> Finding:
         limiter=group.id,
         parts=tuple(dict.fromkeys(named)),
         nets=tuple(dict.fromkeys(board.nets[net].name for net in group.nets.values() if net is not None)),
-        message=f"{match.says}; {_consequence(match)}",
+        message=f"{match.says}; {_consequence(board, match)}",
         working=_working(board, match),
         remedy=_remedy(board, match),
     )
 
 
-def _consequence(match: FaultMatch) -> str:
+def _consequence(board: Board, match: FaultMatch) -> str:
     """Say what comes of a fault; the pass device is not named for what it does not do."""
     shunt, carrier = (", ".join(match.group.roles[role]) for role in ("shunt", "pass"))
     if match.beside:
         return f"as drawn it does not do its part in the limiter of {shunt}"
     if match.fault.startswith("pass-"):
         return f"as drawn the drive does not control the load current, and {shunt} limits nothing"
+    if match.fault == "shunt-pin-misplaced":
+        ((part, pin), _), *_ = match.moves
+        roles = board.part_of[part].roles
+        if pin in CONTROLS and roles[pin] in (roles.get("collector"), roles.get("anode")):
+            return f"as drawn the drive is clamped, whatever the current of {carrier}"
+        if pin in CONTROLS:
+            return f"as drawn it answers to the voltage there, and nothing limits the current of {carrier}"
     return f"as drawn nothing limits the current of {carrier}"
 
 

@@ -1,4 +1,4 @@
-"""What sound rules take for a limiter although the supplies forbid it: told as what is wrong, not judged as a limiter."""
+"""What sound rules take for a limiter and what cannot be one: told as what is wrong, not judged as a limiter."""
 
 from __future__ import annotations
 
@@ -11,8 +11,13 @@ from protlint.topology.terms import MIRROR
 
 
 def doubtful_among(limiters: Sequence[Limiter], index: Index) -> list[Limiter]:
-    """Return the limiters that the supplies forbid: no such current can flow, or a supply itself drives a device."""
-    return [one for one in limiters if runs_against_supplies(one, index) or is_driven_by_supply(one, index)]
+    """Return the limiters that the supplies forbid, as no such current can flow or a supply itself drives a device, and
+    those whose driver would take its current from the shunt's base, where a latching transistor's collector belongs."""
+    return [
+        one
+        for one in limiters
+        if runs_against_supplies(one, index) or is_driven_by_supply(one, index) or _drives_from_tap(one, index)
+    ]
 
 
 def explained(
@@ -36,6 +41,12 @@ def explained(
         else:
             kept.append(limiter)
     return kept, tuple(told)
+
+
+def _drives_from_tap(limiter: Limiter, index: Index) -> bool:
+    tap = limiter.bound.get("tap")
+    drivers = (one for role, ones in limiter.elements.items() if role.split(".")[0] == "driver" for one in ones)
+    return tap is not None and any(index.terminals[one].get("collector") == index.net_of[tap] for one in drivers)
 
 
 def _against_supplies(limiter: Limiter, index: Index) -> FaultMatch:

@@ -147,7 +147,7 @@ def _fault(index: Index, piece: Excerpt, attempt: Attempt, group: Group) -> tupl
 def _name(role: str, pins: Sequence[str], other: bool) -> str:
     """Return the check for a transistor of a role some pins of which stand elsewhere, or that is of the other polarity."""
     if role == LATCH:
-        return "shunt-pins-exchanged"
+        return "shunt-polarity-wrong" if other else "shunt-pins-exchanged"
     if role != "shunt":
         return "pass-polarity-wrong" if other else "pass-pins-exchanged"
     return "shunt-polarity-wrong" if other else EXCHANGED.get(frozenset(pins), "shunt-pins-exchanged")

@@ -206,3 +206,18 @@ def test_a_link_across_a_lone_sense_resistor_is_named() -> None:
     (finding,) = bypassed(board)
     assert finding.remedy == "take out R9, which shorts R2"
     assert bypassed(board.replace("R9 RES 0 SNS GND\n", "")) == []
+
+
+@pytest.mark.parametrize(
+    "pin, where, meanwhile",
+    [
+        ("base", "drive", "as drawn the drive is clamped, whatever the current of Q1"),
+        ("base", "output", "as drawn it answers to the voltage there, and nothing limits the current of Q1"),
+        ("emitter", "drive", "as drawn nothing limits the current of Q1"),
+    ],
+)
+def test_a_pin_astray_says_what_the_board_does_meanwhile(pin: str, where: str, meanwhile: str) -> None:
+    netlist, limiter = sound("sink-npn")
+    (finding,) = wiring(review_netlist(edits.moved(netlist, "Q2", pin, limiter["nets"][where]), bare_desk()))
+    assert finding.check == "shunt-pin-misplaced"
+    assert finding.message.endswith(meanwhile)

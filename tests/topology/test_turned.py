@@ -150,6 +150,8 @@ def the_only_one(circuit: str, part: str, *pairs: tuple[str, str], other: bool =
         ("sink-npn", "Q2", [("collector", "emitter")], True, "shunt-polarity-wrong"),
         ("latched-thyristor", "T1", [("anode", "cathode")], False, "shunt-pins-exchanged"),
         ("latched-pair-pnp", "Q3", [("base", "emitter")], False, "shunt-pins-exchanged"),
+        ("latched-pair-npn", "Q3", [], True, "shunt-polarity-wrong"),
+        ("latched-pair-pnp", "Q3", [], True, "shunt-polarity-wrong"),
         ("mosfet-low-side", "M1", [("drain", "source")], False, "pass-pins-exchanged"),
         ("sink-npn", "Q1", [], True, "pass-polarity-wrong"),
     ],
