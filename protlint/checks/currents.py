@@ -14,14 +14,13 @@ from protlint.solve.solution import Currents
 
 def carry_not_met(case: Case) -> Iterator[Answer]:
     """Yield a finding where the limiter may cut into the current the board needs."""
-    worst = _least_carries(case)
-    if worst is None:
-        yield from _not_checked(case, "carry-not-met")
+    missed = _carry_missed(case, "carry-not-met", by_drive=False)
+    if missed is None:
         return
-    row, carries_A = worst
-    carry_A = case.needs.carry_A
-    if carry_A is None or carries_A >= carry_A or row.limited_by_output == "drive":
+    if isinstance(missed, NotChecked):
+        yield missed
         return
+    row, carries_A, carry_A = missed
     remedy, fits = sense_remedy(case)
     yield case.finding(
         "carry-not-met",
@@ -37,14 +36,13 @@ def carry_not_met(case: Case) -> Iterator[Answer]:
 
 def drive_insufficient(case: Case) -> Iterator[Answer]:
     """Yield a finding where the drive or the pass device's gain gives out below the current the board needs."""
-    worst = _least_carries(case)
-    if worst is None:
-        yield from _not_checked(case, "drive-insufficient")
+    missed = _carry_missed(case, "drive-insufficient", by_drive=True)
+    if missed is None:
         return
-    row, carries_A = worst
-    carry_A = case.needs.carry_A
-    if carry_A is None or carries_A >= carry_A or row.limited_by_output != "drive":
+    if isinstance(missed, NotChecked):
+        yield missed
         return
+    row, carries_A, carry_A = missed
     drive = case.parts("drive")
     remedy, fits = _more_drive(case, carries_A, carry_A)
     yield case.finding(
@@ -105,23 +103,24 @@ def cap_exceeded(case: Case) -> Iterator[Answer]:
     )
 
 
-def _least_carries(case: Case) -> tuple[Currents, float] | None:
-    """Return the row and the value of the least carries, or None where carry or carries is not known."""
-    rows = [(row, row.carries_range_A[0]) for row in case.solution.currents if row.carries_range_A is not None]
-    if case.needs.carry_A is None or not rows or len(rows) < len(case.solution.currents):
+def _carry_missed(case: Case, check: str, *, by_drive: bool) -> tuple[Currents, float, float] | NotChecked | None:
+    """Return the row, carries and carry where the least carries misses carry, because of the drive or not; or why that
+    cannot be told."""
+    carry_A = case.needs.carry_A
+    if carry_A is None:
+        return NotChecked(check, case.limits_key("carry"))
+    currents = case.solution.currents
+    if not currents or any(row.carries_A is None for row in currents):
+        return NotChecked(check, case.limits_key("output")) if currents else None
+    rows = [(row, row.carries_range_A[0]) for row in currents if row.carries_range_A is not None]
+    if len(rows) < len(currents):
         return None
-    return min(rows, key=lambda item: item[1])
+    row, carries_A = min(rows, key=lambda item: item[1])
+    return None if carries_A >= carry_A or (row.limited_by_output == "drive") != by_drive else (row, carries_A, carry_A)
 
 
 def _high_most_A(row: Currents) -> float:
     return row.most_range_A[1] if row.most_range_A is not None else 0.0
-
-
-def _not_checked(case: Case, check: str) -> Iterator[Answer]:
-    if case.needs.carry_A is None:
-        yield NotChecked(check, case.limits_key("carry"))
-    elif any(row.carries_A is None for row in case.solution.currents):
-        yield NotChecked(check, case.limits_key("output"))
 
 
 def _carry_working(case: Case, row: Currents, carries_A: float, carry_A: float) -> tuple[WorkingLine, ...]:

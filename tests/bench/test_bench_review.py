@@ -1,9 +1,9 @@
 """What a whole review costs, against sexpdata's own reader on the same text in the same run.
 
-Nothing is asserted on a clock, and runs are small by default. ``PROTLINT_BENCH_PARTS=20000`` measures what the project
-promises: a board of 20,000 parts with eight limiters, all different and all solved, reviewed from its files to the printed
-report no slower than ``sexpdata.loads`` reads its text. Times are of the processor, each in a process of its own, as the
-command would spend them; what importing costs is told apart.
+Nothing is asserted on a clock, and runs are small and few by default. ``PROTLINT_BENCH_PARTS=20000 PROTLINT_BENCH_RUNS=3``
+measures what the project promises: a board of 20,000 parts with eight limiters, all different and all solved, reviewed from
+its files to the printed report no slower than ``sexpdata.loads`` reads its text. Times are of the processor, each in a
+process of its own, as the command would spend them; what importing costs is told apart.
 """
 
 from __future__ import annotations
@@ -20,6 +20,7 @@ from tests.support.crowd import EXPORTED, crowd_drawn
 from tests.support.edif_text import flat_netlist, schematic_pages
 
 PARTS = int(os.environ.get("PROTLINT_BENCH_PARTS", "500"))
+RUNS = int(os.environ.get("PROTLINT_BENCH_RUNS", "1"))
 LIMITERS = 8
 REMARK = "an invented crowd of parts"
 
@@ -41,10 +42,10 @@ protlint.report.text.rendered_text(protlint.report.document.document(protlint.pi
 TOLD = "import json; print(json.dumps([imported - started, time.process_time() - imported]))"
 
 
-def spent(work: str, file: Path, times: int = 3) -> tuple[float, float]:
-    """Return the least seconds of several processes: for the imports, and for the work."""
+def spent(work: str, file: Path) -> tuple[float, float]:
+    """Return the least seconds of some processes: for the imports, and for the work."""
     runs = []
-    for _ in range(times):
+    for _ in range(RUNS):
         done = subprocess.run([sys.executable, "-c", work + TOLD, str(file)], capture_output=True, text=True, check=True)
         runs.append(json.loads(done.stdout))
     imports, works = zip(*runs, strict=True)

@@ -37,9 +37,7 @@ def test_a_worn_board_is_reviewed(seed: int) -> None:
 @pytest.mark.parametrize("name", SOUND)
 def test_what_could_not_be_solved_is_said_by_every_check_that_needs_it(name: str) -> None:
     case = case_of(SOUND[name]().review())
-    bare = replace(
-        case.solution, high_short=(), high_locus=(), unlimited=(), at_carry=None, held_short=None, locus=()
-    )
+    bare = replace(case.solution, high_short=(), high_locus=(), unlimited=(), at_carry=None, held_short=None, locus=())
     answers = {check: list(ask(replace(case, solution=bare))) for check, ask in CHECKS.items()}
     asked = {
         "base-stop-low", "sense-resistor-power", "resistor-power", "drive-unlimited", "shunt-overloaded", "pass-overheated",
