@@ -6,7 +6,7 @@ from collections.abc import Iterator
 
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.drive_resistor import greatest_drive_resistance
-from protlint.checks.sizing import least_carries_A, sense_remedy
+from protlint.checks.sizing import least_carries_A, out_of_reach, sense_remedy
 from protlint.findings import NotChecked, Remedy, WorkingLine
 from protlint.quantities import format_quantity
 from protlint.solve.solution import Currents
@@ -69,7 +69,8 @@ def _more_drive(case: Case, carries_A: float, carry_A: float) -> Remedy:
         return fit
     resistors = ", ".join(case.parts("drive")) or "the drive"
     if carries_A <= 0.0:
-        return f"{resistors} cannot turn the pass device on at all there: give the drive more voltage", ()
+        nothing = f"{resistors} cannot turn the pass device on at all there: give the drive more voltage"
+        return out_of_reach(case) or nothing, ()
     return f"let {resistors} give {carry_A / carries_A:.2g} times the drive, or fit a pass device of as much more hFE", ()
 
 

@@ -157,8 +157,8 @@ def _delays(advice: Advice | None, fit: Fit | None) -> Iterator[WorkingLine]:
 
 
 def _advice(case: Case, loop: Loop) -> Advice | None:
-    """Return the solution's advice, or work it out where the thresholds ask earlier than it does."""
-    if case.solution.advice is not None:
+    """Return the solution's advice, or work it out where the thresholds ask earlier than it does and the case wants any."""
+    if case.solution.advice is not None or not case.advised:
         return case.solution.advice
     found = advise(
         case.circuit,
@@ -223,6 +223,8 @@ def _change(before: Step | None, after: Step | None) -> str:
     """Return in words what a remedy does to the delay."""
     if before is None or after is None:
         return ""
+    if before.delay_s == after.delay_s == 0.0:
+        return ", and still no delay"
     return f"; the delay goes from {_delay(before)} to {_delay(after)}"
 
 

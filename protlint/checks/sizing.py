@@ -46,6 +46,23 @@ def _sense_of(case: Case) -> Sense | None:
     return Sense(parts, now_ohm, values.pop() / now_ohm if len(values) == 1 else None)
 
 
+def out_of_reach(case: Case) -> str | None:
+    """Return what to do where a supply's end leaves nothing over the working output, so that no value on the board helps."""
+    output_V, held = case.needs.output_V, case.circuit.held
+    if output_V is None or not case.circuit.shorts:
+        return None
+    sign = 1.0 if output_V > held[case.circuit.shorts[0]].usual else -1.0
+    node, supply = max(held.items(), key=lambda item: sign * item[1].usual)
+    end_V = supply.low if sign > 0.0 else supply.high
+    if sign * (end_V - output_V) > 0.0 or sign * (supply.usual - output_V) <= 0.0:
+        return None
+    least, output = format_quantity(end_V, "V"), format_quantity(output_V, "V")
+    return (
+        f"{node} may be as little as {least} and the output works at {output}, which leaves the stage nothing: "
+        f"state another {case.limits_key('output')}, or give {node} less spread"
+    )
+
+
 def sense_remedy(case: Case) -> Remedy:
     """Return what sense resistance to fit, or the plain statement that none will do; None where it cannot be told.
 
@@ -62,7 +79,8 @@ def sense_remedy(case: Case) -> Remedy:
     upper_ohm = sense.now_ohm * carries_A / carry_A if carry_A else None
     lower_ohm = sense.now_ohm * most_A / cap_A if cap_A else None
     if carries_A <= 0.0 or most_A <= 0.0:
-        return "no sense value meets it: at the working output the stage passes nothing, whatever the sense resistance", ()
+        nothing = "no sense value meets it: at the working output the stage passes nothing, whatever the sense resistance"
+        return out_of_reach(case) or nothing, ()
     if upper_ohm is not None and lower_ohm is not None and lower_ohm > upper_ohm * REACH:
         return _no_value(case, carries_A, most_A), ()
     ends = (None if end is None else sense.part_ohm(end) for end in (lower_ohm, upper_ohm))

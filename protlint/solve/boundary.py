@@ -158,14 +158,17 @@ def short_nodes(place: Place, held: dict[str, Range], notes: Notes) -> tuple[str
 
 
 def _nets_behind_loads(place: Place) -> set[int]:
-    """Return the nets that two-terminal parts outside the bench tie the output to."""
-    board, output = place.board, place.around.output
-    nets: set[int] = set()
-    for index, _ in board.elements_at[output]:
-        terminals = set(board.elements[index].terminals.values())
-        if index not in place.around.elements and len(terminals) == 2:
-            nets |= terminals - {output}
-    return nets
+    """Return the nets that two-terminal parts outside the bench, one or a string of them, tie the output to."""
+    board = place.board
+    nets: set[int] = {place.around.output}
+    waiting = [place.around.output]
+    while waiting:
+        for index, _ in board.elements_at[waiting.pop()]:
+            terminals = set(board.elements[index].terminals.values())
+            if index not in place.around.elements and len(terminals) == 2:
+                waiting += sorted(net for net in terminals - nets if len(board.nets[net].pins) == 2)
+                nets |= terminals
+    return nets - {place.around.output}
 
 
 def _stated_shorts(place: Place, held: dict[str, Range], notes: Notes, draws: Callable[[float], bool]) -> tuple[str, ...]:

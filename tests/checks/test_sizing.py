@@ -10,7 +10,7 @@ from protlint.checks.sizing import greatest_most_A, least_carries_A
 from protlint.quantities.series import hundredths
 from tests.support.cures import figure, resistor
 from tests.support.desk import found, the_one
-from tests.support.judged import Job, follower, sink
+from tests.support.judged import Job, follower, sink, source
 
 
 def spread(job: Job) -> float:
@@ -63,3 +63,13 @@ def test_a_smaller_resistance_comes_with_the_rating_it_needs() -> None:
 def test_a_stage_that_passes_nothing_is_no_matter_of_the_sense_resistor() -> None:
     (ill,) = [one for one in found(follower().stated(output="25 V").review()) if one.check.startswith(("carry", "drive"))]
     assert "nothing" in (ill.remedy or "") or "cannot" in (ill.remedy or "")
+
+
+def test_an_output_that_the_supply_s_low_end_does_not_reach_is_told_from_a_weak_stage() -> None:
+    """A 15 V source with 20 % less at worst, 12 V, cannot carry at an output of 13 V; at 10 V it can."""
+    low = source().supplied(**{"+15V": "15 V 20 %"})
+    (one,) = [one for one in low.review().findings if one.check in ("carry-not-met", "drive-insufficient")]
+    assert "may be as little as 12 V and the output works at 13 V" in (one.remedy or "")
+    assert "[limiter" in (one.remedy or "")
+    lower = low.limited("limiter", "*", output="10 V").review()
+    assert not [one for one in lower.findings if one.check in ("carry-not-met", "drive-insufficient")]
