@@ -165,7 +165,8 @@ def _with_a_pin_astray(
     """Yield the transistors of which two pins stand as those of a pass device's shunt, with where the third may belong.
 
     The third is on another net of the limiter, or together with another pin: on any other net it makes a circuit of its own.
-    A base has left a resistor hanging, or is straight on the load: else it makes a mirror, or a junction used as a diode.
+    A base has left a resistor hanging, or is straight on the load: else it makes a mirror, or a junction used as a diode. A
+    collector that goes with other transistors' bases makes a mirror too.
     """
     pins = index.terminals[carrier]
     near = next(iter(taps))
@@ -177,7 +178,7 @@ def _with_a_pin_astray(
         own, (lead, take) = index.terminals[shunt], LEAD[index.kind[shunt]]
         base, emitter, collector = own[CONTROL[index.kind[shunt]]], own[lead], own[take]
         if base in taps and emitter == far:
-            if collector in taps or collector in (far, load):
+            if collector in (far, load) or (collector in taps and not _controls_others(index, collector, shunt)):
                 astray.append((shunt, take))
         elif base in taps and (emitter in taps or emitter == load or emitter in _takes(index, {collector})):
             astray.append((shunt, lead))
@@ -194,6 +195,11 @@ def _with_a_pin_astray(
         elif own[take] in takes:
             bases = hanging or ([near] if own[pin] == load else [])
             yield shunt, ((pin, far),) if pin == lead else tuple((pin, net) for net in bases)
+
+
+def _controls_others(index: Index, net: int, but: int) -> bool:
+    """Tell whether a net is on the control of another transistor, as that of a mirror's input is."""
+    return any(one != but and pin in CONTROL.values() for one, pin in index.at[net])
 
 
 def _hangs(index: Index, net: int) -> bool:

@@ -221,3 +221,35 @@ def test_a_pin_astray_says_what_the_board_does_meanwhile(pin: str, where: str, m
     (finding,) = wiring(review_netlist(edits.moved(netlist, "Q2", pin, limiter["nets"][where]), bare_desk()))
     assert finding.check == "shunt-pin-misplaced"
     assert finding.message.endswith(meanwhile)
+
+
+WIDLAR = """
+J1 CONN - LAMP +24V
+R1 RES 2k2 +24V REF
+Q2 NPN QSN1 REF REF GND
+Q1 NPN QPN1 LAMP REF SNS
+R2 RES 2.2 SNS GND POWER:1W
+"""
+FED_MIRROR = """
+J1 CONN - LAMP CMD
+Q1 NPN QPN1 +24V CMD B
+R2 RES 47 B GND POWER:1W
+Q2 NPN QSN1 B B GND
+Q3 NPN QSN1 LAMP B GND
+"""
+TURNED_OFF = """
+J1 CONN - LAMP OFF
+J2 CONN - CMD +24V
+R1 RES 390 CMD BASE
+Q1 NPN QPN1 LAMP BASE SNS
+R2 RES 2.2 SNS GND POWER:1W
+R3 RES 10k OFF B
+Q2 NPN QSN1 BASE B GND
+"""
+
+
+@pytest.mark.parametrize(
+    "board", [WIDLAR, FED_MIRROR, TURNED_OFF], ids=["Widlar mirror", "fed mirror", "turn-off transistor"]
+)
+def test_what_a_shunt_with_a_pin_astray_may_be_mistaken_for_is_no_wiring_fault(board: str) -> None:
+    assert wiring(reviewed(board, limits(supply=SUPPLIES))) == []
