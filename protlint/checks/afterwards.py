@@ -20,6 +20,9 @@ MOST_TOLD = 2
 
 POWER_CHECKS = ("sense-resistor-power", "resistor-power")
 
+ADVISED = ("compensation-absent", "loop-undamped")
+"""Checks whose remedy is worked out only where they find something worth telling."""
+
 UNRATED_W = {True: 1e-9, False: 0.1}
 """Stand for the rating of a resistor that states none, so that the rating it needs is found: of a sense resistor any, of
 another one that is more than the small ones have."""
@@ -40,6 +43,8 @@ def _foretold(case: Case, finding: Finding, findings: Sequence[Finding]) -> Find
     if changed is None:
         return finding
     after, _ = ask(changed)
+    if any(one.check in ADVISED and one.level != "note" for one in after):
+        after, _ = ask(_advised(changed))
     own = {fit.part for fit in finding.fits}
     burns = [one for one in after if one.check in POWER_CHECKS and own.issuperset(one.parts) and one.fits]
     smaller = any(fit.value < (case.part(fit.part).values.value or 0.0) for fit in finding.fits)
@@ -70,7 +75,10 @@ def _rated(burns: Sequence[Finding], count: int) -> str:
 
 
 def fitted(case: Case, fits: Iterable[Fit]) -> Case | None:
-    """Return the case of the same limiter with parts of other values, solved; None where it cannot be solved."""
+    """Return the case of the same limiter with parts of other values, solved; None where it cannot be solved.
+
+    How to calm its loop is left out: that takes longer than all the rest, and nothing is told of a note.
+    """
     sense, parts = case.parts("sense"), list(case.board.parts)
     changed = {case.part(fit.part).index: fit.value for fit in fits}
     for index, value in changed.items():
@@ -91,8 +99,14 @@ def fitted(case: Case, fits: Iterable[Fit]) -> Case | None:
     solution = solve(bench.circuit, ambients_degC, memo=case.solved)
     if solution.not_solved is not None:
         return None
-    solution = with_dynamics(bench.circuit, solution, ambients_degC, memo=case.solved)
-    return replace(case, board=board, bench=bench, solution=solution, assumptions=[])
+    solution = with_dynamics(bench.circuit, solution, ambients_degC, advised=False, memo=case.solved)
+    return replace(case, board=board, bench=bench, solution=solution, assumptions=[], advised=False)
+
+
+def _advised(case: Case) -> Case:
+    """Return a case with the advice that was left out."""
+    solution = with_dynamics(case.circuit, case.solution, case.limits.ambient_degC, memo=case.solved)
+    return replace(case, solution=solution, advised=True)
 
 
 def _with_value(part: BoardPart, value: float, sense: bool) -> BoardPart:

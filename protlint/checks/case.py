@@ -57,6 +57,8 @@ class Case:
     known: Known = field(default_factory=Known)
     solved: Memo = field(default_factory=Memo)
     """What was solved for this review, equal circuits once: points under stated conditions, and whole solutions."""
+    advised: bool = True
+    """Whether checks may work out how to calm a loop, which takes long."""
     worked_out: dict[str, Any] = field(init=False, default_factory=dict, repr=False, compare=False)
     """What several checks ask of this very case; a changed one begins anew."""
 

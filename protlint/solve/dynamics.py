@@ -24,10 +24,11 @@ def with_dynamics(
     ambients_degC: tuple[float, float, float],
     *,
     step: bool = True,
+    advised: bool = True,
     memo: Memo | None = None,
 ) -> Solution:
-    """Return a solution with its loop, advice where that is badly damped, and, unless ``step`` is false, the step into the
-    short, which takes longer.
+    """Return a solution with its loop; unless ``advised`` is false, advice where that is badly damped; and, unless ``step``
+    is false, the step into the short. Both take longer.
 
     Where one of them cannot be worked out, ``loop_needs`` or ``step_needs`` say what is missing; where the circuit itself
     could not be solved, or both are there already, the solution comes back as it was. With a ``memo`` that the solution came
@@ -44,7 +45,7 @@ def with_dynamics(
     if step and complete.step is None and not complete.step_needs:
         found = solve_step(circuit, ambients_degC, short=solution.short)
         complete = replace(complete, step=found) if isinstance(found, Step) else replace(complete, step_needs=_needs(found))
-    if complete.loop is not None and complete.advice is None and _badly_damped(complete.loop):
+    if complete.loop is not None and complete.advice is None and advised and _badly_damped(complete.loop):
         advice = advise(circuit, ambients_degC, short=solution.short, delay=step, loop=complete.loop, step=complete.step)
         complete = replace(complete, advice=advice if isinstance(advice, Advice) else None)
     # reasons name parts, so only what holds for any equal circuit is kept
