@@ -6,6 +6,7 @@ import os
 import sys
 from collections.abc import Callable, Sequence
 from pathlib import Path
+from typing import Any
 
 import pytest
 from hypothesis import settings
@@ -29,6 +30,19 @@ def show(pytestconfig: pytest.Config) -> Callable[[Sequence[str]], None]:
         shown.extend(("", *lines))
 
     return take
+
+
+def pytest_sessionfinish(session: pytest.Session) -> None:
+    """Hand the tables of a process that runs a share of the tests to the one that shows the results."""
+    handed: dict[str, object] | None = getattr(session.config, "workeroutput", None)
+    if handed is not None:
+        handed["tables"] = session.config.stash.get(TABLES, [])
+
+
+@pytest.hookimpl(optionalhook=True)
+def pytest_testnodedown(node: Any) -> None:
+    """Take the tables of a process that has run its share."""
+    node.config.stash.setdefault(TABLES, []).extend(getattr(node, "workeroutput", {}).get("tables", []))
 
 
 def pytest_terminal_summary(terminalreporter: pytest.TerminalReporter, config: pytest.Config) -> None:

@@ -45,14 +45,14 @@ def test_it_opens_with_the_job_then_two_commands_that_need_only_python() -> None
     for command in (review, tests):
         assert command.strip().startswith("python3 -m venv .venv && .venv/bin/pip install --quiet ")
     assert all((ROOT / path).exists() for path in re.findall(r"fixtures/\S+", review))
-    assert tests.endswith(".venv/bin/python -m pytest -q")
+    assert tests.endswith(".venv/bin/python -m pytest -q -n auto --dist loadfile")
 
 
 def test_the_gate_runs_the_test_command_of_the_readme() -> None:
     gate = (ROOT / ".ci" / "run").read_text(encoding="utf-8")
     assert "README.md" in gate
     first = next(line for line in README.splitlines() if "pytest" in line)
-    assert first.strip().endswith("-m pytest -q")
+    assert first.strip().endswith("-m pytest -q -n auto --dist loadfile")
 
 
 def test_the_limits_file_shown_is_one(tmp_path: Path) -> None:
