@@ -58,7 +58,8 @@ def test_built_in_types_whose_loop_cannot_be_judged_are_those_whose_data_sheets_
         assert all(entry.part_number in one for one in asked)
         without |= {entry.part_number} if asked else set()
     assert without == {
-        "BD135", "BD136", "BD137", "BD138", "BD139", "BD139-16", "BD140", "BD911", "BD912", "MJ2955", "MJE15030", "MJE2955T", "MJE3055T",
+        "BD135", "BD136", "BD137", "BD138", "BD139", "BD139-16", "BD140", "BD911", "BD912", "MJ2955", "MJE15030",
+        "MJE2955T", "MJE3055T",
         "MJE15031", "MJE15032", "MJE15033", "MJE340", "MJE350", "TIP2955", "TIP29C", "TIP3055", "TIP30C", "TIP31C", "TIP32C",
         "TIP35C", "TIP36C", "TIP41C", "TIP42C",
     }  # fmt: skip
