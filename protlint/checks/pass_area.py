@@ -65,7 +65,7 @@ def pass_outside_safe_area(case: Case) -> Iterator[Answer]:
             if may is None:
                 yield NotChecked(CHECK, case.rating_key(part_id, name))
             else:
-                places.append(_at_the_wall(case, may, quantity, points))
+                places.append(_at_the_wall(may, quantity, points))
         curve = _curve(case, part)
         if isinstance(curve, str):
             yield NotChecked(CHECK, curve)
@@ -102,7 +102,7 @@ def _walls(case: Case, part: BoardPart) -> Iterator[tuple[str, str]]:
     yield "current", peak if brief and case.rating(part.id, peak) is not None else current
 
 
-def _at_the_wall(case: Case, may: Figure, quantity: str, points: list[Seen]) -> Place:
+def _at_the_wall(may: Figure, quantity: str, points: list[Seen]) -> Place:
     """Return the point that comes nearest to a voltage or current rating."""
     bound = Bound(may.value if quantity == "current" else 0.0, f"its {quantity} rating")
     worst = max(points, key=lambda seen: seen.voltage_V if quantity == "voltage" else seen.current_A)

@@ -103,7 +103,7 @@ def _solve(network: Network, output: str, conditions: Sequence[Condition]) -> li
     drive_V = np.array([one.drive_V for one in conditions])
     lanes = Lanes(
         ambient_K,
-        known_voltages(network, held_V * supplied, output_V, drive_V),
+        known_voltages(held_V * supplied, output_V, drive_V),
         np.array([float(one.shunt_in) for one in conditions]),
         variation(network, axes, corner, ambient_K) if corner.any() else Variation(),
     )

@@ -71,7 +71,7 @@ class Parameters:
     present: tuple[Array | float, ...]
 
 
-def known_voltages(network: Network, held_V: Array, output_V: Array, drive_V: Array) -> Array:
+def known_voltages(held_V: Array, output_V: Array, drive_V: Array) -> Array:
     """Stack held (held nodes, lanes), output and drive voltages (lanes,) as ``Lanes.known_V``."""
     return np.concatenate((held_V, output_V[None], drive_V[None]))
 

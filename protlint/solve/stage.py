@@ -214,7 +214,7 @@ def stage_lanes(
         held_V, ends_V = held_voltages(network, chosen, corner)
         short_V = _short_voltage(stage, held_V, count)
         output_V = short_V if output_V is None else np.where(np.isnan(output_V), short_V, output_V)
-        known_V = known_voltages(network, held_V, output_V, ends_V[stage.on_end] if drive_V is None else drive_V)
+        known_V = known_voltages(held_V, output_V, ends_V[stage.on_end] if drive_V is None else drive_V)
     return Lanes(ambient_K, known_V, shunt_in, varied)
 
 

@@ -12,7 +12,7 @@ from collections import deque
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 
-from protlint.board.graph import Board, Element
+from protlint.board.graph import Board, BoardPart, Element
 from protlint.board.regulators import regulator_across
 from protlint.limits import DriveLimits, Limits
 from protlint.topology.limiter import Limiter
@@ -105,13 +105,13 @@ def drivers_on(board: Board, net: int) -> tuple[tuple[int, str], ...]:
     found = []
     for index, role in board.nets[net].pins:
         part = board.parts[index]
-        if part.kind == "connector" or (part.kind == "ic" and not _is_input(board, index, net, role)):
+        if part.kind == "connector" or (part.kind == "ic" and not _is_input(part, role)):
             found.append((index, role))
     return tuple(found)
 
 
-def _is_input(board: Board, index: int, net: int, role: str) -> bool:
-    for pin in board.parts[index].part.pins:
+def _is_input(part: BoardPart, role: str) -> bool:
+    for pin in part.part.pins:
         if role in (pin.name, pin.number) and pin.direction is not None:
             return pin.direction.casefold() == "input"
     return role.casefold() in INPUT_NAMES

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import tomllib
 from collections import Counter
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
 from functools import cache
 from itertools import permutations
@@ -114,17 +114,16 @@ def answer(slip: Slip) -> str:
     return "named otherwise" if found.faults else "still a limiter" if found.limiters else "nothing"
 
 
-def test_the_table_of_transistors_turned_round(capsys: pytest.CaptureFixture[str]) -> None:
+def test_the_table_of_transistors_turned_round(show: Callable[[Sequence[str]], None]) -> None:
     """Print what is said of every slip, by the transistor's role and by what was done to it."""
     said = Counter((slip.role, slip.how, answer(slip)) for slip in slips())
     answers = ("right", "named otherwise", "still a limiter", "nothing")
-    lines = ["", f"{'turned round':<34}" + "".join(f"{one:>17}" for one in answers)]
+    lines = [f"{'turned round':<34}" + "".join(f"{one:>17}" for one in answers)]
     for role, how in sorted({(role, how) for role, how, _ in said}):
         lines.append(f"{role + ': ' + how:<34}" + "".join(f"{said[role, how, one] or '-':>17}" for one in answers))
     total = {one: sum(number for (_, _, what), number in said.items() if what == one) for one in answers}
     lines.append(f"{'together':<34}" + "".join(f"{total[one]:>17}" for one in answers))
-    with capsys.disabled():
-        print("\n".join(lines))
+    show(lines)
     assert total["nothing"] == 0
     assert total["right"] >= LEAST_RIGHT * sum(total.values())
     shunts = [answer(slip) for slip in slips() if slip.role == "shunt"]
@@ -196,7 +195,7 @@ def moved_shunts() -> Iterator[tuple[str, str, Netlist, str, Stands]]:
                 yield pin, net, edits.moved(netlist, part, pin, where), part, sound
 
 
-def test_the_table_of_single_pins_moved(capsys: pytest.CaptureFixture[str]) -> None:
+def test_the_table_of_single_pins_moved(show: Callable[[Sequence[str]], None]) -> None:
     """Print what is said where one pin of a shunt is on another net of its limiter.
 
     Where the netlist has a resistor on either side of which the pin may belong, the other side is a fault told, and sound.
@@ -209,13 +208,12 @@ def test_the_table_of_single_pins_moved(capsys: pytest.CaptureFixture[str]) -> N
         if found.faults:
             told = "undone" if [undone(board, one, part) for one in found.faults] == [sound] else "a fault"
         said[pin, where, told] += 1
-    lines = ["", f"{'moved, to':<34}" + "".join(f"{one:>17}" for one in answers)]
+    lines = [f"{'moved, to':<34}" + "".join(f"{one:>17}" for one in answers)]
     for pin, where in sorted({(pin, where) for pin, where, _ in said}):
         lines.append(f"{pin + ' to ' + where:<34}" + "".join(f"{said[pin, where, one] or '-':>17}" for one in answers))
     total = {one: sum(number for (_, _, what), number in said.items() if what == one) for one in answers}
     lines.append(f"{'together':<34}" + "".join(f"{total[one]:>17}" for one in answers))
-    with capsys.disabled():
-        print("\n".join(lines))
+    show(lines)
     assert total["undone"] + total["a fault"] >= LEAST_MOVED * sum(total.values())
     for pin, where, told in said:
         assert told != "nothing" or pin == "base" or (pin, where) == ("emitter", "drive"), (pin, where)
