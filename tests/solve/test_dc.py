@@ -19,7 +19,7 @@ def lanes_at(network: Network, temperature_degC: np.ndarray, drive_V: np.ndarray
     circuit, count = network.circuit, len(drive_V)
     held = np.array([[circuit.held[node].usual] * count for node in network.held]).reshape(-1, count)
     short = np.full(count, circuit.held[circuit.shorts[0]].usual)
-    return Lanes(temperature_degC + 273.15, known_voltages(network, held, short, drive_V))
+    return Lanes(temperature_degC + 273.15, known_voltages(held, short, drive_V))
 
 
 @pytest.mark.parametrize("name", NAMES)

@@ -29,7 +29,7 @@ def current(kind: str, model: dict[str, float], first_V: float, control_V: float
     nodes = ("OUT", "DRV", "GND") if kind in ("npn", "nmos", "pnp", "pmos") else ("OUT", "GND")
     network = compile_network(around(Device("X", kind, nodes, model)))
     held = np.zeros((len(network.held), 1))
-    known = known_voltages(network, held, np.array([first_V]), np.array([control_V]))
+    known = known_voltages(held, np.array([first_V]), np.array([control_V]))
     return float(solve_lanes(network, Lanes(np.array([AT_25_DEGC]), known)).output_A[0])
 
 

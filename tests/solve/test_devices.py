@@ -24,7 +24,7 @@ FULL = {"VAF": 60.0, "VAR": 12.0, "IKF": 0.1, "IKR": 0.02, "ISE": 1e-13, "NE": 1
 def lanes_for(circuit: Circuit, temperature_K: np.ndarray, output_V: np.ndarray, drive_V: np.ndarray) -> Lanes:
     network = compile_network(circuit)
     held = np.zeros((len(network.held), len(temperature_K)))
-    return Lanes(temperature_K, known_voltages(network, held, output_V, drive_V))
+    return Lanes(temperature_K, known_voltages(held, output_V, drive_V))
 
 
 @pytest.mark.parametrize(
@@ -102,7 +102,7 @@ def base_emitter(model: dict[str, float], current_A: float, temperature_K: float
         "drive": Drive("DRV", fixed(5.0), fixed(5.0), current_A=current_A)})  # fmt: skip
     network = compile_network(circuit)
     held = np.zeros((len(network.held), 1))
-    lanes = Lanes(np.array([temperature_K]), known_voltages(network, held, np.zeros(1), np.full(1, 5.0)))
+    lanes = Lanes(np.array([temperature_K]), known_voltages(held, np.zeros(1), np.full(1, 5.0)))
     solved = solve_lanes(network, lanes)
     return float(solved.node_V[network.nodes.index("DRV"), 0])
 

@@ -17,7 +17,7 @@ BENCH = load_bench()["circuits"]
 
 def solved_here(network: Network, ambient_degC: float, output_V: float, drive_V: float) -> tuple[dict[str, float], float]:
     held = np.array([[network.circuit.held[node].usual] for node in network.held]).reshape(-1, 1)
-    known = known_voltages(network, held, np.array([output_V]), np.array([drive_V]))
+    known = known_voltages(held, np.array([output_V]), np.array([drive_V]))
     operating = solve_lanes(network, Lanes(np.array([ambient_degC + 273.15]), known))
     assert operating.converged.all()
     return dict(zip(network.nodes, operating.node_V[:, 0], strict=True)), float(operating.output_A[0])
