@@ -2,6 +2,7 @@
 
 Solved with the drive at its off end while the load holds the output at its return; and, where something holds the output up
 (a capacitor of some size), with the output at its highest, no load, and the drive at its off end, or every supply at 0 V.
+That a supply which is off takes back whatever flows is an assumption: what rests on it alone is no error.
 In a push-pull stage the other half keeps the drive near the output: there it is solved with that half at work. Each is
 solved at every end of the supplies' and the drive's stated ranges, and the worst counts.
 """
@@ -13,7 +14,7 @@ from dataclasses import dataclass
 
 from protlint.checks.case import VOLTAGES, Answer, Case
 from protlint.checks.ends import drive_V, ends_of
-from protlint.findings import Level, NotChecked, WorkingLine
+from protlint.findings import Finding, Level, NotChecked, WorkingLine
 from protlint.partdata.book import Figure
 from protlint.quantities import format_quantity, preferred
 from protlint.solve.conditions import Condition
@@ -39,6 +40,7 @@ class Stressed:
 
     words: str
     point: Point
+    assumed: bool = False
 
 
 def reverse_base_emitter(case: Case) -> Iterator[Answer]:
@@ -54,7 +56,10 @@ def reverse_base_emitter(case: Case) -> Iterator[Answer]:
         if not part.kind.startswith(("npn", "pnp")):
             continue
         worst = max(solved, key=lambda one: _reverse_V(case, one.point, names))
-        yield from _junction(case, part_id, names, worst)
+        certain = max(solved, key=lambda one: (not one.assumed, _reverse_V(case, one.point, names)))
+        found = list(_junction(case, part_id, names, certain))
+        is_error = any(isinstance(one, Finding) and one.level == "error" for one in found)
+        yield from found if is_error else _junction(case, part_id, names, worst)
     for part_id, names in case.device_parts("shunt"):
         if case.part(part_id).kind.startswith(("npn", "pnp")):
             yield from _collector_junction(case, part_id, names[0], solved)
@@ -79,6 +84,7 @@ def _states(case: Case) -> Iterator[Stressed | NotChecked]:
                 ],
             )
             return
+        off: list[tuple[str, Condition]] = []
         asked = [_asked(case, one, "the output", one.held_V[short]) for one in ends]
         if case.solution.sources and not _held_up(case):
             if case.needs.load_capacitance_F is None:
@@ -88,24 +94,25 @@ def _states(case: Case) -> Iterator[Stressed | NotChecked]:
             if highest_V is None:
                 yield NotChecked(CHECK, case.limits_key("output"))
             else:
-                asked += _held_up_states(case, ends, highest_V)
+                asked += [
+                    _asked(case, one, "the output held", output_V, load=" without a load")
+                    for one, output_V in zip(ends, highest_V, strict=True)
+                ]
+                off = [_supplies_off(case, ends, highest_V)]
         yield from _solved(case, asked)
+        yield from _solved(case, off, assumed=True)
     except CircuitError as reason:
         yield NotChecked(CHECK, f"the circuit with its drive off: {reason}")
 
 
-def _held_up_states(case: Case, ends: Sequence[Ends], highest_V: Sequence[float]) -> list[tuple[str, Condition]]:
-    """Return what is asked where something holds the output up: the drive off, without a load; and the supplies off."""
-    asked = [
-        _asked(case, one, "the output held", output_V, load=" without a load")
-        for one, output_V in zip(ends, highest_V, strict=True)
-    ]
+def _supplies_off(case: Case, ends: Sequence[Ends], highest_V: Sequence[float]) -> tuple[str, Condition]:
+    """Return the condition that every supply is gone while something still holds the output up, and its words."""
     left_V, charged = max(zip(highest_V, ends, strict=True), key=lambda pair: abs(pair[0]))
     left = f", left by {charged.words.strip(' ()')}" if charged.words and case.needs.output_V is None else ""
     if _returned_by_a_diode(case):
         left_V, left = min(DIODE_DROP_V, abs(left_V)) * (1.0 if left_V >= 0.0 else -1.0), ""
     words = f"with the supplies off and the output held at {format_quantity(left_V, 'V')}{left}"
-    return [*asked, (words, Condition(case.limits.ambient_degC[1], 0.0, left_V, supplied=False))]
+    return words, Condition(case.limits.ambient_degC[1], 0.0, left_V, supplied=False)
 
 
 def _asked(
@@ -118,11 +125,13 @@ def _asked(
     return words, Condition(case.limits.ambient_degC[1], at_V, output_V, corner=ends.corner)
 
 
-def _solved(case: Case, asked: Sequence[tuple[str, Condition]]) -> Iterator[Stressed | NotChecked]:
+def _solved(case: Case, asked: Sequence[tuple[str, Condition]], *, assumed: bool = False) -> Iterator[Stressed | NotChecked]:
     points = case.under([condition for _, condition in asked])
     for (words, _), point in zip(asked, points, strict=True):
         yield (
-            Stressed(words, point) if point is not None else NotChecked(CHECK, f"the circuit {words}, which was not solved")
+            Stressed(words, point, assumed)
+            if point is not None
+            else NotChecked(CHECK, f"the circuit {words}, which was not solved")
         )
 
 
@@ -230,7 +239,7 @@ def _junction(case: Case, part_id: str, names: tuple[str, ...], worst: Stressed)
         ),
         remedy=f"fit a diode of {rated} or more across it: anode to the {ends[0]} of {part_id}, cathode to its {ends[1]}",
         level=level,
-        assumption=case.assumes(*VOLTAGES),
+        assumption=worst.assumed or case.assumes(*VOLTAGES),
         subject=part_id,
     )
 
@@ -238,33 +247,33 @@ def _junction(case: Case, part_id: str, names: tuple[str, ...], worst: Stressed)
 def _collector_junction(case: Case, part_id: str, name: str, solved: list[Stressed]) -> Iterator[Answer]:
     """Yield a finding where the shunt's collector junction, turned forward, conducts more than base and collector may."""
     sign = 1.0 if case.part(part_id).kind.startswith("npn") else -1.0
-    forward = [(one.point.states[name], one.words) for one in solved]
-    forward = [(state, words) for state, words in forward if sign * (state.control_V - state.voltage_V) > 0.0]
-    found: list[tuple[float, str, float, Figure, State, str]] = []
+    stressed = [(one.point.states[name], one) for one in solved]
+    forward = [(state, one) for state, one in stressed if sign * (state.control_V - state.voltage_V) > 0.0]
+    found: list[tuple[float, str, float, Figure, State, Stressed]] = []
     for pin, rating_name in (("collector", "ic"), ("base", "ib")):
-        currents = [(abs(one.control_A if pin == "base" else one.current_A), one, words) for one, words in forward]
+        currents = [(abs(state.control_A if pin == "base" else state.current_A), state, one) for state, one in forward]
         if not currents or (worst := max(currents, key=lambda row: row[0]))[0] < LEAST_A:
             continue
-        current_A, state, words = worst
+        current_A, state, at = worst
         may = case.allowed(part_id, rating_name, "current")
         if may is None:
             yield NotChecked(CHECK, case.rating_key(part_id, rating_name))
         elif current_A > may.value:
-            found.append((current_A / may.value, pin, current_A, may, state, words))
+            found.append((current_A / may.value, pin, current_A, may, state, at))
     if not found:
         return
-    _, pin, current_A, may, state, words = max(found, key=lambda row: row[0])
+    _, pin, current_A, may, state, at = max(found, key=lambda row: row[0])
     rated = format_quantity(preferred(max(1.5 * abs(state.voltage_V), 10.0), "E6", "up"), "V")
     yield case.finding(
         CHECK,
-        f"the collector junction of {part_id} conducts {format_quantity(current_A, 'A')} {words}, its {pin} may take "
+        f"the collector junction of {part_id} conducts {format_quantity(current_A, 'A')} {at.words}, its {pin} may take "
         f"{format_quantity(may.value, 'A')}",
         parts=(part_id,),
         working=(
-            WorkingLine(f"{pin} current", f"solved {words}", current_A, "A"),
+            WorkingLine(f"{pin} current", f"solved {at.words}", current_A, "A"),
             WorkingLine("it may take", f"its {pin} current rating", may.value, "A", may.source),
         ),
         remedy=f"fit a diode of {rated} or more in series with the collector of {part_id}, the way the shunt conducts",
-        assumption=case.assumes(*VOLTAGES),
+        assumption=at.assumed or case.assumes(*VOLTAGES),
         subject=f"{part_id} collector junction",
     )
