@@ -125,14 +125,14 @@ def sweep_stage(
         raise CircuitError("no operating point was found with the output shorted")
     most_A = float(np.nanmax(np.abs(ends)))
     if most_A < LEAST_OUTPUT_A:
-        raise CircuitError(f"the drive cannot turn the pass device on: {most_A:.2g} A into the short at most")
+        raise CircuitError(_turns_nothing_on(drive, f"{most_A:.2g} A flows into the short at most"))
     last = drives * count
     carried = _forward_current(stage, run.pick(np.array([last + usual, 2 * last - count + usual])))
     weights = carried if np.isfinite(carried).any() else np.abs(ends)
     on_end = int(np.nanargmax(weights))
     greatest = float(ends[on_end])
     if weights[on_end] < LEAST_OUTPUT_A:
-        raise CircuitError("the drive cannot turn the pass device on: it carries nothing in its forward sense")
+        raise CircuitError(_turns_nothing_on(drive, "nothing passes in its forward sense"))
     if abs(float(weights[1] - weights[0])) < LEAST_CONTROL_SHARE * abs(float(weights[on_end])):
         raise CircuitError(_uncontrolled(drive, abs(greatest)))
     way = 1.0 if greatest > 0.0 else -1.0
@@ -141,6 +141,15 @@ def sweep_stage(
         rows = np.arange(2 * drives * count).reshape(2, drives, count)[:, ::-1].ravel()
         run, drive_V = run.pick(rows), drive_V[::-1]
     return replace(stage, on_end=on_end, way=way), Sweep(run, drive_V, count)
+
+
+def _turns_nothing_on(drive: Drive, what: str) -> str:
+    """Say that a drive does not turn the stage on, what passes all the same, and which key states the drive."""
+    low_V, high_V, node = drive.low_V.usual, drive.high_V.usual, drive.node.removesuffix(FEED)
+    return (
+        f"the drive at {node}, from {low_V:g} V to {high_V:g} V, cannot turn the pass device on: {what}; "
+        f"[drive.{toml_key(node)}] low and high state it otherwise"
+    )
 
 
 def _uncontrolled(drive: Drive, unlimited_A: float) -> str:
