@@ -6,13 +6,10 @@ from collections.abc import Mapping
 from dataclasses import replace
 
 from protlint.board.graph import Board, Element
+from protlint.board.pins import FAMILY, TERMINALS
 
-_TRANSISTOR = {
-    "npn": ("collector", "base", "emitter"), "pnp": ("collector", "base", "emitter"),
-    "npn-darlington": ("collector", "base", "emitter"), "pnp-darlington": ("collector", "base", "emitter"),
-    "nmos": ("drain", "gate", "source"), "pmos": ("drain", "gate", "source"),
-}  # fmt: skip
-"""The roles of a transistor's terminals: where the current comes from, what steers it, where the current goes."""
+_TRANSISTOR = {kind: TERMINALS[family] for kind, family in FAMILY.items() if family in ("bipolar", "mosfet")}
+"""The roles of a transistor's terminals by kind: what the load is on, what steers it, its lead."""
 
 
 def outputs_named_as_supplies(board: Board) -> Mapping[int, int]:

@@ -50,10 +50,11 @@ FAMILY = {
 }
 """A kind to the family whose terminals and pin names it has."""
 
-_NEEDED = {
+TERMINALS = {
     "bipolar": ("collector", "base", "emitter"), "mosfet": ("drain", "gate", "source"), "diode": ("anode", "cathode"),
     "thyristor": ("anode", "cathode", "gate"), "two": ("1", "2"),
 }  # fmt: skip
+"""The roles of a family's terminals; of a transistor first what the load is on, then what steers it, then its lead."""
 
 
 def roles_of_pins(
@@ -81,7 +82,7 @@ def family_by_names(part: Part) -> str | None:
     """Return ``bipolar`` or ``mosfet`` where the pins bear all the names of such a transistor."""
     for family in ("bipolar", "mosfet"):
         roles, sections = _by_names(part, family)
-        if sections or all(role in roles for role in _NEEDED[family]):
+        if sections or all(role in roles for role in TERMINALS[family]):
             return family
     return None
 
@@ -143,7 +144,7 @@ def _roles_of(pins: tuple[str, ...], family: str) -> tuple[Roles, tuple[Roles, .
         if role:
             grouped.setdefault(number, {}).setdefault(role, []).append(position)
     known = {role for section in grouped.values() for role in section}
-    needed = _NEEDED[family]
+    needed = TERMINALS[family]
     seen = sum(len(positions) for section in grouped.values() for positions in section.values())
     if not known or (seen < len(pins) and not known.issuperset(needed)):
         return {}, ()

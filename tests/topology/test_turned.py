@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import tomllib
 from collections import Counter
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cache
 from itertools import permutations
@@ -114,16 +114,20 @@ def answer(slip: Slip) -> str:
     return "named otherwise" if found.faults else "still a limiter" if found.limiters else "nothing"
 
 
+def table(heading: str, between: str, said: Counter[tuple[str, str, str]], total: Mapping[str, int]) -> list[str]:
+    """Return the lines of a table: how often each answer was given to what was done, and together."""
+    lines = [f"{heading:<34}" + "".join(f"{one:>17}" for one in total)]
+    for which, how in sorted({(which, how) for which, how, _ in said}):
+        lines.append(f"{which + between + how:<34}" + "".join(f"{said[which, how, one] or '-':>17}" for one in total))
+    return [*lines, f"{'together':<34}" + "".join(f"{number:>17}" for number in total.values())]
+
+
 def test_the_table_of_transistors_turned_round(show: Callable[[Sequence[str]], None]) -> None:
     """Print what is said of every slip, by the transistor's role and by what was done to it."""
     said = Counter((slip.role, slip.how, answer(slip)) for slip in slips())
     answers = ("right", "named otherwise", "still a limiter", "nothing")
-    lines = [f"{'turned round':<34}" + "".join(f"{one:>17}" for one in answers)]
-    for role, how in sorted({(role, how) for role, how, _ in said}):
-        lines.append(f"{role + ': ' + how:<34}" + "".join(f"{said[role, how, one] or '-':>17}" for one in answers))
     total = {one: sum(number for (_, _, what), number in said.items() if what == one) for one in answers}
-    lines.append(f"{'together':<34}" + "".join(f"{total[one]:>17}" for one in answers))
-    show(lines)
+    show(table("turned round", ": ", said, total))
     assert total["nothing"] == 0
     assert total["right"] >= LEAST_RIGHT * sum(total.values())
     shunts = [answer(slip) for slip in slips() if slip.role == "shunt"]
@@ -208,12 +212,8 @@ def test_the_table_of_single_pins_moved(show: Callable[[Sequence[str]], None]) -
         if found.faults:
             told = "undone" if [undone(board, one, part) for one in found.faults] == [sound] else "a fault"
         said[pin, where, told] += 1
-    lines = [f"{'moved, to':<34}" + "".join(f"{one:>17}" for one in answers)]
-    for pin, where in sorted({(pin, where) for pin, where, _ in said}):
-        lines.append(f"{pin + ' to ' + where:<34}" + "".join(f"{said[pin, where, one] or '-':>17}" for one in answers))
     total = {one: sum(number for (_, _, what), number in said.items() if what == one) for one in answers}
-    lines.append(f"{'together':<34}" + "".join(f"{total[one]:>17}" for one in answers))
-    show(lines)
+    show(table("moved, to", " to ", said, total))
     assert total["undone"] + total["a fault"] >= LEAST_MOVED * sum(total.values())
     for pin, where, told in said:
         assert told != "nothing" or pin == "base" or (pin, where) == ("emitter", "drive"), (pin, where)
