@@ -174,8 +174,9 @@ def review(
     ------
     ProtlintError : a file is missing or wrong, with file, line and column.
     """
-    desk = set_up(limits=limits, parts=parts, parts_list=parts_list, waivers=waivers, rules=rules, on=on)
-    return review_netlist(read_netlist(path, design=design, encoding=encoding), desk)
+    with no_collection():
+        desk = set_up(limits=limits, parts=parts, parts_list=parts_list, waivers=waivers, rules=rules, on=on)
+        return review_netlist(read_netlist(path, design=design, encoding=encoding), desk)
 
 
 def review_netlist(netlist: Netlist, desk: Desk) -> Review:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
-from protlint.board.graph import BoardPart, Element
+from protlint.board.graph import Board, BoardPart, Element
 from protlint.checks.board_case import BoardAnswer, BoardCase
 from protlint.checks.unguarded import LEAD
 from protlint.checks.wiring import wiring_check
@@ -20,31 +20,42 @@ def sense_bypassed(whole: BoardCase) -> Iterator[BoardAnswer]:
     resistor that lies so beside a power device: there nobody can tell whether it was to be sensed."""
     yield from wiring_check(CHECK)(whole)
     told = {part for fault in whole.found.faults for part in fault.parts_ends}
+    claimed = {part for case in whole.cases.values() for part in case.limiter.roles["pass"]}
+    leads: dict[int, list[BoardPart]] = {}
     for resistor in whole.board.elements:
         value = resistor.value
         if resistor.kind != "resistor" or value is None or not 0.0 < value < SENSE_OHM:
             continue
+        ends = set(resistor.terminals.values())
+        if len(ends) > 1:
+            continue
         parts = [whole.board.parts[index] for index in resistor.parts]
-        if len(set(resistor.terminals.values())) == 1 and told.isdisjoint(part.id for part in parts):
-            device = _beside(whole, resistor, parts)
+        if told.isdisjoint(part.id for part in parts):
+            net = ends.pop()
+            if net not in leads:
+                leads[net] = [device for device in _power_devices(whole, net) if device.id not in claimed]
+            device = _beside(whole.board, leads[net], parts)
             if device is not None:
                 yield _note(whole, resistor, parts, device)
 
 
-def _beside(whole: BoardCase, resistor: Element, parts: list[BoardPart]) -> BoardPart | None:
-    """Return the power device in whose lead a resistor lies, if there is one: where a link shorts it that at the end
-    which fewer parts share, of several the one drawn nearest."""
-    board, claimed = whole.board, {part for case in whole.cases.values() for part in case.limiter.roles["pass"]}
-    net = next(iter(resistor.terminals.values()))
-    wired = {pin.net for part in parts for pin in part.part.pins}
-    found = []
+def _power_devices(whole: BoardCase, net: int) -> Iterator[BoardPart]:
+    """Yield the power devices with a lead of the load current on a net."""
+    board = whole.board
     for index, role in board.elements_at[net]:
         element = board.elements[index]
-        part = board.parts[element.parts[0]]
-        if role not in LEAD.get(element.kind, ())[:2] or part.id in claimed or not _is_power(whole, part):
-            continue
-        crowds = [len(board.netlist.nets[pin.net].pins) for pin in part.part.pins if pin.net in wired]
-        found += [(min(crowds), abs(part.index - parts[0].index), part)] if crowds else []
+        if role in LEAD.get(element.kind, ())[:2] and _is_power(whole, board.parts[element.parts[0]]):
+            yield board.parts[element.parts[0]]
+
+
+def _beside(board: Board, devices: list[BoardPart], parts: list[BoardPart]) -> BoardPart | None:
+    """Return the one of some power devices in whose lead a resistor lies, if there is one: where a link shorts it that at
+    the end which fewer parts share, of several the one drawn nearest."""
+    wired = {pin.net for part in parts for pin in part.part.pins}
+    found = []
+    for device in devices:
+        crowds = [len(board.netlist.nets[pin.net].pins) for pin in device.part.pins if pin.net in wired]
+        found += [(min(crowds), abs(device.index - parts[0].index), device)] if crowds else []
     return min(found, key=lambda one: one[:2])[2] if found else None
 
 

@@ -62,7 +62,8 @@ def read_forms(text: str, file: str) -> list[Form]:
 def no_collection() -> Iterator[None]:
     """Hold back garbage collection while many small objects are made, and put it back as it was.
 
-    Reading makes no cycles, so collecting meanwhile only goes over the same objects again and again.
+    Reading makes no cycles, so collecting meanwhile only goes over the same objects again and again. What was made counts as
+    old when it ends: collections after it would else go over all of it once for each younger generation.
     """
     was_enabled = gc.isenabled()
     gc.disable()
@@ -70,6 +71,9 @@ def no_collection() -> Iterator[None]:
         yield
     finally:
         if was_enabled:
+            if gc.get_freeze_count() == 0:  # else a caller keeps objects frozen, which are to stay so
+                gc.freeze()
+                gc.unfreeze()
             gc.enable()
 
 
