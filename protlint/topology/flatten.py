@@ -7,18 +7,21 @@ from dataclasses import dataclass, replace
 from itertools import product
 from typing import Any
 
+from protlint.netlist.forms import Form
 from protlint.topology.mistakes import Mistakes
 from protlint.topology.terms import ANY, Body, Clause, Each, Either, Item, Rule, Shape, ShapeUse, Test
 
 
 @dataclass(frozen=True, slots=True)
 class Resolved:
-    """A rule with what it inherits: the whole of its clauses, united names and net choices, and the rules it builds on."""
+    """A rule with what it inherits: the whole of its clauses, united names, grounded loads and net choices, and
+    the rules it builds on."""
 
     rule: Rule
     body: Body
     bounds: Mapping[str, float]
     unites: tuple[tuple[str, str], ...]
+    grounded: tuple[tuple[str, Form], ...]
     nets: Mapping[str, tuple[tuple[str, tuple[Test, ...]], ...]]
     mirrored: bool
     ancestors: tuple[str, ...]
@@ -40,6 +43,7 @@ class Pattern:
     may: tuple[Clause | Each, ...]
     where: tuple[Test, ...]
     unites: tuple[tuple[str, str], ...]
+    grounded: tuple[str, ...]
     nets: Mapping[str, tuple[tuple[str, tuple[Test, ...]], ...]]
 
 
@@ -65,7 +69,9 @@ def resolve(rules: Mapping[str, Rule], mistakes: Mistakes) -> dict[str, Resolved
         for one in reversed(line):
             rule = rules[one]
             if rule.base is None:
-                resolved[one] = Resolved(rule, rule.body, dict(rule.bounds), rule.unites, dict(rule.nets), rule.mirrored, ())
+                resolved[one] = Resolved(
+                    rule, rule.body, dict(rule.bounds), rule.unites, rule.grounded, dict(rule.nets), rule.mirrored, ()
+                )
             elif rule.base in resolved:
                 resolved[one] = _built_on(resolved[rule.base], rule, mistakes)
     return resolved
@@ -89,7 +95,7 @@ def flatten(resolved: Resolved, shapes: Mapping[str, Shape], mistakes: Mistakes)
         patterns.append(
             Pattern(
                 rule.name, rule.fault, labels, "n", tuple(clauses), tuple(again), body.may, body.where, resolved.unites,
-                resolved.nets,
+                tuple(name for name, _ in resolved.grounded), resolved.nets,
             )
         )  # fmt: skip
     if not resolved.mirrored:
@@ -166,6 +172,7 @@ def _built_on(base: Resolved, rule: Rule, mistakes: Mistakes) -> Resolved:
         body=_renamed(body, names) + rule.body,
         bounds={**base.bounds, **dict(rule.bounds)},
         unites=tuple(pair for pair in unites if pair[0] != pair[1]),
+        grounded=tuple((names.get(name, name), form) for name, form in (*base.grounded, *rule.grounded)),
         nets=renamed,
         mirrored=base.mirrored or rule.mirrored,
         ancestors=(base.rule.name, *base.ancestors),

@@ -154,7 +154,11 @@ def _described(one: Resolved, shapes: Mapping[str, Shape]) -> Described:
         cited=rule.cited,
         used=rule.used,
         drawing=rule.drawing,
-        clauses=(*describe(one.body), *describe_shapes(one.body, shapes)),
+        clauses=(
+            *describe(one.body),
+            *(f"the load is between {name} and ground" for name, _ in one.grounded),
+            *describe_shapes(one.body, shapes),
+        ),
         builds_on=one.ancestors,
         both_polarities=one.mirrored,
         file=rule.file,

@@ -8,9 +8,6 @@ from protlint.topology.questions import leaves
 
 CONTROLS = ("base", "gate")
 
-BOOSTER = "regulator-booster"
-"""The topology whose output is known to lie between ground and its supply."""
-
 
 def is_likely(limiter: Limiter, index: Index, turned: str | None = None) -> bool:
     """Tell whether supplies and connectors stand where such a limiter has them.
@@ -30,13 +27,10 @@ def is_likely(limiter: Limiter, index: Index, turned: str | None = None) -> bool
 def runs_against_supplies(limiter: Limiter, index: Index) -> bool:
     """Tell whether the current of a limiter would have to flow from a lower supply to a higher one.
 
-    Only what is certain counts: both ends of the path are on supplies, or it is a regulator's booster, whose output lies
-    between ground and its supply.
+    Only what is certain counts: both ends of the path are on supplies, or one is and the rule says that the load lies
+    between the other and ground, which is where the current comes from or goes to.
     """
-    bound = {name: index.voltage_V.get(index.net_of[net]) for name, net in limiter.bound.items()}
-    load_V, far_V = bound.get("load"), bound.get("far")
-    if limiter.topology == BOOSTER and load_V is None:
-        load_V = 0.0
+    load_V, far_V = (_end_V(limiter, name, index) for name in ("load", "far"))
     if load_V is None or far_V is None:
         return False
     return load_V < far_V if limiter.polarity == "n" else load_V > far_V
@@ -48,6 +42,13 @@ def is_driven_by_supply(limiter: Limiter, index: Index, turned: str | None = Non
     devices = {one for role, ones in limiter.elements.items() if role.split(".")[0] in ("pass", "driver") for one in ones}
     others = (one for one in devices if turned not in {board.parts[part].id for part in board.elements[one].parts})
     return any(index.terminals[one].get(pin) in index.voltage_V for one in others for pin in CONTROLS)
+
+
+def _end_V(limiter: Limiter, name: str, index: Index) -> float | None:
+    """Return the voltage that the path of a limiter's current ends at, behind the load where the rule says so."""
+    net = limiter.bound.get(name)
+    stated_V = None if net is None else index.voltage_V.get(index.net_of[net])
+    return 0.0 if stated_V is None and name in limiter.grounded else stated_V
 
 
 def _against_the_supplies(polarity: str, load: int | None, far: int | None, index: Index) -> bool:

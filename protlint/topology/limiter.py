@@ -33,6 +33,8 @@ class Limiter:
     roles: Mapping[str, tuple[str, ...]]
     nets: Mapping[str, int | None]
     bound: Mapping[str, int] = field(default_factory=dict)
+    grounded: tuple[str, ...] = ()
+    """The names among ``bound`` whose load lies between them and ground."""
     also_matched: tuple[str, ...] = ()
     """Other topologies that fit the same shunt and gave way, for the survey."""
     places: Mapping[str, str] = field(default_factory=dict)

@@ -29,6 +29,7 @@ def build_limiter(match: Match, index: Index, also: tuple[str, ...], taken: Coll
         roles=roles,
         nets={net: _report_net(match, net, index) for net in NETS},
         bound={name: board_net(match, name, index) for name in match.nets},
+        grounded=match.pattern.grounded,
         also_matched=also,
         places=dict(sorted(places.items())),
     )

@@ -68,7 +68,7 @@ class _Reader:
             return None
         fields: dict[str, Any] = {"name": name, "fault": form.head == "fault", "file": self.file, "form": form}
         lists: dict[str, list[Any]] = {
-            "instead": [], "rejoined": [], "joined": [], "unites": [], "bounds": [], "cure": [],
+            "instead": [], "rejoined": [], "joined": [], "unites": [], "bounds": [], "grounded": [], "cure": [],
         }  # fmt: skip
         readers: dict[str, Callable[[Form], None]] = {
             "says": lambda one: fields.update(says=" ".join(self.texts(one))),
@@ -80,6 +80,7 @@ class _Reader:
             "builds-on": lambda one: self.base(one, fields),
             "bound": lambda one: lists["bounds"].append(self.bound(one)),
             "unites": lambda one: lists["unites"].append(self.pair(one)),
+            "grounded-load": lambda one: lists["grounded"].append(self.grounded_load(one)),
             "nets": lambda one: fields.update(nets=tuple(self.net_choices(one))),
             "instead-of": lambda one: lists["instead"].append(self.instead(one)),
         }
@@ -240,6 +241,12 @@ class _Reader:
     def bound(self, form: Form) -> tuple[str, float] | None:
         role, ohms = self.word(form, 1, "a role"), self.ohms(form, 2)
         return None if role is None or ohms is None else (role, ohms)
+
+    def grounded_load(self, form: Form) -> tuple[str, Form] | None:
+        if len(form) == 2 and isinstance(form[1], Atom):
+            return str(form[1]), form
+        self.say(form, "expected (grounded-load NET)")
+        return None
 
     def ohms(self, form: Form, place: int) -> float | None:
         try:

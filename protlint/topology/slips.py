@@ -30,6 +30,9 @@ def check_pattern(pattern: Pattern, resolved: Resolved, mistakes: Mistakes) -> N
     for test in pattern.where:
         for name in sorted(set(test.nets()) - bound):
             mistakes.say(resolved.rule.form, f"the test {test} asks about {name}, which no clause joins")
+    for name, form in resolved.grounded:
+        if name not in bound:
+            mistakes.say(form, f"the load is to be on {name}, which no clause joins")
     for net, choices in pattern.nets.items() if not pattern.fault else ():
         for name, asked in choices:
             for one in {name, *(name for test in asked for name in test.nets())} - known:

@@ -213,8 +213,8 @@ class Rule:
 
     ``base`` is the rule it builds on or spoils and ``branches`` the either-branches it keeps of that; ``instead`` maps a
     role of the base to what stands in its place; ``bounds`` pairs a role with the ohms its resistance has to stay
-    below; ``nets`` maps a report net to (net name, tests) choices; ``cure`` lists
-    alternatives, of which the first that finds its parts counts.
+    below; ``grounded`` holds the net names whose load lies between them and ground, with where that is said; ``nets`` maps
+    a report net to (net name, tests) choices; ``cure`` lists alternatives, of which the first that finds its parts counts.
     """
 
     name: str
@@ -235,5 +235,6 @@ class Rule:
     body: Body = Body()
     bounds: tuple[tuple[str, float], ...] = ()
     unites: tuple[tuple[str, str], ...] = ()
+    grounded: tuple[tuple[str, Form], ...] = ()
     nets: tuple[tuple[str, tuple[tuple[str, tuple[Test, ...]], ...]], ...] = ()
     cure: tuple[tuple[Cure, ...], ...] = ()

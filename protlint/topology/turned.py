@@ -120,8 +120,9 @@ def _fault(index: Index, piece: Excerpt, attempt: Attempt, group: Group) -> tupl
     pins = [pin for pin in belongs if element.terminals[pin] != belongs[pin]]
     other = attempt.element.kind != element.kind
     if group.moves:
-        name = _name_moved(index, element, pins[0], limiter)
-        says = _sentence_moved(index, part.id, element, pins[0], limiter)
+        far = belongs[LEAD[element.kind][0]]
+        name = _name_moved(index, element, pins[0], far)
+        says = _sentence_moved(index, part.id, element, pins[0], limiter, far)
     else:
         name = _name(attempt.role, pins, other)
         says = _sentence(board, part.id, element, pins, attempt.element.kind if other else None)
@@ -153,21 +154,21 @@ def _name(role: str, pins: Sequence[str], other: bool) -> str:
     return "shunt-polarity-wrong" if other else EXCHANGED.get(frozenset(pins), "shunt-pins-exchanged")
 
 
-def _name_moved(index: Index, element: Element, pin: str, limiter: Limiter) -> str:
+def _name_moved(index: Index, element: Element, pin: str, far: int) -> str:
     """Return the check for a shunt one pin of which is on a wrong net of its limiter."""
     lead, take = LEAD[element.kind]
     if pin == take:
         return "collector-not-on-the-drive"
-    on_far = pin != lead and index.net_of[element.terminals[pin]] == index.net_of[limiter.bound["far"]]
+    on_far = pin != lead and index.net_of[element.terminals[pin]] == index.net_of[far]
     return "base-on-far-end" if on_far else "shunt-pin-misplaced"
 
 
-def _sentence_moved(index: Index, name: str, element: Element, pin: str, limiter: Limiter) -> str:
+def _sentence_moved(index: Index, name: str, element: Element, pin: str, limiter: Limiter, far_end: int) -> str:
     """Say where the pin of a shunt stands, and what the shunt does there."""
     board = index.board
     here = element.terminals[pin]
     with_it = next((one for one, net in element.terminals.items() if one != pin and net == here), None)
-    net, far = board.nets[here].name, board.nets[limiter.bound["far"]].name
+    net, far = board.nets[here].name, board.nets[far_end].name
     lead, take = LEAD[element.kind]
     sense, carrier = ", ".join(limiter.roles["sense"]), ", ".join(limiter.roles["pass"])
     if with_it is None:

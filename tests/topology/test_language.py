@@ -69,6 +69,10 @@ MISTAKES = [
     (replaced("(mirrored)", "(either (only (drive resistor (across drive load))))"), 3, 3, "either needs two or more"),
     (replaced("(mirrored)", "(each 2 many)"), 3, 3, "each needs clauses"),
     (replaced("(mirrored)", "(cure (move shunt.base near))"), 3, 3, "unknown role 'cure'"),
+    (replaced("(mirrored)", "(grounded-load)"), 3, 3, "expected (grounded-load NET)"),
+    (replaced("(mirrored)", '(grounded-load "load")'), 3, 3, "expected (grounded-load NET)"),
+    (replaced("(mirrored)", "(grounded-load load far)"), 3, 3, "expected (grounded-load NET)"),
+    (replaced("(mirrored)", "(grounded-load lode)"), 3, 3, "the load is to be on lode, which no clause joins"),
     (replaced("(output load)", "(outlet load)"), 7, 46, "unknown net 'outlet'"),
     ('(topology bare (says "x") (sense resistor (across a b)))', 1, 1, "nothing to begin the search at"),
     ("(topology)", 1, 1, "expected the rule's name"),
@@ -152,6 +156,32 @@ def test_instead_of_and_builds_on_change_what_is_named_and_keep_the_rest() -> No
         board("npn Q1 OUT B E\nnpn Q2 B T GND\nresistor R1 E GND =1\nresistor R2 E T =100\nresistor R3 E X"), rules
     )
     assert [(one.topology, one.roles["base_stop"]) for one in found.limiters] == [("stopped", ("R2",))]
+
+
+ON_A_SUPPLY = (
+    "npn Q1 OUT B E\nnpn Q2 B E +24V\nresistor R1 E +24V =1\nresistor R2 B CMD =100\nconnector J1 1=OUT 2=GND 3=CMD"
+)
+
+
+@pytest.mark.parametrize("built_on", [False, True], ids=["said", "built on"])
+def test_a_load_to_ground_tells_which_way_the_current_flows(built_on: bool) -> None:
+    """An NPN whose emitter is on +24 V carries nothing out of a load that lies between its collector and ground."""
+    said = replaced("(mirrored)", "(mirrored) (grounded-load load)")
+    more = ['(topology more (builds-on plain) (says "more"))'] if built_on else []
+    for text, limiters, faults in ((SOUND, ["Q1"], []), (said, [], ["pass-polarity-wrong"])):
+        found = find_limiters(board(ON_A_SUPPLY), rules_of(text, *more))
+        assert ([one.id for one in found.limiters], [one.fault for one in found.faults]) == (limiters, faults)
+    assert "the load is between load and ground" in rules_of(said, *more).topologies["more" if built_on else "plain"].clauses
+    assert not any("ground" in clause for clause in rules_of(SOUND).topologies["plain"].clauses)
+
+
+def test_a_rule_may_call_its_nets_anything() -> None:
+    """An emitter astray, on the load instead of ground, is told by a rule that knows no net called far or load."""
+    text = re.sub("far|load|near", lambda word: f"my-{word[0]}", SOUND.split("(nets")[0])
+    rules = rules_of(text + "(nets (drive drive) (sense my-near) (far my-far) (output my-load)))")
+    astray = "npn Q1 OUT B E\nnpn Q2 B E OUT\nresistor R1 E GND =1\nresistor R2 B CMD =100\nconnector J1 1=OUT 2=GND 3=CMD"
+    (fault,) = find_limiters(board(astray), rules).faults
+    assert fault.fault == "shunt-pin-misplaced" and "not on GND, the far end of R1" in fault.says
 
 
 def test_a_users_folder_adds_rules(tmp_path: Path) -> None:
