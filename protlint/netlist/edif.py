@@ -23,16 +23,30 @@ from protlint.netlist.definitions import (
     Net,
     Port,
     PortInstance,
+    PortRef,
     Scope,
     Sheet,
     View,
+    ViewRef,
 )
 from protlint.netlist.forms import Form, FormParser
 from protlint.netlist.grammar import LEVELS, REFUSED, USED, may_hold
 from protlint.netlist.model import Property
 from protlint.netlist.notes import Notes
 from protlint.netlist.properties import Origin, Scales, integer, read_property, read_scales, text_of
-from protlint.netlist.references import by_head, designators, first, items, joined, keyword, member, shorted, view_refs, word
+from protlint.netlist.references import (
+    by_head,
+    designators,
+    first,
+    items,
+    joined,
+    keyword,
+    member,
+    port_refs,
+    shorted,
+    view_refs,
+    word,
+)
 from protlint.sources import InputError
 
 ARRAY_LIMIT = 65_536
@@ -110,17 +124,25 @@ class _Reader(FormParser):
             "external": self._library,
             "design": self._design,
         }
-        super().__init__(text, file=file, reducers=refuse | reducers)
+        # Nearly all references and properties are of these shapes, and they are most of a netlist.
+        shapes: dict[str, Callable[..., object]] = {
+            "(portref ? (instanceref ?))": self._plain_port_ref,
+            "(viewref ? (cellref ? (libraryref ?)))": self._plain_view_ref,
+            "(viewref ? (cellref ?))": self._plain_view_ref,
+            '(property ? (string ""))': self._plain_property,
+        }
+        super().__init__(text, file=file, reducers=refuse | reducers, shapes=shapes)
         self.notes = Notes(self.places)
         self._scales: Scales = {}
         self._property_names: dict[str, str] = {}
+        self._view_refs: dict[tuple[str, str, str | None], ViewRef] = {}
         self._aliases: dict[str, str] = {}
         self._met: set[str] = set()
 
     def read(self) -> tuple[Edif, Notes]:
         """Return the whole file's definitions."""
         forms = self.parse()
-        self.reducers = {}  # they hold the parser, and the parser the text
+        self.reducers, self.shapes = {}, {}  # they hold the parser, and the parser the text
         if any(not isinstance(each, str) or each.strip("\x1a") for each in forms[1:]):  # control-Z closes files of DOS
             offset = getattr(forms[1], "offset", None)
             offset = self.outside() if offset is None else offset
@@ -146,6 +168,25 @@ class _Reader(FormParser):
         self._met.add(keyword)
         keyword = self._meant(keyword)
         return keyword if keyword in USED or keyword in REFUSED else None
+
+    def _plain_port_ref(self, offset: int, port: str, instance: str) -> PortRef:
+        atoms = self.atoms
+        return PortRef(atoms[port], atoms[instance], offset)
+
+    def _plain_view_ref(self, _offset: int, view: str, cell: str, library: str | None = None) -> ViewRef:
+        """Return the reference that an instance makes: the same few on every part, so they are looked up."""
+        words = view, cell, library
+        known = self._view_refs.get(words)
+        if known is None:
+            known = self._view_refs[words] = ViewRef(*words)
+        return known
+
+    def _plain_property(self, offset: int, name: str, text: str) -> Form:
+        """Return a property of a text, as if no ``string`` stood around it."""
+        form = Form(("property", self.atoms[name], text))
+        form.offset = offset
+        form.places = self.places
+        return form
 
     def _meant(self, keyword: str) -> str:
         return self._aliases.get(keyword, keyword)
@@ -231,8 +272,8 @@ class _Reader(FormParser):
 
     def _port_instance(self, form: Form) -> PortInstance:
         found = by_head(form)
-        inner = form[1] if len(form) > 1 else None
-        port, element = member(inner if type(inner) is Form and inner.head == "portref" else form)
+        named = next(port_refs(form), None)
+        port, element = member(form) if named is None else (named.port, named.member)
         return PortInstance(port, element, designators(found.get("designator", ())), self._properties(found, "instance"))
 
     def _instance(self, form: Form) -> Instance:
@@ -242,7 +283,7 @@ class _Reader(FormParser):
             raise form.error(f"an array's designator of more than {NAME_LIMIT} characters, the most that is read")
         return Instance(
             name=name,
-            views=view_refs(found),
+            views=view_refs(form),
             designators=designated,
             properties=self._properties(found, "instance"),
             ports=tuple(map(self._port_instance, found.get("portinstance", ()))),
@@ -341,7 +382,7 @@ class _Reader(FormParser):
         InputError : ports of different names are said to be the same.
         """
         for each in items(form, "portmap"):
-            names = {member(item)[0].removeprefix("&").lower() for item in items(each, "portref")}
+            names = {ref.port.removeprefix("&").lower() for ref in port_refs(each)}
             if len(names) > 1 or first(each, "portgroup") is not None:
                 raise each.error(
                     "a viewMap whose views call their ports differently is not read; export the netlist without it"

@@ -15,6 +15,7 @@ from array import array
 from bisect import bisect_right
 from collections.abc import Callable, Iterator, Mapping, Sequence
 from contextlib import contextmanager
+from functools import cache
 from itertools import accumulate
 from typing import Any
 
@@ -29,7 +30,7 @@ _WHITE = r"[ \t\r\n\f\v]"
 _IN_WORD = r'[^ \t\r\n\f\v()"]'
 _WORD = _IN_WORD + "++"
 _CLOSING = r"[) \t\r\n\f\v]*+"
-_TOKEN = re.compile(
+_ANY = (
     # A list's head, two words and a plain string come with its opening, and so do closings that follow at once: most lists
     # of a netlist are one match, and matches are what scanning costs. Words and closings that are not there match as
     # nothing, which costs less than a group left out; everything else that can stand in a text is the last group.
@@ -37,8 +38,31 @@ _TOKEN = re.compile(
     rf'(?:"([^"%\r\n]*+)"{_WHITE}*+)?({_CLOSING})'
     rf'|(\){_CLOSING}|{_WORD}|"[^"]*+"?)'
 )
+_ANY_GROUPS = 6
+_IN_SHAPE = re.compile(r'[()?]|""|\w+')
 _OUTLINE = re.compile(rf'\({_WHITE}*+((?:{_WORD})?)|\)|"[^"]*+"?|{_WORD}')
 _PERCENT = re.compile(r"%(\d+(?: +\d+)*) *%|%")
+
+
+@cache
+def _tokens(*shapes: str) -> re.Pattern[str]:
+    """Return what scans a text: lists of some shapes in one match each, then whatever else there is, in six groups.
+
+    Behind each shape's own groups is one for the closings that follow the list.
+    """
+    patterns = [f"(?i:{_shape(one)})({_CLOSING})|" for one in shapes]
+    return re.compile("".join(patterns) + _ANY)
+
+
+def _shape(shape: str) -> str:
+    pattern, before = "", ""
+    for piece in _IN_SHAPE.findall(shape):
+        is_word = piece == "?" or piece.isalpha()
+        white = "" if not before else f"{_WHITE}++" if is_word and before != "(" else f"{_WHITE}*+"
+        groups = {"(": r"\(", ")": r"\)", "?": f"({_WORD})", '""': r'"([^"%\r\n]*+)"'}
+        pattern += white + groups.get(piece, piece)
+        before = piece
+    return pattern
 
 
 def read_forms(text: str, file: str) -> list[Form]:
@@ -157,14 +181,24 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
     file : the file's name in errors.
     reducers : a list whose head is a key here is replaced, as it closes, by what the function makes of it; where there are
         any, lists that begin with no word are passed over.
+    shapes : lists of a shape that is a key here are never made: what the function makes of the offset and the words and
+        strings left open stands in their place. A shape is written as the list it stands for, ``(word ? (word ""))``: its
+        words match in any case, ``?`` is any word, ``""`` a plain string.
     """
 
     def __init__(
-        self, text: str, *, file: str | None = None, reducers: Mapping[str, Callable[[Form], object]] | None = None
+        self,
+        text: str,
+        *,
+        file: str | None = None,
+        reducers: Mapping[str, Callable[[Form], object]] | None = None,
+        shapes: Mapping[str, Callable[..., object]] | None = None,
     ) -> None:
         super().__init__(text, nil=None, true=None, false=None)
         self.places = Places(text, file)
         self.reducers = reducers or {}
+        self.shapes = shapes or {}
+        self.atoms = _Table(self.atom)
         self.unpaired: list[tuple[int, str]] = []
         """Strings that hold a per cent sign without its partner, with their offsets."""
 
@@ -207,14 +241,28 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
         """
         heads, reducers, places = _Table(self.head), self.reducers, self.places
         # Where words are made of what stands there, one serves all its places; where not, looking it up only costs.
-        atoms = None if type(self).atom is FormParser.atom else _Table(self.atom)
+        atoms = None if type(self).atom is FormParser.atom else self.atoms
         heads[""] = None if reducers else ""
+        scan = _tokens(*self.shapes)
+        of_shapes = scan.groups - _ANY_GROUPS
+        shaped: dict[int, tuple[int, Callable[..., object]]] = {}
+        begin = 0
+        for shape, make in self.shapes.items():
+            end = begin + shape.count("?") + shape.count('""')
+            shaped[end + 1] = begin, make
+            begin = end + 1
         stack: list[Form] = []
         current = Form()
         skipped = 0  # how many lists are open in the one being passed over, itself included
-        for match in _TOKEN.finditer(self.string):
-            word, first, second, text, closing, other = match.groups()
-            if other is None:
+        for match in scan.finditer(self.string):
+            groups, last = match.groups(), match.lastindex or 0
+            if last <= of_shapes:
+                begin, make = shaped[last]
+                if not skipped:
+                    current.append(make(match.start(), *groups[begin : last - 1]))
+                closings = groups[last - 1].count(")")
+            elif (other := groups[-1]) is None:
+                word, first, second, text, closing = groups[of_shapes:-1]
                 if skipped or (head := heads[word]) is None:
                     skipped += 1
                     if not closing:

@@ -80,8 +80,8 @@ def property_value(form: Form, scale: float = 1.0) -> PropertyValue | None:
 def read_property(form: Form, name: str, origin: Origin, scales: Scales) -> Property:
     """Return a property form as a property; the name is read by the caller, who knows how names are written."""
     line, column = form.places.at(form.offset)
-    if len(form) == 3 and len(form[2]) == 2 and form[2][0] == "string" and type(form[2][1]) is str:  # nearly all are so
-        return Property(name, form[2][1], origin, line, column, None)
+    if len(form) == 3 and type(form[2]) is str:  # nearly all are so
+        return Property(name, form[2], origin, line, column, None)
     unit = next((str(item[1]) for item in form if isinstance(item, Form) and item.head == "unit" and len(item) > 1), None)
     value = property_value(form, scales.get(unit.lower(), 1.0) if unit else 1.0)
     return Property(name, "" if value is None else value, origin, line, column, unit)

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterator, Sequence
+from itertools import chain
 
 from protlint.netlist.definitions import GlobalRef, Joined, PortList, PortRef, Shorted, ViewRef
 from protlint.netlist.forms import Form
@@ -79,6 +80,15 @@ def member(form: Form, position: int = 1) -> tuple[str, tuple[int, ...]]:
     return word(item), indices
 
 
+def port_refs(form: Form) -> Iterator[PortRef]:
+    """Yield the references to ports inside a form."""
+    for item in form:
+        if type(item) is PortRef:
+            yield item
+        elif type(item) is Form and item.head == "portref":
+            yield _port_ref(item)
+
+
 def _port_ref(form: Form) -> PortRef:
     """Return a ``portRef``; the instance may stand behind the bundle that holds the port.
 
@@ -91,16 +101,19 @@ def _port_ref(form: Form) -> PortRef:
     instance: str | None = None
     instance_element: tuple[int, ...] = ()
     inner = _inner(form)
-    if inner is not None and inner.head == "portref":
+    if type(inner) is PortRef:
+        return PortRef(port, inner.instance, form.offset, element, inner.port)
+    if type(inner) is Form and inner.head == "portref":
         bundle = word(inner)
         inner = _inner(inner)
-    if inner is not None and inner.head == "instanceref":
+    if type(inner) is Form and inner.head == "instanceref":
         instance, instance_element = member(inner)
         inner = _inner(inner)
-    elif inner is not None and inner.head == "viewref":
+    elif type(inner) is ViewRef or (type(inner) is Form and inner.head == "viewref"):
         inner = None
     if inner is not None:
-        raise inner.error("this reference inside another reaches into another level of the hierarchy, which is not read")
+        message = "this reference inside another reaches into another level of the hierarchy, which is not read"
+        raise form.places.error(message, form.offset if isinstance(inner, ViewRef) else inner.offset)
     return PortRef(port, instance, form.offset, element, bundle, instance_element)
 
 
@@ -108,18 +121,15 @@ def joined(form: Form) -> Joined:
     """Return what the ``joined`` of a net joins."""
     ends: list[PortRef | PortList | GlobalRef] = []
     for item in form:
-        if type(item) is not Form or not item:
-            continue
-        if item[0] == "portref":
-            inner = item[2] if len(item) == 3 and type(item[2]) is Form and len(item[2]) == 2 else ("", "")
-            if inner[0] == "instanceref" and type(inner[1]) is type(item[1]) is str:
-                ends.append(PortRef(item[1], inner[1], item.offset))  # nearly all are plain ones
-            else:
+        if type(item) is PortRef:  # nearly all are
+            ends.append(item)
+        elif type(item) is Form and item:
+            if item[0] == "portref":
                 ends.append(_port_ref(item))
-        elif item[0] == "portlist":
-            ends += _port_list(item)
-        elif item[0] == "globalportref":
-            ends.append(GlobalRef(word(item), item.offset))
+            elif item[0] == "portlist":
+                ends += _port_list(item)
+            elif item[0] == "globalportref":
+                ends.append(GlobalRef(word(item), item.offset))
     return tuple(ends)
 
 
@@ -131,32 +141,31 @@ def shorted(form: Form) -> Shorted:
     InputError : it names something else than ports.
     """
     _no_global(form)
-    ends: list[PortRef | PortList] = []
-    for item in items(form, "portref", "portlist"):
-        ends += [_port_ref(item)] if item[0] == "portref" else _port_list(item)
-    return tuple(ends)
+    return (*port_refs(form), *(ref for item in items(form, "portlist") for ref in _port_list(item)))
 
 
-def view_refs(found: Mapping[str, Sequence[Form]]) -> tuple[ViewRef, ...]:
-    """Return the views an instance offers, the first that leads somewhere being meant, out of its lists by head."""
-    refs = []
-    listed = [item for each in found.get("viewlist", ()) for item in items(each, "viewref")]
-    for item in (*found.get("viewref", ()), *found.get("cellref", ()), *listed):
-        cell = item if item[0] == "cellref" else first(item, "cellref")
-        library = None if cell is None else first(cell, "libraryref")
-        refs.append(
-            ViewRef(
-                view=None if item is cell else word(item),
-                cell=None if cell is None else word(cell),
-                library=None if library is None else word(library),
+def view_refs(form: Form) -> tuple[ViewRef, ...]:
+    """Return the views an instance offers, the first that leads somewhere being meant."""
+    refs: list[ViewRef] = []
+    for item in chain(form, *items(form, "viewlist")):
+        if type(item) is ViewRef:  # nearly all are
+            refs.append(item)
+        elif type(item) is Form and item.head in ("viewref", "cellref"):
+            cell = item if item[0] == "cellref" else first(item, "cellref")
+            library = None if cell is None else first(cell, "libraryref")
+            refs.append(
+                ViewRef(
+                    view=None if item is cell else word(item),
+                    cell=None if cell is None else word(cell),
+                    library=None if library is None else word(library),
+                )
             )
-        )
     return tuple(refs)
 
 
 def _port_list(form: Form) -> list[PortList]:
     _no_global(form)
-    refs = tuple(map(_port_ref, items(form, "portref")))
+    refs = tuple(port_refs(form))
     return [PortList(refs)] if refs else []
 
 
@@ -166,5 +175,5 @@ def _no_global(form: Form) -> None:
         raise stray.error("a globalPortRef is read in the joined of a net only")
 
 
-def _inner(form: Form) -> Form | None:
-    return next((item for item in form[2:] if type(item) is Form), None)
+def _inner(form: Form) -> Form | PortRef | ViewRef | None:
+    return next((item for item in form[2:] if type(item) in (Form, PortRef, ViewRef)), None)
