@@ -33,7 +33,15 @@ SPELLINGS: dict[str, tuple[str, ...]] = {
 
 _LOOSE = ("comment", "name", "device", "component", "component name", "part type")
 _ABSENT = ("dnp", "dni", "dnf", "do not populate", "do not fit", "no pop", "nopop", "no stuff", "nostuff", "not fitted")
-_PRESENT = ("fitted", "populate", "populated", "mounted", "assembled", "stuffed", "install")
+_PRESENT = (
+    "fit", "fitted", "populate", "populated", "mount", "mounted", "place", "placed", "assemble", "assembled", "stuff",
+    "stuffed", "install", "installed",
+)  # fmt: skip
+_OPTION = (
+    "bom", "bom option", "bom status", "variant", "option", "assembly", "assembly option", "population", "mounting",
+    "placement", "status", "part status",
+)  # fmt: skip
+"""Properties that may hold anything, a mark of a part that is not fitted among others."""
 _YES, _NO = ("1", "true", "yes", "y", "x"), ("0", "false", "no", "n")
 _DIMENSIONS = {"resistor": "resistance", "capacitor": "capacitance", "inductor": "inductance", "zener": "voltage"}
 _TYPE_NUMBER = re.compile(r"(?=[^\s]*[0-9])(?=[^\s]*[A-Za-z])[A-Za-z0-9][\w./+#-]{2,39}", re.ASCII)
@@ -74,6 +82,7 @@ def file_habits(netlist: Netlist, limits: Limits) -> Habits:
         names[attribute] = tuple(dict.fromkeys(key for name in spelled for key in by_plain.get(name, ())))
     names["absent"] = tuple(key for name in _ABSENT for key in by_plain.get(name, ()))
     names["present"] = tuple(key for name in _PRESENT for key in by_plain.get(name, ()))
+    names["option"] = tuple(key for name in _OPTION for key in by_plain.get(name, ()))
     found = {
         attribute: {written[key].most_common(1)[0][0]: written[key].total() for key in names[attribute]}
         for attribute in ATTRIBUTES
@@ -135,7 +144,7 @@ def part_number(
 @lru_cache(maxsize=4096)
 def plain_name(name: str) -> str:
     """Return a property's name or a heading as names are compared: folded, with single blanks."""
-    return " ".join(re.split(r"[\s._-]+", name.strip().casefold()))
+    return " ".join(filter(None, re.split(r"[\s._-]+", name.casefold())))
 
 
 def _texts(part: Part, attribute: str, habits: Habits, listed: Mapping[str, str]) -> Iterator[tuple[str, str]]:
@@ -237,15 +246,17 @@ def _bare(text: str, attribute: str) -> float | None:
 
 
 def _fitted(part: Part, habits: Habits) -> bool:
-    if not (habits.names["absent"] or habits.names["present"]):
+    if not (habits.names["absent"] or habits.names["present"] or habits.names["option"]):
         return True
 
     def said(key: str) -> str:
         item = part.properties.get(key)
         return "" if item is None else str(item.value).strip().casefold()
 
-    absent = any(said(key) in _YES or (said(key) and plain_name(said(key)) in _ABSENT) for key in habits.names["absent"])
-    return not absent and not any(said(key) in _NO for key in habits.names["present"])
+    if any(said(key) in _YES for key in habits.names["absent"]) or any(said(key) in _NO for key in habits.names["present"]):
+        return False
+    marks = (plain_name(said(key)) for name in ("absent", "present", "option") for key in habits.names[name])
+    return not any(mark in _ABSENT for mark in marks)
 
 
 def _comma(netlist: Netlist, names: tuple[str, ...]) -> tuple[Comma, str]:
@@ -261,7 +272,8 @@ def _comma(netlist: Netlist, names: tuple[str, ...]) -> tuple[Comma, str]:
                 hints[hint] += 1
     deciding = votes if votes["decimal"] != votes["field"] else hints
     if deciding["decimal"] == deciding["field"]:
-        return "field", "no value text tells what a comma between digits means; it is taken to part fields"
+        told = "as many value texts say one as the other of" if deciding["decimal"] else "no value text tells"
+        return "field", f"{told} what a comma between digits means; it is taken to part fields"
     comma: Comma = "decimal" if deciding["decimal"] > deciding["field"] else "field"
     means = {"decimal": "is a decimal mark", "field": "parts fields"}
     other = {"decimal": "field", "field": "decimal"}[comma]
@@ -276,10 +288,12 @@ def _vote(text: str) -> tuple[str, str]:
     if not re.search(r"[0-9],[0-9]", text):
         return "", "field" if re.search(r"[^\W\d],[0-9]", text) else ""
     reads = {
-        comma: [read_value(text, dimension, comma=comma).value for dimension in ("resistance", "capacitance", "inductance")]
+        comma: [read_value(text, dimension, comma=comma) for dimension in ("resistance", "capacitance", "inductance")]
         for comma in ("decimal", "field")
     }
-    decimal, field_ = (any(value is not None for value in reads[comma]) for comma in ("decimal", "field"))
+    decimal, field_ = (any(read.value is not None for read in reads[comma]) for comma in ("decimal", "field"))
+    if any(read.chip_size for read in reads["field"]):
+        return "field", "field"  # nobody writes a value to so many places
     if decimal and not field_ and not re.fullmatch(r"[1-9][0-9]{0,2},[0-9]{3}", text.strip()):
         return "decimal", "decimal"
     if field_ and not decimal:

@@ -60,7 +60,7 @@ _UNITS = {
     "inductance": r"(?:H|HY|гн)",
     "voltage": r"(?:V|VDC|в)",
 }
-_SPELLED = {"capacitance": {"MFD": -6}}
+_SPELLED = {"capacitance": {"MFD": -6}}  # microfarad in either case, never milli
 _TOLERANCES = {
     "E": 5e-5, "L": 1e-4, "P": 2e-4, "W": 5e-4, "B": 1e-3, "C": 2.5e-3, "D": 5e-3, "F": 0.01, "G": 0.02, "H": 0.03,
     "J": 0.05, "K": 0.10, "M": 0.20, "N": 0.30, "Z": 0.80,
@@ -91,10 +91,17 @@ _FIELDS = (
     ("voltage", re.compile(rf"(?P<number>[0-9]+)V(?P<rest>[0-9]+){_END}", re.I)),
     ("passed", re.compile(rf"[±+-]*{_NUM}\s*(?:ppm(?:/(?:K|°?C))?|[mμu]?A|[kM]?Hz|°C){_END}", re.I)),
 )
-_WORD = re.compile(r"[^\W\d_][^\s,;|()]*")
+_WORD = re.compile(r"[^\W\d_](?:[^\s,;|()/]|/(?![0-9.]))*")  # a stroke in front of a digit begins another field
 _OTHER = re.compile(r"[^\s,;|()]+")
 _SEPARATORS = re.compile(r"[\s,;|/()\[\]{}@*~=:]+|(?<!^)[+-]")
-_HEADS = frozenset(("res", "resistor", "cap", "capacitor", "ind", "inductor", "choke", "coil", "zener", "smd", "chip"))
+_HEADS = frozenset(
+    (
+        "res", "resistor", "cap", "capacitor", "ind", "inductor", "choke", "coil", "zener", "smd", "chip",
+        "c0g", "cog", "np0", "npo", "x5r", "x6s", "x7r", "x7s", "y5v", "z5u",
+    )
+)  # fmt: skip
+"""Words in front of a value that take nothing from it: what the part is, and classes of ceramic (EIA-198)."""
+_SIZED = re.compile(rf"(?:smd|[rcl])?-?({'|'.join(sorted(CHIP_SIZES))})", re.I)
 _MAYBE_THOUSANDS = re.compile(r"(?<![0-9.])[1-9][0-9]{0,2},[0-9]{3}(?![0-9])")
 
 
@@ -131,9 +138,9 @@ def _read(text: str, dimension: str, comma: str) -> ValueText:
         shown = re.sub(r"(^|(?<=[0-9])),(?=[0-9])", ".", shown)
     fields = _fields(shown, dimension)
     values = [field for field in fields if field.kind == "value"]
-    sizes = [field.text for field in fields if field.kind == "value" and field.text in CHIP_SIZES]
-    if len(values) > 1:
-        values = [field for field in values if field.text not in CHIP_SIZES]
+    sizes = [size for field in fields if field.kind in ("value", "word") and (size := _chip_size(field.text))]
+    if len(values) > 1 or any(field.kind == "word" and _chip_size(field.text) for field in fields):
+        values = [field for field in values if not _chip_size(field.text)]
     tolerance = next((field.number for field in fields if field.kind == "tolerance"), None)
     letter = next((field.letter for field in values if field.letter), None) or next(
         (field.text for field in fields if field.kind == "letter"), None
@@ -151,10 +158,16 @@ def _read(text: str, dimension: str, comma: str) -> ValueText:
         tolerance=tolerance,
         power_W=next((field.number for field in fields if field.kind == "power"), None),
         voltage_V=next((field.number for field in fields if field.kind == "voltage"), None),
-        chip_size=sizes[0] if sizes and (len(sizes) == 1) and (not values or values[0].text != sizes[0]) else None,
+        chip_size=sizes[0] if len(sizes) == 1 and (not values or _chip_size(values[0].text) is None) else None,
         fitted=fitted,
         unreadable=reason if fitted else None,
     )
+
+
+def _chip_size(text: str) -> str | None:
+    """Return the chip size that a field names (``0603``, ``R0603``, ``SMD0805``), or None."""
+    found = _SIZED.fullmatch(text)
+    return found[1] if found else None
 
 
 @dataclass(frozen=True, slots=True)
@@ -224,13 +237,13 @@ def _value_patterns(dimension: str) -> tuple[re.Pattern[str], ...]:
     ohms = "E" if dimension == "resistance" else "(?!)"  # 22E is 22 ohm in some houses; 4E7 may be a power of ten
     unit, tolerance = f"(?i:{_UNITS[dimension]})", f"(?P<letter>[{''.join(_TOLERANCES)}])"
     return (
+        re.compile(rf"(?P<number>{_NUM})\s*(?P<power>(?i:{spelled})){_END}"),
         re.compile(rf"(?P<whole>[0-9]{{1,4}})(?P<power>{letters})(?P<rest>[0-9]{{1,3}})(?:{unit}|{tolerance})?{_END}"),
         re.compile(rf"(?P<whole>)(?P<power>{letters})(?P<rest>[0-9]{{1,4}})(?:{unit}|{tolerance})?{_END}"),
         re.compile(
             rf"(?P<number>{_NUM}(?:[eE][+-]?[0-9]{{1,2}}(?=\s*{unit}))?)\s*(?P<power>{letters})?(?:(?<!\d)|\s*)?{unit}{_END}"
         ),
         re.compile(rf"(?P<number>{_NUM})\s*(?P<power>{letters}){tolerance}?{_END}"),
-        re.compile(rf"(?P<number>{_NUM})\s*(?P<power>(?i:{spelled})){_END}"),
         re.compile(rf"(?P<number>{_NUM}){ohms}{_END}"),
         re.compile(rf"(?P<number>{_NUM}(?:[eE][+-][0-9]{{1,2}})?){_END}"),
     )
@@ -282,11 +295,11 @@ def _why_not(shown: str, fields: list[_Field], values: list[_Field], dimension: 
     value, first = values[0], next(field for field in fields if field.kind not in ("mark", "passed"))
     if strange:
         return f'"{strange[0]}" beside the value is not understood'
-    if first.kind == "word" and first.text.casefold() not in _HEADS:
+    if first.kind == "word" and first.text.casefold() not in _HEADS and not _chip_size(first.text):
         return f'"{first.text}" in front is no {dimension}'
     if value.number is None or value.number == float("inf"):
         return "too large"
-    if dimension == "resistance" and value.bare and value.text in CHIP_SIZES and value.text.startswith("0"):
+    if dimension == "resistance" and _chip_size(value.text) and not (value.bare and value.text[0] in "12"):
         return "a chip size, no resistance"
     if dimension != "resistance" and value.bare:
         return "a number without a unit or a prefix"

@@ -19,6 +19,8 @@ TWO = ("1", "2")
         (["0,1мк", "4,7k", "10K"], "decimal"),
         (["10K,1%", "33,0402", "100,1%"], "field"),
         (["33,0402", "10K,1%"], "field"),
+        (["33,0402"], "field"),
+        (["33,0402", "4,7k", "10K,1%"], "field"),
         (["4,7k", "2,2u", "33,1%"], "decimal"),
         (["10K", "4K7"], "field"),
         (["1,000"], "field"),
@@ -34,7 +36,8 @@ def test_what_a_comma_means_is_decided_once_per_file_and_said(values: list[str],
 def test_one_file_reads_one_text_as_another_does_not() -> None:
     part = placed("R1", "RES", TWO, {"VALUE": "33,0402"})
     in_fields = file_habits(board_of(part, placed("R2", "RES", TWO, {"VALUE": "10K,1%"})), Limits())
-    in_decimals = file_habits(board_of(part, placed("R2", "RES", TWO, {"VALUE": "4,7k"})), Limits())
+    others = [placed(f"R{number}", "RES", TWO, {"VALUE": text}) for number, text in enumerate(("4,7k", "2,2M"), 2)]
+    in_decimals = file_habits(board_of(part, *others), Limits())
     assert read_values(part, "resistor", in_fields).value == 33.0
     assert read_values(part, "resistor", in_fields).footprint == "0402"
     assert read_values(part, "resistor", in_decimals).value == pytest.approx(33.0402)
@@ -99,6 +102,10 @@ def test_a_part_that_states_no_value_is_not_unreadable() -> None:
         {"VALUE": "10K", "DNP": True},
         {"VALUE": "10K", "Fitted": "No"},
         {"VALUE": "10K", "POPULATE": False},
+        {"VALUE": "10K", "Populate": "DNP"},
+        {"VALUE": "10K", "MOUNT": "no"},
+        {"VALUE": "10K", "BOM": "DNP"},
+        {"VALUE": "10K", "Variant": "Not Fitted"},
     ],
 )
 def test_marks_of_a_part_that_is_not_fitted(properties: dict[str, PropertyValue]) -> None:
@@ -108,7 +115,10 @@ def test_marks_of_a_part_that_is_not_fitted(properties: dict[str, PropertyValue]
     assert read.unreadable is None
 
 
-@pytest.mark.parametrize("properties", [{"DNP": "0"}, {"DNP": ""}, {"Fitted": "yes"}, {"Fitted": ""}, {"DNP": False}])
+@pytest.mark.parametrize(
+    "properties",
+    [{"DNP": "0"}, {"DNP": ""}, {"Fitted": "yes"}, {"Fitted": ""}, {"DNP": False}, {"BOM": "no"}, {"Variant": "X"}],
+)
 def test_marks_that_say_nothing_against_a_part(properties: dict[str, PropertyValue]) -> None:
     part = placed("R1", "RES", TWO, {"VALUE": "10K", **properties})
     assert read_values(part, "resistor", file_habits(board_of(part), Limits())).fitted
