@@ -1,8 +1,8 @@
-"""Is there a limiter that nobody sees because the pins of its transistors cannot be told apart."""
+"""Is there a limiter that nobody sees, because the pins of its transistors cannot be told apart or too much lies around."""
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterator
+from collections.abc import Collection, Iterator, Sequence
 
 from protlint.board.graph import Board, Element
 from protlint.board.kinds import UNTOLD_TRANSISTOR
@@ -10,6 +10,7 @@ from protlint.checks.board_case import BoardAnswer, BoardCase, Unanswered
 from protlint.findings import Finding, NotChecked, WorkingLine
 from protlint.solve.surroundings import CONTROL
 from protlint.toml.text import toml_key
+from protlint.topology.excerpt import MOST
 
 SENSE_OHM = 100.0
 """Sense resistors of limiters are smaller; common practice of the trade."""
@@ -19,6 +20,12 @@ MOST_NAMED = 6
 
 CROWDED = 64
 """A net with more on it is a supply, whatever it is called."""
+
+
+def hidden_limiters(whole: BoardCase) -> Iterator[BoardAnswer]:
+    """Yield what :func:`hidden_by_unknown_pins` finds, and the transistors around which the search had to end early."""
+    yield from hidden_by_unknown_pins(whole)
+    yield from _hidden_in_a_crowd(whole)
 
 
 def hidden_by_unknown_pins(whole: BoardCase) -> Iterator[BoardAnswer]:
@@ -60,9 +67,22 @@ def _unplaced(board: Board, suspected: Collection[str]) -> Iterator[Unanswered]:
         elif part.kind_from == UNTOLD_TRANSISTOR:
             wanted.setdefault(f"[{toml_key(name)}] kind, in a file for --parts", []).append(part.id)
     for key, parts in wanted.items():
-        more = f" and {len(parts) - MOST_NAMED} more" if len(parts) > MOST_NAMED else ""
-        whose = f"{', '.join(parts[:MOST_NAMED])}{more}"
-        yield Unanswered(None, NotChecked(f"whether a limiter is at {whose}", key))
+        yield Unanswered(None, NotChecked(f"whether a limiter is at {_named(parts)}", key))
+
+
+def _hidden_in_a_crowd(whole: BoardCase) -> Iterator[Unanswered]:
+    """Yield, by the crowded net that ended the search, the transistors that may be drawn wrong and were not fully tried."""
+    told = {part for fault in whole.found.faults for parts in fault.group.roles.values() for part in parts}
+    for net, parts in whole.found.unsearched.items():
+        left = [part for part in parts if part not in told]
+        key = f"[supply] {toml_key(whole.board.nets[net].name)}, if that is one: a search ends at {MOST} parts"
+        if left:
+            yield Unanswered(None, NotChecked(f"whether a limiter drawn wrong is at {_named(left)}", key))
+
+
+def _named(parts: Sequence[str]) -> str:
+    more = f" and {len(parts) - MOST_NAMED} more" if len(parts) > MOST_NAMED else ""
+    return f"{', '.join(parts[:MOST_NAMED])}{more}"
 
 
 def _unknown(element: Element) -> bool:

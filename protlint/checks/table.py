@@ -81,7 +81,7 @@ BOARD_CHECKS: Mapping[str, Callable[[BoardCase], Iterable[BoardAnswer]]] = {
     "second-road": second_road.second_road,
     "halves-unequal": sets.halves_unequal,
     "channels-unequal": sets.channels_unequal,
-    "pins-unknown": hidden.hidden_by_unknown_pins,
+    "pins-unknown": hidden.hidden_limiters,
 }
 """Asked of the whole board once, when every limiter has been asked."""
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Set
 from dataclasses import dataclass, replace
 
 from protlint.board.graph import Board, Element
@@ -18,11 +18,16 @@ MOST = 150
 
 @dataclass(frozen=True, slots=True)
 class Excerpt:
-    """A piece of a board: ``elements`` and ``nets`` hold, by index on the piece, the indices on the whole board."""
+    """A piece of a board: ``elements`` and ``nets`` hold, by index on the piece, the indices on the whole board.
+
+    ``crowded`` is, where the piece had to end before its reach, the most crowded net it grew over, by index on the whole
+    board.
+    """
 
     board: Board
     elements: tuple[int, ...]
     nets: tuple[int, ...]
+    crowded: int | None = None
 
     @property
     def key(self) -> tuple[object, ...]:
@@ -51,17 +56,22 @@ def excerpt(board: Board, core: Iterable[int]) -> Excerpt:
     chosen = set(core)
     edge = {net for one in chosen for net in board.elements[one].terminals.values()}
     seen = set(edge)
-    for _ in range(REACH):
+    walked: list[int] = []
+    crowded: int | None = None
+    for left in reversed(range(REACH)):
         onward: set[int] = set()
         for net in sorted(edge):
             if is_rail(board, net):
                 continue
+            walked.append(net)
             for element, _ in board.elements_at[net]:
                 chosen.add(element)
                 onward |= set(board.elements[element].terminals.values()) - seen
             seen |= onward
         edge = onward
         if len(chosen) > MOST:
+            if left and any(_leads_on(board, net, chosen) for net in edge):
+                crowded = max(walked, key=lambda net: (len(board.elements_at[net]), -net))
             break
     elements = tuple(sorted(chosen))
     joined = {net for one in elements for net in board.elements[one].terminals.values()}
@@ -71,12 +81,16 @@ def excerpt(board: Board, core: Iterable[int]) -> Excerpt:
     made = []
     for index, whole in enumerate(board.elements[one] for one in elements):
         made.append(replace(whole, index=index, terminals={role: number[net] for role, net in whole.terminals.items()}))
-    return Excerpt(_board(small, made), elements, nets)
+    return Excerpt(_board(small, made), elements, nets, crowded)
 
 
 def is_rail(board: Board, net: int) -> bool:
     """Tell whether a net is a supply, or as crowded as one."""
     return board.nets[net].supply is not None or len(board.elements_at[net]) > CROWDED
+
+
+def _leads_on(board: Board, net: int, chosen: Set[int]) -> bool:
+    return not is_rail(board, net) and any(element not in chosen for element, _ in board.elements_at[net])
 
 
 def _board(board: Board, elements: list[Element]) -> Board:

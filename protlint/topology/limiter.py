@@ -76,3 +76,5 @@ class Found:
     """Complementary halves on one output, by limiter id: the N half, the P half."""
     sets: tuple[tuple[str, ...], ...] = ()
     """Like channels, by limiter id."""
+    unsearched: Mapping[int, tuple[str, ...]] = field(default_factory=dict)
+    """Transistors that may be drawn wrong and around which not all was looked at, by the most crowded net there."""

@@ -29,7 +29,7 @@ def find_limiters(board: Board, rules: Rules) -> Found:
         doubtful = doubtful_among(fitting, index)
         limiters = [one for one in fitting if one not in doubtful]
         faults = find_faults(index, [match for match in matches if match.pattern.fault], rules, limiters)
-        tried = find_turned(index, limiters, lambda piece: _sound_on(piece, rules))
+        tried, unsearched = find_turned(index, limiters, lambda piece: _sound_on(piece, rules))
         kept, told = explained(doubtful, settled(faults, tried, index), index)
         limiters = [one for one in fitting if one in kept or one not in doubtful]
     return Found(
@@ -38,6 +38,7 @@ def find_limiters(board: Board, rules: Rules) -> Found:
         remarks=tuple(remarks),
         pairs=find_pairs(limiters),
         sets=find_sets(board, limiters),
+        unsearched=unsearched,
     )
 
 

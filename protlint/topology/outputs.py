@@ -45,5 +45,9 @@ def find_on_board(board: Board, rules: Rules) -> tuple[Found, Mapping[str, Board
         remarks=(*found.remarks, *sorted(said)),
         pairs=find_pairs(limiters),
         sets=find_sets(board, limiters),
+        unsearched={
+            net: tuple(dict.fromkeys((*found.unsearched.get(net, ()), *freed.unsearched.get(net, ()))))
+            for net in sorted({*found.unsearched, *freed.unsearched})
+        },
     )
     return again, {one.id: free for one in making}

@@ -7,7 +7,7 @@ stands right but for one pin, that pin is moved to where it may belong.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from itertools import permutations
 
@@ -47,14 +47,18 @@ class Attempt:
     limiter: Limiter
 
 
-def find_turned(index: Index, limiters: Sequence[Limiter], sound: Finder) -> tuple[FaultMatch, ...]:
+def find_turned(
+    index: Index, limiters: Sequence[Limiter], sound: Finder
+) -> tuple[tuple[FaultMatch, ...], Mapping[int, tuple[str, ...]]]:
     """Return a fault for each group of transistors of which one, turned or a pin moved, makes a sound limiter; best first.
+    And the transistors where none was found, though not all around them was looked at, by the most crowded net there.
 
     ``sound`` finds the sound limiters of a board.
     """
     board = index.board
     tried: dict[tuple[object, ...], list[Attempt]] = {}
     found: list[tuple[tuple[object, ...], FaultMatch]] = []
+    unsearched: dict[int, dict[int, None]] = {}
     for group in suspected_groups(index, limiters):
         piece = excerpt(board, (*group.core, *group.shunts, *group.beside))
         core, shunts = ([piece.elements.index(one) for one in some] for some in (group.core, sorted(group.shunts)))
@@ -64,10 +68,14 @@ def find_turned(index: Index, limiters: Sequence[Limiter], sound: Finder) -> tup
         key = (piece.key, tuple(core), tuple(shunts), moves)
         if key not in tried:
             tried[key] = list(_attempts(piece, core, shunts, moves, sound))
+        if piece.crowded is not None and not tried[key]:
+            parts = (board.elements[one].parts[0] for one in group.core)
+            unsearched.setdefault(piece.crowded, {}).update(dict.fromkeys(parts))
         for attempt in tried[key]:
             found.append(_fault(index, piece, attempt, group))
     found.sort(key=lambda one: one[0])
-    return tuple(fault for _, fault in found)
+    named = {net: tuple(board.parts[part].id for part in sorted(parts)) for net, parts in sorted(unsearched.items())}
+    return tuple(fault for _, fault in found), named
 
 
 def _attempts(
