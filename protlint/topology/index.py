@@ -60,6 +60,7 @@ class Index:
             self.by_kind.setdefault(kind, []).append(element)
         self.mask = self._masks()
         self._open: dict[int, bool] = {}
+        self._transistors: dict[int, tuple[int, ...]] = {}
         self._between: dict[tuple[int, int], list[int]] | None = None
         self._by_pin: dict[int, dict[tuple[str, str], list[int]]] = {}
 
@@ -85,6 +86,16 @@ class Index:
             kind = self.kind
             known = self.flag[net] == FREE and all(kind[element] not in CONTROLLED for element, _ in self.at[net])
             self._open[net] = known
+        return known
+
+    def transistors(self, net: int) -> tuple[int, ...]:
+        """Return the elements on a net that control a current and have all their pins."""
+        known = self._transistors.get(net)
+        if known is None:
+            kind, terminals = self.kind, self.terminals
+            found = dict.fromkeys(one for one, _ in self.at[net] if kind[one] in CONTROLLED)
+            known = tuple([one for one in found if PINS[kind[one]] <= terminals[one].keys()])
+            self._transistors[net] = known
         return known
 
     def on_pin(self, net: int, kind: str, pin: str) -> Sequence[int]:

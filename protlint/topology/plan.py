@@ -144,13 +144,13 @@ class Planner:
             slots = {name: entry.names.index(name) for name in task.tests[place].nets()}
             answer = by_flags(task.tests[place], {name: flags[slot] for name, slot in slots.items()})
             if answer is None:
-                asked = tuple(one for one in entry.asked if one != place)
+                asked = tuple([one for one in entry.asked if one != place])
                 test = task.tests[place].renamed({name: str(slot) for name, slot in slots.items()})
-                return AskStep(test), entry._replace(asked=asked)
+                return AskStep(test), Entry(task, entry.names, entry.found, entry.left, asked, bound, free, crowd)
             if not answer:
                 return None
         if len(waiting) < len(entry.asked):
-            entry = entry._replace(asked=tuple(waiting))
+            entry = Entry(task, entry.names, entry.found, entry.left, tuple(waiting), bound, free, crowd)
         if not entry.left:
             return entry
         best: tuple[int, ...] | None = None
@@ -253,7 +253,7 @@ def _width(clause: Clause) -> int:
 
 def _apart(task: Task, name: str, names: Sequence[str]) -> tuple[int, ...]:
     alike = task.alike.get(name, ())
-    return tuple(slot for slot, other in enumerate(names) if other not in alike)
+    return tuple([slot for slot, other in enumerate(names) if other not in alike])
 
 
 def _whole(task: Task, names: Sequence[str]) -> Entry:
@@ -263,5 +263,6 @@ def _whole(task: Task, names: Sequence[str]) -> Entry:
 
 def _after(entry: Entry, place: int, names: Sequence[str]) -> Entry:
     """Return the entry with one more clause found."""
-    left = tuple([one for one in entry.left if one != place])
-    return entry._replace(names=tuple(names), found=(*entry.found, place), left=left)
+    task, _, found, left, asked, bound, free, crowd = entry
+    left = tuple([one for one in left if one != place])
+    return Entry(task, tuple(names), (*found, place), left, asked, bound, free, crowd)

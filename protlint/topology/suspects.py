@@ -261,8 +261,7 @@ def _beside(index: Index, limiter: Limiter, taken: Set[int]) -> Iterator[Group]:
 
 def _free(index: Index, net: int, taken: Set[int]) -> list[int]:
     """Return the transistors on a net that belong to no limiter and have all their pins."""
-    found = dict.fromkeys(element for element, _ in index.at[net] if index.kind[element] in CONTROLLED)
-    return [one for one in found if one not in taken and PINS[index.kind[one]] <= index.terminals[one].keys()]
+    return [one for one in index.transistors(net) if one not in taken]
 
 
 def _through(index: Index, nets: Iterable[int], steps: int) -> dict[int, None]:
