@@ -26,7 +26,7 @@ FLOORS = (
     ("limits",),
     ("findings",),
     ("toml",),
-    ("quantities", "sources"),
+    ("quantities", "sources", "joining"),
 )
 """Top to bottom; a module imports from its own room and from floors below."""
 

@@ -8,6 +8,8 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
+from protlint.joining import joined
+
 Tree = object
 """A board part's index, or ``("bank" | "chain", (tree, ...))``."""
 
@@ -38,24 +40,13 @@ class Resistance:
         return self.kind, tuple(member.tree for member in members)
 
 
-def unite(count: int, joined: Iterable[Sequence[int]]) -> list[int]:
+def unite(count: int, groups: Iterable[Sequence[int]]) -> list[int]:
     """Return, for each of ``count`` nets, the lowest index among the nets it is joined with.
 
-    Each member of ``joined`` lists nets that are one.
+    Each of ``groups`` lists nets that are one.
     """
-    root = list(range(count))
-
-    def find(net: int) -> int:
-        while root[net] != net:
-            root[net] = root[root[net]]
-            net = root[net]
-        return net
-
-    for nets in joined:
-        for other in nets[1:]:
-            first, second = sorted((find(nets[0]), find(other)))
-            root[second] = first
-    return [find(net) for net in range(count)]
+    lowest = joined(groups)
+    return [lowest.get(net, net) for net in range(count)]
 
 
 def merge_resistances(resistances: Sequence[Resistance], passable: Sequence[bool]) -> list[Resistance]:

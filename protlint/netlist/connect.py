@@ -10,6 +10,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from typing import NamedTuple
 
+from protlint.joining import root
 from protlint.netlist.definitions import GlobalRef, Instance, Name, Net, PortRef, Scope
 from protlint.netlist.hierarchy import Block
 from protlint.netlist.notes import Notes
@@ -35,14 +36,6 @@ def wire(block: Block, notes: Notes, budget: Budget, design_wide: Globals) -> Wi
         for net in sheet.nets:
             wirer.join(net, instances)
     return wirer.finish()
-
-
-def root(parents: list[int], member: int) -> int:
-    """Return the member that stands for all that ``member`` is united with, shortening the way there."""
-    while parents[member] != member:
-        parents[member] = parents[parents[member]]
-        member = parents[member]
-    return member
 
 
 class Placement(NamedTuple):

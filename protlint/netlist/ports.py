@@ -5,6 +5,7 @@ from __future__ import annotations
 from bisect import bisect_right
 from collections.abc import Iterable, Iterator, Sequence
 
+from protlint.joining import root
 from protlint.netlist.definitions import Name, Port, Scope
 from protlint.netlist.forms import Places
 
@@ -194,9 +195,5 @@ class Shorts:
                     yield first, node
 
     def _root(self, bit: int) -> int:
-        parents = self._parents
-        parents.setdefault(bit, bit)
-        while parents[bit] != bit:
-            parents[bit] = parents[parents[bit]]
-            bit = parents[bit]
-        return bit
+        self._parents.setdefault(bit, bit)
+        return root(self._parents, bit)

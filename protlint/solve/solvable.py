@@ -5,8 +5,9 @@ Each ``check_`` function raises :class:`CircuitError` with the reason where it c
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 
+from protlint.joining import joined
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.parameters import CircuitError
 
@@ -49,22 +50,6 @@ def check_ends(circuit: Circuit) -> None:
         raise CircuitError(f"{missing[0]} is not among the circuit's devices")
 
 
-def _joined(pairs: Iterable[tuple[str, str]]) -> dict[str, str]:
-    """Return each node's representative after joining the pairs."""
-    parent: dict[str, str] = {}
-
-    def root(node: str) -> str:
-        parent.setdefault(node, node)
-        while parent[node] != node:
-            parent[node] = parent[parent[node]]
-            node = parent[node]
-        return node
-
-    for a, b in pairs:
-        parent[root(a)] = root(b)
-    return {node: root(node) for node in list(parent)}
-
-
 def check_links(
     conducting: Sequence[Device], models: dict[str, dict[str, float]], known: Sequence[str], circuit: Circuit
 ) -> None:
@@ -74,12 +59,12 @@ def check_links(
         for device in conducting
         if device.kind == "inductor" or (device.kind == "resistor" and models[device.name]["R"] <= LINK_AT_MOST_OHM)
     ]
-    joined = _joined(links)
+    lowest = joined(links)
     by_root: dict[str, str] = {}
     for node in known:
-        if node not in joined:
+        if node not in lowest:
             continue
-        other = by_root.setdefault(joined[node], node)
+        other = by_root.setdefault(lowest[node], node)
         if other == node:
             continue
         both_held = other in circuit.held and node in circuit.held
@@ -98,11 +83,11 @@ def check_floating(conducting: Sequence[Device], unknown: Sequence[str], known: 
     paths += [(node, known[0]) for node in known]
     if driven is not None:
         paths.append((driven, known[0]))
-    joined = _joined(paths)
-    anchored = joined[known[0]]
+    lowest = joined(paths)
+    anchored = lowest[known[0]]
     active = {
         node: device.name for device in conducting if device.kind not in ("resistor", "inductor") for node in device.nodes
     }
     for node in unknown:
-        if joined.get(node) != anchored and node in active:
+        if lowest.get(node) != anchored and node in active:
             raise CircuitError(f"net {node} at {active[node]} hangs on nothing: no path holds its voltage")

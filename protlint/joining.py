@@ -1,0 +1,42 @@
+"""What is one because something joins it: nets by links, bits of ports by what shorts them."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from typing import Protocol, TypeVar
+
+T = TypeVar("T", int, str)
+
+
+class Parents(Protocol[T]):
+    """For each member another one that it is joined with, or itself: a list by number, or a dict."""
+
+    def __getitem__(self, member: T, /) -> T: ...
+
+    def __setitem__(self, member: T, parent: T, /) -> None: ...
+
+
+def root(parents: Parents[T], member: T) -> T:
+    """Return the member that stands for all that ``member`` is joined with, shortening the way there."""
+    while parents[member] != member:
+        parents[member] = parents[parents[member]]
+        member = parents[member]
+    return member
+
+
+def joined(groups: Iterable[Sequence[T]]) -> dict[T, T]:
+    """Return, for each member of some groups, the lowest of all that the groups join it with.
+
+    Each group lists members that are one.
+    """
+    parents: dict[T, T] = {}
+    for group in groups:
+        for member in group:
+            parents.setdefault(member, member)
+        for other in group[1:]:
+            one, another = root(parents, group[0]), root(parents, other)
+            if one < another:
+                parents[another] = one
+            else:
+                parents[one] = another
+    return {member: root(parents, member) for member in parents}
