@@ -109,7 +109,8 @@ class _Wirer:
     def place(self, instance: Instance, block: Block, instances: Scope[_Placed]) -> None:
         """Add what an instance places; of two with one identifier the first is what references mean."""
         instances.add(instance.name.identifier, _Placed(instance, block, len(self.placements)))
-        self.budget.spend(instance.name.width - 1, instance.offset)
+        if instance.name.dimensions:
+            self.budget.spend(instance.name.width - 1, instance.offset)
         if not block.is_part and block.contents is None and block.ports.width > 1 and not block.shorts:
             self.notes.add("ripper", instance.offset, f"{instance.name.text}, a {block.cell.name.text}")
         for element in range(instance.name.width) if instance.name.dimensions else (None,):
@@ -118,7 +119,8 @@ class _Wirer:
     def join(self, net: Net, instances: Scope[_Placed]) -> None:
         """Add a net: a node, or for an array of nets one each element, with all that is joined to it."""
         width = net.name.width
-        self.budget.spend(width - 1, net.offset)
+        if width > 1:
+            self.budget.spend(width - 1, net.offset)
         start = len(self.parents)
         self.parents.extend(range(start, start + width))
         self.nets.append((start, net))
@@ -226,7 +228,8 @@ class _Wirer:
             if placement.block.known is not None:
                 for bit in sorted(placement.pins.keys() - placement.block.known):
                     self._note_strange(placement, bit)
-            self.budget.spend(len(placement.block.globals), placement.instance.offset)
+            if placement.block.globals:
+                self.budget.spend(len(placement.block.globals), placement.instance.offset)
             for bit, ref in placement.block.globals.items():
                 placement.pins[bit] = (self.own[self._lead_out(bit, ref)], ref.offset)
             if placement.block.shorts:
@@ -244,9 +247,10 @@ class _Wirer:
             self.block.shorts.add(bits)
         if self.block.known is not None:
             self.block.known.update(ports)
-        for placement in self.placements:
-            for bit, (node, offset) in placement.pins.items():
-                placement.pins[bit] = (number[node], offset)
+        if number != list(range(len(number))):  # where nothing was united, as in most flat netlists, they stay as they are
+            for placement in self.placements:
+                for bit, (node, offset) in placement.pins.items():
+                    placement.pins[bit] = (number[node], offset)
         twice = []
         for each in self.on_two_nets.values():
             first, second = (number[node] for node in each.nodes)
