@@ -33,7 +33,7 @@ def name_cell(wiring: Wiring, notes: Notes, places: Places, *, designated: bool)
     labels = [_label(placement, notes, designated=designated) for placement in wiring.placements]
     groups = _groups(wiring.placements, labels)
     together = {member for members in groups for member in members}
-    known: dict[tuple[int, int], _PortFacts] = {}
+    known: dict[int, dict[int, _PortFacts]] = {}
     pins = [
         () if label is None or placement.block.contents is not None
         else _pins(placement, label, known, places, sectioned=position in together or label.section is not None)
@@ -47,6 +47,8 @@ def name_cell(wiring: Wiring, notes: Notes, places: Places, *, designated: bool)
         sections = [label.section for member in members if (label := labels[member]) is not None]
         alike = _are_sections(sections, [pins[member] for member in members], listed)
         (packages if alike else twice).append(members)
+        if not alike and (label := labels[members[0]]) is not None:
+            notes.add("namesakes", wiring.placements[members[1]].instance.offset, label.designator or label.id)
     return NamedCell(_unique(labels, packages, pins), tuple(pins), tuple(packages), tuple(twice))
 
 
@@ -88,11 +90,12 @@ def _label(placement: Placement, notes: Notes, *, designated: bool) -> Label | N
 
 
 def _groups(placements: Sequence[Placement], labels: Sequence[Label | None]) -> list[tuple[int, ...]]:
-    """Return the positions of the parts that share a designator; an array counts as its first element."""
+    """Return the positions of the parts that share a designator; an array under one counts as its first element."""
     members: dict[str, list[int]] = {}
     for position, (placement, label) in enumerate(zip(placements, labels, strict=True)):
-        if label is not None and label.designator is not None and placement.block.is_part and not placement.element:
-            members.setdefault(label.designator, []).append(position)
+        if label is not None and label.designator is not None and placement.block.is_part:
+            if not placement.element or label.id == label.designator:
+                members.setdefault(label.designator, []).append(position)
     return [tuple(positions) for positions in members.values() if len(positions) > 1]
 
 
@@ -146,7 +149,7 @@ def _lowest(pins: Sequence[Pin]) -> tuple[int, int]:
 
 
 def _pins(
-    placement: Placement, label: Label, known: dict[tuple[int, int], _PortFacts], places: Places, *, sectioned: bool
+    placement: Placement, label: Label, known: dict[int, dict[int, _PortFacts]], places: Places, *, sectioned: bool
 ) -> tuple[Pin, ...]:
     """Return the connected pins of a placement in the order of its cell's ports."""
     block = placement.block
@@ -155,10 +158,11 @@ def _pins(
         for bit in block.ports.find(each.port, each.member) or ():
             said.setdefault(bit, each)
     result = []
+    of_block = known.setdefault(id(block), {})
     for bit, (node, offset) in sorted(placement.pins.items()):
-        facts = known.get((id(block), bit))
+        facts = of_block.get(bit)
         if facts is None:
-            facts = known[id(block), bit] = _port_facts(block, bit)
+            facts = of_block[bit] = _port_facts(block, bit)
         line, column = places.at(offset)
         here = said.get(bit) if said else None
         if here is None and facts.called is not None:

@@ -181,6 +181,19 @@ def test_one_designator_on_parts_of_different_cells() -> None:
     assert [part.id for part in netlist.parts] == ["K1#1", "K1#2", "Q1#1", "Q1#2"]
     assert [(each.designator, each.parts) for each in netlist.duplicate_designators] == [("Q1", (2, 3))]
     assert netlist.facts["sections"] == "2 parts are sections of 1 package"
+    assert [(each.line, each.count) for each in netlist.warnings] == [(7, 1)] and "Q1" in netlist.warnings[0].message
+
+
+def test_a_designator_of_an_arrays_later_element_that_stands_elsewhere_too() -> None:
+    """An array under one designator is one package; of elements with designators of their own each counts."""
+    contents = placed("(array ROW 3)", "R", '(designator "R7 R8 R9")') + placed("I1", "R", '(designator "R9")')
+    contents += placed("(array PAIR 2)", "R", '(designator "RN1")')
+    netlist = read(board(contents))
+    assert [part.id for part in netlist.parts] == ["R7", "R8", "R9#1", "R9#2", "RN1[0]", "RN1[1]"]
+    assert [(each.designator, each.parts) for each in netlist.duplicate_designators] == [("R9", (2, 3))]
+    assert ["R9" in each.message for each in netlist.warnings] == [True]
+    within = read(board(placed("(array ROW 2)", "R", '(designator "R7 R7")')))
+    assert [(each.designator, each.parts) for each in within.duplicate_designators] == [("R7", (0, 1))]
 
 
 def test_a_part_whose_cell_joins_pins_inside() -> None:
