@@ -72,6 +72,8 @@ def _designators(flat: Flat) -> str:
         source = "no designator in the file: the names of the instances are taken"
     else:
         source = f"{len(flat.parts) - without} stated in the file"
+        in_properties = sum(cell.in_properties for cell in flat.cells)
+        source += f", {in_properties} of them in a property" if in_properties else ""
     return f"{source}, {_counted(without, 'part')} without one" if without else source
 
 

@@ -11,7 +11,7 @@ from protlint.netlist.connect import Node, TwoNets, Wiring, wire
 from protlint.netlist.definitions import Edif
 from protlint.netlist.hierarchy import Block, Directory, choose_top
 from protlint.netlist.model import DuplicateDesignator, Net, Part, Pin, PinOnTwoNets, Property
-from protlint.netlist.naming import name_cell
+from protlint.netlist.naming import designators_in_properties, name_cell, stated_designators
 from protlint.netlist.notes import Notes
 
 SIZE_LIMIT = 4_000_000
@@ -34,7 +34,7 @@ def flatten(edif: Edif, notes: Notes, *, design: str | None = None) -> Flat:
     top, name, chosen_by = choose_top(directory, notes, design)
     order = [block for block in directory.bottom_up(top) if block.contents is not None]
     designated = any(
-        child.is_part and any(instance.designators) for block in order for instance, child in directory.placed(block)
+        child.is_part and any(stated_designators(instance)) for block in order for instance, child in directory.placed(block)
     )
     cells: dict[int, UnfoldedCell] = {}
     sizes: dict[int, _Size] = {}
@@ -101,6 +101,14 @@ def _unfolded(wiring: Wiring, edif: Edif, notes: Notes, *, designated: bool) -> 
         duplicates=duplicates,
         packages=[len(members) for members in named.packages],
         shorted=sum(placement.block.is_part and bool(placement.block.shorts) for placement in wiring.placements),
+        in_properties=sum(
+            placement.block.is_part
+            and label is not None
+            and label.designator is not None
+            and not any(placement.instance.designators)
+            and bool(designators_in_properties(placement.instance))
+            for placement, label in zip(wiring.placements, named.labels, strict=True)
+        ),
     )
 
 
@@ -182,7 +190,8 @@ class UnfoldedCell:
 
     ``items`` holds its parts as they would be if it were the whole board, what else it places, and None for what only joins
     nets; the other positions are positions in it. ``packages`` holds the number of sections of each
-    package, ``shorted`` how many parts join nets inside, because their cell says that some of its ports are one.
+    package, ``shorted`` how many parts join nets inside, because their cell says that some of its ports are one,
+    ``in_properties`` how many have their designator in a property.
     """
 
     block: Block
@@ -193,6 +202,7 @@ class UnfoldedCell:
     duplicates: Sequence[tuple[str, tuple[int, ...]]]
     packages: Sequence[int]
     shorted: int
+    in_properties: int
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,8 +1,9 @@
 """What the parts of a cell are called: reference designators, sections of packages, pin names and pin numbers.
 
 The designator is the ``designator`` of an instance; of two, the first is the section (``Q1A``), the second its package
-(``Q1``). Where a file uses no designators at all, the instance's own name is the designator; where it does, a part without
-one has none, and neither has one that ends in a question mark, as parts have that nobody has numbered yet.
+(``Q1``). An instance that has no such form may have it in a property (``RefDes``). Where a file uses no designators at all,
+the instance's own name is the designator; where it does, a part without one has none, and neither has one that ends in a
+question mark, as parts have that nobody has numbered yet.
 
 Ids are unique within the cell: the section where one is given, else the designator, else the instance's name; what would
 then be the same twice gets ``#1``, ``#2`` behind it.
@@ -26,6 +27,30 @@ from protlint.netlist.notes import Notes
 
 _PIN_NAME = ("name", "pin name", "pin_name", "pinname")
 """What a pin's property that names it is called, where its port has only a number."""
+
+
+_REFERENCE = frozenset({"refdes", "referencedesignator", "partreference", "reference", "designator"})
+"""What a property that holds an instance's designator is called, blanks and marks left out: practice of exporters, from
+memory. The standard's own place is the ``designator`` form."""
+
+_DESIGNATOR = re.compile(r"[^\W\d_][^\s?]{0,30}(?:[0-9][^\s?]{0,8}|\?)")
+"""A designator: one word that begins with a letter and has a number, or a question mark in its place."""
+
+
+def stated_designators(instance: Instance) -> tuple[str, ...]:
+    """Return the texts that name an instance: of its designators, or else of properties that hold one."""
+    return instance.designators if any(instance.designators) else designators_in_properties(instance)
+
+
+def designators_in_properties(instance: Instance) -> tuple[str, ...]:
+    """Return the texts of an instance's properties that hold its designator."""
+    texts = [str(each.value) for each in instance.properties if _is_reference(each.name)]
+    return tuple(dict.fromkeys(text for text in map(str.strip, texts) if _DESIGNATOR.fullmatch(text)))
+
+
+@lru_cache(maxsize=1024)
+def _is_reference(name: str) -> bool:
+    return re.sub(r"[\W_]", "", name.lower()) in _REFERENCE
 
 
 def name_cell(wiring: Wiring, notes: Notes, places: Places, *, designated: bool) -> NamedCell:
@@ -54,7 +79,7 @@ def name_cell(wiring: Wiring, notes: Notes, places: Places, *, designated: bool)
 
 def _section_and_package(instance: Instance, notes: Notes) -> tuple[str | None, str | None]:
     """Return the section and the package that an instance's designators name, None where they name none."""
-    texts = [text for text in instance.designators if text]
+    texts = [text for text in stated_designators(instance) if text]
     if len(texts) < 2:
         return None, texts[0] if texts else None
     for section, package in ((texts[0], texts[1]), (texts[1], texts[0])):
@@ -93,9 +118,10 @@ def _groups(placements: Sequence[Placement], labels: Sequence[Label | None]) -> 
     """Return the positions of the parts that share a designator; an array under one counts as its first element."""
     members: dict[str, list[int]] = {}
     for position, (placement, label) in enumerate(zip(placements, labels, strict=True)):
-        if label is not None and label.designator is not None and placement.block.is_part:
-            if not placement.element or label.id == label.designator:
-                members.setdefault(label.designator, []).append(position)
+        if label is None or label.designator is None or not placement.block.is_part:
+            continue
+        if not placement.element or label.id == label.designator:
+            members.setdefault(label.designator, []).append(position)
     return [tuple(positions) for positions in members.values() if len(positions) > 1]
 
 

@@ -24,7 +24,7 @@ KINDS = {
     "block pin": "a block's port on two nets, which are taken as one: {}",
     "property": "one property with two values; the first counts: {}",
     "designators": "a part with two unlike designators; the first counts: {}",
-    "namesakes": "one designator on parts that nothing shows to be sections of one package; each goes by a number behind it: {}",
+    "namesakes": "one designator on parts that nothing shows to be sections of one package; they are numbered behind it: {}",
 }
 """Every kind of warning of the reading, and its message; the braces take what the first case was."""
 

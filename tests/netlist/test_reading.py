@@ -196,6 +196,36 @@ def test_a_designator_of_an_arrays_later_element_that_stands_elsewhere_too() -> 
     assert [(each.designator, each.parts) for each in within.duplicate_designators] == [("R7", (0, 1))]
 
 
+@pytest.mark.parametrize("name", ["RefDes", "REF_DES", '(rename REFERENCE "Part Reference")', "Reference", "Designator"])
+def test_a_designator_in_a_property_counts_where_no_form_states_one(name: str) -> None:
+    """Practice of exporters, from memory; the standard's own place is the designator form, which comes first."""
+    contents = (
+        placed("I1", "R", f'(property {name} (string "R7"))')
+        + placed("I2", "R", f'(designator "R8") (property {name} (string "R9"))')
+        + placed("I3", "R", f'(property {name} (string "see note 4"))')
+        + placed("I4", "R", f'(designator "") (property {name} (string "R?"))')
+        + placed("I5", "R", '(property Name (string "R10"))')
+    )
+    netlist = read(board(contents))
+    assert [part.designator for part in netlist.parts] == ["R7", "R8", None, None, None]
+    assert [part.id for part in netlist.parts] == ["R7", "R8", "I3", "R?", "I5"]
+    assert netlist.facts["designators"] == "2 stated in the file, 1 of them in a property, 3 parts without one"
+
+
+def test_a_section_and_its_package_in_properties() -> None:
+    both = '(property Reference (string "Q1")) (property (rename PR "Part Reference") (string "Q1{}"))'
+    contents = placed("I1", "R", both.format("A")) + placed("I2", "R", both.format("B"))
+    netlist = read(board(contents))
+    assert [(part.id, part.designator) for part in netlist.parts] == [("Q1A", "Q1"), ("Q1B", "Q1")]
+    assert netlist.duplicate_designators == ()
+
+
+def test_a_designator_in_a_property_of_the_cell_is_no_parts_own() -> None:
+    cells = '(cell R (cellType GENERIC) (property RefDes (string "R?")) (view V (viewType NETLIST) (interface (port A))))'
+    netlist = read(board(placed("R7", "R") + placed("R8", "R"), cells=cells))
+    assert [part.designator for part in netlist.parts] == ["R7", "R8"]
+
+
 def test_a_part_whose_cell_joins_pins_inside() -> None:
     jumper = cell("J", interface="(port A) (port B) (port C) (joined (portRef A) (portRef B))")
     contents = placed("J1", "J") + net("N1", "J1.A") + net("N2", "J1.B") + net("N3", "J1.C")
