@@ -19,6 +19,10 @@ from protlint.topology.terms import ANY, MANY, PINS, Clause
 MOST_KEPT = 64
 """Plans kept for boards of different make-up."""
 
+_Rank = tuple[bool, bool, bool, int, int]
+"""Of a clause: whether it asks for a part at least, for one at most, or may be a path of nothing; how far it may lead; how
+many parts of its kinds there are."""
+
 LONG = 3
 """Where a long walk between two bound nets ranks: after what leads only a little way, before a long walk into the open."""
 
@@ -71,7 +75,7 @@ class Planner:
 
     def __init__(self, tasks: Sequence[Task], sizes: Mapping[str, int]) -> None:
         self.sizes = sizes
-        self._numbers: dict[int, tuple[Task, tuple[int, ...]]] = {}
+        self._ranks: dict[int, tuple[Task, tuple[_Rank, ...]]] = {}
         self.starts: dict[tuple[object, ...], Node] = {}
         self.root = self._root(tasks)
 
@@ -83,10 +87,9 @@ class Planner:
         """
         starts = []
         for task in tasks:
-            numbers = self._counted(task)
-            needed = (number for clause, number in zip(task.clauses, numbers, strict=True) if _is_needed(clause))
-            anchors = [(numbers[place], place) for place, clause in enumerate(task.clauses) if is_anchor(clause)]
-            if anchors and min(needed) > 0:
+            ranks = self._ranked(task)
+            anchors = [(ranks[place][-1], place) for place, clause in enumerate(task.clauses) if is_anchor(clause)]
+            if anchors and all(number > 0 for needed, *_, number in ranks if needed):
                 starts.append((min(anchors)[0], task, anchors))
         node = Node()
         chosen: set[tuple[str, ...]] = set()
@@ -109,9 +112,7 @@ class Planner:
         node = Node()
         every = (*before, *flags)
         for entry in entries:
-            if flags:
-                entry = entry.with_flags(entry.names[len(before) :], flags)
-            chosen = self._next(entry, every)
+            chosen = self._next(entry.with_flags(len(before), flags) if flags else entry, every)
             if isinstance(chosen, Entry):
                 node.done.append(chosen)
             elif chosen is not None:
@@ -135,44 +136,44 @@ class Planner:
 
     def _next(self, entry: Entry, flags: Sequence[int]) -> tuple[Step, Entry] | Entry | None:
         """Return the next step and the entry after it, the entry itself where it is fulfilled, None where it cannot be."""
-        task, bound, free, crowd = entry.task, entry.bound, entry.free, entry.crowd
+        task, names, found, left, asked, bound, free, crowd = entry
         waiting = []
-        for place in entry.asked:
+        for place in asked:
             if task.asks[place] & ~bound:
                 waiting.append(place)
                 continue
-            slots = {name: entry.names.index(name) for name in task.tests[place].nets()}
-            answer = by_flags(task.tests[place], {name: flags[slot] for name, slot in slots.items()})
+            test = task.tests[place]
+            slots = {name: names.index(name) for name in task.asked_of[place]}
+            answer = by_flags(test, {name: flags[slot] for name, slot in slots.items()})
             if answer is None:
-                asked = tuple([one for one in entry.asked if one != place])
-                test = task.tests[place].renamed({name: str(slot) for name, slot in slots.items()})
-                return AskStep(test), Entry(task, entry.names, entry.found, entry.left, asked, bound, free, crowd)
+                later = tuple([one for one in asked if one != place])
+                step = AskStep(test.renamed({name: str(slot) for name, slot in slots.items()}))
+                return step, Entry(task, names, found, left, later, bound, free, crowd)
             if not answer:
                 return None
-        if len(waiting) < len(entry.asked):
-            entry = Entry(task, entry.names, entry.found, entry.left, tuple(waiting), bound, free, crowd)
-        if not entry.left:
+        if len(waiting) < len(asked):
+            entry = Entry(task, names, found, left, tuple(waiting), bound, free, crowd)
+        if not left:
             return entry
         best: tuple[int, ...] | None = None
-        numbers = self._counted(task)
-        for place in entry.left:
-            join = task.joins[place]
+        joins, ranks = task.joins, self._ranked(task)
+        for place in left:
+            join = joins[place]
             known = join & bound
             if not known:
                 continue
-            count = task.clauses[place].count
+            needed, single, empty, width, number = ranks[place]
             flag = FREE if known & free else CROWD if known & crowd else RAIL
             if known == join:
-                if flag == RAIL and _is_needed(task.clauses[place]) and join & (join - 1):
+                if flag == RAIL and needed and join & (join - 1):
                     return None  # what lies between two supplies belongs to anybody and nobody
                 # Whether something is between two nets is asked first, unless it takes a long walk or a crowd to tell.
-                at_once = flag == FREE and (count is None or count[1] == 1)
-                option = (0 if at_once else 1, flag, 0 if at_once else LONG, numbers[place], place)
+                option = (0, flag, 0, number, place) if single and flag == FREE else (1, flag, LONG, number, place)
             elif flag != RAIL:
-                option = (1, flag, _width(task.clauses[place]), numbers[place], place)
-            elif count is not None and count[0] == 0:
+                option = (1, flag, width, number, place)
+            elif empty:
                 # A rail is not walked, but a path of nothing needs no walk.
-                option = (2, flag, 0, numbers[place], place)
+                option = (2, flag, 0, number, place)
             else:
                 continue
             if best is None or option < best:
@@ -232,16 +233,15 @@ class Planner:
         step = PathStep(clause.kinds, bound[first], end, least, min(most, MANY), direction, clause.until_driven, apart)
         return step, _after(entry, place, names)
 
-    def _counted(self, task: Task) -> tuple[int, ...]:
-        known = self._numbers.get(id(task))
+    def _ranked(self, task: Task) -> tuple[_Rank, ...]:
+        known = self._ranks.get(id(task))
         if known is None:
-            numbers = tuple(sum(self.sizes.get(kind, 0) for kind in clause.kinds) for clause in task.clauses)
-            known = self._numbers[id(task)] = task, numbers
+            known = self._ranks[id(task)] = task, tuple([self._rank(clause) for clause in task.clauses])
         return known[1]
 
-
-def _is_needed(clause: Clause) -> bool:
-    return clause.count is None or clause.count[0] > 0
+    def _rank(self, clause: Clause) -> _Rank:
+        least, most = clause.count or (1, 1)
+        return least > 0, most == 1, least == 0, _width(clause), sum([self.sizes.get(kind, 0) for kind in clause.kinds])
 
 
 def _width(clause: Clause) -> int:

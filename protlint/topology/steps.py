@@ -1,7 +1,7 @@
 """The steps a search takes, and the tasks it takes them for.
 
-A plan has tens of thousands of steps and entries: they are named tuples, which are made and compared several times as fast as
-frozen dataclasses. Steps of two kinds are never equal, as no two kinds have equally many fields.
+A plan has tens of thousands of steps and entries: they are named tuples, which are made and compared several times as fast
+as frozen dataclasses. Steps of two kinds are never equal, as no two kinds have equally many fields.
 """
 
 from __future__ import annotations
@@ -65,8 +65,8 @@ Step = PartStep | BridgeStep | PathStep | AskStep
 class Task:
     """What a search is to fulfil: clauses and early tests.
 
-    ``bits`` gives every name a bit; ``joins`` holds for each clause, ``asks`` for each test, the bits of its names.
-    ``alike`` gives for a name those that may stand for the same net.
+    ``bits`` gives every name a bit; ``joins`` holds for each clause, ``asks`` for each test, the bits of its names, which
+    for a test are ``asked_of``. ``alike`` gives for a name those that may stand for the same net.
     """
 
     number: int
@@ -75,6 +75,7 @@ class Task:
     bits: Mapping[str, int]
     joins: tuple[int, ...]
     asks: tuple[int, ...]
+    asked_of: tuple[tuple[str, ...], ...]
     alike: Mapping[str, frozenset[str]]
 
 
@@ -93,18 +94,18 @@ class Entry(NamedTuple):
     free: int = 0
     crowd: int = 0
 
-    def with_flags(self, names: Sequence[str], flags: Sequence[int]) -> Entry:
-        """Return the entry with some of its names bound to nets of these flags."""
-        bound, free, crowd = self.bound, self.free, self.crowd
-        bits = self.task.bits
-        for name, flag in zip(names, flags, strict=True):
+    def with_flags(self, bound_before: int, flags: Sequence[int]) -> Entry:
+        """Return the entry with the names behind those bound before bound to nets of these flags."""
+        task, names, found, left, asked, bound, free, crowd = self
+        bits = task.bits
+        for name, flag in zip(names[bound_before:], flags, strict=True):
             bit = bits.get(name, 0)
             bound |= bit
             if flag == FREE:
                 free |= bit
             elif flag == CROWD:
                 crowd |= bit
-        return Entry(self.task, self.names, self.found, self.left, self.asked, bound, free, crowd)
+        return Entry(task, names, found, left, asked, bound, free, crowd)
 
 
 def make_task(
@@ -141,6 +142,7 @@ def make_task(
         bits=bits,
         joins=tuple(_union(bits, nets) for nets in joined),
         asks=tuple(_union(bits, nets) for nets in asked),
+        asked_of=tuple(asked),
         alike={name: frozenset(members) for name, members in alike.items()},
     )
 

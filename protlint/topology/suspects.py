@@ -41,6 +41,7 @@ STRING = 4
 class Group:
     """Elements of which one may stand turned round: ``core`` are those to try, ``shunts`` what the limiter's shunt is.
 
+    Where the shunt itself is to be tried, its lead belongs on the net ``far`` and its control on one of ``taps``.
     ``beside`` are what they stand with: a pass device, or, ``in_limiter``, a sound limiter that lacks only one of the core.
     Where there are ``moves``, the shunt stands as it should but for one pin, which belongs on one of these nets.
     """
@@ -49,6 +50,8 @@ class Group:
     shunts: frozenset[int]
     beside: tuple[int, ...]
     in_limiter: bool = False
+    far: int | None = None
+    taps: frozenset[int] = frozenset()
     moves: tuple[tuple[str, int], ...] = ()
 
 
@@ -68,7 +71,14 @@ def suspected_groups(index: Index, limiters: Sequence[Limiter]) -> Iterator[Grou
             for core, shunts in _turned_apart(index, far, near, carrier, is_right, apart, taken | {carrier}):
                 if (core, shunts, carrier) not in seen:
                     seen.add((core, shunts, carrier))
-                    yield Group(core, frozenset(shunts), (carrier,))
+                    of_shunt = core == shunts
+                    yield Group(
+                        core,
+                        frozenset(shunts),
+                        (carrier,),
+                        far=far if of_shunt else None,
+                        taps=frozenset(taps) if of_shunt else frozenset(),
+                    )
         for carrier in (one for one, is_right in carriers if is_right):
             for shunt, moves in _with_a_pin_astray(index, taps, far, carrier, taken | {carrier}):
                 if moves:

@@ -7,7 +7,7 @@ stands right but for one pin, that pin is moved to where it may belong.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Collection, Iterable, Iterator, Mapping, Sequence, Set
 from dataclasses import dataclass, replace
 from itertools import permutations
 
@@ -17,7 +17,7 @@ from protlint.topology.faults import STOPS
 from protlint.topology.index import Index
 from protlint.topology.likely import is_likely
 from protlint.topology.limiter import FaultMatch, Limiter
-from protlint.topology.suspects import LEAD, SENSE_OHM, Group, suspected_groups
+from protlint.topology.suspects import CONTROL, LEAD, SENSE_OHM, Group, suspected_groups
 from protlint.topology.terms import MIRROR, PINS
 
 Finder = Callable[[Board], Sequence[Limiter]]
@@ -65,9 +65,17 @@ def find_turned(
         moves = None
         if group.moves:
             moves = tuple((pin, piece.nets.index(net)) for pin, net in group.moves if net in piece.nets)
-        key = (piece.key, tuple(core), tuple(shunts), moves)
+        leads = _on_piece(index, piece, () if group.far is None else (group.far,))
+        controls = _on_piece(index, piece, group.taps)
+        key = (piece.key, tuple(core), tuple(shunts), moves, leads, controls)
         if key not in tried:
-            tried[key] = list(_attempts(piece, core, shunts, moves, sound))
+            ways = [
+                turned
+                for element in (piece.board.elements[one] for one in core)
+                for turned in (_turned(element) if moves is None else _moved(element, moves))
+                if group.far is None or _stands(turned, leads, controls)
+            ]
+            tried[key] = list(_attempts(piece, ways, shunts, sound))
         if piece.crowded is not None and not tried[key]:
             parts = (board.elements[one].parts[0] for one in group.core)
             unsearched.setdefault(piece.crowded, {}).update(dict.fromkeys(parts))
@@ -78,18 +86,24 @@ def find_turned(
     return tuple(fault for _, fault in found), named
 
 
-def _attempts(
-    piece: Excerpt, core: Sequence[int], shunts: Sequence[int], moves: Sequence[tuple[str, int]] | None, sound: Finder
-) -> Iterator[Attempt]:
-    """Yield every way to turn one element of the core, or move a pin of it, that makes it part of a sound limiter of these
-    shunts."""
-    for one in core:
-        element = piece.board.elements[one]
-        for turned in _turned(element) if moves is None else _moved(element, moves):
-            for limiter in sound(piece.with_element(turned)):
-                role = next((role for role in TURNED_ROLES if one in _in_role(limiter, role)), None)
-                if role is not None and set(shunts) & set(limiter.elements["shunt"]) and _senses(piece.board, limiter):
-                    yield Attempt(turned, role, limiter)
+def _on_piece(index: Index, piece: Excerpt, nets: Collection[int]) -> frozenset[int]:
+    """Return by their numbers on a piece the nets there that are some nets of the index."""
+    return frozenset(place for place, net in enumerate(piece.nets) if index.net_of[net] in nets)
+
+
+def _stands(element: Element, leads: Set[int], controls: Set[int]) -> bool:
+    """Tell whether a shunt stands with its lead and its control on nets where they belong."""
+    lead, _ = LEAD[element.kind]
+    return element.terminals[lead] in leads and element.terminals[CONTROL[element.kind]] in controls
+
+
+def _attempts(piece: Excerpt, ways: Iterable[Element], shunts: Sequence[int], sound: Finder) -> Iterator[Attempt]:
+    """Yield every way for an element to stand that makes it part of a sound limiter of these shunts."""
+    for turned in ways:
+        for limiter in sound(piece.with_element(turned)):
+            role = next((role for role in TURNED_ROLES if turned.index in _in_role(limiter, role)), None)
+            if role is not None and set(shunts) & set(limiter.elements["shunt"]) and _senses(piece.board, limiter):
+                yield Attempt(turned, role, limiter)
 
 
 def _in_role(limiter: Limiter, role: str) -> set[int]:
