@@ -11,6 +11,8 @@ import pytest
 from protlint.solve.circuit import Circuit
 from protlint.solve.delay import OVER, RAMP_S, SWINGS, prepare_step, solve_step
 from protlint.solve.solution import Step
+from tests.support import ngspice
+from tests.support.circuits import load_bench
 from tests.support.dynamics import (
     bench_case,
     bench_cases,
@@ -29,14 +31,20 @@ EACH = int(os.environ.get("PROTLINT_SIMULATED_SHAPES", "1"))
 CREST = 2e-3
 FINE = 4000
 """Time points of a run with short steps, at least."""
-COARSE_S = 200e-9
-"""Longest step of the bench file's runs, it seems: its delays with 100 nF and 1 uF lie 5 times this apart on the sink, 22
-times on the source, as time points would that the longest step sets."""
-RESTS_S = np.linspace(1e-6, 1e-6 + COARSE_S, 40, endpoint=False)
-"""Times at rest before the step: each puts the simulator's time points elsewhere."""
+BENCH_VERSION = "39"
+BENCH_OPTIONS = "tnom=27 gmin=1e-13 reltol=1e-5 method=gear"
+BENCH_REST_S, BENCH_FIRST_S, BENCH_LONGEST_S, BENCH_LONGEST_AS_DRAWN_S = 1e-6, 10e-9, 200e-9, 10e-9
+"""Settings of the bench file's runs: time at rest, printing step, longest step with a capacitor and as drawn.
+
+The file's page states the version, TNOM and GMIN, and RELTOL 1e-6, which is not what its steps were run with. The rest was
+found by search: all 34 figures come out. So they do with 2, 5 or 10 us at rest, or a printing step of 5 or 20 ns. By the
+trapezoidal method, with RELTOL 1e-6 or 1e-4, or at half the longest steps, more than half of them do not.
+"""
+SHORT = 6000
+"""Time points of the same runs with short steps, at least."""
 
 
-def followed(circuit: Circuit, until_s: float, **steps: float) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+def followed(circuit: Circuit, until_s: float, **settings: Any) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """The simulator's times, output currents the limiter's way, and power into the output device."""
     trial = prepare_step(circuit, AMBIENTS)
     times, currents, power = simulated_step(
@@ -45,7 +53,7 @@ def followed(circuit: Circuit, until_s: float, **steps: float) -> tuple[np.ndarr
         short_V=circuit.held[circuit.shorts[0]].usual,
         drive_V=on_end_V(circuit),
         until_s=until_s,
-        **steps,
+        **settings,
     )
     return times, currents * np.sign(np.trapezoid(currents, times)), power
 
@@ -104,33 +112,53 @@ def test_bench_steps_agree_with_transient_runs_of_short_steps(name: str, case: s
     compare(bench_case(name, case))
 
 
+def read_off(times: np.ndarray, currents: np.ndarray, power: np.ndarray, until_s: float) -> tuple[float, float]:
+    """The peak, and the energy until then."""
+    inside = times < until_s
+    times, power = (np.append(values[inside], np.interp(until_s, times, values)) for values in (times, power))
+    return float(currents.max()), float(np.trapezoid(power, times))
+
+
+def as_printed(figure: float) -> Any:
+    """Equal to a figure of four digits."""
+    return pytest.approx(figure, rel=0.0, abs=0.5 * 10.0 ** (np.floor(np.log10(figure)) - 3) if figure else 0.0)
+
+
 @needs_ngspice
-@pytest.mark.parametrize(
-    ("name", "case", "figures"),
-    [one for one in bench_cases("step_into_short") if one[2]["delay_s"] and one[2]["delay_s"] < 1e-5],
-)
-def test_the_bench_file_s_delays_are_time_points_of_long_steps(name: str, case: str, figures: dict[str, Any]) -> None:
-    """With steps of 200 ns at most, the last time point above the level falls short of the crossing by up to a step, by how
-    much depends on where the points happen to lie. The bench file's delay and energy are among what such runs give; the
-    crossing between the points, read off those same runs, is ours.
+@pytest.mark.parametrize(("name", "case", "figures"), bench_cases("step_into_short"))
+def test_the_bench_file_s_steps_are_runs_of_long_steps(name: str, case: str, figures: dict[str, Any]) -> None:
+    """Every peak, delay and energy of the file to its four digits: the delay is the last time point above the level, the
+    energy V_CE I_C up to there by trapezoids.
+
+    The steps being up to 10 ns as drawn, 200 ns with a capacitor, the file's delay falls short of the crossing by up to as
+    much. The same settings with short steps, the crossing read between the points and the base's share counted, give ours.
     """
+    if ngspice.version() != BENCH_VERSION:
+        pytest.skip(f"ngspice is {ngspice.version()}: the bench file's time points are those of {BENCH_VERSION}")
     circuit = bench_case(name, case)
+    level_A = OVER * load_bench()["circuits"][name]["solved"]["27 degC"]["holds_A"]
+    settings = {"options": BENCH_OPTIONS, "rests_s": BENCH_REST_S, "first_s": BENCH_FIRST_S}
+    longest_s = BENCH_LONGEST_AS_DRAWN_S if case == "as drawn" else BENCH_LONGEST_S
+    until_s = max(2e-6, 2.0 * figures["delay_s"]) if figures["settles"] else 2e-5
+    times, currents, power = followed(circuit, until_s, longest_s=longest_s, control=False, **settings)
+    above = times[currents > level_A]
     step = solved(circuit)
-    assert step.delay_s is not None
-    level_A = OVER * prepare_step(circuit, AMBIENTS).holds_A
-    points_s, energies_J, crossings_s = [], [], []
-    for rests_s in RESTS_S:
-        times, currents, power = followed(circuit, 3.0 * step.delay_s, longest_s=COARSE_S, rests_s=float(rests_s))
-        last = int(np.flatnonzero(currents > level_A)[-1])
-        points_s.append(float(times[last]))
-        energies_J.append(float(np.trapezoid(power[: last + 1], times[: last + 1])))
-        crossings_s.append(last_above(times, currents, level_A))
-    print(
-        f"{name}, {case}: file {figures['delay_s']:.4g} s, last points {min(points_s):.4g} to {max(points_s):.4g} s, "
-        f"crossings {min(crossings_s):.4g} to {max(crossings_s):.4g} s, ours {step.delay_s:.4g} s"
-    )
-    assert min(points_s) <= figures["delay_s"] <= max(points_s)
-    nearest = int(np.argmin(np.abs(np.array(points_s) - figures["delay_s"])))
-    assert points_s[nearest] == pytest.approx(figures["delay_s"], rel=0.01)
-    assert energies_J[nearest] == pytest.approx(figures["pass_energy_J"], rel=0.015)
-    assert crossings_s == pytest.approx([step.delay_s] * len(crossings_s), rel=0.02)
+    if not figures["settles"]:
+        assert above[-1] > 0.95 * until_s
+        assert currents.max() == as_printed(figures["peak_A"])
+        assert step.peak_A == pytest.approx(currents.max(), rel=1e-3)
+        return
+    delay_s = float(above[-1]) if len(above) else 0.0
+    assert delay_s == as_printed(figures["delay_s"])
+    peak_A, energy_J = read_off(times, currents, power, delay_s)
+    holds_A = level_A / OVER
+    assert max(peak_A, holds_A) == as_printed(figures["peak_A"])
+    assert energy_J == as_printed(figures["pass_energy_J"])
+    until_s = max(3e-7, 2.0 * delay_s)
+    times, currents, power = followed(circuit, until_s, longest_s=until_s / SHORT, **settings)
+    crossing_s = last_above(times, currents, level_A)
+    assert delay_s <= crossing_s < delay_s + longest_s
+    peak_A, energy_J = read_off(times, currents, power, crossing_s)
+    assert step.peak_A == pytest.approx(max(peak_A, holds_A), rel=2e-4)
+    assert step.delay_s == pytest.approx(crossing_s, rel=6e-3)
+    assert step.pass_energy_J == pytest.approx(energy_J, rel=6e-3)

@@ -127,7 +127,9 @@ def moving_shape(shape: str, seed: int) -> Circuit:
     return replace(circuit, devices=tuple(devices))
 
 
-def moving_deck(circuit: Circuit, *, output_V: float, drive_V: float, cut: str | None = None) -> list[str]:
+def moving_deck(
+    circuit: Circuit, *, output_V: float, drive_V: float, cut: str | None = None, options: str = ngspice.OPTIONS
+) -> list[str]:
     """Return a deck with capacitors, inductors and the devices' dynamic parameters.
 
     With ``cut`` the base of that device hangs on its net by the source ``vcut`` alone, from node ``ncut`` to the net.
@@ -136,7 +138,7 @@ def moving_deck(circuit: Circuit, *, output_V: float, drive_V: float, cut: str |
         circuit, devices=tuple(device for device in circuit.devices if device.kind not in ("capacitor", "inductor"))
     )
     numbers = {device.name: number for number, device in enumerate(static.devices)}
-    lines = ngspice.deck(static, output_V=output_V, drive_V=drive_V)
+    lines = ngspice.deck(static, output_V=output_V, drive_V=drive_V, options=options)
     for device in circuit.devices:
         nodes = [ngspice._node(node) for node in device.nodes]
         if device.kind in ("capacitor", "inductor"):
@@ -218,31 +220,40 @@ def simulated_step(
     until_s: float,
     longest_s: float,
     rests_s: float = 0.0,
+    first_s: float | None = None,
+    control: bool = True,
+    options: str = ngspice.OPTIONS,
 ) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """Run ngspice through the step into the short in 100 ns; return times from its start, output currents into the circuit,
     and the power into the (first) output device at its terminals, at the simulator's own time points.
 
-    ``longest_s`` is the longest time step; the circuit rests for ``rests_s`` before, which moves the time points.
+    ``longest_s`` is the longest time step, a hundredth of ``first_s`` (by default the same) the first one; the circuit rests
+    for ``rests_s`` before. All three place the time points. Without ``control`` the power is the one into the device's first
+    terminal, against its common one, and nothing is in its control's lead: the source that reads the current there has to
+    converge too, which moves time points.
     """
     passing = next(device for device in circuit.devices if device.name == circuit.pass_devices[0])
     output = ngspice._node(circuit.output)
     rest = f"0 {begin_V!r} " if rests_s else ""
     ramp = f"pwl({rest}{rests_s!r} {begin_V!r} {rests_s + 1e-7!r} {short_V!r})"
-    first, control, common = (ngspice._node(node) for node in passing.nodes)
+    first, base, common = (ngspice._node(node) for node in passing.nodes)
     lines = [
         f"voutput {output} 0 {ramp}"
         if line.startswith("voutput ")
-        else line.replace(f" {first} {control} {common}", f" nfirst ncontrol {common}", 1)
+        else line.replace(f" {first} {base} {common}", f" nfirst {'ncontrol' if control else base} {common}", 1)
         if line[0] in "QM"
         else line
-        for line in moving_deck(circuit, output_V=begin_V, drive_V=drive_V)
+        for line in moving_deck(circuit, output_V=begin_V, drive_V=drive_V, options=options)
     ]
-    lines += [f"vfirst {first} nfirst 0", f"vcontrol {control} ncontrol 0"]
-    power = f"(v({first})-v({common}))*i(vfirst)+(v({control})-v({common}))*i(vcontrol)"
+    lines.append(f"vfirst {first} nfirst 0")
+    power = f"(v({first})-v({common}))*i(vfirst)"
+    if control:
+        lines.append(f"vcontrol {base} ncontrol 0")
+        power += f"+(v({base})-v({common}))*i(vcontrol)"
     with tempfile.TemporaryDirectory() as folder:
         data = Path(folder) / "out.data"
         commands = (
-            f"tran {longest_s!r} {rests_s + until_s!r} 0 {longest_s!r}",
+            f"tran {first_s or longest_s!r} {rests_s + until_s!r} 0 {longest_s!r}",
             f"let power = {power}",
             f"wrdata {data} i(voutput) power",
         )

@@ -5,10 +5,12 @@ Settings are those of the solved bench circuits: TNOM 27 degC, GMIN 1e-13, RELTO
 
 from __future__ import annotations
 
+import re
 import shutil
 import subprocess
 import tempfile
 from collections.abc import Sequence
+from functools import cache
 from pathlib import Path
 
 import pytest
@@ -18,9 +20,20 @@ from protlint.solve.parameters import KINDS
 
 PROGRAM = shutil.which("ngspice")
 needs_ngspice = pytest.mark.skipif(PROGRAM is None, reason="ngspice is not installed: nothing was compared with a simulator")
+OPTIONS = "tnom=27 gmin=1e-13 reltol=1e-6 abstol=1e-13 vntol=1e-9 itl1=500 itl2=500"
 
 _LETTER = {"npn": "Q", "pnp": "Q", "nmos": "M", "pmos": "M", "diode": "D", "zener": "D", "resistor": "R"}
 _MODEL = {"npn": "NPN", "pnp": "PNP", "nmos": "NMOS", "pmos": "PMOS", "diode": "D", "zener": "D"}
+
+
+@cache
+def version() -> str:
+    """Return the program's version, ``39`` say."""
+    assert PROGRAM is not None
+    printed = subprocess.run([PROGRAM, "--version"], capture_output=True, text=True, timeout=60, check=True).stdout
+    found = re.search(r"ngspice-(\S+)", printed)
+    assert found, printed
+    return found[1]
 
 
 def swept(
@@ -60,9 +73,9 @@ def swept(
     return [(voltage, -current) for voltage, current in rows]
 
 
-def deck(circuit: Circuit, *, output_V: float, drive_V: float, shunt: bool = True) -> list[str]:
+def deck(circuit: Circuit, *, output_V: float, drive_V: float, shunt: bool = True, options: str = OPTIONS) -> list[str]:
     """Return the lines of a deck with the output and the drive at given voltages."""
-    lines = ["limiter", ".options tnom=27 gmin=1e-13 reltol=1e-6 abstol=1e-13 vntol=1e-9 itl1=500 itl2=500"]
+    lines = ["limiter", f".options {options}"]
     for number, device in enumerate(circuit.devices):
         if device.kind in _LETTER and (shunt or device.name not in circuit.shunt):
             lines += _device(device, number)
