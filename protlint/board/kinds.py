@@ -11,7 +11,6 @@ import re
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from functools import lru_cache
-from string import ascii_letters
 
 from protlint.board.pins import FAMILY, NO_ROLES, family_by_names, roles_of_pins
 from protlint.limits import Limits
@@ -102,6 +101,13 @@ _LETTERS: dict[str, str] = {
 """IEEE 315 / ASME Y14.44 class letters and their older European and Russian kin."""
 
 
+_DESIGNATOR = re.compile(
+    r"([A-Za-z]+)(?:(?:[0-9]+|\?)(?:[A-Za-z][0-9]*)?)?(?:\[[0-9]+\](?:#[0-9]+)?|[^A-Za-z0-9\[\]][^\[\]]*)?"
+)
+"""Class letters, a number or none, a section's letter; then a place in an array, or what schematics add behind a mark
+(``R12_CH3``, ``U2-1``, ``Q1#2``). Words with places in them are how synthesised logic names what it places."""
+
+
 def identify(part: Part, part_number: str | None, entry: PartEntry | None, limits: Limits) -> Identity:
     """Return what a part is and which of its pins is which."""
     kind, kind_from = _kind(part, part_number, entry)
@@ -140,9 +146,9 @@ def _by_words(text: str) -> tuple[str, str]:
 
 
 def class_letters(part: Part) -> str:
-    """Return the letters that a part's designator begins with."""
-    name = (part.designator or part.id).rpartition("/")[2]
-    return name[: len(name) - len(name.lstrip(ascii_letters))]
+    """Return the letters that a part's designator begins with, none where it is no designator but a name."""
+    designator = _DESIGNATOR.fullmatch((part.designator or part.id).rpartition("/")[2])
+    return designator[1] if designator else ""
 
 
 def _by_letter(part: Part) -> tuple[str, str]:

@@ -78,12 +78,41 @@ def _kind(part: Part, number: str | None = None, entry: PartEntry | None = None)
         ("T1", "ZZ", ("1", "2", "3", "4"), {}, "unknown"),
         ("Q1", "ZZ", ("1", "2", "3"), {}, "unknown"),
         ("ZZ1", "ZZ", ("1", "2"), {}, "unknown"),
+        ("p0_out[0]_i_1", "LUT4", ("I0", "I1", "O"), {}, "unknown"),
+        ("p2in", "IBUF", ("I", "O"), {}, "unknown"),
+        ("x_IBUF[3]_inst", "IBUF", ("I", "O"), {}, "unknown"),
+        ("p0_out_reg[0]", "FDPE", ("C", "CE", "D", "PRE", "Q"), {}, "unknown"),
     ],
 )
 def test_kinds_by_words_and_by_letters(
     designator: str, cell: str, pins: tuple[str, ...], properties: dict[str, PropertyValue], kind: str
 ) -> None:
     assert _kind(placed(designator, cell, pins, properties)) == kind
+
+
+@pytest.mark.parametrize(
+    "designator",
+    [
+        "R7",
+        "r7",
+        "R7A",
+        "R7A2",
+        "R7_CH2",
+        "R12-3",
+        "R?",
+        "R?A",
+        "R7[2]",
+        "R7[2]#1",
+        "R7#2",
+        "R_LOAD",
+        "R7_OUT.A",
+        "R7*",
+        "R7б",
+    ],
+)
+def test_what_schematics_make_of_a_designator(designator: str) -> None:
+    """Class letters, number, suffix: ASME Y14.44 reference designations, and suffixes of channels by common practice."""
+    assert _kind(placed(designator, "ZZ", ("1", "2"))) == "resistor"
 
 
 def test_part_data_comes_first() -> None:
