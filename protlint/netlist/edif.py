@@ -43,6 +43,7 @@ from protlint.netlist.references import (
     keyword,
     member,
     port_refs,
+    program,
     shorted,
     view_refs,
     word,
@@ -92,18 +93,6 @@ def _nets(form: Form) -> Iterator[Net]:
             yield item
         elif type(item) is Form and item.head in ("netbundle", "listofnets"):
             yield from _nets(item)
-
-
-def _program(form: Form) -> str | None:
-    """Return the name of the program that wrote the file, with its version, where the file says so."""
-    for status in items(form, "status"):
-        for written in items(status, "written"):
-            for program in items(written, "program"):
-                version = first(program, "version")
-                texts = [text_of(program[1]) if len(program) > 1 else None]
-                texts.append(text_of(version[1]) if version is not None and len(version) > 1 else None)
-                return " ".join(text for text in texts if text) or None
-    return None
 
 
 class _Reader(FormParser):
@@ -156,7 +145,7 @@ class _Reader(FormParser):
         libraries = tuple(item for item in form if type(item) is Library)
         designs = tuple(item for item in form if type(item) is Design)
         self._duplicates(libraries)
-        return Edif(self._name(form), level, _program(form), libraries, designs, self.places), self.notes
+        return Edif(self._name(form), level, program(form), libraries, designs, self.places), self.notes
 
     def atom(self, token: str) -> str:
         """Return a word as it is, but the same object in all its places: references are many and repeat what they name."""
@@ -246,7 +235,7 @@ class _Reader(FormParser):
 
     def _properties(self, found: Mapping[str, Sequence[Form]], origin: Origin) -> tuple[Property, ...]:
         forms = (*found.get("property", ()), *found.get("parameter", ()), *found.get("parameterassign", ()))
-        return tuple([read_property(item, self._property_name(item), origin, self._scales) for item in forms])
+        return tuple([read_property(item, self._property_name(item), origin, self._scales, self.notes) for item in forms])
 
     def _property_name(self, form: Form) -> str:
         """Return the name of a property as people see it: the same few on every part, so plain ones are looked up."""

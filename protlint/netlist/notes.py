@@ -23,6 +23,7 @@ KINDS = {
     "width": "things of different width are joined: {}",
     "block pin": "a block's port on two nets, which are taken as one: {}",
     "property": "one property with two values; the first counts: {}",
+    "spread": "a value with its least and most, of which nothing is made; the nominal counts, its tolerance as stated: {}",
     "designators": "a part with two unlike designators; the first counts: {}",
     "namesakes": "one designator on parts that nothing shows to be sections of one package; they are numbered behind it: {}",
 }

@@ -4,11 +4,12 @@ from __future__ import annotations
 
 import math
 import re
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Literal
 
 from protlint.netlist.forms import Form
 from protlint.netlist.model import Property, PropertyValue
+from protlint.netlist.notes import Notes
 
 Origin = Literal["cell", "interface", "instance"]
 Scales = Mapping[str, float]
@@ -54,8 +55,8 @@ def number(item: object) -> float | str | None:
 def property_value(form: Form, scale: float = 1.0) -> PropertyValue | None:
     """Return the value of a ``property``, ``parameter`` or ``parameterAssign``; None where it has none that is known.
 
-    A ``miNoMax`` gives its nominal, or a text with its least and most where it has no nominal. ``scale`` multiplies what is
-    written as a number.
+    A ``miNoMax`` gives its nominal, or a text with its least and most where it has no nominal; one that does not hold
+    these three gives all that it holds as a text. ``scale`` multiplies what is written as a number.
     """
     for item in form[2:]:
         if not isinstance(item, Form):
@@ -77,13 +78,22 @@ def property_value(form: Form, scale: float = 1.0) -> PropertyValue | None:
     return None
 
 
-def read_property(form: Form, name: str, origin: Origin, scales: Scales) -> Property:
-    """Return a property form as a property; the name is read by the caller, who knows how names are written."""
+def read_property(form: Form, name: str, origin: Origin, scales: Scales, notes: Notes) -> Property:
+    """Return a property form as a property; the name is read by the caller, who knows how names are written.
+
+    The least and the most that stand beside a nominal value are noted, as nothing is made of them.
+    """
     line, column = form.places.at(form.offset)
     if len(form) == 3 and type(form[2]) is str:  # nearly all are so
         return Property(name, form[2], origin, line, column, None)
     unit = next((str(item[1]) for item in form if isinstance(item, Form) and item.head == "unit" and len(item) > 1), None)
-    value = property_value(form, scales.get(unit.lower(), 1.0) if unit else 1.0)
+    scale = scales.get(unit.lower(), 1.0) if unit else 1.0
+    value = property_value(form, scale)
+    for item in form[2:]:
+        if isinstance(item, Form) and item.head == "minomax":
+            ends = _least_nominal_most(item, scale)[::2]
+            if isinstance(value, float) and any(end is not None for end in ends):
+                notes.add("spread", form.offset, f"{name} is {value}, from {_listed(ends)}")
     return Property(name, "" if value is None else value, origin, line, column, unit)
 
 
@@ -116,13 +126,22 @@ def _scaled(value: float | str | None, scale: float) -> float | str | None:
 
 
 def _nominal(form: Form, scale: float) -> float | str | None:
+    values = _least_nominal_most(form, scale)
+    if len(values) == 3 and (values[1] is not None or values == [None] * 3):
+        return values[1]
+    return _listed(values[::2] if len(values) == 3 else values)
+
+
+def _least_nominal_most(form: Form, scale: float) -> list[float | str | None]:
+    """Return what a ``miNoMax`` holds, None for what is left open; a single number is a nominal."""
     inner = form[1] if len(form) > 1 else None
     if not isinstance(inner, Form) or inner.head != "mnm":
-        return _scaled(number(inner), scale)
-    values = [_scaled(number(item), scale) for item in inner[1:4]]
-    if len(values) == 3 and values[1] is not None:
-        return values[1]
-    return " to ".join("?" if value is None else str(value) for value in values[::2])
+        return [None, _scaled(number(inner), scale), None]
+    return [_scaled(number(item), scale) for item in inner[1:]]
+
+
+def _listed(values: Sequence[float | str | None]) -> str:
+    return " to ".join("?" if value is None else str(value) for value in values)
 
 
 def _point(form: Form) -> str | None:
