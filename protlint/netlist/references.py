@@ -47,6 +47,18 @@ def designators(forms: Sequence[Form]) -> tuple[str, ...]:
     return tuple(dict.fromkeys(text.strip() for text in texts if text is not None))
 
 
+def program(form: Form) -> str | None:
+    """Return the name of the program that wrote the file, with its version, where the file says so."""
+    for status in items(form, "status"):
+        for written in items(status, "written"):
+            for each in items(written, "program"):
+                version = first(each, "version")
+                texts = [text_of(each[1]) if len(each) > 1 else None]
+                texts.append(text_of(version[1]) if version is not None and len(version) > 1 else None)
+                return " ".join(text for text in texts if text) or None
+    return None
+
+
 def word(form: Form, position: int = 1) -> str:
     """Return the identifier at a position of a reference.
 
