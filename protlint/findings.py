@@ -80,11 +80,15 @@ class WorkingLine:
 
 @dataclass(frozen=True, slots=True)
 class Fit:
-    """A part that a remedy fits: its value in SI units, and its rated dissipation where that matters."""
+    """A part that a remedy fits: its value in SI units, and its rated dissipation where that matters.
+
+    A capacitor of 0 F is taken out. One that is added has no part id, but the two ``nodes`` of the circuit it goes between.
+    """
 
     part: str
     value: float
     power_W: float | None = None
+    nodes: tuple[str, ...] = ()
 
 
 Remedy = tuple[str | None, tuple[Fit, ...]]

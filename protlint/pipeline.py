@@ -199,6 +199,7 @@ def _reviewed(netlist: Netlist, desk: Desk) -> Review:
         cases[limiter.id] = case
         findings += its_findings
     more, unanswered = _ask_of_the_board(BoardCase(board, found, cases, desk.limits, desk.catalogue))
+    more = [told for one in more for told in _foretold(one, cases, findings)]
     reviewed = [replace(one, not_checked=(*one.not_checked, *unanswered.pop(one.limiter.id, ()))) for one in reviewed]
     of_the_board = [one for left in unanswered.values() for one in left]
     return _finish(board, found, reviewed, findings + more, desk, of_the_board)
@@ -216,6 +217,13 @@ def _ask_of_the_board(whole: BoardCase) -> tuple[list[Finding], dict[str | None,
             else:
                 unanswered.setdefault(answer.limiter, []).append(answer.what)
     return findings, unanswered
+
+
+def _foretold(finding: Finding, cases: Mapping[str, Case], findings: Sequence[Finding]) -> list[Finding]:
+    """Return a finding of the whole board with what comes of its remedy, where that is about one limiter."""
+    if finding.limiter is None or finding.limiter not in cases:
+        return [finding]
+    return foretold(cases[finding.limiter], [finding], [one for one in findings if one.limiter == finding.limiter])
 
 
 def _differences(board: Board, desk: Desk) -> dict[str, tuple[Difference, ...]]:
@@ -257,7 +265,7 @@ def _review_limiter(whole: _Whole, limiter: Limiter) -> tuple[ReviewedLimiter, C
     if solution.not_solved is not None:
         not_checked.append(NotChecked(UNSOLVED, solution.not_solved.removeprefix(FOR_WANT_OF)))
     findings, unanswered = ask(case)
-    findings = foretold(case, findings)
+    findings = foretold(case, findings, findings)
     not_checked += unanswered
     if case.unbounded:
         not_checked.append(NotChecked(UNSOLVED, case.drive_bound))

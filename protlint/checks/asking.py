@@ -12,17 +12,17 @@ from protlint.findings import Finding, Level, NotChecked
 from protlint.limits import CheckSetting
 
 
-def ask(case: Case) -> tuple[list[Finding], list[NotChecked]]:
-    """Return the findings of every check of a limiter, and what could not be checked."""
+def ask(case: Case, only: Iterable[str] = CHECKS) -> tuple[list[Finding], list[NotChecked]]:
+    """Return the findings of every check of a limiter, or the ``only`` ones named, and what could not be checked."""
     findings: list[Finding] = []
     not_checked: list[NotChecked] = []
-    for check, put in CHECKS.items():
+    for check in only:
         if case.solution.not_solved is not None and check not in WITHOUT_SOLUTION:
             continue
         if check in BOUNDED and case.unbounded:
             not_checked.append(NotChecked(check, case.drive_bound))
             continue
-        answers = list(put(case))
+        answers = list(CHECKS[check](case))
         not_checked += [answer for answer in answers if isinstance(answer, NotChecked)]
         found = (answer for answer in answers if isinstance(answer, Finding))
         findings += with_levels(found, check, case.rows, (case.needs.checks, case.limits.checks))

@@ -6,6 +6,7 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, replace
 
 from protlint.checks.case import Case
+from protlint.findings import Fit
 from protlint.quantities import format_quantity
 from protlint.solve.circuit import Circuit
 from protlint.solve.solution import Currents
@@ -34,6 +35,12 @@ class Change:
     def names(self) -> str:
         """The parts in words."""
         return ", ".join(self.parts)
+
+    def fits(self, case: Case) -> tuple[Fit, ...]:
+        """Return what is fitted: of a bank or chain every part changes by as much."""
+        if len(self.parts) == 1:
+            return (Fit(self.parts[0], self.then),)
+        return tuple(Fit(part, (case.part(part).values.value or 0.0) * self.then / self.now) for part in self.parts)
 
     def says(self) -> str:
         """Return the two values in words: ``R12 is 22 ohm where most have 2.2 ohm``."""

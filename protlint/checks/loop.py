@@ -6,10 +6,11 @@ from collections.abc import Iterator
 
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.let_through import too_much
-from protlint.findings import Level, NotChecked, WorkingLine
+from protlint.findings import Fit, Level, NotChecked, Remedy, WorkingLine
 from protlint.quantities import format_quantity, format_ratio
 from protlint.solve.advice import AIM, DRIVE_FAR, GREATEST_F, LEAST_F, advise, elsewhere
-from protlint.solve.solution import Advice, Fit, Loop, Step
+from protlint.solve.solution import Advice, Loop, Step
+from protlint.solve.solution import Fit as Cure
 
 DAMPING = "damping ratio -Re(s) / |s| of the generalised eigenvalues of G + sC"
 INJECTION = "R. D. Middlebrook, Int. J. Electronics 38, 1975"
@@ -27,6 +28,7 @@ def compensation_absent(case: Case) -> Iterator[Answer]:
     without = loop.worst_without_wiring
     poor = loop.own_damping < case.threshold(check, "warning") or (without is not None and without.damping < 0.0)
     advice = _advice(case, loop) if poor else None
+    remedy, fits = _remedy(case, advice, _cure(case, advice)) if poor else (None, ())
     drawn, worst = said(loop)
     verdict = "is too little" if poor else "is enough"
     yield case.finding(
@@ -34,7 +36,8 @@ def compensation_absent(case: Case) -> Iterator[Answer]:
         f"no capacitor shapes the limiting loop; as drawn its damping of {drawn} {verdict}{f'; {worst}' if worst else ''}",
         parts=case.parts("shunt"),
         working=tuple(_working(case, loop)),
-        remedy=_remedy(case, advice, _fit(case, advice)) if poor else None,
+        remedy=remedy,
+        fits=fits,
         level="warning" if poor else "note",
         assumption=rests_on_assumptions(case),
     )
@@ -51,15 +54,17 @@ def loop_undamped(case: Case) -> Iterator[Answer]:
     if level is None:
         return
     advice = _advice(case, loop)
-    fit = _fit(case, advice)
+    cure = _cure(case, advice)
+    remedy, fits = _remedy(case, advice, cure)
     oscillates = "oscillates" if loop.own_damping < 0.0 else "can oscillate" if loop.can_grow else "rings"
     cause = f"; {advice.costs} costs it" if advice is not None and advice.costs is not None else ""
     yield case.finding(
         check,
         f"the limiting loop {oscillates}: as drawn its damping is {', '.join(filter(None, said(loop)))}{cause}",
         parts=(*case.parts("shunt"), *_costing_parts(case, advice)),
-        working=(*_working(case, loop), *_effects(advice), *_delays(advice, fit)),
-        remedy=_remedy(case, advice, fit),
+        working=(*_working(case, loop), *_effects(advice), *_delays(advice, cure)),
+        remedy=remedy,
+        fits=fits,
         level=level,
         assumption=rests_on_assumptions(case),
     )
@@ -147,10 +152,10 @@ def _effects(advice: Advice | None) -> Iterator[WorkingLine]:
         yield WorkingLine(f"worst damping {how}", "solved again", effect.worst_damping, "", DAMPING)
 
 
-def _delays(advice: Advice | None, fit: Fit | None) -> Iterator[WorkingLine]:
+def _delays(advice: Advice | None, cure: Cure | None) -> Iterator[WorkingLine]:
     if advice is None:
         return
-    for when, step in (("as drawn", advice.step), ("with the remedy", fit.step if fit is not None else None)):
+    for when, step in (("as drawn", advice.step), ("with the remedy", cure.step if cure is not None else None)):
         if step is not None:
             how = "step into the short, until the current is below 1.1 times holds for good"
             yield WorkingLine(f"delay {when}", how if step.settles else "it does not settle", step.delay_s, "s")
@@ -175,48 +180,63 @@ def _costing_parts(case: Case, advice: Advice | None) -> tuple[str, ...]:
     """Return the ids of the parts behind the device that costs the damping, where they are not the shunt's."""
     if advice is None or advice.costs is None:
         return ()
-    element = case.board.elements[case.bench.element_of[advice.costs]]
-    return tuple(case.board.parts[index].id for index in element.parts)
+    return _parts_of(case, advice.costs)
 
 
-def _fit(case: Case, advice: Advice | None) -> Fit | None:
+def _parts_of(case: Case, device: str) -> tuple[str, ...]:
+    """Return the ids of the parts behind a device; none where it is one that a remedy adds."""
+    element = case.bench.element_of.get(device)
+    return () if element is None else tuple(case.board.parts[index].id for index in case.board.elements[element].parts)
+
+
+def _cure(case: Case, advice: Advice | None) -> Cure | None:
     """Return the first way to calm the loop that does not make the limiter act too late, another place's if need be, else
     the first."""
-    fits = advice.fits if advice is not None else ()
-    if not fits:
+    cures = advice.fits if advice is not None else ()
+    if not cures:
         return None
-    quick = next((fit for fit in fits if not _too_late(case, fit)), None)
-    if quick is None and fits[0].instead_of is None:
-        others = elsewhere(case.circuit, case.limits.ambient_degC, fits[0].place, short=case.solution.short)
-        quick = next((fit for fit in others if not _too_late(case, fit)), None)
-    return quick if quick is not None else fits[0]
+    quick = next((cure for cure in cures if not _too_late(case, cure)), None)
+    if quick is None and cures[0].instead_of is None:
+        others = elsewhere(case.circuit, case.limits.ambient_degC, cures[0].place, short=case.solution.short)
+        quick = next((cure for cure in others if not _too_late(case, cure)), None)
+    return quick if quick is not None else cures[0]
 
 
-def _too_late(case: Case, fit: Fit) -> bool:
-    return fit.step is not None and too_much(case, fit.step)
+def _too_late(case: Case, cure: Cure) -> bool:
+    return cure.step is not None and too_much(case, cure.step)
 
 
-def _remedy(case: Case, advice: Advice | None, fit: Fit | None) -> str | None:
+def _remedy(case: Case, advice: Advice | None, cure: Cure | None) -> Remedy:
+    """Return what calms the loop.
+
+    Damping and delay with it are worked out already, and no current changes: only where it is too late, or where a peak must
+    pass, is there more to ask of the circuit so changed.
+    """
     if advice is None or advice.enough:
-        return None
-    if fit is None:
+        return None, ()
+    if cure is None:
         span = f"{format_quantity(LEAST_F, 'F')} to {format_quantity(GREATEST_F, 'F')}"
         return (
             f"none of the usual places does: no capacitor of {span} from collector to base, from the drive to the far end "
             f"or from base to emitter brings the damping to {AIM:g} at worst"
-        )
-    todo = [f"take {fit.instead_of} out"] if fit.instead_of is not None else []
-    if fit.farad is not None:
-        todo.append(f"fit {format_quantity(fit.farad, 'F')} {_place(case, fit)} ({fit.nodes[0]} to {fit.nodes[1]})")
-    then = f"damping {format_ratio(fit.own_damping)}, {format_ratio(fit.worst_damping)} at worst"
-    late = f"; that is too long for what {', '.join(case.parts('pass'))} may take meanwhile" if _too_late(case, fit) else ""
-    return f"{' and '.join(todo)}: {then}{_change(advice.step, fit.step)}{late}"
+        ), ()
+    todo, fits = [], []
+    if cure.instead_of is not None:
+        todo.append(f"take {cure.instead_of} out")
+        fits += [Fit(part, 0.0) for part in _parts_of(case, cure.instead_of)]
+    if cure.farad is not None:
+        todo.append(f"fit {format_quantity(cure.farad, 'F')} {_place(case, cure)} ({' to '.join(cure.nodes)})")
+        fits.append(Fit("", cure.farad, nodes=cure.nodes))
+    if case.needs.peak is None and not _too_late(case, cure):
+        fits = []
+    then = f"damping {format_ratio(cure.own_damping)}, {format_ratio(cure.worst_damping)} at worst"
+    return f"{' and '.join(todo)}: {then}{_change(advice.step, cure.step)}", tuple(fits)
 
 
-def _place(case: Case, fit: Fit) -> str:
-    if fit.place == DRIVE_FAR:
+def _place(case: Case, cure: Cure) -> str:
+    if cure.place == DRIVE_FAR:
         return "from the drive to the far end of the sense resistance"
-    return f"from {fit.place} of {', '.join(case.parts('shunt'))}"
+    return f"from {cure.place} of {', '.join(case.parts('shunt'))}"
 
 
 def _change(before: Step | None, after: Step | None) -> str:

@@ -100,9 +100,10 @@ def _halves(high: Case, high_held: Held, low: Case, low_held: Held) -> Finding:
         f"{format_quantity(low_held.usual_A, 'A')}: {format_quantity(ratio, '%')} apart, more than tolerance makes up for",
         parts=tuple(dict.fromkeys((*parts, *(part for case in (high, low) for part in case.parts("sense", "shunt"))))),
         working=tuple(lines),
-        remedy=f"{to_fit(changes)}, so that {high.limiter.id} and {low.limiter.id} agree"
+        remedy=to_fit(changes)
         if changes
         else "no sense resistance of one half brings the two together: compare drives, gains and presets",
+        fits=tuple(fit for one in changes for fit in one.fits(changed)),
         assumption=high.assumes(*ALL_ASSUMPTIONS) or low.assumes(*ALL_ASSUMPTIONS),
     )
 
@@ -194,7 +195,9 @@ def _channel(
         f"{format_quantity(its_A, 'A')}, they hold {format_quantity(held_A, 'A')}",
         parts=tuple(part for one in changes for part in one.parts),
         working=tuple(lines),
-        remedy=f"{to_fit(changes)}, or state under [limiter] the carry and cap that {case.limiter.id} alone is meant for",
+        remedy=f"unless {case.limiter.id} alone is meant for another carry and cap (state them under [limiter]), "
+        f"{to_fit(changes)}",
+        fits=tuple(fit for one in changes for fit in one.fits(case)),
         assumption=case.assumes(*DRAWN),
     )
 

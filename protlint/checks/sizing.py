@@ -36,7 +36,7 @@ class Sense:
         return whole_ohm * (self.of_whole or 1.0)
 
 
-def _sense_of(case: Case) -> Sense | None:
+def sense_of(case: Case) -> Sense | None:
     """Return the sense resistance of a case, or None where its circuit has none."""
     sense = [device for device in case.circuit.devices if device.name in case.circuit.sense]
     if not sense:
@@ -69,7 +69,7 @@ def sense_remedy(case: Case) -> Remedy:
     The limit goes nearly as 1 / R, so carry bounds the resistance from above and cap from below. Values of E24 inside that
     window, then of E96, are solved over all corners until one meets both. In a bank or chain they are those of each part.
     """
-    sense = _sense_of(case)
+    sense = sense_of(case)
     if sense is None or case.solution.not_solved is not None:
         return None, ()
     carries_A, most_A = least_carries_A(case.solution), greatest_most_A(case.solution)
@@ -87,7 +87,7 @@ def sense_remedy(case: Case) -> Remedy:
     for part_ohm in _candidates(*ends):
         factor = part_ohm / sense.part_ohm(sense.now_ohm)
         if meets(resolve(case, factor), carry_A, cap_A):
-            return _fit(case, sense, part_ohm, factor)
+            return fit_sense(case, sense, part_ohm, factor)
     return _no_value(case, carries_A, most_A), ()
 
 
@@ -139,7 +139,8 @@ def greatest_most_A(solution: Solution) -> float | None:
     return max(ends) if ends and len(ends) == len(solution.currents) else None
 
 
-def _fit(case: Case, sense: Sense, part_ohm: float, factor: float) -> Remedy:
+def fit_sense(case: Case, sense: Sense, part_ohm: float, factor: float) -> Remedy:
+    """Return the remedy that fits a sense resistance: each part's value, and by how much it changes."""
     value, names = format_quantity(part_ohm, "ohm"), ", ".join(sense.parts)
     if sense.of_whole is None:
         fits = tuple(Fit(part, (case.part(part).values.value or 0.0) * factor) for part in sense.parts)

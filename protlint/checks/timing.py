@@ -10,8 +10,8 @@ from protlint.board.graph import BoardPart
 from protlint.checks.case import Answer, Case
 from protlint.checks.let_through import LATE, LetThrough, let_through, too_much
 from protlint.checks.loop import charge_lines, not_known, rests_on_assumptions
-from protlint.checks.sizing import least_carries_A, meets, resolve, solve_again
-from protlint.findings import NotChecked, WorkingLine
+from protlint.checks.sizing import fit_sense, least_carries_A, meets, resolve, sense_of, solve_again
+from protlint.findings import Fit, NotChecked, Remedy, WorkingLine
 from protlint.limits import Peak
 from protlint.quantities import format_quantity, preferred
 from protlint.quantities.series import within
@@ -26,6 +26,8 @@ PEAKS = "trips-on-peaks"
 FITTED = "fitted capacitor"
 MOST_F = 100e-6
 """No larger capacitor is proposed at a shunt's base."""
+LEAST_SENSE = 0.2
+"""To which share of itself a sense resistance is lowered at most for a peak's sake."""
 BY_HAND = "R C ln((m - p) / (m - 1)), the RC's answer to a step; any textbook on circuits"
 
 
@@ -77,6 +79,7 @@ def trips_on_peaks(case: Case) -> Iterator[Answer]:
         return
     if borne_s >= peak.lasts_s:
         return
+    remedy, fits = _peak_remedy(case, peak, asked, before_A, output_V)
     at = f" at {format_quantity(output_V, 'V')}" if output_V is not None else ""
     yield case.finding(
         PEAKS,
@@ -91,7 +94,8 @@ def trips_on_peaks(case: Case) -> Iterator[Answer]:
             *_by_hand(case, asked, before_A, usual_A),
             *charge_lines(case),
         ),
-        remedy=_peak_remedy(case, peak, asked, before_A, output_V),
+        remedy=remedy,
+        fits=fits,
         assumption=rests_on_assumptions(case),
     )
 
@@ -101,6 +105,7 @@ def _late(case: Case, part: BoardPart, names: tuple[str, ...], found: LetThrough
     times = f"{found.ratio:.2g} times" if math.isfinite(found.ratio) else "more than"
     step = case.solution.step
     assert step is not None
+    remedy, fits = _late_remedy(case, part, names, found)
     return case.finding(
         LATE,
         f"{part.id} is let into {format_quantity(found.energy_J, 'J')} within {lasts} before the limiter acts, as much as "
@@ -121,7 +126,8 @@ def _late(case: Case, part: BoardPart, names: tuple[str, ...], found: LetThrough
             WorkingLine("over what is allowed", "current over what is allowed", _ratio(found), ""),
             *charge_lines(case),
         ),
-        remedy=_late_remedy(case, part, names, found),
+        remedy=remedy,
+        fits=fits,
         assumption=rests_on_assumptions(case),
         subject=part.id,
     )
@@ -131,7 +137,7 @@ def _ratio(found: LetThrough) -> float | None:
     return found.ratio if math.isfinite(found.ratio) else None
 
 
-def _late_remedy(case: Case, part: BoardPart, names: tuple[str, ...], found: LetThrough) -> str:
+def _late_remedy(case: Case, part: BoardPart, names: tuple[str, ...], found: LetThrough) -> Remedy:
     """Return the greatest smaller capacitor at the shunt's base that does, else the safe area to ask for."""
     slowing = _base_capacitor(case.circuit)
     if slowing is not None:
@@ -144,15 +150,23 @@ def _late_remedy(case: Case, part: BoardPart, names: tuple[str, ...], found: Let
             then = let_through(case, part, names, step)
             if then is None or (isinstance(then, LetThrough) and then.ratio <= case.threshold(LATE, "error")):
                 acts = f"{format_quantity(step.delay_s, 's')} into the short" if step.delay_s else "at once"
-                return f"fit {format_quantity(farad, 'F')} as {slowing.name}: the limiter then acts {acts}"
+                said = f"fit {format_quantity(farad, 'F')} as {slowing.name}: the limiter then acts {acts}"
+                return said, _other_capacitor(case, slowing, farad)
     current = format_quantity(preferred(found.current_A, "E24", "up"), "A")
     return (
         f"fit a device as {part.id} whose safe area ({format_quantity(found.lasts_s, 's')}) allows {current} at "
         f"{format_quantity(found.voltage_V, 'V')}"
-    )
+    ), ()
 
 
-def _peak_remedy(case: Case, peak: Peak, asked: Peak, before_A: float, output_V: float | None) -> str:
+def _other_capacitor(case: Case, known: Device, farad: float) -> tuple[Fit, ...]:
+    """Return what is fitted where a capacitor gets another value: the part it stands for, none where a remedy added it."""
+    element = case.bench.element_of.get(known.name)
+    parts = () if element is None else case.board.elements[element].parts
+    return tuple(Fit(case.board.parts[index].id, farad) for index in parts)
+
+
+def _peak_remedy(case: Case, peak: Peak, asked: Peak, before_A: float, output_V: float | None) -> Remedy:
     """Return the capacitor that lets the peak pass and keeps loop and pass device safe, else the sense resistance."""
     ends = places(case.circuit).get(BASE_EMITTER)
     known = _base_capacitor(case.circuit)
@@ -167,17 +181,17 @@ def _peak_remedy(case: Case, peak: Peak, asked: Peak, before_A: float, output_V:
                 if _calm(case, circuit) and _bears(case, circuit):
                     shunt = ", ".join(case.parts("shunt"))
                     what = f"as {known.name}" if known is not None else f"from base to emitter of {shunt}"
-                    return f"fit {format_quantity(farad, 'F')} {what} ({ends[0]} to {ends[1]})"
+                    fits = (Fit("", farad, nodes=ends),) if known is None else _other_capacitor(case, known, farad)
+                    return f"fit {format_quantity(farad, 'F')} {what} ({ends[0]} to {ends[1]})", fits
                 break
-    sense = [device for device in case.circuit.devices if device.name in case.circuit.sense]
-    now_ohm = sense[0].model["R"] if sense else 0.0
-    for value_ohm in reversed(within(0.2 * now_ohm, now_ohm, "E24")) if now_ohm > 0.0 else ():
-        solution = _at_output(case, output_V, factor=value_ohm / now_ohm)
-        if meets(solution, peak.current_A, None):
-            kept = meets(solution, None, case.needs.cap_A)
-            over = "" if kept else f", which passes more than the cap of {format_quantity(case.needs.cap_A or 0.0, 'A')}"
-            return f"fit {format_quantity(value_ohm, 'ohm')} as {', '.join(case.parts('sense'))}{over}"
-    return "neither a capacitor at the shunt's base nor a smaller sense resistance does: the drive gives out before the peak"
+    sense = sense_of(case)
+    now_ohm = 0.0 if sense is None else sense.part_ohm(sense.now_ohm)
+    for value_ohm in reversed(within(LEAST_SENSE * now_ohm, now_ohm, "E24")) if now_ohm > 0.0 else ():
+        factor = value_ohm / now_ohm
+        if sense is not None and meets(_at_output(case, output_V, factor=factor), peak.current_A, None):
+            return fit_sense(case, sense, value_ohm, factor)
+    neither = "neither a capacitor at the shunt's base nor a smaller sense resistance does"
+    return f"{neither}: the drive gives out before the peak", ()
 
 
 def _borne_s(case: Case, circuit: Circuit, asked: Peak, before_A: float) -> float | str:

@@ -6,10 +6,13 @@ import re
 
 import pytest
 
-from protlint.findings import Finding
-from tests.checks.test_sets import FIXED, SHARED
+from protlint.checks.afterwards import shaped
+from protlint.findings import Finding, Fit
+from protlint.solve.answers import solve
+from tests.checks.test_loop_and_timing import peaky, slow
+from tests.checks.test_sets import CHANNEL, FIXED, HALVES, SHARED, USUAL
 from tests.support.cures import figure, powered, resistor
-from tests.support.desk import found, limits
+from tests.support.desk import case_of, found, limits
 from tests.support.judged import Job, folding, sink
 
 BANK = sink().drawn(
@@ -115,3 +118,70 @@ def test_of_many_consequences_the_checks_are_named(ballast: str, says: str) -> N
     needs = {"*": {"output": "12 V", "carry": "3.5 A"}}
     job = Job(board, limits(supply=FIXED, drive={"DRV": {"low": "0 V", "high": "24 V"}}, limiter=needs))
     assert re.fullmatch(says + r"; then also [a-z-]+(, [a-z-]+)+ come up", said(job, "carry-not-met"))
+
+
+def unlike_halves(upper: str, lower: str, power: str, **needs: str) -> Job:
+    board = HALVES.format(upper=upper, lower=lower).replace("POWER:5W", f"POWER:{power}")
+    drive = {name: {"low": "-24 V", "high": "24 V"} for name in ("DP", "DN")}
+    return Job(board, limits(supply=FIXED, drive=drive, limiter={"*": {"output": "0 V", **needs}}))
+
+
+def unlike_channels() -> Job:
+    """Three channels on poor sinks, the second with a larger sense resistor of a small rating and another base stop."""
+    odd: tuple[dict[str, str], ...] = ({}, {"sense": "4.7", "stop": "1k"}, {})
+    board = "J0 CONN - +12V GND\n" + "".join(CHANNEL.format(n=n, **{**USUAL, **one}) for n, one in enumerate(odd, 1))
+    drive = {f"CMD{n}": {"low": "0 V", "high": "5 V"} for n in (1, 2, 3)}
+    asked = {"*": {"output": "2 V", "shorted_to": ["+12V"], "sink": "40 K/W"}}
+    return powered(Job(board, limits(supply=FIXED, drive=drive, limiter=asked)), "R21", 0.1)
+
+
+def test_the_half_that_changes_is_judged_with_its_new_value() -> None:
+    remedy = said(unlike_halves("2.2", "1", "0.4W", carry="0.5 A", sink="3 K/W"), "halves-unequal")
+    assert remedy.startswith(
+        "fit 1 ohm as R11, rated 1 W; then also pass-overheated, pass-outside-safe-area: give Q10 a sink"
+    )
+    mended = powered(unlike_halves("1", "1", "0.4W", carry="0.5 A", sink=f"{figure(remedy, 'K/W')} K/W"), "R11", 1.0)
+    assert found(powered(mended, "R21", 1.0).review()) == []
+
+
+def test_a_channel_made_like_the_others_is_judged_as_they_are() -> None:
+    job = unlike_channels()
+    remedy = said(job, "channels-unequal")
+    assert "fit 2.2 ohm as R21" in remedy
+    assert "R21 rated 0.5 W; then also pass-overheated, pass-outside-safe-area: give Q20 a sink of" in remedy
+    mended = powered(resistor(resistor(job, "R22", 150.0), "R21", 2.2), "R21", 0.5)
+    left = {one.check for one in found(mended.review()) if one.limiter == "Q20"}
+    assert left == {"pass-overheated", "pass-outside-safe-area"}
+
+
+def test_a_peak_that_a_capacitor_no_longer_lets_pass_is_told_with_it() -> None:
+    """The capacitor that slows the limiter costs its damping and lets the pass device in for too long, and a peak pass."""
+    slowed = slow(0.05).drawn(("C11 CAP 1u STOP OUT", "C11 CAP 220n STOP OUT"))
+    job = slowed.stated(peak={"current": "0.5 A", "lasts": "25 us"})
+    assert not found(job.review(), "trips-on-peaks")
+    for check, drawn in (("trips-late", "C11 CAP 1n STOP OUT"), ("loop-undamped", "C11 CAP 220p BASE STOP")):
+        value, _, also = said(job, check).partition("; then also trips-on-peaks: ")
+        assert also.startswith("fit 1.1 ohm as R11"), value
+        changed = job.drawn(("C11 CAP 220n STOP OUT", drawn)).review()
+        assert {one.check for one in found(changed)} == {"trips-on-peaks"}
+        assert said(slowed, check) == value
+
+
+def test_a_sense_resistance_for_a_peak_s_sake_is_judged_like_any_other() -> None:
+    job = peaky("0.4 A", "10 s").stated(cap="0.5 A")
+    value, _, also = said(job, "trips-on-peaks").partition("; then also ")
+    assert also.startswith("cap-exceeded: fit 2 ohm as R2"), value
+    assert "cap-exceeded" in {one.check for one in found(resistor(job, "R2", figure(value, "ohm")).review())}
+
+
+def test_a_capacitor_changes_no_current() -> None:
+    """So that only loop, delay and peaks are asked again: every figure of the currents solved anew is the one there was."""
+    case = case_of(slow(4.0).review())
+    changed = shaped(case, (Fit("C11", 0.0), Fit("", 1e-6, nodes=("BASE", "OUT"))))
+    assert [one.model["C"] for one in changed.circuit.devices if one.kind == "capacitor"] == [1e-6]
+    anew = solve(changed.circuit, case.limits.ambient_degC)
+    for drawn, now in zip(case.solution.currents, anew.currents, strict=True):
+        for name in ("holds_A", "carries_A", "most_A", "unlimited_A", "holds_range_A", "carries_range_A", "most_range_A"):
+            assert getattr(now, name) == pytest.approx(getattr(drawn, name), rel=1e-9)
+    assert changed.solution.step != case.solution.step
+    assert changed.solution.loop != case.solution.loop
