@@ -40,12 +40,12 @@ def wire(block: Block, notes: Notes, budget: Budget, design_wide: Globals) -> Wi
 
 class Placement(NamedTuple):
     """One thing placed: an instance, or with ``element`` one of an array of them. ``pins`` maps a bit of its ports to the
-    node it is on and the place where the file says so."""
+    node it is on."""
 
     instance: Instance
     element: int | None
     block: Block
-    pins: dict[int, tuple[int, int]]
+    pins: dict[int, int]
 
 
 class Node(NamedTuple):
@@ -102,6 +102,8 @@ class _Wirer:
         self.nets: list[tuple[int, Net]] = []
         self.own: dict[int, int] = {}
         self.on_two_nets: dict[tuple[int, int, int], TwoNets] = {}
+        self.joined_at: dict[tuple[int, int], int] = {}
+        """Where the file first joins a bit of a placement (its position), of those whose ports may not all be known."""
         self.connectors = Ports(start=block.ports.width)
         for name in block.contents.connectors if block.contents is not None else ():
             self.connectors.connect(name)
@@ -196,7 +198,9 @@ class _Wirer:
             self._unite(self.own.setdefault(bit, node), node)
             return
         placement = self.placements[position]
-        first, _ = placement.pins.setdefault(bit, (node, offset))
+        first = placement.pins.setdefault(bit, node)
+        if placement.block.known is not None:
+            self.joined_at.setdefault((position, bit), offset)
         if first == node:
             return
         if placement.block.is_part:
@@ -208,8 +212,8 @@ class _Wirer:
         if placement.block.contents is not None:
             self.notes.add("block pin", offset, f"{placement.block.ports.text(bit)} of {placement.instance.name.text}")
 
-    def _note_strange(self, placement: Placement, bit: int) -> None:
-        block, (_, offset) = placement.block, placement.pins[bit]
+    def _note_strange(self, placement: Placement, bit: int, offset: int) -> None:
+        block = placement.block
         view = "the view with contents" if block.view is None else block.view.name.text
         port = f"the port {block.ports.text(bit)} of {placement.instance.name.text}"
         self.notes.add("reference", offset, f"{port}, which the view {view} of the cell {block.cell.name.text} has not")
@@ -224,16 +228,16 @@ class _Wirer:
 
     def finish(self) -> Wiring:
         """Unite what is shorted, number the nodes in the order of the file, and return the wiring."""
-        for placement in self.placements:
+        for position, placement in enumerate(self.placements):
             if placement.block.known is not None:
                 for bit in sorted(placement.pins.keys() - placement.block.known):
-                    self._note_strange(placement, bit)
+                    self._note_strange(placement, bit, self.joined_at[position, bit])
             if placement.block.globals:
                 self.budget.spend(len(placement.block.globals), placement.instance.offset)
             for bit, ref in placement.block.globals.items():
-                placement.pins[bit] = (self.own[self._lead_out(bit, ref)], ref.offset)
+                placement.pins[bit] = self.own[self._lead_out(bit, ref)]
             if placement.block.shorts:
-                for one, other in placement.block.shorts.groups((bit, node) for bit, (node, _) in placement.pins.items()):
+                for one, other in placement.block.shorts.groups(placement.pins.items()):
                     self._unite(one, other)
         for one, other in self.block.shorts.groups(self.own.items()):
             self._unite(one, other)
@@ -249,8 +253,8 @@ class _Wirer:
             self.block.known.update(ports)
         if number != list(range(len(number))):  # where nothing was united, as in most flat netlists, they stay as they are
             for placement in self.placements:
-                for bit, (node, offset) in placement.pins.items():
-                    placement.pins[bit] = (number[node], offset)
+                for bit, node in placement.pins.items():
+                    placement.pins[bit] = number[node]
         twice = []
         for each in self.on_two_nets.values():
             first, second = (number[node] for node in each.nodes)

@@ -69,7 +69,7 @@ def _size(cell: UnfoldedCell, sizes: Mapping[int, _Size]) -> _Size:
 
 def _unfolded(wiring: Wiring, edif: Edif, notes: Notes, *, designated: bool) -> UnfoldedCell:
     """Return a cell with all that is the same wherever it is placed; the wiring is not needed after it."""
-    named = name_cell(wiring, notes, edif.places, designated=designated)
+    named = name_cell(wiring, notes, designated=designated)
     inherited: dict[int, dict[str, Property]] = {}
     items: list[Part | _InnerCell | None] = []
     for placement, label, pins in zip(wiring.placements, named.labels, named.pins, strict=True):
@@ -77,7 +77,7 @@ def _unfolded(wiring: Wiring, edif: Edif, notes: Notes, *, designated: bool) -> 
         if label is None:
             items.append(None)
         elif block.contents is not None:
-            items.append(_InnerCell(label.id, id(block), {bit: node for bit, (node, _) in placement.pins.items()}))
+            items.append(_InnerCell(label.id, id(block), placement.pins))
         else:
             if id(block) not in inherited:
                 of_view = () if block.view is None else block.view.properties
@@ -258,7 +258,7 @@ class _Unfolder:
     def _part(self, frame: _Frame, position: int, part: Part) -> None:
         index = frame.parts[position] = len(self.parts)
         if frame.path:  # the nodes of the first cell are the board's first nets, so its parts are what they will be
-            pins = (Pin(pin.name, pin.number, frame.nets[pin.net], pin.line, pin.column, pin.direction) for pin in part.pins)
+            pins = (Pin(pin.name, pin.number, frame.nets[pin.net], pin.direction) for pin in part.pins)
             part = part._replace(id=frame.path + part.id, pins=tuple(pins))
         self.parts.append(part)
         for number, pin in enumerate(part.pins):

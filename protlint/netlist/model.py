@@ -36,8 +36,6 @@ class Pin(NamedTuple):
     name: str
     number: str | None
     net: int
-    line: int
-    column: int
     direction: str | None = None
 
 

@@ -20,7 +20,6 @@ from typing import NamedTuple
 
 from protlint.netlist.connect import Placement, Wiring
 from protlint.netlist.definitions import Instance, PortInstance
-from protlint.netlist.forms import Places
 from protlint.netlist.hierarchy import Block
 from protlint.netlist.model import Pin, Property
 from protlint.netlist.notes import Notes
@@ -53,7 +52,7 @@ def _is_reference(name: str) -> bool:
     return re.sub(r"[\W_]", "", name.lower()) in _REFERENCE
 
 
-def name_cell(wiring: Wiring, notes: Notes, places: Places, *, designated: bool) -> NamedCell:
+def name_cell(wiring: Wiring, notes: Notes, *, designated: bool) -> NamedCell:
     """Return the names of what a cell places; ``designated`` tells whether the file's parts have designators."""
     labels = [_label(placement, notes, designated=designated) for placement in wiring.placements]
     groups = _groups(wiring.placements, labels)
@@ -61,7 +60,7 @@ def name_cell(wiring: Wiring, notes: Notes, places: Places, *, designated: bool)
     known: dict[int, dict[int, _PortFacts]] = {}
     pins = [
         () if label is None or placement.block.contents is not None
-        else _pins(placement, label, known, places, sectioned=position in together or label.section is not None)
+        else _pins(placement, label, known, sectioned=position in together or label.section is not None)
         for position, (placement, label) in enumerate(zip(wiring.placements, labels, strict=True))
     ]  # fmt: skip
     packages: list[tuple[int, ...]] = []
@@ -175,7 +174,7 @@ def _lowest(pins: Sequence[Pin]) -> tuple[int, int]:
 
 
 def _pins(
-    placement: Placement, label: Label, known: dict[int, dict[int, _PortFacts]], places: Places, *, sectioned: bool
+    placement: Placement, label: Label, known: dict[int, dict[int, _PortFacts]], *, sectioned: bool
 ) -> tuple[Pin, ...]:
     """Return the connected pins of a placement in the order of its cell's ports."""
     block = placement.block
@@ -185,11 +184,10 @@ def _pins(
             said.setdefault(bit, each)
     result = []
     of_block = known.setdefault(id(block), {})
-    for bit, (node, offset) in sorted(placement.pins.items()):
+    for bit, node in sorted(placement.pins.items()):
         facts = of_block.get(bit)
         if facts is None:
             facts = of_block[bit] = _port_facts(block, bit)
-        line, column = places.at(offset)
         here = said.get(bit) if said else None
         if here is None and facts.called is not None:
             name, number = facts.called
@@ -198,7 +196,7 @@ def _pins(
             number = number or _number(facts.numbers, facts, label.position, sectioned=sectioned)
             named = (None if here is None else _pin_name(here.properties)) or facts.named
             name, number = _called(facts.text, number, named)
-        result.append(Pin(name, number, node, line, column, facts.direction))
+        result.append(Pin(name, number, node, facts.direction))
     return tuple(result)
 
 

@@ -140,8 +140,8 @@ def test_a_ladder_resistance_is_right() -> None:
 
 
 def test_a_package_of_two_devices_is_two_elements() -> None:
-    pins = tuple(Pin(name, None, net, 1, 1) for net, name in enumerate(("C1", "B1", "E1", "C2", "B2")))
-    pins += (Pin("E2", None, 2, 1, 1),)
+    pins = tuple(Pin(name, None, net) for net, name in enumerate(("C1", "B1", "E1", "C2", "B2")))
+    pins += (Pin("E2", None, 2),)
     dual = Part("Q1", "Q1", "DUAL", "LIB", {}, pins, 1, 1)
     sections = tuple({"collector": (at,), "base": (at + 1,), "emitter": (at + 2,)} for at in (0, 3))
     seen = [SeenPart("npn", {}, sections=sections)]

@@ -52,7 +52,7 @@ def board(text: str, *, limits: Limits | None = None) -> Board:
             values["value"] = float(rest.pop()[1:])
         names = TERMINALS.get(kind, ("1", "2", "3", "4"))
         pairs = [one.split("=") if "=" in one else [names[place], one] for place, one in enumerate(rest)]
-        pins = tuple(Pin(name, None, numbers.setdefault(net, len(numbers)), 1, 1, None) for name, net in pairs)
+        pins = tuple(Pin(name, None, numbers.setdefault(net, len(numbers))) for name, net in pairs)
         parts.append(Part(designator, designator, kind.upper(), "LIB", {}, pins, 1, 1))
         roles: dict[str, tuple[int, ...]] = {}
         for place, (name, _) in enumerate(pairs):

@@ -110,7 +110,7 @@ def _board(made: Sequence[Made]) -> Board:
     numbers: dict[str, int] = {}
     parts, seen = [], []
     for kind, designator, joins, value in made:
-        pins = tuple(Pin(pin, None, numbers.setdefault(net, len(numbers)), 1, 1) for pin, net in joins)
+        pins = tuple(Pin(pin, None, numbers.setdefault(net, len(numbers))) for pin, net in joins)
         parts.append(Part(designator, designator, kind, "LIB", {}, pins, 1, 1))
         roles = {pin: (place,) for place, (pin, _) in enumerate(joins)}
         seen.append(SeenPart(kind, roles, values=Values(value=value)))

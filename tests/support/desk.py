@@ -89,7 +89,7 @@ def drawn(board: str) -> Netlist:
                 continue
             name, _, net = text.rpartition("=")
             pin = name or PINS[cell][len(pins)]
-            pins.append(Pin(pin, None, numbers.setdefault(net, len(numbers)), line, 1))
+            pins.append(Pin(pin, None, numbers.setdefault(net, len(numbers))))
         key = "VALUE" if cell in ("RES", "CAP", "IND") else "PART_NUMBER"
         if value != "-":
             properties[key.casefold()] = Property(key, value, "instance", line, 1)

@@ -79,7 +79,7 @@ def other_polarity(netlist: Netlist, part: str) -> Netlist:
 def with_link(netlist: Netlist, one: str, other: str, name: str = "W99") -> Netlist:
     """Return the netlist with a link between two nets."""
     names = [net.name for net in netlist.nets]
-    pins = tuple(Pin(str(place), None, names.index(net), 1, 1) for place, net in enumerate((one, other), 1))
+    pins = tuple(Pin(str(place), None, names.index(net)) for place, net in enumerate((one, other), 1))
     return rebuilt(netlist, (*netlist.parts, Part(name, name, "NET_TIE", "PARTS", {}, pins, 1, 1)), names)
 
 

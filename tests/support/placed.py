@@ -14,7 +14,7 @@ def placed(
     connected = []
     for index, pin in enumerate(pins):
         name, _, number = pin.partition("/")
-        connected.append(Pin(name, number or None, index, 1, 1))
+        connected.append(Pin(name, number or None, index))
     named = {name.casefold(): Property(name, value, "instance", 1, 1) for name, value in (properties or {}).items()}
     return Part(path + designator, designator, cell, "LIB", named, tuple(connected), 1, 1)
 

@@ -202,7 +202,7 @@ def _board(names: Mapping[str, str]) -> Board:
             cell="CELL",
             library="LIB",
             properties={"value": Property("Value", "1R", "instance", 20 + place, 9)},
-            pins=(Pin("1", "1", 0, 20 + place, 1), Pin("2", "2", 1, 20 + place, 2)),
+            pins=(Pin("1", "1", 0), Pin("2", "2", 1)),
             line=20 + place,
             column=3,
         )
