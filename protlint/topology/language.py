@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 
@@ -17,7 +17,7 @@ from protlint.topology.read import read_rule_file
 from protlint.topology.slips import check_pattern
 from protlint.topology.terms import Rule, Shape
 
-__all__ = ["Described", "RuleErrors", "Rules", "load_rules", "read_rules"]
+__all__ = ["Described", "RuleErrors", "Rules", "load_rules", "own_rules", "read_rules"]
 
 ENDING = ".rule"
 """What a rule file's name ends in."""
@@ -75,10 +75,8 @@ def load_rules(extra_folders: Sequence[str | Path] = ()) -> Rules:
     RuleErrors : rule files hold mistakes; it lists all of them, each with file, line and column.
     FileError : a folder is missing or holds no rule file, or a file cannot be read.
     """
-    texts: dict[str, str] = {}
-    own = data_folder("rules")
-    for path in sorted(own.rglob(f"*{ENDING}")):
-        texts[f"rules/{path.relative_to(own).as_posix()}"] = path.read_text(encoding="utf-8")
+    own = own_rules()
+    texts = dict(own)
     for folder in map(Path, extra_folders):
         if not folder.is_dir():
             raise FileError("no such folder", file=shown_name(folder))
@@ -91,11 +89,21 @@ def load_rules(extra_folders: Sequence[str | Path] = ()) -> Rules:
                 texts[name] = content.decode("utf-8-sig")
             except UnicodeDecodeError as error:
                 raise FileError(f"this is not UTF-8 text (byte {error.start + 1})", file=name) from None
-    return read_rules(texts)
+    return read_rules(texts, proven={name for name, text in own.items() if texts[name] is text})
 
 
-def read_rules(texts: Mapping[str, str]) -> Rules:
+def own_rules() -> dict[str, str]:
+    """Return the texts of protlint's own rule files, by file name."""
+    own = data_folder("rules")
+    files = sorted(own.rglob(f"*{ENDING}"))
+    return {f"rules/{path.relative_to(own).as_posix()}": path.read_text(encoding="utf-8") for path in files}
+
+
+def read_rules(texts: Mapping[str, str], *, proven: Collection[str] = ()) -> Rules:
     """Return the rules in some files' texts, by file name.
+
+    Files that are ``proven`` are not searched for slips of the pen, which takes a third of the time: protlint's own are when
+    it is tested.
 
     Raises
     ------
@@ -118,7 +126,7 @@ def read_rules(texts: Mapping[str, str]) -> Rules:
     patterns: list[Pattern] = []
     for one in resolved.values():
         flat = flatten(one, shapes, mistakes)
-        for pattern in flat:
+        for pattern in flat if one.rule.file not in proven else ():
             if pattern.polarity == "n":
                 check_pattern(pattern, one, mistakes)
         patterns += flat

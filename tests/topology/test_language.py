@@ -8,7 +8,7 @@ from pathlib import Path
 import pytest
 
 from protlint.sources import FileError, InputError
-from protlint.topology.language import Rules, load_rules, read_rules
+from protlint.topology.language import Rules, load_rules, own_rules, read_rules
 from protlint.topology.match import find_limiters
 from protlint.topology.mistakes import RuleErrors
 from tests.support.boards import board
@@ -213,6 +213,11 @@ def test_the_examples_of_the_readme_are_rules() -> None:
     code = [block for block in blocks if block.lstrip().startswith(("(topology", "(shape"))]
     rules = read_rules({f"example {place}": block.split("(pass carrier")[0] for place, block in enumerate(code)})
     assert list(rules.topologies) == ["watched-emitter", "divided-emitter"]
+
+
+def test_our_own_rules_have_no_slips() -> None:
+    """They are taken as proven when they are loaded; here they are not."""
+    assert read_rules(own_rules()).patterns == load_rules().patterns
 
 
 def test_every_rule_of_our_own_says_what_it_is_and_where_it_comes_from() -> None:
