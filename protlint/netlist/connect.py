@@ -28,9 +28,11 @@ def wire(block: Block, notes: Notes, budget: Budget, design_wide: Globals) -> Wi
     """
     wirer = _Wirer(block, notes, budget, design_wide)
     sheets = block.contents.sheets if block.contents is not None else []
+    pages = block.contents.pages if block.contents is not None else 0
+    sheets.reverse()
     for children in block.children:
-        sheet = sheets.pop(0)
-        instances: Scope[_Placed] = Scope()
+        instances: Scope[_Placed] = wirer.beside if len(sheets) > pages else Scope()
+        sheet = sheets.pop()
         for instance, child in zip(sheet.instances, children, strict=True):
             wirer.place(instance, child, instances)
         for net in sheet.nets:
@@ -104,6 +106,8 @@ class _Wirer:
         self.on_two_nets: dict[tuple[int, int, int], TwoNets] = {}
         self.joined_at: dict[tuple[int, int], int] = {}
         """Where the file first joins a bit of a placement (its position), of those whose ports may not all be known."""
+        self.beside: Scope[_Placed] = Scope()
+        """What is placed beside the pages, if there are any: nets on a page may mean that too."""
         self.connectors = Ports(start=block.ports.width)
         for name in block.contents.connectors if block.contents is not None else ():
             self.connectors.connect(name)
@@ -159,7 +163,7 @@ class _Wirer:
                 bits = self.connectors.undeclared(ref.port, ref.member)
             self.budget.spend(len(bits) - 1, ref.offset)
             return [(_OWN, bit) for bit in bits]
-        placed = instances.find(ref.instance)
+        placed = instances.find(ref.instance) or self.beside.find(ref.instance)
         elements = None if placed is None else self._elements(placed, ref)
         if placed is None or elements is None:
             self.notes.add("reference", ref.offset, f"the port {ref.port} of {ref.instance}, which is not there")

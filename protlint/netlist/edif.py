@@ -7,7 +7,7 @@ what stands inside them. What cannot be read and would change the netlist if it 
 from __future__ import annotations
 
 import re
-from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from itertools import chain
 from math import prod
 from typing import NoReturn, Protocol
@@ -42,6 +42,7 @@ from protlint.netlist.references import (
     joined,
     keyword,
     member,
+    nets_inside,
     port_refs,
     program,
     shorted,
@@ -84,15 +85,6 @@ def read_definitions(text: str, file: str) -> tuple[Edif, Notes]:
         what = what if text.strip() else "an empty file"
         raise InputError(f"this is {what}, not EDIF: a netlist begins with (edif ...)", file=file, line=1, column=1)
     return _Reader(text, file).read()
-
-
-def _nets(form: Form) -> Iterator[Net]:
-    """Yield the nets of a sheet, those in bundles too."""
-    for item in form:
-        if type(item) is Net:
-            yield item
-        elif type(item) is Form and item.head in ("netbundle", "listofnets"):
-            yield from _nets(item)
 
 
 class _Reader(FormParser):
@@ -291,7 +283,7 @@ class _Reader(FormParser):
 
     def _sheet(self, form: Form) -> Sheet:
         instances = tuple(item for item in form if type(item) is Instance)
-        nets = tuple(_nets(form))
+        nets = tuple(nets_inside(form))
         self._duplicates(instances)
         self._duplicates(nets)
         return Sheet(instances, nets)

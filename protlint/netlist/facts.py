@@ -7,9 +7,9 @@ from collections.abc import Sequence
 
 from protlint.netlist.definitions import Edif, Library
 from protlint.netlist.flatten import Flat
+from protlint.netlist.notes import some_of
 
 _LIBRARIES_SHOWN = 12
-_NAMES_SHOWN = 6
 
 
 def facts_of(edif: Edif, flat: Flat, encoding: str) -> dict[str, str]:
@@ -33,8 +33,7 @@ def facts_of(edif: Edif, flat: Flat, encoding: str) -> dict[str, str]:
     }
     alike = [name for name, count in Counter(net.name for net in flat.nets).items() if count > 1]
     if alike:
-        more = f" and {len(alike) - _NAMES_SHOWN} more" if len(alike) > _NAMES_SHOWN else ""
-        facts["nets named alike"] = f"{', '.join(alike[:_NAMES_SHOWN])}{more}: nothing joins them, so they are kept apart"
+        facts["nets named alike"] = f"{some_of(alike)}: nothing joins them, so they are kept apart"
     if joints:
         facts["rippers and ties"] = f"{joints}, which join nets and are no parts"
     shorted = sum(cell.shorted for cell in flat.cells)
@@ -51,8 +50,7 @@ def _libraries(libraries: Sequence[Library]) -> str:
         f"{each.name.text} ({'external, ' if each.external else ''}{_counted(len(each.cells), 'cell')})"
         for each in libraries
     ]
-    more = len(told) - _LIBRARIES_SHOWN
-    return ", ".join(told[:_LIBRARIES_SHOWN]) + (f" and {more} more" if more > 0 else "") or "none"
+    return some_of(told, _LIBRARIES_SHOWN) or "none"
 
 
 def _shape(flat: Flat) -> str:

@@ -41,7 +41,7 @@ _ANY = (
 _ANY_GROUPS = 6
 _IN_SHAPE = re.compile(r'[()?]|""|\w+')
 _OUTLINE = re.compile(rf'\({_WHITE}*+((?:{_WORD})?)|\)|"[^"]*+"?|{_WORD}')
-_PERCENT = re.compile(r"%(\d+(?: +\d+)*) *%|%")
+_PERCENT = re.compile(r"%(\d++(?: ++\d++)*+) *+%|%")
 
 
 @cache

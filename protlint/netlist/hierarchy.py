@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from itertools import chain
 
 from protlint.netlist.definitions import Cell, Contents, Edif, GlobalRef, Instance, Library, Name, Scope, View, ViewRef
-from protlint.netlist.notes import Notes
+from protlint.netlist.notes import Notes, some_of
 from protlint.netlist.ports import Budget, Globals, Ports, Shorts
 from protlint.sources import UsageError
 
@@ -67,9 +67,13 @@ class Block:
 
     @property
     def sections(self) -> int:
-        """How many sections of a package its ports list pin numbers for; 1 where each port has one number or none."""
+        """How many sections of a package its ports list pin numbers for; 1 where no two ports list more than one.
+
+        A single port that lists several is on several pins of one device, unless it is the only one.
+        """
         ports = (port for view in self.cell.views for port in view.ports if port.name.width == 1)
-        return max((len(" ".join(port.designators).split()) for port in ports), default=1)
+        listed = sorted(len(" ".join(port.designators).split()) for port in ports)
+        return max([1, *(listed[-2:-1] or listed)])
 
 
 class _KnownCell:
@@ -217,10 +221,10 @@ def choose_top(directory: Directory, notes: Notes, wanted: str | None) -> tuple[
             if sought in (design.name.text.lower(), design.name.identifier.removeprefix("&").lower())
         )  # fmt: skip
         if not designs:
-            known = ", ".join(dict.fromkeys(design.name.text for design in edif.designs)) or "none"
+            known = some_of(list(dict.fromkeys(design.name.text for design in edif.designs))) or "none"
             raise UsageError(f"no design is called {wanted!r}; designs in the file: {known}", file=edif.places.file)
     elif len(designs) > 1:
-        names = ", ".join(design.name.text for design in designs)
+        names = some_of([design.name.text for design in designs])
         told = f"several designs, {names}: the first is taken, --design NAME takes another"
         notes.add("designs", designs[1].offset, told)
     for design in designs:
@@ -247,6 +251,6 @@ def _top_without_design(directory: Directory, notes: Notes) -> tuple[Block, str,
     tops = [block for block in inside if id(block.cell) not in placed] or inside
     top = max(tops, key=lambda block: sum(map(len, block.children)))
     if len(tops) > 1:
-        names = ", ".join(block.cell.name.text for block in tops[:5])
+        names = some_of([block.cell.name.text for block in tops])
         notes.add("designs", top.cell.offset, f"no design, and no cell places these: {names}; {top.cell.name.text} is taken")
     return top, top.cell.name.text, "no design statement; the cell that no other places"

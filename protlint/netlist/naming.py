@@ -24,6 +24,8 @@ from protlint.netlist.hierarchy import Block
 from protlint.netlist.model import Pin, Property
 from protlint.netlist.notes import Notes
 
+_SECTION = re.compile(r"[A-Za-z]+[0-9]+[A-Za-z]$")
+"""A designator that may name a section of a package."""
 _PIN_NAME = ("name", "pin name", "pin_name", "pinname")
 """What a pin's property that names it is called, where its port has only a number."""
 
@@ -101,6 +103,10 @@ def _label(placement: Placement, notes: Notes, *, designated: bool) -> Label | N
         return None
     instance = placement.instance
     section, package = _section_and_package(instance, notes)
+    if section is None and package and _SECTION.match(package):
+        place = _section_position(package, package[:-1])
+        if place is not None and place < placement.block.sections > 1:  # the cell lists pin numbers for each section
+            section, package = package, package[:-1]
     each = _split((package or "",))
     if placement.element is not None and len(each) == instance.name.width and section is None:
         package = name = each[placement.element]  # one designator for each element of an array

@@ -56,6 +56,7 @@ class Ports:
         self._namesakes: dict[str, dict[str, Slot]] = {}
         self._by_text: dict[tuple[str, tuple[int, ...]], Slot] = {}
         self._slots: list[Slot] = []
+        self._bundles: list[Slot] = []
         self._starts: list[int] = []
         for ports in views:
             before = self.width
@@ -71,6 +72,8 @@ class Ports:
             self._add(inner, slot.inner)
         if not port.ports:
             self._fill(slot, port.name.width)
+        elif scope is self._scope:
+            self._bundles.append(slot)
         slot.stop = self.width
         identifier = port.name.identifier
         if scope.add(identifier, slot) == "duplicate":
@@ -118,6 +121,9 @@ class Ports:
                 return None
             scope = holder.inner
         slot = scope.find(port)
+        if slot is None and bundle is None:  # a port in a bundle, by its own name alone
+            inside = [inner for each in self._bundles if (inner := each.inner.find(port)) is not None]
+            slot = inside[0] if len(inside) == 1 else None
         if slot is None:
             return None
         if text is not None and slot.text != text and port in self._namesakes:

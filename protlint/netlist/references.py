@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from itertools import chain
 
-from protlint.netlist.definitions import GlobalRef, Joined, PortList, PortRef, Shorted, ViewRef
+from protlint.netlist.definitions import GlobalRef, Joined, Net, PortList, PortRef, Shorted, ViewRef
 from protlint.netlist.forms import Form
 from protlint.netlist.properties import integer, text_of
 
@@ -127,6 +127,22 @@ def _port_ref(form: Form) -> PortRef:
         message = "this reference inside another reaches into another level of the hierarchy, which is not read"
         raise form.places.error(message, form.offset if isinstance(inner, ViewRef) else inner.offset)
     return PortRef(port, instance, form.offset, element, bundle, instance_element)
+
+
+def nets_inside(form: Form) -> Iterator[Net]:
+    """Yield the nets of a sheet, those in bundles too.
+
+    Raises
+    ------
+    InputError : something is joined outside any net.
+    """
+    for item in form:
+        if type(item) is Net:
+            yield item
+        elif type(item) is Form and item.head in ("netbundle", "listofnets"):
+            yield from nets_inside(item)
+        elif type(item) is Form and item.head == "joined":
+            raise item.error("(joined ...) outside a net is not read")
 
 
 def joined(form: Form) -> Joined:

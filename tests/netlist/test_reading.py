@@ -95,6 +95,19 @@ def test_choosing_a_design() -> None:
         read_netlist(VALID / "unresolved.edf", design="lost")
 
 
+def test_of_many_designs_a_few_are_named() -> None:
+    data = board(placed("R1", "R"), design="".join(f"(design d{number} (cellRef TOP))" for number in range(1000)))
+    (warning,) = read(data).warnings
+    assert "d0, d1, d2, d3, d4, d5 and 994 more" in warning.message
+    with pytest.raises(UsageError, match="d5 and 994 more"):
+        read_netlist_bytes(data, "x.edf", design="other")
+
+
+def test_codes_without_end_between_per_cent_signs_take_little_memory() -> None:
+    data = board(placed("R1", "R", f'(property P (string "%{"6 " * 1_000_000}"))'))
+    assert len(str(read(data).parts[0].properties["p"].value)) == 2_000_001
+
+
 def test_of_several_cells_nothing_places_the_fullest_is_taken() -> None:
     contents = placed("R1", "R") + placed("R2", "R")
     netlist = read(board(contents, cells=RES + cell("OTHER", placed("R9", "R")), design=""))
