@@ -117,16 +117,15 @@ def _nets(
     limits: Limits,
     supply_of: Callable[[Sequence[str], Limits], Supply | None],
 ) -> tuple[BoardNet, ...]:
-    names: list[tuple[str, ...]] = [()] * count
+    names: list[dict[str, None]] = [{} for _ in range(count)]
     for net, index in zip(netlist.nets, index_of, strict=True):
-        if net.name not in names[index]:
-            names[index] += (net.name,)
+        names[index][net.name] = None
     pins: list[list[tuple[int, str]]] = [[] for _ in range(count)]
     for part in parts:
         for role, index in part.roles.items():
             pins[index].append((part.index, role))
     nets = []
-    for index, of_net in enumerate(names):
+    for index, of_net in enumerate(map(tuple, names)):
         if len(of_net) > 1:
             of_net = tuple(sorted(of_net, key=lambda name: supply_of((name,), limits) is None))
         nets.append(BoardNet(index, of_net, tuple(pins[index]), supply_of(of_net, limits)))

@@ -137,10 +137,14 @@ def _kind(part: Part, part_number: str | None, entry: PartEntry | None) -> tuple
     return _by_letter(part)
 
 
+_LONGEST = 200
+"""Of a longer text only its beginning is looked at: two words far apart in it tell nothing, and seeking them takes long."""
+
+
 @lru_cache(maxsize=8192)
 def _by_words(text: str) -> tuple[str, str]:
     for pattern, kind, why in _SAYS:
-        if pattern.search(text):
+        if pattern.search(text, 0, _LONGEST):
             return kind, why
     return "", ""
 

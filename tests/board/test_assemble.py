@@ -124,6 +124,12 @@ def test_a_long_chain_and_a_long_ladder_take_their_time_but_end() -> None:
     assert sum(len(element.parts) for element in resistors(made)) == 2 * rungs
 
 
+def test_a_net_of_many_links_has_all_their_names() -> None:
+    links = 20_000
+    made = board("\n".join(f"link W{n} N{n} N{n + 1}" for n in range(links)))
+    assert [len(net.names) for net in made.nets] == [links + 1]
+
+
 def test_the_graph_has_one_edge_a_pin() -> None:
     made = board("npn Q1 OUT DRV GND\nresistor R1 DRV OUT =1")
     graph = made.graph()

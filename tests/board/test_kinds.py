@@ -227,3 +227,8 @@ def test_a_test_point_joins_nothing() -> None:
 
 def test_the_class_letter_counts_inside_hierarchy() -> None:
     assert _kind(placed("R5", "ZZ", ("1", "2"), path="CH2/")) == "resistor"
+
+
+def test_of_a_text_of_a_megabyte_only_the_beginning_is_looked_at() -> None:
+    assert _kind(placed("Q1", "X", ("1", "2", "3"), {"VALUE": "npn " * 250_000})) == "npn"
+    assert _kind(placed("Q1", "X", ("1", "2", "3"), {"VALUE": "x " * 500_000 + "npn"})) == "unknown"
