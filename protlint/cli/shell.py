@@ -75,9 +75,9 @@ def say(text: str) -> None:
 
 def complain(text: str) -> None:
     """Write an error to standard error, one line each, with whatever it quotes made harmless."""
-    from protlint.report.safe import terminal
+    from protlint.report.safe import brief, terminal
 
-    lines = "".join(terminal(line) + "\n" for line in text.split("\n"))
+    lines = "".join(terminal(brief(line)) + "\n" for line in text.split("\n"))
     try:
         _write(sys.stderr, lines)
     except OSError:

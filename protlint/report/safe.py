@@ -23,7 +23,8 @@ MARKDOWN_LINKED = re.compile(r"(?i)[@#!%~&$](?=\w)|:(?=[a-z][\w+-]*:)|\b(https?|
 """What trackers turn into links by themselves: mentions, references, addresses; an empty comment keeps them text."""
 
 LONG_NAME = re.compile(r"[^\s,;:()]{161,}")
-"""What nobody reads to its end."""
+LONG_TEXT = 4_000
+"""What nobody reads to its end: a name, and a whole text."""
 
 XML_BREAK = re.compile("[^\t\n\r\x20-\ud7ff\ue000-\ufffd\U00010000-\U0010ffff]")
 
@@ -44,9 +45,15 @@ def terminal(text: str) -> str:
     return SUSPECT.sub(_escaped_for_terminal, text)
 
 
+def brief(text: str) -> str:
+    """Return a text; of one longer than :data:`LONG_TEXT` its two ends, and how much lies between."""
+    return text if len(text) <= LONG_TEXT else f"{text[:1000]} ..({len(text) - 1300} more).. {text[-300:]}"
+
+
 def readable(text: str) -> str:
-    """Return text fit for a terminal whose longest names show their two ends, and how much lies between."""
-    return LONG_NAME.sub(lambda match: f"{match[0][:100]}..({len(match[0]) - 130} more)..{match[0][-30:]}", terminal(text))
+    """Return text fit for a terminal; of the longest names and texts their two ends, and how much lies between."""
+    text = LONG_NAME.sub(lambda match: f"{match[0][:100]}..({len(match[0]) - 130} more)..{match[0][-30:]}", terminal(text))
+    return brief(text)
 
 
 def xml(text: str) -> str:

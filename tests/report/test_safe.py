@@ -38,6 +38,16 @@ def test_the_longest_names_show_their_ends(text: str, times: int) -> None:
     assert readable("n" * 160) == "n" * 160
 
 
+def test_the_longest_texts_show_their_ends() -> None:
+    text = "begins " + "and goes on " * 1000 + "and ends"
+    shown = readable(text)
+    assert shown.startswith("begins and")
+    assert shown.endswith("and ends")
+    assert f"({len(text) - 1300} more)" in shown
+    assert len(shown) < 1400
+    assert readable(text[:4000]) == text[:4000]
+
+
 @given(ANY_TEXT)
 def test_xml_takes_it(text: str) -> None:
     element = ElementTree.Element("a", b=xml(text))
