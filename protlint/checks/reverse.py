@@ -226,7 +226,7 @@ def _junction(case: Case, part_id: str, names: tuple[str, ...], worst: Stressed)
     if ratio <= case.threshold(CHECK, "warning"):
         return
     level: Level = "error" if ratio > case.threshold(CHECK, "error") else "warning"
-    ends = ("emitter", "base") if case.part(part_id).kind.startswith("npn") else ("base", "emitter")
+    anode, cathode = ("emitter", "base") if case.part(part_id).kind.startswith("npn") else ("base", "emitter")
     rated = format_quantity(preferred(reverse_V * 1.5, "E6", "up"), "V")
     yield case.finding(
         CHECK,
@@ -237,7 +237,8 @@ def _junction(case: Case, part_id: str, names: tuple[str, ...], worst: Stressed)
             WorkingLine("reverse voltage", f"solved {worst.words}", reverse_V, "V"),
             WorkingLine("it may have", "V_EBO", allowed.value, "V", allowed.source),
         ),
-        remedy=f"fit a diode of {rated} or more across it: anode to the {ends[0]} of {part_id}, cathode to its {ends[1]}",
+        remedy=f"fit a diode of {rated} or more between base and emitter of {part_id}: anode to its {anode} "
+        f"({_net(case, names[0], anode)}), cathode to its {cathode} ({_net(case, names[0], cathode)})",
         level=level,
         assumption=worst.assumed or case.assumes(*VOLTAGES),
         subject=part_id,
@@ -264,6 +265,8 @@ def _collector_junction(case: Case, part_id: str, name: str, solved: list[Stress
         return
     _, pin, current_A, may, state, at = max(found, key=lambda row: row[0])
     rated = format_quantity(preferred(max(1.5 * abs(state.voltage_V), 10.0), "E6", "up"), "V")
+    net, collector = _net(case, name, "collector"), f"the collector of {part_id}"
+    anode, cathode = (net, collector) if sign > 0.0 else (collector, net)
     yield case.finding(
         CHECK,
         f"the collector junction of {part_id} conducts {format_quantity(current_A, 'A')} {at.words}, its {pin} may take "
@@ -273,7 +276,13 @@ def _collector_junction(case: Case, part_id: str, name: str, solved: list[Stress
             WorkingLine(f"{pin} current", f"solved {at.words}", current_A, "A"),
             WorkingLine("it may take", f"its {pin} current rating", may.value, "A", may.source),
         ),
-        remedy=f"fit a diode of {rated} or more in series with the collector of {part_id}, the way the shunt conducts",
+        remedy=f"fit a diode of {rated} or more in series with {collector}: anode to {anode}, cathode to {cathode}",
         assumption=at.assumed or case.assumes(*VOLTAGES),
         subject=f"{part_id} collector junction",
     )
+
+
+def _net(case: Case, device: str, terminal: str) -> str:
+    """Return the name of the net at a terminal of the part that a device stands for."""
+    element = case.board.elements[case.bench.element_of[device]]
+    return case.board.nets[element.terminals[terminal]].name

@@ -18,6 +18,9 @@ REACH = 1.15
 
 MOST_TRIES = 8
 
+FARTHEST = 30.0
+"""By how much a sense resistance is changed at most where the limit does not go as 1 / R."""
+
 
 @dataclass(frozen=True, slots=True)
 class Sense:
@@ -68,6 +71,8 @@ def sense_remedy(case: Case) -> Remedy:
 
     The limit goes nearly as 1 / R, so carry bounds the resistance from above and cap from below. Values of E24 inside that
     window, then of E96, are solved over all corners until one meets both. In a bank or chain they are those of each part.
+    Where none does though the limit spreads less than the window is wide, or where a preset moves the limit besides, the end
+    that the needs leave is looked for among all values.
     """
     sense = sense_of(case)
     if sense is None or case.solution.not_solved is not None:
@@ -82,13 +87,46 @@ def sense_remedy(case: Case) -> Remedy:
         nothing = "no sense value meets it: at the working output the stage passes nothing, whatever the sense resistance"
         return out_of_reach(case) or nothing, ()
     if upper_ohm is not None and lower_ohm is not None and lower_ohm > upper_ohm * REACH:
-        return _no_value(case, carries_A, most_A), ()
+        return _at_the_end(case, sense) if case.parts("preset") else (_no_value(case, carries_A, most_A), ())
     ends = (None if end is None else sense.part_ohm(end) for end in (lower_ohm, upper_ohm))
     for part_ohm in _candidates(*ends):
         factor = part_ohm / sense.part_ohm(sense.now_ohm)
         if meets(resolve(case, factor), carry_A, cap_A):
             return fit_sense(case, sense, part_ohm, factor)
-    return _no_value(case, carries_A, most_A), ()
+    fits_in = carry_A is not None and cap_A is not None and most_A / carries_A <= cap_A / carry_A
+    return _at_the_end(case, sense) if fits_in or case.parts("preset") else (_no_value(case, carries_A, most_A), ())
+
+
+def _at_the_end(case: Case, sense: Sense) -> Remedy:
+    """Return the greatest sense resistance of E24 that still carries enough (with no carry stated, the least that keeps the
+    cap), where it meets both needs; else what it comes to. More of it lets less through, so it is found by halving."""
+    carry_A, cap_A = case.needs.carry_A, case.needs.cap_A
+    now_ohm = sense.part_ohm(sense.now_ohm)
+    values = within(now_ohm / FARTHEST, now_ohm * FARTHEST, "E24")
+
+    def at(place: int) -> Solution:
+        return resolve(case, values[place] / now_ohm)
+
+    low, high = -1, len(values)
+    while high - low > 1:
+        middle = (low + high) // 2
+        does = meets(at(middle), carry_A, None) if carry_A is not None else not meets(at(middle), None, cap_A)
+        low, high = (middle, high) if does else (low, middle)
+    place = low if carry_A is not None else high
+    presets = ", ".join(case.parts("preset"))
+    beside, others = (f" beside {presets}", f": give {presets} other values") if presets else ("", "")
+    if not 0 <= place < len(values):
+        span = f"{format_quantity(values[0], 'ohm')} to {format_quantity(values[-1], 'ohm')}"
+        return f"no sense value of {span} meets it{beside}{others}", ()
+    solution, factor = at(place), values[place] / now_ohm
+    if meets(solution, carry_A, cap_A):
+        return fit_sense(case, sense, values[place], factor)
+    most_A, parts = greatest_most_A(solution) or 0.0, ", ".join(sense.parts)
+    carry, cap, most = (format_quantity(amperes or 0.0, "A") for amperes in (carry_A, cap_A, most_A))
+    return (
+        f"no sense value meets both{beside}: with {format_quantity(values[place], 'ohm')} as {parts}, of those tried the "
+        f"greatest that carries {carry}, up to {most} passes and the cap is {cap}{others}"
+    ), ()
 
 
 def _candidates(lower_ohm: float | None, upper_ohm: float | None) -> Sequence[float]:

@@ -7,10 +7,11 @@ import re
 import pytest
 
 from protlint.checks.sizing import greatest_most_A, least_carries_A
+from protlint.quantities import preferred
 from protlint.quantities.series import hundredths
 from tests.support.cures import figure, resistor
 from tests.support.desk import found, the_one
-from tests.support.judged import Job, follower, sink, source
+from tests.support.judged import Job, folding, follower, sink, source
 
 
 def spread(job: Job) -> float:
@@ -73,3 +74,40 @@ def test_an_output_that_the_supply_s_low_end_does_not_reach_is_told_from_a_weak_
     assert "[limiter" in (one.remedy or "")
     lower = low.limited("limiter", "*", output="10 V").review()
     assert not [one for one in lower.findings if one.check in ("carry-not-met", "drive-insufficient")]
+
+
+def exchanged(preset: str) -> Job:
+    """The stage that folds back, its limit set by a preset whose legs have each other's values."""
+    return folding().drawn(("R62 RES 180 SNS STOP POWER:0.25W\nR63 RES 1k8 STOP GND POWER:0.5W", preset))
+
+
+FOLDBACK = exchanged("R62 RES 1k8 SNS STOP POWER:0.25W\nR63 RES 180 STOP GND POWER:0.5W")
+SLOPE = exchanged("R62 RES 22k SNS STOP POWER:0.5W\nR63 RES 180 STOP +20V POWER:0.5W\nR64 RES 330 STOP OUT POWER:0.25W")
+
+
+@pytest.mark.parametrize(("job", "check"), [(FOLDBACK, "cap-exceeded"), (SLOPE, "carry-not-met")], ids=["foldback", "slope"])
+def test_where_a_preset_decides_no_cap_is_asked_for_that_is_met_already(job: Job, check: str) -> None:
+    (ill,) = found(job.review(), check)
+    said = ill.remedy or ""
+    assert said.startswith("no sense value")
+    assert "beside R62, R63" in said
+    assert "spreads" not in said
+    assert "cap has to be" not in said
+
+
+def test_the_value_that_comes_nearest_beside_a_preset_is_what_it_is_said_to_be() -> None:
+    (ill,) = found(FOLDBACK.review(), "cap-exceeded")
+    ohm, most_A = figure(ill.remedy or "", "ohm"), float(re.search(r"up to ([0-9.]+) A passes", ill.remedy or "")[1])  # type: ignore[index]
+    nearest, next_one = (resistor(FOLDBACK, "R61", value).review() for value in (ohm, preferred(1.001 * ohm, "E24", "up")))
+    assert not found(nearest, "carry-not-met") + found(nearest, "drive-insufficient")
+    assert most_A == pytest.approx(greatest_most_A(the_one(nearest).solution), rel=0.01)
+    assert least_carries_A(the_one(next_one).solution) < 0.8  # type: ignore[operator]
+
+
+def test_a_value_beside_a_preset_far_from_1_over_r_is_found_all_the_same() -> None:
+    """With its legs exchanged the drive decides, not the divider: the limit goes otherwise than as 1 / R."""
+    job = FOLDBACK.stated(carry="0.3 A", cap="0.8 A", load=None)
+    (ill,) = found(job.review(), "cap-exceeded")
+    assert figure(ill.remedy or "", "ohm") == 22.0
+    checks = {one.check for one in found(resistor(job, "R61", 22.0).review())}
+    assert not checks & {"cap-exceeded", "carry-not-met", "drive-insufficient"}

@@ -152,7 +152,9 @@ def cures() -> Iterator[Cure]:
 
     def diode(job: Job, text: str) -> Job:
         assert figure(text, "V") < 100.0
-        return job.drawn(("C1 CAP", "D2 DIODE QSD1 SNS BASE\nC1 CAP")).knowing("QSD1", **DIODE)
+        told = re.search(r"anode to its \w+ \((\S+)\), cathode to its \w+ \((\S+)\)", text)
+        assert told
+        return job.drawn(("C1 CAP", f"D2 DIODE QSD1 {told[1]} {told[2]}\nC1 CAP")).knowing("QSD1", **DIODE)
 
     pulled = sink().drawn(("BASE STOP GND", "TAKE STOP GND"), ("C1 CAP", "D1 DIODE QSD1 BASE TAKE\nC1 CAP"))
     yield Cure(
@@ -163,7 +165,7 @@ def cures() -> Iterator[Cure]:
     )
 
     def steered(job: Job, text: str) -> Job:
-        assert "in series with the collector" in text
+        assert "in series with the collector of Q2: anode to BASE, cathode to the collector" in text
         assert figure(text, "V") < 100.0
         return job.drawn(("BASE STOP GND", "TAKE STOP GND"), ("C1 CAP", "D1 DIODE QSD1 BASE TAKE\nC1 CAP")).knowing(
             "QSD1", **DIODE
