@@ -116,6 +116,7 @@ class _Reader(FormParser):
         self.notes = Notes(self.places)
         self._scales: Scales = {}
         self._property_names: dict[str, str] = {}
+        self._words: dict[str, str] = {}
         self._view_refs: dict[tuple[str, str, str | None], ViewRef] = {}
         self._aliases: dict[str, str] = {}
         self._met: set[str] = set()
@@ -141,7 +142,7 @@ class _Reader(FormParser):
 
     def atom(self, token: str) -> str:
         """Return a word as it is, but the same object in all its places: references are many and repeat what they name."""
-        return token
+        return self._words.setdefault(token, token)
 
     def head(self, token: str) -> str | None:
         """Return a keyword in lower case, None for those that are passed over."""
@@ -151,8 +152,8 @@ class _Reader(FormParser):
         return keyword if keyword in USED or keyword in REFUSED else None
 
     def _plain_port_ref(self, offset: int, port: str, instance: str) -> PortRef:
-        atoms = self.atoms
-        return PortRef(atoms[port], atoms[instance], offset)
+        same = self._words.setdefault
+        return PortRef(same(port, port), same(instance, instance), offset)
 
     def _plain_view_ref(self, _offset: int, view: str, cell: str, library: str | None = None) -> ViewRef:
         """Return the reference that an instance makes: the same few on every part, so they are looked up."""
@@ -164,7 +165,7 @@ class _Reader(FormParser):
 
     def _plain_property(self, offset: int, name: str, text: str) -> Form:
         """Return a property of a text, as if no ``string`` stood around it."""
-        form = Form(("property", self.atoms[name], text))
+        form = Form(("property", self.atom(name), text))
         form.offset = offset
         form.places = self.places
         return form

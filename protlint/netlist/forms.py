@@ -198,7 +198,6 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
         self.places = Places(text, file)
         self.reducers = reducers or {}
         self.shapes = shapes or {}
-        self.atoms = _Table(self.atom)
         self.unpaired: list[tuple[int, str]] = []
         """Strings that hold a per cent sign without its partner, with their offsets."""
 
@@ -241,7 +240,7 @@ class FormParser(sexpdata.Parser):  # type: ignore[misc]
         """
         heads, reducers, places = _Table(self.head), self.reducers, self.places
         # Where words are made of what stands there, one serves all its places; where not, looking it up only costs.
-        atoms = None if type(self).atom is FormParser.atom else self.atoms
+        atoms = None if type(self).atom is FormParser.atom else _Table(self.atom)
         heads[""] = None if reducers else ""
         scan = _tokens(*self.shapes)
         of_shapes = scan.groups - _ANY_GROUPS
