@@ -202,6 +202,20 @@ def test_reducers_replace_lists_as_they_close() -> None:
     assert parser.parse() == [["a", ("B", "1"), ("B", ("B", "2")), "c"]]
 
 
+def test_lists_of_a_shape_are_what_is_made_of_them() -> None:
+    """In any case and spacing, where nothing is passed over; what differs in the least is a list like any other."""
+    shapes = {
+        "(at ? (in ?))": lambda offset, at, inside: (offset, at, inside),
+        '(says ? (text ""))': lambda _, name, text: {name: text},
+    }
+    plain = '(a (At b(IN c)) ( at\n b ( in\tc ) ) (x (at b (in c)) (says n (text"t 1")))'
+    near = '(at b (in c d)) (at b) (says n (text "%")))'
+    [read] = Picky(f"{plain} {near}", shapes=shapes).parse()
+    assert read[:4] == ["A", (3, "b", "c"), (16, "b", "c"), ["X", (38, "b", "c"), {"n": "t 1"}]]
+    assert read[4:] == [["AT", "b", ["IN", "c", "d"]], ["AT", "b"], ["SAYS", "n", ["TEXT", "%"]]]
+    assert Picky("(a (no (at b (in c))) (at b (in c)))", shapes=shapes).parse() == [["A", (22, "b", "c")]]
+
+
 def test_rule_files_keep_everything_and_know_places() -> None:
     text = '(topology x\n  (says "one,\n    two; 5 %")\n  (where (apart a b)))\n(fault y)\n'
     topology, fault = read_forms(text, "rules/x.lisp")
@@ -231,3 +245,18 @@ def test_collection_is_as_it_was_afterwards() -> None:
         assert not gc.isenabled()
     finally:
         gc.enable()
+
+
+def test_what_is_made_while_collection_is_held_back_is_old_afterwards() -> None:
+    gc.collect()
+    with no_collection():
+        made = [[number] for number in range(10_000)]
+    young = {id(one) for generation in (0, 1) for one in gc.get_objects(generation)}
+    assert young.isdisjoint(map(id, made))
+    gc.freeze()
+    try:
+        with no_collection():
+            pass
+        assert gc.get_freeze_count() > 0  # a caller's frozen objects stay frozen
+    finally:
+        gc.unfreeze()
