@@ -164,7 +164,7 @@ def _described(one: Resolved, shapes: Mapping[str, Shape]) -> Described:
         drawing=rule.drawing,
         clauses=(
             *describe(one.body),
-            *(f"the load is between {name} and ground" for name, _ in one.grounded),
+            *(f"the load is between {name} and ground" for name in dict(one.grounded)),
             *describe_shapes(one.body, shapes),
         ),
         builds_on=one.ancestors,
