@@ -33,10 +33,9 @@ def joined(groups: Iterable[Sequence[T]]) -> dict[T, T]:
     for group in groups:
         for member in group:
             parents.setdefault(member, member)
+        lowest = root(parents, group[0])
         for other in group[1:]:
-            one, another = root(parents, group[0]), root(parents, other)
-            if one < another:
-                parents[another] = one
-            else:
-                parents[one] = another
+            one = root(parents, other)
+            lowest, one = (lowest, one) if lowest < one else (one, lowest)
+            parents[one] = lowest
     return {member: root(parents, member) for member in parents}
