@@ -12,6 +12,7 @@ from dataclasses import dataclass
 from functools import cached_property
 from typing import TYPE_CHECKING
 
+from protlint.board.pins import FROM_MEMORY
 from protlint.limits import Limits, Range
 from protlint.netlist.model import Netlist, Part
 from protlint.partdata.book import Book, PartEntry
@@ -67,6 +68,11 @@ class BoardPart:
     def id(self) -> str:
         """The part's id, unique on the board."""
         return self.part.id
+
+    @property
+    def pins_from_memory(self) -> bool:
+        """Whether its pins are told apart by a pin order that protlint knows from memory only."""
+        return self.roles_from == FROM_MEMORY
 
 
 @dataclass(frozen=True, slots=True)

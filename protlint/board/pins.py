@@ -20,6 +20,9 @@ Roles = dict[str, tuple[int, ...]]
 NO_ROLES = "no roles"
 """How the roles are known of what has none: a connector, an IC, an unknown part."""
 
+FROM_MEMORY = "part data, pin order from memory"
+"""How the roles are known of what has only numbers, and a type whose pin order nobody has looked up yet."""
+
 _BIPOLAR = ("npn", "pnp", "npn-darlington", "pnp-darlington")
 _MOSFET = ("nmos", "pmos")
 _TWO_TERMINALS = ("resistor", "capacitor", "inductor", "fuse", "link")

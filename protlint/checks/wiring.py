@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 
 from protlint.board.graph import Board, BoardPart
 from protlint.checks.board_case import BoardAnswer, BoardCase
@@ -41,15 +41,22 @@ def _finding(board: Board, match: FaultMatch) -> Finding:
     group = match.group
     roles = ("shunt", "sense", "pass", "driver", "base_stop")
     named = (*group.roles["shunt"], *_changed(match), *(part for role in roles for part in group.roles[role]))
+    parts = tuple(dict.fromkeys(named))
+    remembered = [part for part in parts if part in board.part_of and board.part_of[part].pins_from_memory]
     return Finding(
         check=match.fault,
         limiter=group.id,
-        parts=tuple(dict.fromkeys(named)),
+        parts=parts,
         nets=tuple(dict.fromkeys(board.nets[net].name for net in group.nets.values() if net is not None)),
-        message=f"{match.says}; {_consequence(board, match)}",
+        message=f"{match.says}; {_consequence(board, match)}{_if_remembered(remembered)}",
         working=_working(board, match),
         remedy=_remedy(board, match),
+        assumption=bool(remembered),
     )
+
+
+def _if_remembered(parts: Sequence[str]) -> str:
+    return f"; all this if the pin order of {', '.join(parts)} is as protlint has it from memory" if parts else ""
 
 
 def _consequence(board: Board, match: FaultMatch) -> str:

@@ -14,10 +14,9 @@ from protlint import __version__
 from protlint.board.graph import Board, BoardPart
 from protlint.findings import Finding, NotChecked, WorkingLine
 from protlint.limits import LimiterLimits
-from protlint.partdata.book import PartEntry
 from protlint.partdata.ratings import STATIC_FIGURES
 from protlint.report.answers import answers, rounded, taken
-from protlint.report.memory import FROM_MEMORY, behind, in_use
+from protlint.report.memory import FROM_MEMORY, PIN_ORDER, behind, in_use
 from protlint.report.shape import CAUTION, Document, summarised
 from protlint.topology.limiter import NETS, ROLES
 
@@ -147,7 +146,7 @@ def _parts(item: ReviewedLimiter, board: Board) -> list[Document]:
                     "unit": UNIT_OF_KIND.get(part.kind) if part else None,
                     "text": part.values.text if part else None,
                     "data_source": part.entry.source if part and part.entry else None,
-                    "from_memory": _from_memory(part.entry) if part and part.entry else [],
+                    "from_memory": _from_memory(part) if part else [],
                     "line": part.part.line if part else None,
                     "column": part.part.column if part else None,
                 },
@@ -178,8 +177,11 @@ def _finding(finding: Finding, board: Board, limiter: Document | None) -> Docume
     }
 
 
-def _from_memory(entry: PartEntry) -> list[str]:
-    """Name the figures of a part that something rests on and that nobody has held against a data sheet yet."""
+def _from_memory(part: BoardPart) -> list[str]:
+    """Name what something rests on of a part and nobody has held against a data sheet yet: its figures, its pin order."""
+    entry = part.entry
+    if entry is None:
+        return []
     idle = set(STATIC_FIGURES) - {"hfe_min", "hfe_max"} if entry.model else set()
     if "vbe_min" not in entry.ratings:
         idle.add("vbe_max")  # alone it tells no usual V_BE
@@ -188,7 +190,8 @@ def _from_memory(entry: PartEntry) -> list[str]:
     sources += [("safe_area", curve.source) for curve in entry.safe_area]
     sources += [("transient", point.source) for point in entry.transient]
     wanted = in_use() - idle | {"model"}
-    return list(dict.fromkeys(name for name, source in sources if source == MEMORY and name in wanted))
+    figures = dict.fromkeys(name for name, source in sources if source == MEMORY and name in wanted)
+    return [*([PIN_ORDER] if part.pins_from_memory else []), *figures]
 
 
 def _place(part: BoardPart) -> Document:

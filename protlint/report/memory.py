@@ -13,6 +13,9 @@ from protlint.report.shape import Document
 FROM_MEMORY = "from memory"
 """What the line of a finding's working is called that names the figures from memory behind it."""
 
+PIN_ORDER = "pin order"
+"""Stands among a part's figures from memory where only a pin order from memory tells its pins apart."""
+
 CURRENTS = "currents, and all that follows from them"
 LOOP = "loop and delay"
 OF_THE_LOOP = ("compensation-absent", "loop-undamped", "trips-on-peaks", "trips-late")
@@ -29,7 +32,7 @@ def on_memory(limiter: Document) -> dict[str, str]:
         return {}
     known = _known(limiter)
     figures: dict[str, Mapping[str, tuple[str, ...]]] = {
-        CURRENTS: dict.fromkeys(limiter["roles"], STATIC_FIGURES),
+        CURRENTS: dict.fromkeys(limiter["roles"], (PIN_ORDER, *STATIC_FIGURES)),
         LOOP: dict.fromkeys(limiter["roles"], DYNAMIC_FIGURES),
     }
     found = {what: _named(limiter, known, by_role) for what, by_role in figures.items()}

@@ -196,7 +196,8 @@ def _setting(setting: CheckSetting) -> str:
 
 
 def _pins(review: Review) -> Iterable[list[str]]:
-    """Write the pin roles that are stated, and a blank for each type whose pins could not be told apart."""
+    """Write the pin roles that are stated, a blank for each type whose pins could not be told apart, and for each type of
+    a limiter or a fault whose pin order is known from memory only, that order to hold against a data sheet."""
     stated = review.limits.pins
     for name, roles in stated.items():
         yield [f"[pins.{toml_key(name)}]", *(f"{toml_key(pin)} = {toml_string(role)}" for pin, role in roles.items())]
@@ -208,6 +209,13 @@ def _pins(review: Review) -> Iterable[list[str]]:
     for name, pins in lacking.items():
         if name not in stated:
             yield [f"# [pins.{toml_key(name)}]", *(f'# {toml_key(pin)} = ""' for pin in dict.fromkeys(pins))]
+    groups = (*review.found.limiters, *(fault.group for fault in review.found.faults))
+    of_groups = dict.fromkeys(part for group in groups for parts in group.roles.values() for part in parts)
+    known = [review.board.part_of[part] for part in of_groups if part in review.board.part_of]
+    remembered = {part.part_number: part.entry for part in known if part.pins_from_memory and part.entry is not None}
+    for number, entry in remembered.items():
+        rows = (f"# {toml_key(pin)} = {toml_string(role)}" for pin, role in entry.pins.items())
+        yield [f"# [pins.{toml_key(number or entry.part_number)}]  # as protlint has it from memory", *rows]
 
 
 def _board_order(review: Review) -> list[ReviewedLimiter]:
