@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import random
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 
 from protlint.board.assemble import assemble
 from protlint.board.graph import Board, SeenPart, Values
@@ -16,7 +16,10 @@ KINDS = {
     "resistor": 46, "capacitor": 26, "npn": 8, "pnp": 5, "nmos": 3, "pmos": 2, "diode": 6, "zener": 1, "inductor": 1,
     "ic": 2,
 }  # fmt: skip
-"""How often each kind comes, in a hundred."""
+"""How often each kind comes, in a hundred: with many transistors, so that much lies together as a limiter's parts do."""
+
+ORDINARY = {"resistor": 50, "capacitor": 34, "npn": 3, "pnp": 1, "nmos": 2, "diode": 4, "inductor": 2, "ic": 4}
+"""How often on a board as most are."""
 
 ON_GROUND, ON_SUPPLY = 0.15, 0.05
 """The share of all pins on ground, and on each of two supplies."""
@@ -48,17 +51,19 @@ TYPES = {
 
 def crowd(parts: int, *, limiters: int = 8, seed: int = 1) -> Board:
     """Return a board of ``parts`` parts with emitter-sensed limiters ``QP1``, ``QP2`` ... among them."""
-    return _board(_made(parts, limiters, seed))
+    return _board(_made(parts, limiters, seed, KINDS))
 
 
-def crowd_drawn(parts: int, *, limiters: int = 8, seed: int = 1, more: Properties = ()) -> list[Drawn]:
+def crowd_drawn(
+    parts: int, *, limiters: int = 8, seed: int = 1, more: Properties = (), kinds: Mapping[str, int] = KINDS
+) -> list[Drawn]:
     """Return such a board to be written as EDIF, with part numbers and values, its limiters driven from a supply.
 
     Its nets are short, as those of real boards: a part is joined to those drawn near it, or to a supply. Every part has
     ``more`` properties besides.
     """
     drawn = []
-    for kind, designator, joins, value_ohm in _made(parts, limiters, seed, reach=NEAR):
+    for kind, designator, joins, value_ohm in _made(parts, limiters, seed, kinds, reach=NEAR):
         if designator.startswith("RD"):
             joins = [("1", "+12V"), *joins[1:]]
         value = "" if value_ohm is None else f"{value_ohm:g}"
@@ -68,11 +73,11 @@ def crowd_drawn(parts: int, *, limiters: int = 8, seed: int = 1, more: Propertie
     return drawn
 
 
-def _made(parts: int, limiters: int, seed: int, *, reach: int | None = None) -> list[Made]:
+def _made(parts: int, limiters: int, seed: int, mix: Mapping[str, int], *, reach: int | None = None) -> list[Made]:
     """Return the parts; ``reach`` is how far a part's nets lie from its own place among the nets, anywhere where None."""
     chance = random.Random(seed)
     made: list[Made] = []
-    kinds, weights = list(KINDS), list(KINDS.values())
+    kinds, weights = list(mix), list(mix.values())
     free_nets = max(4, parts * 7 // 10)
     for number in range(parts - 5 * limiters):
         kind = chance.choices(kinds, weights)[0]
