@@ -17,6 +17,7 @@ from protlint.checks.board_case import BoardCase
 from protlint.checks.case import Case
 from protlint.checks.catalogue import CheckRow, load_catalogue
 from protlint.checks.derating import derating_remarks
+from protlint.checks.exchanged import with_exchange
 from protlint.checks.load import StartUp, start_up_of
 from protlint.checks.part_fails import IfPartFails, if_a_part_fails
 from protlint.checks.table import BOARD_CHECKS
@@ -265,7 +266,7 @@ def _review_limiter(whole: _Whole, limiter: Limiter) -> tuple[ReviewedLimiter, C
     if solution.not_solved is not None:
         not_checked.append(NotChecked(UNSOLVED, solution.not_solved.removeprefix(FOR_WANT_OF)))
     findings, unanswered = ask(case)
-    findings = foretold(case, findings, findings)
+    findings = with_exchange(case, foretold(case, findings, findings))
     not_checked += unanswered
     if case.unbounded:
         not_checked.append(NotChecked(UNSOLVED, case.drive_bound))

@@ -67,7 +67,7 @@ def _foretold(case: Case, finding: Finding, findings: Sequence[Finding]) -> Find
         worse = known is None or _rank(one) < _rank(known) or (smaller and one.remedy != known.remedy)
         if one.remedy and one not in burns and one.level != "note" and one.check != finding.check and worse:
             asked.setdefault(one.remedy, []).append(one.check)
-    return replace(finding, remedy=f"{finding.remedy}{_rated(burns, finding.fits)}{_also(asked)}")
+    return replace(finding, remedy=f"{finding.remedy}{rated(burns, finding.fits)}{_also(asked)}")
 
 
 def _also(asked: Mapping[str, Sequence[str]]) -> str:
@@ -78,7 +78,7 @@ def _also(asked: Mapping[str, Sequence[str]]) -> str:
     return f"; then also {'; and '.join(told)}" if asked else ""
 
 
-def _rated(burns: Sequence[Finding], fits: Sequence[Fit]) -> str:
+def rated(burns: Sequence[Finding], fits: Sequence[Fit]) -> str:
     """Return the rating that the parts fitted need, where it is more than they have; of equal ones the greatest."""
     needed_W: dict[str, float] = {}
     for fit in (fit for one in burns for fit in one.fits):
