@@ -1,6 +1,7 @@
 """Two reports compared: what a revision changed on the limiters, which part did it, and which findings are new or gone.
 
-``protlint.pairing`` finds what is held against what. Both sides are reports in the shape of ``review-1.schema.json``.
+``protlint.pairing`` finds what is held against what. Both sides are reports in the shape of ``review-1.schema.json``, what
+comes of them has that of ``compare-1.schema.json``, both in ``protlint/report``.
 """
 
 from __future__ import annotations

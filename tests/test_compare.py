@@ -8,14 +8,21 @@ import json
 from typing import Any
 
 import pytest
+from jsonschema import Draft202012Validator
 
 from protlint.compare import compare, compare_together
-from protlint.report.compare_text import comparison_document, held_back_by, rendered_comparison
+from protlint.report.compare_text import comparison_document, held_back_by, rendered_comparison, rendered_comparison_json
 from protlint.report.document import document
 from protlint.report.layout import COLUMNS, width
 from protlint.report.shape import Document, combined
 from tests.report.test_text import ACTING
+from tests.support.paths import ROOT
 from tests.support.sample_review import HOSTILE, PLAIN, sample_review
+
+SCHEMAS = {
+    name: json.loads((ROOT / f"protlint/report/{name}-1.schema.json").read_text(encoding="utf-8"))
+    for name in ("review", "compare")
+}
 
 RENUMBERED = {**PLAIN, "pass": "Q77", "sense": "R70", "shunt": "Q78", "base_stop": "R71", "drive": "R72", "out": "NEW_OUT"}
 
@@ -214,3 +221,79 @@ def test_hostile_names(name: str) -> None:
 def test_what_is_no_report_is_refused_by_an_error_callers_expect() -> None:
     with pytest.raises((KeyError, TypeError, IndexError)):
         compare({"report": 1}, report())
+
+
+def errors(comparison: Document) -> list[str]:
+    """What the shipped schema has against a comparison, as it is saved."""
+    saved = json.loads(rendered_comparison_json(comparison_document(comparison)))
+    return [error.message for error in Draft202012Validator(SCHEMAS["compare"]).iter_errors(saved)]
+
+
+def much_changed() -> tuple[Document, Document]:
+    """Two reports that differ in all a comparison tells of: limiters, parts, figures, words, needs, findings, remarks."""
+    before, after = report(notes=2), report(RENUMBERED, notes=2)
+    after["limiters"].pop()
+    after["limiters"].append({**copy.deepcopy(after["limiters"][0]), "id": "Q99", "parts": []})
+    limiter = after["limiters"][0]
+    limiter["verdict"] = "passes"
+    limiter["needs"] |= {
+        "carry_A": None, "short_continuous": True, "shorted_to": ["GND"],
+        "peak": {"current_A": 1.5, "lasts_s": 0.02, "output_V": None},
+    }  # fmt: skip
+    limiter["parts"].pop()
+    limiter["parts"][1]["value"] = 2.0
+    for row in limiter["currents"]:
+        row["holds_A"] /= 2.0
+    before["findings"][0]["level"] = "note"
+    after["findings"].append({**after["findings"][0], "check": "cap-exceeded", "fingerprint": "cap-exceeded-1"})
+    after["findings"].pop(1)
+    after["remarks"] = ["limits.toml: [drive.CMD] fits no net and no pin on this board"]
+    return before, after
+
+
+def test_a_saved_comparison_keeps_to_its_schema() -> None:
+    Draft202012Validator.check_schema(SCHEMAS["compare"])
+    before, after = much_changed()
+    comparison = compare(before, after)
+    changed = comparison["limiters"]["changed"]
+    assert all(any(one[what] for one in changed) for what in ("words", "figures", "parts", "needs"))
+    assert all(comparison["findings"][what] for what in ("new", "gone", "risen"))
+    assert errors(comparison) == []
+    assert errors(compare(after, before)) == []
+    one, other = together("a.edf", "b.edf"), together("a.edf", "c.edf", unread=("b.edf",))
+    assert errors(compare_together(one, other)) == []
+    assert errors(compare_together(combined([before]), combined([after]))) == []
+
+
+def test_the_schema_of_comparisons_refuses_a_missing_an_unknown_and_a_wrong_key() -> None:
+    before, after = much_changed()
+    comparison = compare(before, after)
+    for key in comparison:
+        assert errors({name: value for name, value in comparison.items() if name != key})
+    assert errors({**comparison, "extra": 1})
+    for spoil in ({"extra": 1}, {"level": "fatal"}, {"parts": "Q1"}):
+        comparison = compare(before, after)
+        comparison["findings"]["new"][0] |= spoil
+        assert errors(comparison)
+    comparison = compare(before, after)
+    comparison["limiters"]["changed"][0]["figures"]["ohms"] = {"before": 1.0, "after": 2.0}
+    assert errors(comparison)
+    several = compare_together(together("a.edf"), together("a.edf"))
+    several["boards"][0]["extra"] = 1
+    assert errors(several)
+
+
+def test_both_schemas_say_the_same_of_what_both_hold() -> None:
+    review, comparing = SCHEMAS["review"]["$defs"], SCHEMAS["compare"]["$defs"]
+
+    def plain(one: Document) -> Document:
+        return {key: value for key, value in one.items() if key not in ("description", "additionalProperties")}
+
+    assert plain(comparing["finding"]) == plain(review["finding"])
+    assert comparing["netlist"] == review["report"]["properties"]["netlist"]
+    assert comparing["verdict"] == review["limiter"]["properties"]["verdict"]
+    assert comparing["peak"] == review["needs"]["properties"]["peak"]
+    assert comparing["change"]["properties"]["needs"]["properties"].keys() == review["needs"]["properties"].keys()
+    part = review["part"]["properties"]
+    assert comparing["part"]["properties"] == {key: part[key] for key in comparing["part"]["required"]}
+    assert comparing["change"]["properties"]["parts"]["items"]["properties"]["role"] == part["role"]
