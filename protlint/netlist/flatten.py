@@ -47,7 +47,11 @@ def flatten(edif: Edif, notes: Notes, *, design: str | None = None) -> Flat:
     unfolder = _Unfolder(cells)
     if id(top) in cells:
         unfolder.unfold(cells[id(top)])
-    return unfolder.flat(name, top, chosen_by, designated=designated)
+    flat = unfolder.flat(name, top, chosen_by, designated=designated)
+    for twice in flat.pins_on_two_nets:
+        names = " and ".join(flat.nets[net].name for net in twice.nets)
+        notes.add_at("two nets", (twice.line, twice.column), f"{flat.parts[twice.part].id}.{twice.pin} on {names}")
+    return flat
 
 
 def _size(cell: UnfoldedCell, sizes: Mapping[int, _Size]) -> _Size:

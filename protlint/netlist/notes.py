@@ -24,6 +24,7 @@ KINDS = {
     "ripper": "a ripper or tie whose cell says not which of its ports are one; nothing is joined through it: {}",
     "width": "things of different width are joined: {}",
     "block pin": "a block's port on two nets, which are taken as one: {}",
+    "two nets": "a pin on two nets, which by the standard are one node: {}",
     "property": "one property with two values; the first counts: {}",
     "spread": "a value with its least and most, of which nothing is made; the nominal counts, its tolerance as stated: {}",
     "designators": "a part with two unlike designators; the first counts: {}",
