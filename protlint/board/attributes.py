@@ -141,6 +141,15 @@ def part_number(
     return candidates[0] if candidates else None
 
 
+def part_number_from(part: Part, number: str, habits: Habits) -> str:
+    """Return where a part's type, as :func:`part_number` gives it, stands: the property's name, the cell, a parts list."""
+    for attribute in ("part_number", "value"):
+        for key, text in _texts(part, attribute, habits, {}):
+            if number in (text, _head(text)):
+                return part.properties[key].name
+    return "the cell's name" if number in (part.cell, _head(part.cell)) else "the parts list"
+
+
 @lru_cache(maxsize=4096)
 def plain_name(name: str) -> str:
     """Return a property's name or a heading as names are compared: folded, with single blanks."""

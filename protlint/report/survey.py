@@ -9,7 +9,7 @@ from collections import Counter
 from collections.abc import Iterable
 from typing import TYPE_CHECKING
 
-from protlint.board.attributes import file_habits
+from protlint.board.attributes import file_habits, part_number_from
 from protlint.board.graph import Board, BoardPart
 from protlint.limits import ATTRIBUTES, Limits, Range
 from protlint.report.answers import rounded
@@ -98,6 +98,10 @@ def _habits(board: Board, limits: Limits) -> list[list[str]]:
     silent = [attribute.replace("_", " ") for attribute in ATTRIBUTES if not habits.found[attribute]]
     if silent:
         told.append(["no property tells", ", ".join(silent)])
+    numbered = [(part.part, part.part_number) for part in board.parts if part.part_number is not None]
+    sources = Counter(part_number_from(part, number, habits) for part, number in numbered)
+    if sources:
+        told.append(["part numbers taken from", ", ".join(f"{source} ({count})" for source, count in sources.most_common())])
     properties = (part.properties.get(key) for part in board.netlist.parts for key in habits.names["value"])
     if any(item is not None and "," in str(item.value) for item in properties):
         told.append(["commas", habits.comma_from])

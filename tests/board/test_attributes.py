@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import pytest
 
-from protlint.board.attributes import file_habits, part_number, part_numbers, read_values
+from protlint.board.attributes import file_habits, part_number, part_number_from, part_numbers, read_values
 from protlint.limits import Limits
 from protlint.netlist.model import PropertyValue
 from protlint.partdata.book import load_book
@@ -191,6 +191,20 @@ def test_where_part_numbers_are_found(cell: str, properties: dict[str, PropertyV
     habits = file_habits(board_of(part), Limits())
     assert part_numbers(part, habits) == expected
     assert part_number(part, habits) == (expected[0] if expected else None)
+
+
+@pytest.mark.parametrize(
+    ("cell", "properties", "source"),
+    [
+        ("NPN", {"Part Number": "BC547B"}, "Part Number"),
+        ("NPN", {"Part Number": "100-2345", "Val": "BC547B,112"}, "Val"),
+        ("BC547B", {"VALUE": "see text"}, "the cell's name"),
+        ("NPN", {}, "the parts list"),
+    ],
+)
+def test_where_a_part_number_was_taken_from(cell: str, properties: dict[str, PropertyValue], source: str) -> None:
+    part = placed("Q1", cell, ("C", "B", "E"), properties)
+    assert part_number_from(part, "BC547B", file_habits(board_of(part), Limits())) == source
 
 
 @pytest.mark.parametrize(
