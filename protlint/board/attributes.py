@@ -58,13 +58,14 @@ class Habits:
 
     ``comma`` is what a comma between digits means here and ``comma_from`` says how that was decided. ``names`` maps what a
     property tells to the folded property names of this file that tell it, first believed first; ``found`` the same to the
-    names as written, with the number of parts that have them.
+    names as written, with the number of parts that have them; ``others`` does so for the properties that tell none of it.
     """
 
     comma: Comma
     comma_from: str
     names: Mapping[str, tuple[str, ...]]
     found: Mapping[str, Mapping[str, int]] = field(default_factory=dict)
+    others: Mapping[str, int] = field(default_factory=dict)
 
 
 def file_habits(netlist: Netlist, limits: Limits) -> Habits:
@@ -87,8 +88,10 @@ def file_habits(netlist: Netlist, limits: Limits) -> Habits:
         attribute: {written[key].most_common(1)[0][0]: written[key].total() for key in names[attribute]}
         for attribute in ATTRIBUTES
     }
+    telling = {key for keys in names.values() for key in keys}
+    others = {spelled.most_common(1)[0][0]: spelled.total() for key, spelled in written.items() if key not in telling}
     comma, comma_from = _comma(netlist, names["value"])
-    return Habits(comma, comma_from, names, found)
+    return Habits(comma, comma_from, names, found, others)
 
 
 def read_values(part: Part, kind: str, habits: Habits, *, listed: Mapping[str, str] | None = None) -> Values:

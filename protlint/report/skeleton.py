@@ -9,9 +9,11 @@ import math
 from collections.abc import Iterable, Mapping
 from typing import TYPE_CHECKING
 
-from protlint.limits import CheckSetting, DriveLimits, LimiterLimits, Limits, Range
+from protlint.board.attributes import file_habits
+from protlint.limits import ATTRIBUTES, CheckSetting, DriveLimits, LimiterLimits, Limits, Range
 from protlint.limits_file import load_limits
-from protlint.report.safe import terminal
+from protlint.report.digest import listed
+from protlint.report.safe import readable, terminal
 from protlint.report.survey import ROLED_KINDS
 from protlint.toml.text import toml_key, toml_string
 
@@ -61,7 +63,7 @@ def rendered_skeleton(review: Review) -> str:
         *_drives(review),
         *_drivers(limits),
         *_limiters(review),
-        _attributes(limits),
+        _attributes(review),
         _checks("checks", limits.checks),
         *_pins(review),
     ]
@@ -177,9 +179,17 @@ def _limiter_rows(needs: LimiterLimits, known: LimiterLimits | None) -> list[str
     return rows
 
 
-def _attributes(limits: Limits) -> list[str]:
-    rows = [f"{key} = [{', '.join(map(toml_string, names))}]" for key, names in limits.attributes.items()]
-    return ["[attributes]", *rows] if rows else []
+def _attributes(review: Review) -> list[str]:
+    """Write the property names that are stated, and a blank for what no property tells where the file has others."""
+    stated = review.limits.attributes
+    rows = [f"{key} = [{', '.join(map(toml_string, names))}]" for key, names in stated.items()]
+    habits = file_habits(review.board.netlist, review.limits)
+    silent = [key for key in ATTRIBUTES if not habits.found[key] and key not in stated] if habits.others else []
+    if silent:
+        names = sorted(habits.others, key=lambda name: -habits.others[name])
+        rows.append(f"# which of the file's other properties tells it, if any does: {readable(listed(names))}")
+        rows += [f'# {key} = [""]' for key in silent]
+    return ["[attributes]" if stated else "# [attributes]", *rows] if rows else []
 
 
 def _checks(title: str, checks: Mapping[str, CheckSetting]) -> list[str]:

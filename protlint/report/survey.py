@@ -13,6 +13,7 @@ from protlint.board.attributes import file_habits, part_number_from
 from protlint.board.graph import Board, BoardPart
 from protlint.limits import ATTRIBUTES, Limits, Range
 from protlint.report.answers import rounded
+from protlint.report.digest import listed
 from protlint.report.document import document
 from protlint.report.shape import Document
 from protlint.solve.circuit import Circuit
@@ -98,6 +99,10 @@ def _habits(board: Board, limits: Limits) -> list[list[str]]:
     silent = [attribute.replace("_", " ") for attribute in ATTRIBUTES if not habits.found[attribute]]
     if silent:
         told.append(["no property tells", ", ".join(silent)])
+    if silent and habits.others:
+        others = sorted(habits.others.items(), key=lambda other: -other[1])
+        named = listed([f"{name} ({count})" for name, count in others])
+        told.append(["other properties", f"{named}; [attributes] in the limits file says what one tells"])
     numbered = [(part.part, part.part_number) for part in board.parts if part.part_number is not None]
     sources = Counter(part_number_from(part, number, habits) for part, number in numbered)
     if sources:

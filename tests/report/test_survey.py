@@ -12,13 +12,15 @@ from hypothesis import strategies as st
 
 from protlint.limits import CheckSetting, DriveLimits, LimiterLimits, Limits, Peak, Range
 from protlint.limits_file import load_limits
-from protlint.pipeline import Review
+from protlint.netlist import read_netlist_bytes
+from protlint.pipeline import Review, review_netlist, set_up
 from protlint.quantities import read_quantity
 from protlint.report.layout import COLUMNS, width
 from protlint.report.skeleton import quantity, rendered_skeleton
 from protlint.report.survey import survey
 from protlint.report.survey_text import rendered_survey
 from tests.report.test_text import ACTING
+from tests.support.edif_text import Drawn, flat_netlist
 from tests.support.sample_review import HOSTILE, PLAIN, sample_review
 
 STATED = Limits(
@@ -156,3 +158,17 @@ def test_a_survey_with_its_own_skeleton_writes_it_again(limits: Limits, tmp_path
 def test_a_written_quantity_reads_back_as_the_same_number(value: float, unit: str) -> None:
     dimension = {"A": "current", "V": "voltage", "ohm": "resistance", "F": "capacitance"}[unit]
     assert read_quantity(quantity(value, unit).strip('"'), dimension) == value
+
+
+def test_properties_that_tell_nothing_are_named_and_asked_about(tmp_path: Path) -> None:
+    parts = [Drawn(f"R{number}", "RES", (("1", "A"), ("2", "B")), more=(("NENNWERT", "4K7"),)) for number in range(2)]
+    netlist = read_netlist_bytes(flat_netlist("own", parts, remark="invented").encode(), "own.edf")
+    review = review_netlist(netlist, set_up())
+    assert "other properties: NENNWERT (2)" in rendered_survey(survey(review))
+    skeleton = rendered_skeleton(review)
+    assert '\n# value = [""]\n' in skeleton
+    filled = skeleton.replace("# [attributes]", "[attributes]").replace('# value = [""]', 'value = ["NENNWERT"]')
+    assert loaded(tmp_path, filled).attributes == {"value": ("NENNWERT",)}
+    answered = review_netlist(netlist, set_up(limits=tmp_path / "limits.toml"))
+    assert [part.values.value for part in answered.board.parts] == [4700.0, 4700.0]
+    assert '# value = [""]' not in rendered_skeleton(answered)
