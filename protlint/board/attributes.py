@@ -45,6 +45,8 @@ _OPTION = (
 _YES, _NO = ("1", "true", "yes", "y", "x"), ("0", "false", "no", "n")
 _DIMENSIONS = {"resistor": "resistance", "capacitor": "capacitance", "inductor": "inductance", "zener": "voltage"}
 _TYPE_NUMBER = re.compile(r"(?=[^\s]*[0-9])(?=[^\s]*[A-Za-z])[A-Za-z0-9][\w./+#-]{2,39}", re.ASCII)
+_INSTANCE = re.compile(r"I(?:NS)?[0-9]{4,}", re.IGNORECASE)
+"""What some exporters write as a part's Name: the number of its instance."""
 _JEDEC = re.compile(r"[12]N[0-9]{3,4}(?![0-9])", re.IGNORECASE)
 """Type numbers that would read as capacitances (``1N914``)."""
 _ZENER_CODE = re.compile(r"BZ[A-Z][0-9]{2}[-/ ]?([A-E])([0-9]{1,3}(?:V[0-9]{1,2})?)(?![0-9])", re.IGNORECASE)
@@ -173,7 +175,7 @@ def _texts(part: Part, attribute: str, habits: Habits, listed: Mapping[str, str]
 def _is_type(text: str) -> bool:
     """Whether a text looks like a type number: one word of letters and digits that is no value of any kind of part."""
     head = _head(text)
-    if not _TYPE_NUMBER.fullmatch(head):
+    if not _TYPE_NUMBER.fullmatch(head) or _INSTANCE.fullmatch(head):
         return False
     return bool(_JEDEC.match(head)) or all(
         read_value(head, dimension).value is None for dimension in ("resistance", "capacitance", "inductance", "voltage")

@@ -64,7 +64,7 @@ _SAYS: tuple[tuple[re.Pattern[str], str, str], ...] = tuple(
         (_channel("n"), "nmos", ""),
         (_channel("p"), "pmos", ""),
         (rf"thyristor|{_word('scr|triac')}", "thyristor", ""),
-        (rf"zener|transil|{_word('tvs')}|^BZ[A-Z][0-9]{{2}}", "zener", ""),
+        (rf"zener|transil|{_word('tvs')}|^BZ[A-Z][0-9]{{2}}|^(?:SM[ABCF]J|P[46]KE|P[46]SM[AB]J?|1\.?5KE)[0-9]", "zener", ""),
         (rf"diode|schottky|rectifier|{_word('led')}|^1N[0-9]{{3}}|^(?:BA[STV]|BY[VWX])[0-9]{{2}}", "diode", ""),
         (r"^2S[CD][0-9]{3}", "npn", ""),
         (r"^2S[AB][0-9]{3}", "pnp", ""),

@@ -174,6 +174,7 @@ def test_the_spellings_found_are_told_with_their_counts() -> None:
         ("NPN", {"Part Number": "100-2345", "VALUE": "BC547B"}, ("100-2345", "BC547B")),
         ("2N3904", {}, ("2N3904",)),
         ("NPN", {"Comment": "2N3904"}, ("2N3904",)),
+        ("NPN", {"Name": "I07934553", "VALUE": "BC547B"}, ("BC547B",)),
         ("NPN", {"VALUE": "2N3904/TO"}, ("2N3904/TO",)),
         ("RES", {"VALUE": "10K"}, ()),
         ("CAP", {"VALUE": "100nF"}, ()),

@@ -23,6 +23,8 @@ def _kind(part: Part, number: str | None = None, entry: PartEntry | None = None)
 @pytest.mark.parametrize(
     ("designator", "cell", "pins", "properties", "kind"),
     [
+        ("D1", "SMAJ24A", ("1", "2"), {}, "zener"),
+        ("D1", "DIO", ("1", "2"), {"VALUE": "P6KE15"}, "zener"),
         ("Q1", "NPN", CBE, {}, "npn"),
         ("Q1", "PNP_BCE", CBE, {}, "pnp"),
         ("Q1", "QSYM", CBE, {"Description": "TRANSISTOR NPN 45V TO-92"}, "npn"),
