@@ -98,6 +98,38 @@ def pin_on_two_nets(case: Case) -> Iterator[Answer]:
         )
 
 
+def designator_doubtful(case: Case) -> Iterator[Answer]:
+    """Yield a finding for each designator that parts of the limiter share with others, and for each of its parts that has
+    none yet."""
+    netlist, own = case.board.netlist, _needed(case)
+    for shared in netlist.duplicate_designators:
+        parts = tuple(netlist.parts[index].id for index in shared.parts)
+        if set(own).isdisjoint(parts):
+            continue
+        kinds = [f"{part.id}, a {part.cell}" for part in (netlist.parts[index] for index in shared.parts)]
+        yield case.finding(
+            "designator-doubtful",
+            f"{shared.designator} is the designator of {len(parts)} different parts: a parts list, an assembly drawing or "
+            f"the limits file that says {shared.designator} may mean any of them",
+            parts=parts,
+            working=tuple(WorkingLine("called so", kind, None, "") for kind in kinds),
+            remedy=f"give all but one of {', '.join(parts)} a designator of its own, and export again",
+            level="warning",
+            subject=shared.designator,
+        )
+    for part_id in own:
+        part = case.part(part_id).part
+        if part.designator is None:
+            yield case.finding(
+                "designator-doubtful",
+                f"{part_id} has no designator: no parts list and no assembly drawing can name it",
+                parts=(part_id,),
+                working=(WorkingLine("placed as", f"{part_id}, a {part.cell}", None, ""),),
+                remedy=f"number {part_id} in the schematic, and export again",
+                subject=part_id,
+            )
+
+
 def part_data_contradicts(case: Case) -> Iterator[Answer]:
     """Yield a finding for each part that netlist and parts list say different things of, and for ratings that cannot all be
     true."""

@@ -53,14 +53,15 @@ CHECKS: Mapping[str, Callable[[Case], Iterable[Answer]]] = {
     "part-data-missing": inputs.part_data_missing,
     "pins-unknown": inputs.pins_unknown,
     "pin-on-two-nets": inputs.pin_on_two_nets,
+    "designator-doubtful": inputs.designator_doubtful,
     "part-data-contradicts": inputs.part_data_contradicts,
 }
 """Asked of every limiter."""
 
 WITHOUT_SOLUTION = frozenset(
     {
-        "value-unreadable", "part-data-missing", "pins-unknown", "pin-on-two-nets", "part-data-contradicts",
-        *wiring.WIRING_FAULTS,
+        "value-unreadable", "part-data-missing", "pins-unknown", "pin-on-two-nets", "designator-doubtful",
+        "part-data-contradicts", *wiring.WIRING_FAULTS,
     }
 )  # fmt: skip
 """Those that are asked even where the circuit could not be solved."""

@@ -2,8 +2,12 @@
 
 from __future__ import annotations
 
+from pathlib import Path
+
+from protlint import pipeline
 from tests.support.desk import found, the_one, unchecked
 from tests.support.judged import Job, sink
+from tests.support.paths import FIXTURES
 
 
 def test_an_unreadable_value_is_quoted_and_the_limiter_not_judged() -> None:
@@ -87,3 +91,37 @@ def test_a_transistor_that_nobody_can_place_is_not_passed_in_silence() -> None:
     assert (one.needs, one.check) == ("[pins.QPN1]", "whether a limiter is at Q1")
     named = apart.limited("pins", "QPN1", **{"1": "collector", "2": "base", "3": "emitter"}).review()
     assert named.not_checked == ()
+
+
+UNREAD = FIXTURES / "examples" / "unread.edf"
+
+
+def doubted(tmp_path: Path, *changes: tuple[str, str]) -> list[tuple[str, str | None, tuple[str, ...]]]:
+    """The check, level and parts of what is said of designators on the board unread, its text changed."""
+    text = UNREAD.read_text(encoding="utf-8")
+    for old, new in changes:
+        assert text.count(old) == 1, old
+        text = text.replace(old, new)
+    netlist = tmp_path / "board.edf"
+    netlist.write_text(text, encoding="utf-8")
+    found = pipeline.review(netlist, limits=UNREAD.with_suffix(".toml"), parts=UNREAD.with_name("parts.toml")).findings
+    return [(one.message, one.level, one.parts) for one in found if one.check == "designator-doubtful"]
+
+
+def test_a_part_that_nobody_has_numbered_is_a_note(tmp_path: Path) -> None:
+    ((message, level, parts),) = doubted(tmp_path)
+    assert (level, parts) == ("note", ("C?",))
+    assert "has no designator" in message
+    assert doubted(tmp_path, ('(rename C1 "C?")', "C1")) == []
+
+
+def test_a_designator_that_two_parts_of_a_limiter_share_is_a_warning(tmp_path: Path) -> None:
+    """Its stop and its capacitor; one of the limiter with one elsewhere; two elsewhere are nobody's business."""
+    numbered = ('(rename C1 "C?")', '(rename C1 "R3")')
+    ((message, level, parts),) = doubted(tmp_path, numbered)
+    assert (level, parts) == ("warning", ("R3#1", "R3#2"))
+    assert message.startswith("R3 is the designator of 2 different parts")
+    elsewhere = ("(instance J3\n", '(instance (rename J3 "R3")\n')
+    ((_, level, parts),) = doubted(tmp_path, ('(rename C1 "C?")', "C1"), elsewhere)
+    assert (level, parts) == ("warning", ("R3#1", "R3#2"))
+    assert doubted(tmp_path, ('(rename C1 "C?")', "C1"), ("(instance J3\n", '(instance (rename J3 "J1")\n')) == []

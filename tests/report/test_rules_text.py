@@ -69,7 +69,7 @@ WITHOUT_FIGURES = {
     "collector-emitter-swapped", "base-emitter-swapped", "shunt-pins-exchanged", "shunt-pin-misplaced", "base-on-far-end",
     "shunt-polarity-wrong", "collector-not-on-the-drive", "wrong-device-sensed", "pass-pins-exchanged",
     "pass-polarity-wrong", "value-unreadable", "part-data-missing", "pins-unknown", "pin-on-two-nets",
-    "part-data-contradicts",
+    "designator-doubtful", "part-data-contradicts",
 }  # fmt: skip
 """Checks of connections and texts: their working says what stands where, not how much."""
 

@@ -21,7 +21,7 @@ from protlint.checks.case import Case
 from protlint.checks.catalogue import load_catalogue
 from protlint.findings import Finding
 from protlint.limits_file import load_limits
-from protlint.netlist.model import Net, Netlist, Part, Pin, PinOnTwoNets, Property
+from protlint.netlist.model import DuplicateDesignator, Net, Netlist, Part, Pin, PinOnTwoNets, Property
 from protlint.partdata.book import load_book
 from protlint.pipeline import Desk, Review, ReviewedLimiter, review_netlist
 from protlint.toml.text import toml_key, toml_string
@@ -113,18 +113,25 @@ def reviewed(
     *,
     listed: str | None = None,
     twice: tuple[PinOnTwoNets, ...] = (),
+    alike: tuple[DuplicateDesignator, ...] = (),
 ) -> Review:
-    """Return the review of a board; ``listed`` is a parts list, ``twice`` pins that the file joins to two nets.
+    """Return the review of a board; ``listed`` is a parts list, ``twice`` pins that the file joins to two nets, ``alike``
+    designators that it gives to several parts.
 
     Equal ones are reviewed once.
     """
     limits_text = None if tables is None else toml(tables)
-    return _reviewed(board, limits_text, toml(part_data() if data is None else data), listed, twice)
+    return _reviewed(board, limits_text, toml(part_data() if data is None else data), listed, twice, alike)
 
 
 @lru_cache(maxsize=512)
 def _reviewed(
-    board: str, limits_text: str | None, parts: str, listed: str | None, twice: tuple[PinOnTwoNets, ...]
+    board: str,
+    limits_text: str | None,
+    parts: str,
+    listed: str | None,
+    twice: tuple[PinOnTwoNets, ...],
+    alike: tuple[DuplicateDesignator, ...],
 ) -> Review:
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
@@ -137,7 +144,7 @@ def _reviewed(
             catalogue=catalogue(),
             parts_list=None if listed is None else read_parts_list(_written(folder / "parts.csv", listed)),
         )
-    return review_netlist(replace(drawn(board), pins_on_two_nets=twice), desk)
+    return review_netlist(replace(drawn(board), pins_on_two_nets=twice, duplicate_designators=alike), desk)
 
 
 rules, catalogue = cache(load_rules), cache(load_catalogue)

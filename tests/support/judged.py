@@ -6,7 +6,7 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field, replace
 from typing import Any
 
-from protlint.netlist.model import PinOnTwoNets
+from protlint.netlist.model import DuplicateDesignator, PinOnTwoNets
 from protlint.pipeline import Review
 from tests.support.desk import Tables, limits, part_data, reviewed
 
@@ -79,9 +79,10 @@ class Job:
     data: Tables = field(default_factory=part_data)
     listed: str | None = None
     twice: tuple[PinOnTwoNets, ...] = ()
+    alike: tuple[DuplicateDesignator, ...] = ()
 
     def review(self) -> Review:
-        return reviewed(self.board, self.tables, self.data, listed=self.listed, twice=self.twice)
+        return reviewed(self.board, self.tables, self.data, listed=self.listed, twice=self.twice, alike=self.alike)
 
     def drawn(self, *changes: tuple[str, str]) -> Job:
         """Return the job with texts of its board replaced, each of which has to be there."""

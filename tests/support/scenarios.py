@@ -6,7 +6,7 @@ import math
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 
-from protlint.netlist.model import PinOnTwoNets
+from protlint.netlist.model import DuplicateDesignator, PinOnTwoNets
 from protlint.solve.solution import Point, Solution
 from tests.support.desk import the_one
 from tests.support.judged import Job, folding, follower, gated, sink, source
@@ -248,6 +248,10 @@ def inputs() -> Iterator[Scenario]:
         "pin-on-two-nets", "whose pin", Job(sink().board, sink().tables, twice=(elsewhere,)),
         Job(sink().board, sink().tables, twice=(own,)), "warning",
     )  # fmt: skip
+    plugs, plug_and_stop = (
+        Job(sink().board, sink().tables, alike=(DuplicateDesignator("J1", parts),)) for parts in ((0, 1), (0, 5))
+    )
+    yield Scenario("designator-doubtful", "whose designator", plugs, plug_and_stop, "warning")
 
 
 GROUPS = (currents, base_stops, resistors, shunts, reverse, passes, loads, inputs)
