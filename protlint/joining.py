@@ -27,10 +27,12 @@ def root(parents: Parents[T], member: T) -> T:
 def joined(groups: Iterable[Sequence[T]]) -> dict[T, T]:
     """Return, for each member of some groups, the lowest of all that the groups join it with.
 
-    Each group lists members that are one.
+    Each group lists members that are one; an empty one, as of a fuse with nothing on its pins, joins nothing.
     """
     parents: dict[T, T] = {}
     for group in groups:
+        if not group:
+            continue
         for member in group:
             parents.setdefault(member, member)
         lowest = root(parents, group[0])

@@ -8,7 +8,7 @@ from hypothesis import strategies as st
 
 from protlint.joining import joined
 
-GROUPS = st.lists(st.lists(st.integers(0, 30), min_size=1, max_size=4), max_size=30)
+GROUPS = st.lists(st.lists(st.integers(0, 30), max_size=4), max_size=30)
 
 
 @given(GROUPS)

@@ -27,7 +27,7 @@ def sense_bypassed(whole: BoardCase) -> Iterator[BoardAnswer]:
         if resistor.kind != "resistor" or value is None or not 0.0 < value < SENSE_OHM:
             continue
         ends = set(resistor.terminals.values())
-        if len(ends) > 1:
+        if len(ends) != 1:  # as it should be, or connected to nothing
             continue
         parts = [whole.board.parts[index] for index in resistor.parts]
         if told.isdisjoint(part.id for part in parts):
