@@ -15,7 +15,7 @@ from protlint.solve.begins import nowhere
 from protlint.solve.circuit import Circuit
 from protlint.solve.corners import one_at_a_time, small_steps
 from protlint.solve.devices import Array
-from protlint.solve.latch import settle, with_trips
+from protlint.solve.latch import always_trips, find_trips, settle, with_trips
 from protlint.solve.locus import PASS_V, Loci, fill, run_at
 from protlint.solve.memo import Memo
 from protlint.solve.network import compile_network
@@ -50,7 +50,10 @@ def solve(circuit: Circuit, ambients_degC: tuple[float, float, float], *, memo: 
             stage, sweep, shorts = _worst_short(circuit, ambients_degC)
             nominal = solve_nominal(stage, sweep)
             if circuit.latch:
-                answers = with_trips(stage, _answers(stage, replace(nominal, begins=nowhere(nominal.begins)), ambients_degC))
+                trips = find_trips(stage, ambients_degC)
+                nominal = replace(nominal, begins=nowhere(nominal.begins))
+                only_holds = always_trips(trips, nominal.holds_A)
+                answers = with_trips(stage, _answers(stage, nominal, ambients_degC, only_holds=only_holds), trips)
             else:
                 answers = _answers(stage, nominal, ambients_degC)
         solution = replace(answers, short=stage.short, shorts=shorts, assumed=_assumed(circuit))
@@ -90,8 +93,8 @@ def _worst_short(circuit: Circuit, ambients_degC: tuple[float, ...]) -> tuple[St
     return stage, sweep, tuple(shorts)
 
 
-def _answers(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...]) -> Solution:
-    ranges = find_ranges(stage, nominal)
+def _answers(stage: Stage, nominal: Nominal, ambients_degC: tuple[float, ...], *, only_holds: bool = False) -> Solution:
+    ranges = find_ranges(stage, nominal, only_holds=only_holds)
     locus_run = _usual_locus(stage, nominal)
     locus = points(stage, locus_run, range(locus_run.lanes.count))
     held = points(stage, nominal.short, [USUAL])

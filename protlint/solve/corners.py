@@ -187,7 +187,10 @@ def _with_the_slope(
     which = np.tile(np.arange(len(alone)), 2)
     slope = np.nan_to_num(np.sign(alone[:, 1] - alone[:, 0]))[which].T * direction
     moved = np.where(corner == 0.0, slope, corner)
-    found = direction * evaluate(moved, which)
+    other = np.flatnonzero((moved != corner).any(axis=0))
+    found = np.full_like(best, np.nan)
+    if len(other):
+        found[other] = direction[other] * evaluate(moved[:, other], which[other])
     better = found > best
     return np.where(better, moved, corner), np.where(better, found, best)
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import replace
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -43,7 +43,37 @@ def settle(stage: Stage, sweep: Sweep) -> Sweep:
     return replace(sweep, run=replace(whole, operating=operating, output_A=_put(whole.output_A, lanes, run.output_A)))
 
 
-def with_trips(stage: Stage, solution: Solution) -> Solution:
+@dataclass(frozen=True, slots=True)
+class Trips:
+    """Where a latch trips with everything at its usual value: the ambients and output voltages looked at, place by place,
+    each at every ambient; the short (NaN) is the first place."""
+
+    conditions: Conditions
+    output_V: Array
+    tripping: Tripping
+
+
+def find_trips(stage: Stage, ambients_degC: Sequence[float]) -> Trips:
+    """Raise the drive in the short and at the working output, or where none is stated at several places."""
+    places_V = _places(stage, len(ambients_degC))
+    conditions = Conditions(np.tile(np.array(ambients_degC) + KELVIN, len(places_V)))
+    output_V = places_V.ravel()
+    return Trips(conditions, output_V, raise_drive(stage, conditions, output_V))
+
+
+def always_trips(trips: Trips, holds_A: Array) -> bool:
+    """Tell whether the latch trips and stays on at every ambient, each with its holds: then no other figure is as of a
+    limiter without a latch."""
+    short = zip(trips.tripping.trips.tolist(), trips.tripping.output_A.tolist(), holds_A.tolist(), strict=False)
+    return all(_stays(*one) for one in short)
+
+
+def _stays(tripped: bool, trips_A: float, holds_A: float) -> bool:
+    """Tell whether a latch trips, and takes the drive away."""
+    return tripped and holds_A <= _TRIPPED_SHARE * trips_A
+
+
+def with_trips(stage: Stage, solution: Solution, trips: Trips) -> Solution:
     """Return a latch's solution with begins where it trips in the short, carries and most what it passes before it trips.
 
     Holds stays what it passes afterwards. Where the latch does not stay on there is no begins, and the rest is as of a
@@ -51,13 +81,10 @@ def with_trips(stage: Stage, solution: Solution) -> Solution:
     """
     circuit, rows, stated = stage.network.circuit, solution.currents, stage.network.circuit.output_V is not None
     ambients = len(rows)
-    places_V = _places(stage, ambients)
-    conditions = Conditions(np.tile(np.array([row.ambient_degC for row in rows]) + KELVIN, len(places_V)))
-    output_V = places_V.ravel()
-    tripping = raise_drive(stage, conditions, output_V)
+    conditions, output_V, tripping = trips.conditions, trips.output_V, trips.tripping
     run = run_with(stage, conditions, output_V, tripping.drive, tripping.inner)
     working = np.isnan(output_V) | stated | (pass_voltage(stage, run) >= PASS_V)
-    passes_A = np.where(working, tripping.output_A, np.nan).reshape(len(places_V), ambients)
+    passes_A = np.where(working, tripping.output_A, np.nan).reshape(-1, ambients)
     first, index = int(stated), np.arange(ambients)
     of_carries = (first + _best(passes_A[first:], np.nanargmin)) * ambients + index
     of_most = _best(passes_A, np.nanargmax) * ambients + index
@@ -90,7 +117,7 @@ def _changed(row: Currents, tripping: Tripping, ends: Array, begins: int, carrie
         return (float(ends[0, place]), float(ends[1, place])) if np.isfinite(ends[:, place]).all() else None
 
     trips_A = figure(begins)
-    if not tripping.trips[begins] or trips_A is None or row.holds_A is None or row.holds_A > _TRIPPED_SHARE * trips_A:
+    if trips_A is None or row.holds_A is None or not _stays(bool(tripping.trips[begins]), trips_A, row.holds_A):
         return replace(row, begins_A=None, begins_range_A=None)
     most_A, most_range = max(figure(most) or 0.0, row.holds_A), pair(most)
     for other in (row.holds_range_A, pair(carries) if carries is not None else None):

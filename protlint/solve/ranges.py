@@ -43,12 +43,14 @@ class Ranges:
     high_owner: IntArray
 
 
-def find_ranges(stage: Stage, nominal: Nominal) -> Ranges:
-    """Find all ranges of a stage."""
+def find_ranges(stage: Stage, nominal: Nominal, *, only_holds: bool = False) -> Ranges:
+    """Find all ranges of a stage, or those of holds alone."""
     ambients = len(nominal.holds_A)
     figures = np.stack((nominal.begins.output_A, nominal.holds_A, nominal.carries_A, nominal.most_A))
+    if only_holds:
+        figures[[kind != "holds" for kind in KINDS]] = np.nan
     # where the locus is greatest in the short itself, what moves most is what moves holds
-    in_short = nominal.most_V == nominal.short.output_V
+    in_short = (nominal.most_V == nominal.short.output_V) & (not only_holds)
     existing = np.flatnonzero(np.isfinite(np.concatenate((figures[:3], np.where(in_short, np.nan, figures[3])[None]))))
     probe = _probe(stage, nominal)
     corner, found = extremes(lambda at, which: probe(at, existing[which]), figures.ravel()[existing], len(stage.axes))
@@ -61,18 +63,23 @@ def find_ranges(stage: Stage, nominal: Nominal) -> Ranges:
     by_kind = {kind: ends.reshape(2, len(KINDS), -1)[:, place].copy() for place, kind in enumerate(KINDS)}
     _, holds, carries, most = (corners[:, :, place * ambients : (place + 1) * ambients] for place in range(len(KINDS)))
 
-    conditions = Conditions(np.tile(nominal.conditions.ambient_K, 5), np.concatenate((*carries, *most, holds[1]), axis=1))
-    loci, grid = trace(stage, conditions, np.tile(nominal.grid, 5), _CORNER_ROUNDS)
-    if stage.network.circuit.output_V is None and nominal.carry is not None:
+    wanted = (holds[1],) if only_holds else (*carries, *most, holds[1])
+    conditions = Conditions(np.tile(nominal.conditions.ambient_K, len(wanted)), np.concatenate(wanted, axis=1))
+    loci, grid = trace(stage, conditions, np.tile(nominal.grid, len(wanted)), _CORNER_ROUNDS)
+    at_edge = stage.network.circuit.output_V is None and nominal.carry is not None
+    if at_edge:
         loci = working_edges(stage, conditions, loci)
+    if at_edge and not only_holds:
         least = _from_loci(loci, least_working, 0, ambients, by_kind["carries"])
         by_kind["carries"] = carried(least, nominal.most_A)
-    by_kind["most"] = _from_loci(loci, greatest, 2 * ambients, ambients, by_kind["most"])
+    if not only_holds:
+        by_kind["most"] = _from_loci(loci, greatest, 2 * ambients, ambients, by_kind["most"])
     for kind, value in zip(KINDS, figures, strict=True):
         by_kind[kind] = np.stack((np.fmin(by_kind[kind][0], value), np.fmax(by_kind[kind][1], value)))
     by_kind["most"][1] = np.fmax(by_kind["most"][1], by_kind["holds"][1])
     by_kind = {kind: np.stack((low * (1.0 - _ROUNDING), high * (1.0 + _ROUNDING))) for kind, (low, high) in by_kind.items()}
-    high = np.arange(4 * ambients, 5 * ambients)
+    first = len(conditions.ambient_K) - ambients
+    high = np.arange(first, first + ambients)
     along = np.flatnonzero(np.isin(loci.owner, high))
     locus = run_at(stage, conditions.pick(loci.owner[along]), loci.output_V[along], loci.inner[:, along])
     return Ranges(
@@ -80,7 +87,7 @@ def find_ranges(stage: Stage, nominal: Nominal) -> Ranges:
         holds_corner=holds,
         high_short=run_at(stage, conditions.pick(high), None, grid[:, 0, high]),
         high_locus=locus,
-        high_owner=loci.owner[along] - 4 * ambients,
+        high_owner=loci.owner[along] - first,
     )
 
 
