@@ -15,9 +15,9 @@ from tests.support.placed import placed
 
 SPARE = (
     ("F90", "FUSE", ""), ("R90", "RES", "0.1"), ("R91", "RES", "0"), ("R92", "RES", "4K7"), ("C90", "CAP", "100n"),
-    ("L90", "IND", "10uH"), ("D90", "DIODE", "1N4148"), ("D91", "ZENER", "5V1"), ("Q90", "NPN", "BC547B"), ("Q91", "NMOS", ""),
-    ("Q92", "SCR", ""), ("Q93", "NPN_DARLINGTON", ""), ("U90", "LM358", ""), ("J90", "CON2", ""), ("TP90", "TESTPOINT", ""),
-    ("W90", "JUMPER", ""), ("X90", "THING", ""),
+    ("L90", "IND", "10uH"), ("D90", "DIODE", "1N4148"), ("D91", "ZENER", "5V1"), ("Q90", "NPN", "BC547B"),
+    ("Q91", "NMOS", ""), ("Q92", "SCR", ""), ("Q93", "NPN_DARLINGTON", ""), ("U90", "LM358", ""), ("J90", "CON2", ""),
+    ("TP90", "TESTPOINT", ""), ("W90", "JUMPER", ""), ("X90", "THING", ""),
 )  # fmt: skip
 
 
