@@ -19,9 +19,10 @@ def rendered_survey(facts: Document, *, colour: bool = False) -> str:
     """Return a survey as text; ``colour`` adds the colours of a terminal."""
     safe: Document = throughout(facts, readable)
     netlist = safe["netlist"]
+    limiters = counted(len(safe["limiters"]), "limiter") if safe["limiters"] else "no limiter"
+    wrong = f", {counted(len(safe['faults']), 'fault')} in the wiring" if safe["faults"] else ""
     title = (
-        f"{netlist['file']}: {counted(len(safe['limiters']), 'limiter') if safe['limiters'] else 'no limiter'} found; "
-        f"design {netlist['design']}, {counted(netlist['parts'], 'part')}, "
+        f"{netlist['file']}: {limiters} found{wrong}; design {netlist['design']}, {counted(netlist['parts'], 'part')}, "
         f"{counted(netlist['nets'], 'net')}, {counted(netlist['pins'], 'connected pin')}"
     )
     lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]

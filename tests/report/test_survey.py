@@ -172,3 +172,9 @@ def test_properties_that_tell_nothing_are_named_and_asked_about(tmp_path: Path) 
     answered = review_netlist(netlist, set_up(limits=tmp_path / "limits.toml"))
     assert [part.values.value for part in answered.board.parts] == [4700.0, 4700.0]
     assert '# value = [""]' not in rendered_skeleton(answered)
+
+
+def test_the_first_line_tells_of_faults_too() -> None:
+    fault = {"fault": "sense-bypassed", "spoils": "emitter-sensed", "parts": ["Q7"], "says": "both ends on one net"}
+    text = rendered_survey({**survey(sample_review()), "faults": [fault, fault]})
+    assert text.startswith("lamp.edf: 3 limiters found, 2 faults in the wiring; ")
