@@ -29,7 +29,7 @@ import numpy as np
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.constants import T0_K
 from protlint.solve.devices import Array
-from protlint.solve.gummel_poon import Bipolars, transport
+from protlint.solve.gummel_poon import Transport
 from protlint.solve.lanes import junction_potential
 from protlint.solve.network import Group
 from protlint.solve.parameters import Bounds, within_bounds
@@ -200,12 +200,12 @@ def charges_of(group: Group, ambient_K: Array) -> Charges | None:
     return DiodeCharges(_at(temperature, p["CJO"], p["VJ"], p["M"], p["FC"]), p["TT"])
 
 
-def bipolar_charges(inner: Array, outer_BC: Array, static: Bipolars, p: BipolarCharges) -> Stored:
+def bipolar_charges(inner: Array, outer_BC: Array, t: Transport, p: BipolarCharges) -> Stored:
     """Return base-emitter, inner base-collector and outer base-collector charges.
 
-    ``inner`` are inner junction voltages (2, devices, lanes), ``outer_BC`` the base terminal's against the inner collector.
+    ``inner`` are inner junction voltages (2, devices, lanes), ``t`` what crosses the base there, ``outer_BC`` the base
+    terminal's voltage against the inner collector.
     """
-    t = transport(inner, static)
     charge, capacitance = np.zeros((3, *outer_BC.shape)), np.zeros((3, *outer_BC.shape))
     charge[:2], capacitance[:2] = depletion(inner, p.junctions)
     if p.outer is not None:

@@ -81,12 +81,19 @@ class Transport:
         return _row(self.q_B_slope, 1)
 
 
+@dataclass(frozen=True, slots=True)
+class Evaluated(Evaluation):
+    """Bipolar transistors at given inner voltages, with what crosses their bases there."""
+
+    transport: Transport
+
+
 def _row(values: Array, index: int) -> Array:
     row: Array = values[index]
     return row
 
 
-def bipolar(inner: Array, p: Bipolars, present: Array | float = 1.0) -> Evaluation:
+def bipolar(inner: Array, p: Bipolars, present: Array | float = 1.0) -> Evaluated:
     """Gummel-Poon bipolar transistors at inner base-emitter and base-collector voltages (2, devices, lanes).
 
     With i_F = I_S (exp(v_BE / NF V_T) - 1), i_R = I_S (exp(v_BC / NR V_T) - 1), the base charge
@@ -123,7 +130,8 @@ def bipolar(inner: Array, p: Bipolars, present: Array | float = 1.0) -> Evaluati
         slope *= present
         current *= present
     r_b = p.R_B if p.R_BM is None else base_resistance(p, t.q_B, i_base[0] + i_base[1])
-    return with_series(inner, current, slope, p.R_side, r_b)
+    outside = with_series(inner, current, slope, p.R_side, r_b)
+    return Evaluated(outside.port_V, outside.port_A, outside.voltage_slope, outside.current_slope, t)
 
 
 def transport(inner: Array, p: Bipolars) -> Transport:

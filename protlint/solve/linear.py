@@ -202,9 +202,9 @@ def _series_ohm(expanded: Expanded, p: Parameters, inner: Array, evaluations: Se
         elif record.R_BM is None:
             value = record.R_B
         else:
-            rows = inner[expanded.network.groups[series.group].rows].reshape(2, -1, inner.shape[1])
-            base_A = evaluations[series.group].port_A.sum(axis=0)
-            value = gummel_poon.base_resistance(record, gummel_poon.transport(rows, record).q_B, base_A)
+            evaluation = evaluations[series.group]
+            assert isinstance(evaluation, gummel_poon.Evaluated)
+            value = gummel_poon.base_resistance(record, evaluation.transport.q_B, evaluation.port_A.sum(axis=0))
         found[place] = value[series.row]
     return found
 
@@ -216,7 +216,7 @@ def _device_stores(
     lanes = inner.shape[1]
     charge, capacitance, cross = [], [], [np.zeros((0, lanes))]
     place = 0
-    for group, record, p, evaluation in zip(expanded.network.groups, at.p.records, at.charges, evaluations, strict=True):
+    for group, p, evaluation in zip(expanded.network.groups, at.charges, evaluations, strict=True):
         if p is None:
             continue
         rows = inner[group.rows].reshape(group.ports, -1, lanes)
@@ -227,8 +227,8 @@ def _device_stores(
         else:
             third = _third(expanded, place + 2 * count, count, stored, rows[1])
             if isinstance(p, BipolarCharges):
-                assert isinstance(record, gummel_poon.Bipolars)
-                found = bipolar_charges(rows, third, record, p)
+                assert isinstance(evaluation, gummel_poon.Evaluated)
+                found = bipolar_charges(rows, third, evaluation.transport, p)
                 assert found.cross is not None
                 cross.append(found.cross)
             else:

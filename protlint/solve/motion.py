@@ -55,6 +55,18 @@ class Motion:
 
 
 @dataclass(frozen=True, slots=True)
+class _Frame:
+    """What every step of a motion asks of its network: the rows of resistances and junctions over all nodes; these and the
+    stores over the unknowns; the voltages (and inductors' currents) whose error is watched, and what is allowed of each."""
+
+    rows: Array
+    own: Array
+    stores: Array
+    watched: Array
+    allowed: Array
+
+
+@dataclass(frozen=True, slots=True)
 class Instant:
     """A solved moment: all voltages (and inductors' currents), the currents through the rows of resistances and junctions,
     and the stores' charges and their rates."""
@@ -84,7 +96,7 @@ def at_rest(motion: Motion, voltages: Array, time_s: float = 0.0) -> Instant:
         Where there is none near.
     """
     none = np.zeros(len(motion.expanded.stores))
-    found = _solve(motion, time_s, voltages, none, 0.0)
+    found = _solve(motion, _frame(motion.expanded), time_s, voltages, none, 0.0)
     if found is None:
         raise CircuitError("no operating point to begin the step from was found")
     return found[0]
@@ -98,7 +110,7 @@ def integrate(motion: Motion, start: Instant, breaks_s: tuple[float, ...]) -> It
     CircuitError
         Where no step is short enough.
     """
-    now, step_s = start, FIRST_STEP_S
+    now, step_s, frame = start, FIRST_STEP_S, _frame(motion.expanded)
     slope = np.zeros_like(start.voltages)
     while True:
         end_s = next((one for one in breaks_s if one > now.time_s), math.inf)
@@ -106,7 +118,7 @@ def integrate(motion: Motion, start: Instant, breaks_s: tuple[float, ...]) -> It
         h = end_s - now.time_s if last else step_s
         if h < LEAST_STEP_S:
             raise CircuitError(f"the step into the short could not be followed beyond {now.time_s:.3g} s")
-        made = _step(motion, now, slope, h, end_s if last else now.time_s + h)
+        made = _step(motion, frame, now, slope, h, end_s if last else now.time_s + h)
         if made is None:
             step_s = 0.25 * h
             continue
@@ -120,36 +132,46 @@ def integrate(motion: Motion, start: Instant, breaks_s: tuple[float, ...]) -> It
         yield now
 
 
-def _step(motion: Motion, now: Instant, slope: Array, h: float, end_s: float) -> tuple[Instant, float] | None:
+def _frame(expanded: Expanded) -> _Frame:
+    rows = np.concatenate((expanded.resistances, expanded.junctions))
+    watched = np.concatenate((expanded.junctions, expanded.stores))
+    allowed = np.full(len(watched), TOLERANCE_V)
+    inductors = sum(device.kind == "inductor" for device in expanded.passive)
+    if inductors:
+        allowed[-inductors:] = TOLERANCE_A
+    count = expanded.unknown
+    return _Frame(rows, rows[:, :count], expanded.stores[:, :count], watched, allowed)
+
+
+def _step(motion: Motion, frame: _Frame, now: Instant, slope: Array, h: float, end_s: float) -> tuple[Instant, float] | None:
     """Return the moment after a step of h and its error by the tolerance, or None where Newton's method fails."""
     rate = 1.0 / (_BACK * h)
     middle_s = now.time_s + SHARE * h
-    first = _solve(motion, middle_s, now.voltages + SHARE * h * slope, now.charge + now.charge_A / rate, rate)
+    first = _solve(motion, frame, middle_s, now.voltages + SHARE * h * slope, now.charge + now.charge_A / rate, rate)
     if first is None:
         return None
     middle = first[0]
     target = _FIRST * middle.charge + _ZEROTH * now.charge
     guess = now.voltages + (middle.voltages - now.voltages) / SHARE
-    second = _solve(motion, end_s, guess, target, rate)
+    second = _solve(motion, frame, end_s, guess, target, rate)
     if second is None:
         return None
     after, matrices = second
     third = now.charge_A / SHARE - middle.charge_A / (SHARE * (1.0 - SHARE)) + after.charge_A / (1.0 - SHARE)
-    count = motion.expanded.unknown
-    stores = motion.expanded.stores[:, :count]
-    error = np.linalg.solve(matrices.system, rate * _ERROR * h * (stores.T @ third))
-    return after, _size(motion, after.voltages, error) if np.isfinite(error).all() else 1e9
+    error = np.linalg.solve(matrices.system, rate * _ERROR * h * (frame.stores.T @ third))
+    return after, _size(frame, after.voltages, error) if np.isfinite(error).all() else 1e9
 
 
 @np.errstate(all="ignore")
-def _solve(motion: Motion, time_s: float, guess: Array, target: Array, rate: float) -> tuple[Instant, _Matrices] | None:
+def _solve(
+    motion: Motion, frame: _Frame, time_s: float, guess: Array, target: Array, rate: float
+) -> tuple[Instant, _Matrices] | None:
     """Solve f(x) + A^T rate (q(x) - target) = injected; return the moment and the last linearisation, None where none is.
 
     A wild guess may overflow on its way; what is not finite is no solution.
     """
     expanded = motion.expanded
-    count, stores = expanded.unknown, expanded.stores
-    rows = np.concatenate((expanded.resistances, expanded.junctions))
+    count = expanded.unknown
     voltages = guess.copy()
     voltages[count:] = motion.known_V(time_s)
     injected = motion.injected_A(time_s)
@@ -157,23 +179,23 @@ def _solve(motion: Motion, time_s: float, guess: Array, target: Array, rate: flo
         shot = snapshot(expanded, motion.at, voltages[:, None], motion.passive)
         through = np.concatenate((shot.conductance[:, 0] * (expanded.resistances @ voltages), shot.junction_A[:, 0]))
         charge_A = rate * (shot.charge[:, 0] - target)
-        miss = rows[:, :count].T @ through + expanded.constant @ voltages + stores[:, :count].T @ charge_A - injected
-        matrices = _matrices(expanded, rows, shot, rate)
+        miss = frame.own.T @ through + expanded.constant @ voltages + frame.stores.T @ charge_A - injected
+        matrices = _matrices(expanded, frame, shot, rate)
         try:
             change = np.linalg.solve(matrices.system, -miss)
         except np.linalg.LinAlgError:
             return None
         if not np.isfinite(change).all():
             return None
-        size = _size(motion, voltages, change)
+        size = _size(frame, voltages, change)
         voltages[:count] += change
         if size < NEWTON_SHARE:
-            moved = matrices.capacitance @ (stores[:, :count] @ change)
+            moved = matrices.capacitance @ (frame.stores @ change)
             return (
                 Instant(
                     time_s,
                     voltages,
-                    through + matrices.between @ (rows[:, :count] @ change),
+                    through + matrices.between @ (frame.own @ change),
                     shot.charge[:, 0] + moved,
                     charge_A + rate * moved,
                 ),
@@ -182,21 +204,14 @@ def _solve(motion: Motion, time_s: float, guess: Array, target: Array, rate: flo
     return None
 
 
-def _matrices(expanded: Expanded, rows: Array, shot: Snapshot, rate: float) -> _Matrices:
-    count = expanded.unknown
+def _matrices(expanded: Expanded, frame: _Frame, shot: Snapshot, rate: float) -> _Matrices:
     between, capacitance = row_conductances(expanded, shot)[0], store_matrix(expanded, shot)[0]
-    own, stores = rows[:, :count], expanded.stores[:, :count]
-    system = own.T @ (between @ own) + expanded.constant[:, :count] + rate * (stores.T @ (capacitance @ stores))
+    own, stores = frame.own, frame.stores
+    system = own.T @ (between @ own) + expanded.constant[:, : expanded.unknown] + rate * (stores.T @ (capacitance @ stores))
     return _Matrices(between, capacitance, system)
 
 
-def _size(motion: Motion, voltages: Array, change: NDArray[np.floating[Any]]) -> float:
+def _size(frame: _Frame, voltages: Array, change: NDArray[np.floating[Any]]) -> float:
     """Return the greatest change of a junction's or store's voltage (or an inductor's current) by its tolerance."""
-    expanded = motion.expanded
-    watched = np.concatenate((expanded.junctions, expanded.stores))
-    moved = np.abs(watched[:, : expanded.unknown] @ change)
-    allowed = np.full(len(watched), TOLERANCE_V)
-    inductors = sum(device.kind == "inductor" for device in expanded.passive)
-    if inductors:
-        allowed[-inductors:] = TOLERANCE_A
-    return float((moved / (allowed + TOLERANCE_SHARE * np.abs(watched @ voltages))).max(initial=0.0))
+    moved = np.abs(frame.watched[:, : len(change)] @ change)
+    return float((moved / (frame.allowed + TOLERANCE_SHARE * np.abs(frame.watched @ voltages))).max(initial=0.0))
