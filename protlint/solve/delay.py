@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
@@ -36,6 +36,10 @@ BEGIN_V = 2.0
 
 CLOSE_V, CLOSE_SHARE = 5e-3, 0.03
 """At rest for good: for a whole period every junction and store this near its final voltage, the current this near holds."""
+DYING_PERIODS, DYING_WINDOWS, DYING_SHARE = 2.0, 10, 0.9
+"""A ringing dies out where, window after window of so many periods, all swings to both sides of its final value and the
+current stays more than half way below the level, and the swings are down to this share of what they were so many windows
+ago."""
 RINGS_BELOW = 0.6
 """A mode damped more overshoots by less than a tenth, so that its period need not be waited for."""
 SUSTAINED_OVER, SUSTAINED_SHARE = 6, 1e-3
@@ -60,11 +64,12 @@ class Course:
 
 @dataclass(frozen=True, slots=True)
 class Trial:
-    """A step to follow: the motion, where it begins and ends, holds, what reads a moment, the longest period of a mode that
-    rings there, and the slowest mode that grows there (None: all decay)."""
+    """A step to follow: the motion, the rows of junctions and stores, where it begins and ends, holds, what reads a moment,
+    the longest period of a mode that rings there, and the slowest mode that grows there (None: all decay)."""
 
     expanded: Expanded
     motion: Motion
+    watched: Array
     start: Instant
     final: Array
     holds_A: float
@@ -147,9 +152,12 @@ def prepare_step(circuit: Circuit, ambients_degC: tuple[float, float, float], sh
     s = wired_frequencies(linearise(wired, look(wired, final_run, usual)), 0.0)[0]
     growing = np.abs(s[np.isfinite(s) & (s.real > 0.0)])
     ringing = np.abs(s[np.isfinite(s) & (damping(s) < RINGS_BELOW)])
+    inductors = sum(device.kind == "inductor" for device in expanded.passive)
+    stores = expanded.stores[: len(expanded.stores) - inductors]
     return Trial(
         expanded=expanded,
         motion=motion,
+        watched=np.concatenate((expanded.junctions, stores)),
         start=at_rest(motion, first),
         final=final,
         holds_A=float(final_run.output_A[USUAL]),
@@ -222,7 +230,7 @@ def follow(trial: Trial) -> Step:
     grows = trial.grows_Hz is not None
     until_s = min(MOST_S, RAMP_S + SWINGS / trial.grows_Hz if trial.grows_Hz else math.inf)
     most_steps = MOST_GROWING_STEPS if grows else MOST_STEPS
-    close_s, rests = math.inf, False
+    close_s, rests, swings = math.inf, False, _Swings(trial)
     for instant in integrate(trial.motion, trial.start, (RAMP_S,)):
         course.append(trial.read(instant))
         now_A = course[-1].output_A
@@ -236,7 +244,7 @@ def follow(trial: Trial) -> Step:
             tops[-1] = max(tops[-1], now_A)
         close = instant.time_s > RAMP_S and not grows and _is_close(trial, instant, course[-1])
         close_s = min(close_s, instant.time_s) if close else math.inf
-        rests = instant.time_s - close_s >= trial.period_s
+        rests = instant.time_s - close_s >= trial.period_s or (not grows and swings.die_out(instant, now_A))
         if rests or instant.time_s > until_s or len(course) > most_steps:
             break
     peak_A = max(trial.holds_A, *(one.output_A for one in course))
@@ -256,6 +264,42 @@ def follow(trial: Trial) -> Step:
     powers = np.array([one.pass_W for one in course[: last + 1]] + [before.pass_W + share * (after.pass_W - before.pass_W)])
     energy = 0.5 * (np.diff(times)[:, None] * (powers[:-1] + powers[1:])).sum(axis=0)
     return Step(settles=True, delay_s=delay_s, peak_A=peak_A, pass_energy_J=float(energy.max(initial=0.0)))
+
+
+@dataclass(slots=True)
+class _Swings:
+    """How far the voltages of junctions and stores lay from their final values, window by window: the least and the greatest
+    of each and the greatest current in the present one, and the heights of those before in which all swung to both sides."""
+
+    trial: Trial
+    until_s: float = RAMP_S
+    least_V: Array | None = None
+    greatest_V: Array | None = None
+    top_A: float = 0.0
+    heights_V: list[float] = field(default_factory=list)
+
+    def die_out(self, instant: Instant, now_A: float) -> bool:
+        """Take a moment in; tell whether the swings up to it die out, so that the current does not reach the level again.
+
+        A window is long enough for the slowest mode that rings. What creeps instead is not on both sides of its final value.
+        """
+        away_V = _away(self.trial, instant)
+        self.least_V = away_V if self.least_V is None else np.minimum(self.least_V, away_V)
+        self.greatest_V = away_V if self.greatest_V is None else np.maximum(self.greatest_V, away_V)
+        self.top_A = max(self.top_A, now_A)
+        if instant.time_s < self.until_s:
+            return False
+        least_V, greatest_V = self.least_V, self.greatest_V
+        both_sides = (least_V < 0.0) & (greatest_V > 0.0) | (np.maximum(-least_V, greatest_V) < CLOSE_V)
+        if both_sides.all() and self.top_A < 0.5 * (1.0 + OVER) * self.trial.holds_A:
+            self.heights_V.append(float((greatest_V - least_V).max(initial=0.0)))
+        else:
+            self.heights_V.clear()
+        self.until_s = instant.time_s + DYING_PERIODS * self.trial.period_s
+        self.least_V = self.greatest_V = None
+        self.top_A = 0.0
+        heights = self.heights_V
+        return len(heights) > DYING_WINDOWS and heights[-1] < DYING_SHARE * heights[-1 - DYING_WINDOWS]
 
 
 def _change(tops: Sequence[float], holds_A: float) -> float | None:
@@ -316,8 +360,11 @@ def _rows_of_passing(expanded: Expanded) -> tuple[Array, Array]:
 
 def _is_close(trial: Trial, instant: Instant, at: Course) -> bool:
     """Tell whether a moment is so near the held short that only its own modes, which all decay, are left."""
-    expanded = trial.expanded
-    inductors = sum(device.kind == "inductor" for device in expanded.passive)
-    stores = expanded.stores[: len(expanded.stores) - inductors]
-    away = np.concatenate((expanded.junctions, stores)) @ (instant.voltages - trial.final)
-    return bool(np.abs(away).max(initial=0.0) < CLOSE_V) and abs(at.output_A / trial.holds_A - 1.0) < CLOSE_SHARE
+    near = np.abs(_away(trial, instant)).max(initial=0.0) < CLOSE_V
+    return bool(near) and abs(at.output_A / trial.holds_A - 1.0) < CLOSE_SHARE
+
+
+def _away(trial: Trial, instant: Instant) -> Array:
+    """Return how far the voltages of junctions and stores lie from their final ones."""
+    away_V: Array = trial.watched @ (instant.voltages - trial.final)
+    return away_V

@@ -303,6 +303,42 @@ def test_a_damped_stage_that_rings_on_is_not_called_oscillating(monkeypatch: pyt
     assert settled.settles
 
 
+def test_a_long_ringing_is_followed_until_it_is_seen_to_die_out(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Its figures are those of a run of 5000 steps, and the current stays below the level for as long again."""
+    trial = prepare_step(weakly_damped(0.24e-9), AMBIENTS)
+    moments: list[Instant] = []
+
+    def noted(*asked: Any) -> Iterator[Instant]:
+        for one in integrate(*asked):
+            moments.append(one)
+            yield one
+
+    monkeypatch.setattr(delay, "integrate", noted)
+    step, taken = follow(trial), len(moments)
+    assert taken < 1200
+    monkeypatch.setattr(delay, "DYING_WINDOWS", 10**6)
+    assert follow(trial) == step
+    longer = moments[taken:]
+    assert len(longer) >= delay.MOST_STEPS
+    later_A = [trial.read(one).output_A for one in longer if one.time_s > moments[taken - 1].time_s]
+    assert max(later_A) < 0.5 * (1.0 + OVER) * trial.holds_A
+
+
+def test_what_creeps_to_its_final_value_does_not_count_as_dying_out() -> None:
+    """1 uF at the shunt's base: no ringing, every moment a window, and a slow way to where all rests."""
+    circuit = bench_circuit("sink")
+    _, base, emitter = shunt_of(circuit).nodes
+    trial = prepare_step(with_capacitor(circuit, (base, emitter), 1e-6), AMBIENTS)
+    assert trial.period_s == 0.0
+    swings, creeping = delay._Swings(trial), 0
+    for one in integrate(trial.motion, trial.start, (RAMP_S,)):
+        if np.abs(delay._away(trial, one)).max() < delay.CLOSE_V:
+            break
+        creeping += one.time_s > RAMP_S
+        assert not swings.die_out(one, 0.0)
+    assert creeping > 2 * delay.DYING_WINDOWS
+
+
 def test_swings_that_do_not_fall_any_more_are_known_without_the_modes() -> None:
     trial = prepare_step(weakly_damped(1e-9), AMBIENTS)
     assert trial.grows_Hz is not None
