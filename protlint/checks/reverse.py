@@ -180,7 +180,7 @@ def _highest_V(case: Case, ends: Sequence[Ends]) -> list[float] | None:
         return [case.needs.output_V] * len(ends)
     drive, on = case.circuit.drive, case.drive_ends_V[1]
     is_high = case.solution.on_end == "high"
-    follows = (drive.high_is if is_high else drive.low_is) is not None
+    follows = (drive.high_follows if is_high else drive.low_follows) is not None
     most_V = on.high if is_high else on.low
     asked = [(drive_V(case, one, on=True) if follows else most_V, one.corner) for one in ends]
     points = case.under([Condition(case.limits.ambient_degC[1], on_V, None, corner=corner) for on_V, corner in asked])

@@ -5,7 +5,7 @@ Every function writes what it assumed, what it lacks and what holds each net int
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 
 from protlint.board.graph import Board
@@ -206,7 +206,7 @@ def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive 
         regulator = regulator_across(board, around.drive, around.output)
         if regulator is not None:
             return _drawn_by(place, regulator, lowest, highest, notes), None
-        return _driven(place, lowest, highest, notes), None
+        return _driven(place, held, lowest, highest, notes), None
     if around.fed_by is not None:
         supply = board.nets[around.fed_by].supply
         assert supply is not None
@@ -214,9 +214,11 @@ def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive 
         notes.words[node] = f"feed from {board.nets[around.fed_by].name}: {supply.voltage_V.usual:g} V"
         if place.limiter.polarity == "n":
             return Drive(
-                node=node, low_V=lowest, high_V=supply.voltage_V, high_is=place.node_of[around.fed_by]
+                node=node, low_V=lowest, high_V=supply.voltage_V, high_follows=place.node_of[around.fed_by]
             ), around.fed_by
-        return Drive(node=node, low_V=supply.voltage_V, high_V=highest, low_is=place.node_of[around.fed_by]), around.fed_by
+        return Drive(
+            node=node, low_V=supply.voltage_V, high_V=highest, low_follows=place.node_of[around.fed_by]
+        ), around.fed_by
     feed = place.limiter.nets["feed"]
     net = place.limiter.nets["drive"] if feed is None else feed
     name = "?" if net is None else board.nets[net].name
@@ -226,20 +228,26 @@ def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive 
     return None, None
 
 
-def _driven(place: Place, lowest: Range, highest: Range, notes: Notes) -> Drive:
+def _driven(place: Place, held: Mapping[str, Range], lowest: Range, highest: Range, notes: Notes) -> Drive:
     """Return the drive of a driven net, from the limits file as far as that goes."""
     net = place.around.drive
     assert net is not None
     node = place.node_of[net]
     entry = place.around.drive_entry or _driver_entry(place, [index for index, _ in place.around.drive_pins])
-    own = _own_supplies(place, ("ic",))
+    own = [voltage_V for _, voltage_V in _own_supplies(place, ("ic",))]
     if len({one.usual for one in own}) > 1:  # an IC does not reach beyond what feeds it
         lowest, highest = (Range(one.usual, one.usual, one.usual) for one in (own[0], own[-1]))
     low, high = lowest, highest
+    follows: list[str | None] = [None, None]
     if entry is not None:
-        short_of = entry.from_rails_V
-        low = entry.low_V or (lowest if short_of is None else _moved(_rail(place, lowest, upper=False), short_of))
-        high = entry.high_V or (highest if short_of is None else _moved(_rail(place, highest, upper=True), -short_of))
+        low, high = entry.low_V or lowest, entry.high_V or highest
+        if entry.from_rails_V is not None:
+            rails = _own_supplies(place, ("ic", "connector")) or [("", lowest), ("", highest)]
+            (lower, lower_V), (upper, upper_V) = rails[0], rails[-1]
+            low = entry.low_V or _moved(lower_V, entry.from_rails_V)
+            high = entry.high_V or _moved(upper_V, -entry.from_rails_V)
+            ends = ((entry.low_V, lower), (entry.high_V, upper))
+            follows = [node if stated_V is None and node in held else None for stated_V, node in ends]
     stated = entry is not None and (entry.from_rails_V is not None or (entry.low_V is not None and entry.high_V is not None))
     if not stated:
         stiff = "" if entry and entry.current_A is not None else "stiff and "
@@ -254,6 +262,8 @@ def _driven(place: Place, lowest: Range, highest: Range, notes: Notes) -> Drive:
         resistance_ohm=entry.resistance_ohm if entry else 0.0,
         current_A=entry.current_A if entry else None,
         assumed=not stated,
+        low_follows=follows[0],
+        high_follows=follows[1],
     )
 
 
@@ -291,18 +301,13 @@ def _driver_entry(place: Place, parts: Sequence[int]) -> DriveLimits | None:
     return None
 
 
-def _rail(place: Place, fallback: Range, *, upper: bool) -> Range:
-    """Return the lowest or highest supply on the driving part's own pins."""
-    own = _own_supplies(place, ("ic", "connector"))
-    return own[-1 if upper else 0] if own else fallback
-
-
-def _own_supplies(place: Place, kinds: tuple[str, ...]) -> list[Range]:
-    """Return the supplies on the pins of what drives the net, where it is of one of these kinds, the lowest first."""
+def _own_supplies(place: Place, kinds: tuple[str, ...]) -> list[tuple[str, Range]]:
+    """Return the supplies on the pins of what drives the net, where it is of these kinds, with their nodes, lowest first."""
     driving = [place.board.parts[index] for index, _ in place.around.drive_pins]
     nets = {net for part in driving if part.kind in kinds for net in part.roles.values()}
-    supplies = [place.board.nets[net].supply for net in sorted(nets)]
-    return sorted((one.voltage_V for one in supplies if one is not None), key=lambda one: one.usual)
+    supplies = [(place.node_of[net], place.board.nets[net].supply) for net in sorted(nets)]
+    own = [(node, supply.voltage_V) for node, supply in supplies if supply is not None]
+    return sorted(own, key=lambda one: one[1].usual)
 
 
 def _moved(end: Range, step_V: float) -> Range:

@@ -46,8 +46,9 @@ class Device:
 class Drive:
     """What drives the limiter's stage: the node it holds and its two stated ends.
 
-    Which end turns the pass device on hardest is found by solving. ``current_A`` None means stiff. ``low_is`` and
-    ``high_is`` name the held net that an end is one with, a supply that feeds the drive: the two then vary together.
+    Which end turns the pass device on hardest is found by solving. ``current_A`` None means stiff. ``low_follows`` and
+    ``high_follows`` name the held net that an end moves with: a supply that feeds the drive straight, or one that the drive
+    stays a stated way short of. The end is as far from it at every voltage of that supply as at the usual one.
     """
 
     node: str
@@ -56,8 +57,8 @@ class Drive:
     resistance_ohm: float = 0.0
     current_A: float | None = None
     assumed: bool = False
-    low_is: str | None = None
-    high_is: str | None = None
+    low_follows: str | None = None
+    high_follows: str | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -2,7 +2,7 @@
 
 An *axis* is one thing with a stated spread: a resistor's value within its tolerance, a bipolar's V_BE (I_S exp(-dV/(NF V_T))
 at the solved temperature) or B_F within its bounds (the bound itself at every temperature), a diode's forward voltage, a
-MOSFET's threshold, a supply, either end of the drive (one that is a supply itself moves with it). A *corner* is an array
+MOSFET's threshold, a supply, either end of the drive (one that follows a supply moves with it). A *corner* is an array
 (axes, lanes) of positions from -1, the low end, over 0, nominal, to +1, the high end.
 """
 
@@ -121,7 +121,7 @@ def held_voltages(network: Network, axes: Sequence[Axis], corner: Array) -> tupl
         elif axis.place == "drive":
             ends[axis.index] = _between(axis, position, _drive_end(circuit, axis.index).usual)
     for row, place in _followed(network).items():
-        ends[row] = held[place]
+        ends[row] = held[place] + (_drive_end(circuit, row).usual - circuit.held[network.held[place]].usual)
     return held, ends
 
 
@@ -240,9 +240,9 @@ def _device_axes(network: Network) -> list[Axis]:
 
 
 def _followed(network: Network) -> dict[int, int]:
-    """Return which ends of the drive (0 low, 1 high) are one with a held net, and its place among those."""
+    """Return which ends of the drive (0 low, 1 high) move with a held net, and its place among those."""
     drive, places = network.circuit.drive, {node: place for place, node in enumerate(network.held)}
-    return {row: places[node] for row, node in enumerate((drive.low_is, drive.high_is)) if node in places}
+    return {row: places[node] for row, node in enumerate((drive.low_follows, drive.high_follows)) if node in places}
 
 
 def _range_axes(node: str, parameter: str, place: str, index: int, limits: Range) -> list[Axis]:

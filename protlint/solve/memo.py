@@ -73,7 +73,7 @@ def canonical(circuit: Circuit, ambients_degC: tuple[float, ...]) -> tuple[Key, 
         rows,
         tuple((nodes[node], limits) for node, limits in circuit.held.items()),
         (nodes[drive.node], drive.low_V, drive.high_V, drive.resistance_ohm, drive.current_A),
-        tuple(None if one is None else nodes.get(one, -1) for one in (drive.low_is, drive.high_is)),
+        tuple(None if one is None else nodes.get(one, -1) for one in (drive.low_follows, drive.high_follows)),
         nodes[circuit.output],
         tuple(nodes[node] for node in circuit.shorts),
         tuple(

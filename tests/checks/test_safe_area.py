@@ -87,6 +87,6 @@ def test_a_careful_line_warns_and_is_marked() -> None:
 def test_what_no_curve_covers_is_asked_for() -> None:
     short = [["1 V", "8 A"], ["10 V", "8 A"]]
     review = follower().knowing("QPN1", safe_area=[{"lasts": "dc", "points": short}]).review()
-    assert ("pass-outside-safe-area", "QPN1.safe_area up to 24.5 V") in unchecked(review)
+    assert ("pass-outside-safe-area", "QPN1.safe_area up to 24.4 V") in unchecked(review)
     brief = sink().stated(short="20 ms").knowing("QPN1", safe_area=[{"lasts": "1 ms", "points": short}]).review()
     assert ("pass-outside-safe-area", "QPN1.safe_area that lasts 20 ms") in unchecked(brief)

@@ -1,11 +1,14 @@
-"""What a short ties the output to: the supply that a load on the board hangs on, be it a string of parts."""
+"""What a short ties the output to, and what the ends of a drive move with."""
 
 from __future__ import annotations
 
+import numpy as np
 import pytest
 
-from protlint.limits import LimiterLimits, Limits
+from protlint.limits import DriveLimits, LimiterLimits, Limits, Range
 from protlint.solve.bench import build_bench
+from protlint.solve.corners import axes_of, held_voltages
+from protlint.solve.network import compile_network
 from protlint.topology.language import load_rules
 from protlint.topology.match import find_limiters
 from tests.support.boards import board
@@ -35,3 +38,37 @@ def test_the_short_is_to_what_the_load_hangs_on(load: str, shorted_to: str, assu
     bench = build_bench(made, limiter, limits=Limits(), needs=LimiterLimits())
     assert bench.circuit is not None and bench.circuit.shorts == (shorted_to,)
     assert ("short" in [subject for subject, _ in bench.assumed]) is assumed
+
+
+FOLLOWER = """
+npn Q1 +24V DRV NEAR
+resistor R1 NEAR OUT =2
+npn Q2 DRV NEAR OUT
+resistor R2 CMD DRV =220
+ic U1 OUT=CMD V+=+24V V-=-5V
+connector J1 1=OUT 2=GND 3=+24V 4=-5V
+"""
+
+
+def test_an_end_of_the_drive_moves_with_the_rail_it_stays_short_of() -> None:
+    """The rail is one thing with one spread: the drive's high end is 1.5 V under it wherever it is. The negative rail is at
+    no part of the limiter, so the low end has the spread of its own; an end that is stated moves with nothing."""
+    supplies = {"+24V": Range(22.0, 24.0, 27.0), "-5V": Range(-5.5, -5.0, -4.5), "GND": Range(0.0, 0.0, 0.0)}
+    made = board(FOLLOWER, limits=Limits(supplies_V=supplies))
+    (limiter,) = find_limiters(made, load_rules()).limiters
+    for entry, moving in (
+        (DriveLimits(from_rails_V=1.5), {("+24V", "V"), ("CMD", "low_V")}),
+        (DriveLimits(from_rails_V=1.5, high_V=Range(9.0, 10.0, 11.0)), {("+24V", "V"), ("CMD", "low_V"), ("CMD", "high_V")}),
+    ):
+        limits = Limits(supplies_V=supplies, drives={"CMD": entry})
+        circuit = build_bench(made, limiter, limits=limits, needs=LimiterLimits()).circuit
+        assert circuit is not None
+        network = compile_network(circuit)
+        axes = [axis for axis in axes_of(network) if axis.place in ("held", "drive")]
+        assert {(axis.device, axis.parameter) for axis in axes} == moving
+        place = [axis.device for axis in axes].index("+24V")
+        corner = np.zeros((len(axes), 3))
+        corner[place] = [-1.0, 0.0, 1.0]
+        _, ends_V = held_voltages(network, axes, corner)
+        assert ends_V[1] == pytest.approx([10.0] * 3 if entry.high_V else [20.5, 22.5, 25.5])
+        assert ends_V[0] == pytest.approx([-3.5] * 3)

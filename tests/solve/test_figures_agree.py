@@ -224,15 +224,15 @@ def test_a_stage_that_its_drive_does_not_control_is_refused_with_the_key() -> No
 
 def test_a_drive_of_a_supply_moves_with_that_supply() -> None:
     """The feed is the supply itself: one thing with one spread, and a range no wider than that."""
-    circuit = next(one for _, one in circuits() if one.drive.high_is is not None and one.drive.high_is in one.held)
-    supply = circuit.drive.high_is or ""
+    circuit = next(one for _, one in circuits() if one.drive.high_follows is not None and one.drive.high_follows in one.held)
+    supply = circuit.drive.high_follows or ""
     usual_V = circuit.held[supply].usual
     wide = Range(0.9 * usual_V, usual_V, 1.1 * usual_V)
     spread = replace(circuit, held={**circuit.held, supply: wide}, drive=replace(circuit.drive, high_V=wide))
     of_nets = {(axis.device, axis.parameter) for axis in axes_of(compile_network(spread)) if axis.place in ("held", "drive")}
     assert of_nets == {(supply, "V")}
     together = solve(spread, AMBIENTS).currents[1].holds_range_A
-    apart = solve(replace(spread, drive=replace(spread.drive, high_is=None)), AMBIENTS).currents[1].holds_range_A
+    apart = solve(replace(spread, drive=replace(spread.drive, high_follows=None)), AMBIENTS).currents[1].holds_range_A
     assert together is not None
     assert apart is not None
     assert apart[0] <= together[0] < together[1] <= apart[1]
