@@ -12,15 +12,19 @@ CHIP_ROLES = ("pass", "driver", "shunt", "steering")
 
 
 def value_unreadable(case: Case) -> Iterator[Answer]:
-    """Yield a finding for each part on the bench whose value cannot be read, quoting its text."""
-    for part_id in case.bench.parts_without_value:
+    """Yield a finding for each part on the bench whose value cannot be read, quoting its text.
+
+    A warning where it is a capacitor's or an inductor's: the currents are known without, loop and delay are not.
+    """
+    for part_id in (*case.bench.parts_without_value, *case.bench.unread):
         part = case.part(part_id)
+        unread = part_id in case.bench.unread
         text = part.values.text
         said = f'has the value "{text}", which cannot be read' if text else "states no value"
         why = f" ({part.values.unreadable})" if part.values.unreadable else ""
         yield case.finding(
             "value-unreadable",
-            f"{part_id} {said}{why}",
+            f"{part_id} {said}{why}{': how the loop behaves is not known without it' if unread else ''}",
             parts=(part_id,),
             working=(
                 WorkingLine(
@@ -30,6 +34,7 @@ def value_unreadable(case: Case) -> Iterator[Answer]:
             if text
             else (),
             remedy=f"write the value of {part_id} as a number with its unit (4k7, 0.22R, 100n)",
+            level="warning" if unread else None,
             subject=part_id,
         )
 

@@ -47,6 +47,9 @@ def loop_undamped(case: Case) -> Iterator[Answer]:
     """Yield a finding where the loop rings or oscillates with the parts as drawn, or oscillates within their spread."""
     check = "loop-undamped"
     loop = case.solution.loop
+    if loop is not None:
+        # capacitors at the output: only fault wiring makes them swing
+        yield from (NotChecked(check, f"the value of {part_id}") for part_id in case.bench.unread)
     if loop is None or loop.own_damping is None:
         yield from not_known(check, case.solution.loop_needs)
         return

@@ -24,7 +24,8 @@ class Bench:
 
     ``circuit`` is None where something is missing; ``missing`` then says what. ``element_of`` maps a device's name to the
     board element it stands for; ``nets`` maps each net's name to what holds it; ``assumed`` holds (subject, sentence)
-    pairs, the subject being ``drive``, ``short``, ``supply``, ``model``, ``tolerance`` or ``circuit``.
+    pairs, the subject being ``drive``, ``short``, ``supply``, ``model``, ``tolerance`` or ``circuit``; ``unread`` the ids
+    of capacitors and inductors whose value cannot be read: no current depends on it, but loop and step do.
     """
 
     circuit: Circuit | None
@@ -32,6 +33,7 @@ class Bench:
     element_of: Mapping[str, int] = field(default_factory=dict)
     nets: Mapping[str, str] = field(default_factory=dict)
     assumed: tuple[tuple[str, str], ...] = ()
+    unread: tuple[str, ...] = ()
 
     @property
     def parts_without_value(self) -> tuple[str, ...]:
@@ -56,7 +58,7 @@ def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: Limite
         devices += made
         element_of |= {device.name: index for device in made}
     if notes.missing or drive is None or not shorts:
-        return Bench(None, tuple(notes.missing), element_of, notes.words, tuple(notes.assumed))
+        return Bench(None, tuple(notes.missing), element_of, notes.words, tuple(notes.assumed), tuple(notes.unread))
     touched = {node for device in devices for node in device.nodes}
     circuit = Circuit(
         devices=tuple(devices),
@@ -71,13 +73,13 @@ def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: Limite
         output_reach_V=(min(one.low for one in held.values()), max(one.high for one in held.values())),
         ground_leg=_has_ground_leg(place),
         regulates=_regulates(place),
-        output_capacitance_F=_output_capacitance_F(place),
+        output_capacitance_F=_output_capacitance_F(place, notes),
         latch=_latch(board, limiter, devices, element_of),
         assumed=tuple(sentence for _, sentence in notes.assumed),
     )
     notes.words[circuit.output] = "the output"
     words = {node: notes.words.get(node, "solved for") for node in sorted(touched | set(notes.words))}
-    return Bench(circuit, (), element_of, words, tuple(notes.assumed))
+    return Bench(circuit, (), element_of, words, tuple(notes.assumed), tuple(notes.unread))
 
 
 def _transistors(devices: list[Device], names: tuple[str, ...]) -> tuple[str, ...]:
@@ -131,13 +133,16 @@ def _has_ground_leg(place: Place) -> bool:
     return place.around.output in nets
 
 
-def _output_capacitance_F(place: Place) -> float:
-    """Return the board's capacitors from the output to supplies, together, as far as their values can be read."""
+def _output_capacitance_F(place: Place, notes: Notes) -> float:
+    """Return the board's capacitors from the output to supplies, together, as far as their values can be read; note those
+    whose cannot."""
     board, total_F = place.board, 0.0
     for index, _ in board.elements_at[place.around.output]:
         element = board.elements[index]
         others = [net for net in element.terminals.values() if net != place.around.output]
         if element.kind == "capacitor" and any(place.usual_V(net) is not None for net in others):
+            if element.value is None:
+                notes.unread += [id for part in element.parts if (id := board.parts[part].id) not in notes.unread]
             total_F += element.value or 0.0
     return total_F
 

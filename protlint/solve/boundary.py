@@ -31,11 +31,13 @@ class Missing:
 
 @dataclass(slots=True)
 class Notes:
-    """What a bench says of itself as it comes together: ``assumed`` holds (subject, sentence) pairs."""
+    """What a bench says of itself as it comes together: ``assumed`` holds (subject, sentence) pairs, ``unread`` the ids of
+    capacitors and inductors whose value cannot be read."""
 
     assumed: list[tuple[str, str]] = field(default_factory=list)
     missing: list[Missing] = field(default_factory=list)
     words: dict[str, str] = field(default_factory=dict)
+    unread: list[str] = field(default_factory=list)
 
 
 @dataclass(frozen=True, slots=True)

@@ -132,10 +132,11 @@ def _passive(place: Place, element: Element, parts: list[BoardPart], nodes: Mapp
         value = entry.ratings["resistance"].value if entry is not None and "resistance" in entry.ratings else FUSE_OHM
         if value == FUSE_OHM:
             notes.assumed.append(("circuit", f"{name} is taken as {FUSE_OHM:g} ohm when cold"))
-    if value is None:
-        notes.missing.append(Missing("value", parts[0].id, f"a readable value of {parts[0].id}"))
-        return []
     kind = "resistor" if element.kind == "fuse" else element.kind
+    if value is None:
+        # no current at rest depends on it
+        notes.unread.append(parts[0].id)
+        return [Device(name=name, kind=kind, nodes=ends, model={})]
     return [Device(name=name, kind=kind, nodes=ends, model={parameter: value})]
 
 

@@ -4,9 +4,11 @@ from __future__ import annotations
 
 from pathlib import Path
 
+import pytest
+
 from protlint import pipeline
 from tests.support.desk import found, the_one, unchecked
-from tests.support.judged import Job, sink
+from tests.support.judged import Job, follower, sink
 from tests.support.paths import FIXTURES
 
 
@@ -16,6 +18,28 @@ def test_an_unreadable_value_is_quoted_and_the_limiter_not_judged() -> None:
     assert one.parts == ("R2",)
     assert '"2.2.2"' in one.message
     assert the_one(review).verdict in ("fails", "not judged")
+
+
+@pytest.mark.parametrize("text", ["tbd", "-"])
+def test_currents_do_without_a_capacitor_s_value_and_loop_and_delay_do_not(text: str) -> None:
+    known, unread = sink().review(), sink().drawn(("C1 CAP 10n", f"C1 CAP {text}")).review()
+    (one,) = found(unread, "value-unreadable")
+    assert (one.parts, one.level) == (("C1",), "warning")
+    assert the_one(unread).solution.currents == the_one(known).solution.currents
+    assert the_one(unread).verdict == "passes"
+    asked = {(check, needs) for check, needs in unchecked(unread) if needs == "the value of C1"}
+    assert {check for check, _ in asked} == {"loop-undamped", "trips-late"}
+    assert the_one(unread).solution.loop is None
+
+
+def test_a_capacitor_at_the_output_whose_value_cannot_be_read_is_not_taken_as_none_in_silence() -> None:
+    job = follower().drawn(("C11 CAP", "C12 CAP tbd OUT GND\nC11 CAP"))
+    review = job.stated(peak={"current": "2 A", "lasts": "1 ms"}).review()
+    (one,) = found(review, "value-unreadable")
+    assert (one.parts, one.level) == (("C12",), "warning")
+    asked = {(check, needs) for check, needs in unchecked(review) if needs == "the value of C12"}
+    assert {check for check, _ in asked} == {"loop-undamped", "trips-on-peaks"}
+    assert the_one(review).solution.loop is not None
 
 
 def test_a_value_elsewhere_on_the_board_is_nobodys_business() -> None:
