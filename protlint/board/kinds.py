@@ -8,7 +8,7 @@ letter alone. Which pin is which, ``protlint.board.pins`` tells; a part may have
 from __future__ import annotations
 
 import re
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import lru_cache
 
@@ -127,14 +127,25 @@ def _kind(part: Part, part_number: str | None, entry: PartEntry | None) -> tuple
     if entry is not None:
         return entry.kind, "part data"
     texts = [(item.name, str(item.value)) for key in _TELLING if (item := part.properties.get(key)) is not None]
-    texts += [("part number", part_number)] if part_number else []
-    for name, text in (*texts, ("library cell", part.cell)):
+    whole = [*([("part number", part_number)] if part_number else []), ("library cell", part.cell)]
+    if _is_connector(part, [text for _, text in whole]):
+        texts = []
+    for name, text in (*texts, *whole):
         kind, why = _by_words(text)
         family = FAMILY.get(kind)
         if kind and len(part.pins) <= _MOST_PINS.get(family or "", len(part.pins)):
             told = f"{name} {text!r}" if len(text) <= 40 else name
             return _settled(part, kind, f"{told}{': ' if why else ''}{why}")
     return _by_letter(part)
+
+
+def _is_connector(part: Part, names: Sequence[str]) -> bool:
+    """Tell whether class letter and cell or part number make a part a connector: its value then says what is plugged in.
+
+    ``J3`` of a cell ``CONN2`` with the value ``SPEAKER`` or ``LED STRING`` is neither.
+    """
+    letter = _LETTERS.get(class_letters(part).casefold())
+    return letter == "connector" and any(_by_words(text)[0] == "connector" for text in names)
 
 
 _LONGEST = 200
