@@ -112,5 +112,14 @@ def usual(rows: Sequence[Currents]) -> Currents | None:
 
 def usual_holds_A(case: Case) -> float | None:
     """Return what a limiter holds as drawn at the usual ambient, or None where it is not known or nothing."""
+    return usual_A(case, "holds")
+
+
+def usual_A(case: Case, figure: str) -> float | None:
+    """Return a current of a limiter as drawn at the usual ambient, or None where it is not known or nothing.
+
+    ``figure`` is ``holds``, ``carries`` or ``most``.
+    """
     row = usual(case.solution.currents)
-    return row.holds_A if row is not None and row.holds_A else None
+    value: float | None = getattr(row, f"{figure}_A") if row is not None else None
+    return value or None

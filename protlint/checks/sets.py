@@ -18,6 +18,7 @@ from protlint.checks.likeness import (
     plain,
     to_fit,
     usual,
+    usual_A,
     usual_holds_A,
     values_of,
     with_values,
@@ -31,6 +32,14 @@ from protlint.solve.solution import Currents, Pair, Solution
 
 LEAST_CHANNELS = 3
 """Two channels that differ do not tell which of them is odd."""
+
+COMPARED = {
+    "holds": ("holds", "hold"),
+    "carries": ("carries", "carry"),
+    "most": ("passes at most", "pass at most"),
+}
+"""The currents of like channels that are compared, in this order, with how one has it and several do; a divider's leg to
+ground shows at the working output only."""
 
 REACH = 1.1
 """How far around the sense resistance that goes as 1 / R preferred values are tried; the solved circuit decides."""
@@ -59,7 +68,7 @@ def halves_unequal(whole: BoardCase) -> Iterator[BoardAnswer]:
 
 
 def channels_unequal(whole: BoardCase) -> Iterator[BoardAnswer]:
-    """Yield a finding for each of three or more like limiters that has a value other than most and holds another current."""
+    """Yield a finding for each of three or more like limiters with a value other than most that carries another current."""
     for ids in whole.found.sets:
         if len(ids) >= LEAST_CHANNELS:
             cases = [whole.cases[name] for name in ids]
@@ -170,14 +179,14 @@ def _channel(
     changes = differing(case, values_of(others[0]), odd[place])
     if not changes or any(_asked(case) != _asked(one) for one in others):
         return
-    its_A = usual_holds_A(case)
-    solved = [held_A for held_A in map(usual_holds_A, others) if held_A is not None]
-    if its_A is None or not solved:
+    if usual_holds_A(case) is None or all(usual_holds_A(one) is None for one in others):
         yield Unanswered(case.limiter.id, NotChecked(check, f"what {case.limiter.id} and the channels like it hold, solved"))
         return
-    held_A = median_low(solved)
-    if abs(its_A / held_A - 1.0) <= case.threshold(check, "difference"):
+    apart = _apart_from(case, others, case.threshold(check, "difference"))
+    if apart is None:
         return
+    figure, its_A, their_A = apart
+    one_has, several_have = COMPARED[figure]
     alike = ", ".join(one.limiter.id for one in others)
     lines = []
     for one in changes:
@@ -186,13 +195,13 @@ def _channel(
             WorkingLine("in most channels", f"as in {alike}", one.then, one.unit),
         ]
     lines += [
-        WorkingLine(f"holds, {case.limiter.id}", "solved as drawn", its_A, "A"),
-        WorkingLine("holds, the others", f"the same, {alike}", held_A, "A"),
+        WorkingLine(f"{figure}, {case.limiter.id}", "solved as drawn", its_A, "A"),
+        WorkingLine(f"{figure}, the others", f"the same, {alike}", their_A, "A"),
     ]
     yield case.finding(
         check,
-        f"{'; '.join(one.says() for one in changes)} of {len(cases)} like channels: this one holds "
-        f"{format_quantity(its_A, 'A')}, they hold {format_quantity(held_A, 'A')}",
+        f"{'; '.join(one.says() for one in changes)} of {len(cases)} like channels: this one "
+        f"{one_has} {format_quantity(its_A, 'A')}, they {several_have} {format_quantity(their_A, 'A')}",
         parts=tuple(part for one in changes for part in one.parts),
         working=tuple(lines),
         remedy=f"unless {case.limiter.id} alone is meant for another carry and cap (state them under [limiter]), "
@@ -200,6 +209,22 @@ def _channel(
         fits=tuple(fit for one in changes for fit in one.fits(case)),
         assumption=case.assumes(*DRAWN),
     )
+
+
+def _apart_from(case: Case, others: Sequence[Case], most: float) -> tuple[str, float, float] | None:
+    """Return the first of :data:`COMPARED` that lies more than a share away from the others' median, with the two currents.
+
+    Channels that work at other output voltages are compared by what they hold only.
+    """
+    alike = all(one.needs.output_V == case.needs.output_V for one in others)
+    for figure in COMPARED if alike else ("holds",):
+        its_A = usual_A(case, figure)
+        solved = [current_A for one in others if (current_A := usual_A(one, figure)) is not None]
+        if its_A is not None and solved:
+            their_A = median_low(solved)
+            if abs(its_A / their_A - 1.0) > most:
+                return figure, its_A, their_A
+    return None
 
 
 def _held_against(values: Sequence[Values], odd: Sequence[tuple[Spot, ...]], place: int) -> list[int]:

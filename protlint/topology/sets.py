@@ -25,7 +25,8 @@ def find_pairs(limiters: Sequence[Limiter]) -> tuple[tuple[str, str], ...]:
 
 def find_sets(board: Board, limiters: Sequence[Limiter]) -> tuple[tuple[str, ...], ...]:
     """Return the ids of like channels, two or more: one topology and polarity, as many parts in every role, the same types
-    of pass device and shunt. Values may differ: that is what a check looks for."""
+    of pass device and driver. Values may differ: that is what a check looks for. The shunts' types may too: another gain
+    group in one channel is what purchasing does, and no sign that the channel is meant otherwise."""
     alike: dict[tuple[object, ...], list[str]] = {}
     for limiter in limiters:
         alike.setdefault(_likeness(board, limiter), []).append(limiter.id)
@@ -36,7 +37,7 @@ def _likeness(board: Board, limiter: Limiter) -> tuple[object, ...]:
     counts = tuple(sorted((role, len(elements)) for role, elements in limiter.elements.items() if elements))
     types = tuple(
         board.parts[part].part_number or board.parts[part].kind
-        for role in ("pass", "driver", "shunt")
+        for role in ("pass", "driver")
         for element in limiter.elements.get(role, ())
         for part in board.elements[element].parts
     )

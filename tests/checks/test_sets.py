@@ -86,6 +86,48 @@ def test_an_odd_channel_that_cannot_be_solved_is_not_checked() -> None:
     assert {check for check, _ in unchecked(review)} >= {"channels-unequal"}
 
 
+FOLDING = """
+J{n} CONN - OUT{n} GND
+J{n}5 CONN - CTL{n} GND
+R{n}0 RES 100 CTL{n} BASE{n} POWER:5W
+Q{n}0 NPN QPN1 +24V BASE{n} SNS{n}
+R{n}1 RES 0.68 SNS{n} OUT{n} POWER:5W
+R{n}2 RES 100 SNS{n} FOLD{n} POWER:0.5W
+R{n}3 RES {leg} FOLD{n} GND POWER:0.5W
+Q{n}1 NPN {shunt} BASE{n} FOLD{n} OUT{n}
+C{n}1 CAP 1n BASE{n} FOLD{n}
+"""
+
+
+def folding(*legs: str, shunt: str = "QSN1", outputs: tuple[str, ...] = ()) -> Review:
+    """Return the review of a board of foldback channels, their legs to ground as given; ``shunt`` is the last one's type."""
+    types = ["QSN1"] * (len(legs) - 1) + [shunt]
+    board = "J0 CONN - +24V GND\n" + "".join(
+        FOLDING.format(n=n, leg=leg, shunt=one) for n, (leg, one) in enumerate(zip(legs, types, strict=True), 1)
+    )
+    drive = {f"CTL{n}": {"low": "0 V", "high": "20 V"} for n in range(1, len(legs) + 1)}
+    asked = {f"OUT{n}": {"output": one} for n, one in enumerate(outputs or ("12 V",) * len(legs), 1)}
+    return reviewed(board, limits(supply=FIXED, drive=drive, limiter=asked))
+
+
+def test_a_leg_to_ground_ten_times_too_great_shows_at_the_working_output_and_is_told() -> None:
+    """By hand (divider law) the leg adds V_O R_1 / (R_2 R_S) = 0.45 A at 12 V and nothing in the short."""
+    review = folding("3.9k", "39k", "3.9k")
+    assert odd_parts(review) == {"Q20": ("R23",)}
+    (finding,) = found(review, "channels-unequal")
+    working = {line.quantity: line.value for line in finding.working}
+    assert working["carries, the others"] - working["carries, Q20"] == pytest.approx(0.9 * 12 * 100 / 3900 / 0.68, rel=0.1)
+    assert odd_parts(folding("3.9k", "3.9k", "3.9k")) == {}
+
+
+def test_channels_that_work_at_other_outputs_are_compared_by_what_they_hold_only() -> None:
+    assert odd_parts(folding("3.9k", "39k", "3.9k", outputs=("12 V", "5 V", "12 V"))) == {}
+
+
+def test_another_type_of_shunt_makes_a_channel_no_other_build() -> None:
+    assert odd_parts(folding("3.9k", "39k", "3.9k", shunt="BC547C")) == {"Q20": ("R23",)}
+
+
 HALVES = """
 J1 CONN - OUT GND
 J2 CONN - +24V -24V
