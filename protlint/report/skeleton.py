@@ -10,11 +10,12 @@ from collections.abc import Iterable, Mapping
 from typing import TYPE_CHECKING
 
 from protlint.board.attributes import file_habits
+from protlint.board.pins import FAMILY
 from protlint.limits import ATTRIBUTES, CheckSetting, DriveLimits, LimiterLimits, Limits, Range
 from protlint.limits_file import load_limits
 from protlint.report.digest import listed
 from protlint.report.safe import readable, terminal
-from protlint.report.survey import ROLED_KINDS
+from protlint.report.survey import pins_unknown
 from protlint.toml.text import toml_key, toml_string
 
 if TYPE_CHECKING:
@@ -207,21 +208,25 @@ def _setting(setting: CheckSetting) -> str:
 
 def _pins(review: Review) -> Iterable[list[str]]:
     """Write the pin roles that are stated, a blank for each type whose pins could not be told apart, and for each type of
-    a limiter or a fault whose pin order is known from memory only, that order to hold against a data sheet."""
+    a limiter or a fault whose pin order is known from memory only, that order to hold against a data sheet.
+
+    Of diodes, of which a board has many, only those that a limiter, a fault or a finding names are asked about.
+    """
     stated = review.limits.pins
     for name, roles in stated.items():
         yield [f"[pins.{toml_key(name)}]", *(f"{toml_key(pin)} = {toml_string(role)}" for pin, role in roles.items())]
+    groups = (*review.found.limiters, *(fault.group for fault in review.found.faults))
+    named = dict.fromkeys(part for group in groups for parts in group.roles.values() for part in parts)
+    asked = {*named, *(part for finding in review.findings for part in finding.parts)}
     lacking: dict[str, list[str]] = {}
     for part in review.board.parts:
-        if part.kind in ROLED_KINDS and not part.roles:
+        if pins_unknown(part) and part.part.pins and (FAMILY[part.kind] != "diode" or part.id in asked):
             names = [pin.number or pin.name for pin in part.part.pins]
             lacking.setdefault(part.part_number or part.part.cell, names)
     for name, pins in lacking.items():
         if name not in stated:
             yield [f"# [pins.{toml_key(name)}]", *(f'# {toml_key(pin)} = ""' for pin in dict.fromkeys(pins))]
-    groups = (*review.found.limiters, *(fault.group for fault in review.found.faults))
-    of_groups = dict.fromkeys(part for group in groups for parts in group.roles.values() for part in parts)
-    known = [review.board.part_of[part] for part in of_groups if part in review.board.part_of]
+    known = [review.board.part_of[part] for part in named if part in review.board.part_of]
     remembered = {part.part_number: part.entry for part in known if part.pins_from_memory and part.entry is not None}
     for number, entry in remembered.items():
         rows = (f"# {toml_key(pin)} = {toml_string(role)}" for pin, role in entry.pins.items())

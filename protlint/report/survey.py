@@ -31,6 +31,11 @@ TELLING_ROLES = frozenset(("base", "gate", "anode"))
 """Roles one of which each of those kinds has where its pins are known; pins that are not go by their numbers."""
 
 
+def pins_unknown(part: BoardPart) -> bool:
+    """Tell whether a part's pins are not alike and nobody knows which is which."""
+    return part.kind in ROLED_KINDS and not part.sections and TELLING_ROLES.isdisjoint(part.roles)
+
+
 def survey(review: Review) -> Document:
     """Return what a survey shows of a review."""
     report = document(review)
@@ -51,11 +56,7 @@ def survey(review: Review) -> Document:
             "kind": _gathered(
                 (part.part.cell or "that is not named", part.id) for part in board.parts if part.kind == "unknown"
             ),
-            "pins": _gathered(
-                (_type_of(part), part.id)
-                for part in board.parts
-                if part.kind in ROLED_KINDS and not part.sections and TELLING_ROLES.isdisjoint(part.roles)
-            ),
+            "pins": _gathered((_type_of(part), part.id) for part in board.parts if pins_unknown(part)),
             "part_data": _types_without_data(board, {part["id"] for one in report["limiters"] for part in one["parts"]}),
         },
         "supplies": [

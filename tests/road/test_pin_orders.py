@@ -53,3 +53,19 @@ def test_the_skeleton_asks_about_it() -> None:
         2
     ]
     assert asked.splitlines()[1:4] == ['# 1 = "collector"', '# 2 = "base"', '# 3 = "emitter"']
+
+
+def test_the_skeleton_has_blanks_for_pins_that_nobody_knows(tmp_path: Path) -> None:
+    drawn = flat_netlist(
+        "unknown", (Drawn("Q1", "NPN", (("1", "A"), ("2", "B"), ("3", "C")), value="XYZ9"),), remark="invented"
+    )
+    netlist = read_netlist_bytes(drawn.encode(), "unknown.edf")
+    skeleton = rendered_skeleton(review_netlist(netlist, set_up()))
+    assert '# [pins.XYZ9]\n# 1 = ""\n# 2 = ""\n# 3 = ""\n' in skeleton
+    assert "XYZ7" not in skeleton
+    path = tmp_path / "limits.toml"
+    blanks, roles = '# 1 = ""\n# 2 = ""\n# 3 = ""', '1 = "base"\n2 = "emitter"\n3 = "collector"'
+    path.write_text(skeleton.replace("# [pins.XYZ9]", "[pins.XYZ9]").replace(blanks, roles), encoding="utf-8")
+    answered = review_netlist(netlist, set_up(limits=path))
+    assert set(answered.board.parts[0].roles) == {"base", "emitter", "collector"}
+    assert "# [pins" not in rendered_skeleton(answered)
