@@ -44,7 +44,7 @@ def with_exchange(case: Case, findings: Sequence[Finding]) -> list[Finding]:
 def _mends(case: Case, fits: tuple[Fit, Fit], known: Collection[About]) -> str | None:
     """Return what to exchange and what the limiter then comes to; None where it is not sound then either."""
     changed = fitted(case, fits)
-    if changed is None or not _limits(changed):
+    if changed is None or changed.unbounded or not _limits(changed):
         return None
     after, _ = ask(changed)
     burns = [one for one in after if one.check in POWER_CHECKS and {fit.part for fit in fits}.issuperset(one.parts)]
