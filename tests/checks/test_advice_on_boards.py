@@ -103,7 +103,7 @@ def fragile(circuit: Circuit, folder: Path) -> Review:
     """The review with a pass device that bears next to nothing for as long as a slowed limiter takes."""
     files = files_of(circuit, folder)
     parts = files.parts.read_text().replace("[TYPE_Q1.ratings]\n", '[TYPE_Q1.ratings]\ntj_max = "150 degC"\n')
-    area = '[[TYPE_Q1.safe_area]]\nlasts = "1 ms"\npoints = [["1 V", "8 A"], ["80 V", "1 mA"]]\n'
+    area = '[[TYPE_Q1.safe_area]]\nlasts = "100 us"\npoints = [["1 V", "8 A"], ["80 V", "1 mA"]]\n'
     files.parts.write_text(parts + area)
     return review(files.netlist, limits=files.limits, parts=[files.parts])
 

@@ -109,7 +109,7 @@ def loops() -> Iterator[Scenario]:
     left = 1.0 - 0.55 * (1.0 - (150.0 - 70.0) / (150.0 - 25.0))
 
     def flat(amperes: float) -> Job:
-        curve = {"lasts": "1 ms", "points": [["1 V", f"{amperes} A"], ["80 V", f"{amperes} A"]]}
+        curve = {"lasts": "50 us", "points": [["1 V", f"{amperes} A"], ["80 V", f"{amperes} A"]]}
         return late.knowing("QPN1", safe_area=[curve, *follower().data["QPN1"]["safe_area"]])
 
     yield both("trips-late", "second breakdown of a pulse", pulse_A / left, flat)
