@@ -20,6 +20,9 @@ Roles = dict[str, tuple[int, ...]]
 NO_ROLES = "no roles"
 """How the roles are known of what has none: a connector, an IC, an unknown part."""
 
+BY_NAMES = "pin names"
+"""How the roles are known of what bears its terminals' names."""
+
 FROM_MEMORY = "part data, pin order from memory"
 """How the roles are known of what has only numbers, and a type whose pin order nobody has looked up yet."""
 
@@ -77,8 +80,23 @@ def roles_of_pins(
         return _two_terminals(part), (), "two terminals, alike"
     roles, sections = _by_names(part, family)
     if roles or sections:
-        return roles, sections, "pin names"
+        return roles, sections, BY_NAMES
     return {}, (), "the pins are numbered and nothing says which is which"
+
+
+def numbers_at_odds(part: Part, entry: PartEntry, family: str) -> tuple[tuple[str, str, str], ...]:
+    """Return (pin number, role by the pin's name, role by the part data) of every pin that the two tell different things of.
+
+    The number is what the footprint goes by: a symbol drawn for another package connects the wrong pads.
+    """
+    names = _PIN_NAMES[family]
+    found = []
+    for pin in part.pins:
+        by_name = names.get(pin.name.strip().casefold())
+        by_number = entry.pins.get(pin.number or "", "none").partition(".")[0]
+        if by_name and by_number != "none" and by_name != by_number:
+            found.append((str(pin.number), by_name, by_number))
+    return tuple(sorted(found))
 
 
 def family_by_names(part: Part) -> str | None:

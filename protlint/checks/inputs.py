@@ -4,8 +4,10 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from protlint.board.pins import BY_NAMES, FAMILY, numbers_at_odds
 from protlint.checks.case import Answer, Case
 from protlint.findings import WorkingLine
+from protlint.toml.text import toml_key
 
 CHIP_ROLES = ("pass", "driver", "shunt", "steering")
 """The roles of semiconductors."""
@@ -136,8 +138,8 @@ def designator_doubtful(case: Case) -> Iterator[Answer]:
 
 
 def part_data_contradicts(case: Case) -> Iterator[Answer]:
-    """Yield a finding for each part that netlist and parts list say different things of, and for ratings that cannot all be
-    true."""
+    """Yield a finding for each part that netlist and parts list say different things of, for a symbol whose pin numbers are
+    not the package's, and for ratings that cannot all be true."""
     for part_id in _needed(case):
         for one in case.differences.get(part_id, ()):
             yield case.finding(
@@ -154,6 +156,7 @@ def part_data_contradicts(case: Case) -> Iterator[Answer]:
                 subject=f"{part_id} {one.attribute}",
             )
     for part_id in case.parts(*CHIP_ROLES):
+        yield from _symbol_against_package(case, part_id)
         entry = case.part(part_id).entry
         for doubt in entry.contradictions if entry is not None else ():
             assert entry is not None
@@ -169,6 +172,32 @@ def part_data_contradicts(case: Case) -> Iterator[Answer]:
                 remedy=f"hold {', '.join(doubt.ratings)} of {entry.part_number} against its maker's data sheet",
                 subject=f"{part_id} {' '.join(doubt.ratings)}",
             )
+
+
+def _symbol_against_package(case: Case, part_id: str) -> Iterator[Answer]:
+    """Yield a finding where the names of a symbol's pins count and their numbers say otherwise: pads go by number."""
+    part = case.part(part_id)
+    if part.entry is None or part.roles_from != BY_NAMES:
+        return
+    odds = numbers_at_odds(part.part, part.entry, FAMILY[part.kind])
+    if not odds:
+        return
+    drawn, known = (", ".join(f"{pin[0]} {pin[told]}" for pin in odds) for told in (1, 2))
+    yield case.finding(
+        "part-data-contradicts",
+        f"the symbol of {part_id} has the pins {drawn}, where the part data of {part.entry.part_number} (from "
+        f"{part.entry.pins_source}) have {known}: on the board its terminals may be exchanged; the symbol's names count here",
+        parts=(part_id,),
+        working=tuple(
+            WorkingLine(
+                f"pin {number}", f"{named} in the symbol, {of_data} in the part data", None, "", part.entry.pins_source
+            )
+            for number, named, of_data in odds
+        ),
+        remedy=f"hold the pin numbers of {part_id} against its package drawing, and take a symbol that has them; where the "
+        f"symbol is right, state its pins in [pins.{toml_key(part.entry.part_number)}] of the limits file",
+        subject=f"{part_id} pins",
+    )
 
 
 def _needed(case: Case) -> tuple[str, ...]:

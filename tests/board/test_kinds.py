@@ -6,6 +6,7 @@ import pytest
 
 from protlint.board.graph import KINDS
 from protlint.board.kinds import identify
+from protlint.board.pins import numbers_at_odds
 from protlint.limits import Limits
 from protlint.netlist.model import Part, PropertyValue
 from protlint.partdata.book import PartEntry, load_book
@@ -218,6 +219,24 @@ def test_a_pin_order_from_memory_gives_way_to_names_and_helps_where_there_are_no
     numbered = identify(placed("Q1", "2N3904", ("1", "2", "3")), "2N3904", entry, Limits())
     assert numbered.roles == {"emitter": (0,), "base": (1,), "collector": (2,)}
     assert "memory" in numbered.roles_from
+
+
+@pytest.mark.parametrize(
+    ("pins", "at_odds"),
+    [
+        (("B/1", "C/2", "E/3"), ()),
+        (("B/1", "E/2", "C/3"), (("2", "emitter", "collector"), ("3", "collector", "emitter"))),
+        (("1", "2", "3"), ()),
+        (("B", "C", "E"), ()),
+        (("B/1", "C/2", "C/TAB", "E/3"), ()),
+    ],
+)
+def test_pin_numbers_that_name_other_terminals_than_the_part_data(
+    pins: tuple[str, ...], at_odds: tuple[tuple[str, str, str], ...]
+) -> None:
+    """Base, collector, emitter from the left is the order of TO-247 and TO-264 bipolars; from memory."""
+    entry = PartEntry("X", "npn", pins={"1": "base", "2": "collector", "3": "emitter"})
+    assert numbers_at_odds(placed("Q1", "Q", pins), entry, "bipolar") == at_odds
 
 
 def test_properties_can_name_the_pins() -> None:

@@ -99,6 +99,27 @@ def test_thermal_figures_that_contradict_each_other_are_a_note() -> None:
     assert one.working
 
 
+@pytest.mark.parametrize(("numbers", "told"), [("312", (("Q11",), ("Q21",))), ("123", ())])
+def test_a_symbol_with_the_pin_numbers_of_another_package_is_told(
+    tmp_path: Path, numbers: str, told: tuple[tuple[str, ...], ...]
+) -> None:
+    """Pads go by number: the symbol's names C B E are right for the limiter, and the board exchanges them all the same."""
+    text = (FIXTURES / "clean" / "pier-lamps.edf").read_text(encoding="utf-8")
+    for name, number in zip("CBE", numbers, strict=True):
+        text = text.replace(f"(port {name})", f'(port {name} (designator "{number}"))')
+    board, data = tmp_path / "board.edf", tmp_path / "parts.toml"
+    board.write_text(text, encoding="utf-8")
+    known = (FIXTURES / "clean" / "parts.toml").read_text(encoding="utf-8")
+    pins = 'pins = { 1 = "collector", 2 = "base", 3 = "emitter" }\npins_source = "memory"\n'
+    data.write_text(known.replace("[PHN60]\n", f"[PHN60]\n{pins}"), encoding="utf-8")
+    doubts = found(pipeline.review(board, parts=data), "part-data-contradicts")
+    assert tuple(sorted(one.parts for one in doubts)) == told
+    assert all(one.level == "note" and len(one.working) == 3 for one in doubts)
+    limits = tmp_path / "limits.toml"
+    limits.write_text('[pins.PHN60]\nC = "collector"\nB = "base"\nE = "emitter"\n', encoding="utf-8")
+    assert not found(pipeline.review(board, parts=data, limits=limits), "part-data-contradicts")
+
+
 def test_a_thyristor_that_no_data_knows_is_told_by_what_is_missing_not_by_its_pins() -> None:
     """A kind without usual figures: nothing is said to be taken in their place."""
     review = sink().drawn(("Q2 NPN QSN1 BASE STOP GND", "Q2 SCR XYZ9 A=BASE G=STOP K=GND")).review()
