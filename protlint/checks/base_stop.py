@@ -63,7 +63,8 @@ def base_stop_low(case: Case) -> Iterator[Answer]:
     if base.surge.base_A > case.threshold(check, "share") * base.rating.value:
         level: Level = "error" if base.surge.base_A > base.rating.value else "warning"
         stops = case.parts("base_stop") or case.parts("preset")
-        yield _finding(case, check, base, f"{', '.join(stops)} is too low for the base of {base.part_id}", level, stops)
+        be = "is" if len(stops) == 1 else "together are"
+        yield _finding(case, check, base, f"{', '.join(stops)} {be} too low for the base of {base.part_id}", level, stops)
 
 
 def base_stop_high(case: Case) -> Iterator[Answer]:

@@ -186,7 +186,7 @@ def _symbol_against_package(case: Case, part_id: str) -> Iterator[Answer]:
     yield case.finding(
         "part-data-contradicts",
         f"the symbol of {part_id} has the pins {drawn}, where the part data of {part.entry.part_number} (from "
-        f"{part.entry.pins_source}) have {known}: on the board its terminals may be exchanged; the symbol's names count here",
+        f"{part.entry.pins_source}) have {known}: on the board its terminals may be exchanged; the symbol's names count",
         parts=(part_id,),
         working=tuple(
             WorkingLine(

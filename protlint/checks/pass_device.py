@@ -15,7 +15,7 @@ from protlint.findings import NotChecked, WorkingLine
 from protlint.quantities import format_quantity, preferred, within
 from protlint.solve.solution import Point
 
-ASSUMED_IMPEDANCE = "the transient thermal impedance of {part} is bounded by the square root of time up to rth_jc"
+ASSUMED_IMPEDANCE = "{part}: the transient thermal impedance is bounded by the square root of time up to rth_jc"
 
 WORTH_SAYING = 1.01
 """A point of the locus counts beside the short where it heats the device this much more."""
