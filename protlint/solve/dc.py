@@ -181,7 +181,7 @@ def evaluate(network: Network, p: Parameters, inner: Array) -> list[Evaluation]:
     for group, record, present in zip(network.groups, p.records, p.present, strict=True):
         rows = inner[group.rows].reshape(group.ports, -1, inner.shape[1])
         if isinstance(record, gummel_poon.Bipolars):
-            result = gummel_poon.bipolar(rows, record, present)
+            result: Evaluation = gummel_poon.bipolar(rows, record, present)
         elif isinstance(record, devices.Mosfets):
             result = devices.mosfet(rows, record, present)
         elif isinstance(record, devices.Diodes):
