@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Collection, Iterator, Sequence
 
 from protlint.board.graph import Board, Element
 from protlint.board.kinds import UNTOLD_TRANSISTOR
+from protlint.board.pins import FAMILY, TERMINALS
 from protlint.checks.board_case import BoardAnswer, BoardCase, Unanswered
 from protlint.findings import Finding, NotChecked, WorkingLine
 from protlint.solve.surroundings import CONTROL
@@ -23,8 +25,10 @@ CROWDED = 64
 
 
 def hidden_limiters(whole: BoardCase) -> Iterator[BoardAnswer]:
-    """Yield what :func:`hidden_by_unknown_pins` finds, and the transistors around which the search had to end early."""
+    """Yield what :func:`hidden_by_unknown_pins` finds, the transistors with a part of no known kind at the shunt's base, and
+    those around which the search had to end early."""
     yield from hidden_by_unknown_pins(whole)
+    yield from _hidden_behind_unknown_parts(whole)
     yield from _hidden_in_a_crowd(whole)
 
 
@@ -70,6 +74,51 @@ def _unplaced(board: Board, suspected: Collection[str]) -> Iterator[Unanswered]:
         yield Unanswered(None, NotChecked(f"whether a limiter is at {_named(parts)}", key))
 
 
+def _hidden_behind_unknown_parts(whole: BoardCase) -> Iterator[Unanswered]:
+    """Yield the transistors that lie as pass device and shunt do, the shunt's base on a part of no known kind.
+
+    A trimmer in the preset is the usual one. The sense resistor stands in the lead of the pass device, the shunt's lead is
+    on its other end, and the shunt takes the drive of the pass device or of its driver.
+    """
+    board = whole.board
+    strangers = [element for element in board.elements if element.kind == "unknown"]
+    at = {net: element for element in reversed(strangers) for net in element.terminals.values()}
+    taken = {index for one in whole.found.limiters for indices in one.elements.values() for index in indices}
+    for shunt in board.elements:
+        if shunt.kind not in CONTROL or shunt.index in taken or _unknown(shunt):
+            continue
+        stranger = at.get(shunt.terminals[CONTROL[shunt.kind]])
+        pass_device = _pass_device_of(board, shunt) if stranger is not None else None
+        if stranger is not None and pass_device is not None and pass_device.index not in taken:
+            part = board.parts[stranger.parts[0]]
+            _, colon, why = part.kind_from.partition(": ")
+            key = f"[{toml_key(part.part_number or part.part.cell)}] kind, in a file for --parts"
+            if colon:
+                key = f"resistors drawn in place of {part.id}: {why}"
+            names = _named([board.parts[one.parts[0]].id for one in (pass_device, shunt)])
+            yield Unanswered(None, NotChecked(f"whether a limiter is at {names}", key))
+
+
+def _pass_device_of(board: Board, shunt: Element) -> Element | None:
+    """Return the transistor whose drive a shunt takes and in whose lead a sense resistor stands that the shunt is on."""
+    load, _, lead = (shunt.terminals.get(role) for role in TERMINALS[FAMILY[shunt.kind]])
+    for driven in _driven_from(board, load):
+        for one in (driven, *_driven_from(board, driven.terminals.get(TERMINALS[FAMILY[driven.kind]][2]))):
+            near = one.terminals.get(TERMINALS[FAMILY[one.kind]][2])
+            if near is not None and lead in _beyond_resistors(board, near, SENSE_OHM) - {near}:
+                return one
+    return None
+
+
+def _driven_from(board: Board, net: int | None) -> Iterator[Element]:
+    """Yield the transistors whose base or gate is on a net that is no supply."""
+    if net is not None and board.nets[net].supply is None and len(board.elements_at[net]) <= CROWDED:
+        for index, role in board.elements_at[net]:
+            element = board.elements[index]
+            if element.kind in CONTROL and role == CONTROL[element.kind]:
+                yield element
+
+
 def _hidden_in_a_crowd(whole: BoardCase) -> Iterator[Unanswered]:
     """Yield, by the crowded net that ended the search, the transistors that may be drawn wrong and were not fully tried."""
     told = {part for fault in whole.found.faults for parts in fault.group.roles.values() for part in parts}
@@ -108,11 +157,11 @@ def _shunts_of(board: Board, element: Element) -> Iterator[Element]:
                         yield other
 
 
-def _beyond_resistors(board: Board, net: int) -> set[int]:
+def _beyond_resistors(board: Board, net: int, below_ohm: float = math.inf) -> set[int]:
     return {
         other
         for index, _ in board.elements_at[net]
-        if board.elements[index].kind == "resistor"
+        if board.elements[index].kind == "resistor" and (board.elements[index].value or 0.0) < below_ohm
         for other in board.elements[index].terminals.values()
     }
 

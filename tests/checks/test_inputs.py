@@ -138,6 +138,26 @@ def test_a_transistor_that_nobody_can_place_is_not_passed_in_silence() -> None:
     assert named.not_checked == ()
 
 
+@pytest.mark.parametrize(
+    ("trimmer", "needs"),
+    [
+        ("RV3 POT - 1=SNS 2=STOP 3=GND", "resistors drawn in place of RV3: its setting is not known"),
+        ("RT3 NTC - 1=SNS 2=STOP", "resistors drawn in place of RT3: its resistance is not constant"),
+        ("ZZ3 ZZ9 - 1=SNS 2=STOP", "[ZZ9] kind, in a file for --parts"),
+    ],
+)
+def test_a_limiter_whose_preset_has_a_part_of_no_known_kind_is_not_passed_in_silence(trimmer: str, needs: str) -> None:
+    review = sink().drawn(("R3 RES 100 SNS STOP POWER:0.125W", trimmer)).review()
+    assert not review.limiters
+    assert [(one.check, one.needs) for one in review.not_checked] == [("whether a limiter is at Q1, Q2", needs)]
+
+
+def test_a_part_of_no_known_kind_elsewhere_hides_no_limiter() -> None:
+    review = sink().drawn(("C1 CAP", "RV3 POT - 1=STOP 2=GND 3=GND\nC1 CAP")).review()
+    assert the_one(review).limiter.id == "Q1"
+    assert review.not_checked == ()
+
+
 UNREAD = FIXTURES / "examples" / "unread.edf"
 
 
