@@ -6,7 +6,7 @@ connectors join its sheets; ripper cells, and placed cells whose ports are one n
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import NamedTuple
 
@@ -81,11 +81,13 @@ class Wiring:
 
 
 class _Placed(NamedTuple):
-    """An instance as references see it: its block, and where its elements begin among the placements."""
+    """An instance as references see it: its block, where its elements begin among the placements, and the bits of plain
+    ports, where it is no array."""
 
     instance: Instance
     block: Block
     first: int
+    plain: Mapping[str, int]
 
 
 _OWN = -1
@@ -114,7 +116,8 @@ class _Wirer:
 
     def place(self, instance: Instance, block: Block, instances: Scope[_Placed]) -> None:
         """Add what an instance places; of two with one identifier the first is what references mean."""
-        instances.add(instance.name.identifier, _Placed(instance, block, len(self.placements)))
+        plain = {} if instance.name.dimensions else block.ports.plain
+        instances.add(instance.name.identifier, _Placed(instance, block, len(self.placements), plain))
         if instance.name.dimensions:
             self.budget.spend(instance.name.width - 1, instance.offset)
         if not block.is_part and block.contents is None and block.ports.width > 1 and not block.shorts:
@@ -143,11 +146,12 @@ class _Wirer:
 
     def _join_plain(self, ref: PortRef, node: int, instances: Scope[_Placed]) -> bool:
         """Join a plain port of a plain instance, which most references are; False where it takes a closer look."""
-        placed = None if ref.instance is None else instances.find(ref.instance)
-        bit = None if placed is None or ref.member or ref.bundle else placed.block.ports.plain.get(ref.port)
-        if placed is None or bit is None or placed.instance.name.dimensions:
+        port, instance, offset, member, bundle, _ = ref
+        placed = None if instance is None or member or bundle else instances.find(instance)
+        bit = None if placed is None else placed.plain.get(port)
+        if placed is None or bit is None:
             return False
-        self._attach(placed.first, bit, node, ref.offset)
+        self._attach(placed.first, bit, node, offset)
         return True
 
     def _ends(self, ref: PortRef | GlobalRef, net: str, instances: Scope[_Placed]) -> Sequence[tuple[int, int]]:
@@ -201,20 +205,20 @@ class _Wirer:
         if position == _OWN:
             self._unite(self.own.setdefault(bit, node), node)
             return
-        placement = self.placements[position]
-        first = placement.pins.setdefault(bit, node)
-        if placement.block.known is not None:
+        instance, _, block, pins = self.placements[position]
+        first = pins.setdefault(bit, node)
+        if block.known is not None:
             self.joined_at.setdefault((position, bit), offset)
         if first == node:
             return
-        if placement.block.is_part:
-            pin = placement.block.ports.text(bit)
+        if block.is_part:
+            pin = block.ports.text(bit)
             twice = TwoNets(position, pin, (first, node), *self.budget.places.at(offset))
             self.on_two_nets.setdefault((position, bit, node), twice)
             return
         self._unite(first, node)
-        if placement.block.contents is not None:
-            self.notes.add("block pin", offset, f"{placement.block.ports.text(bit)} of {placement.instance.name.text}")
+        if block.contents is not None:
+            self.notes.add("block pin", offset, f"{block.ports.text(bit)} of {instance.name.text}")
 
     def _note_strange(self, placement: Placement, bit: int, offset: int) -> None:
         block = placement.block

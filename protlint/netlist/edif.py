@@ -153,7 +153,7 @@ class _Reader(FormParser):
 
     def _plain_port_ref(self, offset: int, port: str, instance: str) -> PortRef:
         same = self._words.setdefault
-        return PortRef(same(port, port), same(instance, instance), offset)
+        return tuple.__new__(PortRef, (same(port, port), same(instance, instance), offset, (), None, ()))
 
     def _plain_view_ref(self, _offset: int, view: str, cell: str, library: str | None = None) -> ViewRef:
         """Return the reference that an instance makes: the same few on every part, so they are looked up."""

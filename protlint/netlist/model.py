@@ -1,7 +1,8 @@
 """The flat netlist: what is placed on the board and what is connected to what.
 
 This is the whole of what the upper floors know of EDIF. Parts, pins and nets are kept in the order of the file. What a board
-has by the hundred thousand is a named tuple, which is made three times as fast as a frozen dataclass.
+has by the hundred thousand is a named tuple, which is made three times as fast as a frozen dataclass; what it has most of,
+pins and references to them, is made by ``tuple.__new__``, which is twice as fast again.
 """
 
 from __future__ import annotations

@@ -202,7 +202,7 @@ def _pins(
             number = number or _number(facts.numbers, facts, label.position, sectioned=sectioned)
             named = (None if here is None else _pin_name(here.properties)) or facts.named
             name, number = _called(facts.text, number, named)
-        result.append(Pin(name, number, node, facts.direction))
+        result.append(tuple.__new__(Pin, (name, number, node, facts.direction)))
     return tuple(result)
 
 
