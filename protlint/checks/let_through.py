@@ -19,7 +19,11 @@ AREA = "pass-outside-safe-area"
 @dataclass(frozen=True, slots=True)
 class LetThrough:
     """What a pass device is let into: for how long, the energy, the voltage across it in the short, the current of a pulse
-    of that energy, the current its safe area allows for that time, and how that comes about."""
+    of that energy, the current its safe area allows for that time, and how that comes about.
+
+    ``wanted`` is the key of a safe area for that time where the only one known is for a much longer time: a device that such
+    a curve does not clear may still stand it.
+    """
 
     lasts_s: float
     energy_J: float
@@ -27,6 +31,7 @@ class LetThrough:
     current_A: float
     allowed_A: float
     lines: tuple[WorkingLine, ...]
+    wanted: str | None = None
 
     @property
     def ratio(self) -> float:
@@ -35,11 +40,7 @@ class LetThrough:
 
 
 def let_through(case: Case, part: BoardPart, names: tuple[str, ...], step: Step) -> LetThrough | str | None:
-    """Return what a pass device is let into, the key of what is missing for it, or None where it is nothing.
-
-    What is more than a curve for a much longer time allows may still be less than it stands for that short: there a curve
-    for that time is missing.
-    """
+    """Return what a pass device is let into, the key of what is missing for it, or None where it is nothing."""
     held = case.solution.held_short
     if held is None or not step.delay_s or not step.pass_energy_J:
         return None
@@ -75,12 +76,22 @@ def let_through(case: Case, part: BoardPart, names: tuple[str, ...], step: Step)
         standard=derating,
     )
     at_case = WorkingLine("case", "the highest ambient", hottest_degC, "degC")
-    found = LetThrough(step.delay_s, step.pass_energy_J, voltage_V, current_A, bound.current_A, (at_case, *lines))
     much_longer = min(curve.lasts_s, dc_from_s) > case.threshold(LATE, "curve_lasts") * step.delay_s
-    return wanted if much_longer and found.ratio > case.threshold(LATE, "error") else found
+    return LetThrough(
+        lasts_s=step.delay_s,
+        energy_J=step.pass_energy_J,
+        voltage_V=voltage_V,
+        current_A=current_A,
+        allowed_A=bound.current_A,
+        lines=(at_case, *lines),
+        wanted=wanted if much_longer else None,
+    )
 
 
 def too_much(case: Case, step: Step) -> bool:
-    """Tell whether a step lets any pass device into more than its safe area allows, as far as that is known."""
+    """Tell whether a step lets any pass device into more than its safe area allows, as far as that is known.
+
+    What is to be fitted has to be cleared: here a curve for a longer time counts too.
+    """
     found = [let_through(case, case.part(part_id), names, step) for part_id, names in case.device_parts("pass")]
     return any(one.ratio > case.threshold(LATE, "error") for one in found if isinstance(one, LetThrough))

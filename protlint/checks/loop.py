@@ -248,7 +248,8 @@ def _change(before: Step | None, after: Step | None) -> str:
         return ""
     if before.delay_s == after.delay_s == 0.0:
         return ", and still no delay"
-    return f"; the delay goes from {_delay(before)} to {_delay(after)}"
+    was, becomes = _delay(before), _delay(after)
+    return f"; the delay stays {becomes}" if was == becomes else f"; the delay goes from {was} to {becomes}"
 
 
 def _delay(step: Step) -> str:

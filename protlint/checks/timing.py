@@ -50,7 +50,7 @@ def trips_late(case: Case) -> Iterator[Answer]:
         if isinstance(found, str):
             yield NotChecked(LATE, found)
         elif found is not None and found.ratio > case.threshold(LATE, "error"):
-            yield _late(case, part, names, found)
+            yield _late(case, part, names, found) if found.wanted is None else NotChecked(LATE, found.wanted)
 
 
 def trips_on_peaks(case: Case) -> Iterator[Answer]:

@@ -55,7 +55,8 @@ def advise(
         return known
     now = _figures(known)
     effects = tuple(_effects(circuit, ambients_degC, short))
-    dearest = max(effects, key=lambda one: one.worst_damping, default=None)
+    blamed = [one for one in effects if not (one.base_stop and _sets_the_limit(circuit))]
+    dearest = max(blamed, key=lambda one: one.worst_damping, default=None)
     costs = dearest.part if dearest is not None and dearest.worst_damping > now[1] + COSTS else None
     enough = now[1] >= AIM
     fits: list[Fit] = []
@@ -144,6 +145,15 @@ def base_stop(circuit: Circuit) -> Device | None:
             if one.kind == "resistor" and shunt.nodes[1] in one.nodes and watched & set(one.nodes) - {shunt.nodes[1]}
         ),
         None,
+    )
+
+
+def _sets_the_limit(circuit: Circuit) -> bool:
+    """Tell whether the base stop is also a leg of a divider, which sets the limit: without it there is another limiter."""
+    stop = base_stop(circuit)
+    shunt = next((one for one in circuit.devices if one.name in circuit.shunt and one.kind in WITH_CONTROL), None)
+    return shunt is not None and any(
+        one.kind == "resistor" and one is not stop and shunt.nodes[1] in one.nodes for one in circuit.devices
     )
 
 

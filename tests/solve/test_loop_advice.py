@@ -8,7 +8,18 @@ import pytest
 
 from protlint.quantities import preferred
 from protlint.solve import advice as advice_module
-from protlint.solve.advice import AIM, BASE_EMITTER, COLLECTOR_BASE, DRIVE_FAR, Advice, advise, base_stop, fitted, places
+from protlint.solve.advice import (
+    AIM,
+    BASE_EMITTER,
+    COLLECTOR_BASE,
+    COSTS,
+    DRIVE_FAR,
+    Advice,
+    advise,
+    base_stop,
+    fitted,
+    places,
+)
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.loop import solve_loop
 from protlint.solve.solution import Loop
@@ -63,6 +74,22 @@ def test_what_each_part_does_is_what_taking_it_out_does() -> None:
     # source: fixtures/bench-circuits.json, the same stage as drawn
     assert by_part["C99"].own_damping == pytest.approx(0.2248, abs=1e-3)
     assert advice.costs == "C99"
+
+
+def test_a_divider_s_leg_is_not_blamed_for_the_damping() -> None:
+    """Bridging it calms the loop and gives another limit: it is no part to do without."""
+    circuit = bench_circuit("darlington_follower")
+    _, base, emitter = shunt_of(circuit).nodes
+    (stop,) = [one for one in circuit.devices if one is base_stop(circuit)]
+    high = replace(stop, model={**stop.model, "R": 1e3})
+    ringing = replace(circuit, devices=tuple(high if one is stop else one for one in circuit.devices))
+    alone = advised(ringing)
+    assert alone.costs == stop.name
+    divided = replace(ringing, devices=(*ringing.devices, Device("LEG", "resistor", (base, emitter), {"R": 1e6})))
+    found = advised(divided)
+    assert found.costs is None
+    assert [one.part for one in found.effects] == [stop.name]
+    assert found.effects[0].worst_damping > found.worst_damping + COSTS
 
 
 def test_the_second_way_does_without_the_capacitor_that_costs_the_most() -> None:
