@@ -177,6 +177,11 @@ def test_a_waiver_keeps_the_finding_and_opens_the_gate(
     assert len(report_in(bench / "r.json")["remarks"]) == len(errors)
     code, _, err = answered(capsys, "waive", BOARD, errors[0], "--reason", "x", "--by", "y", *FILES)
     assert (code, "already waived" in err) == (2, True)
+    again = ("waive", BOARD, errors[0], "--reason", "x", "--by", "y", *FILES)
+    code, _, err = answered(capsys, *again, "--board", "other.edf")
+    assert (code, "--board other.edf is not the end of this file's name" in err) == (2, True)
+    assert answered(capsys, *again, "--board", BOARD)[0] == 0  # another waiver: it speaks of one board only
+    assert (bench / "waivers.toml").read_text(encoding="utf-8").count(f'board = "{BOARD}"') == 1
     code, _, err = answered(capsys, "waive", BOARD, errors[0][:-1], "--reason", "x", "--by", "y", *FILES)
     assert (code, f"did you mean {errors[0]}?" in err) == (2, True)
 
