@@ -19,6 +19,7 @@ from protlint.solve.advice import BASE_EMITTER, base_stop, places
 from protlint.solve.circuit import Circuit, Device
 from protlint.solve.delay import rc_delay, solve_step
 from protlint.solve.loop import solve_loop
+from protlint.solve.parameters import LINK_OHM
 from protlint.solve.peak import ride_through
 from protlint.solve.solution import Loop, Solution, Step
 
@@ -211,10 +212,10 @@ def _borne_s(case: Case, circuit: Circuit, asked: Peak, before_A: float) -> floa
 
 def _by_hand(case: Case, asked: Peak, before_A: float, carries_A: float) -> Iterator[WorkingLine]:
     """Yield the RC formula's delay where there is an RC at the shunt's base."""
-    stop, slowing = base_stop(case.circuit), _base_capacitor(case.circuit)
-    if stop is None or slowing is None:
+    R, slowing = _into_the_base(case.circuit), _base_capacitor(case.circuit)
+    if R is None or slowing is None:
         return
-    R, C = stop.model["R"], slowing.model["C"]
+    C = slowing.model["C"]
     delay_s = rc_delay(R, C, before_A / carries_A, asked.current_A / carries_A)
     yield WorkingLine(
         "delay by the RC alone", f"{format_quantity(R, 'ohm')}, {format_quantity(C, 'F')}, by hand", delay_s, "s", BY_HAND
@@ -223,10 +224,18 @@ def _by_hand(case: Case, asked: Peak, before_A: float, carries_A: float) -> Iter
 
 def _by_hand_F(case: Case, asked: Peak) -> float:
     """Return a capacitance well below what the RC formula asks for at the shunt's base, to begin the search with."""
-    stop = base_stop(case.circuit)
-    R = stop.model["R"] if stop is not None else 1e3
+    R = _into_the_base(case.circuit) or 1e3
     longest_s = rc_delay(max(R, 1.0), 1.0, 0.0, asked.current_A / (case.solution.currents[1].carries_A or asked.current_A))
     return max(1e-9, 0.1 * asked.lasts_s / longest_s)
+
+
+def _into_the_base(circuit: Circuit) -> float | None:
+    """Return the resistance (ohm) that a capacitor at the shunt's base is charged through: the base stop, in parallel with
+    the other leg of a divider; None where there is no base stop."""
+    stop = base_stop(circuit)
+    base = next((one.nodes[1] for one in circuit.devices if one.name in circuit.shunt), None)
+    legs = [one.model["R"] for one in circuit.devices if one.kind == "resistor" and base in one.nodes]
+    return None if stop is None else 1.0 / sum(1.0 / max(ohm, LINK_OHM) for ohm in legs)
 
 
 def _at_output(case: Case, output_V: float | None, *, factor: float = 1.0) -> Solution:

@@ -167,6 +167,19 @@ def test_a_peak_the_limiter_cuts_off_is_found_and_the_remedy_lets_it_pass() -> N
     assert not found(cured)
 
 
+def test_the_rc_by_hand_is_that_of_the_whole_divider() -> None:
+    """180 ohm beside 1.8 kohm to ground, and 1 uF; the formula's answer is proportional to the resistance."""
+    folding = SOUND["folding"]().drawn(("C61 CAP 10n BASE STOP", "C61 CAP 1u STOP OUT"))
+    job = folding.stated(peak={"current": "2.6 A", "lasts": "10 ms"})
+    lines = {line.quantity: line for line in only(job.review(), "trips-on-peaks").working}
+    line = lines["delay by the RC alone"]
+    assert line.formula == "164 ohm, 1 uF, by hand"
+    overdrive = lines["overdrive"].value or 0.0
+    before = 0.8 / (lines["carries, low end"].value or 0.0)
+    # source: any textbook on circuits, the RC's answer to a step
+    assert line.value == pytest.approx(180.0 * 1800.0 / 1980.0 * 1e-6 * math.log((overdrive - before) / (overdrive - 1.0)))
+
+
 def test_without_a_stated_peak_nothing_is_asked() -> None:
     review = SOUND["sink"]().review()
     assert not found(review, "trips-on-peaks")
