@@ -127,6 +127,18 @@ def test_added_and_removed_limiters() -> None:
     assert [one["id"] for one in compare(after, before)["limiters"]["added"]] == [gone["id"]]
 
 
+def test_a_limiter_that_a_wiring_fault_takes_out_is_not_said_to_be_removed() -> None:
+    before, after = report(), report()
+    gone = after["limiters"].pop()
+    assert f"{gone['id']} removed: " in rendered_comparison(comparison_document(compare(before, after)))
+    fault = {**copy.deepcopy(after["findings"][0]), "check": "pass-pins-exchanged", "fingerprint": "pass-pins-exchanged-1"}
+    after["findings"].append({**fault, "limiter": gone["id"]})
+    text = rendered_comparison(comparison_document(compare(before, after)))
+    assert f"{gone['id']} no longer a working limiter: " in text
+    back = rendered_comparison(comparison_document(compare(after, before)))
+    assert f"{gone['id']} now a working limiter: " in back
+
+
 def test_findings_new_gone_and_risen_and_the_gate_on_them() -> None:
     before, after = report(), report(RENUMBERED)
     new = {**copy.deepcopy(after["findings"][0]), "check": "cap-exceeded", "fingerprint": "cap-exceeded-1"}

@@ -86,9 +86,14 @@ def _board(comparison: Document, colour: bool) -> list[str]:
         said = f"{before['file']} to {after['file']}"
     title = f"{said}: {_counts([comparison])}"
     lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
-    for word in ("added", "removed"):
+    for word, drawn_wrong, instead in (
+        ("added", "gone", "now a working limiter"),
+        ("removed", "new", "no longer a working limiter"),
+    ):
+        faulty = {finding["limiter"] for finding in findings[drawn_wrong]}
         for limiter in limiters[word]:
-            text = f"{limiter['id']} {word}: {limiter['topology']}, {limiter['verdict']}"
+            happened = instead if limiter["id"] in faulty else word
+            text = f"{limiter['id']} {happened}: {limiter['topology']}, {limiter['verdict']}"
             lines += ["", *wrapped(text, indent=2, first="")]
     for change in limiters["changed"]:
         lines += ["", *_limiter(change, colour)]
@@ -141,7 +146,9 @@ def _limiter(change: Document, colour: bool) -> list[str]:
     for part in change["parts"]:
         lines += wrapped(_part(part), indent=4, first="  - ")
     if change["figures"] and not change["parts"]:
-        lines += wrapped("no part of it changed: supplies, drive, part data or limits did", indent=4, first="  - ")
+        lines += wrapped(
+            "no part of it changed: what it is joined to, supplies, drive, part data or limits did", indent=4, first="  - "
+        )
     for key, pair in change["needs"].items():
         name, unit = NEEDS.get(key, (key, ""))
         was, now = (_need(pair[side], unit) for side in ("before", "after"))
