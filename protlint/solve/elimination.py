@@ -121,10 +121,11 @@ def scatter(pattern: Pattern, incidence: Array, pairs: Sequence[tuple[int, int]]
     """Return the matrix (entries, pairs) that adds conductances between pairs of branches, (row, column) of an incidence
     matrix (branches, nodes), into the entries."""
     result = np.zeros((pattern.entries, len(pairs)))
+    ends = [[(node, sign) for node, sign in enumerate(branch) if sign] for branch in incidence.tolist()]
     for column, (one, other) in enumerate(pairs):
-        for i in np.flatnonzero(incidence[one]):
-            for j in np.flatnonzero(incidence[other]):
-                result[pattern.row[int(i), int(j)], column] += incidence[one, i] * incidence[other, j]
+        for i, of_one in ends[one]:
+            for j, of_other in ends[other]:
+                result[pattern.row[i, j], column] += of_one * of_other
     return result
 
 

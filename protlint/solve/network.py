@@ -201,14 +201,15 @@ def _group(
     models: dict[str, dict[str, float]],
     shunt: Sequence[str],
 ) -> Group:
-    names = models[members[0].name] if members else {}
+    names = tuple(models[members[0].name]) if members else ()
+    table = np.array([[models[device.name][name] for device in members] for name in names], dtype=np.float64)
     return Group(
         family=family,
         devices=members,
         ports=ports,
         rows=rows,
         sign=_column(-1.0 if device.kind in ("pnp", "pmos") else 1.0 for device in members) if members else np.ones((1, 1)),
-        base={name: _column(models[device.name][name] for device in members) for name in names},
+        base=dict(zip(names, table.reshape(len(names), len(members), 1), strict=True)),
         rise_K=_column(device.rise_K for device in members),
         is_shunt=_column(float(device.name in shunt) for device in members),
     )

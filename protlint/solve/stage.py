@@ -264,26 +264,21 @@ def states(network: Network, run: Run) -> dict[str, tuple[Array, Array, Array, A
 
 def points(stage: Stage, run: Run, lanes: Sequence[int]) -> tuple[Point, ...]:
     """Return chosen lanes as points with every device's state; lanes that were not solved are left out."""
-    table = {name: np.array(rows) for name, rows in states(stage.network, run).items()}
+    solved = [lane for lane in lanes if np.isfinite(run.output_A[lane])]
+    table = {name: np.array(rows)[:, solved].T.tolist() for name, rows in states(stage.network, run).items()}
     node = stage.network.nodes.index(stage.network.circuit.drive.node)
-    found = []
-    for lane in lanes:
-        if not np.isfinite(run.output_A[lane]):
-            continue
-        by_name = {}
-        for name, rows in table.items():
-            current, voltage, power, control, control_V = rows[:, lane].tolist()
-            by_name[name] = State(current, voltage, power, control, control_V)
-        found.append(
-            Point(
-                output_V=float(run.output_V[lane]),
-                output_A=float(run.output_A[lane]),
-                states=by_name,
-                drive_A=float(run.operating.known_A[-1, lane]),
-                drive_V=float(run.operating.node_V[node, lane]),
-            )
+    output_V, output_A = run.output_V[solved].tolist(), run.output_A[solved].tolist()
+    drive_A, drive_V = run.operating.known_A[-1, solved].tolist(), run.operating.node_V[node, solved].tolist()
+    return tuple(
+        Point(
+            output_V=output_V[place],
+            output_A=output_A[place],
+            states={name: State(*of_lanes[place]) for name, of_lanes in table.items()},
+            drive_A=drive_A[place],
+            drive_V=drive_V[place],
         )
-    return tuple(found)
+        for place in range(len(solved))
+    )
 
 
 def shunt_and_pass_current(stage: Stage, run: Run) -> tuple[Array, Array]:
