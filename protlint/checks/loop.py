@@ -31,9 +31,11 @@ def compensation_absent(case: Case) -> Iterator[Answer]:
     remedy, fits = _remedy(case, advice, _cure(case, advice)) if poor else (None, ())
     drawn, worst = said(loop)
     verdict = "is too little" if poor else "is enough"
+    little = loop.worst is not None and loop.worst.damping < case.threshold(check, "warning")
+    then = f"{', but ' if little and not poor else '; '}{worst}" if worst else ""
     yield case.finding(
         check,
-        f"no capacitor shapes the limiting loop; as drawn its damping of {drawn} {verdict}{f'; {worst}' if worst else ''}",
+        f"no capacitor shapes the limiting loop; as drawn its damping of {drawn} {verdict}{then}",
         parts=case.parts("shunt"),
         working=tuple(_working(case, loop)),
         remedy=remedy,

@@ -78,6 +78,13 @@ def test_a_good_loop_without_a_capacitor_is_a_note() -> None:
     assert not found(review, "loop-undamped")
 
 
+def test_a_good_loop_that_fault_wiring_spoils_is_not_called_enough_without_a_but() -> None:
+    bare = SOUND["folding"]().drawn(("C61 CAP 10n BASE STOP\n", "")).review()
+    note = only(bare, "compensation-absent")
+    assert note.level == "note"
+    assert "is enough, but at worst it is -" in note.message
+
+
 def test_a_capacitor_that_makes_the_loop_oscillate_is_named_and_the_advice_cures_it() -> None:
     job = darlington(TO_EMITTER)
     review = job.review()
