@@ -145,7 +145,7 @@ def _working(case: Case, loop: Loop) -> Iterator[WorkingLine]:
 def _where(loop: Loop) -> str:
     worst = loop.worst
     if worst is None or worst.ambient_degC is None:
-        return "every spread, every ambient, 0 to 50 uH in the short: no mode of the limiter's swings"
+        return "every spread, every ambient, every inductance in the short: no mode of the limiter's swings"
     corner = ", ".join(f"{name} {'high' if position > 0.0 else 'low'}" for name, position in worst.corner.items())
     wiring = f"{format_quantity(worst.wiring_H or 0.0, 'H')} in the short"
     return f"{format_quantity(worst.ambient_degC, 'degC')}, {wiring}" + (f", {corner}" if corner else "")

@@ -73,7 +73,8 @@ def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: Limite
         output_reach_V=(min(one.low for one in held.values()), max(one.high for one in held.values())),
         ground_leg=_has_ground_leg(place),
         regulates=_regulates(place),
-        output_capacitance_F=_output_capacitance_F(place, notes),
+        output_capacitance_F=sum(_at_the_output(place, "capacitor", notes, to_supply=True)),
+        output_inductance_H=max(_at_the_output(place, "inductor", notes, to_supply=False), default=0.0),
         latch=_latch(board, limiter, devices, element_of),
         assumed=tuple(sentence for _, sentence in notes.assumed),
     )
@@ -133,18 +134,22 @@ def _has_ground_leg(place: Place) -> bool:
     return place.around.output in nets
 
 
-def _output_capacitance_F(place: Place, notes: Notes) -> float:
-    """Return the board's capacitors from the output to supplies, together, as far as their values can be read; note those
-    whose cannot."""
-    board, total_F = place.board, 0.0
+def _at_the_output(place: Place, kind: str, notes: Notes, *, to_supply: bool) -> list[float]:
+    """Return the values of the board's parts of a kind from the output to supplies, or to other nets, outside the circuit,
+    as far as they can be read; note those that cannot."""
+    board, values = place.board, []
     for index, _ in board.elements_at[place.around.output]:
         element = board.elements[index]
         others = [net for net in element.terminals.values() if net != place.around.output]
-        if element.kind == "capacitor" and any(place.usual_V(net) is not None for net in others):
-            if element.value is None:
-                notes.unread += [id for part in element.parts if (id := board.parts[part].id) not in notes.unread]
-            total_F += element.value or 0.0
-    return total_F
+        if element.kind != kind or not any((place.usual_V(net) is not None) == to_supply for net in others):
+            continue
+        if not to_supply and index in place.around.elements:
+            continue
+        if element.value is not None:
+            values.append(element.value)
+        else:
+            notes.unread += [id for part in element.parts if (id := board.parts[part].id) not in notes.unread]
+    return values
 
 
 def _regulates(place: Place) -> bool:

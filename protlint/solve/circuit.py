@@ -69,7 +69,8 @@ class Circuit:
     never empty; ``pass_devices`` and ``shunt`` device names (a diode string has several shunt devices);
     ``output_V`` the working output voltage where stated; ``output_reach_V`` the lowest and highest voltage the output can
     have (the supplies around it); ``ground_leg`` true where the limit depends on the output voltage by design (a preset leg
-    to ground or to the far supply); ``output_capacitance_F`` the board's capacitors at the output, together; ``latch`` the
+    to ground or to the far supply); ``output_capacitance_F`` the board's capacitors at the output, together;
+    ``output_inductance_H`` the board's greatest inductor that leads on from there, 0 where none does; ``latch`` the
     transistors that hold the shunt on once it has tripped.
     """
 
@@ -87,4 +88,5 @@ class Circuit:
     regulates: bool = False
     assumed: tuple[str, ...] = field(default_factory=tuple)
     output_capacitance_F: float = 0.0
+    output_inductance_H: float = 0.0
     latch: tuple[str, ...] = ()

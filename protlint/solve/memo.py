@@ -80,7 +80,8 @@ def canonical(circuit: Circuit, ambients_degC: tuple[float, ...]) -> tuple[Key, 
             tuple(devices.get(name, -1) for name in names)
             for names in (circuit.shunt, circuit.pass_devices, circuit.sense, circuit.latch)
         ),
-        (circuit.output_V, circuit.output_reach_V, circuit.ground_leg, circuit.regulates, circuit.output_capacitance_F),
+        (circuit.output_V, circuit.output_reach_V, circuit.ground_leg, circuit.regulates),
+        (circuit.output_capacitance_F, circuit.output_inductance_H),
         ambients_degC,
     )
     return key, (tuple(devices), tuple(nodes))

@@ -1,7 +1,8 @@
 """The least damping of the limiting loop over corners, ambients and fault wiring.
 
 Fault wiring of 0, 0.5, 5 and 50 uH lies between the output, with the board's capacitors there, and the short. Wiring alone
-makes weakly damped modes, shunt or no shunt; only the limiter's own modes count (``protlint.solve.wired``).
+makes weakly damped modes, shunt or no shunt; only the limiter's own modes count (``protlint.solve.wired``). An inductor of
+the board's own that leads on from the output is one more such inductance: the short may lie behind it.
 
 Corners are those of ``protlint.solve.corners``, and capacitors with a stated tolerance: signs from one axis at a time, then
 all at their worst together. Beside the signs that lessen the damping with each wiring stand those that raise the shunt's
@@ -81,14 +82,15 @@ def opening_scene(scope: Scope, inner: Array) -> Scene:
 
 
 def find_worst(scope: Scope, opening: Scene) -> tuple[Worst, ...]:
-    """Find the least damping that counts, from the opening scene on: one for each of :data:`WIRING_H`."""
+    """Find the least damping that counts, from the opening scene on: one for each inductance in the short, none first."""
     ambients = len(scope.ambients_degC)
     first, wired = _linear(scope, opening)
     nominal = np.flatnonzero(~first.position.any(axis=0))[:ambients]
-    found = {wiring_H: Worst(1.0) for wiring_H in WIRING_H}
+    own_H = scope.expanded.network.circuit.output_inductance_H
+    found = {wiring_H: Worst(1.0) for wiring_H in (*WIRING_H, *([own_H] if own_H > 0.0 else []))}
     signs, owners = [], []
     alone: list[tuple[float, NDArray[np.intp]]] = []
-    for wiring_H in WIRING_H:
+    for wiring_H in found:
         s = wired_frequencies(wired, wiring_H)
         counts = counting(wired.pick(nominal), wiring_H, s[nominal])
         found[wiring_H] = _least(scope, first, nominal, np.where(counts, s[nominal], np.inf), wiring_H)
@@ -107,7 +109,7 @@ def find_worst(scope: Scope, opening: Scene) -> tuple[Worst, ...]:
     inner = opening.run.operating.inner[:, :ambients]
     together = _solve(scope, np.array(signs).T, np.array(owners), inner)
     last, wired_last = _linear(scope, together)
-    for wiring_H in WIRING_H:
+    for wiring_H in found:
         every = np.arange(len(last.place))
         found[wiring_H] = min(found[wiring_H], _counted(scope, last, wired_last, every, wiring_H), key=_damping)
     for wiring_H, lanes in alone:

@@ -85,6 +85,13 @@ def test_a_good_loop_that_fault_wiring_spoils_is_not_called_enough_without_a_but
     assert "is enough, but at worst it is -" in note.message
 
 
+def test_a_choke_in_the_output_s_lead_is_in_the_short_too_and_a_load_s_coil_is_not() -> None:
+    choked = SOUND["source"]().drawn(("J1 CONN - OUT GND", "J1 CONN - OUT2 GND\nL1 IND 200u OUT OUT2"))
+    assert the_one(choked.review()).circuit.output_inductance_H == pytest.approx(200e-6)  # type: ignore[union-attr]
+    coil = SOUND["sink"]().drawn(("J1 CONN - CMD LAMP", "J1 CONN - CMD LAMP\nL1 IND 10m LAMP +12V"))
+    assert the_one(coil.review()).circuit.output_inductance_H == 0.0  # type: ignore[union-attr]
+
+
 def test_a_capacitor_that_makes_the_loop_oscillate_is_named_and_the_advice_cures_it() -> None:
     job = darlington(TO_EMITTER)
     review = job.review()

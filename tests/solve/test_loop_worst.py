@@ -7,7 +7,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
-from protlint.solve.circuit import Circuit
+from protlint.solve.circuit import Circuit, Device
 from protlint.solve.expanded import expand
 from protlint.solve.loop import hold, solve_loop
 from protlint.solve.modes import damping
@@ -43,6 +43,27 @@ def moved(circuit: Circuit, rng: np.random.Generator) -> Circuit:
             model["IS"] *= float(np.exp(-rng.uniform(-1.0, 1.0) * device.vbe_spread_V[0] / 0.025865))
         devices.append(replace(device, model=model, tolerance=0.0, hfe=None, vbe_spread_V=(0.0, 0.0)))
     return replace(circuit, devices=tuple(devices))
+
+
+def test_an_inductor_of_the_board_s_behind_the_output_is_one_more_inductance_in_the_short() -> None:
+    bare = bench_circuit("source_pnp")
+    own = {1e-6: 0.0, 200e-6: 0.0}
+    for inductance_H in own:
+        with_own = solved(replace(bare, output_inductance_H=inductance_H))
+        # the same inductance as a part of the circuit, with the short behind it and no wiring besides
+        behind = replace(
+            bare,
+            devices=(*bare.devices, Device("L9", "inductor", (bare.output, "BEHIND"), {"L": inductance_H})),
+            output="BEHIND",
+        )
+        alone = solved(behind).worst_without_wiring
+        assert alone is not None
+        assert with_own.worst_damping is not None
+        usual = solved(bare).worst_damping
+        assert usual is not None
+        assert with_own.worst_damping == pytest.approx(min(usual, alone.damping), abs=5e-3)
+        own[inductance_H] = usual - with_own.worst_damping
+    assert max(own.values()) > 0.0
 
 
 @pytest.mark.parametrize("name", MOVING)
