@@ -14,7 +14,7 @@ from protlint.checks.sizing import meets
 from protlint.checks.thermal import Junction
 from protlint.findings import Level, NotChecked, Remedy, WorkingLine
 from protlint.limits import DriveLimits, Range
-from protlint.quantities import format_quantity, preferred
+from protlint.quantities import format_pair, format_quantity, preferred
 from protlint.solve.surroundings import Surroundings, survey_surroundings
 from protlint.toml.text import toml_key
 
@@ -96,7 +96,7 @@ def _unlimited(case: Case, part_id: str, worst: Excess) -> Answer:
     named = f"the drive through {', '.join(drive)}" if drive else f"the drive on {case.circuit.drive.node}"
     level: Level = "error" if worst.value > worst.rated else "warning"
     ambient = format_quantity(worst.taken.row.ambient_degC, "degC")
-    value, allowed = format_quantity(worst.value, worst.unit), format_quantity(worst.allowed, worst.unit)
+    value, allowed = format_pair(worst.value, worst.allowed, worst.unit)
     remedy, fits = _resistance_to_fit(case, part_id, worst)
     what = "half its current rating" if worst.quantity == "current" else "what it may dissipate there"
     return case.finding(

@@ -11,7 +11,7 @@ from protlint.checks.thermal import Heating, Junction, in_free_air, junction
 from protlint.findings import NotChecked, WorkingLine
 from protlint.partdata.book import Figure
 from protlint.partdata.ratings import RATINGS_OF
-from protlint.quantities import format_quantity, preferred
+from protlint.quantities import format_pair, format_quantity, preferred
 from protlint.solve.conditions import Condition
 from protlint.solve.parameters import CircuitError
 from protlint.solve.solution import Currents, Point
@@ -96,11 +96,12 @@ def _heated(case: Case, part_id: str, one: Taken) -> Junction | str:
 def _too_much_current(case: Case, worst: Taken, allowed: Figure) -> Iterator[Answer]:
     if worst.current_A <= allowed.value:
         return
+    takes, may = format_pair(worst.current_A, allowed.value, "A")
     needed = format_quantity(preferred(worst.current_A / case.share(worst.part_id, "current"), "E24", "up"), "A")
     yield case.finding(
         "shunt-overloaded",
-        f"{worst.part_id} takes {format_quantity(worst.current_A, 'A')} in the held short at "
-        f"{format_quantity(worst.row.ambient_degC, 'degC')}, it may take {format_quantity(allowed.value, 'A')}",
+        f"{worst.part_id} takes {takes} in the held short at {format_quantity(worst.row.ambient_degC, 'degC')}, "
+        f"it may take {may}",
         parts=(worst.part_id,),
         working=(
             WorkingLine("shunt current", f"{HELD_MOST}{worst.words}", worst.current_A, "A"),
@@ -113,17 +114,18 @@ def _too_much_current(case: Case, worst: Taken, allowed: Figure) -> Iterator[Ans
 
 
 def _too_much_power(case: Case, worst: Taken, hot: Junction) -> Answer:
+    takes, may = format_pair(worst.power_W, hot.allowed_W, "W")
     remedy = f"{worst.part_id} cannot work so hot: give it a cooler place"
     if hot.allowed_W > 0.0:
         per_W = preferred(hot.allowed_W * hot.per_W / worst.power_W, "E24", "down")
         remedy = (
             f"fit a shunt with {format_quantity(per_W, 'K/W')} or less from junction to free air as {worst.part_id}, "
-            f"or let it take no more than {format_quantity(hot.allowed_W, 'W')}"
+            f"or let it take no more than {may}"
         )
     return case.finding(
         "shunt-overloaded",
-        f"{worst.part_id} takes {format_quantity(worst.power_W, 'W')} in the held short at "
-        f"{format_quantity(worst.row.ambient_degC, 'degC')}, it may take {format_quantity(hot.allowed_W, 'W')} there",
+        f"{worst.part_id} takes {takes} in the held short at {format_quantity(worst.row.ambient_degC, 'degC')}, "
+        f"it may take {may} there",
         parts=(worst.part_id,),
         working=(
             WorkingLine("shunt current", "solved in the held short", worst.current_A, "A"),
@@ -153,11 +155,11 @@ def _voltage(case: Case, part_id: str) -> Iterator[Answer]:
     volts, said = found
     if volts <= allowed.value:
         return
+    has, may = format_pair(volts, allowed.value, "V")
     needed = preferred(volts / case.share(part_id, "voltage"), "E24", "up")
     yield case.finding(
         check,
-        f"{part_id} has {format_quantity(volts, 'V')} from collector to emitter {said}, it may have "
-        f"{format_quantity(allowed.value, 'V')}",
+        f"{part_id} has {has} from collector to emitter {said}, it may have {may}",
         parts=(part_id,),
         working=(
             WorkingLine("collector to emitter", f"solved {said}", volts, "V"),

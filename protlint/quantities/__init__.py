@@ -6,13 +6,22 @@ value texts of a schematic, :mod:`~protlint.quantities.series` holds IEC 60063. 
 """
 
 from protlint.quantities.series import preferred, within
-from protlint.quantities.units import DIMENSIONS, format_quantity, format_ratio, read_any, read_quantity, read_range
+from protlint.quantities.units import (
+    DIMENSIONS,
+    format_pair,
+    format_quantity,
+    format_ratio,
+    read_any,
+    read_quantity,
+    read_range,
+)
 from protlint.quantities.valuetext import Comma, ValueText, read_beside, read_value
 
 __all__ = [
     "DIMENSIONS",
     "Comma",
     "ValueText",
+    "format_pair",
     "format_quantity",
     "format_ratio",
     "preferred",

@@ -163,6 +163,15 @@ def format_quantity(value: float, unit: str, digits: int = 3) -> str:
     return f"{shown} {_PRINTED[power]}{unit}".rstrip()
 
 
+def format_pair(one: float, other: float, unit: str) -> tuple[str, str]:
+    """Return two quantities that are held against each other, with as many figures as tell them apart: three to six."""
+    for digits in (3, 4, 5, 6):
+        pair = format_quantity(one, unit, digits), format_quantity(other, unit, digits)
+        if pair[0] != pair[1] or one == other:
+            break
+    return pair
+
+
 def _by_symbol(number: str, unit: str, wanted: Dimension) -> float | None:
     if unit in wanted.units:
         return float(number) * wanted.units[unit]

@@ -11,7 +11,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from protlint.quantities import DIMENSIONS, format_quantity, read_any, read_quantity, read_range
+from protlint.quantities import DIMENSIONS, format_pair, format_quantity, read_any, read_quantity, read_range
 
 REGISTRY = pint.UnitRegistry(cache_folder=None)
 PREFIXES = {"f": -15, "p": -12, "n": -9, "u": -6, "µ": -6, "m": -3, "": 0, "k": 3, "M": 6, "G": 9, "T": 12}
@@ -174,6 +174,19 @@ def test_quantities_for_people(value: float, unit: str, shown: str) -> None:
 
 def test_more_figures_where_asked() -> None:
     assert format_quantity(0.366917, "A", digits=5) == "0.36692 A"
+
+
+@pytest.mark.parametrize(
+    ("one", "other", "shown"),
+    [
+        (0.2, 0.13, ("0.2 W", "0.13 W")),
+        (0.13004, 0.13, ("0.13004 W", "0.13 W")),
+        (0.13, 0.13, ("0.13 W", "0.13 W")),
+        (0.13 + 1e-12, 0.13, ("0.13 W", "0.13 W")),
+    ],
+)
+def test_two_quantities_held_against_each_other_can_be_told_apart(one: float, other: float, shown: tuple[str, str]) -> None:
+    assert format_pair(one, other, "W") == shown
 
 
 @given(value=st.floats(1e-14, 1e14) | st.floats(-1e14, -1e-14), dimension=st.sampled_from(sorted(PRINTED)))
