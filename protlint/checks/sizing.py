@@ -50,20 +50,28 @@ def sense_of(case: Case) -> Sense | None:
 
 
 def out_of_reach(case: Case) -> str | None:
-    """Return what to do where a supply's end leaves nothing over the working output, so that no value on the board helps."""
+    """Return what to do where a supply's end, or the drive of a follower, leaves nothing over the working output, so that no
+    value on the board helps."""
     output_V, held = case.needs.output_V, case.circuit.held
     if output_V is None or not case.circuit.shorts:
         return None
     sign = 1.0 if output_V > held[case.circuit.shorts[0]].usual else -1.0
+    output = format_quantity(output_V, "V")
     node, supply = max(held.items(), key=lambda item: sign * item[1].usual)
     end_V = supply.low if sign > 0.0 else supply.high
-    if sign * (end_V - output_V) > 0.0 or sign * (supply.usual - output_V) <= 0.0:
-        return None
-    least, output = format_quantity(end_V, "V"), format_quantity(output_V, "V")
-    return (
-        f"{node} may be as little as {least} and the output works at {output}, which leaves the stage nothing: "
-        f"state another {case.limits_key('output')}, or give {node} less spread"
-    )
+    if sign * (end_V - output_V) <= 0.0 < sign * (supply.usual - output_V):
+        return (
+            f"{node} may be as little as {format_quantity(end_V, 'V')} and the output works at {output}, which leaves the "
+            f"stage nothing: state another {case.limits_key('output')}, or give {node} less spread"
+        )
+    drive = case.circuit.drive
+    on_V = drive.high_V.usual if sign > 0.0 else drive.low_V.usual
+    if case.limiter.nets["far"] == case.limiter.nets["output"] and sign * (on_V - output_V) <= 0.0:
+        return (
+            f"the drive on {drive.node} reaches {format_quantity(on_V, 'V')} and the output works at {output}, which leaves "
+            f"the stage nothing: let the drive reach further, or state another {case.limits_key('output')}"
+        )
+    return None
 
 
 def sense_remedy(case: Case) -> Remedy:

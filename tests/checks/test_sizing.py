@@ -116,3 +116,16 @@ def test_a_value_beside_a_preset_far_from_1_over_r_is_found_all_the_same() -> No
     assert figure(beside_the_preset(job, "cap-exceeded"), "ohm") == 22.0
     checks = {one.check for one in found(resistor(job, "R61", 22.0).review())}
     assert not checks & {"cap-exceeded", "carry-not-met", "drive-insufficient"}
+
+
+def test_a_drive_that_ends_below_the_working_output_is_named() -> None:
+    """A follower gives nothing above its drive: Kirchhoff's voltage law. The op-amp swings to within 1.5 V of its 12 V."""
+    low = follower().drawn(("V+=+24V", "V+=+12V")).supplied(**{"+12V": "12 V"}).stated(output="11 V")
+    assert ["the drive on DRV reaches 10.5 V and the output works at 11 V" in one for one in starved(low)] == [True]
+    assert not any("reaches" in one for one in starved(low.stated(output="5 V")))
+
+
+def starved(job: Job) -> list[str]:
+    """Return what is advised where the output gets too little."""
+    review = job.review()
+    return [one.remedy or "" for check in ("carry-not-met", "drive-insufficient") for one in found(review, check)]
