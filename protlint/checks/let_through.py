@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from protlint.board.graph import BoardPart
 from protlint.checks.case import Case
 from protlint.checks.derating import share_of
-from protlint.checks.safe_area import allowed, allowed_lines, breakdown_share, curve_for, thermal_share
+from protlint.checks.safe_area import allowed, allowed_lines, breakdown_share, curve_for, is_much_longer, thermal_share
 from protlint.findings import WorkingLine
 from protlint.quantities import format_quantity
 from protlint.solve.solution import Step
@@ -76,7 +76,6 @@ def let_through(case: Case, part: BoardPart, names: tuple[str, ...], step: Step)
         standard=derating,
     )
     at_case = WorkingLine("case", "the highest ambient", hottest_degC, "degC")
-    much_longer = min(curve.lasts_s, dc_from_s) > case.threshold(LATE, "curve_lasts") * step.delay_s
     return LetThrough(
         lasts_s=step.delay_s,
         energy_J=step.pass_energy_J,
@@ -84,7 +83,7 @@ def let_through(case: Case, part: BoardPart, names: tuple[str, ...], step: Step)
         current_A=current_A,
         allowed_A=bound.current_A,
         lines=(at_case, *lines),
-        wanted=wanted if much_longer else None,
+        wanted=wanted if is_much_longer(curve, step.delay_s, dc_from_s, case.threshold(AREA, "curve_lasts")) else None,
     )
 
 

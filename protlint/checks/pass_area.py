@@ -11,7 +11,15 @@ from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.derating import derated
 from protlint.checks.ends import at_carry, held_shorts
 from protlint.checks.pass_device import LEAST_SINK_K_PER_W, Stress, on_the_sink_names
-from protlint.checks.safe_area import Bound, allowed, allowed_lines, breakdown_share, curve_for, thermal_share
+from protlint.checks.safe_area import (
+    Bound,
+    allowed,
+    allowed_lines,
+    breakdown_share,
+    curve_for,
+    is_much_longer,
+    thermal_share,
+)
 from protlint.checks.thermal import made_for_a_sink
 from protlint.findings import NotChecked, WorkingLine
 from protlint.partdata.book import Figure, SafeArea
@@ -70,7 +78,12 @@ def pass_outside_safe_area(case: Case) -> Iterator[Answer]:
         if isinstance(curve, str):
             yield NotChecked(CHECK, curve)
         else:
-            places.append(_on_the_curve(case, part, curve, points))
+            place = _on_the_curve(case, part, curve, points)
+            dc_from_s, times = (case.threshold(CHECK, name) for name in ("dc_from", "curve_lasts"))
+            if place.ratio > 1.0 and is_much_longer(curve, case.lasts_s, dc_from_s, times):
+                yield NotChecked(CHECK, _wanted(case, part))
+            else:
+                places.append(place)
         worst = max(places, key=lambda place: (place.ratio > 1.0, not place.careful_only, place.ratio), default=None)
         greatest_V = max(seen.voltage_V for seen in points)
         if worst is not None and worst.ratio > 1.0:
@@ -116,10 +129,13 @@ def _curve(case: Case, part: BoardPart) -> SafeArea | str:
         return case.rating_key(part.id, "tj_max")
     curves = part.entry.safe_area if part.entry is not None else ()
     curve = curve_for(curves, case.lasts_s, case.threshold(CHECK, "dc_from"))
-    if curve is None:
-        lasts = "dc" if math.isinf(case.lasts_s) else format_quantity(case.lasts_s, "s")
-        return f"{case.data_key(part.id, 'safe_area')} that lasts {lasts}"
-    return curve
+    return _wanted(case, part) if curve is None else curve
+
+
+def _wanted(case: Case, part: BoardPart) -> str:
+    """Return the key of a curve for as long as the short lasts."""
+    lasts = "dc" if math.isinf(case.lasts_s) else format_quantity(case.lasts_s, "s")
+    return f"{case.data_key(part.id, 'safe_area')} that lasts {lasts}"
 
 
 def _on_the_curve(case: Case, part: BoardPart, curve: SafeArea, points: list[Seen]) -> Place:

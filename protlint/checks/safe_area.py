@@ -51,6 +51,11 @@ def curve_for(curves: Sequence[SafeArea], lasts_s: float, dc_from_s: float) -> S
     return curves[min(lasting)[1]] if lasting else None
 
 
+def is_much_longer(curve: SafeArea, lasts_s: float, dc_from_s: float, times: float) -> bool:
+    """Tell whether a curve is for so much longer, by more than ``times``, that what it forbids may be borne all the same."""
+    return min(curve.lasts_s, dc_from_s) > times * lasts_s
+
+
 def on_curve_A(corners: Corners, voltage_V: float) -> float | None:
     """Return the current of a curve at a voltage, straight between corners on log-log scales; None outside them."""
     if voltage_V == corners[0][0]:

@@ -90,3 +90,15 @@ def test_what_no_curve_covers_is_asked_for() -> None:
     assert ("pass-outside-safe-area", "QPN1.safe_area up to 24.4 V") in unchecked(review)
     brief = sink().stated(short="20 ms").knowing("QPN1", safe_area=[{"lasts": "1 ms", "points": short}]).review()
     assert ("pass-outside-safe-area", "QPN1.safe_area that lasts 20 ms") in unchecked(brief)
+
+
+def test_a_curve_for_a_much_longer_time_clears_a_brief_short_but_does_not_convict() -> None:
+    """A dc curve, which counts from 0.5 s on; shorts of a fiftieth and of an eighth of that. Makers draw a decade apart."""
+    tight, wide = ([["1 V", f"{amperes} A"], ["40 V", f"{amperes} A"]] for amperes in (0.05, 5.0))
+    for short, points, convicted, asked in (
+        ("10 ms", tight, False, True), ("60 ms", tight, True, False), ("10 ms", wide, False, False),
+    ):  # fmt: skip
+        job = sink().stated(short=short).knowing("QPN1", safe_area=[{"lasts": "dc", "points": points}])
+        review = job.review()
+        assert bool(found(review, "pass-outside-safe-area")) is convicted, short
+        assert (("pass-outside-safe-area", f"QPN1.safe_area that lasts {short}") in unchecked(review)) is asked, short
