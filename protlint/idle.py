@@ -4,8 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Collection, Iterable, Iterator
 
+from protlint.board.drives import nets_driven
 from protlint.board.graph import Board
-from protlint.limits import Limits, fits
+from protlint.limits import Limits, fits, is_glob
 from protlint.toml.tables import nearest
 from protlint.toml.text import toml_key
 
@@ -42,11 +43,11 @@ def _idle(limits: Limits, board: Board, spoken_of: tuple[str, ...]) -> Iterator[
         if name.casefold() not in folded and name not in elsewhere and voltage.usual != 0.0:
             yield "[supply] {}", name, "net", nets
     for name in limits.drives:
-        if name not in nets and not board.nets_of_pin(name):
-            yield "[drive.{}]", name, "net and no pin", nets
+        if name != "*" and not nets_driven(name, board.parts, board.nets, board.net_of):
+            yield "[drive.{}]", name, "net but supplies and no output" if is_glob(name) else "net and no pin", nets
     numbers = {part.part_number for part in board.parts if part.part_number is not None}
     for name in limits.drivers:
-        if name.casefold() not in {number.casefold() for number in numbers}:
+        if not any(fits(name, number) for number in numbers):
             yield "[driver.{}]", name, "part number", numbers
     for name in limits.limiters:
         if name != "*" and not any(fits(name, one) for one in spoken_of):

@@ -95,9 +95,10 @@ class Limits:
     derating: str = "none"
     supplies_V: Mapping[str, Range] = field(default_factory=dict)
     drives: Mapping[str, DriveLimits] = field(default_factory=dict)
-    """By net name, or by pin as ``U1.6``."""
+    """By net name, or by pin as ``U1.6``; globs; ``*`` is for drives of which nothing else is stated. One table counts: an
+    exact name before a glob, else the later one in the file."""
     drivers: Mapping[str, DriveLimits] = field(default_factory=dict)
-    """By part number."""
+    """By part number; globs, of which one counts as for drives."""
     limiters: Mapping[str, LimiterLimits] = field(default_factory=dict)
     """By pass device, output net or sense resistor; globs; in the order of the file; ``*`` gives defaults."""
     attributes: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
@@ -133,7 +134,25 @@ def needs_of(limits: Limits, *names: str) -> LimiterLimits:
     return LimiterLimits(**stated)
 
 
+def driver_of(limits: Limits, *part_numbers: str | None) -> DriveLimits | None:
+    """Return the ``[driver]`` table of the first of some part numbers that has one, else what is stated of any drive.
+
+    An exact number counts before a glob, and ``*`` last; of several globs the later one in the file.
+    """
+    for number in filter(None, part_numbers):
+        fitting = [key for key in limits.drivers if fits(key, number)]
+        if fitting:
+            rank = {key: (key != "*", key.casefold() == number.casefold(), at) for at, key in enumerate(fitting)}
+            return limits.drivers[max(fitting, key=rank.__getitem__)]
+    return limits.drives.get("*")
+
+
 def fits(pattern: str, name: str) -> bool:
     """Whether a name is the pattern or fits it as a glob, without regard to case."""
     pattern, name = pattern.casefold(), name.casefold()
     return pattern == name or fnmatchcase(name, pattern)
+
+
+def is_glob(pattern: str) -> bool:
+    """Whether a name may fit a pattern without being it."""
+    return any(letter in pattern for letter in "*?[")

@@ -19,8 +19,8 @@ U1  BUFFER BUF7 A=CMD
 
 FITTING = limits(
     supply={"+12v": "12 V", "GND": "0 V", "EARTH": "0 V", "REMOTE": "24 V"},
-    drive={"CMD": {"high": "5 V"}, "U1.A": {"high": "5 V"}},
-    driver={"buf7": {"power": "1 W"}},
+    drive={one: {"high": "5 V"} for one in ("CMD", "U1.A", "cm?", "U?.*", "*")},
+    driver={"buf7": {"power": "1 W"}, "BUF*": {"power": "1 W"}},
     limiter={"*": {"carry": "0.1 A"}, "q1?": {"cap": "2 A"}, "R11": {"short": "1 s"}, "OUT": {"shorted_to": "REMOTE"}},
     pins={"npn": {"C": "collector", "B": "base", "E": "emitter"}, "BUF*": {"A": "none"}},
 )
@@ -36,6 +36,10 @@ def test_what_fits_is_not_remarked_upon() -> None:
         ({"supply": {"+48V": "48 V"}}, '[supply] "+48V" fits no net'),
         ({"drive": {"STAGE": {"high": "5 V"}}}, "[drive.STAGE] fits no net and no pin"),
         ({"drive": {"U1.9": {"high": "5 V"}}}, '[drive."U1.9"] fits no net and no pin'),
+        ({"drive": {"PWM_*": {"high": "5 V"}}}, '[drive."PWM_*"] fits no net but supplies and no output'),
+        ({"drive": {"+12*": {"high": "5 V"}}}, '[drive."+12*"] fits no net but supplies and no output'),
+        ({"drive": {"U2.*": {"high": "5 V"}}}, '[drive."U2.*"] fits no net but supplies and no output'),
+        ({"driver": {"AMP*": {"power": "1 W"}}}, '[driver."AMP*"] fits no part number'),
         ({"driver": {"AMP1": {"power": "1 W"}}}, "[driver.AMP1] fits no part number"),
         ({"limiter": {"Q99": {"carry": "1 A"}}}, "[limiter.Q99] fits no limiter"),
         ({"limiter": {"R10": {"carry": "1 A"}}}, "[limiter.R10] fits no limiter"),
@@ -51,7 +55,7 @@ def test_what_fits_nothing_is_named(tables: dict[str, object], told: str) -> Non
     ("tables", "near"),
     [
         ({"supply": {"+12W": "12 V"}}, "+12V"),
-        ({"drive": {"cmd": {"high": "5 V"}}}, "CMD"),
+        ({"drive": {"CMF": {"high": "5 V"}}}, "CMD"),
         ({"driver": {"BUF8": {"power": "1 W"}}}, "BUF7"),
         ({"limiter": {"Q100": {"carry": "1 A"}}}, "Q10"),
         ({"pins": {"RESI": {"1": "base"}}}, "RES"),

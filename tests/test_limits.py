@@ -10,7 +10,7 @@ from pathlib import Path
 
 import pytest
 
-from protlint.limits import CheckSetting, DriveLimits, LimiterLimits, Limits, Peak, Range, fits, needs_of
+from protlint.limits import CheckSetting, DriveLimits, LimiterLimits, Limits, Peak, Range, driver_of, fits, needs_of
 from protlint.limits_file import load_limits
 from protlint.sources import FileError, InputError
 from tests.support.paths import FIXTURES
@@ -79,6 +79,30 @@ def test_every_field_of_a_limiter_is_reached_by_the_full_file() -> None:
     limits = load_limits(FULL)
     everything = needs_of(limits, "Q10", "R40", "OUT")
     assert [item.name for item in fields(LimiterLimits) if getattr(everything, item.name) in (None, (), {})] == []
+
+
+@pytest.mark.parametrize(
+    ("numbers", "power_W"),
+    [
+        (("amp7",), 1.0),  # the very number, wherever it stands
+        (("AMP8",), 3.0),  # of two globs the later
+        (("REG1",), 4.0),  # what is said of all
+        ((None, "AMP8"), 3.0),
+        (("REG1", "AMP7"), 4.0),
+        ((None,), None),
+    ],
+)
+def test_one_driver_table_counts(numbers: tuple[str | None, ...], power_W: float | None) -> None:
+    drivers = {"AMP7": 1.0, "A*": 2.0, "AMP?": 3.0, "*": 4.0}
+    found = driver_of(Limits(drivers={key: DriveLimits(power_W=value) for key, value in drivers.items()}), *numbers)
+    assert (found and found.power_W) == power_W
+
+
+def test_where_no_driver_table_fits_what_is_stated_of_any_drive_counts() -> None:
+    any_drive = DriveLimits(current_A=0.01)
+    limits = Limits(drives={"*": any_drive}, drivers={"AMP1": DriveLimits()})
+    assert driver_of(limits, "REG1") is driver_of(limits, None) is any_drive
+    assert driver_of(limits, "AMP1") == DriveLimits()
 
 
 @pytest.mark.parametrize(

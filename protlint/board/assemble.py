@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence, Set
 
+from protlint.board.drives import stated_drives
 from protlint.board.graph import Board, BoardNet, BoardPart, Element, SeenPart, Supply
 from protlint.board.merge import Resistance, merge_resistances, parts_of, unite
 from protlint.limits import Limits
@@ -34,12 +35,13 @@ def assemble(
         for index, (part, known) in enumerate(zip(netlist.parts, seen, strict=True))
     )  # fmt: skip
     nets = _nets(netlist, parts, index_of, len(order), limits, supply_of)
-    elements = _elements(parts, nets, limits)
+    drives = stated_drives(parts, nets, index_of, limits)
+    elements = _elements(parts, nets, drives.keys(), limits)
     at: list[list[tuple[int, str]]] = [[] for _ in nets]
     for element in elements:
         for role, net in element.terminals.items():
             at[net].append((element.index, role))
-    return Board(netlist, parts, nets, elements, tuple(map(tuple, at)), tuple(assumed), tuple(index_of))
+    return Board(netlist, parts, nets, elements, tuple(map(tuple, at)), tuple(assumed), tuple(index_of), drives)
 
 
 def is_link(part: BoardPart | SeenPart) -> bool:
@@ -132,7 +134,7 @@ def _nets(
     return tuple(nets)
 
 
-def _elements(parts: Sequence[BoardPart], nets: Sequence[BoardNet], limits: Limits) -> tuple[Element, ...]:
+def _elements(parts: Sequence[BoardPart], nets: Sequence[BoardNet], driven: Set[int], limits: Limits) -> tuple[Element, ...]:
     """Return the elements in the board order of their first part."""
     made: list[tuple[int, str, Mapping[str, int], float | None, object]] = []
     resistances = []
@@ -145,7 +147,7 @@ def _elements(parts: Sequence[BoardPart], nets: Sequence[BoardNet], limits: Limi
         else:
             for roles in part.sections or (part.roles,):
                 made.append((part.index, part.kind, roles, part.values.value, part.index))
-    for one in merge_resistances(resistances, _passable(parts, nets, limits)):
+    for one in merge_resistances(resistances, _passable(parts, nets, driven, limits)):
         made.append((one.first, "resistor", {"1": one.ends[0], "2": one.ends[1]}, one.value, one.tree))
     made.sort(key=lambda one: one[0])
     return tuple(
@@ -158,16 +160,19 @@ def _is_plain_resistor(part: BoardPart) -> bool:
     return part.kind == "resistor" and set(part.roles) == {"1", "2"}
 
 
-def _passable(parts: Sequence[BoardPart], nets: Sequence[BoardNet], limits: Limits) -> list[bool]:
+def _passable(parts: Sequence[BoardPart], nets: Sequence[BoardNet], driven: Set[int], limits: Limits) -> list[bool]:
     """Tell by net whether a chain of resistors may run through it.
 
     It may not where the net is held, where the limits file speaks of it, or where anything but a resistor hangs on it. A
     test point, a link and a part that is not fitted take no current: they do not count.
     """
-    spoken_of = limits.drives.keys() | limits.limiters.keys()
     free = [_is_plain_resistor(part) or _takes_no_current(part) for part in parts]
     return [
-        net.supply is None and all(free[part] for part, _ in net.pins) and spoken_of.isdisjoint(net.names) for net in nets
+        net.supply is None
+        and net.index not in driven
+        and all(free[part] for part, _ in net.pins)
+        and limits.limiters.keys().isdisjoint(net.names)
+        for net in nets
     ]
 
 

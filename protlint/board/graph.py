@@ -8,12 +8,12 @@ they are not frozen because a board has tens of thousands, and freezing costs mo
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 from typing import TYPE_CHECKING
 
 from protlint.board.pins import FROM_MEMORY
-from protlint.limits import Limits, Range
+from protlint.limits import DriveLimits, Limits, Range
 from protlint.netlist.model import Netlist, Part
 from protlint.partdata.book import Book, PartEntry
 
@@ -121,7 +121,8 @@ class Element:
 class Board:
     """The whole board. ``elements_at[n]`` lists (element index, role) on net n; not-fitted parts and links are in none.
 
-    ``net_of`` gives for every net of the netlist the index of the board net that it became.
+    ``net_of`` gives for every net of the netlist the index of the board net that it became; ``drives`` what the limits file
+    states of the drive of a net, by net index.
     """
 
     netlist: Netlist
@@ -131,6 +132,7 @@ class Board:
     elements_at: tuple[tuple[tuple[int, str], ...], ...]
     assumed: tuple[str, ...] = ()
     net_of: tuple[int, ...] = ()
+    drives: Mapping[int, DriveLimits] = field(default_factory=dict)
 
     @cached_property
     def part_of(self) -> Mapping[str, BoardPart]:
@@ -152,13 +154,6 @@ class Board:
             count[name] = count.get(name, 0) + 1
             names.append(name if count[name] == 1 else f"{name} ({count[name]})")
         return tuple(names)
-
-    def nets_of_pin(self, name: str) -> frozenset[int]:
-        """Return the nets of a pin called by its part's id and its number or name (``U1.6``); empty where there is none."""
-        dots = [place for place, letter in enumerate(name) if letter == "."]  # ids and pin names may hold dots too
-        spelled = [(self.part_of.get(name[:dot]), name[dot + 1 :]) for dot in dots]
-        pins = [(pin, label) for part, label in spelled if part is not None for pin in part.part.pins]
-        return frozenset(self.net_of[pin.net] for pin, label in pins if label in (pin.number, pin.name))
 
     def graph(self) -> nx.MultiGraph[object]:
         """Return the public graph: nodes ``("part", id)`` and ``("net", name)``, one edge per pin, the pin as its key.

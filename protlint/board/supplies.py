@@ -29,20 +29,18 @@ _GROUND = re.compile(
 def supply_of(names: Sequence[str], limits: Limits) -> Supply | None:
     """Return what holds a net that goes by these names, or None where nothing says that it is held.
 
-    The limits file counts before names, whatever their order; its keys fold case. A net that it gives a drive or a
+    The limits file counts before names, whatever their order; its keys fold case. A net that it names in a drive's or
     limiter's table is driven or an output, whatever voltage its name states.
     """
     stated = _by_fold(tuple(limits.supplies_V.items())) if limits.supplies_V else {}
     for name in names if stated else ():
         if name.casefold() in stated:
             return Supply(stated[name.casefold()], "limits file")
-    if any(name in limits.drives or name in limits.limiters for name in names):
+    voltage_V = next((voltage_V for voltage_V in map(stated_voltage, names) if voltage_V is not None), None)
+    folded = {name.casefold() for name in names} if voltage_V is not None else ()
+    if voltage_V is None or any(key.casefold() in folded for key in (*limits.drives, *limits.limiters)):
         return None
-    for name in names:
-        voltage_V = stated_voltage(name)
-        if voltage_V is not None:
-            return Supply(Range(voltage_V, voltage_V, voltage_V), "net name")
-    return None
+    return Supply(Range(voltage_V, voltage_V, voltage_V), "net name")
 
 
 @lru_cache(maxsize=16)

@@ -13,7 +13,7 @@ from protlint.checks.shunt import Taken, current_rating, hottest, taken_by_shunt
 from protlint.checks.sizing import meets
 from protlint.checks.thermal import Junction
 from protlint.findings import Level, NotChecked, Remedy, WorkingLine
-from protlint.limits import DriveLimits, Range
+from protlint.limits import DriveLimits, Range, driver_of
 from protlint.quantities import format_pair, format_quantity, preferred
 from protlint.solve.surroundings import Surroundings, survey_surroundings
 from protlint.toml.text import toml_key
@@ -148,7 +148,7 @@ def _resistance_to_fit(case: Case, part_id: str, worst: Excess) -> Remedy:
 def driver_overloaded(case: Case) -> Iterator[Answer]:
     """Yield a finding where the IC that drives the stage dissipates more than it may while the limiter holds."""
     check = "driver-overloaded"
-    around = survey_surroundings(case.board, case.limiter, case.limits)
+    around = survey_surroundings(case.board, case.limiter)
     parts = [case.board.parts[index] for index, _ in around.drive_pins if case.board.parts[index].kind == "ic"]
     entry = around.drive_entry
     if not parts and (entry is None or entry.power_W is None):
@@ -224,8 +224,7 @@ def _below_rails_V(case: Case, part: BoardPart | None, entry: DriveLimits | None
 
 def _entry_of(case: Case, part: BoardPart | None) -> DriveLimits | None:
     """Return what the limits file says of a driving part's type."""
-    drivers = {name.casefold(): one for name, one in case.limits.drivers.items()}
-    return None if part is None else drivers.get((part.part_number or "").casefold())
+    return driver_of(case.limits, None if part is None else part.part_number)
 
 
 def _allowed_W(case: Case, part: BoardPart | None, entry: DriveLimits | None) -> float | None:

@@ -43,7 +43,7 @@ class Bench:
 
 def build_bench(board: Board, limiter: Limiter, *, limits: Limits, needs: LimiterLimits) -> Bench:
     """Return the circuit of a limiter as it stands on its board, or what is missing for it."""
-    around = survey_surroundings(board, limiter, limits)
+    around = survey_surroundings(board, limiter)
     place = Place(board, limiter, around, limits, needs)
     if len(around.elements) > MOST_DEVICES:
         return Bench(None, (_too_large(place),))

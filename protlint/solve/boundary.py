@@ -10,7 +10,7 @@ from dataclasses import dataclass, field
 
 from protlint.board.graph import Board
 from protlint.board.regulators import regulator_across
-from protlint.limits import DriveLimits, LimiterLimits, Limits, Range
+from protlint.limits import DriveLimits, LimiterLimits, Limits, Range, driver_of
 from protlint.solve.circuit import FEED, Drive
 from protlint.solve.surroundings import Surroundings
 from protlint.toml.text import toml_key
@@ -294,13 +294,8 @@ def _drawn_by(place: Place, regulator: int, lowest: Range, highest: Range, notes
 
 
 def _driver_entry(place: Place, parts: Sequence[int]) -> DriveLimits | None:
-    """Return the ``[driver]`` entry of the first of some parts that has one, by its part number."""
-    drivers = {name.casefold(): entry for name, entry in place.limits.drivers.items()}
-    for index in parts:
-        number = place.board.parts[index].part_number
-        if number is not None and number.casefold() in drivers:
-            return drivers[number.casefold()]
-    return None
+    """Return the ``[driver]`` entry of the first of some parts that has one, by its part number, else that of any drive."""
+    return driver_of(place.limits, *(place.board.parts[index].part_number for index in parts))
 
 
 def _own_supplies(place: Place, kinds: tuple[str, ...]) -> list[tuple[str, Range]]:

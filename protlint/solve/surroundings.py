@@ -12,9 +12,10 @@ from collections import deque
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 
-from protlint.board.graph import Board, BoardPart, Element
+from protlint.board.drives import is_input
+from protlint.board.graph import Board, Element
 from protlint.board.regulators import regulator_across
-from protlint.limits import DriveLimits, Limits
+from protlint.limits import DriveLimits
 from protlint.topology.limiter import Limiter
 
 MOST_DEVICES = 80
@@ -26,11 +27,6 @@ CONTROL = {
     "npn": "base", "pnp": "base", "npn-darlington": "base", "pnp-darlington": "base", "nmos": "gate", "pmos": "gate",
 }  # fmt: skip
 """The control terminal of each transistor kind."""
-
-INPUT_NAMES = frozenset(
-    {"+", "-", "+in", "-in", "in", "in+", "in-", "inp", "inn", "fb", "adj", "sense", "vref", "ref", "en"}
-)
-"""Names of IC pins that take a signal and give none."""
 
 LEAD_AT_MOST_OHM = 10.0
 """A larger resistor is not taken for one in a supply lead."""
@@ -64,7 +60,7 @@ class Surroundings:
     left_out: tuple[str, ...]
 
 
-def survey_surroundings(board: Board, limiter: Limiter, limits: Limits) -> Surroundings:
+def survey_surroundings(board: Board, limiter: Limiter) -> Surroundings:
     """Return what belongs on a limiter's bench."""
     own = {index for indices in limiter.elements.values() for index in indices}
     output = limiter.nets["output"]
@@ -73,8 +69,8 @@ def survey_surroundings(board: Board, limiter: Limiter, limits: Limits) -> Surro
     power = _power_side(board, limiter, output, far)
     walls = {output, power} | {net.index for net in board.supplies}
     starts = [start] if limiter.nets["feed"] is None else [start, limiter.nets["feed"]]
-    drive, entry, pins, fed_by = _find_drive(board, limits, own, walls, [net for net in starts if net is not None], limiter)
-    stops = walls | _stated_drives(board, limits) | ({drive} if drive is not None else set())
+    drive, entry, pins, fed_by = _find_drive(board, own, walls, [net for net in starts if net is not None], limiter)
+    stops = walls | board.drives.keys() | ({drive} if drive is not None else set())
     elements, left_out = _collect(board, own, stops, drive)
     power_path = _path_to_supply(board, power)
     return Surroundings(
@@ -105,33 +101,9 @@ def drivers_on(board: Board, net: int) -> tuple[tuple[int, str], ...]:
     found = []
     for index, role in board.nets[net].pins:
         part = board.parts[index]
-        if part.kind == "connector" or (part.kind == "ic" and not _is_input(part, role)):
+        if part.kind == "connector" or (part.kind == "ic" and not is_input(part, role)):
             found.append((index, role))
     return tuple(found)
-
-
-def _is_input(part: BoardPart, role: str) -> bool:
-    for pin in part.part.pins:
-        if role in (pin.name, pin.number) and pin.direction is not None:
-            return pin.direction.casefold() == "input"
-    return role.casefold() in INPUT_NAMES
-
-
-def drive_entry_at(board: Board, net: int, limits: Limits) -> DriveLimits | None:
-    """Return the ``[drive]`` entry of a net, by one of its names or by a pin on it (``U1.6``)."""
-    for name in board.nets[net].names:
-        if name in limits.drives:
-            return limits.drives[name]
-    for key, entry in limits.drives.items():
-        if net in board.nets_of_pin(key):
-            return entry
-    return None
-
-
-def _stated_drives(board: Board, limits: Limits) -> set[int]:
-    """Return the nets with a ``[drive]`` entry. What stands behind the drive of another limiter is told by that entry."""
-    named = {net.index for net in board.nets if any(name in limits.drives for name in net.names)} if limits.drives else set()
-    return named.union(*(board.nets_of_pin(key) for key in limits.drives))
 
 
 def other_nets(element: Element, net: int) -> Iterator[int]:
@@ -144,7 +116,7 @@ def other_nets(element: Element, net: int) -> Iterator[int]:
 
 
 def _find_drive(
-    board: Board, limits: Limits, own: set[int], walls: set[int], starts: list[int], limiter: Limiter
+    board: Board, own: set[int], walls: set[int], starts: list[int], limiter: Limiter
 ) -> tuple[int | None, DriveLimits | None, tuple[tuple[int, str], ...], int | None]:
     """Return the nearest driving net (a ``[drive]`` entry beats all), or the supply that feeds the drive on."""
     output = limiter.nets["output"]
@@ -158,9 +130,8 @@ def _find_drive(
         if net in best or cost > FARTHEST or len(best) > MOST_NETS:
             continue
         best[net] = cost
-        entry = drive_entry_at(board, net, limits)
-        if entry is not None:
-            return net, entry, drivers_on(board, net), None
+        if net in board.drives:
+            return net, board.drives[net], drivers_on(board, net), None
         if net in walls:
             if board.nets[net].supply is not None:
                 fed.append((cost, net))

@@ -57,6 +57,8 @@ def test_the_limits_file_counts_before_the_name() -> None:
 def test_an_output_or_a_driven_net_is_no_supply_whatever_its_name() -> None:
     assert supply_of(["+12V"], Limits(limiters={"+12V": LimiterLimits(carry_A=1.0)})) is None
     assert supply_of(["+12V"], Limits(drives={"+12V": DriveLimits()})) is None
+    assert supply_of(["+12V"], Limits(drives={"+12v": DriveLimits()})) is None
+    assert supply_of(["+12V"], Limits(drives={"+12*": DriveLimits()})) is not None
     assert supply_of(["+12V"], Limits(limiters={"*": LimiterLimits(carry_A=1.0)})) is not None
 
 

@@ -54,13 +54,13 @@ def test_an_end_of_the_drive_moves_with_the_rail_it_stays_short_of() -> None:
     """The rail is one thing with one spread: the drive's high end is 1.5 V under it wherever it is. The negative rail is at
     no part of the limiter, so the low end has the spread of its own; an end that is stated moves with nothing."""
     supplies = {"+24V": Range(22.0, 24.0, 27.0), "-5V": Range(-5.5, -5.0, -4.5), "GND": Range(0.0, 0.0, 0.0)}
-    made = board(FOLLOWER, limits=Limits(supplies_V=supplies))
-    (limiter,) = find_limiters(made, load_rules()).limiters
     for entry, moving in (
         (DriveLimits(from_rails_V=1.5), {("+24V", "V"), ("CMD", "low_V")}),
         (DriveLimits(from_rails_V=1.5, high_V=Range(9.0, 10.0, 11.0)), {("+24V", "V"), ("CMD", "low_V"), ("CMD", "high_V")}),
     ):
         limits = Limits(supplies_V=supplies, drives={"CMD": entry})
+        made = board(FOLLOWER, limits=limits)
+        (limiter,) = find_limiters(made, load_rules()).limiters
         circuit = build_bench(made, limiter, limits=limits, needs=LimiterLimits()).circuit
         assert circuit is not None
         network = compile_network(circuit)

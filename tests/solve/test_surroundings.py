@@ -33,7 +33,7 @@ def bench_of(pass_device: str, *driven: str) -> set[str]:
     limits = Limits(drives={net: DriveLimits() for net in driven})
     made = board(HALVES, limits=limits)
     (limiter,) = [one for one in find_limiters(made, load_rules()).limiters if one.id == pass_device]
-    around = survey_surroundings(made, limiter, limits)
+    around = survey_surroundings(made, limiter)
     return {made.parts[index].id for element in around.elements for index in made.elements[element].parts}
 
 
