@@ -17,6 +17,7 @@ from protlint.solve.range_ends import Ends, loci_at, range_ends
 from protlint.solve.solution import Currents, Point
 
 HELD_MOST = "solved in the held short, every tolerance set for the most"
+ON_THE_LOCUS = "solved with the limiter holding at that output voltage, every tolerance set for the most"
 """How the figures of the held short come about; the ends of stated ranges that count follow."""
 
 NOT_SOLVED = "the held short at every ambient, which could not be solved"

@@ -10,7 +10,7 @@ from protlint.board.graph import BoardPart, Element
 from protlint.board.shares import part_shares
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.derating import derated, share_of
-from protlint.checks.ends import HELD_MOST, NOT_SOLVED, at_carry, held_shorts
+from protlint.checks.ends import HELD_MOST, NOT_SOLVED, ON_THE_LOCUS, WORSE, Held, at_carry, held_shorts
 from protlint.findings import Fit, Level, NotChecked, WorkingLine
 from protlint.partdata.book import Figure
 from protlint.quantities import format_quantity, preferred
@@ -133,7 +133,8 @@ def _rating_key(case: Case, part: BoardPart) -> str:
 
 
 def _loads(case: Case, element: Element, part: BoardPart) -> Iterator[Load]:
-    """Yield what a resistor bears in the held short and at carry, at every ambient and every end of the stated ranges."""
+    """Yield what a resistor bears in the held short, on the way there where that is more (at the knee of a foldback), and at
+    carry; at every ambient and every end of the stated ranges."""
     values_ohm = {index: case.board.parts[index].values.value or 0.0 for index in element.parts}
     names = [name for name, index in case.bench.element_of.items() if index == element.index]
     value_ohm = values_ohm[part.index]
@@ -144,6 +145,11 @@ def _loads(case: Case, element: Element, part: BoardPart) -> Iterator[Load]:
     for held in held_shorts(case):
         current_A = _current_A(held.short, names) * share
         yield Load("in the held short", held.row.ambient_degC, current_A, value_ohm, times, f"{HELD_MOST}{held.words}")
+        most = max(_overloads(case, held), key=lambda point: _current_A(point, names))
+        most_A = _current_A(most, names) * share
+        if most_A > WORSE * current_A:
+            where = f"with the output at {format_quantity(most.output_V, 'V')}"
+            yield Load(where, held.row.ambient_degC, most_A, value_ohm, times, f"{ON_THE_LOCUS}{held.words}")
     for carried, ends in at_carry(case):
         current_A = _current_A(carried, names) * share
         carry_A = case.needs.carry_A
@@ -151,6 +157,14 @@ def _loads(case: Case, element: Element, part: BoardPart) -> Iterator[Load]:
             current_A *= carry_A / carried.output_A
         for row in case.solution.currents:
             yield Load("at carry", row.ambient_degC, current_A, value_ohm, how=f"solved at carry, as drawn{ends}")
+
+
+def _overloads(case: Case, held: Held) -> list[Point]:
+    """Return the held short and the points of its locus no farther from it than the stated working output: an overload, be
+    it as hard as a short or not, leaves the output between the two."""
+    short_V, output_V = held.short.output_V, case.needs.output_V
+    far_V = math.inf if output_V is None else abs(output_V - short_V)
+    return [held.short, *(point for point in held.locus[1:] if abs(point.output_V - short_V) <= far_V)]
 
 
 def overload_times(case: Case) -> float:

@@ -88,7 +88,7 @@ def test_what_a_value_would_bring_is_said_with_how_it_is_mended(drawn: str) -> N
 )
 def test_with_a_preset_all_that_comes_of_a_new_value_is_said(job: Job, check: str, fit: str) -> None:
     before = {one.check for one in found(job.review())}
-    remedy = said(job, check)
+    remedy = said(job, check).rpartition("if they are meant so: ")[2]
     after = each(job, remedy.partition("; then also ")[0], (fit,)).review()
     new = {one.check for one in found(after)} - before
     assert check not in {one.check for one in found(after)}

@@ -7,7 +7,7 @@ import pytest
 from protlint.checks.reverse import has_other_half
 from protlint.checks.surge import shunt_of, surge
 from tests.support.desk import case_of, found, limits, the_one, unchecked
-from tests.support.judged import Job, follower, gated, sink
+from tests.support.judged import Job, folding, follower, gated, sink
 from tests.support.scenarios import DIODE
 
 PUSH_PULL = """
@@ -128,3 +128,18 @@ def test_a_drive_stated_of_a_pin_counts_on_the_net_of_that_pin_alone(pin: str, a
     circuit = case_of(Job(board, stated).review()).circuit
     assert circuit.drive.node == "CMD"
     assert circuit.drive.assumed is assumed
+
+
+def test_the_sense_resistor_of_a_foldback_is_judged_at_its_knee_that_of_a_flat_limit_in_the_short() -> None:
+    """An overload leaves the output anywhere between the short and 10 V, and lets most through just below that."""
+    review = folding().drawn(("SNS OUT POWER:5W", "SNS OUT POWER:3W")).review()
+    (one,) = found(review, "sense-resistor-power")
+    rows = [[point for point in row if point.output_V <= 10.0] for row in the_one(review).solution.high_locus]
+    knee = max((point for row in rows for point in row), key=lambda point: abs(point.states["R61"].current_A))
+    assert knee.output_V > 8.0
+    assert one.working[1].value == pytest.approx(knee.states["R61"].current_A ** 2)  # in 1 ohm
+    assert f"with the output at {knee.output_V:.3g} V" in one.message
+    short = [abs(row[0].states["R61"].current_A) for row in rows]
+    assert max(short) < 0.7 * abs(knee.states["R61"].current_A)  # in the short 3 W are enough
+    (flat,) = found(sink().drawn(("SNS GND POWER:1W", "SNS GND POWER:0.125W")).review(), "sense-resistor-power")
+    assert "in the held short" in flat.message
