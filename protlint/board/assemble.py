@@ -30,7 +30,7 @@ def assemble(
     parts = tuple(
         BoardPart(
             index, part, known.kind, known.kind_from, _roles(part, known, index_of), known.roles_from, known.part_number,
-            known.values, known.entry, _sections(part, known, index_of),
+            known.values, known.entry, _sections(part, known, index_of) if known.sections else (),
         )
         for index, (part, known) in enumerate(zip(netlist.parts, seen, strict=True))
     )  # fmt: skip
@@ -156,8 +156,12 @@ def _elements(parts: Sequence[BoardPart], nets: Sequence[BoardNet], driven: Set[
     )
 
 
+ENDS = frozenset({"1", "2"})
+"""The roles of a resistor's terminals."""
+
+
 def _is_plain_resistor(part: BoardPart) -> bool:
-    return part.kind == "resistor" and set(part.roles) == {"1", "2"}
+    return part.kind == "resistor" and part.roles.keys() == ENDS
 
 
 def _passable(parts: Sequence[BoardPart], nets: Sequence[BoardNet], driven: Set[int], limits: Limits) -> list[bool]:
