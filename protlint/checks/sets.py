@@ -28,7 +28,7 @@ from protlint.findings import Finding, NotChecked, WorkingLine
 from protlint.quantities import format_quantity
 from protlint.quantities.series import within
 from protlint.solve.answers import solve
-from protlint.solve.solution import Currents, Pair, Solution
+from protlint.solve.solution import Pair, Solution
 
 LEAST_CHANNELS = 3
 """Two channels that differ do not tell which of them is odd."""
@@ -38,16 +38,16 @@ COMPARED = {
     "carries": ("carries", "carry"),
     "most": ("passes at most", "pass at most"),
 }
-"""The currents of like channels that are compared, in this order, with how one has it and several do; a divider's leg to
-ground shows at the working output only."""
+"""The currents of halves and of like channels that are compared, in this order, with how one has it and several do; a
+divider's leg to ground shows at the working output only."""
 
 REACH = 1.1
 """How far around the sense resistance that goes as 1 / R preferred values are tried; the solved circuit decides."""
 
 
 @dataclass(frozen=True, slots=True)
-class Held:
-    """What a limiter holds at the usual ambient: as drawn, and from its low to its high end."""
+class Figure:
+    """One of :data:`COMPARED` of a limiter at the usual ambient: as drawn, and from its low to its high end."""
 
     ambient_degC: float
     usual_A: float
@@ -58,13 +58,14 @@ def halves_unequal(whole: BoardCase) -> Iterator[BoardAnswer]:
     """Yield a finding where the two polarities of an output stage hold currents that no tolerance brings together."""
     check = "halves-unequal"
     for ids in whole.found.pairs:
-        halves = [(case, held) for case in map(whole.cases.__getitem__, ids) if (held := _held(case.solution.currents))]
+        halves = [(has, case) for case in map(whole.cases.__getitem__, ids) if (has := _figure(case.solution, "holds"))]
         if len(halves) < len(ids):
             yield from (Unanswered(name, NotChecked(check, f"what {' and '.join(ids)} hold, solved")) for name in ids)
             continue
-        (low, low_held), (high, high_held) = sorted(halves, key=lambda half: half[1].usual_A)
-        if _apart(low_held, high_held, low.threshold(check, "difference")):
-            yield _halves(high, high_held, low, low_held)
+        (_, low), (_, high) = sorted(halves, key=lambda half: half[0].usual_A)
+        apart = _first_apart(low, low.solution, high, low.threshold(check, "difference"))
+        if apart is not None:
+            yield _halves(apart, low, high)
 
 
 def channels_unequal(whole: BoardCase) -> Iterator[BoardAnswer]:
@@ -79,34 +80,57 @@ def channels_unequal(whole: BoardCase) -> Iterator[BoardAnswer]:
                     yield from _channel(cases, values, odd, place)
 
 
-def _held(rows: Sequence[Currents]) -> Held | None:
-    row = usual(rows)
-    if row is None or not row.holds_A or row.holds_range_A is None:
-        return None
-    return Held(row.ambient_degC, row.holds_A, row.holds_range_A)
+def _figure(solution: Solution, figure: str) -> Figure | None:
+    row = usual(solution.currents)
+    usual_A, range_A = (None, None) if row is None else (getattr(row, f"{figure}_A"), getattr(row, f"{figure}_range_A"))
+    return Figure(row.ambient_degC, usual_A, range_A) if row is not None and usual_A and range_A is not None else None
 
 
-def _apart(one: Held, other: Held, most: float) -> bool:
-    """Tell whether two limiters hold currents more than a share of the smaller apart, with a gap between their ranges."""
+def _first_apart(one: Case, solved: Solution, other: Case, most: float) -> str | None:
+    """Return the first of :data:`COMPARED` that lies apart in two halves, the one as ``solved``, the other as drawn.
+
+    Halves whose outputs or supplies do not mirror each other's are compared by what they hold only.
+    """
+    for figure in COMPARED if _mirrored(one, other) else ("holds",):
+        mine, its = _figure(solved, figure), _figure(other.solution, figure)
+        if mine is not None and its is not None and _apart(mine, its, most):
+            return figure
+    return None
+
+
+def _mirrored(one: Case, other: Case) -> bool:
+    """Tell whether two halves work at opposite output voltages, or both at none that is stated, within opposite supplies."""
+    mine_V, its_V = one.needs.output_V, other.needs.output_V
+    low_V, high_V = other.circuit.output_reach_V
+    at_opposite = mine_V == its_V if mine_V is None or its_V is None else mine_V == -its_V
+    return at_opposite and one.circuit.output_reach_V == (-high_V, -low_V)
+
+
+def _apart(one: Figure, other: Figure, most: float) -> bool:
+    """Tell whether a current of two limiters lies more than a share of the smaller apart, with a gap between the ranges."""
     gap = max(one.range_A[0], other.range_A[0]) > min(one.range_A[1], other.range_A[1])
     return gap and max(one.usual_A, other.usual_A) > (1.0 + most) * min(one.usual_A, other.usual_A)
 
 
-def _halves(high: Case, high_held: Held, low: Case, low_held: Held) -> Finding:
-    changed, changes = _what_mends(high, low)
+def _halves(figure: str, one: Case, other: Case) -> Finding:
+    (low, low_has), (high, high_has) = sorted(
+        ((case, has) for case in (one, other) if (has := _figure(case.solution, figure))), key=lambda half: half[1].usual_A
+    )
+    changed, changes = _what_mends(figure, high, low)
+    verb, _ = COMPARED[figure]
     unlike = [one for case, beside in ((high, low), (low, high)) for one in _unlike(case, beside)]
-    ratio = high_held.usual_A / low_held.usual_A - 1.0
+    ratio = high_has.usual_A / low_has.usual_A - 1.0
     lines = []
-    for case, held in ((high, high_held), (low, low_held)):
-        lines.append(WorkingLine(f"holds, {case.limiter.id}", f"as drawn at {held.ambient_degC:g} degC", held.usual_A, "A"))
-        for end, value_A in zip(("low", "high"), held.range_A, strict=True):
+    for case, its in ((high, high_has), (low, low_has)):
+        lines.append(WorkingLine(f"{figure}, {case.limiter.id}", f"as drawn at {its.ambient_degC:g} degC", its.usual_A, "A"))
+        for end, value_A in zip(("low", "high"), its.range_A, strict=True):
             lines.append(WorkingLine(f"its {end} end", "every tolerance at its worst", value_A, "A"))
     lines.append(WorkingLine("difference", "of the usual values, over the smaller", ratio, ""))
     parts = [part for one in unlike for part in one.parts]
     return changed.finding(
         "halves-unequal",
-        f"{high.limiter.id} holds {format_quantity(high_held.usual_A, 'A')}, the other half, {low.limiter.id}, "
-        f"{format_quantity(low_held.usual_A, 'A')}: {format_quantity(ratio, '%')} apart, more than tolerance makes up for",
+        f"{high.limiter.id} {verb} {format_quantity(high_has.usual_A, 'A')}, the other half, {low.limiter.id}, "
+        f"{format_quantity(low_has.usual_A, 'A')}: {format_quantity(ratio, '%')} apart, more than tolerance makes up for",
         parts=tuple(dict.fromkeys((*parts, *(part for case in (high, low) for part in case.parts("sense", "shunt"))))),
         working=tuple(lines),
         remedy=to_fit(changes)
@@ -122,17 +146,17 @@ def _unlike(case: Case, beside: Case) -> tuple[Change, ...]:
     return differing(case, values_of(beside), values_of(case))
 
 
-def _what_mends(high: Case, low: Case) -> tuple[Case, tuple[Change, ...]]:
+def _what_mends(figure: str, high: Case, low: Case) -> tuple[Case, tuple[Change, ...]]:
     """Return the half to change and the values that bring it to the other, found by solving it again.
 
     The larger current comes down where what the board needs allows it: that is the careful side.
     """
     for case, beside in ((high, low), (low, high)):
-        for changes in _candidates(case, beside):
+        for changes in _candidates(figure, case, beside):
             solution = solve(with_values(case, changes), case.limits.ambient_degC)
-            mine, its = _held(solution.currents), _held(beside.solution.currents)
             most = case.threshold("halves-unequal", "difference")
-            if mine and its and not _apart(mine, its, most) and _meets_needs(case, solution):
+            solved = _figure(solution, "holds") and _figure(solution, figure)
+            if solved and _first_apart(case, solution, beside, most) is None and _meets_needs(case, solution):
                 return case, changes
     return high, ()
 
@@ -142,14 +166,14 @@ def _meets_needs(case: Case, solution: Solution) -> bool:
     return (needs.carry_A is None and needs.cap_A is None) or meets(solution, needs.carry_A, needs.cap_A)
 
 
-def _candidates(case: Case, beside: Case) -> Iterator[tuple[Change, ...]]:
+def _candidates(figure: str, case: Case, beside: Case) -> Iterator[tuple[Change, ...]]:
     """Yield changes to try: every value as in the other half, then other sense resistances alone."""
     unlike = _unlike(case, beside)
     if unlike:
         yield unlike
     sense = case.limiter.elements["sense"]
     now_ohm = case.board.elements[sense[0]].value
-    mine_A, its_A = usual_holds_A(case), usual_holds_A(beside)
+    mine_A, its_A = usual_A(case, figure), usual_A(beside, figure)
     if now_ohm and mine_A and its_A:
         aim_ohm = now_ohm * mine_A / its_A
         for series in ("E12", "E24"):

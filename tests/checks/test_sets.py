@@ -192,6 +192,66 @@ def test_fifteen_per_cent_is_the_bound() -> None:
     assert told == {"1.1": False, "1.2": True}
 
 
+FOLDING_HALVES = """
+J1 CONN - OUT GND
+J2 CONN - +24V -24V
+J3 CONN - DP DN
+R10 RES 100 DP BP POWER:5W
+Q10 NPN QPN1 +24V BP SP
+R11 RES 0.68 SP OUT POWER:5W
+R12 RES 100 SP TP POWER:0.5W
+R13 RES {upper} TP GND POWER:0.5W
+Q11 NPN QSN1 BP TP OUT
+C11 CAP 1n BP TP
+R20 RES 100 DN BN POWER:5W
+Q20 PNP QPP1 -24V BN SN
+R21 RES 0.68 SN OUT POWER:5W
+R22 RES 100 SN TN POWER:0.5W
+R23 RES {lower} TN GND POWER:0.5W
+Q21 PNP QSP1 BN TN OUT
+C21 CAP 1n BN TN
+"""
+
+
+def folding_halves(
+    upper: str, lower: str, outputs: tuple[str, str] | None = ("12 V", "-12 V"), *, negative: str = "-24 V"
+) -> Review:
+    drive = {name: {"low": "-20 V", "high": "20 V"} for name in ("DP", "DN")}
+    asked = {} if outputs is None else {name: {"output": one} for name, one in zip(("Q10", "Q20"), outputs, strict=True)}
+    supply = {**FIXED, "-24V": negative}
+    return reviewed(FOLDING_HALVES.format(upper=upper, lower=lower), limits(supply=supply, drive=drive, limiter=asked))
+
+
+def test_halves_whose_legs_to_ground_differ_carry_unlike_currents_and_hold_like_ones() -> None:
+    """By hand (divider law) a leg adds V_O R_1 / (R_2 R_S) = 0.45 A at 12 V and nothing in the short."""
+    finding = unequal(folding_halves("3.9k", "39k"))
+    assert finding is not None
+    working = {line.quantity: line.value for line in finding.working}
+    upper_A, lower_A = working["carries, Q10"], working["carries, Q20"]
+    assert upper_A is not None
+    assert lower_A is not None
+    assert upper_A - lower_A == pytest.approx(0.9 * 12 * 100 / 3900 / 0.68, rel=0.1)
+    assert "Q10 carries" in finding.message
+    assert (finding.limiter, finding.remedy) == ("Q10", "fit 39 kohm as R13")
+    assert unequal(folding_halves("39k", "39k")) is None
+    assert unequal(folding_halves("3.9k", "3.9k")) is None
+
+
+@pytest.mark.parametrize(
+    ("outputs", "negative"), [(("12 V", "12 V"), "-24 V"), (("12 V", "-5 V"), "-24 V"), (("12 V", "-12 V"), "-18 V")]
+)
+def test_halves_that_do_not_mirror_each_other_are_compared_by_what_they_hold_only(
+    outputs: tuple[str, str], negative: str
+) -> None:
+    assert unequal(folding_halves("3.9k", "39k", outputs, negative=negative)) is None
+
+
+def test_halves_without_a_stated_output_are_compared_by_what_they_pass_at_most() -> None:
+    finding = unequal(folding_halves("1.5k", "39k", None))
+    assert finding is not None
+    assert "Q10 passes at most" in finding.message
+
+
 SHARED = """
 J1 CONN - OUT GND
 J2 CONN - +24V DRV
