@@ -218,6 +218,8 @@ def test_boards_that_did_not_change_are_named_only() -> None:
     assert "\nRemarks that are new\n  - limits.toml: [limiter.Q99] fits no limiter" in text
     same = comparison_document(compare_together(side, side))
     assert "\nUnchanged: a.edf, b.edf\n" in rendered_comparison(same)
+    one = together("a.edf")
+    assert rendered_comparison(comparison_document(compare_together(one, one))).startswith("1 board: 1 unchanged; ")
 
 
 @pytest.mark.parametrize("name", HOSTILE)

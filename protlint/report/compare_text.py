@@ -48,7 +48,8 @@ def _together(comparison: Document, colour: bool) -> list[str]:
     same = [board["after"]["file"] for board in still if None not in (board["before"], board["after"])]
     counts = {"added": came, "removed": went, "changed": len(boards) - came - went - len(same), "unchanged": len(same)}
     said = ", ".join(f"{count} {word}" for word, count in counts.items() if count)
-    title = f"{counted(len(boards), 'board')} together: {said or 'none compared'}; {_counts(boards)}"
+    whole = f"{len(boards)} boards together" if len(boards) > 1 else "1 board"
+    title = f"{whole}: {said or 'none compared'}; {_counts(boards)}"
     lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
     for board in changed:
         lines += ["", *_board(board, colour)]

@@ -22,7 +22,7 @@ from protlint.report.digest import (
     unsolved,
     waiver_of,
 )
-from protlint.report.figures import UNKNOWN, aligned, ambient, counted, figure, percent, three_digits, triple, unit_for
+from protlint.report.figures import UNKNOWN, aligned, ambient, figure, percent, three_digits, triple, unit_for
 from protlint.report.layout import COLUMNS, fitting, painted, shortened, table, tail, width, wrapped
 from protlint.report.memory import FROM_MEMORY, remembered, resting
 from protlint.report.safe import readable, throughout
@@ -44,11 +44,15 @@ def rendered_text(report: Document, *, colour: bool = False) -> str:
     """Return the report as text lines of 80 columns; ``colour`` adds the colours of a terminal."""
     safe: Document = throughout(report, readable)
     lines: list[str] = []
-    for board in boards_of(safe):
+    end: list[str] = []
+    boards = boards_of(safe)
+    if len(boards) == 1 and "boards" in safe and not safe["unread"]:  # one needs no sum
+        boards = [{**boards[0], "remarks": [*boards[0]["remarks"], *safe["remarks"]]}]
+    elif "boards" in safe:
+        end = _together(safe, colour)
+    for board in boards:
         lines += [*_board(board, colour), ""]
-    if "boards" in safe:
-        lines += _together(safe, colour)
-    lines += wrapped(safe["caution"])
+    lines += [*end, *wrapped(safe["caution"])]
     return "\n".join(lines) + "\n"
 
 
@@ -249,8 +253,9 @@ def _listing(title: str, texts: Sequence[str], colour: bool) -> list[str]:
 
 
 def _together(report: Document, colour: bool) -> list[str]:
-    summary = report["summary"]
-    title = f"{counted(summary['boards'], 'board')} together: {summary_line(report)}"
+    """Sum several boards up, and say what could not be reviewed and what fits none of them."""
+    count = report["summary"]["boards"]
+    title = f"{count} boards together: {summary_line(report)}" if count > 1 else "No board was read"
     lines = [painted(line, "heading", colour=colour) for line in wrapped(title, indent=2, first="")]
     for error in report["unread"]:
         lines += wrapped(f"not reviewed: {place_of(error)}: {error['message']}", indent=4, first="  - ")

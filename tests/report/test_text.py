@@ -117,6 +117,16 @@ def test_boards_together_end_with_a_line_for_all_and_the_unread() -> None:
     assert "broken.edf:3:9: not EDIF" in text
 
 
+def test_of_one_board_its_own_line_is_enough() -> None:
+    one = document(sample_review())
+    assert "together" not in rendered_text(combined([one]))
+    assert rendered_text(combined([one])) == rendered_text(one)
+    unread = rendered_text(combined([], [{"file": "broken.edf", "line": 3, "column": 9, "message": "not EDIF"}]))
+    assert "together" not in unread
+    assert "No board was read" in unread
+    assert "broken.edf:3:9: not EDIF" in unread
+
+
 def test_an_empty_board_says_where_to_look() -> None:
     review = sample_review()
     text = rendered_text(document(replace(review, limiters=(), findings=())))
