@@ -11,7 +11,7 @@ from typing import Literal
 from protlint.board.attributes import file_habits
 from protlint.board.graph import Board, build_board
 from protlint.board.parts_list import Difference, PartsList, differences, read_parts_list
-from protlint.checks.afterwards import foretold
+from protlint.checks.afterwards import foretold, told_once
 from protlint.checks.asking import ask, with_levels
 from protlint.checks.board_case import BoardCase
 from protlint.checks.case import Case
@@ -203,7 +203,7 @@ def _reviewed(netlist: Netlist, desk: Desk) -> Review:
     more = [told for one in more for told in _foretold(one, cases, findings)]
     reviewed = [replace(one, not_checked=(*one.not_checked, *unanswered.pop(one.limiter.id, ()))) for one in reviewed]
     of_the_board = [one for left in unanswered.values() for one in left]
-    return _finish(board, found, reviewed, findings + more, desk, of_the_board)
+    return _finish(board, found, reviewed, told_once(findings) + more, desk, of_the_board)
 
 
 def _ask_of_the_board(whole: BoardCase) -> tuple[list[Finding], dict[str | None, list[NotChecked]]]:

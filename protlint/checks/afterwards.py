@@ -25,7 +25,7 @@ MOST_TOLD = 2
 POWER_CHECKS = ("sense-resistor-power", "resistor-power")
 
 ADVISED = ("compensation-absent", "loop-undamped")
-"""Checks whose remedy is worked out only where they find something worth telling."""
+"""Checks whose remedy is worked out only where they find something worth telling, and is the same of both."""
 
 SHAPED = (*ADVISED, PEAKS, LATE)
 """All that a capacitor changes: it carries no steady current, so that every operating point stays where it is."""
@@ -41,6 +41,20 @@ def foretold(case: Case, findings: Sequence[Finding], before: Sequence[Finding])
     ``before`` is all that was found of the limiter as drawn.
     """
     return [_foretold(case, one, before) if one.remedy and _changes(case, one) else one for one in findings]
+
+
+def told_once(findings: Sequence[Finding]) -> list[Finding]:
+    """Return findings where of two on one limiter's loop the graver alone tells the remedy, which is that of both."""
+    tells: dict[str | None, str] = {}
+    of_loops = [one for one in findings if one.check in ADVISED and one.remedy]
+    for one in sorted(of_loops, key=lambda one: (_rank(one), -ADVISED.index(one.check))):
+        tells.setdefault(one.limiter, one.check)
+    return [
+        replace(one, remedy=f"see {tells[one.limiter]}, whose remedy does for both")
+        if one.check in ADVISED and one.remedy and tells[one.limiter] != one.check
+        else one
+        for one in findings
+    ]
 
 
 def _changes(case: Case, finding: Finding) -> bool:

@@ -69,6 +69,20 @@ def test_a_loop_without_a_capacitor_is_told_with_its_damping() -> None:
     assert lines["phase margin"].value == pytest.approx(23.5, abs=0.5)
     assert lines["delay as drawn"].value == pytest.approx(1.985e-7, rel=0.05)
     assert not absent.assumption
+    assert absent.remedy == "see loop-undamped, whose remedy does for both"
+    assert undamped.remedy is not None
+    assert undamped.remedy.startswith("fit ")
+
+
+def test_where_one_loop_finding_is_graver_or_alone_it_tells_the_remedy_itself() -> None:
+    job = darlington()
+    graver = job.stated(checks={"compensation-absent": "error"}).review()
+    remedy = only(graver, "compensation-absent").remedy
+    assert remedy is not None
+    assert remedy.startswith("fit ")
+    assert only(graver, "loop-undamped").remedy == "see compensation-absent, whose remedy does for both"
+    alone = job.stated(checks={"loop-undamped": "off"}).review()
+    assert only(alone, "compensation-absent").remedy == remedy
 
 
 def test_a_good_loop_without_a_capacitor_is_a_note() -> None:
