@@ -103,20 +103,23 @@ def _supplies(review: Review) -> list[str]:
         name: f"{'# ' if supply.known_from == 'assumed' else ''}{toml_key(name)} = {_range(supply.voltage_V)}"
         for name, supply in known.items()
     }
+    lacking = (one.net for item in _board_order(review) for one in item.bench.missing)
+    rows |= {name: f'# {toml_key(name)} = " V"' for name in lacking if name is not None}
     rows |= {name: f"{toml_key(name)} = {_range(voltage)}" for name, voltage in review.limits.supplies_V.items()}
     return ["[supply]", *rows.values()]
 
 
 def _drives(review: Review) -> Iterable[list[str]]:
-    """Write the drives that are stated, and a blank for each that was assumed."""
+    """Write the drives that are stated, and a blank for each that was assumed or does not turn its stage on."""
     for name, drive in review.limits.drives.items():
         yield [f"[drive.{toml_key(name)}]", *_drive_rows(drive)]
-    assumed = {
-        item.circuit.drive.node: item.limiter.id
+    asked = {
+        item.circuit.drive.stated_on or item.circuit.drive.node: item.limiter.id
         for item in _board_order(review)
-        if item.circuit is not None and item.circuit.drive.assumed
+        if item.circuit is not None
+        and (item.circuit.drive.assumed or item.circuit.drive.key in (item.solution.not_solved or ""))
     }
-    for name, limiter in assumed.items():
+    for name, limiter in asked.items():
         if name not in review.limits.drives:
             yield [
                 f"# [drive.{toml_key(name)}]  # of {terminal(limiter)}",

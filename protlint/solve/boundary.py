@@ -12,7 +12,7 @@ from protlint.board.graph import Board
 from protlint.board.regulators import regulator_across
 from protlint.limits import DriveLimits, LimiterLimits, Limits, Range, driver_of
 from protlint.solve.circuit import FEED, Drive
-from protlint.solve.surroundings import Surroundings
+from protlint.solve.surroundings import Surroundings, sources_current
 from protlint.toml.text import toml_key
 from protlint.topology.limiter import Limiter
 
@@ -21,12 +21,14 @@ from protlint.topology.limiter import Limiter
 class Missing:
     """Something a bench lacks, and the key that would supply it.
 
-    ``subject`` is ``supply``, ``short``, ``drive``, ``value``, ``part`` or ``circuit``; ``part`` is the part it is about.
+    ``subject`` is ``supply``, ``short``, ``drive``, ``value``, ``part`` or ``circuit``; ``part`` is the part it is about,
+    ``net`` the net whose line in ``[supply]`` is asked for.
     """
 
     subject: str
     part: str | None
     needs: str
+    net: str | None = None
 
 
 @dataclass(slots=True)
@@ -63,8 +65,7 @@ class Place:
     @property
     def sources_current(self) -> bool:
         """Tell whether the load current flows out of the output (else into it)."""
-        follower = self.limiter.nets["far"] == self.around.output
-        return follower == (self.limiter.polarity == "n")
+        return sources_current(self.limiter)
 
 
 def hold_supplies(place: Place, notes: Notes) -> dict[str, Range]:
@@ -76,9 +77,24 @@ def hold_supplies(place: Place, notes: Notes) -> dict[str, Range]:
         if board.nets[net].supply is not None:
             _hold(place, net, held, notes)
     if power_V(place) is None:
-        name = board.nets[place.around.power].name
-        notes.missing.append(Missing("supply", None, f"[supply] {toml_key(name)}"))
+        name = board.nets[_unnamed_supply(place)].name
+        notes.missing.append(Missing("supply", None, f"[supply] {toml_key(name)}", net=name))
     return held
+
+
+def _unnamed_supply(place: Place) -> int:
+    """Return which net to ask a supply's voltage of, where neither side of the limiter is known as one.
+
+    That is the power side, as the limiter was read; but where a diode would tie its voltage to ground, the limiter stands
+    the other way round: the raw supply is where its output was taken to be.
+    """
+    board, power = place.board, place.around.power
+    on_power, on_ground = ("anode", "cathode") if place.sources_current else ("cathode", "anode")
+    for index, role in board.elements_at[power]:
+        element = board.elements[index]
+        if element.kind == "diode" and role == on_power and place.usual_V(element.terminals[on_ground]) == 0.0:
+            return place.around.output
+    return power
 
 
 def _hold(place: Place, net: int, held: dict[str, Range], notes: Notes) -> str:
@@ -214,13 +230,18 @@ def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive 
         assert supply is not None
         node = place.node_of[around.fed_by] + FEED
         notes.words[node] = f"feed from {board.nets[around.fed_by].name}: {supply.voltage_V.usual:g} V"
-        if place.limiter.polarity == "n":
-            return Drive(
-                node=node, low_V=lowest, high_V=supply.voltage_V, high_follows=place.node_of[around.fed_by]
-            ), around.fed_by
-        return Drive(
-            node=node, low_V=supply.voltage_V, high_V=highest, low_follows=place.node_of[around.fed_by]
-        ), around.fed_by
+        fed_by, own = place.node_of[around.fed_by], place.limiter.nets["drive"]
+        stated_on = None if own is None else place.node_of[own]
+        upwards = place.limiter.polarity == "n"
+        drive = Drive(
+            node=node,
+            low_V=lowest if upwards else supply.voltage_V,
+            high_V=supply.voltage_V if upwards else highest,
+            low_follows=None if upwards else fed_by,
+            high_follows=fed_by if upwards else None,
+            stated_on=stated_on,
+        )
+        return drive, around.fed_by
     feed = place.limiter.nets["feed"]
     net = place.limiter.nets["drive"] if feed is None else feed
     name = "?" if net is None else board.nets[net].name
@@ -251,6 +272,9 @@ def _driven(place: Place, held: Mapping[str, Range], lowest: Range, highest: Ran
             ends = ((entry.low_V, lower), (entry.high_V, upper))
             follows = [node if stated_V is None and node in held else None for stated_V, node in ends]
     stated = entry is not None and (entry.from_rails_V is not None or (entry.low_V is not None and entry.high_V is not None))
+    if not stated and low.usual == high.usual:  # of the supplies it could reach, one is not known
+        notes.words[node] = "drive, its ends not known"
+        return Drive(node=node, low_V=low, high_V=high, assumed=True)
     if not stated:
         stiff = "" if entry and entry.current_A is not None else "stiff and "
         notes.assumed.append(

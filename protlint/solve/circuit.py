@@ -10,6 +10,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 
 from protlint.limits import Range
+from protlint.toml.text import toml_key
 
 FEED = " (feed)"
 """Behind a supply's name: the node of its own that a drive straight from that supply gets."""
@@ -49,6 +50,8 @@ class Drive:
     Which end turns the pass device on hardest is found by solving. ``current_A`` None means stiff. ``low_follows`` and
     ``high_follows`` name the held net that an end moves with: a supply that feeds the drive straight, or one that the drive
     stays a stated way short of. The end is as far from it at every voltage of that supply as at the usual one.
+    ``stated_on`` is the net whose ``[drive]`` entry would state it, where that is not the node: of a stage that a supply
+    feeds, the limiter's own drive net.
     """
 
     node: str
@@ -59,6 +62,12 @@ class Drive:
     assumed: bool = False
     low_follows: str | None = None
     high_follows: str | None = None
+    stated_on: str | None = None
+
+    @property
+    def key(self) -> str:
+        """The limits-file table that states this drive."""
+        return f"[drive.{toml_key(self.stated_on or self.node)}]"
 
 
 @dataclass(frozen=True, slots=True)

@@ -9,13 +9,13 @@ from __future__ import annotations
 
 import heapq
 from collections import deque
-from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 
 from protlint.board.drives import is_input
 from protlint.board.graph import Board, Element
 from protlint.board.regulators import regulator_across
 from protlint.limits import DriveLimits
+from protlint.solve.lead import lead_to_supply, other_nets
 from protlint.topology.limiter import Limiter
 
 MOST_DEVICES = 80
@@ -27,9 +27,6 @@ CONTROL = {
     "npn": "base", "pnp": "base", "npn-darlington": "base", "pnp-darlington": "base", "nmos": "gate", "pmos": "gate",
 }  # fmt: skip
 """The control terminal of each transistor kind."""
-
-LEAD_AT_MOST_OHM = 10.0
-"""A larger resistor is not taken for one in a supply lead."""
 
 STEP_COST, TRANSISTOR_COST = 1, 3
 """A drive through passive parts is nearer than one behind a transistor."""
@@ -72,7 +69,7 @@ def survey_surroundings(board: Board, limiter: Limiter) -> Surroundings:
     drive, entry, pins, fed_by = _find_drive(board, own, walls, [net for net in starts if net is not None], limiter)
     stops = walls | board.drives.keys() | ({drive} if drive is not None else set())
     elements, left_out = _collect(board, own, stops, drive)
-    power_path = _path_to_supply(board, power)
+    power_path = lead_to_supply(board, power, _barred(board, limiter, output) - {power}, sources=sources_current(limiter))
     return Surroundings(
         elements=tuple(sorted(elements.union(power_path))),
         output=output,
@@ -84,6 +81,17 @@ def survey_surroundings(board: Board, limiter: Limiter) -> Surroundings:
         fed_by=fed_by,
         left_out=tuple(left_out),
     )
+
+
+def sources_current(limiter: Limiter) -> bool:
+    """Tell whether a limiter's load current flows out of its output (else into it)."""
+    return (limiter.nets["far"] == limiter.nets["output"]) == (limiter.polarity == "n")
+
+
+def _barred(board: Board, limiter: Limiter, output: int) -> set[int]:
+    """Return the nets that no lead of the power side runs through: the output and the ends of the sense resistance."""
+    ends = {net for index in limiter.elements.get("sense", ()) for net in board.elements[index].terminals.values()}
+    return ends | {net for name in ("sense", "far") if (net := limiter.nets[name]) is not None} | {output}
 
 
 def _power_side(board: Board, limiter: Limiter, output: int, far: int) -> int:
@@ -104,15 +112,6 @@ def drivers_on(board: Board, net: int) -> tuple[tuple[int, str], ...]:
         if part.kind == "connector" or (part.kind == "ic" and not is_input(part, role)):
             found.append((index, role))
     return tuple(found)
-
-
-def other_nets(element: Element, net: int) -> Iterator[int]:
-    """Yield an element's other nets, each once."""
-    seen = {net}
-    for other in element.terminals.values():
-        if other not in seen:
-            seen.add(other)
-            yield other
 
 
 def _find_drive(
@@ -221,41 +220,3 @@ def _switched_by(board: Board, element: Element, stops: set[int], drive: int | N
             if board.elements[index].kind in PASSES_DC:
                 queue.extend(other_nets(board.elements[index], net))
     return found
-
-
-def _path_to_supply(board: Board, power: int, most_steps: int = 4) -> tuple[int, ...]:
-    """Return the series parts (fuse, inductor, diode, small resistor) from the power side to the nearest supply, if any."""
-    if board.nets[power].supply is not None:
-        return ()
-    came: dict[int, tuple[int, int] | None] = {power: None}
-    queue = deque([(power, 0)])
-    while queue:
-        net, steps = queue.popleft()
-        if board.nets[net].supply is not None:
-            return _trace(came, net)
-        if steps == most_steps:
-            continue
-        for index, _ in board.elements_at[net]:
-            element = board.elements[index]
-            if _in_the_lead(element):
-                for other in other_nets(element, net):
-                    if other not in came:
-                        came[other] = (net, index)
-                        queue.append((other, steps + 1))
-    return ()
-
-
-def _in_the_lead(element: Element) -> bool:
-    """Tell whether an element may stand in a supply lead, with the whole load current through it."""
-    if element.kind == "resistor":
-        return element.value is not None and element.value <= LEAD_AT_MOST_OHM
-    return element.kind in ("fuse", "inductor", "diode")
-
-
-def _trace(came: Mapping[int, tuple[int, int] | None], net: int) -> tuple[int, ...]:
-    path = []
-    step = came[net]
-    while step is not None:
-        path.append(step[1])
-        step = came[step[0]]
-    return tuple(path)
