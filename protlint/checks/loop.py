@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 
 from protlint.checks.case import ALL_ASSUMPTIONS, Answer, Case
 from protlint.checks.let_through import too_much
@@ -197,7 +197,7 @@ def _parts_of(case: Case, device: str) -> tuple[str, ...]:
 def _cure(case: Case, advice: Advice | None) -> Cure | None:
     """Return the first way to calm the loop that does not make the limiter act too late, another place's if need be, else
     the first."""
-    cures = advice.fits if advice is not None else ()
+    cures = _in_order(advice.fits) if advice is not None else ()
     if not cures:
         return None
     quick = next((cure for cure in cures if not _too_late(case, cure)), None)
@@ -205,6 +205,11 @@ def _cure(case: Case, advice: Advice | None) -> Cure | None:
         others = elsewhere(case.circuit, case.limits.ambient_degC, cures[0].place, short=case.solution.short)
         quick = next((cure for cure in others if not _too_late(case, cure)), None)
     return quick if quick is not None else cures[0]
+
+
+def _in_order(cures: Sequence[Cure]) -> Sequence[Cure]:
+    """Return ways to calm the loop with one first that only takes a capacitor out, where none that fits one does more."""
+    return sorted(cures, key=lambda cure: cure.farad is not None or cure != max(cures, key=lambda one: one.worst_damping))
 
 
 def _too_late(case: Case, cure: Cure) -> bool:

@@ -121,6 +121,30 @@ def test_a_capacitor_that_makes_the_loop_oscillate_is_named_and_the_advice_cures
     assert {(one.check, one.level) for one in found(cured)} <= before
 
 
+@pytest.mark.parametrize(
+    ("spoils", "starts"),
+    [
+        ("C30 CAP 1u B2 OUT\n", "take C30 out: damping "),  # 0.71 at worst, with 22 nF more it is 0.64
+        ("C30 CAP 1u STOP OUT\n", "take C30 out: damping "),  # 150 nF more, 0.75 at worst, would let it act too late
+    ],
+)
+def test_a_capacitor_that_costs_more_than_another_gives_is_taken_out(spoils: str, starts: str) -> None:
+    job = darlington("C31 CAP 100n B1 OUT\n" + spoils)
+    review = job.review()
+    remedy = only(review, "loop-undamped").remedy
+    assert remedy is not None
+    assert remedy.startswith(starts)
+    assert not found(mended(job, review), "loop-undamped")
+
+
+def test_where_fitting_another_capacitor_does_more_none_is_taken_out() -> None:
+    """Taken out, C30 gives 0.15 at worst, no way to the aim by itself; beside it 220 nF give 1."""
+    sink = SOUND["sink"]()
+    remedy = only(replace(sink, board=f"{sink.board}C30 CAP 220n SNS GND\n").review(), "loop-undamped").remedy
+    assert remedy is not None
+    assert remedy.startswith("fit 220 nF from the drive")
+
+
 def test_the_advice_for_a_loop_without_a_capacitor_cures_both_findings() -> None:
     job = darlington()
     review = job.review()
