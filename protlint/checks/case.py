@@ -127,7 +127,7 @@ class Case:
         """What would bound the drive: the limits-file key of its current; of a supply that feeds it, a resistance."""
         node = self.circuit.drive.node
         fed_by = node.removesuffix(FEED)
-        return f"[drive.{toml_key(node)}] current" if fed_by == node else f"a resistance between {fed_by} and the shunt"
+        return f"{self.circuit.drive.key} current" if fed_by == node else f"a resistance between {fed_by} and the shunt"
 
     @property
     def drive_ends_V(self) -> tuple[Range, Range]:

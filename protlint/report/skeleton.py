@@ -103,17 +103,17 @@ def _supplies(review: Review) -> list[str]:
         name: f"{'# ' if supply.known_from == 'assumed' else ''}{toml_key(name)} = {_range(supply.voltage_V)}"
         for name, supply in known.items()
     }
-    lacking = (one.net for item in _board_order(review) for one in item.bench.missing)
-    rows |= {name: f'# {toml_key(name)} = " V"' for name in lacking if name is not None}
+    rows |= {name: f'# {toml_key(name)} = " V"' for name, _ in _lacking(review, "supply")}
     rows |= {name: f"{toml_key(name)} = {_range(voltage)}" for name, voltage in review.limits.supplies_V.items()}
     return ["[supply]", *rows.values()]
 
 
 def _drives(review: Review) -> Iterable[list[str]]:
-    """Write the drives that are stated, and a blank for each that was assumed or does not turn its stage on."""
+    """Write the drives that are stated, and a blank for each that was assumed is not known or does not turn its stage on."""
     for name, drive in review.limits.drives.items():
         yield [f"[drive.{toml_key(name)}]", *_drive_rows(drive)]
-    asked = {
+    asked = dict(_lacking(review, "drive"))
+    asked |= {
         item.circuit.drive.stated_on or item.circuit.drive.node: item.limiter.id
         for item in _board_order(review)
         if item.circuit is not None
@@ -127,6 +127,14 @@ def _drives(review: Review) -> Iterable[list[str]]:
                 '# high = " V"  # the upper end',
                 *(f'# {key} = " {unit}"  # {meaning}' for key, _, unit, meaning in DRIVE_KEYS[:2]),
             ]
+
+
+def _lacking(review: Review, subject: str) -> Iterable[tuple[str, str]]:
+    """Yield the nets whose supply or drive a limiter is not judged for want of, with the limiter's id."""
+    for item in _board_order(review):
+        for one in item.bench.missing:
+            if one.subject == subject and one.net is not None:
+                yield one.net, item.limiter.id
 
 
 def _drivers(limits: Limits) -> Iterable[list[str]]:

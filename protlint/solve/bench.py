@@ -103,7 +103,7 @@ def _latch(board: Board, limiter: Limiter, devices: list[Device], element_of: Ma
 def _too_large(place: Place) -> Missing:
     net = place.limiter.nets["drive"]
     name = "?" if net is None else place.board.nets[net].name
-    return Missing("circuit", None, f"[drive.{toml_key(name)}]: more than {MOST_DEVICES} parts hang on this drive")
+    return Missing("drive", None, f"[drive.{toml_key(name)}]: more than {MOST_DEVICES} parts hang on this drive", net=name)
 
 
 def _nodes(place: Place, index: int, feed: int | None, feed_node: str) -> dict[str, str]:

@@ -22,7 +22,7 @@ class Missing:
     """Something a bench lacks, and the key that would supply it.
 
     ``subject`` is ``supply``, ``short``, ``drive``, ``value``, ``part`` or ``circuit``; ``part`` is the part it is about,
-    ``net`` the net whose line in ``[supply]`` is asked for.
+    ``net`` the net whose line in ``[supply]`` or whose ``[drive]`` table is asked for.
     """
 
     subject: str
@@ -243,11 +243,16 @@ def drive_of(place: Place, held: dict[str, Range], notes: Notes) -> tuple[Drive 
         )
         return drive, around.fed_by
     feed = place.limiter.nets["feed"]
-    net = place.limiter.nets["drive"] if feed is None else feed
+    net = place.limiter.nets["drive"] if feed is None or place.usual_V(feed) is not None else feed
     name = "?" if net is None else board.nets[net].name
-    if net == around.power:  # its voltage is what is missing, and said to be
+    if place.usual_V(around.power) is None and around.power in (net, feed):  # its voltage is what is missing
+        if power_V(place) is not None:
+            power = board.nets[around.power].name
+            needs = f"[supply] {toml_key(power)}: behind its lead it feeds the drive as well"
+            notes.missing.append(Missing("supply", None, needs, net=power))
         return None, None
-    notes.missing.append(Missing("drive", None, f"[drive.{toml_key(name)}]: nothing on the board is seen to drive it"))
+    needs = f"[drive.{toml_key(name)}]: nothing on the board is seen to drive it"
+    notes.missing.append(Missing("drive", None, needs, net=name))
     return None, None
 
 
@@ -304,7 +309,8 @@ def _drawn_by(place: Place, regulator: int, lowest: Range, highest: Range, notes
     if entry is None or entry.current_A is None:
         node, number = toml_key(place.node_of[net]), part.part_number
         key = f"[drive.{node}] current" if number is None else f"[driver.{toml_key(number)}] current"
-        notes.missing.append(Missing("drive", None, f"{key}: the most that {part.id} draws"))
+        asked = place.node_of[net] if number is None else None
+        notes.missing.append(Missing("drive", None, f"{key}: the most that {part.id} draws", net=asked))
         return None
     low, high = entry.low_V or lowest, entry.high_V or highest
     notes.words[place.node_of[net]] = f"{part.id} draws up to {entry.current_A:g} A from it"

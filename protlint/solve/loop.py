@@ -22,7 +22,6 @@ from protlint.solve.solution import Loop, Worst
 from protlint.solve.stage import Run, Stage, sweep_stage
 from protlint.solve.wired import counting, linearise, look, wired_frequencies
 from protlint.solve.worst import find_worst, make_scope, opening_scene
-from protlint.toml.text import toml_key
 
 USUAL = 1
 """Place of the usual ambient among the three."""
@@ -107,7 +106,7 @@ def hold(network: Network, ambients_degC: tuple[float, float, float], short: str
         raise reason or CircuitError("no operating point was found with the output shorted")
     greatest_A = float(np.abs(best[1].short.operating.known_A[:, USUAL]).max())
     if greatest_A > MOST_A:
-        raise CircuitError(f"[drive.{toml_key(network.circuit.drive.node)}] current")
+        raise CircuitError(f"{network.circuit.drive.key} current")
     return best[1]
 
 

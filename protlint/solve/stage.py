@@ -21,7 +21,6 @@ from protlint.solve.lanes import Lanes, Variation, known_voltages, parameters
 from protlint.solve.network import Network
 from protlint.solve.parameters import CircuitError
 from protlint.solve.solution import Point, State
-from protlint.toml.text import toml_key
 
 SWEEP_POINTS = 33
 LEAST_OUTPUT_A = 1e-6
@@ -148,7 +147,7 @@ def _turns_nothing_on(drive: Drive, what: str) -> str:
     low_V, high_V, node = drive.low_V.usual, drive.high_V.usual, drive.node.removesuffix(FEED)
     return (
         f"the drive at {node}, from {low_V:g} V to {high_V:g} V, cannot turn the pass device on: {what}; "
-        f"[drive.{toml_key(node)}] low and high state it otherwise"
+        f"{drive.key} low and high state it otherwise"
     )
 
 
@@ -157,7 +156,7 @@ def _uncontrolled(drive: Drive, unlimited_A: float) -> str:
     low_V, high_V, node = drive.low_V.usual, drive.high_V.usual, drive.node.removesuffix(FEED)
     return (
         f"the drive at {node} does not control the stage: at {low_V:g} V as at {high_V:g} V it passes {unlimited_A:.3g} A "
-        f"without the shunt; fit what pulls the pass device off, or state [drive.{toml_key(node)}] low and high"
+        f"without the shunt; fit what pulls the pass device off, or state {drive.key} low and high"
     )
 
 

@@ -72,3 +72,35 @@ def test_an_end_of_the_drive_moves_with_the_rail_it_stays_short_of() -> None:
         _, ends_V = held_voltages(network, axes, corner)
         assert ends_V[1] == pytest.approx([10.0] * 3 if entry.high_V else [20.5, 22.5, 25.5])
         assert ends_V[0] == pytest.approx([-3.5] * 3)
+
+
+@pytest.mark.parametrize(
+    ("bias", "asked", "net"),
+    [
+        ("RAW", "[supply] RAW: behind its lead it feeds the drive as well", "RAW"),
+        ("GND", "[drive.DRV]: nothing on the board is seen to drive it", "DRV"),  # not the rail that turns nothing on
+        ("AHEAD", "[drive.AHEAD]: nothing on the board is seen to drive it", "AHEAD"),
+        ("+24V", None, None),
+    ],
+)
+def test_the_net_that_is_asked_about_is_one_whose_entry_helps(bias: str, asked: str | None, net: str | None) -> None:
+    text = f"""
+        npn Q1 RAW DRV NEAR
+        resistor R1 NEAR OUT =2
+        npn Q2 DRV NEAR OUT
+        resistor R2 {bias} DRV =2200
+        fuse F1 +24V RAW
+        connector J1 1=OUT 2=GND
+        """
+
+    def missing(limits: Limits) -> list[tuple[str, str | None]]:
+        made = board(text, limits=limits)
+        (limiter,) = find_limiters(made, load_rules()).limiters
+        return [(one.needs, one.net) for one in build_bench(made, limiter, limits=limits, needs=LimiterLimits()).missing]
+
+    assert missing(Limits()) == ([] if asked is None else [(asked, net)])
+    if asked is not None and net is not None:
+        volts = Range(24.0, 24.0, 24.0)
+        is_supply = asked.startswith("[supply]")
+        stated = {"supplies_V": {net: volts}} if is_supply else {"drives": {net: DriveLimits(high_V=volts)}}
+        assert missing(Limits(**stated)) == []  # type: ignore[arg-type]
