@@ -25,6 +25,12 @@ IDENTIFYING_ROLES = ("pass", "driver", "sense", "shunt")
 """The roles whose parts say which limiter it is: what is added to mend a finding must not rename the others."""
 
 
+def some_of(names: Sequence[str], most: int = 6) -> str:
+    """Return names joined by commas, the rest of a long list counted."""
+    more = len(names) - most
+    return ", ".join(names[:most]) + (f" and {more} more" if more > 0 else "")
+
+
 def identifying_parts(roles: Mapping[str, Sequence[str]]) -> tuple[str, ...]:
     """Return the parts a limiter is known by in fingerprints, from its report roles."""
     return tuple(part for role in IDENTIFYING_ROLES for part in roles.get(role, ()))

@@ -3,25 +3,18 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Collection, Iterator, Sequence
+from collections.abc import Collection, Iterator
 
 from protlint.board.graph import Board, Element
 from protlint.board.kinds import UNTOLD_TRANSISTOR
 from protlint.board.pins import FAMILY, TERMINALS
 from protlint.checks.board_case import BoardAnswer, BoardCase, Unanswered
-from protlint.findings import Finding, NotChecked, WorkingLine
+from protlint.findings import Finding, NotChecked, WorkingLine, some_of
 from protlint.solve.surroundings import CONTROL
 from protlint.toml.text import toml_key
-from protlint.topology.excerpt import MOST
-
-SENSE_OHM = 100.0
-"""Sense resistors of limiters are smaller; common practice of the trade."""
-
-MOST_NAMED = 6
-"""Parts of one type that are named before the rest are counted."""
-
-CROWDED = 64
-"""A net with more on it is a supply, whatever it is called."""
+from protlint.topology.excerpt import MOST, is_rail
+from protlint.topology.index import CROWDED
+from protlint.topology.suspects import SENSE_OHM
 
 
 def hidden_limiters(whole: BoardCase) -> Iterator[BoardAnswer]:
@@ -71,7 +64,7 @@ def _unplaced(board: Board, suspected: Collection[str]) -> Iterator[Unanswered]:
         elif part.kind_from == UNTOLD_TRANSISTOR:
             wanted.setdefault(f"[{toml_key(name)}] kind, in a file for --parts", []).append(part.id)
     for key, parts in wanted.items():
-        yield Unanswered(None, NotChecked(f"whether a limiter is at {_named(parts)}", key))
+        yield Unanswered(None, NotChecked(f"whether a limiter is at {some_of(parts)}", key))
 
 
 def _hidden_behind_unknown_parts(whole: BoardCase) -> Iterator[Unanswered]:
@@ -95,7 +88,7 @@ def _hidden_behind_unknown_parts(whole: BoardCase) -> Iterator[Unanswered]:
             key = f"[{toml_key(part.part_number or part.part.cell)}] kind, in a file for --parts"
             if colon:
                 key = f"resistors drawn in place of {part.id}: {why}"
-            names = _named([board.parts[one.parts[0]].id for one in (pass_device, shunt)])
+            names = some_of([board.parts[one.parts[0]].id for one in (pass_device, shunt)])
             yield Unanswered(None, NotChecked(f"whether a limiter is at {names}", key))
 
 
@@ -112,7 +105,7 @@ def _pass_device_of(board: Board, shunt: Element) -> Element | None:
 
 def _driven_from(board: Board, net: int | None) -> Iterator[Element]:
     """Yield the transistors whose base or gate is on a net that is no supply."""
-    if net is not None and board.nets[net].supply is None and len(board.elements_at[net]) <= CROWDED:
+    if net is not None and not is_rail(board, net):
         for index, role in board.elements_at[net]:
             element = board.elements[index]
             if element.kind in CONTROL and role == CONTROL[element.kind]:
@@ -126,12 +119,7 @@ def _hidden_in_a_crowd(whole: BoardCase) -> Iterator[Unanswered]:
         left = [part for part in parts if part not in told]
         key = f"[supply] {toml_key(whole.board.nets[net].name)}, if that is one: a search ends at {MOST} parts"
         if left:
-            yield Unanswered(None, NotChecked(f"whether a limiter drawn wrong is at {_named(left)}", key))
-
-
-def _named(parts: Sequence[str]) -> str:
-    more = f" and {len(parts) - MOST_NAMED} more" if len(parts) > MOST_NAMED else ""
-    return f"{', '.join(parts[:MOST_NAMED])}{more}"
+            yield Unanswered(None, NotChecked(f"whether a limiter drawn wrong is at {some_of(left)}", key))
 
 
 def _unknown(element: Element) -> bool:
@@ -142,7 +130,7 @@ def _shunts_of(board: Board, element: Element) -> Iterator[Element]:
     """Yield the transistors that would fit as the shunt of a pass device."""
     nets = set(element.terminals.values())
     for near in sorted(nets):
-        if board.nets[near].supply is not None or len(board.elements_at[near]) > CROWDED:
+        if is_rail(board, near):
             continue
         beside = _beyond_resistors(board, near) | {near}
         for index, _ in board.elements_at[near]:

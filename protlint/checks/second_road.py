@@ -13,12 +13,10 @@ from protlint.checks.likeness import usual_holds_A
 from protlint.checks.sizing import greatest_most_A
 from protlint.findings import Finding, Level, NotChecked, WorkingLine
 from protlint.quantities import format_quantity, preferred
+from protlint.topology.index import CROWDED
 
 LONGEST = 3
 """Parts in a row that are followed from the output to a supply."""
-
-CROWDED = 64
-"""A net with more terminals than this is a rail, whatever its name: no way leads on through it."""
 
 Step = tuple[Element, int, str]
 """An element, the net on its other side, and how it conducts."""

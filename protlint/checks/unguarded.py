@@ -12,6 +12,8 @@ from protlint.checks.board_case import BoardAnswer, BoardCase, Unanswered
 from protlint.findings import Finding, NotChecked, WorkingLine
 from protlint.limits import fits
 from protlint.quantities import format_quantity
+from protlint.topology.excerpt import is_rail
+from protlint.topology.index import CROWDED
 
 LEAD = {
     "npn": ("emitter", "collector", "base"), "pnp": ("emitter", "collector", "base"),
@@ -25,9 +27,6 @@ OTHER_POLARITY = {
     "pmos": ("npn",),
 }  # fmt: skip
 """What drives the output device of a complementary pair."""
-
-CROWDED = 64
-"""A net with more terminals than this is a rail, whatever its name: no lead of one device."""
 
 FARTHEST = 4
 """Resistors in a row through which somebody may watch a net."""
@@ -94,7 +93,7 @@ def _stages(whole: BoardCase) -> Iterator[Stage]:
 
 
 def _with_resistor(board: Board, device: Element, near: int, load: int, control: int | None) -> Iterator[Stage]:
-    if board.nets[near].supply is not None or len(board.elements_at[near]) > CROWDED:
+    if is_rail(board, near):
         return
     for index, _ in board.elements_at[near]:
         resistor = board.elements[index]
@@ -180,7 +179,7 @@ def _own_controls(board: Board, stage: Stage) -> set[int]:
     pending = [] if stage.control is None else [stage.control]
     while pending:
         net = pending.pop()
-        if net in own or board.nets[net].supply is not None or len(board.elements_at[net]) > CROWDED:
+        if net in own or is_rail(board, net):
             continue
         own.add(net)
         for index, role in board.elements_at[net]:

@@ -5,9 +5,9 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Sequence
 
+from protlint.findings import some_of
 from protlint.netlist.definitions import Edif, Library
 from protlint.netlist.flatten import Flat
-from protlint.netlist.notes import some_of
 
 _LIBRARIES_SHOWN = 12
 

@@ -5,8 +5,9 @@ from __future__ import annotations
 from collections.abc import Iterator
 from itertools import chain
 
+from protlint.findings import some_of
 from protlint.netlist.definitions import Cell, Contents, Edif, GlobalRef, Instance, Library, Name, Scope, View, ViewRef
-from protlint.netlist.notes import Notes, some_of
+from protlint.netlist.notes import Notes
 from protlint.netlist.ports import Budget, Globals, Ports, Shorts
 from protlint.sources import UsageError
 

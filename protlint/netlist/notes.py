@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-
 from protlint.findings import Warning
 from protlint.netlist.forms import Places
 
@@ -31,12 +29,6 @@ KINDS = {
     "namesakes": "one designator on parts that nothing shows to be sections of one package; they are numbered behind it: {}",
 }
 """Every kind of warning of the reading, and its message; the braces take what the first case was."""
-
-
-def some_of(names: Sequence[str], most: int = 6) -> str:
-    """Return names joined by commas, the rest of a long list counted."""
-    more = len(names) - most
-    return ", ".join(names[:most]) + (f" and {more} more" if more > 0 else "")
 
 
 class Notes:

@@ -6,7 +6,7 @@ import json
 import re
 from collections.abc import Iterator, Mapping, Sequence
 
-from protlint.findings import FOR_WANT_OF, LEVELS, UNSOLVED
+from protlint.findings import FOR_WANT_OF, LEVELS, UNSOLVED, some_of
 from protlint.report.figures import counted, figure
 from protlint.report.shape import VERDICTS, Document, boards_of
 
@@ -96,9 +96,7 @@ def working_line(line: Document) -> str:
 
 def listed(names: Sequence[str], most: int = MOST_NAMES) -> str:
     """Return names joined by commas, the rest of a long list counted."""
-    if len(names) <= most:
-        return ", ".join(names)
-    return f"{', '.join(names[:most])} and {len(names) - most} more"
+    return some_of(names, most)
 
 
 def alike(ordered: Sequence[Section]) -> list[list[Section]]:

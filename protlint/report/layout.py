@@ -10,6 +10,8 @@ import re
 import unicodedata
 from collections.abc import Iterable, Sequence
 
+from protlint.findings import some_of
+
 COLUMNS = 80
 
 TIED = "\0"
@@ -83,7 +85,7 @@ def fitting(names: Sequence[str], columns: int) -> str:
     most, shown = len(names), ", ".join(names)
     while width(shown) > columns and most > 1:
         most -= 1
-        shown = f"{', '.join(names[:most])} and {len(names) - most} more"
+        shown = some_of(names, most)
     if width(shown) <= columns:
         return shown
     rest = shown.removeprefix(names[0])

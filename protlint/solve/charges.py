@@ -211,7 +211,9 @@ def bipolar_charges(inner: Array, outer_BC: Array, t: Transport, p: BipolarCharg
     if p.outer is not None:
         charge[2], capacitance[2] = depletion(outer_BC, p.outer)
     on = inner[0] > 0.0
-    i_F, g_F = t.i_F * on, t.g_F * on
+    i_F, g_F = t.i[0] * on, t.g[0] * on  # forward: of the ideal base-emitter junction
+    i_R, g_R = t.i[1], t.g[1]  # reverse: of the ideal base-collector junction
+    q_B_by_BE, q_B_by_BC = t.q_B_slope
     lent, lent_slope, by_BC = i_F, g_F, 0.0
     if p.X_TF.any():
         w = i_F / np.maximum(i_F + p.I_TF, 1e-300)
@@ -222,10 +224,10 @@ def bipolar_charges(inner: Array, outer_BC: Array, t: Transport, p: BipolarCharg
         by_BC = i_F * excess * p.inverse_VTF
     carried = lent / t.q_B
     charge[0] += p.T_F * carried
-    charge[1] += p.T_R * t.i_R
-    capacitance[0] += p.T_F * (lent_slope - carried * t.q_B_by_BE) / t.q_B
-    capacitance[1] += p.T_R * t.g_R
-    return Stored(charge, capacitance, p.T_F * (by_BC - carried * t.q_B_by_BC) / t.q_B)
+    charge[1] += p.T_R * i_R
+    capacitance[0] += p.T_F * (lent_slope - carried * q_B_by_BE) / t.q_B
+    capacitance[1] += p.T_R * g_R
+    return Stored(charge, capacitance, p.T_F * (by_BC - carried * q_B_by_BC) / t.q_B)
 
 
 def mosfet_charges(inner: Array, body_V: Array, p: MosfetCharges) -> Stored:

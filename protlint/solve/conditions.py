@@ -6,7 +6,7 @@ end, an output that something else holds up, a supply that has gone.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field, replace
 
 import numpy as np
@@ -17,7 +17,7 @@ from protlint.solve.corners import axes_of, held_voltages, variation
 from protlint.solve.dc import solve_lanes
 from protlint.solve.devices import Array
 from protlint.solve.lanes import Lanes, Variation, known_voltages
-from protlint.solve.memo import canonical
+from protlint.solve.memo import canonical, renamed_point
 from protlint.solve.network import Network, compile_network
 from protlint.solve.solution import Point
 from protlint.solve.stage import Run, Stage, points
@@ -59,7 +59,7 @@ class Known:
         if then == names:
             return rows_then
         called = dict(zip(then, names, strict=True))
-        return tuple(tuple(None if point is None else _renamed(point, called) for point in row) for row in rows_then)
+        return tuple(tuple(None if point is None else renamed_point(point, called) for point in row) for row in rows_then)
 
 
 def solve_under(circuit: Circuit, conditions: Sequence[Condition], known: Known | None = None) -> Row:
@@ -76,10 +76,6 @@ def solve_under(circuit: Circuit, conditions: Sequence[Condition], known: Known 
     if known is None:
         return _solve_all(circuit, conditions)
     return known.rows(circuit, tuple(conditions), lambda: (_solve_all(circuit, conditions),))[0]
-
-
-def _renamed(point: Point, called: Mapping[str, str]) -> Point:
-    return replace(point, states={called.get(name, name): state for name, state in point.states.items()})
 
 
 def _solve_all(circuit: Circuit, conditions: Sequence[Condition]) -> Row:

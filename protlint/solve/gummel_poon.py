@@ -50,47 +50,12 @@ class Transport:
     q_B: Array
     q_B_slope: Array
 
-    @property
-    def i_F(self) -> Array:
-        """Forward current of the ideal base-emitter junction."""
-        return _row(self.i, 0)
-
-    @property
-    def i_R(self) -> Array:
-        """Reverse current of the ideal base-collector junction."""
-        return _row(self.i, 1)
-
-    @property
-    def g_F(self) -> Array:
-        """Slope of ``i_F`` by the base-emitter voltage."""
-        return _row(self.g, 0)
-
-    @property
-    def g_R(self) -> Array:
-        """Slope of ``i_R`` by the base-collector voltage."""
-        return _row(self.g, 1)
-
-    @property
-    def q_B_by_BE(self) -> Array:
-        """Slope of the base charge by the base-emitter voltage."""
-        return _row(self.q_B_slope, 0)
-
-    @property
-    def q_B_by_BC(self) -> Array:
-        """Slope of the base charge by the base-collector voltage."""
-        return _row(self.q_B_slope, 1)
-
 
 @dataclass(frozen=True, slots=True)
 class Evaluated(Evaluation):
     """Bipolar transistors at given inner voltages, with what crosses their bases there."""
 
     transport: Transport
-
-
-def _row(values: Array, index: int) -> Array:
-    row: Array = values[index]
-    return row
 
 
 def bipolar(inner: Array, p: Bipolars, present: Array | float = 1.0) -> Evaluated:

@@ -9,7 +9,7 @@ from protlint.board.graph import Board, Element
 from protlint.board.regulators import regulator_across
 
 LEAD_AT_MOST_OHM = 10.0
-"""A larger resistor is not taken for one in a supply lead."""
+"""A larger resistor is not taken for one in a supply lead; common practice of the trade."""
 
 MOST_STEPS = 4
 """A supply behind more parts in series is not looked for."""

@@ -87,15 +87,16 @@ def canonical(circuit: Circuit, ambients_degC: tuple[float, ...]) -> tuple[Key, 
     return key, (tuple(devices), tuple(nodes))
 
 
+def renamed_point(point: Point, devices: Mapping[str, str]) -> Point:
+    """Return a point with its devices called by other names."""
+    return replace(point, states={devices.get(name, name): state for name, state in point.states.items()})
+
+
 def renamed(solution: Solution, devices: Mapping[str, str], nodes: Mapping[str, str]) -> Solution:
     """Return a solution with its devices and nodes called by other names."""
 
     def point(old: Point | None) -> Point | None:
-        return (
-            None
-            if old is None
-            else replace(old, states={devices.get(name, name): state for name, state in old.states.items()})
-        )
+        return None if old is None else renamed_point(old, devices)
 
     def several(old: tuple[Point, ...]) -> tuple[Point, ...]:
         return tuple(new for one in old if (new := point(one)) is not None)
